@@ -1,0 +1,3 @@
+//! stepgauge
+#![allow(missing_docs)]
+pub mod number;

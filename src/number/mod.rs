@@ -1,0 +1,22 @@
+//! Numbers wider than `f64`, small dense matrices of them, and the matrix
+//! exponential with an error bound.
+//!
+//! Nothing here knows of cases or files. [`Double`] carries every exact value;
+//! [`Quad`] is the second precision that serves where a bound computed in
+//! [`Double`] is not good enough. Sources: [dekker-1971], [hida-li-bailey-2001],
+//! [higham-2005] in [`crate::references`].
+
+mod decimal;
+mod double;
+mod elementary;
+mod expm;
+mod matrix;
+mod quad;
+mod real;
+
+pub use decimal::Decimal;
+pub use double::Double;
+pub use expm::{Flow, Propagator, Step};
+pub use matrix::{Matrix, dot};
+pub use quad::Quad;
+pub use real::Real;
