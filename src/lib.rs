@@ -1,3 +1,5 @@
 //! stepgauge
 #![allow(missing_docs)]
+pub mod fault;
+pub mod formula;
 pub mod number;

@@ -73,11 +73,6 @@ impl Double {
         Double { high, low }
     }
 
-    /// From two words that are already in order, `|low| <= ulp(high)/2`.
-    pub(super) const fn from_words(high: f64, low: f64) -> Double {
-        Double { high, low }
-    }
-
     /// The exact product of two `f64`.
     pub fn from_product(a: f64, b: f64) -> Double {
         let (high, low) = two_product(a, b);
