@@ -113,7 +113,8 @@ pub fn escaped(text: &str) -> String {
 
 /// The candidate nearest to a mistyped name, if one is near.
 pub fn nearest<'a>(name: &str, candidates: impl Iterator<Item = &'a str>) -> Option<&'a str> {
-    let most = name.chars().count() / 3 + 1;
+    let length = name.chars().count();
+    let most = (length / 3 + 1).min(length.saturating_sub(1));
     candidates
         .map(|candidate| (edits(name, candidate, most), candidate))
         .filter(|&(distance, _)| distance <= most)

@@ -259,6 +259,7 @@ impl<'a> Parser<'a> {
             let fault = self.fault(format!("unknown name {}", quoted(word)), start);
             let known = names.iter().copied().chain(Function::ALL.iter().map(|f| f.1));
             return Err(match nearest(word, known) {
+                _ if word == "t" => fault.help("time enters a rate through the inputs"),
                 Some(near) => fault.help(format!("did you mean `{near}`?")),
                 None => fault,
             });
