@@ -1,6 +1,8 @@
 //! stepgauge
 #![allow(missing_docs)]
 pub mod case;
+pub mod exact;
 pub mod fault;
 pub mod formula;
 pub mod number;
+pub use case::Library;
