@@ -1,7 +1,6 @@
 //! From times to values: directly from the nearest jump before, or step by step
 //! along a uniform grid with a fresh start every so often.
 
-use super::segments::same_instant;
 use super::{Exact, Jump};
 use crate::number::{Double, Flow, Propagator, Quad, Real, Step, dot};
 
@@ -47,8 +46,7 @@ pub(super) fn anchors<T: Real>(
 impl Exact {
     /// Number of jumps at or before a time.
     fn segment(&self, time: Double) -> usize {
-        let passed = |jump: &Jump| jump.time <= time || same_instant(jump.time, time);
-        self.system.jumps.partition_point(passed)
+        self.system.jumps.partition_point(|jump| jump.time <= time)
     }
 
     fn segment_start(&self, segment: usize) -> Double {

@@ -117,18 +117,11 @@ fn merged(mut jumps: Vec<Jump>) -> Result<Vec<Jump>, Fault> {
     let mut merged: Vec<Jump> = Vec::with_capacity(jumps.len());
     for jump in jumps {
         match merged.last_mut() {
-            // Times that come from different sums of the same decimals.
-            Some(last) if same_instant(last.time, jump.time) => last.resets.extend(jump.resets),
+            Some(last) if last.time == jump.time => last.resets.extend(jump.resets),
             _ => merged.push(jump),
         }
     }
     Ok(merged)
-}
-
-/// Equal but for the rounding of an `f64`.
-pub(super) fn same_instant(a: Double, b: Double) -> bool {
-    let size = a.to_f64().abs().max(b.to_f64().abs());
-    (a - b).abs().to_f64() <= 2.0 * f64::EPSILON * size
 }
 
 impl Generator {
@@ -163,13 +156,13 @@ impl Generator {
         (from, to): (Double, Double),
     ) -> Option<Generator> {
         for (time, values) in knots {
-            if time <= from || same_instant(time, from) {
+            if time <= from {
                 // The value of a line moves on from its knot to the window's start.
                 self.start = values;
                 if let [value, slope] = self.start[..] {
                     self.start[0] = value + slope * (from - time);
                 }
-            } else if time <= to || same_instant(time, to) {
+            } else if time <= to {
                 if self.jumps.len() >= MOST_JUMPS {
                     return None;
                 }

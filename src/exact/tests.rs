@@ -199,5 +199,5 @@ fn what_is_too_much_is_refused_with_a_reason() {
 fn times_outside_the_window_are_refused() {
     let exact = lag("shape = 'constant'\nvalue = 3", 2.0, 0.5);
     assert!(exact.at(0.999).unwrap_err().text.contains("outside the window from 1 to 11"));
-    assert!(exact.over(&[1.0, 12.0]).last().unwrap().is_err());
+    assert!(exact.over([1.0, 12.0]).last().unwrap().is_err());
 }

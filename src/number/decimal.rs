@@ -108,6 +108,12 @@ impl Decimal {
     }
 }
 
+impl From<Decimal> for Double {
+    fn from(decimal: Decimal) -> Double {
+        decimal.to_double()
+    }
+}
+
 #[cfg(test)]
 mod tests {
     use super::*;

@@ -1,0 +1,8 @@
+//! The one integration binary of stepgauge.
+
+/// Numbers from outside, as decimal text, and distances in units of the last place.
+mod digits;
+
+/// Certified enclosures (Arb): every number of `certified-values.json`, and every
+/// built-in case.
+mod certified;
