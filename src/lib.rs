@@ -5,4 +5,5 @@ pub mod exact;
 pub mod fault;
 pub mod formula;
 pub mod number;
+pub mod trajectory;
 pub use case::Library;

@@ -1,0 +1,191 @@
+//! The grid of the time stamps: how far they are apart, whether as exact decimals,
+//! and where rows are missing.
+
+use super::number::Printed;
+use crate::number::Decimal;
+
+/// What the stamps of a file have in common.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub enum Grid {
+    /// Equal steps, but for a few.
+    Uniform {
+        /// The step, in the unit of the file.
+        spacing: f64,
+        /// The step where all stamps are exact decimal multiples of it.
+        exact: Option<Decimal>,
+        /// A larger step is a hole: rows are missing there.
+        holes: bool,
+    },
+    /// Steps of many sizes.
+    Varied,
+}
+
+/// Steps that count as equal.
+#[derive(Clone, Debug)]
+struct Cluster {
+    spacing: f64,
+    exact: Option<Decimal>,
+    /// All steps of the cluster are the same decimal.
+    identical: bool,
+    sum: f64,
+    count: u64,
+    run: u64,
+    longest_run: u64,
+}
+
+/// Sizes of steps that are told apart; more make the grid a varied one.
+const MOST_CLUSTERS: usize = 24;
+/// Share of steps that must be equal for a grid to be uniform.
+const UNIFORM_SHARE: f64 = 0.75;
+/// So many larger steps in a row are a phase of coarser output and no hole.
+const PHASE: u64 = 4;
+
+/// Gathers the steps between stamps.
+#[derive(Clone, Debug, Default)]
+pub(super) struct GridFinder {
+    last: Option<(f64, Option<Decimal>, f64)>,
+    most_significant: u8,
+    most_decimals: u8,
+    steps: u64,
+    clusters: Vec<Cluster>,
+    latest: usize,
+}
+
+impl GridFinder {
+    pub(super) fn add(&mut self, time: f64, exact: Option<Decimal>, printed: Printed) {
+        self.most_significant = self.most_significant.max(printed.significant);
+        let unit = self.unit(time, printed);
+        if let Some((last, last_exact, last_unit)) = self.last {
+            let step = time - last;
+            if step > 0.0 {
+                let exact = exact.zip(last_exact).and_then(|(a, b)| a.minus(b));
+                // Two rounded stamps each: a step is off by half their units together,
+                // and two steps are compared.
+                let rounding = 4.0 * f64::EPSILON * time.abs();
+                let tolerance = 1.05 * (unit + last_unit) + 1e-9 * step + rounding;
+                self.count(step, exact, tolerance);
+            }
+        }
+        self.last = Some((time, exact, unit));
+    }
+
+    /// One unit in the last place that the stamp was printed to, as far as it shows.
+    fn unit(&mut self, time: f64, printed: Printed) -> f64 {
+        let own = |decimals: i32| 10f64.powi(-decimals);
+        let exponent = if printed.scientific && time != 0.0 { time.abs().log10().floor() } else { 0.0 };
+        let decimals = i32::from(printed.decimals) - exponent as i32;
+        if !printed.scientific {
+            self.most_decimals = self.most_decimals.max(printed.decimals);
+        }
+        if printed.scientific || printed.significant == self.most_significant && time != 0.0 {
+            own(decimals)
+        } else {
+            // Short text of a number that was printed to more digits elsewhere.
+            own(i32::from(self.most_decimals))
+        }
+    }
+
+    fn count(&mut self, step: f64, exact: Option<Decimal>, tolerance: f64) {
+        self.steps += 1;
+        let known = self.clusters.iter().position(|c| (c.spacing - step).abs() <= tolerance);
+        let place = match known {
+            Some(place) => place,
+            None if self.clusters.len() < MOST_CLUSTERS => {
+                self.clusters.push(Cluster {
+                    spacing: step,
+                    exact,
+                    identical: true,
+                    sum: 0.0,
+                    count: 0,
+                    run: 0,
+                    longest_run: 0,
+                });
+                self.clusters.len() - 1
+            }
+            None => {
+                self.latest = usize::MAX;
+                return;
+            }
+        };
+        let follows = self.latest == place;
+        let cluster = &mut self.clusters[place];
+        cluster.identical &= exact.is_some() && exact == cluster.exact;
+        cluster.sum += step;
+        cluster.count += 1;
+        cluster.run = if follows { cluster.run + 1 } else { 1 };
+        cluster.longest_run = cluster.longest_run.max(cluster.run);
+        self.latest = place;
+    }
+
+    pub(super) fn conclude(&self) -> Grid {
+        let Some(most) = self.clusters.iter().max_by_key(|cluster| cluster.count) else {
+            return Grid::Varied;
+        };
+        if (most.count as f64) < UNIFORM_SHARE * self.steps as f64 {
+            return Grid::Varied;
+        }
+        let exact = most.exact.filter(|_| most.identical);
+        let spacing = exact.map_or(most.sum / most.count as f64, |e| e.to_double().to_f64());
+        let larger = self.clusters.iter().filter(|cluster| cluster.spacing > 1.5 * spacing);
+        let holes = larger.map(|cluster| cluster.longest_run).all(|run| run < PHASE);
+        Grid::Uniform { spacing, exact, holes }
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use super::super::number::Field;
+    use super::*;
+
+    fn grid(stamps: impl IntoIterator<Item = String>) -> Grid {
+        let mut finder = GridFinder::default();
+        for text in stamps {
+            let Field::Number(time, printed) = Field::read(text.as_bytes(), false) else {
+                panic!("{text}")
+            };
+            finder.add(time, Decimal::parse(&text), printed);
+        }
+        finder.conclude()
+    }
+
+    fn spacing(grid: Grid) -> (f64, bool) {
+        match grid {
+            Grid::Uniform { spacing, exact, .. } => (spacing, exact.is_some()),
+            Grid::Varied => (0.0, false),
+        }
+    }
+
+    #[test]
+    fn exact_decimal_grids() {
+        let shortest = |k: i32| format!("{}", f64::from(k) / 10.0);
+        assert_eq!(spacing(grid((0..50).map(shortest))), (0.1, true));
+        assert_eq!(spacing(grid((0..50).map(|k| format!("{:.3}", 0.25 * f64::from(k))))), (0.25, true));
+        assert_eq!(spacing(grid((0..50).map(|k| format!("{:.4e}", f64::from(k) * 20.0)))), (20.0, true));
+    }
+
+    #[test]
+    fn rounded_and_summed_stamps_are_uniform_but_not_exact() {
+        let (found, exact) = spacing(grid((0..300).map(|k| format!("{:.2}", f64::from(k) / 75.0))));
+        assert!((found - 1.0 / 75.0).abs() < 1e-4 && !exact, "{found}");
+        let mut time = 0.0;
+        let summed = (0..1000).map(|_| {
+            time += 0.1;
+            format!("{time}")
+        });
+        let (found, exact) = spacing(grid(summed));
+        assert!((found - 0.1).abs() < 1e-9 && !exact);
+        let six = (1..900).map(|k| format!("{:.5e}", f64::from(k) * 0.123_456_7));
+        assert!((spacing(grid(six)).0 - 0.123_456_7).abs() < 1e-3);
+    }
+
+    #[test]
+    fn holes_are_told_from_coarser_phases_and_varied_steps() {
+        let hole = (0..100).filter(|k| ![40, 41, 70].contains(k)).map(|k| k.to_string());
+        assert!(matches!(grid(hole), Grid::Uniform { holes: true, .. }));
+        let phases = (0..400).chain((400..=1000).step_by(10)).map(|k| k.to_string());
+        assert!(matches!(grid(phases), Grid::Uniform { holes: false, .. }));
+        let varied = (0..100).map(|k| format!("{}", f64::from(k).powf(1.5)));
+        assert_eq!(grid(varied), Grid::Varied);
+        assert_eq!(grid(["0".to_owned()]), Grid::Varied);
+    }
+}

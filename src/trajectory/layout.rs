@@ -1,0 +1,340 @@
+//! How the rows of a text file are laid out: found from its first lines, or stated.
+
+use super::number::Field;
+use super::{MOST_COLUMNS, MOST_LINE_BYTES};
+use crate::fault::{Fault, Result, quoted};
+
+/// What stands between two fields.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+#[allow(missing_docs)]
+pub enum Separator {
+    Comma,
+    Semicolon,
+    Tab,
+    Blank,
+}
+
+impl Separator {
+    /// The word in submissions and reports.
+    pub fn word(self) -> &'static str {
+        match self {
+            Separator::Comma => ",",
+            Separator::Semicolon => ";",
+            Separator::Tab => "tab",
+            Separator::Blank => "blank",
+        }
+    }
+
+    /// From the word in a submission.
+    pub fn find(word: &str) -> Option<Separator> {
+        let all = [Separator::Comma, Separator::Semicolon, Separator::Tab, Separator::Blank];
+        all.into_iter().find(|separator| separator.word() == word)
+    }
+}
+
+/// What a submission says of the layout; the rest is found.
+#[derive(Clone, Debug, Default, PartialEq)]
+pub struct Stated {
+    /// Between fields.
+    pub separator: Option<Separator>,
+    /// True for a decimal comma.
+    pub decimal_comma: Option<bool>,
+    /// What a comment line begins with.
+    pub comment: Option<String>,
+    /// Lines before the first row of numbers.
+    pub skip_lines: Option<u64>,
+    /// Significant digits that the producer printed.
+    pub digits: Option<u8>,
+}
+
+/// The layout of one file.
+#[derive(Clone, Debug, PartialEq)]
+pub struct Layout {
+    /// Between fields.
+    pub separator: Separator,
+    /// True for a decimal comma.
+    pub decimal_comma: bool,
+    /// What a comment line begins with.
+    pub comments: Vec<String>,
+    /// Fields of a row.
+    pub columns: usize,
+    /// The line of the first row of numbers, counted from one.
+    pub first_row: u64,
+    /// Names of the columns, where the file has them.
+    pub names: Option<Vec<String>>,
+    /// Units in a line of their own below the names.
+    pub units: Option<Vec<String>>,
+}
+
+const USUAL_COMMENTS: [&str; 4] = ["#", "%", "//", "!"];
+/// Rows of the sample that are tried on each layout.
+const ROWS_TRIED: usize = 200;
+
+impl Layout {
+    /// Finds the layout from the first lines of a file (the last one whole); `None`
+    /// where they hold no row of numbers.
+    ///
+    /// # Errors
+    /// Lines that fit no layout, and a layout stated that does not fit.
+    pub fn find(lines: &[&[u8]], stated: &Stated) -> Result<Option<Layout>> {
+        let comments = match &stated.comment {
+            Some(comment) => vec![comment.clone()],
+            None => USUAL_COMMENTS.map(str::to_owned).to_vec(),
+        };
+        let separators = [Separator::Tab, Separator::Semicolon, Separator::Comma, Separator::Blank];
+        let mut best: Option<(usize, Layout)> = None;
+        for separator in separators {
+            for decimal_comma in [false, true] {
+                let allowed = stated.separator.is_none_or(|s| s == separator)
+                    && stated.decimal_comma.is_none_or(|d| d == decimal_comma)
+                    && !(separator == Separator::Comma && decimal_comma);
+                if !allowed {
+                    continue;
+                }
+                let layout = Layout {
+                    separator,
+                    decimal_comma,
+                    comments: comments.clone(),
+                    columns: 0,
+                    first_row: 0,
+                    names: None,
+                    units: None,
+                };
+                let Some((fits, layout)) = layout.try_on(lines, stated.skip_lines) else { continue };
+                if best.as_ref().is_none_or(|(most, _)| fits > *most) {
+                    best = Some((fits, layout));
+                }
+            }
+        }
+        let Some((_, mut layout)) = best else {
+            return Layout::complain(lines, &comments);
+        };
+        if layout.columns > MOST_COLUMNS {
+            let text = format!("{} columns, at most {MOST_COLUMNS} are read", layout.columns);
+            return Err(Fault::new(text).at(layout.first_row, 1));
+        }
+        layout.find_names(lines);
+        Ok(Some(layout))
+    }
+
+    /// Without any row of numbers: nothing there, or nothing that could be read.
+    fn complain(lines: &[&[u8]], comments: &[String]) -> Result<Option<Layout>> {
+        let says_something = |line: &&[u8]| {
+            !line.trim_ascii().is_empty() && !is_comment(line.trim_ascii(), comments)
+        };
+        let told: Vec<_> = lines.iter().enumerate().filter(|(_, l)| says_something(l)).collect();
+        match told[..] {
+            // A header alone: the file is empty.
+            [] | [_] => Ok(None),
+            [_, (number, line), ..] => {
+                let text = format!(
+                    "no rows of numbers found: this line is {}",
+                    quoted(&String::from_utf8_lossy(line))
+                );
+                let help = "set `separator`, `decimal`, `comment` or `skip_lines` under `[layout]` \
+                            in submission.toml";
+                Err(Fault::new(text).help(help).at(number as u64 + 1, 1))
+            }
+        }
+    }
+
+    /// How many lines are rows of this layout, from the first that is one.
+    fn try_on(mut self, lines: &[&[u8]], skip: Option<u64>) -> Option<(usize, Layout)> {
+        let skip = skip.unwrap_or(0) as usize;
+        let rows = lines.iter().enumerate().skip(skip);
+        let mut rows = rows.filter(|(_, line)| !self.passes_over(line));
+        let numeric = |line: &[u8]| -> Option<usize> {
+            let (mut count, mut numbers) = (0, 0);
+            self.split(line, &mut |_, field| {
+                count += 1;
+                match Field::read(field, self.decimal_comma) {
+                    Field::Number(..) => numbers += 1,
+                    // Nothing at all must have blanks or words for it, not letters.
+                    Field::Absent => {}
+                    Field::Foreign => numbers = usize::MAX / 2,
+                }
+            });
+            (count >= 2 && (1..usize::MAX / 2).contains(&numbers)).then_some(count)
+        };
+        let (first, columns) =
+            rows.find_map(|(number, line)| numeric(line).map(|count| (number, count)))?;
+        let more = rows.take(ROWS_TRIED).filter(|(_, line)| numeric(line) == Some(columns));
+        let fits = 1 + more.count();
+        self.columns = columns;
+        self.first_row = first as u64 + 1;
+        Some((fits, self))
+    }
+
+    /// Names: the last line before the rows with as many fields; a comment will do.
+    fn find_names(&mut self, lines: &[&[u8]]) {
+        let before = &lines[..(self.first_row - 1) as usize];
+        let fields = |line: &[u8]| -> Option<Vec<String>> {
+            let mut names = Vec::new();
+            self.split(line, &mut |_, field| {
+                names.push(String::from_utf8_lossy(field).trim().to_owned());
+            });
+            let words = names.iter().any(|name| name.chars().any(char::is_alphabetic));
+            (names.len() == self.columns && words).then_some(names)
+        };
+        let told = before.iter().rev().filter(|line| !line.trim_ascii().is_empty());
+        let mut told = told.map(|line| {
+            let line = line.trim_ascii();
+            let mark = self.comments.iter().find(|c| line.starts_with(c.as_bytes()));
+            let bare = mark.map_or(line, |mark| line[mark.len()..].trim_ascii());
+            (mark.is_some(), bare)
+        });
+        let Some((in_comment, last)) = told.next() else { return };
+        let Some(names) = fields(last) else { return };
+        // Two such lines, neither a comment: names above, units below.
+        if let Some((false, above)) = told.next().filter(|_| !in_comment && !names_time(&names))
+            && let Some(above) = fields(above)
+        {
+            self.units = Some(names);
+            self.names = Some(above);
+        } else {
+            self.names = Some(names);
+        }
+    }
+
+    /// True for a line that holds no row: blank, or a comment.
+    pub fn passes_over(&self, line: &[u8]) -> bool {
+        let line = line.trim_ascii();
+        line.is_empty() || is_comment(line, &self.comments)
+    }
+
+    /// Hands out the fields of a line with their numbers from zero, without blanks
+    /// around them and without quotes.
+    pub fn split(&self, line: &[u8], each: &mut dyn FnMut(usize, &[u8])) {
+        if memchr::memchr(b'"', line).is_some() {
+            return self.split_quoted(line, each);
+        }
+        match self.separator {
+            Separator::Blank => {
+                let fields = line.split(|b| matches!(b, b' ' | b'\t')).filter(|f| !f.is_empty());
+                fields.enumerate().for_each(|(index, field)| each(index, field));
+            }
+            separator => {
+                let byte = delimiter(separator);
+                let fields = line.split(|b| *b == byte).enumerate();
+                fields.for_each(|(index, field)| each(index, field.trim_ascii()));
+            }
+        }
+    }
+
+    fn split_quoted(&self, line: &[u8], each: &mut dyn FnMut(usize, &[u8])) {
+        let mut reader = csv::ReaderBuilder::new()
+            .has_headers(false)
+            .flexible(true)
+            .delimiter(delimiter(self.separator))
+            .trim(csv::Trim::All)
+            .from_reader(line);
+        let mut record = csv::ByteRecord::new();
+        // Reading from memory cannot fail; a quote that is not closed ends with the line.
+        if let Ok(true) = reader.read_byte_record(&mut record) {
+            let blank = self.separator == Separator::Blank;
+            let fields = record.iter().filter(|field| !(blank && field.is_empty()));
+            fields.enumerate().for_each(|(index, field)| each(index, field.trim_ascii()));
+        }
+    }
+
+    /// In words, for reports.
+    pub fn describe(&self) -> String {
+        let separator = match self.separator {
+            Separator::Comma => "comma",
+            Separator::Semicolon => "semicolon",
+            Separator::Tab => "tab",
+            Separator::Blank => "blanks",
+        };
+        let decimal = if self.decimal_comma { ", decimal comma" } else { "" };
+        let header = if self.names.is_some() { "" } else { ", no header" };
+        format!("{separator}{decimal}{header}")
+    }
+}
+
+fn names_time(names: &[String]) -> bool {
+    names.iter().any(|name| name.eq_ignore_ascii_case("t") || name.to_lowercase().contains("time"))
+}
+
+fn delimiter(separator: Separator) -> u8 {
+    match separator {
+        Separator::Comma => b',',
+        Separator::Semicolon => b';',
+        Separator::Tab => b'\t',
+        Separator::Blank => b' ',
+    }
+}
+
+fn is_comment(line: &[u8], comments: &[String]) -> bool {
+    comments.iter().any(|mark| !mark.is_empty() && line.starts_with(mark.as_bytes()))
+}
+
+/// Bytes from the start of a file that the layout is found from.
+pub(super) const SAMPLE_BYTES: usize = 64 * 1024;
+const _: () = assert!(SAMPLE_BYTES <= MOST_LINE_BYTES);
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    fn find(text: &str, stated: &Stated) -> Result<Option<Layout>> {
+        let lines: Vec<&[u8]> = text.lines().map(str::as_bytes).collect();
+        Layout::find(&lines, stated)
+    }
+
+    fn found(text: &str) -> Layout {
+        find(text, &Stated::default()).unwrap().unwrap()
+    }
+
+    #[test]
+    fn separators_and_decimal_signs_are_told_apart() {
+        use Separator::*;
+        for (text, separator, decimal_comma, columns) in [
+            ("t,x\n0,1\n1,2\n", Comma, false, 2),
+            ("t;x\n0;1\n1;2\n", Semicolon, false, 2),
+            ("t;x\n0,5;1\n1,5;2\n", Semicolon, true, 2),
+            ("t\tx\n0.5\t1\n", Tab, false, 2),
+            ("t\tx\n0,5\t1\n", Tab, true, 2),
+            ("t x\n 0.5   1\n 1.5  2\n", Blank, false, 2),
+            ("0,5 1,5\n1,5 2,5\n", Blank, true, 2),
+            ("0.5, 1.5, 2\n1.5, 2.5, 3\n", Comma, false, 3),
+            ("0 \t 1\n1 \t 2\n", Tab, false, 2),
+            ("t,x\n0,nan\n1,2\n", Comma, false, 2),
+        ] {
+            let layout = found(text);
+            let shape = (layout.separator, layout.decimal_comma, layout.columns);
+            assert_eq!(shape, (separator, decimal_comma, columns), "{text:?}");
+        }
+    }
+
+    #[test]
+    fn names_are_found_above_the_rows_in_quotes_or_in_a_comment() {
+        let names = |text: &str| found(text).names.map(|names| names.join("|"));
+        assert_eq!(names("\"t\",\"T, air\"\n0,1\n").as_deref(), Some("t|T, air"));
+        assert_eq!(names("# t x v\n0 1 2\n").as_deref(), Some("t|x|v"));
+        assert_eq!(names("run of today\nstep 0.1\nt;x\n0;1\n").as_deref(), Some("t|x"));
+        assert_eq!(names("0;1\n1;2\n"), None);
+        let units = found("t,x\ns,degC\n0,1\n");
+        assert_eq!(units.names.unwrap(), ["t", "x"]);
+        assert_eq!(units.units.unwrap(), ["s", "degC"]);
+    }
+
+    #[test]
+    fn what_is_stated_holds() {
+        let stated = Stated { comment: Some("@".into()), ..Stated::default() };
+        let layout = find("@ a\nt,x\n0,1\n", &stated).unwrap().unwrap();
+        assert_eq!((layout.first_row, layout.names.unwrap().len()), (3, 2));
+        let stated = Stated { skip_lines: Some(2), ..Stated::default() };
+        let layout = find("1,2\nt,x\n0,1\n", &stated).unwrap().unwrap();
+        assert_eq!(layout.first_row, 3);
+        assert_eq!(layout.names.unwrap(), ["t", "x"]);
+    }
+
+    #[test]
+    fn files_without_rows() {
+        assert_eq!(find("", &Stated::default()).unwrap(), None);
+        assert_eq!(find("t,x\n\n", &Stated::default()).unwrap(), None);
+        let fault = find("a story\nof two lines\n", &Stated::default()).unwrap_err();
+        assert!(fault.text.starts_with("no rows of numbers found: this line is `of two lines`"));
+        assert_eq!(fault.line, Some(2));
+    }
+}

@@ -1,0 +1,211 @@
+//! What printed digits can resolve: a pattern found over a whole column, and from it
+//! half a unit in the last place of every value.
+
+use super::number::Printed;
+
+/// How finely a column was printed.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub enum Resolution {
+    /// Written in full: half a unit in the last place of an `f64`.
+    Full,
+    /// Half a unit of this decimal, the same in every row.
+    Decimals(u8),
+    /// Half a unit in the last of these significant digits, decade by decade.
+    Significant(u8),
+    /// Shortest text of single-precision numbers: half a unit in the last place of an
+    /// `f32`.
+    Single,
+}
+
+impl Resolution {
+    /// How far the number behind a printed value may lie from it.
+    pub fn at(self, value: f64) -> f64 {
+        let full = half_ulp(value);
+        match self {
+            Resolution::Full => full,
+            Resolution::Decimals(decimals) => (0.5 * 10f64.powi(-i32::from(decimals))).max(full),
+            Resolution::Significant(digits) => {
+                if value == 0.0 {
+                    return full;
+                }
+                let decade = decade(value);
+                (0.5 * 10f64.powi(decade + 1 - i32::from(digits))).max(full)
+            }
+            Resolution::Single => {
+                let single = value.abs() as f32;
+                0.5 * f64::from(single.next_up() - single)
+            }
+        }
+    }
+
+    /// In words, for reports.
+    pub fn describe(self) -> String {
+        match self {
+            Resolution::Full => "full double precision".to_owned(),
+            Resolution::Decimals(decimals) => format!("{decimals} decimals"),
+            Resolution::Significant(digits) => format!("{digits} significant digits"),
+            Resolution::Single => "single precision".to_owned(),
+        }
+    }
+}
+
+/// The power of ten of the leading digit.
+fn decade(value: f64) -> i32 {
+    // Exact from the shortest text; log10 errs at powers of ten.
+    let text = format!("{:e}", value.abs());
+    text.rsplit('e').next().and_then(|exponent| exponent.parse().ok()).unwrap_or(0)
+}
+
+/// Half a unit in the last place of an `f64`.
+pub fn half_ulp(value: f64) -> f64 {
+    let size = value.abs();
+    0.5 * (size.next_up() - size)
+}
+
+/// From this many digits on a column is in full: the last one is finer than an `f64`
+/// over most of a decade.
+const DIGITS_IN_FULL: u8 = 17;
+/// Share of rows that must reach the largest number of digits for it to be the number
+/// that the producer printed. Nine in ten do where trailing zeros are dropped.
+const MOST_ROWS: f64 = 0.5;
+
+/// Gathers how the values of one column were printed.
+#[derive(Clone, Debug)]
+pub(super) struct Pattern {
+    rows: u64,
+    /// Values that are not zero and differ from the row before: only they tell.
+    telling: u64,
+    by_digits: [u64; 65],
+    decimals: Option<u8>,
+    plain_and_even: bool,
+    constant: bool,
+    single: bool,
+    last: f64,
+}
+
+impl Pattern {
+    pub(super) fn new() -> Pattern {
+        Pattern {
+            rows: 0,
+            telling: 0,
+            by_digits: [0; 65],
+            decimals: None,
+            plain_and_even: true,
+            constant: true,
+            single: true,
+            last: f64::NAN,
+        }
+    }
+
+    pub(super) fn add(&mut self, value: f64, printed: Printed) {
+        let Printed { significant, decimals, scientific } = printed;
+        let even = !scientific && self.decimals.is_none_or(|known| known == decimals);
+        self.plain_and_even &= even;
+        self.decimals = Some(decimals);
+        if self.rows > 0 && value != self.last {
+            self.constant = false;
+        }
+        if value != 0.0 && value != self.last {
+            self.telling += 1;
+            self.by_digits[usize::from(significant).min(64)] += 1;
+            self.single &= significant <= 9 && is_shortest_single(value);
+        }
+        self.rows += 1;
+        self.last = value;
+    }
+
+    pub(super) fn conclude(&self, stated: Option<u8>) -> Resolution {
+        if let Some(digits) = stated {
+            let in_full = digits >= DIGITS_IN_FULL;
+            return if in_full { Resolution::Full } else { Resolution::Significant(digits) };
+        }
+        let most = self.by_digits.iter().rposition(|&count| count > 0).unwrap_or(0) as u8;
+        if self.constant || self.telling == 0 {
+            return Resolution::Full;
+        }
+        if self.plain_and_even
+            && let Some(decimals) = self.decimals
+        {
+            return Resolution::Decimals(decimals);
+        }
+        if most >= DIGITS_IN_FULL {
+            return Resolution::Full;
+        }
+        let reached = self.by_digits[usize::from(most)] as f64 / self.telling as f64;
+        if reached > MOST_ROWS {
+            return Resolution::Significant(most);
+        }
+        // Seven to nine digits without a pattern: the shortest text of an f32.
+        if self.single && most >= 7 { Resolution::Single } else { Resolution::Full }
+    }
+}
+
+fn is_shortest_single(value: f64) -> bool {
+    let text = format!("{:e}", value as f32);
+    text.parse::<f64>().is_ok_and(|shortest| shortest == value)
+}
+
+#[cfg(test)]
+mod tests {
+    use super::super::number::Field;
+    use super::*;
+
+    fn conclude<'a>(column: impl IntoIterator<Item = &'a str>) -> Resolution {
+        let mut pattern = Pattern::new();
+        for text in column {
+            match Field::read(text.as_bytes(), false) {
+                Field::Number(value, printed) => pattern.add(value, printed),
+                other => panic!("{text}: {other:?}"),
+            }
+        }
+        pattern.conclude(None)
+    }
+
+    fn printed(print: impl Fn(f64) -> String) -> Resolution {
+        let column: Vec<String> =
+            (0..200).map(|k| print(12.0 * (-0.05 * f64::from(k)).exp())).collect();
+        conclude(column.iter().map(String::as_str))
+    }
+
+    /// As C prints with `%.Ng`: trailing zeros dropped.
+    fn general(value: f64, digits: usize) -> String {
+        let text = format!("{:.*e}", digits - 1, value);
+        let rounded: f64 = text.parse().unwrap();
+        format!("{rounded}")
+    }
+
+    #[test]
+    fn the_usual_formats_are_recognised() {
+        assert_eq!(printed(|x| format!("{x:.3}")), Resolution::Decimals(3));
+        assert_eq!(printed(|x| format!("{x:.5e}")), Resolution::Significant(6));
+        assert_eq!(printed(|x| general(x, 6)), Resolution::Significant(6));
+        assert_eq!(printed(|x| general(x, 12)), Resolution::Significant(12));
+        assert_eq!(printed(|x| format!("{x}")), Resolution::Full);
+        assert_eq!(printed(|x| format!("{x:.16e}")), Resolution::Full);
+        assert_eq!(printed(|x| format!("{}", x as f32)), Resolution::Single);
+    }
+
+    #[test]
+    fn columns_that_tell_nothing_are_in_full() {
+        assert_eq!(conclude(["5", "5", "5"]), Resolution::Full);
+        assert_eq!(conclude(["0", "0.5", "0.25", "0.125", "1"]), Resolution::Full);
+        assert_eq!(conclude(["0", "0", "0"]), Resolution::Full);
+    }
+
+    #[test]
+    fn rows_at_rest_do_not_hide_the_pattern() {
+        let rest = std::iter::repeat_n("0", 500);
+        let moving = ["1.23457", "1.34567", "1.45678", "1.5", "1.67891"];
+        assert_eq!(conclude(rest.chain(moving)), Resolution::Significant(6));
+    }
+
+    #[test]
+    fn half_a_unit_in_the_last_place() {
+        assert_eq!(Resolution::Decimals(3).at(7.0), 0.0005);
+        assert_eq!(Resolution::Significant(3).at(1000.0), 5.0);
+        assert_eq!(Resolution::Significant(3).at(-999.0), 0.5);
+        assert_eq!(Resolution::Full.at(1.0), f64::EPSILON / 2.0);
+        assert_eq!(Resolution::Decimals(30).at(1.0), f64::EPSILON / 2.0);
+        assert_eq!(Resolution::Single.at(1.0), f64::from(f32::EPSILON) / 2.0);
+    }
+}

@@ -1,0 +1,124 @@
+//! The first pass: what can be known only after every row was seen.
+
+use super::grid::{Grid, GridFinder};
+use super::layout::{Layout, SAMPLE_BYTES, Stated};
+use super::number::Field;
+use super::open::Source;
+use super::resolution::{Pattern, Resolution};
+use crate::fault::{Fault, Result};
+
+/// Which columns are read, counted from zero.
+#[derive(Clone, Debug, PartialEq)]
+pub struct Selection {
+    /// The time stamps.
+    pub time: usize,
+    /// The channels, in the order in which their values are handed out.
+    pub channels: Vec<usize>,
+}
+
+/// What one file looks like as a whole.
+#[derive(Clone, Debug)]
+pub struct Survey {
+    /// The layout.
+    pub layout: Layout,
+    /// The columns that are read.
+    pub selection: Selection,
+    /// Rows with a time stamp.
+    pub rows: u64,
+    /// The grid of the stamps.
+    pub grid: Grid,
+    /// How finely the stamps are printed, where they are not exact multiples.
+    pub time: Resolution,
+    /// How finely each channel is printed.
+    pub channels: Vec<Resolution>,
+    /// The first stamp.
+    pub first: Option<crate::number::Decimal>,
+}
+
+impl Source {
+    /// The layout of the file; `None` where it holds no rows.
+    ///
+    /// # Errors
+    /// A file that cannot be read, is no text, or fits no layout.
+    pub fn layout(&self, stated: &Stated) -> Result<Option<Layout>> {
+        let (sample, whole) = self.sample(SAMPLE_BYTES)?;
+        if let Some(at) = memchr::memchr(0, &sample) {
+            let what = match sample[..] {
+                [0x1f, 0x8b, ..] => "gzip data",
+                [0x28, 0xb5, 0x2f, 0xfd, ..] => "zstd data",
+                [b'P', b'A', b'R', b'1', ..] => "Parquet data",
+                [0x93, b'N', b'U', b'M', ..] => "a NumPy array",
+                [0xff, 0xfe, ..] | [0xfe, 0xff, ..] => "UTF-16 text",
+                _ => "not text",
+            };
+            let fault = Fault::new(format!("this file is {what} (byte {at} is zero)"));
+            return Err(fault.help("this build reads text files; write CSV"));
+        }
+        let mut owned: Vec<Vec<u8>> = Vec::new();
+        let mut lines = super::lines::Lines::default();
+        let mut keep = |_: u64, line: &[u8]| {
+            owned.push(line.to_vec());
+            Ok(())
+        };
+        lines.feed(&sample, &mut keep)?;
+        if whole {
+            lines.finish(&mut keep)?;
+        }
+        let lines: Vec<&[u8]> = owned.iter().map(Vec::as_slice).collect();
+        Layout::find(&lines, stated)
+    }
+}
+
+impl Survey {
+    /// Goes through the whole file once.
+    ///
+    /// # Errors
+    /// A file that cannot be read, or a line too long.
+    pub fn new(
+        source: &Source,
+        layout: Layout,
+        selection: Selection,
+        stated: &Stated,
+    ) -> Result<Survey> {
+        let mut patterns = vec![Pattern::new(); selection.channels.len()];
+        let mut time_pattern = Pattern::new();
+        let mut finder = GridFinder::default();
+        let mut rows = 0;
+        let mut first = None;
+        source.each_line(&mut |number, line, _| {
+            if number < layout.first_row || layout.passes_over(line) {
+                return Ok(());
+            }
+            layout.split(line, &mut |column, field| {
+                if column == selection.time
+                    && let Field::Number(time, printed) = Field::read(field, layout.decimal_comma)
+                {
+                    let exact = Field::decimal(field, layout.decimal_comma);
+                    if rows == 0 {
+                        first = exact;
+                    }
+                    rows += 1;
+                    time_pattern.add(time, printed);
+                    finder.add(time, exact, printed);
+                }
+                // A column can serve two channels only by mistake, which is refused
+                // before; the first place is the only one.
+                if let Some(place) = selection.channels.iter().position(|&c| c == column)
+                    && let Field::Number(value, printed) = Field::read(field, layout.decimal_comma)
+                {
+                    patterns[place].add(value, printed);
+                }
+            });
+            Ok(())
+        })?;
+        Ok(Survey {
+            grid: finder.conclude(),
+            time: time_pattern.conclude(stated.digits),
+            channels: patterns.iter().map(|pattern| pattern.conclude(stated.digits)).collect(),
+            layout,
+            selection,
+            rows,
+            first,
+        })
+    }
+}
