@@ -47,6 +47,9 @@ pub(super) struct GridFinder {
     most_significant: u8,
     most_decimals: u8,
     steps: u64,
+    sum: f64,
+    widest_tolerance: f64,
+    overflowed: bool,
     clusters: Vec<Cluster>,
     latest: usize,
 }
@@ -87,7 +90,15 @@ impl GridFinder {
 
     fn count(&mut self, step: f64, exact: Option<Decimal>, tolerance: f64) {
         self.steps += 1;
-        let known = self.clusters.iter().position(|c| (c.spacing - step).abs() <= tolerance);
+        self.sum += step;
+        self.widest_tolerance = self.widest_tolerance.max(tolerance);
+        // Where stamps are printed to few digits for their step, equal decimals tell
+        // more than a tolerance as wide as the step itself.
+        let coarse = tolerance > 0.3 * step;
+        let known = self.clusters.iter().position(|cluster| {
+            let near = !coarse && (cluster.spacing - step).abs() <= tolerance;
+            near || exact.is_some() && exact == cluster.exact
+        });
         let place = match known {
             Some(place) => place,
             None if self.clusters.len() < MOST_CLUSTERS => {
@@ -103,6 +114,7 @@ impl GridFinder {
                 self.clusters.len() - 1
             }
             None => {
+                self.overflowed = true;
                 self.latest = usize::MAX;
                 return;
             }
@@ -122,7 +134,15 @@ impl GridFinder {
             return Grid::Varied;
         };
         if (most.count as f64) < UNIFORM_SHARE * self.steps as f64 {
-            return Grid::Varied;
+            let mean = self.sum / self.steps as f64;
+            let near = |c: &Cluster| (c.spacing - mean).abs() <= self.widest_tolerance / 2.0;
+            let rounded = !self.overflowed && self.clusters.iter().all(near);
+            // Steps that differ by no more than the rounding of their stamps.
+            return if rounded {
+                Grid::Uniform { spacing: mean, exact: None, holes: true }
+            } else {
+                Grid::Varied
+            };
         }
         let exact = most.exact.filter(|_| most.identical);
         let spacing = exact.map_or(most.sum / most.count as f64, |e| e.to_double().to_f64());
