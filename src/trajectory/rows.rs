@@ -50,9 +50,13 @@ impl Survey {
                 return Ok(());
             }
             values.fill(None);
-            let Some((time, exact)) = self.row(line, text, ended, &mut values, findings) else {
+            let (stamp, usable) = self.row(line, text, ended, &mut values, findings);
+            let Some((time, exact)) = stamp else { return Ok(()) };
+            if !usable {
+                // Its stamp still counts, or the next row would seem to leave a hole.
+                state.last = Some((time, values.clone()));
                 return Ok(());
-            };
+            }
             let resolution = self.time_resolution(time, exact);
             self.order((line, time, resolution), &values, is_event, &mut state, findings);
             each(&Row {
@@ -64,7 +68,8 @@ impl Survey {
         })
     }
 
-    /// Reads one line; `None` where it is no usable row, which is then a finding.
+    /// Reads one line: its stamp, and whether it is a usable row; what it is not is a
+    /// finding.
     fn row(
         &self,
         line: u64,
@@ -72,7 +77,7 @@ impl Survey {
         ended: bool,
         values: &mut [Option<f64>],
         findings: &mut Findings,
-    ) -> Option<(f64, Option<Decimal>)> {
+    ) -> (Option<(f64, Option<Decimal>)>, bool) {
         let comma = self.layout.decimal_comma;
         let mut time = None;
         let mut columns = 0;
@@ -102,12 +107,12 @@ impl Survey {
         if !ended && (columns != expected || strange.is_some() || short) {
             let text = "the last line breaks off: the file was cut short or is still being written";
             findings.fatal(Kind::CutOffLine, line, text);
-            return None;
+            return (None, false);
         }
         if columns != expected {
             let text = format!("this row has {columns} fields, the others have {expected}");
             findings.fatal(Kind::RowLength, line, text);
-            return None;
+            return (time, false);
         }
         if let Some((column, field)) = strange {
             let name = self.layout.names.as_ref().and_then(|names| names.get(column));
@@ -115,7 +120,7 @@ impl Survey {
             let found = if field.is_empty() { "empty".to_owned() } else { quoted(&field) };
             findings.fatal(Kind::NotANumber, line, format!("column {name} is {found}, not a number"));
         }
-        time
+        (time, true)
     }
 
     /// Fewer digits than every other row has: the end of the number is missing.
