@@ -85,7 +85,7 @@ impl Survey {
         let mut finder = GridFinder::default();
         let mut rows = 0;
         let mut first = None;
-        source.each_line(&mut |number, line, _| {
+        source.each_line(&mut |number, line, ended| {
             if number < layout.first_row || layout.passes_over(line) {
                 return Ok(());
             }
@@ -101,9 +101,10 @@ impl Survey {
                     time_pattern.add(time, printed);
                     finder.add(time, exact, printed);
                 }
+                // A last line without an end may be cut off: it must not spoil the pattern.
                 // A column can serve two channels only by mistake, which is refused
                 // before; the first place is the only one.
-                if let Some(place) = selection.channels.iter().position(|&c| c == column)
+                if let Some(place) = selection.channels.iter().position(|&c| ended && c == column)
                     && let Field::Number(value, printed) = Field::read(field, layout.decimal_comma)
                 {
                     patterns[place].add(value, printed);
