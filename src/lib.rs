@@ -5,5 +5,6 @@ pub mod exact;
 pub mod fault;
 pub mod formula;
 pub mod number;
+pub mod submission;
 pub mod trajectory;
 pub use case::Library;

@@ -252,7 +252,7 @@ impl Layout {
 }
 
 fn names_time(names: &[String]) -> bool {
-    names.iter().any(|name| name.eq_ignore_ascii_case("t") || name.to_lowercase().contains("time"))
+    names.iter().any(|name| name == "t" || name.to_lowercase().contains("time"))
 }
 
 fn delimiter(separator: Separator) -> u8 {

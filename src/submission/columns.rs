@@ -1,0 +1,331 @@
+//! Which column of a file is which channel: by what is stated, else by name, never by
+//! guess.
+
+use std::collections::BTreeMap;
+
+use super::units::{Conversion, convert, is_known};
+use super::{ColumnName, ColumnStated};
+use crate::case::{Case, Channel};
+use crate::fault::{Fault, Result, nearest, quoted};
+use crate::number::Double;
+use crate::trajectory::{Layout, Selection};
+
+/// A channel of the case with its place in the file.
+#[derive(Clone, Debug, PartialEq)]
+pub struct Column {
+    /// Place among [`Case::channels`].
+    pub channel: usize,
+    /// Column of the file, from zero.
+    pub column: usize,
+    /// From the file's unit to the case's.
+    pub conversion: Conversion,
+}
+
+/// All columns of a file that are compared.
+#[derive(Clone, Debug)]
+pub struct Matched {
+    /// The column of the time stamps, from zero.
+    pub time: usize,
+    /// From the file's unit of time to the case's.
+    pub time_conversion: Conversion,
+    /// In the order of the channels of the case.
+    pub channels: Vec<Column>,
+    /// Channels that should be there and are not, with the reason.
+    pub missing: Vec<(String, String)>,
+    /// What was assumed and what is left out, in words.
+    pub notes: Vec<String>,
+}
+
+impl Matched {
+    /// The columns for the reader.
+    pub fn selection(&self) -> Selection {
+        let channels = self.channels.iter().map(|channel| channel.column).collect();
+        Selection { time: self.time, channels }
+    }
+}
+
+/// A header split into a name and a unit in brackets.
+struct Header<'a> {
+    full: &'a str,
+    name: &'a str,
+    unit: Option<&'a str>,
+}
+
+impl<'a> Header<'a> {
+    fn new(full: &'a str, below: Option<&'a str>) -> Header<'a> {
+        let full = full.trim();
+        let bare = full.trim_end();
+        for (open, close) in [('[', ']'), ('(', ')')] {
+            if let Some(inner) = bare.strip_suffix(close)
+                && let Some(at) = inner.rfind(open)
+            {
+                let (name, unit) = (bare[..at].trim(), inner[at + 1..].trim());
+                if !name.is_empty() {
+                    return Header { full, name, unit: Some(unit) };
+                }
+            }
+        }
+        let below = below.map(|unit| unit.trim_matches(['[', ']', '(', ')', ' ']));
+        Header { full, name: full, unit: below.filter(|unit| !unit.is_empty()) }
+    }
+}
+
+struct Matcher<'a> {
+    headers: Option<Vec<Header<'a>>>,
+    columns: usize,
+    stated: &'a BTreeMap<String, ColumnStated>,
+    notes: Vec<String>,
+}
+
+/// Finds every channel of the case in a file of this layout.
+///
+/// All states are looked for. Outputs are compared where the file has them. Where the
+/// submission states columns for channels, states that it leaves out and that are not
+/// found by name are left out, and that is noted.
+///
+/// # Errors
+/// Names that fit several columns, with the candidates; names of channels that the
+/// case does not have; units that do not convert.
+pub fn match_columns(
+    case: &Case,
+    layout: &Layout,
+    stated: &BTreeMap<String, ColumnStated>,
+) -> Result<Matched> {
+    let channels = case.channels();
+    for name in stated.keys() {
+        if name != "time" && channels.iter().all(|channel| channel.name != name) {
+            let fault = Fault::new(format!("case `{}` has no channel {}", case.name, quoted(name)));
+            let known = channels.iter().map(|c| c.name).chain(["time"]);
+            let list: Vec<&str> = channels.iter().map(|c| c.name).collect();
+            return Err(match nearest(name, known) {
+                Some(near) => fault.help(format!("did you mean `{near}`?")),
+                None => fault.help(format!("its channels are {}", list.join(", "))),
+            });
+        }
+    }
+    let headers = layout.names.as_ref().map(|names| {
+        let below = |index: usize| layout.units.as_ref().map(|units| units[index].as_str());
+        let headers = names.iter().enumerate().map(|(i, name)| Header::new(name, below(i)));
+        headers.collect::<Vec<_>>()
+    });
+    let mut matcher = Matcher { headers, columns: layout.columns, stated, notes: Vec::new() };
+    let (time, time_conversion) = matcher.time(case)?;
+    let any_stated = matcher.any_channel_stated();
+    let mut found = Vec::new();
+    let mut missing = Vec::new();
+    for (index, channel) in channels.iter().enumerate() {
+        match matcher.channel(channel, channels.len(), time)? {
+            Ok((column, conversion)) => found.push(Column { channel: index, column, conversion }),
+            Err(reason) if stated.contains_key(channel.name) || channel.is_state && !any_stated => {
+                missing.push((channel.name.to_owned(), reason));
+            }
+            Err(_) if channel.is_state => {
+                let note = format!("state `{}` is not in the file and not compared", channel.name);
+                matcher.notes.push(note);
+            }
+            Err(_) => {}
+        }
+    }
+    for (place, column) in found.iter().enumerate() {
+        let twice = found[..place].iter().find(|other| other.column == column.column);
+        let name = |column: &Column| channels[column.channel].name;
+        if let Some(other) = twice {
+            let text = format!(
+                "column {} is given to both `{}` and `{}`",
+                column.column + 1,
+                name(other),
+                name(column)
+            );
+            return Err(Fault::new(text).help("correct `[columns]` in submission.toml"));
+        }
+        if column.column == time {
+            let text = format!("column {} is given to both time and `{}`", time + 1, name(column));
+            return Err(Fault::new(text).help("correct `[columns]` in submission.toml"));
+        }
+    }
+    let notes = matcher.notes;
+    Ok(Matched { time, time_conversion, channels: found, missing, notes })
+}
+
+impl Matcher<'_> {
+    fn time(&mut self, case: &Case) -> Result<(usize, Conversion)> {
+        let unit = &case.time.unit;
+        let stated = self.stated.get("time");
+        let column = match stated.and_then(|stated| stated.column.as_ref()) {
+            Some(name) => self.stated_column(name)?.map_err(|reason| {
+                Fault::new(format!("no time stamps: {reason}"))
+                    .help("correct `time` under `[columns]` in submission.toml")
+            })?,
+            None => self.named_time()?,
+        };
+        let conversion = self.conversion(column, unit, stated.and_then(|s| s.unit.as_deref()))?;
+        let conversion = conversion.map_err(Fault::new)?;
+        if conversion.offset != Double::ZERO {
+            return Err(Fault::new("a unit of time is expected for the time stamps"));
+        }
+        Ok((column, conversion))
+    }
+
+    fn any_channel_stated(&self) -> bool {
+        self.stated.keys().any(|name| name != "time")
+    }
+
+    fn named_time(&self) -> Result<usize> {
+        let Some(headers) = &self.headers else { return Ok(0) };
+        // Not `T`, which is a temperature or a period as often as a time.
+        let is_time = |name: &str| name == "t" || name.eq_ignore_ascii_case("time");
+        let found: Vec<usize> = (0..headers.len()).filter(|&i| is_time(headers[i].name)).collect();
+        match found[..] {
+            [column] => Ok(column),
+            [] => Err(Fault::new(format!("no column of time stamps: the header has {}", self.list()))
+                .help("write `time = \"NAME\"` under `[columns]` in submission.toml, or `--column time=NAME`")),
+            _ => Err(Fault::new("several columns could be the time stamps")
+                .help("write `time = NUMBER` under `[columns]` in submission.toml")),
+        }
+    }
+
+    /// A column stated by name or number; the inner error says why it is not there.
+    fn stated_column(&self, name: &ColumnName) -> Result<std::result::Result<usize, String>> {
+        let name = match name {
+            ColumnName::Number(number) if *number <= self.columns => return Ok(Ok(number - 1)),
+            ColumnName::Number(number) => {
+                return Ok(Err(format!("column {number} of {}", self.columns)));
+            }
+            ColumnName::Name(name) => name.trim(),
+        };
+        let Some(headers) = &self.headers else {
+            return Ok(Err(format!("{} is named, but the file has no header", quoted(name))));
+        };
+        let exact = |header: &Header| header.full == name;
+        self.unique(name, headers, &[&exact, &|header| header.name == name])
+            .map(|found| found.ok_or_else(|| {
+                format!("there is no column {}, the header has {}", quoted(name), self.list())
+            }))
+    }
+
+    /// The only column that one of the tests, taken in order, holds for.
+    fn unique(
+        &self,
+        name: &str,
+        headers: &[Header],
+        tests: &[&dyn Fn(&Header) -> bool],
+    ) -> Result<Option<usize>> {
+        for test in tests {
+            let found: Vec<usize> = (0..headers.len()).filter(|&i| test(&headers[i])).collect();
+            match found[..] {
+                [] => {}
+                [column] => return Ok(Some(column)),
+                _ => {
+                    let candidates: Vec<String> = found
+                        .iter()
+                        .map(|&i| format!("{} (column {})", quoted(headers[i].full), i + 1))
+                        .collect();
+                    let text = format!("{} fits several columns: {}", quoted(name), candidates.join(", "));
+                    let help = format!("write `{name} = NUMBER` under `[columns]` in submission.toml");
+                    return Err(Fault::new(text).help(help));
+                }
+            }
+        }
+        Ok(None)
+    }
+
+    fn channel(
+        &mut self,
+        channel: &Channel,
+        channels: usize,
+        time: usize,
+    ) -> Result<std::result::Result<(usize, Conversion), String>> {
+        let stated = self.stated.get(channel.name);
+        let column = match stated.and_then(|stated| stated.column.as_ref()) {
+            Some(name) => self.stated_column(name)?,
+            None => self.named_channel(channel, channels, time)?,
+        };
+        let column = match column {
+            Ok(column) => column,
+            Err(reason) => return Ok(Err(reason)),
+        };
+        let unit = stated.and_then(|stated| stated.unit.as_deref());
+        let conversion = self.conversion(column, channel.unit, unit)?;
+        Ok(conversion.map(|conversion| (column, conversion)))
+    }
+
+    fn named_channel(
+        &self,
+        channel: &Channel,
+        channels: usize,
+        time: usize,
+    ) -> Result<std::result::Result<usize, String>> {
+        let Some(headers) = &self.headers else {
+            // Two columns and one channel leave no choice; anything more would be a guess.
+            if channels == 1 && self.columns == 2 && time == 0 {
+                return Ok(Ok(1));
+            }
+            let text = format!("which column is `{}`? the file has no header", channel.name);
+            if !channel.is_state || self.any_channel_stated() {
+                return Ok(Err(text));
+            }
+            return Err(Fault::new(text).help(format!(
+                "write `{} = NUMBER` under `[columns]` in submission.toml, or `--column {}=NUMBER`",
+                channel.name, channel.name
+            )));
+        };
+        let name = channel.name;
+        let same = |header: &Header| header.full == name;
+        let bare = |header: &Header| header.name == name;
+        let any_case = |header: &Header| header.name.eq_ignore_ascii_case(name);
+        let found = self.unique(name, headers, &[&same, &bare, &any_case])?;
+        Ok(found.ok_or_else(|| {
+            format!("there is no column `{name}`, the header has {}", self.list())
+        }))
+    }
+
+    /// The conversion to a unit of the case, from the unit stated or the one in the
+    /// header; the inner error says why the column cannot be that channel.
+    fn conversion(
+        &mut self,
+        column: usize,
+        target: &str,
+        stated: Option<&str>,
+    ) -> Result<std::result::Result<Conversion, String>> {
+        if let Some(unit) = stated {
+            return convert(unit, target).map(Ok);
+        }
+        let header = self.headers.as_ref().map(|headers| &headers[column]);
+        let Some((name, unit)) = header.and_then(|h| Some((h.name, h.unit?))) else {
+            return Ok(Ok(Conversion::NONE));
+        };
+        if unit == target || !is_known(unit) {
+            return Ok(Ok(Conversion::NONE));
+        }
+        match convert(unit, target) {
+            Ok(conversion) => {
+                if !conversion.is_none() {
+                    self.notes.push(format!(
+                        "column {} converted from {unit} to {target}, as its header says",
+                        quoted(name)
+                    ));
+                }
+                Ok(Ok(conversion))
+            }
+            Err(_) => Ok(Err(format!(
+                "column {} is in {} as its header says, not in {}",
+                quoted(name),
+                quoted(unit),
+                quoted(target)
+            ))),
+        }
+    }
+
+    fn list(&self) -> String {
+        let headers = self.headers.iter().flatten().map(|header| quoted(header.full));
+        let mut names: Vec<String> = headers.take(12).collect();
+        if self.columns > 12 {
+            names.push("...".to_owned());
+        }
+        names.join(", ")
+    }
+}
+
+
+#[cfg(test)]
+mod tests;

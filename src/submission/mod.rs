@@ -1,0 +1,135 @@
+//! Submissions: what a producer hands in, where it lies, and which column of a file
+//! is which channel in which unit.
+//!
+//! A submission comes from outside. It is data and nothing in it is run; its files
+//! have to lie in its own folder.
+
+mod columns;
+mod find;
+mod schema;
+mod units;
+
+use std::collections::BTreeMap;
+use std::path::PathBuf;
+
+use crate::case::Replacements;
+use crate::trajectory::Stated;
+
+pub use columns::{Column, Matched, match_columns};
+pub use find::{MOST_DEPTH, Place, confined, discover};
+pub use schema::{MOST_RUNS, MOST_SUBMISSION_BYTES};
+pub use units::{Conversion, convert};
+
+/// What a producer hands in, with defaults filled.
+#[derive(Clone, Debug, Default)]
+pub struct Submission {
+    /// The case, if one is named.
+    pub case: Option<String>,
+    /// Who wrote the files.
+    pub producer: Option<String>,
+    /// What the audit should find.
+    pub expect: Expect,
+    /// Parameters of the case that are replaced.
+    pub parameters: Replacements,
+    /// What the producer states of its method.
+    pub claims: Claims,
+    /// Limits that replace those of the case.
+    pub limits: LimitsStated,
+    /// Columns by channel; the time stamps under `time`.
+    pub columns: BTreeMap<String, ColumnStated>,
+    /// The layout as far as stated.
+    pub layout: Stated,
+    /// The files.
+    pub runs: Vec<Run>,
+}
+
+/// What the audit should find for the submission to be in order.
+#[derive(Clone, Copy, Debug, Default, PartialEq, Eq)]
+#[allow(missing_docs)]
+pub enum Expect {
+    #[default]
+    Pass,
+    Fail,
+    Undecided,
+}
+
+/// What the producer states of its method.
+#[derive(Clone, Debug, Default, PartialEq)]
+pub struct Claims {
+    /// The name of the method.
+    pub method: Option<String>,
+    /// Its order.
+    pub order: Option<f64>,
+}
+
+/// Limits of a submission; what is not stated comes from the case.
+#[derive(Clone, Debug, Default, PartialEq)]
+pub struct LimitsStated {
+    /// For channels without one of their own.
+    pub general: LimitStated,
+    /// By channel.
+    pub channels: BTreeMap<String, LimitStated>,
+    /// How far the observed order may stay below the claimed one.
+    pub order_slack: Option<f64>,
+}
+
+/// One limit as far as stated.
+#[derive(Clone, Copy, Debug, Default, PartialEq)]
+pub struct LimitStated {
+    /// In the unit of the channel.
+    pub absolute: Option<f64>,
+    /// A fraction.
+    pub relative: Option<f64>,
+    /// True where the relative part is a fraction of the peak.
+    pub of_peak: Option<bool>,
+}
+
+/// Where a channel is found in a file.
+#[derive(Clone, Debug, PartialEq)]
+pub struct ColumnStated {
+    /// The column, if stated.
+    pub column: Option<ColumnName>,
+    /// Its unit, if it is not the one of the case.
+    pub unit: Option<String>,
+}
+
+/// A column by the name in the header or by number from one.
+#[derive(Clone, Debug, PartialEq)]
+#[allow(missing_docs)]
+pub enum ColumnName {
+    Name(String),
+    Number(usize),
+}
+
+/// One file of a submission.
+#[derive(Clone, Debug)]
+pub struct Run {
+    /// As written in the submission.
+    pub file: String,
+    /// Where it lies, after it was checked to lie within the folder.
+    pub path: PathBuf,
+    /// Where its rungs come from.
+    pub setting: Setting,
+    /// Result or rung, if stated.
+    pub role: Option<Role>,
+}
+
+/// What sets a run apart from the others of its ladder.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub enum Setting {
+    /// The step, in the time unit of the case.
+    Step(f64),
+    /// The error setting of an adaptive code.
+    Tolerance(f64),
+    /// Not stated: the spacing of the rows is the step.
+    Unstated,
+}
+
+/// What a run is for.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum Role {
+    /// Limits apply to it.
+    Result,
+    /// It serves the order.
+    Rung,
+}
