@@ -1,10 +1,14 @@
 //! stepgauge
 #![allow(missing_docs)]
 pub mod case;
+pub mod compare;
 pub mod exact;
 pub mod fault;
 pub mod formula;
+pub mod judge;
+pub mod method;
 pub mod number;
+pub mod outcome;
 pub mod submission;
 pub mod trajectory;
 pub use case::Library;

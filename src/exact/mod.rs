@@ -191,6 +191,18 @@ impl Exact {
         self.system.jumps.iter().map(|jump| jump.time.to_f64())
     }
 
+    /// The first jump after a time, if it lies within a distance of it.
+    pub fn jump_after(&self, time: Double, within: f64) -> Option<Double> {
+        let jumps = &self.system.jumps;
+        let next = jumps.get(jumps.partition_point(|jump| jump.time <= time))?;
+        ((next.time - time).to_f64() <= within).then_some(next.time)
+    }
+
+    /// True where an input jumps within a distance of a time, on either side.
+    pub fn jumps_near(&self, time: Double, within: f64) -> bool {
+        self.jump_after(time - Double::from(within), 2.0 * within).is_some()
+    }
+
     /// True where an output jumps together with an input.
     pub fn has_feed_through(&self) -> bool {
         self.system.has_feed_through

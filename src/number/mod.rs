@@ -6,6 +6,7 @@
 //! [`Double`] is not good enough. Sources: [dekker-1971], [hida-li-bailey-2001],
 //! [higham-2005] in [`crate::references`].
 
+mod conversion;
 mod decimal;
 mod double;
 mod elementary;
@@ -14,6 +15,7 @@ mod matrix;
 mod quad;
 mod real;
 
+pub use conversion::Conversion;
 pub use decimal::Decimal;
 pub use double::Double;
 pub use expm::{Flow, Propagator, Step};

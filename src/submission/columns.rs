@@ -3,11 +3,11 @@
 
 use std::collections::BTreeMap;
 
-use super::units::{Conversion, convert, is_known};
+use super::units::{convert, is_known};
 use super::{ColumnName, ColumnStated};
 use crate::case::{Case, Channel};
 use crate::fault::{Fault, Result, nearest, quoted};
-use crate::number::Double;
+use crate::number::{Conversion, Double};
 use crate::trajectory::{Layout, Selection};
 
 /// A channel of the case with its place in the file.

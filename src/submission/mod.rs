@@ -18,7 +18,7 @@ use crate::trajectory::Stated;
 pub use columns::{Column, Matched, match_columns};
 pub use find::{MOST_DEPTH, Place, confined, discover};
 pub use schema::{MOST_RUNS, MOST_SUBMISSION_BYTES};
-pub use units::{Conversion, convert};
+pub use units::convert;
 
 /// What a producer hands in, with defaults filled.
 #[derive(Clone, Debug, Default)]

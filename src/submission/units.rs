@@ -2,31 +2,7 @@
 //! a column into the unit of its channel.
 
 use crate::fault::{Fault, Result, quoted};
-use crate::number::Double;
-
-/// `converted = factor * written + offset`.
-#[derive(Clone, Copy, Debug, PartialEq)]
-pub struct Conversion {
-    /// To double-double.
-    pub factor: Double,
-    /// To double-double.
-    pub offset: Double,
-}
-
-impl Conversion {
-    /// Nothing changes.
-    pub const NONE: Conversion = Conversion { factor: Double::ONE, offset: Double::ZERO };
-
-    /// The converted number.
-    pub fn apply(self, written: Double) -> Double {
-        written * self.factor + self.offset
-    }
-
-    /// True where nothing changes.
-    pub fn is_none(self) -> bool {
-        self == Conversion::NONE
-    }
-}
+use crate::number::{Conversion, Double};
 
 /// Exponents of m, kg, s, A, K, mol, rad.
 type Dimension = [i8; 7];

@@ -1,0 +1,376 @@
+//! Errors of one run in one pass over its rows.
+
+use crate::exact::{Exact, Walk};
+use crate::fault::Result;
+use crate::number::{Conversion, Decimal, Double};
+use crate::trajectory::{Findings, Grid, Kind, Resolution, Row, Source, Survey};
+
+/// The error that is allowed: `absolute + relative * |exact|`, or relative to the
+/// channel's peak.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct Limit {
+    /// In the unit of the channel.
+    pub absolute: f64,
+    /// A fraction.
+    pub relative: f64,
+    /// True where the fraction is of the peak.
+    pub of_peak: bool,
+}
+
+/// One run to be compared.
+#[derive(Clone, Copy, Debug)]
+pub struct Comparison<'a> {
+    /// The truth.
+    pub exact: &'a Exact,
+    /// The bytes.
+    pub source: &'a Source,
+    /// What the first pass has found.
+    pub survey: &'a Survey,
+    /// From the file's unit of time to the case's.
+    pub time: Conversion,
+    /// For each selected column: place among the channels of the case, conversion to
+    /// its unit, limit.
+    pub channels: &'a [(usize, Conversion, Limit)],
+    /// The step that the producer states, in the unit of the case.
+    pub step: Option<f64>,
+    /// Fewest rows within the window.
+    pub least_rows: u64,
+}
+
+/// What came out for one run.
+#[derive(Clone, Debug)]
+pub struct Compared {
+    /// Rows within the window.
+    pub rows: u64,
+    /// Rows outside the window, which are not compared.
+    pub outside: u64,
+    /// Spacing of the rows in the unit of the case, where it is uniform.
+    pub spacing: Option<f64>,
+    /// In the order of the selected columns.
+    pub channels: Vec<Deviation>,
+}
+
+/// Errors of one channel of one run.
+///
+/// # Units
+/// Those of the channel in the case; times in the unit of the case.
+#[derive(Clone, Debug)]
+pub struct Deviation {
+    /// Rows that were compared.
+    pub rows: u64,
+    /// Largest `|written - exact|`.
+    pub worst: f64,
+    /// The time of it.
+    pub worst_at: f64,
+    /// What the digits resolve there.
+    pub worst_resolution: f64,
+    /// The limit there.
+    pub worst_limit: f64,
+    /// Root mean square of the errors.
+    pub rms: f64,
+    /// `written - exact` in the last row.
+    pub end: f64,
+    /// Largest `|exact|` at the rows.
+    pub peak: f64,
+    /// What was assumed of the digits in the end.
+    pub resolution: Resolution,
+    /// True where the errors showed that the digits carry more than their pattern says.
+    pub refuted: bool,
+    /// How the errors lie to the limit.
+    pub margin: Margin,
+}
+
+/// How the errors of all rows lie to the limit.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct Margin {
+    /// Largest `|error| + resolution - limit`: below zero, every row keeps the limit.
+    pub certain: f64,
+    /// Largest `|error| - resolution - limit`: above zero, some row breaks it.
+    pub broken: f64,
+    /// Largest `|error| / limit`.
+    pub used: f64,
+}
+
+/// A start or an end within this fraction of the window counts as reached: codes that
+/// add up their time end a little early or late.
+const COVERAGE_SLACK: f64 = 1e-9;
+/// Rows that must all lie far below the assumed resolution before it is dropped.
+const ROWS_TO_REFUTE: u64 = 8;
+/// How far: where digits are really rounded, one row in ten lies below this.
+const FAR_BELOW: f64 = 0.1;
+
+/// Running sums of one channel.
+struct Sums {
+    rows: u64,
+    worst: f64,
+    worst_at: f64,
+    worst_exact: f64,
+    worst_doubt: [f64; 2],
+    squares: f64,
+    end: f64,
+    peak: f64,
+    /// Rows whose error is not zero, and the largest error in units of the resolution.
+    telling: u64,
+    largest_in_units: f64,
+    /// With the digits as their pattern says, and in full.
+    with: [Against; 2],
+}
+
+/// Extremes of one assumption on the digits.
+#[derive(Clone, Copy)]
+struct Against {
+    /// Against the limit of each row.
+    margin: Margin,
+    /// The same without the limit, for one that is known only at the end.
+    above: f64,
+    below: f64,
+}
+
+impl<'a> Comparison<'a> {
+    /// Goes through the rows of the run.
+    ///
+    /// # Errors
+    /// A file that cannot be read.
+    pub fn run(&self, findings: &mut Findings) -> Result<Compared> {
+        let (from, to) = (self.exact.from(), self.exact.to());
+        let span = (to - from).to_f64();
+        let mut pass = Pass::new(self);
+        let is_event = |stamp: f64| {
+            let time = self.time.apply(Double::from(stamp));
+            self.exact.jumps_near(time, 1e-9 * span)
+        };
+        let mut first: Option<(f64, bool)> = None;
+        let mut last_end: Option<(f64, bool)> = None;
+        let (mut rows, mut outside) = (0, 0);
+        self.survey.rows(self.source, findings, &is_event, &mut |row| {
+            let time = self.time.apply(row.time);
+            let blur = self.time.stretch(row.time_resolution);
+            let slack = COVERAGE_SLACK * span + blur;
+            let (early, late) = ((from - time).to_f64(), (time - to).to_f64());
+            first.get_or_insert((time.to_f64(), -early <= slack));
+            last_end = Some((time.to_f64(), -late <= slack));
+            if early > slack || late > slack {
+                outside += 1;
+                return Ok(());
+            }
+            rows += 1;
+            let (time, blur) = self.on_step(time, blur);
+            let time = if early > 0.0 { from } else { time };
+            pass.add(time, blur, row);
+            Ok(())
+        })?;
+        self.coverage(first, last_end, rows, findings);
+        let spacing = match self.survey.grid {
+            Grid::Uniform { spacing, .. } => Some(self.time.stretch(spacing)),
+            Grid::Varied => None,
+        };
+        Ok(Compared { rows, outside, spacing, channels: pass.conclude() })
+    }
+
+    /// The exact multiple of the stated step, where the stamp agrees with it to its
+    /// printed digits.
+    fn on_step(&self, time: Double, blur: f64) -> (Double, f64) {
+        let Some(step) = self.step else { return (time, blur) };
+        if blur == 0.0 {
+            return (time, blur);
+        }
+        let since = time - self.exact.from();
+        let count = (since.to_f64() / step).round();
+        // The step as it is written is meant, not the f64 nearest to it.
+        let exact = Decimal::shortest(step).map_or(Double::from(step), Decimal::to_double);
+        let multiple = exact * Double::from(count);
+        let agrees = (since - multiple).abs().to_f64() <= 2.0 * blur;
+        if count.abs() < 1e15 && agrees { (self.exact.from() + multiple, 0.0) } else { (time, blur) }
+    }
+
+    fn coverage(
+        &self,
+        first: Option<(f64, bool)>,
+        last: Option<(f64, bool)>,
+        rows: u64,
+        findings: &mut Findings,
+    ) {
+        let (from, to) = (self.exact.from().to_f64(), self.exact.to().to_f64());
+        let Some(((begin, begins), (end, ends))) = first.zip(last) else {
+            findings.fatal(Kind::EmptyFile, None, "the file has no rows of numbers");
+            return;
+        };
+        // The first row may come later than the start, or lie before it: the start is
+        // covered only by a row that is there.
+        if !begins || begin > to {
+            let text = format!("the first row is at t = {begin}, the window starts at {from}");
+            findings.fatal(Kind::WindowNotCovered, None, text);
+        }
+        if !ends {
+            let text = format!("the last row is at t = {end}, the window ends at {to}");
+            findings.fatal(Kind::WindowNotCovered, None, text);
+        }
+        if rows < self.least_rows {
+            let text = format!("{rows} row(s) within the window, at least {} are needed", self.least_rows);
+            findings.fatal(Kind::TooFewRows, None, text);
+        }
+    }
+}
+
+/// The walk along the exact solution and the sums of all channels.
+struct Pass<'c, 'a> {
+    comparison: &'c Comparison<'a>,
+    walk: Walk<'a>,
+    sides: Option<[Walk<'a>; 2]>,
+    sums: Vec<Sums>,
+}
+
+impl<'c, 'a> Pass<'c, 'a> {
+    fn new(comparison: &'c Comparison<'a>) -> Pass<'c, 'a> {
+        let sums = comparison.channels.iter().map(|_| Sums::new()).collect();
+        Pass { comparison, walk: comparison.exact.walk(), sides: None, sums }
+    }
+
+    fn add(&mut self, time: Double, blur: f64, row: &Row) {
+        let exact = self.comparison.exact;
+        // A stamp that fell short of a jump by its rounding alone is at the jump.
+        let ulps = 4.0 * f64::EPSILON * time.to_f64().abs();
+        let time = match exact.has_feed_through() {
+            true => exact.jump_after(time, ulps).unwrap_or(time),
+            false => time,
+        };
+        let moved = self.moved_by(time, blur);
+        let values = self.walk.go(time);
+        let channels = self.comparison.channels.iter().zip(&mut self.sums).enumerate();
+        for (place, ((channel, conversion, limit), sums)) in channels {
+            let Some(written) = row.values[place] else { continue };
+            let truth = values.value[*channel];
+            let error = (conversion.apply(Double::from(written)) - truth).to_f64();
+            let rest = moved.as_ref().map_or(0.0, |moved| moved[*channel]) + values.bound[*channel];
+            let as_printed = self.comparison.survey.channels[place];
+            let doubts = [as_printed, Resolution::Full]
+                .map(|resolution| conversion.stretch(resolution.at(written)) + rest);
+            sums.add(time.to_f64(), error, truth.to_f64().abs(), doubts, limit);
+        }
+    }
+
+    /// How far the exact values move within the rounding of the stamp.
+    fn moved_by(&mut self, time: Double, blur: f64) -> Option<Vec<f64>> {
+        if blur == 0.0 {
+            return None;
+        }
+        let exact = self.comparison.exact;
+        // While the fastest mode hardly moves, the rate tells; its own change within
+        // the blur is covered by a tenth.
+        let slow = exact.fastest_rate() * blur < 0.05;
+        if slow && !exact.jumps_near(time, blur) {
+            self.walk.go(time);
+            let rates = self.walk.approx_rates();
+            return Some(rates.iter().map(|rate| 1.1 * rate.abs() * blur).collect());
+        }
+        let middle = self.walk.go(time).value.clone();
+        let [before, after] = self.sides.get_or_insert_with(|| [exact.walk(), exact.walk()]);
+        let mut moved = vec![0.0f64; middle.len()];
+        for (walk, shift) in [(before, -blur), (after, blur)] {
+            let there = walk.go(time + Double::from(shift));
+            for ((moved, there), middle) in moved.iter_mut().zip(&there.value).zip(&middle) {
+                *moved = moved.max((*there - *middle).abs().to_f64());
+            }
+        }
+        Some(moved)
+    }
+
+    fn conclude(self) -> Vec<Deviation> {
+        let channels = self.comparison.channels.iter().zip(&self.comparison.survey.channels);
+        let concluded = channels.zip(self.sums);
+        concluded.map(|(((_, _, limit), printed), sums)| sums.conclude(limit, *printed)).collect()
+    }
+}
+
+impl Limit {
+    /// The limit where the exact value has this magnitude.
+    pub fn at(&self, size: f64) -> f64 {
+        self.absolute + self.relative * size
+    }
+}
+
+impl Margin {
+    const NOTHING: Margin =
+        Margin { certain: f64::NEG_INFINITY, broken: f64::NEG_INFINITY, used: 0.0 };
+}
+
+/// `error / limit`, with no error using nothing of any limit.
+fn share(error: f64, limit: f64) -> f64 {
+    if error == 0.0 { 0.0 } else { error / limit }
+}
+
+impl Sums {
+    fn new() -> Sums {
+        let against =
+            Against { margin: Margin::NOTHING, above: f64::NEG_INFINITY, below: f64::NEG_INFINITY };
+        Sums {
+            rows: 0,
+            worst: 0.0,
+            worst_at: f64::NAN,
+            worst_exact: 0.0,
+            worst_doubt: [0.0; 2],
+            squares: 0.0,
+            end: 0.0,
+            peak: 0.0,
+            telling: 0,
+            largest_in_units: 0.0,
+            with: [against; 2],
+        }
+    }
+
+    fn add(&mut self, time: f64, signed: f64, size: f64, doubts: [f64; 2], limit: &Limit) {
+        let error = signed.abs();
+        if self.rows == 0 || error > self.worst {
+            self.worst = error;
+            self.worst_at = time;
+            self.worst_exact = size;
+            self.worst_doubt = doubts;
+        }
+        self.rows += 1;
+        self.squares += error * error;
+        self.end = signed;
+        self.peak = self.peak.max(size);
+        self.telling += u64::from(error > 0.0);
+        self.largest_in_units = self.largest_in_units.max(share(error, doubts[0]));
+        let allowed = limit.at(size);
+        for (with, doubt) in self.with.iter_mut().zip(doubts) {
+            with.margin.certain = with.margin.certain.max(error + doubt - allowed);
+            with.margin.broken = with.margin.broken.max(error - doubt - allowed);
+            with.margin.used = with.margin.used.max(share(error, allowed));
+            with.above = with.above.max(error + doubt);
+            with.below = with.below.max(error - doubt);
+        }
+    }
+
+    fn conclude(self, limit: &Limit, printed: Resolution) -> Deviation {
+        let guessed = printed != Resolution::Full;
+        let refuted =
+            guessed && self.telling >= ROWS_TO_REFUTE && self.largest_in_units < FAR_BELOW;
+        let which = usize::from(refuted);
+        let with = self.with[which];
+        let (margin, worst_limit) = if limit.of_peak {
+            let allowed = limit.at(self.peak);
+            let margin = Margin {
+                certain: with.above - allowed,
+                broken: with.below - allowed,
+                used: share(self.worst, allowed),
+            };
+            (margin, allowed)
+        } else {
+            (with.margin, limit.at(self.worst_exact))
+        };
+        Deviation {
+            rows: self.rows,
+            worst: self.worst,
+            worst_at: self.worst_at,
+            worst_resolution: self.worst_doubt[which],
+            worst_limit,
+            rms: (self.squares / self.rows.max(1) as f64).sqrt(),
+            end: self.end,
+            peak: self.peak,
+            resolution: if refuted { Resolution::Full } else { printed },
+            refuted,
+            margin,
+        }
+    }
+}

@@ -1,0 +1,219 @@
+//! The order that a ladder of runs shows, as far as it can be seen.
+
+/// One run of a ladder.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct Rung {
+    /// Its step, or its error setting.
+    pub setting: f64,
+    /// Its worst error.
+    pub error: f64,
+    /// What the printed digits resolve there.
+    pub resolution: f64,
+    /// Largest exact value.
+    pub peak: f64,
+    /// Number of rows, for what rounding can have added up to.
+    pub rows: u64,
+}
+
+/// Two neighbouring rungs and the order between them.
+///
+/// # Formula
+/// `ln(E1/E2) / ln(h1/h2)`; the interval has each error at either end of what
+/// resolution and rounding leave open.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct Pair {
+    /// Settings, the coarser first.
+    pub settings: (f64, f64),
+    /// The order.
+    pub order: f64,
+    /// Its least value.
+    pub low: f64,
+    /// Its greatest value.
+    pub high: f64,
+}
+
+/// What can be seen of the order.
+#[derive(Clone, Debug, PartialEq)]
+pub enum Sight {
+    /// Pairs from the coarsest to the finest, and how many of the finest agree.
+    Pairs {
+        /// At least one.
+        pairs: Vec<Pair>,
+        /// From one to all.
+        agreeing: usize,
+        /// Rungs whose errors count.
+        usable: usize,
+    },
+    /// Every rung is at rounding level: there is no order to see.
+    ExactForThisCase,
+    /// Fewer than two rungs count; the reason in words.
+    TooFew(String),
+}
+
+/// An error must stand this many times above its doubt to count; a quarter of that
+/// serves where it leaves fewer than two rungs.
+const CLEAR: [f64; 2] = [10.0, 2.5];
+/// Orders that differ by less agree (common practice, no source; [celik-2008] ask for
+/// judgement).
+const AGREEMENT: f64 = 0.15;
+
+impl Rung {
+    /// What rounding may have done to a run: a few eps of the peak, and up to 4 eps for
+    /// each row, at most 4000, where the code adds up its time (seen on libraries at
+    /// fixed step, printed in full).
+    pub fn rounding(&self) -> f64 {
+        let steps = (4.0 * self.rows as f64).min(4000.0);
+        f64::EPSILON * self.peak * (16.0 + steps)
+    }
+
+    fn doubt(&self) -> f64 {
+        self.resolution + self.rounding()
+    }
+
+    fn is_clear(&self, factor: f64) -> bool {
+        self.error >= factor * self.doubt()
+    }
+
+    fn is_below_the_solution(&self) -> bool {
+        self.error.is_finite() && self.error < 0.5 * self.peak
+    }
+}
+
+/// What a ladder shows; the rungs may come in any order.
+pub fn observe(rungs: &[Rung]) -> Sight {
+    let mut rungs = rungs.to_vec();
+    rungs.sort_by(|a, b| b.setting.total_cmp(&a.setting));
+    if rungs.len() < 2 {
+        return Sight::TooFew("an order needs at least two runs with different steps".to_owned());
+    }
+    if let Some(pair) = rungs.windows(2).find(|pair| pair[0].setting == pair[1].setting) {
+        return Sight::TooFew(format!("two runs have the step {}", pair[0].setting));
+    }
+    // Resolution does not count here: what is hidden by few digits is not exact.
+    if rungs.iter().all(|rung| rung.error <= 2.0 * rung.rounding() && rung.resolution <= rung.rounding()) {
+        return Sight::ExactForThisCase;
+    }
+    let usable = |factor: f64| -> Vec<Rung> {
+        let counts = |rung: &&Rung| rung.is_clear(factor) && rung.is_below_the_solution();
+        rungs.iter().filter(counts).copied().collect()
+    };
+    let clear = CLEAR.iter().map(|&factor| usable(factor)).find(|usable| usable.len() >= 2);
+    let Some(usable) = clear else {
+        return Sight::TooFew(why_too_few(&rungs));
+    };
+    let pairs: Vec<Pair> = usable.windows(2).map(|pair| between(&pair[0], &pair[1])).collect();
+    let mut agreeing = 1;
+    while agreeing < pairs.len() {
+        let finer = &pairs[pairs.len() - agreeing];
+        let coarser = &pairs[pairs.len() - agreeing - 1];
+        let overlap = finer.low <= coarser.high && coarser.low <= finer.high;
+        if !overlap && (finer.order - coarser.order).abs() > AGREEMENT {
+            break;
+        }
+        agreeing += 1;
+    }
+    Sight::Pairs { pairs, agreeing, usable: usable.len() }
+}
+
+fn why_too_few(rungs: &[Rung]) -> String {
+    let count = |test: &dyn Fn(&Rung) -> bool| rungs.iter().filter(|rung| test(rung)).count();
+    let coarse = count(&|rung| !rung.is_clear(CLEAR[1]) && rung.resolution > rung.rounding());
+    let rounded = count(&|rung| !rung.is_clear(CLEAR[1]) && rung.resolution <= rung.rounding());
+    let large = count(&|rung| !rung.is_below_the_solution());
+    let mut reasons = Vec::new();
+    for (count, what) in [
+        (coarse, "hidden by the printed digits"),
+        (rounded, "at rounding level"),
+        (large, "as large as the solution"),
+    ] {
+        if count > 0 {
+            reasons.push(format!("{count} of {} errors {what}", rungs.len()));
+        }
+    }
+    reasons.join(", ")
+}
+
+fn between(coarse: &Rung, fine: &Rung) -> Pair {
+    let ratio = (coarse.setting / fine.setting).ln();
+    let slope = |a: f64, b: f64| (a / b).ln() / ratio;
+    let (coarse_doubt, fine_doubt) = (coarse.doubt(), fine.doubt());
+    Pair {
+        settings: (coarse.setting, fine.setting),
+        order: slope(coarse.error, fine.error),
+        low: slope(coarse.error - coarse_doubt, fine.error + fine_doubt),
+        high: slope(coarse.error + coarse_doubt, fine.error - fine_doubt),
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    fn ladder(errors: &[f64]) -> Vec<Rung> {
+        let rung = |(k, &error): (usize, &f64)| Rung {
+            setting: 0.1 / 2f64.powi(k as i32),
+            error,
+            resolution: 1e-17,
+            peak: 1.0,
+            rows: 10 << k,
+        };
+        errors.iter().enumerate().map(rung).collect()
+    }
+
+    fn finest(sight: Sight) -> (f64, usize) {
+        match sight {
+            Sight::Pairs { pairs, agreeing, .. } => (pairs.last().unwrap().order, agreeing),
+            other => panic!("{other:?}"),
+        }
+    }
+
+    // Burden, Faires, Numerical Analysis: the problem of tables 5.1 and 5.8; errors at
+    // t = 2 and orders recomputed, entry OR05 of published-checks.md (D).
+    #[test]
+    fn orders_of_a_worked_example() {
+        let euler = [0.43968745, 0.24197192, 0.12746574, 0.065495054, 0.033207654];
+        let mut rungs = ladder(&euler);
+        for rung in &mut rungs {
+            rung.peak = 5.3;
+        }
+        let Sight::Pairs { pairs, agreeing, usable } = observe(&rungs) else { panic!() };
+        assert_eq!((agreeing, usable), (4, 5));
+        for (pair, expected) in pairs.iter().zip([0.8616387, 0.9247301, 0.9606517, 0.9798702]) {
+            assert!((pair.order - expected).abs() < 1e-6, "{pair:?}");
+        }
+    }
+
+    #[test]
+    fn rungs_at_rounding_level_do_not_count() {
+        let (order, agreeing) = finest(observe(&ladder(&[1e-4, 6.25e-6, 3.9e-7, 3e-15, 4e-15])));
+        assert!((order - 4.0).abs() < 0.01);
+        assert_eq!(agreeing, 2);
+        assert_eq!(observe(&ladder(&[1e-15, 3e-15, 2e-15])), Sight::ExactForThisCase);
+        let sight = observe(&ladder(&[1e-5, 3e-15, 2e-15]));
+        assert_eq!(sight, Sight::TooFew("2 of 3 errors at rounding level".to_owned()));
+    }
+
+    #[test]
+    fn coarse_digits_widen_the_interval_and_then_hide_the_order() {
+        let mut rungs = ladder(&[1e-2, 5e-3, 2.5e-3]);
+        rungs.iter_mut().for_each(|rung| rung.resolution = 5e-4);
+        let Sight::Pairs { pairs, .. } = observe(&rungs) else { panic!() };
+        assert!(pairs[0].low < 0.85 && pairs[0].high > 1.15);
+        rungs.iter_mut().for_each(|rung| rung.resolution = 5e-2);
+        let sight = observe(&rungs);
+        assert_eq!(sight, Sight::TooFew("3 of 3 errors hidden by the printed digits".to_owned()));
+        // Small errors under coarse digits are hidden, not exact.
+        rungs.iter_mut().for_each(|rung| rung.error = 1e-16);
+        assert!(matches!(observe(&rungs), Sight::TooFew(_)));
+    }
+
+    #[test]
+    fn unstable_rungs_and_equal_steps_are_left_out_or_refused() {
+        let (order, _) = finest(observe(&ladder(&[1e9, 3.0, 1e-2, 2.5e-3])));
+        assert!((order - 2.0).abs() < 1e-3);
+        let mut rungs = ladder(&[1e-2, 5e-3]);
+        rungs[1].setting = rungs[0].setting;
+        assert_eq!(observe(&rungs), Sight::TooFew("two runs have the step 0.1".to_owned()));
+        assert!(matches!(observe(&rungs[..1]), Sight::TooFew(_)));
+    }
+}

@@ -1,0 +1,207 @@
+//! From numbers to verdicts: limits, order claims, and the submission as a whole.
+//!
+//! Acceptance and rejection are guarded: a verdict is given only where what the file
+//! can resolve does not change it ([jcgm-106] in [`crate::references`]).
+
+use crate::compare::{Deviation, Margin, Pair, Sight};
+
+/// How something was judged.
+#[derive(Clone, Copy, Debug, PartialEq, Eq, PartialOrd, Ord)]
+#[allow(missing_docs)]
+pub enum Verdict {
+    Pass,
+    Undecided,
+    Fail,
+}
+
+impl Verdict {
+    /// The word in reports.
+    pub fn word(self) -> &'static str {
+        match self {
+            Verdict::Pass => "pass",
+            Verdict::Fail => "fail",
+            Verdict::Undecided => "undecided",
+        }
+    }
+
+    /// The worse of two: fail before undecided before pass.
+    pub fn and(self, other: Verdict) -> Verdict {
+        self.max(other)
+    }
+}
+
+/// What the order of one channel comes to.
+#[derive(Clone, Debug, PartialEq)]
+pub struct OrderVerdict {
+    /// None where no order is claimed.
+    pub verdict: Option<Verdict>,
+    /// The finest pair of those that agree.
+    pub finest: Option<Pair>,
+    /// Rungs that the order rests on.
+    pub rungs_used: usize,
+    /// Why there is no verdict, or what to know of it.
+    pub note: Option<String>,
+}
+
+/// How far the observed order may stay below the claimed one, where a submission does
+/// not say (common practice, no source; compare PR06 of the published checks: 0.1 to
+/// 0.3).
+pub const ORDER_SLACK: f64 = 0.15;
+/// Neighbouring pairs that differ by more than this show no order at all.
+const ERRATIC: f64 = 1.0;
+/// A single pair cannot show that it has settled: it fails a claim only where it stays
+/// below it by more than this.
+const SINGLE_PAIR_SLACK: f64 = 0.5;
+
+/// The verdict on a channel whose rows were all compared.
+pub fn of_margin(margin: &Margin) -> Verdict {
+    if margin.broken > 0.0 {
+        Verdict::Fail
+    } else if margin.certain <= 0.0 {
+        Verdict::Pass
+    } else {
+        // Also where something was not a number: no comparison with it holds.
+        Verdict::Undecided
+    }
+}
+
+/// The verdict on a channel.
+pub fn of_deviation(deviation: &Deviation) -> Verdict {
+    if deviation.rows == 0 { Verdict::Fail } else { of_margin(&deviation.margin) }
+}
+
+/// The verdict on an order.
+pub fn of_order(sight: &Sight, claimed: Option<f64>, slack: f64) -> OrderVerdict {
+    let (pairs, agreeing, usable) = match sight {
+        Sight::ExactForThisCase => {
+            return OrderVerdict {
+                verdict: claimed.map(|_| Verdict::Pass),
+                finest: None,
+                rungs_used: 0,
+                note: Some("exact for this case: every error is at rounding level".to_owned()),
+            };
+        }
+        Sight::TooFew(reason) => {
+            return OrderVerdict {
+                verdict: claimed.map(|_| Verdict::Undecided),
+                finest: None,
+                rungs_used: 0,
+                note: Some(reason.clone()),
+            };
+        }
+        Sight::Pairs { pairs, agreeing, usable } => (pairs, *agreeing, *usable),
+    };
+    let Some(&finest) = pairs.last() else {
+        return of_order(&Sight::TooFew("no pair of runs".to_owned()), claimed, slack);
+    };
+    let list = || {
+        let orders: Vec<String> = pairs.iter().map(|pair| format!("{:.2}", pair.order)).collect();
+        orders.join(", ")
+    };
+    let settled = agreeing > 1;
+    let mut note = None;
+    let verdict = claimed.map(|claimed| {
+        let reaches = |pair: &Pair| pair.high >= claimed - slack;
+        let jump = match pairs {
+            [.., coarser, finer] => (finer.order - coarser.order).abs(),
+            _ => 0.0,
+        };
+        if reaches(&finest) {
+            if jump > ERRATIC && !settled {
+                note = Some(format!("neighbouring pairs do not agree: {}", list()));
+                return Verdict::Undecided;
+            }
+            return Verdict::Pass;
+        }
+        if settled {
+            return Verdict::Fail;
+        }
+        if pairs.len() == 1 {
+            if finest.high < claimed - slack.max(SINGLE_PAIR_SLACK) {
+                return Verdict::Fail;
+            }
+            note = Some("one pair of runs cannot show that the order has settled".to_owned());
+            return Verdict::Undecided;
+        }
+        // Not settled: with every pair below the claim it can still be on its way up.
+        let rising = pairs.windows(2).all(|two| two[1].order > two[0].order);
+        if !rising && !pairs.iter().any(reaches) {
+            return Verdict::Fail;
+        }
+        note = Some(format!("the order has not settled: {}; add finer runs", list()));
+        Verdict::Undecided
+    });
+    if verdict.is_none() && !settled && pairs.len() > 1 {
+        note = Some(format!("neighbouring pairs do not agree: {}", list()));
+    }
+    // A pair joins two rungs; those of the agreeing ones hang together.
+    let rungs_used = if settled { agreeing + 1 } else { usable.min(2) };
+    OrderVerdict { verdict, finest: Some(finest), rungs_used, note }
+}
+
+/// The verdict on an order claim from those of the channels: one that fails decides;
+/// else one that shows the order speaks for the method, even where others show nothing.
+pub fn of_orders(verdicts: impl IntoIterator<Item = Verdict>) -> Option<Verdict> {
+    let verdicts: Vec<Verdict> = verdicts.into_iter().collect();
+    let worst = *verdicts.iter().max()?;
+    let shown = verdicts.contains(&Verdict::Pass);
+    Some(if worst == Verdict::Undecided && shown { Verdict::Pass } else { worst })
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    fn margin(certain: f64, broken: f64) -> Margin {
+        Margin { certain, broken, used: 0.0 }
+    }
+
+    #[test]
+    fn acceptance_and_rejection_are_guarded() {
+        assert_eq!(of_margin(&margin(0.0, -1.0)), Verdict::Pass);
+        assert_eq!(of_margin(&margin(1e-9, -1.0)), Verdict::Undecided);
+        assert_eq!(of_margin(&margin(1e-9, 0.0)), Verdict::Undecided);
+        assert_eq!(of_margin(&margin(1.0, 1e-9)), Verdict::Fail);
+        assert_eq!(of_margin(&margin(f64::NAN, f64::NAN)), Verdict::Undecided);
+    }
+
+    fn order(orders: &[f64], claimed: f64) -> Verdict {
+        let pair = |&order: &f64| Pair {
+            settings: (2.0, 1.0),
+            order,
+            low: order - 0.01,
+            high: order + 0.01,
+        };
+        let pairs: Vec<Pair> = orders.iter().map(pair).collect();
+        let close = |two: &&[f64]| (two[1] - two[0]).abs() <= 0.15;
+        let agreeing = 1 + orders.windows(2).rev().take_while(close).count();
+        let usable = pairs.len() + 1;
+        let sight = Sight::Pairs { pairs, agreeing, usable };
+        of_order(&sight, Some(claimed), ORDER_SLACK).verdict.unwrap()
+    }
+
+    #[test]
+    fn orders_pass_fail_or_stay_open() {
+        assert_eq!(order(&[0.86, 0.92, 0.96, 0.98], 1.0), Verdict::Pass);
+        assert_eq!(order(&[3.5, 3.9], 4.0), Verdict::Pass);
+        assert_eq!(order(&[0.97, 0.99, 1.0], 2.0), Verdict::Fail);
+        // Rising towards the claim, but not there.
+        assert_eq!(order(&[0.4, 0.58, 0.75], 1.0), Verdict::Undecided);
+        // All over the place and never near it.
+        assert_eq!(order(&[0.3, 1.4, 0.8], 4.0), Verdict::Fail);
+        assert_eq!(order(&[0.3, 2.1], 2.0), Verdict::Undecided);
+        assert_eq!(order(&[1.0], 2.0), Verdict::Fail);
+        assert_eq!(order(&[1.7], 2.0), Verdict::Undecided);
+        assert_eq!(order(&[1.9], 2.0), Verdict::Pass);
+        assert_eq!(order(&[5.0, 5.1], 4.0), Verdict::Pass);
+    }
+
+    #[test]
+    fn channels_speak_for_the_method_together() {
+        use Verdict::{Fail, Pass, Undecided};
+        assert_eq!(of_orders([Pass, Undecided]), Some(Pass));
+        assert_eq!(of_orders([Undecided]), Some(Undecided));
+        assert_eq!(of_orders([Pass, Fail]), Some(Fail));
+        assert_eq!(of_orders([]), None);
+    }
+}

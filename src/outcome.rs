@@ -1,0 +1,167 @@
+//! What an audit has found, as plain data: no formatting, no file formats.
+
+use crate::fault::Fault;
+use crate::judge::Verdict;
+use crate::submission::{Expect, Role, Setting};
+use crate::trajectory::Finding;
+
+/// A whole audit.
+#[derive(Clone, Debug, Default)]
+pub struct Outcome {
+    /// In the order of their names.
+    pub submissions: Vec<Audited>,
+    /// Submissions that could not be audited, with the complaints.
+    pub not_audited: Vec<NotAudited>,
+}
+
+/// A submission that could not be audited.
+#[derive(Clone, Debug)]
+pub struct NotAudited {
+    /// Its name.
+    pub name: String,
+    /// Why.
+    pub faults: Vec<Fault>,
+}
+
+/// One submission.
+#[derive(Clone, Debug)]
+pub struct Audited {
+    /// Its folder, or the file.
+    pub name: String,
+    /// The case.
+    pub case: String,
+    /// The unit of its times.
+    pub time_unit: String,
+    /// Who wrote the files.
+    pub producer: Option<String>,
+    /// What was expected.
+    pub expect: Expect,
+    /// What was found.
+    pub verdict: Verdict,
+    /// Parameters of the case that the submission has replaced.
+    pub parameters: Vec<(String, f64)>,
+    /// Whose limits were used.
+    pub limits_from: LimitsFrom,
+    /// One sentence for each thing that decides, each with its cure where one is known.
+    pub reasons: Vec<String>,
+    /// What was assumed or left out.
+    pub notes: Vec<String>,
+    /// Files in the order of the submission.
+    pub runs: Vec<RunOutcome>,
+    /// The name of the claimed method, as claimed.
+    pub claimed_method: Option<String>,
+    /// Orders by channel; empty without a ladder.
+    pub orders: Vec<OrderOutcome>,
+    /// The verdict on the claimed order.
+    pub order_verdict: Option<Verdict>,
+}
+
+/// Whose limits an audit has used.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum LimitsFrom {
+    /// Those of the case.
+    Case,
+    /// The submission's own.
+    Submission,
+    /// Those of the command line.
+    CommandLine,
+}
+
+/// One file.
+#[derive(Clone, Debug)]
+pub struct RunOutcome {
+    /// As the submission names it.
+    pub file: String,
+    /// Result or rung.
+    pub role: Role,
+    /// Step or error setting as stated.
+    pub setting: Setting,
+    /// The step, stated or read off the time stamps.
+    pub step: Option<f64>,
+    /// Rows within the window.
+    pub rows: u64,
+    /// How the file is laid out, in words.
+    pub layout: String,
+    /// What is wrong with the file.
+    pub findings: Vec<Finding>,
+    /// Channels in the order of the case.
+    pub channels: Vec<ChannelOutcome>,
+}
+
+/// One channel of one file, in the units of the case.
+#[derive(Clone, Debug)]
+pub struct ChannelOutcome {
+    /// Its name.
+    pub name: String,
+    /// Its unit.
+    pub unit: String,
+    /// What was found; `None` where no row had a value.
+    pub errors: Option<ErrorOutcome>,
+    /// Of this channel.
+    pub verdict: Verdict,
+}
+
+/// The errors of one channel.
+#[derive(Clone, Debug)]
+pub struct ErrorOutcome {
+    /// Largest `|written - exact|`.
+    pub worst: f64,
+    /// The time of it.
+    pub at: f64,
+    /// Root mean square.
+    pub rms: f64,
+    /// `written - exact` in the last row.
+    pub end: f64,
+    /// Largest `|exact|` at the rows.
+    pub peak: f64,
+    /// What the digits resolve where the error is worst.
+    pub resolution: f64,
+    /// What was assumed of the digits, in words.
+    pub digits: String,
+    /// The limit where the error is worst.
+    pub limit: f64,
+    /// Largest share of the limit over all rows.
+    pub limit_used: f64,
+}
+
+/// The order of one channel over the ladder.
+#[derive(Clone, Debug)]
+pub struct OrderOutcome {
+    /// The channel.
+    pub channel: String,
+    /// The order claimed.
+    pub claimed: Option<f64>,
+    /// The order seen, and its interval.
+    pub observed: Option<(f64, f64, f64)>,
+    /// Rungs that it rests on.
+    pub rungs_used: usize,
+    /// On the claim.
+    pub verdict: Option<Verdict>,
+    /// What to know of it.
+    pub note: Option<String>,
+}
+
+impl Audited {
+    /// True where the verdict is the expected one.
+    pub fn in_order(&self) -> bool {
+        self.verdict
+            == match self.expect {
+                Expect::Pass => Verdict::Pass,
+                Expect::Fail => Verdict::Fail,
+                Expect::Undecided => Verdict::Undecided,
+            }
+    }
+}
+
+impl Outcome {
+    /// Number of submissions with a verdict.
+    pub fn count(&self, verdict: Verdict) -> usize {
+        self.submissions.iter().filter(|submission| submission.verdict == verdict).count()
+    }
+
+    /// True where everything was audited and is as expected, and there was anything.
+    pub fn in_order(&self) -> bool {
+        let all = self.submissions.iter().all(Audited::in_order);
+        all && self.not_audited.is_empty() && !self.submissions.is_empty()
+    }
+}
