@@ -65,9 +65,11 @@ pub fn of_margin(margin: &Margin) -> Verdict {
     }
 }
 
-/// The verdict on a channel.
-pub fn of_deviation(deviation: &Deviation) -> Verdict {
-    if deviation.rows == 0 { Verdict::Fail } else { of_margin(&deviation.margin) }
+/// The verdict on a channel of a run with so many rows: one that has no value in some
+/// of them fails.
+pub fn of_deviation(deviation: &Deviation, rows: u64) -> Verdict {
+    let complete = deviation.rows > 0 && deviation.rows >= rows;
+    if complete { of_margin(&deviation.margin) } else { Verdict::Fail }
 }
 
 /// The verdict on an order.
@@ -102,7 +104,7 @@ pub fn of_order(sight: &Sight, claimed: Option<f64>, slack: f64) -> OrderVerdict
     let mut note = None;
     let verdict = claimed.map(|claimed| {
         let reaches = |pair: &Pair| pair.high >= claimed - slack;
-        let jump = match pairs {
+        let jump = match &pairs[..] {
             [.., coarser, finer] => (finer.order - coarser.order).abs(),
             _ => 0.0,
         };

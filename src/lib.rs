@@ -1,8 +1,10 @@
 //! stepgauge
 #![allow(missing_docs)]
+pub mod audit;
 pub mod case;
 pub mod compare;
 pub mod exact;
+pub mod explain;
 pub mod fault;
 pub mod formula;
 pub mod judge;

@@ -14,6 +14,7 @@ mod expm;
 mod matrix;
 mod quad;
 mod real;
+mod short;
 
 pub use conversion::Conversion;
 pub use decimal::Decimal;
@@ -22,3 +23,4 @@ pub use expm::{Flow, Propagator, Step};
 pub use matrix::{Matrix, dot};
 pub use quad::Quad;
 pub use real::Real;
+pub use short::{plain, short, short_within};
