@@ -2,6 +2,7 @@
 #![allow(missing_docs)]
 pub mod audit;
 pub mod case;
+pub mod cli;
 pub mod compare;
 pub mod exact;
 pub mod explain;
@@ -11,6 +12,7 @@ pub mod judge;
 pub mod method;
 pub mod number;
 pub mod outcome;
+pub mod report;
 pub mod submission;
 pub mod trajectory;
 pub use case::Library;

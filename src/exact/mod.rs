@@ -6,6 +6,7 @@
 //! [`crate::number::Propagator`].
 
 mod propagate;
+mod scales;
 mod segments;
 
 use std::sync::OnceLock;
@@ -15,6 +16,7 @@ use crate::fault::Fault;
 use crate::number::{Double, Flow, Propagator, Quad};
 
 pub use propagate::{Values, Walk};
+pub use scales::{TimeScales, approx_time_scales};
 use segments::{Jump, System};
 
 /// Most jumps of all inputs together within the window.
@@ -63,6 +65,23 @@ pub struct Exact {
     peaks: Vec<f64>,
     /// Largest difference between closed form and propagator, relative to the peak.
     closed_form_gap: Option<f64>,
+}
+
+/// A walk along times that gives values rounded to `f64`.
+#[derive(Debug)]
+pub struct RoundedWalk<'a> {
+    exact: &'a Exact,
+    walk: Walk<'a>,
+}
+
+impl RoundedWalk<'_> {
+    /// The value of every channel at one time.
+    ///
+    /// # Errors
+    /// A time outside the window.
+    pub fn at(&mut self, time: impl Into<Double>) -> Result<Vec<Value>, Fault> {
+        Ok(self.exact.rounded(self.walk.go(self.exact.within(time.into())?)))
+    }
 }
 
 /// One value of a channel.
@@ -132,8 +151,7 @@ impl Exact {
     /// # Errors
     /// A time outside the window.
     pub fn at(&self, time: impl Into<Double>) -> Result<Vec<Value>, Fault> {
-        let mut walk = self.walk();
-        Ok(self.rounded(walk.go(self.within(time.into())?)))
+        self.walk_rounded().at(time)
     }
 
     /// The values at many times, row by row; fastest where the times rise in equal
@@ -145,9 +163,13 @@ impl Exact {
         &'a self,
         times: impl IntoIterator<Item = T> + 'a,
     ) -> impl Iterator<Item = Result<Vec<Value>, Fault>> + 'a {
-        let mut walk = self.walk();
-        let times = times.into_iter();
-        times.map(move |time| Ok(self.rounded(walk.go(self.within(time.into())?))))
+        let mut walk = self.walk_rounded();
+        times.into_iter().map(move |time| walk.at(time))
+    }
+
+    /// As [`Exact::at`] many times, remembering where it was.
+    pub fn walk_rounded(&self) -> RoundedWalk<'_> {
+        RoundedWalk { exact: self, walk: self.walk() }
     }
 
     /// A walk along times of any order, each given in double-double.

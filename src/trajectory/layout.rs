@@ -82,7 +82,7 @@ impl Layout {
             None => USUAL_COMMENTS.map(str::to_owned).to_vec(),
         };
         let separators = [Separator::Tab, Separator::Semicolon, Separator::Comma, Separator::Blank];
-        let mut best: Option<(usize, Layout)> = None;
+        let mut best: Option<((bool, usize), Layout)> = None;
         for separator in separators {
             for decimal_comma in [false, true] {
                 let allowed = stated.separator.is_none_or(|s| s == separator)
@@ -101,8 +101,10 @@ impl Layout {
                     units: None,
                 };
                 let Some((fits, layout)) = layout.try_on(lines, stated.skip_lines) else { continue };
-                if best.as_ref().is_none_or(|(most, _)| fits > *most) {
-                    best = Some((fits, layout));
+                // A list of single numbers is the last resort: it also fits `0,5`.
+                let rank = (layout.columns > 1, fits);
+                if best.as_ref().is_none_or(|(most, _)| rank > *most) {
+                    best = Some((rank, layout));
                 }
             }
         }
@@ -154,7 +156,7 @@ impl Layout {
                     Field::Foreign => numbers = usize::MAX / 2,
                 }
             });
-            (count >= 2 && (1..usize::MAX / 2).contains(&numbers)).then_some(count)
+            (1..usize::MAX / 2).contains(&numbers).then_some(count)
         };
         let (first, columns) =
             rows.find_map(|(number, line)| numeric(line).map(|count| (number, count)))?;
@@ -299,6 +301,7 @@ mod tests {
             ("0.5, 1.5, 2\n1.5, 2.5, 3\n", Comma, false, 3),
             ("0 \t 1\n1 \t 2\n", Tab, false, 2),
             ("t,x\n0,nan\n1,2\n", Comma, false, 2),
+            ("0.5\n1.5\n", Tab, false, 1),
         ] {
             let layout = found(text);
             let shape = (layout.separator, layout.decimal_comma, layout.columns);

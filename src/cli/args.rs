@@ -1,0 +1,216 @@
+//! What was typed: shape and ranges only; no file is touched here.
+
+use std::path::PathBuf;
+
+use clap::{Args, Parser, Subcommand, ValueEnum};
+
+/// Audits what a time-stepping simulator wrote: errors against exact solutions of
+/// linear models, order across steps, verdicts against limits.
+#[derive(Debug, Parser)]
+#[command(name = "stepgauge", version, max_term_width = 100, after_help = "\
+Example: audit every submission below a folder, and keep the numbers
+  stepgauge audit demo-runs --write report.json
+
+Exit status: 0 all in order, 1 something failed, is undecided or not as expected,
+2 the audit could not be done.")]
+pub struct Arguments {
+    /// What to do.
+    #[command(subcommand)]
+    pub command: Command,
+}
+
+/// What to do.
+#[derive(Debug, Subcommand)]
+pub enum Command {
+    /// Audits every submission below the paths, or single files with --case
+    Audit(AuditArguments),
+    /// Lists the cases
+    Cases(CasesArguments),
+    /// Shows one case in full: equations, numbers, inputs, exact solution
+    Case(CaseArguments),
+    /// Writes exact values of a case as CSV
+    Exact(ExactArguments),
+}
+
+/// Where cases come from.
+#[derive(Debug, Args)]
+pub struct Sources {
+    /// Adds every case file below a folder (repeatable)
+    #[arg(long, value_name = "DIR")]
+    pub cases: Vec<PathBuf>,
+}
+
+/// Arguments of `audit`.
+#[derive(Debug, Args)]
+#[command(after_help = "\
+Example: one file of a simulator, written at a step of 10 s
+  stepgauge audit run.csv --case thermal/cold-room-defrost --column air=T1 --step 10 \\
+      --absolute 1e-3
+
+Exit status: 0 all in order, 1 something failed, is undecided or not as expected,
+2 the audit could not be done.")]
+pub struct AuditArguments {
+    /// Folders with submission.toml files, or trajectory files together with --case
+    #[arg(required = true, value_name = "PATH")]
+    pub paths: Vec<PathBuf>,
+    /// The case that the files claim to solve
+    #[arg(long, value_name = "NAME")]
+    pub case: Option<String>,
+    /// A column by name or number, as in air=T1 or time=1 (repeatable)
+    #[arg(long = "column", value_name = "CHANNEL=COLUMN", requires = "case", value_parser = pair)]
+    pub columns: Vec<(String, String)>,
+    /// The step of the file, in the time unit of the case
+    #[arg(long, value_name = "H", requires = "case", value_parser = positive)]
+    pub step: Option<f64>,
+    /// Replaces a parameter of the case, as in R_w=0.03 (repeatable)
+    #[arg(long = "set", value_name = "PARAMETER=VALUE", requires = "case", value_parser = number_pair)]
+    pub parameters: Vec<(String, f64)>,
+    /// The absolute limit, in the unit of each channel; goes before any other limit
+    #[arg(long, value_name = "LIMIT", value_parser = not_negative)]
+    pub absolute: Option<f64>,
+    /// The relative limit, a fraction; goes before any other limit
+    #[arg(long, value_name = "LIMIT", value_parser = not_negative)]
+    pub relative: Option<f64>,
+    /// What the relative limit is a fraction of
+    #[arg(long, value_name = "WHAT")]
+    pub relative_to: Option<RelativeTo>,
+    /// Writes a report whose kind follows from its ending: .json (repeatable)
+    #[arg(long, value_name = "FILE")]
+    pub write: Vec<PathBuf>,
+    /// Threads to work with [default: all processors]
+    #[arg(long, value_name = "N", value_parser = clap::value_parser!(u16).range(1..=256))]
+    pub threads: Option<u16>,
+    /// Cases beside the built-in ones
+    #[command(flatten)]
+    pub sources: Sources,
+}
+
+/// What a relative limit is a fraction of.
+#[derive(Clone, Copy, Debug, PartialEq, Eq, ValueEnum)]
+pub enum RelativeTo {
+    /// The exact value of each row.
+    Value,
+    /// The largest exact value of the channel.
+    Peak,
+}
+
+/// Arguments of `cases`.
+#[derive(Debug, Args)]
+#[command(after_help = "\
+Example: every electrical case
+  stepgauge cases --names | grep electrical/")]
+pub struct CasesArguments {
+    /// Prints one name a line
+    #[arg(long)]
+    pub names: bool,
+    /// Cases beside the built-in ones
+    #[command(flatten)]
+    pub sources: Sources,
+}
+
+/// A case with numbers of one's own.
+#[derive(Debug, Args)]
+pub struct CaseChoice {
+    /// The case
+    #[arg(value_name = "NAME")]
+    pub name: String,
+    /// Replaces a parameter of the case, as in R_w=0.03 (repeatable)
+    #[arg(long = "set", value_name = "PARAMETER=VALUE", value_parser = number_pair)]
+    pub parameters: Vec<(String, f64)>,
+    /// Cases beside the built-in ones
+    #[command(flatten)]
+    pub sources: Sources,
+}
+
+/// Arguments of `case`.
+#[derive(Debug, Args)]
+#[command(after_help = "\
+Example: matrices, start values and inputs as numbers, to drive a simulator with
+  stepgauge case thermal/cold-room-defrost --json")]
+pub struct CaseArguments {
+    /// Which case.
+    #[command(flatten)]
+    pub choice: CaseChoice,
+    /// Gives matrices, start values and inputs as numbers
+    #[arg(long)]
+    pub json: bool,
+}
+
+/// Arguments of `exact`.
+#[derive(Debug, Args)]
+#[command(after_help = "\
+Example: the exact trajectory every ten minutes
+  stepgauge exact thermal/cold-room-defrost --step 600")]
+pub struct ExactArguments {
+    /// Which case.
+    #[command(flatten)]
+    pub choice: CaseChoice,
+    /// Where to evaluate.
+    #[command(flatten)]
+    pub times: Times,
+}
+
+/// Where to evaluate: one of these.
+#[derive(Debug, Args)]
+#[group(required = true, multiple = false)]
+pub struct Times {
+    /// On a grid of this step from the start of the window to its end
+    #[arg(long, value_name = "H")]
+    pub step: Option<String>,
+    /// At listed times
+    #[arg(long, value_name = "T,T", value_delimiter = ',', allow_negative_numbers = true)]
+    pub at: Option<Vec<String>>,
+    /// At the time stamps of a file
+    #[arg(long, value_name = "FILE")]
+    pub times: Option<PathBuf>,
+}
+
+fn pair(text: &str) -> Result<(String, String), String> {
+    match text.split_once('=') {
+        Some((name, value)) if !name.trim().is_empty() && !value.trim().is_empty() => {
+            Ok((name.trim().to_owned(), value.trim().to_owned()))
+        }
+        _ => Err("expected NAME=VALUE".to_owned()),
+    }
+}
+
+fn number_pair(text: &str) -> Result<(String, f64), String> {
+    let (name, value) = pair(text)?;
+    Ok((name, finite(&value)?))
+}
+
+fn finite(text: &str) -> Result<f64, String> {
+    let number = text.parse::<f64>().ok().filter(|number| number.is_finite());
+    number.ok_or_else(|| "expected a finite number".to_owned())
+}
+
+fn positive(text: &str) -> Result<f64, String> {
+    finite(text).and_then(|number| {
+        if number > 0.0 { Ok(number) } else { Err("expected a number above zero".to_owned()) }
+    })
+}
+
+fn not_negative(text: &str) -> Result<f64, String> {
+    finite(text).and_then(|number| {
+        if number >= 0.0 { Ok(number) } else { Err("expected a number not below zero".to_owned()) }
+    })
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use clap::CommandFactory;
+
+    #[test]
+    fn the_definitions_are_consistent() {
+        Arguments::command().debug_assert();
+    }
+
+    #[test]
+    fn pairs_and_numbers() {
+        assert_eq!(pair("air = T 1"), Ok(("air".to_owned(), "T 1".to_owned())));
+        assert!(pair("air").is_err() && pair("=x").is_err());
+        assert!(number_pair("R=nan").is_err() && positive("0").is_err());
+        assert!(not_negative("-1").is_err() && not_negative("0").is_ok());
+    }
+}

@@ -1,0 +1,8 @@
+//! The command line: what was typed, what will be done, and the doing.
+
+mod args;
+mod plan;
+mod run;
+
+pub use args::Arguments;
+pub use run::run;

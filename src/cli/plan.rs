@@ -1,0 +1,185 @@
+//! What will be done: submissions found and read, single files turned into
+//! submissions, limits of the command line put in.
+
+use std::collections::BTreeMap;
+use std::path::{Path, PathBuf};
+
+use super::args::{AuditArguments, RelativeTo, Sources};
+use crate::audit::{Plan, Planned};
+use crate::case::{Library, Replacements};
+use crate::fault::{Fault, quoted};
+use crate::outcome::NotAudited;
+use crate::submission::{
+    Claims, ColumnName, ColumnStated, Expect, LimitStated, LimitsStated, MOST_SUBMISSION_BYTES,
+    Place, Run, Setting, Submission, discover,
+};
+use crate::trajectory::Stated;
+
+/// The library with the folders that the user names.
+pub(super) fn library(sources: &Sources) -> Result<Library, Vec<Fault>> {
+    let mut library = Library::new();
+    for folder in &sources.cases {
+        library.add_folder(folder)?;
+    }
+    Ok(library)
+}
+
+/// The plan of an audit.
+///
+/// # Errors
+/// What keeps the whole audit from being done; a single submission that cannot be read
+/// is part of the plan.
+pub(super) fn plan(arguments: &AuditArguments) -> Result<Plan, Vec<Fault>> {
+    let library = library(&arguments.sources)?;
+    let threads = match arguments.threads {
+        Some(threads) => usize::from(threads),
+        None => std::thread::available_parallelism().map_or(1, usize::from),
+    };
+    let mut plan = Plan { library, submissions: Vec::new(), unreadable: Vec::new(), threads };
+    match &arguments.case {
+        Some(case) => single_files(case, arguments, &mut plan)?,
+        None => submissions(arguments, &mut plan)?,
+    }
+    check_reports(arguments, &plan)?;
+    Ok(plan)
+}
+
+fn single_files(
+    case: &str,
+    arguments: &AuditArguments,
+    plan: &mut Plan,
+) -> Result<(), Vec<Fault>> {
+    let parameters: Replacements = arguments.parameters.iter().cloned().collect();
+    // A case that is not there would otherwise be complained of once for every file.
+    plan.library.load(case, &parameters)?;
+    if arguments.step.is_some() && arguments.paths.len() > 1 {
+        let fault = Fault::new("--step goes with one file, several were given");
+        return Err(vec![fault.help("write a submission.toml with a step for each run")]);
+    }
+    let mut columns = BTreeMap::new();
+    for (channel, column) in &arguments.columns {
+        let name = match column.parse::<usize>() {
+            Ok(number) if number > 0 => ColumnName::Number(number),
+            _ => ColumnName::Name(column.clone()),
+        };
+        let stated = ColumnStated { column: Some(name), unit: None };
+        if columns.insert(channel.clone(), stated).is_some() {
+            let text = format!("--column is given twice for {}", quoted(channel));
+            return Err(vec![Fault::new(text)]);
+        }
+    }
+    let mut faults = Vec::new();
+    for path in &arguments.paths {
+        if path.is_dir() {
+            let fault = Fault::new("--case goes with trajectory files, this is a folder");
+            faults.push(fault.help("leave --case out to audit its submissions").in_file(path));
+            continue;
+        }
+        if !path.exists() {
+            faults.push(Fault::new("there is no such file").in_file(path));
+            continue;
+        }
+        let file = path.file_name().unwrap_or_default().to_string_lossy().into_owned();
+        let setting = arguments.step.map_or(Setting::Unstated, Setting::Step);
+        let submission = Submission {
+            case: Some(case.to_owned()),
+            producer: None,
+            expect: Expect::Pass,
+            parameters: parameters.clone(),
+            claims: Claims::default(),
+            limits: LimitsStated::default(),
+            columns: columns.clone(),
+            layout: Stated::default(),
+            runs: vec![Run { file, path: path.clone(), setting, role: None }],
+        };
+        let name = path.to_string_lossy().into_owned();
+        plan.submissions.push(planned(name, submission, arguments));
+    }
+    if faults.is_empty() { Ok(()) } else { Err(faults) }
+}
+
+fn submissions(arguments: &AuditArguments, plan: &mut Plan) -> Result<(), Vec<Fault>> {
+    let prefix = arguments.paths.len() > 1;
+    let mut places: Vec<Place> = Vec::new();
+    let mut faults = Vec::new();
+    for path in &arguments.paths {
+        match discover(path, prefix) {
+            Ok(found) => places.extend(found),
+            Err(mut found) => faults.append(&mut found),
+        }
+    }
+    if !faults.is_empty() {
+        return Err(faults);
+    }
+    places.sort();
+    places.dedup();
+    for place in places {
+        match read(&place) {
+            Ok(submission) => plan.submissions.push(planned(place.name, submission, arguments)),
+            Err(faults) => {
+                let faults = faults.into_iter().map(|fault| fault.in_file(&place.file)).collect();
+                plan.unreadable.push(NotAudited { name: place.name, faults });
+            }
+        }
+    }
+    Ok(())
+}
+
+fn read(place: &Place) -> Result<Submission, Vec<Fault>> {
+    let path = &place.file;
+    let io = |error: std::io::Error| vec![Fault::io(path, &error)];
+    let size = std::fs::metadata(path).map_err(io)?.len();
+    if size > MOST_SUBMISSION_BYTES {
+        let text = format!("has {size} bytes, at most {MOST_SUBMISSION_BYTES} are read");
+        return Err(vec![Fault::new(text)]);
+    }
+    let bytes = std::fs::read(path).map_err(io)?;
+    let text = String::from_utf8(bytes).map_err(|error| {
+        let valid = error.utf8_error().valid_up_to();
+        let text = String::from_utf8_lossy(&error.as_bytes()[..valid]).into_owned();
+        let help = "save it as UTF-8; if it is a trajectory, name the case with `--case`";
+        vec![Fault::new("this is not UTF-8 text").help(help).at_offset(&text, valid)]
+    })?;
+    Submission::parse(&text, &place.folder)
+}
+
+/// Limits of the command line go before all others, those of channels included.
+fn planned(name: String, mut submission: Submission, arguments: &AuditArguments) -> Planned {
+    let limits_from_command_line = arguments.absolute.is_some() || arguments.relative.is_some();
+    if limits_from_command_line {
+        let of_peak = match arguments.relative_to {
+            Some(what) => Some(what == RelativeTo::Peak),
+            None => submission.limits.general.of_peak,
+        };
+        submission.limits.general =
+            LimitStated { absolute: arguments.absolute, relative: arguments.relative, of_peak };
+        submission.limits.channels.clear();
+    } else if let Some(what) = arguments.relative_to {
+        submission.limits.general.of_peak = Some(what == RelativeTo::Peak);
+    }
+    Planned { name, submission, limits_from_command_line }
+}
+
+/// A report must be of a kind that is known and must not take the place of an input.
+fn check_reports(arguments: &AuditArguments, plan: &Plan) -> Result<(), Vec<Fault>> {
+    let mut faults = Vec::new();
+    let inputs: Vec<PathBuf> = (plan.submissions.iter())
+        .flat_map(|planned| &planned.submission.runs)
+        .filter_map(|run| run.path.canonicalize().ok())
+        .collect();
+    for path in &arguments.write {
+        let ending = path.extension().unwrap_or_default().to_string_lossy().to_lowercase();
+        let folder = path.parent().filter(|folder| !folder.as_os_str().is_empty());
+        if ending != "json" {
+            let fault = Fault::new(format!("no report is known by the ending {}", quoted(&ending)));
+            faults.push(fault.help("reports end in .json").in_file(path));
+        } else if !folder.unwrap_or(Path::new(".")).is_dir() {
+            let fault = Fault::new("the folder of this report is not there");
+            faults.push(fault.help("make the folder first").in_file(path));
+        } else if path.canonicalize().is_ok_and(|path| inputs.contains(&path)) {
+            let fault = Fault::new("this report would overwrite a file that is audited");
+            faults.push(fault.help("give the report another name").in_file(path));
+        }
+    }
+    if faults.is_empty() { Ok(()) } else { Err(faults) }
+}

@@ -1,0 +1,242 @@
+//! From arguments to an exit status; the only module that prints.
+
+use std::io::{self, IsTerminal, Write};
+use std::process::ExitCode;
+
+use super::args::{
+    Arguments, AuditArguments, CaseArguments, CaseChoice, CasesArguments, Command, ExactArguments,
+};
+use super::plan;
+use crate::audit::audit;
+use crate::case::{Case, Library, Replacements};
+use crate::exact::Exact;
+use crate::fault::{Fault, quoted};
+use crate::number::{Decimal, Double};
+use crate::report::{
+    Screen, ValueWriter, WIDEST, audit_json, audit_text, case_json, case_list, case_text,
+    write_atomically,
+};
+use crate::trajectory::{Findings, Selection, Stated, Survey, open};
+
+/// All in order.
+const IN_ORDER: u8 = 0;
+/// Something failed, is undecided or not as expected.
+const NOT_IN_ORDER: u8 = 1;
+/// The audit could not be done.
+const NOT_DONE: u8 = 2;
+
+/// What can end a command early.
+enum Stop {
+    /// Complaints, which are printed.
+    Faults(Vec<Fault>),
+    /// Standard output was closed or cannot be written to.
+    Output(io::Error),
+}
+
+impl From<Vec<Fault>> for Stop {
+    fn from(faults: Vec<Fault>) -> Stop {
+        Stop::Faults(faults)
+    }
+}
+
+impl From<Fault> for Stop {
+    fn from(fault: Fault) -> Stop {
+        Stop::Faults(vec![fault])
+    }
+}
+
+impl From<io::Error> for Stop {
+    fn from(error: io::Error) -> Stop {
+        Stop::Output(error)
+    }
+}
+
+/// Does what was asked for.
+pub fn run(arguments: &Arguments) -> ExitCode {
+    let result = match &arguments.command {
+        Command::Audit(arguments) => run_audit(arguments),
+        Command::Cases(arguments) => run_cases(arguments),
+        Command::Case(arguments) => run_case(arguments),
+        Command::Exact(arguments) => run_exact(arguments),
+    };
+    let status = match result {
+        Ok(status) => status,
+        Err(Stop::Faults(faults)) => {
+            let mut stream = anstream::stderr();
+            for fault in faults {
+                // Nothing is left to do where even this cannot be written.
+                let _ = writeln!(stream, "{fault}");
+            }
+            NOT_DONE
+        }
+        // Whoever reads has seen enough: a quiet end.
+        Err(Stop::Output(error)) if error.kind() == io::ErrorKind::BrokenPipe => IN_ORDER,
+        Err(Stop::Output(error)) => {
+            let _ = writeln!(anstream::stderr(), "standard output cannot be written: {error}");
+            NOT_DONE
+        }
+    };
+    ExitCode::from(status)
+}
+
+fn run_audit(arguments: &AuditArguments) -> Result<u8, Stop> {
+    let plan = plan::plan(arguments)?;
+    let outcome = audit(&plan);
+    // Reports first: a closed pipe must not cost them.
+    for path in &arguments.write {
+        write_atomically(path, audit_json(&outcome).as_bytes())?;
+    }
+    let status = if !outcome.not_audited.is_empty() {
+        NOT_DONE
+    } else if outcome.in_order() {
+        IN_ORDER
+    } else {
+        NOT_IN_ORDER
+    };
+    match print(&audit_text(&outcome, screen())) {
+        // The verdict stands whether or not anybody reads the table to its end.
+        Err(error) if error.kind() == io::ErrorKind::BrokenPipe => Ok(status),
+        other => Ok(other.map(|()| status)?),
+    }
+}
+
+fn run_cases(arguments: &CasesArguments) -> Result<u8, Stop> {
+    let library = plan::library(&arguments.sources)?;
+    if arguments.names {
+        let names: String = library.names().map(|name| format!("{name}\n")).collect();
+        print(&names)?;
+        return Ok(IN_ORDER);
+    }
+    let cases: Result<Vec<Case>, Vec<Fault>> =
+        library.names().map(|name| library.load(name, &Replacements::new())).collect();
+    print(&case_list(&cases?, screen()))?;
+    Ok(IN_ORDER)
+}
+
+fn load(choice: &CaseChoice) -> Result<(Case, Exact), Stop> {
+    let library: Library = plan::library(&choice.sources)?;
+    let parameters: Replacements = choice.parameters.iter().cloned().collect();
+    let case = library.load(&choice.name, &parameters)?;
+    let exact = case.exact()?;
+    Ok((case, exact))
+}
+
+fn run_case(arguments: &CaseArguments) -> Result<u8, Stop> {
+    let (case, exact) = load(&arguments.choice)?;
+    let text = if arguments.json {
+        case_json(&case, &exact)
+    } else {
+        case_text(&case, &exact, screen())
+    };
+    print(&text)?;
+    Ok(IN_ORDER)
+}
+
+fn run_exact(arguments: &ExactArguments) -> Result<u8, Stop> {
+    let (case, exact) = load(&arguments.choice)?;
+    let channels = case.channels();
+    let names: Vec<&str> = channels.iter().map(|channel| channel.name).collect();
+    let mut walk = exact.walk_rounded();
+    let mut writer = ValueWriter::new(io::BufWriter::new(io::stdout().lock()), &names)?;
+    let mut write = |time: Double| -> Result<(), Stop> {
+        let values = walk.at(time)?;
+        writer.row(time.to_f64(), &values)?;
+        Ok(())
+    };
+    let times = &arguments.times;
+    if let Some(list) = &times.at {
+        for text in list {
+            write(decimal(text, "--at")?.to_double())?;
+        }
+    } else if let Some(text) = &times.step {
+        let step = decimal(text, "--step")?;
+        on_grid(&case, step, &mut write)?;
+    } else if let Some(path) = &times.times {
+        at_stamps(path, &mut write)?;
+    }
+    writer.finish()?;
+    Ok(IN_ORDER)
+}
+
+fn decimal(text: &str, option: &str) -> Result<Decimal, Fault> {
+    let complain = || Fault::new(format!("{option}: {} is not a number", quoted(text)));
+    Decimal::parse(text.trim()).ok_or_else(complain)
+}
+
+fn on_grid(
+    case: &Case,
+    step: Decimal,
+    write: &mut dyn FnMut(Double) -> Result<(), Stop>,
+) -> Result<(), Stop> {
+    let (from, to) = (case.time.from, case.time.to);
+    let length = step.to_double();
+    let count = ((to - from) / length).to_f64();
+    if !(length.to_f64() > 0.0 && count.is_finite() && count < 1e12) {
+        let text = "--step must be above zero and not absurdly small for the window";
+        return Err(Fault::new(text).into());
+    }
+    for index in 0..=(count * (1.0 + 1e-12)).floor() as u64 {
+        write(from + length * Double::from(index as f64))?;
+    }
+    Ok(())
+}
+
+/// The stamps of a file: its column `t` or `time`, else its first column.
+fn at_stamps(
+    path: &std::path::Path,
+    write: &mut dyn FnMut(Double) -> Result<(), Stop>,
+) -> Result<(), Stop> {
+    let stated = Stated::default();
+    let placed = |fault: Fault| fault.in_file(path);
+    let source = open(path)?;
+    let Some(layout) = source.layout(&stated).map_err(placed)? else {
+        return Err(placed(Fault::new("the file has no rows of numbers")).into());
+    };
+    let is_time = |name: &String| name == "t" || name.eq_ignore_ascii_case("time");
+    let named = layout.names.as_ref().and_then(|names| names.iter().position(is_time));
+    let selection = Selection { time: named.unwrap_or(0), channels: Vec::new() };
+    let survey = Survey::new(&source, layout, selection, &stated).map_err(placed)?;
+    let mut stopped = None;
+    let mut findings = Findings::default();
+    let result = survey.rows(&source, &mut findings, &|_| true, &mut |row| {
+        write(row.time).map_err(|stop| match stop {
+            Stop::Faults(mut faults) => faults.pop().unwrap_or_else(|| Fault::new("")).at(row.line, 1),
+            Stop::Output(error) => {
+                stopped = Some(error);
+                Fault::new("standard output was closed")
+            }
+        })
+    });
+    match (result, stopped) {
+        (_, Some(error)) => Err(error.into()),
+        (Err(fault), None) => Err(placed(fault).into()),
+        (Ok(()), None) => Ok(()),
+    }
+}
+
+/// Text for standard output; colour is dropped where it does not belong.
+fn print(text: &str) -> io::Result<()> {
+    let mut stream = anstream::stdout().lock();
+    stream.write_all(text.as_bytes())?;
+    stream.flush()
+}
+
+/// What the terminal can show; a pipe gets a hundred columns unless `COLUMNS` says
+/// otherwise.
+fn screen() -> Screen {
+    let stated = std::env::var("COLUMNS").ok().and_then(|columns| columns.parse::<u16>().ok());
+    let seen = if io::stdout().is_terminal() {
+        terminal_size::terminal_size().map(|(width, _)| width.0)
+    } else {
+        None
+    };
+    // Containers report terminals without a size.
+    let width = seen.filter(|&width| width >= 40).or(stated).unwrap_or(100);
+    let locale = ["LC_ALL", "LC_CTYPE", "LANG"]
+        .iter()
+        .find_map(|name| std::env::var(name).ok().filter(|value| !value.is_empty()))
+        .unwrap_or_default()
+        .to_lowercase();
+    let unicode = locale.contains("utf-8") || locale.contains("utf8");
+    Screen { width: width.clamp(40, WIDEST), unicode }
+}

@@ -1,0 +1,29 @@
+//! Outcomes and cases to bytes: the terminal table, JSON, CSV.
+//!
+//! A report knows results and cases but no solver; every format takes its numbers
+//! from the same outcome.
+
+mod case_json;
+mod case_text;
+mod csv_values;
+mod json;
+mod style;
+mod table;
+mod wire;
+mod write;
+
+pub use case_json::case_json;
+pub use case_text::{case_list, case_text};
+pub use csv_values::ValueWriter;
+pub use json::audit_json;
+pub use style::{Screen, WIDEST};
+pub use table::audit_text;
+pub use wire::SCHEMA;
+pub use write::write_atomically;
+
+/// What every report says of a pass.
+pub const SCOPE: &str = "A pass covers the linear case that was run, in its window, within its limit. \
+It is no approval of a simulator for other models or for any use in which people can be hurt.";
+
+/// What is added where a drug case is among them.
+pub const NOT_FOR_DOSING: &str = "The kinetics cases are not for dosing.";

@@ -1,0 +1,168 @@
+//! The versioned shape of the JSON reports, apart from the inner types: names here
+//! stay when those inside change, and [`SCHEMA`] rises when one of these does.
+
+use serde::{Deserialize, Serialize};
+
+/// Version of the names in the JSON reports.
+pub const SCHEMA: u32 = 1;
+
+/// A whole audit.
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
+#[allow(missing_docs)]
+pub struct AuditReport {
+    pub stepgauge: String,
+    pub schema: u32,
+    pub summary: Summary,
+    pub submissions: Vec<SubmissionReport>,
+    pub not_audited: Vec<NotAuditedReport>,
+    pub scope: String,
+}
+
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
+#[allow(missing_docs)]
+pub struct Summary {
+    pub pass: usize,
+    pub fail: usize,
+    pub undecided: usize,
+    pub in_order: bool,
+}
+
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
+#[allow(missing_docs)]
+pub struct NotAuditedReport {
+    pub name: String,
+    pub faults: Vec<String>,
+}
+
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
+#[allow(missing_docs)]
+pub struct SubmissionReport {
+    pub name: String,
+    pub case: String,
+    pub producer: Option<String>,
+    pub expect: String,
+    pub verdict: String,
+    pub in_order: bool,
+    pub reasons: Vec<String>,
+    pub notes: Vec<String>,
+    pub parameters: std::collections::BTreeMap<String, f64>,
+    pub limits_from: String,
+    pub runs: Vec<RunReport>,
+    pub orders: Vec<OrderReport>,
+    /// What the numbers say of the claimed method; null until it is computed.
+    pub evidence: Option<()>,
+    /// Likely causes of a failure; empty until they are computed.
+    pub causes: Vec<()>,
+    /// Advice on the step; null until it is computed.
+    pub advice: Option<()>,
+}
+
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
+#[allow(missing_docs)]
+pub struct RunReport {
+    pub file: String,
+    pub role: String,
+    pub step: Option<f64>,
+    pub tolerance: Option<f64>,
+    pub rows: u64,
+    pub layout: String,
+    pub findings: Vec<FindingReport>,
+    pub channels: Vec<ChannelReport>,
+}
+
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
+#[allow(missing_docs)]
+pub struct FindingReport {
+    pub kind: String,
+    pub line: Option<u64>,
+    pub text: String,
+}
+
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
+#[allow(missing_docs)]
+pub struct ChannelReport {
+    pub name: String,
+    pub unit: String,
+    pub worst_error: Option<f64>,
+    pub at: Option<f64>,
+    pub rms_error: Option<f64>,
+    pub end_error: Option<f64>,
+    pub peak: Option<f64>,
+    pub resolution: Option<f64>,
+    pub digits: Option<String>,
+    pub limit: Option<f64>,
+    pub limit_used: Option<f64>,
+    pub verdict: String,
+}
+
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
+#[allow(missing_docs)]
+pub struct OrderReport {
+    pub channel: String,
+    pub claimed: Option<f64>,
+    pub observed: Option<f64>,
+    pub low: Option<f64>,
+    pub high: Option<f64>,
+    pub rungs_used: usize,
+    pub verdict: Option<String>,
+    pub note: Option<String>,
+}
+
+/// A case, with which a simulator can be driven.
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
+#[allow(missing_docs, non_snake_case)]
+pub struct CaseReport {
+    pub stepgauge: String,
+    pub schema: u32,
+    pub name: String,
+    pub title: String,
+    pub time: TimeReport,
+    pub parameters: std::collections::BTreeMap<String, f64>,
+    pub states: Vec<StateReport>,
+    pub A: Vec<Vec<f64>>,
+    pub B: Vec<Vec<f64>>,
+    pub constant: Vec<f64>,
+    pub inputs: Vec<serde_json::Map<String, serde_json::Value>>,
+    pub outputs: Vec<OutputReport>,
+    pub jumps: Vec<f64>,
+    pub shortest_time_constant: Option<f64>,
+    pub shortest_period: Option<f64>,
+}
+
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
+#[allow(missing_docs)]
+pub struct TimeReport {
+    pub unit: String,
+    pub from: f64,
+    pub to: f64,
+}
+
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
+#[allow(missing_docs)]
+pub struct StateReport {
+    pub name: String,
+    pub unit: String,
+    pub start: f64,
+}
+
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
+#[allow(missing_docs, non_snake_case)]
+pub struct OutputReport {
+    pub name: String,
+    pub unit: String,
+    pub C: Vec<f64>,
+    pub D: Vec<f64>,
+    pub constant: f64,
+}

@@ -1,0 +1,41 @@
+//! Reports onto the disk: whole or not at all.
+
+use std::io::Write;
+use std::path::Path;
+
+use crate::fault::{Fault, Result};
+
+/// Writes a file beside its place first and then renames it, so that whoever reads it
+/// finds the old report or the new one, never half of one.
+///
+/// # Errors
+/// A folder that is not there or cannot be written to, a full disk.
+pub fn write_atomically(path: &Path, bytes: &[u8]) -> Result<()> {
+    let complain = |error: std::io::Error| {
+        Fault::new(format!("cannot be written: {error}")).in_file(path)
+    };
+    let folder = match path.parent() {
+        Some(folder) if !folder.as_os_str().is_empty() => folder,
+        _ => Path::new("."),
+    };
+    if path.is_dir() {
+        return Err(Fault::new("cannot be written: this is a folder").in_file(path));
+    }
+    let mut file = tempfile::Builder::new()
+        .prefix(".stepgauge-")
+        .tempfile_in(folder)
+        .map_err(complain)?;
+    file.write_all(bytes).map_err(complain)?;
+    file.as_file().sync_all().map_err(complain)?;
+    // A temporary file is for its owner alone; a report is for everyone who may read
+    // the folder.
+    #[cfg(unix)]
+    {
+        use std::os::unix::fs::PermissionsExt;
+        let mode = std::fs::metadata(path).map_or(0o644, |old| old.permissions().mode() & 0o777);
+        let permissions = std::fs::Permissions::from_mode(mode);
+        file.as_file().set_permissions(permissions).map_err(complain)?;
+    }
+    file.persist(path).map_err(|error| complain(error.error))?;
+    Ok(())
+}
