@@ -2,6 +2,7 @@
 //! and where rows are missing.
 
 use super::number::Printed;
+use super::resolution::Resolution;
 use crate::number::Decimal;
 
 /// What the stamps of a file have in common.
@@ -48,7 +49,6 @@ pub(super) struct GridFinder {
     most_decimals: u8,
     steps: u64,
     sum: f64,
-    widest_tolerance: f64,
     overflowed: bool,
     clusters: Vec<Cluster>,
     latest: usize,
@@ -91,7 +91,6 @@ impl GridFinder {
     fn count(&mut self, step: f64, exact: Option<Decimal>, tolerance: f64) {
         self.steps += 1;
         self.sum += step;
-        self.widest_tolerance = self.widest_tolerance.max(tolerance);
         // Where stamps are printed to few digits for their step, equal decimals tell
         // more than a tolerance as wide as the step itself.
         let coarse = tolerance > 0.3 * step;
@@ -129,13 +128,15 @@ impl GridFinder {
         self.latest = place;
     }
 
-    pub(super) fn conclude(&self) -> Grid {
+    /// The grid, with how finely the stamps turned out to be printed.
+    pub(super) fn conclude(&self, printed: Resolution) -> Grid {
         let Some(most) = self.clusters.iter().max_by_key(|cluster| cluster.count) else {
             return Grid::Varied;
         };
         if (most.count as f64) < UNIFORM_SHARE * self.steps as f64 {
             let mean = self.sum / self.steps as f64;
-            let near = |c: &Cluster| (c.spacing - mean).abs() <= self.widest_tolerance / 2.0;
+            let last = self.last.map_or(0.0, |(time, ..)| time);
+            let near = |c: &Cluster| (c.spacing - mean).abs() <= 2.1 * printed.at(last);
             let rounded = !self.overflowed && self.clusters.iter().all(near);
             // Steps that differ by no more than the rounding of their stamps.
             return if rounded {
@@ -155,17 +156,20 @@ impl GridFinder {
 #[cfg(test)]
 mod tests {
     use super::super::number::Field;
+    use super::super::resolution::Pattern;
     use super::*;
 
     fn grid(stamps: impl IntoIterator<Item = String>) -> Grid {
         let mut finder = GridFinder::default();
+        let mut pattern = Pattern::new();
         for text in stamps {
             let Field::Number(time, printed) = Field::read(text.as_bytes(), false) else {
                 panic!("{text}")
             };
             finder.add(time, Decimal::parse(&text), printed);
+            pattern.add(time, printed);
         }
-        finder.conclude()
+        finder.conclude(pattern.conclude(None))
     }
 
     fn spacing(grid: Grid) -> (f64, bool) {

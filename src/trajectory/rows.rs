@@ -159,8 +159,11 @@ impl Survey {
                 let step = time - last;
                 // Each of the two stamps may be off by its resolution.
                 let slack = 2.1 * resolution.max(half_ulp(time));
-                if step > 1.5 * spacing && step - spacing > slack {
-                    let missing = (step / spacing).round() - 1.0;
+                // Steps of a code that chooses them are no whole multiples.
+                let missing = (step / spacing).round() - 1.0;
+                let off_grid = (step - (missing + 1.0) * spacing).abs();
+                let whole = off_grid <= slack * (missing + 2.0) + 1e-6 * step;
+                if missing >= 1.0 && step - spacing > slack && whole {
                     let text = format!(
                         "{missing} row(s) missing before this one: t goes from {last} to {time} \
                          in a file of step {spacing}"

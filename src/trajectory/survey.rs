@@ -112,9 +112,10 @@ impl Survey {
             });
             Ok(())
         })?;
+        let time = time_pattern.conclude(stated.digits);
         Ok(Survey {
-            grid: finder.conclude(),
-            time: time_pattern.conclude(stated.digits),
+            grid: finder.conclude(time),
+            time,
             channels: patterns.iter().map(|pattern| pattern.conclude(stated.digits)).collect(),
             layout,
             selection,

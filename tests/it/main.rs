@@ -6,3 +6,6 @@ mod digits;
 /// Certified enclosures (Arb): every number of `certified-values.json`, and every
 /// built-in case.
 mod certified;
+
+/// Trajectories of general-purpose integrators against certified errors.
+mod integrators;
