@@ -15,8 +15,8 @@ use crate::outcome::{
     Audited, ChannelOutcome, ErrorOutcome, LimitsFrom, NotAudited, OrderOutcome, Outcome,
     RunOutcome,
 };
-use crate::submission::{LimitStated, LimitsStated, Matched, Role, Run, Setting, Submission};
 use crate::submission::match_columns;
+use crate::submission::{LimitStated, LimitsStated, Matched, Role, Run, Setting, Submission};
 use crate::trajectory::{Findings, Kind, Survey, open};
 
 /// What is to be audited.
@@ -61,15 +61,19 @@ pub fn audit(plan: &Plan) -> Outcome {
             scope.spawn(|| {
                 loop {
                     let index = next.fetch_add(1, Ordering::Relaxed);
-                    let Some(planned) = plan.submissions.get(index) else { break };
+                    let Some(planned) = plan.submissions.get(index) else {
+                        break;
+                    };
                     let result = audit_one(planned, &plan.library, &models);
                     lock(&done).insert(index, result);
                 }
             });
         }
     });
-    let mut outcome =
-        Outcome { submissions: Vec::new(), not_audited: plan.unreadable.clone() };
+    let mut outcome = Outcome {
+        submissions: Vec::new(),
+        not_audited: plan.unreadable.clone(),
+    };
     for (index, result) in std::mem::take(&mut *lock(&done)) {
         match result {
             Ok(audited) => outcome.submissions.push(audited),
@@ -84,7 +88,9 @@ pub fn audit(plan: &Plan) -> Outcome {
 
 /// A lock whose data is whole even if another thread has panicked.
 fn lock<T>(mutex: &Mutex<T>) -> std::sync::MutexGuard<'_, T> {
-    mutex.lock().unwrap_or_else(std::sync::PoisonError::into_inner)
+    mutex
+        .lock()
+        .unwrap_or_else(std::sync::PoisonError::into_inner)
 }
 
 fn model(
@@ -105,11 +111,7 @@ fn model(
     Ok(model)
 }
 
-fn audit_one(
-    planned: &Planned,
-    library: &Library,
-    models: &Models,
-) -> Result<Audited, Vec<Fault>> {
+fn audit_one(planned: &Planned, library: &Library, models: &Models) -> Result<Audited, Vec<Fault>> {
     let submission = &planned.submission;
     let name = submission.case.as_deref().ok_or_else(|| {
         let fault = Fault::new("the submission names no case");
@@ -131,7 +133,11 @@ fn audit_one(
         producer: submission.producer.clone(),
         expect: submission.expect,
         verdict: Verdict::Pass,
-        parameters: submission.parameters.iter().map(|(n, v)| (n.clone(), *v)).collect(),
+        parameters: submission
+            .parameters
+            .iter()
+            .map(|(n, v)| (n.clone(), *v))
+            .collect(),
         limits_from: limits_from(planned),
         reasons: Vec::new(),
         notes,
@@ -163,11 +169,23 @@ fn check_limited_channels(case: &Case, limits: &LimitsStated) -> Result<(), Vec<
     let unknown = |name: &&String| channels.iter().all(|channel| channel.name != name.as_str());
     let complain = |name: &String| {
         let names: Vec<&str> = channels.iter().map(|channel| channel.name).collect();
-        Fault::new(format!("case `{}` has no channel `{name}` to limit", case.name))
-            .help(format!("its channels are {}", names.join(", ")))
+        Fault::new(format!(
+            "case `{}` has no channel `{name}` to limit",
+            case.name
+        ))
+        .help(format!("its channels are {}", names.join(", ")))
     };
-    let faults: Vec<Fault> = limits.channels.keys().filter(unknown).map(complain).collect();
-    if faults.is_empty() { Ok(()) } else { Err(faults) }
+    let faults: Vec<Fault> = limits
+        .channels
+        .keys()
+        .filter(unknown)
+        .map(complain)
+        .collect();
+    if faults.is_empty() {
+        Ok(())
+    } else {
+        Err(faults)
+    }
 }
 
 /// One run with what the ladder needs of it.
@@ -187,7 +205,11 @@ fn limit(case: &Case, stated: &LimitsStated, channel: &str) -> Limit {
     let general_states = general.absolute.is_some() || general.relative.is_some();
     let of_peak = own.of_peak.or(general.of_peak).unwrap_or(false);
     let part = |own: Option<f64>, general: Option<f64>, case: f64| {
-        if own_states || general_states { own.or(general).unwrap_or(0.0) } else { case }
+        if own_states || general_states {
+            own.or(general).unwrap_or(0.0)
+        } else {
+            case
+        }
     };
     Limit {
         absolute: part(own.absolute, general.absolute, case.limits.absolute),
@@ -221,11 +243,19 @@ fn compare(
     let Some(layout) = source.layout(&submission.layout)? else {
         findings.fatal(Kind::EmptyFile, None, "the file has no rows of numbers");
         outcome.findings = findings.into_list();
-        return Ok(RunCompared { outcome, role_stated: run.role, deviations: Vec::new() });
+        return Ok(RunCompared {
+            outcome,
+            role_stated: run.role,
+            deviations: Vec::new(),
+        });
     };
     let matched = match_columns(&model.case, &layout, &submission.columns)?;
     for (channel, reason) in &matched.missing {
-        findings.fatal(Kind::ColumnMissing, None, format!("`{channel}` is missing: {reason}"));
+        findings.fatal(
+            Kind::ColumnMissing,
+            None,
+            format!("`{channel}` is missing: {reason}"),
+        );
     }
     for note in &matched.notes {
         if !notes.contains(note) {
@@ -237,7 +267,13 @@ fn compare(
     let channels: Vec<_> = matched
         .channels
         .iter()
-        .map(|c| (c.channel, c.conversion, limit(&model.case, &submission.limits, names[c.channel].name)))
+        .map(|c| {
+            (
+                c.channel,
+                c.conversion,
+                limit(&model.case, &submission.limits, names[c.channel].name),
+            )
+        })
         .collect();
     let survey = Survey::new(&source, layout, matched.selection(), &submission.layout)?;
     let comparison = Comparison {
@@ -260,23 +296,30 @@ fn compare(
             run.file, compared.outside
         ));
     }
-    outcome.step = step.or(compared.spacing.filter(|_| run.setting == Setting::Unstated));
+    outcome.step = step.or(compared
+        .spacing
+        .filter(|_| run.setting == Setting::Unstated));
     outcome.rows = compared.rows;
     outcome.findings = findings.into_list();
     outcome.channels = channel_outcomes(model, &matched, &compared);
-    let deviations = matched.channels.iter().map(|c| c.channel).zip(compared.channels).collect();
-    Ok(RunCompared { outcome, role_stated: run.role, deviations })
+    let deviations = matched
+        .channels
+        .iter()
+        .map(|c| c.channel)
+        .zip(compared.channels)
+        .collect();
+    Ok(RunCompared {
+        outcome,
+        role_stated: run.role,
+        deviations,
+    })
 }
 
-fn channel_outcomes(
-    model: &Model,
-    matched: &Matched,
-    compared: &Compared,
-) -> Vec<ChannelOutcome> {
+fn channel_outcomes(model: &Model, matched: &Matched, compared: &Compared) -> Vec<ChannelOutcome> {
     let channels = model.case.channels();
     let outcome = |(column, deviation): (&crate::submission::Column, &Deviation)| {
         let digits = deviation.resolution.describe();
-        let errors = (deviation.rows > 0).then(|| ErrorOutcome {
+        let errors = (deviation.rows > 0).then_some(ErrorOutcome {
             worst: deviation.worst,
             at: deviation.worst_at,
             rms: deviation.rms,
@@ -295,7 +338,12 @@ fn channel_outcomes(
             verdict: judge::of_deviation(deviation, compared.rows),
         }
     };
-    matched.channels.iter().zip(&compared.channels).map(outcome).collect()
+    matched
+        .channels
+        .iter()
+        .zip(&compared.channels)
+        .map(outcome)
+        .collect()
 }
 
 /// The finest run is the result unless the submission says otherwise; where steps are
@@ -316,11 +364,16 @@ fn assign_roles(runs: &mut [RunCompared]) {
     let known = runs.iter().all(|run| rung_setting(&run.outcome).is_some());
     if let Some((finest, _)) = finest.filter(|_| known) {
         for (index, run) in runs.iter_mut().enumerate() {
-            run.outcome.role = if index == finest { Role::Result } else { Role::Rung };
+            run.outcome.role = if index == finest {
+                Role::Result
+            } else {
+                Role::Rung
+            };
         }
     } else if runs.iter().all(|run| run.role_stated == Some(Role::Rung)) {
         // A submission of rungs alone would have nothing that a limit applies to.
-        runs.iter_mut().for_each(|run| run.outcome.role = Role::Result);
+        runs.iter_mut()
+            .for_each(|run| run.outcome.role = Role::Result);
     }
 }
 
@@ -333,25 +386,33 @@ fn rung_setting(run: &RunOutcome) -> Option<f64> {
     }
 }
 
-fn judge_orders(
-    case: &Case,
-    submission: &Submission,
-    runs: &[RunCompared],
-    audited: &mut Audited,
-) {
-    let of_method = submission.claims.method.as_deref().map(|name| (name, method::find(name)));
+fn judge_orders(case: &Case, submission: &Submission, runs: &[RunCompared], audited: &mut Audited) {
+    let of_method = submission
+        .claims
+        .method
+        .as_deref()
+        .map(|name| (name, method::find(name)));
     if let Some((name, None)) = of_method
         && submission.claims.order.is_none()
     {
-        audited.notes.push(format!("method `{name}` is not in the catalogue: no order follows"));
+        audited.notes.push(format!(
+            "method `{name}` is not in the catalogue: no order follows"
+        ));
     }
     let from_method = of_method.and_then(|(_, found)| Some(f64::from(found?.order)));
-    let tolerances = runs.iter().any(|run| matches!(run.outcome.setting, Setting::Tolerance(_)));
+    let tolerances = runs
+        .iter()
+        .any(|run| matches!(run.outcome.setting, Setting::Tolerance(_)));
     // An error setting has no order to be held to: the slope is reported.
-    let claimed = submission.claims.order.or(from_method).filter(|_| !tolerances);
+    let claimed = submission
+        .claims
+        .order
+        .or(from_method)
+        .filter(|_| !tolerances);
     if runs.len() < 2 {
         if let Some(order) = submission.claims.order {
-            let text = format!("the claimed order {order} cannot be told from one run; add coarser runs");
+            let text =
+                format!("the claimed order {order} cannot be told from one run; add coarser runs");
             audited.notes.push(text);
         }
         return;
@@ -361,7 +422,12 @@ fn judge_orders(
         let rungs: Option<Vec<Rung>> = runs.iter().map(|run| rung(run, index)).collect();
         let sight = match rungs {
             Some(rungs) => observe(&rungs),
-            None if runs.iter().all(|run| run.deviations.iter().all(|(c, _)| *c != index)) => continue,
+            None if runs
+                .iter()
+                .all(|run| run.deviations.iter().all(|(c, _)| *c != index)) =>
+            {
+                continue;
+            }
             None => Sight::TooFew("not every run has a step and values".to_owned()),
         };
         let mut order = judge::of_order(&sight, claimed, slack);
@@ -423,7 +489,8 @@ fn judge_runs(audited: &mut Audited) {
                 (Some(errors), Verdict::Fail) => {
                     let observed = order_at(audited, name).zip(run.step);
                     let time_unit = &audited.time_unit;
-                    let text = explain::limit_broken(&run.file, name, unit, time_unit, errors, observed);
+                    let text =
+                        explain::limit_broken(&run.file, name, unit, time_unit, errors, observed);
                     reasons.push(text);
                 }
                 (Some(errors), Verdict::Undecided) => {
@@ -439,6 +506,9 @@ fn judge_runs(audited: &mut Audited) {
 }
 
 fn order_at(audited: &Audited, channel: &str) -> Option<f64> {
-    let order = audited.orders.iter().find(|order| order.channel == channel)?;
+    let order = audited
+        .orders
+        .iter()
+        .find(|order| order.channel == channel)?;
     order.observed.map(|(order, _, _)| order)
 }

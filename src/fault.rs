@@ -31,7 +31,13 @@ pub type Result<T> = std::result::Result<T, Fault>;
 impl Fault {
     /// A complaint without a place yet.
     pub fn new(text: impl Into<String>) -> Fault {
-        Fault { path: None, line: None, column: None, text: text.into(), help: None }
+        Fault {
+            path: None,
+            line: None,
+            column: None,
+            text: text.into(),
+            help: None,
+        }
     }
 
     /// Adds the cure.
@@ -55,7 +61,9 @@ impl Fault {
 
     /// Adds the place of a byte offset in a text.
     pub fn at_offset(self, text: &str, offset: usize) -> Fault {
-        let offset = (0..=offset.min(text.len())).rev().find(|&o| text.is_char_boundary(o));
+        let offset = (0..=offset.min(text.len()))
+            .rev()
+            .find(|&o| text.is_char_boundary(o));
         let before = &text[..offset.unwrap_or(0)];
         let line = before.matches('\n').count() + 1;
         let column = before.rsplit('\n').next().unwrap_or("").chars().count() + 1;
@@ -93,7 +101,11 @@ impl std::error::Error for Fault {}
 pub fn quoted(text: &str) -> String {
     let escaped = escaped(text);
     let cut: String = escaped.chars().take(40).collect();
-    if cut.len() < escaped.len() { format!("`{cut}...`") } else { format!("`{cut}`") }
+    if cut.len() < escaped.len() {
+        format!("`{cut}...`")
+    } else {
+        format!("`{cut}`")
+    }
 }
 
 /// User text without anything that moves a cursor or turns the direction of writing.
@@ -152,7 +164,10 @@ mod tests {
             .help("fill it")
             .at(3, 7)
             .in_file(Path::new("a.csv"));
-        assert_eq!(fault.to_string(), "a.csv:3:7: field `x\\u{1b}[31m` is empty\n  help: fill it");
+        assert_eq!(
+            fault.to_string(),
+            "a.csv:3:7: field `x\\u{1b}[31m` is empty\n  help: fill it"
+        );
     }
 
     #[test]
@@ -164,7 +179,10 @@ mod tests {
     #[test]
     fn near_misses_are_found_and_far_ones_are_not() {
         let names = ["thermal/cold-room", "electrical/rc-pulse"];
-        assert_eq!(nearest("thermal/coldroom", names.into_iter()), Some(names[0]));
+        assert_eq!(
+            nearest("thermal/coldroom", names.into_iter()),
+            Some(names[0])
+        );
         assert_eq!(nearest("decay", names.into_iter()), None);
     }
 

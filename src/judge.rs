@@ -69,7 +69,11 @@ pub fn of_margin(margin: &Margin) -> Verdict {
 /// of them fails.
 pub fn of_deviation(deviation: &Deviation, rows: u64) -> Verdict {
     let complete = deviation.rows > 0 && deviation.rows >= rows;
-    if complete { of_margin(&deviation.margin) } else { Verdict::Fail }
+    if complete {
+        of_margin(&deviation.margin)
+    } else {
+        Verdict::Fail
+    }
 }
 
 /// The verdict on an order.
@@ -91,13 +95,20 @@ pub fn of_order(sight: &Sight, claimed: Option<f64>, slack: f64) -> OrderVerdict
                 note: Some(reason.clone()),
             };
         }
-        Sight::Pairs { pairs, agreeing, usable } => (pairs, *agreeing, *usable),
+        Sight::Pairs {
+            pairs,
+            agreeing,
+            usable,
+        } => (pairs, *agreeing, *usable),
     };
     let Some(&finest) = pairs.last() else {
         return of_order(&Sight::TooFew("no pair of runs".to_owned()), claimed, slack);
     };
     let list = || {
-        let orders: Vec<String> = pairs.iter().map(|pair| format!("{:.2}", pair.order)).collect();
+        let orders: Vec<String> = pairs
+            .iter()
+            .map(|pair| format!("{:.2}", pair.order))
+            .collect();
         orders.join(", ")
     };
     let settled = agreeing > 1;
@@ -130,7 +141,10 @@ pub fn of_order(sight: &Sight, claimed: Option<f64>, slack: f64) -> OrderVerdict
         if !rising && !pairs.iter().any(reaches) {
             return Verdict::Fail;
         }
-        note = Some(format!("the order has not settled: {}; add finer runs", list()));
+        note = Some(format!(
+            "the order has not settled: {}; add finer runs",
+            list()
+        ));
         Verdict::Undecided
     });
     if verdict.is_none() && !settled && pairs.len() > 1 {
@@ -138,7 +152,12 @@ pub fn of_order(sight: &Sight, claimed: Option<f64>, slack: f64) -> OrderVerdict
     }
     // A pair joins two rungs; those of the agreeing ones hang together.
     let rungs_used = if settled { agreeing + 1 } else { usable.min(2) };
-    OrderVerdict { verdict, finest: Some(finest), rungs_used, note }
+    OrderVerdict {
+        verdict,
+        finest: Some(finest),
+        rungs_used,
+        note,
+    }
 }
 
 /// The verdict on an order claim from those of the channels: one that fails decides;
@@ -147,7 +166,11 @@ pub fn of_orders(verdicts: impl IntoIterator<Item = Verdict>) -> Option<Verdict>
     let verdicts: Vec<Verdict> = verdicts.into_iter().collect();
     let worst = *verdicts.iter().max()?;
     let shown = verdicts.contains(&Verdict::Pass);
-    Some(if worst == Verdict::Undecided && shown { Verdict::Pass } else { worst })
+    Some(if worst == Verdict::Undecided && shown {
+        Verdict::Pass
+    } else {
+        worst
+    })
 }
 
 #[cfg(test)]
@@ -155,7 +178,11 @@ mod tests {
     use super::*;
 
     fn margin(certain: f64, broken: f64) -> Margin {
-        Margin { certain, broken, used: 0.0 }
+        Margin {
+            certain,
+            broken,
+            used: 0.0,
+        }
     }
 
     #[test]
@@ -178,8 +205,14 @@ mod tests {
         let close = |two: &&[f64]| (two[1] - two[0]).abs() <= 0.15;
         let agreeing = 1 + orders.windows(2).rev().take_while(close).count();
         let usable = pairs.len() + 1;
-        let sight = Sight::Pairs { pairs, agreeing, usable };
-        of_order(&sight, Some(claimed), ORDER_SLACK).verdict.unwrap()
+        let sight = Sight::Pairs {
+            pairs,
+            agreeing,
+            usable,
+        };
+        of_order(&sight, Some(claimed), ORDER_SLACK)
+            .verdict
+            .unwrap()
     }
 
     #[test]

@@ -1,5 +1,50 @@
-//! stepgauge
-#![allow(missing_docs)]
+//! Audits what a time-stepping simulator wrote.
+//!
+//! stepgauge takes trajectory files of any tool, evaluates the exact solution of the
+//! linear model that they claim to solve at the files' own time stamps, and decides:
+//! how large is the error, does it shrink with the step at the promised order, and
+//! does it pass. Where the file cannot support a decision, it says so.
+//!
+//! # Example
+//!
+//! ```
+//! use stepgauge::Library;
+//!
+//! let case = Library::new().load("electrical/rc-constant", &Default::default()).unwrap();
+//! let exact = case.exact().unwrap();
+//! // The capacitor's voltage halfway through the window, to the last digit.
+//! let middle = 0.5 * (exact.from().to_f64() + exact.to().to_f64());
+//! let voltage = exact.at(middle).unwrap()[0];
+//! assert!(voltage.bound <= 2e-16 * voltage.value.abs());
+//! ```
+//!
+//! # Modules
+//!
+//! Data flows down this list, and no module imports one below it (`tests/it/tidy.rs`
+//! holds the allowed edges).
+//!
+//! | module | holds |
+//! | --- | --- |
+//! | [`fault`] | complaints about input: place, text, cure |
+//! | [`number`] | double-double and quad-double arithmetic, decimals, the matrix exponential |
+//! | [`formula`] | the arithmetic of case files, over any number |
+//! | [`case`] | linear models and the built-in library |
+//! | [`exact`] | exact solutions with error bounds |
+//! | [`trajectory`] | text files to rows, with what their digits resolve |
+//! | [`submission`] | `submission.toml`, the search, columns and units |
+//! | [`compare`] | errors, coverage, observed orders |
+//! | [`method`] | the catalogue of integration methods |
+//! | [`judge`] | verdicts |
+//! | [`explain`] | sentences: what, where, how to mend it |
+//! | [`outcome`] | results as plain data |
+//! | [`report`] | terminal, JSON, CSV |
+//! | [`audit`] | the pipeline on one screen |
+//! | [`cli`] | arguments, plan, printing, exit status |
+//! | [`references`] | the published sources that doc comments cite |
+
+#![deny(missing_docs)]
+#![forbid(unsafe_code)]
+
 pub mod audit;
 pub mod case;
 pub mod cli;
@@ -12,7 +57,12 @@ pub mod judge;
 pub mod method;
 pub mod number;
 pub mod outcome;
+pub mod references;
 pub mod report;
 pub mod submission;
 pub mod trajectory;
-pub use case::Library;
+
+pub use case::{Case, Library};
+pub use exact::{Exact, Value};
+pub use fault::Fault;
+pub use judge::Verdict;

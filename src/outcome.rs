@@ -156,7 +156,10 @@ impl Audited {
 impl Outcome {
     /// Number of submissions with a verdict.
     pub fn count(&self, verdict: Verdict) -> usize {
-        self.submissions.iter().filter(|submission| submission.verdict == verdict).count()
+        self.submissions
+            .iter()
+            .filter(|submission| submission.verdict == verdict)
+            .count()
     }
 
     /// True where everything was audited and is as expected, and there was anything.

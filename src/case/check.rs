@@ -24,8 +24,12 @@ pub(super) fn check(slug: &str, text: &str, replace: &Replacements) -> Result<Ca
         let offset = error.span().map_or(0, |span| span.start);
         vec![Fault::new(error.message().trim_end()).at_offset(text, offset)]
     })?;
-    let mut checker =
-        Checker { text, faults: Vec::new(), names: Vec::new(), parameters: Vec::new() };
+    let mut checker = Checker {
+        text,
+        faults: Vec::new(),
+        names: Vec::new(),
+        parameters: Vec::new(),
+    };
     let case = checker.case(slug, file, replace);
     let mut faults = checker.faults;
     if faults.is_empty() {
@@ -39,9 +43,13 @@ impl Checker<'_> {
     fn case(&mut self, slug: &str, file: CaseFile, replace: &Replacements) -> Case {
         let name = &format!("{}/{slug}", file.field.get_ref());
         if !is_slug(file.field.get_ref()) {
-            let text = format!("field is {}, which is no folder name", quoted(file.field.get_ref()));
+            let text = format!(
+                "field is {}, which is no folder name",
+                quoted(file.field.get_ref())
+            );
             let fault = Fault::new(text).help("use a-z, 0-9 and - only");
-            self.faults.push(fault.at_offset(self.text, file.field.span().start));
+            self.faults
+                .push(fault.at_offset(self.text, file.field.span().start));
         }
         for (what, value) in [("title", &file.title), ("source", &file.source)] {
             if value.get_ref().trim().is_empty() {
@@ -57,12 +65,15 @@ impl Checker<'_> {
         ];
         for (count, most, what) in counts {
             if count > most {
-                self.faults.push(Fault::new(format!("{count} {what}, at most {most} are allowed")));
+                self.faults.push(Fault::new(format!(
+                    "{count} {what}, at most {most} are allowed"
+                )));
                 return self.empty(name, &file, time);
             }
         }
         if file.states.is_empty() {
-            self.faults.push(Fault::new("a case needs at least one state"));
+            self.faults
+                .push(Fault::new("a case needs at least one state"));
         }
         let names: Vec<&Place<String>> = (file.states.iter().map(|s| &s.get_ref().name))
             .chain(file.inputs.iter().map(|i| &i.get_ref().name))
@@ -72,7 +83,11 @@ impl Checker<'_> {
             self.claim(name.get_ref(), &name.span());
         }
         let mut case = self.empty(name, &file, time);
-        case.inputs = file.inputs.iter().filter_map(|input| self.input(input)).collect();
+        case.inputs = file
+            .inputs
+            .iter()
+            .filter_map(|input| self.input(input))
+            .collect();
         self.rates(&file, &mut case);
         self.closed_form(&file, &mut case);
         case.replaced = replace.keys().cloned().collect();
@@ -93,14 +108,18 @@ impl Checker<'_> {
             states: Vec::new(),
             inputs: Vec::new(),
             outputs: Vec::new(),
-            limits: Limits { absolute: limits.absolute, relative: limits.relative },
+            limits: Limits {
+                absolute: limits.absolute,
+                relative: limits.relative,
+            },
             closed_form: None,
             replaced: Vec::new(),
         }
     }
 
     fn complain(&mut self, text: impl Into<String>, span: &Range<usize>) {
-        self.faults.push(Fault::new(text).at_offset(self.text, span.start));
+        self.faults
+            .push(Fault::new(text).at_offset(self.text, span.start));
     }
 
     /// Takes a name into use, or says why it cannot be.
@@ -108,9 +127,13 @@ impl Checker<'_> {
         if !is_name(name) {
             let text = format!("{} is not a name", quoted(name));
             let help = "names begin with a letter and are made of a-z, A-Z, 0-9 and _";
-            self.faults.push(Fault::new(text).help(help).at_offset(self.text, span.start));
+            self.faults
+                .push(Fault::new(text).help(help).at_offset(self.text, span.start));
         } else if is_reserved(name) {
-            self.complain(format!("`{name}` has a meaning of its own in formulas"), span);
+            self.complain(
+                format!("`{name}` has a meaning of its own in formulas"),
+                span,
+            );
         } else if self.names.iter().any(|known| known == name) {
             self.complain(format!("`{name}` is already in use"), span);
         } else {
@@ -123,13 +146,17 @@ impl Checker<'_> {
         // A table comes sorted by name; a parameter may use those before it.
         entries.sort_by_key(|(name, _)| name.span().start);
         if entries.len() > MOST_NAMES {
-            self.faults.push(Fault::new(format!("at most {MOST_NAMES} parameters are allowed")));
+            self.faults.push(Fault::new(format!(
+                "at most {MOST_NAMES} parameters are allowed"
+            )));
             return;
         }
         for (name, entry) in entries {
             self.claim(name.get_ref(), &name.span());
             let value = self.number(&entry.get_ref().value);
-            let value = replace.get(name.get_ref()).map_or(value, |&value| Double::from(value));
+            let value = replace
+                .get(name.get_ref())
+                .map_or(value, |&value| Double::from(value));
             self.parameters.push(Parameter {
                 name: name.get_ref().clone(),
                 value,
@@ -137,7 +164,11 @@ impl Checker<'_> {
             });
         }
         for name in replace.keys() {
-            if !self.parameters.iter().any(|parameter| parameter.name == *name) {
+            if !self
+                .parameters
+                .iter()
+                .any(|parameter| parameter.name == *name)
+            {
                 let fault = Fault::new(format!("the case has no parameter {}", quoted(name)));
                 let known = self.parameters.iter().map(|p| p.name.as_str());
                 let help = nearest(name, known).map(|near| format!("did you mean `{near}`?"));
@@ -155,11 +186,19 @@ impl Checker<'_> {
         let limits = file.limits.get_ref();
         for limit in [limits.absolute, limits.relative] {
             if !(limit >= 0.0 && limit.is_finite()) {
-                self.complain("limits must be finite and not below zero", &file.limits.span());
+                self.complain(
+                    "limits must be finite and not below zero",
+                    &file.limits.span(),
+                );
             }
         }
         let least_rows = entry.least_rows.unwrap_or(2).max(2);
-        Window { unit: entry.unit.clone(), from, to, least_rows }
+        Window {
+            unit: entry.unit.clone(),
+            from,
+            to,
+            least_rows,
+        }
     }
 
     /// Names and values that a formula of numbers may use.
@@ -183,7 +222,8 @@ impl Checker<'_> {
     /// escapes make the two differ.
     fn formula_offset(&self, formula: &str, span: &Range<usize>, offset: usize) -> usize {
         let raw = self.text.get(span.clone()).unwrap_or("");
-        raw.find(formula).map_or(span.start, |start| span.start + start + offset)
+        raw.find(formula)
+            .map_or(span.start, |start| span.start + start + offset)
     }
 
     /// A number of the file, directly or from a formula of parameters.
@@ -193,7 +233,10 @@ impl Checker<'_> {
             Quantity::Number(value) => Double::from(*value),
             Quantity::Formula(text) => {
                 let values: Vec<Double> = self.parameters.iter().map(|p| p.value).collect();
-                match self.parse(text, &span, &[]).map(|formula| formula.evaluate(&values)) {
+                match self
+                    .parse(text, &span, &[])
+                    .map(|formula| formula.evaluate(&values))
+                {
                     Some(Ok(value)) => value,
                     _ => return Double::ZERO,
                 }
@@ -216,7 +259,9 @@ impl Checker<'_> {
             }
             Quantity::Formula(text) => text.clone(),
         };
-        let Some(formula) = self.parse(&text, &span, names) else { return (nothing, text) };
+        let Some(formula) = self.parse(&text, &span, names) else {
+            return (nothing, text);
+        };
         let values: Vec<Affine> = (self.parameters.iter().map(|p| Affine::number(p.value)))
             .chain((0..names.len()).map(|index| Affine::quantity(index, names.len())))
             .collect();
@@ -241,8 +286,14 @@ impl Checker<'_> {
     }
 
     fn rates(&mut self, file: &CaseFile, case: &mut Case) {
-        let states = file.states.iter().map(|s| s.get_ref().name.get_ref().as_str());
-        let inputs = file.inputs.iter().map(|i| i.get_ref().name.get_ref().as_str());
+        let states = file
+            .states
+            .iter()
+            .map(|s| s.get_ref().name.get_ref().as_str());
+        let inputs = file
+            .inputs
+            .iter()
+            .map(|i| i.get_ref().name.get_ref().as_str());
         let names: Vec<&str> = states.chain(inputs).collect();
         for entry in &file.states {
             let state = entry.get_ref();
@@ -253,18 +304,34 @@ impl Checker<'_> {
                 Quantity::Formula(text) => text.clone(),
             });
             let (name, unit) = (state.name.get_ref().clone(), state.unit.clone());
-            case.states.push(State { name, unit, start, rate, rate_text, exact_text });
+            case.states.push(State {
+                name,
+                unit,
+                start,
+                rate,
+                rate_text,
+                exact_text,
+            });
         }
         for entry in &file.outputs {
             let output = entry.get_ref();
             let (value, value_text) = self.affine(&output.value, &names);
             let (name, unit) = (output.name.get_ref().clone(), output.unit.clone());
-            case.outputs.push(Output { name, unit, value, value_text });
+            case.outputs.push(Output {
+                name,
+                unit,
+                value,
+                value_text,
+            });
         }
     }
 
     fn closed_form(&mut self, file: &CaseFile, case: &mut Case) {
-        let stated: Vec<_> = file.states.iter().map(|s| s.get_ref().exact.as_ref()).collect();
+        let stated: Vec<_> = file
+            .states
+            .iter()
+            .map(|s| s.get_ref().exact.as_ref())
+            .collect();
         if stated.iter().all(Option::is_none) {
             return;
         }
@@ -287,13 +354,21 @@ impl Checker<'_> {
 
     fn input(&mut self, entry: &Place<InputEntry>) -> Option<Input> {
         let input = entry.get_ref();
-        let mut keys = Keys { checker: self, entry, used: Vec::new() };
+        let mut keys = Keys {
+            checker: self,
+            entry,
+            used: Vec::new(),
+        };
         let shape = keys.shape()?;
         keys.refuse_the_rest();
         if let Some(complaint) = shape.complaint() {
             self.complain(complaint, &input.shape.span());
         }
-        Some(Input { name: input.name.get_ref().clone(), unit: input.unit.clone(), shape })
+        Some(Input {
+            name: input.name.get_ref().clone(),
+            unit: input.unit.clone(),
+            shape,
+        })
     }
 }
 
@@ -309,9 +384,17 @@ impl Keys<'_, '_> {
     fn shape(&mut self) -> Option<Shape> {
         let place = &self.entry.get_ref().shape;
         Some(match place.get_ref().as_str() {
-            "constant" => Shape::Constant { value: self.one("value") },
-            "step" => Shape::Step { height: self.one("height"), at: self.one("at") },
-            "ramp" => Shape::Ramp { slope: self.one("slope"), from: self.one("from") },
+            "constant" => Shape::Constant {
+                value: self.one("value"),
+            },
+            "step" => Shape::Step {
+                height: self.one("height"),
+                at: self.one("at"),
+            },
+            "ramp" => Shape::Ramp {
+                slope: self.one("slope"),
+                from: self.one("from"),
+            },
             "pulse" => Shape::Pulse {
                 height: self.one("height"),
                 from: self.one("from"),
@@ -329,21 +412,30 @@ impl Keys<'_, '_> {
                 angular_frequency: self.angular_frequency(),
                 phase: self.maybe("phase").unwrap_or(Double::ZERO),
             },
-            "exponential" => Shape::Exponential { scale: self.one("scale"), rate: self.one("rate") },
-            "polynomial" => Shape::Polynomial { coefficients: self.list("coefficients") },
-            "held-samples" => {
-                Shape::HeldSamples { times: self.list("times"), values: self.list("values") }
-            }
-            "linear-samples" => {
-                Shape::LinearSamples { times: self.list("times"), values: self.list("values") }
-            }
+            "exponential" => Shape::Exponential {
+                scale: self.one("scale"),
+                rate: self.one("rate"),
+            },
+            "polynomial" => Shape::Polynomial {
+                coefficients: self.list("coefficients"),
+            },
+            "held-samples" => Shape::HeldSamples {
+                times: self.list("times"),
+                values: self.list("values"),
+            },
+            "linear-samples" => Shape::LinearSamples {
+                times: self.list("times"),
+                values: self.list("values"),
+            },
             other => {
                 let fault = Fault::new(format!("{} is not a shape of input", quoted(other)));
                 let help = match nearest(other, Shape::NAMES.into_iter()) {
                     Some(near) => format!("did you mean `{near}`?"),
                     None => format!("the shapes are {}", Shape::NAMES.join(", ")),
                 };
-                let fault = fault.help(help).at_offset(self.checker.text, place.span().start);
+                let fault = fault
+                    .help(help)
+                    .at_offset(self.checker.text, place.span().start);
                 self.checker.faults.push(fault);
                 return None;
             }
@@ -399,7 +491,10 @@ impl Keys<'_, '_> {
             self.missing(key);
             return Vec::new();
         };
-        list.get_ref().iter().map(|quantity| self.checker.number(quantity)).collect()
+        list.get_ref()
+            .iter()
+            .map(|quantity| self.checker.number(quantity))
+            .collect()
     }
 
     fn missing(&mut self, key: &str) -> Double {
@@ -415,7 +510,8 @@ impl Keys<'_, '_> {
             return Some(count as u64);
         }
         let span = self.single("count").map_or(0..0, Place::span);
-        self.checker.complain("`count` must be a whole number from 1 on", &span);
+        self.checker
+            .complain("`count` must be a whole number from 1 on", &span);
         None
     }
 
@@ -435,13 +531,29 @@ impl Keys<'_, '_> {
 
     fn refuse_the_rest(&mut self) {
         const SINGLE: [&str; 14] = [
-            "value", "height", "at", "slope", "from", "width", "period", "count", "amplitude",
-            "frequency", "angular_frequency", "phase", "scale", "rate",
+            "value",
+            "height",
+            "at",
+            "slope",
+            "from",
+            "width",
+            "period",
+            "count",
+            "amplitude",
+            "frequency",
+            "angular_frequency",
+            "phase",
+            "scale",
+            "rate",
         ];
         const MANY: [&str; 3] = ["coefficients", "times", "values"];
         let shape = self.entry.get_ref().shape.get_ref().clone();
-        let single = SINGLE.iter().map(|&key| (key, self.single(key).map(Place::span)));
-        let many = MANY.iter().map(|&key| (key, self.many(key).map(Place::span)));
+        let single = SINGLE
+            .iter()
+            .map(|&key| (key, self.single(key).map(Place::span)));
+        let many = MANY
+            .iter()
+            .map(|&key| (key, self.many(key).map(Place::span)));
         let all: Vec<_> = single.chain(many).collect();
         for (key, span) in all {
             if let Some(span) = span.filter(|_| !self.used.contains(&key)) {

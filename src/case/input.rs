@@ -25,19 +25,39 @@ pub enum Shape {
     /// `slope * (t - from)` after `from`.
     Ramp { slope: Double, from: Double },
     /// `height` from `from` for `width`.
-    Pulse { height: Double, from: Double, width: Double },
+    Pulse {
+        height: Double,
+        from: Double,
+        width: Double,
+    },
     /// Pulses every `period`, `count` of them or without end.
-    PulseTrain { height: Double, from: Double, width: Double, period: Double, count: Option<u64> },
+    PulseTrain {
+        height: Double,
+        from: Double,
+        width: Double,
+        period: Double,
+        count: Option<u64>,
+    },
     /// `amplitude * sin(angular_frequency * t + phase)`.
-    Sine { amplitude: Double, angular_frequency: Double, phase: Double },
+    Sine {
+        amplitude: Double,
+        angular_frequency: Double,
+        phase: Double,
+    },
     /// `scale * exp(rate * t)`.
     Exponential { scale: Double, rate: Double },
     /// `sum of coefficients[k] * t^k`.
     Polynomial { coefficients: Vec<Double> },
     /// The last sample before or at `t`; zero before the first.
-    HeldSamples { times: Vec<Double>, values: Vec<Double> },
+    HeldSamples {
+        times: Vec<Double>,
+        values: Vec<Double>,
+    },
     /// Straight lines between the samples; the nearest sample outside.
-    LinearSamples { times: Vec<Double>, values: Vec<Double> },
+    LinearSamples {
+        times: Vec<Double>,
+        values: Vec<Double>,
+    },
 }
 
 impl Shape {
@@ -80,16 +100,34 @@ impl Shape {
             Shape::Constant { value } => vec![one("value", value)],
             Shape::Step { height, at } => vec![one("height", height), one("at", at)],
             Shape::Ramp { slope, from } => vec![one("slope", slope), one("from", from)],
-            Shape::Pulse { height, from, width } => {
-                vec![one("height", height), one("from", from), one("width", width)]
+            Shape::Pulse {
+                height,
+                from,
+                width,
+            } => {
+                vec![
+                    one("height", height),
+                    one("from", from),
+                    one("width", width),
+                ]
             }
-            Shape::PulseTrain { height, from, width, period, count } => {
+            Shape::PulseTrain {
+                height,
+                from,
+                width,
+                period,
+                count,
+            } => {
                 let mut numbers = vec![one("height", height), one("from", from)];
                 numbers.extend([one("width", width), one("period", period)]);
                 numbers.extend(count.map(|count| ("count", vec![count as f64])));
                 numbers
             }
-            Shape::Sine { amplitude, angular_frequency, phase } => vec![
+            Shape::Sine {
+                amplitude,
+                angular_frequency,
+                phase,
+            } => vec![
                 one("amplitude", amplitude),
                 one("angular_frequency", angular_frequency),
                 one("phase", phase),

@@ -102,9 +102,18 @@ impl Library {
         let entries = built_in().iter().map(|&(name, text)| {
             let slug = name.rsplit('/').next().unwrap_or(name).to_owned();
             let path = Path::new("reference-cases").join(format!("{name}.toml"));
-            (name.to_owned(), Entry { slug, text: text.to_owned(), path })
+            (
+                name.to_owned(),
+                Entry {
+                    slug,
+                    text: text.to_owned(),
+                    path,
+                },
+            )
         });
-        Library { entries: entries.collect() }
+        Library {
+            entries: entries.collect(),
+        }
     }
 
     /// Adds every `.toml` file below a folder.
@@ -114,7 +123,10 @@ impl Library {
     /// already taken.
     pub fn add_folder(&mut self, folder: &Path) -> Result<(), Vec<Fault>> {
         let mut faults = Vec::new();
-        for entry in WalkDir::new(folder).max_depth(MOST_DEPTH).sort_by_file_name() {
+        for entry in WalkDir::new(folder)
+            .max_depth(MOST_DEPTH)
+            .sort_by_file_name()
+        {
             match entry {
                 Ok(entry) if entry.path().extension().is_some_and(|e| e == "toml") => {
                     if let Err(mut found) = self.add_file(entry.path()) {
@@ -129,7 +141,11 @@ impl Library {
                 }
             }
         }
-        if faults.is_empty() { Ok(()) } else { Err(faults) }
+        if faults.is_empty() {
+            Ok(())
+        } else {
+            Err(faults)
+        }
     }
 
     fn add_file(&mut self, path: &Path) -> Result<(), Vec<Fault>> {
@@ -141,15 +157,30 @@ impl Library {
         }
         let text =
             std::fs::read_to_string(path).map_err(|error| placed(Fault::io(path, &error)))?;
-        let slug = path.file_stem().unwrap_or_default().to_string_lossy().into_owned();
-        let case = Case::parse(&slug, &text, &Replacements::new())
-            .map_err(|faults| faults.into_iter().map(|f| f.in_file(path)).collect::<Vec<_>>())?;
+        let slug = path
+            .file_stem()
+            .unwrap_or_default()
+            .to_string_lossy()
+            .into_owned();
+        let case = Case::parse(&slug, &text, &Replacements::new()).map_err(|faults| {
+            faults
+                .into_iter()
+                .map(|f| f.in_file(path))
+                .collect::<Vec<_>>()
+        })?;
         if self.entries.contains_key(&case.name) {
             let fault = Fault::new(format!("there is already a case {}", quoted(&case.name)))
                 .help("give the file another name, or its case another `field`");
             return Err(placed(fault));
         }
-        self.entries.insert(case.name, Entry { slug, text, path: path.to_owned() });
+        self.entries.insert(
+            case.name,
+            Entry {
+                slug,
+                text,
+                path: path.to_owned(),
+            },
+        );
         Ok(())
     }
 
@@ -165,7 +196,9 @@ impl Library {
     pub fn load(&self, name: &str, replace: &Replacements) -> Result<Case, Vec<Fault>> {
         let Some(entry) = self.entries.get(name) else {
             let fault = Fault::new(format!("there is no case {}", quoted(name)));
-            let by_slug = self.names().find(|known| known.rsplit('/').next() == Some(name));
+            let by_slug = self
+                .names()
+                .find(|known| known.rsplit('/').next() == Some(name));
             let near = by_slug.or_else(|| nearest(name, self.names()));
             return Err(vec![fault.help(match near {
                 Some(near) => format!("did you mean `{near}`? `stepgauge cases` lists all"),
@@ -204,13 +237,17 @@ mod tests {
             let case = library.load(name, &Replacements::new());
             let case = case.unwrap_or_else(|faults| panic!("{name}: {}", faults[0]));
             assert_eq!(case.name, name);
-            assert!(!case.hard_for.is_empty(), "{name} says not what it is hard for");
+            assert!(
+                !case.hard_for.is_empty(),
+                "{name} says not what it is hard for"
+            );
         }
     }
 
     #[test]
     fn unknown_names_get_a_suggestion() {
-        let fault = |name| Library::new().load(name, &Replacements::new()).unwrap_err()[0].to_string();
+        let fault =
+            |name| Library::new().load(name, &Replacements::new()).unwrap_err()[0].to_string();
         assert!(fault("thermal/cold-room-defrots").contains("`thermal/cold-room-defrost`"));
         assert!(fault("cold-room-defrost").contains("did you mean `thermal/cold-room-defrost`"));
     }

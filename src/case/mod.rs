@@ -149,11 +149,21 @@ impl Case {
 
     /// States, then outputs.
     pub fn channels(&self) -> Vec<Channel<'_>> {
-        let states = self.states.iter().map(|s| (s.name.as_str(), s.unit.as_str(), true));
-        let outputs = self.outputs.iter().map(|o| (o.name.as_str(), o.unit.as_str(), false));
+        let states = self
+            .states
+            .iter()
+            .map(|s| (s.name.as_str(), s.unit.as_str(), true));
+        let outputs = self
+            .outputs
+            .iter()
+            .map(|o| (o.name.as_str(), o.unit.as_str(), false));
         states
             .chain(outputs)
-            .map(|(name, unit, is_state)| Channel { name, unit, is_state })
+            .map(|(name, unit, is_state)| Channel {
+                name,
+                unit,
+                is_state,
+            })
             .collect()
     }
 }

@@ -7,12 +7,17 @@ use clap::{Args, Parser, Subcommand, ValueEnum};
 /// Audits what a time-stepping simulator wrote: errors against exact solutions of
 /// linear models, order across steps, verdicts against limits.
 #[derive(Debug, Parser)]
-#[command(name = "stepgauge", version, max_term_width = 100, after_help = "\
+#[command(
+    name = "stepgauge",
+    version,
+    max_term_width = 100,
+    after_help = "\
 Example: audit every submission below a folder, and keep the numbers
   stepgauge audit demo-runs --write report.json
 
 Exit status: 0 all in order, 1 something failed, is undecided or not as expected,
-2 the audit could not be done.")]
+2 the audit could not be done."
+)]
 pub struct Arguments {
     /// What to do.
     #[command(subcommand)]
@@ -158,7 +163,12 @@ pub struct Times {
     #[arg(long, value_name = "H")]
     pub step: Option<String>,
     /// At listed times
-    #[arg(long, value_name = "T,T", value_delimiter = ',', allow_negative_numbers = true)]
+    #[arg(
+        long,
+        value_name = "T,T",
+        value_delimiter = ',',
+        allow_negative_numbers = true
+    )]
     pub at: Option<Vec<String>>,
     /// At the time stamps of a file
     #[arg(long, value_name = "FILE")]
@@ -186,13 +196,21 @@ fn finite(text: &str) -> Result<f64, String> {
 
 fn positive(text: &str) -> Result<f64, String> {
     finite(text).and_then(|number| {
-        if number > 0.0 { Ok(number) } else { Err("expected a number above zero".to_owned()) }
+        if number > 0.0 {
+            Ok(number)
+        } else {
+            Err("expected a number above zero".to_owned())
+        }
     })
 }
 
 fn not_negative(text: &str) -> Result<f64, String> {
     finite(text).and_then(|number| {
-        if number >= 0.0 { Ok(number) } else { Err("expected a number not below zero".to_owned()) }
+        if number >= 0.0 {
+            Ok(number)
+        } else {
+            Err("expected a number not below zero".to_owned())
+        }
     })
 }
 

@@ -35,7 +35,12 @@ pub(super) fn plan(arguments: &AuditArguments) -> Result<Plan, Vec<Fault>> {
         Some(threads) => usize::from(threads),
         None => std::thread::available_parallelism().map_or(1, usize::from),
     };
-    let mut plan = Plan { library, submissions: Vec::new(), unreadable: Vec::new(), threads };
+    let mut plan = Plan {
+        library,
+        submissions: Vec::new(),
+        unreadable: Vec::new(),
+        threads,
+    };
     match &arguments.case {
         Some(case) => single_files(case, arguments, &mut plan)?,
         None => submissions(arguments, &mut plan)?,
@@ -44,17 +49,15 @@ pub(super) fn plan(arguments: &AuditArguments) -> Result<Plan, Vec<Fault>> {
     Ok(plan)
 }
 
-fn single_files(
-    case: &str,
-    arguments: &AuditArguments,
-    plan: &mut Plan,
-) -> Result<(), Vec<Fault>> {
+fn single_files(case: &str, arguments: &AuditArguments, plan: &mut Plan) -> Result<(), Vec<Fault>> {
     let parameters: Replacements = arguments.parameters.iter().cloned().collect();
     // A case that is not there would otherwise be complained of once for every file.
     plan.library.load(case, &parameters)?;
     if arguments.step.is_some() && arguments.paths.len() > 1 {
         let fault = Fault::new("--step goes with one file, several were given");
-        return Err(vec![fault.help("write a submission.toml with a step for each run")]);
+        return Err(vec![
+            fault.help("write a submission.toml with a step for each run"),
+        ]);
     }
     let mut columns = BTreeMap::new();
     for (channel, column) in &arguments.columns {
@@ -62,7 +65,10 @@ fn single_files(
             Ok(number) if number > 0 => ColumnName::Number(number),
             _ => ColumnName::Name(column.clone()),
         };
-        let stated = ColumnStated { column: Some(name), unit: None };
+        let stated = ColumnStated {
+            column: Some(name),
+            unit: None,
+        };
         if columns.insert(channel.clone(), stated).is_some() {
             let text = format!("--column is given twice for {}", quoted(channel));
             return Err(vec![Fault::new(text)]);
@@ -72,14 +78,22 @@ fn single_files(
     for path in &arguments.paths {
         if path.is_dir() {
             let fault = Fault::new("--case goes with trajectory files, this is a folder");
-            faults.push(fault.help("leave --case out to audit its submissions").in_file(path));
+            faults.push(
+                fault
+                    .help("leave --case out to audit its submissions")
+                    .in_file(path),
+            );
             continue;
         }
         if !path.exists() {
             faults.push(Fault::new("there is no such file").in_file(path));
             continue;
         }
-        let file = path.file_name().unwrap_or_default().to_string_lossy().into_owned();
+        let file = path
+            .file_name()
+            .unwrap_or_default()
+            .to_string_lossy()
+            .into_owned();
         let setting = arguments.step.map_or(Setting::Unstated, Setting::Step);
         let submission = Submission {
             case: Some(case.to_owned()),
@@ -90,12 +104,21 @@ fn single_files(
             limits: LimitsStated::default(),
             columns: columns.clone(),
             layout: Stated::default(),
-            runs: vec![Run { file, path: path.clone(), setting, role: None }],
+            runs: vec![Run {
+                file,
+                path: path.clone(),
+                setting,
+                role: None,
+            }],
         };
         let name = path.to_string_lossy().into_owned();
         plan.submissions.push(planned(name, submission, arguments));
     }
-    if faults.is_empty() { Ok(()) } else { Err(faults) }
+    if faults.is_empty() {
+        Ok(())
+    } else {
+        Err(faults)
+    }
 }
 
 fn submissions(arguments: &AuditArguments, plan: &mut Plan) -> Result<(), Vec<Fault>> {
@@ -115,10 +138,18 @@ fn submissions(arguments: &AuditArguments, plan: &mut Plan) -> Result<(), Vec<Fa
     places.dedup();
     for place in places {
         match read(&place) {
-            Ok(submission) => plan.submissions.push(planned(place.name, submission, arguments)),
+            Ok(submission) => plan
+                .submissions
+                .push(planned(place.name, submission, arguments)),
             Err(faults) => {
-                let faults = faults.into_iter().map(|fault| fault.in_file(&place.file)).collect();
-                plan.unreadable.push(NotAudited { name: place.name, faults });
+                let faults = faults
+                    .into_iter()
+                    .map(|fault| fault.in_file(&place.file))
+                    .collect();
+                plan.unreadable.push(NotAudited {
+                    name: place.name,
+                    faults,
+                });
             }
         }
     }
@@ -138,7 +169,11 @@ fn read(place: &Place) -> Result<Submission, Vec<Fault>> {
         let valid = error.utf8_error().valid_up_to();
         let text = String::from_utf8_lossy(&error.as_bytes()[..valid]).into_owned();
         let help = "save it as UTF-8; if it is a trajectory, name the case with `--case`";
-        vec![Fault::new("this is not UTF-8 text").help(help).at_offset(&text, valid)]
+        vec![
+            Fault::new("this is not UTF-8 text")
+                .help(help)
+                .at_offset(&text, valid),
+        ]
     })?;
     Submission::parse(&text, &place.folder)
 }
@@ -151,13 +186,20 @@ fn planned(name: String, mut submission: Submission, arguments: &AuditArguments)
             Some(what) => Some(what == RelativeTo::Peak),
             None => submission.limits.general.of_peak,
         };
-        submission.limits.general =
-            LimitStated { absolute: arguments.absolute, relative: arguments.relative, of_peak };
+        submission.limits.general = LimitStated {
+            absolute: arguments.absolute,
+            relative: arguments.relative,
+            of_peak,
+        };
         submission.limits.channels.clear();
     } else if let Some(what) = arguments.relative_to {
         submission.limits.general.of_peak = Some(what == RelativeTo::Peak);
     }
-    Planned { name, submission, limits_from_command_line }
+    Planned {
+        name,
+        submission,
+        limits_from_command_line,
+    }
 }
 
 /// A report must be of a kind that is known and must not take the place of an input.
@@ -168,10 +210,19 @@ fn check_reports(arguments: &AuditArguments, plan: &Plan) -> Result<(), Vec<Faul
         .filter_map(|run| run.path.canonicalize().ok())
         .collect();
     for path in &arguments.write {
-        let ending = path.extension().unwrap_or_default().to_string_lossy().to_lowercase();
-        let folder = path.parent().filter(|folder| !folder.as_os_str().is_empty());
+        let ending = path
+            .extension()
+            .unwrap_or_default()
+            .to_string_lossy()
+            .to_lowercase();
+        let folder = path
+            .parent()
+            .filter(|folder| !folder.as_os_str().is_empty());
         if ending != "json" {
-            let fault = Fault::new(format!("no report is known by the ending {}", quoted(&ending)));
+            let fault = Fault::new(format!(
+                "no report is known by the ending {}",
+                quoted(&ending)
+            ));
             faults.push(fault.help("reports end in .json").in_file(path));
         } else if !folder.unwrap_or(Path::new(".")).is_dir() {
             let fault = Fault::new("the folder of this report is not there");
@@ -181,5 +232,9 @@ fn check_reports(arguments: &AuditArguments, plan: &Plan) -> Result<(), Vec<Faul
             faults.push(fault.help("give the report another name").in_file(path));
         }
     }
-    if faults.is_empty() { Ok(()) } else { Err(faults) }
+    if faults.is_empty() {
+        Ok(())
+    } else {
+        Err(faults)
+    }
 }

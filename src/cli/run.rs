@@ -72,7 +72,10 @@ pub fn run(arguments: &Arguments) -> ExitCode {
         // Whoever reads has seen enough: a quiet end.
         Err(Stop::Output(error)) if error.kind() == io::ErrorKind::BrokenPipe => IN_ORDER,
         Err(Stop::Output(error)) => {
-            let _ = writeln!(anstream::stderr(), "standard output cannot be written: {error}");
+            let _ = writeln!(
+                anstream::stderr(),
+                "standard output cannot be written: {error}"
+            );
             NOT_DONE
         }
     };
@@ -107,8 +110,10 @@ fn run_cases(arguments: &CasesArguments) -> Result<u8, Stop> {
         print(&names)?;
         return Ok(IN_ORDER);
     }
-    let cases: Result<Vec<Case>, Vec<Fault>> =
-        library.names().map(|name| library.load(name, &Replacements::new())).collect();
+    let cases: Result<Vec<Case>, Vec<Fault>> = library
+        .names()
+        .map(|name| library.load(name, &Replacements::new()))
+        .collect();
     print(&case_list(&cases?, screen()))?;
     Ok(IN_ORDER)
 }
@@ -193,14 +198,23 @@ fn at_stamps(
         return Err(placed(Fault::new("the file has no rows of numbers")).into());
     };
     let is_time = |name: &String| name == "t" || name.eq_ignore_ascii_case("time");
-    let named = layout.names.as_ref().and_then(|names| names.iter().position(is_time));
-    let selection = Selection { time: named.unwrap_or(0), channels: Vec::new() };
+    let named = layout
+        .names
+        .as_ref()
+        .and_then(|names| names.iter().position(is_time));
+    let selection = Selection {
+        time: named.unwrap_or(0),
+        channels: Vec::new(),
+    };
     let survey = Survey::new(&source, layout, selection, &stated).map_err(placed)?;
     let mut stopped = None;
     let mut findings = Findings::default();
     let result = survey.rows(&source, &mut findings, &|_| true, &mut |row| {
         write(row.time).map_err(|stop| match stop {
-            Stop::Faults(mut faults) => faults.pop().unwrap_or_else(|| Fault::new("")).at(row.line, 1),
+            Stop::Faults(mut faults) => faults
+                .pop()
+                .unwrap_or_else(|| Fault::new(""))
+                .at(row.line, 1),
             Stop::Output(error) => {
                 stopped = Some(error);
                 Fault::new("standard output was closed")
@@ -224,7 +238,9 @@ fn print(text: &str) -> io::Result<()> {
 /// What the terminal can show; a pipe gets a hundred columns unless `COLUMNS` says
 /// otherwise.
 fn screen() -> Screen {
-    let stated = std::env::var("COLUMNS").ok().and_then(|columns| columns.parse::<u16>().ok());
+    let stated = std::env::var("COLUMNS")
+        .ok()
+        .and_then(|columns| columns.parse::<u16>().ok());
     let seen = if io::stdout().is_terminal() {
         terminal_size::terminal_size().map(|(width, _)| width.0)
     } else {
@@ -238,5 +254,8 @@ fn screen() -> Screen {
         .unwrap_or_default()
         .to_lowercase();
     let unicode = locale.contains("utf-8") || locale.contains("utf8");
-    Screen { width: width.clamp(40, WIDEST), unicode }
+    Screen {
+        width: width.clamp(40, WIDEST),
+        unicode,
+    }
 }

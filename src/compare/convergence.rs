@@ -40,8 +40,9 @@ pub fn grid_convergence(steps: [f64; 3], values: [f64; 3]) -> Option<Convergence
     let [fine, middle, coarse] = steps;
     let (r21, r32) = (middle / fine, coarse / middle);
     let (e21, e32) = (values[1] - values[0], values[2] - values[1]);
-    let usable = fine > 0.0 && r21 > 1.0 && r32 > 1.0 && e21 != 0.0 && e32 != 0.0;
-    if !usable || !(e21.is_finite() && e32.is_finite()) {
+    let differ = e21 != 0.0 && e32 != 0.0 && e21.is_finite() && e32.is_finite();
+    let usable = fine > 0.0 && r21 > 1.0 && r32 > 1.0 && differ;
+    if !usable {
         return None;
     }
     let sign = (e32 / e21).signum();

@@ -142,35 +142,43 @@ impl<'a> Comparison<'a> {
         let mut first: Option<(f64, bool)> = None;
         let mut last_end: Option<(f64, bool)> = None;
         let (mut rows, mut outside) = (0, 0);
-        self.survey.rows(self.source, findings, &is_event, &mut |row| {
-            let time = self.time.apply(row.time);
-            let blur = self.time.stretch(row.time_resolution);
-            let slack = COVERAGE_SLACK * span + blur;
-            let (early, late) = ((from - time).to_f64(), (time - to).to_f64());
-            first.get_or_insert((time.to_f64(), -early <= slack));
-            last_end = Some((time.to_f64(), -late <= slack));
-            if early > slack || late > slack {
-                outside += 1;
-                return Ok(());
-            }
-            rows += 1;
-            let (time, blur) = self.on_step(time, blur);
-            let time = if early > 0.0 { from } else { time };
-            pass.add(time, blur, row);
-            Ok(())
-        })?;
+        self.survey
+            .rows(self.source, findings, &is_event, &mut |row| {
+                let time = self.time.apply(row.time);
+                let blur = self.time.stretch(row.time_resolution);
+                let slack = COVERAGE_SLACK * span + blur;
+                let (early, late) = ((from - time).to_f64(), (time - to).to_f64());
+                first.get_or_insert((time.to_f64(), -early <= slack));
+                last_end = Some((time.to_f64(), -late <= slack));
+                if early > slack || late > slack {
+                    outside += 1;
+                    return Ok(());
+                }
+                rows += 1;
+                let (time, blur) = self.on_step(time, blur);
+                let time = if early > 0.0 { from } else { time };
+                pass.add(time, blur, row);
+                Ok(())
+            })?;
         self.coverage(first, last_end, rows, findings);
         let spacing = match self.survey.grid {
             Grid::Uniform { spacing, .. } => Some(self.time.stretch(spacing)),
             Grid::Varied => None,
         };
-        Ok(Compared { rows, outside, spacing, channels: pass.conclude() })
+        Ok(Compared {
+            rows,
+            outside,
+            spacing,
+            channels: pass.conclude(),
+        })
     }
 
     /// The exact multiple of the stated step, where the stamp agrees with it to its
     /// printed digits.
     fn on_step(&self, time: Double, blur: f64) -> (Double, f64) {
-        let Some(step) = self.step else { return (time, blur) };
+        let Some(step) = self.step else {
+            return (time, blur);
+        };
         if blur == 0.0 {
             return (time, blur);
         }
@@ -180,7 +188,11 @@ impl<'a> Comparison<'a> {
         let exact = Decimal::shortest(step).map_or(Double::from(step), Decimal::to_double);
         let multiple = exact * Double::from(count);
         let agrees = (since - multiple).abs().to_f64() <= 2.0 * blur;
-        if count.abs() < 1e15 && agrees { (self.exact.from() + multiple, 0.0) } else { (time, blur) }
+        if count.abs() < 1e15 && agrees {
+            (self.exact.from() + multiple, 0.0)
+        } else {
+            (time, blur)
+        }
     }
 
     fn coverage(
@@ -206,7 +218,10 @@ impl<'a> Comparison<'a> {
             findings.fatal(Kind::WindowNotCovered, None, text);
         }
         if rows < self.least_rows {
-            let text = format!("{rows} row(s) within the window, at least {} are needed", self.least_rows);
+            let text = format!(
+                "{rows} row(s) within the window, at least {} are needed",
+                self.least_rows
+            );
             findings.fatal(Kind::TooFewRows, None, text);
         }
     }
@@ -223,7 +238,12 @@ struct Pass<'c, 'a> {
 impl<'c, 'a> Pass<'c, 'a> {
     fn new(comparison: &'c Comparison<'a>) -> Pass<'c, 'a> {
         let sums = comparison.channels.iter().map(|_| Sums::new()).collect();
-        Pass { comparison, walk: comparison.exact.walk(), sides: None, sums }
+        Pass {
+            comparison,
+            walk: comparison.exact.walk(),
+            sides: None,
+            sums,
+        }
     }
 
     fn add(&mut self, time: Double, blur: f64, row: &Row) {
@@ -236,9 +256,16 @@ impl<'c, 'a> Pass<'c, 'a> {
         };
         let moved = self.moved_by(time, blur);
         let values = self.walk.go(time);
-        let channels = self.comparison.channels.iter().zip(&mut self.sums).enumerate();
+        let channels = self
+            .comparison
+            .channels
+            .iter()
+            .zip(&mut self.sums)
+            .enumerate();
         for (place, ((channel, conversion, limit), sums)) in channels {
-            let Some(written) = row.values[place] else { continue };
+            let Some(written) = row.values[place] else {
+                continue;
+            };
             let truth = values.value[*channel];
             let error = (conversion.apply(Double::from(written)) - truth).to_f64();
             let rest = moved.as_ref().map_or(0.0, |moved| moved[*channel]) + values.bound[*channel];
@@ -264,7 +291,9 @@ impl<'c, 'a> Pass<'c, 'a> {
             return Some(rates.iter().map(|rate| 1.1 * rate.abs() * blur).collect());
         }
         let middle = self.walk.go(time).value.clone();
-        let [before, after] = self.sides.get_or_insert_with(|| [exact.walk(), exact.walk()]);
+        let [before, after] = self
+            .sides
+            .get_or_insert_with(|| [exact.walk(), exact.walk()]);
         let mut moved = vec![0.0f64; middle.len()];
         for (walk, shift) in [(before, -blur), (after, blur)] {
             let there = walk.go(time + Double::from(shift));
@@ -276,9 +305,15 @@ impl<'c, 'a> Pass<'c, 'a> {
     }
 
     fn conclude(self) -> Vec<Deviation> {
-        let channels = self.comparison.channels.iter().zip(&self.comparison.survey.channels);
+        let channels = self
+            .comparison
+            .channels
+            .iter()
+            .zip(&self.comparison.survey.channels);
         let concluded = channels.zip(self.sums);
-        concluded.map(|(((_, _, limit), printed), sums)| sums.conclude(limit, *printed)).collect()
+        concluded
+            .map(|(((_, _, limit), printed), sums)| sums.conclude(limit, *printed))
+            .collect()
     }
 }
 
@@ -290,8 +325,11 @@ impl Limit {
 }
 
 impl Margin {
-    const NOTHING: Margin =
-        Margin { certain: f64::NEG_INFINITY, broken: f64::NEG_INFINITY, used: 0.0 };
+    const NOTHING: Margin = Margin {
+        certain: f64::NEG_INFINITY,
+        broken: f64::NEG_INFINITY,
+        used: 0.0,
+    };
 }
 
 /// `error / limit`, with no error using nothing of any limit.
@@ -301,8 +339,11 @@ fn share(error: f64, limit: f64) -> f64 {
 
 impl Sums {
     fn new() -> Sums {
-        let against =
-            Against { margin: Margin::NOTHING, above: f64::NEG_INFINITY, below: f64::NEG_INFINITY };
+        let against = Against {
+            margin: Margin::NOTHING,
+            above: f64::NEG_INFINITY,
+            below: f64::NEG_INFINITY,
+        };
         Sums {
             rows: 0,
             worst: 0.0,

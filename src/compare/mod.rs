@@ -8,5 +8,5 @@ mod deviation;
 mod order;
 
 pub use convergence::{Convergence, grid_convergence};
-pub use deviation::{Comparison, Compared, Deviation, Limit, Margin};
+pub use deviation::{Compared, Comparison, Deviation, Limit, Margin};
 pub use order::{Pair, Rung, Sight, observe};

@@ -86,22 +86,34 @@ pub fn observe(rungs: &[Rung]) -> Sight {
     if rungs.len() < 2 {
         return Sight::TooFew("an order needs at least two runs with different steps".to_owned());
     }
-    if let Some(pair) = rungs.windows(2).find(|pair| pair[0].setting == pair[1].setting) {
+    if let Some(pair) = rungs
+        .windows(2)
+        .find(|pair| pair[0].setting == pair[1].setting)
+    {
         return Sight::TooFew(format!("two runs have the step {}", pair[0].setting));
     }
     // Resolution does not count here: what is hidden by few digits is not exact.
-    if rungs.iter().all(|rung| rung.error <= 2.0 * rung.rounding() && rung.resolution <= rung.rounding()) {
+    if rungs
+        .iter()
+        .all(|rung| rung.error <= 2.0 * rung.rounding() && rung.resolution <= rung.rounding())
+    {
         return Sight::ExactForThisCase;
     }
     let usable = |factor: f64| -> Vec<Rung> {
         let counts = |rung: &&Rung| rung.is_clear(factor) && rung.is_below_the_solution();
         rungs.iter().filter(counts).copied().collect()
     };
-    let clear = CLEAR.iter().map(|&factor| usable(factor)).find(|usable| usable.len() >= 2);
+    let clear = CLEAR
+        .iter()
+        .map(|&factor| usable(factor))
+        .find(|usable| usable.len() >= 2);
     let Some(usable) = clear else {
         return Sight::TooFew(why_too_few(&rungs));
     };
-    let pairs: Vec<Pair> = usable.windows(2).map(|pair| between(&pair[0], &pair[1])).collect();
+    let pairs: Vec<Pair> = usable
+        .windows(2)
+        .map(|pair| between(&pair[0], &pair[1]))
+        .collect();
     let mut agreeing = 1;
     while agreeing < pairs.len() {
         let finer = &pairs[pairs.len() - agreeing];
@@ -112,7 +124,11 @@ pub fn observe(rungs: &[Rung]) -> Sight {
         }
         agreeing += 1;
     }
-    Sight::Pairs { pairs, agreeing, usable: usable.len() }
+    Sight::Pairs {
+        pairs,
+        agreeing,
+        usable: usable.len(),
+    }
 }
 
 fn why_too_few(rungs: &[Rung]) -> String {
@@ -162,7 +178,9 @@ mod tests {
 
     fn finest(sight: Sight) -> (f64, usize) {
         match sight {
-            Sight::Pairs { pairs, agreeing, .. } => (pairs.last().unwrap().order, agreeing),
+            Sight::Pairs {
+                pairs, agreeing, ..
+            } => (pairs.last().unwrap().order, agreeing),
             other => panic!("{other:?}"),
         }
     }
@@ -176,9 +194,19 @@ mod tests {
         for rung in &mut rungs {
             rung.peak = 5.3;
         }
-        let Sight::Pairs { pairs, agreeing, usable } = observe(&rungs) else { panic!() };
+        let Sight::Pairs {
+            pairs,
+            agreeing,
+            usable,
+        } = observe(&rungs)
+        else {
+            panic!()
+        };
         assert_eq!((agreeing, usable), (4, 5));
-        for (pair, expected) in pairs.iter().zip([0.8616387, 0.9247301, 0.9606517, 0.9798702]) {
+        for (pair, expected) in pairs
+            .iter()
+            .zip([0.8616387, 0.9247301, 0.9606517, 0.9798702])
+        {
             assert!((pair.order - expected).abs() < 1e-6, "{pair:?}");
         }
     }
@@ -188,20 +216,31 @@ mod tests {
         let (order, agreeing) = finest(observe(&ladder(&[1e-4, 6.25e-6, 3.9e-7, 3e-15, 4e-15])));
         assert!((order - 4.0).abs() < 0.01);
         assert_eq!(agreeing, 2);
-        assert_eq!(observe(&ladder(&[1e-15, 3e-15, 2e-15])), Sight::ExactForThisCase);
+        assert_eq!(
+            observe(&ladder(&[1e-15, 3e-15, 2e-15])),
+            Sight::ExactForThisCase
+        );
         let sight = observe(&ladder(&[1e-5, 3e-15, 2e-15]));
-        assert_eq!(sight, Sight::TooFew("2 of 3 errors at rounding level".to_owned()));
+        assert_eq!(
+            sight,
+            Sight::TooFew("2 of 3 errors at rounding level".to_owned())
+        );
     }
 
     #[test]
     fn coarse_digits_widen_the_interval_and_then_hide_the_order() {
         let mut rungs = ladder(&[1e-2, 5e-3, 2.5e-3]);
         rungs.iter_mut().for_each(|rung| rung.resolution = 5e-4);
-        let Sight::Pairs { pairs, .. } = observe(&rungs) else { panic!() };
+        let Sight::Pairs { pairs, .. } = observe(&rungs) else {
+            panic!()
+        };
         assert!(pairs[0].low < 0.85 && pairs[0].high > 1.15);
         rungs.iter_mut().for_each(|rung| rung.resolution = 5e-2);
         let sight = observe(&rungs);
-        assert_eq!(sight, Sight::TooFew("3 of 3 errors hidden by the printed digits".to_owned()));
+        assert_eq!(
+            sight,
+            Sight::TooFew("3 of 3 errors hidden by the printed digits".to_owned())
+        );
         // Small errors under coarse digits are hidden, not exact.
         rungs.iter_mut().for_each(|rung| rung.error = 1e-16);
         assert!(matches!(observe(&rungs), Sight::TooFew(_)));
@@ -213,7 +252,10 @@ mod tests {
         assert!((order - 2.0).abs() < 1e-3);
         let mut rungs = ladder(&[1e-2, 5e-3]);
         rungs[1].setting = rungs[0].setting;
-        assert_eq!(observe(&rungs), Sight::TooFew("two runs have the step 0.1".to_owned()));
+        assert_eq!(
+            observe(&rungs),
+            Sight::TooFew("two runs have the step 0.1".to_owned())
+        );
         assert!(matches!(observe(&rungs[..1]), Sight::TooFew(_)));
     }
 }

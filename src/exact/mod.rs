@@ -60,12 +60,15 @@ pub struct Exact {
     to: Double,
     table: Propagator<Double>,
     anchors: Vec<Flow<Double>>,
-    fine: OnceLock<Option<(Propagator<Quad>, Vec<Flow<Quad>>)>>,
+    fine: OnceLock<Option<Fine>>,
     /// Largest magnitude of each channel at a few times: never above the true peak.
     peaks: Vec<f64>,
     /// Largest difference between closed form and propagator, relative to the peak.
     closed_form_gap: Option<f64>,
 }
+
+/// Table and anchors in the second precision.
+type Fine = (Propagator<Quad>, Vec<Flow<Quad>>);
 
 /// A walk along times that gives values rounded to `f64`.
 #[derive(Debug)]
@@ -80,7 +83,9 @@ impl RoundedWalk<'_> {
     /// # Errors
     /// A time outside the window.
     pub fn at(&mut self, time: impl Into<Double>) -> Result<Vec<Value>, Fault> {
-        Ok(self.exact.rounded(self.walk.go(self.exact.within(time.into())?)))
+        Ok(self
+            .exact
+            .rounded(self.walk.go(self.exact.within(time.into())?)))
     }
 }
 
@@ -131,7 +136,16 @@ impl Exact {
         let anchors = propagate::anchors(&table, start, from, &system.jumps);
         let fine = OnceLock::new();
         let (peaks, closed_form_gap) = (vec![0.0; system.channels.len()], None);
-        let mut exact = Exact { system, from, to, table, anchors, fine, peaks, closed_form_gap };
+        let mut exact = Exact {
+            system,
+            from,
+            to,
+            table,
+            anchors,
+            fine,
+            peaks,
+            closed_form_gap,
+        };
         for time in exact.probe_times() {
             let values = exact.direct(time);
             if !values.value.iter().all(|value| value.is_finite()) {
@@ -169,7 +183,10 @@ impl Exact {
 
     /// As [`Exact::at`] many times, remembering where it was.
     pub fn walk_rounded(&self) -> RoundedWalk<'_> {
-        RoundedWalk { exact: self, walk: self.walk() }
+        RoundedWalk {
+            exact: self,
+            walk: self.walk(),
+        }
     }
 
     /// A walk along times of any order, each given in double-double.
@@ -184,7 +201,10 @@ impl Exact {
             return Ok(time);
         }
         let (from, to) = (self.from.to_f64(), self.to.to_f64());
-        let text = format!("time {} lies outside the window from {from} to {to}", time.to_f64());
+        let text = format!(
+            "time {} lies outside the window from {from} to {to}",
+            time.to_f64()
+        );
         Err(Fault::new(text))
     }
 
@@ -193,7 +213,10 @@ impl Exact {
         pairs
             .map(|(&value, &bound)| {
                 let nearest = value.to_f64();
-                Value { value: nearest, bound: bound + value.low().abs() }
+                Value {
+                    value: nearest,
+                    bound: bound + value.low().abs(),
+                }
             })
             .collect()
     }
@@ -222,7 +245,8 @@ impl Exact {
 
     /// True where an input jumps within a distance of a time, on either side.
     pub fn jumps_near(&self, time: Double, within: f64) -> bool {
-        self.jump_after(time - Double::from(within), 2.0 * within).is_some()
+        self.jump_after(time - Double::from(within), 2.0 * within)
+            .is_some()
     }
 
     /// True where an output jumps together with an input.
@@ -251,7 +275,9 @@ impl Exact {
     }
 
     fn check_closed_form(&mut self, case: &Case) -> Result<(), Fault> {
-        let Some(formulas) = &case.closed_form else { return Ok(()) };
+        let Some(formulas) = &case.closed_form else {
+            return Ok(());
+        };
         let mut variables: Vec<Double> = case.parameters.iter().map(|p| p.value).collect();
         variables.push(Double::ZERO);
         let mut worst = 0.0f64;
@@ -262,11 +288,13 @@ impl Exact {
             let values = self.direct(time);
             for (index, formula) in formulas.iter().enumerate() {
                 // No obstacle exists for plain numbers.
-                let Ok(closed) = formula.evaluate(&variables) else { continue };
+                let Ok(closed) = formula.evaluate(&variables) else {
+                    continue;
+                };
                 let name = &case.states[index].name;
                 let gap = (closed - values.value[index]).abs().to_f64() - values.bound[index];
                 let peak = self.peaks[index].max(f64::MIN_POSITIVE);
-                if !(gap <= CLOSED_FORM_AGREEMENT * peak) {
+                if gap.is_nan() || gap > CLOSED_FORM_AGREEMENT * peak {
                     if !case.replaced.is_empty() {
                         // A form that was written for other numbers (unequal rates,
                         // say) may not apply any more; the propagator does.

@@ -50,13 +50,21 @@ impl Exact {
     }
 
     fn segment_start(&self, segment: usize) -> Double {
-        if segment == 0 { self.from } else { self.system.jumps[segment - 1].time }
+        if segment == 0 {
+            self.from
+        } else {
+            self.system.jumps[segment - 1].time
+        }
     }
 
     /// The time since the segment began, never below zero.
     fn since(&self, segment: usize, time: Double) -> Double {
         let since = time - self.segment_start(segment);
-        if since.to_f64() > 0.0 { since } else { Double::ZERO }
+        if since.to_f64() > 0.0 {
+            since
+        } else {
+            Double::ZERO
+        }
     }
 
     fn flow_at(&self, segment: usize, time: Double) -> Flow<Double> {
@@ -89,7 +97,9 @@ impl Exact {
             let weights: Vec<f64> = row.iter().map(|w| w.to_f64().abs()).collect();
             let row: Vec<T> = row.iter().map(|&w| T::from_double(w)).collect();
             values.value.push(dot(&row, &flow.value).to_double());
-            values.bound.push(dot(&weights, &bound) + rounding * dot(&weights, &size));
+            values
+                .bound
+                .push(dot(&weights, &bound) + rounding * dot(&weights, &size));
         }
     }
 
@@ -190,13 +200,15 @@ impl<'a> Walk<'a> {
         let norm = table.norm();
         let follows = segment == self.segment && step.to_f64() >= 0.0;
         let fresh = self.since_anchor < STEPS_PER_ANCHOR;
-        let on_grid = |(spacing, _): &(Double, Step<Double>)| {
-            norm * (step - *spacing).abs().to_f64() <= 0.25
-        };
+        let on_grid =
+            |(spacing, _): &(Double, Step<Double>)| norm * (step - *spacing).abs().to_f64() <= 0.25;
         if follows && fresh && norm * step.to_f64() <= 0.5 {
             table.nudge(&mut self.flow, step);
             self.since_anchor += 1;
-        } else if follows && fresh && let Some((spacing, grid)) = self.grid.as_ref().filter(|g| on_grid(g)) {
+        } else if follows
+            && fresh
+            && let Some((spacing, grid)) = self.grid.as_ref().filter(|g| on_grid(g))
+        {
             table.step(&mut self.flow, grid);
             table.nudge(&mut self.flow, step - *spacing);
             self.since_anchor += 1;
@@ -215,9 +227,10 @@ impl<'a> Walk<'a> {
         let (last, count) = self.spacing;
         let same = table.norm() * (step - last).abs().to_f64() <= 1e-3;
         self.spacing = (step, if same { count + 1 } else { 0 });
-        let known = self.grid.as_ref().is_some_and(|(spacing, _)| {
-            table.norm() * (step - *spacing).abs().to_f64() <= 0.25
-        });
+        let known = self
+            .grid
+            .as_ref()
+            .is_some_and(|(spacing, _)| table.norm() * (step - *spacing).abs().to_f64() <= 0.25);
         if self.spacing.1 >= 8 + 2 * table.size() && !known && step.to_f64() > 0.0 {
             self.grid = Some((step, table.tabulate(step)));
         }

@@ -28,7 +28,11 @@ const PART_OF_AN_EIGENVALUE: f64 = 1e-3;
 pub fn approx_time_scales(case: &Case) -> TimeScales {
     let size = case.states.len();
     let matrix = DMatrix::from_fn(size, size, |i, j| {
-        case.states[i].rate.coefficients.get(j).map_or(0.0, |c| c.to_f64())
+        case.states[i]
+            .rate
+            .coefficients
+            .get(j)
+            .map_or(0.0, |c| c.to_f64())
     });
     let eigenvalues = matrix.complex_eigenvalues();
     let counts = |part: f64, size: f64| part.abs() > PART_OF_AN_EIGENVALUE * size;
@@ -44,7 +48,10 @@ pub fn approx_time_scales(case: &Case) -> TimeScales {
         }
     }
     for input in &case.inputs {
-        if let Shape::Sine { angular_frequency, .. } = &input.shape {
+        if let Shape::Sine {
+            angular_frequency, ..
+        } = &input.shape
+        {
             fastest_turn = fastest_turn.max(angular_frequency.to_f64().abs());
         }
     }

@@ -66,7 +66,10 @@ impl System {
             start.extend(&generator.start);
             for (time, values) in &generator.jumps {
                 let resets = values.iter().enumerate().map(|(i, &v)| (offset + i, v));
-                jumps.push(Jump { time: *time, resets: resets.collect() });
+                jumps.push(Jump {
+                    time: *time,
+                    resets: resets.collect(),
+                });
             }
         }
         // Row over z of something affine in states and inputs: the first generator
@@ -96,24 +99,41 @@ impl System {
             row[index] = Double::ONE;
             row
         };
-        let channels = (0..states).map(unit).chain(case.outputs.iter().map(|o| row(&o.value)));
+        let channels = (0..states)
+            .map(unit)
+            .chain(case.outputs.iter().map(|o| row(&o.value)));
         let channels = channels.collect();
         let direct = |c: &Double| c.to_f64() != 0.0;
-        let has_feed_through = case.outputs.iter().any(|output| {
-            output.value.coefficients.iter().skip(states).any(direct)
-        });
+        let has_feed_through = case
+            .outputs
+            .iter()
+            .any(|output| output.value.coefficients.iter().skip(states).any(direct));
         let (jumps, outputs) = (merged(jumps)?, case.outputs.len());
-        Ok(System { matrix, start, jumps, channels, outputs, has_feed_through })
+        Ok(System {
+            matrix,
+            start,
+            jumps,
+            channels,
+            outputs,
+            has_feed_through,
+        })
     }
 }
 
 /// Jumps in order of time, those of one instant together.
 fn merged(mut jumps: Vec<Jump>) -> Result<Vec<Jump>, Fault> {
     if jumps.len() > MOST_JUMPS {
-        let text = format!("the inputs jump {} times, at most {MOST_JUMPS} are allowed", jumps.len());
+        let text = format!(
+            "the inputs jump {} times, at most {MOST_JUMPS} are allowed",
+            jumps.len()
+        );
         return Err(Fault::new(text).help("shorten the window or lengthen the periods"));
     }
-    jumps.sort_by(|a, b| a.time.partial_cmp(&b.time).unwrap_or(std::cmp::Ordering::Equal));
+    jumps.sort_by(|a, b| {
+        a.time
+            .partial_cmp(&b.time)
+            .unwrap_or(std::cmp::Ordering::Equal)
+    });
     let mut merged: Vec<Jump> = Vec::with_capacity(jumps.len());
     for jump in jumps {
         match merged.last_mut() {
@@ -135,17 +155,29 @@ impl Generator {
     }
 
     /// A constant that jumps: value before the first edge, then each edge's value.
-    fn edges(before: Double, edges: impl Iterator<Item = (Double, Double)>, window: (Double, Double)) -> Option<Generator> {
+    fn edges(
+        before: Double,
+        edges: impl Iterator<Item = (Double, Double)>,
+        window: (Double, Double),
+    ) -> Option<Generator> {
         let knots = edges.map(|(time, value)| (time, vec![value]));
         Generator::held(before).with_jumps(knots, window)
     }
 
     /// A straight line that is set anew: `(value, slope)` at each knot.
-    fn line(before: Vec<Double>, knots: impl Iterator<Item = (Double, Vec<Double>)>, window: (Double, Double)) -> Option<Generator> {
+    fn line(
+        before: Vec<Double>,
+        knots: impl Iterator<Item = (Double, Vec<Double>)>,
+        window: (Double, Double),
+    ) -> Option<Generator> {
         let (zero, one) = (Double::ZERO, Double::ONE);
         let matrix = vec![vec![zero, one], vec![zero, zero]];
-        let generator =
-            Generator { matrix, start: before, output: vec![one, zero], jumps: Vec::new() };
+        let generator = Generator {
+            matrix,
+            start: before,
+            output: vec![one, zero],
+            jumps: Vec::new(),
+        };
         generator.with_jumps(knots, window)
     }
 
@@ -188,13 +220,26 @@ fn generator(shape: &Shape, from: Double, to: Double) -> Option<Generator> {
             let knot = (*from, vec![zero, *slope]);
             Generator::line(vec![zero, zero], std::iter::once(knot), window)
         }
-        Shape::Pulse { height, from, width } => {
+        Shape::Pulse {
+            height,
+            from,
+            width,
+        } => {
             let edges = [(*from, *height), (*from + *width, zero)];
             Generator::edges(zero, edges.into_iter(), window)
         }
-        Shape::PulseTrain { height, from: first, width, period, count } => {
+        Shape::PulseTrain {
+            height,
+            from: first,
+            width,
+            period,
+            count,
+        } => {
             // Pulses that ended before the window are passed over.
-            let done = ((from - *first - *width) / *period).floor().to_f64().max(0.0);
+            let done = ((from - *first - *width) / *period)
+                .floor()
+                .to_f64()
+                .max(0.0);
             let count = count.unwrap_or(u64::MAX) as f64;
             let mut number = done;
             let mut rising = true;
@@ -203,14 +248,22 @@ fn generator(shape: &Shape, from: Double, to: Double) -> Option<Generator> {
                     return None;
                 }
                 let begin = *first + *period * Double::from(number);
-                let edge = if rising { (begin, *height) } else { (begin + *width, zero) };
+                let edge = if rising {
+                    (begin, *height)
+                } else {
+                    (begin + *width, zero)
+                };
                 number += if rising { 0.0 } else { 1.0 };
                 rising = !rising;
                 Some(edge)
             });
             Generator::edges(zero, edges, window)
         }
-        Shape::Sine { amplitude, angular_frequency, phase } => {
+        Shape::Sine {
+            amplitude,
+            angular_frequency,
+            phase,
+        } => {
             let (sine, cosine) = (*angular_frequency * from + *phase).sin_cos();
             let rate = *angular_frequency;
             Some(Generator {
@@ -255,12 +308,20 @@ fn polynomial(coefficients: &[Double], from: Double) -> Generator {
     let mut start = Vec::with_capacity(size);
     for _ in 0..size {
         // Horner's rule, then the next derivative.
-        let value = derivative.iter().rev().fold(Double::ZERO, |sum, &c| sum * from + c);
+        let value = derivative
+            .iter()
+            .rev()
+            .fold(Double::ZERO, |sum, &c| sum * from + c);
         start.push(value);
         let next = derivative.iter().enumerate().skip(1);
         derivative = next.map(|(k, &c)| c * Double::from(k as f64)).collect();
     }
     let mut output = vec![Double::ZERO; size];
     output[0] = Double::ONE;
-    Generator { matrix, start, output, jumps: Vec::new() }
+    Generator {
+        matrix,
+        start,
+        output,
+        jumps: Vec::new(),
+    }
 }

@@ -18,43 +18,90 @@ fn lag(input: &str, k: f64, start: f64) -> Exact {
 fn close(exact: &Exact, time: f64, expected: f64) {
     let value = exact.at(time).unwrap()[0];
     let tolerance = 4.0 * f64::EPSILON * expected.abs().max(1e-3);
-    assert!((value.value - expected).abs() <= tolerance, "t = {time}: {value:?}, not {expected}");
+    assert!(
+        (value.value - expected).abs() <= tolerance,
+        "t = {time}: {value:?}, not {expected}"
+    );
 }
 
 #[test]
 fn every_input_shape_against_its_formula() {
     // With k = 2: x(t) of x' = 2 (u - x), x(1) = 0.5, by the usual integrals.
     let e = |t: f64| (-2.0 * (t - 1.0)).exp();
-    close(&lag("shape = 'constant'\nvalue = 3", 2.0, 0.5), 2.5, 3.0 - 2.5 * e(2.5));
+    close(
+        &lag("shape = 'constant'\nvalue = 3", 2.0, 0.5),
+        2.5,
+        3.0 - 2.5 * e(2.5),
+    );
     let step = lag("shape = 'step'\nheight = 3\nat = 2", 2.0, 0.5);
     close(&step, 1.5, 0.5 * e(1.5));
     close(&step, 4.0, 0.5 * e(4.0) + 3.0 * (1.0 - (-4.0f64).exp()));
     let early = lag("shape = 'step'\nheight = 3\nat = -5", 2.0, 0.5);
     close(&early, 2.5, 3.0 - 2.5 * e(2.5));
     let ramp = lag("shape = 'ramp'\nslope = 4\nfrom = 2", 2.0, 0.5);
-    close(&ramp, 5.0, 0.5 * e(5.0) + 4.0 * (3.0 - 0.5 * (1.0 - (-6.0f64).exp())));
+    close(
+        &ramp,
+        5.0,
+        0.5 * e(5.0) + 4.0 * (3.0 - 0.5 * (1.0 - (-6.0f64).exp())),
+    );
     let earlier = lag("shape = 'ramp'\nslope = 4\nfrom = 0", 2.0, 0.5);
     close(&earlier, 3.0, (0.5 - 4.0 + 2.0) * e(3.0) + 4.0 * 3.0 - 2.0);
-    let pulse = lag("shape = 'pulse'\nheight = 3\nfrom = 2\nwidth = 0.5", 2.0, 0.0);
+    let pulse = lag(
+        "shape = 'pulse'\nheight = 3\nfrom = 2\nwidth = 0.5",
+        2.0,
+        0.0,
+    );
     close(&pulse, 4.0, 3.0 * (1.0 - (-1.0f64).exp()) * (-3.0f64).exp());
-    let train = lag("shape = 'pulse-train'\nheight = 3\nfrom = 2\nwidth = 0.5\nperiod = 1.5\ncount = 2", 2.0, 0.0);
-    close(&train, 5.0, 3.0 * (1.0 - (-1.0f64).exp()) * ((-5.0f64).exp() + (-2.0f64).exp()));
+    let train = lag(
+        "shape = 'pulse-train'\nheight = 3\nfrom = 2\nwidth = 0.5\nperiod = 1.5\ncount = 2",
+        2.0,
+        0.0,
+    );
+    close(
+        &train,
+        5.0,
+        3.0 * (1.0 - (-1.0f64).exp()) * ((-5.0f64).exp() + (-2.0f64).exp()),
+    );
     // Steady part of a sine: k/sqrt(k^2+w^2) sin(wt + phase - atan(w/k)).
-    let sine = lag("shape = 'sine'\namplitude = 2\nangular_frequency = 2\nphase = 0.25", 2.0, 0.0);
+    let sine = lag(
+        "shape = 'sine'\namplitude = 2\nangular_frequency = 2\nphase = 0.25",
+        2.0,
+        0.0,
+    );
     let steady = |t: f64| 2f64.sqrt() * (2.0 * t + 0.25 - std::f64::consts::FRAC_PI_4).sin();
     close(&sine, 3.0, steady(3.0) - steady(1.0) * e(3.0));
     let growth = lag("shape = 'exponential'\nscale = 3\nrate = -2", 2.0, 0.5);
-    close(&growth, 3.0, e(3.0) * (0.5 + 2.0 * 3.0 * (-2.0f64).exp() * 2.0));
+    close(
+        &growth,
+        3.0,
+        e(3.0) * (0.5 + 2.0 * 3.0 * (-2.0f64).exp() * 2.0),
+    );
     // u = t^2: a particular solution is t^2 - t + 1/2.
     let square = lag("shape = 'polynomial'\ncoefficients = [0, 0, 1]", 2.0, 0.5);
     let particular = |t: f64| t * t - t + 0.5;
-    close(&square, 4.0, particular(4.0) + (0.5 - particular(1.0)) * e(4.0));
-    let held = lag("shape = 'held-samples'\ntimes = [0, 2, 3]\nvalues = [1, 4, 2]", 2.0, 1.0);
+    close(
+        &square,
+        4.0,
+        particular(4.0) + (0.5 - particular(1.0)) * e(4.0),
+    );
+    let held = lag(
+        "shape = 'held-samples'\ntimes = [0, 2, 3]\nvalues = [1, 4, 2]",
+        2.0,
+        1.0,
+    );
     close(&held, 2.0, 1.0);
     close(&held, 3.0, 4.0 - 3.0 * (-2.0f64).exp());
-    let line = lag("shape = 'linear-samples'\ntimes = [2, 4]\nvalues = [1, 5]", 2.0, 1.0);
+    let line = lag(
+        "shape = 'linear-samples'\ntimes = [2, 4]\nvalues = [1, 5]",
+        2.0,
+        1.0,
+    );
     close(&line, 2.0, 1.0);
-    close(&line, 4.0, 1.0 + 2.0 * (2.0 - 0.5 * (1.0 - (-4.0f64).exp())));
+    close(
+        &line,
+        4.0,
+        1.0 + 2.0 * (2.0 - 0.5 * (1.0 - (-4.0f64).exp())),
+    );
 }
 
 #[test]
@@ -90,7 +137,10 @@ fn later_times_follow_from_earlier_values() {
                 // The start value was rounded to double-double: 1e-31 of the peak,
                 // grown by no more than these systems grow anything.
                 let tolerance = f64::EPSILON * a.value.abs() + 1e-22 * exact.peaks[i];
-                assert!((a.value - b.value).abs() <= tolerance, "{name} {time} {i}: {a:?} {b:?}");
+                assert!(
+                    (a.value - b.value).abs() <= tolerance,
+                    "{name} {time} {i}: {a:?} {b:?}"
+                );
             }
         }
     }
@@ -98,7 +148,11 @@ fn later_times_follow_from_earlier_values() {
 
 #[test]
 fn a_uniform_walk_gives_what_direct_evaluation_gives() {
-    for name in ["mechanical/oscillator-light", "electrical/lc-bus-filter", "thermal/rod-30-node"] {
+    for name in [
+        "mechanical/oscillator-light",
+        "electrical/lc-bus-filter",
+        "thermal/rod-30-node",
+    ] {
         let case = Library::new().load(name, &Replacements::new()).unwrap();
         let exact = case.exact().unwrap();
         let (from, to) = (exact.from().to_f64(), exact.to().to_f64());
@@ -113,7 +167,10 @@ fn a_uniform_walk_gives_what_direct_evaluation_gives() {
             let direct = exact.direct(time);
             for i in 0..values.value.len() {
                 let gap = (values.value[i] - direct.value[i]).abs().to_f64();
-                assert!(gap <= values.bound[i] + direct.bound[i], "{name} row {k}: {gap:e}");
+                assert!(
+                    gap <= values.bound[i] + direct.bound[i],
+                    "{name} row {k}: {gap:e}"
+                );
                 assert!(gap <= 1e-27 * exact.peaks[i], "{name} row {k}: {gap:e}");
             }
         }
@@ -127,7 +184,10 @@ fn a_million_rows_do_not_drift() {
         [[states]]\nname = 'x'\nunit = 'm'\nstart = 1\nrate = 'v'\n\
         [[states]]\nname = 'v'\nunit = 'm/s'\nstart = 0\nrate = '-x'\n\
         [limits]\nabsolute = 1\nrelative = 0\n";
-    let exact = Case::parse("turn", text, &Replacements::new()).unwrap().exact().unwrap();
+    let exact = Case::parse("turn", text, &Replacements::new())
+        .unwrap()
+        .exact()
+        .unwrap();
     let mut walk = exact.walk();
     for k in 0..=1_000_000 {
         let values = walk.go(Double::from(f64::from(k)));
@@ -151,7 +211,10 @@ fn superposition_of_inputs() {
              [[inputs]]\nname = 'q'\nunit = '1'\nshape = 'pulse-train'\nheight = {b}\nfrom = 1\nwidth = 0.4\nperiod = 1.1\n\
              [limits]\nabsolute = 1\nrelative = 0\n"
         );
-        Case::parse("two", &text, &Replacements::new()).unwrap().exact().unwrap()
+        Case::parse("two", &text, &Replacements::new())
+            .unwrap()
+            .exact()
+            .unwrap()
     };
     let (one, other, sum) = (both("3", "0"), both("0", "-5"), both("3", "-5"));
     for k in 0..200 {
@@ -170,10 +233,21 @@ fn a_contradicting_closed_form_is_refused() {
         [time]\nunit = 's'\nfrom = 0\nto = 5\n\
         [[states]]\nname = 'x'\nunit = 'V'\nstart = 1\nrate = '-x'\nexact = 'exp(-1.0000001*t)'\n\
         [limits]\nabsolute = 1\nrelative = 0\n";
-    let fault = Case::parse("lag", text, &Replacements::new()).unwrap().exact().unwrap_err();
-    assert!(fault.text.contains("case `trial/lag` contradicts itself: at t = "), "{fault}");
+    let fault = Case::parse("lag", text, &Replacements::new())
+        .unwrap()
+        .exact()
+        .unwrap_err();
+    assert!(
+        fault
+            .text
+            .contains("case `trial/lag` contradicts itself: at t = "),
+        "{fault}"
+    );
     let text = text.replace("1.0000001*", "");
-    let exact = Case::parse("lag", &text, &Replacements::new()).unwrap().exact().unwrap();
+    let exact = Case::parse("lag", &text, &Replacements::new())
+        .unwrap()
+        .exact()
+        .unwrap();
     assert!(exact.closed_form_gap().unwrap() < 1e-28);
 }
 
@@ -198,6 +272,12 @@ fn what_is_too_much_is_refused_with_a_reason() {
 #[test]
 fn times_outside_the_window_are_refused() {
     let exact = lag("shape = 'constant'\nvalue = 3", 2.0, 0.5);
-    assert!(exact.at(0.999).unwrap_err().text.contains("outside the window from 1 to 11"));
+    assert!(
+        exact
+            .at(0.999)
+            .unwrap_err()
+            .text
+            .contains("outside the window from 1 to 11")
+    );
     assert!(exact.over([1.0, 12.0]).last().unwrap().is_err());
 }

@@ -3,4 +3,6 @@
 
 mod reasons;
 
-pub use reasons::{error_text, fatal_finding, limit_broken, limit_hidden, order_reason, without_values};
+pub use reasons::{
+    error_text, fatal_finding, limit_broken, limit_hidden, order_reason, without_values,
+};

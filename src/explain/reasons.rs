@@ -40,7 +40,10 @@ pub fn limit_broken(
     {
         // A tenth is left for the error to be not quite as regular as its order.
         let needed = 0.9 * step * errors.limit_used.powf(-1.0 / order);
-        text += &format!("; at the order {order:.1} seen, a step of {} would keep it", short_step(needed));
+        text += &format!(
+            "; at the order {order:.1} seen, a step of {} would keep it",
+            short_step(needed)
+        );
     }
     text
 }
@@ -60,7 +63,10 @@ pub fn limit_hidden(file: &str, channel: &str, unit: &str, errors: &ErrorOutcome
 /// An error with no digit that the file does not support.
 pub fn error_text(errors: &ErrorOutcome) -> String {
     if errors.worst < errors.resolution {
-        format!("below {}", short_within(errors.resolution, errors.resolution))
+        format!(
+            "below {}",
+            short_within(errors.resolution, errors.resolution)
+        )
     } else {
         short_within(errors.worst, errors.resolution)
     }
@@ -87,7 +93,10 @@ pub fn order_reason(channel: &str, claimed: f64, order: &OrderVerdict) -> Option
         }
         _ => {
             let why = note.unwrap_or("too few runs count");
-            Some(format!("`{channel}`: the claimed order {} cannot be told: {why}", plain(claimed)))
+            Some(format!(
+                "`{channel}`: the claimed order {} cannot be told: {why}",
+                plain(claimed)
+            ))
         }
     }
 }

@@ -24,7 +24,10 @@ impl Affine {
     pub fn quantity(index: usize, count: usize) -> Affine {
         let mut coefficients = vec![Double::ZERO; count];
         coefficients[index] = Double::ONE;
-        Affine { constant: Double::ZERO, coefficients }
+        Affine {
+            constant: Double::ZERO,
+            coefficients,
+        }
     }
 
     fn is_plain(&self) -> bool {
@@ -42,7 +45,10 @@ impl Affine {
 
 impl Scalar for Affine {
     fn number(value: Double) -> Affine {
-        Affine { constant: value, coefficients: Vec::new() }
+        Affine {
+            constant: value,
+            coefficients: Vec::new(),
+        }
     }
 
     fn negate(self) -> Affine {
@@ -99,7 +105,9 @@ mod tests {
     use super::super::Formula;
     use super::*;
 
-    fn evaluate(text: &str) -> Result<(f64, Vec<f64>), (Obstacle, (usize, usize))> {
+    type Evaluated = Result<(f64, Vec<f64>), (Obstacle, (usize, usize))>;
+
+    fn evaluate(text: &str) -> Evaluated {
         // x and u are quantities, k = 4 a parameter.
         let names = ["x", "u", "k"];
         let formula = Formula::parse(text, &|name| names.iter().position(|n| *n == name)).unwrap();
@@ -117,7 +125,10 @@ mod tests {
     fn affine_rates_yield_their_coefficients() {
         assert_eq!(evaluate("(u - x)/k + 3"), Ok((3.0, vec![-0.25, 0.25])));
         assert_eq!(evaluate("-(2*x - 1)*k^2"), Ok((16.0, vec![-32.0, 0.0])));
-        assert_eq!(evaluate("sqrt(k)*x^1 + (x - x)*x"), Ok((0.0, vec![2.0, 0.0])));
+        assert_eq!(
+            evaluate("sqrt(k)*x^1 + (x - x)*x"),
+            Ok((0.0, vec![2.0, 0.0]))
+        );
     }
 
     #[test]

@@ -66,7 +66,9 @@ impl Formula {
 
 /// The parser never lets code through that takes more than it has put.
 fn pop<S>(stack: &mut Vec<S>) -> S {
-    stack.pop().expect("postfix code from the parser is balanced")
+    stack
+        .pop()
+        .expect("postfix code from the parser is balanced")
 }
 
 fn operate<S: Scalar>(operation: Operation, last: S, stack: &mut Vec<S>) -> Result<S, Obstacle> {
@@ -119,10 +121,28 @@ impl Scalar for Double {
             Function::Tanh => x.tanh(),
             Function::Abs => x.abs(),
             Function::Min | Function::Max if either_nan => Double::from(f64::NAN),
-            Function::Min => if x <= y { x } else { y },
-            Function::Max => if x >= y { x } else { y },
+            Function::Min => {
+                if x <= y {
+                    x
+                } else {
+                    y
+                }
+            }
+            Function::Max => {
+                if x >= y {
+                    x
+                } else {
+                    y
+                }
+            }
             Function::Heaviside if either_nan => x,
-            Function::Heaviside => if x >= Double::ZERO { Double::ONE } else { Double::ZERO },
+            Function::Heaviside => {
+                if x >= Double::ZERO {
+                    Double::ONE
+                } else {
+                    Double::ZERO
+                }
+            }
         })
     }
 }
@@ -164,7 +184,13 @@ impl Scalar for f64 {
             Function::Min => x.min(y),
             Function::Max => x.max(y),
             Function::Heaviside if either_nan => x,
-            Function::Heaviside => if x >= 0.0 { 1.0 } else { 0.0 },
+            Function::Heaviside => {
+                if x >= 0.0 {
+                    1.0
+                } else {
+                    0.0
+                }
+            }
         })
     }
 }

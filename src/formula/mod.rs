@@ -21,6 +21,8 @@ pub fn is_reserved(name: &str) -> bool {
 /// True for a letter or underscore followed by letters, digits and underscores.
 pub fn is_name(name: &str) -> bool {
     let mut characters = name.chars();
-    characters.next().is_some_and(|c| c.is_ascii_alphabetic() || c == '_')
+    characters
+        .next()
+        .is_some_and(|c| c.is_ascii_alphabetic() || c == '_')
         && characters.all(|c| c.is_ascii_alphanumeric() || c == '_')
 }

@@ -79,9 +79,20 @@ impl Function {
 
 /// What waits on the operator stack.
 enum Pending {
-    Operator { operation: Operation, binding: u8, at: Span },
-    Bracket { at: usize },
-    Call { function: Function, arguments: usize, seen: usize, at: Span },
+    Operator {
+        operation: Operation,
+        binding: u8,
+        at: Span,
+    },
+    Bracket {
+        at: usize,
+    },
+    Call {
+        function: Function,
+        arguments: usize,
+        seen: usize,
+        at: Span,
+    },
 }
 
 const SUM: u8 = 1;
@@ -118,17 +129,24 @@ impl Formula {
             ))
             .at(1, 1));
         }
-        let mut parser = Parser { text, at: 0, code: Vec::new(), pending: Vec::new() };
+        let mut parser = Parser {
+            text,
+            at: 0,
+            code: Vec::new(),
+            pending: Vec::new(),
+        };
         parser.run(resolve, names)?;
         Ok(Formula { code: parser.code })
     }
 
     /// Numbers of the variables that occur.
     pub fn variables(&self) -> impl Iterator<Item = usize> {
-        self.code.iter().filter_map(|(operation, _)| match operation {
-            Operation::Variable(index) => Some(*index),
-            _ => None,
-        })
+        self.code
+            .iter()
+            .filter_map(|(operation, _)| match operation {
+                Operation::Variable(index) => Some(*index),
+                _ => None,
+            })
     }
 }
 
@@ -183,7 +201,11 @@ impl<'a> Parser<'a> {
                 '-' => {
                     self.at += 1;
                     let (operation, binding) = (Operation::Negate, SIGN);
-                    self.push(Pending::Operator { operation, binding, at: (at, 1) })?;
+                    self.push(Pending::Operator {
+                        operation,
+                        binding,
+                        at: (at, 1),
+                    })?;
                 }
                 '(' => {
                     self.at += 1;
@@ -229,7 +251,8 @@ impl<'a> Parser<'a> {
             return Err(self.fault(format!("{} is not a finite number", quoted(word)), start));
         };
         self.at = end;
-        self.code.push((Operation::Number(value), (start, end - start)));
+        self.code
+            .push((Operation::Number(value), (start, end - start)));
         Ok(())
     }
 
@@ -248,7 +271,12 @@ impl<'a> Parser<'a> {
                 return Err(self.fault(format!("`{word}` is a function: `(` must follow"), start));
             }
             self.at += 1;
-            self.push(Pending::Call { function, arguments, seen: 1, at: span })?;
+            self.push(Pending::Call {
+                function,
+                arguments,
+                seen: 1,
+                at: span,
+            })?;
             return Ok(false);
         }
         let operation = if word == "pi" {
@@ -257,7 +285,10 @@ impl<'a> Parser<'a> {
             Operation::Variable(index)
         } else {
             let fault = self.fault(format!("unknown name {}", quoted(word)), start);
-            let known = names.iter().copied().chain(Function::ALL.iter().map(|f| f.1));
+            let known = names
+                .iter()
+                .copied()
+                .chain(Function::ALL.iter().map(|f| f.1));
             return Err(match nearest(word, known) {
                 _ if word == "t" => fault.help("time enters a rate through the inputs"),
                 Some(near) => fault.help(format!("did you mean `{near}`?")),
@@ -313,15 +344,28 @@ impl<'a> Parser<'a> {
             };
             self.at += 1;
             // Powers group from the right, everything else from the left.
-            self.reduce(if binding == POWER { binding + 1 } else { binding });
-            self.push(Pending::Operator { operation, binding, at: (at, 1) })?;
+            self.reduce(if binding == POWER {
+                binding + 1
+            } else {
+                binding
+            });
+            self.push(Pending::Operator {
+                operation,
+                binding,
+                at: (at, 1),
+            })?;
             return Ok(true);
         }
     }
 
     /// Moves waiting operators that bind at least this tightly into the code.
     fn reduce(&mut self, least: u8) {
-        while let Some(&Pending::Operator { operation, binding, at }) = self.pending.last() {
+        while let Some(&Pending::Operator {
+            operation,
+            binding,
+            at,
+        }) = self.pending.last()
+        {
             if binding < least {
                 break;
             }
@@ -334,11 +378,21 @@ impl<'a> Parser<'a> {
         self.reduce(0);
         match self.pending.pop() {
             Some(Pending::Bracket { .. }) => Ok(()),
-            Some(Pending::Call { function, arguments, seen, at }) if seen == arguments => {
+            Some(Pending::Call {
+                function,
+                arguments,
+                seen,
+                at,
+            }) if seen == arguments => {
                 self.code.push((Operation::Call(function), at));
                 Ok(())
             }
-            Some(Pending::Call { arguments, seen, at: (start, length), .. }) => {
+            Some(Pending::Call {
+                arguments,
+                seen,
+                at: (start, length),
+                ..
+            }) => {
                 let name = &self.text[start..start + length];
                 let text = format!("`{name}` takes {arguments} argument(s), got {seen}");
                 Err(self.fault(text, start))
@@ -355,7 +409,10 @@ impl<'a> Parser<'a> {
                 Ok(())
             }
             _ => Err(self
-                .fault("a comma may only stand between the arguments of a function", at)
+                .fault(
+                    "a comma may only stand between the arguments of a function",
+                    at,
+                )
                 .help("the decimal sign is a point")),
         }
     }

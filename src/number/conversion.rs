@@ -13,7 +13,10 @@ pub struct Conversion {
 
 impl Conversion {
     /// Nothing changes.
-    pub const NONE: Conversion = Conversion { factor: Double::ONE, offset: Double::ZERO };
+    pub const NONE: Conversion = Conversion {
+        factor: Double::ONE,
+        offset: Double::ZERO,
+    };
 
     /// The converted number.
     pub fn apply(self, written: Double) -> Double {

@@ -19,7 +19,10 @@ impl Decimal {
     pub fn new(digits: i128, exponent: i32) -> Option<Decimal> {
         let (mut digits, mut exponent) = (digits, exponent);
         if digits == 0 {
-            return Some(Decimal { digits: 0, exponent: 0 });
+            return Some(Decimal {
+                digits: 0,
+                exponent: 0,
+            });
         }
         while digits % 10 == 0 {
             digits /= 10;
@@ -43,7 +46,9 @@ impl Decimal {
         for byte in mantissa.bytes() {
             match byte {
                 b'0'..=b'9' => {
-                    digits = digits.checked_mul(10)?.checked_add(i128::from(byte - b'0'))?;
+                    digits = digits
+                        .checked_mul(10)?
+                        .checked_add(i128::from(byte - b'0'))?;
                     decimals += i32::from(point);
                     count += 1;
                 }
@@ -59,20 +64,27 @@ impl Decimal {
 
     /// The decimal that an `f64` is printed as: the shortest that reads back equal.
     pub fn shortest(value: f64) -> Option<Decimal> {
-        value.is_finite().then(|| Decimal::parse(&format!("{value:e}")))?
+        value
+            .is_finite()
+            .then(|| Decimal::parse(&format!("{value:e}")))?
     }
 
     /// Difference, exact; `None` where it needs more than 36 digits.
     pub fn minus(self, other: Decimal) -> Option<Decimal> {
         if self.digits == 0 {
-            return Some(Decimal { digits: -other.digits, ..other });
+            return Some(Decimal {
+                digits: -other.digits,
+                ..other
+            });
         }
         if other.digits == 0 {
             return Some(self);
         }
         let exponent = self.exponent.min(other.exponent);
         let align = |d: Decimal| {
-            let shift = u32::try_from(d.exponent - exponent).ok().filter(|&s| s < MOST_DIGITS)?;
+            let shift = u32::try_from(d.exponent - exponent)
+                .ok()
+                .filter(|&s| s < MOST_DIGITS)?;
             d.digits.checked_mul(10i128.pow(shift))
         };
         Decimal::new(align(self)?.checked_sub(align(other)?)?, exponent)
@@ -140,7 +152,17 @@ mod tests {
 
     #[test]
     fn text_that_is_no_decimal_is_refused() {
-        for text in ["", "-", ".", "1e", "1.2.3", "nan", "1e999999999", "0x10", "1 2"] {
+        for text in [
+            "",
+            "-",
+            ".",
+            "1e",
+            "1.2.3",
+            "nan",
+            "1e999999999",
+            "0x10",
+            "1 2",
+        ] {
             assert_eq!(Decimal::parse(text), None, "{text}");
         }
     }
@@ -150,7 +172,10 @@ mod tests {
         let tenth = read("0.1").to_double();
         let gap = tenth - Double::ONE / Double::from(10.0);
         assert!(gap.abs().to_f64() < 1e-31);
-        assert_eq!(read("123456789012345678901234567890").to_double().to_f64(), 1.2345678901234568e29);
+        assert_eq!(
+            read("123456789012345678901234567890").to_double().to_f64(),
+            1.2345678901234568e29
+        );
         assert_eq!(read("5e-300").to_double().to_f64(), 5e-300);
         assert_eq!(Decimal::shortest(0.1), Decimal::parse("0.1"));
         assert_eq!(Decimal::shortest(1e-7), Decimal::parse("1e-7"));

@@ -55,17 +55,30 @@ pub(super) fn two_product(a: f64, b: f64) -> (f64, f64) {
     let (b_high, b_low) = split(b);
     let error = ((a_high * b_high - product) + a_high * b_low + a_low * b_high) + a_low * b_low;
     // The split of a huge factor overflows; the plain product is still right.
-    if error.is_finite() { (product, error) } else { (product, 0.0) }
+    if error.is_finite() {
+        (product, error)
+    } else {
+        (product, 0.0)
+    }
 }
 
 impl Double {
     /// Zero.
-    pub const ZERO: Double = Double { high: 0.0, low: 0.0 };
+    pub const ZERO: Double = Double {
+        high: 0.0,
+        low: 0.0,
+    };
     /// One.
-    pub const ONE: Double = Double { high: 1.0, low: 0.0 };
+    pub const ONE: Double = Double {
+        high: 1.0,
+        low: 0.0,
+    };
     /// The circle constant to 2^-107 relative: the two leading words of pi,
     /// checked in `elementary::tests` against dashu-float.
-    pub const PI: Double = Double { high: std::f64::consts::PI, low: 1.224_646_799_147_353_2e-16 };
+    pub const PI: Double = Double {
+        high: std::f64::consts::PI,
+        low: 1.224_646_799_147_353_2e-16,
+    };
 
     /// The exact sum of two numbers of any size.
     pub fn from_sum(a: f64, b: f64) -> Double {
@@ -101,7 +114,10 @@ impl Double {
 
     /// Times a power of two, exact but for overflow and underflow.
     pub fn scale(self, power_of_two: f64) -> Double {
-        Double { high: self.high * power_of_two, low: self.low * power_of_two }
+        Double {
+            high: self.high * power_of_two,
+            low: self.low * power_of_two,
+        }
     }
 
     /// The largest whole number not above this one.
@@ -118,7 +134,11 @@ impl Double {
     /// Square root; NaN below zero.
     pub fn sqrt(self) -> Double {
         if self.high <= 0.0 {
-            return if self.high == 0.0 { Double::ZERO } else { Double::from(f64::NAN) };
+            return if self.high == 0.0 {
+                Double::ZERO
+            } else {
+                Double::from(f64::NAN)
+            };
         }
         if !self.is_finite() {
             return self;
@@ -140,20 +160,30 @@ impl Double {
             square *= square;
             rest >>= 1;
         }
-        if exponent < 0 { Double::ONE / result } else { result }
+        if exponent < 0 {
+            Double::ONE / result
+        } else {
+            result
+        }
     }
 }
 
 impl From<f64> for Double {
     fn from(value: f64) -> Double {
-        Double { high: value, low: 0.0 }
+        Double {
+            high: value,
+            low: 0.0,
+        }
     }
 }
 
 impl Neg for Double {
     type Output = Double;
     fn neg(self) -> Double {
-        Double { high: -self.high, low: -self.low }
+        Double {
+            high: -self.high,
+            low: -self.low,
+        }
     }
 }
 

@@ -80,7 +80,11 @@ impl<T: Real> Flow<T> {
     /// A vector taken as exact.
     pub fn exact(value: Vec<T>) -> Flow<T> {
         let local = vec![0.0; value.len()];
-        Flow { value, elapsed: 0.0, local }
+        Flow {
+            value,
+            elapsed: 0.0,
+            local,
+        }
     }
 
     /// Sets one entry to a number taken as exact (an input after its jump).
@@ -99,7 +103,11 @@ impl<T: Real> Propagator<T> {
             return None;
         }
         let longest = (2.0 * span).max(f64::MIN_POSITIVE);
-        let finest = if norm > 0.0 { (0.5 / norm).log2().floor() } else { 1000.0 };
+        let finest = if norm > 0.0 {
+            (0.5 / norm).log2().floor()
+        } else {
+            1000.0
+        };
         let finest = finest.min(longest.log2().ceil()) as i32;
         let top = (longest.log2().ceil() as i32 - finest).max(0);
         if finest < SMALLEST_BASE || top > MOST_LEVELS {
@@ -117,7 +125,10 @@ impl<T: Real> Propagator<T> {
             growth_rate: 0.0,
         };
         table.build(top as usize);
-        let finite = table.levels.iter().all(|step| step.size.row_sum_norm().is_finite());
+        let finite = table
+            .levels
+            .iter()
+            .all(|step| step.size.row_sum_norm().is_finite());
         (finite && table.reach.row_sum_norm().is_finite()).then_some(table)
     }
 
@@ -141,7 +152,10 @@ impl<T: Real> Propagator<T> {
             // What was lost at one level is repeated in every factor of the next.
             // First order in the errors; the second order is covered by the factor
             // as long as the errors are small, which is checked.
-            let (before, after) = ((-self.growth_rate * step.time).exp(), self.growth_rate * step.time);
+            let (before, after) = (
+                (-self.growth_rate * step.time).exp(),
+                self.growth_rate * step.time,
+            );
             sum = sum.zip(fresh, |a, b| (2.0 * a + b * before) * UPWARD);
             let through = self.reach.product(&sum.product(&self.reach));
             if through.row_sum_norm() < 1e-3 {
@@ -338,19 +352,31 @@ impl<T: Real> Propagator<T> {
     /// Bound of the error of every entry of a vector.
     pub fn bound(&self, flow: &Flow<T>) -> Vec<f64> {
         let growth = (self.growth_rate * flow.elapsed).exp() * UPWARD;
-        self.reach.rows().map(|row| dot(row, &flow.local) * growth).collect()
+        self.reach
+            .rows()
+            .map(|row| dot(row, &flow.local) * growth)
+            .collect()
     }
 
     /// `M x` in `f64`: the rate of change.
     pub fn approx_rate(&self, flow: &Flow<T>) -> Vec<f64> {
-        self.generator.apply(&flow.value).into_iter().map(Real::to_f64).collect()
+        self.generator
+            .apply(&flow.value)
+            .into_iter()
+            .map(Real::to_f64)
+            .collect()
     }
 }
 
 impl<T: Real> Step<T> {
     fn new(time: f64, growth: Matrix<T>, error: Matrix<f64>) -> Step<T> {
         let size = growth.map(|x| x.to_f64().abs() * (1.0 + f64::EPSILON));
-        Step { time, growth, size, error }
+        Step {
+            time,
+            growth,
+            size,
+            error,
+        }
     }
 
     /// The step of twice the length, and what rounding adds on the way there.
@@ -359,7 +385,9 @@ impl<T: Real> Step<T> {
         let square = self.growth.product(&self.growth);
         let growth = self.growth.zip(&square, |f, f2| f.scale(2.0) + f2);
         let rounding = self.size.product(&self.size);
-        let rounding = self.size.zip(&rounding, |f, f2| unit * (2.0 * f + f2) * UPWARD);
+        let rounding = self
+            .size
+            .zip(&rounding, |f, f2| unit * (2.0 * f + f2) * UPWARD);
         let whole = self.whole();
         let carried = whole.product(&self.error);
         let carried = carried.zip(&self.error.product(&whole), |a, b| a + b);

@@ -15,7 +15,10 @@ impl<T: Copy + Default> Matrix<T> {
     /// # Shape
     /// `size x size`.
     pub fn zero(size: usize) -> Matrix<T> {
-        Matrix { size, entries: vec![T::default(); size * size] }
+        Matrix {
+            size,
+            entries: vec![T::default(); size * size],
+        }
     }
 
     /// Number of rows.
@@ -30,7 +33,10 @@ impl<T: Copy + Default> Matrix<T> {
 
     /// Entry by entry into another type.
     pub fn map<U: Copy + Default>(&self, convert: impl Fn(T) -> U) -> Matrix<U> {
-        Matrix { size: self.size, entries: self.entries.iter().map(|&x| convert(x)).collect() }
+        Matrix {
+            size: self.size,
+            entries: self.entries.iter().map(|&x| convert(x)).collect(),
+        }
     }
 
     /// Entry by entry with another matrix of the same size.
@@ -41,7 +47,10 @@ impl<T: Copy + Default> Matrix<T> {
     ) -> Matrix<V> {
         debug_assert_eq!(self.size, other.size);
         let pairs = self.entries.iter().zip(&other.entries);
-        Matrix { size: self.size, entries: pairs.map(|(&x, &y)| join(x, y)).collect() }
+        Matrix {
+            size: self.size,
+            entries: pairs.map(|(&x, &y)| join(x, y)).collect(),
+        }
     }
 
     /// Row by row.
@@ -78,7 +87,9 @@ impl<T: Copy + Default + Add<Output = T> + Mul<Output = T> + PartialZero> Matrix
 
 /// Sum of products of two slices of one length.
 pub fn dot<T: Copy + Default + Add<Output = T> + Mul<Output = T>>(a: &[T], b: &[T]) -> T {
-    a.iter().zip(b).fold(T::default(), |sum, (&x, &y)| sum + x * y)
+    a.iter()
+        .zip(b)
+        .fold(T::default(), |sum, (&x, &y)| sum + x * y)
 }
 
 /// Exactly zero, for skipping terms.
@@ -105,7 +116,10 @@ impl Matrix<f64> {
     pub fn row_sum_norm(&self) -> f64 {
         // Not f64::max, which would pass over a NaN.
         let sums = self.rows().map(|row| row.iter().map(|x| x.abs()).sum());
-        sums.fold(0.0, |largest, sum: f64| if sum <= largest { largest } else { sum })
+        sums.fold(
+            0.0,
+            |largest, sum: f64| if sum <= largest { largest } else { sum },
+        )
     }
 }
 

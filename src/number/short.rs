@@ -9,13 +9,24 @@ pub fn short(value: f64) -> String {
 /// A measured value with as many digits as its doubt leaves, three at most.
 pub fn short_within(value: f64, doubt: f64) -> String {
     let known = (value.abs() / doubt).log10().floor() + 1.0;
-    shown(value, if known.is_finite() { known.clamp(1.0, 3.0) as usize } else { 3 })
+    shown(
+        value,
+        if known.is_finite() {
+            known.clamp(1.0, 3.0) as usize
+        } else {
+            3
+        },
+    )
 }
 
 /// A number as it was given: plain where that is short, all its digits.
 pub fn plain(value: f64) -> String {
     let size = value.abs();
-    if value == 0.0 || (1e-4..1e7).contains(&size) { format!("{value}") } else { format!("{value:e}") }
+    if value == 0.0 || (1e-4..1e7).contains(&size) {
+        format!("{value}")
+    } else {
+        format!("{value:e}")
+    }
 }
 
 fn shown(value: f64, digits: usize) -> String {
@@ -26,7 +37,11 @@ fn shown(value: f64, digits: usize) -> String {
         return format!("{value}");
     }
     let rounded = format!("{value:.*e}", digits - 1);
-    let exponent: i32 = rounded.rsplit('e').next().and_then(|e| e.parse().ok()).unwrap_or(0);
+    let exponent: i32 = rounded
+        .rsplit('e')
+        .next()
+        .and_then(|e| e.parse().ok())
+        .unwrap_or(0);
     if (-3..5).contains(&exponent) {
         let decimals = (digits as i32 - 1 - exponent).max(0) as usize;
         let value: f64 = rounded.parse().unwrap_or(value);

@@ -14,9 +14,15 @@ pub fn case_json(case: &Case, exact: &Exact) -> String {
     let split = |affine: &Affine| -> (Vec<f64>, Vec<f64>, f64) {
         let numbers: Vec<f64> = affine.coefficients.iter().map(|c| c.to_f64()).collect();
         let full = |from: usize, count: usize| -> Vec<f64> {
-            (from..from + count).map(|i| numbers.get(i).copied().unwrap_or(0.0)).collect()
+            (from..from + count)
+                .map(|i| numbers.get(i).copied().unwrap_or(0.0))
+                .collect()
         };
-        (full(0, states), full(states, case.inputs.len()), affine.constant.to_f64())
+        (
+            full(0, states),
+            full(states, case.inputs.len()),
+            affine.constant.to_f64(),
+        )
     };
     let rates: Vec<_> = case.states.iter().map(|state| split(&state.rate)).collect();
     let scales = approx_time_scales(case);
@@ -30,7 +36,11 @@ pub fn case_json(case: &Case, exact: &Exact) -> String {
             from: case.time.from.to_f64(),
             to: case.time.to.to_f64(),
         },
-        parameters: case.parameters.iter().map(|p| (p.name.clone(), p.value.to_f64())).collect(),
+        parameters: case
+            .parameters
+            .iter()
+            .map(|p| (p.name.clone(), p.value.to_f64()))
+            .collect(),
         states: case
             .states
             .iter()
@@ -50,7 +60,13 @@ pub fn case_json(case: &Case, exact: &Exact) -> String {
             .map(|output| {
                 let (c, d, constant) = split(&output.value);
                 let (name, unit) = (output.name.clone(), output.unit.clone());
-                OutputReport { name, unit, C: c, D: d, constant }
+                OutputReport {
+                    name,
+                    unit,
+                    C: c,
+                    D: d,
+                    constant,
+                }
             })
             .collect(),
         jumps: exact.jumps().collect(),
@@ -65,7 +81,10 @@ fn input(input: &Input) -> Map<String, Value> {
     for (key, word) in words {
         map.insert(key.to_owned(), Value::String(word.clone()));
     }
-    map.insert("shape".to_owned(), Value::String(input.shape.name().to_owned()));
+    map.insert(
+        "shape".to_owned(),
+        Value::String(input.shape.name().to_owned()),
+    );
     for (key, numbers) in input.shape.numbers() {
         let number = |x: &f64| Number::from_f64(*x).map_or(Value::Null, Value::Number);
         let list = matches!(key, "times" | "values" | "coefficients");

@@ -24,13 +24,26 @@ pub fn case_list(cases: &[Case], screen: Screen) -> String {
             case.title.clone(),
         ];
         if wide {
-            cells.push(if case.closed_form.is_some() { "yes" } else { "no" }.to_owned());
+            cells.push(
+                if case.closed_form.is_some() {
+                    "yes"
+                } else {
+                    "no"
+                }
+                .to_owned(),
+            );
             cells.push(case.hard_for.join(", "));
         }
         table.add_row(cells.iter().map(|cell| screen.clean(cell)));
     }
-    let lines: Vec<String> = table.lines().map(|line| line.trim_end().to_owned()).collect();
-    let count = format!("\n{} cases; `stepgauge case NAME` shows one in full\n", cases.len());
+    let lines: Vec<String> = table
+        .lines()
+        .map(|line| line.trim_end().to_owned())
+        .collect();
+    let count = format!(
+        "\n{} cases; `stepgauge case NAME` shows one in full\n",
+        cases.len()
+    );
     coloured(&(lines.join("\n") + "\n" + &count))
 }
 
@@ -52,16 +65,36 @@ pub fn case_text(case: &Case, exact: &Exact, screen: Screen) -> String {
     for parameter in &case.parameters {
         let replaced = case.replaced.contains(&parameter.name);
         let mark = if replaced { "  (replaced)" } else { "" };
-        put(&format!("  {} = {} {}{mark}", parameter.name, plain(parameter.value.to_f64()), parameter.unit));
+        put(&format!(
+            "  {} = {} {}{mark}",
+            parameter.name,
+            plain(parameter.value.to_f64()),
+            parameter.unit
+        ));
     }
     put("");
     let time = &case.time;
-    put(&format!("Window: t from {} to {} {}", plain(time.from.to_f64()), plain(time.to.to_f64()), time.unit));
+    put(&format!(
+        "Window: t from {} to {} {}",
+        plain(time.from.to_f64()),
+        plain(time.to.to_f64()),
+        time.unit
+    ));
     put("");
     put("States");
     for state in &case.states {
-        put(&format!("  {}({}) = {} {}", state.name, plain(time.from.to_f64()), plain(state.start.to_f64()), state.unit));
-        put(&format!("  d {}/dt = {}", state.name, squeezed(&state.rate_text)));
+        put(&format!(
+            "  {}({}) = {} {}",
+            state.name,
+            plain(time.from.to_f64()),
+            plain(state.start.to_f64()),
+            state.unit
+        ));
+        put(&format!(
+            "  d {}/dt = {}",
+            state.name,
+            squeezed(&state.rate_text)
+        ));
         if let Some(exact) = &state.exact_text {
             put(&format!("  {}(t) = {}", state.name, squeezed(exact)));
         }
@@ -71,23 +104,47 @@ pub fn case_text(case: &Case, exact: &Exact, screen: Screen) -> String {
         put("Inputs");
     }
     for input in &case.inputs {
-        put(&format!("  {} in {}: {}, {}", input.name, input.unit, input.shape.name(), numbers(&input.shape)));
+        put(&format!(
+            "  {} in {}: {}, {}",
+            input.name,
+            input.unit,
+            input.shape.name(),
+            numbers(&input.shape)
+        ));
     }
     if !case.outputs.is_empty() {
         put("");
         put("Outputs");
     }
     for output in &case.outputs {
-        put(&format!("  {} in {} = {}", output.name, output.unit, squeezed(&output.value_text)));
+        put(&format!(
+            "  {} in {} = {}",
+            output.name,
+            output.unit,
+            squeezed(&output.value_text)
+        ));
     }
     put("");
     solution(case, exact).iter().for_each(|line| put(line));
     put("");
     put("A simulator writes");
-    let names: Vec<&str> = case.states.iter().map(|state| state.name.as_str()).collect();
+    let names: Vec<&str> = case
+        .states
+        .iter()
+        .map(|state| state.name.as_str())
+        .collect();
     let rows = [
-        format!("  columns t,{} with every row from t = {} to t = {}", names.join(","), plain(time.from.to_f64()), plain(time.to.to_f64())),
-        format!("  limit: {} + {} * |exact| unless a submission or the command line sets one", plain(case.limits.absolute), plain(case.limits.relative)),
+        format!(
+            "  columns t,{} with every row from t = {} to t = {}",
+            names.join(","),
+            plain(time.from.to_f64()),
+            plain(time.to.to_f64())
+        ),
+        format!(
+            "  limit: {} + {} * |exact| unless a submission or the command line sets one",
+            plain(case.limits.absolute),
+            plain(case.limits.relative)
+        ),
     ];
     rows.iter().for_each(|row| put(row));
     if case.field == "kinetics" {
@@ -102,7 +159,11 @@ fn solution(case: &Case, exact: &Exact) -> Vec<String> {
     lines.push(match exact.closed_form_gap() {
         Some(gap) => format!(
             "  closed form as above; it agrees with exp(M t) to {} of each channel's peak",
-            if gap == 0.0 { "within the bounds".to_owned() } else { short(gap) }
+            if gap == 0.0 {
+                "within the bounds".to_owned()
+            } else {
+                short(gap)
+            }
         ),
         None => "  by exp(M t) of states and inputs together; no closed form is stated".to_owned(),
     });
@@ -110,15 +171,26 @@ fn solution(case: &Case, exact: &Exact) -> Vec<String> {
     let first: Vec<String> = jumps.iter().take(6).map(|&jump| plain(jump)).collect();
     match jumps.len() {
         0 => lines.push("  no jumps of an input within the window".to_owned()),
-        count if count > 6 => lines.push(format!("  inputs jump {count} times: at {}, ...", first.join(", "))),
+        count if count > 6 => lines.push(format!(
+            "  inputs jump {count} times: at {}, ...",
+            first.join(", ")
+        )),
         _ => lines.push(format!("  inputs jump at {}", first.join(", "))),
     }
     let scales = approx_time_scales(case);
     if let Some(constant) = scales.time_constant {
-        lines.push(format!("  shortest time constant {} {}", short(constant), case.time.unit));
+        lines.push(format!(
+            "  shortest time constant {} {}",
+            short(constant),
+            case.time.unit
+        ));
     }
     if let Some(period) = scales.period {
-        lines.push(format!("  shortest period {} {}", short(period), case.time.unit));
+        lines.push(format!(
+            "  shortest period {} {}",
+            short(period),
+            case.time.unit
+        ));
     }
     lines
 }
@@ -132,7 +204,12 @@ fn numbers(shape: &Shape) -> String {
             _ => format!("{key} [{}{more}]", shown.join(", ")),
         }
     };
-    shape.numbers().iter().map(show).collect::<Vec<_>>().join(", ")
+    shape
+        .numbers()
+        .iter()
+        .map(show)
+        .collect::<Vec<_>>()
+        .join(", ")
 }
 
 /// Formulas may stand over several lines in the file.

@@ -18,7 +18,10 @@ impl<W: Write> ValueWriter<W> {
     pub fn new(stream: W, channels: &[&str]) -> io::Result<ValueWriter<W>> {
         let mut csv = csv::WriterBuilder::new().from_writer(stream);
         csv.write_record(std::iter::once(&"t").chain(channels))?;
-        Ok(ValueWriter { csv, cells: Vec::new() })
+        Ok(ValueWriter {
+            csv,
+            cells: Vec::new(),
+        })
     }
 
     /// Writes one row.
@@ -28,7 +31,8 @@ impl<W: Write> ValueWriter<W> {
     pub fn row(&mut self, time: f64, values: &[Value]) -> io::Result<()> {
         self.cells.clear();
         self.cells.push(shortest(time));
-        self.cells.extend(values.iter().map(|value| shortest(value.value)));
+        self.cells
+            .extend(values.iter().map(|value| shortest(value.value)));
         self.csv.write_record(&self.cells)?;
         Ok(())
     }

@@ -1,10 +1,10 @@
 //! The JSON report of an audit.
 
+use super::SCOPE;
 use super::wire::{
     AuditReport, ChannelReport, FindingReport, NotAuditedReport, OrderReport, RunReport, SCHEMA,
     SubmissionReport, Summary,
 };
-use super::SCOPE;
 use crate::judge::Verdict;
 use crate::outcome::{Audited, ChannelOutcome, LimitsFrom, Outcome, RunOutcome};
 use crate::submission::{Expect, Role, Setting};

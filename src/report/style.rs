@@ -1,7 +1,9 @@
 //! Looks of the terminal: width, characters, colours, and how a table is drawn.
 
 use anstyle::{AnsiColor, Style};
-use comfy_table::{CellAlignment, ContentArrangement, ContentLineStyle, LineStyle, Table, TableStyle};
+use comfy_table::{
+    CellAlignment, ContentArrangement, ContentLineStyle, LineStyle, Table, TableStyle,
+};
 
 use crate::fault::escaped;
 
@@ -39,7 +41,10 @@ const END: char = '\u{2060}';
 
 /// Text in a tone.
 pub(super) fn toned(tone: Tone, text: &str) -> String {
-    let mark = TONES.iter().find(|(known, _)| *known == tone).map_or(END, |(_, mark)| *mark);
+    let mark = TONES
+        .iter()
+        .find(|(known, _)| *known == tone)
+        .map_or(END, |(_, mark)| *mark);
     format!("{mark}{text}{END}")
 }
 
@@ -106,7 +111,11 @@ impl Screen {
         table.load_style(style);
         table.set_content_arrangement(ContentArrangement::Dynamic);
         table.set_width(self.width);
-        table.set_header(headings.iter().map(|heading| heading.trim_start_matches('>')));
+        table.set_header(
+            headings
+                .iter()
+                .map(|heading| heading.trim_start_matches('>')),
+        );
         for (index, heading) in headings.iter().enumerate() {
             if let Some(column) = table.column_mut(index) {
                 column.set_padding((0, 2));
@@ -153,14 +162,24 @@ mod tests {
 
     #[test]
     fn ascii_screens_get_ascii() {
-        let screen = Screen { width: 80, unicode: false };
+        let screen = Screen {
+            width: 80,
+            unicode: false,
+        };
         assert_eq!(screen.clean("a\u{2026}\u{b5}\u{1b}"), "a...\\u{b5}\\u{1b}");
-        assert!(screen.plain(&toned(Tone::Good, "ok")).starts_with('\u{2061}'));
+        assert!(
+            screen
+                .plain(&toned(Tone::Good, "ok"))
+                .starts_with('\u{2061}')
+        );
     }
 
     #[test]
     fn paragraphs_are_set_in() {
-        let screen = Screen { width: 40, unicode: true };
+        let screen = Screen {
+            width: 40,
+            unicode: true,
+        };
         let text = screen.wrap(&"word ".repeat(12), 2);
         assert!(text.lines().all(|line| line.chars().count() <= 40));
         assert!(text.lines().nth(1).unwrap().starts_with("  word"));

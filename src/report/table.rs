@@ -36,7 +36,15 @@ pub fn audit_text(outcome: &Outcome, screen: Screen) -> String {
 
 fn table(outcome: &Outcome, screen: Screen) -> String {
     let wide = screen.width >= WIDE;
-    let mut headings = vec!["verdict", "submission", "run", "channel", ">error", ">limit used", "order"];
+    let mut headings = vec![
+        "verdict",
+        "submission",
+        "run",
+        "channel",
+        ">error",
+        ">limit used",
+        "order",
+    ];
     if wide {
         headings.splice(2..2, ["case", "producer"]);
         headings.insert(5, ">step");
@@ -45,14 +53,22 @@ fn table(outcome: &Outcome, screen: Screen) -> String {
     }
     let mut table = screen.table(&headings);
     for submission in &outcome.submissions {
-        let runs = submission.runs.iter().filter(|run| run.role == Role::Result);
-        let worst = runs.clone().flat_map(|run| run.channels.iter().map(move |c| (run, c)));
+        let runs = submission
+            .runs
+            .iter()
+            .filter(|run| run.role == Role::Result);
+        let worst = runs
+            .clone()
+            .flat_map(|run| run.channels.iter().map(move |c| (run, c)));
         let worst = worst.max_by(|a, b| badness(a.1).total_cmp(&badness(b.1)));
         let run = worst.map(|(run, _)| run).or_else(|| runs.clone().next());
         let row = row(submission, run, worst.map(|(_, channel)| channel), wide);
         table.add_row(row.into_iter().map(|cell| cell_text(screen, cell)));
     }
-    let lines: Vec<String> = table.lines().map(|line| line.trim_end().to_owned()).collect();
+    let lines: Vec<String> = table
+        .lines()
+        .map(|line| line.trim_end().to_owned())
+        .collect();
     lines.join("\n") + "\n"
 }
 
@@ -77,7 +93,10 @@ fn badness(channel: &ChannelOutcome) -> f64 {
         Verdict::Undecided => 1e300,
         Verdict::Pass => 0.0,
     };
-    rank + channel.errors.as_ref().map_or(1e299, |errors| errors.limit_used.min(1e299))
+    rank + channel
+        .errors
+        .as_ref()
+        .map_or(1e299, |errors| errors.limit_used.min(1e299))
 }
 
 fn row(
@@ -95,7 +114,9 @@ fn row(
         Outside(submission.name.clone()),
         Outside(file),
         Outside(channel.map_or(String::new(), |channel| channel.name.clone())),
-        Outside(errors.map_or(String::new(), |errors| format!("{} {unit}", error_text(errors)))),
+        Outside(errors.map_or(String::new(), |errors| {
+            format!("{} {unit}", error_text(errors))
+        })),
         Own(errors.map_or(String::new(), |errors| used_text(errors.limit_used))),
         Own(order_text(submission)),
     ];
@@ -104,10 +125,15 @@ fn row(
         cells.splice(2..2, [Outside(submission.case.clone()), Outside(producer)]);
         let step = run.map_or(String::new(), step_text);
         cells.insert(5, Own(step));
-        cells.insert(6, Own(run.map_or(String::new(), |run| run.rows.to_string())));
+        cells.insert(
+            6,
+            Own(run.map_or(String::new(), |run| run.rows.to_string())),
+        );
         cells.push(Own(errors.map_or(String::new(), |errors| short(errors.rms))));
         let at = |at: f64| format!("{} {}", plain(at), submission.time_unit);
-        cells.push(Outside(errors.map_or(String::new(), |errors| at(errors.at))));
+        cells.push(Outside(
+            errors.map_or(String::new(), |errors| at(errors.at)),
+        ));
     }
     cells
 }
@@ -131,9 +157,14 @@ fn verdict_text(submission: &Audited) -> String {
     match (submission.in_order(), submission.expect) {
         (true, Expect::Pass) => toned(Tone::Good, word),
         (true, _) => toned(Tone::Quiet, &format!("{word}, as expected")),
-        (false, Expect::Pass) if submission.verdict == Verdict::Undecided => toned(Tone::Open, word),
+        (false, Expect::Pass) if submission.verdict == Verdict::Undecided => {
+            toned(Tone::Open, word)
+        }
         (false, Expect::Pass) => toned(Tone::Bad, &word.to_uppercase()),
-        (false, _) => toned(Tone::Bad, &format!("{}, against expectation", word.to_uppercase())),
+        (false, _) => toned(
+            Tone::Bad,
+            &format!("{}, against expectation", word.to_uppercase()),
+        ),
     }
 }
 
@@ -150,7 +181,11 @@ fn used_text(used: f64) -> String {
 }
 
 fn short_percent(percent: f64) -> String {
-    if percent < 9.95 { format!("{percent:.1}") } else { format!("{percent:.0}") }
+    if percent < 9.95 {
+        format!("{percent:.1}")
+    } else {
+        format!("{percent:.0}")
+    }
 }
 
 fn order_text(submission: &Audited) -> String {
@@ -159,26 +194,47 @@ fn order_text(submission: &Audited) -> String {
     let all_undecided = submission.order_verdict == Some(Verdict::Undecided);
     let counts = |order: &&OrderOutcome| all_undecided || order.verdict != Some(Verdict::Undecided);
     let shown = submission.orders.iter().filter(counts);
-    let shown = shown.max_by(|a, b| (a.verdict, -low(a)).partial_cmp(&(b.verdict, -low(b))).unwrap_or(std::cmp::Ordering::Equal));
-    let Some(order) = shown else { return String::new() };
-    let claim = order.claimed.map_or(String::new(), |claimed| format!(" of {}", plain(claimed)));
+    let shown = shown.max_by(|a, b| {
+        (a.verdict, -low(a))
+            .partial_cmp(&(b.verdict, -low(b)))
+            .unwrap_or(std::cmp::Ordering::Equal)
+    });
+    let Some(order) = shown else {
+        return String::new();
+    };
+    let claim = order
+        .claimed
+        .map_or(String::new(), |claimed| format!(" of {}", plain(claimed)));
     match order.observed {
         Some((value, ..)) => format!("{value:.2}{claim}"),
-        None if order.note.as_deref().is_some_and(|note| note.starts_with("exact")) => "exact".to_owned(),
+        None if order
+            .note
+            .as_deref()
+            .is_some_and(|note| note.starts_with("exact")) =>
+        {
+            "exact".to_owned()
+        }
         None => format!("?{claim}"),
     }
 }
 
 fn troubles(outcome: &Outcome, screen: Screen) -> String {
     let mut lines = String::new();
-    for submission in outcome.submissions.iter().filter(|submission| !submission.in_order()) {
+    for submission in outcome
+        .submissions
+        .iter()
+        .filter(|submission| !submission.in_order())
+    {
         if submission.reasons.is_empty() {
             let expected = match submission.expect {
                 Expect::Fail => "fail",
                 Expect::Undecided => "stay undecided",
                 Expect::Pass => "pass",
             };
-            let text = format!("was expected to {expected}, but is {}", submission.verdict.word());
+            let text = format!(
+                "was expected to {expected}, but is {}",
+                submission.verdict.word()
+            );
             lines += &line(screen, &submission.name, &text);
         }
         for reason in &submission.reasons {
@@ -187,7 +243,10 @@ fn troubles(outcome: &Outcome, screen: Screen) -> String {
     }
     for missing in &outcome.not_audited {
         for fault in &missing.faults {
-            let text = format!("not audited: {}", fault.to_string().replace("\n  help:", "; help:"));
+            let text = format!(
+                "not audited: {}",
+                fault.to_string().replace("\n  help:", "; help:")
+            );
             lines += &line(screen, &missing.name, &text);
         }
     }
@@ -210,9 +269,15 @@ fn notes(outcome: &Outcome, screen: Screen) -> String {
             lines += &line(screen, &submission.name, note);
         }
         if !submission.parameters.is_empty() {
-            let list: Vec<String> =
-                submission.parameters.iter().map(|(name, value)| format!("{name} = {}", plain(*value))).collect();
-            let text = format!("the submission has parameters of its own: {}", list.join(", "));
+            let list: Vec<String> = submission
+                .parameters
+                .iter()
+                .map(|(name, value)| format!("{name} = {}", plain(*value)))
+                .collect();
+            let text = format!(
+                "the submission has parameters of its own: {}",
+                list.join(", ")
+            );
             lines += &line(screen, &submission.name, &text);
         }
         if submission.limits_from == LimitsFrom::Submission {
@@ -223,14 +288,19 @@ fn notes(outcome: &Outcome, screen: Screen) -> String {
 }
 
 fn line(screen: Screen, name: &str, text: &str) -> String {
-    format!("  {}\n", screen.wrap(&screen.clean(&format!("{name}: {text}")), 6))
+    format!(
+        "  {}\n",
+        screen.wrap(&screen.clean(&format!("{name}: {text}")), 6)
+    )
 }
 
 fn summary(outcome: &Outcome) -> String {
     let mut parts = Vec::new();
-    for (verdict, word) in
-        [(Verdict::Pass, "pass"), (Verdict::Fail, "fail"), (Verdict::Undecided, "undecided")]
-    {
+    for (verdict, word) in [
+        (Verdict::Pass, "pass"),
+        (Verdict::Fail, "fail"),
+        (Verdict::Undecided, "undecided"),
+    ] {
         match outcome.count(verdict) {
             0 => {}
             count => parts.push(format!("{count} {word}")),
@@ -249,6 +319,13 @@ fn summary(outcome: &Outcome) -> String {
 }
 
 fn scope(outcome: &Outcome) -> String {
-    let drugs = outcome.submissions.iter().any(|s| s.case.starts_with("kinetics/"));
-    if drugs { format!("{SCOPE} {NOT_FOR_DOSING}") } else { SCOPE.to_owned() }
+    let drugs = outcome
+        .submissions
+        .iter()
+        .any(|s| s.case.starts_with("kinetics/"));
+    if drugs {
+        format!("{SCOPE} {NOT_FOR_DOSING}")
+    } else {
+        SCOPE.to_owned()
+    }
 }

@@ -11,9 +11,8 @@ use crate::fault::{Fault, Result};
 /// # Errors
 /// A folder that is not there or cannot be written to, a full disk.
 pub fn write_atomically(path: &Path, bytes: &[u8]) -> Result<()> {
-    let complain = |error: std::io::Error| {
-        Fault::new(format!("cannot be written: {error}")).in_file(path)
-    };
+    let complain =
+        |error: std::io::Error| Fault::new(format!("cannot be written: {error}")).in_file(path);
     let folder = match path.parent() {
         Some(folder) if !folder.as_os_str().is_empty() => folder,
         _ => Path::new("."),
@@ -34,7 +33,9 @@ pub fn write_atomically(path: &Path, bytes: &[u8]) -> Result<()> {
         use std::os::unix::fs::PermissionsExt;
         let mode = std::fs::metadata(path).map_or(0o644, |old| old.permissions().mode() & 0o777);
         let permissions = std::fs::Permissions::from_mode(mode);
-        file.as_file().set_permissions(permissions).map_err(complain)?;
+        file.as_file()
+            .set_permissions(permissions)
+            .map_err(complain)?;
     }
     file.persist(path).map_err(|error| complain(error.error))?;
     Ok(())

@@ -40,7 +40,10 @@ impl Matched {
     /// The columns for the reader.
     pub fn selection(&self) -> Selection {
         let channels = self.channels.iter().map(|channel| channel.column).collect();
-        Selection { time: self.time, channels }
+        Selection {
+            time: self.time,
+            channels,
+        }
     }
 }
 
@@ -61,12 +64,20 @@ impl<'a> Header<'a> {
             {
                 let (name, unit) = (bare[..at].trim(), inner[at + 1..].trim());
                 if !name.is_empty() {
-                    return Header { full, name, unit: Some(unit) };
+                    return Header {
+                        full,
+                        name,
+                        unit: Some(unit),
+                    };
                 }
             }
         }
         let below = below.map(|unit| unit.trim_matches(['[', ']', '(', ')', ' ']));
-        Header { full, name: full, unit: below.filter(|unit| !unit.is_empty()) }
+        Header {
+            full,
+            name: full,
+            unit: below.filter(|unit| !unit.is_empty()),
+        }
     }
 }
 
@@ -94,7 +105,11 @@ pub fn match_columns(
     let channels = case.channels();
     for name in stated.keys() {
         if name != "time" && channels.iter().all(|channel| channel.name != name) {
-            let fault = Fault::new(format!("case `{}` has no channel {}", case.name, quoted(name)));
+            let fault = Fault::new(format!(
+                "case `{}` has no channel {}",
+                case.name,
+                quoted(name)
+            ));
             let known = channels.iter().map(|c| c.name).chain(["time"]);
             let list: Vec<&str> = channels.iter().map(|c| c.name).collect();
             return Err(match nearest(name, known) {
@@ -105,29 +120,46 @@ pub fn match_columns(
     }
     let headers = layout.names.as_ref().map(|names| {
         let below = |index: usize| layout.units.as_ref().map(|units| units[index].as_str());
-        let headers = names.iter().enumerate().map(|(i, name)| Header::new(name, below(i)));
+        let headers = names
+            .iter()
+            .enumerate()
+            .map(|(i, name)| Header::new(name, below(i)));
         headers.collect::<Vec<_>>()
     });
-    let mut matcher = Matcher { headers, columns: layout.columns, stated, notes: Vec::new() };
+    let mut matcher = Matcher {
+        headers,
+        columns: layout.columns,
+        stated,
+        notes: Vec::new(),
+    };
     let (time, time_conversion) = matcher.time(case)?;
     let any_stated = matcher.any_channel_stated();
     let mut found = Vec::new();
     let mut missing = Vec::new();
     for (index, channel) in channels.iter().enumerate() {
         match matcher.channel(channel, channels.len(), time)? {
-            Ok((column, conversion)) => found.push(Column { channel: index, column, conversion }),
+            Ok((column, conversion)) => found.push(Column {
+                channel: index,
+                column,
+                conversion,
+            }),
             Err(reason) if stated.contains_key(channel.name) || channel.is_state && !any_stated => {
                 missing.push((channel.name.to_owned(), reason));
             }
             Err(_) if channel.is_state => {
-                let note = format!("state `{}` is not in the file and not compared", channel.name);
+                let note = format!(
+                    "state `{}` is not in the file and not compared",
+                    channel.name
+                );
                 matcher.notes.push(note);
             }
             Err(_) => {}
         }
     }
     for (place, column) in found.iter().enumerate() {
-        let twice = found[..place].iter().find(|other| other.column == column.column);
+        let twice = found[..place]
+            .iter()
+            .find(|other| other.column == column.column);
         let name = |column: &Column| channels[column.channel].name;
         if let Some(other) = twice {
             let text = format!(
@@ -139,12 +171,22 @@ pub fn match_columns(
             return Err(Fault::new(text).help("correct `[columns]` in submission.toml"));
         }
         if column.column == time {
-            let text = format!("column {} is given to both time and `{}`", time + 1, name(column));
+            let text = format!(
+                "column {} is given to both time and `{}`",
+                time + 1,
+                name(column)
+            );
             return Err(Fault::new(text).help("correct `[columns]` in submission.toml"));
         }
     }
     let notes = matcher.notes;
-    Ok(Matched { time, time_conversion, channels: found, missing, notes })
+    Ok(Matched {
+        time,
+        time_conversion,
+        channels: found,
+        missing,
+        notes,
+    })
 }
 
 impl Matcher<'_> {
@@ -171,10 +213,14 @@ impl Matcher<'_> {
     }
 
     fn named_time(&self) -> Result<usize> {
-        let Some(headers) = &self.headers else { return Ok(0) };
+        let Some(headers) = &self.headers else {
+            return Ok(0);
+        };
         // Not `T`, which is a temperature or a period as often as a time.
         let is_time = |name: &str| name == "t" || name.eq_ignore_ascii_case("time");
-        let found: Vec<usize> = (0..headers.len()).filter(|&i| is_time(headers[i].name)).collect();
+        let found: Vec<usize> = (0..headers.len())
+            .filter(|&i| is_time(headers[i].name))
+            .collect();
         match found[..] {
             [column] => Ok(column),
             [] => Err(Fault::new(format!("no column of time stamps: the header has {}", self.list()))
@@ -194,13 +240,22 @@ impl Matcher<'_> {
             ColumnName::Name(name) => name.trim(),
         };
         let Some(headers) = &self.headers else {
-            return Ok(Err(format!("{} is named, but the file has no header", quoted(name))));
+            return Ok(Err(format!(
+                "{} is named, but the file has no header",
+                quoted(name)
+            )));
         };
         let exact = |header: &Header| header.full == name;
         self.unique(name, headers, &[&exact, &|header| header.name == name])
-            .map(|found| found.ok_or_else(|| {
-                format!("there is no column {}, the header has {}", quoted(name), self.list())
-            }))
+            .map(|found| {
+                found.ok_or_else(|| {
+                    format!(
+                        "there is no column {}, the header has {}",
+                        quoted(name),
+                        self.list()
+                    )
+                })
+            })
     }
 
     /// The only column that one of the tests, taken in order, holds for.
@@ -220,8 +275,13 @@ impl Matcher<'_> {
                         .iter()
                         .map(|&i| format!("{} (column {})", quoted(headers[i].full), i + 1))
                         .collect();
-                    let text = format!("{} fits several columns: {}", quoted(name), candidates.join(", "));
-                    let help = format!("write `{name} = NUMBER` under `[columns]` in submission.toml");
+                    let text = format!(
+                        "{} fits several columns: {}",
+                        quoted(name),
+                        candidates.join(", ")
+                    );
+                    let help =
+                        format!("write `{name} = NUMBER` under `[columns]` in submission.toml");
                     return Err(Fault::new(text).help(help));
                 }
             }
@@ -275,7 +335,10 @@ impl Matcher<'_> {
         let any_case = |header: &Header| header.name.eq_ignore_ascii_case(name);
         let found = self.unique(name, headers, &[&same, &bare, &any_case])?;
         Ok(found.ok_or_else(|| {
-            format!("there is no column `{name}`, the header has {}", self.list())
+            format!(
+                "there is no column `{name}`, the header has {}",
+                self.list()
+            )
         }))
     }
 
@@ -317,7 +380,11 @@ impl Matcher<'_> {
     }
 
     fn list(&self) -> String {
-        let headers = self.headers.iter().flatten().map(|header| quoted(header.full));
+        let headers = self
+            .headers
+            .iter()
+            .flatten()
+            .map(|header| quoted(header.full));
         let mut names: Vec<String> = headers.take(12).collect();
         if self.columns > 12 {
             names.push("...".to_owned());
@@ -325,7 +392,6 @@ impl Matcher<'_> {
         names.join(", ")
     }
 }
-
 
 #[cfg(test)]
 mod tests;

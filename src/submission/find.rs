@@ -41,7 +41,9 @@ pub fn discover(path: &Path, prefix: bool) -> std::result::Result<Vec<Place>, Ve
             }
             Err(error) => {
                 let place = error.path().unwrap_or(path).to_owned();
-                let missing = error.io_error().is_some_and(|e| e.kind() == ErrorKind::NotFound);
+                let missing = error
+                    .io_error()
+                    .is_some_and(|e| e.kind() == ErrorKind::NotFound);
                 let text = if missing {
                     "there is no such file or folder".to_owned()
                 } else {
@@ -55,19 +57,30 @@ pub fn discover(path: &Path, prefix: bool) -> std::result::Result<Vec<Place>, Ve
         let fault = Fault::new("no `submission.toml` is found here or below").in_file(path);
         faults.push(fault.help("`--case NAME` audits single trajectory files without one"));
     }
-    if faults.is_empty() { Ok(places) } else { Err(faults) }
+    if faults.is_empty() {
+        Ok(places)
+    } else {
+        Err(faults)
+    }
 }
 
 fn place(root: &Path, file: &Path, prefix: bool) -> Place {
     let folder = file.parent().unwrap_or(Path::new("")).to_owned();
-    let relative = folder.strip_prefix(root).ok().filter(|rest| !rest.as_os_str().is_empty());
+    let relative = folder
+        .strip_prefix(root)
+        .ok()
+        .filter(|rest| !rest.as_os_str().is_empty());
     let name = match relative {
         Some(rest) if prefix => root.join(rest),
         Some(rest) => rest.to_owned(),
         None => named(&folder),
     };
     let name = name.to_string_lossy().replace('\\', "/");
-    Place { name, folder, file: file.to_owned() }
+    Place {
+        name,
+        folder,
+        file: file.to_owned(),
+    }
 }
 
 /// The name of a folder, also where it is given as `.`.
@@ -85,7 +98,10 @@ pub fn confined(folder: &Path, file: &str) -> Result<PathBuf> {
     let relative = Path::new(file);
     let plain = |part: Component| matches!(part, Component::Normal(_) | Component::CurDir);
     if file.is_empty() || file.contains('\0') || !relative.components().all(plain) {
-        let text = format!("file {} does not lie in the submission's own folder", quoted(file));
+        let text = format!(
+            "file {} does not lie in the submission's own folder",
+            quoted(file)
+        );
         return Err(Fault::new(text).help("write a path within the folder of submission.toml"));
     }
     let path = folder.join(relative);
@@ -93,15 +109,25 @@ pub fn confined(folder: &Path, file: &str) -> Result<PathBuf> {
         ErrorKind::NotFound => Fault::new(format!("there is no file {}", quoted(file))),
         _ => Fault::new(format!("file {} cannot be read: {error}", quoted(file))),
     };
-    let true_folder = if folder.as_os_str().is_empty() { Path::new(".") } else { folder };
+    let true_folder = if folder.as_os_str().is_empty() {
+        Path::new(".")
+    } else {
+        folder
+    };
     let true_folder = true_folder.canonicalize().map_err(missing)?;
     let true_path = path.canonicalize().map_err(missing)?;
     if !true_path.starts_with(&true_folder) {
-        let text = format!("file {} is a link that leads out of the folder", quoted(file));
+        let text = format!(
+            "file {} is a link that leads out of the folder",
+            quoted(file)
+        );
         return Err(Fault::new(text).help("put the file itself into the folder"));
     }
     if !true_path.is_file() {
-        return Err(Fault::new(format!("file {} is not a plain file", quoted(file))));
+        return Err(Fault::new(format!(
+            "file {} is not a plain file",
+            quoted(file)
+        )));
     }
     Ok(path)
 }

@@ -129,7 +129,10 @@ impl FromTable for LimitEntry {
 impl FromTable for ColumnEntry {
     fn from_table<'de, D: Deserializer<'de>>(table: D) -> Result<Self, D::Error> {
         let ColumnTable { column, unit } = ColumnTable::deserialize(table)?;
-        Ok(ColumnEntry(ColumnStated { column: column.map(|key| key.0), unit }))
+        Ok(ColumnEntry(ColumnStated {
+            column: column.map(|key| key.0),
+            unit,
+        }))
     }
 }
 
@@ -155,7 +158,10 @@ impl<'de> Deserialize<'de> for LimitEntry {
 impl<'de> Deserialize<'de> for ColumnEntry {
     fn deserialize<D: Deserializer<'de>>(deserializer: D) -> Result<Self, D::Error> {
         fn short(column: ColumnName) -> ColumnEntry {
-            ColumnEntry(ColumnStated { column: Some(column), unit: None })
+            ColumnEntry(ColumnStated {
+                column: Some(column),
+                unit: None,
+            })
         }
         let number = |value| column_number(value).map(short);
         let name = |text| Some(short(ColumnName::Name(text)));
@@ -189,7 +195,11 @@ impl Submission {
             let offset = error.span().map_or(0, |span| span.start);
             vec![Fault::new(error.message().trim_end()).at_offset(text, offset)]
         })?;
-        let mut reader = Reader { text, folder, faults: Vec::new() };
+        let mut reader = Reader {
+            text,
+            folder,
+            faults: Vec::new(),
+        };
         let submission = reader.read(file);
         let mut faults = reader.faults;
         if faults.is_empty() {
@@ -202,14 +212,19 @@ impl Submission {
 
 impl Reader<'_> {
     fn complain(&mut self, text: impl Into<String>, offset: usize) {
-        self.faults.push(Fault::new(text).at_offset(self.text, offset));
+        self.faults
+            .push(Fault::new(text).at_offset(self.text, offset));
     }
 
     fn read(&mut self, file: SubmissionFile) -> Submission {
         let expect = self.one_of(
             file.expect,
             "expect",
-            &[("pass", Expect::Pass), ("fail", Expect::Fail), ("undecided", Expect::Undecided)],
+            &[
+                ("pass", Expect::Pass),
+                ("fail", Expect::Fail),
+                ("undecided", Expect::Undecided),
+            ],
         );
         let mut parameters = BTreeMap::new();
         for (name, value) in file.parameters {
@@ -227,18 +242,29 @@ impl Reader<'_> {
             Claims { method, order }
         });
         let limits = self.limits(file.limits);
-        let columns = file.columns.into_iter().map(|(name, entry)| (name.into_inner(), entry.0));
+        let columns = file
+            .columns
+            .into_iter()
+            .map(|(name, entry)| (name.into_inner(), entry.0));
         let columns = columns.collect();
-        let layout = file.layout.map_or_else(Stated::default, |layout| self.layout(layout));
+        let layout = file
+            .layout
+            .map_or_else(Stated::default, |layout| self.layout(layout));
         if file.runs.is_empty() {
             let fault = Fault::new("the submission has no runs");
-            self.faults.push(fault.help("add `[[runs]]` with `file = \"...\"`"));
+            self.faults
+                .push(fault.help("add `[[runs]]` with `file = \"...\"`"));
         }
         if file.runs.len() > MOST_RUNS {
-            self.faults.push(Fault::new(format!("at most {MOST_RUNS} runs are read")));
+            self.faults
+                .push(Fault::new(format!("at most {MOST_RUNS} runs are read")));
             return Submission::default();
         }
-        let runs = file.runs.into_iter().filter_map(|run| self.run(run)).collect();
+        let runs = file
+            .runs
+            .into_iter()
+            .filter_map(|run| self.run(run))
+            .collect();
         Submission {
             case: file.case,
             producer: file.producer,
@@ -262,7 +288,10 @@ impl Reader<'_> {
         let word = word?;
         let found = known.iter().find(|(name, _)| name == word.get_ref());
         if found.is_none() {
-            let names: Vec<String> = known.iter().map(|(name, _)| format!("\"{name}\"")).collect();
+            let names: Vec<String> = known
+                .iter()
+                .map(|(name, _)| format!("\"{name}\""))
+                .collect();
             let text = format!(
                 "`{key}` is {}, expected {}",
                 quoted(word.get_ref()),
@@ -302,7 +331,8 @@ impl Reader<'_> {
                     let fault = Fault::new(format!("{} is no limit", quoted(other)));
                     let help = "a limit is `absolute`, `relative`, `relative_to`, `order_slack`, \
                                 or a table for one channel";
-                    self.faults.push(fault.help(help).at_offset(self.text, name.span().start));
+                    self.faults
+                        .push(fault.help(help).at_offset(self.text, name.span().start));
                 }
             }
         }
@@ -321,7 +351,10 @@ impl Reader<'_> {
             "peak" => Some(true),
             "value" => Some(false),
             _ => {
-                let text = format!("`relative_to` is {}, expected \"peak\" or \"value\"", quoted(word));
+                let text = format!(
+                    "`relative_to` is {}, expected \"peak\" or \"value\"",
+                    quoted(word)
+                );
                 self.complain(text, offset);
                 None
             }
@@ -334,7 +367,9 @@ impl Reader<'_> {
         let separator = self.one_of(entry.separator, "separator", &separators);
         let decimal_comma = self.one_of(entry.decimal, "decimal", &[(".", false), (",", true)]);
         if separator == Some(Comma) && decimal_comma == Some(true) {
-            self.faults.push(Fault::new("a comma cannot be both separator and decimal sign"));
+            self.faults.push(Fault::new(
+                "a comma cannot be both separator and decimal sign",
+            ));
         }
         let comment = entry.comment.map(|comment| {
             if comment.get_ref().is_empty() {
@@ -348,7 +383,13 @@ impl Reader<'_> {
             }
             digits.into_inner()
         });
-        Stated { separator, decimal_comma, comment, skip_lines: entry.skip_lines, digits }
+        Stated {
+            separator,
+            decimal_comma,
+            comment,
+            skip_lines: entry.skip_lines,
+            digits,
+        }
     }
 
     fn run(&mut self, entry: Spanned<RunEntry>) -> Option<Run> {
@@ -366,15 +407,24 @@ impl Reader<'_> {
         if let Setting::Step(value) | Setting::Tolerance(value) = setting
             && !(value > 0.0 && value.is_finite())
         {
-            self.complain("`step` and `tolerance` must be finite and above zero", offset);
+            self.complain(
+                "`step` and `tolerance` must be finite and above zero",
+                offset,
+            );
         }
         let roles = [("result", Role::Result), ("rung", Role::Rung)];
         let role = self.one_of(entry.role, "role", &roles);
         let file = entry.file.get_ref().clone();
         match confined(self.folder, &file) {
-            Ok(path) => Some(Run { file, path, setting, role }),
+            Ok(path) => Some(Run {
+                file,
+                path,
+                setting,
+                role,
+            }),
             Err(fault) => {
-                self.faults.push(fault.at_offset(self.text, entry.file.span().start));
+                self.faults
+                    .push(fault.at_offset(self.text, entry.file.span().start));
                 None
             }
         }

@@ -74,8 +74,22 @@ const TABLE: [Named; 39] = [
 
 /// Prefixes with the power of ten.
 const PREFIXES: [(&str, i32); 17] = [
-    ("T", 12), ("G", 9), ("M", 6), ("k", 3), ("h", 2), ("da", 1), ("d", -1), ("c", -2), ("m", -3),
-    ("u", -6), ("\u{b5}", -6), ("\u{3bc}", -6), ("n", -9), ("p", -12), ("f", -15), ("a", -18),
+    ("T", 12),
+    ("G", 9),
+    ("M", 6),
+    ("k", 3),
+    ("h", 2),
+    ("da", 1),
+    ("d", -1),
+    ("c", -2),
+    ("m", -3),
+    ("u", -6),
+    ("\u{b5}", -6),
+    ("\u{3bc}", -6),
+    ("n", -9),
+    ("p", -12),
+    ("f", -15),
+    ("a", -18),
     ("P", 15),
 ];
 
@@ -112,16 +126,26 @@ pub(super) fn is_known(text: &str) -> bool {
 }
 
 fn named(text: &str) -> Option<Unit> {
-    let plain = |dimension, factor| Unit { dimension, factor, shift: Double::ZERO };
+    let plain = |dimension, factor| Unit {
+        dimension,
+        factor,
+        shift: Double::ZERO,
+    };
     let number = Double::from;
     match text {
         "degC" | "\u{b0}C" | "Celsius" => {
             let shift = number(27_315.0) / number(100.0);
-            return Some(Unit { shift, ..plain(KELVIN, Double::ONE) });
+            return Some(Unit {
+                shift,
+                ..plain(KELVIN, Double::ONE)
+            });
         }
         "degF" | "\u{b0}F" => {
             let factor = number(5.0) / number(9.0);
-            return Some(Unit { shift: number(45_967.0) / number(100.0), ..plain(KELVIN, factor) });
+            return Some(Unit {
+                shift: number(45_967.0) / number(100.0),
+                ..plain(KELVIN, factor)
+            });
         }
         "deg" | "\u{b0}" => return Some(plain(ANGLE, Double::PI / number(180.0))),
         "rev" => return Some(plain(ANGLE, Double::PI.scale(2.0))),
@@ -139,7 +163,10 @@ fn named(text: &str) -> Option<Unit> {
     PREFIXES.iter().find_map(|(prefix, power)| {
         let found = find(text.strip_prefix(prefix)?).filter(|unit| unit.4)?;
         let base = unit(found);
-        Some(Unit { factor: base.factor * number(10.0).powi(*power), ..base })
+        Some(Unit {
+            factor: base.factor * number(10.0).powi(*power),
+            ..base
+        })
     })
 }
 
@@ -163,10 +190,12 @@ fn parse(text: &str) -> Option<Unit> {
             rest = after;
             continue;
         }
-        let end = rest.find(|c| "*/ ()\u{b7}\u{22c5}".contains(c)).unwrap_or(rest.len());
+        let end = rest
+            .find(|c| "*/ ()\u{b7}\u{22c5}".contains(c))
+            .unwrap_or(rest.len());
         let (unit, power) = factor(&rest[..end])?;
         let power = power.checked_mul(sign)?;
-        product.factor = product.factor * unit.factor.powi(i32::from(power));
+        product.factor *= unit.factor.powi(i32::from(power));
         for (sum, one) in product.dimension.iter_mut().zip(unit.dimension) {
             *sum = sum.checked_add(one.checked_mul(power)?)?;
         }
@@ -202,7 +231,13 @@ fn parse(text: &str) -> Option<Unit> {
 /// One unit with its power: `m`, `m^2`, `m2`, `s^-1`, `m\u{b2}`.
 fn factor(text: &str) -> Option<(Unit, i8)> {
     if let Some(unit) = named(text) {
-        return Some((Unit { shift: Double::ZERO, ..unit }, 1));
+        return Some((
+            Unit {
+                shift: Double::ZERO,
+                ..unit
+            },
+            1,
+        ));
     }
     let (name, power) = match text.split_once('^') {
         Some((name, power)) => (name, power.parse().ok()?),
@@ -214,7 +249,13 @@ fn factor(text: &str) -> Option<(Unit, i8)> {
         }
     };
     let unit = named(name)?;
-    (-8..=8).contains(&power).then_some((Unit { shift: Double::ZERO, ..unit }, power))
+    (-8..=8).contains(&power).then_some((
+        Unit {
+            shift: Double::ZERO,
+            ..unit
+        },
+        power,
+    ))
 }
 
 #[cfg(test)]
@@ -232,7 +273,11 @@ mod tests {
     #[test]
     fn names_are_unique() {
         for (i, unit) in TABLE.iter().enumerate() {
-            assert!(TABLE[..i].iter().all(|other| other.0 != unit.0), "{}", unit.0);
+            assert!(
+                TABLE[..i].iter().all(|other| other.0 != unit.0),
+                "{}",
+                unit.0
+            );
         }
     }
 
@@ -272,10 +317,22 @@ mod tests {
     #[test]
     fn what_does_not_convert_is_refused() {
         for (from, to) in [("V", "A"), ("K", "s"), ("Hz", "rad/s"), ("m", "m^2")] {
-            assert!(convert(from, to).unwrap_err().text.contains("does not convert"), "{from} {to}");
+            assert!(
+                convert(from, to)
+                    .unwrap_err()
+                    .text
+                    .contains("does not convert"),
+                "{from} {to}"
+            );
         }
         for unit in ["smoot", "m^", "m/(s", "m)", "", "kmin", "m^99", "(", "/s*"] {
-            assert!(convert(unit, "m").unwrap_err().text.contains("is not known"), "{unit}");
+            assert!(
+                convert(unit, "m")
+                    .unwrap_err()
+                    .text
+                    .contains("is not known"),
+                "{unit}"
+            );
         }
     }
 }

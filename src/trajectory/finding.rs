@@ -60,12 +60,22 @@ const KEPT_OF_A_KIND: u64 = 3;
 impl Findings {
     /// Takes note of a fault that the file cannot pass with.
     pub fn fatal(&mut self, kind: Kind, line: impl Into<Option<u64>>, text: impl Into<String>) {
-        self.add(Finding { kind, line: line.into(), text: text.into(), fatal: true });
+        self.add(Finding {
+            kind,
+            line: line.into(),
+            text: text.into(),
+            fatal: true,
+        });
     }
 
     /// Takes note of a fault that does not decide.
     pub fn note(&mut self, kind: Kind, line: impl Into<Option<u64>>, text: impl Into<String>) {
-        self.add(Finding { kind, line: line.into(), text: text.into(), fatal: false });
+        self.add(Finding {
+            kind,
+            line: line.into(),
+            text: text.into(),
+            fatal: false,
+        });
     }
 
     fn add(&mut self, finding: Finding) {

@@ -75,7 +75,11 @@ impl GridFinder {
     /// One unit in the last place that the stamp was printed to, as far as it shows.
     fn unit(&mut self, time: f64, printed: Printed) -> f64 {
         let own = |decimals: i32| 10f64.powi(-decimals);
-        let exponent = if printed.scientific && time != 0.0 { time.abs().log10().floor() } else { 0.0 };
+        let exponent = if printed.scientific && time != 0.0 {
+            time.abs().log10().floor()
+        } else {
+            0.0
+        };
         let decimals = i32::from(printed.decimals) - exponent as i32;
         if !printed.scientific {
             self.most_decimals = self.most_decimals.max(printed.decimals);
@@ -140,16 +144,29 @@ impl GridFinder {
             let rounded = !self.overflowed && self.clusters.iter().all(near);
             // Steps that differ by no more than the rounding of their stamps.
             return if rounded {
-                Grid::Uniform { spacing: mean, exact: None, holes: true }
+                Grid::Uniform {
+                    spacing: mean,
+                    exact: None,
+                    holes: true,
+                }
             } else {
                 Grid::Varied
             };
         }
         let exact = most.exact.filter(|_| most.identical);
         let spacing = exact.map_or(most.sum / most.count as f64, |e| e.to_double().to_f64());
-        let larger = self.clusters.iter().filter(|cluster| cluster.spacing > 1.5 * spacing);
-        let holes = larger.map(|cluster| cluster.longest_run).all(|run| run < PHASE);
-        Grid::Uniform { spacing, exact, holes }
+        let larger = self
+            .clusters
+            .iter()
+            .filter(|cluster| cluster.spacing > 1.5 * spacing);
+        let holes = larger
+            .map(|cluster| cluster.longest_run)
+            .all(|run| run < PHASE);
+        Grid::Uniform {
+            spacing,
+            exact,
+            holes,
+        }
     }
 }
 
@@ -183,13 +200,23 @@ mod tests {
     fn exact_decimal_grids() {
         let shortest = |k: i32| format!("{}", f64::from(k) / 10.0);
         assert_eq!(spacing(grid((0..50).map(shortest))), (0.1, true));
-        assert_eq!(spacing(grid((0..50).map(|k| format!("{:.3}", 0.25 * f64::from(k))))), (0.25, true));
-        assert_eq!(spacing(grid((0..50).map(|k| format!("{:.4e}", f64::from(k) * 20.0)))), (20.0, true));
+        assert_eq!(
+            spacing(grid((0..50).map(|k| format!("{:.3}", 0.25 * f64::from(k))))),
+            (0.25, true)
+        );
+        assert_eq!(
+            spacing(grid(
+                (0..50).map(|k| format!("{:.4e}", f64::from(k) * 20.0))
+            )),
+            (20.0, true)
+        );
     }
 
     #[test]
     fn rounded_and_summed_stamps_are_uniform_but_not_exact() {
-        let (found, exact) = spacing(grid((0..300).map(|k| format!("{:.2}", f64::from(k) / 75.0))));
+        let (found, exact) = spacing(grid(
+            (0..300).map(|k| format!("{:.2}", f64::from(k) / 75.0)),
+        ));
         assert!((found - 1.0 / 75.0).abs() < 1e-4 && !exact, "{found}");
         let mut time = 0.0;
         let summed = (0..1000).map(|_| {
@@ -204,9 +231,13 @@ mod tests {
 
     #[test]
     fn holes_are_told_from_coarser_phases_and_varied_steps() {
-        let hole = (0..100).filter(|k| ![40, 41, 70].contains(k)).map(|k| k.to_string());
+        let hole = (0..100)
+            .filter(|k| ![40, 41, 70].contains(k))
+            .map(|k| k.to_string());
         assert!(matches!(grid(hole), Grid::Uniform { holes: true, .. }));
-        let phases = (0..400).chain((400..=1000).step_by(10)).map(|k| k.to_string());
+        let phases = (0..400)
+            .chain((400..=1000).step_by(10))
+            .map(|k| k.to_string());
         assert!(matches!(grid(phases), Grid::Uniform { holes: false, .. }));
         let varied = (0..100).map(|k| format!("{}", f64::from(k).powf(1.5)));
         assert_eq!(grid(varied), Grid::Varied);

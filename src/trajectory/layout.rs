@@ -27,7 +27,12 @@ impl Separator {
 
     /// From the word in a submission.
     pub fn find(word: &str) -> Option<Separator> {
-        let all = [Separator::Comma, Separator::Semicolon, Separator::Tab, Separator::Blank];
+        let all = [
+            Separator::Comma,
+            Separator::Semicolon,
+            Separator::Tab,
+            Separator::Blank,
+        ];
         all.into_iter().find(|separator| separator.word() == word)
     }
 }
@@ -81,7 +86,12 @@ impl Layout {
             Some(comment) => vec![comment.clone()],
             None => USUAL_COMMENTS.map(str::to_owned).to_vec(),
         };
-        let separators = [Separator::Tab, Separator::Semicolon, Separator::Comma, Separator::Blank];
+        let separators = [
+            Separator::Tab,
+            Separator::Semicolon,
+            Separator::Comma,
+            Separator::Blank,
+        ];
         let mut best: Option<((bool, usize), Layout)> = None;
         for separator in separators {
             for decimal_comma in [false, true] {
@@ -100,7 +110,9 @@ impl Layout {
                     names: None,
                     units: None,
                 };
-                let Some((fits, layout)) = layout.try_on(lines, stated.skip_lines) else { continue };
+                let Some((fits, layout)) = layout.try_on(lines, stated.skip_lines) else {
+                    continue;
+                };
                 // A list of single numbers is the last resort: it also fits `0,5`.
                 let rank = (layout.columns > 1, fits);
                 if best.as_ref().is_none_or(|(most, _)| rank > *most) {
@@ -112,7 +124,10 @@ impl Layout {
             return Layout::complain(lines, &comments);
         };
         if layout.columns > MOST_COLUMNS {
-            let text = format!("{} columns, at most {MOST_COLUMNS} are read", layout.columns);
+            let text = format!(
+                "{} columns, at most {MOST_COLUMNS} are read",
+                layout.columns
+            );
             return Err(Fault::new(text).at(layout.first_row, 1));
         }
         layout.find_names(lines);
@@ -124,7 +139,11 @@ impl Layout {
         let says_something = |line: &&[u8]| {
             !line.trim_ascii().is_empty() && !is_comment(line.trim_ascii(), comments)
         };
-        let told: Vec<_> = lines.iter().enumerate().filter(|(_, l)| says_something(l)).collect();
+        let told: Vec<_> = lines
+            .iter()
+            .enumerate()
+            .filter(|(_, l)| says_something(l))
+            .collect();
         match told[..] {
             // A header alone: the file is empty.
             [] | [_] => Ok(None),
@@ -160,7 +179,9 @@ impl Layout {
         };
         let (first, columns) =
             rows.find_map(|(number, line)| numeric(line).map(|count| (number, count)))?;
-        let more = rows.take(ROWS_TRIED).filter(|(_, line)| numeric(line) == Some(columns));
+        let more = rows
+            .take(ROWS_TRIED)
+            .filter(|(_, line)| numeric(line) == Some(columns));
         let fits = 1 + more.count();
         self.columns = columns;
         self.first_row = first as u64 + 1;
@@ -175,17 +196,27 @@ impl Layout {
             self.split(line, &mut |_, field| {
                 names.push(String::from_utf8_lossy(field).trim().to_owned());
             });
-            let words = names.iter().any(|name| name.chars().any(char::is_alphabetic));
+            let words = names
+                .iter()
+                .any(|name| name.chars().any(char::is_alphabetic));
             (names.len() == self.columns && words).then_some(names)
         };
-        let told = before.iter().rev().filter(|line| !line.trim_ascii().is_empty());
+        let told = before
+            .iter()
+            .rev()
+            .filter(|line| !line.trim_ascii().is_empty());
         let mut told = told.map(|line| {
             let line = line.trim_ascii();
-            let mark = self.comments.iter().find(|c| line.starts_with(c.as_bytes()));
+            let mark = self
+                .comments
+                .iter()
+                .find(|c| line.starts_with(c.as_bytes()));
             let bare = mark.map_or(line, |mark| line[mark.len()..].trim_ascii());
             (mark.is_some(), bare)
         });
-        let Some((in_comment, last)) = told.next() else { return };
+        let Some((in_comment, last)) = told.next() else {
+            return;
+        };
         let Some(names) = fields(last) else { return };
         // Two such lines, neither a comment: names above, units below.
         if let Some((false, above)) = told.next().filter(|_| !in_comment && !names_time(&names))
@@ -212,8 +243,12 @@ impl Layout {
         }
         match self.separator {
             Separator::Blank => {
-                let fields = line.split(|b| matches!(b, b' ' | b'\t')).filter(|f| !f.is_empty());
-                fields.enumerate().for_each(|(index, field)| each(index, field));
+                let fields = line
+                    .split(|b| matches!(b, b' ' | b'\t'))
+                    .filter(|f| !f.is_empty());
+                fields
+                    .enumerate()
+                    .for_each(|(index, field)| each(index, field));
             }
             separator => {
                 let byte = delimiter(separator);
@@ -235,7 +270,9 @@ impl Layout {
         if let Ok(true) = reader.read_byte_record(&mut record) {
             let blank = self.separator == Separator::Blank;
             let fields = record.iter().filter(|field| !(blank && field.is_empty()));
-            fields.enumerate().for_each(|(index, field)| each(index, field.trim_ascii()));
+            fields
+                .enumerate()
+                .for_each(|(index, field)| each(index, field.trim_ascii()));
         }
     }
 
@@ -247,14 +284,24 @@ impl Layout {
             Separator::Tab => "tab",
             Separator::Blank => "blanks",
         };
-        let decimal = if self.decimal_comma { ", decimal comma" } else { "" };
-        let header = if self.names.is_some() { "" } else { ", no header" };
+        let decimal = if self.decimal_comma {
+            ", decimal comma"
+        } else {
+            ""
+        };
+        let header = if self.names.is_some() {
+            ""
+        } else {
+            ", no header"
+        };
         format!("{separator}{decimal}{header}")
     }
 }
 
 fn names_time(names: &[String]) -> bool {
-    names.iter().any(|name| name == "t" || name.to_lowercase().contains("time"))
+    names
+        .iter()
+        .any(|name| name == "t" || name.to_lowercase().contains("time"))
 }
 
 fn delimiter(separator: Separator) -> u8 {
@@ -267,7 +314,9 @@ fn delimiter(separator: Separator) -> u8 {
 }
 
 fn is_comment(line: &[u8], comments: &[String]) -> bool {
-    comments.iter().any(|mark| !mark.is_empty() && line.starts_with(mark.as_bytes()))
+    comments
+        .iter()
+        .any(|mark| !mark.is_empty() && line.starts_with(mark.as_bytes()))
 }
 
 /// Bytes from the start of a file that the layout is found from.
@@ -312,9 +361,15 @@ mod tests {
     #[test]
     fn names_are_found_above_the_rows_in_quotes_or_in_a_comment() {
         let names = |text: &str| found(text).names.map(|names| names.join("|"));
-        assert_eq!(names("\"t\",\"T, air\"\n0,1\n").as_deref(), Some("t|T, air"));
+        assert_eq!(
+            names("\"t\",\"T, air\"\n0,1\n").as_deref(),
+            Some("t|T, air")
+        );
         assert_eq!(names("# t x v\n0 1 2\n").as_deref(), Some("t|x|v"));
-        assert_eq!(names("run of today\nstep 0.1\nt;x\n0;1\n").as_deref(), Some("t|x"));
+        assert_eq!(
+            names("run of today\nstep 0.1\nt;x\n0;1\n").as_deref(),
+            Some("t|x")
+        );
         assert_eq!(names("0;1\n1;2\n"), None);
         let units = found("t,x\ns,degC\n0,1\n");
         assert_eq!(units.names.unwrap(), ["t", "x"]);
@@ -323,10 +378,16 @@ mod tests {
 
     #[test]
     fn what_is_stated_holds() {
-        let stated = Stated { comment: Some("@".into()), ..Stated::default() };
+        let stated = Stated {
+            comment: Some("@".into()),
+            ..Stated::default()
+        };
         let layout = find("@ a\nt,x\n0,1\n", &stated).unwrap().unwrap();
         assert_eq!((layout.first_row, layout.names.unwrap().len()), (3, 2));
-        let stated = Stated { skip_lines: Some(2), ..Stated::default() };
+        let stated = Stated {
+            skip_lines: Some(2),
+            ..Stated::default()
+        };
         let layout = find("1,2\nt,x\n0,1\n", &stated).unwrap().unwrap();
         assert_eq!(layout.first_row, 3);
         assert_eq!(layout.names.unwrap(), ["t", "x"]);
@@ -337,7 +398,11 @@ mod tests {
         assert_eq!(find("", &Stated::default()).unwrap(), None);
         assert_eq!(find("t,x\n\n", &Stated::default()).unwrap(), None);
         let fault = find("a story\nof two lines\n", &Stated::default()).unwrap_err();
-        assert!(fault.text.starts_with("no rows of numbers found: this line is `of two lines`"));
+        assert!(
+            fault
+                .text
+                .starts_with("no rows of numbers found: this line is `of two lines`")
+        );
         assert_eq!(fault.line, Some(2));
     }
 }

@@ -79,7 +79,11 @@ impl Lines {
 }
 
 fn without_mark(line: &[u8], first: bool) -> &[u8] {
-    if first { line.strip_prefix(b"\xef\xbb\xbf").unwrap_or(line) } else { line }
+    if first {
+        line.strip_prefix(b"\xef\xbb\xbf").unwrap_or(line)
+    } else {
+        line
+    }
 }
 
 #[cfg(test)]
@@ -102,7 +106,14 @@ mod tests {
 
     #[test]
     fn every_line_end_and_every_chunking_gives_the_same_lines() {
-        for text in ["a\nb\n\nc", "\u{feff}a\r\nb\r\n\r\nc\r\n", "a\rb\r\rc", "\n\n", "", "a"] {
+        for text in [
+            "a\nb\n\nc",
+            "\u{feff}a\r\nb\r\n\r\nc\r\n",
+            "a\rb\r\rc",
+            "\n\n",
+            "",
+            "a",
+        ] {
             let whole = split(text.as_bytes(), usize::MAX);
             for size in 1..6 {
                 assert_eq!(split(text.as_bytes(), size), whole, "{text:?} in {size}");

@@ -30,8 +30,21 @@ const MOST_CHARACTERS: usize = 64;
 
 /// Words that programs write for a value that is missing or not finite.
 const ABSENT: [&str; 15] = [
-    "nan", "na", "n/a", "null", "none", "inf", "infinity", "-", "--", "1.#ind", "1.#qnan",
-    "1.#inf", "nan(ind)", "nan(snan)", "1.#snan",
+    "nan",
+    "na",
+    "n/a",
+    "null",
+    "none",
+    "inf",
+    "infinity",
+    "-",
+    "--",
+    "1.#ind",
+    "1.#qnan",
+    "1.#inf",
+    "nan(ind)",
+    "nan(snan)",
+    "1.#snan",
 ];
 
 impl Field {
@@ -42,7 +55,11 @@ impl Field {
         }
         let mut buffer = [0u8; MOST_CHARACTERS];
         let Some((clean, printed)) = normalise(text, decimal_comma, &mut buffer) else {
-            return if is_absent(text) { Field::Absent } else { Field::Foreign };
+            return if is_absent(text) {
+                Field::Absent
+            } else {
+                Field::Foreign
+            };
         };
         match fast_float2::parse::<f64, _>(clean) {
             // A number beyond all f64 reads as infinity: it is not there for us.
@@ -69,7 +86,9 @@ fn is_absent(text: &[u8]) -> bool {
         [b'+' | b'-', rest @ ..] if !rest.is_empty() => rest,
         _ => text,
     };
-    ABSENT.iter().any(|word| unsigned.eq_ignore_ascii_case(word.as_bytes()))
+    ABSENT
+        .iter()
+        .any(|word| unsigned.eq_ignore_ascii_case(word.as_bytes()))
 }
 
 /// Rewrites number text into the form that every parser takes, and counts its digits;
@@ -85,7 +104,11 @@ fn normalise<'b>(
         length += 1;
         Some(())
     };
-    let mut printed = Printed { significant: 0, decimals: 0, scientific: false };
+    let mut printed = Printed {
+        significant: 0,
+        decimals: 0,
+        scientific: false,
+    };
     let (mut digits, mut point, mut exponent_digits) = (0u32, false, 0u32);
     let mut previous = b' ';
     let point_sign = if decimal_comma { b',' } else { b'.' };
@@ -153,7 +176,11 @@ mod tests {
             assert_eq!(number(text), value, "{text}");
         }
         let comma = Field::read(b"-1,25", true);
-        let printed = Printed { significant: 3, decimals: 2, scientific: false };
+        let printed = Printed {
+            significant: 3,
+            decimals: 2,
+            scientific: false,
+        };
         assert_eq!(comma, Field::Number(-1.25, printed));
     }
 
@@ -166,7 +193,11 @@ mod tests {
             ("1.500000e+00", 7, 6, true),
             ("10", 2, 0, false),
         ] {
-            let printed = Printed { significant, decimals, scientific };
+            let printed = Printed {
+                significant,
+                decimals,
+                scientific,
+            };
             let Field::Number(_, found) = Field::read(text.as_bytes(), false) else {
                 panic!("{text}")
             };
@@ -177,8 +208,19 @@ mod tests {
     #[test]
     fn absent_values_are_never_numbers() {
         for text in [
-            "", "nan", "NaN", "-NAN", "inf", "-Infinity", "1e999", "1.#QNAN", "NA", "null", "***",
-            "-nan(ind)", "-",
+            "",
+            "nan",
+            "NaN",
+            "-NAN",
+            "inf",
+            "-Infinity",
+            "1e999",
+            "1.#QNAN",
+            "NA",
+            "null",
+            "***",
+            "-nan(ind)",
+            "-",
         ] {
             assert_eq!(Field::read(text.as_bytes(), false), Field::Absent, "{text}");
         }
@@ -186,8 +228,23 @@ mod tests {
 
     #[test]
     fn other_text_is_foreign() {
-        for text in ["abc", "1,5", "1.2.3", "1e", "--1", "1_0", "0x1p3", "1 2", "\u{2212}1", "e5"] {
-            assert_eq!(Field::read(text.as_bytes(), false), Field::Foreign, "{text}");
+        for text in [
+            "abc",
+            "1,5",
+            "1.2.3",
+            "1e",
+            "--1",
+            "1_0",
+            "0x1p3",
+            "1 2",
+            "\u{2212}1",
+            "e5",
+        ] {
+            assert_eq!(
+                Field::read(text.as_bytes(), false),
+                Field::Foreign,
+                "{text}"
+            );
         }
         let long = "1".repeat(65);
         assert_eq!(Field::read(long.as_bytes(), false), Field::Foreign);

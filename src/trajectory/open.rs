@@ -16,8 +16,12 @@ pub struct Source {
 #[derive(Clone, Debug)]
 enum Origin {
     File(PathBuf),
-    Memory(Vec<u8>),
+    /// The bytes, handed out in pieces of this size.
+    Memory(Vec<u8>, usize),
 }
+
+/// Takes a line with its number and whether it had an end.
+pub(super) type EachLine<'a> = dyn FnMut(u64, &[u8], bool) -> Result<()> + 'a;
 
 const BLOCK_BYTES: usize = 256 * 1024;
 
@@ -34,19 +38,33 @@ pub fn open(path: &Path) -> Result<Source> {
     if !data.is_file() {
         return Err(Fault::new("this is not a plain file").in_file(path));
     }
-    Ok(Source { origin: Origin::File(path.to_owned()) })
+    Ok(Source {
+        origin: Origin::File(path.to_owned()),
+    })
 }
 
 impl Source {
     /// Bytes that are already in memory.
     pub fn memory(bytes: Vec<u8>) -> Source {
-        Source { origin: Origin::Memory(bytes) }
+        Source::pieces(bytes, BLOCK_BYTES)
+    }
+
+    /// Bytes in memory that come in pieces of a given size, as from a slow writer;
+    /// what is read must not depend on it.
+    pub fn pieces(bytes: Vec<u8>, size: usize) -> Source {
+        Source {
+            origin: Origin::Memory(bytes, size.max(1)),
+        }
     }
 
     /// Hands the bytes over block by block, at most `most` of them.
     fn blocks(&self, most: usize, each: &mut dyn FnMut(&[u8]) -> Result<()>) -> Result<()> {
         let path = match &self.origin {
-            Origin::Memory(bytes) => return each(&bytes[..bytes.len().min(most)]),
+            Origin::Memory(bytes, size) => {
+                return bytes[..bytes.len().min(most)]
+                    .chunks(*size)
+                    .try_for_each(each);
+            }
             Origin::File(path) => path,
         };
         let mut file = File::open(path).map_err(|error| Fault::io(path, &error))?;
@@ -80,10 +98,7 @@ impl Source {
     }
 
     /// Every line with its number; the flag is false for a last line without an end.
-    pub(super) fn each_line(
-        &self,
-        each: &mut dyn FnMut(u64, &[u8], bool) -> Result<()>,
-    ) -> Result<()> {
+    pub(super) fn each_line(&self, each: &mut EachLine) -> Result<()> {
         let mut lines = Lines::default();
         self.blocks(usize::MAX, &mut |block| {
             lines.feed(block, &mut |number, line| each(number, line, true))

@@ -53,7 +53,10 @@ impl Resolution {
 fn decade(value: f64) -> i32 {
     // Exact from the shortest text; log10 errs at powers of ten.
     let text = format!("{:e}", value.abs());
-    text.rsplit('e').next().and_then(|exponent| exponent.parse().ok()).unwrap_or(0)
+    text.rsplit('e')
+        .next()
+        .and_then(|exponent| exponent.parse().ok())
+        .unwrap_or(0)
 }
 
 /// Half a unit in the last place of an `f64`.
@@ -98,7 +101,11 @@ impl Pattern {
     }
 
     pub(super) fn add(&mut self, value: f64, printed: Printed) {
-        let Printed { significant, decimals, scientific } = printed;
+        let Printed {
+            significant,
+            decimals,
+            scientific,
+        } = printed;
         let even = !scientific && self.decimals.is_none_or(|known| known == decimals);
         self.plain_and_even &= even;
         self.decimals = Some(decimals);
@@ -117,9 +124,17 @@ impl Pattern {
     pub(super) fn conclude(&self, stated: Option<u8>) -> Resolution {
         if let Some(digits) = stated {
             let in_full = digits >= DIGITS_IN_FULL;
-            return if in_full { Resolution::Full } else { Resolution::Significant(digits) };
+            return if in_full {
+                Resolution::Full
+            } else {
+                Resolution::Significant(digits)
+            };
         }
-        let most = self.by_digits.iter().rposition(|&count| count > 0).unwrap_or(0) as u8;
+        let most = self
+            .by_digits
+            .iter()
+            .rposition(|&count| count > 0)
+            .unwrap_or(0) as u8;
         if self.constant || self.telling == 0 {
             return Resolution::Full;
         }
@@ -136,7 +151,11 @@ impl Pattern {
             return Resolution::Significant(most);
         }
         // Seven to nine digits without a pattern: the shortest text of an f32.
-        if self.single && most >= 7 { Resolution::Single } else { Resolution::Full }
+        if self.single && most >= 7 {
+            Resolution::Single
+        } else {
+            Resolution::Full
+        }
     }
 }
 
@@ -162,8 +181,9 @@ mod tests {
     }
 
     fn printed(print: impl Fn(f64) -> String) -> Resolution {
-        let column: Vec<String> =
-            (0..200).map(|k| print(12.0 * (-0.05 * f64::from(k)).exp())).collect();
+        let column: Vec<String> = (0..200)
+            .map(|k| print(12.0 * (-0.05 * f64::from(k)).exp()))
+            .collect();
         conclude(column.iter().map(String::as_str))
     }
 
@@ -188,7 +208,10 @@ mod tests {
     #[test]
     fn columns_that_tell_nothing_are_in_full() {
         assert_eq!(conclude(["5", "5", "5"]), Resolution::Full);
-        assert_eq!(conclude(["0", "0.5", "0.25", "0.125", "1"]), Resolution::Full);
+        assert_eq!(
+            conclude(["0", "0.5", "0.25", "0.125", "1"]),
+            Resolution::Full
+        );
         assert_eq!(conclude(["0", "0", "0"]), Resolution::Full);
     }
 

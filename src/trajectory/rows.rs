@@ -43,7 +43,11 @@ impl Survey {
         is_event: &dyn Fn(f64) -> bool,
         each: &mut dyn FnMut(&Row) -> Result<()>,
     ) -> Result<()> {
-        let mut state = State { last: None, latest: f64::NEG_INFINITY, doubled: None };
+        let mut state = State {
+            last: None,
+            latest: f64::NEG_INFINITY,
+            doubled: None,
+        };
         let mut values = vec![None; self.selection.channels.len()];
         source.each_line(&mut |line, text, ended| {
             if line < self.layout.first_row || self.layout.passes_over(text) {
@@ -51,14 +55,22 @@ impl Survey {
             }
             values.fill(None);
             let (stamp, usable) = self.row(line, text, ended, &mut values, findings);
-            let Some((time, exact)) = stamp else { return Ok(()) };
+            let Some((time, exact)) = stamp else {
+                return Ok(());
+            };
             if !usable {
                 // Its stamp still counts, or the next row would seem to leave a hole.
                 state.last = Some((time, values.clone()));
                 return Ok(());
             }
             let resolution = self.time_resolution(time, exact);
-            self.order((line, time, resolution), &values, is_event, &mut state, findings);
+            self.order(
+                (line, time, resolution),
+                &values,
+                is_event,
+                &mut state,
+                findings,
+            );
             each(&Row {
                 line,
                 time: exact.map_or(Double::from(time), Decimal::to_double),
@@ -91,7 +103,9 @@ impl Survey {
             }
             let read = Field::read(field, comma);
             match (read, place) {
-                (Field::Number(value, _), None) => time = Some((value, Field::decimal(field, comma))),
+                (Field::Number(value, _), None) => {
+                    time = Some((value, Field::decimal(field, comma)))
+                }
                 (Field::Number(value, printed), Some(place)) => {
                     values[place] = Some(value);
                     let last = column + 1 == self.layout.columns;
@@ -115,10 +129,22 @@ impl Survey {
             return (time, false);
         }
         if let Some((column, field)) = strange {
-            let name = self.layout.names.as_ref().and_then(|names| names.get(column));
+            let name = self
+                .layout
+                .names
+                .as_ref()
+                .and_then(|names| names.get(column));
             let name = name.map_or(format!("{}", column + 1), |name| quoted(name));
-            let found = if field.is_empty() { "empty".to_owned() } else { quoted(&field) };
-            findings.fatal(Kind::NotANumber, line, format!("column {name} is {found}, not a number"));
+            let found = if field.is_empty() {
+                "empty".to_owned()
+            } else {
+                quoted(&field)
+            };
+            findings.fatal(
+                Kind::NotANumber,
+                line,
+                format!("column {name} is {found}, not a number"),
+            );
         }
         (time, true)
     }
@@ -155,7 +181,12 @@ impl Survey {
                     let text = format!("t = {time} stands here a second time");
                     findings.note(Kind::RepeatedStamp, line, text);
                 }
-            } else if let Grid::Uniform { spacing, holes: true, .. } = self.grid {
+            } else if let Grid::Uniform {
+                spacing,
+                holes: true,
+                ..
+            } = self.grid
+            {
                 let step = time - last;
                 // Each of the two stamps may be off by its resolution.
                 let slack = 2.1 * resolution.max(half_ulp(time));
@@ -184,7 +215,11 @@ impl Survey {
 
     /// Zero for a stamp that is an exact decimal multiple of the grid's step.
     fn time_resolution(&self, time: f64, exact: Option<Decimal>) -> f64 {
-        if let Grid::Uniform { spacing, exact: Some(step), .. } = self.grid
+        if let Grid::Uniform {
+            spacing,
+            exact: Some(step),
+            ..
+        } = self.grid
             && let (Some(exact), Some(first)) = (exact, self.first)
         {
             let since = exact.minus(first);

@@ -104,7 +104,10 @@ impl Survey {
                 // A last line without an end may be cut off: it must not spoil the pattern.
                 // A column can serve two channels only by mistake, which is refused
                 // before; the first place is the only one.
-                if let Some(place) = selection.channels.iter().position(|&c| ended && c == column)
+                if let Some(place) = selection
+                    .channels
+                    .iter()
+                    .position(|&c| ended && c == column)
                     && let Field::Number(value, printed) = Field::read(field, layout.decimal_comma)
                 {
                     patterns[place].add(value, printed);
@@ -116,7 +119,10 @@ impl Survey {
         Ok(Survey {
             grid: finder.conclude(time),
             time,
-            channels: patterns.iter().map(|pattern| pattern.conclude(stated.digits)).collect(),
+            channels: patterns
+                .iter()
+                .map(|pattern| pattern.conclude(stated.digits))
+                .collect(),
             layout,
             selection,
             rows,

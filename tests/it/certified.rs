@@ -7,7 +7,9 @@ use stepgauge::number::{Decimal, Double};
 use crate::digits::{read, ulps};
 
 fn outside(path: &str) -> PathBuf {
-    Path::new(env!("CARGO_MANIFEST_DIR")).join("tests/outside").join(path)
+    Path::new(env!("CARGO_MANIFEST_DIR"))
+        .join("tests/outside")
+        .join(path)
 }
 
 fn json(path: &Path) -> Value {
@@ -34,8 +36,7 @@ pub fn certified_case(system: &Value) -> String {
     let inputs = array(&system["input"]);
     for (i, row) in array(&system["A"]).iter().enumerate() {
         let states = array(row).iter().enumerate();
-        let mut terms: Vec<String> =
-            states.map(|(j, a)| format!("({})*x{j}", text(a))).collect();
+        let mut terms: Vec<String> = states.map(|(j, a)| format!("({})*x{j}", text(a))).collect();
         let b = text(&system["b"][i]);
         terms.extend((0..inputs.len()).map(|k| format!("({b})*u{k}")));
         let start = text(&system["x0"][i]);
@@ -55,9 +56,14 @@ pub fn certified_case(system: &Value) -> String {
             }
             "cos" => {
                 let omega = text(&input["omega"]);
-                format!("shape = 'sine'\namplitude = '{c}'\nangular_frequency = '{omega}'\nphase = 'pi/2'")
+                format!(
+                    "shape = 'sine'\namplitude = '{c}'\nangular_frequency = '{omega}'\nphase = 'pi/2'"
+                )
             }
-            "exp" => format!("shape = 'exponential'\nscale = '{c}'\nrate = '{}'", text(&input["rate"])),
+            "exp" => format!(
+                "shape = 'exponential'\nscale = '{c}'\nrate = '{}'",
+                text(&input["rate"])
+            ),
             other => panic!("unknown input {other}"),
         };
         case += &format!("[[inputs]]\nname = 'u{k}'\nunit = '1'\n{shape}\n");
@@ -70,7 +76,10 @@ pub fn certified_systems() -> Vec<(Value, Value)> {
     let file = json(&outside("certified/certified-values.json"));
     let with_solutions = |system: &Value| {
         let rounded = system.get("solutions_for_binary64_data");
-        (system.clone(), rounded.unwrap_or(&system["solutions"]).clone())
+        (
+            system.clone(),
+            rounded.unwrap_or(&system["solutions"]).clone(),
+        )
     };
     array(&file["systems"]).iter().map(with_solutions).collect()
 }
@@ -81,12 +90,18 @@ fn every_certified_value_is_met_to_one_ulp() {
     let mut numbers = 0;
     for (system, solutions) in certified_systems() {
         let id = text(&system["id"]);
-        let case = Case::parse(&id.to_lowercase(), &certified_case(&system), &Replacements::new());
+        let case = Case::parse(
+            &id.to_lowercase(),
+            &certified_case(&system),
+            &Replacements::new(),
+        );
         let exact = case.unwrap().exact().unwrap();
         let rows = array(&solutions);
         let peak = |i: usize| {
             let start = read(text(&system["x0"][i])).to_f64().abs();
-            rows.iter().map(|row| read(text(&row["x"][i])).to_f64().abs()).fold(start, f64::max)
+            rows.iter()
+                .map(|row| read(text(&row["x"][i])).to_f64().abs())
+                .fold(start, f64::max)
         };
         for row in rows {
             let time = text(&row["t"]);
@@ -97,7 +112,10 @@ fn every_certified_value_is_met_to_one_ulp() {
                 let gap = (Double::from(value.value) - truth).abs().to_f64();
                 let near = ulps(value.value, truth) <= 1.0 || gap <= 1e-24 * peak(i);
                 assert!(near, "{id} t = {time} x{i}: {value:?}, not {truth:?}");
-                assert!(gap <= value.bound + 1e-30 * peak(i), "{id} t = {time} x{i}: {gap:e} {value:?} {truth:?}");
+                assert!(
+                    gap <= value.bound + 1e-30 * peak(i),
+                    "{id} t = {time} x{i}: {gap:e} {value:?} {truth:?}"
+                );
                 numbers += 1;
             }
         }
@@ -116,21 +134,37 @@ fn every_built_in_case_is_met_to_one_ulp() {
         let enclosures = json(&outside(&file));
         let case = library.load(name, &Replacements::new()).unwrap();
         let exact = case.exact().unwrap();
-        let times: Vec<f64> =
-            array(&enclosures["times"]).iter().map(|t| t.as_f64().unwrap()).collect();
+        let times: Vec<f64> = array(&enclosures["times"])
+            .iter()
+            .map(|t| t.as_f64().unwrap())
+            .collect();
         assert!(times.len() >= 50, "{name} has {} times", times.len());
         let names: Vec<&str> = array(&enclosures["channels"]).iter().map(text).collect();
-        assert_eq!(names, case.channels().iter().map(|c| c.name).collect::<Vec<_>>());
-        for (row, truths) in exact.over(times.iter().copied()).zip(array(&enclosures["values"])) {
+        assert_eq!(
+            names,
+            case.channels().iter().map(|c| c.name).collect::<Vec<_>>()
+        );
+        for (row, truths) in exact
+            .over(times.iter().copied())
+            .zip(array(&enclosures["values"]))
+        {
             for (i, (value, truth)) in row.unwrap().iter().zip(array(truths)).enumerate() {
                 let truth = read(text(truth));
                 let peak = enclosures["peak"][i].as_f64().unwrap();
                 let gap = (Double::from(value.value) - truth).abs().to_f64();
                 let near = ulps(value.value, truth) <= 1.0 || gap <= 1e-24 * peak;
-                assert!(near, "{name} channel {}: {value:?}, not {truth:?}", names[i]);
+                assert!(
+                    near,
+                    "{name} channel {}: {value:?}, not {truth:?}",
+                    names[i]
+                );
                 // The coefficients are rounded to double-double, which is no part of the
                 // bound: 2^-106 times up to 1e7 radians.
-                assert!(gap <= value.bound + 1e-25 * peak, "{name} {}: {gap:e} {value:?} {truth:?}", names[i]);
+                assert!(
+                    gap <= value.bound + 1e-25 * peak,
+                    "{name} {}: {gap:e} {value:?} {truth:?}",
+                    names[i]
+                );
                 numbers += 1;
             }
         }

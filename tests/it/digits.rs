@@ -4,7 +4,9 @@ use stepgauge::number::{Decimal, Double};
 pub fn read(text: &str) -> Double {
     let (mantissa, exponent) = text.split_once('e').unwrap_or((text, "0"));
     let exponent: i64 = exponent.parse().unwrap();
-    let digits = mantissa.find(|c: char| ('1'..='9').contains(&c)).unwrap_or(0);
+    let digits = mantissa
+        .find(|c: char| ('1'..='9').contains(&c))
+        .unwrap_or(0);
     let cut: String = mantissa.chars().take(digits + 34).collect();
     // Whole digits that were cut off move the point.
     let point = mantissa.find('.').unwrap_or(mantissa.len());
@@ -12,7 +14,9 @@ pub fn read(text: &str) -> Double {
     if exponent + lost < -280 {
         return Double::ZERO;
     }
-    Decimal::parse(&format!("{cut}e{}", exponent + lost)).unwrap().to_double()
+    Decimal::parse(&format!("{cut}e{}", exponent + lost))
+        .unwrap()
+        .to_double()
 }
 
 /// Distance of an `f64` from the truth in units in the last place of the truth.
@@ -24,7 +28,10 @@ pub fn ulps(value: f64, truth: Double) -> f64 {
 
 #[test]
 fn long_decimals_are_read() {
-    assert_eq!(read("147.8666224463701526967").to_f64(), 147.866_622_446_370_15);
+    assert_eq!(
+        read("147.8666224463701526967").to_f64(),
+        147.866_622_446_370_15
+    );
     assert_eq!(read("-1.5e-3").to_f64(), -0.0015);
     assert_eq!(read("0.0000000000000000000000001").to_f64(), 1e-25);
     let long = "1234567890123456789012345678901234567890123";

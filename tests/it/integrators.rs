@@ -50,18 +50,37 @@ fn run(submissions: Vec<Submission>) -> Outcome {
         limits_from_command_line: false,
     };
     let submissions = submissions.into_iter().enumerate().map(planned).collect();
-    let outcome = audit(&Plan { library, submissions, unreadable: Vec::new(), threads: 2 });
+    let outcome = audit(&Plan {
+        library,
+        submissions,
+        unreadable: Vec::new(),
+        threads: 2,
+    });
     assert!(outcome.not_audited.is_empty(), "{:?}", outcome.not_audited);
     outcome
 }
 
 /// Every channel limited to the same multiple of its certified worst error.
 fn limits(errors: &Value, factor: f64) -> LimitsStated {
-    let channels = errors["channels"].as_object().unwrap().iter().map(|(name, channel)| {
-        let absolute = Some(factor * channel["worst_error"].as_f64().unwrap());
-        (name.clone(), LimitStated { absolute, relative: Some(0.0), of_peak: None })
-    });
-    LimitsStated { channels: channels.collect(), ..LimitsStated::default() }
+    let channels = errors["channels"]
+        .as_object()
+        .unwrap()
+        .iter()
+        .map(|(name, channel)| {
+            let absolute = Some(factor * channel["worst_error"].as_f64().unwrap());
+            (
+                name.clone(),
+                LimitStated {
+                    absolute,
+                    relative: Some(0.0),
+                    of_peak: None,
+                },
+            )
+        });
+    LimitsStated {
+        channels: channels.collect(),
+        ..LimitsStated::default()
+    }
 }
 
 fn each_file(factor: f64) -> Vec<(Value, Value, Audited)> {
@@ -80,7 +99,9 @@ fn each_file(factor: f64) -> Vec<(Value, Value, Audited)> {
     });
     let outcome = run(submissions.collect());
     let joined = files.into_iter().zip(outcome.submissions);
-    joined.map(|((entry, errors), audited)| (entry, errors, audited)).collect()
+    joined
+        .map(|((entry, errors), audited)| (entry, errors, audited))
+        .collect()
 }
 
 #[test]
@@ -96,21 +117,32 @@ fn worst_errors_equal_the_certified_ones() {
             let number = |key: &str| truth[key].as_f64().unwrap();
             // The file's resolution is the promise; beyond it only the rounding of the
             // printed numbers to f64 is left, a few units of the peak.
-            let tolerance = found.resolution.min(1e-3 * number("worst_error")) + 2e-15 * number("peak");
+            let tolerance =
+                found.resolution.min(1e-3 * number("worst_error")) + 2e-15 * number("peak");
             for (what, found, truth) in [
                 ("worst error", found.worst, number("worst_error")),
                 ("rms error", found.rms, number("rms_error")),
                 ("end error", found.end, number("end_error")),
             ] {
                 let gap = (found - truth).abs();
-                assert!(gap <= tolerance, "{file} {} {what}: {found} for {truth}", channel.name);
+                assert!(
+                    gap <= tolerance,
+                    "{file} {} {what}: {found} for {truth}",
+                    channel.name
+                );
             }
-            assert!((found.peak - number("peak")).abs() <= 1e-14 * number("peak"), "{file}");
+            assert!(
+                (found.peak - number("peak")).abs() <= 1e-14 * number("peak"),
+                "{file}"
+            );
             channels += 1;
         }
         files += 1;
     }
-    assert!(files >= 24 && channels >= 24, "{files} files, {channels} channels");
+    assert!(
+        files >= 24 && channels >= 24,
+        "{files} files, {channels} channels"
+    );
 }
 
 #[test]
@@ -126,32 +158,57 @@ fn a_limit_of_nine_tenths_fails_and_one_of_eleven_tenths_passes() {
                 // digits, so 5e-7 of the decade of the peak); else only the wrong
                 // verdict is ruled out.
                 let in_full = entry["digits_format"].as_str() == Some("%.17g");
-                let elsewhere = if in_full { 0.0 } else { 5e-6 * errors.peak.max(0.1) };
-                if 0.1 * errors.worst > 1.01 * errors.resolution.max(elsewhere) {
-                    assert_eq!(channel.verdict, expected, "{file} {} {factor}", channel.name);
+                let elsewhere = if in_full {
+                    0.0
                 } else {
-                    let wrong = if expected == Verdict::Fail { Verdict::Pass } else { Verdict::Fail };
+                    5e-6 * errors.peak.max(0.1)
+                };
+                if 0.1 * errors.worst > 1.01 * errors.resolution.max(elsewhere) {
+                    assert_eq!(
+                        channel.verdict, expected,
+                        "{file} {} {factor}",
+                        channel.name
+                    );
+                } else {
+                    let wrong = if expected == Verdict::Fail {
+                        Verdict::Pass
+                    } else {
+                        Verdict::Fail
+                    };
                     assert_ne!(channel.verdict, wrong, "{file} {} {factor}", channel.name);
                     open += 1;
                 }
             }
-            assert!(audited.runs[0].findings.iter().all(|finding| !finding.fatal), "{file}");
+            assert!(
+                audited.runs[0]
+                    .findings
+                    .iter()
+                    .all(|finding| !finding.fatal),
+                "{file}"
+            );
         }
     }
     println!("{open} channels too coarse to tell");
 }
 
-/// Fixed-step ladders by name, coarse to fine, with the theoretical order.
-fn ladders() -> BTreeMap<String, (String, f64, Vec<(String, f64)>)> {
+/// Case, theoretical order, and files with their steps.
+type Ladder = (String, f64, Vec<(String, f64)>);
+
+/// Fixed-step ladders by name.
+fn ladders() -> BTreeMap<String, Ladder> {
     let mut ladders = BTreeMap::new();
     for entry in manifest() {
         let word = |key: &str| entry[key].as_str().map(str::to_owned);
-        let (Some(ladder), Some(order), Some(step)) =
-            (word("ladder"), entry["order"].as_f64(), entry["step"].as_f64())
-        else {
+        let (Some(ladder), Some(order), Some(step)) = (
+            word("ladder"),
+            entry["order"].as_f64(),
+            entry["step"].as_f64(),
+        ) else {
             continue;
         };
-        let place = ladders.entry(ladder).or_insert((word("case").unwrap(), order, Vec::new()));
+        let place = ladders
+            .entry(ladder)
+            .or_insert((word("case").unwrap(), order, Vec::new()));
         place.2.push((word("file").unwrap(), step));
     }
     ladders
@@ -161,24 +218,51 @@ fn ladders() -> BTreeMap<String, (String, f64, Vec<(String, f64)>)> {
 fn ladders_of_fixed_step_methods_show_their_order() {
     let ladders: Vec<_> = ladders().into_iter().collect();
     let submissions = ladders.iter().map(|(_, (case, order, files))| {
-        let files: Vec<(&str, Setting)> =
-            files.iter().map(|(file, step)| (file.as_str(), Setting::Step(*step))).collect();
-        let loose = LimitStated { absolute: Some(1e9), relative: Some(0.0), of_peak: None };
+        let files: Vec<(&str, Setting)> = files
+            .iter()
+            .map(|(file, step)| (file.as_str(), Setting::Step(*step)))
+            .collect();
+        let loose = LimitStated {
+            absolute: Some(1e9),
+            relative: Some(0.0),
+            of_peak: None,
+        };
         Submission {
-            claims: Claims { method: None, order: Some(*order) },
-            ..submission(case, &files, LimitsStated { general: loose, ..LimitsStated::default() })
+            claims: Claims {
+                method: None,
+                order: Some(*order),
+            },
+            ..submission(
+                case,
+                &files,
+                LimitsStated {
+                    general: loose,
+                    ..LimitsStated::default()
+                },
+            )
         }
     });
     let outcome = run(submissions.collect());
     let mut orders = [0; 9];
     for ((name, (_, order, _)), audited) in ladders.iter().zip(&outcome.submissions) {
-        assert_eq!(audited.order_verdict, Some(Verdict::Pass), "{name}: {:?}", audited.reasons);
+        assert_eq!(
+            audited.order_verdict,
+            Some(Verdict::Pass),
+            "{name}: {:?}",
+            audited.reasons
+        );
         for channel in &audited.orders {
-            let (observed, ..) = channel.observed.unwrap_or_else(|| panic!("{name}: {channel:?}"));
+            let (observed, ..) = channel
+                .observed
+                .unwrap_or_else(|| panic!("{name}: {channel:?}"));
             // Of a symplectic pair the velocity gains an order here; the script that made
             // the errors says so too.
             let gains = name.contains("symplectic") && observed > order + 0.5;
-            assert!(gains || (observed - order).abs() < 0.1, "{name} {}: {observed}", channel.channel);
+            assert!(
+                gains || (observed - order).abs() < 0.1,
+                "{name} {}: {observed}",
+                channel.channel
+            );
         }
         orders[*order as usize] += 1;
     }
@@ -189,15 +273,25 @@ fn ladders_of_fixed_step_methods_show_their_order() {
 fn a_claim_of_one_order_more_fails() {
     let ladders: Vec<_> = ladders().into_iter().collect();
     let submissions = ladders.iter().map(|(_, (case, order, files))| {
-        let files: Vec<(&str, Setting)> =
-            files.iter().map(|(file, step)| (file.as_str(), Setting::Step(*step))).collect();
+        let files: Vec<(&str, Setting)> = files
+            .iter()
+            .map(|(file, step)| (file.as_str(), Setting::Step(*step)))
+            .collect();
         Submission {
-            claims: Claims { method: None, order: Some(*order + 1.0) },
+            claims: Claims {
+                method: None,
+                order: Some(*order + 1.0),
+            },
             ..submission(case, &files, LimitsStated::default())
         }
     });
     let outcome = run(submissions.collect());
     for ((name, _), audited) in ladders.iter().zip(&outcome.submissions) {
-        assert_eq!(audited.order_verdict, Some(Verdict::Fail), "{name}: {:?}", audited.orders);
+        assert_eq!(
+            audited.order_verdict,
+            Some(Verdict::Fail),
+            "{name}: {:?}",
+            audited.orders
+        );
     }
 }

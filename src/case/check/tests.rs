@@ -44,7 +44,11 @@ fn faults(from: &str, to: &str) -> String {
     assert!(GOOD.contains(from), "{from}");
     let text = GOOD.replacen(from, to, 1);
     let faults = check("lag", &text, &Replacements::new()).unwrap_err();
-    faults.iter().map(ToString::to_string).collect::<Vec<_>>().join("\n")
+    faults
+        .iter()
+        .map(ToString::to_string)
+        .collect::<Vec<_>>()
+        .join("\n")
 }
 
 #[test]
@@ -69,30 +73,97 @@ fn parameters_can_be_replaced_and_later_ones_follow() {
     assert_eq!(case.states[0].rate.coefficients[0].to_f64(), -0.25);
     let replace = Replacements::from([("tua".to_owned(), 4.0)]);
     let fault = check("lag", GOOD, &replace).unwrap_err().remove(0);
-    assert_eq!(fault.to_string(), "the case has no parameter `tua`\n  help: did you mean `tau`?");
+    assert_eq!(
+        fault.to_string(),
+        "the case has no parameter `tua`\n  help: did you mean `tau`?"
+    );
 }
 
 #[test]
 fn complaints_have_their_place() {
     for (from, to, expected) in [
-        ("k*(u - x) + 3", "k*(u - x) + x*u", "21:22: `*` makes this not linear in states and inputs"),
+        (
+            "k*(u - x) + 3",
+            "k*(u - x) + x*u",
+            "21:22: `*` makes this not linear in states and inputs",
+        ),
         ("k*(u - x) + 3", "k*(u - q) + 3", "21:16: unknown name `q`"),
-        ("k*(u - x) + 3", "t*x", "21:9: unknown name `t`\n  help: time enters a rate through the inputs"),
-        ("\"exp(-t)\"", "\"exp(-t\"", "22:10: this bracket is not closed"),
+        (
+            "k*(u - x) + 3",
+            "t*x",
+            "21:9: unknown name `t`\n  help: time enters a rate through the inputs",
+        ),
+        (
+            "\"exp(-t)\"",
+            "\"exp(-t\"",
+            "22:10: this bracket is not closed",
+        ),
         ("\"1/tau\"", "\"1/k\"", "10:18: unknown name `k`"),
-        ("\"1/tau\"", "\"1/(tau-2)\"", "10:15: this is not a finite number"),
-        ("value = 2.0", "value = nan", "9:17: this is not a finite number"),
-        ("to = \"5*tau\"", "to = 0", "15:6: `to` must come after `from`"),
-        ("name = \"u\"", "name = \"x\"", "25:8: `x` is already in use"),
-        ("name = \"u\"", "name = \"pi\"", "25:8: `pi` has a meaning of its own in formulas"),
-        ("name = \"u\"", "name = \"u v\"", "25:8: `u v` is not a name"),
-        ("shape = \"step\"", "shape = \"stop\"", "27:9: `stop` is not a shape of input\n  help: did you mean `step`?"),
-        ("at = 1", "from = 1", "27:9: an input of shape `step` needs `at`"),
-        ("at = 1", "at = 1\nwidth = 2", "30:9: an input of shape `step` has no `width`"),
-        ("absolute = 1e-3", "absolute = -1", "36:1: limits must be finite and not below zero"),
-        ("title = \"Lag\"", "titel = \"Lag\"", "2:1: unknown field `titel`"),
-        ("field = \"trial\"", "field = \"../x\"", "3:9: field is `../x`, which is no folder name"),
-        ("start = \"2*k\"", "start = true", "20:9: invalid type: boolean"),
+        (
+            "\"1/tau\"",
+            "\"1/(tau-2)\"",
+            "10:15: this is not a finite number",
+        ),
+        (
+            "value = 2.0",
+            "value = nan",
+            "9:17: this is not a finite number",
+        ),
+        (
+            "to = \"5*tau\"",
+            "to = 0",
+            "15:6: `to` must come after `from`",
+        ),
+        (
+            "name = \"u\"",
+            "name = \"x\"",
+            "25:8: `x` is already in use",
+        ),
+        (
+            "name = \"u\"",
+            "name = \"pi\"",
+            "25:8: `pi` has a meaning of its own in formulas",
+        ),
+        (
+            "name = \"u\"",
+            "name = \"u v\"",
+            "25:8: `u v` is not a name",
+        ),
+        (
+            "shape = \"step\"",
+            "shape = \"stop\"",
+            "27:9: `stop` is not a shape of input\n  help: did you mean `step`?",
+        ),
+        (
+            "at = 1",
+            "from = 1",
+            "27:9: an input of shape `step` needs `at`",
+        ),
+        (
+            "at = 1",
+            "at = 1\nwidth = 2",
+            "30:9: an input of shape `step` has no `width`",
+        ),
+        (
+            "absolute = 1e-3",
+            "absolute = -1",
+            "36:1: limits must be finite and not below zero",
+        ),
+        (
+            "title = \"Lag\"",
+            "titel = \"Lag\"",
+            "2:1: unknown field `titel`",
+        ),
+        (
+            "field = \"trial\"",
+            "field = \"../x\"",
+            "3:9: field is `../x`, which is no folder name",
+        ),
+        (
+            "start = \"2*k\"",
+            "start = true",
+            "20:9: invalid type: boolean",
+        ),
     ] {
         let found = faults(from, to);
         assert!(found.contains(expected), "{from} -> {to}:\n{found}");

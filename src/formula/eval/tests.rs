@@ -11,8 +11,12 @@ fn value(text: &str) -> f64 {
     let single = formula.evaluate::<f64>(&[3.0, -2.0, 0.5]).unwrap();
     let wide = [3.0, -2.0, 0.5].map(Double::from);
     let double = formula.evaluate::<Double>(&wide).unwrap().to_f64();
-    let same = single == double || (single - double).abs() <= 4.0 * f64::EPSILON * single.abs().max(1.0);
-    assert!(same || single.is_nan() && double.is_nan(), "{text}: {single} {double}");
+    let same =
+        single == double || (single - double).abs() <= 4.0 * f64::EPSILON * single.abs().max(1.0);
+    assert!(
+        same || single.is_nan() && double.is_nan(),
+        "{text}: {single} {double}"
+    );
     double
 }
 
@@ -43,7 +47,11 @@ fn arithmetic_as_it_is_written_on_paper() {
         ("1.e2 + .5", 100.5),
         ("b^3", -8.0),
     ] {
-        assert!((value(text) - expected).abs() <= 1e-15, "{text} gives {}", value(text));
+        assert!(
+            (value(text) - expected).abs() <= 1e-15,
+            "{text} gives {}",
+            value(text)
+        );
     }
     assert!(value("ln(b)").is_nan());
     assert_eq!(value("1/0"), f64::INFINITY);
@@ -55,17 +63,32 @@ fn every_complaint_has_its_column() {
         ("", "1:1: the formula ends where a value was expected"),
         ("a +", "1:4: the formula ends where a value was expected"),
         ("a + q2", "1:5: unknown name `q2`"),
-        ("tua", "1:1: unknown name `tua`\n  help: did you mean `tau`?"),
-        ("2a", "1:2: found `a`, expected an operator\n  help: a product is written with `*`"),
-        ("a**2", "1:3: found `*`, expected a value\n  help: a power is written `^`"),
+        (
+            "tua",
+            "1:1: unknown name `tua`\n  help: did you mean `tau`?",
+        ),
+        (
+            "2a",
+            "1:2: found `a`, expected an operator\n  help: a product is written with `*`",
+        ),
+        (
+            "a**2",
+            "1:3: found `*`, expected a value\n  help: a power is written `^`",
+        ),
         ("1e400", "1:1: `1e400` is not a finite number"),
         ("(a", "1:1: this bracket is not closed"),
         ("a)", "1:2: this bracket closes nothing"),
         ("sin a", "1:1: `sin` is a function: `(` must follow"),
         ("min(a)", "1:1: `min` takes 2 argument(s), got 1"),
         ("exp(a, b)", "1:1: `exp` takes 1 argument(s), got 2"),
-        ("1,5", "1:2: a comma may only stand between the arguments of a function\n  help: the decimal sign is a point"),
-        ("a + ζ", "1:5: found `ζ`, expected a value\n  help: names are made of a-z, A-Z, 0-9 and _"),
+        (
+            "1,5",
+            "1:2: a comma may only stand between the arguments of a function\n  help: the decimal sign is a point",
+        ),
+        (
+            "a + ζ",
+            "1:5: found `ζ`, expected a value\n  help: names are made of a-z, A-Z, 0-9 and _",
+        ),
         ("a $ b", "1:3: found `$`, expected an operator"),
         ("()", "1:2: found `)`, expected a value"),
     ] {

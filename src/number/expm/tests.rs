@@ -24,11 +24,22 @@ fn check(rows: &[&[f64]], start: &[f64], time: f64, looseness: f64) {
     let (values, bounds) = run::<Double>(rows, start, time);
     let (better, better_bounds) = run::<Quad>(rows, start, time);
     let start_size = start.iter().map(|x| x.abs()).fold(0.0, f64::max);
-    let size = better.iter().map(|x| x.to_f64().abs()).fold(start_size, f64::max);
+    let size = better
+        .iter()
+        .map(|x| x.to_f64().abs())
+        .fold(start_size, f64::max);
     for i in 0..values.len() {
         let gap = (values[i] - better[i]).abs().to_f64();
-        assert!(gap <= bounds[i] + better_bounds[i], "entry {i}: {gap:e} > {:e}", bounds[i]);
-        assert!(bounds[i] <= looseness * size, "entry {i}: bound {:e} of {size:e}", bounds[i]);
+        assert!(
+            gap <= bounds[i] + better_bounds[i],
+            "entry {i}: {gap:e} > {:e}",
+            bounds[i]
+        );
+        assert!(
+            bounds[i] <= looseness * size,
+            "entry {i}: bound {:e} of {size:e}",
+            bounds[i]
+        );
     }
 }
 
@@ -54,11 +65,31 @@ fn rotation_over_a_million_periods() {
 
 #[test]
 fn bounds_hold_for_stiff_defective_and_non_normal_matrices() {
-    check(&[&[-1e-6, 0.0, 0.0], &[1.0, -1.0, 0.0], &[0.0, 1e6, -1e6]], &[1.0, 0.0, 2.0], 1e6, 1e-14);
+    check(
+        &[&[-1e-6, 0.0, 0.0], &[1.0, -1.0, 0.0], &[0.0, 1e6, -1e6]],
+        &[1.0, 0.0, 2.0],
+        1e6,
+        1e-14,
+    );
     check(&[&[-1.0, 1.0], &[1.0, -1e6]], &[1.0, 1.0], 20.0, 1e-22);
-    check(&[&[-0.5, 1.0, 0.0], &[0.0, -0.5, 1.0], &[0.0, 0.0, -0.5]], &[1.0, -2.0, 4.0], 64.0, 1e-12);
-    check(&[&[-1.0, 128.0, 16.0], &[0.0, -1.1, 128.0], &[0.0, 0.0, -1.2]], &[1.0, 1.0, 1.0], 8.0, 1e-24);
-    check(&[&[0.5, -3.0, 0.0], &[3.0, 0.5, 0.0], &[1.0, 0.0, 0.25]], &[1.0, 0.0, -0.5], 100.0, 1e-20);
+    check(
+        &[&[-0.5, 1.0, 0.0], &[0.0, -0.5, 1.0], &[0.0, 0.0, -0.5]],
+        &[1.0, -2.0, 4.0],
+        64.0,
+        1e-12,
+    );
+    check(
+        &[&[-1.0, 128.0, 16.0], &[0.0, -1.1, 128.0], &[0.0, 0.0, -1.2]],
+        &[1.0, 1.0, 1.0],
+        8.0,
+        1e-24,
+    );
+    check(
+        &[&[0.5, -3.0, 0.0], &[3.0, 0.5, 0.0], &[1.0, 0.0, 0.25]],
+        &[1.0, 0.0, -0.5],
+        100.0,
+        1e-20,
+    );
 }
 
 #[test]

@@ -3,10 +3,16 @@ use crate::case::{Library, Replacements};
 use crate::trajectory::{Source, Stated};
 
 fn try_match(header: &str, stated: &str) -> Result<Matched> {
-    let case = Library::new().load("thermal/cold-room-defrost", &Replacements::new()).unwrap();
+    let case = Library::new()
+        .load("thermal/cold-room-defrost", &Replacements::new())
+        .unwrap();
     let fields = header.split(',').count();
     let row = vec!["0"; fields].join(",");
-    let text = if header.starts_with(',') { row } else { format!("{header}\n{row}\n") };
+    let text = if header.starts_with(',') {
+        row
+    } else {
+        format!("{header}\n{row}\n")
+    };
     let source = Source::memory(text.into_bytes());
     let layout = source.layout(&Stated::default()).unwrap().unwrap();
     let text = format!("{stated}\n[[runs]]\nfile = 'Cargo.toml'\n");
@@ -18,18 +24,34 @@ fn try_match(header: &str, stated: &str) -> Result<Matched> {
 fn columns(header: &str, stated: &str) -> (usize, Vec<(usize, usize)>) {
     let matched = try_match(header, stated).unwrap();
     assert_eq!(matched.missing, [], "{header}");
-    (matched.time, matched.channels.iter().map(|c| (c.channel, c.column)).collect())
+    (
+        matched.time,
+        matched
+            .channels
+            .iter()
+            .map(|c| (c.channel, c.column))
+            .collect(),
+    )
 }
 
 #[test]
 fn names_are_matched_exactly_then_without_unit_then_in_any_case() {
     assert_eq!(columns("t,air,wall", ""), (0, vec![(0, 1), (1, 2)]));
-    assert_eq!(columns("wall,air,flow,Time", ""), (3, vec![(0, 1), (1, 0), (2, 2)]));
-    assert_eq!(columns("t [min],Air (K),WALL [degC]", ""), (0, vec![(0, 1), (1, 2)]));
+    assert_eq!(
+        columns("wall,air,flow,Time", ""),
+        (3, vec![(0, 1), (1, 0), (2, 2)])
+    );
+    assert_eq!(
+        columns("t [min],Air (K),WALL [degC]", ""),
+        (0, vec![(0, 1), (1, 2)])
+    );
     assert_eq!(columns("t,AIR,air,wall", ""), (0, vec![(0, 2), (1, 3)]));
     let stated = "[columns]\ntime = 'stamp'\nair = { column = 'T1', unit = 'K' }\nwall = 3";
     assert_eq!(columns("stamp,T1,T2", stated), (0, vec![(0, 1), (1, 2)]));
-    assert_eq!(columns(",,", "[columns]\nair = 3\nwall = 2"), (0, vec![(0, 2), (1, 1)]));
+    assert_eq!(
+        columns(",,", "[columns]\nair = 3\nwall = 2"),
+        (0, vec![(0, 2), (1, 1)])
+    );
 }
 
 #[test]
@@ -41,7 +63,10 @@ fn units_come_from_the_header_or_from_the_submission() {
     let matched = try_match("t [min],air,wall", "[columns]\ntime = { unit = 'h' }").unwrap();
     assert_eq!(matched.time_conversion.factor.to_f64(), 3600.0);
     let missing = try_match("t,air [V],wall", "").unwrap().missing;
-    assert_eq!(missing[0].1, "column `air` is in `V` as its header says, not in `degC`");
+    assert_eq!(
+        missing[0].1,
+        "column `air` is in `V` as its header says, not in `degC`"
+    );
     let fault = try_match("t,air,wall", "[columns]\nair = { unit = 'V' }").unwrap_err();
     assert_eq!(fault.text, "unit `V` does not convert to `degC`");
 }
@@ -67,9 +92,15 @@ fn missing_columns_are_named() {
     let missing = |header: &str, stated: &str| try_match(header, stated).unwrap().missing;
     assert_eq!(missing("t,air", "")[0].0, "wall");
     assert_eq!(missing("t,air,wall", "[columns]\nflow = 'q'")[0].0, "flow");
-    assert_eq!(missing("t,air,wall", "[columns]\nflow = 9")[0].1, "column 9 of 3");
+    assert_eq!(
+        missing("t,air,wall", "[columns]\nflow = 9")[0].1,
+        "column 9 of 3"
+    );
     // Stated columns say what is submitted; the rest is noted, not missed.
     let matched = try_match("t,T", "[columns]\nair = 'T'").unwrap();
     assert_eq!(matched.missing, []);
-    assert_eq!(matched.notes, ["state `wall` is not in the file and not compared"]);
+    assert_eq!(
+        matched.notes,
+        ["state `wall` is not in the file and not compared"]
+    );
 }

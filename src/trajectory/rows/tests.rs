@@ -12,7 +12,12 @@ fn read(text: &str, stated: &Stated) -> (Rows, Vec<Finding>) {
     let mut rows = Vec::new();
     survey
         .rows(&source, &mut findings, &|time| time == 5.0, &mut |row| {
-            rows.push((row.line, row.time.to_f64(), row.time_resolution, row.values.to_vec()));
+            rows.push((
+                row.line,
+                row.time.to_f64(),
+                row.time_resolution,
+                row.values.to_vec(),
+            ));
             Ok(())
         })
         .unwrap();
@@ -31,11 +36,17 @@ fn table(rows: impl IntoIterator<Item = i32>) -> String {
 
 #[test]
 fn rows_come_with_lines_and_exact_stamps() {
-    let (rows, found) = read("# made today\nt;x\n\n0,0;1,5\n0,1;2,25\n0,2;nan\n", &Stated::default());
+    let (rows, found) = read(
+        "# made today\nt;x\n\n0,0;1,5\n0,1;2,25\n0,2;nan\n",
+        &Stated::default(),
+    );
     assert_eq!(rows[0], (4, 0.0, 0.0, vec![Some(1.5)]));
     assert_eq!(rows[1], (5, 0.1, 0.0, vec![Some(2.25)]));
     assert_eq!(rows[2].3, [None]);
-    assert_eq!(found[0].to_owned().text, "column `x` is `nan`, not a number");
+    assert_eq!(
+        found[0].to_owned().text,
+        "column `x` is `nan`, not a number"
+    );
     assert_eq!((found[0].kind, found[0].line), (Kind::NotANumber, Some(6)));
 }
 
@@ -43,26 +54,54 @@ fn rows_come_with_lines_and_exact_stamps() {
 fn faults_have_their_line() {
     use Kind::*;
     assert_eq!(findings(&table(0..40)), []);
-    assert_eq!(findings(&table((0..40).filter(|k| *k != 20))), [(MissingRows, Some(22), true)]);
-    let doubled = findings(&table((0..40).flat_map(|k| vec![k; if k == 7 { 2 } else { 1 }])));
+    assert_eq!(
+        findings(&table((0..40).filter(|k| *k != 20))),
+        [(MissingRows, Some(22), true)]
+    );
+    let doubled = findings(&table(
+        (0..40).flat_map(|k| vec![k; if k == 7 { 2 } else { 1 }]),
+    ));
     assert_eq!(doubled, [(RepeatedStamp, Some(10), true)]);
-    let event = findings(&table((0..40).flat_map(|k| vec![k; if k == 5 { 2 } else { 1 }])));
+    let event = findings(&table(
+        (0..40).flat_map(|k| vec![k; if k == 5 { 2 } else { 1 }]),
+    ));
     assert_eq!(event, [(RepeatedStamp, Some(8), false)]);
     let at_the_end = findings(&table((0..40).chain([39])));
     assert_eq!(at_the_end, []);
     let swapped = findings(&table((0..10).chain([11, 10]).chain(12..40)));
-    assert!(swapped.contains(&(TimeNotIncreasing, Some(13), true)), "{swapped:?}");
-    assert_eq!(findings(&(table(0..9) + "9,1,2\n10,1.0\n")), [(RowLength, Some(11), true)]);
-    assert_eq!(findings(&(table(0..9) + "9,\n")), [(NotANumber, Some(11), true)]);
-    assert_eq!(findings(&(table(0..9) + "9,abc\n")), [(NotANumber, Some(11), true)]);
-    assert_eq!(findings(&(table(0..9) + "9")), [(CutOffLine, Some(11), true)]);
-    assert_eq!(findings(&(table(0..9) + "9,0.41")), [(CutOffLine, Some(11), true)]);
+    assert!(
+        swapped.contains(&(TimeNotIncreasing, Some(13), true)),
+        "{swapped:?}"
+    );
+    assert_eq!(
+        findings(&(table(0..9) + "9,1,2\n10,1.0\n")),
+        [(RowLength, Some(11), true)]
+    );
+    assert_eq!(
+        findings(&(table(0..9) + "9,\n")),
+        [(NotANumber, Some(11), true)]
+    );
+    assert_eq!(
+        findings(&(table(0..9) + "9,abc\n")),
+        [(NotANumber, Some(11), true)]
+    );
+    assert_eq!(
+        findings(&(table(0..9) + "9")),
+        [(CutOffLine, Some(11), true)]
+    );
+    assert_eq!(
+        findings(&(table(0..9) + "9,0.41")),
+        [(CutOffLine, Some(11), true)]
+    );
     assert_eq!(findings(&(table(0..9) + "9,0.4121")), []);
 }
 
 #[test]
 fn stated_digits_hold_for_values_and_uneven_stamps() {
-    let stated = Stated { digits: Some(3), ..Stated::default() };
+    let stated = Stated {
+        digits: Some(3),
+        ..Stated::default()
+    };
     let (rows, _) = read("t,x\n0,1\n0.5,2\n1.75,3\n2.25,5\n4.5,6\n", &stated);
     assert_eq!(rows[3].2, 0.005);
 }
