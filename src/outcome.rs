@@ -168,3 +168,17 @@ impl Outcome {
         all && self.not_audited.is_empty() && !self.submissions.is_empty()
     }
 }
+
+/// What the solution of a case says of it beside its equations.
+#[derive(Clone, Debug)]
+pub struct CaseFacts {
+    /// Times within the window at which an input jumps.
+    pub jumps: Vec<f64>,
+    /// Largest difference between closed form and propagator relative to the peak,
+    /// beyond their bounds; `None` without a closed form.
+    pub closed_form_gap: Option<f64>,
+    /// Shortest time constant, in the unit of the case.
+    pub shortest_time_constant: Option<f64>,
+    /// Shortest period, in the unit of the case.
+    pub shortest_period: Option<f64>,
+}

@@ -9,9 +9,10 @@ use super::args::{
 use super::plan;
 use crate::audit::audit;
 use crate::case::{Case, Library, Replacements};
-use crate::exact::Exact;
+use crate::exact::{Exact, approx_time_scales};
 use crate::fault::{Fault, quoted};
 use crate::number::{Decimal, Double};
+use crate::outcome::CaseFacts;
 use crate::report::{
     Screen, ValueWriter, WIDEST, audit_json, audit_text, case_json, case_list, case_text,
     write_atomically,
@@ -128,10 +129,17 @@ fn load(choice: &CaseChoice) -> Result<(Case, Exact), Stop> {
 
 fn run_case(arguments: &CaseArguments) -> Result<u8, Stop> {
     let (case, exact) = load(&arguments.choice)?;
+    let scales = approx_time_scales(&case);
+    let facts = CaseFacts {
+        jumps: exact.jumps().collect(),
+        closed_form_gap: exact.closed_form_gap(),
+        shortest_time_constant: scales.time_constant,
+        shortest_period: scales.period,
+    };
     let text = if arguments.json {
-        case_json(&case, &exact)
+        case_json(&case, &facts)
     } else {
-        case_text(&case, &exact, screen())
+        case_text(&case, &facts, screen())
     };
     print(&text)?;
     Ok(IN_ORDER)
@@ -144,7 +152,7 @@ fn run_exact(arguments: &ExactArguments) -> Result<u8, Stop> {
     let mut walk = exact.walk_rounded();
     let mut writer = ValueWriter::new(io::BufWriter::new(io::stdout().lock()), &names)?;
     let mut write = |time: Double| -> Result<(), Stop> {
-        let values = walk.at(time)?;
+        let values: Vec<f64> = walk.at(time)?.iter().map(|value| value.value).collect();
         writer.row(time.to_f64(), &values)?;
         Ok(())
     };

@@ -1,7 +1,7 @@
 //! Sentences: what, where, how to mend it.
 
 use crate::judge::{OrderVerdict, Verdict};
-use crate::number::{plain, short, short_within};
+use crate::number::{measured, plain, short};
 use crate::outcome::ErrorOutcome;
 use crate::trajectory::Finding;
 
@@ -30,7 +30,7 @@ pub fn limit_broken(
 ) -> String {
     let mut text = format!(
         "{file}: `{channel}` is off by {} {unit} at t = {} {time_unit}, {} times the limit",
-        short_within(errors.worst, errors.resolution),
+        measured(errors.worst, errors.resolution),
         plain(errors.at),
         short(errors.limit_used),
     );
@@ -56,20 +56,8 @@ pub fn limit_hidden(file: &str, channel: &str, unit: &str, errors: &ErrorOutcome
         errors.digits,
         short(errors.resolution),
         short(errors.limit),
-        error_text(errors),
+        measured(errors.worst, errors.resolution),
     )
-}
-
-/// An error with no digit that the file does not support.
-pub fn error_text(errors: &ErrorOutcome) -> String {
-    if errors.worst < errors.resolution {
-        format!(
-            "below {}",
-            short_within(errors.resolution, errors.resolution)
-        )
-    } else {
-        short_within(errors.worst, errors.resolution)
-    }
 }
 
 /// An order that does not pass.

@@ -23,4 +23,4 @@ pub use expm::{Flow, Propagator, Step};
 pub use matrix::{Matrix, dot};
 pub use quad::Quad;
 pub use real::Real;
-pub use short::{plain, short, short_within};
+pub use short::{measured, plain, short};

@@ -7,7 +7,7 @@ pub fn short(value: f64) -> String {
 }
 
 /// A measured value with as many digits as its doubt leaves, three at most.
-pub fn short_within(value: f64, doubt: f64) -> String {
+fn short_within(value: f64, doubt: f64) -> String {
     let known = (value.abs() / doubt).log10().floor() + 1.0;
     shown(
         value,
@@ -17,6 +17,15 @@ pub fn short_within(value: f64, doubt: f64) -> String {
             3
         },
     )
+}
+
+/// A measured magnitude with no digit that its doubt does not leave.
+pub fn measured(value: f64, doubt: f64) -> String {
+    if value < doubt {
+        format!("below {}", shown(doubt, 1))
+    } else {
+        short_within(value, doubt)
+    }
 }
 
 /// A number as it was given: plain where that is short, all its digits.

@@ -5,11 +5,11 @@ use serde_json::{Map, Number, Value};
 use super::json::text;
 use super::wire::{CaseReport, OutputReport, SCHEMA, StateReport, TimeReport};
 use crate::case::{Case, Input};
-use crate::exact::{Exact, approx_time_scales};
 use crate::formula::Affine;
+use crate::outcome::CaseFacts;
 
 /// The case as text, ending with a line end.
-pub fn case_json(case: &Case, exact: &Exact) -> String {
+pub fn case_json(case: &Case, facts: &CaseFacts) -> String {
     let states = case.states.len();
     let split = |affine: &Affine| -> (Vec<f64>, Vec<f64>, f64) {
         let numbers: Vec<f64> = affine.coefficients.iter().map(|c| c.to_f64()).collect();
@@ -25,7 +25,6 @@ pub fn case_json(case: &Case, exact: &Exact) -> String {
         )
     };
     let rates: Vec<_> = case.states.iter().map(|state| split(&state.rate)).collect();
-    let scales = approx_time_scales(case);
     text(&CaseReport {
         stepgauge: env!("CARGO_PKG_VERSION").to_owned(),
         schema: SCHEMA,
@@ -69,9 +68,9 @@ pub fn case_json(case: &Case, exact: &Exact) -> String {
                 }
             })
             .collect(),
-        jumps: exact.jumps().collect(),
-        shortest_time_constant: scales.time_constant,
-        shortest_period: scales.period,
+        jumps: facts.jumps.clone(),
+        shortest_time_constant: facts.shortest_time_constant,
+        shortest_period: facts.shortest_period,
     })
 }
 

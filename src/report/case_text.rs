@@ -3,8 +3,8 @@
 use super::NOT_FOR_DOSING;
 use super::style::{Screen, WIDE, coloured};
 use crate::case::{Case, Shape};
-use crate::exact::{Exact, approx_time_scales};
 use crate::number::{plain, short};
+use crate::outcome::CaseFacts;
 
 /// All cases as a table.
 pub fn case_list(cases: &[Case], screen: Screen) -> String {
@@ -49,7 +49,7 @@ pub fn case_list(cases: &[Case], screen: Screen) -> String {
 
 /// One case in full: equations, numbers, inputs, exact solution, and what a simulator
 /// must write.
-pub fn case_text(case: &Case, exact: &Exact, screen: Screen) -> String {
+pub fn case_text(case: &Case, facts: &CaseFacts, screen: Screen) -> String {
     let mut text = String::new();
     let mut put = |line: &str| {
         text += &screen.clean(line);
@@ -125,7 +125,7 @@ pub fn case_text(case: &Case, exact: &Exact, screen: Screen) -> String {
         ));
     }
     put("");
-    solution(case, exact).iter().for_each(|line| put(line));
+    solution(case, facts).iter().for_each(|line| put(line));
     put("");
     put("A simulator writes");
     let names: Vec<&str> = case
@@ -154,20 +154,20 @@ pub fn case_text(case: &Case, exact: &Exact, screen: Screen) -> String {
     coloured(&text)
 }
 
-fn solution(case: &Case, exact: &Exact) -> Vec<String> {
+fn solution(case: &Case, facts: &CaseFacts) -> Vec<String> {
     let mut lines = vec!["Exact solution".to_owned()];
-    lines.push(match exact.closed_form_gap() {
+    lines.push(match facts.closed_form_gap {
+        // Formulas are taken as double-double: about 1e-30 of the peak is their limit.
+        Some(gap) if gap < 1e-29 => {
+            "  closed form as above; exp(M t) gives the same to 29 digits of the peak".to_owned()
+        }
         Some(gap) => format!(
-            "  closed form as above; it agrees with exp(M t) to {} of each channel's peak",
-            if gap == 0.0 {
-                "within the bounds".to_owned()
-            } else {
-                short(gap)
-            }
+            "  closed form as above; exp(M t) gives the same to {} of the peak",
+            short(gap)
         ),
         None => "  by exp(M t) of states and inputs together; no closed form is stated".to_owned(),
     });
-    let jumps: Vec<f64> = exact.jumps().collect();
+    let jumps = &facts.jumps;
     let first: Vec<String> = jumps.iter().take(6).map(|&jump| plain(jump)).collect();
     match jumps.len() {
         0 => lines.push("  no jumps of an input within the window".to_owned()),
@@ -177,15 +177,14 @@ fn solution(case: &Case, exact: &Exact) -> Vec<String> {
         )),
         _ => lines.push(format!("  inputs jump at {}", first.join(", "))),
     }
-    let scales = approx_time_scales(case);
-    if let Some(constant) = scales.time_constant {
+    if let Some(constant) = facts.shortest_time_constant {
         lines.push(format!(
             "  shortest time constant {} {}",
             short(constant),
             case.time.unit
         ));
     }
-    if let Some(period) = scales.period {
+    if let Some(period) = facts.shortest_period {
         lines.push(format!(
             "  shortest period {} {}",
             short(period),

@@ -2,8 +2,6 @@
 
 use std::io::{self, Write};
 
-use crate::exact::Value;
-
 /// Writes a header and rows of values.
 pub struct ValueWriter<W: Write> {
     csv: csv::Writer<W>,
@@ -28,11 +26,11 @@ impl<W: Write> ValueWriter<W> {
     ///
     /// # Errors
     /// What the stream says.
-    pub fn row(&mut self, time: f64, values: &[Value]) -> io::Result<()> {
+    pub fn row(&mut self, time: f64, values: &[f64]) -> io::Result<()> {
         self.cells.clear();
         self.cells.push(shortest(time));
         self.cells
-            .extend(values.iter().map(|value| shortest(value.value)));
+            .extend(values.iter().map(|&value| shortest(value)));
         self.csv.write_record(&self.cells)?;
         Ok(())
     }

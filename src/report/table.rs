@@ -3,9 +3,8 @@
 
 use super::style::{Screen, Tone, WIDE, coloured, toned};
 use super::{NOT_FOR_DOSING, SCOPE};
-use crate::explain::error_text;
 use crate::judge::Verdict;
-use crate::number::{plain, short};
+use crate::number::{measured, plain, short};
 use crate::outcome::{Audited, ChannelOutcome, LimitsFrom, OrderOutcome, Outcome, RunOutcome};
 use crate::submission::{Expect, Role, Setting};
 
@@ -115,7 +114,7 @@ fn row(
         Outside(file),
         Outside(channel.map_or(String::new(), |channel| channel.name.clone())),
         Outside(errors.map_or(String::new(), |errors| {
-            format!("{} {unit}", error_text(errors))
+            format!("{} {unit}", measured(errors.worst, errors.resolution))
         })),
         Own(errors.map_or(String::new(), |errors| used_text(errors.limit_used))),
         Own(order_text(submission)),

@@ -9,3 +9,12 @@ mod certified;
 
 /// Trajectories of general-purpose integrators against certified errors.
 mod integrators;
+
+/// The commands as users run them: arguments in, output and exit status out.
+mod command;
+
+/// What holds for any numbers and any bytes.
+mod properties;
+
+/// The shape of the project: imports, sizes, the top level.
+mod tidy;
