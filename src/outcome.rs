@@ -2,7 +2,7 @@
 
 use crate::fault::Fault;
 use crate::judge::Verdict;
-use crate::submission::{Expect, Role, Setting};
+use crate::submission::{Expect, Role, Setting, Submission};
 use crate::trajectory::Finding;
 
 /// A whole audit.
@@ -28,8 +28,8 @@ pub struct NotAudited {
 pub struct Audited {
     /// Its folder, or the file.
     pub name: String,
-    /// The case.
-    pub case: String,
+    /// The case; `None` where the runs were only compared with each other.
+    pub case: Option<String>,
     /// The unit of its times.
     pub time_unit: String,
     /// Who wrote the files.
@@ -122,6 +122,26 @@ pub struct ErrorOutcome {
     pub limit: f64,
     /// Largest share of the limit over all rows.
     pub limit_used: f64,
+    /// The row with that share.
+    pub decisive: RowOutcome,
+    /// The row that comes nearest to the limit, or farthest beyond it, with what its
+    /// digits leave open counted against it.
+    pub doubtful: RowOutcome,
+    /// True where some row breaks its limit, whatever its digits leave open.
+    pub broken: bool,
+}
+
+/// One row of one channel.
+#[derive(Clone, Copy, Debug)]
+pub struct RowOutcome {
+    /// Its time.
+    pub at: f64,
+    /// `|written - exact|`.
+    pub error: f64,
+    /// What its digits resolve.
+    pub resolution: f64,
+    /// The limit there.
+    pub limit: f64,
 }
 
 /// The order of one channel over the ladder.
@@ -142,6 +162,33 @@ pub struct OrderOutcome {
 }
 
 impl Audited {
+    /// Before anything was found.
+    pub fn new(
+        name: String,
+        case: Option<String>,
+        time_unit: String,
+        submission: &Submission,
+        limits_from: LimitsFrom,
+    ) -> Audited {
+        let parameters = &submission.parameters;
+        Audited {
+            name,
+            case,
+            time_unit,
+            producer: submission.producer.clone(),
+            expect: submission.expect,
+            verdict: Verdict::Pass,
+            parameters: parameters.iter().map(|(n, v)| (n.clone(), *v)).collect(),
+            limits_from,
+            reasons: Vec::new(),
+            notes: Vec::new(),
+            runs: Vec::new(),
+            claimed_method: submission.claims.method.clone(),
+            orders: Vec::new(),
+            order_verdict: None,
+        }
+    }
+
     /// True where the verdict is the expected one.
     pub fn in_order(&self) -> bool {
         self.verdict

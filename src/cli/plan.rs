@@ -112,7 +112,8 @@ fn single_files(case: &str, arguments: &AuditArguments, plan: &mut Plan) -> Resu
             }],
         };
         let name = path.to_string_lossy().into_owned();
-        plan.submissions.push(planned(name, submission, arguments));
+        plan.submissions
+            .push(planned(name, None, submission, arguments));
     }
     if faults.is_empty() {
         Ok(())
@@ -138,9 +139,10 @@ fn submissions(arguments: &AuditArguments, plan: &mut Plan) -> Result<(), Vec<Fa
     places.dedup();
     for place in places {
         match read(&place) {
-            Ok(submission) => plan
-                .submissions
-                .push(planned(place.name, submission, arguments)),
+            Ok(submission) => {
+                let one = planned(place.name, Some(place.file), submission, arguments);
+                plan.submissions.push(one);
+            }
             Err(faults) => {
                 let faults = faults
                     .into_iter()
@@ -179,7 +181,12 @@ fn read(place: &Place) -> Result<Submission, Vec<Fault>> {
 }
 
 /// Limits of the command line go before all others, those of channels included.
-fn planned(name: String, mut submission: Submission, arguments: &AuditArguments) -> Planned {
+fn planned(
+    name: String,
+    file: Option<PathBuf>,
+    mut submission: Submission,
+    arguments: &AuditArguments,
+) -> Planned {
     let limits_from_command_line = arguments.absolute.is_some() || arguments.relative.is_some();
     if limits_from_command_line {
         let of_peak = match arguments.relative_to {
@@ -197,6 +204,7 @@ fn planned(name: String, mut submission: Submission, arguments: &AuditArguments)
     }
     Planned {
         name,
+        file,
         submission,
         limits_from_command_line,
     }

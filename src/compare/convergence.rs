@@ -1,6 +1,8 @@
 //! Three runs compared with each other, where nothing exact is at hand: the order that
 //! they show, the value they tend to, and the grid convergence index.
 
+use super::order::Pair;
+
 /// What three runs of falling step say of the error of the finest.
 ///
 /// # Formula
@@ -71,4 +73,64 @@ pub fn grid_convergence(steps: [f64; 3], values: [f64; 3]) -> Option<Convergence
         index: SAFETY * relative_difference / (gain - 1.0),
         oscillating: sign < 0.0,
     })
+}
+
+/// Three neighbouring runs compared with each other at the stamps that they share.
+///
+/// `differences` are the largest differences between the finer two and between the
+/// coarser two, `doubt` what their digits leave open in each, `peak` the largest value.
+/// The pair joins the finest setting with the coarsest.
+pub fn order_of_three(
+    steps: [f64; 3],
+    differences: [f64; 2],
+    doubt: f64,
+    peak: f64,
+) -> Option<Pair> {
+    let order = |fine: f64, coarse: f64| {
+        let values = [peak, peak + fine, peak + fine + coarse];
+        // Differences far below the peak would drown in it.
+        let shifted = if fine < 1e-6 * peak {
+            [0.0, fine, fine + coarse]
+        } else {
+            values
+        };
+        grid_convergence(steps, shifted).map(|found| found.order)
+    };
+    let [fine, coarse] = differences;
+    let clear = fine > 2.5 * doubt && coarse > 2.5 * doubt && fine < 0.5 * peak;
+    if !clear {
+        return None;
+    }
+    Some(Pair {
+        settings: (steps[2], steps[0]),
+        order: order(fine, coarse)?,
+        low: order(fine + doubt, coarse - doubt).unwrap_or(0.0),
+        high: order(fine - doubt, coarse + doubt)?,
+    })
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    #[test]
+    fn three_runs_of_a_known_order_show_it() {
+        let error = |h: f64| 0.3 * h.powi(3);
+        let steps = [0.1, 0.2, 0.4];
+        let differences = [error(0.2) - error(0.1), error(0.4) - error(0.2)];
+        let pair = order_of_three(steps, differences, 1e-12, 1.0).unwrap();
+        assert!((pair.order - 3.0).abs() < 1e-9, "{pair:?}");
+        assert!(pair.low <= pair.order && pair.order <= pair.high);
+        assert_eq!(order_of_three(steps, differences, 1e-2, 1.0), None);
+    }
+
+    #[test]
+    fn values_that_tell_nothing_are_refused() {
+        assert_eq!(grid_convergence([1.0, 2.0, 4.0], [1.0, 1.0, 1.0]), None);
+        assert_eq!(grid_convergence([1.0, 1.0, 4.0], [1.0, 2.0, 4.0]), None);
+        assert_eq!(
+            grid_convergence([1.0, 2.0, 4.0], [1.0, f64::NAN, 4.0]),
+            None
+        );
+    }
 }

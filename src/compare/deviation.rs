@@ -35,6 +35,8 @@ pub struct Comparison<'a> {
     pub step: Option<f64>,
     /// Fewest rows within the window.
     pub least_rows: u64,
+    /// The unit of time of the case, for findings.
+    pub time_unit: &'a str,
 }
 
 /// What came out for one run.
@@ -78,6 +80,23 @@ pub struct Deviation {
     pub refuted: bool,
     /// How the errors lie to the limit.
     pub margin: Margin,
+    /// The row that uses most of its limit.
+    pub decisive: Spot,
+    /// The same with the resolution counted against it.
+    pub doubtful: Spot,
+}
+
+/// One row of one channel.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct Spot {
+    /// Its time.
+    pub at: f64,
+    /// `|written - exact|`.
+    pub error: f64,
+    /// What its digits resolve.
+    pub resolution: f64,
+    /// The limit there.
+    pub limit: f64,
 }
 
 /// How the errors of all rows lie to the limit.
@@ -102,10 +121,8 @@ const FAR_BELOW: f64 = 0.1;
 /// Running sums of one channel.
 struct Sums {
     rows: u64,
-    worst: f64,
-    worst_at: f64,
-    worst_exact: f64,
-    worst_doubt: [f64; 2],
+    worst: Spot,
+    worst_full: f64,
     squares: f64,
     end: f64,
     peak: f64,
@@ -121,8 +138,11 @@ struct Sums {
 struct Against {
     /// Against the limit of each row.
     margin: Margin,
-    /// The same without the limit, for one that is known only at the end.
-    above: f64,
+    decisive: Spot,
+    doubtful: Spot,
+    /// The row farthest from the exact value at most, for a limit that is known only
+    /// at the end; and the largest certain error.
+    above: Spot,
     below: f64,
 }
 
@@ -203,6 +223,7 @@ impl<'a> Comparison<'a> {
         findings: &mut Findings,
     ) {
         let (from, to) = (self.exact.from().to_f64(), self.exact.to().to_f64());
+        let unit = self.time_unit;
         let Some(((begin, begins), (end, ends))) = first.zip(last) else {
             findings.fatal(Kind::EmptyFile, None, "the file has no rows of numbers");
             return;
@@ -210,11 +231,14 @@ impl<'a> Comparison<'a> {
         // The first row may come later than the start, or lie before it: the start is
         // covered only by a row that is there.
         if !begins || begin > to {
-            let text = format!("the first row is at t = {begin}, the window starts at {from}");
+            let text = format!(
+                "the first row is at t = {begin} {unit}, the window starts at {from} {unit}"
+            );
             findings.fatal(Kind::WindowNotCovered, None, text);
         }
         if !ends {
-            let text = format!("the last row is at t = {end}, the window ends at {to}");
+            let text =
+                format!("the last row is at t = {end} {unit}, the window ends at {to} {unit}");
             findings.fatal(Kind::WindowNotCovered, None, text);
         }
         if rows < self.least_rows {
@@ -332,40 +356,85 @@ impl Margin {
     };
 }
 
+impl Spot {
+    const NOWHERE: Spot = Spot {
+        at: f64::NAN,
+        error: 0.0,
+        resolution: 0.0,
+        limit: f64::INFINITY,
+    };
+
+    fn most(&self) -> f64 {
+        self.error + self.resolution
+    }
+}
+
 /// `error / limit`, with no error using nothing of any limit.
 fn share(error: f64, limit: f64) -> f64 {
     if error == 0.0 { 0.0 } else { error / limit }
 }
 
+impl Against {
+    const NOTHING: Against = Against {
+        margin: Margin::NOTHING,
+        decisive: Spot::NOWHERE,
+        doubtful: Spot::NOWHERE,
+        above: Spot::NOWHERE,
+        below: f64::NEG_INFINITY,
+    };
+
+    fn add(&mut self, row: Spot, first: bool) {
+        let Spot {
+            error,
+            resolution,
+            limit,
+            ..
+        } = row;
+        self.margin.certain = self.margin.certain.max(row.most() - limit);
+        self.margin.broken = self.margin.broken.max(error - resolution - limit);
+        let used = share(error, limit);
+        if first || used > self.margin.used {
+            self.margin.used = used;
+            self.decisive = row;
+        }
+        if first || share(row.most(), limit) > share(self.doubtful.most(), self.doubtful.limit) {
+            self.doubtful = row;
+        }
+        if first || row.most() > self.above.most() {
+            self.above = row;
+        }
+        self.below = self.below.max(error - resolution);
+    }
+}
+
 impl Sums {
     fn new() -> Sums {
-        let against = Against {
-            margin: Margin::NOTHING,
-            above: f64::NEG_INFINITY,
-            below: f64::NEG_INFINITY,
-        };
         Sums {
             rows: 0,
-            worst: 0.0,
-            worst_at: f64::NAN,
-            worst_exact: 0.0,
-            worst_doubt: [0.0; 2],
+            worst: Spot::NOWHERE,
+            worst_full: 0.0,
             squares: 0.0,
             end: 0.0,
             peak: 0.0,
             telling: 0,
             largest_in_units: 0.0,
-            with: [against; 2],
+            with: [Against::NOTHING; 2],
         }
     }
 
-    fn add(&mut self, time: f64, signed: f64, size: f64, doubts: [f64; 2], limit: &Limit) {
+    fn add(&mut self, at: f64, signed: f64, size: f64, doubts: [f64; 2], limit: &Limit) {
         let error = signed.abs();
-        if self.rows == 0 || error > self.worst {
-            self.worst = error;
-            self.worst_at = time;
-            self.worst_exact = size;
-            self.worst_doubt = doubts;
+        let first = self.rows == 0;
+        let limit = limit.at(size);
+        let rows = doubts.map(|resolution| Spot {
+            at,
+            error,
+            resolution,
+            limit,
+        });
+        if first || error > self.worst.error {
+            self.worst = rows[0];
+            self.worst_full = doubts[1];
         }
         self.rows += 1;
         self.squares += error * error;
@@ -373,13 +442,8 @@ impl Sums {
         self.peak = self.peak.max(size);
         self.telling += u64::from(error > 0.0);
         self.largest_in_units = self.largest_in_units.max(share(error, doubts[0]));
-        let allowed = limit.at(size);
-        for (with, doubt) in self.with.iter_mut().zip(doubts) {
-            with.margin.certain = with.margin.certain.max(error + doubt - allowed);
-            with.margin.broken = with.margin.broken.max(error - doubt - allowed);
-            with.margin.used = with.margin.used.max(share(error, allowed));
-            with.above = with.above.max(error + doubt);
-            with.below = with.below.max(error - doubt);
+        for (with, row) in self.with.iter_mut().zip(rows) {
+            with.add(row, first);
         }
     }
 
@@ -387,31 +451,45 @@ impl Sums {
         let guessed = printed != Resolution::Full;
         let refuted =
             guessed && self.telling >= ROWS_TO_REFUTE && self.largest_in_units < FAR_BELOW;
-        let which = usize::from(refuted);
-        let with = self.with[which];
-        let (margin, worst_limit) = if limit.of_peak {
-            let allowed = limit.at(self.peak);
-            let margin = Margin {
-                certain: with.above - allowed,
-                broken: with.below - allowed,
-                used: share(self.worst, allowed),
-            };
-            (margin, allowed)
+        let with = self.with[usize::from(refuted)];
+        let worst_resolution = if refuted {
+            self.worst_full
         } else {
-            (with.margin, limit.at(self.worst_exact))
+            self.worst.resolution
         };
+        let mut worst = Spot {
+            resolution: worst_resolution,
+            ..self.worst
+        };
+        let (mut margin, mut decisive, mut doubtful) = (with.margin, with.decisive, with.doubtful);
+        if limit.of_peak {
+            let allowed = limit.at(self.peak);
+            margin = Margin {
+                certain: with.above.most() - allowed,
+                broken: with.below - allowed,
+                used: share(worst.error, allowed),
+            };
+            worst.limit = allowed;
+            decisive = worst;
+            doubtful = Spot {
+                limit: allowed,
+                ..with.above
+            };
+        }
         Deviation {
             rows: self.rows,
-            worst: self.worst,
-            worst_at: self.worst_at,
-            worst_resolution: self.worst_doubt[which],
-            worst_limit,
+            worst: worst.error,
+            worst_at: worst.at,
+            worst_resolution,
+            worst_limit: worst.limit,
             rms: (self.squares / self.rows.max(1) as f64).sqrt(),
             end: self.end,
             peak: self.peak,
             resolution: if refuted { Resolution::Full } else { printed },
             refuted,
             margin,
+            decisive,
+            doubtful,
         }
     }
 }

@@ -7,6 +7,6 @@ mod convergence;
 mod deviation;
 mod order;
 
-pub use convergence::{Convergence, grid_convergence};
-pub use deviation::{Compared, Comparison, Deviation, Limit, Margin};
-pub use order::{Pair, Rung, Sight, observe};
+pub use convergence::{Convergence, grid_convergence, order_of_three};
+pub use deviation::{Compared, Comparison, Deviation, Limit, Margin, Spot};
+pub use order::{Pair, Rung, Sight, agreeing, observe};

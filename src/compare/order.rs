@@ -114,6 +114,16 @@ pub fn observe(rungs: &[Rung]) -> Sight {
         .windows(2)
         .map(|pair| between(&pair[0], &pair[1]))
         .collect();
+    let agreeing = agreeing(&pairs);
+    Sight::Pairs {
+        pairs,
+        agreeing,
+        usable: usable.len(),
+    }
+}
+
+/// How many of the finest pairs agree.
+pub fn agreeing(pairs: &[Pair]) -> usize {
     let mut agreeing = 1;
     while agreeing < pairs.len() {
         let finer = &pairs[pairs.len() - agreeing];
@@ -124,11 +134,7 @@ pub fn observe(rungs: &[Rung]) -> Sight {
         }
         agreeing += 1;
     }
-    Sight::Pairs {
-        pairs,
-        agreeing,
-        usable: usable.len(),
-    }
+    agreeing
 }
 
 fn why_too_few(rungs: &[Rung]) -> String {
@@ -140,7 +146,7 @@ fn why_too_few(rungs: &[Rung]) -> String {
     for (count, what) in [
         (coarse, "hidden by the printed digits"),
         (rounded, "at rounding level"),
-        (large, "as large as the solution"),
+        (large, "above half the peak of the channel"),
     ] {
         if count > 0 {
             reasons.push(format!("{count} of {} errors {what}", rungs.len()));

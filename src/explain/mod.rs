@@ -3,4 +3,4 @@
 
 mod reasons;
 
-pub use reasons::{fatal_finding, limit_broken, limit_hidden, order_reason, without_values};
+pub use reasons::{Place, fatal_finding, limit_broken, limit_hidden, order_reason, without_values};

@@ -13,26 +13,42 @@ pub fn fatal_finding(file: &str, finding: &Finding) -> String {
     }
 }
 
+/// Where a sentence points.
+#[derive(Clone, Copy, Debug)]
+pub struct Place<'a> {
+    /// The file.
+    pub file: &'a str,
+    /// The channel.
+    pub channel: &'a str,
+    /// Its unit.
+    pub unit: &'a str,
+    /// The unit of time of the case.
+    pub time_unit: &'a str,
+}
+
 /// A channel without a single value.
-pub fn without_values(file: &str, channel: &str) -> String {
-    format!("{file}: `{channel}` has no values to compare")
+pub fn without_values(place: &Place) -> String {
+    format!(
+        "{}: `{}` has no values to compare",
+        place.file, place.channel
+    )
 }
 
 /// A limit that is broken; `observed` is the order and the step of the run, from which
 /// a step follows that would keep it.
-pub fn limit_broken(
-    file: &str,
-    channel: &str,
-    unit: &str,
-    time_unit: &str,
-    errors: &ErrorOutcome,
-    observed: Option<(f64, f64)>,
-) -> String {
+pub fn limit_broken(place: &Place, errors: &ErrorOutcome, observed: Option<(f64, f64)>) -> String {
+    let Place {
+        file,
+        channel,
+        unit,
+        time_unit,
+    } = place;
+    let row = &errors.decisive;
     let mut text = format!(
-        "{file}: `{channel}` is off by {} {unit} at t = {} {time_unit}, {} times the limit",
-        measured(errors.worst, errors.resolution),
-        plain(errors.at),
-        short(errors.limit_used),
+        "{file}: `{channel}` is off by {} {unit} at t = {} {time_unit}, {}",
+        measured(row.error, row.resolution),
+        plain(row.at),
+        share_of_limit(errors.limit_used),
     );
     if let Some((order, step)) = observed
         && order > 0.3
@@ -40,24 +56,51 @@ pub fn limit_broken(
     {
         // A tenth is left for the error to be not quite as regular as its order.
         let needed = 0.9 * step * errors.limit_used.powf(-1.0 / order);
+        let needed = rounded_down(needed);
         text += &format!(
-            "; at the order {order:.1} seen, a step of {} would keep it",
-            short_step(needed)
+            "; at the order {order:.1} seen, a step of {needed} {time_unit} would keep it"
         );
     }
     text
 }
 
+fn share_of_limit(used: f64) -> String {
+    if used.is_infinite() {
+        "where no error is allowed".to_owned()
+    } else if used < 10.0 {
+        format!("{:.0} % of the limit", 100.0 * used)
+    } else {
+        format!("{} times the limit", short(used))
+    }
+}
+
 /// A limit that the digits are too few for.
-pub fn limit_hidden(file: &str, channel: &str, unit: &str, errors: &ErrorOutcome) -> String {
-    format!(
-        "{file}: `{channel}` is printed too coarsely to tell: {} resolve {} {unit}, the limit is {} {unit} \
-         and the error {} {unit}; print more digits",
-        errors.digits,
-        short(errors.resolution),
-        short(errors.limit),
-        measured(errors.worst, errors.resolution),
-    )
+pub fn limit_hidden(place: &Place, errors: &ErrorOutcome) -> String {
+    let Place {
+        file,
+        channel,
+        unit,
+        time_unit,
+    } = place;
+    let row = &errors.doubtful;
+    let text = format!(
+        "{file}: `{channel}` cannot be told at t = {} {time_unit}: an error of {} {unit} against a \
+         limit of {} {unit}, known to {} {unit} only",
+        plain(row.at),
+        measured(row.error, row.resolution),
+        short(row.limit),
+        short(row.resolution),
+    );
+    if errors.digits.contains("double") {
+        format!("{text}; the limit lies at the rounding of double precision")
+    } else {
+        // Three digits below the limit leave a thousandth of it open.
+        let more = (row.resolution / row.limit).log10().ceil().max(0.0) + 2.0;
+        format!(
+            "{text} ({} printed); print {more} digits more",
+            errors.digits
+        )
+    }
 }
 
 /// An order that does not pass.
@@ -67,10 +110,9 @@ pub fn order_reason(channel: &str, claimed: f64, order: &OrderVerdict) -> Option
         (Verdict::Pass, _) => None,
         (Verdict::Fail, Some(pair)) => {
             let mut text = format!(
-                "`{channel}` shows order {:.2} ({:.2} to {:.2}) from {} runs, {} is claimed",
+                "`{channel}` shows order {:.2}{} from {} runs, {} is claimed",
                 pair.order,
-                pair.low,
-                pair.high,
+                interval(pair.low, pair.high),
                 order.rungs_used,
                 plain(claimed),
             );
@@ -90,7 +132,18 @@ pub fn order_reason(channel: &str, claimed: f64, order: &OrderVerdict) -> Option
 }
 
 /// A step for a sentence: two digits, rounded down.
-fn short_step(step: f64) -> String {
-    let unit = 10f64.powf(step.log10().floor() - 1.0);
-    short((step / unit).floor() * unit)
+fn rounded_down(step: f64) -> String {
+    let exponent = step.log10().floor();
+    let digits = (step / 10f64.powf(exponent - 1.0)).floor();
+    let text = format!("{digits}e{}", exponent - 1.0);
+    text.parse::<f64>().map_or(text, plain)
+}
+
+/// An interval where it says more than the value itself.
+fn interval(low: f64, high: f64) -> String {
+    if high - low < 0.015 {
+        String::new()
+    } else {
+        format!(" ({low:.2} to {high:.2})")
+    }
 }

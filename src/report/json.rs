@@ -132,6 +132,7 @@ fn channel(channel: &ChannelOutcome) -> ChannelReport {
         digits: errors.map(|e| e.digits.clone()),
         limit: number(|e| e.limit),
         limit_used: number(|e| e.limit_used),
+        limit_used_at: number(|e| e.decisive.at),
         verdict: channel.verdict.word().to_owned(),
     }
 }

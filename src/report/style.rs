@@ -110,7 +110,8 @@ impl Screen {
         let mut table = Table::new();
         table.load_style(style);
         table.set_content_arrangement(ContentArrangement::Dynamic);
-        table.set_width(self.width);
+        // Below this a table would be letters under each other: better that lines wrap.
+        table.set_width(self.width.max(76));
         table.set_header(
             headings
                 .iter()

@@ -1,11 +1,17 @@
 //! The terminal report of an audit: a row for each submission, then a line for each
 //! thing that is not in order.
 
-use super::style::{Screen, Tone, WIDE, coloured, toned};
+use std::cmp::Ordering;
+
+use comfy_table::{ColumnConstraint, Table};
+
+use super::style::{Screen, Tone, coloured, toned};
 use super::{NOT_FOR_DOSING, SCOPE};
 use crate::judge::Verdict;
 use crate::number::{measured, plain, short};
-use crate::outcome::{Audited, ChannelOutcome, LimitsFrom, OrderOutcome, Outcome, RunOutcome};
+use crate::outcome::{
+    Audited, ChannelOutcome, ErrorOutcome, LimitsFrom, OrderOutcome, Outcome, RunOutcome,
+};
 use crate::submission::{Expect, Role, Setting};
 
 /// The report as text with terminal codes for colour; write it to a stream that
@@ -21,7 +27,7 @@ pub fn audit_text(outcome: &Outcome, screen: Screen) -> String {
     }
     let controls = controls(outcome, screen);
     if !controls.is_empty() {
-        text += &format!("\nControls, wrong on purpose:\n{controls}");
+        text += &format!("\nControls, as expected:\n{controls}");
     }
     let notes = notes(outcome, screen);
     if !notes.is_empty() {
@@ -34,36 +40,40 @@ pub fn audit_text(outcome: &Outcome, screen: Screen) -> String {
 }
 
 fn table(outcome: &Outcome, screen: Screen) -> String {
-    let wide = screen.width >= WIDE;
-    let mut headings = vec![
-        "verdict",
-        "submission",
-        "run",
-        "channel",
-        ">error",
-        ">limit used",
-        "order",
-    ];
-    if wide {
-        headings.splice(2..2, ["case", "producer"]);
-        headings.insert(5, ">step");
-        headings.insert(6, ">rows");
-        headings.extend([">rms error", ">worst at"]);
-    }
-    let mut table = screen.table(&headings);
+    let mut table: Option<Table> = None;
     for submission in &outcome.submissions {
-        let runs = submission
+        let results = submission
             .runs
             .iter()
             .filter(|run| run.role == Role::Result);
-        let worst = runs
+        let channels = results
             .clone()
             .flat_map(|run| run.channels.iter().map(move |c| (run, c)));
-        let worst = worst.max_by(|a, b| badness(a.1).total_cmp(&badness(b.1)));
-        let run = worst.map(|(run, _)| run).or_else(|| runs.clone().next());
-        let row = row(submission, run, worst.map(|(_, channel)| channel), wide);
-        table.add_row(row.into_iter().map(|cell| cell_text(screen, cell)));
+        let worst = channels.max_by(|a, b| worse(a.1, b.1));
+        let run = worst.map(|(run, _)| run).or_else(|| results.clone().next());
+        let mut cells = cells(submission, run, worst.map(|(_, channel)| channel));
+        cells.retain(|cell| cell.from_width <= screen.width);
+        let table = table.get_or_insert_with(|| {
+            let headings: Vec<&str> = cells.iter().map(|cell| cell.heading).collect();
+            let mut table = screen.table(&headings);
+            for (index, cell) in cells.iter().enumerate() {
+                // What would be torn apart in mid-word keeps its width.
+                let whole = !matches!(cell.heading, "verdict" | "order" | "producer");
+                if let Some(column) = table.column_mut(index).filter(|_| whole) {
+                    column.set_constraint(ColumnConstraint::ContentWidth);
+                }
+            }
+            table
+        });
+        let longest = usize::from(screen.width) / 4;
+        table.add_row(cells.into_iter().map(|cell| match cell.text {
+            Text::Own(text) => screen.plain(&text),
+            Text::Outside(text) => folded(&screen.clean(&text), longest),
+        }));
     }
+    let Some(table) = table else {
+        return String::new();
+    };
     let lines: Vec<String> = table
         .lines()
         .map(|line| line.trim_end().to_owned())
@@ -71,70 +81,94 @@ fn table(outcome: &Outcome, screen: Screen) -> String {
     lines.join("\n") + "\n"
 }
 
-/// A cell: our own text with its tone, or text from outside.
-enum Cell {
+/// One cell with its column: the heading (set to the right after `>`), and the width of
+/// screen from which on the column is shown.
+struct Cell {
+    heading: &'static str,
+    from_width: u16,
+    text: Text,
+}
+
+/// Our own text with its tone, or text from outside.
+enum Text {
     Own(String),
     Outside(String),
 }
 
-fn cell_text(screen: Screen, cell: Cell) -> String {
-    match cell {
-        Cell::Own(text) => screen.plain(&text),
-        Cell::Outside(text) => screen.clean(&text),
+/// Long names go over several lines, broken where a name may be.
+fn folded(text: &str, longest: usize) -> String {
+    let mut out = String::new();
+    let mut line = String::new();
+    for part in text.split_inclusive(['/', '-', '_', ' ']) {
+        if !line.is_empty() && line.chars().count() + part.chars().count() > longest {
+            out += &line;
+            out.push('\n');
+            line.clear();
+        }
+        line += part;
     }
+    out + &line
 }
 
 /// Which channel of a submission is shown: one that fails before one that is open,
 /// then the one that uses most of its limit.
-fn badness(channel: &ChannelOutcome) -> f64 {
-    let rank = match channel.verdict {
-        Verdict::Fail => 2e300,
-        Verdict::Undecided => 1e300,
-        Verdict::Pass => 0.0,
-    };
-    rank + channel
+fn badness(channel: &ChannelOutcome) -> (Verdict, f64) {
+    let used = channel
         .errors
         .as_ref()
-        .map_or(1e299, |errors| errors.limit_used.min(1e299))
+        .map_or(f64::INFINITY, |errors| errors.limit_used);
+    (channel.verdict, used)
 }
 
-fn row(
+fn worse(a: &ChannelOutcome, b: &ChannelOutcome) -> Ordering {
+    let ((a, a_used), (b, b_used)) = (badness(a), badness(b));
+    a.cmp(&b).then(a_used.total_cmp(&b_used))
+}
+
+fn cells(
     submission: &Audited,
     run: Option<&RunOutcome>,
     channel: Option<&ChannelOutcome>,
-    wide: bool,
 ) -> Vec<Cell> {
-    use Cell::{Outside, Own};
+    use Text::{Outside, Own};
     let errors = channel.and_then(|channel| channel.errors.as_ref());
     let unit = channel.map_or("", |channel| channel.unit.as_str());
-    let file = run.map_or(String::new(), |run| run.file.clone());
-    let mut cells = vec![
-        Own(verdict_text(submission)),
-        Outside(submission.name.clone()),
-        Outside(file),
-        Outside(channel.map_or(String::new(), |channel| channel.name.clone())),
-        Outside(errors.map_or(String::new(), |errors| {
-            format!("{} {unit}", measured(errors.worst, errors.resolution))
-        })),
-        Own(errors.map_or(String::new(), |errors| used_text(errors.limit_used))),
-        Own(order_text(submission)),
-    ];
-    if wide {
-        let producer = submission.producer.clone().unwrap_or_default();
-        cells.splice(2..2, [Outside(submission.case.clone()), Outside(producer)]);
-        let step = run.map_or(String::new(), step_text);
-        cells.insert(5, Own(step));
-        cells.insert(
-            6,
-            Own(run.map_or(String::new(), |run| run.rows.to_string())),
-        );
-        cells.push(Own(errors.map_or(String::new(), |errors| short(errors.rms))));
-        let at = |at: f64| format!("{} {}", plain(at), submission.time_unit);
-        cells.push(Outside(
-            errors.map_or(String::new(), |errors| at(errors.at)),
-        ));
-    }
-    cells
+    let cell = |heading, from_width, text| Cell {
+        heading,
+        from_width,
+        text,
+    };
+    let own = |heading, from_width, text: Option<String>| {
+        cell(heading, from_width, Own(text.unwrap_or_default()))
+    };
+    let outside = |heading, from_width, text: Option<String>| {
+        cell(heading, from_width, Outside(text.unwrap_or_default()))
+    };
+    let used = |channel: &ChannelOutcome| match channel.verdict {
+        // A share that the digits do not support would read like a verdict.
+        Verdict::Undecided => Some("open".to_owned()),
+        _ => channel
+            .errors
+            .as_ref()
+            .map(|errors| used_text(errors.limit_used)),
+    };
+    let error = |e: &ErrorOutcome| format!("{} {unit}", measured(e.worst, e.resolution));
+    let at = |e: &ErrorOutcome| format!("{} {}", plain(e.at), submission.time_unit);
+    vec![
+        own("verdict", 0, Some(verdict_text(submission))),
+        outside("submission", 0, Some(submission.name.clone())),
+        outside("case", 150, submission.case.clone()),
+        outside("producer", 150, submission.producer.clone()),
+        outside("run", 110, run.map(|run| run.file.clone())),
+        own(">step", 150, run.map(step_text)),
+        own(">rows", 150, run.map(|run| run.rows.to_string())),
+        outside("channel", 0, channel.map(|channel| channel.name.clone())),
+        outside(">worst error", 0, errors.map(error)),
+        outside(">at t", 110, errors.map(at)),
+        own(">limit used", 0, channel.and_then(used)),
+        own("order", 0, Some(order_text(submission))),
+        own(">rms error", 190, errors.map(|errors| short(errors.rms))),
+    ]
 }
 
 fn step_text(run: &RunOutcome) -> String {
@@ -196,7 +230,7 @@ fn order_text(submission: &Audited) -> String {
     let shown = shown.max_by(|a, b| {
         (a.verdict, -low(a))
             .partial_cmp(&(b.verdict, -low(b)))
-            .unwrap_or(std::cmp::Ordering::Equal)
+            .unwrap_or(Ordering::Equal)
     });
     let Some(order) = shown else {
         return String::new();
@@ -205,6 +239,9 @@ fn order_text(submission: &Audited) -> String {
         .claimed
         .map_or(String::new(), |claimed| format!(" of {}", plain(claimed)));
     match order.observed {
+        Some((value, low, high)) if high - low > 0.3 => {
+            format!("{value:.1} ({low:.1} to {high:.1}){claim}")
+        }
         Some((value, ..)) => format!("{value:.2}{claim}"),
         None if order
             .note
@@ -224,29 +261,19 @@ fn troubles(outcome: &Outcome, screen: Screen) -> String {
         .iter()
         .filter(|submission| !submission.in_order())
     {
-        if submission.reasons.is_empty() {
-            let expected = match submission.expect {
-                Expect::Fail => "fail",
-                Expect::Undecided => "stay undecided",
-                Expect::Pass => "pass",
-            };
-            let text = format!(
-                "was expected to {expected}, but is {}",
-                submission.verdict.word()
-            );
-            lines += &line(screen, &submission.name, &text);
+        match submission.expect {
+            Expect::Pass => {}
+            Expect::Fail => lines += &line(screen, &submission.name, "was expected to fail"),
+            Expect::Undecided => {
+                lines += &line(screen, &submission.name, "was expected to stay undecided")
+            }
         }
-        for reason in &submission.reasons {
-            lines += &line(screen, &submission.name, reason);
-        }
+        lines += &reasons(submission, screen);
     }
     for missing in &outcome.not_audited {
         for fault in &missing.faults {
-            let text = format!(
-                "not audited: {}",
-                fault.to_string().replace("\n  help:", "; help:")
-            );
-            lines += &line(screen, &missing.name, &text);
+            let text = fault.to_string().replace("\n  help:", "; help:");
+            lines += &line(screen, &missing.name, &format!("not audited: {text}"));
         }
     }
     lines
@@ -254,43 +281,80 @@ fn troubles(outcome: &Outcome, screen: Screen) -> String {
 
 fn controls(outcome: &Outcome, screen: Screen) -> String {
     let kept = |s: &&Audited| s.in_order() && s.expect != Expect::Pass;
-    let reasons = outcome.submissions.iter().filter(kept).map(|submission| {
-        let reason = submission.reasons.first().map_or("", String::as_str);
-        line(screen, &submission.name, reason)
-    });
-    reasons.collect()
+    outcome
+        .submissions
+        .iter()
+        .filter(kept)
+        .map(|submission| reasons(submission, screen))
+        .collect()
 }
 
-fn notes(outcome: &Outcome, screen: Screen) -> String {
+/// Reasons shown for one submission; a file can have a hundred channels.
+const MOST_REASONS: usize = 8;
+
+fn reasons(submission: &Audited, screen: Screen) -> String {
     let mut lines = String::new();
-    for submission in &outcome.submissions {
-        for note in &submission.notes {
-            lines += &line(screen, &submission.name, note);
-        }
-        if !submission.parameters.is_empty() {
-            let list: Vec<String> = submission
-                .parameters
-                .iter()
-                .map(|(name, value)| format!("{name} = {}", plain(*value)))
-                .collect();
-            let text = format!(
-                "the submission has parameters of its own: {}",
-                list.join(", ")
-            );
-            lines += &line(screen, &submission.name, &text);
-        }
-        if submission.limits_from == LimitsFrom::Submission {
-            lines += &line(screen, &submission.name, "judged by limits of its own");
-        }
+    for reason in submission.reasons.iter().take(MOST_REASONS) {
+        // A single file is its own submission: its name need not stand there twice.
+        let file = submission.runs.first().map_or("", |run| run.file.as_str());
+        lines += &match reason
+            .strip_prefix(file)
+            .filter(|_| submission.name.ends_with(file))
+        {
+            Some(rest) => line(screen, "", &format!("{}{rest}", submission.name)),
+            None => line(screen, &submission.name, reason),
+        };
+    }
+    if submission.reasons.len() > MOST_REASONS {
+        let more = submission.reasons.len() - MOST_REASONS;
+        lines += &line(
+            screen,
+            &submission.name,
+            &format!("{more} more; the JSON report has all"),
+        );
     }
     lines
 }
 
+/// Notes, each once with the submissions that it holds for.
+fn notes(outcome: &Outcome, screen: Screen) -> String {
+    let mut notes: Vec<(String, Vec<&str>)> = Vec::new();
+    let mut note = |text: String, name| match notes.iter_mut().find(|(known, _)| *known == text) {
+        Some((_, names)) => names.push(name),
+        None => notes.push((text, vec![name])),
+    };
+    for submission in &outcome.submissions {
+        let name = submission.name.as_str();
+        for text in &submission.notes {
+            note(text.clone(), name);
+        }
+        if !submission.parameters.is_empty() {
+            let list = submission.parameters.iter();
+            let list: Vec<String> = list
+                .map(|(name, value)| format!("{name} = {}", plain(*value)))
+                .collect();
+            note(
+                format!("parameters of the submission's own: {}", list.join(", ")),
+                name,
+            );
+        }
+        if submission.limits_from == LimitsFrom::Submission && submission.case.is_some() {
+            note("judged by limits of the submission's own".to_owned(), name);
+        }
+    }
+    notes
+        .iter()
+        .map(|(text, names)| line(screen, &names.join(", "), text))
+        .collect()
+}
+
 fn line(screen: Screen, name: &str, text: &str) -> String {
-    format!(
-        "  {}\n",
-        screen.wrap(&screen.clean(&format!("{name}: {text}")), 6)
-    )
+    let text = if name.is_empty() {
+        text.to_owned()
+    } else {
+        format!("{name}: {text}")
+    };
+    format!("  {}\n", screen.wrap(&screen.clean(&text), 6))
 }
 
 fn summary(outcome: &Outcome) -> String {
@@ -314,14 +378,20 @@ fn summary(outcome: &Outcome) -> String {
         toned(Tone::Bad, "Not in order.")
     };
     let count = outcome.submissions.len() + outcome.not_audited.len();
-    format!("{count} submission(s): {}. {word}", parts.join(", "))
+    let noun = if count == 1 {
+        "submission"
+    } else {
+        "submissions"
+    };
+    format!("{count} {noun}: {}. {word}", parts.join(", "))
 }
 
 fn scope(outcome: &Outcome) -> String {
     let drugs = outcome
         .submissions
         .iter()
-        .any(|s| s.case.starts_with("kinetics/"));
+        .filter_map(|submission| submission.case.as_deref())
+        .any(|case| case.starts_with("kinetics/"));
     if drugs {
         format!("{SCOPE} {NOT_FOR_DOSING}")
     } else {

@@ -42,7 +42,7 @@ pub struct NotAuditedReport {
 #[allow(missing_docs)]
 pub struct SubmissionReport {
     pub name: String,
-    pub case: String,
+    pub case: Option<String>,
     pub producer: Option<String>,
     pub expect: String,
     pub verdict: String,
@@ -99,6 +99,7 @@ pub struct ChannelReport {
     pub digits: Option<String>,
     pub limit: Option<f64>,
     pub limit_used: Option<f64>,
+    pub limit_used_at: Option<f64>,
     pub verdict: String,
 }
 

@@ -196,8 +196,9 @@ impl Survey {
                 let whole = off_grid <= slack * (missing + 2.0) + 1e-6 * step;
                 if missing >= 1.0 && step - spacing > slack && whole {
                     let text = format!(
-                        "{missing} row(s) missing before this one: t goes from {last} to {time} \
-                         in a file of step {spacing}"
+                        "{missing} {} missing before this one: t goes from {last} to {time} in a \
+                         file of step {spacing}",
+                        if missing == 1.0 { "row is" } else { "rows are" }
                     );
                     findings.fatal(Kind::MissingRows, line, text);
                 }

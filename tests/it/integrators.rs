@@ -47,6 +47,7 @@ fn run(submissions: Vec<Submission>) -> Outcome {
     let planned = |(index, submission): (usize, Submission)| Planned {
         name: index.to_string(),
         submission,
+        file: None,
         limits_from_command_line: false,
     };
     let submissions = submissions.into_iter().enumerate().map(planned).collect();

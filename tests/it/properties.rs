@@ -143,6 +143,7 @@ fn planted(case: &Case, order: f64, size: f64, digits: usize) -> Outcome {
     let planned = Planned {
         name: "planted".to_owned(),
         submission,
+        file: None,
         limits_from_command_line: false,
     };
     let outcome = audit(&Plan {

@@ -1,0 +1,184 @@
+//! The whole pipeline: a plan of submissions to an outcome.
+
+//!
+//! `run` compares one file, `verdict` judges the files of a submission together, `alone`
+//! compares the runs of a submission without a case with each other.
+
+mod alone;
+mod run;
+mod verdict;
+
+use std::collections::BTreeMap;
+use std::path::PathBuf;
+use std::sync::atomic::{AtomicUsize, Ordering};
+use std::sync::{Arc, Mutex};
+
+use crate::case::{Case, Library};
+use crate::exact::Exact;
+use crate::fault::Fault;
+use crate::outcome::{Audited, LimitsFrom, NotAudited, Outcome};
+use crate::submission::{LimitStated, LimitsStated, Submission};
+use run::compare;
+use verdict::{assign_roles, judge_orders, judge_runs};
+
+/// What is to be audited.
+#[derive(Debug)]
+pub struct Plan {
+    /// The cases at hand.
+    pub library: Library,
+    /// Submissions in the order of the report.
+    pub submissions: Vec<Planned>,
+    /// Submissions that could not even be read.
+    pub unreadable: Vec<NotAudited>,
+    /// Threads to work with.
+    pub threads: usize,
+}
+
+/// One submission of a plan.
+#[derive(Clone, Debug)]
+pub struct Planned {
+    /// Its name in reports.
+    pub name: String,
+    /// Where its complaints belong: the submission.toml, if there is one.
+    pub file: Option<PathBuf>,
+    /// What was handed in.
+    pub submission: Submission,
+    /// True where the limits come from the command line.
+    pub limits_from_command_line: bool,
+}
+
+/// A case with its solution, shared by the submissions that name it.
+struct Model {
+    case: Case,
+    exact: Exact,
+}
+
+type Models = Mutex<BTreeMap<String, Arc<Model>>>;
+
+/// Audits everything in the plan. The outcome does not depend on the threads.
+pub fn audit(plan: &Plan) -> Outcome {
+    let models = Models::default();
+    let next = AtomicUsize::new(0);
+    let done = Mutex::new(BTreeMap::new());
+    std::thread::scope(|scope| {
+        for _ in 0..plan.threads.clamp(1, plan.submissions.len().max(1)) {
+            scope.spawn(|| {
+                loop {
+                    let index = next.fetch_add(1, Ordering::Relaxed);
+                    let Some(planned) = plan.submissions.get(index) else {
+                        break;
+                    };
+                    let result = audit_one(planned, &plan.library, &models);
+                    lock(&done).insert(index, result);
+                }
+            });
+        }
+    });
+    let mut outcome = Outcome {
+        submissions: Vec::new(),
+        not_audited: plan.unreadable.clone(),
+    };
+    for (index, result) in std::mem::take(&mut *lock(&done)) {
+        match result {
+            Ok(audited) => outcome.submissions.push(audited),
+            Err(faults) => {
+                let name = plan.submissions[index].name.clone();
+                outcome.not_audited.push(NotAudited { name, faults });
+            }
+        }
+    }
+    outcome
+}
+
+/// A lock whose data is whole even if another thread has panicked.
+fn lock<T>(mutex: &Mutex<T>) -> std::sync::MutexGuard<'_, T> {
+    mutex
+        .lock()
+        .unwrap_or_else(std::sync::PoisonError::into_inner)
+}
+
+fn model(
+    name: &str,
+    submission: &Submission,
+    library: &Library,
+    models: &Models,
+) -> Result<Arc<Model>, Vec<Fault>> {
+    let key = format!("{name} {:?}", submission.parameters);
+    if let Some(model) = lock(models).get(&key) {
+        return Ok(Arc::clone(model));
+    }
+    // The lock is not held meanwhile: two threads may do the same work once.
+    let case = library.load(name, &submission.parameters)?;
+    let exact = case.exact().map_err(|fault| vec![fault])?;
+    let model = Arc::new(Model { case, exact });
+    lock(models).insert(key, Arc::clone(&model));
+    Ok(model)
+}
+
+/// Audits one submission; what is wrong with it as such is placed in its file.
+fn audit_one(planned: &Planned, library: &Library, models: &Models) -> Result<Audited, Vec<Fault>> {
+    let submission = &planned.submission;
+    let place = |fault: Fault| match &planned.file {
+        Some(file) => fault.in_file(file),
+        None => fault,
+    };
+    let placed = |faults: Vec<Fault>| faults.into_iter().map(place).collect::<Vec<_>>();
+    let Some(name) = submission.case.as_deref() else {
+        return alone::audit_alone(planned).map_err(placed);
+    };
+    let model = model(name, submission, library, models).map_err(placed)?;
+    check_limited_channels(&model.case, &submission.limits).map_err(placed)?;
+    let mut audited = Audited::new(
+        planned.name.clone(),
+        Some(model.case.name.clone()),
+        model.case.time.unit.clone(),
+        submission,
+        limits_from(planned),
+    );
+    let mut compared = Vec::new();
+    for run in &submission.runs {
+        let one = compare(run, submission, &model, &mut audited.notes);
+        compared.push(one.map_err(|fault| vec![fault.in_file(&run.path)])?);
+    }
+    assign_roles(&mut compared);
+    judge_orders(&model.case, submission, &compared, &mut audited);
+    audited.runs = compared.into_iter().map(|one| one.outcome).collect();
+    judge_runs(&mut audited);
+    Ok(audited)
+}
+
+fn limits_from(planned: &Planned) -> LimitsFrom {
+    let limits = &planned.submission.limits;
+    let states = |limit: &LimitStated| limit.absolute.is_some() || limit.relative.is_some();
+    if planned.limits_from_command_line {
+        LimitsFrom::CommandLine
+    } else if states(&limits.general) || limits.channels.values().any(states) {
+        LimitsFrom::Submission
+    } else {
+        LimitsFrom::Case
+    }
+}
+
+fn check_limited_channels(case: &Case, limits: &LimitsStated) -> Result<(), Vec<Fault>> {
+    let channels = case.channels();
+    let unknown = |name: &&String| channels.iter().all(|channel| channel.name != name.as_str());
+    let complain = |name: &String| {
+        let names: Vec<&str> = channels.iter().map(|channel| channel.name).collect();
+        Fault::new(format!(
+            "case `{}` has no channel `{name}` to limit",
+            case.name
+        ))
+        .help(format!("its channels are {}", names.join(", ")))
+    };
+    let faults: Vec<Fault> = limits
+        .channels
+        .keys()
+        .filter(unknown)
+        .map(complain)
+        .collect();
+    if faults.is_empty() {
+        Ok(())
+    } else {
+        Err(faults)
+    }
+}

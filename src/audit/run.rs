@@ -1,0 +1,189 @@
+//! One run of a submission: open, match, survey, compare.
+
+use super::Model;
+use crate::case::Case;
+use crate::compare::{Compared, Comparison, Deviation, Limit, Spot};
+use crate::fault::Fault;
+use crate::judge;
+use crate::outcome::{ChannelOutcome, ErrorOutcome, RowOutcome, RunOutcome};
+use crate::submission::{
+    Column, LimitsStated, Matched, Role, Run, Setting, Submission, match_columns,
+};
+use crate::trajectory::{Findings, Kind, Survey, open};
+
+/// One run with what the ladder needs of it.
+pub(super) struct RunCompared {
+    pub outcome: RunOutcome,
+    pub role_stated: Option<Role>,
+    /// Channel of the case and its errors.
+    pub deviations: Vec<(usize, Deviation)>,
+}
+
+/// The limit of one channel: what the submission states, else what the case has. A
+/// submission that states one part of a limit has stated all of it.
+fn limit(case: &Case, stated: &LimitsStated, channel: &str) -> Limit {
+    let own = stated.channels.get(channel).copied().unwrap_or_default();
+    let general = stated.general;
+    let own_states = own.absolute.is_some() || own.relative.is_some();
+    let general_states = general.absolute.is_some() || general.relative.is_some();
+    let of_peak = own.of_peak.or(general.of_peak).unwrap_or(false);
+    let part = |own: Option<f64>, general: Option<f64>, case: f64| {
+        if own_states || general_states {
+            own.or(general).unwrap_or(0.0)
+        } else {
+            case
+        }
+    };
+    Limit {
+        absolute: part(own.absolute, general.absolute, case.limits.absolute),
+        relative: part(own.relative, general.relative, case.limits.relative),
+        of_peak,
+    }
+}
+
+pub(super) fn compare(
+    run: &Run,
+    submission: &Submission,
+    model: &Model,
+    notes: &mut Vec<String>,
+) -> Result<RunCompared, Fault> {
+    let source = open(&run.path)?;
+    let step = match run.setting {
+        Setting::Step(step) => Some(step),
+        Setting::Tolerance(_) | Setting::Unstated => None,
+    };
+    let mut outcome = RunOutcome {
+        file: run.file.clone(),
+        role: run.role.unwrap_or(Role::Result),
+        setting: run.setting,
+        step,
+        rows: 0,
+        layout: "no rows".to_owned(),
+        findings: Vec::new(),
+        channels: Vec::new(),
+    };
+    let mut findings = Findings::default();
+    let Some(layout) = source.layout(&submission.layout)? else {
+        findings.fatal(Kind::EmptyFile, None, "the file has no rows of numbers");
+        outcome.findings = findings.into_list();
+        return Ok(RunCompared {
+            outcome,
+            role_stated: run.role,
+            deviations: Vec::new(),
+        });
+    };
+    let matched = match_columns(&model.case, &layout, &submission.columns)?;
+    for (channel, reason) in &matched.missing {
+        findings.fatal(
+            Kind::ColumnMissing,
+            None,
+            format!("`{channel}` is missing: {reason}"),
+        );
+    }
+    for note in &matched.notes {
+        if !notes.contains(note) {
+            notes.push(note.clone());
+        }
+    }
+    outcome.layout = layout.describe();
+    let names: Vec<_> = model.case.channels();
+    let channels: Vec<_> = matched
+        .channels
+        .iter()
+        .map(|c| {
+            (
+                c.channel,
+                c.conversion,
+                limit(&model.case, &submission.limits, names[c.channel].name),
+            )
+        })
+        .collect();
+    let survey = Survey::new(&source, layout, matched.selection(), &submission.layout)?;
+    let comparison = Comparison {
+        exact: &model.exact,
+        source: &source,
+        survey: &survey,
+        time: matched.time_conversion,
+        channels: &channels,
+        step,
+        least_rows: model.case.time.least_rows,
+        time_unit: &model.case.time.unit,
+    };
+    let compared = comparison.run(&mut findings)?;
+    if channels.is_empty() {
+        let text = "no column of the file is a channel of the case";
+        findings.fatal(Kind::ColumnMissing, None, text);
+    }
+    if compared.outside > 0 {
+        notes.push(format!(
+            "{}: {} row(s) outside the window are not compared",
+            run.file, compared.outside
+        ));
+    }
+    outcome.step = step.or(compared
+        .spacing
+        .filter(|_| run.setting == Setting::Unstated));
+    outcome.rows = compared.rows;
+    outcome.findings = findings.into_list();
+    outcome.channels = channel_outcomes(model, &matched, &compared);
+    let deviations = matched
+        .channels
+        .iter()
+        .map(|c| c.channel)
+        .zip(compared.channels)
+        .collect();
+    Ok(RunCompared {
+        outcome,
+        role_stated: run.role,
+        deviations,
+    })
+}
+
+fn channel_outcomes(model: &Model, matched: &Matched, compared: &Compared) -> Vec<ChannelOutcome> {
+    let channels = model.case.channels();
+    let outcome = |(column, deviation): (&Column, &Deviation)| {
+        let digits = deviation.resolution.describe();
+        let errors = (deviation.rows > 0).then_some(ErrorOutcome {
+            worst: deviation.worst,
+            at: deviation.worst_at,
+            rms: deviation.rms,
+            end: deviation.end,
+            peak: deviation.peak,
+            resolution: deviation.worst_resolution,
+            digits,
+            limit: deviation.worst_limit,
+            limit_used: deviation.margin.used,
+            decisive: row(&deviation.decisive),
+            doubtful: row(&deviation.doubtful),
+            broken: deviation.margin.broken > 0.0,
+        });
+        let channel = &channels[column.channel];
+        ChannelOutcome {
+            name: channel.name.to_owned(),
+            unit: channel.unit.to_owned(),
+            errors,
+            verdict: judge::of_deviation(deviation, compared.rows),
+        }
+    };
+    matched
+        .channels
+        .iter()
+        .zip(&compared.channels)
+        .map(outcome)
+        .collect()
+}
+
+fn row(spot: &Spot) -> RowOutcome {
+    let Spot {
+        at,
+        error,
+        resolution,
+        limit,
+    } = *spot;
+    RowOutcome {
+        at,
+        error,
+        resolution,
+        limit,
+    }
+}

@@ -1,0 +1,197 @@
+//! The runs of a submission together: which are results, what order they show, what
+//! the whole comes to.
+
+use super::run::RunCompared;
+use crate::case::Case;
+use crate::compare::{Rung, Sight, observe};
+use crate::explain::{self, Place};
+use crate::judge::{self, Verdict};
+use crate::method;
+use crate::outcome::{Audited, ChannelOutcome, OrderOutcome, RunOutcome};
+use crate::submission::{Role, Setting, Submission};
+
+/// The finest run is the result unless the submission says otherwise; where steps are
+/// not known, all runs are.
+pub(super) fn assign_roles(runs: &mut [RunCompared]) {
+    if runs.iter().any(|run| run.role_stated == Some(Role::Result)) {
+        for run in runs.iter_mut() {
+            run.outcome.role = run.role_stated.unwrap_or(Role::Rung);
+        }
+        return;
+    }
+    let finest = runs
+        .iter()
+        .enumerate()
+        .filter(|(_, run)| run.role_stated != Some(Role::Rung))
+        .filter_map(|(index, run)| Some((index, rung_setting(&run.outcome)?)))
+        .min_by(|a, b| a.1.total_cmp(&b.1));
+    let known = runs.iter().all(|run| rung_setting(&run.outcome).is_some());
+    if let Some((finest, _)) = finest.filter(|_| known) {
+        for (index, run) in runs.iter_mut().enumerate() {
+            run.outcome.role = if index == finest {
+                Role::Result
+            } else {
+                Role::Rung
+            };
+        }
+    } else if runs.iter().all(|run| run.role_stated == Some(Role::Rung)) {
+        // A submission of rungs alone would have nothing that a limit applies to.
+        runs.iter_mut()
+            .for_each(|run| run.outcome.role = Role::Result);
+    }
+}
+
+/// What places a run on its ladder.
+pub(super) fn rung_setting(run: &RunOutcome) -> Option<f64> {
+    match run.setting {
+        Setting::Tolerance(tolerance) => Some(tolerance),
+        Setting::Step(step) => Some(step),
+        Setting::Unstated => run.step,
+    }
+}
+
+pub(super) fn judge_orders(
+    case: &Case,
+    submission: &Submission,
+    runs: &[RunCompared],
+    audited: &mut Audited,
+) {
+    let of_method = submission
+        .claims
+        .method
+        .as_deref()
+        .map(|name| (name, method::find(name)));
+    if let Some((name, None)) = of_method
+        && submission.claims.order.is_none()
+    {
+        audited.notes.push(format!(
+            "method `{name}` is not in the catalogue: no order follows"
+        ));
+    }
+    let from_method = of_method.and_then(|(_, found)| Some(f64::from(found?.order)));
+    let tolerances = runs
+        .iter()
+        .any(|run| matches!(run.outcome.setting, Setting::Tolerance(_)));
+    // An error setting has no order to be held to: the slope is reported.
+    let claimed = submission
+        .claims
+        .order
+        .or(from_method)
+        .filter(|_| !tolerances);
+    if runs.len() < 2 {
+        if let Some(order) = submission.claims.order {
+            let text = format!(
+                "the claimed order {order} cannot be told from one run; add runs of other steps"
+            );
+            audited.notes.push(text);
+        }
+        return;
+    }
+    let slack = submission.limits.order_slack.unwrap_or(judge::ORDER_SLACK);
+    for (index, channel) in case.channels().iter().enumerate() {
+        let rungs: Option<Vec<Rung>> = runs.iter().map(|run| rung(run, index)).collect();
+        let sight = match rungs {
+            Some(rungs) => observe(&rungs),
+            None if runs
+                .iter()
+                .all(|run| run.deviations.iter().all(|(c, _)| *c != index)) =>
+            {
+                continue;
+            }
+            None => Sight::TooFew("not every run has a step and values".to_owned()),
+        };
+        let mut order = judge::of_order(&sight, claimed, slack);
+        if let Some(claimed) = claimed
+            && let Some(reason) = explain::order_reason(channel.name, claimed, &order)
+        {
+            audited.reasons.push(reason);
+        }
+        if tolerances && order.finest.is_some() {
+            order.note = Some("slope of the error over the error setting".to_owned());
+        }
+        audited.orders.push(OrderOutcome {
+            channel: channel.name.to_owned(),
+            claimed,
+            observed: order.finest.map(|pair| (pair.order, pair.low, pair.high)),
+            rungs_used: order.rungs_used,
+            verdict: order.verdict,
+            note: order.note,
+        });
+    }
+    audited.order_verdict = judge::of_orders(audited.orders.iter().filter_map(|o| o.verdict));
+    if audited.order_verdict == Some(Verdict::Pass) {
+        // Channels that show nothing do not speak against one that shows the order.
+        audited.reasons.clear();
+    }
+}
+
+fn rung(run: &RunCompared, channel: usize) -> Option<Rung> {
+    let (_, deviation) = run.deviations.iter().find(|(index, _)| *index == channel)?;
+    (deviation.rows > 0).then_some(Rung {
+        setting: rung_setting(&run.outcome)?,
+        error: deviation.worst,
+        resolution: deviation.worst_resolution,
+        peak: deviation.peak,
+        rows: deviation.rows,
+    })
+}
+
+/// Faults of every file count; limits apply to results alone.
+pub(super) fn judge_runs(audited: &mut Audited) {
+    let mut verdict = audited.order_verdict.unwrap_or(Verdict::Pass);
+    // What is wrong with the files comes first, then the order, then the limits.
+    let (mut faults, mut limits) = (Vec::new(), Vec::new());
+    for run in &audited.runs {
+        for finding in run.findings.iter().filter(|finding| finding.fatal) {
+            verdict = Verdict::Fail;
+            faults.push(explain::fatal_finding(&run.file, finding));
+        }
+        if run.role == Role::Rung {
+            continue;
+        }
+        if run.channels.is_empty() {
+            verdict = Verdict::Fail;
+        }
+        for channel in &run.channels {
+            verdict = verdict.and(channel.verdict);
+            limits.extend(limit_reason(audited, run, channel));
+        }
+    }
+    audited.verdict = verdict;
+    faults.append(&mut audited.reasons);
+    faults.append(&mut limits);
+    audited.reasons = faults;
+}
+
+/// Why a channel of a result does not pass.
+fn limit_reason(audited: &Audited, run: &RunOutcome, channel: &ChannelOutcome) -> Option<String> {
+    let place = Place {
+        file: &run.file,
+        channel: &channel.name,
+        unit: &channel.unit,
+        time_unit: &audited.time_unit,
+    };
+    match (&channel.errors, channel.verdict) {
+        (None, _) => Some(explain::without_values(&place)),
+        (Some(errors), Verdict::Fail) if errors.broken => {
+            // An order that is not the claimed one has another cause than the step.
+            let trusted = audited.order_verdict != Some(Verdict::Fail);
+            let observed = order_at(audited, &channel.name).filter(|_| trusted);
+            Some(explain::limit_broken(
+                &place,
+                errors,
+                observed.zip(run.step),
+            ))
+        }
+        (Some(errors), Verdict::Undecided) => Some(explain::limit_hidden(&place, errors)),
+        // Missing values are a fault of the file, which is told already.
+        (Some(_), Verdict::Fail | Verdict::Pass) => None,
+    }
+}
+fn order_at(audited: &Audited, channel: &str) -> Option<f64> {
+    let order = audited
+        .orders
+        .iter()
+        .find(|order| order.channel == channel)?;
+    order.observed.map(|(order, _, _)| order)
+}
