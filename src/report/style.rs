@@ -119,7 +119,8 @@ impl Screen {
         );
         for (index, heading) in headings.iter().enumerate() {
             if let Some(column) = table.column_mut(index) {
-                column.set_padding((0, 2));
+                // The junction of the rule is a blank between columns besides.
+                column.set_padding((0, 1));
                 if heading.starts_with('>') {
                     column.set_cell_alignment(CellAlignment::Right);
                 }

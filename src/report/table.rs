@@ -51,15 +51,18 @@ fn table(outcome: &Outcome, screen: Screen) -> String {
             .flat_map(|run| run.channels.iter().map(move |c| (run, c)));
         let worst = channels.max_by(|a, b| worse(a.1, b.1));
         let run = worst.map(|(run, _)| run).or_else(|| results.clone().next());
-        let mut cells = cells(submission, run, worst.map(|(_, channel)| channel));
+        let narrow = screen.width < 100;
+        let mut cells = cells(submission, run, worst.map(|(_, channel)| channel), narrow);
         cells.retain(|cell| cell.from_width <= screen.width);
         let table = table.get_or_insert_with(|| {
             let headings: Vec<&str> = cells.iter().map(|cell| cell.heading).collect();
             let mut table = screen.table(&headings);
             for (index, cell) in cells.iter().enumerate() {
                 // What would be torn apart in mid-word keeps its width.
-                let whole = !matches!(cell.heading, "verdict" | "order" | "producer");
-                if let Some(column) = table.column_mut(index).filter(|_| whole) {
+                if let Some(column) = table
+                    .column_mut(index)
+                    .filter(|_| cell.heading != "producer")
+                {
                     column.set_constraint(ColumnConstraint::ContentWidth);
                 }
             }
@@ -129,6 +132,7 @@ fn cells(
     submission: &Audited,
     run: Option<&RunOutcome>,
     channel: Option<&ChannelOutcome>,
+    narrow: bool,
 ) -> Vec<Cell> {
     use Text::{Outside, Own};
     let errors = channel.and_then(|channel| channel.errors.as_ref());
@@ -155,7 +159,7 @@ fn cells(
     let error = |e: &ErrorOutcome| format!("{} {unit}", measured(e.worst, e.resolution));
     let at = |e: &ErrorOutcome| format!("{} {}", plain(e.at), submission.time_unit);
     vec![
-        own("verdict", 0, Some(verdict_text(submission))),
+        own("verdict", 0, Some(verdict_text(submission, narrow))),
         outside("submission", 0, Some(submission.name.clone())),
         outside("case", 150, submission.case.clone()),
         outside("producer", 150, submission.producer.clone()),
@@ -185,19 +189,27 @@ fn plain_short(value: f64) -> String {
     if full.len() <= 8 { full } else { short(value) }
 }
 
-fn verdict_text(submission: &Audited) -> String {
+fn verdict_text(submission: &Audited, narrow: bool) -> String {
     let word = submission.verdict.word();
-    match (submission.in_order(), submission.expect) {
-        (true, Expect::Pass) => toned(Tone::Good, word),
-        (true, _) => toned(Tone::Quiet, &format!("{word}, as expected")),
-        (false, Expect::Pass) if submission.verdict == Verdict::Undecided => {
-            toned(Tone::Open, word)
+    let loud = word.to_uppercase();
+    let (tone, word, remark) = match (submission.in_order(), submission.expect) {
+        (true, Expect::Pass) => (Tone::Good, word, ""),
+        (true, _) => (Tone::Quiet, word, "as expected"),
+        (false, Expect::Pass) if submission.verdict == Verdict::Undecided => (Tone::Open, word, ""),
+        (false, Expect::Pass) => (Tone::Bad, loud.as_str(), ""),
+        (false, _) => (Tone::Bad, loud.as_str(), "not expected"),
+    };
+    match remark {
+        "" => toned(tone, word),
+        // Each line in its own tone: one that runs over a line end would colour the row.
+        _ if narrow => {
+            format!(
+                "{}\n{}",
+                toned(tone, &format!("{word},")),
+                toned(tone, remark)
+            )
         }
-        (false, Expect::Pass) => toned(Tone::Bad, &word.to_uppercase()),
-        (false, _) => toned(
-            Tone::Bad,
-            &format!("{}, against expectation", word.to_uppercase()),
-        ),
+        _ => toned(tone, &format!("{word}, {remark}")),
     }
 }
 
