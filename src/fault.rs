@@ -97,6 +97,20 @@ impl fmt::Display for Fault {
 
 impl std::error::Error for Fault {}
 
+/// The complaint of the TOML reader without the names of Rust's types.
+pub fn in_plain_words(message: &str) -> String {
+    let mut text = message.trim_end().to_owned();
+    for (rust, plain) in [
+        ("expected f64", "expected a number"),
+        ("expected u64", "expected a whole number not below zero"),
+        ("expected u8", "expected a whole number not below zero"),
+        ("expected a string", "expected text in quotes"),
+    ] {
+        text = text.replace(rust, plain);
+    }
+    text
+}
+
 /// User text in backticks: control characters escaped, cut at 40 characters.
 pub fn quoted(text: &str) -> String {
     let escaped = escaped(text);

@@ -82,6 +82,8 @@ pub struct RunOutcome {
     pub rows: u64,
     /// How the file is laid out, in words.
     pub layout: String,
+    /// How finely the time stamps are known, in words.
+    pub stamps: String,
     /// What is wrong with the file.
     pub findings: Vec<Finding>,
     /// Channels in the order of the case.

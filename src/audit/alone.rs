@@ -129,6 +129,7 @@ fn survey_alone(run: &Run, submission: &Submission) -> Result<(RunOutcome, Optio
         step: None,
         rows: 0,
         layout: "no rows".to_owned(),
+        stamps: String::new(),
         findings: Vec::new(),
         channels: Vec::new(),
     };

@@ -17,7 +17,7 @@ use crate::case::{Case, Library};
 use crate::exact::Exact;
 use crate::fault::Fault;
 use crate::outcome::{Audited, LimitsFrom, NotAudited, Outcome};
-use crate::submission::{LimitStated, LimitsStated, Submission};
+use crate::submission::{LimitStated, Submission};
 use run::compare;
 use verdict::{assign_roles, judge_orders, judge_runs};
 
@@ -126,8 +126,16 @@ fn audit_one(planned: &Planned, library: &Library, models: &Models) -> Result<Au
     let Some(name) = submission.case.as_deref() else {
         return alone::audit_alone(planned).map_err(placed);
     };
-    let model = model(name, submission, library, models).map_err(placed)?;
-    check_limited_channels(&model.case, &submission.limits).map_err(placed)?;
+    let keyed = |faults: Vec<Fault>| {
+        placed(
+            faults
+                .into_iter()
+                .map(|fault| at_key(submission, fault))
+                .collect(),
+        )
+    };
+    let model = model(name, submission, library, models).map_err(keyed)?;
+    check_limited_channels(&model.case, submission).map_err(placed)?;
     let mut audited = Audited::new(
         planned.name.clone(),
         Some(model.case.name.clone()),
@@ -138,7 +146,11 @@ fn audit_one(planned: &Planned, library: &Library, models: &Models) -> Result<Au
     let mut compared = Vec::new();
     for run in &submission.runs {
         let one = compare(run, submission, &model, &mut audited.notes);
-        compared.push(one.map_err(|fault| vec![fault.in_file(&run.path)])?);
+        // A complaint with a line is about the submission, one without about the run.
+        compared.push(one.map_err(|fault| match (fault.line, &planned.file) {
+            (Some(_), Some(file)) if fault.path.is_none() => vec![fault.in_file(file)],
+            _ => vec![fault.in_file(&run.path)],
+        })?);
     }
     assign_roles(&mut compared);
     judge_orders(&model.case, submission, &compared, &mut audited);
@@ -159,23 +171,29 @@ fn limits_from(planned: &Planned) -> LimitsFrom {
     }
 }
 
-fn check_limited_channels(case: &Case, limits: &LimitsStated) -> Result<(), Vec<Fault>> {
+/// A complaint of the library about what the submission names, with its place there.
+fn at_key(submission: &Submission, fault: Fault) -> Fault {
+    if fault.line.is_some() {
+        return fault;
+    }
+    let names = |name: &&String| fault.text.contains(&format!("`{name}`"));
+    match submission.parameters.keys().find(names) {
+        Some(name) => submission.at_key(fault, &format!("parameters.{name}")),
+        None => submission.at_key(fault, "case"),
+    }
+}
+
+fn check_limited_channels(case: &Case, submission: &Submission) -> Result<(), Vec<Fault>> {
     let channels = case.channels();
     let unknown = |name: &&String| channels.iter().all(|channel| channel.name != name.as_str());
     let complain = |name: &String| {
         let names: Vec<&str> = channels.iter().map(|channel| channel.name).collect();
-        Fault::new(format!(
-            "case `{}` has no channel `{name}` to limit",
-            case.name
-        ))
-        .help(format!("its channels are {}", names.join(", ")))
+        let text = format!("case `{}` has no channel `{name}` to limit", case.name);
+        let fault = Fault::new(text).help(format!("its channels are {}", names.join(", ")));
+        submission.at_key(fault, &format!("limits.{name}"))
     };
-    let faults: Vec<Fault> = limits
-        .channels
-        .keys()
-        .filter(unknown)
-        .map(complain)
-        .collect();
+    let limited = submission.limits.channels.keys();
+    let faults: Vec<Fault> = limited.filter(unknown).map(complain).collect();
     if faults.is_empty() {
         Ok(())
     } else {

@@ -9,7 +9,7 @@ use crate::outcome::{ChannelOutcome, ErrorOutcome, RowOutcome, RunOutcome};
 use crate::submission::{
     Column, LimitsStated, Matched, Role, Run, Setting, Submission, match_columns,
 };
-use crate::trajectory::{Findings, Kind, Survey, open};
+use crate::trajectory::{Findings, Grid, Kind, Survey, open};
 
 /// One run with what the ladder needs of it.
 pub(super) struct RunCompared {
@@ -47,6 +47,7 @@ pub(super) fn compare(
     model: &Model,
     notes: &mut Vec<String>,
 ) -> Result<RunCompared, Fault> {
+    let placed = |fault: Fault| fault.in_file(&run.path);
     let source = open(&run.path)?;
     let step = match run.setting {
         Setting::Step(step) => Some(step),
@@ -59,11 +60,12 @@ pub(super) fn compare(
         step,
         rows: 0,
         layout: "no rows".to_owned(),
+        stamps: String::new(),
         findings: Vec::new(),
         channels: Vec::new(),
     };
     let mut findings = Findings::default();
-    let Some(layout) = source.layout(&submission.layout)? else {
+    let Some(layout) = source.layout(&submission.layout).map_err(placed)? else {
         findings.fatal(Kind::EmptyFile, None, "the file has no rows of numbers");
         outcome.findings = findings.into_list();
         return Ok(RunCompared {
@@ -98,7 +100,12 @@ pub(super) fn compare(
             )
         })
         .collect();
-    let survey = Survey::new(&source, layout, matched.selection(), &submission.layout)?;
+    let survey = Survey::new(&source, layout, matched.selection(), &submission.layout);
+    let survey = survey.map_err(placed)?;
+    outcome.stamps = match survey.grid {
+        Grid::Uniform { exact: Some(_), .. } => "an exact grid".to_owned(),
+        _ => survey.time.describe(),
+    };
     let comparison = Comparison {
         exact: &model.exact,
         source: &source,
@@ -109,7 +116,7 @@ pub(super) fn compare(
         least_rows: model.case.time.least_rows,
         time_unit: &model.case.time.unit,
     };
-    let compared = comparison.run(&mut findings)?;
+    let compared = comparison.run(&mut findings).map_err(placed)?;
     if channels.is_empty() {
         let text = "no column of the file is a channel of the case";
         findings.fatal(Kind::ColumnMissing, None, text);

@@ -183,7 +183,9 @@ fn limit_reason(audited: &Audited, run: &RunOutcome, channel: &ChannelOutcome) -
                 observed.zip(run.step),
             ))
         }
-        (Some(errors), Verdict::Undecided) => Some(explain::limit_hidden(&place, errors)),
+        (Some(errors), Verdict::Undecided) => {
+            Some(explain::limit_hidden(&place, errors, &run.stamps))
+        }
         // Missing values are a fault of the file, which is told already.
         (Some(_), Verdict::Fail | Verdict::Pass) => None,
     }

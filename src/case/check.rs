@@ -6,7 +6,7 @@ use std::ops::Range;
 use super::schema::{CaseFile, InputEntry, Place, Quantity};
 use super::{Case, Input, Limits, Output, Parameter, Replacements, Shape, State, Window};
 use super::{MOST_INPUTS, MOST_NAMES, MOST_STATES};
-use crate::fault::{Fault, nearest, quoted};
+use crate::fault::{Fault, in_plain_words, nearest, quoted};
 use crate::formula::{Affine, Formula, Scalar, is_name, is_reserved};
 use crate::number::Double;
 
@@ -22,7 +22,7 @@ struct Checker<'a> {
 pub(super) fn check(slug: &str, text: &str, replace: &Replacements) -> Result<Case, Vec<Fault>> {
     let file: CaseFile = toml::from_str(text).map_err(|error| {
         let offset = error.span().map_or(0, |span| span.start);
-        vec![Fault::new(error.message().trim_end()).at_offset(text, offset)]
+        vec![Fault::new(in_plain_words(error.message())).at_offset(text, offset)]
     })?;
     let mut checker = Checker {
         text,

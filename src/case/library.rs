@@ -199,14 +199,38 @@ impl Library {
             let by_slug = self
                 .names()
                 .find(|known| known.rsplit('/').next() == Some(name));
-            let near = by_slug.or_else(|| nearest(name, self.names()));
+            let part = || {
+                self.names()
+                    .find(|known| name.len() > 2 && known.contains(name))
+            };
+            let near = by_slug
+                .or_else(|| nearest(name, self.names()))
+                .or_else(part);
             return Err(vec![fault.help(match near {
                 Some(near) => format!("did you mean `{near}`? `stepgauge cases` lists all"),
                 None => "`stepgauge cases` lists all".to_owned(),
             })]);
         };
-        Case::parse(&entry.slug, &entry.text, replace)
-            .map_err(|faults| faults.into_iter().map(|f| f.in_file(&entry.path)).collect())
+        Case::parse(&entry.slug, &entry.text, replace).map_err(|faults| {
+            // A complaint without a place is about what replaces parameters, not about
+            // the file.
+            let placed = |fault: Fault| match fault.line {
+                Some(_) => fault.in_file(&entry.path),
+                None => fault,
+            };
+            let mut faults: Vec<Fault> = faults.into_iter().map(placed).collect();
+            if !replace.is_empty() {
+                let list: Vec<String> = replace
+                    .iter()
+                    .map(|(name, value)| format!("{name} = {value}"))
+                    .collect();
+                let text = format!("case `{name}` cannot be used with {}", list.join(", "));
+                if faults.iter().any(|fault| fault.line.is_some()) {
+                    faults.insert(0, Fault::new(text));
+                }
+            }
+            faults
+        })
     }
 }
 

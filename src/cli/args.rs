@@ -65,16 +65,16 @@ pub struct AuditArguments {
     #[arg(long = "column", value_name = "CHANNEL=COLUMN", requires = "case", value_parser = pair)]
     pub columns: Vec<(String, String)>,
     /// The step of the file, in the time unit of the case
-    #[arg(long, value_name = "H", requires = "case", value_parser = positive)]
+    #[arg(long, value_name = "H", requires = "case", allow_negative_numbers = true, value_parser = positive)]
     pub step: Option<f64>,
     /// Replaces a parameter of the case, as in R_w=0.03 (repeatable)
     #[arg(long = "set", value_name = "PARAMETER=VALUE", requires = "case", value_parser = number_pair)]
     pub parameters: Vec<(String, f64)>,
     /// The absolute limit, in the unit of each channel; goes before any other limit
-    #[arg(long, value_name = "LIMIT", value_parser = not_negative)]
+    #[arg(long, value_name = "LIMIT", allow_negative_numbers = true, value_parser = not_negative)]
     pub absolute: Option<f64>,
     /// The relative limit, a fraction; goes before any other limit
-    #[arg(long, value_name = "LIMIT", value_parser = not_negative)]
+    #[arg(long, value_name = "LIMIT", allow_negative_numbers = true, value_parser = not_negative)]
     pub relative: Option<f64>,
     /// What the relative limit is a fraction of
     #[arg(long, value_name = "WHAT")]
@@ -160,7 +160,7 @@ pub struct ExactArguments {
 #[group(required = true, multiple = false)]
 pub struct Times {
     /// On a grid of this step from the start of the window to its end
-    #[arg(long, value_name = "H")]
+    #[arg(long, value_name = "H", allow_negative_numbers = true)]
     pub step: Option<String>,
     /// At listed times
     #[arg(

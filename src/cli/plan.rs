@@ -68,6 +68,7 @@ fn single_files(case: &str, arguments: &AuditArguments, plan: &mut Plan) -> Resu
         let stated = ColumnStated {
             column: Some(name),
             unit: None,
+            place: None,
         };
         if columns.insert(channel.clone(), stated).is_some() {
             let text = format!("--column is given twice for {}", quoted(channel));
@@ -104,6 +105,7 @@ fn single_files(case: &str, arguments: &AuditArguments, plan: &mut Plan) -> Resu
             limits: LimitsStated::default(),
             columns: columns.clone(),
             layout: Stated::default(),
+            places: BTreeMap::new(),
             runs: vec![Run {
                 file,
                 path: path.clone(),
@@ -137,6 +139,13 @@ fn submissions(arguments: &AuditArguments, plan: &mut Plan) -> Result<(), Vec<Fa
     }
     places.sort();
     places.dedup();
+    for place in &places {
+        if place.file.extension().is_none_or(|ending| ending != "toml") {
+            let fault = Fault::new("this is no submission").in_file(&place.file);
+            let help = "name the case with `--case`, or write a submission.toml beside it";
+            return Err(vec![fault.help(help)]);
+        }
+    }
     for place in places {
         match read(&place) {
             Ok(submission) => {

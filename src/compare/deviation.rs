@@ -180,7 +180,7 @@ impl<'a> Comparison<'a> {
                 pass.add(time, blur, row);
                 Ok(())
             })?;
-        self.coverage(first, last_end, rows, findings);
+        self.coverage(first, last_end, (rows, outside), findings);
         let spacing = match self.survey.grid {
             Grid::Uniform { spacing, .. } => Some(self.time.stretch(spacing)),
             Grid::Varied => None,
@@ -219,7 +219,7 @@ impl<'a> Comparison<'a> {
         &self,
         first: Option<(f64, bool)>,
         last: Option<(f64, bool)>,
-        rows: u64,
+        (rows, outside): (u64, u64),
         findings: &mut Findings,
     ) {
         let (from, to) = (self.exact.from().to_f64(), self.exact.to().to_f64());
@@ -228,17 +228,23 @@ impl<'a> Comparison<'a> {
             findings.fatal(Kind::EmptyFile, None, "the file has no rows of numbers");
             return;
         };
+        let beyond = match outside {
+            0 => String::new(),
+            // Most often a slip in the unit of time.
+            _ => format!("; {outside} rows lie outside it: is the unit of time right?"),
+        };
         // The first row may come later than the start, or lie before it: the start is
         // covered only by a row that is there.
         if !begins || begin > to {
             let text = format!(
-                "the first row is at t = {begin} {unit}, the window starts at {from} {unit}"
+                "the first row is at t = {begin} {unit}, the window starts at {from} {unit}{beyond}"
             );
             findings.fatal(Kind::WindowNotCovered, None, text);
         }
         if !ends {
-            let text =
-                format!("the last row is at t = {end} {unit}, the window ends at {to} {unit}");
+            let text = format!(
+                "the last row is at t = {end} {unit}, the window ends at {to} {unit}{beyond}"
+            );
             findings.fatal(Kind::WindowNotCovered, None, text);
         }
         if rows < self.least_rows {

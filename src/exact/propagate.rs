@@ -202,7 +202,7 @@ impl<'a> Walk<'a> {
         let fresh = self.since_anchor < STEPS_PER_ANCHOR;
         let on_grid =
             |(spacing, _): &(Double, Step<Double>)| norm * (step - *spacing).abs().to_f64() <= 0.25;
-        if follows && fresh && norm * step.to_f64() <= 0.5 {
+        if follows && fresh && step.to_f64() <= table.base() {
             table.nudge(&mut self.flow, step);
             self.since_anchor += 1;
         } else if follows

@@ -75,7 +75,7 @@ fn share_of_limit(used: f64) -> String {
 }
 
 /// A limit that the digits are too few for.
-pub fn limit_hidden(place: &Place, errors: &ErrorOutcome) -> String {
+pub fn limit_hidden(place: &Place, errors: &ErrorOutcome, stamps: &str) -> String {
     let Place {
         file,
         channel,
@@ -91,15 +91,20 @@ pub fn limit_hidden(place: &Place, errors: &ErrorOutcome) -> String {
         short(row.limit),
         short(row.resolution),
     );
-    if errors.digits.contains("double") {
+    let text = format!("{text} (values: {}; time stamps: {stamps})", errors.digits);
+    if errors.digits.contains("double") && (stamps.contains("double") || stamps.contains("exact")) {
         format!("{text}; the limit lies at the rounding of double precision")
     } else {
-        // Three digits below the limit leave a thousandth of it open.
+        // Two digits below the limit leave a hundredth of it open.
         let more = (row.resolution / row.limit).log10().ceil().max(0.0) + 2.0;
-        format!(
-            "{text} ({} printed); print {more} digits more",
-            errors.digits
-        )
+        let (values_full, stamps_exact) =
+            (errors.digits.contains("double"), stamps.contains("exact"));
+        let what = match (values_full, stamps_exact) {
+            (true, _) => "the time stamps",
+            (false, true) => "the values",
+            (false, false) => "both",
+        };
+        format!("{text}; print {what} to {more} digits more")
     }
 }
 

@@ -44,6 +44,8 @@ pub struct Propagator<T> {
     base: f64,
     levels: Vec<Step<T>>,
     growth_rate: f64,
+    /// `exp(|M| base)`, rounded up.
+    nearby: Matrix<f64>,
     reach: Matrix<f64>,
 }
 
@@ -116,6 +118,7 @@ impl<T: Real> Propagator<T> {
         let base = 2f64.powi(finest);
         let exact = generator.map(T::from_double);
         let mut table = Propagator {
+            nearby: Matrix::zero(generator.size()),
             reach: Matrix::zero(generator.size()),
             generator: exact,
             magnitude,
@@ -136,6 +139,7 @@ impl<T: Real> Propagator<T> {
     /// squaring gives it, then the reach, then the errors once more through the
     /// reach where that is tighter.
     fn build(&mut self, top: usize) {
+        self.nearby = self.series_size(self.base);
         let (growth, error) = self.series_matrix();
         let mut fresh = vec![error.clone()];
         self.levels.push(Step::new(self.base, growth, error));
@@ -177,7 +181,7 @@ impl<T: Real> Propagator<T> {
             17..=32 => 4,
             _ => 3,
         };
-        let mut reach = self.series_size(self.base);
+        let mut reach = self.nearby.clone();
         for steps in self.levels.chunks(group) {
             let mut powers = vec![Matrix::zero(self.size())];
             for i in 0..self.size() {
@@ -201,8 +205,9 @@ impl<T: Real> Propagator<T> {
     }
 
     /// Number of terms after which the series of `exp(M time)` is cut: the rest is
-    /// below 2^-(bits + 40) of the vector's largest entry.
-    fn terms(&self, time: f64) -> (u32, f64) {
+    /// below 2^-(bits + 40) of the vector's largest entry. What it is entry by entry
+    /// follows from the last term: the rest is at most `exp(|M| time)` times the next.
+    fn terms(&self, time: f64) -> u32 {
         let angle = self.norm * time.abs();
         let target = 2f64.powf(-T::BITS - 40.0);
         let mut term = 1.0;
@@ -212,7 +217,7 @@ impl<T: Real> Propagator<T> {
             term *= angle / f64::from(count);
             // The tail is at most twice its first term while angle <= 1/2.
             if 2.0 * term < target || count > 80 {
-                return (count, 2.0 * term);
+                return count;
             }
         }
     }
@@ -236,7 +241,7 @@ impl<T: Real> Propagator<T> {
     /// `exp(M base) - I` with its error.
     fn series_matrix(&self) -> (Matrix<T>, Matrix<f64>) {
         let size = self.generator.size();
-        let (count, tail) = self.terms(self.base);
+        let count = self.terms(self.base);
         let scaled = self.generator.map(|x| x.scale(self.base));
         let mut term = scaled.clone();
         let mut sum = scaled.clone();
@@ -245,13 +250,19 @@ impl<T: Real> Propagator<T> {
             sum = sum.zip(&term, |a, b| a + b);
         }
         let unit = (size as f64 + 4.0) * f64::from(count) * T::UNIT;
-        let mut error = self.series_size(self.base);
+        let whole = self.nearby.clone();
+        let mut next = self.magnitude.map(|x| x * self.base);
+        for k in 2..=count + 1 {
+            let factor = self.base / f64::from(k) * UPWARD;
+            next = self.magnitude.product(&next).map(|x| x * factor);
+        }
+        let tail = whole.product(&next);
+        let mut error = whole;
         for i in 0..size {
+            // exp(|M|b) - I, with what its own rounding may hide.
             error[(i, i)] = (error[(i, i)] - 1.0).max(0.0) + 1e-9;
         }
-        // A diagonal entry of exp(|M|b) - I is at least |M|b there; the 1e-9 above
-        // only guards the subtraction.
-        (sum, error.map(|x| x * unit + tail))
+        (sum, error.zip(&tail, |x, tail| x * unit + tail))
     }
 
     /// Number of entries of a vector.
@@ -284,17 +295,21 @@ impl<T: Real> Propagator<T> {
         self.nudge(flow, rest);
     }
 
-    /// Carries a vector by a short time of either sign, `|M time| <= 1/2`.
+    /// The longest time for [`Propagator::nudge`]: between `1/4` and `1/2` of `1/|M|`.
+    pub fn base(&self) -> f64 {
+        self.base
+    }
+
+    /// Carries a vector by a short time of either sign, at most [`Propagator::base`].
     pub fn nudge(&self, flow: &mut Flow<T>, time: Double) {
         if time.to_f64() == 0.0 {
             return;
         }
-        let (count, tail) = self.terms(time.to_f64());
+        let count = self.terms(time.to_f64());
         let time_exact = T::from_double(time);
         let time_size = time.to_f64().abs() * (1.0 + f64::EPSILON);
         let mut term = flow.value.clone();
         let mut size: Vec<f64> = flow.value.iter().map(|x| x.to_f64().abs()).collect();
-        let largest = size.iter().copied().fold(0.0, f64::max);
         let mut lost = size.clone();
         for k in 1..=count {
             term = self.generator.apply(&term);
@@ -310,9 +325,15 @@ impl<T: Real> Propagator<T> {
         }
         let unit = (self.size() as f64 + 4.0) * T::UNIT * UPWARD;
         flow.elapsed += time.to_f64();
-        let damping = (-self.growth_rate * flow.elapsed).exp();
-        for (local, lost) in flow.local.iter_mut().zip(&lost) {
-            *local += (unit * lost + tail * largest) * damping;
+        let damping = (-self.growth_rate * flow.elapsed).exp() * UPWARD;
+        let next = self.magnitude.apply(&size);
+        let next: Vec<f64> = next
+            .iter()
+            .map(|x| x * time_size / f64::from(count + 1))
+            .collect();
+        for (i, (local, lost)) in flow.local.iter_mut().zip(&lost).enumerate() {
+            let tail = dot(self.nearby.row(i), &next);
+            *local += (unit * lost + tail) * damping;
         }
     }
 

@@ -15,7 +15,8 @@ impl<W: Write> ValueWriter<W> {
     /// What the stream says.
     pub fn new(stream: W, channels: &[&str]) -> io::Result<ValueWriter<W>> {
         let mut csv = csv::WriterBuilder::new().from_writer(stream);
-        csv.write_record(std::iter::once(&"t").chain(channels))?;
+        csv.write_record(std::iter::once(&"t").chain(channels))
+            .map_err(kept)?;
         Ok(ValueWriter {
             csv,
             cells: Vec::new(),
@@ -31,7 +32,7 @@ impl<W: Write> ValueWriter<W> {
         self.cells.push(shortest(time));
         self.cells
             .extend(values.iter().map(|&value| shortest(value)));
-        self.csv.write_record(&self.cells)?;
+        self.csv.write_record(&self.cells).map_err(kept)?;
         Ok(())
     }
 
@@ -41,6 +42,14 @@ impl<W: Write> ValueWriter<W> {
     /// What the stream says.
     pub fn finish(mut self) -> io::Result<()> {
         self.csv.flush()
+    }
+}
+
+/// The error of the stream itself, so that a closed pipe is still known as one.
+fn kept(error: csv::Error) -> io::Error {
+    match error.into_kind() {
+        csv::ErrorKind::Io(error) => error,
+        other => io::Error::other(format!("{other:?}")),
     }
 }
 

@@ -18,7 +18,7 @@ pub use csv_values::ValueWriter;
 pub use json::audit_json;
 pub use style::{Screen, WIDEST};
 pub use table::audit_text;
-pub use wire::SCHEMA;
+pub use wire::*;
 pub use write::write_atomically;
 
 /// What every report says of a pass.

@@ -366,7 +366,11 @@ fn line(screen: Screen, name: &str, text: &str) -> String {
     } else {
         format!("{name}: {text}")
     };
-    format!("  {}\n", screen.wrap(&screen.clean(&text), 6))
+    let within = Screen {
+        width: screen.width - 2,
+        ..screen
+    };
+    format!("  {}\n", within.wrap(&screen.clean(&text), 4))
 }
 
 fn summary(outcome: &Outcome) -> String {

@@ -81,6 +81,14 @@ impl<'a> Header<'a> {
     }
 }
 
+/// With the place where the column is stated, if it is stated in a file.
+fn placed(fault: Fault, stated: Option<&ColumnStated>) -> Fault {
+    match stated.and_then(|stated| stated.place) {
+        Some((line, column)) => fault.at(line, column),
+        None => fault,
+    }
+}
+
 struct Matcher<'a> {
     headers: Option<Vec<Header<'a>>>,
     columns: usize,
@@ -103,7 +111,7 @@ pub fn match_columns(
     stated: &BTreeMap<String, ColumnStated>,
 ) -> Result<Matched> {
     let channels = case.channels();
-    for name in stated.keys() {
+    for (name, column) in stated {
         if name != "time" && channels.iter().all(|channel| channel.name != name) {
             let fault = Fault::new(format!(
                 "case `{}` has no channel {}",
@@ -112,10 +120,11 @@ pub fn match_columns(
             ));
             let known = channels.iter().map(|c| c.name).chain(["time"]);
             let list: Vec<&str> = channels.iter().map(|c| c.name).collect();
-            return Err(match nearest(name, known) {
-                Some(near) => fault.help(format!("did you mean `{near}`?")),
-                None => fault.help(format!("its channels are {}", list.join(", "))),
-            });
+            let help = match nearest(name, known) {
+                Some(near) => format!("did you mean `{near}`?"),
+                None => format!("its channels are {}", list.join(", ")),
+            };
+            return Err(placed(fault.help(help), Some(column)));
         }
     }
     let headers = layout.names.as_ref().map(|names| {
@@ -200,7 +209,7 @@ impl Matcher<'_> {
             })?,
             None => self.named_time()?,
         };
-        let conversion = self.conversion(column, unit, stated.and_then(|s| s.unit.as_deref()))?;
+        let conversion = self.conversion(column, unit, stated)?;
         let conversion = conversion.map_err(Fault::new)?;
         if conversion.offset != Double::ZERO {
             return Err(Fault::new("a unit of time is expected for the time stamps"));
@@ -304,8 +313,7 @@ impl Matcher<'_> {
             Ok(column) => column,
             Err(reason) => return Ok(Err(reason)),
         };
-        let unit = stated.and_then(|stated| stated.unit.as_deref());
-        let conversion = self.conversion(column, channel.unit, unit)?;
+        let conversion = self.conversion(column, channel.unit, stated)?;
         Ok(conversion.map(|conversion| (column, conversion)))
     }
 
@@ -348,10 +356,12 @@ impl Matcher<'_> {
         &mut self,
         column: usize,
         target: &str,
-        stated: Option<&str>,
+        stated: Option<&ColumnStated>,
     ) -> Result<std::result::Result<Conversion, String>> {
-        if let Some(unit) = stated {
-            return convert(unit, target).map(Ok);
+        if let Some(unit) = stated.and_then(|stated| stated.unit.as_deref()) {
+            return convert(unit, target)
+                .map(Ok)
+                .map_err(|fault| placed(fault, stated));
         }
         let header = self.headers.as_ref().map(|headers| &headers[column]);
         let Some((name, unit)) = header.and_then(|h| Some((h.name, h.unit?))) else {

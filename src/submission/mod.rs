@@ -13,6 +13,7 @@ use std::collections::BTreeMap;
 use std::path::PathBuf;
 
 use crate::case::Replacements;
+use crate::fault::Fault;
 use crate::trajectory::Stated;
 
 pub use columns::{Column, Matched, match_columns};
@@ -41,6 +42,19 @@ pub struct Submission {
     pub layout: Stated,
     /// The files.
     pub runs: Vec<Run>,
+    /// Lines and columns of keys that can prove wrong only later, as `case` or
+    /// `parameters.R`.
+    pub places: BTreeMap<String, (u64, u64)>,
+}
+
+impl Submission {
+    /// A complaint with the place of a key, if the submission was read from a file.
+    pub fn at_key(&self, fault: Fault, key: &str) -> Fault {
+        match self.places.get(key) {
+            Some(&(line, column)) => fault.at(line, column),
+            None => fault,
+        }
+    }
 }
 
 /// What the audit should find for the submission to be in order.
@@ -91,6 +105,8 @@ pub struct ColumnStated {
     pub column: Option<ColumnName>,
     /// Its unit, if it is not the one of the case.
     pub unit: Option<String>,
+    /// Line and column where that is stated, in a file.
+    pub place: Option<(u64, u64)>,
 }
 
 /// A column by the name in the header or by number from one.

@@ -13,7 +13,7 @@ use super::{
     Claims, ColumnName, ColumnStated, Expect, LimitStated, LimitsStated, Role, Run, Setting,
     Submission, confined,
 };
-use crate::fault::{Fault, quoted};
+use crate::fault::{Fault, in_plain_words, quoted};
 use crate::trajectory::{Separator, Stated};
 
 /// Largest `submission.toml` that is read.
@@ -24,12 +24,12 @@ pub const MOST_RUNS: usize = 1000;
 #[derive(serde::Deserialize)]
 #[serde(deny_unknown_fields)]
 struct SubmissionFile {
-    case: Option<String>,
+    case: Option<Spanned<String>>,
     producer: Option<String>,
     expect: Option<Spanned<String>>,
     #[serde(default)]
-    parameters: BTreeMap<String, Spanned<f64>>,
-    claims: Option<Spanned<ClaimsEntry>>,
+    parameters: BTreeMap<Spanned<String>, Spanned<f64>>,
+    claims: Option<ClaimsEntry>,
     #[serde(default)]
     limits: BTreeMap<Spanned<String>, Spanned<LimitEntry>>,
     #[serde(default)]
@@ -43,7 +43,7 @@ struct SubmissionFile {
 #[serde(deny_unknown_fields)]
 struct ClaimsEntry {
     method: Option<String>,
-    order: Option<f64>,
+    order: Option<Spanned<f64>>,
 }
 
 #[derive(serde::Deserialize)]
@@ -60,8 +60,8 @@ struct LayoutEntry {
 #[serde(deny_unknown_fields)]
 struct RunEntry {
     file: Spanned<String>,
-    step: Option<f64>,
-    tolerance: Option<f64>,
+    step: Option<Spanned<f64>>,
+    tolerance: Option<Spanned<f64>>,
     role: Option<Spanned<String>>,
 }
 
@@ -132,6 +132,7 @@ impl FromTable for ColumnEntry {
         Ok(ColumnEntry(ColumnStated {
             column: column.map(|key| key.0),
             unit,
+            place: None,
         }))
     }
 }
@@ -161,6 +162,7 @@ impl<'de> Deserialize<'de> for ColumnEntry {
             ColumnEntry(ColumnStated {
                 column: Some(column),
                 unit: None,
+                place: None,
             })
         }
         let number = |value| column_number(value).map(short);
@@ -193,7 +195,7 @@ impl Submission {
     pub fn parse(text: &str, folder: &Path) -> Result<Submission, Vec<Fault>> {
         let file: SubmissionFile = toml::from_str(text).map_err(|error| {
             let offset = error.span().map_or(0, |span| span.start);
-            vec![Fault::new(error.message().trim_end()).at_offset(text, offset)]
+            vec![Fault::new(in_plain_words(error.message())).at_offset(text, offset)]
         })?;
         let mut reader = Reader {
             text,
@@ -226,27 +228,43 @@ impl Reader<'_> {
                 ("undecided", Expect::Undecided),
             ],
         );
+        let mut places = BTreeMap::new();
         let mut parameters = BTreeMap::new();
         for (name, value) in file.parameters {
             if !value.get_ref().is_finite() {
                 self.complain("this is not a finite number", value.span().start);
             }
-            parameters.insert(name, value.into_inner());
+            places.insert(format!("parameters.{}", name.get_ref()), self.place(&name));
+            parameters.insert(name.into_inner(), value.into_inner());
         }
         let claims = file.claims.map_or_else(Claims::default, |claims| {
-            let span = claims.span().start;
-            let ClaimsEntry { method, order } = claims.into_inner();
-            if order.is_some_and(|order| !(order > 0.0 && order <= 20.0)) {
-                self.complain("`order` must lie above 0 and not above 20", span);
+            let order = claims.order.map(|order| {
+                if !(*order.get_ref() > 0.0 && *order.get_ref() <= 20.0) {
+                    self.complain(
+                        "`order` must lie above 0 and not above 20",
+                        order.span().start,
+                    );
+                }
+                order.into_inner()
+            });
+            Claims {
+                method: claims.method,
+                order,
             }
-            Claims { method, order }
         });
+        for name in file.limits.keys() {
+            places.insert(format!("limits.{}", name.get_ref()), self.place(name));
+        }
         let limits = self.limits(file.limits);
-        let columns = file
-            .columns
-            .into_iter()
-            .map(|(name, entry)| (name.into_inner(), entry.0));
-        let columns = columns.collect();
+        let mut columns = BTreeMap::new();
+        for (name, entry) in file.columns {
+            let place = Some(self.place(&name));
+            columns.insert(name.into_inner(), ColumnStated { place, ..entry.0 });
+        }
+        let case = file.case.map(|case| {
+            places.insert("case".to_owned(), self.place(&case));
+            case.into_inner()
+        });
         let layout = file
             .layout
             .map_or_else(Stated::default, |layout| self.layout(layout));
@@ -266,7 +284,7 @@ impl Reader<'_> {
             .filter_map(|run| self.run(run))
             .collect();
         Submission {
-            case: file.case,
+            case,
             producer: file.producer,
             expect: expect.unwrap_or_default(),
             parameters,
@@ -275,7 +293,13 @@ impl Reader<'_> {
             columns,
             layout,
             runs,
+            places,
         }
+    }
+
+    fn place<T>(&self, key: &Spanned<T>) -> (u64, u64) {
+        let placed = Fault::new("").at_offset(self.text, key.span().start);
+        (placed.line.unwrap_or(1), placed.column.unwrap_or(1))
     }
 
     /// A word out of a short list.
@@ -327,6 +351,17 @@ impl Reader<'_> {
                     };
                     limits.channels.insert(channel.to_owned(), stated);
                 }
+                (
+                    key @ ("absolute" | "relative" | "order_slack" | "relative_to"),
+                    LimitEntry::Number(_) | LimitEntry::Word(_),
+                ) => {
+                    let expected = if key == "relative_to" {
+                        "a word"
+                    } else {
+                        "a number"
+                    };
+                    self.complain(format!("`{key}` must be {expected}"), offset);
+                }
                 (other, _) => {
                     let fault = Fault::new(format!("{} is no limit", quoted(other)));
                     let help = "a limit is `absolute`, `relative`, `relative_to`, `order_slack`, \
@@ -364,12 +399,17 @@ impl Reader<'_> {
     fn layout(&mut self, entry: LayoutEntry) -> Stated {
         use Separator::{Blank, Comma, Semicolon, Tab};
         let separators = [Comma, Semicolon, Tab, Blank].map(|s| (s.word(), s));
+        let decimal_place = entry
+            .decimal
+            .as_ref()
+            .map_or(0, |decimal| decimal.span().start);
         let separator = self.one_of(entry.separator, "separator", &separators);
         let decimal_comma = self.one_of(entry.decimal, "decimal", &[(".", false), (",", true)]);
         if separator == Some(Comma) && decimal_comma == Some(true) {
-            self.faults.push(Fault::new(
+            self.complain(
                 "a comma cannot be both separator and decimal sign",
-            ));
+                decimal_place,
+            );
         }
         let comment = entry.comment.map(|comment| {
             if comment.get_ref().is_empty() {
@@ -395,7 +435,14 @@ impl Reader<'_> {
     fn run(&mut self, entry: Spanned<RunEntry>) -> Option<Run> {
         let offset = entry.span().start;
         let entry = entry.into_inner();
-        let setting = match (entry.step, entry.tolerance) {
+        for value in [&entry.step, &entry.tolerance].into_iter().flatten() {
+            if !(*value.get_ref() > 0.0 && value.get_ref().is_finite()) {
+                let text = "`step` and `tolerance` must be finite and above zero";
+                self.complain(text, value.span().start);
+            }
+        }
+        let number = |value: Option<Spanned<f64>>| value.map(Spanned::into_inner);
+        let setting = match (number(entry.step), number(entry.tolerance)) {
             (Some(_), Some(_)) => {
                 self.complain("a run has either `step` or `tolerance`, not both", offset);
                 Setting::Unstated
@@ -404,14 +451,6 @@ impl Reader<'_> {
             (None, Some(tolerance)) => Setting::Tolerance(tolerance),
             (None, None) => Setting::Unstated,
         };
-        if let Setting::Step(value) | Setting::Tolerance(value) = setting
-            && !(value > 0.0 && value.is_finite())
-        {
-            self.complain(
-                "`step` and `tolerance` must be finite and above zero",
-                offset,
-            );
-        }
         let roles = [("result", Role::Result), ("rung", Role::Rung)];
         let role = self.one_of(entry.role, "role", &roles);
         let file = entry.file.get_ref().clone();

@@ -65,6 +65,8 @@ pub struct Layout {
     pub columns: usize,
     /// The line of the first row of numbers, counted from one.
     pub first_row: u64,
+    /// Rows end with a separator and nothing after it.
+    pub last_is_empty: bool,
     /// Names of the columns, where the file has them.
     pub names: Option<Vec<String>>,
     /// Units in a line of their own below the names.
@@ -92,8 +94,15 @@ impl Layout {
             Separator::Comma,
             Separator::Blank,
         ];
+        // Rows of numbers alone come first; a column of words is borne where it must be.
         let mut best: Option<((bool, usize), Layout)> = None;
-        for separator in separators {
+        for (words, separator) in [false, true]
+            .into_iter()
+            .flat_map(|words| separators.map(|s| (words, s)))
+        {
+            if words && best.is_some() {
+                break;
+            }
             for decimal_comma in [false, true] {
                 let allowed = stated.separator.is_none_or(|s| s == separator)
                     && stated.decimal_comma.is_none_or(|d| d == decimal_comma)
@@ -107,10 +116,11 @@ impl Layout {
                     comments: comments.clone(),
                     columns: 0,
                     first_row: 0,
+                    last_is_empty: false,
                     names: None,
                     units: None,
                 };
-                let Some((fits, layout)) = layout.try_on(lines, stated.skip_lines) else {
+                let Some((fits, layout)) = layout.try_on(lines, stated.skip_lines, words) else {
                     continue;
                 };
                 // A list of single numbers is the last resort: it also fits `0,5`.
@@ -121,7 +131,7 @@ impl Layout {
             }
         }
         let Some((_, mut layout)) = best else {
-            return Layout::complain(lines, &comments);
+            return Layout::complain(lines, &comments, stated.skip_lines);
         };
         if layout.columns > MOST_COLUMNS {
             let text = format!(
@@ -135,7 +145,12 @@ impl Layout {
     }
 
     /// Without any row of numbers: nothing there, or nothing that could be read.
-    fn complain(lines: &[&[u8]], comments: &[String]) -> Result<Option<Layout>> {
+    fn complain(lines: &[&[u8]], comments: &[String], skip: Option<u64>) -> Result<Option<Layout>> {
+        if let Some(skip) = skip.filter(|&skip| skip as usize >= lines.len()) {
+            let text = format!("no rows of numbers follow the {skip} lines that are skipped");
+            let help = "correct `skip_lines` under `[layout]` in submission.toml";
+            return Err(Fault::new(text).help(help));
+        }
         let says_something = |line: &&[u8]| {
             !line.trim_ascii().is_empty() && !is_comment(line.trim_ascii(), comments)
         };
@@ -160,22 +175,27 @@ impl Layout {
     }
 
     /// How many lines are rows of this layout, from the first that is one.
-    fn try_on(mut self, lines: &[&[u8]], skip: Option<u64>) -> Option<(usize, Layout)> {
+    fn try_on(
+        mut self,
+        lines: &[&[u8]],
+        skip: Option<u64>,
+        words: bool,
+    ) -> Option<(usize, Layout)> {
         let skip = skip.unwrap_or(0) as usize;
         let rows = lines.iter().enumerate().skip(skip);
         let mut rows = rows.filter(|(_, line)| !self.passes_over(line));
         let numeric = |line: &[u8]| -> Option<usize> {
-            let (mut count, mut numbers) = (0, 0);
+            let (mut count, mut numbers, mut foreign) = (0, 0, 0);
             self.split(line, &mut |_, field| {
                 count += 1;
                 match Field::read(field, self.decimal_comma) {
                     Field::Number(..) => numbers += 1,
-                    // Nothing at all must have blanks or words for it, not letters.
                     Field::Absent => {}
-                    Field::Foreign => numbers = usize::MAX / 2,
+                    Field::Foreign => foreign += 1,
                 }
             });
-            (1..usize::MAX / 2).contains(&numbers).then_some(count)
+            let mostly = words && numbers >= 2 && 2 * numbers >= count;
+            (numbers > 0 && (foreign == 0 || mostly)).then_some(count)
         };
         let (first, columns) =
             rows.find_map(|(number, line)| numeric(line).map(|count| (number, count)))?;
@@ -183,50 +203,77 @@ impl Layout {
             .take(ROWS_TRIED)
             .filter(|(_, line)| numeric(line) == Some(columns));
         let fits = 1 + more.count();
+        let mut nothing_last = false;
         self.columns = columns;
         self.first_row = first as u64 + 1;
+        self.split(lines[first], &mut |_, field| {
+            nothing_last = field.is_empty()
+        });
+        self.last_is_empty = nothing_last;
         Some((fits, self))
     }
 
-    /// Names: the last line before the rows with as many fields; a comment will do.
+    /// Names: the last line before the rows that has as many fields and is told in
+    /// words, be it a comment; above it there may be names, and it has the units.
     fn find_names(&mut self, lines: &[&[u8]]) {
         let before = &lines[..(self.first_row - 1) as usize];
-        let fields = |line: &[u8]| -> Option<Vec<String>> {
+        let mut found: Vec<(bool, Vec<String>)> = Vec::new();
+        for line in before.iter().rev().map(|line| line.trim_ascii()) {
+            let mark = self
+                .comments
+                .iter()
+                .find(|mark| line.starts_with(mark.as_bytes()));
+            let bare = mark.map_or(line, |mark| line[mark.len()..].trim_ascii());
+            match self.name_fields(bare) {
+                Some(names) => found.push((mark.is_some(), names)),
+                // Remarks may stand between names and rows, anything else may not.
+                None if mark.is_some() || line.is_empty() => {}
+                None => break,
+            }
+            if found.len() == 2 {
+                break;
+            }
+        }
+        let mut found = found.into_iter();
+        let Some((below_is_comment, below)) = found.next() else {
+            return;
+        };
+        // Two such lines: names above, units below, unless the lower one has the time.
+        let above = found.next().filter(|(is_comment, above)| {
+            let plain = !is_comment && !below_is_comment;
+            !names_time(&below) && (plain || names_time(above))
+        });
+        if let Some((_, above)) = above {
+            self.units = Some(below);
+            self.names = Some(above);
+        } else {
+            self.names = Some(below);
+        }
+    }
+
+    /// The fields of a line, if they can be names of the columns: as many, with words.
+    /// A separator at the end of the rows alone, or of this line alone, is borne, and
+    /// blanks between names above rows that have another separator.
+    fn name_fields(&self, line: &[u8]) -> Option<Vec<String>> {
+        let blank = Layout {
+            separator: Separator::Blank,
+            ..self.clone()
+        };
+        [self, &blank].into_iter().find_map(|layout| {
             let mut names = Vec::new();
-            self.split(line, &mut |_, field| {
+            layout.split(line, &mut |_, field| {
                 names.push(String::from_utf8_lossy(field).trim().to_owned());
             });
+            if names.len() == self.columns + 1 && names.last().is_some_and(String::is_empty) {
+                names.pop();
+            } else if names.len() + 1 == self.columns && self.last_is_empty {
+                names.push(String::new());
+            }
             let words = names
                 .iter()
                 .any(|name| name.chars().any(char::is_alphabetic));
             (names.len() == self.columns && words).then_some(names)
-        };
-        let told = before
-            .iter()
-            .rev()
-            .filter(|line| !line.trim_ascii().is_empty());
-        let mut told = told.map(|line| {
-            let line = line.trim_ascii();
-            let mark = self
-                .comments
-                .iter()
-                .find(|c| line.starts_with(c.as_bytes()));
-            let bare = mark.map_or(line, |mark| line[mark.len()..].trim_ascii());
-            (mark.is_some(), bare)
-        });
-        let Some((in_comment, last)) = told.next() else {
-            return;
-        };
-        let Some(names) = fields(last) else { return };
-        // Two such lines, neither a comment: names above, units below.
-        if let Some((false, above)) = told.next().filter(|_| !in_comment && !names_time(&names))
-            && let Some(above) = fields(above)
-        {
-            self.units = Some(names);
-            self.names = Some(above);
-        } else {
-            self.names = Some(names);
-        }
+        })
     }
 
     /// True for a line that holds no row: blank, or a comment.
@@ -319,9 +366,9 @@ fn is_comment(line: &[u8], comments: &[String]) -> bool {
         .any(|mark| !mark.is_empty() && line.starts_with(mark.as_bytes()))
 }
 
-/// Bytes from the start of a file that the layout is found from.
-pub(super) const SAMPLE_BYTES: usize = 64 * 1024;
-const _: () = assert!(SAMPLE_BYTES <= MOST_LINE_BYTES);
+/// Bytes from the start of a file that the layout is found from, and those that are
+/// taken where the first do not tell; enough for several lines of the longest kind.
+pub(super) const SAMPLE_BYTES: (usize, usize) = (64 * 1024, 4 * MOST_LINE_BYTES);
 
 #[cfg(test)]
 mod tests {

@@ -80,7 +80,10 @@ pub(super) struct Pattern {
     telling: u64,
     by_digits: [u64; 65],
     decimals: Option<u8>,
-    plain_and_even: bool,
+    scientific: bool,
+    even: bool,
+    /// Greatest common divisor of all values in units of their last decimal.
+    divisor: u64,
     constant: bool,
     single: bool,
     last: f64,
@@ -93,7 +96,9 @@ impl Pattern {
             telling: 0,
             by_digits: [0; 65],
             decimals: None,
-            plain_and_even: true,
+            scientific: false,
+            even: true,
+            divisor: 0,
             constant: true,
             single: true,
             last: f64::NAN,
@@ -106,9 +111,14 @@ impl Pattern {
             decimals,
             scientific,
         } = printed;
-        let even = !scientific && self.decimals.is_none_or(|known| known == decimals);
-        self.plain_and_even &= even;
+        let known = self.decimals.is_none_or(|known| known == decimals);
+        self.even &= known && (self.rows == 0 || self.scientific == scientific);
         self.decimals = Some(decimals);
+        self.scientific = scientific;
+        if self.even && !scientific && self.divisor != 1 {
+            let units = (value.abs() * 10f64.powi(i32::from(decimals))).round();
+            self.divisor = common_divisor(self.divisor, units.min(1e18) as u64);
+        }
         if self.rows > 0 && value != self.last {
             self.constant = false;
         }
@@ -119,6 +129,12 @@ impl Pattern {
         }
         self.rows += 1;
         self.last = value;
+    }
+
+    /// Decimals and whether with an exponent, where every row has the same.
+    pub(super) fn even(&self) -> Option<(u8, bool)> {
+        let decimals = self.decimals.filter(|_| self.even && self.rows > 2)?;
+        Some((decimals, self.scientific))
     }
 
     pub(super) fn conclude(&self, stated: Option<u8>) -> Resolution {
@@ -138,10 +154,15 @@ impl Pattern {
         if self.constant || self.telling == 0 {
             return Resolution::Full;
         }
-        if self.plain_and_even
-            && let Some(decimals) = self.decimals
-        {
-            return Resolution::Decimals(decimals);
+        if let Some((decimals, false)) = self.even() {
+            // Rounded numbers are not all multiples of the same few units.
+            let chosen =
+                self.divisor >= 5 && self.telling >= 4 || self.divisor >= 2 && self.telling >= 20;
+            return if chosen {
+                Resolution::Full
+            } else {
+                Resolution::Decimals(decimals)
+            };
         }
         if most >= DIGITS_IN_FULL {
             return Resolution::Full;
@@ -157,6 +178,15 @@ impl Pattern {
             Resolution::Full
         }
     }
+}
+
+/// Euclid's algorithm; zero divides nothing.
+fn common_divisor(a: u64, b: u64) -> u64 {
+    let (mut a, mut b) = (a, b);
+    while b != 0 {
+        (a, b) = (b, a % b);
+    }
+    a
 }
 
 fn is_shortest_single(value: f64) -> bool {
@@ -213,6 +243,14 @@ mod tests {
             Resolution::Full
         );
         assert_eq!(conclude(["0", "0", "0"]), Resolution::Full);
+        assert_eq!(
+            conclude(["0", "60", "600", "1500", "3600"]),
+            Resolution::Full
+        );
+        assert_eq!(
+            conclude(["0", "61", "600", "1500", "3600"]),
+            Resolution::Decimals(0)
+        );
     }
 
     #[test]

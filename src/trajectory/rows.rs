@@ -2,9 +2,9 @@
 
 use super::finding::{Findings, Kind};
 use super::grid::Grid;
-use super::number::Field;
+use super::number::{Field, Printed};
 use super::open::Source;
-use super::resolution::{Resolution, half_ulp};
+use super::resolution::half_ulp;
 use super::survey::Survey;
 use crate::fault::{Result, quoted};
 use crate::number::{Decimal, Double};
@@ -26,8 +26,15 @@ pub struct Row<'a> {
 struct State {
     last: Option<(f64, Vec<Option<f64>>)>,
     latest: f64,
-    /// A row that equals the one before; whether that is a fault shows with the next.
-    doubled: Option<(u64, f64)>,
+    /// A finding whose kind shows only with the next row: a row that equals the one
+    /// before it, or one that leaves a hole which it may have been swapped into.
+    pending: Option<Pending>,
+}
+
+struct Pending {
+    kind: Kind,
+    line: u64,
+    text: String,
 }
 
 impl Survey {
@@ -46,21 +53,24 @@ impl Survey {
         let mut state = State {
             last: None,
             latest: f64::NEG_INFINITY,
-            doubled: None,
+            pending: None,
         };
         let mut values = vec![None; self.selection.channels.len()];
-        source.each_line(&mut |line, text, ended| {
+        let result = source.each_line(&mut |line, text, ended| {
             if line < self.layout.first_row || self.layout.passes_over(text) {
                 return Ok(());
             }
             values.fill(None);
             let (stamp, usable) = self.row(line, text, ended, &mut values, findings);
             let Some((time, exact)) = stamp else {
+                // What lies between the rows around it cannot be told.
+                state.last = None;
                 return Ok(());
             };
             if !usable {
                 // Its stamp still counts, or the next row would seem to leave a hole.
                 state.last = Some((time, values.clone()));
+                state.latest = state.latest.max(time);
                 return Ok(());
             }
             let resolution = self.time_resolution(time, exact);
@@ -77,7 +87,16 @@ impl Survey {
                 time_resolution: resolution,
                 values: &values,
             })
-        })
+        });
+        if let Some(Pending {
+            kind: Kind::MissingRows,
+            line,
+            text,
+        }) = state.pending.take()
+        {
+            findings.fatal(Kind::MissingRows, line, text);
+        }
+        result
     }
 
     /// Reads one line: its stamp, and whether it is a usable row; what it is not is a
@@ -109,7 +128,7 @@ impl Survey {
                 (Field::Number(value, printed), Some(place)) => {
                     values[place] = Some(value);
                     let last = column + 1 == self.layout.columns;
-                    short = last && self.is_short(place, printed.decimals);
+                    short = last && self.is_short(place, printed);
                 }
                 _ if strange.is_none() => {
                     strange = Some((column, String::from_utf8_lossy(field).into_owned()));
@@ -150,8 +169,11 @@ impl Survey {
     }
 
     /// Fewer digits than every other row has: the end of the number is missing.
-    fn is_short(&self, place: usize, decimals: u8) -> bool {
-        matches!(self.channels[place], Resolution::Decimals(usual) if decimals < usual)
+    fn is_short(&self, place: usize, printed: Printed) -> bool {
+        let usual = self.even[place];
+        usual.is_some_and(|(decimals, scientific)| {
+            printed.decimals < decimals || scientific && !printed.scientific
+        })
     }
 
     /// Order, repetition and holes of the stamps.
@@ -163,45 +185,39 @@ impl Survey {
         state: &mut State,
         findings: &mut Findings,
     ) {
-        if let Some((doubled, stamp)) = state.doubled.take() {
-            let text = format!("this row repeats the one before it, t = {stamp}");
-            findings.fatal(Kind::RepeatedStamp, doubled, text);
+        if let Some(Pending { kind, line, text }) = state.pending.take() {
+            // A row that comes out of order fills the hole that seemed to be there.
+            if kind == Kind::RepeatedStamp || time >= state.latest {
+                findings.fatal(kind, line, text);
+            }
         }
-        if let Some((last, last_values)) = &state.last {
-            if time < state.latest {
-                let text = format!("t = {time} comes after t = {}", state.latest);
-                findings.fatal(Kind::TimeNotIncreasing, line, text);
-            } else if time == *last {
+        if time < state.latest {
+            let text = format!("t = {time} comes after t = {}", state.latest);
+            findings.fatal(Kind::TimeNotIncreasing, line, text);
+        } else if let Some((last, last_values)) = &state.last {
+            let from = last.max(state.latest);
+            if time == *last {
                 let uniform = matches!(self.grid, Grid::Uniform { .. });
                 if uniform && last_values == values && !is_event(time) {
                     // At the very end it can be a last tiny step of a code that adds
                     // up its time, printed to few digits.
-                    state.doubled = Some((line, time));
+                    let text = format!("this row repeats the one before it, t = {time}");
+                    state.pending = Some(Pending {
+                        kind: Kind::RepeatedStamp,
+                        line,
+                        text,
+                    });
                 } else {
                     let text = format!("t = {time} stands here a second time");
                     findings.note(Kind::RepeatedStamp, line, text);
                 }
-            } else if let Grid::Uniform {
-                spacing,
-                holes: true,
-                ..
-            } = self.grid
-            {
-                let step = time - last;
-                // Each of the two stamps may be off by its resolution.
-                let slack = 2.1 * resolution.max(half_ulp(time));
-                // Steps of a code that chooses them are no whole multiples.
-                let missing = (step / spacing).round() - 1.0;
-                let off_grid = (step - (missing + 1.0) * spacing).abs();
-                let whole = off_grid <= slack * (missing + 2.0) + 1e-6 * step;
-                if missing >= 1.0 && step - spacing > slack && whole {
-                    let text = format!(
-                        "{missing} {} missing before this one: t goes from {last} to {time} in a \
-                         file of step {spacing}",
-                        if missing == 1.0 { "row is" } else { "rows are" }
-                    );
-                    findings.fatal(Kind::MissingRows, line, text);
-                }
+            } else {
+                let hole = self.hole(from, time, resolution);
+                state.pending = hole.map(|text| Pending {
+                    kind: Kind::MissingRows,
+                    line,
+                    text,
+                });
             }
         }
         state.latest = state.latest.max(time);
@@ -212,6 +228,32 @@ impl Survey {
             }
             None => state.last = Some((time, values.to_vec())),
         }
+    }
+
+    /// What is missing between two stamps of a uniform grid.
+    fn hole(&self, from: f64, to: f64, resolution: f64) -> Option<String> {
+        let Grid::Uniform {
+            spacing,
+            holes: true,
+            ..
+        } = self.grid
+        else {
+            return None;
+        };
+        let step = to - from;
+        // Each of the two stamps may be off by its resolution.
+        let slack = 2.1 * resolution.max(half_ulp(to));
+        // Steps of a code that chooses them are no whole multiples.
+        let missing = (step / spacing).round() - 1.0;
+        let off_grid = (step - (missing + 1.0) * spacing).abs();
+        let whole = off_grid <= slack * (missing + 2.0) + 1e-6 * step;
+        let rows = if missing == 1.0 { "row is" } else { "rows are" };
+        (missing >= 1.0 && step - spacing > slack && whole).then(|| {
+            format!(
+                "{missing} {rows} missing before this one: t goes from {from} to {to} in a file \
+                 of step {spacing}"
+            )
+        })
     }
 
     /// Zero for a stamp that is an exact decimal multiple of the grid's step.

@@ -31,6 +31,9 @@ pub struct Survey {
     pub time: Resolution,
     /// How finely each channel is printed.
     pub channels: Vec<Resolution>,
+    /// Digits after the decimal sign and whether with an exponent, where that is the
+    /// same in every row of a channel.
+    pub even: Vec<Option<(u8, bool)>>,
     /// The first stamp.
     pub first: Option<crate::number::Decimal>,
 }
@@ -41,32 +44,44 @@ impl Source {
     /// # Errors
     /// A file that cannot be read, is no text, or fits no layout.
     pub fn layout(&self, stated: &Stated) -> Result<Option<Layout>> {
-        let (sample, whole) = self.sample(SAMPLE_BYTES)?;
-        if let Some(at) = memchr::memchr(0, &sample) {
-            let what = match sample[..] {
-                [0x1f, 0x8b, ..] => "gzip data",
-                [0x28, 0xb5, 0x2f, 0xfd, ..] => "zstd data",
-                [b'P', b'A', b'R', b'1', ..] => "Parquet data",
-                [0x93, b'N', b'U', b'M', ..] => "a NumPy array",
-                [0xff, 0xfe, ..] | [0xfe, 0xff, ..] => "UTF-16 text",
-                _ => "not text",
-            };
-            let fault = Fault::new(format!("this file is {what} (byte {at} is zero)"));
-            return Err(fault.help("this build reads text files; write CSV"));
+        // A long preamble can fill the first sample; a larger one is taken only then.
+        let (small, large) = SAMPLE_BYTES;
+        let (sample, whole) = self.sample(small)?;
+        let found = layout_of(&sample, whole, stated);
+        if whole || matches!(found, Ok(Some(_))) {
+            return found;
         }
-        let mut owned: Vec<Vec<u8>> = Vec::new();
-        let mut lines = super::lines::Lines::default();
-        let mut keep = |_: u64, line: &[u8]| {
-            owned.push(line.to_vec());
-            Ok(())
-        };
-        lines.feed(&sample, &mut keep)?;
-        if whole {
-            lines.finish(&mut keep)?;
-        }
-        let lines: Vec<&[u8]> = owned.iter().map(Vec::as_slice).collect();
-        Layout::find(&lines, stated)
+        let (sample, whole) = self.sample(large)?;
+        layout_of(&sample, whole, stated)
     }
+}
+
+fn layout_of(sample: &[u8], whole: bool, stated: &Stated) -> Result<Option<Layout>> {
+    let format = match *sample {
+        [0x1f, 0x8b, ..] => Some("gzip data"),
+        [0x28, 0xb5, 0x2f, 0xfd, ..] => Some("zstd data"),
+        [b'P', b'A', b'R', b'1', ..] => Some("Parquet data"),
+        [0x93, b'N', b'U', b'M', ..] => Some("a NumPy array"),
+        [b'P', b'K', 3, 4, ..] => Some("a zip archive"),
+        [0xff, 0xfe, ..] | [0xfe, 0xff, ..] => Some("UTF-16 text"),
+        _ => memchr::memchr(0, sample).map(|_| "not text: it holds zero bytes"),
+    };
+    if let Some(format) = format {
+        let fault = Fault::new(format!("this file is {format}"));
+        return Err(fault.help("this build reads plain text files; write CSV"));
+    }
+    let mut owned: Vec<Vec<u8>> = Vec::new();
+    let mut lines = super::lines::Lines::default();
+    let mut keep = |_: u64, line: &[u8]| {
+        owned.push(line.to_vec());
+        Ok(())
+    };
+    lines.feed(sample, &mut keep)?;
+    if whole {
+        lines.finish(&mut keep)?;
+    }
+    let lines: Vec<&[u8]> = owned.iter().map(Vec::as_slice).collect();
+    Layout::find(&lines, stated)
 }
 
 impl Survey {
@@ -123,6 +138,7 @@ impl Survey {
                 .iter()
                 .map(|pattern| pattern.conclude(stated.digits))
                 .collect(),
+            even: patterns.iter().map(Pattern::even).collect(),
             layout,
             selection,
             rows,

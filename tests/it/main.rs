@@ -18,3 +18,18 @@ mod properties;
 
 /// The shape of the project: imports, sizes, the top level.
 mod tidy;
+
+/// Whole screens and reports, read by eye before they are accepted.
+mod golden;
+
+/// Published numbers and worked examples, each with its source.
+mod published;
+
+/// A folder made for one test, and the command run on it.
+mod folder;
+
+/// The same trajectory in every layout.
+mod layouts;
+
+/// Broken files and submissions: finding, line, exit status.
+mod broken;

@@ -80,7 +80,7 @@ fn complaints_have_their_place() {
             "2:15: `relative_to` is `sum`, expected",
         ),
         ("[limits]\nair = { abs = 1 }", "unknown field `abs`"),
-        ("[claims]\norder = 0", "1:1: `order` must lie above 0"),
+        ("[claims]\norder = 0", "2:9: `order` must lie above 0"),
         (
             "[claims]\norder = 'two'",
             "2:9: invalid type: string \"two\"",

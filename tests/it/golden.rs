@@ -1,0 +1,165 @@
+//! Each screen is kept in `tests/golden/`. After a wanted change, run with
+//! `STEPGAUGE_ACCEPT=1` and read the difference before committing it.
+
+use std::path::{Path, PathBuf};
+use std::process::Command;
+
+fn root() -> &'static Path {
+    Path::new(env!("CARGO_MANIFEST_DIR"))
+}
+
+fn screen(arguments: &[&str], locale: &str, columns: &str) -> String {
+    let output = Command::new(env!("CARGO_BIN_EXE_stepgauge"))
+        .args(arguments)
+        .current_dir(root())
+        .env("LC_ALL", locale)
+        .env("COLUMNS", columns)
+        .output()
+        .unwrap();
+    let text = String::from_utf8([output.stdout, output.stderr].concat()).unwrap();
+    format!("{text}exit status {}\n", output.status.code().unwrap())
+}
+
+fn compare(name: &str, found: &str) {
+    let path: PathBuf = root().join("tests/golden").join(name);
+    if std::env::var_os("STEPGAUGE_ACCEPT").is_some() {
+        std::fs::create_dir_all(path.parent().unwrap()).unwrap();
+        std::fs::write(&path, found).unwrap();
+    }
+    let kept = std::fs::read_to_string(&path).unwrap_or_default();
+    for (number, (kept, found)) in kept.lines().zip(found.lines()).enumerate() {
+        assert_eq!(kept, found, "{name}, line {}", number + 1);
+    }
+    assert_eq!(
+        kept.lines().count(),
+        found.lines().count(),
+        "{name}: number of lines"
+    );
+}
+
+#[test]
+fn the_audit_of_the_demo_at_every_width() {
+    for (name, locale, columns) in [
+        ("audit-80-ascii.txt", "C", "80"),
+        ("audit-100.txt", "C.UTF-8", "100"),
+        ("audit-200.txt", "C.UTF-8", "200"),
+    ] {
+        let found = screen(&["audit", "demo-runs"], locale, columns);
+        compare(name, &found);
+        let width: usize = columns.parse().unwrap();
+        let widest = found
+            .lines()
+            .map(|line| line.chars().count())
+            .max()
+            .unwrap();
+        assert!(widest <= width.max(80), "{name} is {widest} wide");
+        assert_eq!(locale == "C", found.is_ascii(), "{name}");
+        assert!(
+            !found.contains('\u{1b}'),
+            "{name} has terminal codes in a pipe"
+        );
+    }
+}
+
+#[test]
+fn cases_and_help() {
+    compare("cases-100.txt", &screen(&["cases"], "C.UTF-8", "100"));
+    let case = ["case", "thermal/cold-room-defrost"];
+    compare("case-100.txt", &screen(&case, "C.UTF-8", "100"));
+    compare(
+        "case.json",
+        &screen(&[case[0], case[1], "--json"], "C", "100"),
+    );
+    for command in ["audit", "cases", "case", "exact"] {
+        compare(
+            &format!("help-{command}.txt"),
+            &screen(&[command, "--help"], "C.UTF-8", "100"),
+        );
+    }
+    compare("help.txt", &screen(&["--help"], "C.UTF-8", "100"));
+}
+
+#[test]
+fn the_json_report_of_the_demo() {
+    let path = std::env::temp_dir().join(format!("stepgauge-golden-{}.json", std::process::id()));
+    let written = path.to_str().unwrap();
+    screen(&["audit", "demo-runs", "--write", written], "C", "100");
+    let text = std::fs::read_to_string(&path).unwrap();
+    std::fs::remove_file(&path).unwrap();
+    compare("audit.json", &text);
+    // Read back with unknown fields refused.
+    let report: stepgauge::report::AuditReport = serde_json::from_str(&text).unwrap();
+    assert_eq!(report.schema, stepgauge::report::SCHEMA);
+    assert!(report.summary.in_order);
+}
+
+/// The reports do not depend on the number of threads.
+#[test]
+fn any_number_of_threads_gives_the_same_bytes() {
+    let folder = std::env::temp_dir();
+    let reports: Vec<String> = ["1", "2", "7"]
+        .iter()
+        .map(|threads| {
+            let path = folder.join(format!(
+                "stepgauge-threads-{}-{threads}.json",
+                std::process::id()
+            ));
+            let written = path.to_str().unwrap();
+            screen(
+                &[
+                    "audit",
+                    "demo-runs",
+                    "--threads",
+                    threads,
+                    "--write",
+                    written,
+                ],
+                "C",
+                "100",
+            );
+            let text = std::fs::read_to_string(&path).unwrap();
+            std::fs::remove_file(&path).unwrap();
+            text
+        })
+        .collect();
+    assert!(reports[0].len() > 1000);
+    assert!(reports.iter().all(|report| *report == reports[0]));
+}
+
+#[test]
+fn the_screens_in_the_readme_are_true() {
+    let readme = std::fs::read_to_string(root().join("README.md")).unwrap();
+    let screens: Vec<&str> = readme
+        .split("```text\n")
+        .skip(1)
+        .map(|rest| rest.split("\n```").next().unwrap())
+        .collect();
+    let shown = screen(&["audit", "demo-runs"], "C.UTF-8", "100");
+    assert_eq!(format!("{}\nexit status 0\n", screens[0]), shown);
+    // The same without the mark of one control.
+    let folder =
+        std::env::temp_dir().join(format!("stepgauge-readme-{}/winch", std::process::id()));
+    for producer in ["alder", "birch", "cedar"] {
+        let (from, to) = (
+            root().join("demo-runs/winch").join(producer),
+            folder.join(producer),
+        );
+        std::fs::create_dir_all(&to).unwrap();
+        for entry in std::fs::read_dir(from).unwrap() {
+            let entry = entry.unwrap();
+            std::fs::copy(entry.path(), to.join(entry.file_name())).unwrap();
+        }
+    }
+    let marked = folder.join("cedar/submission.toml");
+    let text = std::fs::read_to_string(&marked).unwrap();
+    let unmarked: String = text
+        .lines()
+        .filter(|line| !line.starts_with("expect"))
+        .map(|line| format!("{line}\n"))
+        .collect();
+    assert_ne!(text, unmarked);
+    std::fs::write(&marked, unmarked).unwrap();
+    let shown = screen(&["audit", folder.to_str().unwrap()], "C.UTF-8", "100");
+    std::fs::remove_dir_all(folder.parent().unwrap()).unwrap();
+    assert_eq!(format!("{}\nexit status 1\n", screens[1]), shown);
+}
