@@ -364,7 +364,7 @@ runs = [] => => the submission has no runs
 [[runs]] / file = "run.csv" / step = 60 / tolerance = 1e-6 => 2: => not both
 [[runs]] / file = "run.csv" / step = 0 => 4:8: => finite and above zero
 [[runs]] / file = "run.csv" / step = nan => 4:8: => finite and above zero
-[[runs]] / file = "run.csv" / step = "60 s" => 4:8: => expected f64
+[[runs]] / file = "run.csv" / step = "60 s" => 4:8: => expected a number
 [[runs]] / file = "run.csv" / role = "best" => 4:8: => `role` is `best`
 [[runs]] / step = 60 => 2:1: => missing field `file`
 [[runs]] / file = "../run.csv" => 3:8: => does not lie in the submission's own folder
@@ -379,7 +379,7 @@ producer = "alder => 2: =>
 producer = => 2: =>
 producer = "a" / producer = "b" => 3:1: => duplicate key
 t,air,wall => 2: =>
-producer = 5 => 2:12: => expected a string
+producer = 5 => 2:12: => expected text in quotes
 "#;
 
 fn is_refused(ran: &Ran, place: &str, text: &str) -> bool {
@@ -437,7 +437,7 @@ fn submissions_with_mistakes() {
         "case by number",
         &of_case("7", run),
         "1:8:",
-        "expected a string",
+        "expected text in quotes",
     );
     check("no case", run.as_bytes(), "", "names no case");
     check("empty", b"", "", "no runs");
