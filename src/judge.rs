@@ -1,7 +1,7 @@
 //! From numbers to verdicts: limits, order claims, and the submission as a whole.
 //!
 //! Acceptance and rejection are guarded: a verdict is given only where what the file
-//! can resolve does not change it ([jcgm-106] in [`crate::references`]).
+//! can resolve does not change it (`[jcgm-106]` in [`crate::references`]).
 
 use crate::compare::{Deviation, Margin, Pair, Sight};
 

@@ -11,7 +11,7 @@ use super::order::Pair;
 /// `1.25 |f1 - f2|/|f1| / (r21^p - 1)`.
 ///
 /// # Source
-/// [celik-2008] in [`crate::references`]; for equal ratios [roache-1998].
+/// `[celik-2008]` in [`crate::references`]; for equal ratios `[roache-1998]`.
 #[derive(Clone, Copy, Debug, PartialEq)]
 pub struct Convergence {
     /// Observed order.
@@ -28,7 +28,7 @@ pub struct Convergence {
     pub oscillating: bool,
 }
 
-/// Safety factor for three grids ([roache-1998]).
+/// Safety factor for three grids (`[roache-1998]`).
 const SAFETY: f64 = 1.25;
 
 /// Evaluates three values, the finest first, with their steps.

@@ -53,7 +53,7 @@ pub enum Sight {
 /// An error must stand this many times above its doubt to count; a quarter of that
 /// serves where it leaves fewer than two rungs.
 const CLEAR: [f64; 2] = [10.0, 2.5];
-/// Orders that differ by less agree (common practice, no source; [celik-2008] ask for
+/// Orders that differ by less agree (common practice, no source; `[celik-2008]` ask for
 /// judgement).
 const AGREEMENT: f64 = 0.15;
 

@@ -52,7 +52,7 @@ const CLOSED_FORM_AGREEMENT: f64 = 1e-13;
 /// not part of the bound.
 ///
 /// # Source
-/// [van-loan-1978] in [`crate::references`].
+/// `[van-loan-1978]` in [`crate::references`].
 #[derive(Debug)]
 pub struct Exact {
     system: System,

@@ -21,7 +21,7 @@ use std::ops::{Add, AddAssign, Div, Mul, MulAssign, Neg, Sub, SubAssign};
 /// `10 * 2^-106`.
 ///
 /// # Source
-/// [dekker-1971] for the split and the product; [joldes-2017] for the bounds.
+/// `[dekker-1971]` for the split and the product; `[joldes-2017]` for the bounds.
 #[derive(Clone, Copy, Debug, Default)]
 pub struct Double {
     high: f64,

@@ -26,7 +26,7 @@ use super::{Double, Real};
 /// Finite entries and `|M| span <= 2^60` in the row-sum norm; outside: `None`.
 ///
 /// # Error bound
-/// [`Flow::bound`], entry by entry: every operation adds what it may have lost to
+/// [`Propagator::bound`], entry by entry: every operation adds what it may have lost to
 /// a local sum, and `|exp(Mt)| <= exp(growth t) reach` carries that sum to any later
 /// time (`growth` is zero for a system that does not grow).
 ///
@@ -35,7 +35,7 @@ use super::{Double, Real};
 /// of n^2 to apply.
 ///
 /// # Source
-/// [higham-2005]; [moler-van-loan-2003], method 3; the bound is ours.
+/// `[higham-2005]`; `[moler-van-loan-2003]`, method 3; the bound is ours.
 #[derive(Debug)]
 pub struct Propagator<T> {
     generator: Matrix<T>,

@@ -3,8 +3,8 @@
 //!
 //! Nothing here knows of cases or files. [`Double`] carries every exact value;
 //! [`Quad`] is the second precision that serves where a bound computed in
-//! [`Double`] is not good enough. Sources: [dekker-1971], [hida-li-bailey-2001],
-//! [higham-2005] in [`crate::references`].
+//! [`Double`] is not good enough. Sources: `[dekker-1971]`, `[hida-li-bailey-2001]`,
+//! `[higham-2005]` in [`crate::references`].
 
 mod conversion;
 mod decimal;

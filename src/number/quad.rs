@@ -13,7 +13,7 @@ use super::double::{quick_two_sum, two_product, two_sum};
 /// Product `2^-200` relative; sum `2^-200` relative to the sum of magnitudes.
 ///
 /// # Source
-/// [hida-li-bailey-2001], sections 3 and 4 (the fast variants).
+/// `[hida-li-bailey-2001]`, sections 3 and 4 (the fast variants).
 #[derive(Clone, Copy, Debug, Default)]
 pub struct Quad([f64; 4]);
 
