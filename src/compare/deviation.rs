@@ -1,9 +1,10 @@
 //! Errors of one run in one pass over its rows.
 
+use super::coverage::Coverage;
 use crate::exact::{Exact, Walk};
 use crate::fault::Result;
 use crate::number::{Conversion, Decimal, Double};
-use crate::trajectory::{Findings, Grid, Kind, Resolution, Row, Source, Survey};
+use crate::trajectory::{Findings, Grid, Resolution, Row, Source, Survey};
 
 /// The error that is allowed: `absolute + relative * |exact|`, or relative to the
 /// channel's peak.
@@ -110,9 +111,6 @@ pub struct Margin {
     pub used: f64,
 }
 
-/// A start or an end within this fraction of the window counts as reached: codes that
-/// add up their time end a little early or late.
-const COVERAGE_SLACK: f64 = 1e-9;
 /// Rows that must all lie far below the assumed resolution before it is dropped.
 const ROWS_TO_REFUTE: u64 = 8;
 /// How far: where digits are really rounded, one row in ten lies below this.
@@ -159,28 +157,25 @@ impl<'a> Comparison<'a> {
             let time = self.time.apply(Double::from(stamp));
             self.exact.jumps_near(time, 1e-9 * span)
         };
-        let mut first: Option<(f64, bool)> = None;
-        let mut last_end: Option<(f64, bool)> = None;
-        let (mut rows, mut outside) = (0, 0);
+        // Findings of the rows and of their coverage come in turn.
+        let mut gaps = Findings::default();
+        let (start, end) = (from.to_f64(), to.to_f64());
+        let mut coverage = Coverage::new(start, end, self.time_unit);
         self.survey
             .rows(self.source, findings, &is_event, &mut |row| {
                 let time = self.time.apply(row.time);
                 let blur = self.time.stretch(row.time_resolution);
-                let slack = COVERAGE_SLACK * span + blur;
-                let (early, late) = ((from - time).to_f64(), (time - to).to_f64());
-                first.get_or_insert((time.to_f64(), -early <= slack));
-                last_end = Some((time.to_f64(), -late <= slack));
-                if early > slack || late > slack {
-                    outside += 1;
-                    return Ok(());
+                if coverage.add(row.line, time.to_f64(), blur, &mut gaps) {
+                    let (time, blur) = self.on_step(time, blur);
+                    pass.add(if time < from { from } else { time }, blur, row);
                 }
-                rows += 1;
-                let (time, blur) = self.on_step(time, blur);
-                let time = if early > 0.0 { from } else { time };
-                pass.add(time, blur, row);
                 Ok(())
             })?;
-        self.coverage(first, last_end, (rows, outside), findings);
+        if matches!(self.survey.grid, Grid::Varied) {
+            // On a uniform grid every single missing row is seen by the reader.
+            findings.append(gaps);
+        }
+        let (rows, outside) = coverage.conclude(self.least_rows, findings);
         let spacing = match self.survey.grid {
             Grid::Uniform { spacing, .. } => Some(self.time.stretch(spacing)),
             Grid::Varied => None,
@@ -214,47 +209,6 @@ impl<'a> Comparison<'a> {
             (time, blur)
         }
     }
-
-    fn coverage(
-        &self,
-        first: Option<(f64, bool)>,
-        last: Option<(f64, bool)>,
-        (rows, outside): (u64, u64),
-        findings: &mut Findings,
-    ) {
-        let (from, to) = (self.exact.from().to_f64(), self.exact.to().to_f64());
-        let unit = self.time_unit;
-        let Some(((begin, begins), (end, ends))) = first.zip(last) else {
-            findings.fatal(Kind::EmptyFile, None, "the file has no rows of numbers");
-            return;
-        };
-        let beyond = match outside {
-            0 => String::new(),
-            // Most often a slip in the unit of time.
-            _ => format!("; {outside} rows lie outside it: is the unit of time right?"),
-        };
-        // The first row may come later than the start, or lie before it: the start is
-        // covered only by a row that is there.
-        if !begins || begin > to {
-            let text = format!(
-                "the first row is at t = {begin} {unit}, the window starts at {from} {unit}{beyond}"
-            );
-            findings.fatal(Kind::WindowNotCovered, None, text);
-        }
-        if !ends {
-            let text = format!(
-                "the last row is at t = {end} {unit}, the window ends at {to} {unit}{beyond}"
-            );
-            findings.fatal(Kind::WindowNotCovered, None, text);
-        }
-        if rows < self.least_rows {
-            let text = format!(
-                "{rows} row(s) within the window, at least {} are needed",
-                self.least_rows
-            );
-            findings.fatal(Kind::TooFewRows, None, text);
-        }
-    }
 }
 
 /// The walk along the exact solution and the sums of all channels.
@@ -284,8 +238,9 @@ impl<'c, 'a> Pass<'c, 'a> {
             true => exact.jump_after(time, ulps).unwrap_or(time),
             false => time,
         };
+        self.walk.go(time);
         let moved = self.moved_by(time, blur);
-        let values = self.walk.go(time);
+        let values = self.walk.values();
         let channels = self
             .comparison
             .channels
@@ -316,18 +271,17 @@ impl<'c, 'a> Pass<'c, 'a> {
         // the blur is covered by a tenth.
         let slow = exact.fastest_rate() * blur < 0.05;
         if slow && !exact.jumps_near(time, blur) {
-            self.walk.go(time);
             let rates = self.walk.approx_rates();
             return Some(rates.iter().map(|rate| 1.1 * rate.abs() * blur).collect());
         }
-        let middle = self.walk.go(time).value.clone();
+        let middle = &self.walk.values().value;
         let [before, after] = self
             .sides
             .get_or_insert_with(|| [exact.walk(), exact.walk()]);
         let mut moved = vec![0.0f64; middle.len()];
         for (walk, shift) in [(before, -blur), (after, blur)] {
             let there = walk.go(time + Double::from(shift));
-            for ((moved, there), middle) in moved.iter_mut().zip(&there.value).zip(&middle) {
+            for ((moved, there), middle) in moved.iter_mut().zip(&there.value).zip(middle) {
                 *moved = moved.max((*there - *middle).abs().to_f64());
             }
         }

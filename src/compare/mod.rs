@@ -4,6 +4,7 @@
 //! Nothing is judged here; [`crate::judge`] does that with the numbers found.
 
 mod convergence;
+mod coverage;
 mod deviation;
 mod order;
 

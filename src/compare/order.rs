@@ -53,6 +53,8 @@ pub enum Sight {
 /// An error must stand this many times above its doubt to count; a quarter of that
 /// serves where it leaves fewer than two rungs.
 const CLEAR: [f64; 2] = [10.0, 2.5];
+/// Rounding can add up to this fraction of the peak over many steps.
+const ADDED_UP: f64 = 1e-9;
 /// Orders that differ by less agree (common practice, no source; `[celik-2008]` ask for
 /// judgement).
 const AGREEMENT: f64 = 0.15;
@@ -101,8 +103,23 @@ pub fn observe(rungs: &[Rung]) -> Sight {
     }
     let usable = |factor: f64| -> Vec<Rung> {
         let counts = |rung: &&Rung| rung.is_clear(factor) && rung.is_below_the_solution();
-        rungs.iter().filter(counts).copied().collect()
+        let mut usable: Vec<Rung> = rungs.iter().filter(counts).copied().collect();
+        // Tiny errors that grow as the step shrinks are rounding that has added up over
+        // the steps, even where it exceeds what is usual.
+        while let [.., coarse, fine] = usable[..]
+            && fine.error >= coarse.error
+            && fine.error < ADDED_UP * fine.peak
+        {
+            usable.pop();
+        }
+        usable
     };
+    let all_tiny = rungs.iter().all(|rung| rung.error < ADDED_UP * rung.peak);
+    let falls = |two: &[Rung]| two[1].error < 0.8 * two[0].error;
+    let in_full = rungs.iter().all(|rung| rung.resolution <= rung.rounding());
+    if all_tiny && in_full && !rungs.windows(2).any(falls) {
+        return Sight::ExactForThisCase;
+    }
     let clear = CLEAR
         .iter()
         .map(|&factor| usable(factor))
@@ -231,6 +248,16 @@ mod tests {
             sight,
             Sight::TooFew("2 of 3 errors at rounding level".to_owned())
         );
+    }
+
+    #[test]
+    fn rounding_that_has_added_up_shows_no_order() {
+        assert_eq!(
+            observe(&ladder(&[2e-12, 5e-12, 1.1e-11, 2e-11])),
+            Sight::ExactForThisCase
+        );
+        let (order, _) = finest(observe(&ladder(&[1e-7, 6.25e-9, 4e-10, 9e-10])));
+        assert!((order - 4.0).abs() < 0.05, "{order}");
     }
 
     #[test]

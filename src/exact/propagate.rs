@@ -185,6 +185,11 @@ impl<'a> Walk<'a> {
         &self.values
     }
 
+    /// The values at the last time.
+    pub fn values(&self) -> &Values {
+        &self.values
+    }
+
     /// Rates of change of all channels at the last time, in `f64`; right of a jump.
     pub fn approx_rates(&self) -> Vec<f64> {
         let rates = self.exact.table.approx_rate(&self.flow);

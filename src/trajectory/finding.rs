@@ -93,6 +93,13 @@ impl Findings {
         }
     }
 
+    /// Takes over those of another pass.
+    pub fn append(&mut self, other: Findings) {
+        for finding in other.into_list() {
+            self.add(finding);
+        }
+    }
+
     /// True where one of them keeps the file from passing.
     pub fn any_fatal(&self) -> bool {
         self.list.iter().any(|finding| finding.fatal)

@@ -1,0 +1,207 @@
+//! Whether the rows of a run cover the window: from its start to its end, without a
+//! stretch left out.
+
+use crate::trajectory::{Findings, Kind};
+
+/// A start or an end within this fraction of the window counts as reached: codes that
+/// add up their time end a little early or late.
+const SLACK: f64 = 1e-9;
+/// Rounded stamps can add at most this fraction of the window to it.
+const MOST_SLACK: f64 = 2e-3;
+/// Steps below this fraction of the window are pairs of rows around an event.
+const PAIR: f64 = 1e-6;
+/// A gap this many times as long as the steps on both sides of it is a hole. Codes that
+/// choose their step lengthen it at most ten times at once, and then go on with it.
+const HOLE: f64 = 20.0;
+
+/// Follows the stamps of a run, in the unit of the case.
+#[derive(Debug)]
+pub(super) struct Coverage<'a> {
+    from: f64,
+    to: f64,
+    unit: &'a str,
+    /// First and last stamp of the file.
+    ends: Option<(f64, f64)>,
+    /// The start was reached by a row, the end by a row or by a step across it.
+    begins: bool,
+    finishes: bool,
+    last_inside: Option<f64>,
+    /// Lines and sizes of the last two steps: a hole shows with the step after it.
+    before: f64,
+    gap: Option<(u64, f64, f64)>,
+    largest: f64,
+    rows: u64,
+    outside: u64,
+}
+
+impl<'a> Coverage<'a> {
+    pub(super) fn new(from: f64, to: f64, unit: &'a str) -> Coverage<'a> {
+        Coverage {
+            from,
+            to,
+            unit,
+            ends: None,
+            begins: false,
+            finishes: false,
+            last_inside: None,
+            before: 0.0,
+            gap: None,
+            largest: 0.0,
+            rows: 0,
+            outside: 0,
+        }
+    }
+
+    /// How far outside the window a row still counts as at its edge.
+    pub(super) fn slack(&self, blur: f64) -> f64 {
+        let span = self.to - self.from;
+        SLACK * span + blur.min(MOST_SLACK * span)
+    }
+
+    /// Takes the next stamp, known to `blur`; true where it lies within the window.
+    pub(super) fn add(&mut self, line: u64, time: f64, blur: f64, findings: &mut Findings) -> bool {
+        let slack = self.slack(blur);
+        self.ends = Some((self.ends.map_or(time, |(first, _)| first), time));
+        self.begins |= (time - self.from).abs() <= slack;
+        self.finishes |= (time - self.to).abs() <= slack;
+        let inside = time >= self.from - slack && time <= self.to + slack;
+        if let Some(last) = self.last_inside {
+            let step = time - last;
+            // A code whose steps do not fit the window steps across its end.
+            self.finishes |= time > self.to && step <= 2.0 * self.largest;
+            if inside && step > PAIR * (self.to - self.from) {
+                self.look_for_hole(step, findings);
+                self.before = self.gap.map_or(0.0, |(_, size, _)| size);
+                self.gap = Some((line, step, last));
+                self.largest = self.largest.max(step);
+            }
+        }
+        if inside {
+            self.last_inside = Some(time);
+            self.rows += 1;
+        } else {
+            self.outside += 1;
+        }
+        inside
+    }
+
+    /// The gap before the last row against the steps on both sides of it.
+    fn look_for_hole(&self, after: f64, findings: &mut Findings) {
+        let Some((line, gap, start)) = self.gap else {
+            return;
+        };
+        if self.before > 0.0 && gap > HOLE * self.before.max(after) {
+            let text = format!(
+                "no rows between t = {start} and t = {} {}: this gap is {:.0} times as long as \
+                 the steps around it",
+                start + gap,
+                self.unit,
+                gap / self.before.max(after)
+            );
+            findings.fatal(Kind::MissingRows, line, text);
+        }
+    }
+
+    /// What is not covered; gives the rows within the window and those outside.
+    pub(super) fn conclude(self, least_rows: u64, findings: &mut Findings) -> (u64, u64) {
+        let Coverage {
+            from,
+            to,
+            unit,
+            rows,
+            outside,
+            ..
+        } = self;
+        let Some((first, last)) = self.ends else {
+            findings.fatal(Kind::EmptyFile, None, "the file has no rows of numbers");
+            return (0, 0);
+        };
+        let beyond = match outside {
+            0 => String::new(),
+            // Most often a slip in the unit of time.
+            _ => format!("; {outside} rows lie outside it: is the unit of time right?"),
+        };
+        if !self.begins {
+            let remark = if first < from {
+                ", where no row lies"
+            } else {
+                ""
+            };
+            let text = format!(
+                "the first row is at t = {first} {unit}, the window starts at {from} {unit}{remark}{beyond}"
+            );
+            findings.fatal(Kind::WindowNotCovered, None, text);
+        }
+        if !self.finishes {
+            let remark = if last > to { ", where no row lies" } else { "" };
+            let text = format!(
+                "the last row is at t = {last} {unit}, the window ends at {to} {unit}{remark}{beyond}"
+            );
+            findings.fatal(Kind::WindowNotCovered, None, text);
+        }
+        if rows < least_rows {
+            let text = format!("{rows} row(s) within the window, at least {least_rows} are needed");
+            findings.fatal(Kind::TooFewRows, None, text);
+        }
+        (rows, outside)
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    fn kinds(stamps: &[f64]) -> Vec<(Kind, Option<u64>)> {
+        let mut findings = Findings::default();
+        let mut coverage = Coverage::new(0.0, 10.0, "s");
+        for (line, &stamp) in stamps.iter().enumerate() {
+            coverage.add(line as u64, stamp, 0.0, &mut findings);
+        }
+        coverage.conclude(2, &mut findings);
+        findings
+            .into_list()
+            .iter()
+            .map(|f| (f.kind, f.line))
+            .collect()
+    }
+
+    #[test]
+    fn start_and_end_are_reached_by_rows() {
+        use Kind::WindowNotCovered;
+        assert_eq!(kinds(&[0.0, 5.0, 10.0]), []);
+        assert_eq!(kinds(&[0.5, 5.0, 10.0]), [(WindowNotCovered, None)]);
+        assert_eq!(kinds(&[0.0, 5.0, 9.9]), [(WindowNotCovered, None)]);
+        assert_eq!(kinds(&[-1.0, 5.0, 10.0]), [(WindowNotCovered, None)]);
+        assert_eq!(kinds(&[-1.0, 0.0, 5.0, 10.0]), []);
+        // A step of four does not fit; a leap to far beyond covers nothing.
+        assert_eq!(kinds(&[0.0, 4.0, 8.0, 12.0]), []);
+        assert_eq!(kinds(&[0.0, 1.0, 2.0, 100.0]), [(WindowNotCovered, None)]);
+    }
+
+    #[test]
+    fn a_stretch_left_out_of_varied_steps_is_seen() {
+        let mut stamps: Vec<f64> = (0..200).map(|k| 0.05 * f64::from(k).powf(1.001)).collect();
+        stamps.push(10.5);
+        assert_eq!(kinds(&stamps), []);
+        stamps.retain(|stamp| !(3.0..6.0).contains(stamp));
+        assert_eq!(kinds(&stamps)[0].0, Kind::MissingRows);
+    }
+
+    #[test]
+    fn codes_that_lengthen_their_step_are_not_suspected() {
+        let mut stamps = vec![0.0];
+        let mut step = 1e-4;
+        while stamps[stamps.len() - 1] < 10.0 {
+            stamps.push(stamps[stamps.len() - 1] + step);
+            step *= 9.0;
+        }
+        stamps.push(10.0 - 1e-12);
+        stamps.sort_by(f64::total_cmp);
+        assert_eq!(kinds(&stamps), []);
+        // Rows twice at an event, on both sides of it.
+        assert_eq!(
+            kinds(&[0.0, 2.0, 4.0, 4.0 + 1e-9, 6.0, 8.0, 8.0 + 1e-9, 10.0]),
+            []
+        );
+    }
+}
