@@ -47,8 +47,13 @@ pub struct OrderVerdict {
 /// not say (common practice, no source; compare PR06 of the published checks: 0.1 to
 /// 0.3).
 pub const ORDER_SLACK: f64 = 0.15;
-/// Neighbouring pairs that differ by more than this show no order at all.
-const ERRATIC: f64 = 1.0;
+/// An interval wider than this decides nothing where the value itself is too low.
+const WIDE: f64 = 0.5;
+/// A finest pair that reaches the claim is believed without a second one that agrees only
+/// where the next coarser pair came this near.
+const APPROACH: f64 = 0.6;
+/// Pairs that stay this far below the claim do not become it.
+const HOPELESS: f64 = 1.0;
 /// A single pair cannot show that it has settled: it fails a claim only where it stays
 /// below it by more than this.
 const SINGLE_PAIR_SLACK: f64 = 0.5;
@@ -76,8 +81,9 @@ pub fn of_deviation(deviation: &Deviation, rows: u64) -> Verdict {
     }
 }
 
-/// The verdict on an order.
-pub fn of_order(sight: &Sight, claimed: Option<f64>, slack: f64) -> OrderVerdict {
+/// The verdict on an order; `unresolved` where even the finest step is longer than the
+/// shortest time constant, so that no order can be expected yet.
+pub fn of_order(sight: &Sight, claimed: Option<f64>, slack: f64, unresolved: bool) -> OrderVerdict {
     let (pairs, agreeing, usable) = match sight {
         Sight::ExactForThisCase => {
             return OrderVerdict {
@@ -102,7 +108,8 @@ pub fn of_order(sight: &Sight, claimed: Option<f64>, slack: f64) -> OrderVerdict
         } => (pairs, *agreeing, *usable),
     };
     let Some(&finest) = pairs.last() else {
-        return of_order(&Sight::TooFew("no pair of runs".to_owned()), claimed, slack);
+        let none = Sight::TooFew("no pair of runs".to_owned());
+        return of_order(&none, claimed, slack, unresolved);
     };
     let list = || {
         let orders: Vec<String> = pairs
@@ -115,18 +122,28 @@ pub fn of_order(sight: &Sight, claimed: Option<f64>, slack: f64) -> OrderVerdict
     let mut note = None;
     let verdict = claimed.map(|claimed| {
         let reaches = |pair: &Pair| pair.high >= claimed - slack;
-        let jump = match &pairs[..] {
-            [.., coarser, finer] => (finer.order - coarser.order).abs(),
-            _ => 0.0,
-        };
+        let coarser = pairs.len().checked_sub(2).map(|place| &pairs[place]);
         if reaches(&finest) {
-            if jump > ERRATIC && !settled {
+            if coarser.is_some_and(|pair| pair.high < claimed - APPROACH) && !settled {
                 note = Some(format!("neighbouring pairs do not agree: {}", list()));
+                return Verdict::Undecided;
+            }
+            // Doubt is no merit: an interval that reaches the claim only because it is
+            // wide decides nothing.
+            if finest.order < claimed - slack && finest.high - finest.low > WIDE {
+                note = Some("the digits leave the order open".to_owned());
                 return Verdict::Undecided;
             }
             return Verdict::Pass;
         }
-        if settled {
+        // Halving the step about halves what is missing to the order: twice the last
+        // rise lies ahead at most.
+        let ahead = match &pairs[..] {
+            [.., coarser, finer] => 2.0 * (finer.order - coarser.order).max(0.0),
+            _ => 0.0,
+        };
+        let on_its_way = finest.high + ahead >= claimed - slack;
+        if settled && !on_its_way && !unresolved {
             return Verdict::Fail;
         }
         if pairs.len() == 1 {
@@ -136,15 +153,22 @@ pub fn of_order(sight: &Sight, claimed: Option<f64>, slack: f64) -> OrderVerdict
             note = Some("one pair of runs cannot show that the order has settled".to_owned());
             return Verdict::Undecided;
         }
-        // Not settled: with every pair below the claim it can still be on its way up.
-        let rising = pairs.windows(2).all(|two| two[1].order > two[0].order);
-        if !rising && !pairs.iter().any(reaches) {
+        // Pairs far below the claim do not become it, however little they agree.
+        let hopeless = pairs.iter().all(|pair| pair.high < claimed - HOPELESS);
+        // Nor do pairs that move away from it and never were there.
+        let falls = pairs.len() > 2 && pairs.windows(2).all(|two| two[1].order < two[0].order);
+        let leaves = falls && !pairs.iter().any(reaches);
+        if (hopeless || leaves) && !on_its_way && !unresolved {
             return Verdict::Fail;
         }
-        note = Some(format!(
-            "the order has not settled: {}; add finer runs",
-            list()
-        ));
+        note = Some(if unresolved {
+            format!(
+                "the steps do not resolve the fastest mode: {}; add finer runs",
+                list()
+            )
+        } else {
+            format!("the order has not settled: {}; add finer runs", list())
+        });
         Verdict::Undecided
     });
     if verdict.is_none() && !settled && pairs.len() > 1 {
@@ -210,7 +234,7 @@ mod tests {
             agreeing,
             usable,
         };
-        of_order(&sight, Some(claimed), ORDER_SLACK)
+        of_order(&sight, Some(claimed), ORDER_SLACK, false)
             .verdict
             .unwrap()
     }
@@ -222,9 +246,12 @@ mod tests {
         assert_eq!(order(&[0.97, 0.99, 1.0], 2.0), Verdict::Fail);
         // Rising towards the claim, but not there.
         assert_eq!(order(&[0.4, 0.58, 0.75], 1.0), Verdict::Undecided);
+        assert_eq!(order(&[0.72, 0.83], 1.0), Verdict::Undecided);
+        assert_eq!(order(&[0.35, 1.88, 1.68, 1.49], 2.0), Verdict::Undecided);
         // All over the place and never near it.
         assert_eq!(order(&[0.3, 1.4, 0.8], 4.0), Verdict::Fail);
         assert_eq!(order(&[0.3, 2.1], 2.0), Verdict::Undecided);
+        assert_eq!(order(&[1.0, 1.0, 1.0, 1.9], 2.0), Verdict::Undecided);
         assert_eq!(order(&[1.0], 2.0), Verdict::Fail);
         assert_eq!(order(&[1.7], 2.0), Verdict::Undecided);
         assert_eq!(order(&[1.9], 2.0), Verdict::Pass);

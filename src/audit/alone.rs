@@ -249,7 +249,7 @@ fn judge_alone(names: &[String], runs: &[Sampled], submission: &Submission, audi
                 usable,
             }
         };
-        let order = judge::of_order(&sight, claimed, slack);
+        let order = judge::of_order(&sight, claimed, slack, false);
         if let Some(share) = share {
             audited.notes.push(format!(
                 "`{name}`: the finest run lies within {:.2} % of the peak (grid convergence index)",

@@ -1,5 +1,4 @@
 //! The whole pipeline: a plan of submissions to an outcome.
-
 //!
 //! `run` compares one file, `verdict` judges the files of a submission together, `alone`
 //! compares the runs of a submission without a case with each other.
@@ -14,12 +13,12 @@ use std::sync::atomic::{AtomicUsize, Ordering};
 use std::sync::{Arc, Mutex};
 
 use crate::case::{Case, Library};
-use crate::exact::Exact;
+use crate::exact::{Exact, approx_time_scales};
 use crate::fault::Fault;
 use crate::outcome::{Audited, LimitsFrom, NotAudited, Outcome};
 use crate::submission::{LimitStated, Submission};
 use run::compare;
-use verdict::{assign_roles, judge_orders, judge_runs};
+use verdict::{assign_roles, judge_orders, judge_runs, note_hidden_rungs};
 
 /// What is to be audited.
 #[derive(Debug)]
@@ -51,6 +50,8 @@ pub struct Planned {
 struct Model {
     case: Case,
     exact: Exact,
+    /// Of the fastest mode, if it decays or grows.
+    time_constant: Option<f64>,
 }
 
 type Models = Mutex<BTreeMap<String, Arc<Model>>>;
@@ -110,7 +111,12 @@ fn model(
     // The lock is not held meanwhile: two threads may do the same work once.
     let case = library.load(name, &submission.parameters)?;
     let exact = case.exact().map_err(|fault| vec![fault])?;
-    let model = Arc::new(Model { case, exact });
+    let time_constant = approx_time_scales(&case).time_constant;
+    let model = Arc::new(Model {
+        case,
+        exact,
+        time_constant,
+    });
     lock(models).insert(key, Arc::clone(&model));
     Ok(model)
 }
@@ -153,7 +159,14 @@ fn audit_one(planned: &Planned, library: &Library, models: &Models) -> Result<Au
         })?);
     }
     assign_roles(&mut compared);
-    judge_orders(&model.case, submission, &compared, &mut audited);
+    note_hidden_rungs(&compared, &mut audited.notes);
+    judge_orders(
+        &model.case,
+        submission,
+        &compared,
+        model.time_constant,
+        &mut audited,
+    );
     audited.runs = compared.into_iter().map(|one| one.outcome).collect();
     judge_runs(&mut audited);
     Ok(audited)
@@ -161,10 +174,13 @@ fn audit_one(planned: &Planned, library: &Library, models: &Models) -> Result<Au
 
 fn limits_from(planned: &Planned) -> LimitsFrom {
     let limits = &planned.submission.limits;
-    let states = |limit: &LimitStated| limit.absolute.is_some() || limit.relative.is_some();
+    let states = |limit: &LimitStated| *limit != LimitStated::default();
     if planned.limits_from_command_line {
         LimitsFrom::CommandLine
-    } else if states(&limits.general) || limits.channels.values().any(states) {
+    } else if states(&limits.general)
+        || limits.channels.values().any(states)
+        || limits.order_slack.is_some()
+    {
         LimitsFrom::Submission
     } else {
         LimitsFrom::Case

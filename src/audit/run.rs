@@ -17,6 +17,10 @@ pub(super) struct RunCompared {
     pub role_stated: Option<Role>,
     /// Channel of the case and its errors.
     pub deviations: Vec<(usize, Deviation)>,
+    /// The time stamp of largest size, in the unit of the case.
+    pub latest: f64,
+    /// Spacing of the rows in the unit of the case, where it is uniform.
+    pub spacing: Option<f64>,
 }
 
 /// The limit of one channel: what the submission states, else what the case has. A
@@ -72,6 +76,8 @@ pub(super) fn compare(
             outcome,
             role_stated: run.role,
             deviations: Vec::new(),
+            latest: 0.0,
+            spacing: None,
         });
     };
     let matched = match_columns(&model.case, &layout, &submission.columns)?;
@@ -133,6 +139,9 @@ pub(super) fn compare(
     outcome.rows = compared.rows;
     outcome.findings = findings.into_list();
     outcome.channels = channel_outcomes(model, &matched, &compared);
+    let spacing = compared.spacing;
+    let time = &model.case.time;
+    let latest = time.from.to_f64().abs().max(time.to.to_f64().abs());
     let deviations = matched
         .channels
         .iter()
@@ -143,6 +152,8 @@ pub(super) fn compare(
         outcome,
         role_stated: run.role,
         deviations,
+        latest,
+        spacing,
     })
 }
 

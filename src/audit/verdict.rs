@@ -7,6 +7,7 @@ use crate::compare::{Rung, Sight, observe};
 use crate::explain::{self, Place};
 use crate::judge::{self, Verdict};
 use crate::method;
+use crate::number::{plain, short};
 use crate::outcome::{Audited, ChannelOutcome, OrderOutcome, RunOutcome};
 use crate::submission::{Role, Setting, Submission};
 
@@ -41,6 +42,25 @@ pub(super) fn assign_roles(runs: &mut [RunCompared]) {
     }
 }
 
+/// Runs that are finer than every result: limits do not apply to them, which has to be
+/// said.
+pub(super) fn note_hidden_rungs(runs: &[RunCompared], notes: &mut Vec<String>) {
+    let settings = |role: Role| {
+        let of_role = runs.iter().filter(move |run| run.outcome.role == role);
+        of_role.filter_map(|run| Some((rung_setting(&run.outcome)?, &run.outcome.file)))
+    };
+    let finest = settings(Role::Result)
+        .map(|(setting, _)| setting)
+        .fold(f64::INFINITY, f64::min);
+    for (setting, file) in settings(Role::Rung) {
+        if setting < finest {
+            notes.push(format!(
+                "{file}: finer than the result, but limits do not apply to it"
+            ));
+        }
+    }
+}
+
 /// What places a run on its ladder.
 pub(super) fn rung_setting(run: &RunOutcome) -> Option<f64> {
     match run.setting {
@@ -54,6 +74,7 @@ pub(super) fn judge_orders(
     case: &Case,
     submission: &Submission,
     runs: &[RunCompared],
+    time_constant: Option<f64>,
     audited: &mut Audited,
 ) {
     let of_method = submission
@@ -72,12 +93,20 @@ pub(super) fn judge_orders(
     let tolerances = runs
         .iter()
         .any(|run| matches!(run.outcome.setting, Setting::Tolerance(_)));
+    let mixed = tolerances
+        && runs
+            .iter()
+            .any(|run| !matches!(run.outcome.setting, Setting::Tolerance(_)));
+    if tolerances && !mixed && submission.claims.order.is_some() {
+        let note = "an order is claimed, but runs with error settings cannot show it";
+        audited.notes.push(note.to_owned());
+    }
     // An error setting has no order to be held to: the slope is reported.
     let claimed = submission
         .claims
         .order
         .or(from_method)
-        .filter(|_| !tolerances);
+        .filter(|_| !tolerances || mixed);
     if runs.len() < 2 {
         if let Some(order) = submission.claims.order {
             let text = format!(
@@ -88,9 +117,24 @@ pub(super) fn judge_orders(
         return;
     }
     let slack = submission.limits.order_slack.unwrap_or(judge::ORDER_SLACK);
+    let misfit = runs
+        .iter()
+        .find_map(|run| step_misfit(&run.outcome, run.spacing?));
+    if let Some(misfit) = &misfit {
+        audited.notes.push(misfit.clone());
+    }
+    let finest = runs
+        .iter()
+        .filter_map(|run| rung_setting(&run.outcome))
+        .fold(f64::INFINITY, f64::min);
+    let unresolved = time_constant.is_some_and(|constant| finest > constant) && !tolerances;
     for (index, channel) in case.channels().iter().enumerate() {
         let rungs: Option<Vec<Rung>> = runs.iter().map(|run| rung(run, index)).collect();
         let sight = match rungs {
+            _ if mixed => Sight::TooFew("some runs state steps, others error settings".to_owned()),
+            _ if misfit.is_some() => {
+                Sight::TooFew("a stated step contradicts the time stamps".to_owned())
+            }
             Some(rungs) => observe(&rungs),
             None if runs
                 .iter()
@@ -100,13 +144,13 @@ pub(super) fn judge_orders(
             }
             None => Sight::TooFew("not every run has a step and values".to_owned()),
         };
-        let mut order = judge::of_order(&sight, claimed, slack);
+        let mut order = judge::of_order(&sight, claimed, slack, unresolved);
         if let Some(claimed) = claimed
             && let Some(reason) = explain::order_reason(channel.name, claimed, &order)
         {
             audited.reasons.push(reason);
         }
-        if tolerances && order.finest.is_some() {
+        if tolerances && !mixed && order.finest.is_some() {
             order.note = Some("slope of the error over the error setting".to_owned());
         }
         audited.orders.push(OrderOutcome {
@@ -125,6 +169,28 @@ pub(super) fn judge_orders(
     }
 }
 
+/// A stated step that the rows contradict: rows lie a whole number of steps apart, or,
+/// where they were interpolated, divide the step.
+fn step_misfit(run: &RunOutcome, spacing: f64) -> Option<String> {
+    let Setting::Step(step) = run.setting else {
+        return None;
+    };
+    let ratio = if spacing >= step {
+        spacing / step
+    } else {
+        step / spacing
+    };
+    let fits = (ratio - ratio.round()).abs() <= 2e-3 * ratio;
+    (!fits).then(|| {
+        format!(
+            "{}: the stated step {} does not fit rows that are {} apart",
+            run.file,
+            plain(step),
+            short(spacing)
+        )
+    })
+}
+
 fn rung(run: &RunCompared, channel: usize) -> Option<Rung> {
     let (_, deviation) = run.deviations.iter().find(|(index, _)| *index == channel)?;
     (deviation.rows > 0).then_some(Rung {
@@ -133,6 +199,7 @@ fn rung(run: &RunCompared, channel: usize) -> Option<Rung> {
         resolution: deviation.worst_resolution,
         peak: deviation.peak,
         rows: deviation.rows,
+        clock: f64::EPSILON * run.latest.abs() * deviation.steepest,
     })
 }
 

@@ -10,6 +10,9 @@ use crate::fault::{Fault, in_plain_words, nearest, quoted};
 use crate::formula::{Affine, Formula, Scalar, is_name, is_reserved};
 use crate::number::Double;
 
+/// Fewest rows of a run where a case does not say (common practice, no source).
+const LEAST_ROWS: u64 = 5;
+
 /// Collects complaints while the file is gone through.
 struct Checker<'a> {
     text: &'a str,
@@ -192,7 +195,8 @@ impl Checker<'_> {
                 );
             }
         }
-        let least_rows = entry.least_rows.unwrap_or(2).max(2);
+        // Two rows would be the start and the end alone.
+        let least_rows = entry.least_rows.unwrap_or(LEAST_ROWS).max(2);
         Window {
             unit: entry.unit.clone(),
             from,

@@ -73,7 +73,9 @@ pub(super) struct OutputEntry {
 #[derive(serde::Deserialize)]
 #[serde(deny_unknown_fields)]
 pub(super) struct LimitsEntry {
+    #[serde(default)]
     pub absolute: f64,
+    #[serde(default)]
     pub relative: f64,
 }
 

@@ -189,7 +189,8 @@ fn on_grid(
         return Err(Fault::new(text).into());
     }
     for index in 0..=(count * (1.0 + 1e-12)).floor() as u64 {
-        write(from + length * Double::from(index as f64))?;
+        let time = from + length * Double::from(index as f64);
+        write(if time > to { to } else { time })?;
     }
     Ok(())
 }

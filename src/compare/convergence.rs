@@ -97,7 +97,9 @@ pub fn order_of_three(
         grid_convergence(steps, shifted).map(|found| found.order)
     };
     let [fine, coarse] = differences;
-    let clear = fine > 2.5 * doubt && coarse > 2.5 * doubt && fine < 0.5 * peak;
+    // Differences that do not shrink with the step show no convergence.
+    let shrinks = fine < coarse;
+    let clear = shrinks && fine > 2.5 * doubt && coarse > 2.5 * doubt && fine < 0.5 * peak;
     if !clear {
         return None;
     }

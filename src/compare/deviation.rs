@@ -4,7 +4,7 @@ use super::coverage::Coverage;
 use crate::exact::{Exact, Walk};
 use crate::fault::Result;
 use crate::number::{Conversion, Decimal, Double};
-use crate::trajectory::{Findings, Grid, Resolution, Row, Source, Survey};
+use crate::trajectory::{Findings, Grid, Kind, Resolution, Row, Source, Survey};
 
 /// The error that is allowed: `absolute + relative * |exact|`, or relative to the
 /// channel's peak.
@@ -75,6 +75,8 @@ pub struct Deviation {
     pub end: f64,
     /// Largest `|exact|` at the rows.
     pub peak: f64,
+    /// Steepest change of the exact value from row to row.
+    pub steepest: f64,
     /// What was assumed of the digits in the end.
     pub resolution: Resolution,
     /// True where the errors showed that the digits carry more than their pattern says.
@@ -111,6 +113,8 @@ pub struct Margin {
     pub used: f64,
 }
 
+/// Time constants or radians within the rounding of one stamp that are still followed.
+const MOST_TURNS: f64 = 16.0;
 /// Rows that must all lie far below the assumed resolution before it is dropped.
 const ROWS_TO_REFUTE: u64 = 8;
 /// How far: where digits are really rounded, one row in ten lies below this.
@@ -124,6 +128,10 @@ struct Sums {
     squares: f64,
     end: f64,
     peak: f64,
+    steepest: f64,
+    last: Option<(f64, f64)>,
+    /// The exact value differs from that of the row before.
+    moves: bool,
     /// Rows whose error is not zero, and the largest error in units of the resolution.
     telling: u64,
     largest_in_units: f64,
@@ -171,8 +179,8 @@ impl<'a> Comparison<'a> {
                 }
                 Ok(())
             })?;
-        if matches!(self.survey.grid, Grid::Varied) {
-            // On a uniform grid every single missing row is seen by the reader.
+        if !findings.has(Kind::MissingRows) {
+            // Single rows that are missing from a uniform grid are seen by the reader.
             findings.append(gaps);
         }
         let (rows, outside) = coverage.conclude(self.least_rows, findings);
@@ -202,7 +210,10 @@ impl<'a> Comparison<'a> {
         // The step as it is written is meant, not the f64 nearest to it.
         let exact = Decimal::shortest(step).map_or(Double::from(step), Decimal::to_double);
         let multiple = exact * Double::from(count);
-        let agrees = (since - multiple).abs().to_f64() <= 2.0 * blur;
+        // Of a step finer than the stamps every stamp would be a multiple.
+        // A product in f64 is off by a unit in the last place.
+        let allowed = (1.0001 * blur).max(2.0 * f64::EPSILON * time.to_f64().abs());
+        let agrees = (since - multiple).abs().to_f64() <= allowed && step > 8.0 * blur;
         if count.abs() < 1e15 && agrees {
             (self.exact.from() + multiple, 0.0)
         } else {
@@ -252,6 +263,7 @@ impl<'c, 'a> Pass<'c, 'a> {
                 continue;
             };
             let truth = values.value[*channel];
+            sums.slope(time.to_f64(), truth.to_f64());
             let error = (conversion.apply(Double::from(written)) - truth).to_f64();
             let rest = moved.as_ref().map_or(0.0, |moved| moved[*channel]) + values.bound[*channel];
             let as_printed = self.comparison.survey.channels[place];
@@ -275,14 +287,24 @@ impl<'c, 'a> Pass<'c, 'a> {
             return Some(rates.iter().map(|rate| 1.1 * rate.abs() * blur).collect());
         }
         let middle = &self.walk.values().value;
+        let turns = exact.fastest_rate() * blur;
+        if turns > MOST_TURNS {
+            // Anything can have happened meanwhile.
+            return Some(exact.peaks().iter().map(|peak| 2.0 * peak).collect());
+        }
+        // Densely enough that no swing of the fastest mode hides between the points.
+        let points = (4.0 * turns).ceil().max(1.0);
         let [before, after] = self
             .sides
             .get_or_insert_with(|| [exact.walk(), exact.walk()]);
         let mut moved = vec![0.0f64; middle.len()];
-        for (walk, shift) in [(before, -blur), (after, blur)] {
-            let there = walk.go(time + Double::from(shift));
-            for ((moved, there), middle) in moved.iter_mut().zip(&there.value).zip(middle) {
-                *moved = moved.max((*there - *middle).abs().to_f64());
+        for point in 1..=points as u32 {
+            let shift = blur * f64::from(point) / points;
+            for (walk, shift) in [(&mut *before, -shift), (&mut *after, shift)] {
+                let there = walk.go(time + Double::from(shift));
+                for ((moved, there), middle) in moved.iter_mut().zip(&there.value).zip(middle) {
+                    *moved = moved.max((*there - *middle).abs().to_f64());
+                }
             }
         }
         Some(moved)
@@ -350,7 +372,14 @@ impl Against {
             limit,
             ..
         } = row;
-        self.margin.certain = self.margin.certain.max(row.most() - limit);
+        // f64::max would pass over what is not a number.
+        let certain = row.most() - limit;
+        let certain = if certain.is_nan() {
+            f64::INFINITY
+        } else {
+            certain
+        };
+        self.margin.certain = self.margin.certain.max(certain);
         self.margin.broken = self.margin.broken.max(error - resolution - limit);
         let used = share(error, limit);
         if first || used > self.margin.used {
@@ -376,10 +405,25 @@ impl Sums {
             squares: 0.0,
             end: 0.0,
             peak: 0.0,
+            steepest: 0.0,
+            last: None,
+            moves: false,
             telling: 0,
             largest_in_units: 0.0,
             with: [Against::NOTHING; 2],
         }
+    }
+
+    /// Follows how steeply the exact value changes.
+    fn slope(&mut self, time: f64, value: f64) {
+        if let Some((last_time, last_value)) = self.last
+            && time > last_time
+        {
+            let slope = (value - last_value).abs() / (time - last_time);
+            self.steepest = self.steepest.max(slope);
+        }
+        self.moves = self.last.is_some_and(|(_, last)| last != value);
+        self.last = Some((time, value));
     }
 
     fn add(&mut self, at: f64, signed: f64, size: f64, doubts: [f64; 2], limit: &Limit) {
@@ -400,7 +444,8 @@ impl Sums {
         self.squares += error * error;
         self.end = signed;
         self.peak = self.peak.max(size);
-        self.telling += u64::from(error > 0.0);
+        // A row that is hit exactly tells as well, unless nothing moves.
+        self.telling += u64::from(error > 0.0 || self.moves);
         self.largest_in_units = self.largest_in_units.max(share(error, doubts[0]));
         for (with, row) in self.with.iter_mut().zip(rows) {
             with.add(row, first);
@@ -445,6 +490,7 @@ impl Sums {
             rms: (self.squares / self.rows.max(1) as f64).sqrt(),
             end: self.end,
             peak: self.peak,
+            steepest: self.steepest,
             resolution: if refuted { Resolution::Full } else { printed },
             refuted,
             margin,

@@ -13,6 +13,8 @@ pub struct Rung {
     pub peak: f64,
     /// Number of rows, for what rounding can have added up to.
     pub rows: u64,
+    /// What the rounding of the latest time stamp moves the exact value at most.
+    pub clock: f64,
 }
 
 /// Two neighbouring rungs and the order between them.
@@ -53,6 +55,8 @@ pub enum Sight {
 /// An error must stand this many times above its doubt to count; a quarter of that
 /// serves where it leaves fewer than two rungs.
 const CLEAR: [f64; 2] = [10.0, 2.5];
+/// Steps of neighbouring runs must differ by this factor ([roache-1998] gives 1.1).
+const LEAST_RATIO: f64 = 1.09;
 /// Rounding can add up to this fraction of the peak over many steps.
 const ADDED_UP: f64 = 1e-9;
 /// Orders that differ by less agree (common practice, no source; `[celik-2008]` ask for
@@ -65,7 +69,9 @@ impl Rung {
     /// fixed step, printed in full).
     pub fn rounding(&self) -> f64 {
         let steps = (4.0 * self.rows as f64).min(4000.0);
-        f64::EPSILON * self.peak * (16.0 + steps)
+        // The clock is read off anew in every row, or runs wrong more and more.
+        let clock = self.clock * (4.0 + (self.rows as f64).min(1000.0) / 4.0);
+        f64::EPSILON * self.peak * (16.0 + steps) + clock
     }
 
     fn doubt(&self) -> f64 {
@@ -93,6 +99,13 @@ pub fn observe(rungs: &[Rung]) -> Sight {
         .find(|pair| pair[0].setting == pair[1].setting)
     {
         return Sight::TooFew(format!("two runs have the step {}", pair[0].setting));
+    }
+    let close = |pair: &&[Rung]| pair[0].setting < LEAST_RATIO * pair[1].setting;
+    if let Some(pair) = rungs.windows(2).find(close) {
+        let (coarse, fine) = (pair[0].setting, pair[1].setting);
+        return Sight::TooFew(format!(
+            "the steps {coarse} and {fine} are too close to each other"
+        ));
     }
     // Resolution does not count here: what is hidden by few digits is not exact.
     if rungs
@@ -195,6 +208,7 @@ mod tests {
             resolution: 1e-17,
             peak: 1.0,
             rows: 10 << k,
+            clock: 0.0,
         };
         errors.iter().enumerate().map(rung).collect()
     }

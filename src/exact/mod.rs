@@ -40,7 +40,7 @@ const CLOSED_FORM_AGREEMENT: f64 = 1e-13;
 /// Those of the case.
 ///
 /// # Domain
-/// Times within the window of the case; `|M| (to - from) <= 2^60`; at most
+/// Times within the window of the case; `|M| (to - from) <= 2^58`; at most
 /// [`MOST_JUMPS`] jumps.
 ///
 /// # Error bound
@@ -128,7 +128,7 @@ impl Exact {
         let table = Propagator::new(&system.matrix, span).ok_or_else(|| {
             Fault::new(format!(
                 "case `{}` is out of range: its rates are too fast for so long a window \
-                 (|A| (to - from) above 2^60), or it grows beyond all numbers",
+                 (|A| (to - from) above 2^58), or it grows beyond all numbers",
                 case.name
             ))
         })?;
@@ -252,6 +252,11 @@ impl Exact {
     /// True where an output jumps together with an input.
     pub fn has_feed_through(&self) -> bool {
         self.system.has_feed_through
+    }
+
+    /// Largest magnitude of each channel at a few times of the window.
+    pub fn peaks(&self) -> &[f64] {
+        &self.peaks
     }
 
     /// A bound of the fastest rate of the case: the row-sum norm of its matrix.

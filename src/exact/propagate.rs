@@ -199,6 +199,11 @@ impl<'a> Walk<'a> {
     }
 
     fn place(&mut self, time: Double) {
+        let time = if time < self.exact.from {
+            self.exact.from
+        } else {
+            time
+        };
         let table = &self.exact.table;
         let segment = self.exact.segment(time);
         let step = time - self.time;

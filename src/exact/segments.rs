@@ -5,7 +5,7 @@ use super::MOST_JUMPS;
 use crate::case::{Case, Shape};
 use crate::fault::Fault;
 use crate::formula::Affine;
-use crate::number::{Double, Matrix};
+use crate::number::{Double, Matrix, Quad};
 
 /// `z' = M z` between jumps; the states come first in `z`.
 #[derive(Debug)]
@@ -304,17 +304,19 @@ fn polynomial(coefficients: &[Double], from: Double) -> Generator {
             row[k + 1] = Double::ONE;
         }
     }
-    let mut derivative = coefficients.to_vec();
+    // In quad-double: far from t = 0 the terms cancel.
+    let wide = |x: Double| Quad::from(x);
+    let mut derivative: Vec<Quad> = coefficients.iter().map(|&c| wide(c)).collect();
     let mut start = Vec::with_capacity(size);
     for _ in 0..size {
         // Horner's rule, then the next derivative.
-        let value = derivative
-            .iter()
-            .rev()
-            .fold(Double::ZERO, |sum, &c| sum * from + c);
-        start.push(value);
+        let terms = derivative.iter().rev();
+        let value = terms.fold(Quad::default(), |sum, &c| sum * wide(from) + c);
+        start.push(value.to_double());
         let next = derivative.iter().enumerate().skip(1);
-        derivative = next.map(|(k, &c)| c * Double::from(k as f64)).collect();
+        derivative = next
+            .map(|(k, &c)| c * wide(Double::from(k as f64)))
+            .collect();
     }
     let mut output = vec![Double::ZERO; size];
     output[0] = Double::ONE;

@@ -23,7 +23,7 @@ use super::{Double, Real};
 /// `t` in the unit of time of the case, `M` in its inverse.
 ///
 /// # Domain
-/// Finite entries and `|M| span <= 2^60` in the row-sum norm; outside: `None`.
+/// Finite entries and `|M| span <= 2^58` in the row-sum norm; outside: `None`.
 ///
 /// # Error bound
 /// [`Propagator::bound`], entry by entry: every operation adds what it may have lost to

@@ -148,9 +148,12 @@ fn cells(
     let outside = |heading, from_width, text: Option<String>| {
         cell(heading, from_width, Outside(text.unwrap_or_default()))
     };
+    let is_faulty = |run: &RunOutcome| run.findings.iter().any(|finding| finding.fatal);
+    let faulty = submission.runs.iter().any(is_faulty);
     let used = |channel: &ChannelOutcome| match channel.verdict {
         // A share that the digits do not support would read like a verdict.
         Verdict::Undecided => Some("open".to_owned()),
+        Verdict::Pass if faulty => Some("file fault".to_owned()),
         _ => channel
             .errors
             .as_ref()

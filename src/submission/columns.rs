@@ -72,6 +72,16 @@ impl<'a> Header<'a> {
                 }
             }
         }
+        if let Some((name, unit)) = full.split_once('/')
+            && !name.trim().is_empty()
+            && is_known(unit)
+        {
+            return Header {
+                full,
+                name: name.trim(),
+                unit: Some(unit.trim()),
+            };
+        }
         let below = below.map(|unit| unit.trim_matches(['[', ']', '(', ')', ' ']));
         Header {
             full,

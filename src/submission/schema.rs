@@ -18,6 +18,8 @@ use crate::trajectory::{Separator, Stated};
 
 /// Largest `submission.toml` that is read.
 pub const MOST_SUBMISSION_BYTES: u64 = 1 << 20;
+/// Most keys of one table.
+const MOST_KEYS: usize = 600;
 /// Most runs of one submission.
 pub const MOST_RUNS: usize = 1000;
 
@@ -219,6 +221,17 @@ impl Reader<'_> {
     }
 
     fn read(&mut self, file: SubmissionFile) -> Submission {
+        for (what, count) in [
+            ("parameters", file.parameters.len()),
+            ("limits", file.limits.len()),
+            ("columns", file.columns.len()),
+        ] {
+            if count > MOST_KEYS {
+                let text = format!("[{what}] has {count} keys, at most {MOST_KEYS} are read");
+                self.faults.push(Fault::new(text));
+                return Submission::default();
+            }
+        }
         let expect = self.one_of(
             file.expect,
             "expect",
@@ -278,11 +291,12 @@ impl Reader<'_> {
                 .push(Fault::new(format!("at most {MOST_RUNS} runs are read")));
             return Submission::default();
         }
-        let runs = file
+        let runs: Vec<Run> = file
             .runs
             .into_iter()
             .filter_map(|run| self.run(run))
             .collect();
+        self.refuse_twins(&runs);
         Submission {
             case,
             producer: file.producer,
@@ -300,6 +314,20 @@ impl Reader<'_> {
     fn place<T>(&self, key: &Spanned<T>) -> (u64, u64) {
         let placed = Fault::new("").at_offset(self.text, key.span().start);
         (placed.line.unwrap_or(1), placed.column.unwrap_or(1))
+    }
+
+    /// The same file under two steps would show any order.
+    fn refuse_twins(&mut self, runs: &[Run]) {
+        let mut seen = std::collections::BTreeSet::new();
+        for run in runs {
+            let path = run.path.canonicalize().unwrap_or_else(|_| run.path.clone());
+            if !seen.insert(path) {
+                self.faults.push(Fault::new(format!(
+                    "file {} is named twice",
+                    quoted(&run.file)
+                )));
+            }
+        }
     }
 
     /// A word out of a short list.
@@ -338,6 +366,9 @@ impl Reader<'_> {
                     limits.general.relative = self.limit(value, offset);
                 }
                 ("order_slack", LimitEntry::Number(value)) => {
+                    if value > 1.0 {
+                        self.complain("`order_slack` must not be above 1", offset);
+                    }
                     limits.order_slack = self.limit(value, offset);
                 }
                 ("relative_to", LimitEntry::Word(word)) => {
@@ -412,8 +443,11 @@ impl Reader<'_> {
             );
         }
         let comment = entry.comment.map(|comment| {
-            if comment.get_ref().is_empty() {
-                self.complain("`comment` is empty", comment.span().start);
+            let first = comment.get_ref().trim_start().chars().next();
+            if first.is_none_or(|c| c.is_ascii_digit() || matches!(c, '+' | '-' | '.')) {
+                // Such a sign could hide rows of numbers.
+                let text = "`comment` must not be empty or begin like a number";
+                self.complain(text, comment.span().start);
             }
             comment.into_inner()
         });

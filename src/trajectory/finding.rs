@@ -100,6 +100,11 @@ impl Findings {
         }
     }
 
+    /// True where something of this kind was found.
+    pub fn has(&self, kind: Kind) -> bool {
+        self.counts.iter().any(|(known, _)| *known == kind)
+    }
+
     /// True where one of them keeps the file from passing.
     pub fn any_fatal(&self) -> bool {
         self.list.iter().any(|finding| finding.fatal)

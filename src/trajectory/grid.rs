@@ -14,8 +14,9 @@ pub enum Grid {
         spacing: f64,
         /// The step where all stamps are exact decimal multiples of it.
         exact: Option<Decimal>,
-        /// A larger step is a hole: rows are missing there.
-        holes: bool,
+        /// A larger step is a hole, where rows are missing, but for these two sizes: they
+        /// come in long runs, as phases of coarser output. Zero stands for none.
+        phases: [f64; 2],
     },
     /// Steps of many sizes.
     Varied,
@@ -25,6 +26,7 @@ pub enum Grid {
 #[derive(Clone, Debug)]
 struct Cluster {
     spacing: f64,
+    tolerance: f64,
     exact: Option<Decimal>,
     /// All steps of the cluster are the same decimal.
     identical: bool,
@@ -38,8 +40,10 @@ struct Cluster {
 const MOST_CLUSTERS: usize = 24;
 /// Share of steps that must be equal for a grid to be uniform.
 const UNIFORM_SHARE: f64 = 0.75;
+/// The same where the steps are exact decimals.
+const EXACT_SHARE: f64 = 0.5;
 /// So many larger steps in a row are a phase of coarser output and no hole.
-const PHASE: u64 = 4;
+const PHASE: u64 = 6;
 
 /// Gathers the steps between stamps.
 #[derive(Clone, Debug, Default)]
@@ -48,6 +52,8 @@ pub(super) struct GridFinder {
     most_significant: u8,
     most_decimals: u8,
     steps: u64,
+    /// Stamps that equal the one before.
+    repeats: u64,
     sum: f64,
     overflowed: bool,
     clusters: Vec<Cluster>,
@@ -60,6 +66,7 @@ impl GridFinder {
         let unit = self.unit(time, printed);
         if let Some((last, last_exact, last_unit)) = self.last {
             let step = time - last;
+            self.repeats += u64::from(step == 0.0);
             if step > 0.0 {
                 let exact = exact.zip(last_exact).and_then(|(a, b)| a.minus(b));
                 // Two rounded stamps each: a step is off by half their units together,
@@ -84,7 +91,10 @@ impl GridFinder {
         if !printed.scientific {
             self.most_decimals = self.most_decimals.max(printed.decimals);
         }
-        if printed.scientific || printed.significant == self.most_significant && time != 0.0 {
+        if time == 0.0 && printed.decimals == 0 {
+            0.0
+        } else if printed.scientific || printed.significant == self.most_significant && time != 0.0
+        {
             own(decimals)
         } else {
             // Short text of a number that was printed to more digits elsewhere.
@@ -99,7 +109,9 @@ impl GridFinder {
         // more than a tolerance as wide as the step itself.
         let coarse = tolerance > 0.3 * step;
         let known = self.clusters.iter().position(|cluster| {
-            let near = !coarse && (cluster.spacing - step).abs() <= tolerance;
+            // Whichever of the two was printed more coarsely.
+            let near =
+                (cluster.spacing - step).abs() <= tolerance.max(cluster.tolerance) && !coarse;
             near || exact.is_some() && exact == cluster.exact
         });
         let place = match known {
@@ -107,6 +119,7 @@ impl GridFinder {
             None if self.clusters.len() < MOST_CLUSTERS => {
                 self.clusters.push(Cluster {
                     spacing: step,
+                    tolerance: if coarse { 0.0 } else { tolerance },
                     exact,
                     identical: true,
                     sum: 0.0,
@@ -124,6 +137,7 @@ impl GridFinder {
         };
         let follows = self.latest == place;
         let cluster = &mut self.clusters[place];
+        cluster.tolerance = cluster.tolerance.max(if coarse { 0.0 } else { tolerance });
         cluster.identical &= exact.is_some() && exact == cluster.exact;
         cluster.sum += step;
         cluster.count += 1;
@@ -137,7 +151,34 @@ impl GridFinder {
         let Some(most) = self.clusters.iter().max_by_key(|cluster| cluster.count) else {
             return Grid::Varied;
         };
-        if (most.count as f64) < UNIFORM_SHARE * self.steps as f64 {
+        // A step of one unit of the last decimal, with steps of none or two among them:
+        // the true step lies between, and its stamps were rounded.
+        let one_unit = matches!(printed, Resolution::Decimals(decimals)
+            if (most.spacing * 10f64.powi(i32::from(decimals)) - 1.0).abs() < 1e-6);
+        let two_units = |cluster: &&Cluster| (1.5..2.5).contains(&(cluster.spacing / most.spacing));
+        let doubles: u64 = self
+            .clusters
+            .iter()
+            .filter(two_units)
+            .map(|cluster| cluster.count)
+            .sum();
+        let others = doubles + self.repeats;
+        if one_unit && 20 * others > self.steps {
+            let spacing = self.sum / (self.steps + self.repeats) as f64;
+            return Grid::Uniform {
+                spacing,
+                exact: None,
+                phases: [0.0; 2],
+            };
+        }
+        // Exact decimals that are all multiples of one step leave little doubt.
+        let exact_grid = most.identical && most.exact.is_some();
+        let share = if exact_grid {
+            EXACT_SHARE
+        } else {
+            UNIFORM_SHARE
+        };
+        if (most.count as f64) < share * self.steps as f64 {
             let mean = self.sum / self.steps as f64;
             let last = self.last.map_or(0.0, |(time, ..)| time);
             let near = |c: &Cluster| (c.spacing - mean).abs() <= 2.1 * printed.at(last);
@@ -147,7 +188,7 @@ impl GridFinder {
                 Grid::Uniform {
                     spacing: mean,
                     exact: None,
-                    holes: true,
+                    phases: [0.0; 2],
                 }
             } else {
                 Grid::Varied
@@ -155,17 +196,18 @@ impl GridFinder {
         }
         let exact = most.exact.filter(|_| most.identical);
         let spacing = exact.map_or(most.sum / most.count as f64, |e| e.to_double().to_f64());
-        let larger = self
+        let mut phases = [0.0; 2];
+        let coarser = self
             .clusters
             .iter()
-            .filter(|cluster| cluster.spacing > 1.5 * spacing);
-        let holes = larger
-            .map(|cluster| cluster.longest_run)
-            .all(|run| run < PHASE);
+            .filter(|cluster| cluster.spacing > 1.5 * spacing && cluster.longest_run >= PHASE);
+        for (phase, cluster) in phases.iter_mut().zip(coarser) {
+            *phase = cluster.spacing;
+        }
         Grid::Uniform {
             spacing,
             exact,
-            holes,
+            phases,
         }
     }
 }
@@ -234,11 +276,23 @@ mod tests {
         let hole = (0..100)
             .filter(|k| ![40, 41, 70].contains(k))
             .map(|k| k.to_string());
-        assert!(matches!(grid(hole), Grid::Uniform { holes: true, .. }));
+        assert!(matches!(
+            grid(hole),
+            Grid::Uniform {
+                phases: [0.0, 0.0],
+                ..
+            }
+        ));
         let phases = (0..400)
             .chain((400..=1000).step_by(10))
             .map(|k| k.to_string());
-        assert!(matches!(grid(phases), Grid::Uniform { holes: false, .. }));
+        assert!(matches!(
+            grid(phases),
+            Grid::Uniform {
+                phases: [10.0, 0.0],
+                ..
+            }
+        ));
         let varied = (0..100).map(|k| format!("{}", f64::from(k).powf(1.5)));
         assert_eq!(grid(varied), Grid::Varied);
         assert_eq!(grid(["0".to_owned()]), Grid::Varied);

@@ -12,8 +12,10 @@ pub enum Resolution {
     Decimals(u8),
     /// Half a unit in the last of these significant digits, decade by decade.
     Significant(u8),
-    /// Shortest text of single-precision numbers: half a unit in the last place of an
-    /// `f32`.
+    /// Whichever is coarser of so many decimals and so many significant digits.
+    Coarser(u8, u8),
+    /// Shortest text of single-precision numbers: one unit in the last place of an
+    /// `f32`, half for the rounding to it and half for the shortest text.
     Single,
 }
 
@@ -31,9 +33,13 @@ impl Resolution {
                 let decade = decade(value);
                 (0.5 * 10f64.powi(decade + 1 - i32::from(digits))).max(full)
             }
+            Resolution::Coarser(decimals, digits) => {
+                let decimals = Resolution::Decimals(decimals).at(value);
+                decimals.max(Resolution::Significant(digits).at(value))
+            }
             Resolution::Single => {
                 let single = value.abs() as f32;
-                0.5 * f64::from(single.next_up() - single)
+                f64::from(single.next_up() - single)
             }
         }
     }
@@ -44,6 +50,9 @@ impl Resolution {
             Resolution::Full => "full double precision".to_owned(),
             Resolution::Decimals(decimals) => format!("{decimals} decimals"),
             Resolution::Significant(digits) => format!("{digits} significant digits"),
+            Resolution::Coarser(decimals, digits) => {
+                format!("{decimals} decimals or {digits} significant digits")
+            }
             Resolution::Single => "single precision".to_owned(),
         }
     }
@@ -79,6 +88,7 @@ pub(super) struct Pattern {
     /// Values that are not zero and differ from the row before: only they tell.
     telling: u64,
     by_digits: [u64; 65],
+    by_decimals: [u64; 65],
     decimals: Option<u8>,
     scientific: bool,
     even: bool,
@@ -95,6 +105,7 @@ impl Pattern {
             rows: 0,
             telling: 0,
             by_digits: [0; 65],
+            by_decimals: [0; 65],
             decimals: None,
             scientific: false,
             even: true,
@@ -125,6 +136,9 @@ impl Pattern {
         if value != 0.0 && value != self.last {
             self.telling += 1;
             self.by_digits[usize::from(significant).min(64)] += 1;
+            if !scientific {
+                self.by_decimals[usize::from(decimals).min(64)] += 1;
+            }
             self.single &= significant <= 9 && is_shortest_single(value);
         }
         self.rows += 1;
@@ -135,6 +149,38 @@ impl Pattern {
     pub(super) fn even(&self) -> Option<(u8, bool)> {
         let decimals = self.decimals.filter(|_| self.even && self.rows > 2)?;
         Some((decimals, self.scientific))
+    }
+
+    /// True where the text itself shows how finely it was printed.
+    pub(super) fn is_clear(&self) -> bool {
+        self.conclude(None) != Resolution::Full
+    }
+
+    /// True where all values are equal, so that the column tells nothing by itself.
+    pub(super) fn is_constant(&self) -> bool {
+        self.constant
+    }
+
+    /// Digits that all but a few values have: the last line may be cut off where it has
+    /// clearly fewer.
+    pub(super) fn usual_digits(&self) -> usize {
+        let few = self.telling / 50;
+        let mut seen = 0;
+        let shortest = self.by_digits.iter().position(|&count| {
+            seen += count;
+            seen > few
+        });
+        shortest.filter(|_| self.telling >= 20).unwrap_or(0)
+    }
+
+    /// As [`Pattern::conclude`], for time stamps: those that are all multiples of the
+    /// same few units were chosen, not rounded.
+    pub(super) fn conclude_stamps(&self, stated: Option<u8>) -> Resolution {
+        let chosen = self.divisor >= 5 && self.telling >= 4;
+        match self.conclude(stated) {
+            Resolution::Decimals(_) if chosen && self.even().is_some() => Resolution::Full,
+            other => other,
+        }
     }
 
     pub(super) fn conclude(&self, stated: Option<u8>) -> Resolution {
@@ -155,27 +201,33 @@ impl Pattern {
             return Resolution::Full;
         }
         if let Some((decimals, false)) = self.even() {
-            // Rounded numbers are not all multiples of the same few units.
-            let chosen =
-                self.divisor >= 5 && self.telling >= 4 || self.divisor >= 2 && self.telling >= 20;
-            return if chosen {
-                Resolution::Full
-            } else {
-                Resolution::Decimals(decimals)
-            };
+            return Resolution::Decimals(decimals);
         }
         if most >= DIGITS_IN_FULL {
             return Resolution::Full;
         }
-        let reached = self.by_digits[usize::from(most)] as f64 / self.telling as f64;
-        if reached > MOST_ROWS {
-            return Resolution::Significant(most);
+        // Eight or nine digits, every value the shortest text of an f32: of other numbers
+        // of eight digits only every second one is.
+        if self.single && most >= 8 && self.telling >= 8 {
+            return Resolution::Single;
         }
-        // Seven to nine digits without a pattern: the shortest text of an f32.
-        if self.single && most >= 7 {
-            Resolution::Single
-        } else {
-            Resolution::Full
+        let most_rows = |count: u64| count as f64 > MOST_ROWS * self.telling as f64;
+        let digits = most_rows(self.by_digits[usize::from(most)]);
+        // Rounded to decimals, trailing zeros dropped, over numbers of several decades.
+        let decimals = self
+            .by_decimals
+            .iter()
+            .rposition(|&count| count > 0)
+            .unwrap_or(0);
+        let lengths = self.by_digits.iter().filter(|&&count| count > 0).count();
+        let rounded = most_rows(self.by_decimals[decimals]) && lengths > 1 && self.telling >= 8;
+        match (rounded, digits) {
+            (true, true) => Resolution::Coarser(decimals as u8, most),
+            (true, false) => Resolution::Decimals(decimals as u8),
+            (false, true) => Resolution::Significant(most),
+            // Seven to nine digits without a pattern: the shortest text of an f32.
+            (false, false) if self.single && most >= 7 => Resolution::Single,
+            (false, false) => Resolution::Full,
         }
     }
 }
@@ -200,6 +252,10 @@ mod tests {
     use super::*;
 
     fn conclude<'a>(column: impl IntoIterator<Item = &'a str>) -> Resolution {
+        gather(column).conclude(None)
+    }
+
+    fn gather<'a>(column: impl IntoIterator<Item = &'a str>) -> Pattern {
         let mut pattern = Pattern::new();
         for text in column {
             match Field::read(text.as_bytes(), false) {
@@ -207,7 +263,7 @@ mod tests {
                 other => panic!("{text}: {other:?}"),
             }
         }
-        pattern.conclude(None)
+        pattern
     }
 
     fn printed(print: impl Fn(f64) -> String) -> Resolution {
@@ -230,6 +286,11 @@ mod tests {
         assert_eq!(printed(|x| format!("{x:.5e}")), Resolution::Significant(6));
         assert_eq!(printed(|x| general(x, 6)), Resolution::Significant(6));
         assert_eq!(printed(|x| general(x, 12)), Resolution::Significant(12));
+        // Rounded to three decimals, trailing zeros dropped.
+        assert_eq!(
+            printed(|x| format!("{}", (x * 1e3).round() / 1e3)),
+            Resolution::Decimals(3)
+        );
         assert_eq!(printed(|x| format!("{x}")), Resolution::Full);
         assert_eq!(printed(|x| format!("{x:.16e}")), Resolution::Full);
         assert_eq!(printed(|x| format!("{}", x as f32)), Resolution::Single);
@@ -243,12 +304,13 @@ mod tests {
             Resolution::Full
         );
         assert_eq!(conclude(["0", "0", "0"]), Resolution::Full);
+        let stamps = |column: &[&str]| gather(column.iter().copied()).conclude_stamps(None);
         assert_eq!(
-            conclude(["0", "60", "600", "1500", "3600"]),
+            stamps(&["0", "60", "600", "1500", "3600"]),
             Resolution::Full
         );
         assert_eq!(
-            conclude(["0", "61", "600", "1500", "3600"]),
+            stamps(&["0", "61", "600", "1500", "3600"]),
             Resolution::Decimals(0)
         );
     }
@@ -267,6 +329,6 @@ mod tests {
         assert_eq!(Resolution::Significant(3).at(-999.0), 0.5);
         assert_eq!(Resolution::Full.at(1.0), f64::EPSILON / 2.0);
         assert_eq!(Resolution::Decimals(30).at(1.0), f64::EPSILON / 2.0);
-        assert_eq!(Resolution::Single.at(1.0), f64::from(f32::EPSILON) / 2.0);
+        assert_eq!(Resolution::Single.at(1.0), f64::from(f32::EPSILON));
     }
 }

@@ -170,10 +170,11 @@ impl Survey {
 
     /// Fewer digits than every other row has: the end of the number is missing.
     fn is_short(&self, place: usize, printed: Printed) -> bool {
-        let usual = self.even[place];
-        usual.is_some_and(|(decimals, scientific)| {
+        let even = self.even[place].is_some_and(|(decimals, scientific)| {
             printed.decimals < decimals || scientific && !printed.scientific
-        })
+        });
+        // Trailing zeros that are not printed make a number a digit or two shorter.
+        even || usize::from(printed.significant) + 2 < self.usual_digits[place]
     }
 
     /// Order, repetition and holes of the stamps.
@@ -233,9 +234,7 @@ impl Survey {
     /// What is missing between two stamps of a uniform grid.
     fn hole(&self, from: f64, to: f64, resolution: f64) -> Option<String> {
         let Grid::Uniform {
-            spacing,
-            holes: true,
-            ..
+            spacing, phases, ..
         } = self.grid
         else {
             return None;
@@ -248,7 +247,10 @@ impl Survey {
         let off_grid = (step - (missing + 1.0) * spacing).abs();
         let whole = off_grid <= slack * (missing + 2.0) + 1e-6 * step;
         let rows = if missing == 1.0 { "row is" } else { "rows are" };
-        (missing >= 1.0 && step - spacing > slack && whole).then(|| {
+        let in_phase = phases
+            .iter()
+            .any(|phase| (step - phase).abs() <= slack + 1e-6 * step);
+        (missing >= 1.0 && step - spacing > slack && whole && !in_phase).then(|| {
             format!(
                 "{missing} {rows} missing before this one: t goes from {from} to {to} in a file \
                  of step {spacing}"

@@ -34,6 +34,8 @@ pub struct Survey {
     /// Digits after the decimal sign and whether with an exponent, where that is the
     /// same in every row of a channel.
     pub even: Vec<Option<(u8, bool)>>,
+    /// Digits that nearly every value of a channel has, zero where that is not clear.
+    pub usual_digits: Vec<usize>,
     /// The first stamp.
     pub first: Option<crate::number::Decimal>,
 }
@@ -130,14 +132,13 @@ impl Survey {
             });
             Ok(())
         })?;
-        let time = time_pattern.conclude(stated.digits);
+        // Stamps show their own pattern: what is stated is how values were printed.
+        let time = time_pattern.conclude_stamps(stated.digits.filter(|_| !time_pattern.is_clear()));
         Ok(Survey {
             grid: finder.conclude(time),
             time,
-            channels: patterns
-                .iter()
-                .map(|pattern| pattern.conclude(stated.digits))
-                .collect(),
+            channels: resolutions(&patterns, stated.digits),
+            usual_digits: patterns.iter().map(Pattern::usual_digits).collect(),
             even: patterns.iter().map(Pattern::even).collect(),
             layout,
             selection,
@@ -145,4 +146,23 @@ impl Survey {
             first,
         })
     }
+}
+
+/// The resolution of every column; a constant one is printed like those beside it.
+fn resolutions(patterns: &[Pattern], stated: Option<u8>) -> Vec<Resolution> {
+    let concluded = patterns.iter().map(|pattern| pattern.conclude(stated));
+    let concluded: Vec<Resolution> = concluded.collect();
+    let of_others = |decimals: u8| {
+        concluded
+            .contains(&Resolution::Decimals(decimals))
+            .then_some(Resolution::Decimals(decimals))
+    };
+    let each = patterns
+        .iter()
+        .zip(&concluded)
+        .map(|(pattern, &own)| match pattern.even() {
+            Some((decimals, false)) if pattern.is_constant() => of_others(decimals).unwrap_or(own),
+            _ => own,
+        });
+    each.collect()
 }

@@ -164,7 +164,7 @@ fn rows_that_are_not_in_order() {
         ("late start", edited(|l| drop(l.remove(1))), Fails("window-not-covered 0")),
         ("early end", edited(|l| drop(l.pop())), Fails("window-not-covered 0")),
         ("one row", edited(|l| l.truncate(2)), FailsAmong("window-not-covered 0, too-few-rows 0")),
-        ("two rows", edited(|l| l.truncate(3)), Fails("window-not-covered 0")),
+        ("two rows", edited(|l| l.truncate(3)), Fails("window-not-covered 0, too-few-rows 0")),
         ("a short row", edited(|l| l[19] = "1080,4".into()), Fails("row-length 20")),
         ("a long row", edited(|l| l[19] += ",1"), Fails("row-length 20")),
         ("the time alone", edited(|l| l[19] = "1080".into()), Fails("row-length 20")),
@@ -357,7 +357,9 @@ expect = "maybe" => 2:10: => `expect` is `maybe`, expected "pass"
 [columns] / air = 1.5 => 3:7: => a column by name or number from 1
 [layout] / separator = "|" => 3:13: => `separator` is `|`
 [layout] / separator = "," / decimal = "," => 4:11: => both separator and decimal sign
-[layout] / comment = "" => 3:11: => `comment` is empty
+[layout] / comment = "" => 3:11: => must not be empty or begin like a number
+[layout] / comment = "1." => 3:11: => must not be empty or begin like a number
+[limits] / order_slack = 3 => 3:15: => `order_slack` must not be above 1
 [layout] / digits = 0 => 3:10: => between 1 and 17
 [layout] / skip_lines = -1 => 3:14: =>
 runs = [] => => the submission has no runs
@@ -468,9 +470,11 @@ fn submissions_with_mistakes() {
 #[test]
 fn equal_steps_show_no_order() {
     let run = "[[runs]]\nfile = \"run.csv\"\nstep = 60\n";
+    let twin = run.replace("run.csv", "twin.csv");
     let folder = Folder::new();
     folder.write("s/run.csv", sound());
-    let text = format!("case = \"{CASE}\"\n[claims]\norder = 1\n{run}{run}");
+    folder.write("s/twin.csv", sound());
+    let text = format!("case = \"{CASE}\"\n[claims]\norder = 1\n{run}{twin}");
     folder.write("s/submission.toml", text);
     let ran = folder.audit(&["s"]);
     assert_eq!(
@@ -480,6 +484,23 @@ fn equal_steps_show_no_order() {
         ran.seen()
     );
     assert!(ran.report["submissions"][0]["orders"][0]["observed"].is_null());
+}
+
+// The same file under two names of steps would show any order.
+#[test]
+fn a_file_that_is_named_twice_is_refused() {
+    let folder = Folder::new();
+    folder.write("s/run.csv", sound());
+    let runs =
+        "[[runs]]\nfile = \"run.csv\"\nstep = 60\n[[runs]]\nfile = \"./run.csv\"\nstep = 30\n";
+    folder.write("s/submission.toml", format!("case = \"{CASE}\"\n{runs}"));
+    let ran = folder.audit(&["s"]);
+    assert_eq!(ran.status, 2, "{}", ran.seen());
+    assert!(
+        ran.seen().contains("file `./run.csv` is named twice"),
+        "{}",
+        ran.seen()
+    );
 }
 
 // Editors put these in; they are no mistake.

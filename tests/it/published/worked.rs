@@ -278,6 +278,7 @@ fn or05_orders_by_halving() {
             let errors = errors(&audited, number);
             agree_but_for("OR05", errors.worst, text, WRITTEN);
             rungs.push(Rung {
+                clock: 0.0,
                 setting: runs[number].0,
                 error: errors.worst,
                 resolution: errors.resolution,
