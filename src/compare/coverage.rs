@@ -145,6 +145,13 @@ impl<'a> Coverage<'a> {
             );
             findings.fatal(Kind::WindowNotCovered, None, text);
         }
+        if self.begins && self.finishes && outside > 9 * rows {
+            let text = format!(
+                "only {rows} of {} rows lie within the window{beyond}",
+                rows + outside
+            );
+            findings.fatal(Kind::WindowNotCovered, None, text);
+        }
         if rows < least_rows {
             let text = format!("{rows} row(s) within the window, at least {least_rows} are needed");
             findings.fatal(Kind::TooFewRows, None, text);

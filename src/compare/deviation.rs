@@ -1,6 +1,7 @@
 //! Errors of one run in one pass over its rows.
 
 use super::coverage::Coverage;
+use super::stride::Strides;
 use crate::exact::{Exact, Walk};
 use crate::fault::Result;
 use crate::number::{Conversion, Decimal, Double};
@@ -169,16 +170,23 @@ impl<'a> Comparison<'a> {
         let mut gaps = Findings::default();
         let (start, end) = (from.to_f64(), to.to_f64());
         let mut coverage = Coverage::new(start, end, self.time_unit);
+        let mut strides = self.step.map(|step| Strides::new(start, step));
         self.survey
             .rows(self.source, findings, &is_event, &mut |row| {
                 let time = self.time.apply(row.time);
                 let blur = self.time.stretch(row.time_resolution);
                 if coverage.add(row.line, time.to_f64(), blur, &mut gaps) {
+                    if let Some(strides) = &mut strides {
+                        strides.add(row.line, time.to_f64());
+                    }
                     let (time, blur) = self.on_step(time, blur);
                     pass.add(if time < from { from } else { time }, blur, row);
                 }
                 Ok(())
             })?;
+        if let Some(strides) = strides.filter(|_| !findings.has(Kind::MissingRows)) {
+            strides.conclude(self.time_unit, findings);
+        }
         if !findings.has(Kind::MissingRows) {
             // Single rows that are missing from a uniform grid are seen by the reader.
             findings.append(gaps);

@@ -7,6 +7,7 @@ mod convergence;
 mod coverage;
 mod deviation;
 mod order;
+mod stride;
 
 pub use convergence::{Convergence, grid_convergence, order_of_three};
 pub use deviation::{Compared, Comparison, Deviation, Limit, Margin, Spot};

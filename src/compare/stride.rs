@@ -1,0 +1,150 @@
+//! Rows that are missing although the step is stated: stamps are whole multiples of it,
+//! and the same number of steps apart but for a few.
+
+use crate::trajectory::{Findings, Kind};
+
+/// A stamp counts as a multiple of the step within this fraction of it: stamps can be
+/// printed coarsely or kept in single precision.
+const NEAR: f64 = 0.1;
+/// Share of rows that must lie on multiples, and of strides that must be equal.
+const SHARE: f64 = 0.9;
+const EQUAL: f64 = 0.5;
+/// So many larger strides in a row are a phase of coarser output.
+const PHASE: u64 = 6;
+/// Strides of so many sizes are told apart.
+const MOST_SIZES: usize = 16;
+
+/// Follows the stamps in units of the stated step.
+#[derive(Debug)]
+pub(super) struct Strides {
+    from: f64,
+    step: f64,
+    last: Option<f64>,
+    rows: u64,
+    on_multiples: u64,
+    sizes: Vec<Size>,
+    latest: f64,
+}
+
+#[derive(Debug)]
+struct Size {
+    stride: f64,
+    count: u64,
+    run: u64,
+    longest_run: u64,
+    line: u64,
+    time: f64,
+}
+
+impl Strides {
+    pub(super) fn new(from: f64, step: f64) -> Strides {
+        Strides {
+            from,
+            step,
+            last: None,
+            rows: 0,
+            on_multiples: 0,
+            sizes: Vec::new(),
+            latest: 0.0,
+        }
+    }
+
+    pub(super) fn add(&mut self, line: u64, time: f64) {
+        let steps = (time - self.from) / self.step;
+        let number = steps.round();
+        self.rows += 1;
+        self.on_multiples += u64::from((steps - number).abs() <= NEAR);
+        let stride = self.last.map_or(0.0, |last| number - last);
+        self.last = Some(number);
+        if stride <= 0.0 {
+            return;
+        }
+        let known = self.sizes.iter().position(|size| size.stride == stride);
+        let place = match known {
+            Some(place) => place,
+            None if self.sizes.len() < MOST_SIZES => {
+                self.sizes.push(Size {
+                    stride,
+                    count: 0,
+                    run: 0,
+                    longest_run: 0,
+                    line,
+                    time,
+                });
+                self.sizes.len() - 1
+            }
+            None => return,
+        };
+        let follows = self.latest == stride;
+        let size = &mut self.sizes[place];
+        size.count += 1;
+        size.run = if follows { size.run + 1 } else { 1 };
+        size.longest_run = size.longest_run.max(size.run);
+        self.latest = stride;
+    }
+
+    pub(super) fn conclude(self, unit: &str, findings: &mut Findings) {
+        let strides: u64 = self.sizes.iter().map(|size| size.count).sum();
+        let Some(usual) = self.sizes.iter().max_by_key(|size| size.count) else {
+            return;
+        };
+        let regular = self.on_multiples as f64 >= SHARE * self.rows as f64
+            && usual.count as f64 >= EQUAL * strides as f64;
+        if !regular {
+            return;
+        }
+        for size in &self.sizes {
+            let whole = (size.stride / usual.stride).fract() == 0.0;
+            if size.stride > usual.stride && whole && size.longest_run < PHASE {
+                let missing = size.stride / usual.stride - 1.0;
+                let text = format!(
+                    "{missing} row(s) missing before t = {} {unit}, {} time(s) in the file: rows \
+                     lie {} steps of {} apart elsewhere",
+                    size.time, size.count, usual.stride, self.step
+                );
+                findings.fatal(Kind::MissingRows, size.line, text);
+            }
+        }
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    fn lines(stamps: impl Iterator<Item = f64>, step: f64) -> Vec<Option<u64>> {
+        let mut strides = Strides::new(3.0, step);
+        for (line, stamp) in stamps.enumerate() {
+            strides.add(line as u64, stamp);
+        }
+        let mut findings = Findings::default();
+        strides.conclude("s", &mut findings);
+        findings
+            .into_list()
+            .iter()
+            .map(|finding| finding.line)
+            .collect()
+    }
+
+    #[test]
+    fn rows_missing_between_coarse_stamps_are_seen() {
+        let stamps = || (0..200).map(|k| f64::from((3.0 + 0.1 * f64::from(k)) as f32));
+        assert_eq!(lines(stamps(), 0.1), []);
+        let holed = stamps()
+            .enumerate()
+            .filter(|(k, _)| *k != 40 && !(80..95).contains(k));
+        assert_eq!(lines(holed.map(|(_, t)| t), 0.1), [Some(40), Some(79)]);
+    }
+
+    #[test]
+    fn wider_output_and_other_steps_are_not_suspected() {
+        let wide = (0..100).map(|k| 3.0 + 0.4 * f64::from(k));
+        assert_eq!(lines(wide, 0.1), []);
+        let phases = (0..100)
+            .chain((100..400).step_by(5))
+            .map(|k| 3.0 + 0.1 * f64::from(k));
+        assert_eq!(lines(phases, 0.1), []);
+        let other = (0..100).map(|k| 3.0 + 0.137 * f64::from(k));
+        assert_eq!(lines(other, 0.1), []);
+    }
+}
