@@ -6,9 +6,11 @@
 mod convergence;
 mod coverage;
 mod deviation;
+mod margin;
 mod order;
 mod stride;
 
 pub use convergence::{Convergence, grid_convergence, order_of_three};
-pub use deviation::{Compared, Comparison, Deviation, Limit, Margin, Spot};
+pub use deviation::{Compared, Comparison};
+pub use margin::{Deviation, Limit, Margin, Spot};
 pub use order::{Pair, Rung, Sight, agreeing, observe};

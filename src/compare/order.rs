@@ -55,6 +55,8 @@ pub enum Sight {
 /// An error must stand this many times above its doubt to count; a quarter of that
 /// serves where it leaves fewer than two rungs.
 const CLEAR: [f64; 2] = [10.0, 2.5];
+/// Errors above this fraction of the peak are no longer those of small steps.
+const LARGE: f64 = 0.1;
 /// Steps of neighbouring runs must differ by this factor ([roache-1998] gives 1.1).
 const LEAST_RATIO: f64 = 1.09;
 /// Rounding can add up to this fraction of the peak over many steps.
@@ -83,7 +85,7 @@ impl Rung {
     }
 
     fn is_below_the_solution(&self) -> bool {
-        self.error.is_finite() && self.error < 0.5 * self.peak
+        self.error.is_finite() && self.error < LARGE * self.peak
     }
 }
 
@@ -176,7 +178,7 @@ fn why_too_few(rungs: &[Rung]) -> String {
     for (count, what) in [
         (coarse, "hidden by the printed digits"),
         (rounded, "at rounding level"),
-        (large, "above half the peak of the channel"),
+        (large, "above a tenth of the channel's peak"),
     ] {
         if count > 0 {
             reasons.push(format!("{count} of {} errors {what}", rungs.len()));

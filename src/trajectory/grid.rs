@@ -43,7 +43,7 @@ const UNIFORM_SHARE: f64 = 0.75;
 /// The same where the steps are exact decimals.
 const EXACT_SHARE: f64 = 0.5;
 /// So many larger steps in a row are a phase of coarser output and no hole.
-const PHASE: u64 = 6;
+const PHASE: u64 = 3;
 
 /// Gathers the steps between stamps.
 #[derive(Clone, Debug, Default)]
@@ -200,7 +200,12 @@ impl GridFinder {
         let coarser = self
             .clusters
             .iter()
-            .filter(|cluster| cluster.spacing > 1.5 * spacing && cluster.longest_run >= PHASE);
+            // Rows lost here and there do not stand together.
+            .filter(|cluster| {
+                let together = 4 * cluster.longest_run >= 3 * cluster.count;
+                let long = cluster.longest_run >= PHASE;
+                cluster.spacing > 1.5 * spacing && long && together
+            });
         for (phase, cluster) in phases.iter_mut().zip(coarser) {
             *phase = cluster.spacing;
         }

@@ -99,7 +99,7 @@ const COLUMNS: [(&str, &str, Expected); 22] = [
     ("t,air,wall", "columns.air = 3", Refused("column 3 is given to both")),
     ("t,air,wall", "columns.air.unit = 'degF'", Fails("")),
     ("t,air [K],wall", "", Fails("")),
-    ("t [min],air,wall", "", Fails("")),
+    ("t [min],air,wall", "", Fails("window-not-covered 0")),
     ("t,air,wall", "columns.time.unit = 'ms'", FailsAmong("window-not-covered 0")),
     ("t,wall,air", "", Fails("")),
     ("t,air,wall", "limits = { absolute = 0, relative = 0 }", Fails("")),
