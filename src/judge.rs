@@ -48,7 +48,7 @@ pub struct OrderVerdict {
 /// 0.3).
 pub const ORDER_SLACK: f64 = 0.15;
 /// An interval wider than this decides nothing where the value itself is too low.
-const WIDE: f64 = 0.5;
+const WIDE: f64 = 0.3;
 /// A finest pair that reaches the claim is believed without a second one that agrees only
 /// where the next coarser pair came this near.
 const APPROACH: f64 = 0.6;
@@ -84,6 +84,7 @@ pub fn of_deviation(deviation: &Deviation, rows: u64) -> Verdict {
 /// The verdict on an order; `unresolved` where even the finest step is longer than the
 /// shortest time constant, so that no order can be expected yet.
 pub fn of_order(sight: &Sight, claimed: Option<f64>, slack: f64, unresolved: bool) -> OrderVerdict {
+    let mut unresolved = unresolved;
     let (pairs, agreeing, usable) = match sight {
         Sight::ExactForThisCase => {
             return OrderVerdict {
@@ -105,7 +106,11 @@ pub fn of_order(sight: &Sight, claimed: Option<f64>, slack: f64, unresolved: boo
             pairs,
             agreeing,
             usable,
-        } => (pairs, *agreeing, *usable),
+            large,
+        } => {
+            unresolved |= large;
+            (pairs, *agreeing, *usable)
+        }
     };
     let Some(&finest) = pairs.last() else {
         let none = Sight::TooFew("no pair of runs".to_owned());
@@ -233,6 +238,7 @@ mod tests {
             pairs,
             agreeing,
             usable,
+            large: false,
         };
         of_order(&sight, Some(claimed), ORDER_SLACK, false)
             .verdict

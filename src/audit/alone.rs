@@ -247,6 +247,7 @@ fn judge_alone(names: &[String], runs: &[Sampled], submission: &Submission, audi
                 agreeing: agreeing(&pairs),
                 pairs,
                 usable,
+                large: false,
             }
         };
         let order = judge::of_order(&sight, claimed, slack, false);

@@ -45,6 +45,8 @@ pub enum Sight {
         agreeing: usize,
         /// Rungs whose errors count.
         usable: usize,
+        /// Even the finest error is too large for its order to have settled.
+        large: bool,
     },
     /// Every rung is at rounding level: there is no order to see.
     ExactForThisCase,
@@ -55,7 +57,7 @@ pub enum Sight {
 /// An error must stand this many times above its doubt to count; a quarter of that
 /// serves where it leaves fewer than two rungs.
 const CLEAR: [f64; 2] = [10.0, 2.5];
-/// Errors above this fraction of the peak are no longer those of small steps.
+/// Errors above this fraction of the peak are not yet those of small steps.
 const LARGE: f64 = 0.1;
 /// Steps of neighbouring runs must differ by this factor ([roache-1998] gives 1.1).
 const LEAST_RATIO: f64 = 1.09;
@@ -85,7 +87,7 @@ impl Rung {
     }
 
     fn is_below_the_solution(&self) -> bool {
-        self.error.is_finite() && self.error < LARGE * self.peak
+        self.error.is_finite() && self.error < 0.5 * self.peak
     }
 }
 
@@ -147,10 +149,14 @@ pub fn observe(rungs: &[Rung]) -> Sight {
         .map(|pair| between(&pair[0], &pair[1]))
         .collect();
     let agreeing = agreeing(&pairs);
+    let large = usable
+        .last()
+        .is_some_and(|rung| rung.error > LARGE * rung.peak);
     Sight::Pairs {
         pairs,
         agreeing,
         usable: usable.len(),
+        large,
     }
 }
 
@@ -178,7 +184,7 @@ fn why_too_few(rungs: &[Rung]) -> String {
     for (count, what) in [
         (coarse, "hidden by the printed digits"),
         (rounded, "at rounding level"),
-        (large, "above a tenth of the channel's peak"),
+        (large, "above half the peak of the channel"),
     ] {
         if count > 0 {
             reasons.push(format!("{count} of {} errors {what}", rungs.len()));
@@ -237,6 +243,7 @@ mod tests {
             pairs,
             agreeing,
             usable,
+            ..
         } = observe(&rungs)
         else {
             panic!()

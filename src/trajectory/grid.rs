@@ -32,6 +32,7 @@ struct Cluster {
     identical: bool,
     sum: f64,
     count: u64,
+    runs: u64,
     run: u64,
     longest_run: u64,
 }
@@ -124,6 +125,7 @@ impl GridFinder {
                     identical: true,
                     sum: 0.0,
                     count: 0,
+                    runs: 0,
                     run: 0,
                     longest_run: 0,
                 });
@@ -141,6 +143,7 @@ impl GridFinder {
         cluster.identical &= exact.is_some() && exact == cluster.exact;
         cluster.sum += step;
         cluster.count += 1;
+        cluster.runs += u64::from(!follows);
         cluster.run = if follows { cluster.run + 1 } else { 1 };
         cluster.longest_run = cluster.longest_run.max(cluster.run);
         self.latest = place;
@@ -202,7 +205,7 @@ impl GridFinder {
             .iter()
             // Rows lost here and there do not stand together.
             .filter(|cluster| {
-                let together = 4 * cluster.longest_run >= 3 * cluster.count;
+                let together = cluster.count >= PHASE * cluster.runs;
                 let long = cluster.longest_run >= PHASE;
                 cluster.spacing > 1.5 * spacing && long && together
             });
