@@ -33,3 +33,6 @@ mod layouts;
 
 /// Broken files and submissions: finding, line, exit status.
 mod broken;
+
+/// Ways to an undeserved pass, closed.
+mod cheats;
