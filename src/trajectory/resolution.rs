@@ -95,7 +95,8 @@ pub(super) struct Pattern {
     /// Greatest common divisor of all values in units of their last decimal.
     divisor: u64,
     constant: bool,
-    single: bool,
+    /// Values that are not the shortest text of an f32.
+    not_single: u64,
     last: f64,
 }
 
@@ -111,7 +112,7 @@ impl Pattern {
             even: true,
             divisor: 0,
             constant: true,
-            single: true,
+            not_single: 0,
             last: f64::NAN,
         }
     }
@@ -139,7 +140,8 @@ impl Pattern {
             if !scientific {
                 self.by_decimals[usize::from(decimals).min(64)] += 1;
             }
-            self.single &= significant <= 9 && is_shortest_single(value);
+            let single = significant <= 9 && is_shortest_single(value);
+            self.not_single += u64::from(!single);
         }
         self.rows += 1;
         self.last = value;
@@ -154,6 +156,12 @@ impl Pattern {
     /// True where the text itself shows how finely it was printed.
     pub(super) fn is_clear(&self) -> bool {
         self.conclude(None) != Resolution::Full
+    }
+
+    /// All but a few: of two shortest texts that are equally near, programs write
+    /// either.
+    fn is_single(&self) -> bool {
+        30 * self.not_single <= self.telling
     }
 
     /// True where all values are equal, so that the column tells nothing by itself.
@@ -208,7 +216,7 @@ impl Pattern {
         }
         // Eight or nine digits, every value the shortest text of an f32: of other numbers
         // of eight digits only every second one is.
-        if self.single && most >= 8 && self.telling >= 8 {
+        if self.is_single() && most >= 8 && self.telling >= 8 {
             return Resolution::Single;
         }
         let most_rows = |count: u64| count as f64 > MOST_ROWS * self.telling as f64;
@@ -226,7 +234,7 @@ impl Pattern {
             (true, false) => Resolution::Decimals(decimals as u8),
             (false, true) => Resolution::Significant(most),
             // Seven to nine digits without a pattern: the shortest text of an f32.
-            (false, false) if self.single && most >= 7 => Resolution::Single,
+            (false, false) if self.is_single() && most >= 7 => Resolution::Single,
             (false, false) => Resolution::Full,
         }
     }

@@ -187,8 +187,11 @@ impl Survey {
         findings: &mut Findings,
     ) {
         if let Some(Pending { kind, line, text }) = state.pending.take() {
-            // A row that comes out of order fills the hole that seemed to be there.
-            if kind == Kind::RepeatedStamp || time >= state.latest {
+            // A row that comes out of order fills the hole that seemed to be there; one
+            // step between two phases of output need not fit either.
+            let step = state.last.as_ref().map_or(0.0, |(last, _)| time - last);
+            let between = kind == Kind::MissingRows && self.is_phase(step, resolution);
+            if kind == Kind::RepeatedStamp || time >= state.latest && !between {
                 findings.fatal(kind, line, text);
             }
         }
@@ -233,10 +236,7 @@ impl Survey {
 
     /// What is missing between two stamps of a uniform grid.
     fn hole(&self, from: f64, to: f64, resolution: f64) -> Option<String> {
-        let Grid::Uniform {
-            spacing, phases, ..
-        } = self.grid
-        else {
+        let Grid::Uniform { spacing, .. } = self.grid else {
             return None;
         };
         let step = to - from;
@@ -247,15 +247,24 @@ impl Survey {
         let off_grid = (step - (missing + 1.0) * spacing).abs();
         let whole = off_grid <= slack * (missing + 2.0) + 1e-6 * step;
         let rows = if missing == 1.0 { "row is" } else { "rows are" };
-        let in_phase = phases
-            .iter()
-            .any(|phase| (step - phase).abs() <= slack + 1e-6 * step);
+        let in_phase = self.is_phase(step, resolution);
         (missing >= 1.0 && step - spacing > slack && whole && !in_phase).then(|| {
             format!(
                 "{missing} {rows} missing before this one: t goes from {from} to {to} in a file \
                  of step {spacing}"
             )
         })
+    }
+
+    /// True for a step of a phase of coarser output.
+    fn is_phase(&self, step: f64, resolution: f64) -> bool {
+        let Grid::Uniform { phases, .. } = self.grid else {
+            return false;
+        };
+        let slack = 2.1 * resolution + 1e-6 * step;
+        phases
+            .iter()
+            .any(|&phase| phase > 0.0 && (step - phase).abs() <= slack)
     }
 
     /// Zero for a stamp that is an exact decimal multiple of the grid's step.
