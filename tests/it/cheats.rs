@@ -197,3 +197,14 @@ fn runs_without_a_case_show_their_order_and_never_pass() {
         );
     }
 }
+
+#[test]
+fn a_stated_step_moves_no_stamp_that_does_not_agree_with_it() {
+    let varied: Vec<f64> = (0..=300)
+        .map(|k| 10.0 * (f64::from(k) / 300.0).powf(1.3))
+        .collect();
+    let ran = audit("", &[("run.csv", Some(0.05), file(&varied, 15, no_error))]);
+    assert_eq!(ran.verdict(), "pass", "{}", ran.seen());
+    let errors = &ran.report["submissions"][0]["runs"][0]["channels"][0];
+    assert!(errors["worst_error"].as_f64().unwrap() < 1e-13, "{errors}");
+}
