@@ -10,7 +10,7 @@ use crate::judge::{self, Verdict};
 use crate::method;
 use crate::outcome::{Audited, LimitsFrom, OrderOutcome, RunOutcome};
 use crate::submission::{ColumnName, Role, Run, Setting, Submission};
-use crate::trajectory::{Findings, Grid, Kind, Selection, Source, Survey, open};
+use crate::trajectory::{Findings, Grid, Kind, Selection, Source, Survey, is_time_name, open};
 
 /// Stamps at which the runs are compared, at most.
 const MOST_STAMPS: u64 = 2000;
@@ -23,12 +23,6 @@ struct Sampled {
     /// By stamp, then by channel.
     values: Vec<Vec<Option<f64>>>,
     resolutions: Vec<f64>,
-}
-
-/// Columns that every run has.
-struct Channels {
-    names: Vec<String>,
-    columns: Vec<usize>,
 }
 
 pub(super) fn audit_alone(planned: &Planned) -> Result<Audited, Vec<Fault>> {
@@ -79,7 +73,10 @@ pub(super) fn audit_alone(planned: &Planned) -> Result<Audited, Vec<Fault>> {
 }
 
 /// The columns of a file and its survey; without names they are numbered.
-fn columns(source: &Source, submission: &Submission) -> Result<Option<(Channels, Survey)>, Fault> {
+fn columns(
+    source: &Source,
+    submission: &Submission,
+) -> Result<Option<(Vec<String>, Survey)>, Fault> {
     let Some(layout) = source.layout(&submission.layout)? else {
         return Ok(None);
     };
@@ -89,7 +86,6 @@ fn columns(source: &Source, submission: &Submission) -> Result<Option<(Channels,
             .map(|number| number.to_string())
             .collect(),
     };
-    let is_time = |name: &str| name == "t" || name.eq_ignore_ascii_case("time");
     let stated = submission
         .columns
         .get("time")
@@ -97,7 +93,10 @@ fn columns(source: &Source, submission: &Submission) -> Result<Option<(Channels,
     let time = match stated {
         Some(ColumnName::Number(number)) => number - 1,
         Some(ColumnName::Name(name)) => names.iter().position(|n| n == name).unwrap_or(usize::MAX),
-        None => names.iter().position(|name| is_time(name)).unwrap_or(0),
+        None => names
+            .iter()
+            .position(|name| is_time_name(name))
+            .unwrap_or(0),
     };
     if time >= layout.columns {
         let fault = Fault::new("the column of time stamps that is stated is not in the file");
@@ -115,7 +114,7 @@ fn columns(source: &Source, submission: &Submission) -> Result<Option<(Channels,
         .iter()
         .map(|&column| names[column].clone())
         .collect();
-    Ok(Some((Channels { names, columns }, survey)))
+    Ok(Some((names, survey)))
 }
 
 /// Faults and step of one run.
@@ -180,11 +179,11 @@ fn sample(
             survey
                 .rows(&source, &mut unheeded, &|_| true, &mut keep)
                 .map_err(placed)?;
-            names.clone_from(&channels.names);
+            names.clone_from(&channels);
         }
         let known: Vec<Option<usize>> = names
             .iter()
-            .map(|name| channels.names.iter().position(|other| other == name))
+            .map(|name| channels.iter().position(|other| other == name))
             .collect();
         let span = stamps
             .last()
@@ -214,7 +213,6 @@ fn sample(
         survey
             .rows(&source, &mut unheeded, &|_| true, &mut pick)
             .map_err(placed)?;
-        debug_assert_eq!(channels.columns.len(), channels.names.len());
         runs.push(Sampled {
             setting,
             values,

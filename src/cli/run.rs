@@ -17,7 +17,7 @@ use crate::report::{
     Screen, ValueWriter, WIDEST, audit_json, audit_text, case_json, case_list, case_text,
     write_atomically,
 };
-use crate::trajectory::{Findings, Selection, Stated, Survey, open};
+use crate::trajectory::{Findings, Selection, Stated, Survey, is_time_name, open};
 
 /// All in order.
 const IN_ORDER: u8 = 0;
@@ -206,11 +206,10 @@ fn at_stamps(
     let Some(layout) = source.layout(&stated).map_err(placed)? else {
         return Err(placed(Fault::new("the file has no rows of numbers")).into());
     };
-    let is_time = |name: &String| name == "t" || name.eq_ignore_ascii_case("time");
     let named = layout
         .names
         .as_ref()
-        .and_then(|names| names.iter().position(is_time));
+        .and_then(|names| names.iter().position(|name| is_time_name(name)));
     let selection = Selection {
         time: named.unwrap_or(0),
         channels: Vec::new(),

@@ -41,8 +41,6 @@ pub struct Deviation {
     pub steepest: f64,
     /// What was assumed of the digits in the end.
     pub resolution: Resolution,
-    /// True where the errors showed that the digits carry more than their pattern says.
-    pub refuted: bool,
     /// How the errors lie to the limit.
     pub margin: Margin,
     /// The row that uses most of its limit.
@@ -287,7 +285,6 @@ impl Sums {
             peak: self.peak,
             steepest: self.steepest,
             resolution: if refuted { Resolution::Full } else { printed },
-            refuted,
             margin,
             decisive,
             doubtful,

@@ -8,7 +8,7 @@ use super::{ColumnName, ColumnStated};
 use crate::case::{Case, Channel};
 use crate::fault::{Fault, Result, nearest, quoted};
 use crate::number::{Conversion, Double};
-use crate::trajectory::{Layout, Selection};
+use crate::trajectory::{Layout, Selection, is_time_name};
 
 /// A channel of the case with its place in the file.
 #[derive(Clone, Debug, PartialEq)]
@@ -235,10 +235,8 @@ impl Matcher<'_> {
         let Some(headers) = &self.headers else {
             return Ok(0);
         };
-        // Not `T`, which is a temperature or a period as often as a time.
-        let is_time = |name: &str| name == "t" || name.eq_ignore_ascii_case("time");
         let found: Vec<usize> = (0..headers.len())
-            .filter(|&i| is_time(headers[i].name))
+            .filter(|&i| is_time_name(headers[i].name))
             .collect();
         match found[..] {
             [column] => Ok(column),

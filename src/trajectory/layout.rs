@@ -351,6 +351,12 @@ fn names_time(names: &[String]) -> bool {
         .any(|name| name == "t" || name.to_lowercase().contains("time"))
 }
 
+/// True for a name that can only be that of the time stamps. Not `T`, which is a
+/// temperature or a period as often as a time.
+pub fn is_time_name(name: &str) -> bool {
+    name == "t" || name.eq_ignore_ascii_case("time")
+}
+
 fn delimiter(separator: Separator) -> u8 {
     match separator {
         Separator::Comma => b',',

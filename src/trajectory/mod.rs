@@ -19,7 +19,7 @@ mod survey;
 
 pub use finding::{Finding, Findings, Kind};
 pub use grid::Grid;
-pub use layout::{Layout, Separator, Stated};
+pub use layout::{Layout, Separator, Stated, is_time_name};
 pub use lines::{Lines, MOST_LINE_BYTES};
 pub use number::{Field, Printed};
 pub use open::{Source, open};

@@ -215,14 +215,17 @@ fn ladders() -> BTreeMap<String, Ladder> {
     ladders
 }
 
+fn stepped(files: &[(String, f64)]) -> Vec<(&str, Setting)> {
+    let steps = files.iter();
+    steps
+        .map(|(file, step)| (file.as_str(), Setting::Step(*step)))
+        .collect()
+}
+
 #[test]
 fn ladders_of_fixed_step_methods_show_their_order() {
     let ladders: Vec<_> = ladders().into_iter().collect();
     let submissions = ladders.iter().map(|(_, (case, order, files))| {
-        let files: Vec<(&str, Setting)> = files
-            .iter()
-            .map(|(file, step)| (file.as_str(), Setting::Step(*step)))
-            .collect();
         let loose = LimitStated {
             absolute: Some(1e9),
             relative: Some(0.0),
@@ -235,7 +238,7 @@ fn ladders_of_fixed_step_methods_show_their_order() {
             },
             ..submission(
                 case,
-                &files,
+                &stepped(files),
                 LimitsStated {
                     general: loose,
                     ..LimitsStated::default()
@@ -273,18 +276,12 @@ fn ladders_of_fixed_step_methods_show_their_order() {
 #[test]
 fn a_claim_of_one_order_more_fails() {
     let ladders: Vec<_> = ladders().into_iter().collect();
-    let submissions = ladders.iter().map(|(_, (case, order, files))| {
-        let files: Vec<(&str, Setting)> = files
-            .iter()
-            .map(|(file, step)| (file.as_str(), Setting::Step(*step)))
-            .collect();
-        Submission {
-            claims: Claims {
-                method: None,
-                order: Some(*order + 1.0),
-            },
-            ..submission(case, &files, LimitsStated::default())
-        }
+    let submissions = ladders.iter().map(|(_, (case, order, files))| Submission {
+        claims: Claims {
+            method: None,
+            order: Some(*order + 1.0),
+        },
+        ..submission(case, &stepped(files), LimitsStated::default())
     });
     let outcome = run(submissions.collect());
     for ((name, _), audited) in ladders.iter().zip(&outcome.submissions) {
