@@ -1,5 +1,23 @@
-//! Integration methods: what is known of each, and later what it would have written.
+//! Integration methods: a catalogue of coefficients, what each is on paper (order,
+//! stability), what each would have written on a linear model, and from that the evidence
+//! which method and step wrote a file.
+//!
+//! `catalogue` and `scheme` hold the coefficients, `stability` what follows from them
+//! alone; `linear` and `recurrence` turn a method, a step and a case into matrices;
+//! `record` is what is kept of a file and `evidence` lays the two beside each other.
 
 mod catalogue;
+mod linear;
+mod march;
+mod recurrence;
+mod scheme;
+mod stability;
 
-pub use catalogue::{METHODS, Method, find};
+pub use catalogue::{METHODS, Method, find, find_all};
+pub use linear::{Linear, Side, Signal};
+pub use march::{March, NEAR, Sides, add_forcing};
+pub use recurrence::{Node, Ranks, Reading, Recurrence};
+pub use scheme::{Coefficients, Scheme, Stages};
+pub use stability::{
+    Rational, Stability, amplification, approx_stability, approx_stable_length, of_stages, roots,
+};

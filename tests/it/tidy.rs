@@ -43,7 +43,7 @@ fn allowed() -> BTreeMap<&'static str, Vec<&'static str>> {
         ("trajectory", with(&[])),
         ("submission", with(&["case", "trajectory"])),
         ("compare", with(&["exact", "trajectory"])),
-        ("method", with(&["case"])),
+        ("method", with(&["case", "formula"])),
         ("judge", with(&["compare", "method"])),
         (
             "explain",

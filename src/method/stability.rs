@@ -1,0 +1,332 @@
+//! Stability of a method on `x' = lambda x`: its stability function, how far along an
+//! axis or a ray it stays stable, whether it is A- or L-stable. All of it is computed from
+//! the coefficients; published limits are what the tests compare it with.
+
+use nalgebra::{Complex, DMatrix, DVector};
+
+use super::scheme::{Coefficients, Stages};
+use crate::number::Double;
+
+/// The stability function of a one-step method as a quotient of two polynomials in
+/// `z = h lambda`, lowest power first.
+#[derive(Clone, Debug, PartialEq)]
+pub struct Rational {
+    /// Its value at 0 is one.
+    pub numerator: Vec<Double>,
+    /// Its value at 0 is one.
+    pub denominator: Vec<Double>,
+}
+
+/// How far a method is stable.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct Stability {
+    /// `-real <= z <= 0` is stable; `None` where the whole axis is.
+    pub real: Option<f64>,
+    /// `|z| <= imaginary` is stable on the imaginary axis; `None` where all of it is.
+    pub imaginary: Option<f64>,
+    /// Stable wherever `Re z <= 0`.
+    pub a_stable: bool,
+    /// A-stable, and infinitely fast modes are gone after one step.
+    pub l_stable: bool,
+    /// Degrees either side of the negative real axis that are stable for any `|z|`.
+    pub angle: f64,
+}
+
+/// A growth of this much above one is rounding of the roots, which are computed in `f64`.
+const ROUNDING: f64 = 1e-11;
+
+impl Rational {
+    /// The stability function of stages: `det(I - zB + z 1 b') / det(I - zB)`
+    /// (`[hairer-wanner-1996]` IV.3).
+    pub fn new(stages: &Stages) -> Rational {
+        let mut shifted = stages.matrix.clone();
+        for row in &mut shifted {
+            for (entry, &weight) in row.iter_mut().zip(&stages.weights) {
+                *entry -= weight;
+            }
+        }
+        Rational {
+            numerator: one_minus(&shifted),
+            denominator: one_minus(&stages.matrix),
+        }
+    }
+
+    /// Coefficients of its Taylor series.
+    pub fn series(&self, terms: usize) -> Vec<Double> {
+        let at = |list: &[Double], k: usize| list.get(k).copied().unwrap_or(Double::ZERO);
+        let mut series: Vec<Double> = Vec::with_capacity(terms);
+        for k in 0..terms {
+            let carried = (1..=k).fold(Double::ZERO, |sum, j| {
+                sum + at(&self.denominator, j) * series[k - j]
+            });
+            series.push(at(&self.numerator, k) - carried);
+        }
+        series
+    }
+}
+
+/// `det(I - zB)` by powers of `z` (Faddeev, LeVerrier).
+fn one_minus(matrix: &[Vec<Double>]) -> Vec<Double> {
+    let size = matrix.len();
+    let mut product = vec![vec![Double::ZERO; size]; size];
+    let mut coefficients = vec![Double::ONE];
+    for k in 1..=size {
+        // product <- B (product + c I)
+        let last = coefficients[k - 1];
+        for (i, row) in product.iter_mut().enumerate() {
+            row[i] += last;
+        }
+        product = matrix
+            .iter()
+            .map(|row| {
+                (0..size)
+                    .map(|j| {
+                        row.iter()
+                            .zip(&product)
+                            .fold(Double::ZERO, |sum, (&b, p)| sum + b * p[j])
+                    })
+                    .collect()
+            })
+            .collect();
+        let trace = (0..size).fold(Double::ZERO, |sum, i| sum + product[i][i]);
+        coefficients.push(-trace / Double::from(k as f64));
+    }
+    coefficients
+}
+
+/// The stability function of stages at one `z`.
+pub fn of_stages(stages: &Stages, z: Complex<f64>) -> Complex<f64> {
+    let size = stages.weights.len();
+    let entry = |x: &Double| z * x.to_f64();
+    let matrix = DMatrix::from_fn(size, size, |i, j| {
+        let one = if i == j { 1.0 } else { 0.0 };
+        Complex::new(one, 0.0) - entry(&stages.matrix[i][j])
+    });
+    let ones = DVector::from_element(size, Complex::new(1.0, 0.0));
+    match matrix.lu().solve(&ones) {
+        Some(slopes) => {
+            let sum = stages.weights.iter().zip(slopes.iter());
+            sum.fold(Complex::new(1.0, 0.0), |sum, (weight, slope)| {
+                sum + entry(weight) * slope
+            })
+        }
+        None => Complex::new(f64::INFINITY, 0.0),
+    }
+}
+
+/// All factors by which a step can multiply a mode: one for a one-step method, one of
+/// which follows the solution for a multistep method.
+pub fn roots(coefficients: &Coefficients, z: Complex<f64>) -> Vec<Complex<f64>> {
+    match coefficients {
+        Coefficients::Stages(stages) => vec![of_stages(stages, z)],
+        Coefficients::Exponential => vec![z.exp()],
+        // On an oscillator: a pair of states takes turns. A single state has none to wait
+        // for.
+        Coefficients::SemiImplicit if z.im == 0.0 => vec![1.0 + z],
+        Coefficients::SemiImplicit => {
+            let size = z.norm_sqr();
+            zeros(&[
+                Complex::new(1.0 + 2.0 * z.re, 0.0),
+                Complex::new(size - 2.0 - 2.0 * z.re, 0.0),
+                Complex::new(1.0, 0.0),
+            ])
+        }
+        Coefficients::Multistep { alpha, beta } => {
+            let terms = alpha.iter().zip(beta);
+            let terms: Vec<Complex<f64>> =
+                terms.map(|(a, b)| a.to_f64() - z * b.to_f64()).collect();
+            zeros(&terms)
+        }
+        Coefficients::Predicted {
+            predictor,
+            corrector,
+        } => {
+            let newest = corrector.len() - 1;
+            let pull = corrector[newest].to_f64();
+            let term = |j: usize| {
+                let stay = if j + 1 == newest { 1.0 } else { 0.0 };
+                let foreseen = stay + z * predictor[j].to_f64();
+                -(stay + z * (pull * foreseen + corrector[j].to_f64()))
+            };
+            let mut terms: Vec<Complex<f64>> = (0..newest).map(term).collect();
+            terms.push(Complex::new(1.0, 0.0));
+            zeros(&terms)
+        }
+    }
+}
+
+/// Zeros of a polynomial, lowest power first, as eigenvalues of its companion matrix.
+fn zeros(polynomial: &[Complex<f64>]) -> Vec<Complex<f64>> {
+    let degree = polynomial.len() - 1;
+    let lead = polynomial[degree];
+    let largest = polynomial.iter().map(|c| c.norm()).fold(0.0, f64::max);
+    if lead.norm() <= 1e-300 * largest {
+        return vec![Complex::new(f64::INFINITY, 0.0)];
+    }
+    if degree == 1 {
+        return vec![-polynomial[0] / lead];
+    }
+    if degree == 2 {
+        // Of the two the larger one first: nothing cancels.
+        let (b, c) = (polynomial[1] / lead / 2.0, polynomial[0] / lead);
+        let root = (b * b - c).sqrt();
+        let large = if (b + root).norm() >= (b - root).norm() {
+            -(b + root)
+        } else {
+            -(b - root)
+        };
+        let small = if large.norm() == 0.0 {
+            large
+        } else {
+            c / large
+        };
+        return vec![large, small];
+    }
+    let companion = DMatrix::from_fn(degree, degree, |i, j| {
+        if i == 0 {
+            -polynomial[degree - 1 - j] / lead
+        } else if i == j + 1 {
+            Complex::new(1.0, 0.0)
+        } else {
+            Complex::new(0.0, 0.0)
+        }
+    });
+    match companion.schur().eigenvalues() {
+        Some(values) => values.iter().copied().collect(),
+        None => vec![Complex::new(f64::INFINITY, 0.0)],
+    }
+}
+
+/// The largest factor by which a step can multiply a mode.
+pub fn amplification(coefficients: &Coefficients, z: Complex<f64>) -> f64 {
+    let sizes = roots(coefficients, z).into_iter().map(Complex::norm);
+    sizes.fold(
+        0.0,
+        |largest, size| if size <= largest { largest } else { size },
+    )
+}
+
+fn is_stable(coefficients: &Coefficients, z: Complex<f64>) -> bool {
+    amplification(coefficients, z) <= 1.0 + ROUNDING
+}
+
+/// The largest `r` such that all of `r' direction`, `0 <= r' <= r`, is stable; `None` where
+/// there is no end to it. The direction has length one.
+///
+/// # Error bound
+/// None: a gap narrower than a hundredth is passed over; the end is known to 1e-12 of
+/// itself, but for what the rounding of roots of multistep methods moves it by.
+pub fn approx_stable_length(coefficients: &Coefficients, direction: Complex<f64>) -> Option<f64> {
+    let at = |r: f64| is_stable(coefficients, direction * r);
+    // Beside the origin instability grows slowly: a first point far from it would miss it,
+    // one too near would be hidden by rounding.
+    let mut stable = 0.0;
+    let mut r = 0.02;
+    while at(r) {
+        stable = r;
+        // Explicit methods end below 60; beyond, only the far end is looked at.
+        r = if r < 60.0 { r + 0.01 } else { r * 1.5 };
+        if r > 1e9 {
+            return None;
+        }
+    }
+    let mut unstable = r;
+    if stable == 0.0 && !at(1e-3) {
+        return Some(0.0);
+    }
+    for _ in 0..200 {
+        let middle = 0.5 * (stable + unstable);
+        if middle <= stable || middle >= unstable {
+            break;
+        }
+        if at(middle) {
+            stable = middle;
+        } else {
+            unstable = middle;
+        }
+    }
+    Some(stable)
+}
+
+/// Stability of a method as a whole.
+///
+/// # Error bound
+/// None; see [`approx_stable_length`]. A- and L-stability are read off a grid of the left
+/// half of the plane.
+pub fn approx_stability(coefficients: &Coefficients) -> Stability {
+    let ray = |degrees: f64| {
+        let (sine, cosine) = degrees.to_radians().sin_cos();
+        Complex::new(-cosine, sine)
+    };
+    let everywhere = |direction: Complex<f64>| {
+        (0..=120).all(|k| {
+            is_stable(
+                coefficients,
+                direction * 10f64.powf(-2.0 + f64::from(k) / 12.0),
+            )
+        })
+    };
+    let imaginary_axis = Complex::new(0.0, 1.0);
+    let whole = everywhere(ray(0.0));
+    let real = if whole {
+        None
+    } else {
+        approx_stable_length(coefficients, ray(0.0))
+    };
+    let upright = everywhere(imaginary_axis);
+    let a_stable = whole && upright && (1..18).all(|k| everywhere(ray(5.0 * f64::from(k))));
+    let far = amplification(coefficients, Complex::new(-1e14, 0.0));
+    let angle = match (a_stable, whole) {
+        (true, _) => 90.0,
+        (false, true) => widest_angle(coefficients),
+        (false, false) => 0.0,
+    };
+    Stability {
+        real,
+        imaginary: if upright {
+            None
+        } else {
+            approx_stable_length(coefficients, imaginary_axis)
+        },
+        a_stable,
+        l_stable: a_stable && far < 1e-4,
+        angle,
+    }
+}
+
+/// The widest sector about the negative real axis that the boundary locus
+/// `rho(e^it) / sigma(e^it)` leaves free, in degrees; it is the whole half plane where
+/// there is no such locus.
+fn widest_angle(coefficients: &Coefficients) -> f64 {
+    let Coefficients::Multistep { alpha, beta } = coefficients else {
+        return 90.0;
+    };
+    let value = |list: &[Double], turn: Complex<f64>| {
+        let terms = list.iter().rev();
+        terms.fold(Complex::new(0.0, 0.0), |sum, c| sum * turn + c.to_f64())
+    };
+    let angle = |t: f64| {
+        let turn = Complex::new(0.0, t).exp();
+        let z = value(alpha, turn) / value(beta, turn);
+        if z.re < 0.0 {
+            z.im.abs().atan2(-z.re).to_degrees()
+        } else {
+            90.0
+        }
+    };
+    let count = 20_000;
+    let place = |k: usize| std::f64::consts::PI * k as f64 / count as f64;
+    let coarse = (1..count).min_by(|&a, &b| angle(place(a)).total_cmp(&angle(place(b))));
+    let Some(coarse) = coarse else { return 90.0 };
+    // Thirds: the locus is smooth there.
+    let (mut low, mut high) = (place(coarse - 1), place(coarse + 1));
+    for _ in 0..100 {
+        let third = (high - low) / 3.0;
+        if angle(low + third) < angle(high - third) {
+            high -= third;
+        } else {
+            low += third;
+        }
+    }
+    angle(0.5 * (low + high))
+}
