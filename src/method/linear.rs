@@ -143,6 +143,17 @@ impl Linear {
             .sum();
         from_states + from_inputs + constant
     }
+
+    /// What a change of the states does to a channel.
+    pub fn observe_change(&self, channel: usize, change: &dyn Fn(usize) -> f64) -> f64 {
+        match channel
+            .checked_sub(self.size())
+            .and_then(|o| self.outputs.get(o))
+        {
+            Some((row, _, _)) => row.iter().enumerate().map(|(i, c)| c * change(i)).sum(),
+            None => change(channel),
+        }
+    }
 }
 
 impl Signal {

@@ -64,6 +64,11 @@ impl<'a> March<'a> {
         self.history.back().map_or(&[], Vec::as_slice)
     }
 
+    /// The states that the next step needs, oldest first.
+    pub fn history(&self) -> impl Iterator<Item = &Vec<f64>> {
+        self.history.iter()
+    }
+
     /// Its time.
     pub fn time(&self) -> f64 {
         self.origin + self.count as f64 * self.recurrence.step

@@ -7,17 +7,26 @@
 //! `record` is what is kept of a file and `evidence` lays the two beside each other.
 
 mod catalogue;
+mod drive;
+mod evidence;
 mod linear;
 mod march;
+mod record;
 mod recurrence;
 mod scheme;
 mod stability;
+mod starts;
+mod trial;
 
 pub use catalogue::{METHODS, Method, find, find_all};
+pub use drive::Drive;
+pub use evidence::{Evidence, Family, MOST_STEPS, Tried, evidence};
 pub use linear::{Linear, Side, Signal};
 pub use march::{March, NEAR, Sides, add_forcing};
+pub use record::{Piece, Record, START_ROWS, Window, windows};
 pub use recurrence::{Node, Ranks, Reading, Recurrence};
 pub use scheme::{Coefficients, Scheme, Stages};
 pub use stability::{
     Rational, Stability, amplification, approx_stability, approx_stable_length, of_stages, roots,
 };
+pub use trial::{Fit, Trial};

@@ -18,8 +18,10 @@ mod properties;
 
 /// The shape of the project: imports, sizes, the top level.
 mod tidy;
+mod writer;
 
 /// Whole screens and reports, read by eye before they are accepted.
+mod evidence;
 mod golden;
 
 /// Published numbers and worked examples, each with its source.

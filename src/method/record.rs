@@ -1,0 +1,223 @@
+//! What is kept of a file to ask it for its method: windows of consecutive rows with what
+//! their digits resolve. Long files are judged on windows that cover the start, the end and
+//! samples of the rest, so that the cost does not grow with their length.
+
+use super::linear::{Linear, Signal};
+
+/// Rows of one file, in the units of the case.
+#[derive(Clone, Debug, Default)]
+pub struct Record {
+    /// The channels that the file holds: states by place, outputs after them.
+    pub channels: Vec<usize>,
+    /// Distance of the rows where it is the same throughout, and how far that is known.
+    pub spacing: Option<(f64, f64)>,
+    /// Unit roundoff of the arithmetic that the values show: that of `f64`, or of `f32`
+    /// where every value is one.
+    pub unit: f64,
+    /// Windows of consecutive rows; the first begins with the first row.
+    pub windows: Vec<Window>,
+}
+
+/// Consecutive rows.
+#[derive(Clone, Debug, Default)]
+pub struct Window {
+    /// Number of the first row, counted from zero.
+    pub first: u64,
+    /// Time stamps.
+    pub times: Vec<f64>,
+    /// How far the stamps are known.
+    pub time_doubts: Vec<f64>,
+    /// Values row by row, in the order of [`Record::channels`]; not a number where there is
+    /// none.
+    pub values: Vec<f64>,
+    /// `written - exact`, likewise.
+    pub errors: Vec<f64>,
+    /// What the digits of the values resolve, likewise.
+    pub doubts: Vec<f64>,
+}
+
+/// Rows of a window that follow each other at the spacing of the file, with no jump of an
+/// input between or at them.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct Piece {
+    /// The window.
+    pub window: usize,
+    /// Its first row in the window.
+    pub start: usize,
+    /// Number of rows.
+    pub rows: usize,
+}
+
+/// Rows of the window at the start, of each later window, and how many of those there are.
+pub const START_ROWS: u64 = 1500;
+const LATER_ROWS: u64 = 48;
+const LATER_WINDOWS: u64 = 16;
+
+/// The windows of a file with so many rows: first row and number of rows.
+pub fn windows(rows: u64) -> Vec<(u64, u64)> {
+    let later = LATER_ROWS * LATER_WINDOWS;
+    if rows <= START_ROWS + later {
+        return vec![(0, rows)];
+    }
+    let mut windows = vec![(0, START_ROWS)];
+    let rest = rows - START_ROWS;
+    for number in 1..=LATER_WINDOWS {
+        // The last one ends with the last row.
+        let end = START_ROWS + rest * number / LATER_WINDOWS;
+        windows.push((end - LATER_ROWS, LATER_ROWS));
+    }
+    windows
+}
+
+impl Window {
+    /// Number of rows.
+    pub fn rows(&self) -> usize {
+        self.times.len()
+    }
+}
+
+impl Record {
+    /// Number of channels.
+    pub fn width(&self) -> usize {
+        self.channels.len()
+    }
+
+    /// Place of every state among the channels, where all are there.
+    pub fn states(&self, size: usize) -> Option<Vec<usize>> {
+        let place = |state: usize| self.channels.iter().position(|&c| c == state);
+        (0..size).map(place).collect()
+    }
+
+    /// The largest magnitude of each channel.
+    pub fn peaks(&self) -> Vec<f64> {
+        let mut peaks = vec![0.0f64; self.width()];
+        for window in &self.windows {
+            for row in window.values.chunks_exact(self.width().max(1)) {
+                for (peak, value) in peaks.iter_mut().zip(row) {
+                    if value.is_finite() {
+                        *peak = peak.max(value.abs());
+                    }
+                }
+            }
+        }
+        peaks
+    }
+
+    /// Pieces without jumps, complete rows only.
+    pub fn pieces(&self, linear: &Linear) -> Vec<Piece> {
+        let mut pieces = Vec::new();
+        for (index, window) in self.windows.iter().enumerate() {
+            let mut start = None;
+            for row in 0..window.rows() {
+                let whole = self.is_whole(window, row) && !touches(linear, window, row, self);
+                let follows = row == 0 || self.follows(window, row);
+                if let Some(begin) = start
+                    && !(whole && follows && !jumps_between(linear, window, row))
+                {
+                    pieces.push(Piece {
+                        window: index,
+                        start: begin,
+                        rows: row - begin,
+                    });
+                    start = None;
+                }
+                if whole && start.is_none() {
+                    start = Some(row);
+                }
+            }
+            if let Some(begin) = start {
+                pieces.push(Piece {
+                    window: index,
+                    start: begin,
+                    rows: window.rows() - begin,
+                });
+            }
+        }
+        pieces.retain(|piece| piece.rows > 1);
+        pieces
+    }
+
+    fn is_whole(&self, window: &Window, row: usize) -> bool {
+        let width = self.width();
+        window.values[row * width..][..width]
+            .iter()
+            .all(|v| v.is_finite())
+    }
+
+    /// True where the row comes one spacing after the one before, or the rows are not
+    /// evenly spaced at all.
+    pub fn follows(&self, window: &Window, row: usize) -> bool {
+        let gap = window.times[row] - window.times[row - 1];
+        match self.spacing {
+            None => gap > 0.0,
+            Some((spacing, doubt)) => {
+                let stamps = window.time_doubts[row] + window.time_doubts[row - 1];
+                let rounding = 8.0 * f64::EPSILON * window.times[row].abs();
+                (gap - spacing).abs() <= doubt + 1.01 * stamps + rounding + 1e-9 * spacing
+            }
+        }
+    }
+}
+
+/// How near to a jump a row counts as at it: sums of many steps miss it by their rounding.
+fn nearness(window: &Window, row: usize) -> f64 {
+    let gap = if row > 0 {
+        window.times[row] - window.times[row - 1]
+    } else if window.rows() > 1 {
+        window.times[1] - window.times[0]
+    } else {
+        0.0
+    };
+    (1e-6 * gap.abs()).max(window.time_doubts[row])
+}
+
+fn touches(linear: &Linear, window: &Window, row: usize, record: &Record) -> bool {
+    let near = nearness(window, row).max(record.spacing.map_or(0.0, |(h, _)| 1e-6 * h));
+    linear.jumps_within(window.times[row] - near, window.times[row] + near)
+}
+
+fn jumps_between(linear: &Linear, window: &Window, row: usize) -> bool {
+    row > 0 && linear.jumps_within(window.times[row - 1], window.times[row])
+}
+
+impl Linear {
+    /// True where an input jumps or has a kink within a closed interval of time.
+    pub fn jumps_within(&self, from: f64, to: f64) -> bool {
+        self.signals
+            .iter()
+            .any(|signal| signal.jumps_within(from, to))
+    }
+}
+
+impl Linear {
+    /// True where no input jumps after a time up to another one.
+    pub fn is_smooth(&self, from: f64, to: f64) -> bool {
+        !self.jumps_within(from.next_up(), to)
+    }
+}
+
+impl Signal {
+    fn jumps_within(&self, from: f64, to: f64) -> bool {
+        match self {
+            Signal::Held(_, edges) => {
+                let next = edges.partition_point(|&(at, _)| at < from);
+                edges.get(next).is_some_and(|&(at, _)| at <= to)
+            }
+            Signal::Pulses(_, first, width, period, count) => {
+                // Every edge is a rising or a falling one of some pulse.
+                let hits = |offset: f64| {
+                    let number = ((from - offset) / period).ceil().max(0.0);
+                    number < *count && offset + number * period <= to
+                };
+                hits(*first) || hits(first + width)
+            }
+            // Kinks: the value goes on, its slope does not.
+            Signal::Lines(knots) => {
+                let next = knots.partition_point(|&(at, _)| at < from);
+                knots.get(next).is_some_and(|&(at, _)| at <= to)
+            }
+            Signal::Ramp(_, at) => (from..=to).contains(at),
+            _ => false,
+        }
+    }
+}

@@ -1,0 +1,275 @@
+//! Methods with a memory whose first steps are not in the file: does any start explain the
+//! rows?
+//!
+//! The start that a program made for a multistep method (by another method, at a lower
+//! order, exactly) is hidden where rows are written less often than steps are made, or
+//! where states are missing. The rows depend on it linearly, so the start that fits best is
+//! a least-squares problem. If any start keeps every residual within what is allowed, the
+//! sum of their weighted squares at the best one is at most their number: the test can
+//! rule out, but never the method that wrote the file.
+
+use nalgebra::{DMatrix, DVector};
+
+use super::linear::{Linear, Side};
+use super::march::{March, NEAR, Sides};
+use super::record::{Piece, Record, Window};
+use super::recurrence::Recurrence;
+use super::trial::{Fit, Trial, identity};
+use crate::number::Matrix;
+
+/// Rows compared at most.
+const MOST_ROWS: usize = 120;
+/// Multiplications at most.
+const MOST_WORK: usize = 40_000_000;
+
+/// Lays a method with a memory beside the rows from the start of the file. `reference` is a
+/// one-step recurrence of high order at the same step, which gives a start to correct.
+/// Nothing is compared where the rows are too few for the unknowns.
+pub(super) fn with_hidden_start(
+    trial: &Trial,
+    reference: &Recurrence,
+    record: &Record,
+    pieces: &[Piece],
+) -> Fit {
+    let linear = trial.linear;
+    let (size, back) = (linear.size(), trial.recurrence.back());
+    let unknowns = size * (back - 1);
+    let complete = record.states(size).is_some();
+    let Some(window) = record.windows.first() else {
+        return Fit::NOTHING;
+    };
+    // An input that jumps at the very start leaves the first row out of every piece.
+    let (from, at_start) = (linear.window.0, NEAR * trial.recurrence.step);
+    let jumps_at_start = linear.jumps_within(from - at_start, from + at_start);
+    // Through jumps where there is no choice; with all states only up to the first.
+    let reach = match pieces.first() {
+        Some(piece)
+            if complete && piece.window == 0 && piece.start <= usize::from(jumps_at_start) =>
+        {
+            piece.start + piece.rows
+        }
+        _ if complete => return Fit::NOTHING,
+        _ => window.rows(),
+    };
+    let per_row = trial.stacked().pow(3) + trial.stacked().pow(2) * unknowns;
+    let rows = reach.min(MOST_ROWS).min(MOST_WORK / per_row.max(1));
+    let equations = rows.saturating_sub(1) * record.width();
+    if equations < unknowns + 8 {
+        return Fit::NOTHING;
+    }
+    let fit = |sides: Sides| {
+        let system = System::new(trial, reference, record, rows, complete, sides);
+        system.map_or(Fit::NOTHING, |system| system.solve(record))
+    };
+    let plain = fit(Sides::After);
+    if plain.holds() || complete && !jumps_at_start {
+        return plain;
+    }
+    let others = [Sides::Before, Sides::Own].map(fit);
+    others.into_iter().fold(plain, |best, other| {
+        if other.compared > 0 && other.ratio < best.ratio {
+            other
+        } else {
+            best
+        }
+    })
+}
+
+/// Weighted equations for the correction of the hidden states.
+struct System {
+    matrix: DMatrix<f64>,
+    right: DVector<f64>,
+    /// Channel and allowance of each equation.
+    of_row: Vec<(usize, f64)>,
+}
+
+impl System {
+    fn new(
+        trial: &Trial,
+        reference: &Recurrence,
+        record: &Record,
+        rows: usize,
+        complete: bool,
+        sides: Sides,
+    ) -> Option<System> {
+        let linear = trial.linear;
+        let (size, stacked) = (linear.size(), trial.stacked());
+        let unknowns = stacked - size;
+        let memory = trial.recurrence.back() as u64 - 1;
+        let window = record.windows.first()?;
+        let origin = window.times[0];
+        let at = |count: u64| origin + count as f64 * trial.recurrence.step;
+        // States 0 to memory: the first is the start of the case, the others are hidden.
+        let mut first = March::new(reference, linear, sides, [linear.start.clone()], origin, 0);
+        let mut known = vec![linear.start.clone()];
+        for _ in 0..memory {
+            known.push(first.step().to_vec());
+        }
+        let mut stack: Vec<f64> = known.iter().flatten().copied().collect();
+        // How the hidden states act on the stack.
+        let mut effect = DMatrix::from_fn(
+            stacked,
+            unknowns,
+            |i, u| {
+                if i == u + size { 1.0 } else { 0.0 }
+            },
+        );
+        let across = to_dense(trial.across());
+        let mut allowance = Allowance::new(trial);
+        let mut step = memory;
+        let (mut lines, mut right, mut of_row) = (Vec::new(), Vec::new(), Vec::new());
+        let peaks = record.peaks();
+        for row in 1..rows {
+            if !record.follows(window, row) {
+                break;
+            }
+            let wanted = row as u64 * trial.steps;
+            if wanted > step {
+                let count = wanted - step;
+                stack = trial.advance(&stack, at(step), count, sides);
+                effect = if count == trial.steps {
+                    &across * &effect
+                } else {
+                    to_dense(&trial.power(count)) * &effect
+                };
+                step = wanted;
+            }
+            // A row before the first step of the method is a hidden state itself.
+            let place = if wanted < step {
+                wanted as usize * size
+            } else {
+                stacked - size
+            };
+            let hidden_row = wanted < step;
+            let state = if hidden_row {
+                &known[wanted as usize][..]
+            } else {
+                &stack[stacked - size..]
+            };
+            allowance.next_row(state);
+            let time = window.times[row];
+            let near = NEAR * trial.recurrence.step;
+            if !complete && linear.jumps_within(time - near, time + near) {
+                continue;
+            }
+            for (column, &channel) in record.channels.iter().enumerate() {
+                if complete && channel >= size {
+                    continue;
+                }
+                let at = row * record.width() + column;
+                let written = window.values[at];
+                if !written.is_finite() {
+                    continue;
+                }
+                let predicted = linear.observe(channel, state, time, Side::After, near);
+                let allowed = window.doubts[at]
+                    + allowance.of(linear, channel)
+                    + 8.0 * f64::EPSILON * peaks[column]
+                    + window.time_doubts[row] * rate(window, record, row, column);
+                let effect_on = |u: usize| {
+                    let of_state = |i: usize| {
+                        if hidden_row {
+                            if place + i == u + size { 1.0 } else { 0.0 }
+                        } else {
+                            effect[(place + i, u)]
+                        }
+                    };
+                    linear.observe_change(channel, &of_state)
+                };
+                lines.extend((0..unknowns).map(|u| effect_on(u) / allowed));
+                right.push((written - predicted) / allowed);
+                of_row.push((column, allowed));
+            }
+        }
+        let finite = lines.iter().chain(&right).all(|x| x.is_finite());
+        if !finite || of_row.len() < unknowns + 8 {
+            return None;
+        }
+        Some(System {
+            matrix: DMatrix::from_row_slice(of_row.len(), unknowns, &lines),
+            right: DVector::from_vec(right),
+            of_row,
+        })
+    }
+
+    fn solve(mut self, record: &Record) -> Fit {
+        // Columns of equal length: parasitic modes die out within a few steps.
+        for mut column in self.matrix.column_iter_mut() {
+            let length = column.norm();
+            if length > 0.0 {
+                column /= length;
+            }
+        }
+        let decomposed = self.matrix.clone().svd(true, true);
+        let largest = decomposed.singular_values.max();
+        let Ok(correction) = decomposed.solve(&self.right, 1e-13 * largest) else {
+            return Fit::NOTHING;
+        };
+        let rest = &self.right - &self.matrix * correction;
+        let equations = self.of_row.len();
+        let peaks = record.peaks();
+        let mut fit = Fit::NOTHING;
+        for (residual, &(place, allowed)) in rest.iter().zip(&self.of_row) {
+            // The share of a single row tells nothing: only the sum is bounded.
+            fit.add(residual.abs() * allowed, f64::INFINITY, peaks[place]);
+        }
+        fit.ratio = (rest.norm_squared() / equations as f64).sqrt();
+        fit
+    }
+}
+
+fn to_dense(matrix: &Matrix<f64>) -> DMatrix<f64> {
+    DMatrix::from_fn(matrix.size(), matrix.size(), |i, j| matrix[(i, j)])
+}
+
+/// Roundings from the start up to a row.
+struct Allowance<'t, 'a> {
+    trial: &'t Trial<'a>,
+    power: Matrix<f64>,
+    gathered: Vec<f64>,
+    states: Vec<f64>,
+    row: u64,
+}
+
+impl<'t, 'a> Allowance<'t, 'a> {
+    fn new(trial: &'t Trial<'a>) -> Allowance<'t, 'a> {
+        let stacked = trial.stacked();
+        Allowance {
+            trial,
+            power: identity(stacked),
+            gathered: vec![0.0; stacked],
+            states: trial.linear.start.iter().map(|x| x.abs()).collect(),
+            row: 0,
+        }
+    }
+
+    fn next_row(&mut self, state: &[f64]) {
+        for (largest, x) in self.states.iter_mut().zip(state) {
+            *largest = largest.max(x.abs());
+        }
+        let noise = self.trial.noise_between_rows(&self.states, self.row);
+        let carried = self.power.map(f64::abs).apply(&noise);
+        self.gathered
+            .iter_mut()
+            .zip(carried)
+            .for_each(|(sum, x)| *sum += x);
+        self.power = self.trial.across().product(&self.power);
+        self.row += 1;
+    }
+
+    fn of(&self, linear: &Linear, channel: usize) -> f64 {
+        let newest = self.trial.stacked() - linear.size();
+        linear.observe_noise(
+            channel,
+            &self.gathered[newest..],
+            self.trial.unit,
+            &self.states,
+        )
+    }
+}
+
+fn rate(window: &Window, record: &Record, row: usize, column: usize) -> f64 {
+    let at = |row: usize| window.values[row * record.width() + column];
+    let rate = (at(row) - at(row - 1)).abs() / (window.times[row] - window.times[row - 1]);
+    if rate.is_finite() { rate } else { 0.0 }
+}

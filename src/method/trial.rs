@@ -1,0 +1,633 @@
+//! One method at one step laid beside the rows of a file.
+//!
+//! Two tests. Local: consecutive rows are put into the method's own difference equation.
+//! Global: the method runs from the first row of a piece and is compared with every later
+//! one. A residual is measured against what the printed digits and rounding allow there,
+//! which is a bound and not a fitted threshold:
+//!
+//! # Formula
+//! With `Phi` the matrix from row to row, `d` the resolution of a row and `eps` the roundings
+//! of all steps between two rows: local `d_(k+1) + |Phi| d_k + eps`, global
+//! `d_k + |Phi^k| d_0 + sum_(j<k) |Phi^j| eps`, each with what moving the time by its own
+//! rounding does to inputs and states.
+
+use super::drive::Drive;
+use super::linear::{Linear, Side};
+use super::march::{March, NEAR, Sides};
+use super::record::{Piece, Record, Window};
+use super::recurrence::Recurrence;
+use crate::number::Matrix;
+
+/// How well rows agree with a prediction.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct Fit {
+    /// Largest residual over what is allowed for it: consistent up to one.
+    pub ratio: f64,
+    /// Largest residual relative to the peak of its channel.
+    pub residual: f64,
+    /// Comparisons made.
+    pub compared: usize,
+}
+
+/// A method at a step, ready to be compared.
+#[derive(Clone, Debug)]
+pub struct Trial<'a> {
+    /// The model.
+    pub linear: &'a Linear,
+    /// One step.
+    pub recurrence: Recurrence,
+    /// Steps from row to row.
+    pub steps: u64,
+    /// Unit roundoff of the program's arithmetic.
+    pub unit: f64,
+    drive: Drive,
+    /// One step, over all earlier states that the method needs and the inputs.
+    single: Matrix<f64>,
+    /// The same from row to row.
+    joined: Matrix<f64>,
+    /// Its part for the states.
+    across: Matrix<f64>,
+    /// `sum |C^j|` over the steps of one row: how roundings of single steps add up.
+    gathered: Matrix<f64>,
+}
+
+/// Work in multiplications that one global comparison may cost.
+const GLOBAL_WORK: usize = 20_000_000;
+/// Rows compared where only a first impression is wanted.
+pub const GLANCE: usize = 24;
+
+impl Fit {
+    /// Before anything was compared.
+    pub const NOTHING: Fit = Fit {
+        ratio: 0.0,
+        residual: 0.0,
+        compared: 0,
+    };
+
+    /// Takes in one comparison.
+    pub fn add(&mut self, residual: f64, allowed: f64, peak: f64) {
+        self.compared += 1;
+        let ratio = if residual == 0.0 {
+            0.0
+        } else {
+            residual / allowed
+        };
+        // Not f64::max, which would pass over a NaN.
+        self.ratio = if ratio <= self.ratio {
+            self.ratio
+        } else {
+            ratio
+        };
+        if peak > 0.0 {
+            let share = residual / peak;
+            self.residual = if share <= self.residual {
+                self.residual
+            } else {
+                share
+            };
+        }
+    }
+
+    /// Both together.
+    pub fn and(self, other: Fit) -> Fit {
+        let larger = |a: f64, b: f64| if b <= a { a } else { b };
+        Fit {
+            ratio: larger(self.ratio, other.ratio),
+            residual: larger(self.residual, other.residual),
+            compared: self.compared + other.compared,
+        }
+    }
+
+    /// True where no residual exceeds what is allowed for it.
+    pub fn holds(&self) -> bool {
+        self.compared > 0 && self.ratio <= 1.0
+    }
+}
+
+impl<'a> Trial<'a> {
+    /// A step that is taken so many times from row to row.
+    pub fn new(linear: &'a Linear, recurrence: Recurrence, steps: u64, unit: f64) -> Trial<'a> {
+        let drive = Drive::new(linear);
+        let single = drive.joined(linear, &recurrence);
+        let stacked = recurrence.size() * recurrence.back();
+        let (_, gathered) = repeated(&corner(&single, stacked), steps);
+        let joined = to_the_power(&single, steps);
+        Trial {
+            linear,
+            recurrence,
+            steps,
+            unit,
+            across: corner(&joined, stacked),
+            drive,
+            single,
+            joined,
+            gathered,
+        }
+    }
+
+    /// States and earlier states together.
+    pub fn stacked(&self) -> usize {
+        self.recurrence.size() * self.recurrence.back()
+    }
+
+    /// True where no entry has overflowed.
+    pub fn is_finite(&self) -> bool {
+        let finite = |matrix: &Matrix<f64>| matrix.rows().flatten().all(|x| x.is_finite());
+        finite(&self.across) && finite(&self.gathered)
+    }
+
+    /// The matrix from row to row.
+    pub fn across(&self) -> &Matrix<f64> {
+        &self.across
+    }
+
+    /// The stack one row on, where no input jumps in between.
+    pub fn row_on(&self, stack: &[f64], time: f64) -> Vec<f64> {
+        self.steps_on(&self.joined, stack, time)
+    }
+
+    fn steps_on(&self, joined: &Matrix<f64>, stack: &[f64], time: f64) -> Vec<f64> {
+        let near = NEAR * self.recurrence.step;
+        let mut all = stack.to_vec();
+        all.extend(self.drive.state(self.linear, time, Side::After, near));
+        let rows = joined.rows().take(stack.len());
+        rows.map(|row| row.iter().zip(&all).map(|(m, x)| m * x).sum())
+            .collect()
+    }
+
+    /// The stack so many steps on, through jumps.
+    pub fn advance(&self, stack: &[f64], time: f64, steps: u64, sides: Sides) -> Vec<f64> {
+        let step = self.recurrence.step;
+        let (near, size) = (NEAR * step, self.linear.size());
+        let behind = (self.recurrence.back() - 1) as f64 * step;
+        let end = time + steps as f64 * step;
+        // A jump at the very start is behind, unless a program still sees the value before it.
+        let first = match sides {
+            Sides::Before => time - behind - near,
+            Sides::After | Sides::Own => time - behind + near,
+        };
+        if !self.linear.jumps_within(first, end + near) {
+            if steps == self.steps {
+                return self.row_on(stack, time);
+            }
+            return self.steps_on(&to_the_power(&self.single, steps), stack, time);
+        }
+        let states = stack.chunks_exact(size).map(<[f64]>::to_vec);
+        let mut march = March::new(&self.recurrence, self.linear, sides, states, time, 0);
+        for _ in 0..steps {
+            march.step();
+        }
+        march.history().flatten().copied().collect()
+    }
+
+    /// The matrix over so many steps.
+    pub(super) fn power(&self, steps: u64) -> Matrix<f64> {
+        corner(&to_the_power(&self.single, steps), self.stacked())
+    }
+
+    /// What the forcing has done from a row to the next, over all states of the stack.
+    pub fn forced(&self, time: f64) -> Vec<f64> {
+        self.row_on(&vec![0.0; self.stacked()], time)
+    }
+
+    /// What roundings of the steps between two rows can come to, given the largest states
+    /// and the largest forcing with its rate, the time and the number of the row.
+    fn rounding(&self, scale: &Scale, time: f64, row: u64) -> Vec<f64> {
+        let recurrence = &self.recurrence;
+        let size = recurrence.size();
+        let spread = recurrence.spread.apply(&scale.states);
+        let pull = recurrence.pull.apply(&scale.forcing);
+        // Times that are summed step by step drift by half a unit in the last place each.
+        let count = (row + 1) as f64 * self.steps as f64;
+        let drift = (count + 4.0) * 0.5 * f64::EPSILON * time.abs() + scale.time_doubt;
+        let swept = recurrence.pull.apply(&scale.slopes);
+        let mut step = vec![0.0; self.stacked()];
+        let newest = self.stacked() - size;
+        for i in 0..size {
+            step[newest + i] =
+                self.unit * recurrence.roundings * (spread[i] + pull[i]) + swept[i] * drift;
+        }
+        self.gathered.apply(&step)
+    }
+
+    /// The same from the largest states alone, with the forcing at the start of the window
+    /// and over it.
+    pub(super) fn noise_between_rows(&self, states: &[f64], row: u64) -> Vec<f64> {
+        let linear = self.linear;
+        let (from, to) = linear.window;
+        let mut scale = Scale {
+            states: states.to_vec(),
+            forcing: vec![0.0; linear.size()],
+            slopes: vec![0.0; linear.size()],
+            time_doubt: 0.0,
+            spacing_doubt: 0.0,
+        };
+        let time = from + (row + 1) as f64 * self.steps as f64 * self.recurrence.step;
+        let mut forcing = vec![0.0; linear.size()];
+        linear.forcing(time.min(to), Side::After, 0.0, &mut forcing);
+        scale.see_forcing(&forcing);
+        linear.forcing_slope(time.min(to), Side::After, 0.0, &mut forcing);
+        scale.see_slopes(&forcing);
+        self.rounding(&scale, time, row)
+    }
+
+    /// Compares a file that holds every state, piece by piece. `glance` looks at few rows
+    /// only.
+    pub fn against_rows(&self, record: &Record, pieces: &[Piece], glance: bool) -> Fit {
+        let Some(places) = record.states(self.linear.size()) else {
+            return Fit::NOTHING;
+        };
+        let rows = Rows { record, places };
+        let peaks = rows.peaks();
+        let mut fit = Fit::NOTHING;
+        for piece in pieces {
+            let window = &record.windows[piece.window];
+            // A method with a memory may have begun anew after a jump.
+            let memory = self.recurrence.back() - 1;
+            let fresh = window.first + piece.start as u64 == 0;
+            let skip = if fresh { 0 } else { memory };
+            if piece.rows < skip + memory + 2 {
+                continue;
+            }
+            let piece = Piece {
+                start: piece.start + skip,
+                rows: piece.rows - skip,
+                ..*piece
+            };
+            let piece = if glance {
+                Piece {
+                    rows: piece.rows.min(GLANCE),
+                    ..piece
+                }
+            } else {
+                piece
+            };
+            let own = self.local(&rows, window, piece, &peaks);
+            fit = fit.and(own);
+            if !glance && fit.ratio <= 1.0 {
+                fit = fit.and(self.global(&rows, window, piece, &peaks));
+            }
+            if fit.ratio > 1.0 && !glance {
+                break;
+            }
+        }
+        fit
+    }
+
+    fn stack(&self, rows: &Rows, window: &Window, row: usize) -> (Vec<f64>, Vec<f64>) {
+        let back = self.recurrence.back();
+        let (mut states, mut doubts) = (Vec::new(), Vec::new());
+        for earlier in (0..back).rev() {
+            states.extend(rows.values(window, row - earlier));
+            doubts.extend(rows.doubts(window, row - earlier));
+        }
+        (states, doubts)
+    }
+
+    fn local(&self, rows: &Rows, window: &Window, piece: Piece, peaks: &[f64]) -> Fit {
+        let size = self.linear.size();
+        let newest = self.stacked() - size;
+        let scale = rows.scale(self.linear, window, piece);
+        let mut fit = Fit::NOTHING;
+        let first = piece.start + self.recurrence.back() - 1;
+        for row in first..piece.start + piece.rows - 1 {
+            let time = window.times[row];
+            let (states, doubts) = self.stack(rows, window, row);
+            let predicted = self.row_on(&states, time);
+            let number = window.first + row as u64;
+            let rounding = self.rounding(&scale, time, number);
+            let next = rows.values(window, row + 1);
+            let next_doubt = rows.doubts(window, row + 1);
+            let rates = rows.rates(window, piece, row);
+            let stamp = 2.0 * f64::EPSILON * window.times[row + 1].abs() + scale.spacing_doubt;
+            for i in 0..size {
+                let line = self.across.row(newest + i);
+                let mut allowed = next_doubt[i] + rounding[newest + i] + rates[i] * stamp;
+                allowed += line
+                    .iter()
+                    .zip(&doubts)
+                    .map(|(m, d)| m.abs() * d)
+                    .sum::<f64>();
+                fit.add((next[i] - predicted[newest + i]).abs(), allowed, peaks[i]);
+            }
+        }
+        fit
+    }
+
+    fn global(&self, rows: &Rows, window: &Window, piece: Piece, peaks: &[f64]) -> Fit {
+        let (size, stacked) = (self.linear.size(), self.stacked());
+        let newest = stacked - size;
+        let scale = rows.scale(self.linear, window, piece);
+        let first = piece.start + self.recurrence.back() - 1;
+        let most = GLOBAL_WORK / stacked.pow(3).max(1);
+        let last = (piece.start + piece.rows - 1).min(first + most.max(4));
+        let (mut states, start_doubts) = self.stack(rows, window, first);
+        let mut power = identity(stacked);
+        let mut gathered = vec![0.0; stacked];
+        let steepest = rows.steepest(window, piece);
+        let mut fit = Fit::NOTHING;
+        for row in first..last {
+            let time = window.times[row];
+            states = self.row_on(&states, time);
+            let noise = self.rounding(&scale, time, window.first + row as u64);
+            let carried = power.map(f64::abs).apply(&noise);
+            gathered
+                .iter_mut()
+                .zip(carried)
+                .for_each(|(sum, x)| *sum += x);
+            power = self.across.product(&power);
+            let from_start = power.map(f64::abs).apply(&start_doubts);
+            let written = rows.values(window, row + 1);
+            let doubts = rows.doubts(window, row + 1);
+            let since = (row + 1 - first) as f64;
+            let stamp = (since * self.steps as f64 + 2.0) * f64::EPSILON * time.abs()
+                + since * scale.spacing_doubt;
+            for i in 0..size {
+                let at = newest + i;
+                let allowed = doubts[i] + from_start[at] + gathered[at] + steepest[i] * stamp;
+                fit.add((written[i] - states[at]).abs(), allowed, peaks[i]);
+            }
+            if fit.ratio > 1.0 {
+                break;
+            }
+        }
+        fit
+    }
+
+    /// Compares a file that does not hold every state: the method runs from the start of
+    /// the window, through jumps, and meets the rows of the first window. `starts` are the
+    /// states before the second row that a method with a memory needs.
+    pub fn from_start(&self, record: &Record, sides: Sides, rows: usize) -> Fit {
+        let linear = self.linear;
+        let Some(window) = record.windows.first() else {
+            return Fit::NOTHING;
+        };
+        let stacked = self.stacked();
+        if self.recurrence.back() > 1 || window.rows() < 2 {
+            return Fit::NOTHING;
+        }
+        let peaks = record.peaks();
+        let width = record.width();
+        let most = (GLOBAL_WORK / stacked.pow(3).max(1)).max(4);
+        let last = (window.rows() - 1).min(most).min(rows);
+        let start = linear.start.clone();
+        let origin = window.times[0];
+        let mut state = start.clone();
+        // Largest states so far: the roundings are relative to them.
+        let mut scale = Scale::of_start(linear, &start, record);
+        let mut power = identity(stacked);
+        let mut gathered = vec![0.0; stacked];
+        let mut steepest = vec![0.0f64; width];
+        let mut forcing = vec![0.0; linear.size()];
+        let mut fit = Fit::NOTHING;
+        for row in 0..=last {
+            let time = window.times[row];
+            if row > 0 {
+                if !record.follows(window, row) {
+                    break;
+                }
+                let before = origin + ((row - 1) as f64) * self.steps as f64 * self.recurrence.step;
+                state = self.advance(&state, before, self.steps, sides);
+                scale.see(&state);
+                linear.forcing(time, Side::After, 0.0, &mut forcing);
+                scale.see_forcing(&forcing);
+                linear.forcing_slope(time, Side::After, 0.0, &mut forcing);
+                scale.see_slopes(&forcing);
+                let noise = self.rounding(&scale, time, row as u64);
+                let carried = power.map(f64::abs).apply(&noise);
+                gathered
+                    .iter_mut()
+                    .zip(carried)
+                    .for_each(|(sum, x)| *sum += x);
+                power = self.across.product(&power);
+            }
+            let near = (NEAR * self.recurrence.step).max(window.time_doubts[row]);
+            if linear.jumps_within(time - near, time + near) {
+                // An output may jump with the input: either value could stand here.
+                continue;
+            }
+            for (place, &channel) in record.channels.iter().enumerate() {
+                let at = row * width + place;
+                let written = window.values[at];
+                if !written.is_finite() {
+                    continue;
+                }
+                if row > 0 {
+                    let gap = time - window.times[row - 1];
+                    let before = window.values[at - width];
+                    if before.is_finite() && gap > 0.0 {
+                        steepest[place] = steepest[place].max((written - before).abs() / gap);
+                    }
+                }
+                let predicted = linear.observe(channel, &state, time, Side::After, near);
+                let noise = linear.observe_noise(channel, &gathered, self.unit, &scale.states);
+                let stamp = (row as f64 * self.steps as f64 + 2.0) * f64::EPSILON * time.abs()
+                    + row as f64 * scale.spacing_doubt
+                    + window.time_doubts[row];
+                let allowed = window.doubts[at] + noise + steepest[place] * stamp;
+                fit.add((written - predicted).abs(), allowed, peaks[place]);
+            }
+            if fit.ratio.is_nan() || (fit.ratio > 1.0 && row >= GLANCE) {
+                break;
+            }
+        }
+        fit
+    }
+}
+
+/// The largest states and forcing within a piece, which roundings are relative to.
+struct Scale {
+    states: Vec<f64>,
+    forcing: Vec<f64>,
+    slopes: Vec<f64>,
+    time_doubt: f64,
+    spacing_doubt: f64,
+}
+
+impl Scale {
+    fn of_start(linear: &Linear, start: &[f64], record: &Record) -> Scale {
+        let mut scale = Scale {
+            states: start.iter().map(|x| x.abs()).collect(),
+            forcing: vec![0.0; linear.size()],
+            slopes: vec![0.0; linear.size()],
+            time_doubt: 0.0,
+            spacing_doubt: record.spacing.map_or(0.0, |(_, doubt)| doubt),
+        };
+        let mut forcing = vec![0.0; linear.size()];
+        linear.forcing(linear.window.0, Side::After, 0.0, &mut forcing);
+        scale.see_forcing(&forcing);
+        scale
+    }
+
+    fn see(&mut self, state: &[f64]) {
+        larger(&mut self.states, state);
+    }
+
+    fn see_forcing(&mut self, forcing: &[f64]) {
+        larger(&mut self.forcing, forcing);
+    }
+
+    fn see_slopes(&mut self, slopes: &[f64]) {
+        larger(&mut self.slopes, slopes);
+    }
+}
+
+fn larger(into: &mut [f64], values: &[f64]) {
+    for (largest, value) in into.iter_mut().zip(values) {
+        *largest = largest.max(value.abs());
+    }
+}
+
+/// Rows of a record with every state.
+struct Rows<'a> {
+    record: &'a Record,
+    places: Vec<usize>,
+}
+
+impl Rows<'_> {
+    fn peaks(&self) -> Vec<f64> {
+        let peaks = self.record.peaks();
+        self.places.iter().map(|&place| peaks[place]).collect()
+    }
+
+    fn values(&self, window: &Window, row: usize) -> Vec<f64> {
+        let line = &window.values[row * self.record.width()..];
+        self.places.iter().map(|&place| line[place]).collect()
+    }
+
+    fn doubts(&self, window: &Window, row: usize) -> Vec<f64> {
+        let line = &window.doubts[row * self.record.width()..];
+        self.places.iter().map(|&place| line[place]).collect()
+    }
+
+    fn scale(&self, linear: &Linear, window: &Window, piece: Piece) -> Scale {
+        let start = self.values(window, piece.start);
+        let mut scale = Scale::of_start(linear, &start, self.record);
+        scale.forcing.fill(0.0);
+        let mut forcing = vec![0.0; linear.size()];
+        for row in piece.start..piece.start + piece.rows {
+            scale.see(&self.values(window, row));
+            linear.forcing(window.times[row], Side::After, 0.0, &mut forcing);
+            scale.see_forcing(&forcing);
+            linear.forcing_slope(window.times[row], Side::After, 0.0, &mut forcing);
+            scale.see_slopes(&forcing);
+            scale.time_doubt = scale.time_doubt.max(window.time_doubts[row]);
+        }
+        scale
+    }
+
+    /// How fast each state moves about a row.
+    fn rates(&self, window: &Window, piece: Piece, row: usize) -> Vec<f64> {
+        let mut rates = vec![0.0f64; self.places.len()];
+        let first = row.saturating_sub(1).max(piece.start);
+        let last = (row + 1).min(piece.start + piece.rows - 1);
+        for at in first..last {
+            let gap = window.times[at + 1] - window.times[at];
+            let pairs = self
+                .values(window, at)
+                .into_iter()
+                .zip(self.values(window, at + 1));
+            for (rate, (before, after)) in rates.iter_mut().zip(pairs) {
+                *rate = rate.max((after - before).abs() / gap);
+            }
+        }
+        rates
+    }
+
+    fn steepest(&self, window: &Window, piece: Piece) -> Vec<f64> {
+        let mut steepest = vec![0.0f64; self.places.len()];
+        for row in piece.start..piece.start + piece.rows - 1 {
+            let gap = window.times[row + 1] - window.times[row];
+            let pairs = self
+                .values(window, row)
+                .into_iter()
+                .zip(self.values(window, row + 1));
+            for (rate, (before, after)) in steepest.iter_mut().zip(pairs) {
+                *rate = rate.max((after - before).abs() / gap);
+            }
+        }
+        steepest
+    }
+}
+
+impl Linear {
+    /// What noise of the states can do to a channel.
+    pub(super) fn observe_noise(
+        &self,
+        channel: usize,
+        noise: &[f64],
+        unit: f64,
+        states: &[f64],
+    ) -> f64 {
+        let output = channel
+            .checked_sub(self.size())
+            .and_then(|o| self.outputs.get(o));
+        let Some((row, _, _)) = output else {
+            return noise.get(channel).copied().unwrap_or(0.0);
+        };
+        let terms = row.iter().zip(noise).zip(states);
+        terms
+            .map(|((c, noise), state)| c.abs() * (noise + 8.0 * unit * state))
+            .sum()
+    }
+}
+
+/// The leading corner of a matrix.
+fn corner(matrix: &Matrix<f64>, size: usize) -> Matrix<f64> {
+    let mut corner = Matrix::zero(size);
+    for i in 0..size {
+        for j in 0..size {
+            corner[(i, j)] = matrix[(i, j)];
+        }
+    }
+    corner
+}
+
+fn to_the_power(matrix: &Matrix<f64>, count: u64) -> Matrix<f64> {
+    let mut power = identity(matrix.size());
+    let mut block = matrix.clone();
+    let mut rest = count;
+    while rest > 0 {
+        if rest & 1 == 1 {
+            power = block.product(&power);
+        }
+        rest >>= 1;
+        if rest > 0 {
+            block = block.product(&block);
+        }
+    }
+    power
+}
+
+pub(super) fn identity(size: usize) -> Matrix<f64> {
+    let mut identity = Matrix::zero(size);
+    for i in 0..size {
+        identity[(i, i)] = 1.0;
+    }
+    identity
+}
+
+/// `C^m` and `sum_(j<m) |C^j|`, by doubling: `S_2a = S_a + |C^a| S_a`, which is an upper
+/// bound.
+fn repeated(companion: &Matrix<f64>, count: u64) -> (Matrix<f64>, Matrix<f64>) {
+    let size = companion.size();
+    let (mut power, mut sum) = (identity(size), Matrix::zero(size));
+    // The block that is doubled, and what has been put together of blocks so far.
+    let (mut block, mut block_sum) = (companion.clone(), identity(size));
+    let mut rest = count;
+    while rest > 0 {
+        if rest & 1 == 1 {
+            // sum over the block first, then over what is already there, shifted by it.
+            let shifted = block.map(f64::abs).product(&sum);
+            sum = block_sum.zip(&shifted, |a, b| a + b);
+            power = block.product(&power);
+        }
+        rest >>= 1;
+        if rest > 0 {
+            let shifted = block.map(f64::abs).product(&block_sum);
+            block_sum = block_sum.zip(&shifted, |a, b| a + b);
+            block = block.product(&block);
+        }
+    }
+    (power, sum)
+}
