@@ -33,14 +33,14 @@
 //! | [`trajectory`] | text files to rows, with what their digits resolve |
 //! | [`submission`] | `submission.toml`, the search, columns and units |
 //! | [`compare`] | errors, coverage, observed orders |
-//! | [`method`] | the catalogue of integration methods |
+//! | [`method`] | the catalogue of integration methods, their order and stability |
 //! | [`judge`] | verdicts |
 //! | [`explain`] | sentences: what, where, how to mend it |
 //! | [`outcome`] | results as plain data |
 //! | [`report`] | terminal, JSON, CSV |
 //! | [`audit`] | the pipeline on one screen |
 //! | [`cli`] | arguments, plan, printing, exit status |
-//! | [`references`] | the published sources that doc comments cite |
+//! | [`references`] | the published sources that doc comments and methods cite |
 
 #![deny(missing_docs)]
 #![forbid(unsafe_code)]

@@ -5,6 +5,10 @@ use crate::judge::Verdict;
 use crate::submission::{Expect, Role, Setting, Submission};
 use crate::trajectory::Finding;
 
+mod methods;
+
+pub use methods::{AliasFacts, Factor, FormFacts, MethodFacts, SourceFacts, Written};
+
 /// A whole audit.
 #[derive(Clone, Debug, Default)]
 pub struct Outcome {

@@ -35,6 +35,8 @@ pub enum Command {
     Case(CaseArguments),
     /// Writes exact values of a case as CSV
     Exact(ExactArguments),
+    /// Lists integration methods, or shows one in full: coefficients, stability, source
+    Methods(MethodsArguments),
 }
 
 /// Where cases come from.
@@ -153,6 +155,20 @@ pub struct ExactArguments {
     /// Where to evaluate.
     #[command(flatten)]
     pub times: Times,
+}
+
+/// Arguments of `methods`.
+#[derive(Debug, Args)]
+#[command(after_help = "\
+Example: everything that goes by a name
+  stepgauge methods RK4")]
+pub struct MethodsArguments {
+    /// The method, by any of its names; quotes are not needed
+    #[arg(value_name = "NAME")]
+    pub name: Vec<String>,
+    /// Prints one name a line
+    #[arg(long, conflicts_with = "name")]
+    pub names: bool,
 }
 
 /// Where to evaluate: one of these.

@@ -5,7 +5,9 @@ use std::process::ExitCode;
 
 use super::args::{
     Arguments, AuditArguments, CaseArguments, CaseChoice, CasesArguments, Command, ExactArguments,
+    MethodsArguments,
 };
+use super::methods::methods_text;
 use super::plan;
 use crate::audit::audit;
 use crate::case::{Case, Library, Replacements};
@@ -59,6 +61,7 @@ pub fn run(arguments: &Arguments) -> ExitCode {
         Command::Cases(arguments) => run_cases(arguments),
         Command::Case(arguments) => run_case(arguments),
         Command::Exact(arguments) => run_exact(arguments),
+        Command::Methods(arguments) => run_methods(arguments),
     };
     let status = match result {
         Ok(status) => status,
@@ -168,6 +171,11 @@ fn run_exact(arguments: &ExactArguments) -> Result<u8, Stop> {
         at_stamps(path, &mut write)?;
     }
     writer.finish()?;
+    Ok(IN_ORDER)
+}
+
+fn run_methods(arguments: &MethodsArguments) -> Result<u8, Stop> {
+    print(&methods_text(arguments, screen())?)?;
     Ok(IN_ORDER)
 }
 

@@ -123,6 +123,7 @@ pub fn evidence(
         pieces,
         targets: targets(record),
         orders: rank_orders(linear),
+        gauss: super::find("Gauss 6").map(|method| method.schemes[0].coefficients()),
         exact: exact.holds(),
         claimed,
         claimed_steps,
@@ -284,6 +285,7 @@ struct Search<'a> {
     pieces: Vec<Piece>,
     targets: Vec<Target>,
     orders: Vec<Ranks>,
+    gauss: Option<Coefficients>,
     /// The file cannot be told from the exact solution.
     exact: bool,
     claimed: &'a [&'static Method],
@@ -292,6 +294,11 @@ struct Search<'a> {
 }
 
 impl Search<'_> {
+    /// A step of high order, for starts.
+    fn reference(&self, step: f64) -> Option<Recurrence> {
+        Recurrence::new(self.gauss.as_ref()?, self.linear, step, &Ranks::new())
+    }
+
     fn method(&mut self, method: &'static Method, reading: Reading) {
         for scheme in method.schemes {
             let coefficients = scheme.coefficients();
@@ -410,7 +417,7 @@ impl Search<'_> {
         let memory = trial.recurrence.back() > 1;
         if memory && (trial.steps > 1 || !self.complete) {
             let step = spacing / trial.steps as f64;
-            return match reference(self.linear, step) {
+            return match self.reference(step) {
                 Some(reference) => with_hidden_start(trial, &reference, self.record, &self.pieces),
                 None => Fit::NOTHING,
             };
@@ -539,7 +546,7 @@ impl Search<'_> {
         let start = self.linear.start.clone();
         let mut known = vec![start.clone()];
         if memory > 0 {
-            let reference = reference(self.linear, step)?;
+            let reference = self.reference(step)?;
             let mut first = March::new(&reference, self.linear, Sides::After, [start], origin, 0);
             for _ in 0..memory {
                 known.push(first.step().to_vec());
@@ -617,13 +624,6 @@ impl Search<'_> {
                 print
             })
     }
-}
-
-/// A step of high order, for starts.
-fn reference(linear: &Linear, step: f64) -> Option<Recurrence> {
-    let method = super::find("Gauss 6")?;
-    let coefficients = method.schemes[0].coefficients();
-    Recurrence::new(&coefficients, linear, step, &Ranks::new())
 }
 
 /// The errors of a method beside those of the file.

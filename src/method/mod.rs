@@ -2,11 +2,12 @@
 //! stability), what each would have written on a linear model, and from that the evidence
 //! which method and step wrote a file.
 //!
-//! `catalogue` and `scheme` hold the coefficients, `stability` what follows from them
-//! alone; `linear` and `recurrence` turn a method, a step and a case into matrices;
-//! `record` is what is kept of a file and `evidence` lays the two beside each other.
+//! `catalogue` and `scheme` hold the coefficients, `stability` and `characteristic` what
+//! follows from them alone; `linear` and `recurrence` turn a method, a step and a case into
+//! matrices; `record` is what is kept of a file and `evidence` lays the two beside each other.
 
 mod catalogue;
+mod characteristic;
 mod drive;
 mod evidence;
 mod linear;
@@ -19,6 +20,7 @@ mod starts;
 mod trial;
 
 pub use catalogue::{METHODS, Method, find, find_all};
+pub use characteristic::Characteristic;
 pub use drive::Drive;
 pub use evidence::{Evidence, Family, MOST_STEPS, Tried, evidence};
 pub use linear::{Linear, Side, Signal};

@@ -1,7 +1,7 @@
 //! The coefficients of methods: written as rationals and surds, read as numbers.
 
 use crate::formula::Formula;
-use crate::number::Double;
+use crate::number::{Decimal, Double};
 
 /// What a method does in one step, as text of exact coefficients: entries are separated
 /// by blanks, rows by semicolons; missing entries at the end of a row are zero.
@@ -197,6 +197,10 @@ fn sum(row: &[Double]) -> Double {
 /// one that is no formula counts as not a number instead of ending the program.
 fn list(text: &str) -> Vec<Double> {
     let number = |entry: &str| {
+        // A formula takes its numbers as f64, as a case does.
+        if let Some(decimal) = Decimal::parse(entry) {
+            return decimal.to_double();
+        }
         let formula = Formula::parse(entry, &|_| None).ok();
         let value = formula.and_then(|formula| formula.evaluate::<Double>(&[]).ok());
         value.unwrap_or(Double::from(f64::NAN))

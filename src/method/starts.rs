@@ -35,44 +35,74 @@ pub(super) fn with_hidden_start(
     let (size, back) = (linear.size(), trial.recurrence.back());
     let unknowns = size * (back - 1);
     let complete = record.states(size).is_some();
-    let Some(window) = record.windows.first() else {
+    let Some(first_window) = record.windows.first() else {
         return Fit::NOTHING;
     };
+    let per_row = trial.stacked().pow(3) + trial.stacked().pow(2) * unknowns;
+    let most = MOST_ROWS.min(MOST_WORK / per_row.max(1));
     // An input that jumps at the very start leaves the first row out of every piece.
     let (from, at_start) = (linear.window.0, NEAR * trial.recurrence.step);
     let jumps_at_start = linear.jumps_within(from - at_start, from + at_start);
-    // Through jumps where there is no choice; with all states only up to the first.
-    let reach = match pieces.first() {
-        Some(piece)
-            if complete && piece.window == 0 && piece.start <= usize::from(jumps_at_start) =>
-        {
-            piece.start + piece.rows
-        }
-        _ if complete => return Fit::NOTHING,
-        _ => window.rows(),
+    let begins = |piece: &Piece| {
+        first_window.first == 0 && piece.window == 0 && piece.start <= usize::from(jumps_at_start)
     };
-    let per_row = trial.stacked().pow(3) + trial.stacked().pow(2) * unknowns;
-    let rows = reach.min(MOST_ROWS).min(MOST_WORK / per_row.max(1));
-    let equations = rows.saturating_sub(1) * record.width();
-    if equations < unknowns + 8 {
-        return Fit::NOTHING;
-    }
-    let fit = |sides: Sides| {
-        let system = System::new(trial, reference, record, rows, complete, sides);
-        system.map_or(Fit::NOTHING, |system| system.solve(record))
+    let stretch = |window: usize, begin: usize, rows: usize, from_start: bool| Stretch {
+        window: &record.windows[window],
+        begin,
+        rows: rows.min(most),
+        from_start,
+        complete,
     };
-    let plain = fit(Sides::After);
-    if plain.holds() || complete && !jumps_at_start {
-        return plain;
-    }
-    let others = [Sides::Before, Sides::Own].map(fit);
-    others.into_iter().fold(plain, |best, other| {
-        if other.compared > 0 && other.ratio < best.ratio {
-            other
-        } else {
-            best
+    let enough = |stretch: &Stretch| {
+        let unknowns = unknowns + if stretch.from_start { 0 } else { size };
+        stretch.rows.saturating_sub(1) * record.width() >= unknowns + 8
+    };
+    // Through jumps where there is no choice; with all states only up to the first, or,
+    // where that comes too soon, from any row between two jumps.
+    let start = match pieces.first() {
+        _ if !complete => Some(stretch(0, 0, first_window.rows(), true)),
+        Some(piece) if begins(piece) => Some(stretch(0, 0, piece.start + piece.rows, true)),
+        _ => None,
+    };
+    if let Some(start) = start.filter(enough) {
+        let fit = |sides: Sides| {
+            let system = System::new(trial, reference, record, &start, sides);
+            system.map_or(Fit::NOTHING, |system| system.solve(record))
+        };
+        let plain = fit(Sides::After);
+        if plain.holds() || complete && !jumps_at_start {
+            return plain;
         }
-    })
+        let others = [Sides::Before, Sides::Own].map(fit);
+        return others.into_iter().fold(plain, |best, other| {
+            if other.compared > 0 && other.ratio < best.ratio {
+                other
+            } else {
+                best
+            }
+        });
+    }
+    // A program may have begun anew after the jump: so many rows are of its start.
+    let skip = (back as u64 - 1).div_ceil(trial.steps) as usize;
+    let longest = pieces.iter().max_by_key(|piece| piece.rows);
+    let later = longest
+        .filter(|piece| piece.rows > skip)
+        .map(|piece| stretch(piece.window, piece.start + skip, piece.rows - skip, false));
+    let later = later.filter(|later| complete && enough(later));
+    let system =
+        later.and_then(|later| System::new(trial, reference, record, &later, Sides::After));
+    system.map_or(Fit::NOTHING, |system| system.solve(record))
+}
+
+/// The rows that are compared.
+struct Stretch<'a> {
+    window: &'a Window,
+    begin: usize,
+    rows: usize,
+    /// The first of them is the known start of the case, else it is as unknown as the
+    /// hidden states after it.
+    from_start: bool,
+    complete: bool,
 }
 
 /// Weighted equations for the correction of the hidden states.
@@ -88,42 +118,45 @@ impl System {
         trial: &Trial,
         reference: &Recurrence,
         record: &Record,
-        rows: usize,
-        complete: bool,
+        stretch: &Stretch,
         sides: Sides,
     ) -> Option<System> {
         let linear = trial.linear;
         let (size, stacked) = (linear.size(), trial.stacked());
-        let unknowns = stacked - size;
+        let (window, begin) = (stretch.window, stretch.begin);
+        let offset = if stretch.from_start { size } else { 0 };
+        let unknowns = stacked - offset;
         let memory = trial.recurrence.back() as u64 - 1;
-        let window = record.windows.first()?;
-        let origin = window.times[0];
+        let origin = window.times[begin];
         let at = |count: u64| origin + count as f64 * trial.recurrence.step;
-        // States 0 to memory: the first is the start of the case, the others are hidden.
-        let mut first = March::new(reference, linear, sides, [linear.start.clone()], origin, 0);
-        let mut known = vec![linear.start.clone()];
+        let start = if stretch.from_start {
+            linear.start.clone()
+        } else {
+            let places = record.states(size)?;
+            let row = &window.values[begin * record.width()..];
+            places.iter().map(|&place| row[place]).collect()
+        };
+        // States 0 to memory, a first guess that is corrected.
+        let mut first = March::new(reference, linear, sides, [start.clone()], origin, 0);
+        let mut known = vec![start];
         for _ in 0..memory {
             known.push(first.step().to_vec());
         }
         let mut stack: Vec<f64> = known.iter().flatten().copied().collect();
-        // How the hidden states act on the stack.
-        let mut effect = DMatrix::from_fn(
-            stacked,
-            unknowns,
-            |i, u| {
-                if i == u + size { 1.0 } else { 0.0 }
-            },
-        );
+        // How the unknown states act on the stack.
+        let unit = |i: usize, u: usize| if i == u + offset { 1.0 } else { 0.0 };
+        let mut effect = DMatrix::from_fn(stacked, unknowns, unit);
         let across = to_dense(trial.across());
         let mut allowance = Allowance::new(trial);
         let mut step = memory;
         let (mut lines, mut right, mut of_row) = (Vec::new(), Vec::new(), Vec::new());
         let peaks = record.peaks();
-        for row in 1..rows {
-            if !record.follows(window, row) {
+        for count in usize::from(stretch.from_start)..stretch.rows {
+            let row = begin + count;
+            if count > 0 && !record.follows(window, row) {
                 break;
             }
-            let wanted = row as u64 * trial.steps;
+            let wanted = count as u64 * trial.steps;
             if wanted > step {
                 let count = wanted - step;
                 stack = trial.advance(&stack, at(step), count, sides);
@@ -146,14 +179,14 @@ impl System {
             } else {
                 &stack[stacked - size..]
             };
-            allowance.next_row(state);
+            allowance.next_row(state, window.first + row as u64);
             let time = window.times[row];
             let near = NEAR * trial.recurrence.step;
-            if !complete && linear.jumps_within(time - near, time + near) {
+            if !stretch.complete && linear.jumps_within(time - near, time + near) {
                 continue;
             }
             for (column, &channel) in record.channels.iter().enumerate() {
-                if complete && channel >= size {
+                if stretch.complete && channel >= size {
                     continue;
                 }
                 let at = row * record.width() + column;
@@ -169,7 +202,7 @@ impl System {
                 let effect_on = |u: usize| {
                     let of_state = |i: usize| {
                         if hidden_row {
-                            if place + i == u + size { 1.0 } else { 0.0 }
+                            unit(place + i, u)
                         } else {
                             effect[(place + i, u)]
                         }
@@ -192,29 +225,34 @@ impl System {
         })
     }
 
-    fn solve(mut self, record: &Record) -> Fit {
+    /// The least sum of squares, as what is left of the right side across the columns.
+    fn solve(self, record: &Record) -> Fit {
+        let (equations, unknowns) = self.matrix.shape();
+        let mut matrix = self.matrix;
         // Columns of equal length: parasitic modes die out within a few steps.
-        for mut column in self.matrix.column_iter_mut() {
+        for mut column in matrix.column_iter_mut() {
             let length = column.norm();
             if length > 0.0 {
                 column /= length;
             }
         }
-        let decomposed = self.matrix.clone().svd(true, true);
-        let largest = decomposed.singular_values.max();
-        let Ok(correction) = decomposed.solve(&self.right, 1e-13 * largest) else {
-            return Fit::NOTHING;
-        };
-        let rest = &self.right - &self.matrix * correction;
-        let equations = self.of_row.len();
+        let mut right = self.right;
+        matrix.qr().q_tr_mul(&mut right);
+        let rest = right.rows(unknowns, equations - unknowns).norm_squared();
+        let ratio = (rest / equations as f64).sqrt();
         let peaks = record.peaks();
-        let mut fit = Fit::NOTHING;
-        for (residual, &(place, allowed)) in rest.iter().zip(&self.of_row) {
-            // The share of a single row tells nothing: only the sum is bounded.
-            fit.add(residual.abs() * allowed, f64::INFINITY, peaks[place]);
+        let shares = self
+            .of_row
+            .iter()
+            .filter(|(column, _)| peaks[*column] > 0.0);
+        let share = shares.fold(0.0f64, |sum, &(column, allowed)| {
+            sum + allowed / peaks[column]
+        });
+        Fit {
+            ratio,
+            residual: ratio * share / equations as f64,
+            compared: equations,
         }
-        fit.ratio = (rest.norm_squared() / equations as f64).sqrt();
-        fit
     }
 }
 
@@ -228,7 +266,6 @@ struct Allowance<'t, 'a> {
     power: Matrix<f64>,
     gathered: Vec<f64>,
     states: Vec<f64>,
-    row: u64,
 }
 
 impl<'t, 'a> Allowance<'t, 'a> {
@@ -239,22 +276,20 @@ impl<'t, 'a> Allowance<'t, 'a> {
             power: identity(stacked),
             gathered: vec![0.0; stacked],
             states: trial.linear.start.iter().map(|x| x.abs()).collect(),
-            row: 0,
         }
     }
 
-    fn next_row(&mut self, state: &[f64]) {
+    fn next_row(&mut self, state: &[f64], row: u64) {
         for (largest, x) in self.states.iter_mut().zip(state) {
             *largest = largest.max(x.abs());
         }
-        let noise = self.trial.noise_between_rows(&self.states, self.row);
+        let noise = self.trial.noise_between_rows(&self.states, row);
         let carried = self.power.map(f64::abs).apply(&noise);
         self.gathered
             .iter_mut()
             .zip(carried)
             .for_each(|(sum, x)| *sum += x);
         self.power = self.trial.across().product(&self.power);
-        self.row += 1;
     }
 
     fn of(&self, linear: &Linear, channel: usize) -> f64 {

@@ -6,6 +6,7 @@
 //! [`Double`] is not good enough. Sources: `[dekker-1971]`, `[hida-li-bailey-2001]`,
 //! `[higham-2005]` in [`crate::references`].
 
+mod closed;
 mod conversion;
 mod decimal;
 mod double;
@@ -16,6 +17,7 @@ mod quad;
 mod real;
 mod short;
 
+pub use closed::{closed_form, fraction};
 pub use conversion::Conversion;
 pub use decimal::Decimal;
 pub use double::Double;

@@ -123,6 +123,19 @@ fn exit_statuses_and_complaints() {
             2,
             "/none: there is no such file",
         ),
+        (vec!["methods"], 0, ""),
+        (vec!["methods", "--names"], 0, ""),
+        (vec!["methods", "--names", "RK4"], 2, "cannot be used with"),
+        (
+            vec!["methods", "forwrd", "Euler"],
+            2,
+            "there is no method `forwrd Euler`\n  help: did you mean `forward Euler`",
+        ),
+        (
+            vec!["methods", "\u{1b}[31mzzzzzz"],
+            2,
+            "there is no method `\\u{1b}[31mzzzzzz`\n  help: `stepgauge methods` lists all",
+        ),
         (vec!["audit"], 2, "required"),
         (
             vec!["audit", "/none"],
@@ -160,5 +173,91 @@ fn every_case_shows_itself_and_its_numbers() {
         assert!(
             json["shortest_time_constant"].is_number() || json["shortest_time_constant"].is_null()
         );
+    }
+}
+
+#[test]
+fn every_method_shows_itself_under_every_name() {
+    let (status, names, _) = stepgauge(&["methods", "--names"]);
+    assert_eq!(status, 0);
+    let listed: Vec<&str> = names.lines().collect();
+    let methods = stepgauge::method::METHODS;
+    let known: Vec<&str> = methods.iter().map(|method| method.name).collect();
+    assert_eq!(listed, known);
+    let (_, table, _) = stepgauge(&["methods"]);
+    for method in methods {
+        assert!(table.contains(&format!("{} ", method.name)), "{table}");
+        let (status, text, complaints) = stepgauge(&["methods", method.name]);
+        assert_eq!((status, complaints.as_str()), (0, ""), "{}", method.name);
+        assert!(text.is_ascii(), "{} in the C locale: {text}", method.name);
+        let heading = format!("{}: order {}\n", method.name, method.order);
+        assert!(text.contains(&heading), "{text}");
+        for alias in method.aliases {
+            let (status, other, _) = stepgauge(&["methods", alias]);
+            assert_eq!(status, 0, "{alias}");
+            assert!(other.contains(&heading), "{alias}: {other}");
+        }
+    }
+}
+
+#[test]
+fn a_name_of_several_methods_shows_all_of_them() {
+    // Words need no quotes, case and hyphens do not count.
+    let (status, text, _) = stepgauge(&["methods", "runge-kutta", "2"]);
+    assert_eq!(status, 0);
+    let first = "`runge-kutta 2` is a name of 3 methods: explicit midpoint; Heun; Ralston\n";
+    assert!(text.starts_with(first), "{text}");
+    for heading in [
+        "explicit midpoint: order 2",
+        "Heun: order 2",
+        "Ralston: order 2",
+    ] {
+        assert!(text.contains(&format!("\n{heading}\n")), "{text}");
+    }
+    assert_eq!(text.matches("  f = 1 + z + z^2/2\n").count(), 3);
+}
+
+// Source: tests/it/published/stability.rs has these numbers with their sources.
+#[test]
+fn methods_print_published_numbers() {
+    for (name, lines) in [
+        (
+            "RK4",
+            &[
+                "  1/2 | 0    1/2\n",
+                "  f = 1 + z + z^2/2 + z^3/6 + z^4/24\n",
+                "  negative real axis: down to -2.785293563\n",
+                "  imaginary axis: up to 2.828427125\n",
+                "  A-stable: no\n",
+            ][..],
+        ),
+        (
+            "Radau IIA 3",
+            &[
+                "  f = (1 + z/3) / (1 - 2/3 z + z^2/6)\n",
+                "  f - exp(z) = -z^4/72 + ...\n",
+                "  L-stable: yes\n",
+                "IV.5 [hairer-wanner-1996]\n",
+            ],
+        ),
+        (
+            "RKF4",
+            &["  f = 1 + z + z^2/2 + z^3/6 + z^4/24 + z^5/104\n"],
+        ),
+        (
+            "BDF 3",
+            &[
+                "  n - 1  9/11    0\n",
+                "  (1 - 6/11 z) f^3 - 18/11 f^2 + 9/11 f - 2/11 = 0\n",
+                "  f - exp(z) = z^4/4 + ...\n",
+                "  sector: 86.03236686 degrees",
+            ],
+        ),
+        ("AB2", &["  f - exp(z) = -5/12 z^3 + ...\n"]),
+    ] {
+        let (_, text, _) = stepgauge(&["methods", name]);
+        for line in lines {
+            assert!(text.contains(line), "{name}: {line}: {text}");
+        }
     }
 }

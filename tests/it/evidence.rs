@@ -30,7 +30,7 @@ fn probe() {
     let mut bad = 0;
     let mut count = 0;
     let t0 = std::time::Instant::now();
-    for name in names.iter() {
+    for name in names.iter().filter(|n| std::env::var("ONLY").map_or(true, |o| n.contains(&o))) {
         let case = library.load(name, &Default::default()).unwrap();
         let linear = Linear::new(&case);
         if linear.size() > 4 {
@@ -63,12 +63,20 @@ fn probe() {
                     };
                     let (times, states) = run.states();
                     let record = record(&case, &times, &states, spacing, digits);
-                    let t1 = std::time::Instant::now(); let found = evidence(&linear, &record, &[method], &[steps]); let dt = t1.elapsed().as_secs_f64(); if dt > 0.2 { println!("slow {name} {} x{steps} {digits} {dt}", method.name); }
+                    let t1 = std::time::Instant::now();
+                    let found = evidence(&linear, &record, &[method], &[steps]);
+                    let dt = t1.elapsed().as_secs_f64();
+                    if dt > 0.2 {
+                        println!("slow {name} {} x{steps} {digits} {dt}", method.name);
+                    }
                     count += 1;
                     let hit = found.consistent.iter().find(|f| {
-                        (f.range.0..=f.range.1).contains(&steps) && f.methods.iter().any(|m| m.name == method.name)
+                        (f.range.0..=f.range.1).contains(&steps)
+                            && f.methods.iter().any(|m| m.name == method.name)
                     });
-                    let at = found.best(&[method], Some(steps)); let _ = hit; if !at.is_some_and(|t| t.fit.holds()) {
+                    let at = found.best(&[method], Some(steps));
+                    let _ = hit;
+                    if !at.is_some_and(|t| t.fit.holds()) {
                         bad += 1;
                         if bad < 60 {
                             let best = found.best(&[method], None).map(|t| (t.steps, t.fit));

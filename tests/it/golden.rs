@@ -70,13 +70,46 @@ fn cases_and_help() {
         "case.json",
         &screen(&[case[0], case[1], "--json"], "C", "100"),
     );
-    for command in ["audit", "cases", "case", "exact"] {
+    for command in ["audit", "cases", "case", "exact", "methods"] {
         compare(
             &format!("help-{command}.txt"),
             &screen(&[command, "--help"], "C.UTF-8", "100"),
         );
     }
     compare("help.txt", &screen(&["--help"], "C.UTF-8", "100"));
+}
+
+#[test]
+fn methods() {
+    for (name, locale, columns) in [
+        ("methods-80-ascii.txt", "C", "80"),
+        ("methods-100.txt", "C.UTF-8", "100"),
+        ("methods-200.txt", "C.UTF-8", "200"),
+    ] {
+        let found = screen(&["methods"], locale, columns);
+        compare(name, &found);
+        let width: usize = columns.parse().unwrap();
+        let widest = found.lines().map(|line| line.chars().count()).max();
+        assert!(widest.unwrap() <= width, "{name} is {widest:?} wide");
+        assert_eq!(locale == "C", found.is_ascii(), "{name}");
+    }
+    // A tableau, several methods under one name, surds, coefficients too long for a line,
+    // both kinds of several steps, linearly implicit stages, no coefficients at all.
+    for (file, name) in [
+        ("method-dormand-prince-5.txt", "Dormand-Prince 5"),
+        ("method-rk2.txt", "RK2"),
+        ("method-radau-iia-5.txt", "Radau IIA 5"),
+        ("method-sdirk-3.txt", "SDIRK 3"),
+        ("method-bdf-4.txt", "BDF 4"),
+        ("method-abm-3.txt", "ABM3"),
+        ("method-rosenbrock-2.txt", "Rosenbrock 2"),
+        ("method-semi-implicit-euler.txt", "semi-implicit Euler"),
+        ("method-exponential-euler.txt", "exponential Euler"),
+    ] {
+        let found = screen(&["methods", name], "C.UTF-8", "100");
+        compare(file, &found);
+        assert!(found.lines().all(|line| line.chars().count() <= 100));
+    }
 }
 
 #[test]

@@ -38,3 +38,6 @@ mod broken;
 
 /// Ways to an undeserved pass, closed.
 mod cheats;
+
+/// Every method of the catalogue: its order, its stability as published.
+mod methods;

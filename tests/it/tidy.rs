@@ -88,7 +88,9 @@ fn allowed() -> BTreeMap<&'static str, Vec<&'static str>> {
                 "audit",
                 "case",
                 "exact",
+                "method",
                 "outcome",
+                "references",
                 "report",
                 "submission",
                 "trajectory",
@@ -191,6 +193,45 @@ fn the_top_level_holds_what_it_should() {
             allowed.contains(&name.as_str()),
             "{name} does not belong at the top level"
         );
+    }
+}
+
+/// Tags look like `[author-author-1996]`; what the code cites is in the list, what is in
+/// the list is cited, and the list is in order.
+#[test]
+fn every_tag_resolves_and_every_source_is_cited() {
+    use stepgauge::references::{SOURCES, source};
+
+    let is_tag = |text: &str| {
+        let plain = |c: char| c.is_ascii_lowercase() || c.is_ascii_digit() || c == '-';
+        let numbered = text.rsplit_once('-').is_some_and(|(names, year)| {
+            !names.is_empty() && year.len() >= 3 && year.chars().all(|c| c.is_ascii_digit())
+        });
+        numbered && text.chars().all(plain)
+    };
+    let mut cited = std::collections::BTreeSet::new();
+    for (path, text) in sources() {
+        if path.ends_with("references.rs") {
+            continue;
+        }
+        for part in text.split('[').skip(1) {
+            let tag = part.split(']').next().unwrap();
+            if is_tag(tag) {
+                let found = source(tag);
+                assert!(found.is_some(), "src/{}: [{tag}]", path.display());
+                cited.insert(tag.to_owned());
+            }
+        }
+    }
+    let tags: Vec<&str> = SOURCES.iter().map(|&(tag, _)| tag).collect();
+    assert!(tags.is_sorted());
+    assert_eq!(tags, cited.iter().collect::<Vec<_>>());
+    // Every source of a method is spelled out.
+    for method in stepgauge::method::METHODS {
+        let tags = method.source.split('[').skip(1);
+        let tags: Vec<&str> = tags.map(|part| part.split(']').next().unwrap()).collect();
+        assert!(!tags.is_empty(), "{}", method.name);
+        assert!(tags.iter().all(|tag| source(tag).is_some()), "{tags:?}");
     }
 }
 

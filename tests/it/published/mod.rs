@@ -15,6 +15,7 @@ mod exponential;
 mod first_order;
 mod growth;
 mod second_order;
+mod stability;
 mod worked;
 
 use std::collections::BTreeSet;
@@ -24,6 +25,8 @@ use stepgauge::exact::Exact;
 use stepgauge::number::Double;
 
 use crate::digits::read;
+
+pub use stability::order_conditions;
 
 /// The solution of states `[name, start, rate]` from zero to `to`; `rest` holds tables
 /// of inputs, outputs and parameters.
@@ -143,6 +146,7 @@ fn at_least_fifty_entries_are_covered() {
         (first_order::ENTRIES, include_str!("first_order.rs")),
         (second_order::ENTRIES, include_str!("second_order.rs")),
         (decay::ENTRIES, include_str!("decay.rs")),
+        (stability::ENTRIES, include_str!("stability.rs")),
     ];
     let mut all = BTreeSet::new();
     for (entries, source) in modules {
