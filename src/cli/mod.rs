@@ -3,6 +3,7 @@
 mod args;
 mod plan;
 mod run;
+mod steps;
 
 pub use args::Arguments;
 pub use run::run;
