@@ -2,10 +2,11 @@
 //! the largest step that keeps the limits, the largest that is stable, and steps that
 //! hit every jump of the inputs.
 //!
-//! `run` is one run at one step, `stable` what the eigenvalues say, `jumps` the arithmetic
+//! `run` is one run at one step, `nodes` where it is compared, `stable` what the eigenvalues say, `jumps` the arithmetic
 //! of the times of jumps; here is the search and the table.
 
 mod jumps;
+mod nodes;
 mod run;
 mod stable;
 
@@ -76,8 +77,8 @@ pub fn steps(question: &Question, methods: &[&Method], stated: &[Double]) -> Ste
         })
         .collect();
     let grids = if stated.is_empty() {
-        let largest = answers.iter().map(|(_, _, largest)| largest);
-        ladder(question, largest)
+        let largest: Vec<&LargestStep> = answers.iter().map(|(_, _, l)| l).collect();
+        ladder(question, &largest)
     } else {
         let mut grids: Vec<Grid> = stated.iter().map(|&h| question.filled(h)).collect();
         grids.sort_by(|a, b| b.step.to_f64().total_cmp(&a.step.to_f64()));
@@ -194,9 +195,10 @@ fn rule(
 }
 
 /// Windows in 5, 10, 20, 50, ... steps, until every method keeps the limits.
-fn ladder<'a>(question: &Question, largest: impl Iterator<Item = &'a LargestStep>) -> Vec<Grid> {
-    let needed = |l: &LargestStep| l.kept.as_ref().map_or(l.most_steps, |kept| kept.steps);
-    let needed = largest.map(needed).max().unwrap_or(0);
+fn ladder(question: &Question, largest: &[&LargestStep]) -> Vec<Grid> {
+    let needed = |l: &&LargestStep| l.kept.as_ref().map_or(l.most_steps, |kept| kept.steps);
+    let needed = largest.iter().map(needed).max().unwrap_or(0);
+    let most = largest.iter().map(|l| l.most_steps).max().unwrap_or(0);
     let mut grids = Vec::new();
     let mut decade = 1;
     loop {
@@ -204,8 +206,11 @@ fn ladder<'a>(question: &Question, largest: impl Iterator<Item = &'a LargestStep
             if count < FIRST_RUNG {
                 continue;
             }
+            if count > most {
+                return grids;
+            }
             grids.push(question.divided(count));
-            if count >= needed || count >= MOST_STEPS {
+            if count >= needed {
                 return grids;
             }
         }
