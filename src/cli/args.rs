@@ -185,7 +185,7 @@ Example: two methods at a limit of one's own
 
 Methods are really run over the window; inputs are read as `t >= at` at a jump.
 At most 200000 steps are run, fewer where a case has many states. Runs of more
-than 4000 steps are compared at about 4000 nodes.")]
+than 3000 steps are compared at some 3000 nodes.")]
 pub struct StepsArguments {
     /// Which case.
     #[command(flatten)]

@@ -1,5 +1,7 @@
 //! Which step a case needs, for reading: the answer, error against step, jumps.
 
+use comfy_table::ColumnConstraint;
+
 use super::style::{Screen, Tone, coloured, toned};
 use super::table::used_text;
 use crate::case::Case;
@@ -83,6 +85,12 @@ fn answers(outcome: &StepsOutcome, screen: Screen) -> String {
     headings.extend(scales.iter().map(|(heading, _)| *heading));
     headings.extend(with_jumps.then_some(">jumps missed"));
     let mut table = screen.table(&headings);
+    for index in 0..headings.len().min(6) {
+        // Names and numbers are not torn apart; the other headings go over two lines.
+        if let Some(column) = table.column_mut(index) {
+            column.set_constraint(ColumnConstraint::ContentWidth);
+        }
+    }
     for method in &outcome.methods {
         let largest = &method.largest;
         let kept = largest.kept.as_ref();
@@ -140,14 +148,30 @@ fn notes(case: &Case, outcome: &StepsOutcome) -> Vec<String> {
             .collect();
         names.join(", ")
     };
-    for method in methods().filter(|method| method.largest.kept.is_none()) {
-        let most = method.largest.most_steps;
+    let failed = |m: &MethodSteps| m.largest.kept.is_none();
+    let mut bounds: Vec<u64> = methods()
+        .filter(|m| failed(m))
+        .map(|m| m.largest.most_steps)
+        .collect();
+    bounds.sort_unstable();
+    bounds.dedup();
+    for most in bounds {
         let length = (case.time.to - case.time.from).to_f64();
         notes.push(format!(
             "{}: {most} steps, one every {} {}, do not keep the limit; more are not run",
-            method.name,
+            names(&|m| failed(m) && m.largest.most_steps == most),
             short(length / most as f64),
             case.time.unit
+        ));
+    }
+    let better = names(&|m| {
+        let longest = |run: Option<&StepRun>| run.map_or(0.0, |run| run.step);
+        let own = m.on_jumps.as_ref().and_then(|answer| answer.own.as_ref());
+        longest(own) > 2.0 * longest(m.largest.kept.as_ref())
+    });
+    if !better.is_empty() {
+        notes.push(format!(
+            "{better}: far longer steps keep the limit where they hit the jumps, see below"
         ));
     }
     let neither = names(&|m| m.largest.ruled_by == Some(Rule::Neither));

@@ -363,39 +363,42 @@ mod tests {
     use crate::case::{Library, Replacements};
     use crate::method::find;
 
-    /// What thinning costs, measured on every case: the share of the limit over all nodes
-    /// against that over a seventh of them.
+    fn used(case: &str, method: &str, steps: u64, most: u64) -> f64 {
+        let case = Library::new().load(case, &Replacements::new()).unwrap();
+        let exact = case.exact().unwrap();
+        let limit = Limit {
+            absolute: case.limits.absolute,
+            relative: case.limits.relative,
+            of_peak: false,
+        };
+        let question = Question::new(&case, &exact, &vec![Some(limit); exact.peaks().len()]);
+        let stepper = Stepper::new(find(method).unwrap(), Sides::After).unwrap();
+        let grid = question.divided(steps);
+        let errors = run_compared(&question, &stepper, grid, false, most).unwrap();
+        errors
+            .iter()
+            .map(|error| error.limit_used)
+            .fold(0.0, f64::max)
+    }
+
+    /// A channel uses most of a relative limit where it goes through zero: a comb of nodes
+    /// alone misses that by some per cent.
     #[test]
-    fn few_nodes_tell_what_all_of_them_tell() {
-        let library = Library::new();
-        let mut worst = (0.0, String::new());
-        for name in library.names() {
-            let case = library.load(name, &Replacements::new()).unwrap();
-            let exact = case.exact().unwrap();
-            let limit = Limit {
-                absolute: case.limits.absolute,
-                relative: case.limits.relative,
-                of_peak: false,
-            };
-            let question = Question::new(&case, &exact, &vec![Some(limit); exact.peaks().len()]);
-            for method in ["forward Euler", "classical RK4"] {
-                let stepper = Stepper::new(find(method).unwrap(), Sides::After).unwrap();
-                let run = |most| {
-                    let grid = question.divided(1400);
-                    let errors = run_compared(&question, &stepper, grid, false, most)?;
-                    let used = errors.iter().map(|error| error.limit_used);
-                    Some(used.fold(0.0, f64::max))
-                };
-                let (all, few) = (run(1401).unwrap(), run(200).unwrap());
-                assert!(few <= all, "{name} {method}");
-                // Beyond the stability limit there is nothing to be measured.
-                let gap = 1.0 - few / all;
-                println!("{name} {method}: {all:e} {gap:.1e}");
-                if gap > worst.0 {
-                    worst = (gap, format!("{name} {method}"));
-                }
-            }
+    fn some_nodes_tell_what_all_of_them_tell() {
+        for (case, method, steps) in [
+            ("mechanical/base-excitation", "Heun", 41_000),
+            ("stress/transient-growth-7", "Heun", 31_000),
+            ("mechanical/resonance", "classical RK4", 12_000),
+            ("electrical/rc-ladder-5", "trapezoidal", 20_000),
+            ("electrical/rl-sine", "classical RK4", 12_000),
+            ("kinetics/oral", "forward Euler", 50_000),
+        ] {
+            let (all, some) = (
+                used(case, method, steps, steps + 1),
+                used(case, method, steps, MOST_COMPARED),
+            );
+            let gap = 1.0 - some / all;
+            assert!((0.0..1e-3).contains(&gap), "{case}: {all} {some} {gap:e}");
         }
-        assert!(worst.0 < 0.05, "{worst:?}");
     }
 }
