@@ -338,7 +338,7 @@ mod tests {
 
     #[test]
     fn steps_are_never_rounded_up() {
-        assert_eq!(rounded_down(12.299_9), "12.29");
+        assert_eq!(rounded_down(12.299_97), "12.29");
         assert_eq!(rounded_down(0.072), "0.072");
         assert_eq!(rounded_down(14_400.0 / 7.0), "2057");
         assert_eq!(rounded_down(1.0 / 3e6), "3.333e-7");
