@@ -35,7 +35,7 @@
 //! | [`compare`] | errors, coverage, observed orders |
 //! | [`method`] | the catalogue of integration methods, their order and stability |
 //! | [`judge`] | verdicts |
-//! | [`explain`] | sentences: what, where, how to mend it |
+//! | [`explain`] | sentences: what, where, how to mend it; which step a case needs |
 //! | [`outcome`] | results as plain data |
 //! | [`report`] | terminal, JSON, CSV |
 //! | [`audit`] | the pipeline on one screen |

@@ -1,13 +1,19 @@
 //! What an audit has found, as plain data: no formatting, no file formats.
 
+mod methods;
+mod steps;
+
 use crate::fault::Fault;
 use crate::judge::Verdict;
 use crate::submission::{Expect, Role, Setting, Submission};
 use crate::trajectory::Finding;
 
-mod methods;
 
 pub use methods::{AliasFacts, Factor, FormFacts, MethodFacts, SourceFacts, Written};
+pub use steps::{
+    ChannelError, ChannelLimit, JumpGrid, LargestStep, MethodSteps, OnJumps, Rule, StepRun,
+    StepsOutcome,
+};
 
 /// A whole audit.
 #[derive(Clone, Debug, Default)]

@@ -37,6 +37,8 @@ pub enum Command {
     Exact(ExactArguments),
     /// Lists integration methods, or shows one in full: coefficients, stability, source
     Methods(MethodsArguments),
+    /// Shows which step a case needs, method by method
+    Steps(StepsArguments),
 }
 
 /// Where cases come from.
@@ -189,6 +191,38 @@ pub struct Times {
     /// At the time stamps of a file
     #[arg(long, value_name = "FILE")]
     pub times: Option<PathBuf>,
+}
+
+/// Arguments of `steps`.
+#[derive(Debug, Args)]
+#[command(after_help = "\
+Example: two methods at a limit of one's own
+  stepgauge steps thermal/cold-room-defrost --method Heun --method \"BDF 2\" --absolute 1e-2
+
+Methods are really run over the window; inputs are read as `t >= at` at a jump.
+At most 200000 steps are run, fewer where a case has many states. Runs of more
+than 3000 steps are compared at some 3000 nodes.")]
+pub struct StepsArguments {
+    /// Which case.
+    #[command(flatten)]
+    pub choice: CaseChoice,
+    /// A method by name, as in RK4 (repeatable) [default: forward Euler, backward Euler,
+    /// trapezoidal, Heun, classical RK4]
+    #[arg(long = "method", value_name = "NAME")]
+    pub methods: Vec<String>,
+    /// The absolute limit, in the unit of each channel [default: that of the case]
+    #[arg(long, value_name = "LIMIT", allow_negative_numbers = true, value_parser = not_negative)]
+    pub absolute: Option<f64>,
+    /// The relative limit, a fraction [default: that of the case]
+    #[arg(long, value_name = "LIMIT", allow_negative_numbers = true, value_parser = not_negative)]
+    pub relative: Option<f64>,
+    /// Shows errors at this step; one that does not divide the window ends with the last
+    /// step within it (repeatable) [default: a ladder of steps]
+    #[arg(long = "step", value_name = "H", allow_negative_numbers = true, value_parser = positive)]
+    pub steps: Vec<f64>,
+    /// Writes a row for each method, step and channel as CSV
+    #[arg(long)]
+    pub csv: bool,
 }
 
 fn pair(text: &str) -> Result<(String, String), String> {

@@ -4,6 +4,7 @@ mod args;
 mod methods;
 mod plan;
 mod run;
+mod steps;
 
 pub use args::Arguments;
 pub use run::run;

@@ -5,10 +5,10 @@ use std::process::ExitCode;
 
 use super::args::{
     Arguments, AuditArguments, CaseArguments, CaseChoice, CasesArguments, Command, ExactArguments,
-    MethodsArguments,
+    MethodsArguments, StepsArguments,
 };
 use super::methods::methods_text;
-use super::plan;
+use super::{plan, steps};
 use crate::audit::audit;
 use crate::case::{Case, Library, Replacements};
 use crate::exact::{Exact, approx_time_scales};
@@ -17,7 +17,7 @@ use crate::number::{Decimal, Double};
 use crate::outcome::CaseFacts;
 use crate::report::{
     Screen, ValueWriter, WIDEST, audit_json, audit_text, case_json, case_list, case_text,
-    write_atomically,
+    steps_csv, steps_text, write_atomically,
 };
 use crate::trajectory::{Findings, Selection, Stated, Survey, is_time_name, open};
 
@@ -62,6 +62,7 @@ pub fn run(arguments: &Arguments) -> ExitCode {
         Command::Case(arguments) => run_case(arguments),
         Command::Exact(arguments) => run_exact(arguments),
         Command::Methods(arguments) => run_methods(arguments),
+        Command::Steps(arguments) => run_steps(arguments),
     };
     let status = match result {
         Ok(status) => status,
@@ -176,6 +177,17 @@ fn run_exact(arguments: &ExactArguments) -> Result<u8, Stop> {
 
 fn run_methods(arguments: &MethodsArguments) -> Result<u8, Stop> {
     print(&methods_text(arguments, screen())?)?;
+    Ok(IN_ORDER)
+}
+
+fn run_steps(arguments: &StepsArguments) -> Result<u8, Stop> {
+    let (case, exact) = load(&arguments.choice)?;
+    let outcome = steps::steps(arguments, &case, &exact)?;
+    if arguments.csv {
+        steps_csv(&case, &outcome, io::stdout().lock())?;
+    } else {
+        print(&steps_text(&case, &outcome, screen()))?;
+    }
     Ok(IN_ORDER)
 }
 

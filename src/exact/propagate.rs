@@ -175,12 +175,21 @@ impl<'a> Walk<'a> {
     /// its start; one after it is followed a little way only, so callers leave rows
     /// outside the window out.
     pub fn go(&mut self, time: Double) -> &Values {
+        self.go_in_double(time);
+        if !self.exact.promised(&self.values) {
+            let mut values = std::mem::take(&mut self.values);
+            self.exact.refine(self.segment, time, &mut values);
+            self.values = values;
+        }
+        &self.values
+    }
+
+    /// As [`Walk::go`] but quick in every case: where double-double does not keep the
+    /// promise of [`Exact`], only the bound says so.
+    pub fn go_in_double(&mut self, time: Double) -> &Values {
         self.place(time);
         let mut values = std::mem::take(&mut self.values);
         self.exact.read(&self.exact.table, &self.flow, &mut values);
-        if !self.exact.promised(&values) {
-            self.exact.refine(self.segment, time, &mut values);
-        }
         self.values = values;
         &self.values
     }

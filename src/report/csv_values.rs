@@ -46,7 +46,7 @@ impl<W: Write> ValueWriter<W> {
 }
 
 /// The error of the stream itself, so that a closed pipe is still known as one.
-fn kept(error: csv::Error) -> io::Error {
+pub(super) fn kept(error: csv::Error) -> io::Error {
     match error.into_kind() {
         csv::ErrorKind::Io(error) => error,
         other => io::Error::other(format!("{other:?}")),

@@ -216,7 +216,7 @@ fn verdict_text(submission: &Audited, narrow: bool) -> String {
     }
 }
 
-fn used_text(used: f64) -> String {
+pub(super) fn used_text(used: f64) -> String {
     if !used.is_finite() {
         "no limit".to_owned()
     } else if used < 0.001 && used > 0.0 {

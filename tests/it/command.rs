@@ -4,7 +4,7 @@ use crate::certified::{certified_case, certified_systems};
 use crate::digits::{read, ulps};
 use stepgauge::number::Double;
 
-fn stepgauge(arguments: &[&str]) -> (i32, String, String) {
+pub fn stepgauge(arguments: &[&str]) -> (i32, String, String) {
     let output = Command::new(env!("CARGO_BIN_EXE_stepgauge"))
         .args(arguments)
         .env("LC_ALL", "C")

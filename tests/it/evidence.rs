@@ -30,7 +30,10 @@ fn probe() {
     let mut bad = 0;
     let mut count = 0;
     let t0 = std::time::Instant::now();
-    for name in names.iter().filter(|n| std::env::var("ONLY").map_or(true, |o| n.contains(&o))) {
+    for name in names
+        .iter()
+        .filter(|n| std::env::var("ONLY").map_or(true, |o| n.contains(&o)))
+    {
         let case = library.load(name, &Default::default()).unwrap();
         let linear = Linear::new(&case);
         if linear.size() > 4 {

@@ -70,7 +70,9 @@ fn cases_and_help() {
         "case.json",
         &screen(&[case[0], case[1], "--json"], "C", "100"),
     );
-    for command in ["audit", "cases", "case", "exact", "methods"] {
+    let steps = ["steps", "thermal/cold-room-defrost"];
+    compare("steps-100.txt", &screen(&steps, "C.UTF-8", "100"));
+    for command in ["audit", "cases", "case", "exact", "methods", "steps"] {
         compare(
             &format!("help-{command}.txt"),
             &screen(&[command, "--help"], "C.UTF-8", "100"),

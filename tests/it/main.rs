@@ -36,6 +36,9 @@ mod layouts;
 /// Broken files and submissions: finding, line, exit status.
 mod broken;
 
+/// `steps` against plain loops of the same methods, and the command.
+mod steps;
+
 /// Ways to an undeserved pass, closed.
 mod cheats;
 

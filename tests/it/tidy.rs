@@ -48,6 +48,7 @@ fn allowed() -> BTreeMap<&'static str, Vec<&'static str>> {
         (
             "explain",
             with(&[
+                "case",
                 "compare",
                 "method",
                 "exact",
@@ -87,7 +88,9 @@ fn allowed() -> BTreeMap<&'static str, Vec<&'static str>> {
             with(&[
                 "audit",
                 "case",
+                "compare",
                 "exact",
+                "explain",
                 "method",
                 "outcome",
                 "references",
