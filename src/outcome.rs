@@ -8,7 +8,6 @@ use crate::judge::Verdict;
 use crate::submission::{Expect, Role, Setting, Submission};
 use crate::trajectory::Finding;
 
-
 pub use methods::{AliasFacts, Factor, FormFacts, MethodFacts, SourceFacts, Written};
 pub use steps::{
     ChannelError, ChannelLimit, JumpGrid, LargestStep, MethodSteps, OnJumps, Rule, StepRun,

@@ -4,6 +4,7 @@
 //! compares the runs of a submission without a case with each other.
 
 mod alone;
+mod keep;
 mod run;
 mod verdict;
 

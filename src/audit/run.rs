@@ -1,10 +1,12 @@
 //! One run of a submission: open, match, survey, compare.
 
 use super::Model;
+use super::keep::Keeping;
 use crate::case::Case;
-use crate::compare::{Compared, Comparison, Deviation, Limit, Spot};
+use crate::compare::{Compared, Comparison, Deviation, Keeper, Limit, Spot};
 use crate::fault::Fault;
 use crate::judge;
+use crate::method::Record;
 use crate::outcome::{ChannelOutcome, ErrorOutcome, RowOutcome, RunOutcome};
 use crate::submission::{
     Column, LimitsStated, Matched, Role, Run, Setting, Submission, match_columns,
@@ -21,6 +23,8 @@ pub(super) struct RunCompared {
     pub latest: f64,
     /// Spacing of the rows in the unit of the case, where it is uniform.
     pub spacing: Option<f64>,
+    /// Rows that are asked for their method.
+    pub record: Record,
 }
 
 /// The limit of one channel: what the submission states, else what the case has. A
@@ -78,6 +82,7 @@ pub(super) fn compare(
             deviations: Vec::new(),
             latest: 0.0,
             spacing: None,
+            record: Record::default(),
         });
     };
     let matched = match_columns(&model.case, &layout, &submission.columns)?;
@@ -122,7 +127,15 @@ pub(super) fn compare(
         least_rows: model.case.time.least_rows,
         time_unit: &model.case.time.unit,
     };
-    let compared = comparison.run(&mut findings).map_err(placed)?;
+    let columns = channels.iter().map(|&(c, conversion, _)| (c, conversion));
+    let mut keeping = Keeping::new(survey.rows, columns.collect());
+    let windows = keeping.windows();
+    let mut keeper = Keeper {
+        wanted: &|row| Keeping::wants(&windows, row),
+        take: &mut |row| keeping.take(row),
+    };
+    let compared = comparison.run(&mut findings, &mut keeper).map_err(placed)?;
+    let record = keeping.conclude(&compared, &survey, matched.time_conversion, step);
     if channels.is_empty() {
         let text = "no column of the file is a channel of the case";
         findings.fatal(Kind::ColumnMissing, None, text);
@@ -154,6 +167,7 @@ pub(super) fn compare(
         deviations,
         latest,
         spacing,
+        record,
     })
 }
 

@@ -112,7 +112,7 @@ fn form(scheme: &Scheme, order: usize) -> FormFacts {
             }
         }
         (_, Some(characteristic)) => Factor::Equation(characteristic.terms),
-        (Coefficients::Exponential, None) => Factor::Exponential,
+        (Coefficients::Exponential { .. }, None) => Factor::Exponential,
         (_, None) => Factor::Oscillator,
     };
     FormFacts {
@@ -167,6 +167,6 @@ fn written(scheme: &Scheme, coefficients: &Coefficients) -> Written {
             corrector: row(corrector),
         },
         Scheme::SemiImplicit => Written::SemiImplicit,
-        Scheme::Exponential => Written::Exponential,
+        Scheme::Exponential { by_state } => Written::Exponential { by_state },
     }
 }

@@ -43,6 +43,38 @@ pub struct Compared {
     pub channels: Vec<Deviation>,
 }
 
+/// One row as it is handed on to whoever looks closer, in the units of the case.
+#[derive(Clone, Debug)]
+pub struct Kept {
+    /// Number of the row within the window, from zero.
+    pub number: u64,
+    /// Its time, and how far that is known.
+    pub time: (f64, f64),
+    /// For each selected column.
+    pub channels: Vec<Option<KeptValue>>,
+}
+
+/// One value of such a row.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct KeptValue {
+    /// As written, converted.
+    pub value: f64,
+    /// As written, not converted.
+    pub written: f64,
+    /// `written - exact`.
+    pub error: f64,
+    /// What the digits resolve: as their pattern says, and in full.
+    pub doubts: [f64; 2],
+}
+
+/// Takes some of the rows along.
+pub struct Keeper<'k> {
+    /// Which rows.
+    pub wanted: &'k dyn Fn(u64) -> bool,
+    /// What to do with them.
+    pub take: &'k mut dyn FnMut(Kept),
+}
+
 /// Time constants or radians within the rounding of one stamp that are still followed.
 const MOST_TURNS: f64 = 16.0;
 impl<'a> Comparison<'a> {
@@ -50,10 +82,10 @@ impl<'a> Comparison<'a> {
     ///
     /// # Errors
     /// A file that cannot be read.
-    pub fn run(&self, findings: &mut Findings) -> Result<Compared> {
+    pub fn run(&self, findings: &mut Findings, keeper: &mut Keeper) -> Result<Compared> {
         let (from, to) = (self.exact.from(), self.exact.to());
         let span = (to - from).to_f64();
-        let mut pass = Pass::new(self);
+        let mut pass = Pass::new(self, keeper);
         let is_event = |stamp: f64| {
             let time = self.time.apply(Double::from(stamp));
             self.exact.jumps_near(time, 1e-9 * span)
@@ -142,18 +174,22 @@ impl<'a> Comparison<'a> {
 }
 
 /// The walk along the exact solution and the sums of all channels.
-struct Pass<'c, 'a> {
+struct Pass<'c, 'a, 'k> {
     comparison: &'c Comparison<'a>,
+    keeper: &'c mut Keeper<'k>,
+    rows: u64,
     walk: Walk<'a>,
     sides: Option<[Walk<'a>; 2]>,
     sums: Vec<Sums>,
 }
 
-impl<'c, 'a> Pass<'c, 'a> {
-    fn new(comparison: &'c Comparison<'a>) -> Pass<'c, 'a> {
+impl<'c, 'a, 'k> Pass<'c, 'a, 'k> {
+    fn new(comparison: &'c Comparison<'a>, keeper: &'c mut Keeper<'k>) -> Pass<'c, 'a, 'k> {
         let sums = comparison.channels.iter().map(|_| Sums::new()).collect();
         Pass {
             comparison,
+            keeper,
+            rows: 0,
             walk: comparison.exact.walk(),
             sides: None,
             sums,
@@ -171,6 +207,13 @@ impl<'c, 'a> Pass<'c, 'a> {
         self.walk.go(time);
         let moved = self.moved_by(time, blur);
         let values = self.walk.values();
+        let number = self.rows;
+        self.rows += 1;
+        let mut kept = (self.keeper.wanted)(number).then(|| Kept {
+            number,
+            time: (time.to_f64(), blur),
+            channels: vec![None; self.sums.len()],
+        });
         let channels = self
             .comparison
             .channels
@@ -183,13 +226,26 @@ impl<'c, 'a> Pass<'c, 'a> {
             };
             let truth = values.value[*channel];
             sums.slope(time.to_f64(), truth.to_f64());
-            let error = (conversion.apply(Double::from(written)) - truth).to_f64();
+            let value = conversion.apply(Double::from(written));
+            let error = (value - truth).to_f64();
             let rest = moved.as_ref().map_or(0.0, |moved| moved[*channel]) + values.bound[*channel];
             let as_printed = self.comparison.survey.channels[place];
-            let doubts = [as_printed, Resolution::Full]
-                .map(|resolution| conversion.stretch(resolution.at(written)) + rest);
+            let digits = [as_printed, Resolution::Full]
+                .map(|resolution| conversion.stretch(resolution.at(written)));
+            let doubts = digits.map(|digits| digits + rest);
+            if let Some(kept) = &mut kept {
+                kept.channels[place] = Some(KeptValue {
+                    value: value.to_f64(),
+                    written,
+                    error,
+                    doubts: digits,
+                });
+            }
             sums.written(written);
             sums.add(time.to_f64(), error, truth.to_f64().abs(), doubts, limit);
+        }
+        if let Some(kept) = kept {
+            (self.keeper.take)(kept);
         }
     }
 

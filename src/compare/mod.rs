@@ -11,6 +11,6 @@ mod order;
 mod stride;
 
 pub use convergence::{Convergence, grid_convergence, order_of_three};
-pub use deviation::{Compared, Comparison};
+pub use deviation::{Compared, Comparison, Keeper, Kept, KeptValue};
 pub use margin::{Deviation, Limit, Margin, Spot};
 pub use order::{Pair, Rung, Sight, agreeing, observe};

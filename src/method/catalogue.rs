@@ -77,7 +77,10 @@ pub const METHODS: &[Method] = &[
         &["exponential time differencing 1", "ETD1"],
         1,
         "[hochbruck-ostermann-2010] 2.1",
-        &[Exponential],
+        &[
+            Exponential { by_state: false },
+            Exponential { by_state: true },
+        ],
     ),
     method(
         "trapezoidal",

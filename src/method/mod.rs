@@ -9,12 +9,16 @@
 mod catalogue;
 mod characteristic;
 mod drive;
+mod estimate;
 mod evidence;
 mod linear;
 mod march;
+mod powers;
 mod record;
 mod recurrence;
+mod scale;
 mod scheme;
+mod search;
 mod stability;
 mod starts;
 mod trial;
@@ -22,12 +26,13 @@ mod trial;
 pub use catalogue::{METHODS, Method, find, find_all};
 pub use characteristic::Characteristic;
 pub use drive::Drive;
-pub use evidence::{Evidence, Family, MOST_STEPS, Tried, evidence};
+pub use evidence::{Evidence, Family, Tried, evidence};
 pub use linear::{Linear, Side, Signal};
 pub use march::{March, NEAR, Sides, add_forcing};
 pub use record::{Piece, Record, START_ROWS, Window, windows};
 pub use recurrence::{Node, Ranks, Reading, Recurrence};
 pub use scheme::{Coefficients, Scheme, Stages};
+pub use search::MOST_STEPS;
 pub use stability::{
     Rational, Stability, amplification, approx_stability, approx_stable_length, of_stages, roots,
 };

@@ -103,6 +103,37 @@ impl Record {
         peaks
     }
 
+    /// Only every so many rows, counted from the first of the file: those at the steps of
+    /// a program that has interpolated the others.
+    pub fn every(&self, count: u64) -> Record {
+        let width = self.width();
+        let window = |window: &Window| {
+            let mut thinned = Window {
+                first: window.first.div_ceil(count),
+                ..Window::default()
+            };
+            for row in 0..window.rows() {
+                if (window.first + row as u64) % count == 0 {
+                    thinned.times.push(window.times[row]);
+                    thinned.time_doubts.push(window.time_doubts[row]);
+                    let line = row * width..(row + 1) * width;
+                    thinned.values.extend(&window.values[line.clone()]);
+                    thinned.errors.extend(&window.errors[line.clone()]);
+                    thinned.doubts.extend(&window.doubts[line]);
+                }
+            }
+            thinned
+        };
+        Record {
+            channels: self.channels.clone(),
+            spacing: self
+                .spacing
+                .map(|(h, doubt)| (h * count as f64, doubt * count as f64)),
+            unit: self.unit,
+            windows: self.windows.iter().map(window).collect(),
+        }
+    }
+
     /// Pieces without jumps, complete rows only.
     pub fn pieces(&self, linear: &Linear) -> Vec<Piece> {
         let mut pieces = Vec::new();

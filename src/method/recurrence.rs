@@ -79,7 +79,8 @@ impl Recurrence {
                 corrector,
             } => predicted(predictor, corrector, &matrix, step),
             Coefficients::SemiImplicit => semi_implicit(ranks, &matrix, step),
-            Coefficients::Exponential => exponential(&matrix, step),
+            Coefficients::Exponential { by_state: false } => exponential(&matrix, step),
+            Coefficients::Exponential { by_state: true } => by_state(&matrix, step),
         }
         .filter(Recurrence::is_finite)
     }
@@ -418,6 +419,34 @@ fn exponential(matrix: &DMatrix<f64>, step: f64) -> Option<Recurrence> {
         }],
         spread: sparse(&spread),
         pull: sparse(&pull),
+        roundings: 8.0,
+    })
+}
+
+/// Each state by itself: `exp(h a_ii)` for its own rate, everything else held.
+fn by_state(matrix: &DMatrix<f64>, step: f64) -> Option<Recurrence> {
+    let size = matrix.nrows();
+    let own = |i: usize| step * matrix[(i, i)];
+    // (exp(z) - 1) / z without its cancellation.
+    let phi = |z: f64| if z == 0.0 { 1.0 } else { z.exp_m1() / z };
+    let diagonal = |of: &dyn Fn(usize) -> f64| {
+        DMatrix::from_fn(size, size, |i, j| if i == j { of(i) } else { 0.0 })
+    };
+    let weight = diagonal(&|i| step * phi(own(i)));
+    let others = DMatrix::from_fn(size, size, |i, j| if i == j { 0.0 } else { matrix[(i, j)] });
+    let stay = diagonal(&|i| own(i).exp()) + &weight * &others;
+    let amplified = 8.0 * (0..size).map(|i| 1.0 + own(i).abs()).fold(1.0, f64::max);
+    let spread = (stay.abs() + identity(size)) * amplified;
+    Some(Recurrence {
+        step,
+        past: vec![sparse(&stay)],
+        nodes: vec![Node {
+            at: 0.0,
+            slope: false,
+            weight: sparse(&weight),
+        }],
+        spread: sparse(&spread),
+        pull: sparse(&(weight.abs() * amplified)),
         roundings: 8.0,
     })
 }

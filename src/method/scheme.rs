@@ -46,7 +46,11 @@ pub enum Scheme {
     /// States are moved one after the other, each with the newest of the others.
     SemiImplicit,
     /// `exp(hA)` for the states, inputs held from the start of the step.
-    Exponential,
+    Exponential {
+        /// True where only the diagonal of `A` goes into the exponential and every state
+        /// holds the others from the start of the step, too, as membrane programs do.
+        by_state: bool,
+    },
 }
 
 /// Coefficients as numbers.
@@ -71,7 +75,10 @@ pub enum Coefficients {
     /// See [`Scheme::SemiImplicit`].
     SemiImplicit,
     /// See [`Scheme::Exponential`].
-    Exponential,
+    Exponential {
+        /// Each state by itself.
+        by_state: bool,
+    },
 }
 
 /// Stages on a linear model: `k_i = A (x + h sum matrix_ij k_j) + g(t + nodes_i h) +
@@ -164,7 +171,7 @@ impl Scheme {
                 }
             }
             Scheme::SemiImplicit => Coefficients::SemiImplicit,
-            Scheme::Exponential => Coefficients::Exponential,
+            Scheme::Exponential { by_state } => Coefficients::Exponential { by_state },
         }
     }
 
@@ -255,7 +262,7 @@ mod tests {
                         near(sum(&predictor), 1.0);
                         near(sum(&corrector), 1.0);
                     }
-                    Coefficients::SemiImplicit | Coefficients::Exponential => {}
+                    Coefficients::SemiImplicit | Coefficients::Exponential { .. } => {}
                 }
             }
         }

@@ -120,7 +120,7 @@ pub fn of_stages(stages: &Stages, z: Complex<f64>) -> Complex<f64> {
 pub fn roots(coefficients: &Coefficients, z: Complex<f64>) -> Vec<Complex<f64>> {
     match coefficients {
         Coefficients::Stages(stages) => vec![of_stages(stages, z)],
-        Coefficients::Exponential => vec![z.exp()],
+        Coefficients::Exponential { .. } => vec![z.exp()],
         // On an oscillator: a pair of states takes turns. A single state has none to wait
         // for.
         Coefficients::SemiImplicit if z.im == 0.0 => vec![1.0 + z],

@@ -12,9 +12,10 @@ use nalgebra::{DMatrix, DVector};
 
 use super::linear::{Linear, Side};
 use super::march::{March, NEAR, Sides};
+use super::powers::identity;
 use super::record::{Piece, Record, Window};
 use super::recurrence::Recurrence;
-use super::trial::{Fit, Trial, identity};
+use super::trial::{Fit, Trial};
 use crate::number::Matrix;
 
 /// Rows compared at most.

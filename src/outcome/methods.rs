@@ -106,7 +106,10 @@ pub enum Written {
     /// States are moved one after the other.
     SemiImplicit,
     /// The matrix exponential.
-    Exponential,
+    Exponential {
+        /// Of the diagonal alone.
+        by_state: bool,
+    },
 }
 
 /// The factor by which one step multiplies a mode `x' = lambda x`, in `z = h lambda`;

@@ -227,12 +227,15 @@ fn coefficients(written: &Written, screen: Screen, lines: &mut Vec<String>) {
                     .to_owned(),
             );
         }
-        Written::Exponential => {
+        Written::Exponential { by_state } => {
             lines.push("Coefficients: none".to_owned());
-            lines.push(
+            let how = if *by_state {
+                "  Each state by the exponential of its own rate, inputs and other states held from \
+                 the start of the step."
+            } else {
                 "  States by the matrix exponential, inputs held from the start of the step."
-                    .to_owned(),
-            );
+            };
+            lines.push(how.to_owned());
         }
     }
 }

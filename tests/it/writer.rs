@@ -104,7 +104,7 @@ impl<'a> Program<'a> {
                 }
                 next
             }
-            Coefficients::Exponential => {
+            Coefficients::Exponential { .. } => {
                 let mut both = DMatrix::zeros(n + 1, n + 1);
                 both.view_mut((0, 0), (n, n)).copy_from(&(&self.matrix * h));
                 both.view_mut((0, n), (n, 1))

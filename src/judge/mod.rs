@@ -3,6 +3,10 @@
 //! Acceptance and rejection are guarded: a verdict is given only where what the file
 //! can resolve does not change it (`[jcgm-106]` in [`crate::references`]).
 
+mod claims;
+
+pub use claims::{Answer, Claimed, Support, family_at, family_name, of_claim, reading};
+
 use crate::compare::{Deviation, Margin, Pair, Sight};
 
 /// How something was judged.

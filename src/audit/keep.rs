@@ -1,0 +1,142 @@
+//! Rows that are kept of a file for the question which method wrote it.
+
+use crate::compare::{Compared, Kept};
+use crate::method::{Record, Window, windows};
+use crate::number::Conversion;
+use crate::trajectory::{Grid, Resolution, Survey};
+
+/// Gathers the rows of a few windows while the file is compared.
+pub(super) struct Keeping {
+    windows: Vec<(u64, u64)>,
+    /// Channel of the case and conversion of each selected column.
+    columns: Vec<(usize, Conversion)>,
+    kept: Vec<Kept>,
+}
+
+impl Keeping {
+    pub(super) fn new(rows: u64, columns: Vec<(usize, Conversion)>) -> Keeping {
+        Keeping {
+            windows: windows(rows),
+            columns,
+            kept: Vec::new(),
+        }
+    }
+
+    pub(super) fn wants(windows: &[(u64, u64)], row: u64) -> bool {
+        windows
+            .iter()
+            .any(|&(first, rows)| (first..first + rows).contains(&row))
+    }
+
+    pub(super) fn windows(&self) -> Vec<(u64, u64)> {
+        self.windows.clone()
+    }
+
+    pub(super) fn take(&mut self, row: Kept) {
+        self.kept.push(row);
+    }
+
+    /// The record, once the digits and the grid are known for good. A stated step that
+    /// the spacing is a multiple of sets the spacing exactly.
+    pub(super) fn conclude(
+        self,
+        compared: &Compared,
+        survey: &Survey,
+        time: Conversion,
+        step: Option<f64>,
+    ) -> Record {
+        let full = |place: usize| {
+            let deviation = compared.channels.get(place);
+            deviation.is_some_and(|d| d.resolution == Resolution::Full)
+        };
+        let mut record = Record {
+            channels: self.columns.iter().map(|(channel, _)| *channel).collect(),
+            spacing: spacing(compared, survey, time, step, self.kept.last()),
+            unit: unit(&self.kept, survey),
+            windows: Vec::new(),
+        };
+        let mut next = 0;
+        for row in &self.kept {
+            if record.windows.is_empty() || row.number != next {
+                record.windows.push(Window {
+                    first: row.number,
+                    ..Window::default()
+                });
+            }
+            next = row.number + 1;
+            let Some(window) = record.windows.last_mut() else {
+                continue;
+            };
+            window.times.push(row.time.0);
+            window.time_doubts.push(row.time.1);
+            for (place, value) in row.channels.iter().enumerate() {
+                let value = value.as_ref();
+                window.values.push(value.map_or(f64::NAN, |v| v.value));
+                window.errors.push(value.map_or(f64::NAN, |v| v.error));
+                let converted = self.columns.get(place).is_some_and(|(_, c)| !c.is_none());
+                window.doubts.push(value.map_or(f64::NAN, |v| {
+                    let digits = v.doubts[usize::from(full(place))];
+                    // A program that writes in another unit has rounded once more.
+                    let more = if converted {
+                        4.0 * f64::EPSILON * v.value.abs()
+                    } else {
+                        0.0
+                    };
+                    digits + more
+                }));
+            }
+        }
+        record
+    }
+}
+
+fn spacing(
+    compared: &Compared,
+    survey: &Survey,
+    time: Conversion,
+    step: Option<f64>,
+    last: Option<&Kept>,
+) -> Option<(f64, f64)> {
+    let spacing = compared.spacing?;
+    let end = last.map_or(0.0, |row| row.time.0.abs());
+    let exact = matches!(survey.grid, Grid::Uniform { exact: Some(_), .. });
+    let printed = time.stretch(survey.time.at(end)).min(spacing);
+    let rows = compared.rows.max(2) as f64;
+    let doubt = if exact {
+        f64::EPSILON * spacing
+    } else {
+        4.0 * f64::EPSILON * end + 2.0 * printed / rows
+    };
+    // The step as stated is what the program has used, where the stamps agree with it.
+    if let Some(step) = step {
+        let count = (spacing / step).round();
+        let multiple = count * step;
+        if count >= 1.0 && (multiple - spacing).abs() <= 2.0 * doubt + 1e-12 * spacing {
+            return Some((multiple, f64::EPSILON * multiple));
+        }
+    }
+    Some((spacing, doubt))
+}
+
+/// Half a unit in the last place of the arithmetic that the values show.
+fn unit(kept: &[Kept], survey: &Survey) -> f64 {
+    let single = f64::from(f32::EPSILON) / 2.0;
+    if survey.channels.contains(&Resolution::Single) {
+        return single;
+    }
+    let values = kept.iter().flat_map(|row| row.channels.iter().flatten());
+    let mut telling = 0;
+    for value in values {
+        let written = value.written;
+        if f64::from(written as f32) != written {
+            return f64::EPSILON / 2.0;
+        }
+        // Whole numbers and short fractions are numbers of either kind.
+        telling += usize::from(f64::from((written * 4096.0) as i32) != written * 4096.0);
+    }
+    if telling >= 8 {
+        single
+    } else {
+        f64::EPSILON / 2.0
+    }
+}

@@ -1,0 +1,323 @@
+//! What the rows say of a claimed method and step: they agree, contradict, or cannot tell.
+//!
+//! A claim is contradicted only by a bound: the rows differ from what the claimed method
+//! would have written by more than digits and rounding allow, and nothing honest explains
+//! it (a solution by iteration, an adaptive code, a step that nobody stated).
+
+use crate::method::{Evidence, Family, Method, Reading};
+use crate::number::{plain, short};
+
+/// What the rows say of a claim.
+#[derive(Clone, Copy, Debug, PartialEq, Eq, PartialOrd, Ord)]
+#[allow(missing_docs)]
+pub enum Support {
+    Agrees,
+    CannotTell,
+    Contradicts,
+}
+
+impl Support {
+    /// The word in reports.
+    pub fn word(self) -> &'static str {
+        match self {
+            Support::Agrees => "agrees",
+            Support::CannotTell => "cannot tell",
+            Support::Contradicts => "contradicts",
+        }
+    }
+}
+
+/// What is claimed of one run.
+#[derive(Clone, Copy, Debug)]
+pub struct Claimed<'a> {
+    /// The method as named; `None` where only a step is stated.
+    pub name: Option<&'a str>,
+    /// The methods that go by the name; empty where it is not in the catalogue.
+    pub methods: &'a [&'static Method],
+    /// The step as stated.
+    pub step: Option<f64>,
+    /// Steps of that length from row to row, where it fits the rows.
+    pub steps: Option<u64>,
+    /// True for a run with an error setting: its steps are its own business.
+    pub adaptive: bool,
+    /// The unit of time.
+    pub time_unit: &'a str,
+}
+
+/// The answer for one run.
+#[derive(Clone, Debug, PartialEq)]
+pub struct Answer {
+    /// Of method and step together.
+    pub support: Support,
+    /// Of the method alone, where one is claimed.
+    pub method: Option<Support>,
+    /// Of the step alone, where one is stated.
+    pub step: Option<Support>,
+    /// Why, in one sentence; where nothing can be told, what would settle it.
+    pub text: String,
+}
+
+/// A residual this many times below that of every other method is near to its own.
+const FAR_BELOW: f64 = 0.05;
+/// Codes that solve implicit steps by iteration stop at tolerances up to about this part
+/// of the state (common practice, no source).
+const ITERATION: f64 = 1e-5;
+
+/// What the rows of one run say of its claim; `None` where nothing is claimed.
+pub fn of_claim(evidence: &Evidence, claimed: &Claimed) -> Option<Answer> {
+    if claimed.name.is_none() && claimed.step.is_none() {
+        return None;
+    }
+    let cannot = |text: String| Answer {
+        support: Support::CannotTell,
+        method: claimed.name.map(|_| Support::CannotTell),
+        step: claimed.step.map(|_| Support::CannotTell),
+        text,
+    };
+    if let (Some(name), true) = (claimed.name, claimed.methods.is_empty()) {
+        let text = format!("`{name}` is not in the catalogue; `stepgauge methods` lists it");
+        return Some(of_step_alone(evidence, claimed).map_or_else(
+            || cannot(text.clone()),
+            |step| Answer {
+                method: Some(Support::CannotTell),
+                support: step.support.max(Support::CannotTell),
+                text: format!("{text}; {}", step.text),
+                ..step
+            },
+        ));
+    }
+    if !evidence.is_any() {
+        let text = "the rows are too few, or too many states are missing, to run a method beside \
+                    them; write every state at an even spacing";
+        return Some(cannot(text.to_owned()));
+    }
+    if claimed.name.is_none() {
+        return Some(of_step_alone(evidence, claimed).unwrap_or_else(|| {
+            cannot(
+                "no method fits the rows, so none says what the step was; name the method"
+                    .to_owned(),
+            )
+        }));
+    }
+    Some(of_method(evidence, claimed, &cannot))
+}
+
+fn of_method(evidence: &Evidence, claimed: &Claimed, cannot: &dyn Fn(String) -> Answer) -> Answer {
+    let name = claimed.name.unwrap_or_default();
+    let label = match claimed.step {
+        Some(step) => format!("{name} at step {} {}", plain(step), claimed.time_unit),
+        None => name.to_owned(),
+    };
+    let all = |support: Support, text: String| Answer {
+        support,
+        method: Some(support),
+        step: claimed.step.map(|_| support),
+        text,
+    };
+    let fits_rows = claimed.step.is_none() || claimed.steps.is_some();
+    let own = evidence.best(claimed.methods, claimed.steps);
+    let own = own.filter(|_| fits_rows);
+    if let Some(own) = own.filter(|own| own.fit.holds()) {
+        let others = evidence.tried.iter().filter(|tried| tried.fit.compared > 0);
+        let ruled_out: std::collections::BTreeSet<&str> = others
+            .filter(|tried| !tried.fit.holds())
+            .map(|tried| tried.method.name)
+            .filter(|other| {
+                evidence
+                    .best_of(other)
+                    .is_some_and(|best| !best.fit.holds())
+            })
+            .collect();
+        let any = evidence.tried.iter().any(|tried| !tried.fit.holds());
+        if !any {
+            let text = format!(
+                "the rows fit {label}, and every other method as well; more digits, a larger step \
+                 or a case with a moving input would tell them apart"
+            );
+            return cannot(text);
+        }
+        let mut text = format!(
+            "the rows fit {label}: the largest residual is {} of what digits and rounding allow",
+            share(own.fit.ratio)
+        );
+        if !ruled_out.is_empty() {
+            text += &format!("; {} methods are ruled out at any step", ruled_out.len());
+        }
+        if own.reading != Reading::AtNodes {
+            text += &format!("; inputs {}", reading(own.reading));
+        }
+        return all(Support::Agrees, text);
+    }
+    if claimed.adaptive {
+        return cannot(format!(
+            "a run with an error setting chooses its own steps; rows of every accepted step with \
+             all states would show whether {name} made them"
+        ));
+    }
+    let off = own.map_or(String::new(), |own| {
+        format!(
+            " (off by {} of the peak, {} times what digits and rounding allow)",
+            short(own.fit.residual),
+            short(own.fit.ratio)
+        )
+    });
+    if own.is_none() && claimed.step.is_some() {
+        if claimed.steps.is_none() {
+            return cannot(format!(
+                "rows are not a whole number of steps of {} {} apart; write rows at steps",
+                plain(claimed.step.unwrap_or_default()),
+                claimed.time_unit
+            ));
+        }
+        return cannot(format!(
+            "{label} cannot be run beside these rows; write every state, and rows without gaps from the start on"
+        ));
+    }
+    // Something else explains the rows to the last digit.
+    if evidence.is_exact() && claimed.step.is_some() {
+        let text =
+            format!("the values are closer to the exact solution than {label} can come{off}");
+        return all(Support::Contradicts, text);
+    }
+    let at_other_step = evidence
+        .best(claimed.methods, None)
+        .filter(|own| own.fit.holds());
+    if let (Some(other), Some(stated)) = (at_other_step, claimed.step) {
+        let step = other.step.map_or(String::new(), |step| {
+            format!(" {} {}", short(step), claimed.time_unit)
+        });
+        let text = format!(
+            "the rows fit {name} at step{step}, not {}{off}",
+            plain(stated)
+        );
+        return Answer {
+            support: Support::Contradicts,
+            method: Some(Support::Agrees),
+            step: Some(Support::Contradicts),
+            text,
+        };
+    }
+    if let Some(family) = evidence.consistent.first() {
+        let text = format!(
+            "the rows fit {}, not {label}{off}",
+            family_at(family, claimed.time_unit)
+        );
+        return all(Support::Contradicts, text);
+    }
+    let Some(own) = own else {
+        return cannot(format!("nothing could be compared with {label}"));
+    };
+    // Nothing fits: the claim is near, or an iteration has left its tolerance, or it is not
+    // true.
+    let nearest_other = evidence
+        .tried
+        .iter()
+        .filter(|tried| claimed.methods.iter().all(|m| m.name != tried.method.name))
+        .map(|tried| tried.fit.residual)
+        .fold(evidence.exact.residual, f64::min);
+    if own.fit.residual <= FAR_BELOW * nearest_other {
+        let text = format!(
+            "the rows are close to {label}: {} of the peak away, every other method is more than \
+             {} times further",
+            short(own.fit.residual),
+            (1.0 / FAR_BELOW).round()
+        );
+        return all(Support::Agrees, text);
+    }
+    let implicit = own.method.schemes.iter().any(|scheme| scheme.is_implicit());
+    if implicit && own.fit.residual <= ITERATION {
+        return cannot(format!(
+            "the rows are {} of the peak away from {label}, which an iteration that stops early \
+             would explain; a tighter tolerance of its solver would settle it",
+            short(own.fit.residual)
+        ));
+    }
+    if claimed.step.is_none() {
+        return cannot(format!(
+            "no method of the catalogue fits the rows (interpolated output, an adaptive code, or a \
+             fault); state the step to have {name} tested at it"
+        ));
+    }
+    let text = format!("the rows do not follow {label}{off}, nor any method of the catalogue");
+    all(Support::Contradicts, text)
+}
+
+/// A step without a method: what the consistent methods say.
+fn of_step_alone(evidence: &Evidence, claimed: &Claimed) -> Option<Answer> {
+    let steps = claimed.steps?;
+    let stated = claimed.step?;
+    if evidence.is_exact() || evidence.consistent.is_empty() || claimed.adaptive {
+        return None;
+    }
+    let at = |family: &Family| {
+        family.steps == steps || (family.range.0..=family.range.1).contains(&steps)
+    };
+    let (support, text) = if evidence.consistent.iter().all(at) {
+        let family = evidence.consistent.first()?;
+        (
+            Support::Agrees,
+            format!("the rows fit {}", family_at(family, claimed.time_unit)),
+        )
+    } else if evidence.consistent.iter().any(at) {
+        return None;
+    } else {
+        let family = evidence.consistent.first()?;
+        (
+            Support::Contradicts,
+            format!(
+                "the rows fit {}, and no method at step {}",
+                family_at(family, claimed.time_unit),
+                plain(stated)
+            ),
+        )
+    };
+    Some(Answer {
+        support,
+        method: None,
+        step: Some(support),
+        text,
+    })
+}
+
+/// A family with its step, in words.
+pub fn family_at(family: &Family, time_unit: &str) -> String {
+    let mut text = family_name(family);
+    if let Some(step) = family.step {
+        text += &format!(" at step {} {time_unit}", short(step));
+    } else if family.steps == 1 {
+        text += " at the spacing of the rows";
+    } else {
+        text += " at half the spacing of the rows";
+    }
+    if family.reading != Reading::AtNodes {
+        text += &format!(" with inputs {}", reading(family.reading));
+    }
+    text
+}
+
+/// The methods of a family under one name.
+pub fn family_name(family: &Family) -> String {
+    let names: Vec<&str> = family.methods.iter().map(|method| method.name).collect();
+    match names.len() {
+        0..=4 => names.join(" / "),
+        more => format!("{} and {} more", names[..3].join(" / "), more - 3),
+    }
+}
+
+/// How inputs are read, in words.
+pub fn reading(reading: Reading) -> &'static str {
+    match reading {
+        Reading::AtNodes => "read at the stages",
+        Reading::Held => "held from the start of each step",
+        Reading::FromEnd => "held from the end of each step",
+        Reading::Mean => "averaged over each step",
+    }
+}
+
+fn share(ratio: f64) -> String {
+    if ratio < 0.005 {
+        "less than 1 %".to_owned()
+    } else {
+        format!("{:.0} %", 100.0 * ratio)
+    }
+}

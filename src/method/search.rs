@@ -1,0 +1,321 @@
+//! The search through the catalogue: every method at the steps that are worth a look.
+
+use super::catalogue::Method;
+use super::estimate::Target;
+use super::evidence::Tried;
+use super::linear::Linear;
+use super::march::Sides;
+use super::record::{Piece, Record};
+use super::recurrence::{Ranks, Reading, Recurrence};
+use super::scheme::{Coefficients, Scheme};
+use super::starts::with_hidden_start;
+use super::trial::{Fit, GLANCE, Trial};
+
+/// Steps from row to row that are tried whatever the errors say.
+const ALWAYS: [u64; 3] = [1, 2, 4];
+/// Most steps from row to row.
+pub const MOST_STEPS: u64 = 200_000;
+/// Pairs of rows that are compared where the spacing varies.
+const MOST_PAIRS: usize = 120;
+
+/// The orders in which a semi-implicit step may move the states: positions after the rates
+/// that they follow or before them where there are such, else one by one.
+pub(crate) fn rank_orders(linear: &Linear) -> Vec<Ranks> {
+    let size = linear.size();
+    let is_position = |i: usize| {
+        let row = linear.matrix.row(i);
+        let others = row.iter().enumerate().filter(|(_, x)| **x != 0.0);
+        let others: Vec<usize> = others.map(|(j, _)| j).collect();
+        others.len() == 1
+            && others[0] != i
+            && linear.constant[i] == 0.0
+            && linear.drive[i].iter().all(|d| *d == 0.0)
+    };
+    let positions: Vec<bool> = (0..size).map(is_position).collect();
+    let mut orders: Vec<Ranks> = Vec::new();
+    if positions.contains(&true) && positions.contains(&false) {
+        orders.push(positions.iter().map(|p| usize::from(*p)).collect());
+        orders.push(positions.iter().map(|p| usize::from(!*p)).collect());
+    }
+    orders.push((0..size).collect());
+    orders.push((0..size).rev().collect());
+    orders.dedup();
+    orders
+}
+
+pub(super) struct Search<'a> {
+    pub(super) linear: &'a Linear,
+    pub(super) record: &'a Record,
+    pub(super) complete: bool,
+    pub(super) pieces: Vec<Piece>,
+    pub(super) targets: Vec<Target>,
+    pub(super) orders: Vec<Ranks>,
+    pub(super) gauss: Option<Coefficients>,
+    /// The file cannot be told from the exact solution.
+    pub(super) exact: bool,
+    pub(super) claimed: &'a [&'static Method],
+    pub(super) claimed_steps: &'a [u64],
+    pub(super) tried: Vec<Tried>,
+}
+
+impl Search<'_> {
+    /// A step of high order, for starts.
+    pub(super) fn reference(&self, step: f64) -> Option<Recurrence> {
+        Recurrence::new(self.gauss.as_ref()?, self.linear, step, &Ranks::new())
+    }
+
+    pub(super) fn method(&mut self, method: &'static Method, reading: Reading) {
+        for scheme in method.schemes {
+            let coefficients = scheme.coefficients();
+            let orders = match scheme {
+                Scheme::SemiImplicit => self.orders.clone(),
+                _ => vec![Ranks::new()],
+            };
+            for ranks in orders {
+                let variant = Variant {
+                    method,
+                    coefficients: &coefficients,
+                    reading,
+                    ranks: &ranks,
+                };
+                match self.record.spacing {
+                    Some((spacing, _)) => self.even(&variant, spacing),
+                    None => self.uneven(&variant),
+                }
+            }
+        }
+    }
+
+    /// Rows at one spacing.
+    fn even(&mut self, variant: &Variant, spacing: f64) {
+        let claimed = self.claimed.iter().any(|m| m.name == variant.method.name);
+        let mut counts: Vec<u64> = ALWAYS.to_vec();
+        counts.extend(self.claimed_steps.iter().filter(|&&m| claimed || m <= 64));
+        let estimate = self.estimate(variant, spacing);
+        if let Some(estimate) = estimate {
+            counts.extend([estimate.saturating_sub(1), estimate, estimate + 1]);
+        }
+        counts.retain(|&count| count > 0 && count <= MOST_STEPS);
+        counts.sort_unstable();
+        counts.dedup();
+        for count in counts {
+            let Some((fit, print)) = self.at(variant, spacing, count) else {
+                continue;
+            };
+            let known = self.tried.last().is_some_and(|last| {
+                last.method.name == variant.method.name
+                    && last.fit.holds()
+                    && (last.range.0..=last.range.1).contains(&count)
+            });
+            if known {
+                continue;
+            }
+            // Few digits leave a range of steps open.
+            let near_estimate = estimate.is_some_and(|estimate| count.abs_diff(estimate) <= 1);
+            let range = if fit.holds() && near_estimate && !self.exact {
+                self.range(variant, spacing, count)
+            } else {
+                (count, count)
+            };
+            self.tried.push(Tried {
+                method: variant.method,
+                reading: variant.reading,
+                steps: count,
+                range,
+                step: Some(spacing / count as f64),
+                fit,
+                print,
+            });
+        }
+    }
+
+    fn at(&self, variant: &Variant, spacing: f64, steps: u64) -> Option<(Fit, Vec<f64>)> {
+        let step = spacing / steps as f64;
+        let recurrence = variant.recurrence(self.linear, step)?;
+        let trial = Trial::new(self.linear, recurrence, steps, self.record.unit);
+        if !trial.is_finite() {
+            return None;
+        }
+        let fit = self.fit(&trial, spacing);
+        let print = if fit.holds() {
+            self.print(&trial)
+        } else {
+            Vec::new()
+        };
+        (fit.compared > 0).then_some((fit, print))
+    }
+
+    /// How far numbers of steps about one that agrees agree too.
+    fn range(&self, variant: &Variant, spacing: f64, steps: u64) -> (u64, u64) {
+        let holds = |count: u64| {
+            let found = self.at(variant, spacing, count);
+            found.is_some_and(|(fit, _)| fit.holds())
+        };
+        let far = |towards: &dyn Fn(u64) -> u64, end: u64| {
+            let (mut inside, mut stride) = (steps, 1);
+            while stride > 0 && inside.abs_diff(steps) < 3 * steps {
+                let next = towards(stride).clamp(1, MOST_STEPS);
+                if next == inside || !holds(next) {
+                    // Halve the way back to what is known to agree.
+                    let mut outside = next;
+                    while inside.abs_diff(outside) > 1 {
+                        let middle = inside.midpoint(outside);
+                        if holds(middle) {
+                            inside = middle;
+                        } else {
+                            outside = middle;
+                        }
+                    }
+                    return inside;
+                }
+                inside = next;
+                stride *= 2;
+            }
+            if stride > 0 { inside } else { end }
+        };
+        let down = far(&|stride| steps.saturating_sub(stride), 1);
+        let up = far(&|stride| steps + stride, MOST_STEPS);
+        (down, up)
+    }
+
+    fn fit(&self, trial: &Trial, spacing: f64) -> Fit {
+        let memory = trial.recurrence.back() > 1;
+        if memory && (trial.steps > 1 || !self.complete) {
+            let step = spacing / trial.steps as f64;
+            return match self.reference(step) {
+                Some(reference) => with_hidden_start(trial, &reference, self.record, &self.pieces),
+                None => Fit::NOTHING,
+            };
+        }
+        if self.complete {
+            let glance = trial.against_rows(self.record, &self.pieces, true);
+            if glance.holds() {
+                return trial.against_rows(self.record, &self.pieces, false);
+            }
+            return glance;
+        }
+        let rows = usize::MAX;
+        let mut best = trial.from_start(self.record, Sides::After, rows);
+        let (from, to) = self.linear.window;
+        if !best.holds() && self.linear.jumps_within(from, to) {
+            for sides in [Sides::Own, Sides::Before] {
+                let other = trial.from_start(self.record, sides, rows);
+                if other.ratio < best.ratio {
+                    best = other;
+                }
+            }
+        }
+        best
+    }
+
+    /// Rows at many spacings: each of them is one step or two.
+    fn uneven(&mut self, variant: &Variant) {
+        if !self.complete
+            || matches!(
+                variant.coefficients,
+                Coefficients::Multistep { .. } | Coefficients::Predicted { .. }
+            )
+        {
+            return;
+        }
+        let pairs: Vec<(usize, usize)> = self
+            .pieces
+            .iter()
+            .flat_map(|piece| {
+                (piece.start..piece.start + piece.rows - 1).map(|row| (piece.window, row))
+            })
+            .collect();
+        let stride = pairs.len() / MOST_PAIRS + 1;
+        for steps in [1, 2] {
+            let mut fit = Fit::NOTHING;
+            for &(window, row) in pairs.iter().step_by(stride) {
+                let times = &self.record.windows[window].times;
+                let step = (times[row + 1] - times[row]) / steps as f64;
+                let Some(recurrence) = variant.recurrence(self.linear, step) else {
+                    fit = Fit::NOTHING;
+                    break;
+                };
+                let trial = Trial::new(self.linear, recurrence, steps, self.record.unit);
+                let piece = Piece {
+                    window,
+                    start: row,
+                    rows: 2,
+                };
+                fit = fit.and(trial.against_rows(self.record, &[piece], true));
+                if fit.ratio > 1.0 && fit.compared > GLANCE * self.linear.size() {
+                    break;
+                }
+            }
+            if fit.compared > 0 {
+                self.tried.push(Tried {
+                    method: variant.method,
+                    reading: variant.reading,
+                    steps,
+                    range: (steps, steps),
+                    step: None,
+                    fit,
+                    print: if fit.holds() {
+                        self.uneven_print(variant, &pairs, steps)
+                    } else {
+                        Vec::new()
+                    },
+                });
+            }
+        }
+    }
+
+    /// Numbers that are the same for methods which these rows cannot tell apart: the
+    /// matrix from row to row and what the forcing does in a few places.
+    fn print(&self, trial: &Trial) -> Vec<f64> {
+        let mut print = vec![trial.recurrence.back() as f64];
+        print.extend(trial.across().rows().flatten());
+        let places = self.pieces.iter().take(4).map(|piece| {
+            let window = &self.record.windows[piece.window];
+            window.times[piece.start + piece.rows / 2]
+        });
+        for time in places {
+            let forced = trial.forced(time);
+            print.extend(forced);
+        }
+        if self.pieces.is_empty() {
+            print.extend(trial.forced(self.linear.window.0));
+        }
+        print
+    }
+
+    fn uneven_print(&self, variant: &Variant, pairs: &[(usize, usize)], steps: u64) -> Vec<f64> {
+        let Some(&(window, row)) = pairs.get(pairs.len() / 2) else {
+            return Vec::new();
+        };
+        let times = &self.record.windows[window].times;
+        let step = (times[row + 1] - times[row]) / steps as f64;
+        variant
+            .recurrence(self.linear, step)
+            .map_or(Vec::new(), |recurrence| {
+                let trial = Trial::new(self.linear, recurrence, steps, self.record.unit);
+                let mut print: Vec<f64> = trial.across().rows().flatten().copied().collect();
+                print.extend(trial.forced(times[row]));
+                print
+            })
+    }
+}
+
+pub(super) struct Variant<'a> {
+    pub(super) method: &'static Method,
+    coefficients: &'a Coefficients,
+    reading: Reading,
+    ranks: &'a Ranks,
+}
+
+impl Variant<'_> {
+    /// `None` where the step cannot be solved, or where another way to read the inputs
+    /// changes nothing.
+    pub(super) fn recurrence(&self, linear: &Linear, step: f64) -> Option<Recurrence> {
+        let plain = Recurrence::new(self.coefficients, linear, step, self.ranks)?;
+        match self.reading {
+            Reading::AtNodes => Some(plain),
+            Reading::Held if !plain.looks_ahead() => None,
+            reading => Some(plain.with_reading(reading)),
+        }
+    }
+}
