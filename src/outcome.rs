@@ -1,5 +1,6 @@
 //! What an audit has found, as plain data: no formatting, no file formats.
 
+mod evidence;
 mod methods;
 mod steps;
 
@@ -8,6 +9,7 @@ use crate::judge::Verdict;
 use crate::submission::{Expect, Role, Setting, Submission};
 use crate::trajectory::Finding;
 
+pub use evidence::{ClaimOutcome, Consistent, EvidenceOutcome, GrowthOutcome, RunEvidence};
 pub use methods::{AliasFacts, Factor, FormFacts, MethodFacts, SourceFacts, Written};
 pub use steps::{
     ChannelError, ChannelLimit, JumpGrid, LargestStep, MethodSteps, OnJumps, Rule, StepRun,
@@ -63,6 +65,8 @@ pub struct Audited {
     pub orders: Vec<OrderOutcome>,
     /// The verdict on the claimed order.
     pub order_verdict: Option<Verdict>,
+    /// Which methods fit the runs; `None` without a case.
+    pub evidence: Option<EvidenceOutcome>,
 }
 
 /// Whose limits an audit has used.
@@ -197,6 +201,7 @@ impl Audited {
             claimed_method: submission.claims.method.clone(),
             orders: Vec::new(),
             order_verdict: None,
+            evidence: None,
         }
     }
 

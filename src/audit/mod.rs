@@ -4,6 +4,7 @@
 //! compares the runs of a submission without a case with each other.
 
 mod alone;
+mod evidence;
 mod keep;
 mod run;
 mod verdict;
@@ -168,8 +169,10 @@ fn audit_one(planned: &Planned, library: &Library, models: &Models) -> Result<Au
         model.time_constant,
         &mut audited,
     );
-    audited.runs = compared.into_iter().map(|one| one.outcome).collect();
+    let found = evidence::ask(&model, submission, &compared);
+    audited.runs = compared.iter().map(|one| one.outcome.clone()).collect();
     judge_runs(&mut audited);
+    evidence::conclude(submission, &compared, &found, &mut audited);
     Ok(audited)
 }
 

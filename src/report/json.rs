@@ -2,11 +2,15 @@
 
 use super::SCOPE;
 use super::wire::{
-    AuditReport, ChannelReport, FindingReport, NotAuditedReport, OrderReport, RunReport, SCHEMA,
+    AuditReport, ChannelReport, ClaimReport, ConsistentReport, EvidenceReport, FindingReport,
+    GrowthReport, NotAuditedReport, OrderReport, PairReport, RunEvidenceReport, RunReport, SCHEMA,
     SubmissionReport, Summary,
 };
 use crate::judge::Verdict;
-use crate::outcome::{Audited, ChannelOutcome, LimitsFrom, Outcome, RunOutcome};
+use crate::outcome::{
+    Audited, ChannelOutcome, ClaimOutcome, Consistent, EvidenceOutcome, GrowthOutcome, LimitsFrom,
+    Outcome, RunEvidence, RunOutcome,
+};
 use crate::submission::{Expect, Role, Setting};
 
 /// The report as text, ending with a line end.
@@ -83,7 +87,7 @@ fn submission(audited: &Audited) -> SubmissionReport {
                 note: order.note.clone(),
             })
             .collect(),
-        evidence: None,
+        evidence: audited.evidence.as_ref().map(evidence),
         causes: Vec::new(),
         advice: None,
     }
@@ -114,6 +118,52 @@ fn run(run: &RunOutcome) -> RunReport {
             })
             .collect(),
         channels: run.channels.iter().map(channel).collect(),
+    }
+}
+
+fn evidence(evidence: &EvidenceOutcome) -> EvidenceReport {
+    let claim = |claim: &ClaimOutcome| ClaimReport {
+        what: claim.what.to_owned(),
+        stated: claim.stated.clone(),
+        verdict: claim.support.word().to_owned(),
+        text: claim.text.clone(),
+    };
+    EvidenceReport {
+        verdict: evidence.support.map(|support| support.word().to_owned()),
+        claims: evidence.claims.iter().map(claim).collect(),
+        families: evidence.families.clone(),
+        runs: evidence.runs.iter().map(run_evidence).collect(),
+    }
+}
+
+fn run_evidence(run: &RunEvidence) -> RunEvidenceReport {
+    let consistent = |one: &Consistent| ConsistentReport {
+        family: one.family.clone(),
+        step: one.step,
+        steps_per_row: one.steps_per_row,
+        largest_residual: finite(one.largest_residual),
+        inputs: one.inputs.to_owned(),
+    };
+    let pair = |(re, im): (f64, f64)| [re, im];
+    let growth = |growth: &GrowthOutcome| GrowthReport {
+        eigenvalue: pair(growth.eigenvalue),
+        z: pair(growth.z),
+        factor: pair(growth.factor),
+        doubt: growth.doubt,
+        exact: pair(growth.exact),
+        coefficients: growth.coefficients,
+    };
+    RunEvidenceReport {
+        file: run.file.clone(),
+        claim: PairReport {
+            method: run.method.clone(),
+            step: run.step,
+        },
+        verdict: run.support.map(|support| support.word().to_owned()),
+        consistent: run.consistent.iter().map(consistent).collect(),
+        exact: run.exact,
+        growth: run.growth.iter().map(growth).collect(),
+        note: run.note.clone(),
     }
 }
 

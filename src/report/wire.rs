@@ -53,12 +53,85 @@ pub struct SubmissionReport {
     pub limits_from: String,
     pub runs: Vec<RunReport>,
     pub orders: Vec<OrderReport>,
-    /// What the numbers say of the claimed method; null until it is computed.
-    pub evidence: Option<()>,
+    /// What the rows say of the claimed method; null without a case.
+    pub evidence: Option<EvidenceReport>,
     /// Likely causes of a failure; empty until they are computed.
     pub causes: Vec<()>,
     /// Advice on the step; null until it is computed.
     pub advice: Option<()>,
+}
+
+/// Which methods fit the rows, and what that says of the claims.
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
+#[allow(missing_docs)]
+pub struct EvidenceReport {
+    /// `agrees`, `contradicts` or `cannot tell`; null where nothing is claimed.
+    pub verdict: Option<String>,
+    pub claims: Vec<ClaimReport>,
+    /// Methods that fit every run which rules anything out.
+    pub families: Vec<String>,
+    pub runs: Vec<RunEvidenceReport>,
+}
+
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
+#[allow(missing_docs)]
+pub struct ClaimReport {
+    /// `method`, `order` or `step`.
+    pub what: String,
+    pub stated: String,
+    pub verdict: String,
+    pub text: String,
+}
+
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
+#[allow(missing_docs)]
+pub struct RunEvidenceReport {
+    pub file: String,
+    pub claim: PairReport,
+    pub verdict: Option<String>,
+    pub consistent: Vec<ConsistentReport>,
+    /// True where the rows cannot be told from the exact solution.
+    pub exact: bool,
+    pub growth: Vec<GrowthReport>,
+    pub note: Option<String>,
+}
+
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
+#[allow(missing_docs)]
+pub struct PairReport {
+    pub method: Option<String>,
+    pub step: Option<f64>,
+}
+
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
+#[allow(missing_docs)]
+pub struct ConsistentReport {
+    pub family: String,
+    pub step: Option<f64>,
+    pub steps_per_row: u64,
+    /// As a part of what digits and rounding allow.
+    pub largest_residual: Option<f64>,
+    /// How inputs were read.
+    pub inputs: String,
+}
+
+/// The factor of one mode in a step; complex numbers as real and imaginary part.
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
+#[allow(missing_docs)]
+pub struct GrowthReport {
+    pub eigenvalue: [f64; 2],
+    pub z: [f64; 2],
+    pub factor: [f64; 2],
+    pub doubt: f64,
+    pub exact: [f64; 2],
+    /// Coefficients of the Taylor series of exp that are reproduced.
+    pub coefficients: Option<u32>,
 }
 
 #[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]

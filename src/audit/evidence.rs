@@ -1,0 +1,307 @@
+//! Evidence for a submission: which methods fit its runs, and what that says of its claims.
+
+use super::Model;
+use super::run::RunCompared;
+use crate::judge::{self, Answer, Claimed, Support, Verdict};
+use crate::method::{Evidence, Linear, Method, evidence, find_all};
+use crate::number::plain;
+use crate::outcome::{Audited, ClaimOutcome, Consistent, EvidenceOutcome, RunEvidence};
+use crate::submission::{Setting, Submission};
+
+/// What was found for one run.
+pub(super) struct RunFound {
+    pub evidence: Evidence,
+    pub answer: Option<Answer>,
+    /// Steps from row to row at the step stated.
+    pub steps: Option<u64>,
+}
+
+/// Claimed steps and rows agree to this part of the step.
+const FITS: f64 = 1e-6;
+
+/// Asks every run which method wrote it.
+pub(super) fn ask(model: &Model, submission: &Submission, runs: &[RunCompared]) -> Vec<RunFound> {
+    let linear = Linear::new(&model.case);
+    let methods = claimed_methods(submission);
+    let ask_one = |run: &RunCompared| ask_one(model, &linear, submission, &methods, run);
+    runs.iter().map(ask_one).collect()
+}
+
+/// The methods that go by the claimed name.
+pub(super) fn claimed_methods(submission: &Submission) -> Vec<&'static Method> {
+    submission
+        .claims
+        .method
+        .as_deref()
+        .map_or(Vec::new(), find_all)
+}
+
+fn ask_one(
+    model: &Model,
+    linear: &Linear,
+    submission: &Submission,
+    methods: &[&'static Method],
+    run: &RunCompared,
+) -> RunFound {
+    let step = match run.outcome.setting {
+        Setting::Step(step) => Some(step),
+        Setting::Tolerance(_) | Setting::Unstated => None,
+    };
+    let whole = |ratio: f64| {
+        let count = ratio.round();
+        (count >= 1.0 && (ratio - count).abs() <= FITS * ratio).then_some(count as u64)
+    };
+    let spacing = run.record.spacing.map(|(spacing, _)| spacing);
+    let mut steps = spacing
+        .zip(step)
+        .and_then(|(spacing, step)| whole(spacing / step));
+    // Rows between the steps are interpolated: those at the steps tell.
+    let between = spacing
+        .zip(step)
+        .and_then(|(spacing, step)| whole(step / spacing));
+    let thinned = between.filter(|&count| steps.is_none() && count > 1);
+    let found = match thinned {
+        Some(count) => {
+            steps = Some(1);
+            evidence(linear, &run.record.every(count), methods, &[1])
+        }
+        None => {
+            let steps: Vec<u64> = steps.into_iter().collect();
+            evidence(linear, &run.record, methods, &steps)
+        }
+    };
+    let claimed = Claimed {
+        name: submission.claims.method.as_deref(),
+        methods,
+        step,
+        steps,
+        adaptive: matches!(run.outcome.setting, Setting::Tolerance(_)),
+        time_unit: &model.case.time.unit,
+    };
+    let mut answer = judge::of_claim(&found, &claimed);
+    if let (Some(answer), Some(count)) = (&mut answer, thinned) {
+        answer.text += &format!("; {} of {count} rows lie between the steps", count - 1);
+    }
+    RunFound {
+        evidence: found,
+        answer,
+        steps,
+    }
+}
+
+/// Fills in the evidence and lets a contradicted claim fail the submission.
+pub(super) fn conclude(
+    submission: &Submission,
+    runs: &[RunCompared],
+    found: &[RunFound],
+    audited: &mut Audited,
+) {
+    let pairs = || runs.iter().zip(found);
+    let run_evidence = pairs().map(|(run, found)| RunEvidence {
+        file: run.outcome.file.clone(),
+        method: submission.claims.method.clone(),
+        step: match run.outcome.setting {
+            Setting::Step(step) => Some(step),
+            Setting::Tolerance(_) | Setting::Unstated => None,
+        },
+        support: found.answer.as_ref().map(|answer| answer.support),
+        consistent: found.evidence.consistent.iter().map(consistent).collect(),
+        exact: found.evidence.is_exact(),
+        note: found.answer.as_ref().map(|answer| answer.text.clone()),
+        growth: Vec::new(),
+    });
+    let run_evidence: Vec<RunEvidence> = run_evidence.collect();
+    let mut claims = Vec::new();
+    if let Some(name) = &submission.claims.method {
+        claims.extend(together("method", name, pairs(), |answer| answer.method));
+    }
+    if let Some(order) = submission.claims.order {
+        claims.push(of_order(order, found, audited));
+    }
+    for (run, found) in pairs() {
+        if let Setting::Step(step) = run.outcome.setting {
+            let stated = format!("{} {}", plain(step), audited.time_unit);
+            let one = std::iter::once((run, found));
+            claims.extend(together("step", &stated, one, |answer| answer.step));
+        }
+    }
+    // A contradicted order has its own reasons.
+    let contradicted = claims
+        .iter()
+        .filter(|claim| claim.support == Support::Contradicts && claim.what != "order");
+    let mut told: Vec<&str> = Vec::new();
+    for claim in contradicted {
+        audited.verdict = Verdict::Fail;
+        if !told.contains(&claim.text.as_str()) {
+            told.push(&claim.text);
+            let reason = format!(
+                "the {} claimed, {}, is contradicted: {}",
+                claim.what, claim.stated, claim.text
+            );
+            audited.reasons.push(reason);
+        }
+    }
+    if let Some(order) = claims.iter().find(|claim| claim.what == "order")
+        && order.support == Support::Contradicts
+        && audited.order_verdict != Some(Verdict::Fail)
+    {
+        audited.verdict = Verdict::Fail;
+        let reason = format!(
+            "the order claimed, {}, is contradicted: {}",
+            order.stated, order.text
+        );
+        audited.reasons.push(reason);
+    }
+    audited.evidence = Some(EvidenceOutcome {
+        support: overall(&claims),
+        claims,
+        families: common(found),
+        runs: run_evidence,
+    });
+}
+
+fn consistent(family: &crate::method::Family) -> Consistent {
+    Consistent {
+        family: judge::family_name(family),
+        step: family.step,
+        steps_per_row: family.steps,
+        largest_residual: family.fit.ratio,
+        inputs: judge::reading(family.reading),
+    }
+}
+
+/// One claim over several runs: any contradiction decides, else any agreement.
+fn together<'a>(
+    what: &'static str,
+    stated: &str,
+    runs: impl Iterator<Item = (&'a RunCompared, &'a RunFound)>,
+    part: impl Fn(&Answer) -> Option<Support>,
+) -> Option<ClaimOutcome> {
+    let mut best: Option<ClaimOutcome> = None;
+    for (run, found) in runs {
+        let Some(answer) = &found.answer else {
+            continue;
+        };
+        let Some(support) = part(answer) else {
+            continue;
+        };
+        let claim = ClaimOutcome {
+            what,
+            stated: stated.to_owned(),
+            support,
+            text: format!("{}: {}", run.outcome.file, answer.text),
+        };
+        let rank = |support: Support| match support {
+            Support::Contradicts => 2,
+            Support::Agrees => 1,
+            Support::CannotTell => 0,
+        };
+        if best
+            .as_ref()
+            .is_none_or(|best| rank(support) > rank(best.support))
+        {
+            best = Some(claim);
+        }
+    }
+    best
+}
+
+fn overall(claims: &[ClaimOutcome]) -> Option<Support> {
+    let has = |support: Support| claims.iter().any(|claim| claim.support == support);
+    match claims {
+        [] => None,
+        _ if has(Support::Contradicts) => Some(Support::Contradicts),
+        _ if has(Support::Agrees) => Some(Support::Agrees),
+        _ => Some(Support::CannotTell),
+    }
+}
+
+/// The order claimed, from the ladder or else from the methods that fit.
+fn of_order(order: f64, found: &[RunFound], audited: &Audited) -> ClaimOutcome {
+    let stated = plain(order);
+    let claim = |support: Support, text: String| ClaimOutcome {
+        what: "order",
+        stated: stated.clone(),
+        support,
+        text,
+    };
+    match audited.order_verdict {
+        Some(Verdict::Pass) => {
+            return claim(Support::Agrees, "the ladder of runs shows it".to_owned());
+        }
+        Some(Verdict::Fail) => {
+            return claim(
+                Support::Contradicts,
+                "the ladder of runs shows less".to_owned(),
+            );
+        }
+        _ => {}
+    }
+    let telling = found
+        .iter()
+        .filter(|found| !found.evidence.is_exact() && !found.evidence.consistent.is_empty());
+    let mut orders: Vec<f64> = Vec::new();
+    for found in telling {
+        for family in &found.evidence.consistent {
+            if family.reading != crate::method::Reading::AtNodes {
+                continue;
+            }
+            orders.extend(family.methods.iter().map(|method| f64::from(method.order)));
+        }
+    }
+    let list = |orders: &[f64]| {
+        let mut texts: Vec<String> = orders.iter().map(|order| plain(*order)).collect();
+        texts.sort();
+        texts.dedup();
+        texts.join(", ")
+    };
+    if orders.is_empty() {
+        let text = "runs at three or more steps would show it";
+        claim(Support::CannotTell, text.to_owned())
+    } else if orders.iter().all(|&of| of < order - 0.5) {
+        let text = format!(
+            "the methods that fit the rows are of order {}",
+            list(&orders)
+        );
+        claim(Support::Contradicts, text)
+    } else if orders.iter().all(|&of| of >= order) {
+        let text = format!(
+            "the methods that fit the rows are of order {}",
+            list(&orders)
+        );
+        claim(Support::Agrees, text)
+    } else {
+        let text = format!(
+            "the methods that fit the rows are of order {}; runs at three or more steps would tell",
+            list(&orders)
+        );
+        claim(Support::CannotTell, text)
+    }
+}
+
+/// Methods that fit every run which rules anything out.
+fn common(found: &[RunFound]) -> Vec<String> {
+    let telling: Vec<&RunFound> = found
+        .iter()
+        .filter(|found| found.evidence.is_any() && !found.evidence.is_exact())
+        .collect();
+    let Some((first, others)) = telling.split_first() else {
+        return Vec::new();
+    };
+    let names = |found: &RunFound| -> Vec<&'static str> {
+        let families = found.evidence.consistent.iter();
+        families
+            .flat_map(|family| family.methods.iter().map(|method| method.name))
+            .collect()
+    };
+    let mut common: Vec<&str> = names(first);
+    common.dedup();
+    common.retain(|name| others.iter().all(|other| names(other).contains(name)));
+    let mut seen = Vec::new();
+    common.retain(|name| {
+        let new = !seen.contains(name);
+        seen.push(*name);
+        new
+    });
+    common.into_iter().map(str::to_owned).collect()
+}
