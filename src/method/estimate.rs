@@ -4,9 +4,11 @@
 use super::linear::Side;
 use super::march::{March, Sides};
 use super::record::Record;
-use super::search::{MOST_STEPS, Search, Variant};
+use super::search::{Search, Variant};
 use super::trial::{GLANCE, Trial};
 
+/// More steps from row to row than this are tried only where they are claimed.
+const MOST_GUESSED: u64 = 10_000;
 /// Steps that a search may take one by one where inputs jump.
 const MOST_MARCHED: u64 = 20_000;
 
@@ -69,7 +71,7 @@ impl Search<'_> {
                 return None;
             }
             let wanted = steps as f64 * seen.along.powf(1.0 / order);
-            let next = (wanted.round().max(1.0) as u64).min(MOST_STEPS);
+            let next = (wanted.round().max(1.0) as u64).min(MOST_GUESSED);
             if next == steps {
                 break;
             }

@@ -238,7 +238,10 @@ fn families(tried: &[Tried]) -> Vec<Family> {
             }
         }
     }
-    families.into_iter().map(|(family, _)| family).collect()
+    let mut families: Vec<Family> = families.into_iter().map(|(family, _)| family).collect();
+    // The plainest explanation first; the order of the catalogue stays among equals.
+    families.sort_by_key(|family| family.steps);
+    families
 }
 
 fn alike(a: &[f64], b: &[f64]) -> bool {

@@ -37,27 +37,25 @@ pub(super) fn identity(size: usize) -> Matrix<f64> {
     identity
 }
 
-/// `C^m` and `sum_(j<m) |C^j|`, by doubling: `S_2a = S_a + |C^a| S_a`, which is an upper
-/// bound.
-pub(super) fn repeated(companion: &Matrix<f64>, count: u64) -> (Matrix<f64>, Matrix<f64>) {
+/// `sum_(j<m) |C^j|` or an upper bound of it: blocks of the square root of `m` powers, each
+/// carried on by a true power. (Doubling, `S_2a = S_a + |C^a| S_a`, overestimates by orders
+/// of magnitude where a method has a long memory.)
+pub(super) fn gathered(companion: &Matrix<f64>, count: u64) -> Matrix<f64> {
     let size = companion.size();
-    let (mut power, mut sum) = (identity(size), Matrix::zero(size));
-    // The block that is doubled, and what has been put together of blocks so far.
-    let (mut block, mut block_sum) = (companion.clone(), identity(size));
-    let mut rest = count;
-    while rest > 0 {
-        if rest & 1 == 1 {
-            // sum over the block first, then over what is already there, shifted by it.
-            let shifted = block.map(f64::abs).product(&sum);
-            sum = block_sum.zip(&shifted, |a, b| a + b);
-            power = block.product(&power);
-        }
-        rest >>= 1;
-        if rest > 0 {
-            let shifted = block.map(f64::abs).product(&block_sum);
-            block_sum = block_sum.zip(&shifted, |a, b| a + b);
-            block = block.product(&block);
-        }
+    let block = (count as f64).sqrt().ceil() as u64;
+    let mut power = identity(size);
+    let mut sum: Matrix<f64> = Matrix::zero(size);
+    for _ in 0..block.min(count) {
+        sum = sum.zip(&power, |s, p| s + p.abs());
+        power = companion.product(&power);
     }
-    (power, sum)
+    // `power` is now that of one block.
+    let (leap, mut carried) = (power, identity(size));
+    let mut total: Matrix<f64> = Matrix::zero(size);
+    for _ in 0..count.div_ceil(block.max(1)) {
+        let shifted = carried.map(f64::abs).product(&sum);
+        total = total.zip(&shifted, |a, b| a + b);
+        carried = leap.product(&carried);
+    }
+    total
 }

@@ -134,6 +134,22 @@ impl Record {
         }
     }
 
+    /// How far the channels move within a piece, in units of what their digits resolve.
+    pub fn movement(&self, piece: &Piece) -> f64 {
+        let (window, width) = (&self.windows[piece.window], self.width());
+        let rows = piece.start..piece.start + piece.rows;
+        let moved = |place: usize| {
+            let at = |row: usize| row * width + place;
+            let start = window.values[at(piece.start)];
+            let far = rows.clone().map(|row| {
+                let gap = (window.values[at(row)] - start).abs();
+                gap / window.doubts[at(row)].max(f64::MIN_POSITIVE)
+            });
+            far.fold(0.0, f64::max)
+        };
+        (0..width).map(moved).sum()
+    }
+
     /// Pieces without jumps, complete rows only.
     pub fn pieces(&self, linear: &Linear) -> Vec<Piece> {
         let mut pieces = Vec::new();

@@ -65,34 +65,37 @@ pub(super) fn with_hidden_start(
         Some(piece) if begins(piece) => Some(stretch(0, 0, piece.start + piece.rows, true)),
         _ => None,
     };
+    let fit = |stretch: &Stretch, sides: Sides| {
+        let system = System::new(trial, reference, record, stretch, sides);
+        system.map_or(Fit::NOTHING, |system| system.solve(record))
+    };
+    let mut found = Fit::NOTHING;
     if let Some(start) = start.filter(enough) {
-        let fit = |sides: Sides| {
-            let system = System::new(trial, reference, record, &start, sides);
-            system.map_or(Fit::NOTHING, |system| system.solve(record))
-        };
-        let plain = fit(Sides::After);
-        if plain.holds() || complete && !jumps_at_start {
-            return plain;
-        }
-        let others = [Sides::Before, Sides::Own].map(fit);
-        return others.into_iter().fold(plain, |best, other| {
-            if other.compared > 0 && other.ratio < best.ratio {
-                other
-            } else {
-                best
+        found = fit(&start, Sides::After);
+        if !found.holds() && (!complete || jumps_at_start) {
+            for sides in [Sides::Before, Sides::Own] {
+                let other = fit(&start, sides);
+                if other.compared > 0 && other.ratio < found.ratio {
+                    found = other;
+                }
             }
-        });
+        }
+        if found.ratio > 1.0 || !complete {
+            return found;
+        }
     }
     // A program may have begun anew after the jump: so many rows are of its start.
     let skip = (back as u64 - 1).div_ceil(trial.steps) as usize;
-    let longest = pieces.iter().max_by_key(|piece| piece.rows);
-    let later = longest
-        .filter(|piece| piece.rows > skip)
-        .map(|piece| stretch(piece.window, piece.start + skip, piece.rows - skip, false));
-    let later = later.filter(|later| complete && enough(later));
-    let system =
-        later.and_then(|later| System::new(trial, reference, record, &later, Sides::After));
-    system.map_or(Fit::NOTHING, |system| system.solve(record))
+    let later = pieces
+        .iter()
+        .filter(|piece| !begins(piece) && piece.rows > skip);
+    let later = later.max_by(|a, b| record.movement(a).total_cmp(&record.movement(b)));
+    let later =
+        later.map(|piece| stretch(piece.window, piece.start + skip, piece.rows - skip, false));
+    match later.filter(|later| complete && enough(later)) {
+        Some(later) => found.and(fit(&later, Sides::After)),
+        None => found,
+    }
 }
 
 /// The rows that are compared.

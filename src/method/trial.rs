@@ -14,7 +14,7 @@
 use super::drive::Drive;
 use super::linear::{Linear, Side};
 use super::march::{March, NEAR, Sides};
-use super::powers::{corner, identity, repeated, to_the_power};
+use super::powers::{corner, gathered, identity, to_the_power};
 use super::record::{Piece, Record, Window};
 use super::recurrence::Recurrence;
 use super::scale::{Rows, Scale};
@@ -112,7 +112,7 @@ impl<'a> Trial<'a> {
         let drive = Drive::new(linear);
         let single = drive.joined(linear, &recurrence);
         let stacked = recurrence.size() * recurrence.back();
-        let (_, gathered) = repeated(&corner(&single, stacked), steps);
+        let gathered = gathered(&corner(&single, stacked), steps);
         let joined = to_the_power(&single, steps);
         Trial {
             linear,
