@@ -1,5 +1,6 @@
 //! What an audit has found, as plain data: no formatting, no file formats.
 
+mod causes;
 mod evidence;
 mod methods;
 mod steps;
@@ -9,6 +10,7 @@ use crate::judge::Verdict;
 use crate::submission::{Expect, Role, Setting, Submission};
 use crate::trajectory::Finding;
 
+pub use causes::CauseOutcome;
 pub use evidence::{ClaimOutcome, Consistent, EvidenceOutcome, GrowthOutcome, RunEvidence};
 pub use methods::{AliasFacts, Factor, FormFacts, MethodFacts, SourceFacts, Written};
 pub use steps::{
@@ -67,6 +69,8 @@ pub struct Audited {
     pub order_verdict: Option<Verdict>,
     /// Which methods fit the runs; `None` without a case.
     pub evidence: Option<EvidenceOutcome>,
+    /// Likely causes of a failure.
+    pub causes: Vec<CauseOutcome>,
 }
 
 /// Whose limits an audit has used.
@@ -202,6 +206,7 @@ impl Audited {
             orders: Vec::new(),
             order_verdict: None,
             evidence: None,
+            causes: Vec::new(),
         }
     }
 

@@ -12,8 +12,6 @@ use crate::submission::{Setting, Submission};
 pub(super) struct RunFound {
     pub evidence: Evidence,
     pub answer: Option<Answer>,
-    /// Steps from row to row at the step stated.
-    pub steps: Option<u64>,
 }
 
 /// Claimed steps and rows agree to this part of the step.
@@ -85,7 +83,6 @@ fn ask_one(
     RunFound {
         evidence: found,
         answer,
-        steps,
     }
 }
 

@@ -4,6 +4,7 @@
 //! compares the runs of a submission without a case with each other.
 
 mod alone;
+mod causes;
 mod evidence;
 mod keep;
 mod run;
@@ -169,9 +170,10 @@ fn audit_one(planned: &Planned, library: &Library, models: &Models) -> Result<Au
         model.time_constant,
         &mut audited,
     );
-    let found = evidence::ask(&model, submission, &compared);
+    let mut found = evidence::ask(&model, submission, &compared);
     audited.runs = compared.iter().map(|one| one.outcome.clone()).collect();
     judge_runs(&mut audited);
+    causes::look(&model, submission, &compared, &mut found, &mut audited);
     evidence::conclude(submission, &compared, &found, &mut audited);
     Ok(audited)
 }

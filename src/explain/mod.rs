@@ -1,9 +1,11 @@
 //! What to say of a result: one sentence for each thing that decides, with what to
 //! change where that is known; and which step a case needs.
 
+mod causes;
 mod reasons;
 mod steps;
 
+pub use causes::{Cause, Kind, Trouble, causes};
 pub use reasons::{Place, fatal_finding, limit_broken, limit_hidden, order_reason, without_values};
 pub use steps::{
     Grid, MOST_COMPARED, MOST_PRODUCTS, MOST_STEPS, Question, Stepper, approx_stable_step,

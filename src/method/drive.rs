@@ -193,3 +193,26 @@ impl Signal {
         }
     }
 }
+
+impl Drive {
+    /// `G`, so that `w' = G w` between jumps and kinks.
+    pub fn generator(&self, linear: &Linear) -> Matrix<f64> {
+        let mut generator = Matrix::zero(self.size);
+        for (signal, &place) in linear.signals.iter().zip(&self.places) {
+            match signal {
+                Signal::Held(..) | Signal::Pulses(..) => {}
+                Signal::Exponential(_, rate) => generator[(place, place)] = *rate,
+                Signal::Sine(_, rate, _) => {
+                    generator[(place, place + 1)] = *rate;
+                    generator[(place + 1, place)] = -rate;
+                }
+                Signal::Lines(_) | Signal::Ramp(..) | Signal::Polynomial(_) => {
+                    for i in place..place + signal.entries() - 1 {
+                        generator[(i, i + 1)] = 1.0;
+                    }
+                }
+            }
+        }
+        generator
+    }
+}

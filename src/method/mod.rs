@@ -32,7 +32,7 @@ pub use march::{March, NEAR, Sides, add_forcing};
 pub use record::{Piece, Record, START_ROWS, Window, windows};
 pub use recurrence::{Node, Ranks, Reading, Recurrence};
 pub use scheme::{Coefficients, Scheme, Stages};
-pub use search::MOST_STEPS;
+pub use search::{MOST_STEPS, rank_orders};
 pub use stability::{
     Rational, Stability, amplification, approx_stability, approx_stable_length, of_stages, roots,
 };

@@ -243,7 +243,44 @@ impl Linear {
     }
 }
 
+impl Linear {
+    /// The first jump or kink of an input after a time.
+    pub fn next_jump(&self, time: f64) -> Option<f64> {
+        let next = self
+            .signals
+            .iter()
+            .filter_map(|signal| signal.next_jump(time));
+        next.min_by(f64::total_cmp)
+    }
+}
+
 impl Signal {
+    fn next_jump(&self, time: f64) -> Option<f64> {
+        match self {
+            Signal::Held(_, edges) => {
+                let next = edges.partition_point(|&(at, _)| at <= time);
+                edges.get(next).map(|&(at, _)| at)
+            }
+            Signal::Pulses(_, first, width, period, count) => {
+                let next = |offset: f64| {
+                    let mut number = ((time - offset) / period).floor().max(0.0);
+                    while offset + number * period <= time {
+                        number += 1.0;
+                    }
+                    (number < *count).then_some(offset + number * period)
+                };
+                let edges = [next(*first), next(first + width)];
+                edges.into_iter().flatten().min_by(f64::total_cmp)
+            }
+            Signal::Lines(knots) => {
+                let next = knots.partition_point(|&(at, _)| at <= time);
+                knots.get(next).map(|&(at, _)| at)
+            }
+            Signal::Ramp(_, at) => (*at > time).then_some(*at),
+            _ => None,
+        }
+    }
+
     fn jumps_within(&self, from: f64, to: f64) -> bool {
         match self {
             Signal::Held(_, edges) => {

@@ -20,7 +20,7 @@ const MOST_PAIRS: usize = 120;
 
 /// The orders in which a semi-implicit step may move the states: positions after the rates
 /// that they follow or before them where there are such, else one by one.
-pub(crate) fn rank_orders(linear: &Linear) -> Vec<Ranks> {
+pub fn rank_orders(linear: &Linear) -> Vec<Ranks> {
     let size = linear.size();
     let is_position = |i: usize| {
         let row = linear.matrix.row(i);

@@ -2,14 +2,14 @@
 
 use super::SCOPE;
 use super::wire::{
-    AuditReport, ChannelReport, ClaimReport, ConsistentReport, EvidenceReport, FindingReport,
-    GrowthReport, NotAuditedReport, OrderReport, PairReport, RunEvidenceReport, RunReport, SCHEMA,
-    SubmissionReport, Summary,
+    AuditReport, CauseReport, ChannelReport, ClaimReport, ConsistentReport, EvidenceReport,
+    FindingReport, GrowthReport, NotAuditedReport, OrderReport, PairReport, RunEvidenceReport,
+    RunReport, SCHEMA, SubmissionReport, Summary,
 };
 use crate::judge::Verdict;
 use crate::outcome::{
-    Audited, ChannelOutcome, ClaimOutcome, Consistent, EvidenceOutcome, GrowthOutcome, LimitsFrom,
-    Outcome, RunEvidence, RunOutcome,
+    Audited, CauseOutcome, ChannelOutcome, ClaimOutcome, Consistent, EvidenceOutcome,
+    GrowthOutcome, LimitsFrom, Outcome, RunEvidence, RunOutcome,
 };
 use crate::submission::{Expect, Role, Setting};
 
@@ -88,7 +88,7 @@ fn submission(audited: &Audited) -> SubmissionReport {
             })
             .collect(),
         evidence: audited.evidence.as_ref().map(evidence),
-        causes: Vec::new(),
+        causes: audited.causes.iter().map(cause).collect(),
         advice: None,
     }
 }
@@ -118,6 +118,16 @@ fn run(run: &RunOutcome) -> RunReport {
             })
             .collect(),
         channels: run.channels.iter().map(channel).collect(),
+    }
+}
+
+fn cause(cause: &CauseOutcome) -> CauseReport {
+    CauseReport {
+        kind: cause.kind.to_owned(),
+        file: cause.file.clone(),
+        text: cause.text.clone(),
+        number: cause.number.and_then(finite),
+        left_over: finite(cause.left_over),
     }
 }
 

@@ -328,6 +328,10 @@ fn reasons(submission: &Audited, screen: Screen) -> String {
             &format!("{more} more; the JSON report has all"),
         );
     }
+    for cause in &submission.causes {
+        let text = format!("likely cause: {}", cause.text);
+        lines += &line(screen, &submission.name, &text);
+    }
     lines
 }
 

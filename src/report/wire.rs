@@ -55,10 +55,24 @@ pub struct SubmissionReport {
     pub orders: Vec<OrderReport>,
     /// What the rows say of the claimed method; null without a case.
     pub evidence: Option<EvidenceReport>,
-    /// Likely causes of a failure; empty until they are computed.
-    pub causes: Vec<()>,
+    /// Likely causes of a failure.
+    pub causes: Vec<CauseReport>,
     /// Advice on the step; null until it is computed.
     pub advice: Option<()>,
+}
+
+/// A likely cause of a failure.
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
+#[allow(missing_docs)]
+pub struct CauseReport {
+    pub kind: String,
+    pub file: String,
+    pub text: String,
+    /// A factor, an offset, a time, a count of rows: what the text names.
+    pub number: Option<f64>,
+    /// The part of the error that it leaves.
+    pub left_over: Option<f64>,
 }
 
 /// Which methods fit the rows, and what that says of the claims.

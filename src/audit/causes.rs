@@ -1,0 +1,125 @@
+//! Likely causes for the runs of a submission that does not pass.
+
+use super::Model;
+use super::evidence::{RunFound, claimed_methods};
+use super::run::RunCompared;
+use crate::explain::{Cause, Trouble, causes};
+use crate::judge::{Support, Verdict};
+use crate::method::Linear;
+use crate::outcome::{Audited, CauseOutcome};
+use crate::submission::{Role, Setting, Submission};
+
+/// Runs of one submission that are looked into.
+const MOST_RUNS: usize = 2;
+
+/// Looks for causes where limits are broken or claims contradicted, and takes a
+/// contradiction back where the claimed method explains all that a fault leaves.
+pub(super) fn look(
+    model: &Model,
+    submission: &Submission,
+    runs: &[RunCompared],
+    found: &mut [RunFound],
+    audited: &mut Audited,
+) {
+    let linear = Linear::new(&model.case);
+    let methods = claimed_methods(submission);
+    let channels: Vec<(String, String)> = model
+        .case
+        .channels()
+        .iter()
+        .map(|channel| (channel.name.to_owned(), channel.unit.to_owned()))
+        .collect();
+    let inputs: Vec<String> = model
+        .case
+        .inputs
+        .iter()
+        .map(|input| input.name.clone())
+        .collect();
+    let mut looked = 0;
+    // The finest run decides on the order; results decide on limits.
+    let mut order: Vec<usize> = (0..runs.len()).collect();
+    order.sort_by_key(|&index| runs[index].outcome.role != Role::Result);
+    for index in order {
+        let (run, found) = (&runs[index], &mut found[index]);
+        let broken = |verdict: Verdict| {
+            run.outcome
+                .channels
+                .iter()
+                .any(|channel| channel.verdict == verdict)
+        };
+        let result = run.outcome.role == Role::Result;
+        let contradicted = found
+            .answer
+            .as_ref()
+            .is_some_and(|a| a.support == Support::Contradicts);
+        let low_order = audited.order_verdict == Some(Verdict::Fail);
+        if !(contradicted || result && (broken(Verdict::Fail) || low_order)) || looked >= MOST_RUNS
+        {
+            continue;
+        }
+        looked += 1;
+        let step = match run.outcome.setting {
+            Setting::Step(step) => Some(step),
+            Setting::Tolerance(_) | Setting::Unstated => None,
+        };
+        let trouble = Trouble {
+            linear: &linear,
+            record: &run.record,
+            evidence: &found.evidence,
+            answer: found.answer.as_ref(),
+            methods: &methods,
+            step,
+            channels: &channels,
+            inputs: &inputs,
+            time_unit: &model.case.time.unit,
+        };
+        let causes = causes(&trouble);
+        if let Some(answer) = found.answer.as_mut().filter(|_| contradicted)
+            && let Some(cause) = mended(&causes, &methods)
+        {
+            answer.support = Support::CannotTell;
+            answer.method = answer.method.map(|_| Support::CannotTell);
+            answer.step = answer.step.map(|_| Support::CannotTell);
+            answer.text = format!(
+                "the rows do not follow {} as they stand, yet they do once this is mended: {}",
+                submission
+                    .claims
+                    .method
+                    .as_deref()
+                    .unwrap_or("the claimed method"),
+                cause.text
+            );
+        }
+        for cause in causes {
+            let known = |other: &CauseOutcome| other.kind == cause.kind.word();
+            if audited
+                .causes
+                .iter()
+                .any(|other| known(other) && other.file != run.outcome.file)
+            {
+                continue;
+            }
+            audited.causes.push(CauseOutcome {
+                file: run.outcome.file.clone(),
+                kind: cause.kind.word(),
+                text: cause.text,
+                number: cause.number,
+                left_over: cause.left_over,
+            });
+        }
+    }
+}
+
+/// A fault that leaves exactly what the claimed method would have written.
+fn mended<'a>(
+    causes: &'a [Cause],
+    methods: &[&'static crate::method::Method],
+) -> Option<&'a Cause> {
+    use crate::explain::Kind::{CoarserStep, OtherMethod};
+    causes.iter().find(|cause| {
+        let claimed = cause
+            .method
+            .is_some_and(|own| methods.iter().any(|m| m.name == own.name));
+        claimed && !matches!(cause.kind, CoarserStep | OtherMethod)
+    })
+}

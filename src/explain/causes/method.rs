@@ -1,0 +1,238 @@
+//! What the method itself explains: a step beyond its stability limit, ringing, a coarser
+//! step than claimed, another method, a start at too low an order.
+
+use super::bench::{Rows, Stepping, Way, exactly, trajectory};
+use super::{Candidate, Kind, Names};
+use crate::method::{Coefficients, Linear, Method, amplification, approx_stable_length, roots};
+use crate::number::short;
+
+use nalgebra::{Complex, DMatrix};
+
+/// Causes that lie in a method at a step which explains the rows.
+pub(super) fn candidates(
+    linear: &Linear,
+    rows: &Rows,
+    names: &Names,
+    method: &'static Method,
+    step: f64,
+    values: &[f64],
+) -> Vec<Candidate> {
+    let Some(scheme) = method.schemes.first() else {
+        return Vec::new();
+    };
+    let coefficients = scheme.coefficients();
+    let mut found = Vec::new();
+    let fastest = eigenvalues(linear)
+        .into_iter()
+        .filter(|value| value.re < 0.0)
+        .max_by(|a, b| {
+            let size = |value: &Complex<f64>| amplification(&coefficients, value * step);
+            size(a).total_cmp(&size(b))
+        });
+    let Some(eigenvalue) = fastest else {
+        return found;
+    };
+    let factor = amplification(&coefficients, eigenvalue * step);
+    if factor > 1.0 + 1e-9 && grows(rows) {
+        let limit = approx_stable_length(&coefficients, eigenvalue / eigenvalue.norm());
+        let limit = limit.map_or(String::new(), |length| {
+            format!(
+                "; it is stable up to {} {}",
+                short(length / eigenvalue.norm()),
+                names.time_unit
+            )
+        });
+        let text = format!(
+            "the step of {} {} is beyond the stability limit of {}: a decaying mode grows by {} in \
+             every step{limit}",
+            short(step),
+            names.time_unit,
+            method.name,
+            short(factor)
+        );
+        found.push(Candidate::new(
+            Kind::UnstableStep,
+            0,
+            Some(factor),
+            values.to_vec(),
+            text,
+        ));
+    } else if let Some(factor) = ringing(&coefficients, linear, step)
+        && alternates(rows)
+    {
+        let text = format!(
+            "ringing: {} is not L-stable and multiplies the fastest mode by {} in every step of {} {}; \
+             start with a few short or damped steps, or take an L-stable method",
+            method.name,
+            short(factor),
+            short(step),
+            names.time_unit
+        );
+        found.push(Candidate::new(
+            Kind::Ringing,
+            0,
+            Some(factor),
+            values.to_vec(),
+            text,
+        ));
+    }
+    found
+}
+
+/// A multistep method whose first steps were made at too low an order: the rows obey its
+/// formula, and with a good start it would have left far less.
+pub(super) fn low_order_start(
+    linear: &Linear,
+    rows: &Rows,
+    names: &Names,
+    method: &'static Method,
+    step: f64,
+) -> Option<Candidate> {
+    let back = method
+        .schemes
+        .iter()
+        .map(|scheme| scheme.steps_back())
+        .max()?;
+    let spacing = rows.spacing?;
+    if back < 2 || (spacing / step).round() != 1.0 || rows.len() < back + 4 {
+        return None;
+    }
+    let share = |values: &[f64]| {
+        let gaps = values.iter().zip(&rows.exact).enumerate();
+        gaps.map(|(at, (x, y))| {
+            (x - y).abs() / rows.peaks[at % rows.width()].max(f64::MIN_POSITIVE)
+        })
+        .fold(0.0, f64::max)
+    };
+    let written = share(&rows.written);
+    let well_started = Stepping::all(method, linear, step)
+        .into_iter()
+        .find_map(|stepping| {
+            let values = trajectory(linear, rows, &Way::Stepped(stepping))?;
+            (share(&values) < 0.25 * written).then_some(values)
+        })?;
+    let _ = well_started;
+    // The first row after the start tells what made it.
+    let by_euler = Stepping::all(crate::method::find("forward Euler")?, linear, step)
+        .into_iter()
+        .chain(Stepping::all(
+            crate::method::find("backward Euler")?,
+            linear,
+            step,
+        ))
+        .find(|stepping| {
+            let values = trajectory(linear, rows, &Way::Stepped(stepping.clone()));
+            values.is_some_and(|values| {
+                (rows.width()..2 * rows.width())
+                    .all(|at| (values[at] - rows.written[at]).abs() <= rows.allowed[at])
+            })
+        });
+    let how = by_euler.map_or("at too low an order".to_owned(), |stepping| {
+        format!("by {}", stepping.method.name)
+    });
+    let text = format!(
+        "the first {} of {} are made {how}, and their error stays; start it with a one-step method \
+         of its own order",
+        if back == 2 {
+            "step".to_owned()
+        } else {
+            format!("{} steps", back - 1)
+        },
+        method.name
+    );
+    let _ = names;
+    Some(Candidate::new(
+        Kind::LowOrderStart,
+        0,
+        Some((back - 1) as f64),
+        rows.written.clone(),
+        text,
+    ))
+}
+
+/// Time that was summed in single precision: the stamps drift, the states do not.
+pub(super) fn single_precision_time(
+    linear: &Linear,
+    rows: &Rows,
+    names: &Names,
+) -> Option<Candidate> {
+    let spacing = rows.spacing?;
+    let all_single = rows.times.iter().all(|&t| f64::from(t as f32) == t);
+    let from = linear.window.0;
+    let even = |row: usize| from + rows.numbers[row] as f64 * spacing;
+    let drift = |row: usize| rows.times[row] - even(row);
+    let worst = (0..rows.len())
+        .map(|row| drift(row).abs())
+        .fold(0.0, f64::max);
+    let single = f64::from(f32::EPSILON);
+    let largest = rows.times.iter().fold(0.0f64, |m, t| m.max(t.abs()));
+    if !all_single || worst <= 0.5 * single * largest {
+        return None;
+    }
+    // The state is that of the even grid.
+    let mut at_even = rows.clone();
+    at_even.times = (0..rows.len()).map(even).collect();
+    let values = exactly(linear, &at_even, 0.0)?;
+    let text = format!(
+        "time is summed in single precision: the stamps are up to {} {} off the steps; count steps and \
+         multiply, in double precision",
+        short(worst),
+        names.time_unit
+    );
+    Some(Candidate::new(
+        Kind::SinglePrecisionTime,
+        1,
+        Some(worst),
+        values,
+        text,
+    ))
+}
+
+fn eigenvalues(linear: &Linear) -> Vec<Complex<f64>> {
+    let size = linear.size();
+    let matrix = DMatrix::from_fn(size, size, |i, j| linear.matrix[(i, j)]);
+    matrix.complex_eigenvalues().iter().copied().collect()
+}
+
+/// The errors grow by orders of magnitude towards the end.
+fn grows(rows: &Rows) -> bool {
+    let error = |row: usize| {
+        let line = row * rows.width()..(row + 1) * rows.width();
+        line.map(|at| {
+            (rows.written[at] - rows.exact[at]).abs()
+                / rows.peaks[at % rows.width()].max(f64::MIN_POSITIVE)
+        })
+        .fold(0.0, f64::max)
+    };
+    let half = rows.len() / 2;
+    let early = (0..half).map(error).fold(0.0, f64::max);
+    let late = (half..rows.len()).map(error).fold(0.0, f64::max);
+    late > 3.0 * early
+}
+
+/// The most negative factor of a decaying mode that should be nearly gone after a step.
+fn ringing(coefficients: &Coefficients, linear: &Linear, step: f64) -> Option<f64> {
+    let factors = eigenvalues(linear)
+        .into_iter()
+        .filter(|value| value.re * step < -2.0);
+    let factors = factors.flat_map(|value| roots(coefficients, value * step));
+    let worst = factors.map(|factor| factor.re).fold(0.0, f64::min);
+    (worst < -0.3 && worst >= -1.0 - 1e-9).then_some(worst)
+}
+
+/// The errors change sign from row to row for a while.
+fn alternates(rows: &Rows) -> bool {
+    let width = rows.width();
+    (0..width).any(|channel| {
+        let error =
+            |row: usize| rows.written[row * width + channel] - rows.exact[row * width + channel];
+        let swings = (1..rows.len()).map(|row| error(row) * error(row - 1) < 0.0);
+        let mut longest = 0;
+        let mut run = 0;
+        for swing in swings {
+            run = if swing { run + 1 } else { 0 };
+            longest = longest.max(run);
+        }
+        longest >= 4
+    })
+}

@@ -1,0 +1,502 @@
+//! Likely causes of a failing run. Each hypothesis is computed: a fault is put into the
+//! model, into a method's work on it, or into what was written, and the result is laid
+//! beside the file. A cause is named where nothing is left but digits and rounding; where no
+//! method of the catalogue is known to have been at work, where no more is left than the
+//! method would leave and the fault stands far out of it. Of several the simplest is named,
+//! and all that are equally simple.
+
+mod bench;
+mod method;
+mod model;
+mod written;
+
+use bench::{Gap, Rows, Stepping, Way, trajectory};
+
+use crate::judge::{Answer, Support, family_at};
+use crate::method::{Evidence, Family, Linear, Method, Reading, Record, find};
+
+/// What a run failed by.
+#[derive(Clone, Copy, Debug, PartialEq, Eq, PartialOrd, Ord)]
+#[allow(missing_docs)]
+pub enum Kind {
+    RowsShifted,
+    InputLate,
+    InputEarly,
+    InputHeld,
+    InputMissing,
+    JumpOffGrid,
+    JumpAtStage,
+    PulseMissed,
+    StartValue,
+    RateScaled,
+    Gain,
+    Sign,
+    Offset,
+    Unit,
+    ChannelsSwapped,
+    SinglePrecision,
+    SinglePrecisionTime,
+    CoarsePrint,
+    UnstableStep,
+    Ringing,
+    CoarserStep,
+    OtherMethod,
+    LowOrderStart,
+    InterpolatedRows,
+    Clipped,
+    Frozen,
+    Noise,
+}
+
+impl Kind {
+    /// The word in reports.
+    pub fn word(self) -> &'static str {
+        match self {
+            Kind::RowsShifted => "rows-shifted",
+            Kind::InputLate => "input-late",
+            Kind::InputEarly => "input-early",
+            Kind::InputHeld => "input-held",
+            Kind::InputMissing => "input-missing",
+            Kind::JumpOffGrid => "jump-off-grid",
+            Kind::JumpAtStage => "jump-at-stage",
+            Kind::PulseMissed => "pulse-missed",
+            Kind::StartValue => "start-value",
+            Kind::RateScaled => "rate-scaled",
+            Kind::Gain => "gain",
+            Kind::Sign => "sign",
+            Kind::Offset => "offset",
+            Kind::Unit => "unit",
+            Kind::ChannelsSwapped => "channels-swapped",
+            Kind::SinglePrecision => "single-precision",
+            Kind::SinglePrecisionTime => "single-precision-time",
+            Kind::CoarsePrint => "coarse-print",
+            Kind::UnstableStep => "unstable-step",
+            Kind::Ringing => "ringing",
+            Kind::CoarserStep => "coarser-step",
+            Kind::OtherMethod => "other-method",
+            Kind::LowOrderStart => "low-order-start",
+            Kind::InterpolatedRows => "interpolated-rows",
+            Kind::Clipped => "clipped",
+            Kind::Frozen => "frozen",
+            Kind::Noise => "noise",
+        }
+    }
+}
+
+/// A cause that explains a failing run.
+#[derive(Clone, Debug, PartialEq)]
+pub struct Cause {
+    /// What it is.
+    pub kind: Kind,
+    /// What, where, the number and what to change.
+    pub text: String,
+    /// The number alone: a factor, an offset, a time, a count of rows.
+    pub number: Option<f64>,
+    /// The part of the error that it leaves.
+    pub left_over: f64,
+    /// The method that explains the rest, where one of the catalogue does.
+    pub method: Option<&'static Method>,
+}
+
+/// A failing run and all that is known of it.
+#[derive(Clone, Copy, Debug)]
+pub struct Trouble<'a> {
+    /// The model.
+    pub linear: &'a Linear,
+    /// The rows.
+    pub record: &'a Record,
+    /// What methods fit them.
+    pub evidence: &'a Evidence,
+    /// What that says of the claim.
+    pub answer: Option<&'a Answer>,
+    /// The claimed method, by all that it can mean.
+    pub methods: &'a [&'static Method],
+    /// The step as stated.
+    pub step: Option<f64>,
+    /// Names and units of all channels of the case.
+    pub channels: &'a [(String, String)],
+    /// Names of the inputs.
+    pub inputs: &'a [String],
+    /// The unit of time.
+    pub time_unit: &'a str,
+}
+
+/// Names for sentences.
+#[derive(Debug)]
+struct Names<'a> {
+    /// Of the columns.
+    columns: Vec<(String, String)>,
+    states: &'a [(String, String)],
+    inputs: &'a [String],
+    time_unit: &'a str,
+}
+
+impl Names<'_> {
+    fn channel(&self, column: usize) -> String {
+        self.columns
+            .get(column)
+            .map_or(String::new(), |(name, _)| format!("`{name}`"))
+    }
+
+    fn unit(&self, column: usize) -> &str {
+        self.columns
+            .get(column)
+            .map_or("", |(_, unit)| unit.as_str())
+    }
+
+    fn list(&self, columns: &[usize]) -> String {
+        let names: Vec<String> = columns.iter().map(|&column| self.channel(column)).collect();
+        names.join(", ")
+    }
+}
+
+/// A hypothesis with what it predicts.
+#[derive(Clone, Debug)]
+struct Candidate {
+    kind: Kind,
+    /// How much it assumes: numbers that were looked for, channels that were picked.
+    complexity: u8,
+    number: Option<f64>,
+    values: Vec<f64>,
+    text: String,
+}
+
+impl Candidate {
+    fn new(
+        kind: Kind,
+        complexity: u8,
+        number: Option<f64>,
+        values: Vec<f64>,
+        text: String,
+    ) -> Candidate {
+        Candidate {
+            kind,
+            complexity,
+            number,
+            values,
+            text,
+        }
+    }
+}
+
+/// Methods that are tried beside the claimed one.
+const USUAL: [&str; 8] = [
+    "Heun",
+    "classical RK4",
+    "forward Euler",
+    "backward Euler",
+    "trapezoidal",
+    "explicit midpoint",
+    "implicit midpoint",
+    "exponential Euler",
+];
+/// A fault of unknown company has to stand out of what the method leaves by this factor,
+/// and to take away all but this part of the error.
+const STANDS_OUT: f64 = 3.0;
+const TAKES_AWAY: f64 = 0.1;
+/// Causes named at most.
+const MOST_NAMED: usize = 4;
+
+/// The causes that explain a failing run; none where nothing does.
+pub fn causes(trouble: &Trouble) -> Vec<Cause> {
+    let rows = Rows::new(trouble.record);
+    if rows.len() < 5 || rows.width() == 0 {
+        return Vec::new();
+    }
+    let column = |&channel: &usize| trouble.channels.get(channel).cloned().unwrap_or_default();
+    let names = Names {
+        columns: rows.channels.iter().map(column).collect(),
+        states: trouble.channels,
+        inputs: trouble.inputs,
+        time_unit: trouble.time_unit,
+    };
+    let before = rows.gap(&rows.exact);
+    let family = explaining_family(trouble);
+    let found = match family {
+        Some(family) => of_method(trouble, &rows, &names, family, before),
+        None => of_faults(trouble, &rows, &names, before),
+    };
+    chosen(found)
+}
+
+/// A cause with what orders it among others.
+type Ranked = (u8, f64, Cause);
+
+fn chosen(mut found: Vec<Ranked>) -> Vec<Cause> {
+    found.sort_by(|a, b| a.0.cmp(&b.0).then(a.1.total_cmp(&b.1)));
+    let Some(simplest) = found.first().map(|first| first.0) else {
+        return Vec::new();
+    };
+    found.retain(|one| one.0 == simplest);
+    let mut causes: Vec<Cause> = Vec::new();
+    for (_, _, cause) in found {
+        if causes
+            .iter()
+            .all(|known| known.kind != cause.kind || known.text != cause.text)
+            && causes
+                .iter()
+                .filter(|known| known.kind == cause.kind)
+                .count()
+                < 2
+        {
+            causes.push(cause);
+        }
+    }
+    causes.truncate(MOST_NAMED);
+    causes
+}
+
+/// The family that explains the rows without any fault, the claimed one first.
+fn explaining_family<'a>(trouble: &Trouble<'a>) -> Option<&'a Family> {
+    let evidence: &'a Evidence = trouble.evidence;
+    if evidence.is_exact() {
+        return None;
+    }
+    let claimed = |family: &&Family| {
+        let is_claimed = |m: &&Method| trouble.methods.iter().any(|c| c.name == m.name);
+        family.methods.iter().copied().any(|m| is_claimed(&m))
+    };
+    let consistent = &evidence.consistent;
+    consistent
+        .iter()
+        .find(claimed)
+        .or_else(|| consistent.first())
+}
+
+fn ranked(
+    candidate: Candidate,
+    left_over: f64,
+    method: Option<&'static Method>,
+    ratio: f64,
+) -> Ranked {
+    (
+        candidate.complexity,
+        ratio,
+        Cause {
+            kind: candidate.kind,
+            text: candidate.text,
+            number: candidate.number,
+            left_over,
+            method,
+        },
+    )
+}
+
+/// The rows are those of a method: what is wrong lies in it, in its step, or in how it
+/// reads inputs.
+fn of_method(
+    trouble: &Trouble,
+    rows: &Rows,
+    names: &Names,
+    family: &Family,
+    before: Gap,
+) -> Vec<Ranked> {
+    let linear = trouble.linear;
+    let Some(&method) = family.methods.first() else {
+        return Vec::new();
+    };
+    let mut candidates = Vec::new();
+    let claimed = family
+        .methods
+        .iter()
+        .find(|m| trouble.methods.iter().any(|c| c.name == m.name));
+    let method = claimed.copied().unwrap_or(method);
+    if let Some(answer) = trouble
+        .answer
+        .filter(|answer| answer.support == Support::Contradicts)
+    {
+        let coarser = answer.method == Some(Support::Agrees);
+        let text = |what: &str| {
+            format!(
+                "{what}: the rows are those of {}",
+                family_at(family, trouble.time_unit)
+            )
+        };
+        let longer = family
+            .step
+            .zip(trouble.step)
+            .is_some_and(|(own, stated)| own > stated);
+        if coarser && longer {
+            let text = text("a coarser step than stated");
+            candidates.push(Candidate::new(
+                Kind::CoarserStep,
+                0,
+                family.step,
+                Vec::new(),
+                text,
+            ));
+        } else if !coarser {
+            let text = text("another method than claimed");
+            candidates.push(Candidate::new(
+                Kind::OtherMethod,
+                0,
+                family.step,
+                Vec::new(),
+                text,
+            ));
+        }
+    }
+    let Some(step) = family.step else {
+        return candidates
+            .into_iter()
+            .map(|c| ranked(c, 1.0, Some(method), 0.0))
+            .collect();
+    };
+    candidates.extend(method::candidates(
+        linear,
+        rows,
+        names,
+        method,
+        step,
+        &rows.written,
+    ));
+    candidates.extend(method::low_order_start(linear, rows, names, method, step));
+    // The way that it was run, as far as it can be told.
+    let ways = Stepping::all(method, linear, step)
+        .into_iter()
+        .flat_map(|stepping| {
+            [
+                Reading::AtNodes,
+                Reading::Held,
+                Reading::FromEnd,
+                Reading::Mean,
+            ]
+            .map(|reading| Stepping {
+                reading,
+                ..stepping.clone()
+            })
+        });
+    let way = ways.map(Way::Stepped).find(|way| {
+        let reading_fits = matches!(way, Way::Stepped(s) if s.reading == family.reading);
+        let values = trajectory(linear, rows, way).filter(|_| reading_fits);
+        values.is_some_and(|values| rows.gap(&values).is_closed())
+    });
+    let single = trouble.record.unit > f64::EPSILON;
+    if let Some(way) = &way {
+        candidates.extend(model::jumps(linear, rows, names, way));
+        if family.reading == Reading::Held {
+            candidates.extend(model::held_as_found(linear, rows, names, way, step));
+        }
+        if single
+            && let Some(values) = trajectory(linear, rows, way)
+            && rows.error_of(&values) < 0.25 * before.share
+        {
+            candidates.extend(written::single_arithmetic());
+        }
+    }
+    candidates
+        .into_iter()
+        .map(|c| ranked(c, 1.0, Some(method), 0.0))
+        .collect()
+}
+
+/// No method explains the rows: faults on top of the exact solution, of the claimed method
+/// and of usual ones.
+fn of_faults(trouble: &Trouble, rows: &Rows, names: &Names, before: Gap) -> Vec<Ranked> {
+    let linear = trouble.linear;
+    let mut found = Vec::new();
+    let own = |candidate: Candidate| ranked(candidate, 0.0, None, 0.0);
+    if let Some(candidate) = written::interpolated(rows, names) {
+        return vec![own(candidate)];
+    }
+    if let Some(candidate) = method::single_precision_time(linear, rows, names) {
+        let after = rows.gap(&candidate.values);
+        if after.share <= TAKES_AWAY * before.share {
+            return vec![ranked(candidate, after.share / before.share, None, 0.0)];
+        }
+    }
+    let step = trouble.step.or(rows.spacing);
+    let mut ways: Vec<(Way, Option<&'static Method>)> = vec![(Way::Exact, None)];
+    if let Some(step) = step.filter(|&step| rows.spacing.is_some_and(|h| step <= h * (1.0 + 1e-9)))
+    {
+        let usual = USUAL.iter().filter_map(|name| find(name));
+        let mut methods: Vec<&'static Method> = trouble.methods.to_vec();
+        methods.extend(usual);
+        for (place, &method) in methods.iter().enumerate() {
+            if methods[..place]
+                .iter()
+                .any(|known| known.name == method.name)
+            {
+                continue;
+            }
+            let all = Stepping::all(method, linear, step);
+            ways.extend(
+                all.into_iter()
+                    .map(|stepping| (Way::Stepped(stepping), Some(method))),
+            );
+        }
+    }
+    let model_step = step.unwrap_or(0.0);
+    let mut loose: Vec<Ranked> = Vec::new();
+    let mut smooth: Option<Candidate> = None;
+    let healthy = healthy_share(trouble, rows, step);
+    for (way, method) in &ways {
+        let base = match way {
+            Way::Exact => Some(rows.exact.clone()),
+            way => trajectory(linear, rows, way),
+        };
+        let Some(base) = base else { continue };
+        let mut candidates = written::candidates(rows, names, &base, 0.0);
+        let exact = matches!(way, Way::Exact);
+        if exact {
+            candidates.extend(written::half_shifted(linear, rows, names));
+            candidates.extend(written::candidates(
+                rows,
+                names,
+                &base,
+                STANDS_OUT * healthy,
+            ));
+        }
+        if model_step > 0.0 {
+            candidates.extend(model::candidates(linear, rows, names, way, model_step));
+        }
+        for candidate in candidates {
+            let after = rows.gap(&candidate.values);
+            let left_over = after.share / before.share.max(f64::MIN_POSITIVE);
+            if after.is_closed() {
+                found.push(ranked(candidate, left_over, *method, after.ratio));
+            } else if exact
+                && before.share >= STANDS_OUT * healthy
+                && after.share <= 1.5 * healthy
+                && left_over <= TAKES_AWAY
+            {
+                loose.push(ranked(candidate, left_over, None, after.share));
+            }
+        }
+        if let Some(candidate) = written::noise(rows, names, &base)
+            && smooth
+                .as_ref()
+                .is_none_or(|known| candidate.number < known.number)
+        {
+            smooth = Some(candidate);
+        }
+    }
+    if found.is_empty() {
+        found = loose;
+    }
+    if found.is_empty() {
+        found.extend(smooth.map(own));
+    }
+    found
+}
+
+/// What the claimed method leaves at the step, or forward Euler where none is claimed, or
+/// backward Euler where that is not stable.
+fn healthy_share(trouble: &Trouble, rows: &Rows, step: Option<f64>) -> f64 {
+    let Some(step) = step else { return 1e-3 };
+    let shares = |methods: &[&'static Method]| -> Option<f64> {
+        let ways = methods
+            .iter()
+            .flat_map(|m| Stepping::all(m, trouble.linear, step));
+        let shares = ways.filter_map(|stepping| {
+            let values = trajectory(trouble.linear, rows, &Way::Stepped(stepping))?;
+            Some(rows.error_of(&values)).filter(|share| *share < 1.0)
+        });
+        shares.reduce(f64::max)
+    };
+    let usual = |name: &str| find(name).and_then(|method| shares(&[method]));
+    shares(trouble.methods)
+        .or_else(|| usual("forward Euler"))
+        .or_else(|| usual("backward Euler"))
+        .unwrap_or(1e-2)
+}

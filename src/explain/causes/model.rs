@@ -1,0 +1,540 @@
+//! Faults in the model that was run: inputs late, early, held or missing, a wrong start, a
+//! rate scaled, jumps between steps or at stages, pulses that no step has seen.
+
+use super::bench::{Rows, Way, trajectory};
+use super::written::slip;
+use super::{Candidate, Kind, Names};
+use crate::method::{Linear, Reading, Side, Sides, Signal};
+use crate::number::{plain, short};
+
+/// Every fault of this kind that could have turned the model, solved in one way, into what
+/// is written. `step` is the one of the program, as far as it is known.
+pub(super) fn candidates(
+    linear: &Linear,
+    rows: &Rows,
+    names: &Names,
+    way: &Way,
+    step: f64,
+) -> Vec<Candidate> {
+    let mut found = Vec::new();
+    found.extend(moved_inputs(linear, rows, names, way, step));
+    found.extend(missing_inputs(linear, rows, names, way, step));
+    found.extend(held(linear, rows, names, way, step));
+    found.extend(start(linear, rows, names, way));
+    found.extend(rates(linear, rows, names, way));
+    found
+}
+
+/// Steps by which an input may be late.
+const SHIFTS: [f64; 7] = [1.0, 0.5, 2.0, 3.0, 4.0, 5.0, 10.0];
+
+fn moved_inputs(
+    linear: &Linear,
+    rows: &Rows,
+    names: &Names,
+    way: &Way,
+    step: f64,
+) -> Vec<Candidate> {
+    let mut found = Vec::new();
+    let moving: Vec<usize> = (0..linear.signals.len())
+        .filter(
+            |&input| !matches!(&linear.signals[input], Signal::Held(_, edges) if edges.is_empty()),
+        )
+        .collect();
+    let mut sets: Vec<Vec<usize>> = moving.iter().map(|&input| vec![input]).collect();
+    if moving.len() > 1 {
+        sets.push(moving);
+    }
+    for inputs in sets {
+        for shift in SHIFTS {
+            for late in [true, false] {
+                let by = if late { shift * step } else { -shift * step };
+                let mut moved = linear.clone();
+                for &input in &inputs {
+                    moved.signals[input] = linear.signals[input].later(by);
+                }
+                let Some(values) = trajectory(&moved, rows, way) else {
+                    continue;
+                };
+                let list: Vec<String> = inputs
+                    .iter()
+                    .map(|&i| format!("`{}`", names.inputs[i]))
+                    .collect();
+                let steps = match shift {
+                    0.5 => "half a step".to_owned(),
+                    1.0 => "one step".to_owned(),
+                    more => format!("{} steps", plain(more)),
+                };
+                let acts = if inputs.len() == 1 { "input" } else { "inputs" };
+                let verb = if inputs.len() == 1 { "acts" } else { "act" };
+                let mut text = format!(
+                    "{acts} {} {verb} {} {} {}: {steps}",
+                    list.join(", "),
+                    short(by.abs()),
+                    names.time_unit,
+                    if late { "late" } else { "early" }
+                );
+                text += match (late, shift == 1.0) {
+                    (true, true) => "; the value of the step before is being used",
+                    (false, true) => "; the value of the next step is being used",
+                    _ => "; check the times at which inputs are read",
+                };
+                let kind = if late {
+                    Kind::InputLate
+                } else {
+                    Kind::InputEarly
+                };
+                let complexity = if inputs.len() > 1 { 2 } else { 1 };
+                found.push(Candidate::new(
+                    kind,
+                    complexity,
+                    Some(by.abs()),
+                    values,
+                    text,
+                ));
+            }
+        }
+    }
+    found
+}
+
+fn missing_inputs(
+    linear: &Linear,
+    rows: &Rows,
+    names: &Names,
+    way: &Way,
+    step: f64,
+) -> Vec<Candidate> {
+    let missing = |input: usize| {
+        let mut without = linear.clone();
+        without.signals[input] = Signal::Held(0.0, Vec::new());
+        let values = trajectory(&without, rows, way)?;
+        let name = &names.inputs[input];
+        let width = linear.signals[input].pulse_width();
+        Some(match width.filter(|&width| width < step) {
+            Some(width) => Candidate::new(
+                Kind::PulseMissed,
+                0,
+                Some(width),
+                values,
+                format!(
+                    "the pulse of input `{name}`, {} {} wide, is stepped over: a step of {} {} never \
+                     sees it; keep steps below the width, or let them end at its edges",
+                    short(width),
+                    names.time_unit,
+                    short(step),
+                    names.time_unit
+                ),
+            ),
+            None => Candidate::new(
+                Kind::InputMissing,
+                0,
+                None,
+                values,
+                format!("input `{name}` has no effect; connect it"),
+            ),
+        })
+    };
+    (0..linear.signals.len()).filter_map(missing).collect()
+}
+
+/// Inputs that are held over the step though they vary.
+fn held(linear: &Linear, rows: &Rows, names: &Names, way: &Way, step: f64) -> Option<Candidate> {
+    if linear.is_steady() {
+        return None;
+    }
+    let stepping = match way {
+        Way::Stepped(stepping) => super::bench::Stepping {
+            reading: Reading::Held,
+            ..stepping.clone()
+        },
+        Way::Exact => super::bench::Stepping {
+            reading: Reading::Held,
+            ..super::bench::Stepping::all(crate::method::find("exponential Euler")?, linear, step)
+                .into_iter()
+                .next()?
+        },
+    };
+    let values = trajectory(linear, rows, &Way::Stepped(stepping))?;
+    Some(held_text(linear, names, step, values))
+}
+
+/// The same where the rows are known to fit it.
+pub(super) fn held_as_found(
+    linear: &Linear,
+    rows: &Rows,
+    names: &Names,
+    way: &Way,
+    step: f64,
+) -> Option<Candidate> {
+    let values = trajectory(linear, rows, way)?;
+    Some(held_text(linear, names, step, values))
+}
+
+fn held_text(linear: &Linear, names: &Names, step: f64, values: Vec<f64>) -> Candidate {
+    let varying: Vec<String> = linear
+        .signals
+        .iter()
+        .zip(names.inputs)
+        .filter(|(signal, _)| !signal.is_steady())
+        .map(|(_, name)| format!("`{name}`"))
+        .collect();
+    let text = format!(
+        "input {} is held over each step of {} {} though it varies: first order in the step, whatever the \
+         method; read inputs at the stages of the method",
+        varying.join(", "),
+        short(step),
+        names.time_unit
+    );
+    Candidate::new(Kind::InputHeld, 0, Some(step), values, text)
+}
+
+/// A wrong start of one state.
+fn start(linear: &Linear, rows: &Rows, names: &Names, way: &Way) -> Vec<Candidate> {
+    let Some(base) = trajectory(linear, rows, way) else {
+        return Vec::new();
+    };
+    let one = |state: usize| {
+        // The response is linear in the start: one unit more of it tells the rest.
+        let unit = linear.start[state]
+            .abs()
+            .max(rows.peaks.iter().copied().fold(0.0, f64::max))
+            .max(1.0);
+        let mut moved = linear.clone();
+        moved.start[state] += unit;
+        let response = trajectory(&moved, rows, way)?;
+        let (mut both, mut own) = (0.0, 0.0);
+        for at in 0..base.len() {
+            let weight = 1.0 / rows.peaks[at % rows.width()].max(f64::MIN_POSITIVE);
+            let effect = (response[at] - base[at]) * weight;
+            both += effect * (rows.written[at] - base[at]) * weight;
+            own += effect * effect;
+        }
+        if own == 0.0 {
+            return None;
+        }
+        let share = both / own;
+        let values = base
+            .iter()
+            .zip(&response)
+            .map(|(x, r)| x + share * (r - x))
+            .collect();
+        let value = linear.start[state] + share * unit;
+        let text = format!(
+            "`{}` starts at {} {} where the case starts it at {}",
+            names.states[state].0,
+            short(value),
+            names.states[state].1,
+            plain(linear.start[state])
+        );
+        Some(Candidate::new(
+            Kind::StartValue,
+            1,
+            Some(value),
+            values,
+            text,
+        ))
+    };
+    (0..linear.size()).filter_map(one).collect()
+}
+
+/// What is scaled: every rate, or that of one state.
+#[derive(Clone, Copy, PartialEq)]
+enum Scaled {
+    All,
+    Time,
+    One(usize),
+}
+
+impl Scaled {
+    fn apply(self, linear: &Linear, factor: f64) -> Linear {
+        let mut scaled = linear.clone();
+        let hit = |state: usize| match self {
+            Scaled::One(one) => one == state,
+            Scaled::All | Scaled::Time => true,
+        };
+        for state in (0..linear.size()).filter(|&state| hit(state)) {
+            for column in 0..linear.size() {
+                scaled.matrix[(state, column)] *= factor;
+            }
+            if self != Scaled::Time {
+                scaled.drive[state].iter_mut().for_each(|d| *d *= factor);
+                scaled.constant[state] *= factor;
+            }
+        }
+        scaled
+    }
+}
+
+/// Factors that are tried before the best of them is refined.
+const FACTORS: [f64; 31] = [
+    1e-3,
+    3e-3,
+    1e-2,
+    1.0 / 60.0,
+    0.03,
+    0.1,
+    0.159,
+    0.3,
+    0.5,
+    0.7,
+    0.8,
+    0.9,
+    0.95,
+    0.99,
+    0.999,
+    1.001,
+    1.01,
+    1.05,
+    1.1,
+    1.2,
+    1.5,
+    2.0,
+    3.0,
+    6.28,
+    10.0,
+    30.0,
+    60.0,
+    100.0,
+    300.0,
+    1000.0,
+    3600.0,
+];
+
+/// Rates that are scaled, by a factor that is looked for.
+fn rates(linear: &Linear, rows: &Rows, names: &Names, way: &Way) -> Vec<Candidate> {
+    let mut kinds = vec![Scaled::All];
+    if !linear.is_steady()
+        || linear.constant.iter().any(|c| *c != 0.0)
+        || !linear.signals.is_empty()
+    {
+        kinds.push(Scaled::Time);
+    }
+    if linear.size() > 1 {
+        kinds.extend((0..linear.size()).map(Scaled::One));
+    }
+    let few = rows.few();
+    let mut found = Vec::new();
+    for scaled in kinds {
+        let miss = |factor: f64| -> f64 {
+            let values = trajectory(&scaled.apply(linear, factor), &few, way);
+            // Squares: smooth in the factor, so that it can be refined.
+            values.map_or(f64::INFINITY, |values| few.squares(&values))
+        };
+        let tried: Vec<f64> = FACTORS.iter().map(|&factor| miss(factor)).collect();
+        let Some(best) = (0..FACTORS.len()).min_by(|&a, &b| tried[a].total_cmp(&tried[b])) else {
+            continue;
+        };
+        if !tried[best].is_finite() {
+            continue;
+        }
+        let low = FACTORS[best.saturating_sub(1)];
+        let high = FACTORS[(best + 1).min(FACTORS.len() - 1)];
+        let factor = least(&miss, low.ln(), high.ln()).exp();
+        // Known slips are exact.
+        let factor = [1e3, 60.0, 3600.0, std::f64::consts::TAU]
+            .into_iter()
+            .flat_map(|known| [known, 1.0 / known])
+            .find(|known| (factor / known - 1.0).abs() < 2e-4)
+            .unwrap_or(factor);
+        if (factor - 1.0).abs() < 1e-9 {
+            continue;
+        }
+        let Some(values) = trajectory(&scaled.apply(linear, factor), rows, way) else {
+            continue;
+        };
+        let what = match scaled {
+            Scaled::All => "every rate is".to_owned(),
+            Scaled::Time => "every coefficient of the states, but not the inputs, is".to_owned(),
+            Scaled::One(state) => format!("the rate of `{}` is", names.states[state].0),
+        };
+        let mut text = format!("{what} scaled by {}", short(factor));
+        if let Some(slip) = slip(factor) {
+            text += &format!(", as from a slip of units ({slip})");
+        } else {
+            text += "; check the parameters that go into it";
+        }
+        let complexity = if scaled == Scaled::All { 1 } else { 2 };
+        found.push(Candidate::new(
+            Kind::RateScaled,
+            complexity,
+            Some(factor),
+            values,
+            text,
+        ));
+    }
+    found
+}
+
+/// Where a smooth function of one number is least, by golden sections and a parabola.
+fn least(function: &dyn Fn(f64) -> f64, low: f64, high: f64) -> f64 {
+    let golden = 0.5 * (5f64.sqrt() - 1.0);
+    let (mut a, mut b) = (low, high);
+    let (mut c, mut d) = (b - golden * (b - a), a + golden * (b - a));
+    let (mut fc, mut fd) = (function(c), function(d));
+    for _ in 0..40 {
+        if fc <= fd {
+            (b, d, fd) = (d, c, fc);
+            c = b - golden * (b - a);
+            fc = function(c);
+        } else {
+            (a, c, fc) = (c, d, fd);
+            d = a + golden * (b - a);
+            fd = function(d);
+        }
+    }
+    // Squares are flat about their least value: the vertex of a parabola through wider
+    // points is known better than the golden sections end.
+    let (mut middle, mut width) = (0.5 * (a + b), 1e-4);
+    for _ in 0..3 {
+        let (left, at, right) = (
+            function(middle - width),
+            function(middle),
+            function(middle + width),
+        );
+        let bend = left - 2.0 * at + right;
+        if bend > 0.0 && bend.is_finite() {
+            middle += (0.5 * width * (left - right) / bend).clamp(-width, width);
+        }
+        width *= 0.1;
+    }
+    middle
+}
+
+/// Jumps that a step passes over, or that its last stage already sees: what is written fits
+/// the method as it is, and a step that ends at the jump would leave far less.
+pub(super) fn jumps(linear: &Linear, rows: &Rows, names: &Names, way: &Way) -> Vec<Candidate> {
+    let Way::Stepped(stepping) = way else {
+        return Vec::new();
+    };
+    let Some(plain_values) = trajectory(linear, rows, way) else {
+        return Vec::new();
+    };
+    let step = stepping.step;
+    let mut jumps = Vec::new();
+    let mut next = linear.next_jump(linear.window.0 + 1e-6 * step);
+    while let Some(jump) = next.filter(|&jump| jump < linear.window.1 && jumps.len() < 1000) {
+        if linear.leaps_at(jump) {
+            jumps.push(jump);
+        }
+        next = linear.next_jump(jump + 1e-9 * step);
+    }
+    let off = |jump: f64| {
+        let count = (jump - linear.window.0) / step;
+        (count - count.round()).abs() > 1e-6
+    };
+    let error = |values: &[f64]| -> f64 {
+        let mut worst = 0.0f64;
+        for (at, value) in values.iter().enumerate() {
+            let gap = (value - rows.exact[at]).abs()
+                / rows.peaks[at % rows.width()].max(f64::MIN_POSITIVE);
+            worst = worst.max(gap);
+        }
+        worst
+    };
+    let plain_error = error(&plain_values);
+    let mut found = Vec::new();
+    if let Some(&first) = jumps.iter().find(|&&jump| off(jump)) {
+        let smoothed = super::bench::stopping_at(linear, rows, stepping, &jumps);
+        if smoothed.is_some_and(|values| error(&values) < 0.25 * plain_error) {
+            let text = format!(
+                "an input jumps at t = {} {}, between two steps of {} {}: first order, whatever the \
+                 method; let a step end there",
+                plain(first),
+                names.time_unit,
+                short(step),
+                names.time_unit
+            );
+            found.push(Candidate::new(
+                Kind::JumpOffGrid,
+                0,
+                Some(first),
+                plain_values.clone(),
+                text,
+            ));
+        }
+    } else if let Some(&first) = jumps.first() {
+        let own = super::bench::Stepping {
+            sides: Sides::Own,
+            ..stepping.clone()
+        };
+        let own = trajectory(linear, rows, &Way::Stepped(own));
+        if own.is_some_and(|values| error(&values) < 0.25 * plain_error) {
+            let text = format!(
+                "an input jumps at t = {} {}, at the end of a step whose last stage already sees the \
+                 new value: first order, though the step hits the jump; take the value before it in \
+                 the step that ends there",
+                plain(first),
+                names.time_unit
+            );
+            found.push(Candidate::new(
+                Kind::JumpAtStage,
+                0,
+                Some(first),
+                plain_values,
+                text,
+            ));
+        }
+    }
+    found
+}
+
+impl Linear {
+    /// True where an input takes a new value, not only a new slope.
+    fn leaps_at(&self, time: f64) -> bool {
+        let near = 1e-12 * time.abs();
+        self.signals
+            .iter()
+            .any(|signal| signal.at(time, Side::After, near) != signal.at(time, Side::Before, near))
+    }
+}
+
+impl Signal {
+    /// The same signal some time later.
+    fn later(&self, by: f64) -> Signal {
+        match self {
+            Signal::Held(before, edges) => Signal::Held(
+                *before,
+                edges.iter().map(|(at, value)| (at + by, *value)).collect(),
+            ),
+            Signal::Pulses(height, first, width, period, count) => {
+                Signal::Pulses(*height, first + by, *width, *period, *count)
+            }
+            Signal::Lines(knots) => {
+                Signal::Lines(knots.iter().map(|(at, v)| (at + by, *v)).collect())
+            }
+            Signal::Ramp(slope, from) => Signal::Ramp(*slope, from + by),
+            Signal::Sine(amplitude, rate, phase) => {
+                Signal::Sine(*amplitude, *rate, phase - rate * by)
+            }
+            Signal::Exponential(scale, rate) => {
+                Signal::Exponential(scale * (-rate * by).exp(), *rate)
+            }
+            Signal::Polynomial(coefficients) => {
+                // Horner's rule in t - by.
+                let mut shifted: Vec<f64> = Vec::new();
+                for &c in coefficients.iter().rev() {
+                    shifted.insert(0, 0.0);
+                    for place in 0..shifted.len() - 1 {
+                        let next = shifted[place + 1];
+                        shifted[place] -= by * next;
+                    }
+                    shifted[0] += c;
+                }
+                Signal::Polynomial(shifted)
+            }
+        }
+    }
+
+    /// How long it stays away from its rest, where it is a pulse.
+    fn pulse_width(&self) -> Option<f64> {
+        match self {
+            Signal::Pulses(_, _, width, _, _) => Some(*width),
+            Signal::Held(before, edges) => match edges[..] {
+                [(from, _), (to, back)] if back == *before => Some(to - from),
+                _ => None,
+            },
+            _ => None,
+        }
+    }
+}
