@@ -5,6 +5,7 @@ mod digits;
 
 /// Certified enclosures (Arb): every number of `certified-values.json`, and every
 /// built-in case.
+mod causes;
 mod certified;
 
 /// Trajectories of general-purpose integrators against certified errors.

@@ -67,7 +67,7 @@ impl Rows {
         for at in 0..rows.allowed.len() {
             let number = rows.numbers[at / width] as f64;
             let largest = rows.peaks[at % width].max(rows.written[at].abs());
-            rows.allowed[at] += (256.0 + 16.0 * number) * record.unit * largest;
+            rows.allowed[at] += (128.0 + 8.0 * number) * f64::EPSILON * largest;
         }
         rows
     }
@@ -187,7 +187,7 @@ impl Gap {
 
     /// Nothing is left but digits and rounding.
     pub(super) fn is_closed(&self) -> bool {
-        self.ratio <= 1.0
+        self.ratio <= 1.0 || self.share <= 1e-11
     }
 }
 

@@ -193,7 +193,10 @@ const USUAL: [&str; 8] = [
 /// A fault of unknown company has to stand out of what the method leaves by this factor,
 /// and to take away all but this part of the error.
 const STANDS_OUT: f64 = 3.0;
-const TAKES_AWAY: f64 = 0.1;
+const TAKES_AWAY: f64 = 0.03;
+/// A fault with a number that was looked for explains a run where it leaves this part of
+/// the error.
+const FOUND: f64 = 1e-6;
 /// Causes named at most.
 const MOST_NAMED: usize = 4;
 
@@ -212,11 +215,8 @@ pub fn causes(trouble: &Trouble) -> Vec<Cause> {
     };
     let before = rows.gap(&rows.exact);
     let family = explaining_family(trouble);
-    let found = match family {
-        Some(family) => of_method(trouble, &rows, &names, family, before),
-        None => of_faults(trouble, &rows, &names, before),
-    };
-    chosen(found)
+    let found = family.and_then(|family| of_method(trouble, &rows, &names, family));
+    chosen(found.unwrap_or_else(|| of_faults(trouble, &rows, &names, before)))
 }
 
 /// A cause with what orders it among others.
@@ -283,64 +283,44 @@ fn ranked(
 }
 
 /// The rows are those of a method: what is wrong lies in it, in its step, or in how it
-/// reads inputs.
+/// reads inputs. `None` where every row follows from the one before, yet the method does not
+/// come to them from the start of the case through all its jumps.
 fn of_method(
     trouble: &Trouble,
     rows: &Rows,
     names: &Names,
     family: &Family,
-    before: Gap,
-) -> Vec<Ranked> {
+) -> Option<Vec<Ranked>> {
     let linear = trouble.linear;
-    let Some(&method) = family.methods.first() else {
-        return Vec::new();
-    };
-    let mut candidates = Vec::new();
-    let claimed = family
-        .methods
-        .iter()
-        .find(|m| trouble.methods.iter().any(|c| c.name == m.name));
-    let method = claimed.copied().unwrap_or(method);
-    if let Some(answer) = trouble
-        .answer
-        .filter(|answer| answer.support == Support::Contradicts)
-    {
-        let coarser = answer.method == Some(Support::Agrees);
-        let text = |what: &str| {
-            format!(
-                "{what}: the rows are those of {}",
-                family_at(family, trouble.time_unit)
-            )
-        };
-        let longer = family
-            .step
-            .zip(trouble.step)
-            .is_some_and(|(own, stated)| own > stated);
-        if coarser && longer {
-            let text = text("a coarser step than stated");
-            candidates.push(Candidate::new(
-                Kind::CoarserStep,
-                0,
-                family.step,
-                Vec::new(),
-                text,
-            ));
-        } else if !coarser {
-            let text = text("another method than claimed");
-            candidates.push(Candidate::new(
-                Kind::OtherMethod,
-                0,
-                family.step,
-                Vec::new(),
-                text,
-            ));
-        }
-    }
-    let Some(step) = family.step else {
-        return candidates
+    let is_claimed = |m: &&&Method| trouble.methods.iter().any(|c| c.name == m.name);
+    let claimed = family.methods.iter().find(is_claimed);
+    let method = claimed.or(family.methods.first()).copied()?;
+    let done = |candidates: Vec<Candidate>| {
+        let named = candidates
             .into_iter()
-            .map(|c| ranked(c, 1.0, Some(method), 0.0))
-            .collect();
+            .map(|c| ranked(c, 1.0, Some(method), 0.0));
+        Some(named.collect::<Vec<Ranked>>())
+    };
+    let mut candidates: Vec<Candidate> = not_as_claimed(trouble, family).into_iter().collect();
+    let Some(step) = family.step else {
+        return done(candidates);
+    };
+    candidates.extend(method::low_order_start(linear, rows, names, method, step));
+    let own = Stepping::all(method, linear, step)
+        .into_iter()
+        .map(|stepping| Stepping {
+            reading: family.reading,
+            ..stepping
+        });
+    let way = own.map(Way::Stepped).find(|way| {
+        let values = trajectory(linear, rows, way);
+        values.is_some_and(|values| rows.gap(&values).is_closed())
+    });
+    let has_memory = method.schemes.iter().any(|scheme| scheme.steps_back() > 1);
+    let Some(way) = way else {
+        // The start of a method with a memory is its own business.
+        let told = has_memory && !candidates.is_empty();
+        return told.then(|| done(candidates)).flatten();
     };
     candidates.extend(method::candidates(
         linear,
@@ -350,44 +330,36 @@ fn of_method(
         step,
         &rows.written,
     ));
-    candidates.extend(method::low_order_start(linear, rows, names, method, step));
-    // The way that it was run, as far as it can be told.
-    let ways = Stepping::all(method, linear, step)
-        .into_iter()
-        .flat_map(|stepping| {
-            [
-                Reading::AtNodes,
-                Reading::Held,
-                Reading::FromEnd,
-                Reading::Mean,
-            ]
-            .map(|reading| Stepping {
-                reading,
-                ..stepping.clone()
-            })
-        });
-    let way = ways.map(Way::Stepped).find(|way| {
-        let reading_fits = matches!(way, Way::Stepped(s) if s.reading == family.reading);
-        let values = trajectory(linear, rows, way).filter(|_| reading_fits);
-        values.is_some_and(|values| rows.gap(&values).is_closed())
-    });
-    let single = trouble.record.unit > f64::EPSILON;
-    if let Some(way) = &way {
-        candidates.extend(model::jumps(linear, rows, names, way));
-        if family.reading == Reading::Held {
-            candidates.extend(model::held_as_found(linear, rows, names, way, step));
-        }
-        if single
-            && let Some(values) = trajectory(linear, rows, way)
-            && rows.error_of(&values) < 0.25 * before.share
-        {
-            candidates.extend(written::single_arithmetic());
-        }
+    candidates.extend(model::jumps(linear, rows, names, &way));
+    if family.reading == Reading::Held {
+        candidates.extend(model::held_as_found(linear, rows, names, &way, step));
     }
-    candidates
-        .into_iter()
-        .map(|c| ranked(c, 1.0, Some(method), 0.0))
-        .collect()
+    if trouble.record.unit > f64::EPSILON {
+        candidates.extend(written::single_arithmetic());
+    }
+    done(candidates)
+}
+
+/// Another step or another method than the claimed one.
+fn not_as_claimed(trouble: &Trouble, family: &Family) -> Option<Candidate> {
+    let answer = trouble.answer?;
+    if answer.support != Support::Contradicts || trouble.methods.is_empty() {
+        return None;
+    }
+    let is_claimed = |m: &&Method| trouble.methods.iter().any(|c| c.name == m.name);
+    let claimed = family.methods.iter().any(is_claimed);
+    let longer = family
+        .step
+        .zip(trouble.step)
+        .is_some_and(|(own, stated)| own > stated);
+    let at = family_at(family, trouble.time_unit);
+    let (kind, what) = match (claimed, longer) {
+        (true, true) => (Kind::CoarserStep, "a coarser step than stated"),
+        (true, false) => return None,
+        (false, _) => (Kind::OtherMethod, "another method than claimed"),
+    };
+    let text = format!("{what}: the rows are those of {at}");
+    Some(Candidate::new(kind, 0, family.step, Vec::new(), text))
 }
 
 /// No method explains the rows: faults on top of the exact solution, of the claimed method
@@ -430,6 +402,14 @@ fn of_faults(trouble: &Trouble, rows: &Rows, names: &Names, before: Gap) -> Vec<
     let mut loose: Vec<Ranked> = Vec::new();
     let mut smooth: Option<Candidate> = None;
     let healthy = healthy_share(trouble, rows, step);
+    // Any method moves the rates of a model a little, by up to half of what the fastest
+    // mode does in a step: a scale within that is no fault.
+    let fastest = linear.matrix.row_sum_norm() * model_step;
+    let fast_enough = |candidate: &Candidate| {
+        candidate
+            .number
+            .is_some_and(|factor| factor.ln().abs() > 0.6 * fastest)
+    };
     for (way, method) in &ways {
         let base = match way {
             Way::Exact => Some(rows.exact.clone()),
@@ -453,7 +433,9 @@ fn of_faults(trouble: &Trouble, rows: &Rows, names: &Names, before: Gap) -> Vec<
         for candidate in candidates {
             let after = rows.gap(&candidate.values);
             let left_over = after.share / before.share.max(f64::MIN_POSITIVE);
-            if after.is_closed() {
+            // A number that was looked for is known to its own rounding only.
+            let tight = after.is_closed() || left_over <= FOUND;
+            if tight && !(exact && candidate.kind == Kind::RateScaled && !fast_enough(&candidate)) {
                 found.push(ranked(candidate, left_over, *method, after.ratio));
             } else if exact
                 && before.share >= STANDS_OUT * healthy

@@ -307,7 +307,7 @@ fn clipped(rows: &Rows, names: &Names, base: &[f64], bad: &[usize]) -> Vec<Candi
                     x > limits[channel]
                 }
             });
-            at_limit.count() >= 3 && beyond.count() >= 3
+            at_limit.count() >= 2 && beyond.count() >= 2
         };
         let clipped: Vec<usize> = bad.iter().copied().filter(often).collect();
         if clipped.is_empty() {
@@ -496,7 +496,8 @@ pub(super) fn interpolated(rows: &Rows, names: &Names) -> Option<Candidate> {
     let (width, count) = (rows.width(), rows.len());
     let spacing = rows.spacing?;
     let mut ruler = None;
-    for stride in 2..=(count / 4).min(50) {
+    // The longest stride that fits: half of it would fit, too.
+    for stride in (2..=(count / 4).min(50)).rev() {
         let mut kinks = 0;
         let mut straight = true;
         'rows: for row in 1..count - 1 {
@@ -569,6 +570,15 @@ pub(super) fn noise(rows: &Rows, names: &Names, base: &[f64]) -> Option<Candidat
         // Uncorrelated from row to row, within three standard errors and a little
         // (common practice, no source).
         let loose = 3.0 / count.sqrt() + 0.1;
+        // As strong in one place as in another, and crossing zero about every other row.
+        let largest = rest.iter().fold(0.0f64, |m, r| m.max((r - mean).abs()));
+        let crossings = rest
+            .windows(2)
+            .filter(|pair| (pair[0] - mean) * (pair[1] - mean) < 0.0);
+        let share = crossings.count() as f64 / (count - 1.0);
+        if largest > 5.0 * size || !(0.35..=0.65).contains(&share) {
+            return None;
+        }
         if (1..=4).any(|by| lag(by).abs() > loose)
             || mean.abs() > 4.0 * size / count.sqrt() + 0.3 * size
         {
