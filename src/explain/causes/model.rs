@@ -330,7 +330,7 @@ fn rates(linear: &Linear, rows: &Rows, names: &Names, way: &Way) -> Vec<Candidat
         }
         let low = FACTORS[best.saturating_sub(1)];
         let high = FACTORS[(best + 1).min(FACTORS.len() - 1)];
-        let factor = least(&miss, low.ln(), high.ln()).exp();
+        let factor = least(&|x| miss(x.exp()), low.ln(), high.ln()).exp();
         // Known slips are exact.
         let factor = [1e3, 60.0, 3600.0, std::f64::consts::TAU]
             .into_iter()
