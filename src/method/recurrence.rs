@@ -161,6 +161,7 @@ fn skeel(matrix: &DMatrix<f64>, inverse: &DMatrix<f64>) -> f64 {
 fn of_weights(
     stages: &Stages,
     weights: &[DMatrix<f64>],
+    sizes: &[DMatrix<f64>],
     matrix: &DMatrix<f64>,
     step: f64,
     amplified: f64,
@@ -172,8 +173,8 @@ fn of_weights(
     let mut nodes = Vec::new();
     for (stage, weight) in weights.iter().enumerate() {
         let moved = weight * matrix;
-        spread += weight.abs() * matrix.abs();
-        pull += weight.abs();
+        spread += &sizes[stage] * matrix.abs();
+        pull += &sizes[stage];
         stay += moved;
         let node = |at: f64, slope: bool, weight: DMatrix<f64>| Node {
             at,
@@ -216,27 +217,35 @@ fn merged(nodes: Vec<Node>) -> Vec<Node> {
 fn one_by_one(stages: &Stages, matrix: &DMatrix<f64>, step: f64) -> Option<Recurrence> {
     let (size, count) = (matrix.nrows(), stages.weights.len());
     let mut weights = vec![DMatrix::zeros(size, size); count];
+    // What is added up for each, in magnitude: at large steps the terms cancel, their
+    // roundings do not.
+    let mut sizes = weights.clone();
     let mut amplified = 1.0f64;
     for i in (0..count).rev() {
         let mut right = identity(size) * (step * stages.weights[i].to_f64());
+        let mut added = right.abs();
         for (j, later) in weights.iter().enumerate().skip(i + 1) {
             let link = step * stages.matrix[j][i].to_f64();
             if link != 0.0 {
                 right += later * matrix * link;
+                added += &sizes[j] * matrix.abs() * link.abs();
             }
         }
         let own = step * stages.matrix[i][i].to_f64();
-        weights[i] = if own == 0.0 {
-            right
+        if own == 0.0 {
+            (weights[i], sizes[i]) = (right, added);
         } else {
             let system = identity(size) - matrix * own;
             let inverse = system.clone().try_inverse()?;
             amplified = amplified.max(skeel(&system, &inverse));
+            sizes[i] = inverse.abs() * added;
             // The right side commutes with it: both are made of the one matrix.
-            system.lu().solve(&right)?
-        };
+            weights[i] = system.lu().solve(&right)?;
+        }
     }
-    Some(of_weights(stages, &weights, matrix, step, amplified))
+    Some(of_weights(
+        stages, &weights, &sizes, matrix, step, amplified,
+    ))
 }
 
 /// Stages that have to be solved for together.
@@ -261,7 +270,10 @@ fn together(stages: &Stages, matrix: &DMatrix<f64>, step: f64) -> Option<Recurre
     let weights: Vec<DMatrix<f64>> = (0..count)
         .map(|i| solved.rows(i * size, size).transpose())
         .collect();
-    Some(of_weights(stages, &weights, matrix, step, amplified))
+    let sizes: Vec<DMatrix<f64>> = weights.iter().map(DMatrix::abs).collect();
+    Some(of_weights(
+        stages, &weights, &sizes, matrix, step, amplified,
+    ))
 }
 
 fn multistep(

@@ -372,6 +372,233 @@ fn written_faults() -> Vec<Plant> {
     plants
 }
 
+/// Steps of a method whose model changes from step to step: inputs held.
+fn held_track(linear: &Linear, method: &str, spacing: f64, rows: usize) -> Track {
+    let coefficients = find(method).unwrap().schemes[0].coefficients();
+    let from = linear.window.0;
+    let mut x = DVector::from_vec(linear.start.clone());
+    let mut track = Track {
+        times: vec![from],
+        rows: vec![linear.start.clone()],
+        spacing,
+    };
+    for row in 1..rows {
+        let t = from + (row - 1) as f64 * spacing;
+        let mut held = linear.clone();
+        for signal in &mut held.signals {
+            let value = signal.at(t, stepgauge::method::Side::After, 0.0);
+            *signal = Signal::Held(value, Vec::new());
+        }
+        x = Program::new(&held).step(&coefficients, t, spacing, &x);
+        track.times.push(from + row as f64 * spacing);
+        track.rows.push(x.iter().copied().collect());
+    }
+    track
+}
+
+/// Faults of the method and its step.
+fn method_faults() -> Vec<Plant> {
+    let mut plants = Vec::new();
+    let mut add =
+        |kind, name: &'static str, claim: &'static str, step: f64, number, track: &Track| {
+            let base = Base::Method(claim);
+            let audited = judge(&load(name), track, base, Some(step), &in_full);
+            plants.push(Plant {
+                kind,
+                case: name,
+                base,
+                number,
+                audited,
+            });
+        };
+    let linear = |name: &str| Linear::new(&load(name));
+    for name in [
+        "electrical/rc-sine",
+        "mechanical/base-excitation",
+        "membrane/leaky-sine",
+    ] {
+        for method in ["Heun", "classical RK4"] {
+            let model = linear(name);
+            let h = spacing_of(&model);
+            add(
+                "input-held",
+                name,
+                method,
+                h,
+                Some(h),
+                &held_track(&model, method, h, ROWS),
+            );
+        }
+    }
+    // Steps that do not divide the times of the jumps, and steps that do.
+    for name in [
+        "thermal/cold-room-defrost",
+        "kinetics/infusion",
+        "electrical/rc-pulse",
+    ] {
+        for method in ["Heun", "classical RK4"] {
+            let model = linear(name);
+            let span = model.window.1 - model.window.0;
+            let jump = model.next_jump(model.window.0 + 1e-9 * span).unwrap();
+            let first = jump - model.window.0;
+            let rows = (200..400).find(|&n| {
+                let count = first / (span / n as f64);
+                (count - count.round()).abs() > 0.2
+            });
+            let h = span / rows.unwrap() as f64;
+            let coarse = track(&model, Base::Method(method), h, rows.unwrap() + 1);
+            add("jump-off-grid", name, method, h, Some(jump), &coarse);
+            let rows = (200..4000).find(|&n| {
+                let mut next = model.next_jump(model.window.0 + 1e-9 * span);
+                let mut all = true;
+                while let Some(jump) = next.filter(|&j| j < model.window.1) {
+                    let count = (jump - model.window.0) / (span / n as f64);
+                    all &= (count - count.round()).abs() < 1e-9;
+                    next = model.next_jump(jump + 1e-9 * span);
+                }
+                all
+            });
+            let h = span / rows.unwrap() as f64;
+            let on_grid = track(&model, Base::Method(method), h, rows.unwrap() + 1);
+            add("jump-at-stage", name, method, h, Some(jump), &on_grid);
+        }
+    }
+    for (name, method) in [
+        ("kinetics/two-compartments", "classical RK4"),
+        ("electrical/rlc-overdamped", "Heun"),
+        ("thermal/wall-3-node", "forward Euler"),
+    ] {
+        let model = linear(name);
+        let fast = stepgauge::exact::approx_time_scales(&load(name))
+            .time_constant
+            .unwrap();
+        let limit = if method == "classical RK4" {
+            2.785
+        } else {
+            2.0
+        };
+        let span = model.window.1 - model.window.0;
+        let rows = (span / (1.1 * limit * fast)).floor().max(8.0);
+        let h = span / rows;
+        add(
+            "unstable-step",
+            name,
+            method,
+            h,
+            None,
+            &track(&model, Base::Method(method), h, rows as usize + 1),
+        );
+    }
+    for (name, method) in [
+        ("stress/stiff-1e4", "trapezoidal"),
+        ("stress/stiff-1e6", "implicit midpoint"),
+        ("electrical/rlc-overdamped", "trapezoidal"),
+    ] {
+        let model = linear(name);
+        let fast = stepgauge::exact::approx_time_scales(&load(name))
+            .time_constant
+            .unwrap();
+        let span = model.window.1 - model.window.0;
+        let h = (span / 30.0).min(40.0 * fast);
+        let rows = (span / h).ceil().min(400.0);
+        let h = if rows < 400.0 { span / rows } else { h };
+        if (span / h).round() > 5000.0 {
+            continue;
+        }
+        let rows = (span / h).round() as usize + 1;
+        add(
+            "ringing",
+            name,
+            method,
+            h,
+            None,
+            &track(&model, Base::Method(method), h, rows),
+        );
+    }
+    for (name, method) in [
+        ("electrical/rc-sine", "Heun"),
+        ("mechanical/base-excitation", "classical RK4"),
+        ("kinetics/two-compartments", "backward Euler"),
+    ] {
+        let model = linear(name);
+        let h = spacing_of(&model);
+        let coarse = track(&model, Base::Method(method), h, ROWS);
+        add("coarser-step", name, method, 0.5 * h, Some(h), &coarse);
+        add("coarser-step", name, method, 0.25 * h, Some(h), &coarse);
+        add("other-method", name, "trapezoidal", h, Some(h), &coarse);
+    }
+    for (name, method) in [
+        ("electrical/rc-sine", "Adams-Bashforth 4"),
+        ("mechanical/base-excitation", "BDF 3"),
+        ("electrical/rlc-underdamped", "Adams-Bashforth 3"),
+    ] {
+        let case = load(name);
+        let model = linear(name);
+        let h = spacing_of(&model);
+        let run = crate::writer::Run {
+            case: &case,
+            method: find(method).unwrap(),
+            scheme: 0,
+            spacing: h,
+            steps: 1,
+            rows: ROWS,
+            start: crate::writer::Start::Euler,
+            summed: false,
+        };
+        let (times, rows) = run.states();
+        add(
+            "low-order-start",
+            name,
+            method,
+            h,
+            None,
+            &Track {
+                times,
+                rows,
+                spacing: h,
+            },
+        );
+    }
+    for name in [
+        "electrical/rc-sine",
+        "mechanical/base-excitation",
+        "kinetics/oral",
+    ] {
+        let model = linear(name);
+        let h = spacing_of(&model);
+        for method in ["Heun", "classical RK4"] {
+            let mut drifted = track(&model, Base::Method(method), h, ROWS);
+            let mut time = model.window.0 as f32;
+            for stamp in &mut drifted.times {
+                *stamp = f64::from(time);
+                time += h as f32;
+            }
+            let even = |k: usize| model.window.0 + k as f64 * h;
+            let worst = (0..ROWS)
+                .map(|k| (drifted.times[k] - even(k)).abs())
+                .fold(0.0, f64::max);
+            *drifted.times.last_mut().unwrap() = drifted.times[ROWS - 1].max(0.0);
+            add(
+                "single-precision-time",
+                name,
+                method,
+                h,
+                Some(worst),
+                &drifted,
+            );
+        }
+    }
+    plants
+}
+
+#[test]
+fn faults_of_the_method_are_named() {
+    let plants = method_faults();
+    let (named, all) = check(&plants);
+    println!("{named} of {all} named");
+    assert!(named as f64 >= 0.95 * all as f64, "{named} of {all}");
+}
+
 fn check(plants: &[Plant]) -> (usize, usize) {
     let mut named = 0;
     for plant in plants {

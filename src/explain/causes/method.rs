@@ -1,8 +1,8 @@
 //! What the method itself explains: a step beyond its stability limit, ringing, a coarser
 //! step than claimed, another method, a start at too low an order.
 
-use super::bench::{Rows, Stepping, Way, exactly, trajectory};
-use super::{Candidate, Kind, Names};
+use super::bench::{Gap, Rows, Stepping, Way, exactly, trajectory};
+use super::{Candidate, Kind, Names, Trouble};
 use crate::method::{Coefficients, Linear, Method, amplification, approx_stable_length, roots};
 use crate::number::short;
 
@@ -155,24 +155,53 @@ pub(super) fn single_precision_time(
     linear: &Linear,
     rows: &Rows,
     names: &Names,
+    trouble: &Trouble,
+    before: Gap,
 ) -> Option<Candidate> {
-    let spacing = rows.spacing?;
-    let all_single = rows.times.iter().all(|&t| f64::from(t as f32) == t);
-    let from = linear.window.0;
+    let (from, last) = (linear.window.0, rows.len().checked_sub(1)?);
+    let mean = (rows.times[last] - from) / rows.numbers[last] as f64;
+    let spacing = trouble
+        .step
+        .map(|step| (mean / step).round().max(1.0) * step)
+        .or(rows.spacing)
+        .filter(|spacing| (spacing / mean - 1.0).abs() < 1e-4)?;
     let even = |row: usize| from + rows.numbers[row] as f64 * spacing;
-    let drift = |row: usize| rows.times[row] - even(row);
-    let worst = (0..rows.len())
-        .map(|row| drift(row).abs())
-        .fold(0.0, f64::max);
-    let single = f64::from(f32::EPSILON);
+    // Stamps that agree with the step to their digits stand for its multiples already.
+    let single = |row: usize| {
+        let time = rows.times[row];
+        f64::from(time as f32) == time || (time - even(row)).abs() <= 1e-12 * time.abs()
+    };
+    let all_single = (0..rows.len()).all(single);
+    let drifts = (0..rows.len()).map(|row| (rows.times[row] - even(row)).abs());
+    let worst = drifts.fold(0.0, f64::max);
     let largest = rows.times.iter().fold(0.0f64, |m, t| m.max(t.abs()));
-    if !all_single || worst <= 0.5 * single * largest {
+    let (half_ulp, sums) = (
+        0.5 * f64::from(f32::EPSILON) * largest,
+        rows.numbers[last] as f64,
+    );
+    if !all_single || worst <= half_ulp || worst > sums * half_ulp {
         return None;
     }
-    // The state is that of the even grid.
+    // The states are those of the even grid.
     let mut at_even = rows.clone();
     at_even.times = (0..rows.len()).map(even).collect();
-    let values = exactly(linear, &at_even, 0.0)?;
+    at_even.spacing = Some(spacing);
+    at_even.exact = exactly(linear, &at_even, 0.0)?;
+    let step = trouble.step.unwrap_or(spacing);
+    let methods = trouble.methods.iter().copied();
+    let methods = methods.chain(
+        super::USUAL
+            .iter()
+            .filter_map(|name| crate::method::find(name)),
+    );
+    let stepped = methods
+        .flat_map(|m| Stepping::all(m, linear, step))
+        .map(Way::Stepped);
+    let fits = std::iter::once(Way::Exact).chain(stepped).find_map(|way| {
+        let values = trajectory(linear, &at_even, &way)?;
+        let gap = rows.gap(&values);
+        (gap.is_closed() || gap.share <= super::TAKES_AWAY * before.share).then_some(values)
+    })?;
     let text = format!(
         "time is summed in single precision: the stamps are up to {} {} off the steps; count steps and \
          multiply, in double precision",
@@ -183,7 +212,7 @@ pub(super) fn single_precision_time(
         Kind::SinglePrecisionTime,
         1,
         Some(worst),
-        values,
+        fits,
         text,
     ))
 }
@@ -207,7 +236,7 @@ fn grows(rows: &Rows) -> bool {
     let half = rows.len() / 2;
     let early = (0..half).map(error).fold(0.0, f64::max);
     let late = (half..rows.len()).map(error).fold(0.0, f64::max);
-    late > 3.0 * early
+    late > 1.5 * early
 }
 
 /// The most negative factor of a decaying mode that should be nearly gone after a step.

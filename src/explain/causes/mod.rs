@@ -13,7 +13,7 @@ mod written;
 use bench::{Gap, Rows, Stepping, Way, trajectory};
 
 use crate::judge::{Answer, Support, family_at};
-use crate::method::{Evidence, Family, Linear, Method, Reading, Record, find};
+use crate::method::{Evidence, Family, Linear, Method, Reading, Record, Sides, find};
 
 /// What a run failed by.
 #[derive(Clone, Copy, Debug, PartialEq, Eq, PartialOrd, Ord)]
@@ -215,8 +215,19 @@ pub fn causes(trouble: &Trouble) -> Vec<Cause> {
     };
     let before = rows.gap(&rows.exact);
     let family = explaining_family(trouble);
-    let found = family.and_then(|family| of_method(trouble, &rows, &names, family));
-    chosen(found.unwrap_or_else(|| of_faults(trouble, &rows, &names, before)))
+    let found = family.and_then(|family| of_method(trouble, &rows, &names, family, before));
+    let mut found = found.unwrap_or_else(|| of_faults(trouble, &rows, &names, before));
+    if found.is_empty()
+        && let Some(family) = family
+        && let (Some(&method), Some(step)) = (family.methods.first(), family.step)
+    {
+        let all = Stepping::all(method, trouble.linear, step).into_iter();
+        let candidates = all.filter_map(|stepping| {
+            model::wrong_side(trouble.linear, &rows, &names, &stepping, before)
+        });
+        found.extend(candidates.map(|candidate| ranked(candidate, 1.0, Some(method), 0.0)));
+    }
+    chosen(found)
 }
 
 /// A cause with what orders it among others.
@@ -290,6 +301,7 @@ fn of_method(
     rows: &Rows,
     names: &Names,
     family: &Family,
+    before: Gap,
 ) -> Option<Vec<Ranked>> {
     let linear = trouble.linear;
     let is_claimed = |m: &&&Method| trouble.methods.iter().any(|c| c.name == m.name);
@@ -306,15 +318,19 @@ fn of_method(
         return done(candidates);
     };
     candidates.extend(method::low_order_start(linear, rows, names, method, step));
+    // Which value counted at a jump is the program's own business.
     let own = Stepping::all(method, linear, step)
         .into_iter()
-        .map(|stepping| Stepping {
-            reading: family.reading,
-            ..stepping
+        .flat_map(|stepping| {
+            [Sides::After, Sides::Own, Sides::Before].map(|sides| Stepping {
+                reading: family.reading,
+                sides,
+                ..stepping.clone()
+            })
         });
     let way = own.map(Way::Stepped).find(|way| {
-        let values = trajectory(linear, rows, way);
-        values.is_some_and(|values| rows.gap(&values).is_closed())
+        let gap = trajectory(linear, rows, way).map(|values| rows.gap(&values));
+        gap.is_some_and(|gap| gap.is_closed() || gap.share <= FOUND * before.share)
     });
     let has_memory = method.schemes.iter().any(|scheme| scheme.steps_back() > 1);
     let Some(way) = way else {
@@ -371,11 +387,8 @@ fn of_faults(trouble: &Trouble, rows: &Rows, names: &Names, before: Gap) -> Vec<
     if let Some(candidate) = written::interpolated(rows, names) {
         return vec![own(candidate)];
     }
-    if let Some(candidate) = method::single_precision_time(linear, rows, names) {
-        let after = rows.gap(&candidate.values);
-        if after.share <= TAKES_AWAY * before.share {
-            return vec![ranked(candidate, after.share / before.share, None, 0.0)];
-        }
+    if let Some(candidate) = method::single_precision_time(linear, rows, names, trouble, before) {
+        return vec![own(candidate)];
     }
     let step = trouble.step.or(rows.spacing);
     let mut ways: Vec<(Way, Option<&'static Method>)> = vec![(Way::Exact, None)];

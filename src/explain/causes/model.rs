@@ -220,6 +220,9 @@ fn start(linear: &Linear, rows: &Rows, names: &Names, way: &Way) -> Vec<Candidat
             .map(|(x, r)| x + share * (r - x))
             .collect();
         let value = linear.start[state] + share * unit;
+        if (share * unit).abs() <= 1e-9 * unit {
+            return None;
+        }
         let text = format!(
             "`{}` starts at {} {} where the case starts it at {}",
             names.states[state].0,
@@ -460,10 +463,20 @@ pub(super) fn jumps(linear: &Linear, rows: &Rows, names: &Names, way: &Way) -> V
         };
         let own = trajectory(linear, rows, &Way::Stepped(own));
         if own.is_some_and(|values| error(&values) < 0.25 * plain_error) {
+            let what = match stepping.sides {
+                Sides::Before => {
+                    "at the start of a step whose first stage still sees the old value: first order, \
+                     though the step hits the jump; take the value after it in the step that begins \
+                     there"
+                }
+                Sides::After | Sides::Own => {
+                    "at the end of a step whose last stage already sees the new value: first order, \
+                     though the step hits the jump; take the value before it in the step that ends \
+                     there"
+                }
+            };
             let text = format!(
-                "an input jumps at t = {} {}, at the end of a step whose last stage already sees the \
-                 new value: first order, though the step hits the jump; take the value before it in \
-                 the step that ends there",
+                "an input jumps at t = {} {}, {what}",
                 plain(first),
                 names.time_unit
             );
@@ -477,6 +490,52 @@ pub(super) fn jumps(linear: &Linear, rows: &Rows, names: &Names, way: &Way) -> V
         }
     }
     found
+}
+
+/// Jumps on the grid of the steps at which a program has seen the value of one side here
+/// and of the other there, as sums of steps do: up to the first jump the rows are those of
+/// the method, and with the value of each step itself it would have left far less.
+pub(super) fn wrong_side(
+    linear: &Linear,
+    rows: &Rows,
+    names: &Names,
+    stepping: &super::bench::Stepping,
+    before: super::bench::Gap,
+) -> Option<Candidate> {
+    let step = stepping.step;
+    let first = linear.next_jump(linear.window.0 + 1e-6 * step)?;
+    let count = (first - linear.window.0) / step;
+    if !linear.leaps_at(first) || (count - count.round()).abs() > 1e-6 {
+        return None;
+    }
+    let own = super::bench::Stepping {
+        sides: Sides::Own,
+        ..stepping.clone()
+    };
+    let values = trajectory(linear, rows, &Way::Stepped(own))?;
+    let mut early = values.clone();
+    for (row, line) in early.chunks_exact_mut(rows.width()).enumerate() {
+        if rows.times[row] >= first - 0.5 * step {
+            line.fill(f64::NAN);
+        }
+    }
+    if !rows.gap(&early).is_closed() || rows.error_of(&values) > 0.25 * before.share {
+        return None;
+    }
+    let text = format!(
+        "inputs jump at steps (first at t = {} {}), and stages see the value of the wrong side: sums \
+         of steps fall short of a jump or beyond it; take the value before it in the step that ends \
+         there and the value after it in the step that begins there",
+        plain(first),
+        names.time_unit
+    );
+    Some(Candidate::new(
+        Kind::JumpAtStage,
+        0,
+        Some(first),
+        values,
+        text,
+    ))
 }
 
 impl Linear {

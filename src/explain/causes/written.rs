@@ -105,6 +105,13 @@ fn gains(rows: &Rows, names: &Names, base: &[f64], bad: &[usize]) -> Vec<Candida
         }
         factors[channel] = both / own;
     }
+    // A channel that is off by other reasons, and next to nothing, is not multiplied.
+    let bad: Vec<usize> = bad
+        .iter()
+        .copied()
+        .filter(|&c| (factors[c] - 1.0).abs() > 1e-6)
+        .collect();
+    let bad = &bad[..];
     let values = with_channels(rows, base, bad, &|channel, x| factors[channel] * x);
     let Some(&first) = bad.first() else {
         return Vec::new();
@@ -165,6 +172,15 @@ fn offsets(rows: &Rows, names: &Names, base: &[f64], bad: &[usize]) -> Vec<Candi
             (low.min(gap), high.max(gap))
         });
         offsets[channel] = 0.5 * (low + high);
+    }
+    let bad: Vec<usize> = bad
+        .iter()
+        .copied()
+        .filter(|&c| offsets[c].abs() > 1e-6 * rows.peaks[c])
+        .collect();
+    let bad = &bad[..];
+    if bad.is_empty() {
+        return Vec::new();
     }
     let values = with_channels(rows, base, bad, &|channel, x| x + offsets[channel]);
     let each = bad.iter().map(|&c| {
