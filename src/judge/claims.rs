@@ -129,6 +129,16 @@ fn of_method(evidence: &Evidence, claimed: &Claimed, cannot: &dyn Fn(String) -> 
             })
             .collect();
         let any = evidence.tried.iter().any(|tried| !tried.fit.holds());
+        let plainer = evidence.consistent.iter().find(|family| {
+            own.reading == Reading::EitherSide && family.reading != Reading::EitherSide
+        });
+        if let Some(family) = plainer {
+            return cannot(format!(
+                "the rows fit {label} if it reads its inputs now on one side of a jump, now on the \
+                 other, but also {}; every state in the file would tell them apart",
+                family_at(family, claimed.time_unit)
+            ));
+        }
         if !any {
             let text = format!(
                 "the rows fit {label}, and every other method as well; more digits, a larger step \
@@ -152,6 +162,12 @@ fn of_method(evidence: &Evidence, claimed: &Claimed, cannot: &dyn Fn(String) -> 
         return cannot(format!(
             "a run with an error setting chooses its own steps; rows of every accepted step with \
              all states would show whether {name} made them"
+        ));
+    }
+    if evidence.is_skipped(claimed.methods, claimed.steps) {
+        return cannot(format!(
+            "the rows are too few for every form of {name} to be run beside them; write more \
+             rows, or every step"
         ));
     }
     let off = own.map_or(String::new(), |own| {
@@ -311,6 +327,7 @@ pub fn reading(reading: Reading) -> &'static str {
         Reading::Held => "held from the start of each step",
         Reading::FromEnd => "held from the end of each step",
         Reading::Mean => "averaged over each step",
+        Reading::EitherSide => "read on either side of their jumps",
     }
 }
 

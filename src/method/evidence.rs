@@ -58,6 +58,8 @@ pub struct Evidence {
     pub consistent: Vec<Family>,
     /// The exact solution itself.
     pub exact: Fit,
+    /// What the rows are too few for, with the steps from row to row.
+    pub skipped: Vec<(&'static Method, u64)>,
 }
 
 /// Pieces that are compared at most, the first one among them.
@@ -76,6 +78,14 @@ impl Evidence {
     /// True where anything could be compared.
     pub fn is_any(&self) -> bool {
         self.tried.iter().any(|tried| tried.fit.compared > 0)
+    }
+
+    /// True where one of the methods, in any of its forms, could not be compared at so many
+    /// steps from row to row.
+    pub fn is_skipped(&self, methods: &[&Method], steps: Option<u64>) -> bool {
+        self.skipped.iter().any(|(skipped, count)| {
+            methods.iter().any(|m| m.name == skipped.name) && steps.is_none_or(|s| s == *count)
+        })
     }
 
     /// The best fit of one method at any step.
@@ -125,6 +135,7 @@ pub fn evidence(
         claimed,
         claimed_steps,
         tried: Vec::new(),
+        skipped: Vec::new(),
     };
     for method in METHODS {
         search.method(method, Reading::AtNodes);
@@ -146,9 +157,18 @@ pub fn evidence(
             }
         }
     }
+    // A program whose time misses the jumps by roundings sees now one side, now the other.
+    let (from, to) = linear.window;
+    let jumps = !search.complete && linear.jumps_within(from, to);
+    if jumps && !explained(&search) && (!exact.holds() || !claimed.is_empty()) {
+        for method in METHODS {
+            search.method(method, Reading::EitherSide);
+        }
+    }
     let consistent = families(&search.tried);
     Evidence {
         tried: search.tried,
+        skipped: search.skipped,
         consistent,
         exact,
     }

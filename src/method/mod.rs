@@ -11,6 +11,7 @@ mod characteristic;
 mod drive;
 mod estimate;
 mod evidence;
+mod jumps;
 mod linear;
 mod march;
 mod powers;

@@ -18,6 +18,8 @@ pub enum Reading {
     FromEnd,
     /// The mean of the values at start and end.
     Mean,
+    /// At the method's own nodes, where a node on a jump sees either side of it.
+    EitherSide,
 }
 
 /// The matrices of one step.
@@ -109,7 +111,7 @@ impl Recurrence {
             sum = sum.zip(&node.weight, |a, b| a + b);
         }
         let moved: Vec<(f64, f64)> = match reading {
-            Reading::AtNodes => return self,
+            Reading::AtNodes | Reading::EitherSide => return self,
             Reading::Held => vec![(0.0, 1.0)],
             Reading::FromEnd => vec![(1.0, 1.0)],
             Reading::Mean => vec![(0.0, 0.5), (1.0, 0.5)],
@@ -149,32 +151,29 @@ fn identity(size: usize) -> DMatrix<f64> {
     DMatrix::identity(size, size)
 }
 
-/// `| M^-1 | | M |` as one number: how far the solution of a system amplifies its rounding
-/// (Skeel). At least one.
-fn skeel(matrix: &DMatrix<f64>, inverse: &DMatrix<f64>) -> f64 {
-    let product = inverse.abs() * matrix.abs();
-    let rows = product.row_iter().map(|row| row.iter().sum::<f64>());
-    rows.fold(1.0, f64::max)
+/// `|M|` or `|L| |U|` with the rows as they were, whichever is larger: what the backward
+/// error of elimination with row exchanges is relative to. The exchanges mix rows, so that
+/// a slow state takes part in the roundings of a fast one.
+fn eliminated(system: &DMatrix<f64>) -> DMatrix<f64> {
+    let factors = system.clone().lu();
+    let mut product = factors.l().abs() * factors.u().abs();
+    factors.p().inv_permute_rows(&mut product);
+    product.zip_map(&system.abs(), f64::max)
 }
 
 /// Gathers the weights of the stages into a step.
 fn of_weights(
     stages: &Stages,
     weights: &[DMatrix<f64>],
-    sizes: &[DMatrix<f64>],
     matrix: &DMatrix<f64>,
     step: f64,
-    amplified: f64,
+    magnitudes: Magnitudes,
 ) -> Recurrence {
     let size = matrix.nrows();
     let mut stay = identity(size);
-    let mut spread = identity(size);
-    let mut pull = DMatrix::zeros(size, size);
     let mut nodes = Vec::new();
     for (stage, weight) in weights.iter().enumerate() {
         let moved = weight * matrix;
-        spread += &sizes[stage] * matrix.abs();
-        pull += &sizes[stage];
         stay += moved;
         let node = |at: f64, slope: bool, weight: DMatrix<f64>| Node {
             at,
@@ -193,9 +192,48 @@ fn of_weights(
         step,
         past: vec![sparse(&stay)],
         nodes: merged(nodes),
-        spread: sparse(&(spread * amplified)),
-        pull: sparse(&(pull * amplified)),
+        spread: sparse(&magnitudes.spread),
+        pull: sparse(&magnitudes.pull),
         roundings: 4.0 + 2.0 * weights.len() as f64 + size.min(8) as f64,
+    }
+}
+
+/// What the roundings of the stages of one step are relative to.
+///
+/// # Formula
+/// With `W_i` what the right side `f_i = A y_i + g_i` of stage `i` does to the new state and
+/// `M_i k_i = f_i`: a rounding of `f_i` is relative to `|A| |y_i| + |g_i|`, the solution
+/// has a backward error of `|L_i| |U_i| |k_i|`, and `x + h sum w_i k_i` adds up
+/// `|x| + h sum |w_i| |k_i|`. Bounds of `y_i` and `k_i` follow stage by stage without the
+/// cancellation that a stiff step rests on.
+struct Magnitudes {
+    spread: DMatrix<f64>,
+    pull: DMatrix<f64>,
+}
+
+impl Magnitudes {
+    fn new(size: usize) -> Magnitudes {
+        Magnitudes {
+            spread: identity(size),
+            pull: DMatrix::zeros(size, size),
+        }
+    }
+
+    /// Adds a stage: `W`, the share `h |w|` of its slope, then bounds of `f`, `|M| k` and
+    /// `k`, each per unit of the states and of the forcing.
+    fn add(
+        &mut self,
+        weight: &DMatrix<f64>,
+        share: f64,
+        right: &[DMatrix<f64>; 2],
+        solved: &[DMatrix<f64>; 2],
+        slope: &[DMatrix<f64>; 2],
+    ) {
+        let weight = weight.abs();
+        let of =
+            |which: usize| &weight * (&right[which] + &solved[which]) + &slope[which] * share.abs();
+        self.spread += of(0);
+        self.pull += of(1);
     }
 }
 
@@ -217,35 +255,50 @@ fn merged(nodes: Vec<Node>) -> Vec<Node> {
 fn one_by_one(stages: &Stages, matrix: &DMatrix<f64>, step: f64) -> Option<Recurrence> {
     let (size, count) = (matrix.nrows(), stages.weights.len());
     let mut weights = vec![DMatrix::zeros(size, size); count];
-    // What is added up for each, in magnitude: at large steps the terms cancel, their
-    // roundings do not.
-    let mut sizes = weights.clone();
-    let mut amplified = 1.0f64;
+    let mut solvers = vec![None; count];
     for i in (0..count).rev() {
         let mut right = identity(size) * (step * stages.weights[i].to_f64());
-        let mut added = right.abs();
         for (j, later) in weights.iter().enumerate().skip(i + 1) {
             let link = step * stages.matrix[j][i].to_f64();
             if link != 0.0 {
                 right += later * matrix * link;
-                added += &sizes[j] * matrix.abs() * link.abs();
             }
         }
         let own = step * stages.matrix[i][i].to_f64();
-        if own == 0.0 {
-            (weights[i], sizes[i]) = (right, added);
+        weights[i] = if own == 0.0 {
+            right
         } else {
             let system = identity(size) - matrix * own;
             let inverse = system.clone().try_inverse()?;
-            amplified = amplified.max(skeel(&system, &inverse));
-            sizes[i] = inverse.abs() * added;
+            solvers[i] = Some((eliminated(&system), inverse.abs()));
             // The right side commutes with it: both are made of the one matrix.
-            weights[i] = system.lu().solve(&right)?;
-        }
+            system.lu().solve(&right)?
+        };
     }
-    Some(of_weights(
-        stages, &weights, &sizes, matrix, step, amplified,
-    ))
+    let mut magnitudes = Magnitudes::new(size);
+    let mut slopes: Vec<[DMatrix<f64>; 2]> = Vec::new();
+    for i in 0..count {
+        let mut there = [identity(size), DMatrix::zeros(size, size)];
+        for (j, slope) in slopes.iter().enumerate() {
+            let link = step * stages.matrix[i][j].to_f64().abs();
+            for (sum, slope) in there.iter_mut().zip(slope) {
+                *sum += slope * link;
+            }
+        }
+        let mut right = there.map(|there| matrix.abs() * there);
+        right[1] += identity(size);
+        let (solved, slope) = match &solvers[i] {
+            None => ([right[0].clone(), right[1].clone()], right.clone()),
+            Some((system, inverse)) => {
+                let slope = [inverse * &right[0], inverse * &right[1]];
+                ([system * &slope[0], system * &slope[1]], slope)
+            }
+        };
+        let share = step * stages.weights[i].to_f64();
+        magnitudes.add(&weights[i], share, &right, &solved, &slope);
+        slopes.push(slope);
+    }
+    Some(of_weights(stages, &weights, matrix, step, magnitudes))
 }
 
 /// Stages that have to be solved for together.
@@ -265,15 +318,25 @@ fn together(stages: &Stages, matrix: &DMatrix<f64>, step: f64) -> Option<Recurre
         }
     });
     let inverse = system.clone().try_inverse()?;
-    let amplified = skeel(&system, &inverse);
+    let (systems, inverse) = (eliminated(&system), inverse.abs());
     let solved = system.transpose().lu().solve(&right)?;
     let weights: Vec<DMatrix<f64>> = (0..count)
         .map(|i| solved.rows(i * size, size).transpose())
         .collect();
-    let sizes: Vec<DMatrix<f64>> = weights.iter().map(DMatrix::abs).collect();
-    Some(of_weights(
-        stages, &weights, &sizes, matrix, step, amplified,
-    ))
+    let mut magnitudes = Magnitudes::new(size);
+    let right = [matrix.abs(), identity(size)];
+    let all = |part: &DMatrix<f64>| {
+        DMatrix::from_fn(size * count, size, |row, column| part[(row % size, column)])
+    };
+    let slopes = [&inverse * all(&right[0]), &inverse * all(&right[1])];
+    let sums = [&systems * &slopes[0], &systems * &slopes[1]];
+    for (i, weight) in weights.iter().enumerate() {
+        let part = |of: &DMatrix<f64>| of.rows(i * size, size).into_owned();
+        let share = step * stages.weights[i].to_f64();
+        let (sum, slope) = (sums.each_ref().map(part), slopes.each_ref().map(part));
+        magnitudes.add(weight, share, &right, &sum, &slope);
+    }
+    Some(of_weights(stages, &weights, matrix, step, magnitudes))
 }
 
 fn multistep(
@@ -285,28 +348,24 @@ fn multistep(
     let size = matrix.nrows();
     let newest = alpha.len() - 1;
     let own = step * beta[newest].to_f64();
-    let (inverse, amplified) = if own == 0.0 {
-        (identity(size), 1.0)
+    let (inverse, backward) = if own == 0.0 {
+        (identity(size), DMatrix::zeros(size, size))
     } else {
         let system = identity(size) - matrix * own;
-        let inverse = system.clone().try_inverse()?;
-        let amplified = skeel(&system, &inverse);
-        (inverse, amplified)
+        (system.clone().try_inverse()?, eliminated(&system))
     };
-    let mut spread = DMatrix::zeros(size, size);
-    let mut pull = DMatrix::zeros(size, size);
+    // What is added up on the right side, per unit of the states and of the forcing.
+    let mut right = [DMatrix::zeros(size, size), DMatrix::zeros(size, size)];
     let (mut past, mut nodes) = (Vec::new(), Vec::new());
     for j in 0..=newest {
         let (a, b) = (alpha[j].to_f64(), step * beta[j].to_f64());
         if j < newest {
             past.push(sparse(&(&inverse * (matrix * b - identity(size) * a))));
-            spread += inverse.abs() * (matrix.abs() * b.abs() + identity(size) * a.abs());
-        } else {
-            spread += identity(size);
+            right[0] += matrix.abs() * b.abs() + identity(size) * a.abs();
         }
         if b != 0.0 {
             let weight = &inverse * b;
-            pull += weight.abs();
+            right[1] += identity(size) * b.abs();
             nodes.push(Node {
                 at: j as f64 - (newest as f64 - 1.0),
                 slope: false,
@@ -314,12 +373,16 @@ fn multistep(
             });
         }
     }
+    let solved = right.map(|right| {
+        let next = inverse.abs() * &right;
+        inverse.abs() * (right + &backward * &next) + next
+    });
     Some(Recurrence {
         step,
         past,
         nodes,
-        spread: sparse(&(spread * amplified)),
-        pull: sparse(&(pull * amplified)),
+        spread: sparse(&solved[0]),
+        pull: sparse(&solved[1]),
         roundings: 6.0 + 2.0 * alpha.len() as f64 + size.min(8) as f64,
     })
 }
@@ -419,7 +482,8 @@ fn exponential(matrix: &DMatrix<f64>, step: f64) -> Option<Recurrence> {
     let exponential = both.exp();
     let stay = exponential.view((0, 0), (size, size)).into_owned();
     let weight = exponential.view((0, size), (size, size)).into_owned();
-    let spread = (stay.abs() + identity(size)) * amplified;
+    // Some add `h phi(hA) (A x + g)` to the state.
+    let spread = (stay.abs() + identity(size) + weight.abs() * matrix.abs()) * amplified;
     let pull = weight.abs() * amplified;
     Some(Recurrence {
         step,
@@ -448,7 +512,7 @@ fn by_state(matrix: &DMatrix<f64>, step: f64) -> Option<Recurrence> {
     let others = DMatrix::from_fn(size, size, |i, j| if i == j { 0.0 } else { matrix[(i, j)] });
     let stay = diagonal(&|i| own(i).exp()) + &weight * &others;
     let amplified = 8.0 * (0..size).map(|i| 1.0 + own(i).abs()).fold(1.0, f64::max);
-    let spread = (stay.abs() + identity(size)) * amplified;
+    let spread = (stay.abs() + identity(size) + &weight * matrix.abs()) * amplified;
     Some(Recurrence {
         step,
         past: vec![sparse(&stay)],

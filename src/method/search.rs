@@ -56,6 +56,8 @@ pub(super) struct Search<'a> {
     pub(super) claimed: &'a [&'static Method],
     pub(super) claimed_steps: &'a [u64],
     pub(super) tried: Vec<Tried>,
+    /// What the rows are too few for, with the steps from row to row.
+    pub(super) skipped: Vec<(&'static Method, u64)>,
 }
 
 impl Search<'_> {
@@ -100,6 +102,7 @@ impl Search<'_> {
         counts.dedup();
         for count in counts {
             let Some((fit, print)) = self.at(variant, spacing, count) else {
+                self.skipped.push((variant.method, count));
                 continue;
             };
             let known = self.tried.last().is_some_and(|last| {
@@ -136,7 +139,7 @@ impl Search<'_> {
         if !trial.is_finite() {
             return None;
         }
-        let fit = self.fit(&trial, spacing);
+        let fit = self.fit(&trial, spacing, variant.reading);
         let print = if fit.holds() {
             self.print(&trial)
         } else {
@@ -178,12 +181,15 @@ impl Search<'_> {
         (down, up)
     }
 
-    fn fit(&self, trial: &Trial, spacing: f64) -> Fit {
+    fn fit(&self, trial: &Trial, spacing: f64, reading: Reading) -> Fit {
+        let either = reading == Reading::EitherSide;
         let memory = trial.recurrence.back() > 1;
         if memory && (trial.steps > 1 || !self.complete) {
             let step = spacing / trial.steps as f64;
             return match self.reference(step) {
-                Some(reference) => with_hidden_start(trial, &reference, self.record, &self.pieces),
+                Some(reference) => {
+                    with_hidden_start(trial, &reference, self.record, &self.pieces, either)
+                }
                 None => Fit::NOTHING,
             };
         }
@@ -195,11 +201,11 @@ impl Search<'_> {
             return glance;
         }
         let rows = usize::MAX;
-        let mut best = trial.from_start(self.record, Sides::After, rows);
+        let mut best = trial.from_start(self.record, Sides::After, rows, either);
         let (from, to) = self.linear.window;
-        if !best.holds() && self.linear.jumps_within(from, to) {
+        if !best.holds() && !either && self.linear.jumps_within(from, to) {
             for sides in [Sides::Own, Sides::Before] {
-                let other = trial.from_start(self.record, sides, rows);
+                let other = trial.from_start(self.record, sides, rows, either);
                 if other.ratio < best.ratio {
                     best = other;
                 }
@@ -313,7 +319,7 @@ impl Variant<'_> {
     pub(super) fn recurrence(&self, linear: &Linear, step: f64) -> Option<Recurrence> {
         let plain = Recurrence::new(self.coefficients, linear, step, self.ranks)?;
         match self.reading {
-            Reading::AtNodes => Some(plain),
+            Reading::AtNodes | Reading::EitherSide => Some(plain),
             Reading::Held if !plain.looks_ahead() => None,
             reading => Some(plain.with_reading(reading)),
         }

@@ -10,6 +10,7 @@
 
 use nalgebra::{DMatrix, DVector};
 
+use super::jumps::Doubts;
 use super::linear::{Linear, Side};
 use super::march::{March, NEAR, Sides};
 use super::powers::identity;
@@ -20,17 +21,21 @@ use crate::number::Matrix;
 
 /// Rows compared at most.
 const MOST_ROWS: usize = 120;
+/// Rows whose allowance exceeds this part of the peak are no comparison.
+const TELLING: f64 = 1e-2;
 /// Multiplications at most.
 const MOST_WORK: usize = 40_000_000;
 
 /// Lays a method with a memory beside the rows from the start of the file. `reference` is a
 /// one-step recurrence of high order at the same step, which gives a start to correct.
-/// Nothing is compared where the rows are too few for the unknowns.
+/// Nothing is compared where the rows are too few for the unknowns. `either` allows for
+/// nodes on jumps that see either side of them.
 pub(super) fn with_hidden_start(
     trial: &Trial,
     reference: &Recurrence,
     record: &Record,
     pieces: &[Piece],
+    either: bool,
 ) -> Fit {
     let linear = trial.linear;
     let (size, back) = (linear.size(), trial.recurrence.back());
@@ -66,7 +71,7 @@ pub(super) fn with_hidden_start(
         _ => None,
     };
     let fit = |stretch: &Stretch, sides: Sides| {
-        let system = System::new(trial, reference, record, stretch, sides);
+        let system = System::new(trial, reference, record, stretch, sides, either);
         system.map_or(Fit::NOTHING, |system| system.solve(record))
     };
     let mut found = Fit::NOTHING;
@@ -124,6 +129,7 @@ impl System {
         record: &Record,
         stretch: &Stretch,
         sides: Sides,
+        either: bool,
     ) -> Option<System> {
         let linear = trial.linear;
         let (size, stacked) = (linear.size(), trial.stacked());
@@ -151,7 +157,7 @@ impl System {
         let unit = |i: usize, u: usize| if i == u + offset { 1.0 } else { 0.0 };
         let mut effect = DMatrix::from_fn(stacked, unknowns, unit);
         let across = to_dense(trial.across());
-        let mut allowance = Allowance::new(trial);
+        let mut allowance = Allowance::new(trial, either);
         let mut step = memory;
         let (mut lines, mut right, mut of_row) = (Vec::new(), Vec::new(), Vec::new());
         let peaks = record.peaks();
@@ -163,6 +169,9 @@ impl System {
             let wanted = count as u64 * trial.steps;
             if wanted > step {
                 let count = wanted - step;
+                if let Some(doubts) = &mut allowance.doubts {
+                    doubts.next_row(trial, at(step), count);
+                }
                 stack = trial.advance(&stack, at(step), count, sides);
                 effect = if count == trial.steps {
                     &across * &effect
@@ -203,6 +212,10 @@ impl System {
                     + allowance.of(linear, channel)
                     + 8.0 * f64::EPSILON * peaks[column]
                     + window.time_doubts[row] * rate(window, record, row, column);
+                // Where the method runs away with roundings, a row says nothing of it.
+                if !(allowed <= TELLING * peaks[column]) {
+                    continue;
+                }
                 let effect_on = |u: usize| {
                     let of_state = |i: usize| {
                         if hidden_row {
@@ -241,9 +254,21 @@ impl System {
             }
         }
         let mut right = self.right;
-        matrix.qr().q_tr_mul(&mut right);
+        // The orthogonal transformation rounds, relative to where the first guess of the
+        // start has led: rows of a growing solution can be lost in that.
+        let length = right.norm();
+        let factors = matrix.qr();
+        factors.q_tr_mul(&mut right);
+        let start = factors.r().solve_upper_triangular(&right.rows(0, unknowns));
+        let start = start.map_or(f64::INFINITY, |start| start.abs().sum());
+        // A start that nearly parallel columns leave open adds nothing to the residual.
+        let start = if start.is_finite() { start } else { length };
+        let noise = 8.0 * (unknowns + 2) as f64 * f64::EPSILON * (length + start);
+        if noise > 0.5 * (equations as f64).sqrt() {
+            return Fit::NOTHING;
+        }
         let rest = right.rows(unknowns, equations - unknowns).norm_squared();
-        let ratio = (rest / equations as f64).sqrt();
+        let ratio = (rest.sqrt() - noise).max(0.0) / (equations as f64).sqrt();
         let peaks = record.peaks();
         let shares = self
             .of_row
@@ -270,15 +295,17 @@ struct Allowance<'t, 'a> {
     power: Matrix<f64>,
     gathered: Vec<f64>,
     states: Vec<f64>,
+    doubts: Option<Doubts>,
 }
 
 impl<'t, 'a> Allowance<'t, 'a> {
-    fn new(trial: &'t Trial<'a>) -> Allowance<'t, 'a> {
+    fn new(trial: &'t Trial<'a>, either: bool) -> Allowance<'t, 'a> {
         let stacked = trial.stacked();
         Allowance {
             trial,
             power: identity(stacked),
             gathered: vec![0.0; stacked],
+            doubts: either.then(|| Doubts::new(trial)),
             states: trial.linear.start.iter().map(|x| x.abs()).collect(),
         }
     }
@@ -298,12 +325,13 @@ impl<'t, 'a> Allowance<'t, 'a> {
 
     fn of(&self, linear: &Linear, channel: usize) -> f64 {
         let newest = self.trial.stacked() - linear.size();
-        linear.observe_noise(
-            channel,
-            &self.gathered[newest..],
-            self.trial.unit,
-            &self.states,
-        )
+        let mut noise = self.gathered[newest..].to_vec();
+        if let Some(doubts) = &self.doubts {
+            let other = doubts.now();
+            let other = other[newest..].iter();
+            noise.iter_mut().zip(other).for_each(|(sum, x)| *sum += x);
+        }
+        linear.observe_noise(channel, &noise, self.trial.unit, &self.states)
     }
 }
 

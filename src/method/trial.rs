@@ -12,6 +12,7 @@
 //! rounding does to inputs and states.
 
 use super::drive::Drive;
+use super::jumps::Doubts;
 use super::linear::{Linear, Side};
 use super::march::{March, NEAR, Sides};
 use super::powers::{corner, gathered, identity, to_the_power};
@@ -162,7 +163,7 @@ impl<'a> Trial<'a> {
         let step = self.recurrence.step;
         let (near, size) = (NEAR * step, self.linear.size());
         let behind = (self.recurrence.back() - 1) as f64 * step;
-        let end = time + steps as f64 * step;
+        let end = time + steps as f64 * step + self.reach();
         // A jump at the very start is behind, unless a program still sees the value before it.
         let first = match sides {
             Sides::Before => time - behind - near,
@@ -180,6 +181,13 @@ impl<'a> Trial<'a> {
             march.step();
         }
         march.history().flatten().copied().collect()
+    }
+
+    /// How far beyond its end a step reads the inputs: the first stage of one SDIRK method
+    /// lies there.
+    pub(super) fn reach(&self) -> f64 {
+        let furthest = self.recurrence.nodes.iter().map(|node| node.at);
+        (furthest.fold(1.0, f64::max) - 1.0) * self.recurrence.step
     }
 
     /// The matrix over so many steps.
@@ -248,13 +256,19 @@ impl<'a> Trial<'a> {
             let memory = self.recurrence.back() - 1;
             let fresh = window.first + piece.start as u64 == 0;
             let skip = if fresh { 0 } else { memory };
+            let mut piece = *piece;
+            let end = window.times[piece.start + piece.rows - 1];
+            let reach = self.reach();
+            if reach > 0.0 && self.linear.jumps_within(end, end + reach * (1.0 + NEAR)) {
+                piece.rows -= 1;
+            }
             if piece.rows < skip + memory + 2 {
                 continue;
             }
             let piece = Piece {
                 start: piece.start + skip,
                 rows: piece.rows - skip,
-                ..*piece
+                ..piece
             };
             let piece = if glance {
                 Piece {
@@ -358,8 +372,9 @@ impl<'a> Trial<'a> {
 
     /// Compares a file that does not hold every state: the method runs from the start of
     /// the window, through jumps, and meets the rows of the first window. `starts` are the
-    /// states before the second row that a method with a memory needs.
-    pub fn from_start(&self, record: &Record, sides: Sides, rows: usize) -> Fit {
+    /// states before the second row that a method with a memory needs. `either` allows for
+    /// nodes on jumps that see the other side than the one given.
+    pub fn from_start(&self, record: &Record, sides: Sides, rows: usize, either: bool) -> Fit {
         let linear = self.linear;
         let Some(window) = record.windows.first() else {
             return Fit::NOTHING;
@@ -382,6 +397,7 @@ impl<'a> Trial<'a> {
         let mut steepest = vec![0.0f64; width];
         let mut forcing = vec![0.0; linear.size()];
         let mut fit = Fit::NOTHING;
+        let mut doubts = either.then(|| Doubts::new(self));
         for row in 0..=last {
             let time = window.times[row];
             if row > 0 {
@@ -390,6 +406,9 @@ impl<'a> Trial<'a> {
                 }
                 let before = origin + ((row - 1) as f64) * self.steps as f64 * self.recurrence.step;
                 state = self.advance(&state, before, self.steps, sides);
+                if let Some(doubts) = &mut doubts {
+                    doubts.next_row(self, before, self.steps);
+                }
                 scale.see(&state);
                 linear.forcing(time, Side::After, 0.0, &mut forcing);
                 scale.see_forcing(&forcing);
@@ -408,6 +427,11 @@ impl<'a> Trial<'a> {
                 // An output may jump with the input: either value could stand here.
                 continue;
             }
+            let mut unsure = gathered.clone();
+            if let Some(doubts) = &doubts {
+                let other = doubts.now();
+                unsure.iter_mut().zip(other).for_each(|(sum, x)| *sum += x);
+            }
             for (place, &channel) in record.channels.iter().enumerate() {
                 let at = row * width + place;
                 let written = window.values[at];
@@ -422,7 +446,7 @@ impl<'a> Trial<'a> {
                     }
                 }
                 let predicted = linear.observe(channel, &state, time, Side::After, near);
-                let noise = linear.observe_noise(channel, &gathered, self.unit, &scale.states);
+                let noise = linear.observe_noise(channel, &unsure, self.unit, &scale.states);
                 let stamp = (row as f64 * self.steps as f64 + 2.0) * f64::EPSILON * time.abs()
                     + row as f64 * scale.spacing_doubt
                     + window.time_doubts[row];

@@ -19,10 +19,17 @@ mod properties;
 
 /// The shape of the project: imports, sizes, the top level.
 mod tidy;
+
+/// A time-stepping program that writes the files of the tests on evidence.
 mod writer;
 
-/// Whole screens and reports, read by eye before they are accepted.
+/// Which method wrote a file: the true one is always found, false claims are not believed.
 mod evidence;
+
+/// Which method wrote a file of another program.
+mod attribution;
+
+/// Whole screens and reports, read by eye before they are accepted.
 mod golden;
 
 /// Published numbers and worked examples, each with its source.

@@ -1,8 +1,9 @@
 //! A time-stepping program for the tests, written as such a program usually is: it
-//! evaluates the rate `f(t, x)` stage by stage and solves implicit stages by elimination.
-//! It shares the coefficients of the catalogue with the library and nothing else.
+//! evaluates the rate `f(t, x)` stage by stage and solves implicit stages by elimination
+//! or by iteration, in double or in single precision. It shares the coefficients of the
+//! catalogue with the library and nothing else.
 
-use nalgebra::{DMatrix, DVector};
+use nalgebra::{DMatrix, DVector, RealField};
 use stepgauge::case::Case;
 use stepgauge::method::{Coefficients, Linear, Method, Record, Side, Window, find};
 use stepgauge::number::Double;
@@ -16,7 +17,53 @@ pub enum Start {
     Euler,
 }
 
-/// What is run, and how it is printed.
+/// Which value of an input the program sees at a jump.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub enum Seen {
+    /// `if t >= at`.
+    From,
+    /// `if t > at`.
+    Beyond,
+    /// Integrated edge by edge: the value before it at the end of a step, that after it at
+    /// the start.
+    Own,
+}
+
+/// How implicit equations are solved.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub enum Solver {
+    Direct,
+    /// Fixed-point iteration until a change is below this part of the value.
+    Fixed(f64),
+    /// Newton's method with the matrix of a step a tenth shorter, likewise.
+    Loose(f64),
+}
+
+/// Numbers that the program computes with.
+pub trait Number: RealField + Copy {
+    fn of(x: f64) -> Self;
+    fn wide(self) -> f64;
+}
+
+impl Number for f64 {
+    fn of(x: f64) -> f64 {
+        x
+    }
+    fn wide(self) -> f64 {
+        self
+    }
+}
+
+impl Number for f32 {
+    fn of(x: f64) -> f32 {
+        x as f32
+    }
+    fn wide(self) -> f64 {
+        f64::from(self)
+    }
+}
+
+/// What is run.
 #[derive(Clone, Debug)]
 pub struct Run<'a> {
     pub case: &'a Case,
@@ -30,96 +77,161 @@ pub struct Run<'a> {
     pub start: Start,
     /// Time summed step by step, as many programs do.
     pub summed: bool,
+    pub seen: Seen,
+    pub solver: Solver,
+    /// In single precision, time and all.
+    pub single: bool,
+    /// Lengths of the steps in place of `spacing`, one row after each.
+    pub varied: Option<Vec<f64>>,
 }
 
-pub struct Program<'a> {
+impl<'a> Run<'a> {
+    pub fn new(case: &'a Case, method: &'a Method, spacing: f64, steps: u64, rows: usize) -> Self {
+        Run {
+            case,
+            method,
+            scheme: 0,
+            spacing,
+            steps,
+            rows,
+            start: Start::Runge,
+            summed: false,
+            seen: Seen::From,
+            solver: Solver::Direct,
+            single: false,
+            varied: None,
+        }
+    }
+}
+
+struct Program<'a, T: Number> {
     linear: &'a Linear,
-    matrix: DMatrix<f64>,
+    matrix: DMatrix<T>,
+    seen: Seen,
+    solver: Solver,
 }
 
-impl<'a> Program<'a> {
-    pub fn new(linear: &'a Linear) -> Program<'a> {
-        let n = linear.size();
-        let matrix = DMatrix::from_fn(n, n, |i, j| linear.matrix[(i, j)]);
-        Program { linear, matrix }
-    }
-
-    fn forcing(&self, t: f64) -> DVector<f64> {
+impl<T: Number> Program<'_, T> {
+    /// Coupling of the inputs at a time that is a share of a step after its start.
+    fn forcing(&self, t: T, share: f64) -> DVector<T> {
         let mut g = vec![0.0; self.linear.size()];
-        self.linear.forcing(t, Side::After, 0.0, &mut g);
-        DVector::from_vec(g)
+        let (side, near) = match self.seen {
+            Seen::From => (Side::After, 0.0),
+            Seen::Beyond => (Side::Before, 0.0),
+            Seen::Own if share > 0.999_999 => (Side::Before, 1e-9 * t.wide().abs()),
+            Seen::Own => (Side::After, 1e-9 * t.wide().abs()),
+        };
+        self.linear.forcing(t.wide(), side, near, &mut g);
+        DVector::from_iterator(g.len(), g.into_iter().map(T::of))
     }
 
-    fn rate(&self, t: f64, x: &DVector<f64>) -> DVector<f64> {
-        &self.matrix * x + self.forcing(t)
+    fn rate(&self, t: T, share: f64, x: &DVector<T>) -> DVector<T> {
+        &self.matrix * x + self.forcing(t, share)
+    }
+
+    fn solve(&self, m: DMatrix<T>, right: &DVector<T>) -> Option<DVector<T>> {
+        let (inverse, tolerance) = match self.solver {
+            Solver::Direct => return m.lu().solve(right),
+            Solver::Fixed(tolerance) => (DMatrix::identity(m.nrows(), m.ncols()), tolerance),
+            Solver::Loose(tolerance) => {
+                let unit = DMatrix::identity(m.nrows(), m.ncols());
+                let stale = &m * T::of(0.9) + unit * T::of(0.1);
+                (stale.try_inverse()?, tolerance)
+            }
+        };
+        let mut x = right.clone();
+        for _ in 0..200 {
+            let change = &inverse * (right - &m * &x);
+            x += &change;
+            if change.amax() <= x.amax() * T::of(tolerance) {
+                return Some(x);
+            }
+        }
+        None
     }
 
     /// One step of a one-step method.
-    pub fn step(&self, method: &Coefficients, t: f64, h: f64, x: &DVector<f64>) -> DVector<f64> {
+    fn step(&self, method: &Coefficients, t: T, h: T, x: &DVector<T>) -> Option<DVector<T>> {
         let n = x.len();
+        let c = |v: Double| T::of(v.to_f64());
         match method {
             Coefficients::Stages(stages) => {
                 let s = stages.weights.len();
-                let c = |v: Double| v.to_f64();
-                let slope = if stages.slopes.iter().any(|g| c(*g) != 0.0) {
+                let slope = if stages.slopes.iter().any(|g| g.to_f64() != 0.0) {
                     let mut g = vec![0.0; n];
-                    self.linear.forcing_slope(t, Side::After, 0.0, &mut g);
-                    DVector::from_vec(g)
+                    self.linear
+                        .forcing_slope(t.wide(), Side::After, 0.0, &mut g);
+                    DVector::from_iterator(n, g.into_iter().map(T::of))
                 } else {
                     DVector::zeros(n)
                 };
-                let mut k: Vec<DVector<f64>> = Vec::new();
+                let share = |i: usize| stages.nodes[i].to_f64();
+                let mut k: Vec<DVector<T>> = Vec::new();
                 if stages.is_lower_triangular() {
                     for i in 0..s {
                         let mut y = x.clone();
                         for (j, kj) in k.iter().enumerate() {
                             y += kj * (h * c(stages.matrix[i][j]));
                         }
-                        let f = self.rate(t + c(stages.nodes[i]) * h, &y)
+                        let f = self.rate(t + c(stages.nodes[i]) * h, share(i), &y)
                             + &slope * (h * c(stages.slopes[i]));
                         let own = h * c(stages.matrix[i][i]);
-                        k.push(if own == 0.0 {
+                        k.push(if own.wide() == 0.0 {
                             f
                         } else {
                             let m = DMatrix::identity(n, n) - &self.matrix * own;
-                            m.lu().solve(&f).unwrap()
+                            self.solve(m, &f)?
                         });
                     }
                 } else {
                     let m = DMatrix::from_fn(s * n, s * n, |r, q| {
                         let a = h * c(stages.matrix[r / n][q / n]) * self.matrix[(r % n, q % n)];
-                        if r == q { 1.0 - a } else { -a }
+                        if r == q { T::one() - a } else { -a }
                     });
                     let mut right = DVector::zeros(s * n);
                     for i in 0..s {
-                        let f = self.rate(t + c(stages.nodes[i]) * h, x);
+                        let f = self.rate(t + c(stages.nodes[i]) * h, share(i), x);
                         right.rows_mut(i * n, n).copy_from(&f);
                     }
-                    let all = m.lu().solve(&right).unwrap();
+                    let all = self.solve(m, &right)?;
                     k.extend((0..s).map(|i| all.rows(i * n, n).into_owned()));
                 }
                 let mut next = x.clone();
                 for (ki, w) in k.iter().zip(&stages.weights) {
                     next += ki * (h * c(*w));
                 }
-                next
+                Some(next)
             }
-            Coefficients::Exponential { .. } => {
+            Coefficients::Exponential { by_state: false } => {
                 let mut both = DMatrix::zeros(n + 1, n + 1);
                 both.view_mut((0, 0), (n, n)).copy_from(&(&self.matrix * h));
                 both.view_mut((0, n), (n, 1))
-                    .copy_from(&(self.forcing(t) * h));
+                    .copy_from(&(self.forcing(t, 0.0) * h));
                 let e = both.exp();
-                e.view((0, 0), (n, n)) * x + e.view((0, n), (n, 1))
+                Some(e.view((0, 0), (n, n)) * x + e.view((0, n), (n, 1)))
+            }
+            Coefficients::Exponential { by_state: true } => {
+                // Each state towards where the others, as they stand, pull it.
+                let rate = self.rate(t, 0.0, x);
+                let mut next = x.clone();
+                for i in 0..n {
+                    let own = self.matrix[(i, i)];
+                    next[i] += if own.wide() == 0.0 {
+                        h * rate[i]
+                    } else {
+                        (h * own).exp_m1() / own * rate[i]
+                    };
+                }
+                Some(next)
             }
             Coefficients::SemiImplicit => {
                 // State after state, each with the newest of the others.
                 let mut next = x.clone();
                 for i in 0..n {
-                    let rate = self.rate(t, &next)[i];
+                    let rate = self.rate(t, 0.0, &next)[i];
                     next[i] += h * rate;
                 }
-                next
+                Some(next)
             }
             other => panic!("{other:?} is no one-step method"),
         }
@@ -129,13 +241,13 @@ impl<'a> Program<'a> {
     fn multistep(
         &self,
         method: &Coefficients,
-        t: f64,
-        h: f64,
-        past: &[DVector<f64>],
-        rates: &[DVector<f64>],
-    ) -> DVector<f64> {
+        t: T,
+        h: T,
+        past: &[DVector<T>],
+        rates: &[DVector<T>],
+    ) -> Option<DVector<T>> {
         let n = self.linear.size();
-        let c = |v: &Double| v.to_f64();
+        let c = |v: &Double| T::of(v.to_f64());
         match method {
             Coefficients::Multistep { alpha, beta } => {
                 let k = alpha.len() - 1;
@@ -143,12 +255,12 @@ impl<'a> Program<'a> {
                 for j in 0..k {
                     right += &rates[j] * (h * c(&beta[j])) - &past[j] * c(&alpha[j]);
                 }
-                if c(&beta[k]) == 0.0 {
-                    return right;
+                if beta[k].to_f64() == 0.0 {
+                    return Some(right);
                 }
-                right += self.forcing(t + h) * (h * c(&beta[k]));
+                right += self.forcing(t + h, 1.0) * (h * c(&beta[k]));
                 let m = DMatrix::identity(n, n) - &self.matrix * (h * c(&beta[k]));
-                m.lu().solve(&right).unwrap()
+                self.solve(m, &right)
             }
             Coefficients::Predicted {
                 predictor,
@@ -161,7 +273,7 @@ impl<'a> Program<'a> {
                     foreseen += &rates[j] * (h * c(&predictor[j]));
                     next += &rates[j] * (h * c(&corrector[j]));
                 }
-                next + self.rate(t + h, &foreseen) * (h * c(&corrector[k]))
+                Some(next + self.rate(t + h, 1.0, &foreseen) * (h * c(&corrector[k])))
             }
             other => panic!("{other:?} is no multistep method"),
         }
@@ -169,64 +281,76 @@ impl<'a> Program<'a> {
 }
 
 impl Run<'_> {
-    /// States at every row, with the stamps.
-    pub fn states(&self) -> (Vec<f64>, Vec<Vec<f64>>) {
+    /// Stamps and states at every row; `None` where an iteration does not converge.
+    pub fn states(&self) -> Option<(Vec<f64>, Vec<Vec<f64>>)> {
+        if self.single {
+            self.states_in::<f32>()
+        } else {
+            self.states_in::<f64>()
+        }
+    }
+
+    fn states_in<T: Number>(&self) -> Option<(Vec<f64>, Vec<Vec<f64>>)> {
         let linear = Linear::new(self.case);
-        let program = Program::new(&linear);
+        let n = linear.size();
+        let program: Program<T> = Program {
+            linear: &linear,
+            matrix: DMatrix::from_fn(n, n, |i, j| T::of(linear.matrix[(i, j)])),
+            seen: self.seen,
+            solver: self.solver,
+        };
         let scheme = self.method.schemes[self.scheme];
         let coefficients = scheme.coefficients();
         let back = scheme.steps_back();
-        let h = self.spacing / self.steps as f64;
         let from = linear.window.0;
-        let x0 = DVector::from_vec(linear.start.clone());
+        let x0 = DVector::from_iterator(n, linear.start.iter().map(|&x| T::of(x)));
         let mut past = vec![x0.clone()];
-        let mut rates = vec![program.rate(from, &x0)];
+        let mut rates = vec![program.rate(T::of(from), 0.0, &x0)];
         let exact = (self.start == Start::Exact && back > 1).then(|| self.case.exact().unwrap());
-        let (mut times, mut rows) = (vec![from], vec![linear.start.clone()]);
-        let mut summed = from;
+        let (mut times, mut rows) = (vec![from], vec![x0.iter().map(|x| x.wide()).collect()]);
+        let mut t = T::of(from);
         for count in 0..(self.rows as u64 - 1) * self.steps {
-            let t = if self.summed {
-                summed
+            let h = match &self.varied {
+                Some(steps) => T::of(steps[count as usize]),
+                None => T::of(self.spacing / self.steps as f64),
+            };
+            let after = if self.summed || self.varied.is_some() {
+                t + h
             } else {
-                from + count as f64 * h
+                T::of(from) + T::of((count + 1) as f64) * h
             };
             let newest = past.last().unwrap().clone();
             let next = if back == 1 {
-                program.step(&coefficients, t, h, &newest)
+                program.step(&coefficients, t, h, &newest)?
             } else if past.len() < back {
                 match self.start {
                     Start::Exact => {
-                        let n = linear.size();
-                        let values = exact.as_ref().unwrap().at(t + h).unwrap();
-                        DVector::from_iterator(n, values[..n].iter().map(|v| v.value))
+                        let values = exact.as_ref().unwrap().at(after.wide()).unwrap();
+                        DVector::from_iterator(n, values[..n].iter().map(|v| T::of(v.value)))
                     }
-                    Start::Runge => program.step(&of("classical RK4"), t, h, &newest),
-                    Start::Euler => program.step(&of("forward Euler"), t, h, &newest),
+                    Start::Runge => program.step(&of("classical RK4"), t, h, &newest)?,
+                    Start::Euler => program.step(&of("forward Euler"), t, h, &newest)?,
                 }
             } else {
-                program.multistep(&coefficients, t, h, &past, &rates)
+                program.multistep(&coefficients, t, h, &past, &rates)?
             };
-            summed = t + h;
-            rates.push(program.rate(
-                if self.summed {
-                    summed
-                } else {
-                    from + (count + 1) as f64 * h
-                },
-                &next,
-            ));
+            t = after;
+            rates.push(program.rate(t, 0.0, &next));
             past.push(next.clone());
             if past.len() > back {
                 past.remove(0);
                 rates.remove(0);
             }
             if (count + 1) % self.steps == 0 {
-                rows.push(next.iter().copied().collect());
+                rows.push(next.iter().map(|x| x.wide()).collect());
                 let row = (count + 1) / self.steps;
-                times.push(from + row as f64 * self.spacing);
+                times.push(match &self.varied {
+                    Some(_) => t.wide(),
+                    None => from + row as f64 * self.spacing,
+                });
             }
         }
-        (times, rows)
+        Some((times, rows))
     }
 }
 
@@ -243,39 +367,79 @@ pub fn printed(value: f64, digits: usize) -> f64 {
     }
 }
 
-/// What the library would keep of a file with these states.
-pub fn record(
-    case: &Case,
-    times: &[f64],
-    rows: &[Vec<f64>],
-    spacing: f64,
-    digits: usize,
-) -> Record {
-    let exact = case.exact().unwrap();
-    let mut walk = exact.walk();
-    let resolution = match digits {
+/// The resolution of a column printed with so many significant digits.
+pub fn resolution(digits: usize) -> Resolution {
+    match digits {
         17.. => Resolution::Full,
         _ => Resolution::Significant(digits as u8),
-    };
-    let mut window = Window::default();
-    for (time, row) in times.iter().zip(rows) {
-        if row.iter().any(|x| !x.is_finite() || x.abs() > 1e30) {
-            break;
-        }
-        window.times.push(*time);
-        window.time_doubts.push(0.0);
-        let truth = walk.go(Double::from(*time)).value.clone();
-        for (value, truth) in row.iter().zip(&truth) {
-            let value = printed(*value, digits);
-            window.values.push(value);
-            window.errors.push((Double::from(value) - *truth).to_f64());
-            window.doubts.push(resolution.at(value));
-        }
     }
-    Record {
-        channels: (0..case.states.len()).collect(),
-        spacing: Some((spacing, 0.0)),
-        unit: f64::EPSILON / 2.0,
-        windows: vec![window],
+}
+
+/// Exact values of all channels at stamps.
+pub fn truth(case: &Case, times: &[f64]) -> Vec<Vec<Double>> {
+    let exact = case.exact().unwrap();
+    let mut walk = exact.walk();
+    let row = |time: &f64| walk.go(Double::from(*time)).value.clone();
+    times.iter().map(row).collect()
+}
+
+/// What the library would keep of a file with these rows.
+pub struct Kept<'a> {
+    pub times: &'a [f64],
+    pub states: &'a [Vec<f64>],
+    pub truth: &'a [Vec<Double>],
+    pub digits: usize,
+    pub channels: &'a [usize],
+    pub spacing: Option<f64>,
+    /// Numbers of single precision, printed so that they read back.
+    pub single: bool,
+}
+
+impl Kept<'_> {
+    pub fn record(&self, linear: &Linear, seen: Seen) -> Record {
+        let resolution = match self.single && self.digits >= 17 {
+            true => Resolution::Single,
+            false => resolution(self.digits),
+        };
+        let side = match seen {
+            Seen::Beyond => Side::Before,
+            Seen::From | Seen::Own => Side::After,
+        };
+        let mut window = Window::default();
+        for ((time, row), truth) in self.times.iter().zip(self.states).zip(self.truth) {
+            if row.iter().any(|x| !x.is_finite() || x.abs() > 1e30) {
+                break;
+            }
+            window.times.push(*time);
+            window.time_doubts.push(if self.spacing.is_some() {
+                0.0
+            } else {
+                0.5 * (time.next_up() - time)
+            });
+            for &channel in self.channels {
+                let mut value = linear.observe(channel, row, *time, side, 0.0);
+                if self.single {
+                    value = f64::from(value as f32);
+                }
+                let value = printed(value, self.digits);
+                window.values.push(value);
+                let error = Double::from(value) - truth[channel];
+                window.errors.push(error.to_f64());
+                window.doubts.push(resolution.at(value));
+            }
+        }
+        let unit = if self.single && self.digits >= 17 {
+            f64::from(f32::EPSILON)
+        } else {
+            f64::EPSILON
+        };
+        Record {
+            channels: self.channels.to_vec(),
+            spacing: self
+                .spacing
+                .map(|spacing| (spacing, f64::EPSILON * spacing)),
+            unit: unit / 2.0,
+            windows: vec![window],
+        }
     }
 }
