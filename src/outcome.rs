@@ -1,5 +1,6 @@
 //! What an audit has found, as plain data: no formatting, no file formats.
 
+mod advice;
 mod evidence;
 mod methods;
 mod steps;
@@ -9,7 +10,10 @@ use crate::judge::Verdict;
 use crate::submission::{Expect, Role, Setting, Submission};
 use crate::trajectory::Finding;
 
-pub use evidence::{ClaimOutcome, Consistent, EvidenceOutcome, GrowthOutcome, RunEvidence};
+pub use advice::{AdviceOutcome, SettingRung, SettingsOutcome};
+pub use evidence::{
+    ClaimOutcome, Consistent, Damping, EvidenceOutcome, GrowthOutcome, GrowthSummary, RunEvidence,
+};
 pub use methods::{AliasFacts, Factor, FormFacts, MethodFacts, SourceFacts, Written};
 pub use steps::{
     ChannelError, ChannelLimit, JumpGrid, LargestStep, MethodSteps, OnJumps, Rule, StepRun,
@@ -67,6 +71,10 @@ pub struct Audited {
     pub order_verdict: Option<Verdict>,
     /// Which methods fit the runs; `None` without a case.
     pub evidence: Option<EvidenceOutcome>,
+    /// Errors over error settings by channel; empty without a ladder of such.
+    pub settings: Vec<SettingsOutcome>,
+    /// Which step the limits need, as far as it can be told.
+    pub advice: Option<AdviceOutcome>,
 }
 
 /// Whose limits an audit has used.
@@ -202,6 +210,8 @@ impl Audited {
             orders: Vec::new(),
             order_verdict: None,
             evidence: None,
+            settings: Vec::new(),
+            advice: None,
         }
     }
 
