@@ -5,6 +5,7 @@
 
 mod alone;
 mod evidence;
+mod growth;
 mod keep;
 mod run;
 mod verdict;
@@ -173,6 +174,7 @@ fn audit_one(planned: &Planned, library: &Library, models: &Models) -> Result<Au
     audited.runs = compared.iter().map(|one| one.outcome.clone()).collect();
     judge_runs(&mut audited);
     evidence::conclude(submission, &compared, &found, &mut audited);
+    growth::measure(&model, &compared, &mut audited);
     Ok(audited)
 }
 

@@ -5,6 +5,7 @@ use std::cmp::Ordering;
 
 use comfy_table::{ColumnConstraint, Table};
 
+use super::growth_text::growth_text;
 use super::style::{Screen, Tone, coloured, toned};
 use super::{NOT_FOR_DOSING, SCOPE};
 use crate::judge::Verdict;
@@ -29,6 +30,7 @@ pub fn audit_text(outcome: &Outcome, screen: Screen) -> String {
     if !controls.is_empty() {
         text += &format!("\nControls, as expected:\n{controls}");
     }
+    text += &growth_text(outcome, screen);
     let notes = notes(outcome, screen);
     if !notes.is_empty() {
         text += &format!("\nNotes:\n{notes}");

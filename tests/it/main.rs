@@ -44,3 +44,6 @@ mod cheats;
 
 /// Every method of the catalogue: its order, its stability as published.
 mod methods;
+
+/// Factors of single modes: measured against published ones.
+mod growth;
