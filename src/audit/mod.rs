@@ -8,6 +8,7 @@ mod evidence;
 mod growth;
 mod keep;
 mod run;
+mod settings;
 mod verdict;
 
 use std::collections::BTreeMap;
@@ -175,6 +176,7 @@ fn audit_one(planned: &Planned, library: &Library, models: &Models) -> Result<Au
     judge_runs(&mut audited);
     evidence::conclude(submission, &compared, &found, &mut audited);
     growth::measure(&model, &compared, &mut audited);
+    settings::settings(&model.case, &compared, &mut audited);
     Ok(audited)
 }
 
