@@ -334,6 +334,9 @@ fn reasons(submission: &Audited, screen: Screen) -> String {
             &format!("{more} more; the JSON report has all"),
         );
     }
+    if let Some(advice) = submission.advice.as_ref().filter(|_| !lines.is_empty()) {
+        lines += &line(screen, &submission.name, &format!("step: {}", advice.text));
+    }
     lines
 }
 

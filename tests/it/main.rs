@@ -47,3 +47,6 @@ mod methods;
 
 /// Factors of single modes: measured against published ones.
 mod growth;
+
+/// Which step or error setting a submission is told to take, and that it helps.
+mod advice;
