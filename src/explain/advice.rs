@@ -194,6 +194,7 @@ fn few(value: f64) -> String {
 #[cfg(test)]
 mod tests {
     use super::*;
+    use crate::outcome::OnJumps;
 
     #[test]
     fn two_digits_down() {
@@ -240,6 +241,71 @@ mod tests {
             advice.text,
             "at the order 1.0 seen, a step of 2 s would keep the limit; forward Euler by itself: not \
              even in 1000 steps over the window (stable up to 0.5 s)"
+        );
+    }
+
+    /// A run at steps that meet the jumps fails, although the method would keep the limit
+    /// there if its last stage did not see the new value too early.
+    #[test]
+    fn jumps_that_are_read_too_early() {
+        let run = |step: f64| {
+            Some(StepRun {
+                step,
+                steps: 1,
+                stable: true,
+                channels: Vec::new(),
+            })
+        };
+        let method = MethodSteps {
+            name: "Heun".to_owned(),
+            order: 2,
+            start_values: 1,
+            largest: LargestStep {
+                kept: run(0.001),
+                most_steps: 1000,
+                approx_stable: None,
+                ruled_by: Some(Rule::Accuracy),
+            },
+            ladder: Vec::new(),
+            jumps_missed: 1,
+            on_jumps: Some(OnJumps {
+                after: run(0.002),
+                own: run(0.25),
+            }),
+        };
+        let jumps = JumpGrid {
+            times: vec![1.0, 3.0],
+            common: Some(1.0),
+            common_with_end: Some(1.0),
+        };
+        let computed = Computed {
+            method: &method,
+            jumps: &jumps,
+        };
+        let text = |failing: Option<f64>| {
+            let asked = Asked {
+                measured: None,
+                jumps: true,
+                failing,
+                time_unit: "s",
+            };
+            advice(&asked, Some(computed)).unwrap().text
+        };
+        let all = "Heun by itself: up to 0.001 s (accuracy rules, stable at any step); with steps of \
+                   1 s / n, which meet the jumps at t = 1, 3 s: up to 0.002 s, or 0.25 s if each \
+                   step sees the input within it";
+        assert_eq!(text(None), all);
+        assert_eq!(text(Some(0.3)), all);
+        assert_eq!(
+            text(Some(0.1)),
+            format!(
+                "{all}; the step would do if each step saw the input within it: look at how jumps \
+                 are read"
+            )
+        );
+        assert_eq!(
+            text(Some(0.001)),
+            format!("{all}; the step is not what fails here")
         );
     }
 }
