@@ -9,7 +9,7 @@ use crate::explain::{self, Computed, Question};
 use crate::judge::{Support, Verdict};
 use crate::method::{Method, Reading};
 use crate::number::Double;
-use crate::outcome::Audited;
+use crate::outcome::{Audited, RunOutcome};
 use crate::submission::{Role, Setting, Submission};
 
 /// Most steps that the run at the step of the result may have for its method to be run
@@ -45,15 +45,20 @@ pub(super) fn advise(
             jumps: &steps.jumps,
         })
     });
-    let results = audited.runs.iter().filter(|run| run.role == Role::Result);
-    let taken = results.filter_map(|run| run.step).reduce(f64::max);
+    // A file that is cut short or has faults of its own does not fail by its step.
+    let breaks = |run: &&RunOutcome| {
+        let errors = run.channels.iter().filter_map(|c| c.errors.as_ref());
+        run.role == Role::Result && errors.into_iter().any(|errors| errors.broken)
+    };
+    let broken = audited.runs.iter().filter(breaks);
+    let failing = broken.filter_map(|run| run.step).reduce(f64::max);
     let asked = explain::Asked {
         measured,
         jumps: model
             .exact
             .jump_after(model.exact.from(), f64::INFINITY)
             .is_some(),
-        failing: taken.filter(|_| audited.verdict == Verdict::Fail),
+        failing,
         time_unit: &audited.time_unit,
     };
     audited.advice = explain::advice(&asked, computed);

@@ -1,7 +1,7 @@
 //! Which step to take: from the errors of the runs themselves, and from the recurrence of
 //! their method.
 
-use crate::number::{plain, short};
+use crate::number::plain;
 use crate::outcome::{AdviceOutcome, JumpGrid, LargestStep, MethodSteps, Rule, StepRun};
 
 /// An order below this is no ground to say which step would do.
@@ -33,13 +33,17 @@ pub fn measured_step(step: f64, limit_used: f64, order: f64) -> Option<f64> {
 
 /// Two digits, rounded down.
 pub(super) fn rounded_down(value: f64) -> Option<f64> {
+    to_digits(value, 2)
+}
+
+fn to_digits(value: f64, count: i32) -> Option<f64> {
     if value <= 0.0 || !value.is_finite() {
         return None;
     }
-    let exponent = value.log10().floor();
+    let last = value.log10().floor() - f64::from(count - 1);
     // What is a whole number of units up to rounding is that number.
-    let digits = (value / 10f64.powf(exponent - 1.0) * (1.0 + 1e-12)).floor();
-    format!("{digits}e{}", exponent - 1.0).parse().ok()
+    let digits = (value / 10f64.powf(last) * (1.0 + 1e-12)).floor();
+    format!("{digits}e{last}").parse().ok()
 }
 
 /// What is known without the method.
@@ -49,7 +53,7 @@ pub struct Asked<'a> {
     pub measured: Option<(f64, f64)>,
     /// True where inputs jump within the window.
     pub jumps: bool,
-    /// The step of the result, where the submission fails.
+    /// The step of the result, where it breaks its limit.
     pub failing: Option<f64>,
     /// The unit of time of the case.
     pub time_unit: &'a str,
@@ -185,10 +189,13 @@ fn not_the_step(computed: &Computed, taken: f64) -> Option<String> {
     })
 }
 
-/// A number in a sentence: as it is where that is short.
+/// A step in a sentence: as it is where that is short, else three digits, rounded down.
 fn few(value: f64) -> String {
     let full = plain(value);
-    if full.len() <= 8 { full } else { short(value) }
+    if full.len() <= 8 {
+        return full;
+    }
+    to_digits(value, 3).map_or(full, plain)
 }
 
 #[cfg(test)]

@@ -190,13 +190,13 @@ fn modes(linear: &Linear, scales: &[f64]) -> Option<Modes> {
     let (turn, upper) = Schur::try_new(matrix, f64::EPSILON, 10_000)?.unpack();
     let value = |k: usize| upper[(k, k)];
     let mut nearest = vec![f64::INFINITY; n];
-    for i in 0..n {
+    for (i, nearest) in nearest.iter_mut().enumerate() {
         for j in (0..n).filter(|&j| j != i) {
             let gap = (value(i) - value(j)).norm();
             if gap <= COINCIDE * value(i).norm().max(value(j).norm()) {
                 return None;
             }
-            nearest[i] = nearest[i].min(gap);
+            *nearest = nearest.min(gap);
         }
     }
     // Vectors of the triangle by substitution, turned back.

@@ -174,7 +174,7 @@ fn a_method_names_the_step() {
         let text = advice["text"].as_str().unwrap();
         // 2 tau of the first-order decay.
         assert!(
-            text.contains("forward Euler") && text.contains("stable up to 4.32 s"),
+            text.contains("forward Euler") && text.contains("stable up to 4.31 s"),
             "{text}"
         );
         let count = (SPAN / step).round() as u32;
