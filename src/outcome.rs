@@ -1,5 +1,6 @@
 //! What an audit has found, as plain data: no formatting, no file formats.
 
+mod advice;
 mod causes;
 mod evidence;
 mod methods;
@@ -10,8 +11,11 @@ use crate::judge::Verdict;
 use crate::submission::{Expect, Role, Setting, Submission};
 use crate::trajectory::Finding;
 
+pub use advice::{AdviceOutcome, SettingRung, SettingsOutcome};
 pub use causes::CauseOutcome;
-pub use evidence::{ClaimOutcome, Consistent, EvidenceOutcome, GrowthOutcome, RunEvidence};
+pub use evidence::{
+    ClaimOutcome, Consistent, Damping, EvidenceOutcome, GrowthOutcome, GrowthSummary, RunEvidence,
+};
 pub use methods::{AliasFacts, Factor, FormFacts, MethodFacts, SourceFacts, Written};
 pub use steps::{
     ChannelError, ChannelLimit, JumpGrid, LargestStep, MethodSteps, OnJumps, Rule, StepRun,
@@ -71,6 +75,10 @@ pub struct Audited {
     pub evidence: Option<EvidenceOutcome>,
     /// Likely causes of a failure.
     pub causes: Vec<CauseOutcome>,
+    /// Errors over error settings by channel; empty without a ladder of such.
+    pub settings: Vec<SettingsOutcome>,
+    /// Which step the limits need, as far as it can be told.
+    pub advice: Option<AdviceOutcome>,
 }
 
 /// Whose limits an audit has used.
@@ -207,6 +215,8 @@ impl Audited {
             order_verdict: None,
             evidence: None,
             causes: Vec::new(),
+            settings: Vec::new(),
+            advice: None,
         }
     }
 

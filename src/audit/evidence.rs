@@ -15,7 +15,7 @@ pub(super) struct RunFound {
 }
 
 /// Claimed steps and rows agree to this part of the step.
-const FITS: f64 = 1e-6;
+pub(super) const FITS: f64 = 1e-6;
 
 /// Asks every run which method wrote it.
 pub(super) fn ask(model: &Model, submission: &Submission, runs: &[RunCompared]) -> Vec<RunFound> {
@@ -154,6 +154,7 @@ pub(super) fn conclude(
         claims,
         families: common(found),
         runs: run_evidence,
+        growth: None,
     });
 }
 

@@ -3,11 +3,14 @@
 //! `run` compares one file, `verdict` judges the files of a submission together, `alone`
 //! compares the runs of a submission without a case with each other.
 
+mod advice;
 mod alone;
 mod causes;
 mod evidence;
+mod growth;
 mod keep;
 mod run;
+mod settings;
 mod verdict;
 
 use std::collections::BTreeMap;
@@ -57,6 +60,9 @@ struct Model {
     time_constant: Option<f64>,
 }
 
+/// Up to so many submissions each is looked at closely, whether it passes or not.
+const FEW: usize = 3;
+
 type Models = Mutex<BTreeMap<String, Arc<Model>>>;
 
 /// Audits everything in the plan. The outcome does not depend on the threads.
@@ -72,7 +78,8 @@ pub fn audit(plan: &Plan) -> Outcome {
                     let Some(planned) = plan.submissions.get(index) else {
                         break;
                     };
-                    let result = audit_one(planned, &plan.library, &models);
+                    let few = plan.submissions.len() <= FEW;
+                    let result = audit_one(planned, &plan.library, &models, few);
                     lock(&done).insert(index, result);
                 }
             });
@@ -125,7 +132,12 @@ fn model(
 }
 
 /// Audits one submission; what is wrong with it as such is placed in its file.
-fn audit_one(planned: &Planned, library: &Library, models: &Models) -> Result<Audited, Vec<Fault>> {
+fn audit_one(
+    planned: &Planned,
+    library: &Library,
+    models: &Models,
+    few: bool,
+) -> Result<Audited, Vec<Fault>> {
     let submission = &planned.submission;
     let place = |fault: Fault| match &planned.file {
         Some(file) => fault.in_file(file),
@@ -175,6 +187,9 @@ fn audit_one(planned: &Planned, library: &Library, models: &Models) -> Result<Au
     judge_runs(&mut audited);
     causes::look(&model, submission, &compared, &mut found, &mut audited);
     evidence::conclude(submission, &compared, &found, &mut audited);
+    growth::measure(&model, &compared, &mut audited);
+    settings::settings(&model.case, &compared, &mut audited);
+    advice::advise(&model, submission, &compared, &found, few, &mut audited);
     Ok(audited)
 }
 

@@ -29,7 +29,7 @@ pub(super) struct RunCompared {
 
 /// The limit of one channel: what the submission states, else what the case has. A
 /// submission that states one part of a limit has stated all of it.
-fn limit(case: &Case, stated: &LimitsStated, channel: &str) -> Limit {
+pub(super) fn limit(case: &Case, stated: &LimitsStated, channel: &str) -> Limit {
     let own = stated.channels.get(channel).copied().unwrap_or_default();
     let general = stated.general;
     let own_states = own.absolute.is_some() || own.relative.is_some();

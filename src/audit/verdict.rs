@@ -191,7 +191,8 @@ fn step_misfit(run: &RunOutcome, spacing: f64) -> Option<String> {
     })
 }
 
-fn rung(run: &RunCompared, channel: usize) -> Option<Rung> {
+/// A run as a rung of its ladder, for one channel.
+pub(super) fn rung(run: &RunCompared, channel: usize) -> Option<Rung> {
     let (_, deviation) = run.deviations.iter().find(|(index, _)| *index == channel)?;
     (deviation.rows > 0).then_some(Rung {
         setting: rung_setting(&run.outcome)?,

@@ -1,5 +1,6 @@
 //! Sentences: what, where, how to mend it.
 
+use super::advice::measured_step;
 use crate::judge::{OrderVerdict, Verdict};
 use crate::number::{measured, plain, short};
 use crate::outcome::ErrorOutcome;
@@ -51,14 +52,11 @@ pub fn limit_broken(place: &Place, errors: &ErrorOutcome, observed: Option<(f64,
         share_of_limit(errors.limit_used),
     );
     if let Some((order, step)) = observed
-        && order > 0.3
-        && errors.limit_used.is_finite()
+        && let Some(needed) = measured_step(step, errors.limit_used, order)
     {
-        // A tenth is left for the error to be not quite as regular as its order.
-        let needed = 0.9 * step * errors.limit_used.powf(-1.0 / order);
-        let needed = rounded_down(needed);
         text += &format!(
-            "; at the order {order:.1} seen, a step of {needed} {time_unit} would keep it"
+            "; at the order {order:.1} seen, a step of {} {time_unit} would keep it",
+            plain(needed)
         );
     }
     text
@@ -134,14 +132,6 @@ pub fn order_reason(channel: &str, claimed: f64, order: &OrderVerdict) -> Option
             ))
         }
     }
-}
-
-/// A step for a sentence: two digits, rounded down.
-fn rounded_down(step: f64) -> String {
-    let exponent = step.log10().floor();
-    let digits = (step / 10f64.powf(exponent - 1.0)).floor();
-    let text = format!("{digits}e{}", exponent - 1.0);
-    text.parse::<f64>().map_or(text, plain)
 }
 
 /// An interval where it says more than the value itself.

@@ -4,13 +4,15 @@
 //!
 //! `catalogue` and `scheme` hold the coefficients, `stability` and `characteristic` what
 //! follows from them alone; `linear` and `recurrence` turn a method, a step and a case into
-//! matrices; `record` is what is kept of a file and `evidence` lays the two beside each other.
+//! matrices; `record` is what is kept of a file and `evidence` lays the two beside each other;
+//! `growth` reads the factor of a step off the rows without knowing the method.
 
 mod catalogue;
 mod characteristic;
 mod drive;
 mod estimate;
 mod evidence;
+mod growth;
 mod jumps;
 mod linear;
 mod march;
@@ -28,6 +30,7 @@ pub use catalogue::{METHODS, Method, find, find_all};
 pub use characteristic::Characteristic;
 pub use drive::Drive;
 pub use evidence::{Evidence, Family, Tried, evidence};
+pub use growth::{Growth, Likeness, Unmeasured, growth, likeness};
 pub use linear::{Linear, Side, Signal};
 pub use march::{March, NEAR, Sides, add_forcing};
 pub use record::{Piece, Record, START_ROWS, Window, windows};

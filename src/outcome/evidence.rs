@@ -13,6 +13,8 @@ pub struct EvidenceOutcome {
     pub families: Vec<String>,
     /// In the order of the runs.
     pub runs: Vec<RunEvidence>,
+    /// What the factors of the modes say of the order; `None` before they were measured.
+    pub growth: Option<GrowthSummary>,
 }
 
 /// One claim.
@@ -64,20 +66,49 @@ pub struct Consistent {
     pub inputs: &'static str,
 }
 
-/// The factor by which a step has multiplied one mode, measured from the rows.
-#[derive(Clone, Copy, Debug)]
+/// The factor by which one mode has grown from row to row, measured from the rows.
+#[derive(Clone, Copy, Debug, PartialEq)]
 pub struct GrowthOutcome {
     /// The eigenvalue: real and imaginary part, per unit of time.
     pub eigenvalue: (f64, f64),
-    /// Step times eigenvalue.
+    /// Distance of the rows times eigenvalue.
     pub z: (f64, f64),
-    /// The factor.
+    /// The factor from row to row.
     pub factor: (f64, f64),
     /// How far it is known.
     pub doubt: f64,
     /// `exp(z)`.
     pub exact: (f64, f64),
-    /// Coefficients of the Taylor series of `exp` that it reproduces, the constant one
-    /// included, as far as the runs tell.
+    /// Steps from row to row, where the step is stated.
+    pub steps_per_row: Option<u64>,
+    /// The factor of one step and how far it is known, where rows are several steps apart
+    /// and it can be told: it is real and positive.
+    pub per_step: Option<(f64, f64)>,
+}
+
+/// What the factors of all runs together come to.
+#[derive(Clone, Debug, PartialEq)]
+pub struct GrowthSummary {
+    /// Coefficients of the series of `exp` that the factors share with it, the constant one
+    /// included; one more than the order on linear problems.
     pub coefficients: Option<u32>,
+    /// True where the factors cannot be told from `exp` itself.
+    pub exact: bool,
+    /// At the largest step over a mode that decays.
+    pub damping: Option<Damping>,
+    /// Why there are no factors, where there are none.
+    pub missing: Option<&'static str>,
+}
+
+/// What is left of a decaying mode after one row.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct Damping {
+    /// Distance of the rows times eigenvalue.
+    pub z: (f64, f64),
+    /// Magnitude of the factor.
+    pub factor: f64,
+    /// How far it is known.
+    pub doubt: f64,
+    /// `|exp(z)|`.
+    pub exact: f64,
 }

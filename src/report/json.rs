@@ -2,14 +2,16 @@
 
 use super::SCOPE;
 use super::wire::{
-    AuditReport, CauseReport, ChannelReport, ClaimReport, ConsistentReport, EvidenceReport,
-    FindingReport, GrowthReport, NotAuditedReport, OrderReport, PairReport, RunEvidenceReport,
-    RunReport, SCHEMA, SubmissionReport, Summary,
+    AdviceReport, AuditReport, CauseReport, ChannelReport, ClaimReport, ConsistentReport,
+    DampingReport, EvidenceReport, FindingReport, GrowthReport, GrowthSummaryReport,
+    NotAuditedReport, OrderReport, PairReport, RunEvidenceReport, RunReport, SCHEMA,
+    SettingRungReport, SettingsReport, SubmissionReport, Summary,
 };
 use crate::judge::Verdict;
 use crate::outcome::{
-    Audited, CauseOutcome, ChannelOutcome, ClaimOutcome, Consistent, EvidenceOutcome,
-    GrowthOutcome, LimitsFrom, Outcome, RunEvidence, RunOutcome,
+    AdviceOutcome, Audited, CauseOutcome, ChannelOutcome, ClaimOutcome, Consistent, Damping,
+    EvidenceOutcome, GrowthOutcome, GrowthSummary, LimitsFrom, Outcome, Rule, RunEvidence,
+    RunOutcome, SettingRung, SettingsOutcome,
 };
 use crate::submission::{Expect, Role, Setting};
 
@@ -89,7 +91,42 @@ fn submission(audited: &Audited) -> SubmissionReport {
             .collect(),
         evidence: audited.evidence.as_ref().map(evidence),
         causes: audited.causes.iter().map(cause).collect(),
-        advice: None,
+        settings: audited.settings.iter().map(settings).collect(),
+        advice: audited.advice.as_ref().map(advice),
+    }
+}
+
+fn advice(advice: &AdviceOutcome) -> AdviceReport {
+    let word = |rule: Rule| match rule {
+        Rule::Accuracy => Some("accuracy".to_owned()),
+        Rule::Stability => Some("stability".to_owned()),
+        Rule::Neither => None,
+    };
+    AdviceReport {
+        largest_step: advice.largest_step.and_then(finite),
+        ruled_by: advice.ruled_by.and_then(word),
+        text: advice.text.clone(),
+    }
+}
+
+fn settings(settings: &SettingsOutcome) -> SettingsReport {
+    let rung = |rung: &SettingRung| SettingRungReport {
+        file: rung.file.clone(),
+        setting: rung.setting,
+        error: finite(rung.error),
+        error_over_setting: finite(rung.ratio),
+        counts: rung.counts,
+    };
+    SettingsReport {
+        channel: settings.channel.clone(),
+        rungs: settings.rungs.iter().map(rung).collect(),
+        slope: settings.slope.and_then(|(slope, _, _)| finite(slope)),
+        low: settings.slope.and_then(|(_, low, _)| finite(low)),
+        high: settings.slope.and_then(|(_, _, high)| finite(high)),
+        spread: settings.spread.and_then(finite),
+        proportional: settings.proportional,
+        needed: settings.needed,
+        text: settings.text.clone(),
     }
 }
 
@@ -143,6 +180,23 @@ fn evidence(evidence: &EvidenceOutcome) -> EvidenceReport {
         claims: evidence.claims.iter().map(claim).collect(),
         families: evidence.families.clone(),
         runs: evidence.runs.iter().map(run_evidence).collect(),
+        growth: evidence.growth.as_ref().map(growth_summary),
+    }
+}
+
+fn growth_summary(growth: &GrowthSummary) -> GrowthSummaryReport {
+    let damping = |damping: Damping| DampingReport {
+        z: [damping.z.0, damping.z.1],
+        factor: damping.factor,
+        doubt: damping.doubt,
+        exact: damping.exact,
+    };
+    GrowthSummaryReport {
+        coefficients: growth.coefficients,
+        order: growth.coefficients.map(|count| count.saturating_sub(1)),
+        exact: growth.exact,
+        damping: growth.damping.map(damping),
+        missing: growth.missing.map(str::to_owned),
     }
 }
 
@@ -161,7 +215,9 @@ fn run_evidence(run: &RunEvidence) -> RunEvidenceReport {
         factor: pair(growth.factor),
         doubt: growth.doubt,
         exact: pair(growth.exact),
-        coefficients: growth.coefficients,
+        steps_per_row: growth.steps_per_row,
+        per_step: growth.per_step.map(|(factor, _)| factor),
+        per_step_doubt: growth.per_step.map(|(_, doubt)| doubt),
     };
     RunEvidenceReport {
         file: run.file.clone(),

@@ -230,8 +230,8 @@ fn coefficients(written: &Written, screen: Screen, lines: &mut Vec<String>) {
         Written::Exponential { by_state } => {
             lines.push("Coefficients: none".to_owned());
             let how = if *by_state {
-                "  Each state by the exponential of its own rate, inputs and other states held from \
-                 the start of the step."
+                "  Each state by the exponential of its own rate, all else held from the start of \
+                 the step."
             } else {
                 "  States by the matrix exponential, inputs held from the start of the step."
             };

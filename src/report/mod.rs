@@ -6,6 +6,7 @@
 mod case_json;
 mod case_text;
 mod csv_values;
+mod growth_text;
 mod json;
 mod method_text;
 mod polynomial;

@@ -5,6 +5,7 @@ use std::cmp::Ordering;
 
 use comfy_table::{ColumnConstraint, Table};
 
+use super::growth_text::{FEW, growth_text};
 use super::style::{Screen, Tone, coloured, toned};
 use super::{NOT_FOR_DOSING, SCOPE};
 use crate::judge::Verdict;
@@ -29,6 +30,11 @@ pub fn audit_text(outcome: &Outcome, screen: Screen) -> String {
     if !controls.is_empty() {
         text += &format!("\nControls, as expected:\n{controls}");
     }
+    let settings = settings(outcome, screen);
+    if !settings.is_empty() {
+        text += &format!("\nError settings:\n{settings}");
+    }
+    text += &growth_text(outcome, screen);
     let notes = notes(outcome, screen);
     if !notes.is_empty() {
         text += &format!("\nNotes:\n{notes}");
@@ -332,7 +338,21 @@ fn reasons(submission: &Audited, screen: Screen) -> String {
         let text = format!("likely cause: {}", cause.text);
         lines += &line(screen, &submission.name, &text);
     }
+    if let Some(advice) = submission.advice.as_ref().filter(|_| !lines.is_empty()) {
+        lines += &line(screen, &submission.name, &format!("step: {}", advice.text));
+    }
     lines
+}
+
+/// What ladders of error settings say, where a submission does not pass or few are audited.
+fn settings(outcome: &Outcome, screen: Screen) -> String {
+    let few = outcome.submissions.len() <= FEW;
+    let shown = |s: &&Audited| few || s.verdict != Verdict::Pass;
+    let lines = outcome.submissions.iter().filter(shown).flat_map(|s| {
+        let settings = s.settings.iter().take(MOST_REASONS);
+        settings.map(|settings| line(screen, &s.name, &settings.text))
+    });
+    lines.collect()
 }
 
 /// Notes, each once with the submissions that it holds for.

@@ -57,8 +57,53 @@ pub struct SubmissionReport {
     pub evidence: Option<EvidenceReport>,
     /// Likely causes of a failure.
     pub causes: Vec<CauseReport>,
-    /// Advice on the step; null until it is computed.
-    pub advice: Option<()>,
+    /// Errors of runs with error settings; empty without such.
+    pub settings: Vec<SettingsReport>,
+    /// Advice on the step; null where nothing can be told.
+    pub advice: Option<AdviceReport>,
+}
+
+/// Which step keeps the limits.
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
+#[allow(missing_docs)]
+pub struct AdviceReport {
+    pub largest_step: Option<f64>,
+    /// `accuracy` or `stability`; null where neither does, or it cannot be told.
+    pub ruled_by: Option<String>,
+    pub text: String,
+}
+
+/// The errors of one channel over the error settings of a code that adapts its step.
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
+#[allow(missing_docs)]
+pub struct SettingsReport {
+    pub channel: String,
+    /// Coarsest setting first.
+    pub rungs: Vec<SettingRungReport>,
+    /// Of the error over the setting, both as logarithms.
+    pub slope: Option<f64>,
+    pub low: Option<f64>,
+    pub high: Option<f64>,
+    /// Largest error over setting by the smallest.
+    pub spread: Option<f64>,
+    pub proportional: Option<bool>,
+    /// The setting that the limit needs.
+    pub needed: Option<f64>,
+    pub text: String,
+}
+
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
+#[allow(missing_docs)]
+pub struct SettingRungReport {
+    pub file: String,
+    pub setting: f64,
+    pub error: Option<f64>,
+    pub error_over_setting: Option<f64>,
+    /// False where the error is hidden by digits or rounding.
+    pub counts: bool,
 }
 
 /// A likely cause of a failure.
@@ -86,6 +131,36 @@ pub struct EvidenceReport {
     /// Methods that fit every run which rules anything out.
     pub families: Vec<String>,
     pub runs: Vec<RunEvidenceReport>,
+    /// What the growth of the modes says of the order; null without a case.
+    pub growth: Option<GrowthSummaryReport>,
+}
+
+/// What the factors of all modes and runs come to.
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
+#[allow(missing_docs)]
+pub struct GrowthSummaryReport {
+    /// Coefficients of the Taylor series of exp that the factors reproduce.
+    pub coefficients: Option<u32>,
+    /// One less.
+    pub order: Option<u32>,
+    /// True where the factors cannot be told from exp.
+    pub exact: bool,
+    pub damping: Option<DampingReport>,
+    /// Why no factor could be measured.
+    pub missing: Option<String>,
+}
+
+/// The decaying mode with the largest z.
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
+#[allow(missing_docs)]
+pub struct DampingReport {
+    pub z: [f64; 2],
+    /// Magnitude of the factor from row to row.
+    pub factor: f64,
+    pub doubt: f64,
+    pub exact: f64,
 }
 
 #[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
@@ -134,7 +209,7 @@ pub struct ConsistentReport {
     pub inputs: String,
 }
 
-/// The factor of one mode in a step; complex numbers as real and imaginary part.
+/// The factor of one mode from row to row; complex numbers as real and imaginary part.
 #[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
 #[serde(deny_unknown_fields)]
 #[allow(missing_docs)]
@@ -144,8 +219,11 @@ pub struct GrowthReport {
     pub factor: [f64; 2],
     pub doubt: f64,
     pub exact: [f64; 2],
-    /// Coefficients of the Taylor series of exp that are reproduced.
-    pub coefficients: Option<u32>,
+    /// Null where no step is stated.
+    pub steps_per_row: Option<u64>,
+    /// The factor of one step where rows are several apart, if it can be told.
+    pub per_step: Option<f64>,
+    pub per_step_doubt: Option<f64>,
 }
 
 #[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]

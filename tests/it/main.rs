@@ -52,3 +52,9 @@ mod cheats;
 
 /// Every method of the catalogue: its order, its stability as published.
 mod methods;
+
+/// Factors of single modes: measured against published ones.
+mod growth;
+
+/// Which step or error setting a submission is told to take, and that it helps.
+mod advice;
