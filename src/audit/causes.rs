@@ -4,7 +4,7 @@ use super::Model;
 use super::evidence::{RunFound, claimed_methods};
 use super::run::RunCompared;
 use crate::explain::{Cause, Trouble, causes};
-use crate::judge::{Support, Verdict};
+use crate::judge::{Answer, Support, Verdict};
 use crate::method::Linear;
 use crate::outcome::{Audited, CauseOutcome};
 use crate::submission::{Role, Setting, Submission};
@@ -36,6 +36,7 @@ pub(super) fn look(
         .map(|input| input.name.clone())
         .collect();
     let mut looked = 0;
+    let mut mended_by: Option<String> = None;
     // The finest run decides on the order; results decide on limits.
     let mut order: Vec<usize> = (0..runs.len()).collect();
     order.sort_by_key(|&index| runs[index].outcome.role != Role::Result);
@@ -53,8 +54,14 @@ pub(super) fn look(
             .as_ref()
             .is_some_and(|a| a.support == Support::Contradicts);
         let low_order = audited.order_verdict == Some(Verdict::Fail);
-        if !(contradicted || result && (broken(Verdict::Fail) || low_order)) || looked >= MOST_RUNS
-        {
+        if !(contradicted || result && (broken(Verdict::Fail) || low_order)) {
+            continue;
+        }
+        if looked >= MOST_RUNS {
+            // The runs of a ladder share their fault.
+            if let (Some(text), Some(answer)) = (&mended_by, &mut found.answer) {
+                take_back(answer, text.clone());
+            }
             continue;
         }
         looked += 1;
@@ -77,10 +84,7 @@ pub(super) fn look(
         if let Some(answer) = found.answer.as_mut().filter(|_| contradicted)
             && let Some(cause) = mended(&causes, &methods)
         {
-            answer.support = Support::CannotTell;
-            answer.method = answer.method.map(|_| Support::CannotTell);
-            answer.step = answer.step.map(|_| Support::CannotTell);
-            answer.text = format!(
+            let text = format!(
                 "the rows do not follow {} as they stand, yet they do once this is mended: {}",
                 submission
                     .claims
@@ -89,6 +93,8 @@ pub(super) fn look(
                     .unwrap_or("the claimed method"),
                 cause.text
             );
+            take_back(answer, text.clone());
+            mended_by.get_or_insert(text);
         }
         for cause in causes {
             let known = |other: &CauseOutcome| other.kind == cause.kind.word();
@@ -107,6 +113,16 @@ pub(super) fn look(
                 left_over: cause.left_over,
             });
         }
+    }
+}
+
+/// A contradiction that a fault explains is none of the claim.
+fn take_back(answer: &mut Answer, text: String) {
+    if answer.support == Support::Contradicts {
+        answer.support = Support::CannotTell;
+        answer.method = answer.method.map(|_| Support::CannotTell);
+        answer.step = answer.step.map(|_| Support::CannotTell);
+        answer.text = text;
     }
 }
 

@@ -126,6 +126,11 @@ pub(super) fn conclude(
     let contradicted = claims
         .iter()
         .filter(|claim| claim.support == Support::Contradicts && claim.what != "order");
+    // Where the method itself is contradicted, no step of it needs a word.
+    let method = claims
+        .iter()
+        .any(|claim| claim.what == "method" && claim.support == Support::Contradicts);
+    let contradicted = contradicted.filter(|claim| !method || claim.what == "method");
     let mut told: Vec<&str> = Vec::new();
     for claim in contradicted {
         audited.verdict = Verdict::Fail;

@@ -227,14 +227,22 @@ pub fn causes(trouble: &Trouble) -> Vec<Cause> {
         });
         found.extend(candidates.map(|candidate| ranked(candidate, 1.0, Some(method), 0.0)));
     }
-    chosen(found)
+    chosen(found, trouble.methods)
 }
 
 /// A cause with what orders it among others.
 type Ranked = (u8, f64, Cause);
 
-fn chosen(mut found: Vec<Ranked>) -> Vec<Cause> {
-    found.sort_by(|a, b| a.0.cmp(&b.0).then(a.1.total_cmp(&b.1)));
+fn chosen(mut found: Vec<Ranked>, claimed: &[&'static Method]) -> Vec<Cause> {
+    // Of equal explanations the one with the claimed method at work comes first.
+    let other = |one: &Ranked| {
+        let is_own = |m: &'static Method| claimed.iter().any(|c| c.name == m.name);
+        !one.2.method.is_some_and(is_own)
+    };
+    found.sort_by(|a, b| {
+        let order = a.0.cmp(&b.0).then(other(a).cmp(&other(b)));
+        order.then(a.1.total_cmp(&b.1))
+    });
     let Some(simplest) = found.first().map(|first| first.0) else {
         return Vec::new();
     };
@@ -404,11 +412,22 @@ fn of_faults(trouble: &Trouble, rows: &Rows, names: &Names, before: Gap) -> Vec<
             {
                 continue;
             }
-            let all = Stepping::all(method, linear, step);
-            ways.extend(
-                all.into_iter()
-                    .map(|stepping| (Way::Stepped(stepping), Some(method))),
-            );
+            // The claimed method may see either value at a jump.
+            let claimed = place < trouble.methods.len();
+            let sides: &[Sides] =
+                match claimed && linear.jumps_within(linear.window.0, linear.window.1) {
+                    true => &[Sides::After, Sides::Own],
+                    false => &[Sides::After],
+                };
+            for stepping in Stepping::all(method, linear, step) {
+                ways.extend(sides.iter().map(|&sides| {
+                    let stepping = Stepping {
+                        sides,
+                        ..stepping.clone()
+                    };
+                    (Way::Stepped(stepping), Some(method))
+                }));
+            }
         }
     }
     let model_step = step.unwrap_or(0.0);

@@ -19,6 +19,7 @@ pub(super) fn candidates(
     let mut found = Vec::new();
     found.extend(moved_inputs(linear, rows, names, way, step));
     found.extend(missing_inputs(linear, rows, names, way, step));
+    found.extend(scaled_inputs(linear, rows, names, way));
     found.extend(held(linear, rows, names, way, step));
     found.extend(start(linear, rows, names, way));
     found.extend(rates(linear, rows, names, way));
@@ -138,6 +139,65 @@ fn missing_inputs(
     (0..linear.signals.len()).filter_map(missing).collect()
 }
 
+/// Inputs that act with a wrong strength: the response is linear in it.
+fn scaled_inputs(linear: &Linear, rows: &Rows, names: &Names, way: &Way) -> Vec<Candidate> {
+    let Some(base) = trajectory(linear, rows, way) else {
+        return Vec::new();
+    };
+    let scaled = |input: usize| {
+        let mut without = linear.clone();
+        without.signals[input] = Signal::Held(0.0, Vec::new());
+        let rest = trajectory(&without, rows, way)?;
+        let effect: Vec<f64> = base
+            .iter()
+            .zip(&rest)
+            .map(|(all, rest)| all - rest)
+            .collect();
+        let factor = share(rows, &rest, &effect)?;
+        if factor.abs() < 1e-6 || (factor - 1.0).abs() < 1e-6 {
+            return None;
+        }
+        let values = rest
+            .iter()
+            .zip(&effect)
+            .map(|(x, e)| x + factor * e)
+            .collect();
+        let name = &names.inputs[input];
+        let (kind, text) = if (factor + 1.0).abs() < 1e-3 {
+            (
+                Kind::Sign,
+                format!("input `{name}` acts with the wrong sign"),
+            )
+        } else if let Some(slip) = slip(factor) {
+            let text = format!(
+                "input `{name}` acts {} times as strongly as it should, as from a slip of units \
+                 ({slip}); check the number that it was given",
+                short(factor)
+            );
+            (Kind::Unit, text)
+        } else {
+            let text = format!(
+                "input `{name}` is multiplied by {}; check its size",
+                short(factor)
+            );
+            (Kind::Gain, text)
+        };
+        Some(Candidate::new(kind, 1, Some(factor), values, text))
+    };
+    (0..linear.signals.len()).filter_map(scaled).collect()
+}
+
+/// How much of an effect, on top of a base, fits the rows best.
+fn share(rows: &Rows, base: &[f64], effect: &[f64]) -> Option<f64> {
+    let (mut both, mut own) = (0.0, 0.0);
+    for at in 0..base.len() {
+        let weight = 1.0 / rows.peaks[at % rows.width()].max(f64::MIN_POSITIVE);
+        both += effect[at] * weight * (rows.written[at] - base[at]) * weight;
+        own += (effect[at] * weight).powi(2);
+    }
+    (own > 0.0).then_some(both / own)
+}
+
 /// Inputs that are held over the step though they vary.
 fn held(linear: &Linear, rows: &Rows, names: &Names, way: &Way, step: f64) -> Option<Candidate> {
     if linear.is_steady() {
@@ -203,17 +263,8 @@ fn start(linear: &Linear, rows: &Rows, names: &Names, way: &Way) -> Vec<Candidat
         let mut moved = linear.clone();
         moved.start[state] += unit;
         let response = trajectory(&moved, rows, way)?;
-        let (mut both, mut own) = (0.0, 0.0);
-        for at in 0..base.len() {
-            let weight = 1.0 / rows.peaks[at % rows.width()].max(f64::MIN_POSITIVE);
-            let effect = (response[at] - base[at]) * weight;
-            both += effect * (rows.written[at] - base[at]) * weight;
-            own += effect * effect;
-        }
-        if own == 0.0 {
-            return None;
-        }
-        let share = both / own;
+        let effect: Vec<f64> = response.iter().zip(&base).map(|(r, x)| r - x).collect();
+        let share = share(rows, &base, &effect)?;
         let values = base
             .iter()
             .zip(&response)
