@@ -41,16 +41,10 @@ fn measure(
         .min(turn.unwrap_or(f64::INFINITY));
     let spacing = fast * z_max * steps as f64;
     let run = Run {
-        case: &case,
-        method,
-        scheme: 0,
-        spacing,
-        steps,
-        rows: 40,
         start: Start::Exact,
-        summed: false,
+        ..Run::new(&case, method, spacing, steps, 40)
     };
-    let (times, states) = run.states();
+    let (times, states) = run.states().unwrap();
     let record = record(&case, &times, &states, spacing, digits);
     growth(&linear, &record, steps).map(|growth| Measured { growth, steps })
 }

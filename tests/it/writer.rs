@@ -443,3 +443,43 @@ impl Kept<'_> {
         }
     }
 }
+
+/// One step of a one-step method over a model that a fault may have been put into.
+pub fn one_step(
+    linear: &Linear,
+    method: &Coefficients,
+    t: f64,
+    h: f64,
+    x: &DVector<f64>,
+) -> DVector<f64> {
+    let n = linear.size();
+    let program = Program {
+        linear,
+        matrix: DMatrix::from_fn(n, n, |i, j| linear.matrix[(i, j)]),
+        seen: Seen::From,
+        solver: Solver::Direct,
+    };
+    program.step(method, t, h, x).unwrap()
+}
+
+/// What the library would keep of a file with all states of a run.
+pub fn record(
+    case: &Case,
+    times: &[f64],
+    states: &[Vec<f64>],
+    spacing: f64,
+    digits: usize,
+) -> Record {
+    let linear = Linear::new(case);
+    let channels: Vec<usize> = (0..linear.size()).collect();
+    let kept = Kept {
+        times,
+        states,
+        truth: &truth(case, times),
+        digits,
+        channels: &channels,
+        spacing: Some(spacing),
+        single: false,
+    };
+    kept.record(&linear, Seen::From)
+}
