@@ -171,6 +171,8 @@ fn the_screens_in_the_readme_are_true() {
         .collect();
     let shown = screen(&["audit", "demo-runs"], "C.UTF-8", "100");
     assert_eq!(format!("{}\nexit status 0\n", screens[0]), shown);
+    let alone = screen(&["audit", "demo-runs/battery-room/alder"], "C.UTF-8", "100");
+    assert_eq!(format!("{}\nexit status 0\n", screens[2]), alone);
     // The same without the mark of one control.
     let folder =
         std::env::temp_dir().join(format!("stepgauge-readme-{}/winch", std::process::id()));

@@ -6,8 +6,10 @@
 //! and all that are equally simple.
 
 mod bench;
+mod jumps;
 mod method;
 mod model;
+mod shape;
 mod written;
 
 use bench::{Gap, Rows, Stepping, Way, trajectory};
@@ -223,7 +225,7 @@ pub fn causes(trouble: &Trouble) -> Vec<Cause> {
     {
         let all = Stepping::all(method, trouble.linear, step).into_iter();
         let candidates = all.filter_map(|stepping| {
-            model::wrong_side(trouble.linear, &rows, &names, &stepping, before)
+            jumps::wrong_side(trouble.linear, &rows, &names, &stepping, before)
         });
         found.extend(candidates.map(|candidate| ranked(candidate, 1.0, Some(method), 0.0)));
     }
@@ -354,7 +356,7 @@ fn of_method(
         step,
         &rows.written,
     ));
-    candidates.extend(model::jumps(linear, rows, names, &way));
+    candidates.extend(jumps::jumps(linear, rows, names, &way));
     if family.reading == Reading::Held {
         candidates.extend(model::held_as_found(linear, rows, names, &way, step));
     }
@@ -392,7 +394,7 @@ fn of_faults(trouble: &Trouble, rows: &Rows, names: &Names, before: Gap) -> Vec<
     let linear = trouble.linear;
     let mut found = Vec::new();
     let own = |candidate: Candidate| ranked(candidate, 0.0, None, 0.0);
-    if let Some(candidate) = written::interpolated(rows, names) {
+    if let Some(candidate) = shape::interpolated(rows, names) {
         return vec![own(candidate)];
     }
     if let Some(candidate) = method::single_precision_time(linear, rows, names, trouble, before) {
@@ -477,7 +479,7 @@ fn of_faults(trouble: &Trouble, rows: &Rows, names: &Names, before: Gap) -> Vec<
                 loose.push(ranked(candidate, left_over, None, after.share));
             }
         }
-        if let Some(candidate) = written::noise(rows, names, &base)
+        if let Some(candidate) = shape::noise(rows, names, &base)
             && smooth
                 .as_ref()
                 .is_none_or(|known| candidate.number < known.number)
