@@ -125,16 +125,18 @@ fn unit(kept: &[Kept], survey: &Survey) -> f64 {
         return single;
     }
     let values = kept.iter().flat_map(|row| row.channels.iter().flatten());
-    let mut telling = 0;
-    for value in values {
+    let (mut telling, mut all) = (0, 0);
+    for value in values.filter(|value| value.written != 0.0) {
         let written = value.written;
         if f64::from(written as f32) != written {
             return f64::EPSILON / 2.0;
         }
-        // Whole numbers and short fractions are numbers of either kind.
-        telling += usize::from(f64::from((written * 4096.0) as i32) != written * 4096.0);
+        all += 1;
+        // Halves, quarters and the like are numbers of either kind: most values of single
+        // precision use the last of its bits.
+        telling += usize::from((written as f32).to_bits() & 0xf != 0);
     }
-    if telling >= 8 {
+    if telling >= 8 && 2 * telling >= all {
         single
     } else {
         f64::EPSILON / 2.0

@@ -24,10 +24,12 @@ pub(super) struct Rows {
     /// Largest exact value of each channel.
     pub peaks: Vec<f64>,
     pub spacing: Option<f64>,
+    /// Every value is one of single precision.
+    pub single: bool,
 }
 
 /// Rows further from the start than this are not looked at: methods have to run there.
-const MOST_ROWS: u64 = 40_000;
+const MOST_ROWS: u64 = 2_000_000;
 
 impl Rows {
     pub(super) fn new(record: &Record) -> Rows {
@@ -41,6 +43,7 @@ impl Rows {
             allowed: Vec::new(),
             peaks: vec![0.0; width],
             spacing: record.spacing.map(|(spacing, _)| spacing),
+            single: record.unit > f64::EPSILON,
         };
         for window in &record.windows {
             for row in 0..window.rows() {
@@ -95,8 +98,10 @@ impl Rows {
 
     /// Fewer rows, for looking for a number.
     pub(super) fn few(&self) -> Rows {
-        let stride = (self.len() / 80).max(1);
-        let keep: Vec<usize> = (0..self.len())
+        let early = (0..self.len()).take_while(|&row| self.numbers[row] < 300);
+        let count = early.count();
+        let stride = (count / 60).max(1);
+        let keep: Vec<usize> = (0..count)
             .filter(|row| row % stride == 0 || *row < 40)
             .collect();
         let width = self.width();
@@ -115,6 +120,7 @@ impl Rows {
             allowed: pick(&self.allowed),
             peaks: self.peaks.clone(),
             spacing: self.spacing,
+            single: self.single,
         }
     }
 
@@ -360,8 +366,12 @@ fn stepped(linear: &Linear, rows: &Rows, stepping: &Stepping) -> Option<Vec<f64>
     for (&number, &time) in rows.numbers.iter().zip(&rows.times) {
         let wanted = number * steps;
         while done < wanted {
-            let count = (wanted - done).min(steps);
             let at = origin + done as f64 * step;
+            // Rows that were not kept are leapt over where no input jumps.
+            let leap = wanted - done;
+            let smooth =
+                leap > steps && !linear.jumps_within(at - (memory + 1) as f64 * step, time + step);
+            let count = if smooth { leap } else { leap.min(steps) };
             stack = trial.advance(&stack, at, count, stepping.sides);
             done += count;
         }

@@ -199,6 +199,8 @@ const TAKES_AWAY: f64 = 0.03;
 /// A fault with a number that was looked for explains a run where it leaves this part of
 /// the error.
 const FOUND: f64 = 1e-6;
+/// Methods that are asked whether they come from the start of the case to the rows.
+const MOST_TRIED: usize = 24;
 /// Causes named at most.
 const MOST_NAMED: usize = 4;
 
@@ -216,11 +218,16 @@ pub fn causes(trouble: &Trouble) -> Vec<Cause> {
         time_unit: trouble.time_unit,
     };
     let before = rows.gap(&rows.exact);
-    let family = explaining_family(trouble);
-    let found = family.and_then(|family| of_method(trouble, &rows, &names, family, before));
-    let mut found = found.unwrap_or_else(|| of_faults(trouble, &rows, &names, before));
+    let families = explaining_families(trouble);
+    let pairs = families
+        .iter()
+        .flat_map(|family| family.methods.iter().map(move |&method| (*family, method)));
+    let by_method = pairs
+        .take(MOST_TRIED)
+        .find_map(|(family, method)| of_method(trouble, &rows, &names, (family, method), before));
+    let mut found = by_method.unwrap_or_else(|| of_faults(trouble, &rows, &names, before));
     if found.is_empty()
-        && let Some(family) = family
+        && let Some(family) = families.first()
         && let (Some(&method), Some(step)) = (family.methods.first(), family.step)
     {
         let all = Stepping::all(method, trouble.linear, step).into_iter();
@@ -267,21 +274,16 @@ fn chosen(mut found: Vec<Ranked>, claimed: &[&'static Method]) -> Vec<Cause> {
     causes
 }
 
-/// The family that explains the rows without any fault, the claimed one first.
-fn explaining_family<'a>(trouble: &Trouble<'a>) -> Option<&'a Family> {
+/// Families that explain the rows without any fault, those of the claimed method first.
+fn explaining_families<'a>(trouble: &Trouble<'a>) -> Vec<&'a Family> {
     let evidence: &'a Evidence = trouble.evidence;
     if evidence.is_exact() {
-        return None;
+        return Vec::new();
     }
-    let claimed = |family: &&Family| {
-        let is_claimed = |m: &&Method| trouble.methods.iter().any(|c| c.name == m.name);
-        family.methods.iter().copied().any(|m| is_claimed(&m))
-    };
-    let consistent = &evidence.consistent;
-    consistent
-        .iter()
-        .find(claimed)
-        .or_else(|| consistent.first())
+    let is_claimed = |m: &&Method| trouble.methods.iter().any(|c| c.name == m.name);
+    let mut families: Vec<&Family> = evidence.consistent.iter().collect();
+    families.sort_by_key(|family| !family.methods.iter().copied().any(|m| is_claimed(&m)));
+    families
 }
 
 fn ranked(
@@ -310,13 +312,10 @@ fn of_method(
     trouble: &Trouble,
     rows: &Rows,
     names: &Names,
-    family: &Family,
+    (family, method): (&Family, &'static Method),
     before: Gap,
 ) -> Option<Vec<Ranked>> {
     let linear = trouble.linear;
-    let is_claimed = |m: &&&Method| trouble.methods.iter().any(|c| c.name == m.name);
-    let claimed = family.methods.iter().find(is_claimed);
-    let method = claimed.or(family.methods.first()).copied()?;
     let done = |candidates: Vec<Candidate>| {
         let named = candidates
             .into_iter()
@@ -357,6 +356,23 @@ fn of_method(
         &rows.written,
     ));
     candidates.extend(jumps::jumps(linear, rows, names, &way));
+    if let Way::Stepped(stepping) = &way
+        && stepping.sides == Sides::Before
+    {
+        // An input that is a step late can look the same.
+        let after = Way::Stepped(Stepping {
+            sides: Sides::After,
+            ..stepping.clone()
+        });
+        let late = model::candidates(linear, rows, names, &after, step).into_iter();
+        candidates.extend(
+            late.filter(|late| late.kind == Kind::InputLate && rows.gap(&late.values).is_closed())
+                .map(|late| Candidate {
+                    complexity: 0,
+                    ..late
+                }),
+        );
+    }
     if family.reading == Reading::Held {
         candidates.extend(model::held_as_found(linear, rows, names, &way, step));
     }

@@ -317,8 +317,7 @@ pub(super) fn single_arithmetic() -> Option<Candidate> {
 
 /// Values of single precision, stored or computed.
 fn single(rows: &Rows, base: &[f64]) -> Vec<Candidate> {
-    let all = rows.written.iter().all(|&y| f64::from(y as f32) == y);
-    if !all {
+    if !rows.single {
         return Vec::new();
     }
     let stored: Vec<f64> = base
