@@ -121,14 +121,13 @@ fn spacing(
 /// Half a unit in the last place of the arithmetic that the values show.
 fn unit(kept: &[Kept], survey: &Survey) -> f64 {
     let single = f64::from(f32::EPSILON) / 2.0;
-    if survey.channels.contains(&Resolution::Single) {
-        return single;
-    }
+    // The shortest text of a number of single precision does not read back as it.
+    let shortest = survey.channels.contains(&Resolution::Single);
     let values = kept.iter().flat_map(|row| row.channels.iter().flatten());
     let (mut telling, mut all) = (0, 0);
     for value in values.filter(|value| value.written != 0.0) {
         let written = value.written;
-        if f64::from(written as f32) != written {
+        if f64::from(written as f32) != written && !shortest {
             return f64::EPSILON / 2.0;
         }
         all += 1;
