@@ -41,7 +41,7 @@ fn load(name: &str) -> Case {
 
 /// Runs a model, which may hold a fault, in one of the ways.
 pub fn track(linear: &Linear, base: Base, spacing: f64, rows: usize) -> Track {
-    let program = Program::new(linear);
+    let program: Program = Program::new(linear);
     let (method, steps) = match base {
         Base::Exact => ("Gauss 6", 24),
         Base::Method(name) => (name, 1),
@@ -58,7 +58,7 @@ pub fn track(linear: &Linear, base: Base, spacing: f64, rows: usize) -> Track {
     for row in 1..rows {
         for step in 0..steps {
             let t = from + ((row - 1) * steps + step) as f64 * h;
-            x = program.step(&coefficients, t, h, &x);
+            x = program.step(&coefficients, t, h, &x).unwrap();
         }
         track.times.push(from + row as f64 * spacing);
         track.rows.push(x.iter().copied().collect());
@@ -389,7 +389,8 @@ fn held_track(linear: &Linear, method: &str, spacing: f64, rows: usize) -> Track
             let value = signal.at(t, stepgauge::method::Side::After, 0.0);
             *signal = Signal::Held(value, Vec::new());
         }
-        x = Program::new(&held).step(&coefficients, t, spacing, &x);
+        let program: Program = Program::new(&held);
+        x = program.step(&coefficients, t, spacing, &x).unwrap();
         track.times.push(from + row as f64 * spacing);
         track.rows.push(x.iter().copied().collect());
     }
@@ -536,16 +537,10 @@ fn method_faults() -> Vec<Plant> {
         let model = linear(name);
         let h = spacing_of(&model);
         let run = crate::writer::Run {
-            case: &case,
-            method: find(method).unwrap(),
-            scheme: 0,
-            spacing: h,
-            steps: 1,
-            rows: ROWS,
             start: crate::writer::Start::Euler,
-            summed: false,
+            ..crate::writer::Run::new(&case, find(method).unwrap(), h, 1, ROWS)
         };
-        let (times, rows) = run.states();
+        let (times, rows) = run.states().unwrap();
         add(
             "low-order-start",
             name,

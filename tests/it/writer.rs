@@ -104,14 +104,24 @@ impl<'a> Run<'a> {
     }
 }
 
-struct Program<'a, T: Number> {
+pub struct Program<'a, T: Number = f64> {
     linear: &'a Linear,
     matrix: DMatrix<T>,
     seen: Seen,
     solver: Solver,
 }
 
-impl<T: Number> Program<'_, T> {
+impl<'a, T: Number> Program<'a, T> {
+    pub fn new(linear: &'a Linear) -> Self {
+        let n = linear.size();
+        Program {
+            linear,
+            matrix: DMatrix::from_fn(n, n, |i, j| T::of(linear.matrix[(i, j)])),
+            seen: Seen::From,
+            solver: Solver::Direct,
+        }
+    }
+
     /// Coupling of the inputs at a time that is a share of a step after its start.
     fn forcing(&self, t: T, share: f64) -> DVector<T> {
         let mut g = vec![0.0; self.linear.size()];
@@ -151,7 +161,7 @@ impl<T: Number> Program<'_, T> {
     }
 
     /// One step of a one-step method.
-    fn step(&self, method: &Coefficients, t: T, h: T, x: &DVector<T>) -> Option<DVector<T>> {
+    pub fn step(&self, method: &Coefficients, t: T, h: T, x: &DVector<T>) -> Option<DVector<T>> {
         let n = x.len();
         let c = |v: Double| T::of(v.to_f64());
         match method {
@@ -294,10 +304,9 @@ impl Run<'_> {
         let linear = Linear::new(self.case);
         let n = linear.size();
         let program: Program<T> = Program {
-            linear: &linear,
-            matrix: DMatrix::from_fn(n, n, |i, j| T::of(linear.matrix[(i, j)])),
             seen: self.seen,
             solver: self.solver,
+            ..Program::new(&linear)
         };
         let scheme = self.method.schemes[self.scheme];
         let coefficients = scheme.coefficients();
