@@ -88,6 +88,18 @@ impl Record {
         (0..size).map(place).collect()
     }
 
+    /// The states that are written in a row, by place.
+    pub(super) fn states_at<'a>(
+        &'a self,
+        window: &'a Window,
+        row: usize,
+        size: usize,
+    ) -> impl Iterator<Item = (usize, f64)> + 'a {
+        let line = &window.values[row * self.width()..][..self.width()];
+        let pairs = self.channels.iter().copied().zip(line.iter().copied());
+        pairs.filter(move |(channel, value)| *channel < size && value.is_finite())
+    }
+
     /// The largest magnitude of each channel.
     pub fn peaks(&self) -> Vec<f64> {
         let mut peaks = vec![0.0f64; self.width()];
