@@ -167,7 +167,11 @@ impl<'a, T: Number> Program<'a, T> {
         match method {
             Coefficients::Stages(stages) => {
                 let s = stages.weights.len();
-                let slope = if stages.slopes.iter().any(|g| g.to_f64() != 0.0) {
+                let ahead = stages.ahead.to_f64();
+                let slope = if ahead != 0.0 {
+                    let there = t + c(stages.ahead) * h;
+                    (self.forcing(there, ahead) - self.forcing(t, 0.0)) / (c(stages.ahead) * h)
+                } else if stages.slopes.iter().any(|g| g.to_f64() != 0.0) {
                     let mut g = vec![0.0; n];
                     self.linear
                         .forcing_slope(t.wide(), Side::After, 0.0, &mut g);
@@ -437,7 +441,7 @@ impl Kept<'_> {
                 window.doubts.push(resolution.at(value));
             }
         }
-        let unit = if self.single && self.digits >= 17 {
+        let unit = if self.single && self.digits >= 9 {
             f64::from(f32::EPSILON)
         } else {
             f64::EPSILON
