@@ -52,7 +52,7 @@ impl Keeping {
         let mut record = Record {
             channels: self.columns.iter().map(|(channel, _)| *channel).collect(),
             spacing: spacing(compared, survey, time, step, self.kept.last()),
-            unit: unit(&self.kept, survey),
+            unit: unit(&self.kept, survey, &full),
             windows: Vec::new(),
         };
         let mut next = 0;
@@ -118,21 +118,34 @@ fn spacing(
     Some((spacing, doubt))
 }
 
-/// Half a unit in the last place of the arithmetic that the values show.
-fn unit(kept: &[Kept], survey: &Survey) -> f64 {
+/// Half a unit in the last place of the arithmetic that the values show: that of `f32`
+/// where none is further from one than its digits resolve, and those are fine enough to
+/// tell (nine digits are: at most one `f64` in five is so near to an `f32` by chance).
+fn unit(kept: &[Kept], survey: &Survey, full: &dyn Fn(usize) -> bool) -> f64 {
     let single = f64::from(f32::EPSILON) / 2.0;
     if survey.channels.contains(&Resolution::Single) {
         return single;
     }
-    let values = kept.iter().flat_map(|row| row.channels.iter().flatten());
     let mut telling = 0;
-    for value in values {
-        let written = value.written;
-        if f64::from(written as f32) != written {
-            return f64::EPSILON / 2.0;
+    for row in kept {
+        for (place, value) in row.channels.iter().enumerate() {
+            let Some(value) = value.as_ref() else {
+                continue;
+            };
+            let written = value.written;
+            let resolved = if value.value == 0.0 {
+                0.0
+            } else {
+                value.doubts[usize::from(full(place))] * (written / value.value).abs()
+            };
+            let away = (f64::from(written as f32) - written).abs();
+            if !(away <= 1.01 * resolved || away == 0.0) || (full(place) && away != 0.0) {
+                return f64::EPSILON / 2.0;
+            }
+            // Whole numbers and short fractions are numbers of either kind.
+            let short = f64::from((written * 4096.0) as i32) == written * 4096.0;
+            telling += usize::from(!short && resolved <= 0.1 * single * written.abs());
         }
-        // Whole numbers and short fractions are numbers of either kind.
-        telling += usize::from(f64::from((written * 4096.0) as i32) != written * 4096.0);
     }
     if telling >= 8 {
         single

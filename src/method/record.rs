@@ -88,6 +88,25 @@ impl Record {
         (0..size).map(place).collect()
     }
 
+    /// The same rows as those of a program in single precision, where their digits leave
+    /// that open: nine at most, and no value further from an `f32` than they resolve.
+    pub fn in_single(&self) -> Option<Record> {
+        let single = f64::from(f32::EPSILON) / 2.0;
+        let open = |(value, doubt): (&f64, &f64)| {
+            let (value, doubt) = (*value, *doubt);
+            let away = (f64::from(value as f32) - value).abs();
+            !value.is_finite() || (doubt >= 4e-10 * value.abs() && away <= 1.01 * doubt)
+        };
+        let all = self.windows.iter().all(|window| {
+            let mut pairs = window.values.iter().zip(&window.doubts);
+            pairs.all(|pair| *pair.0 == 0.0 || open(pair))
+        });
+        (self.unit < single && all).then(|| Record {
+            unit: single,
+            ..self.clone()
+        })
+    }
+
     /// The states that are written in a row, by place.
     pub(super) fn states_at<'a>(
         &'a self,
