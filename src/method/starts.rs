@@ -292,11 +292,14 @@ impl System {
                 start = start.hypot(along[i] / values[i]);
             }
         }
-        if !(noise <= 0.5 * (equations as f64).sqrt()) {
-            return Fit::NOTHING;
-        }
         let rest = right.rows(unknowns, equations - unknowns).norm_squared();
         let ratio = (rest.sqrt() - noise).max(0.0) / (equations as f64).sqrt();
+        // What is left over beyond the noise speaks, however large that is; what is not may
+        // be hidden in it.
+        let hidden = noise > 0.5 * (equations as f64).sqrt();
+        if noise.is_nan() || (hidden && ratio <= 1.0) {
+            return Fit::NOTHING;
+        }
         let peaks = record.peaks();
         let shares = self
             .of_row
