@@ -3,7 +3,7 @@
 use super::Model;
 use super::run::RunCompared;
 use crate::judge::{self, Answer, Claimed, Support, Verdict};
-use crate::method::{Evidence, Linear, Method, evidence, find_all};
+use crate::method::{Evidence, Linear, Method, find_all};
 use crate::number::plain;
 use crate::outcome::{Audited, ClaimOutcome, Consistent, EvidenceOutcome, RunEvidence};
 use crate::submission::{Setting, Submission};
@@ -58,16 +58,10 @@ fn ask_one(
         .zip(step)
         .and_then(|(spacing, step)| whole(step / spacing));
     let thinned = between.filter(|&count| steps.is_none() && count > 1);
-    let found = match thinned {
-        Some(count) => {
-            steps = Some(1);
-            evidence(linear, &run.record.every(count), methods, &[1])
-        }
-        None => {
-            let steps: Vec<u64> = steps.into_iter().collect();
-            evidence(linear, &run.record, methods, &steps)
-        }
-    };
+    let thinner = thinned.map(|count| run.record.every(count));
+    if thinner.is_some() {
+        steps = Some(1);
+    }
     let claimed = Claimed {
         name: submission.claims.method.as_deref(),
         methods,
@@ -76,7 +70,8 @@ fn ask_one(
         adaptive: matches!(run.outcome.setting, Setting::Tolerance(_)),
         time_unit: &model.case.time.unit,
     };
-    let mut answer = judge::of_claim(&found, &claimed);
+    let record = thinner.as_ref().unwrap_or(&run.record);
+    let (found, mut answer) = judge::ask(linear, record, &claimed);
     if let (Some(answer), Some(count)) = (&mut answer, thinned) {
         answer.text += &format!("; {} of {count} rows lie between the steps", count - 1);
     }

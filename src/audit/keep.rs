@@ -52,7 +52,7 @@ impl Keeping {
         let mut record = Record {
             channels: self.columns.iter().map(|(channel, _)| *channel).collect(),
             spacing: spacing(compared, survey, time, step, self.kept.last()),
-            unit: unit(&self.kept, survey),
+            unit: unit(&self.kept, survey, &full),
             windows: Vec::new(),
         };
         let mut next = 0;
@@ -118,22 +118,37 @@ fn spacing(
     Some((spacing, doubt))
 }
 
-/// Half a unit in the last place of the arithmetic that the values show.
-fn unit(kept: &[Kept], survey: &Survey) -> f64 {
+/// Half a unit in the last place of the arithmetic that the values show: that of `f32`
+/// where none is further from one than its digits resolve, and those are fine enough to
+/// tell (nine digits are: at most one `f64` in five is so near to an `f32` by chance).
+fn unit(kept: &[Kept], survey: &Survey, full: &dyn Fn(usize) -> bool) -> f64 {
     let single = f64::from(f32::EPSILON) / 2.0;
     // The shortest text of a number of single precision does not read back as it.
     let shortest = survey.channels.contains(&Resolution::Single);
-    let values = kept.iter().flat_map(|row| row.channels.iter().flatten());
     let (mut telling, mut all) = (0, 0);
-    for value in values.filter(|value| value.written != 0.0) {
-        let written = value.written;
-        if f64::from(written as f32) != written && !shortest {
-            return f64::EPSILON / 2.0;
+    for row in kept {
+        for (place, value) in row.channels.iter().enumerate() {
+            let Some(value) = value.as_ref().filter(|value| value.written != 0.0) else {
+                continue;
+            };
+            let written = value.written;
+            let resolved = if value.value == 0.0 {
+                0.0
+            } else {
+                value.doubts[usize::from(full(place))] * (written / value.value).abs()
+            };
+            let away = (f64::from(written as f32) - written).abs();
+            let near = away == 0.0 || away <= 1.01 * resolved && !full(place);
+            if !near && !shortest {
+                return f64::EPSILON / 2.0;
+            }
+            all += 1;
+            // Halves, quarters and the like are numbers of either kind: most values of
+            // single precision use the last of its bits.
+            let last_bits = (written as f32).to_bits() & 0xf != 0;
+            let fine = shortest || resolved <= 0.1 * single * written.abs();
+            telling += usize::from(last_bits && fine);
         }
-        all += 1;
-        // Halves, quarters and the like are numbers of either kind: most values of single
-        // precision use the last of its bits.
-        telling += usize::from((written as f32).to_bits() & 0xf != 0);
     }
     if telling >= 8 && 2 * telling >= all {
         single

@@ -3,8 +3,8 @@
 use super::args::MethodsArguments;
 use crate::fault::{Fault, nearest, quoted};
 use crate::method::{
-    Characteristic, Coefficients, METHODS, Method, Rational, Scheme, Stages, approx_stability,
-    find_all,
+    Characteristic, Coefficients, METHODS, Method, Rational, Scheme, Slopes, Stages,
+    approx_stability, find_all,
 };
 use crate::number::Double;
 use crate::outcome::{AliasFacts, Factor, FormFacts, MethodFacts, SourceFacts, Written};
@@ -153,7 +153,7 @@ fn written(scheme: &Scheme, coefficients: &Coefficients) -> Written {
             alpha: rows(alpha),
             shift: rows(shift),
             weights: row(weights),
-            slopes,
+            slopes: slopes != Slopes::Left,
         },
         Scheme::Multistep { alpha, beta } => Written::Multistep {
             alpha: row(alpha),

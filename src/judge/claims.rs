@@ -4,7 +4,7 @@
 //! would have written by more than digits and rounding allow, and nothing honest explains
 //! it (a solution by iteration, an adaptive code, a step that nobody stated).
 
-use crate::method::{Evidence, Family, Method, Reading};
+use crate::method::{Evidence, Family, Linear, Method, Reading, Record, Tried, evidence};
 use crate::number::{plain, short};
 
 /// What the rows say of a claim.
@@ -62,6 +62,51 @@ const FAR_BELOW: f64 = 0.05;
 /// Codes that solve implicit steps by iteration stop at tolerances up to about this part
 /// of the state (common practice, no source).
 const ITERATION: f64 = 1e-5;
+
+/// Where another method fits, single precision is thought of up to this many times what
+/// digits and double precision allow: few digits are coarser than its roundings by then.
+const NEARLY: f64 = 4.0;
+/// What an iteration may leave of the peak however tight its tolerance: it stops where its
+/// own roundings end.
+const LAST_DIGITS: f64 = 256.0 * f64::EPSILON;
+/// More steps from row to row than this come near to the exact solution in most methods.
+const MANY_STEPS: u64 = 64;
+/// A start that is free to choose is bound by as many comparisons, if it fits them all.
+const BINDING: usize = 40;
+
+/// Lays the rows of one run beside every method and says what they say of its claim. A
+/// claim that single precision would explain, with digits that do not show it, is left open.
+pub fn ask(linear: &Linear, record: &Record, claimed: &Claimed) -> (Evidence, Option<Answer>) {
+    let steps: Vec<u64> = claimed.steps.into_iter().collect();
+    let found = evidence(linear, record, claimed.methods, &steps);
+    let answer = of_claim(&found, claimed).map(|answer| {
+        let near = |own: &Tried| own.fit.ratio <= NEARLY;
+        let close = found.best(claimed.methods, claimed.steps).is_some_and(near);
+        let open = (found.consistent.is_empty() || close) && !claimed.methods.is_empty();
+        if answer.support != Support::Contradicts || !open {
+            return answer;
+        }
+        let Some(single) = record.in_single() else {
+            return answer;
+        };
+        let again = evidence(linear, &single, claimed.methods, &steps);
+        let own = again.best(claimed.methods, claimed.steps);
+        if !own.is_some_and(|own| own.fit.holds()) {
+            return answer;
+        }
+        Answer {
+            support: Support::CannotTell,
+            method: answer.method.map(|_| Support::CannotTell),
+            step: answer.step.map(|_| Support::CannotTell),
+            text: format!(
+                "the rows are off {} by more than digits and the rounding of double precision \
+                 allow; single precision arithmetic would explain it; print more digits",
+                claimed.name.unwrap_or_default()
+            ),
+        }
+    });
+    (found, answer)
+}
 
 /// What the rows of one run say of its claim; `None` where nothing is claimed.
 pub fn of_claim(evidence: &Evidence, claimed: &Claimed) -> Option<Answer> {
@@ -189,6 +234,22 @@ fn of_method(evidence: &Evidence, claimed: &Claimed, cannot: &dyn Fn(String) -> 
             "{label} cannot be run beside these rows; write every state, and rows without gaps from the start on"
         ));
     }
+    // A solver that stops early leaves a residual that something free enough may fit.
+    let implicit = own.is_some_and(|own| {
+        let mut schemes = own.method.schemes.iter();
+        schemes.any(|scheme| scheme.is_implicit())
+    });
+    let exactly = evidence.exact.residual / evidence.exact.ratio;
+    let stopped_early = own.filter(|own| {
+        let loose = own.fit.residual <= ITERATION
+            && !evidence.consistent.iter().any(binds)
+            && !(evidence.is_exact() && own.fit.residual > 2.0 * exactly);
+        let explained = evidence.is_exact() || !evidence.consistent.is_empty();
+        implicit && explained && (loose || own.fit.residual <= LAST_DIGITS)
+    });
+    if let Some(own) = stopped_early {
+        return cannot(early(own, &label));
+    }
     // Something else explains the rows to the last digit.
     if evidence.is_exact() && claimed.step.is_some() {
         let text =
@@ -240,13 +301,8 @@ fn of_method(evidence: &Evidence, claimed: &Claimed, cannot: &dyn Fn(String) -> 
         );
         return all(Support::Agrees, text);
     }
-    let implicit = own.method.schemes.iter().any(|scheme| scheme.is_implicit());
     if implicit && own.fit.residual <= ITERATION {
-        return cannot(format!(
-            "the rows are {} of the peak away from {label}, which an iteration that stops early \
-             would explain; a tighter tolerance of its solver would settle it",
-            short(own.fit.residual)
-        ));
+        return cannot(early(own, &label));
     }
     if claimed.step.is_none() {
         return cannot(format!(
@@ -256,6 +312,24 @@ fn of_method(evidence: &Evidence, claimed: &Claimed, cannot: &dyn Fn(String) -> 
     }
     let text = format!("the rows do not follow {label}{off}, nor any method of the catalogue");
     all(Support::Contradicts, text)
+}
+
+fn early(own: &Tried, label: &str) -> String {
+    format!(
+        "the rows are {} of the peak away from {label}, which an iteration that stops early would \
+         explain; a tighter tolerance of its solver would settle it",
+        short(own.fit.residual)
+    )
+}
+
+/// True where a family fits that has little to choose: no other reading of the inputs, no
+/// step that comes near to the exact solution, no free start but few comparisons.
+fn binds(family: &Family) -> bool {
+    let remembers = |method: &&Method| method.schemes.iter().any(|s| s.steps_back() > 1);
+    let free = family.steps > 1 && family.methods.iter().any(|m| remembers(&m));
+    family.reading == Reading::AtNodes
+        && family.steps <= MANY_STEPS
+        && (!free || family.fit.compared >= BINDING)
 }
 
 /// A step without a method: what the consistent methods say.

@@ -5,7 +5,7 @@
 
 mod claims;
 
-pub use claims::{Answer, Claimed, Support, family_at, family_name, of_claim, reading};
+pub use claims::{Answer, Claimed, Support, ask, family_at, family_name, of_claim, reading};
 
 use crate::compare::{Deviation, Margin, Pair, Sight};
 

@@ -12,6 +12,7 @@ mod characteristic;
 mod drive;
 mod estimate;
 mod evidence;
+mod exponential;
 mod growth;
 mod jumps;
 mod linear;
@@ -35,7 +36,7 @@ pub use linear::{Linear, Side, Signal};
 pub use march::{March, NEAR, Sides, add_forcing};
 pub use record::{Piece, Record, START_ROWS, Window, windows};
 pub use recurrence::{Node, Ranks, Reading, Recurrence};
-pub use scheme::{Coefficients, Scheme, Stages};
+pub use scheme::{Coefficients, Scheme, Slopes, Stages};
 pub use search::{MOST_STEPS, rank_orders};
 pub use stability::{
     Rational, Stability, amplification, approx_stability, approx_stable_length, of_stages, roots,

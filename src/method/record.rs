@@ -88,6 +88,37 @@ impl Record {
         (0..size).map(place).collect()
     }
 
+    /// The same rows as those of a program in single precision, where their digits leave
+    /// that open: nine at most, and no value further from an `f32` than they resolve.
+    pub fn in_single(&self) -> Option<Record> {
+        let single = f64::from(f32::EPSILON) / 2.0;
+        let open = |(value, doubt): (&f64, &f64)| {
+            let (value, doubt) = (*value, *doubt);
+            let away = (f64::from(value as f32) - value).abs();
+            !value.is_finite() || (doubt >= 4e-10 * value.abs() && away <= 1.01 * doubt)
+        };
+        let all = self.windows.iter().all(|window| {
+            let mut pairs = window.values.iter().zip(&window.doubts);
+            pairs.all(|pair| *pair.0 == 0.0 || open(pair))
+        });
+        (self.unit < single && all).then(|| Record {
+            unit: single,
+            ..self.clone()
+        })
+    }
+
+    /// The states that are written in a row, by place.
+    pub(super) fn states_at<'a>(
+        &'a self,
+        window: &'a Window,
+        row: usize,
+        size: usize,
+    ) -> impl Iterator<Item = (usize, f64)> + 'a {
+        let line = &window.values[row * self.width()..][..self.width()];
+        let pairs = self.channels.iter().copied().zip(line.iter().copied());
+        pairs.filter(move |(channel, value)| *channel < size && value.is_finite())
+    }
+
     /// The largest magnitude of each channel.
     pub fn peaks(&self) -> Vec<f64> {
         let mut peaks = vec![0.0f64; self.width()];

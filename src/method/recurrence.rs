@@ -3,6 +3,7 @@
 
 use nalgebra::DMatrix;
 
+use super::exponential::{by_state, exponential};
 use super::linear::Linear;
 use super::scheme::{Coefficients, Stages};
 use crate::number::{Double, Matrix};
@@ -137,7 +138,7 @@ fn dense(matrix: &Matrix<f64>) -> DMatrix<f64> {
     DMatrix::from_fn(matrix.size(), matrix.size(), |i, j| matrix[(i, j)])
 }
 
-fn sparse(matrix: &DMatrix<f64>) -> Matrix<f64> {
+pub(super) fn sparse(matrix: &DMatrix<f64>) -> Matrix<f64> {
     let mut result = Matrix::zero(matrix.nrows());
     for i in 0..matrix.nrows() {
         for j in 0..matrix.ncols() {
@@ -147,7 +148,7 @@ fn sparse(matrix: &DMatrix<f64>) -> Matrix<f64> {
     result
 }
 
-fn identity(size: usize) -> DMatrix<f64> {
+pub(super) fn identity(size: usize) -> DMatrix<f64> {
     DMatrix::identity(size, size)
 }
 
@@ -167,7 +168,7 @@ fn of_weights(
     weights: &[DMatrix<f64>],
     matrix: &DMatrix<f64>,
     step: f64,
-    magnitudes: Magnitudes,
+    mut magnitudes: Magnitudes,
 ) -> Recurrence {
     let size = matrix.nrows();
     let mut stay = identity(size);
@@ -183,8 +184,14 @@ fn of_weights(
         if weight.iter().any(|w| *w != 0.0) {
             nodes.push(node(stages.nodes[stage].to_f64(), false, weight.clone()));
             let slope = stages.slopes[stage].to_f64();
-            if slope != 0.0 {
+            let ahead = stages.ahead.to_f64();
+            if slope != 0.0 && ahead == 0.0 {
                 nodes.push(node(0.0, true, weight * (slope * step)));
+            } else if slope != 0.0 {
+                let share = weight * (slope / ahead);
+                magnitudes.pull += share.abs() * 2.0;
+                nodes.push(node(ahead, false, share.clone()));
+                nodes.push(node(0.0, false, -share));
             }
         }
     }
@@ -459,70 +466,5 @@ fn semi_implicit(ranks: &Ranks, matrix: &DMatrix<f64>, step: f64) -> Option<Recu
         spread: sparse(&spread),
         pull: sparse(&(inverse.abs() * step)),
         roundings: 6.0 + 2.0 * size as f64,
-    })
-}
-
-/// `exp(hA)` and `h phi(hA)` as blocks of one exponential (Van Loan).
-fn exponential(matrix: &DMatrix<f64>, step: f64) -> Option<Recurrence> {
-    let size = matrix.nrows();
-    let both = DMatrix::from_fn(2 * size, 2 * size, |i, j| {
-        if i < size && j < size {
-            step * matrix[(i, j)]
-        } else if i < size && j == i + size {
-            step
-        } else {
-            0.0
-        }
-    });
-    // Programs compute it in several ways, all of which lose digits with the norm.
-    let norm = both
-        .row_iter()
-        .map(|r| r.iter().map(|x| x.abs()).sum::<f64>());
-    let amplified = 8.0 * (1.0 + norm.fold(0.0, f64::max));
-    let exponential = both.exp();
-    let stay = exponential.view((0, 0), (size, size)).into_owned();
-    let weight = exponential.view((0, size), (size, size)).into_owned();
-    // Some add `h phi(hA) (A x + g)` to the state.
-    let spread = (stay.abs() + identity(size) + weight.abs() * matrix.abs()) * amplified;
-    let pull = weight.abs() * amplified;
-    Some(Recurrence {
-        step,
-        past: vec![sparse(&stay)],
-        nodes: vec![Node {
-            at: 0.0,
-            slope: false,
-            weight: sparse(&weight),
-        }],
-        spread: sparse(&spread),
-        pull: sparse(&pull),
-        roundings: 8.0,
-    })
-}
-
-/// Each state by itself: `exp(h a_ii)` for its own rate, everything else held.
-fn by_state(matrix: &DMatrix<f64>, step: f64) -> Option<Recurrence> {
-    let size = matrix.nrows();
-    let own = |i: usize| step * matrix[(i, i)];
-    // (exp(z) - 1) / z without its cancellation.
-    let phi = |z: f64| if z == 0.0 { 1.0 } else { z.exp_m1() / z };
-    let diagonal = |of: &dyn Fn(usize) -> f64| {
-        DMatrix::from_fn(size, size, |i, j| if i == j { of(i) } else { 0.0 })
-    };
-    let weight = diagonal(&|i| step * phi(own(i)));
-    let others = DMatrix::from_fn(size, size, |i, j| if i == j { 0.0 } else { matrix[(i, j)] });
-    let stay = diagonal(&|i| own(i).exp()) + &weight * &others;
-    let amplified = 8.0 * (0..size).map(|i| 1.0 + own(i).abs()).fold(1.0, f64::max);
-    let spread = (stay.abs() + identity(size) + &weight * matrix.abs()) * amplified;
-    Some(Recurrence {
-        step,
-        past: vec![sparse(&stay)],
-        nodes: vec![Node {
-            at: 0.0,
-            slope: false,
-            weight: sparse(&weight),
-        }],
-        spread: sparse(&spread),
-        pull: sparse(&(weight.abs() * amplified)),
-        roundings: 8.0,
     })
 }

@@ -25,8 +25,8 @@ pub enum Scheme {
         shift: &'static str,
         /// Weights of the stages.
         weights: &'static str,
-        /// False where a code leaves the rate of the inputs out.
-        slopes: bool,
+        /// What a code takes for the rate of the inputs.
+        slopes: Slopes,
     },
     /// `sum alpha_j x_j = h sum beta_j f_j`, oldest first; the last `alpha` is one.
     Multistep {
@@ -51,6 +51,17 @@ pub enum Scheme {
         /// holds the others from the start of the step, too, as membrane programs do.
         by_state: bool,
     },
+}
+
+/// Where linearly implicit stages have the rate `f_t` of the inputs from.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum Slopes {
+    /// It is known.
+    Known,
+    /// A difference ahead, over a part of the step.
+    Ahead(&'static str),
+    /// It is left out.
+    Left,
 }
 
 /// Coefficients as numbers.
@@ -93,6 +104,8 @@ pub struct Stages {
     pub nodes: Vec<Double>,
     /// How far their slope at the start counts.
     pub slopes: Vec<Double>,
+    /// Part of the step over which that slope is a difference; zero where it is known.
+    pub ahead: Double,
 }
 
 impl Stages {
@@ -122,6 +135,7 @@ impl Scheme {
                 Coefficients::Stages(Stages {
                     nodes: matrix.iter().map(|row| sum(row)).collect(),
                     slopes: vec![Double::ZERO; weights.len()],
+                    ahead: Double::ZERO,
                     matrix,
                     weights,
                 })
@@ -143,11 +157,19 @@ impl Scheme {
                 let join = |(a, b): (&Vec<Double>, &Vec<Double>)| -> Vec<Double> {
                     a.iter().zip(b).map(|(&a, &b)| a + b).collect()
                 };
-                let slope = |row: &Vec<Double>| if slopes { sum(row) } else { Double::ZERO };
+                let slope = |row: &Vec<Double>| match slopes {
+                    Slopes::Left => Double::ZERO,
+                    Slopes::Known | Slopes::Ahead(_) => sum(row),
+                };
+                let ahead = match slopes {
+                    Slopes::Ahead(part) => list(part)[0],
+                    Slopes::Known | Slopes::Left => Double::ZERO,
+                };
                 Coefficients::Stages(Stages {
                     matrix: alpha.iter().zip(&shift).map(join).collect(),
                     nodes: alpha.iter().map(|row| sum(row)).collect(),
                     slopes: shift.iter().map(slope).collect(),
+                    ahead,
                     weights,
                 })
             }

@@ -401,6 +401,7 @@ mod tests {
             weights: weights.iter().map(|&b| number(b)).collect(),
             nodes: vec![Double::ZERO; 3],
             slopes: vec![Double::ZERO; 3],
+            ahead: Double::ZERO,
         };
         let quotient = Rational::new(&stages);
         for (k, wanted) in [1.0, -1.0, 0.5, -1.0 / 6.0].into_iter().enumerate() {

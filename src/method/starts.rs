@@ -118,6 +118,8 @@ struct Stretch<'a> {
 struct System {
     matrix: DMatrix<f64>,
     right: DVector<f64>,
+    /// How far an honest start can be from the guess.
+    reach: Vec<f64>,
     /// Channel and allowance of each equation.
     of_row: Vec<(usize, f64)>,
 }
@@ -153,6 +155,8 @@ impl System {
             known.push(first.step().to_vec());
         }
         let mut stack: Vec<f64> = known.iter().flatten().copied().collect();
+        let reach = reach(&known, linear, trial.recurrence.step);
+        let reach = reach[offset..].to_vec();
         // How the unknown states act on the stack.
         let unit = |i: usize, u: usize| if i == u + offset { 1.0 } else { 0.0 };
         let mut effect = DMatrix::from_fn(stacked, unknowns, unit);
@@ -192,7 +196,8 @@ impl System {
             } else {
                 &stack[stacked - size..]
             };
-            allowance.next_row(state, window.first + row as u64);
+            let number = window.first + row as u64;
+            allowance.next_row(state, record.states_at(window, row, size), number);
             let time = window.times[row];
             let near = NEAR * trial.recurrence.step;
             if !stretch.complete && linear.jumps_within(time - near, time + near) {
@@ -238,37 +243,63 @@ impl System {
         Some(System {
             matrix: DMatrix::from_row_slice(of_row.len(), unknowns, &lines),
             right: DVector::from_vec(right),
+            reach,
             of_row,
         })
     }
 
     /// The least sum of squares, as what is left of the right side across the columns.
+    ///
+    /// # Error bound
+    /// With the columns scaled to one length and `b = A x + r` for the true start, what is
+    /// left of `b` is that of `r`, which is to be bounded, and of `E x`, `E` the backward
+    /// error of the transformation, `c eps` at most. Any `x` that leaves as little will do for
+    /// the bound. That of the `k` largest singular values leaves `s_(k+1) |x|` more than the
+    /// true one, whose size is at most that of the states: the best `k` is taken. (The plain
+    /// solution, all of them, grows without bound where columns are parallel, as those of
+    /// parasitic modes that have died out are.)
     fn solve(self, record: &Record) -> Fit {
         let (equations, unknowns) = self.matrix.shape();
         let mut matrix = self.matrix;
-        // Columns of equal length: parasitic modes die out within a few steps.
-        for mut column in matrix.column_iter_mut() {
+        let mut furthest = 0.0f64;
+        for (mut column, reach) in matrix.column_iter_mut().zip(&self.reach) {
             let length = column.norm();
             if length > 0.0 {
                 column /= length;
+                furthest = furthest.hypot(length * reach);
             }
         }
         let mut right = self.right;
-        // The orthogonal transformation rounds, relative to where the first guess of the
-        // start has led: rows of a growing solution can be lost in that.
         let length = right.norm();
         let factors = matrix.qr();
         factors.q_tr_mul(&mut right);
-        let start = factors.r().solve_upper_triangular(&right.rows(0, unknowns));
-        let start = start.map_or(f64::INFINITY, |start| start.abs().sum());
-        // A start that nearly parallel columns leave open adds nothing to the residual.
-        let start = if start.is_finite() { start } else { length };
-        let noise = 8.0 * (unknowns + 2) as f64 * f64::EPSILON * (length + start);
-        if noise > 0.5 * (equations as f64).sqrt() {
+        let Some(split) = factors.r().try_svd(true, false, f64::EPSILON, 10_000) else {
             return Fit::NOTHING;
+        };
+        let Some(directions) = split.u else {
+            return Fit::NOTHING;
+        };
+        let along = directions.tr_mul(&right.rows(0, unknowns));
+        let rounding = 8.0 * (unknowns + 2) as f64 * f64::EPSILON;
+        let mut order: Vec<usize> = (0..unknowns).collect();
+        let values = &split.singular_values;
+        order.sort_by(|&i, &j| values[j].total_cmp(&values[i]));
+        let (mut start, mut noise) = (0.0f64, f64::INFINITY);
+        for next in 0..=unknowns {
+            let rest = order.get(next).map_or(0.0, |&i| values[i]);
+            noise = noise.min(rounding * (length + start) + rest * furthest);
+            if let Some(&i) = order.get(next) {
+                start = start.hypot(along[i] / values[i]);
+            }
         }
         let rest = right.rows(unknowns, equations - unknowns).norm_squared();
         let ratio = (rest.sqrt() - noise).max(0.0) / (equations as f64).sqrt();
+        // What is left over beyond the noise speaks, however large that is; what is not may
+        // be hidden in it.
+        let hidden = noise > 0.5 * (equations as f64).sqrt();
+        if noise.is_nan() || (hidden && ratio <= 1.0) {
+            return Fit::NOTHING;
+        }
         let peaks = record.peaks();
         let shares = self
             .of_row
@@ -283,6 +314,28 @@ impl System {
             compared: equations,
         }
     }
+}
+
+/// How large the states of an honest start may be: a low step of an explicit program, at
+/// most `sum_(k<=4) |hA|^k / k!` times the states before it, can overshoot where the method
+/// itself would not.
+fn reach(known: &[Vec<f64>], linear: &Linear, step: f64) -> Vec<f64> {
+    let mut largest = vec![0.0f64; linear.size()];
+    for state in known {
+        let pairs = largest.iter_mut().zip(state);
+        pairs.for_each(|(largest, x)| *largest = largest.max(x.abs()));
+    }
+    let mut reach = Vec::new();
+    for _ in known {
+        reach.extend_from_slice(&largest);
+        let mut term = largest.clone();
+        for k in 1..=4 {
+            term = linear.matrix.map(f64::abs).apply(&term);
+            term.iter_mut().for_each(|x| *x *= step / f64::from(k));
+            largest.iter_mut().zip(&term).for_each(|(sum, x)| *sum += x);
+        }
+    }
+    reach
 }
 
 fn to_dense(matrix: &Matrix<f64>) -> DMatrix<f64> {
@@ -310,9 +363,12 @@ impl<'t, 'a> Allowance<'t, 'a> {
         }
     }
 
-    fn next_row(&mut self, state: &[f64], row: u64) {
-        for (largest, x) in self.states.iter_mut().zip(state) {
-            *largest = largest.max(x.abs());
+    /// The state of the first guess there, and those that were written: a start that
+    /// overshoots makes larger roundings.
+    fn next_row(&mut self, state: &[f64], written: impl Iterator<Item = (usize, f64)>, row: u64) {
+        let guessed = state.iter().copied().enumerate();
+        for (place, x) in guessed.chain(written) {
+            self.states[place] = self.states[place].max(x.abs());
         }
         let noise = self.trial.noise_between_rows(&self.states, row);
         let carried = self.power.map(f64::abs).apply(&noise);

@@ -28,6 +28,8 @@ mod evidence;
 
 /// Which method wrote a file of another program.
 mod attribution;
+/// Whole files of honest programs through the audit.
+mod printed;
 
 /// Whole screens and reports, read by eye before they are accepted.
 mod golden;

@@ -104,14 +104,24 @@ impl<'a> Run<'a> {
     }
 }
 
-struct Program<'a, T: Number> {
+pub struct Program<'a, T: Number = f64> {
     linear: &'a Linear,
     matrix: DMatrix<T>,
     seen: Seen,
     solver: Solver,
 }
 
-impl<T: Number> Program<'_, T> {
+impl<'a, T: Number> Program<'a, T> {
+    pub fn new(linear: &'a Linear) -> Self {
+        let n = linear.size();
+        Program {
+            linear,
+            matrix: DMatrix::from_fn(n, n, |i, j| T::of(linear.matrix[(i, j)])),
+            seen: Seen::From,
+            solver: Solver::Direct,
+        }
+    }
+
     /// Coupling of the inputs at a time that is a share of a step after its start.
     fn forcing(&self, t: T, share: f64) -> DVector<T> {
         let mut g = vec![0.0; self.linear.size()];
@@ -151,13 +161,17 @@ impl<T: Number> Program<'_, T> {
     }
 
     /// One step of a one-step method.
-    fn step(&self, method: &Coefficients, t: T, h: T, x: &DVector<T>) -> Option<DVector<T>> {
+    pub fn step(&self, method: &Coefficients, t: T, h: T, x: &DVector<T>) -> Option<DVector<T>> {
         let n = x.len();
         let c = |v: Double| T::of(v.to_f64());
         match method {
             Coefficients::Stages(stages) => {
                 let s = stages.weights.len();
-                let slope = if stages.slopes.iter().any(|g| g.to_f64() != 0.0) {
+                let ahead = stages.ahead.to_f64();
+                let slope = if ahead != 0.0 {
+                    let there = t + c(stages.ahead) * h;
+                    (self.forcing(there, ahead) - self.forcing(t, 0.0)) / (c(stages.ahead) * h)
+                } else if stages.slopes.iter().any(|g| g.to_f64() != 0.0) {
                     let mut g = vec![0.0; n];
                     self.linear
                         .forcing_slope(t.wide(), Side::After, 0.0, &mut g);
@@ -294,10 +308,9 @@ impl Run<'_> {
         let linear = Linear::new(self.case);
         let n = linear.size();
         let program: Program<T> = Program {
-            linear: &linear,
-            matrix: DMatrix::from_fn(n, n, |i, j| T::of(linear.matrix[(i, j)])),
             seen: self.seen,
             solver: self.solver,
+            ..Program::new(&linear)
         };
         let scheme = self.method.schemes[self.scheme];
         let coefficients = scheme.coefficients();
@@ -428,7 +441,7 @@ impl Kept<'_> {
                 window.doubts.push(resolution.at(value));
             }
         }
-        let unit = if self.single && self.digits >= 17 {
+        let unit = if self.single && self.digits >= 9 {
             f64::from(f32::EPSILON)
         } else {
             f64::EPSILON

@@ -369,6 +369,7 @@ fn chebyshev(count: usize) -> Stages {
     Stages {
         nodes: rows.iter().map(sum).collect(),
         slopes: vec![Double::ZERO; count],
+        ahead: Double::ZERO,
         matrix: rows,
         weights,
     }
