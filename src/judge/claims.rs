@@ -326,7 +326,7 @@ fn early(own: &Tried, label: &str) -> String {
 /// step that comes near to the exact solution, no free start but few comparisons.
 fn binds(family: &Family) -> bool {
     let remembers = |method: &&Method| method.schemes.iter().any(|s| s.steps_back() > 1);
-    let free = family.steps > 1 && family.methods.iter().any(|m| remembers(&m));
+    let free = family.steps > 1 && family.methods.iter().any(remembers);
     family.reading == Reading::AtNodes
         && family.steps <= MANY_STEPS
         && (!free || family.fit.compared >= BINDING)

@@ -144,7 +144,7 @@ impl Record {
                 ..Window::default()
             };
             for row in 0..window.rows() {
-                if (window.first + row as u64) % count == 0 {
+                if (window.first + row as u64).is_multiple_of(count) {
                     thinned.times.push(window.times[row]);
                     thinned.time_doubts.push(window.time_doubts[row]);
                     let line = row * width..(row + 1) * width;

@@ -218,7 +218,7 @@ impl System {
                     + 8.0 * f64::EPSILON * peaks[column]
                     + window.time_doubts[row] * rate(window, record, row, column);
                 // Where the method runs away with roundings, a row says nothing of it.
-                if !(allowed <= TELLING * peaks[column]) {
+                if allowed.is_nan() || allowed > TELLING * peaks[column] {
                     continue;
                 }
                 let effect_on = |u: usize| {

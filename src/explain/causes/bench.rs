@@ -148,8 +148,8 @@ impl Rows {
     /// How far the written values are from others.
     pub(super) fn gap(&self, values: &[f64]) -> Gap {
         let mut gap = Gap::NOTHING;
-        for at in 0..values.len().min(self.written.len()) {
-            gap.add(self, at, values[at]);
+        for (at, &value) in values.iter().enumerate().take(self.written.len()) {
+            gap.add(self, at, value);
         }
         gap
     }

@@ -246,7 +246,7 @@ fn ringing(coefficients: &Coefficients, linear: &Linear, step: f64) -> Option<f6
         .filter(|value| value.re * step < -2.0);
     let factors = factors.flat_map(|value| roots(coefficients, value * step));
     let worst = factors.map(|factor| factor.re).fold(0.0, f64::min);
-    (worst < -0.3 && worst >= -1.0 - 1e-9).then_some(worst)
+    (-1.0 - 1e-9..-0.3).contains(&worst).then_some(worst)
 }
 
 /// The errors change sign from row to row for a while.

@@ -126,7 +126,7 @@ pub(super) fn interpolated(rows: &Rows, names: &Names) -> Option<Candidate> {
                 let at = |r: usize| rows.written[r * width + channel];
                 let bend = at(row + 1) - 2.0 * at(row) + at(row - 1);
                 let allowed = 4.0 * rows.allowed[row * width + channel];
-                if rows.numbers[row] % stride as u64 == 0 {
+                if rows.numbers[row].is_multiple_of(stride as u64) {
                     kinks += usize::from(bend.abs() > 4.0 * allowed);
                 } else if bend.abs() > allowed {
                     straight = false;
