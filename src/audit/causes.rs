@@ -5,9 +5,8 @@ use super::evidence::{RunFound, claimed_methods};
 use super::run::RunCompared;
 use crate::explain::{Cause, Trouble, causes};
 use crate::judge::{Answer, Support, Verdict};
-use crate::method::Linear;
 use crate::outcome::{Audited, CauseOutcome};
-use crate::submission::{Role, Setting, Submission};
+use crate::submission::{Role, Submission};
 
 /// Runs of one submission that are looked into.
 const MOST_RUNS: usize = 2;
@@ -21,7 +20,6 @@ pub(super) fn look(
     found: &mut [RunFound],
     audited: &mut Audited,
 ) {
-    let linear = Linear::new(&model.case);
     let methods = claimed_methods(submission);
     let channels: Vec<(String, String)> = model
         .case
@@ -65,12 +63,9 @@ pub(super) fn look(
             continue;
         }
         looked += 1;
-        let step = match run.outcome.setting {
-            Setting::Step(step) => Some(step),
-            Setting::Tolerance(_) | Setting::Unstated => None,
-        };
+        let step = run.outcome.setting.step();
         let trouble = Trouble {
-            linear: &linear,
+            linear: &model.linear,
             record: &run.record,
             evidence: &found.evidence,
             answer: found.answer.as_ref(),

@@ -3,7 +3,7 @@
 use super::Model;
 use super::run::RunCompared;
 use crate::judge::{self, Answer, Claimed, Support, Verdict};
-use crate::method::{Evidence, Linear, Method, find_all};
+use crate::method::{Evidence, Method, find_all};
 use crate::number::plain;
 use crate::outcome::{Audited, ClaimOutcome, Consistent, EvidenceOutcome, RunEvidence};
 use crate::submission::{Setting, Submission};
@@ -15,13 +15,30 @@ pub(super) struct RunFound {
 }
 
 /// Claimed steps and rows agree to this part of the step.
-pub(super) const FITS: f64 = 1e-6;
+const FITS: f64 = 1e-6;
+
+/// How steps lie among rows.
+pub(super) enum Among {
+    /// A whole number of steps from row to row.
+    StepsPerRow(u64),
+    /// So many rows to a step: all but one of them are interpolated.
+    RowsPerStep(u64),
+}
+
+/// `None` where neither is a whole number of the other.
+pub(super) fn steps_among_rows(spacing: f64, step: f64) -> Option<Among> {
+    let whole = |ratio: f64| {
+        let count = ratio.round();
+        (count >= 1.0 && (ratio - count).abs() <= FITS * ratio).then_some(count as u64)
+    };
+    let per_row = whole(spacing / step).map(Among::StepsPerRow);
+    per_row.or_else(|| whole(step / spacing).map(Among::RowsPerStep))
+}
 
 /// Asks every run which method wrote it.
 pub(super) fn ask(model: &Model, submission: &Submission, runs: &[RunCompared]) -> Vec<RunFound> {
-    let linear = Linear::new(&model.case);
     let methods = claimed_methods(submission);
-    let ask_one = |run: &RunCompared| ask_one(model, &linear, submission, &methods, run);
+    let ask_one = |run: &RunCompared| ask_one(model, submission, &methods, run);
     runs.iter().map(ask_one).collect()
 }
 
@@ -36,32 +53,22 @@ pub(super) fn claimed_methods(submission: &Submission) -> Vec<&'static Method> {
 
 fn ask_one(
     model: &Model,
-    linear: &Linear,
     submission: &Submission,
     methods: &[&'static Method],
     run: &RunCompared,
 ) -> RunFound {
-    let step = match run.outcome.setting {
-        Setting::Step(step) => Some(step),
-        Setting::Tolerance(_) | Setting::Unstated => None,
-    };
-    let whole = |ratio: f64| {
-        let count = ratio.round();
-        (count >= 1.0 && (ratio - count).abs() <= FITS * ratio).then_some(count as u64)
-    };
+    let step = run.outcome.setting.step();
     let spacing = run.record.spacing.map(|(spacing, _)| spacing);
-    let mut steps = spacing
+    let among = spacing
         .zip(step)
-        .and_then(|(spacing, step)| whole(spacing / step));
-    // Rows between the steps are interpolated: those at the steps tell.
-    let between = spacing
-        .zip(step)
-        .and_then(|(spacing, step)| whole(step / spacing));
-    let thinned = between.filter(|&count| steps.is_none() && count > 1);
+        .and_then(|(spacing, step)| steps_among_rows(spacing, step));
+    let (steps, thinned) = match among {
+        Some(Among::StepsPerRow(count)) => (Some(count), None),
+        // Those at the steps tell.
+        Some(Among::RowsPerStep(count)) => (Some(1), Some(count)),
+        None => (None, None),
+    };
     let thinner = thinned.map(|count| run.record.every(count));
-    if thinner.is_some() {
-        steps = Some(1);
-    }
     let claimed = Claimed {
         name: submission.claims.method.as_deref(),
         methods,
@@ -71,7 +78,7 @@ fn ask_one(
         time_unit: &model.case.time.unit,
     };
     let record = thinner.as_ref().unwrap_or(&run.record);
-    let (found, mut answer) = judge::ask(linear, record, &claimed);
+    let (found, mut answer) = judge::ask(&model.linear, record, &claimed);
     if let (Some(answer), Some(count)) = (&mut answer, thinned) {
         answer.text += &format!("; {} of {count} rows lie between the steps", count - 1);
     }
@@ -92,10 +99,7 @@ pub(super) fn conclude(
     let run_evidence = pairs().map(|(run, found)| RunEvidence {
         file: run.outcome.file.clone(),
         method: submission.claims.method.clone(),
-        step: match run.outcome.setting {
-            Setting::Step(step) => Some(step),
-            Setting::Tolerance(_) | Setting::Unstated => None,
-        },
+        step: run.outcome.setting.step(),
         support: found.answer.as_ref().map(|answer| answer.support),
         consistent: found.evidence.consistent.iter().map(consistent).collect(),
         exact: found.evidence.is_exact(),

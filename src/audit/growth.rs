@@ -1,7 +1,7 @@
 //! The factor of each mode from row to row, for every run, and the order that they show.
 
 use super::Model;
-use super::evidence::FITS;
+use super::evidence::{Among, steps_among_rows};
 use super::run::RunCompared;
 use crate::method::{Growth, Likeness, Linear, Unmeasured, growth, likeness};
 use crate::outcome::{Audited, Damping, GrowthOutcome, GrowthSummary};
@@ -9,8 +9,7 @@ use crate::submission::Setting;
 
 /// Fills in the growth of each run and what all of them come to.
 pub(super) fn measure(model: &Model, runs: &[RunCompared], audited: &mut Audited) {
-    let linear = Linear::new(&model.case);
-    let found: Vec<_> = runs.iter().map(|run| of_run(&linear, run)).collect();
+    let found: Vec<_> = runs.iter().map(|run| of_run(&model.linear, run)).collect();
     let Some(evidence) = &mut audited.evidence else {
         return;
     };
@@ -47,16 +46,10 @@ fn of_run(linear: &Linear, run: &RunCompared) -> Result<(Vec<Growth>, Option<u64
         // The step of a code that adapts it is not that of the rows.
         Setting::Tolerance(_) => return Err(Unmeasured::Spacing),
     };
-    let whole = |ratio: f64| {
-        let count = ratio.round();
-        (count >= 1.0 && (ratio - count).abs() <= FITS * ratio).then_some(count as u64)
-    };
-    if let Some(steps) = whole(spacing / step) {
-        return Ok((growth(linear, &run.record, steps)?, Some(steps)));
+    match steps_among_rows(spacing, step).ok_or(Unmeasured::Spacing)? {
+        Among::StepsPerRow(steps) => Ok((growth(linear, &run.record, steps)?, Some(steps))),
+        Among::RowsPerStep(rows) => Ok((growth(linear, &run.record.every(rows), 1)?, Some(1))),
     }
-    // Rows between the steps are interpolated.
-    let between = whole(step / spacing).ok_or(Unmeasured::Spacing)?;
-    Ok((growth(linear, &run.record.every(between), 1)?, Some(1)))
 }
 
 fn outcome(mode: &Growth, steps: Option<u64>) -> GrowthOutcome {

@@ -21,6 +21,7 @@ use std::sync::{Arc, Mutex};
 use crate::case::{Case, Library};
 use crate::exact::{Exact, approx_time_scales};
 use crate::fault::Fault;
+use crate::method::Linear;
 use crate::outcome::{Audited, LimitsFrom, NotAudited, Outcome};
 use crate::submission::{LimitStated, Submission};
 use run::compare;
@@ -56,6 +57,8 @@ pub struct Planned {
 struct Model {
     case: Case,
     exact: Exact,
+    /// The case as a time-stepping program sees it.
+    linear: Linear,
     /// Of the fastest mode, if it decays or grows.
     time_constant: Option<f64>,
 }
@@ -123,6 +126,7 @@ fn model(
     let exact = case.exact().map_err(|fault| vec![fault])?;
     let time_constant = approx_time_scales(&case).time_constant;
     let model = Arc::new(Model {
+        linear: Linear::new(&case),
         case,
         exact,
         time_constant,

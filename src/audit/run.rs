@@ -57,10 +57,7 @@ pub(super) fn compare(
 ) -> Result<RunCompared, Fault> {
     let placed = |fault: Fault| fault.in_file(&run.path);
     let source = open(&run.path)?;
-    let step = match run.setting {
-        Setting::Step(step) => Some(step),
-        Setting::Tolerance(_) | Setting::Unstated => None,
-    };
+    let step = run.setting.step();
     let mut outcome = RunOutcome {
         file: run.file.clone(),
         role: run.role.unwrap_or(Role::Result),

@@ -2,7 +2,10 @@
 
 use nalgebra::DMatrix;
 
-use super::recurrence::{Node, Recurrence, identity, sparse};
+use super::recurrence::{Recurrence, identity};
+
+/// Roundings of one step, beside those of the exponential itself.
+const ROUNDINGS: f64 = 8.0;
 
 /// `exp(hA)` and `h phi(hA)` as blocks of one exponential (Van Loan).
 pub(super) fn exponential(matrix: &DMatrix<f64>, step: f64) -> Option<Recurrence> {
@@ -27,18 +30,13 @@ pub(super) fn exponential(matrix: &DMatrix<f64>, step: f64) -> Option<Recurrence
     // Some add `h phi(hA) (A x + g)` to the state.
     let spread = (stay.abs() + identity(size) + weight.abs() * matrix.abs()) * amplified;
     let pull = weight.abs() * amplified;
-    Some(Recurrence {
+    Some(Recurrence::held(
         step,
-        past: vec![sparse(&stay)],
-        nodes: vec![Node {
-            at: 0.0,
-            slope: false,
-            weight: sparse(&weight),
-        }],
-        spread: sparse(&spread),
-        pull: sparse(&pull),
-        roundings: 8.0,
-    })
+        &stay,
+        &weight,
+        (&spread, &pull),
+        ROUNDINGS,
+    ))
 }
 
 /// Each state by itself: `exp(h a_ii)` for its own rate, everything else held.
@@ -55,16 +53,12 @@ pub(super) fn by_state(matrix: &DMatrix<f64>, step: f64) -> Option<Recurrence> {
     let stay = diagonal(&|i| own(i).exp()) + &weight * &others;
     let amplified = 8.0 * (0..size).map(|i| 1.0 + own(i).abs()).fold(1.0, f64::max);
     let spread = (stay.abs() + identity(size) + &weight * matrix.abs()) * amplified;
-    Some(Recurrence {
+    let pull = weight.abs() * amplified;
+    Some(Recurrence::held(
         step,
-        past: vec![sparse(&stay)],
-        nodes: vec![Node {
-            at: 0.0,
-            slope: false,
-            weight: sparse(&weight),
-        }],
-        spread: sparse(&spread),
-        pull: sparse(&(weight.abs() * amplified)),
-        roundings: 8.0,
-    })
+        &stay,
+        &weight,
+        (&spread, &pull),
+        ROUNDINGS,
+    ))
 }

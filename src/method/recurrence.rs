@@ -126,6 +126,28 @@ impl Recurrence {
         self
     }
 
+    /// A one-step method that holds the forcing from the start of its step.
+    pub(super) fn held(
+        step: f64,
+        stay: &DMatrix<f64>,
+        weight: &DMatrix<f64>,
+        (spread, pull): (&DMatrix<f64>, &DMatrix<f64>),
+        roundings: f64,
+    ) -> Recurrence {
+        Recurrence {
+            step,
+            past: vec![sparse(stay)],
+            nodes: vec![Node {
+                at: 0.0,
+                slope: false,
+                weight: sparse(weight),
+            }],
+            spread: sparse(spread),
+            pull: sparse(pull),
+            roundings,
+        }
+    }
+
     fn is_finite(&self) -> bool {
         let finite = |matrix: &Matrix<f64>| matrix.rows().flatten().all(|x| x.is_finite());
         self.past.iter().all(finite)
@@ -455,16 +477,14 @@ fn semi_implicit(ranks: &Ranks, matrix: &DMatrix<f64>, step: f64) -> Option<Recu
     let inverse = system.try_inverse()?;
     let stay = &inverse * (identity(size) + matrix * step - &seen);
     let spread = inverse.abs() * (identity(size) + matrix.abs() * step);
-    Some(Recurrence {
+    let pull = inverse.abs() * step;
+    let roundings = 6.0 + 2.0 * size as f64;
+    let weight = &inverse * step;
+    Some(Recurrence::held(
         step,
-        past: vec![sparse(&stay)],
-        nodes: vec![Node {
-            at: 0.0,
-            slope: false,
-            weight: sparse(&(&inverse * step)),
-        }],
-        spread: sparse(&spread),
-        pull: sparse(&(inverse.abs() * step)),
-        roundings: 6.0 + 2.0 * size as f64,
-    })
+        &stay,
+        &weight,
+        (&spread, &pull),
+        roundings,
+    ))
 }

@@ -1,5 +1,8 @@
 //! The coefficients of methods: written as rationals and surds, read as numbers.
 
+use std::sync::LazyLock;
+
+use super::catalogue::METHODS;
 use crate::formula::Formula;
 use crate::number::{Decimal, Double};
 
@@ -125,9 +128,20 @@ impl Stages {
     }
 }
 
+/// The texts of the catalogue, read once: evidence asks for them at every step it tries.
+static READ: LazyLock<Vec<(Scheme, Coefficients)>> = LazyLock::new(|| {
+    let schemes = METHODS.iter().flat_map(|method| method.schemes);
+    schemes.map(|scheme| (*scheme, scheme.read())).collect()
+});
+
 impl Scheme {
     /// The coefficients as numbers, to double-double where they are rationals or surds.
     pub fn coefficients(&self) -> Coefficients {
+        let known = READ.iter().find(|(scheme, _)| scheme == self);
+        known.map_or_else(|| self.read(), |(_, coefficients)| coefficients.clone())
+    }
+
+    fn read(&self) -> Coefficients {
         match *self {
             Scheme::RungeKutta { matrix, weights } => {
                 let weights = list(weights);

@@ -154,9 +154,9 @@ impl Search<'_> {
             let found = self.at(variant, spacing, count);
             found.is_some_and(|(fit, _)| fit.holds())
         };
-        let far = |towards: &dyn Fn(u64) -> u64, end: u64| {
+        let far = |towards: &dyn Fn(u64) -> u64| {
             let (mut inside, mut stride) = (steps, 1);
-            while stride > 0 && inside.abs_diff(steps) < 3 * steps {
+            while inside.abs_diff(steps) < 3 * steps {
                 let next = towards(stride).clamp(1, MOST_STEPS);
                 if next == inside || !holds(next) {
                     // Halve the way back to what is known to agree.
@@ -174,10 +174,10 @@ impl Search<'_> {
                 inside = next;
                 stride *= 2;
             }
-            if stride > 0 { inside } else { end }
+            inside
         };
-        let down = far(&|stride| steps.saturating_sub(stride), 1);
-        let up = far(&|stride| steps + stride, MOST_STEPS);
+        let down = far(&|stride| steps.saturating_sub(stride));
+        let up = far(&|stride| steps + stride);
         (down, up)
     }
 
@@ -200,12 +200,11 @@ impl Search<'_> {
             }
             return glance;
         }
-        let rows = usize::MAX;
-        let mut best = trial.from_start(self.record, Sides::After, rows, either);
+        let mut best = trial.from_start(self.record, Sides::After, either);
         let (from, to) = self.linear.window;
         if !best.holds() && !either && self.linear.jumps_within(from, to) {
             for sides in [Sides::Own, Sides::Before] {
-                let other = trial.from_start(self.record, sides, rows, either);
+                let other = trial.from_start(self.record, sides, either);
                 if other.ratio < best.ratio {
                     best = other;
                 }

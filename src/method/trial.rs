@@ -371,10 +371,9 @@ impl<'a> Trial<'a> {
     }
 
     /// Compares a file that does not hold every state: the method runs from the start of
-    /// the window, through jumps, and meets the rows of the first window. `starts` are the
-    /// states before the second row that a method with a memory needs. `either` allows for
-    /// nodes on jumps that see the other side than the one given.
-    pub fn from_start(&self, record: &Record, sides: Sides, rows: usize, either: bool) -> Fit {
+    /// the window, through jumps, and meets the rows of the first window. `either` allows
+    /// for nodes on jumps that see the other side than the one given.
+    pub fn from_start(&self, record: &Record, sides: Sides, either: bool) -> Fit {
         let linear = self.linear;
         let Some(window) = record.windows.first() else {
             return Fit::NOTHING;
@@ -386,7 +385,7 @@ impl<'a> Trial<'a> {
         let peaks = record.peaks();
         let width = record.width();
         let most = (GLOBAL_WORK / stacked.pow(3).max(1)).max(4);
-        let last = (window.rows() - 1).min(most).min(rows);
+        let last = (window.rows() - 1).min(most);
         let start = linear.start.clone();
         let origin = window.times[0];
         let mut state = start.clone();

@@ -141,6 +141,16 @@ pub enum Setting {
     Unstated,
 }
 
+impl Setting {
+    /// The step, where one is stated.
+    pub fn step(self) -> Option<f64> {
+        match self {
+            Setting::Step(step) => Some(step),
+            Setting::Tolerance(_) | Setting::Unstated => None,
+        }
+    }
+}
+
 /// What a run is for.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
 pub enum Role {

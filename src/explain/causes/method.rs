@@ -84,7 +84,6 @@ pub(super) fn candidates(
 pub(super) fn low_order_start(
     linear: &Linear,
     rows: &Rows,
-    names: &Names,
     method: &'static Method,
     step: f64,
 ) -> Option<Candidate> {
@@ -97,21 +96,15 @@ pub(super) fn low_order_start(
     if back < 2 || (spacing / step).round() != 1.0 || rows.len() < back + 4 {
         return None;
     }
-    let share = |values: &[f64]| {
-        let gaps = values.iter().zip(&rows.exact).enumerate();
-        gaps.map(|(at, (x, y))| {
-            (x - y).abs() / rows.peaks[at % rows.width()].max(f64::MIN_POSITIVE)
-        })
-        .fold(0.0, f64::max)
-    };
-    let written = share(&rows.written);
-    let well_started = Stepping::all(method, linear, step)
-        .into_iter()
-        .find_map(|stepping| {
-            let values = trajectory(linear, rows, &Way::Stepped(stepping))?;
-            (share(&values) < 0.25 * written).then_some(values)
-        })?;
-    let _ = well_started;
+    let written = rows.error_of(&rows.written);
+    let mut ways = Stepping::all(method, linear, step).into_iter();
+    let well_started = ways.any(|stepping| {
+        let values = trajectory(linear, rows, &Way::Stepped(stepping));
+        values.is_some_and(|values| rows.error_of(&values) < 0.25 * written)
+    });
+    if !well_started {
+        return None;
+    }
     // The first row after the start tells what made it.
     let by_euler = Stepping::all(crate::method::find("forward Euler")?, linear, step)
         .into_iter()
@@ -140,7 +133,6 @@ pub(super) fn low_order_start(
         },
         method.name
     );
-    let _ = names;
     Some(Candidate::new(
         Kind::LowOrderStart,
         0,

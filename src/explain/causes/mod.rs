@@ -260,7 +260,7 @@ fn of_method(
     let Some(step) = family.step else {
         return done(candidates);
     };
-    candidates.extend(method::low_order_start(linear, rows, names, method, step));
+    candidates.extend(method::low_order_start(linear, rows, method, step));
     // Which value counted at a jump is the program's own business.
     let own = Stepping::all(method, linear, step)
         .into_iter()
