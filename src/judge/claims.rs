@@ -71,8 +71,9 @@ const NEARLY: f64 = 4.0;
 const LAST_DIGITS: f64 = 256.0 * f64::EPSILON;
 /// More steps from row to row than this come near to the exact solution in most methods.
 const MANY_STEPS: u64 = 64;
-/// A start that is free to choose is bound by as many comparisons, if it fits them all.
-const BINDING: usize = 40;
+/// A fit that leaves no more than this part of the residual of another one is not met by
+/// chance, over eight comparisons or more.
+const BY_CHANCE: f64 = 1e-3;
 
 /// Lays the rows of one run beside every method and says what they say of its claim. A
 /// claim that single precision would explain, with digits that do not show it, is left open.
@@ -242,7 +243,7 @@ fn of_method(evidence: &Evidence, claimed: &Claimed, cannot: &dyn Fn(String) -> 
     let exactly = evidence.exact.residual / evidence.exact.ratio;
     let stopped_early = own.filter(|own| {
         let loose = own.fit.residual <= ITERATION
-            && !evidence.consistent.iter().any(binds)
+            && !evidence.consistent.iter().any(|family| binds(family, own))
             && !(evidence.is_exact() && own.fit.residual > 2.0 * exactly);
         let explained = evidence.is_exact() || !evidence.consistent.is_empty();
         implicit && explained && (loose || own.fit.residual <= LAST_DIGITS)
@@ -322,14 +323,12 @@ fn early(own: &Tried, label: &str) -> String {
     )
 }
 
-/// True where a family fits that has little to choose: no other reading of the inputs, no
-/// step that comes near to the exact solution, no free start but few comparisons.
-fn binds(family: &Family) -> bool {
-    let remembers = |method: &&Method| method.schemes.iter().any(|s| s.steps_back() > 1);
-    let free = family.steps > 1 && family.methods.iter().any(remembers);
+/// True where a family fits so closely that what an iteration had left would have had to
+/// hit it by chance: the exact solution is no such family, see [`Evidence::is_exact`].
+fn binds(family: &Family, own: &Tried) -> bool {
     family.reading == Reading::AtNodes
         && family.steps <= MANY_STEPS
-        && (!free || family.fit.compared >= BINDING)
+        && family.fit.residual <= BY_CHANCE * own.fit.residual
 }
 
 /// A step without a method: what the consistent methods say.

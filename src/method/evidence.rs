@@ -28,6 +28,12 @@ pub struct Tried {
     pub step: Option<f64>,
     /// How well it agrees.
     pub fit: Fit,
+    /// How well the exact solution would agree in place of the rows, as a ratio likewise:
+    /// up to one, this pair cannot be told from it. Not a number where the pair does not
+    /// agree itself.
+    pub apart: f64,
+    /// True where the method's hidden start was free to choose.
+    pub free: bool,
     /// What tells it apart from other methods on these rows.
     pub(super) print: Vec<f64>,
 }
@@ -47,6 +53,10 @@ pub struct Family {
     pub step: Option<f64>,
     /// The better of the fits.
     pub fit: Fit,
+    /// How far the exact solution is from it, see [`Tried::apart`].
+    pub apart: f64,
+    /// True where the method's hidden start was free to choose.
+    pub free: bool,
 }
 
 /// What the rows of one file say of all methods.
@@ -67,6 +77,27 @@ const MOST_PIECES: usize = 16;
 /// Entries of the matrices of two methods that differ by less than this part of them are
 /// the same: they are computed along different ways.
 const SAME: f64 = 1e-11;
+
+/// Residuals so many times those of another pair are no roundings of the pair's own: the
+/// other one has them in the way, too.
+const OUTDONE: f64 = 16.0;
+
+impl Tried {
+    /// How many times closer than another consistent pair this one comes to the rows, in
+    /// terms of what the steps of that pair round in any case.
+    ///
+    /// What digits and rounding allow is a bound, for some methods a wide one. The roundings
+    /// that a pair really made stand in the residuals of every other pair as well, which
+    /// cannot come much closer to the rows than they are large.
+    pub fn outdoes(&self, other: &Tried, unit: f64) -> f64 {
+        let rounded = 4.0 * unit * other.steps.max(self.steps) as f64;
+        if self.apart > 1.0 {
+            other.fit.residual / self.fit.residual.max(rounded)
+        } else {
+            0.0
+        }
+    }
+}
 
 impl Evidence {
     /// True where the rows are no further from the exact solution than digits and rounding
@@ -126,6 +157,7 @@ pub fn evidence(
     let mut search = Search {
         linear,
         record,
+        solution: record.solution(),
         complete: record.states(linear.size()).is_some(),
         pieces,
         targets: targets(record),
@@ -165,7 +197,7 @@ pub fn evidence(
             search.method(method, Reading::EitherSide);
         }
     }
-    let consistent = families(&search.tried);
+    let consistent = families(&search.tried, record.unit);
     Evidence {
         tried: search.tried,
         skipped: search.skipped,
@@ -230,9 +262,11 @@ fn steepest(record: &Record, window: &super::record::Window) -> Vec<f64> {
 }
 
 /// Consistent pairs, those of one effect together.
-fn families(tried: &[Tried]) -> Vec<Family> {
+fn families(tried: &[Tried], unit: f64) -> Vec<Family> {
     let mut families: Vec<(Family, &Vec<f64>)> = Vec::new();
-    for one in tried.iter().filter(|tried| tried.fit.holds()) {
+    let holding = || tried.iter().filter(|tried| tried.fit.holds());
+    let outdone = |one: &Tried| holding().any(|other| other.outdoes(one, unit) > OUTDONE);
+    for one in holding().filter(|one| !outdone(one)) {
         let same = |(family, print): &&mut (Family, &Vec<f64>)| {
             family.steps == one.steps && alike(print, &one.print)
         };
@@ -253,6 +287,8 @@ fn families(tried: &[Tried]) -> Vec<Family> {
                     range: one.range,
                     step: one.step,
                     fit: one.fit,
+                    apart: one.apart,
+                    free: one.free,
                 };
                 families.push((family, &one.print));
             }

@@ -107,6 +107,16 @@ impl Record {
         })
     }
 
+    /// The same rows with the exact values in place of those written.
+    pub(super) fn solution(&self) -> Record {
+        let mut solution = self.clone();
+        for window in &mut solution.windows {
+            let pairs = window.values.iter_mut().zip(&mut window.errors);
+            pairs.for_each(|(value, error)| *value -= std::mem::take(error));
+        }
+        solution
+    }
+
     /// The states that are written in a row, by place.
     pub(super) fn states_at<'a>(
         &'a self,

@@ -46,6 +46,8 @@ pub fn rank_orders(linear: &Linear) -> Vec<Ranks> {
 pub(super) struct Search<'a> {
     pub(super) linear: &'a Linear,
     pub(super) record: &'a Record,
+    /// The same rows with the exact values in them.
+    pub(super) solution: Record,
     pub(super) complete: bool,
     pub(super) pieces: Vec<Piece>,
     pub(super) targets: Vec<Target>,
@@ -101,10 +103,16 @@ impl Search<'_> {
         counts.sort_unstable();
         counts.dedup();
         for count in counts {
-            let Some((fit, print)) = self.at(variant, spacing, count) else {
-                self.skipped.push((variant.method, count));
+            // What cannot be solved, or reads its inputs no other way, has not run.
+            let Some(recurrence) = variant.recurrence(self.linear, spacing / count as f64) else {
                 continue;
             };
+            let trial = Trial::new(self.linear, recurrence, count, self.record.unit);
+            let fit = self.fit(&trial, self.record, variant.reading);
+            if fit.compared == 0 {
+                self.skipped.push((variant.method, count));
+                continue;
+            }
             let known = self.tried.last().is_some_and(|last| {
                 last.method.name == variant.method.name
                     && last.fit.holds()
@@ -120,6 +128,14 @@ impl Search<'_> {
             } else {
                 (count, count)
             };
+            let (apart, print) = if fit.holds() {
+                (
+                    self.fit(&trial, &self.solution, variant.reading).ratio,
+                    self.print(&trial),
+                )
+            } else {
+                (f64::NAN, Vec::new())
+            };
             self.tried.push(Tried {
                 method: variant.method,
                 reading: variant.reading,
@@ -127,33 +143,29 @@ impl Search<'_> {
                 range,
                 step: Some(spacing / count as f64),
                 fit,
+                apart,
+                free: self.is_free(&trial),
                 print,
             });
         }
     }
 
-    fn at(&self, variant: &Variant, spacing: f64, steps: u64) -> Option<(Fit, Vec<f64>)> {
-        let step = spacing / steps as f64;
-        let recurrence = variant.recurrence(self.linear, step)?;
-        let trial = Trial::new(self.linear, recurrence, steps, self.record.unit);
-        if !trial.is_finite() {
-            return None;
-        }
-        let fit = self.fit(&trial, spacing, variant.reading);
-        let print = if fit.holds() {
-            self.print(&trial)
-        } else {
-            Vec::new()
-        };
-        (fit.compared > 0).then_some((fit, print))
+    /// True where earlier states that a step needs are not all among the rows.
+    fn is_free(&self, trial: &Trial) -> bool {
+        trial.recurrence.back() > 1 && (trial.steps > 1 || !self.complete)
+    }
+
+    fn holds_at(&self, variant: &Variant, spacing: f64, steps: u64) -> bool {
+        let recurrence = variant.recurrence(self.linear, spacing / steps as f64);
+        recurrence.is_some_and(|recurrence| {
+            let trial = Trial::new(self.linear, recurrence, steps, self.record.unit);
+            self.fit(&trial, self.record, variant.reading).holds()
+        })
     }
 
     /// How far numbers of steps about one that agrees agree too.
     fn range(&self, variant: &Variant, spacing: f64, steps: u64) -> (u64, u64) {
-        let holds = |count: u64| {
-            let found = self.at(variant, spacing, count);
-            found.is_some_and(|(fit, _)| fit.holds())
-        };
+        let holds = |count: u64| self.holds_at(variant, spacing, count);
         let far = |towards: &dyn Fn(u64) -> u64| {
             let (mut inside, mut stride) = (steps, 1);
             while inside.abs_diff(steps) < 3 * steps {
@@ -181,30 +193,32 @@ impl Search<'_> {
         (down, up)
     }
 
-    fn fit(&self, trial: &Trial, spacing: f64, reading: Reading) -> Fit {
+    /// Nothing is compared where a matrix has overflowed.
+    fn fit(&self, trial: &Trial, record: &Record, reading: Reading) -> Fit {
+        if !trial.is_finite() {
+            return Fit::NOTHING;
+        }
         let either = reading == Reading::EitherSide;
-        let memory = trial.recurrence.back() > 1;
-        if memory && (trial.steps > 1 || !self.complete) {
-            let step = spacing / trial.steps as f64;
-            return match self.reference(step) {
+        if self.is_free(trial) {
+            return match self.reference(trial.recurrence.step) {
                 Some(reference) => {
-                    with_hidden_start(trial, &reference, self.record, &self.pieces, either)
+                    with_hidden_start(trial, &reference, record, &self.pieces, either)
                 }
                 None => Fit::NOTHING,
             };
         }
         if self.complete {
-            let glance = trial.against_rows(self.record, &self.pieces, true);
+            let glance = trial.against_rows(record, &self.pieces, true);
             if glance.holds() {
-                return trial.against_rows(self.record, &self.pieces, false);
+                return trial.against_rows(record, &self.pieces, false);
             }
             return glance;
         }
-        let mut best = trial.from_start(self.record, Sides::After, either);
+        let mut best = trial.from_start(record, Sides::After, either);
         let (from, to) = self.linear.window;
         if !best.holds() && !either && self.linear.jumps_within(from, to) {
             for sides in [Sides::Own, Sides::Before] {
-                let other = trial.from_start(self.record, sides, either);
+                let other = trial.from_start(record, sides, either);
                 if other.ratio < best.ratio {
                     best = other;
                 }
@@ -230,27 +244,16 @@ impl Search<'_> {
                 (piece.start..piece.start + piece.rows - 1).map(|row| (piece.window, row))
             })
             .collect();
-        let stride = pairs.len() / MOST_PAIRS + 1;
         for steps in [1, 2] {
-            let mut fit = Fit::NOTHING;
-            for &(window, row) in pairs.iter().step_by(stride) {
-                let times = &self.record.windows[window].times;
-                let step = (times[row + 1] - times[row]) / steps as f64;
-                let Some(recurrence) = variant.recurrence(self.linear, step) else {
-                    fit = Fit::NOTHING;
-                    break;
-                };
-                let trial = Trial::new(self.linear, recurrence, steps, self.record.unit);
-                let piece = Piece {
-                    window,
-                    start: row,
-                    rows: 2,
-                };
-                fit = fit.and(trial.against_rows(self.record, &[piece], true));
-                if fit.ratio > 1.0 && fit.compared > GLANCE * self.linear.size() {
-                    break;
-                }
-            }
+            let fit = self.uneven_fit(variant, self.record, &pairs, steps);
+            let (apart, print) = if fit.holds() {
+                (
+                    self.uneven_fit(variant, &self.solution, &pairs, steps).ratio,
+                    self.uneven_print(variant, &pairs, steps),
+                )
+            } else {
+                (f64::NAN, Vec::new())
+            };
             if fit.compared > 0 {
                 self.tried.push(Tried {
                     method: variant.method,
@@ -259,14 +262,41 @@ impl Search<'_> {
                     range: (steps, steps),
                     step: None,
                     fit,
-                    print: if fit.holds() {
-                        self.uneven_print(variant, &pairs, steps)
-                    } else {
-                        Vec::new()
-                    },
+                    apart,
+                    free: false,
+                    print,
                 });
             }
         }
+    }
+
+    fn uneven_fit(
+        &self,
+        variant: &Variant,
+        record: &Record,
+        pairs: &[(usize, usize)],
+        steps: u64,
+    ) -> Fit {
+        let stride = pairs.len() / MOST_PAIRS + 1;
+        let mut fit = Fit::NOTHING;
+        for &(window, row) in pairs.iter().step_by(stride) {
+            let times = &record.windows[window].times;
+            let step = (times[row + 1] - times[row]) / steps as f64;
+            let Some(recurrence) = variant.recurrence(self.linear, step) else {
+                return Fit::NOTHING;
+            };
+            let trial = Trial::new(self.linear, recurrence, steps, record.unit);
+            let piece = Piece {
+                window,
+                start: row,
+                rows: 2,
+            };
+            fit = fit.and(trial.against_rows(record, &[piece], true));
+            if fit.ratio > 1.0 && fit.compared > GLANCE * self.linear.size() {
+                break;
+            }
+        }
+        fit
     }
 
     /// Numbers that are the same for methods which these rows cannot tell apart: the

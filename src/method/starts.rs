@@ -310,7 +310,7 @@ impl System {
         });
         Fit {
             ratio,
-            residual: ratio * share / equations as f64,
+            residual: (rest / equations as f64).sqrt() * share / equations as f64,
             compared: equations,
         }
     }

@@ -26,7 +26,8 @@ use crate::number::Matrix;
 pub struct Fit {
     /// Largest residual over what is allowed for it: consistent up to one.
     pub ratio: f64,
-    /// Largest residual relative to the peak of its channel.
+    /// Largest residual relative to the peak of its channel: from row to row where every
+    /// state is there, else from the start of the file.
     pub residual: f64,
     /// Comparisons made.
     pub compared: usize,
@@ -75,25 +76,14 @@ impl Fit {
         } else {
             residual / allowed
         };
-        // Not f64::max, which would pass over a NaN.
-        self.ratio = if ratio <= self.ratio {
-            self.ratio
-        } else {
-            ratio
-        };
+        self.ratio = larger(self.ratio, ratio);
         if peak > 0.0 {
-            let share = residual / peak;
-            self.residual = if share <= self.residual {
-                self.residual
-            } else {
-                share
-            };
+            self.residual = larger(self.residual, residual / peak);
         }
     }
 
     /// Both together.
     pub fn and(self, other: Fit) -> Fit {
-        let larger = |a: f64, b: f64| if b <= a { a } else { b };
         Fit {
             ratio: larger(self.ratio, other.ratio),
             residual: larger(self.residual, other.residual),
@@ -105,6 +95,11 @@ impl Fit {
     pub fn holds(&self) -> bool {
         self.compared > 0 && self.ratio <= 1.0
     }
+}
+
+/// Not `f64::max`, which would pass over a NaN.
+fn larger(a: f64, b: f64) -> f64 {
+    if b <= a { a } else { b }
 }
 
 impl<'a> Trial<'a> {
@@ -281,7 +276,11 @@ impl<'a> Trial<'a> {
             let own = self.local(&rows, window, piece, &peaks);
             fit = fit.and(own);
             if !glance && fit.ratio <= 1.0 {
-                fit = fit.and(self.global(&rows, window, piece, &peaks));
+                let global = self.global(&rows, window, piece, &peaks);
+                fit = fit.and(Fit {
+                    residual: 0.0,
+                    ..global
+                });
             }
             if fit.ratio > 1.0 && !glance {
                 break;

@@ -613,14 +613,22 @@ fn power(every: usize) -> Vec<Power> {
                             }
                             let claimed = [other];
                             let claim = claim(&claimed, spacing / n as f64, Some(n));
+                            if let Ok(only) = std::env::var("ONLY") {
+                                if !format!("{label} claimed {} x{n}", other.name).contains(&only) { continue; }
+                                eprintln!("{label} claimed {} x{n}", other.name);
+                                unsafe { std::env::set_var("DBG", "1"); }
+                            }
                             let answer = judge::ask(&linear, &record, &claim).1.unwrap();
+                            unsafe { std::env::remove_var("DBG"); }
                             power.false_claims += 1;
                             if answer.support == Support::Contradicts {
                                 power.seen_through += 1;
                             } else {
+                                let (found, _) = judge::ask(&linear, &record, &claim);
+                                let all: Vec<_> = found.tried.iter().filter(|t| t.fit.holds() || claimed.iter().any(|m| m.name == t.method.name) && t.steps == n).map(|t| (t.method.name, t.steps, t.reading, t.fit, t.apart, t.free)).collect();
                                 power.texts.push(format!(
-                                    "{label} claimed {} x{n}: {}",
-                                    other.name, answer.text
+                                    "{label} claimed {} x{n}: {}\n    {:?}\n     {:?}",
+                                    other.name, answer.text, found.exact, all
                                 ));
                             }
                         }
