@@ -1,9 +1,11 @@
 //! How many steps lie between two rows, if a method wrote them: its error falls with its
 //! step, so the error in the file tells.
 
-use super::linear::Side;
+use super::exponential::exponential;
+use super::linear::{Linear, Side};
 use super::march::{March, Sides};
-use super::record::Record;
+use super::record::{Piece, Record};
+use super::recurrence::dense;
 use super::search::{Search, Variant};
 use super::trial::{GLANCE, Trial};
 
@@ -11,51 +13,138 @@ use super::trial::{GLANCE, Trial};
 const MOST_GUESSED: u64 = 10_000;
 /// Steps that a search may take one by one where inputs jump.
 const MOST_MARCHED: u64 = 20_000;
+/// Rows that are searched for errors.
+const MOST_ROWS: usize = 400;
 
-/// An error in the file that stands clear of its digits: which row and channel, and how
-/// large.
+/// Errors in the file that say how long its steps were: what the rows have gone astray since
+/// a row that a method is started from.
+#[derive(Clone, Debug, Default)]
+pub(super) struct Targets {
+    window: usize,
+    /// The row that is started from, in the window.
+    begin: usize,
+    /// The state there.
+    start: Vec<f64>,
+    points: Vec<Target>,
+}
+
+/// One of them: how many rows on, which channel, how large and how far it is known.
 #[derive(Clone, Copy, Debug)]
-pub(super) struct Target {
-    row: usize,
+struct Target {
+    rows_on: usize,
     place: usize,
     error: f64,
+    noise: f64,
+    exact: f64,
     peak: f64,
 }
 
-/// Errors near the start of the file that say how long the steps were.
-pub(super) fn targets(record: &Record) -> Vec<Target> {
-    let Some(window) = record.windows.first() else {
-        return Vec::new();
-    };
-    let peaks = record.peaks();
-    let mut targets = Vec::new();
-    let mut rows = 0;
-    for row in 1..window.rows() {
-        if !record.follows(window, row) || rows >= GLANCE {
-            break;
-        }
-        let before = targets.len();
-        for (place, &peak) in peaks.iter().enumerate() {
-            let at = row * record.width() + place;
-            let error = window.errors[at];
-            let noise = window.doubts[at] + 32.0 * record.unit * peak;
-            if error.is_finite() && error.abs() > noise && peak > 0.0 {
-                targets.push(Target {
-                    row,
-                    place,
-                    error,
-                    peak,
-                });
+impl Targets {
+    /// From the stretch that shows errors best where every state is written: a row there is
+    /// a start, whatever has happened before it, at jumps above all. Else from the start of
+    /// the file.
+    pub(super) fn new(linear: &Linear, record: &Record, pieces: &[Piece]) -> Targets {
+        let Some((spacing, _)) = record.spacing else {
+            return Targets::default();
+        };
+        let size = linear.size();
+        let onward = record.states(size).zip(exponential(&dense(&linear.matrix), spacing));
+        let Some((places, onward)) = onward else {
+            let start = Targets {
+                start: linear.start.clone(),
+                ..Targets::default()
+            };
+            return start.with_points(record, MOST_ROWS, |_, errors| (errors, vec![0.0; record.width()]));
+        };
+        let of_piece = |piece: &Piece| {
+            let window = &record.windows[piece.window];
+            let at = |values: &[f64], row: usize| -> Vec<f64> {
+                let line = &values[row * record.width()..];
+                places.iter().map(|&place| line[place]).collect()
+            };
+            let mut error = at(&window.errors, piece.start);
+            let mut doubt = at(&window.doubts, piece.start);
+            let targets = Targets {
+                window: piece.window,
+                begin: piece.start,
+                start: at(&window.values, piece.start),
+                points: Vec::new(),
+            };
+            let rows = piece.rows.min(MOST_ROWS);
+            targets.with_points(record, rows, |_, mut errors| {
+                // Less what has come of the error at the start.
+                error = onward.past[0].apply(&error);
+                doubt = onward.past[0].map(f64::abs).apply(&doubt);
+                let mut doubts = vec![0.0; record.width()];
+                for (state, &place) in places.iter().enumerate() {
+                    errors[place] -= error[state];
+                    doubts[place] = doubt[state];
+                }
+                (errors, doubts)
+            })
+        };
+        let all = pieces.iter().map(of_piece);
+        let best = all.max_by(|a, b| a.clearness().total_cmp(&b.clearness()));
+        best.unwrap_or_default()
+    }
+
+    /// `since` takes the number of a row and the errors written there, and gives those
+    /// that have come about since the start with what is in doubt about them.
+    fn with_points(
+        mut self,
+        record: &Record,
+        rows: usize,
+        mut since: impl FnMut(usize, Vec<f64>) -> (Vec<f64>, Vec<f64>),
+    ) -> Targets {
+        let Some(window) = record.windows.get(self.window) else {
+            return self;
+        };
+        let (peaks, width) = (record.peaks(), record.width());
+        let last = window.rows().min(self.begin + rows);
+        let stride = rows / GLANCE + 1;
+        for row in self.begin + 1..last {
+            if !record.follows(window, row) {
+                break;
+            }
+            let line = row * width..(row + 1) * width;
+            let (errors, doubts) = since(row, window.errors[line.clone()].to_vec());
+            let rows_on = row - self.begin;
+            if rows_on > GLANCE && !rows_on.is_multiple_of(stride) {
+                continue;
+            }
+            for (place, &peak) in peaks.iter().enumerate() {
+                let at = line.start + place;
+                let (error, exact) = (errors[place], window.values[at] - errors[place]);
+                let noise = window.doubts[at] + doubts[place] + 32.0 * record.unit * peak;
+                if error.is_finite() && peak > 0.0 {
+                    self.points.push(Target {
+                        rows_on,
+                        place,
+                        error,
+                        noise,
+                        exact,
+                        peak,
+                    });
+                }
             }
         }
-        rows += usize::from(targets.len() > before);
+        self
     }
-    targets
+
+    /// The largest error in terms of what its digits resolve.
+    pub(super) fn clearness(&self) -> f64 {
+        let clear = self.points.iter().map(|target| target.error.abs() / target.noise);
+        clear.fold(0.0, f64::max)
+    }
 }
 
 impl Search<'_> {
-    /// Steps from row to row that would have made the errors in the file.
-    pub(super) fn estimate(&self, variant: &Variant, spacing: f64) -> Option<u64> {
+    /// Numbers of steps from row to row that would have made the errors in the file: the
+    /// best one with those about it that the digits leave open.
+    pub(super) fn estimate(&self, variant: &Variant, spacing: f64) -> Option<Estimate> {
+        if self.targets.clearness() <= 1.0 {
+            return None;
+        }
         let order = f64::from(variant.method.order);
         // A first number of steps at which the method stays near the solution.
         let mut steps = 1u64;
@@ -66,11 +155,13 @@ impl Search<'_> {
                 _ => steps *= 4,
             }
         };
-        for _ in 0..6 {
-            if seen.along <= 0.0 {
-                return None;
-            }
-            let wanted = steps as f64 * seen.along.powf(1.0 / order);
+        for _ in 0..9 {
+            // Long steps may err the other way.
+            let wanted = if seen.along > 0.0 {
+                steps as f64 * seen.along.powf(1.0 / order)
+            } else {
+                2.0 * steps as f64
+            };
             let next = (wanted.round().max(1.0) as u64).min(MOST_GUESSED);
             if next == steps {
                 break;
@@ -80,25 +171,33 @@ impl Search<'_> {
                 None => break,
             }
         }
-        Some(steps)
+        if seen.along <= 0.0 {
+            return None;
+        }
+        let open = steps as f64 * (seen.doubt / order).min(1.0);
+        Some(Estimate {
+            steps,
+            open: open.ceil().max(1.0) as u64,
+        })
     }
 
     /// The errors of the method at the rows of the targets, laid along those in the file.
     fn projected(&self, variant: &Variant, spacing: f64, steps: u64) -> Option<Projected> {
         let step = spacing / steps as f64;
         let recurrence = variant.recurrence(self.linear, step)?;
-        let window = self.record.windows.first()?;
-        let last = self.targets.last()?.row;
+        let targets = &self.targets;
+        let window = self.record.windows.get(targets.window)?;
+        let last = targets.points.last()?.rows_on;
+        let origin = window.times[targets.begin];
         if !self
             .linear
-            .is_smooth(self.linear.window.0, window.times[last])
+            .is_smooth(origin, window.times[targets.begin + last])
             && last as u64 * steps > MOST_MARCHED
         {
             return None;
         }
-        let origin = window.times[0];
         let memory = recurrence.back() as u64 - 1;
-        let start = self.linear.start.clone();
+        let start = targets.start.clone();
         let mut known = vec![start.clone()];
         if memory > 0 {
             let reference = self.reference(step)?;
@@ -111,8 +210,8 @@ impl Search<'_> {
         let trial = Trial::new(self.linear, recurrence, steps, self.record.unit);
         let mut stack: Vec<f64> = known.iter().flatten().copied().collect();
         let mut done = memory;
-        let (mut own, mut both, mut largest) = (0.0, 0.0, 0.0f64);
-        let mut targets = self.targets.iter().peekable();
+        let (mut own, mut both, mut largest) = (0.0f64, 0.0f64, 0.0f64);
+        let mut points = targets.points.iter().peekable();
         for row in 1..=last {
             let wanted = row as u64 * steps;
             if wanted > done {
@@ -124,23 +223,24 @@ impl Search<'_> {
                 Some(known) if wanted < done => &known[..],
                 _ => &stack[stack.len() - size..],
             };
-            while let Some(target) = targets.next_if(|target| target.row == row) {
+            while let Some(target) = points.next_if(|target| target.rows_on == row) {
                 let channel = self.record.channels[target.place];
-                let at = row * self.record.width() + target.place;
-                let exact = window.values[at] - window.errors[at];
-                let time = window.times[row];
+                let time = window.times[targets.begin + row];
                 let value = self.linear.observe(channel, state, time, Side::After, 0.0);
-                let error = (value - exact) / target.peak;
+                let error = value - target.exact;
                 if !error.is_finite() {
                     return None;
                 }
-                own += error * error;
-                both += error * target.error / target.peak;
-                largest = largest.max(error.abs());
+                let weight = target.noise.powi(-2);
+                own += weight * error * error;
+                both += weight * error * target.error;
+                largest = largest.max(error.abs() / target.peak);
             }
         }
         (both != 0.0).then(|| Projected {
             along: own / both,
+            // The noise of single rows is independent of each other.
+            doubt: 3.0 * own.sqrt() / both.abs(),
             size: largest,
         })
     }
@@ -150,6 +250,31 @@ impl Search<'_> {
 struct Projected {
     /// Its error in units of the file's, along the file's.
     along: f64,
+    /// What digits and roundings can make of that, relative to it.
+    doubt: f64,
     /// Its largest error relative to the peak.
     size: f64,
+}
+
+/// How many steps lie between two rows, if a method wrote them.
+#[derive(Clone, Copy, Debug)]
+pub(super) struct Estimate {
+    pub(super) steps: u64,
+    /// So many more or less are as likely.
+    pub(super) open: u64,
+}
+
+impl Estimate {
+    pub(super) fn admits(&self, steps: u64) -> bool {
+        steps.abs_diff(self.steps) <= self.open
+    }
+
+    /// The numbers to try.
+    pub(super) fn counts(&self) -> impl Iterator<Item = u64> + '_ {
+        let shares = [0.25, 0.5, 1.0].map(|share| (self.open as f64 * share).ceil() as u64);
+        let about = shares
+            .into_iter()
+            .flat_map(|far| [self.steps.saturating_sub(far), self.steps + far]);
+        about.chain([self.steps.saturating_sub(1), self.steps, self.steps + 1])
+    }
 }

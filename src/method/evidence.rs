@@ -6,7 +6,7 @@
 //! the set of consistent pairs, methods that these rows cannot tell apart under one name.
 
 use super::catalogue::{METHODS, Method};
-use super::estimate::targets;
+use super::estimate::Targets;
 use super::linear::Linear;
 use super::record::{Piece, Record};
 use super::recurrence::Reading;
@@ -68,6 +68,9 @@ pub struct Evidence {
     pub consistent: Vec<Family>,
     /// The exact solution itself.
     pub exact: Fit,
+    /// True where what has gone astray since a jump or since the start is within digits and
+    /// roundings: between jumps no method can be told from the exact solution.
+    pub exact_between_jumps: bool,
     /// What the rows are too few for, with the steps from row to row.
     pub skipped: Vec<(&'static Method, u64)>,
 }
@@ -80,7 +83,7 @@ const SAME: f64 = 1e-11;
 
 /// Residuals so many times those of another pair are no roundings of the pair's own: the
 /// other one has them in the way, too.
-const OUTDONE: f64 = 16.0;
+const OUTDONE: f64 = 12.0;
 
 impl Tried {
     /// How many times closer than another consistent pair this one comes to the rows, in
@@ -90,7 +93,11 @@ impl Tried {
     /// that a pair really made stand in the residuals of every other pair as well, which
     /// cannot come much closer to the rows than they are large.
     pub fn outdoes(&self, other: &Tried, unit: f64) -> f64 {
-        let rounded = 4.0 * unit * other.steps.max(self.steps) as f64;
+        let steps = other.steps.max(self.steps) as f64;
+        // A start that is free to choose follows what drifts, else the roundings of many
+        // steps are scattered.
+        let steps = if self.free { steps } else { steps.sqrt() };
+        let rounded = 4.0 * unit * steps;
         if self.apart > 1.0 {
             other.fit.residual / self.fit.residual.max(rounded)
         } else {
@@ -159,8 +166,8 @@ pub fn evidence(
         record,
         solution: record.solution(),
         complete: record.states(linear.size()).is_some(),
+        targets: Targets::new(linear, record, &pieces),
         pieces,
-        targets: targets(record),
         orders: rank_orders(linear),
         gauss: super::find("Gauss 6").map(|method| method.schemes[0].coefficients()),
         exact: exact.holds(),
@@ -171,6 +178,10 @@ pub fn evidence(
     };
     for method in METHODS {
         search.method(method, Reading::AtNodes);
+    }
+    let told = |tried: &Tried| tried.fit.holds() && tried.apart > 1.0;
+    if claimed.is_empty() && !search.tried.iter().any(told) && !exact.holds() {
+        METHODS.iter().for_each(|method| search.sweep(method));
     }
     // Other ways to read the inputs are looked at where the plain one explains nothing, or
     // not the claim.
@@ -200,6 +211,7 @@ pub fn evidence(
     let consistent = families(&search.tried, record.unit);
     Evidence {
         tried: search.tried,
+        exact_between_jumps: search.targets.clearness() <= 1.0,
         skipped: search.skipped,
         consistent,
         exact,
@@ -265,7 +277,15 @@ fn steepest(record: &Record, window: &super::record::Window) -> Vec<f64> {
 fn families(tried: &[Tried], unit: f64) -> Vec<Family> {
     let mut families: Vec<(Family, &Vec<f64>)> = Vec::new();
     let holding = || tried.iter().filter(|tried| tried.fit.holds());
-    let outdone = |one: &Tried| holding().any(|other| other.outdoes(one, unit) > OUTDONE);
+    // Nor does a start that is free to choose, and would make the exact solution fit as well,
+    // explain what something without such freedom does.
+    let outdone = |one: &Tried| {
+        let by = |other: &Tried| {
+            other.outdoes(one, unit) > OUTDONE
+                || (one.free && one.apart <= 1.0 && !other.free && other.apart > OUTDONE)
+        };
+        holding().any(by)
+    };
     for one in holding().filter(|one| !outdone(one)) {
         let same = |(family, print): &&mut (Family, &Vec<f64>)| {
             family.steps == one.steps && alike(print, &one.print)

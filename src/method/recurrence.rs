@@ -156,7 +156,7 @@ impl Recurrence {
     }
 }
 
-fn dense(matrix: &Matrix<f64>) -> DMatrix<f64> {
+pub(super) fn dense(matrix: &Matrix<f64>) -> DMatrix<f64> {
     DMatrix::from_fn(matrix.size(), matrix.size(), |i, j| matrix[(i, j)])
 }
 

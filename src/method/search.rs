@@ -1,7 +1,7 @@
 //! The search through the catalogue: every method at the steps that are worth a look.
 
 use super::catalogue::Method;
-use super::estimate::Target;
+use super::estimate::{Estimate, Targets};
 use super::evidence::Tried;
 use super::linear::Linear;
 use super::march::Sides;
@@ -13,6 +13,12 @@ use super::trial::{Fit, GLANCE, Trial};
 
 /// Steps from row to row that are tried whatever the errors say.
 const ALWAYS: [u64; 3] = [1, 2, 4];
+/// Those that a method with a memory is tried at where nothing else explains the rows.
+const SWEPT: [u64; 19] = [
+    3, 5, 6, 7, 8, 9, 10, 12, 15, 16, 20, 24, 25, 30, 32, 40, 50, 64, 100,
+];
+/// States and earlier states that such a search is worth.
+const MOST_SWEPT: usize = 24;
 /// Most steps from row to row.
 pub const MOST_STEPS: u64 = 200_000;
 /// Pairs of rows that are compared where the spacing varies.
@@ -50,7 +56,7 @@ pub(super) struct Search<'a> {
     pub(super) solution: Record,
     pub(super) complete: bool,
     pub(super) pieces: Vec<Piece>,
-    pub(super) targets: Vec<Target>,
+    pub(super) targets: Targets,
     pub(super) orders: Vec<Ranks>,
     pub(super) gauss: Option<Coefficients>,
     /// The file cannot be told from the exact solution.
@@ -96,13 +102,52 @@ impl Search<'_> {
         let mut counts: Vec<u64> = ALWAYS.to_vec();
         counts.extend(self.claimed_steps.iter().filter(|&&m| claimed || m <= 64));
         let estimate = self.estimate(variant, spacing);
-        if let Some(estimate) = estimate {
-            counts.extend([estimate.saturating_sub(1), estimate, estimate + 1]);
-        }
+        if std::env::var("DBG").is_ok() { eprintln!("EST {} {:?}", variant.method.name, estimate); }
+        counts.extend(estimate.iter().flat_map(Estimate::counts));
         counts.retain(|&count| count > 0 && count <= MOST_STEPS);
         counts.sort_unstable();
         counts.dedup();
+        self.at_counts(variant, spacing, counts, estimate);
+    }
+
+    /// A method with a memory whose start has made larger errors than its steps: they do not
+    /// tell how many there are, and beside the right number no start fits.
+    pub(super) fn sweep(&mut self, method: &'static Method) {
+        let Some((spacing, _)) = self.record.spacing else {
+            return;
+        };
+        for scheme in method.schemes {
+            let back = scheme.steps_back();
+            if back < 2 || back * self.linear.size() > MOST_SWEPT {
+                continue;
+            }
+            let coefficients = scheme.coefficients();
+            let variant = Variant {
+                method,
+                coefficients: &coefficients,
+                reading: Reading::AtNodes,
+                ranks: &Ranks::new(),
+            };
+            self.at_counts(&variant, spacing, SWEPT.to_vec(), None);
+        }
+    }
+
+    fn at_counts(
+        &mut self,
+        variant: &Variant,
+        spacing: f64,
+        counts: Vec<u64>,
+        estimate: Option<Estimate>,
+    ) {
         for count in counts {
+            let known = self.tried.last().is_some_and(|last| {
+                last.method.name == variant.method.name
+                    && last.fit.holds()
+                    && (last.range.0..=last.range.1).contains(&count)
+            });
+            if known {
+                continue;
+            }
             // What cannot be solved, or reads its inputs no other way, has not run.
             let Some(recurrence) = variant.recurrence(self.linear, spacing / count as f64) else {
                 continue;
@@ -113,16 +158,8 @@ impl Search<'_> {
                 self.skipped.push((variant.method, count));
                 continue;
             }
-            let known = self.tried.last().is_some_and(|last| {
-                last.method.name == variant.method.name
-                    && last.fit.holds()
-                    && (last.range.0..=last.range.1).contains(&count)
-            });
-            if known {
-                continue;
-            }
             // Few digits leave a range of steps open.
-            let near_estimate = estimate.is_some_and(|estimate| count.abs_diff(estimate) <= 1);
+            let near_estimate = estimate.is_some_and(|estimate| estimate.admits(count));
             let range = if fit.holds() && near_estimate && !self.exact {
                 self.range(variant, spacing, count)
             } else {
@@ -155,17 +192,18 @@ impl Search<'_> {
         trial.recurrence.back() > 1 && (trial.steps > 1 || !self.complete)
     }
 
-    fn holds_at(&self, variant: &Variant, spacing: f64, steps: u64) -> bool {
-        let recurrence = variant.recurrence(self.linear, spacing / steps as f64);
-        recurrence.is_some_and(|recurrence| {
-            let trial = Trial::new(self.linear, recurrence, steps, self.record.unit);
-            self.fit(&trial, self.record, variant.reading).holds()
-        })
+    fn fit_at(&self, variant: &Variant, spacing: f64, steps: u64) -> Option<Fit> {
+        let recurrence = variant.recurrence(self.linear, spacing / steps as f64)?;
+        let trial = Trial::new(self.linear, recurrence, steps, self.record.unit);
+        Some(self.fit(&trial, self.record, variant.reading))
     }
 
     /// How far numbers of steps about one that agrees agree too.
     fn range(&self, variant: &Variant, spacing: f64, steps: u64) -> (u64, u64) {
-        let holds = |count: u64| self.holds_at(variant, spacing, count);
+        let holds = |count: u64| {
+            let fit = self.fit_at(variant, spacing, count);
+            fit.is_some_and(|fit| fit.holds())
+        };
         let far = |towards: &dyn Fn(u64) -> u64| {
             let (mut inside, mut stride) = (steps, 1);
             while inside.abs_diff(steps) < 3 * steps {
