@@ -73,7 +73,9 @@ const LAST_DIGITS: f64 = 256.0 * f64::EPSILON;
 const MANY_STEPS: u64 = 64;
 /// A fit that leaves no more than this part of the residual of another one is not met by
 /// chance, over eight comparisons or more.
-const BY_CHANCE: f64 = 1e-3;
+const BY_CHANCE: f64 = 0.05;
+/// The same for a method whose start is free to choose.
+const BY_CHANCE_FREE: f64 = 0.01;
 
 /// Lays the rows of one run beside every method and says what they say of its claim. A
 /// claim that single precision would explain, with digits that do not show it, is left open.
@@ -191,6 +193,13 @@ fn of_method(evidence: &Evidence, claimed: &Claimed, cannot: &dyn Fn(String) -> 
                  or a case with a moving input would tell them apart"
             );
             return cannot(text);
+        }
+        if let Some(family) = evidence.better_at_jumps(own) {
+            let text = format!(
+                "the steps at jumps of the inputs fit {}, not {label} on either side of them",
+                family_at(family, claimed.time_unit)
+            );
+            return all(Support::Contradicts, text);
         }
         let mut text = format!(
             "the rows fit {label}: the largest residual is {} of what digits and rounding allow",
@@ -326,9 +335,11 @@ fn early(own: &Tried, label: &str) -> String {
 /// True where a family fits so closely that what an iteration had left would have had to
 /// hit it by chance: the exact solution is no such family, see [`Evidence::is_exact`].
 fn binds(family: &Family, own: &Tried) -> bool {
+    let by_chance = if family.free { BY_CHANCE_FREE } else { BY_CHANCE };
     family.reading == Reading::AtNodes
         && family.steps <= MANY_STEPS
-        && family.fit.residual <= BY_CHANCE * own.fit.residual
+        && (family.fit.residual <= by_chance * own.fit.residual
+            || family.fit.astray <= by_chance * own.fit.astray)
 }
 
 /// A step without a method: what the consistent methods say.

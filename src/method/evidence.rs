@@ -32,6 +32,9 @@ pub struct Tried {
     /// up to one, this pair cannot be told from it. Not a number where the pair does not
     /// agree itself.
     pub apart: f64,
+    /// How well it agrees with the steps at jumps of an input, whichever side it sees;
+    /// nothing is compared where the pair does not agree between them.
+    pub at_jumps: Fit,
     /// True where the method's hidden start was free to choose.
     pub free: bool,
     /// What tells it apart from other methods on these rows.
@@ -55,6 +58,8 @@ pub struct Family {
     pub fit: Fit,
     /// How far the exact solution is from it, see [`Tried::apart`].
     pub apart: f64,
+    /// How well it agrees with the steps at jumps of an input, see [`Tried::at_jumps`].
+    pub at_jumps: Fit,
     /// True where the method's hidden start was free to choose.
     pub free: bool,
 }
@@ -124,6 +129,13 @@ impl Evidence {
         self.skipped.iter().any(|(skipped, count)| {
             methods.iter().any(|m| m.name == skipped.name) && steps.is_none_or(|s| s == *count)
         })
+    }
+
+    /// What agrees with the steps at jumps of an input where a pair that agrees between them
+    /// does not.
+    pub fn better_at_jumps(&self, own: &Tried) -> Option<&Family> {
+        let mut families = self.consistent.iter();
+        families.find(|family| own.at_jumps.ratio > 1.0 && family.at_jumps.holds())
     }
 
     /// The best fit of one method at any step.
@@ -277,14 +289,16 @@ fn steepest(record: &Record, window: &super::record::Window) -> Vec<f64> {
 fn families(tried: &[Tried], unit: f64) -> Vec<Family> {
     let mut families: Vec<(Family, &Vec<f64>)> = Vec::new();
     let holding = || tried.iter().filter(|tried| tried.fit.holds());
+    // Jumps tell as soon as anything explains them.
+    let met = holding().any(|other| other.at_jumps.holds());
     // Nor does a start that is free to choose, and would make the exact solution fit as well,
     // explain what something without such freedom does.
     let outdone = |one: &Tried| {
         let by = |other: &Tried| {
             other.outdoes(one, unit) > OUTDONE
-                || (one.free && one.apart <= 1.0 && !other.free && other.apart > OUTDONE)
+                || (one.free && !other.free && other.apart > OUTDONE)
         };
-        holding().any(by)
+        (met && one.at_jumps.ratio > 1.0) || holding().any(by)
     };
     for one in holding().filter(|one| !outdone(one)) {
         let same = |(family, print): &&mut (Family, &Vec<f64>)| {
@@ -308,6 +322,7 @@ fn families(tried: &[Tried], unit: f64) -> Vec<Family> {
                     step: one.step,
                     fit: one.fit,
                     apart: one.apart,
+                    at_jumps: one.at_jumps,
                     free: one.free,
                 };
                 families.push((family, &one.print));

@@ -9,6 +9,7 @@
 
 mod catalogue;
 mod characteristic;
+mod crossing;
 mod drive;
 mod estimate;
 mod evidence;

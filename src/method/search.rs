@@ -9,7 +9,7 @@ use super::record::{Piece, Record};
 use super::recurrence::{Ranks, Reading, Recurrence};
 use super::scheme::{Coefficients, Scheme};
 use super::starts::with_hidden_start;
-use super::trial::{Fit, GLANCE, Trial};
+use super::trial::{Fit, GLANCE, Trial, larger};
 
 /// Steps from row to row that are tried whatever the errors say.
 const ALWAYS: [u64; 3] = [1, 2, 4];
@@ -96,13 +96,17 @@ impl Search<'_> {
         }
     }
 
+    fn is_claimed(&self, variant: &Variant) -> bool {
+        let mut claimed = self.claimed.iter();
+        claimed.any(|method| method.name == variant.method.name)
+    }
+
     /// Rows at one spacing.
     fn even(&mut self, variant: &Variant, spacing: f64) {
-        let claimed = self.claimed.iter().any(|m| m.name == variant.method.name);
+        let claimed = self.is_claimed(variant);
         let mut counts: Vec<u64> = ALWAYS.to_vec();
         counts.extend(self.claimed_steps.iter().filter(|&&m| claimed || m <= 64));
         let estimate = self.estimate(variant, spacing);
-        if std::env::var("DBG").is_ok() { eprintln!("EST {} {:?}", variant.method.name, estimate); }
         counts.extend(estimate.iter().flat_map(Estimate::counts));
         counts.retain(|&count| count > 0 && count <= MOST_STEPS);
         counts.sort_unstable();
@@ -153,7 +157,10 @@ impl Search<'_> {
                 continue;
             };
             let trial = Trial::new(self.linear, recurrence, count, self.record.unit);
-            let fit = self.fit(&trial, self.record, variant.reading);
+            let mut fit = self.fit(&trial, self.record, variant.reading);
+            if self.is_claimed(variant) && self.claimed_steps.contains(&count) && !fit.holds() {
+                fit.astray = larger(fit.astray, trial.astray(self.record, &self.pieces));
+            }
             if fit.compared == 0 {
                 self.skipped.push((variant.method, count));
                 continue;
@@ -165,13 +172,14 @@ impl Search<'_> {
             } else {
                 (count, count)
             };
-            let (apart, print) = if fit.holds() {
+            let (apart, at_jumps, print) = if fit.holds() {
                 (
                     self.fit(&trial, &self.solution, variant.reading).ratio,
+                    trial.across_jumps(self.record),
                     self.print(&trial),
                 )
             } else {
-                (f64::NAN, Vec::new())
+                (f64::NAN, Fit::NOTHING, Vec::new())
             };
             self.tried.push(Tried {
                 method: variant.method,
@@ -181,6 +189,7 @@ impl Search<'_> {
                 step: Some(spacing / count as f64),
                 fit,
                 apart,
+                at_jumps,
                 free: self.is_free(&trial),
                 print,
             });
@@ -301,6 +310,7 @@ impl Search<'_> {
                     step: None,
                     fit,
                     apart,
+                    at_jumps: Fit::NOTHING,
                     free: false,
                     print,
                 });

@@ -308,9 +308,11 @@ impl System {
         let share = shares.fold(0.0f64, |sum, &(column, allowed)| {
             sum + allowed / peaks[column]
         });
+        let residual = (rest / equations as f64).sqrt() * share / equations as f64;
         Fit {
             ratio,
-            residual: (rest / equations as f64).sqrt() * share / equations as f64,
+            residual,
+            astray: residual,
             compared: equations,
         }
     }

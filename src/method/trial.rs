@@ -29,6 +29,9 @@ pub struct Fit {
     /// Largest residual relative to the peak of its channel: from row to row where every
     /// state is there, else from the start of the file.
     pub residual: f64,
+    /// The largest relative to the peak when the method has run on from the first row of a
+    /// stretch, where that was looked at.
+    pub astray: f64,
     /// Comparisons made.
     pub compared: usize,
 }
@@ -65,6 +68,7 @@ impl Fit {
     pub const NOTHING: Fit = Fit {
         ratio: 0.0,
         residual: 0.0,
+        astray: 0.0,
         compared: 0,
     };
 
@@ -87,6 +91,7 @@ impl Fit {
         Fit {
             ratio: larger(self.ratio, other.ratio),
             residual: larger(self.residual, other.residual),
+            astray: larger(self.astray, other.astray),
             compared: self.compared + other.compared,
         }
     }
@@ -98,7 +103,7 @@ impl Fit {
 }
 
 /// Not `f64::max`, which would pass over a NaN.
-fn larger(a: f64, b: f64) -> f64 {
+pub(super) fn larger(a: f64, b: f64) -> f64 {
     if b <= a { a } else { b }
 }
 
@@ -197,7 +202,7 @@ impl<'a> Trial<'a> {
 
     /// What roundings of the steps between two rows can come to, given the largest states
     /// and the largest forcing with its rate, the time and the number of the row.
-    fn rounding(&self, scale: &Scale, time: f64, row: u64) -> Vec<f64> {
+    pub(super) fn rounding(&self, scale: &Scale, time: f64, row: u64) -> Vec<f64> {
         let recurrence = &self.recurrence;
         let size = recurrence.size();
         let spread = recurrence.spread.apply(&scale.states);
@@ -276,9 +281,10 @@ impl<'a> Trial<'a> {
             let own = self.local(&rows, window, piece, &peaks);
             fit = fit.and(own);
             if !glance && fit.ratio <= 1.0 {
-                let global = self.global(&rows, window, piece, &peaks);
+                let global = self.global(&rows, window, piece, &peaks, false);
                 fit = fit.and(Fit {
                     residual: 0.0,
+                    astray: global.residual,
                     ..global
                 });
             }
@@ -287,6 +293,22 @@ impl<'a> Trial<'a> {
             }
         }
         fit
+    }
+
+    /// How far the method goes astray from the rows, relative to the peak, when it runs on
+    /// from the first row of each piece; for a method that does not fit them.
+    pub(super) fn astray(&self, record: &Record, pieces: &[Piece]) -> f64 {
+        let Some(places) = record.states(self.linear.size()) else {
+            return 0.0;
+        };
+        let rows = Rows { record, places };
+        let peaks = rows.peaks();
+        let back = self.recurrence.back();
+        let long = pieces.iter().filter(|piece| piece.rows > back);
+        long.fold(0.0, |most, piece| {
+            let window = &record.windows[piece.window];
+            larger(most, self.global(&rows, window, *piece, &peaks, true).residual)
+        })
     }
 
     fn stack(&self, rows: &Rows, window: &Window, row: usize) -> (Vec<f64>, Vec<f64>) {
@@ -329,7 +351,15 @@ impl<'a> Trial<'a> {
         fit
     }
 
-    fn global(&self, rows: &Rows, window: &Window, piece: Piece, peaks: &[f64]) -> Fit {
+    /// To the end of the piece, or only up to the first row that the method does not meet.
+    fn global(
+        &self,
+        rows: &Rows,
+        window: &Window,
+        piece: Piece,
+        peaks: &[f64],
+        to_the_end: bool,
+    ) -> Fit {
         let (size, stacked) = (self.linear.size(), self.stacked());
         let newest = stacked - size;
         let scale = rows.scale(self.linear, window, piece);
@@ -362,7 +392,7 @@ impl<'a> Trial<'a> {
                 let allowed = doubts[i] + from_start[at] + gathered[at] + steepest[i] * stamp;
                 fit.add((written[i] - states[at]).abs(), allowed, peaks[i]);
             }
-            if fit.ratio > 1.0 {
+            if fit.ratio > 1.0 && !to_the_end {
                 break;
             }
         }
@@ -455,6 +485,7 @@ impl<'a> Trial<'a> {
                 break;
             }
         }
+        fit.astray = fit.residual;
         fit
     }
 }

@@ -607,7 +607,7 @@ fn power(every: usize) -> Vec<Power> {
                             power.alone = Some(others.is_empty());
                             if !others.is_empty() {
                                 let own = found.best_of(method.name).map(|f| (f.steps, f.fit.ratio, f.fit.residual, f.apart, f.free));
-                                power.texts.push(format!("{label} {own:?} also {others:?}"));
+                                power.texts.push(format!("{label} {own:?} also {} {:?}", others.len(), &others[..others.len().min(5)]));
                             }
                         }
                         for &((other, scheme), n) in &claims {
