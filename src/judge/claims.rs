@@ -76,6 +76,9 @@ const MANY_STEPS: u64 = 64;
 const BY_CHANCE: f64 = 0.05;
 /// The same for a method whose start is free to choose.
 const BY_CHANCE_FREE: f64 = 0.01;
+/// A method that comes so many times closer to the rows than the exact solution is not met
+/// by chance, whatever methods there are beside the catalogue.
+const SHARP: f64 = 1e6;
 
 /// Lays the rows of one run beside every method and says what they say of its claim. A
 /// claim that single precision would explain, with digits that do not show it, is left open.
@@ -335,7 +338,11 @@ fn early(own: &Tried, label: &str) -> String {
 /// True where a family fits so closely that what an iteration had left would have had to
 /// hit it by chance: the exact solution is no such family, see [`Evidence::is_exact`].
 fn binds(family: &Family, own: &Tried) -> bool {
-    let by_chance = if family.free { BY_CHANCE_FREE } else { BY_CHANCE };
+    let by_chance = if family.free {
+        BY_CHANCE_FREE
+    } else {
+        BY_CHANCE
+    };
     family.reading == Reading::AtNodes
         && family.steps <= MANY_STEPS
         && (family.fit.residual <= by_chance * own.fit.residual
@@ -343,40 +350,46 @@ fn binds(family: &Family, own: &Tried) -> bool {
 }
 
 /// A step without a method: what the consistent methods say.
+///
+/// A method that nobody named may be one that the catalogue does not hold. Only a fit that
+/// no such method would meet by chance speaks against the step.
 fn of_step_alone(evidence: &Evidence, claimed: &Claimed) -> Option<Answer> {
     let steps = claimed.steps?;
     let stated = claimed.step?;
-    if evidence.is_exact() || evidence.consistent.is_empty() || claimed.adaptive {
+    if evidence.is_exact() || claimed.adaptive {
         return None;
     }
     let at = |family: &Family| {
         family.steps == steps || (family.range.0..=family.range.1).contains(&steps)
     };
-    let (support, text) = if evidence.consistent.iter().all(at) {
-        let family = evidence.consistent.first()?;
-        (
-            Support::Agrees,
-            format!("the rows fit {}", family_at(family, claimed.time_unit)),
-        )
-    } else if evidence.consistent.iter().any(at) {
-        return None;
-    } else {
-        let family = evidence.consistent.first()?;
-        (
-            Support::Contradicts,
-            format!(
-                "the rows fit {}, and no method at step {}",
-                family_at(family, claimed.time_unit),
-                plain(stated)
-            ),
-        )
-    };
-    Some(Answer {
+    let answer = |support: Support, text: String| Answer {
         support,
         method: None,
         step: Some(support),
         text,
-    })
+    };
+    let family = evidence.consistent.first()?;
+    if evidence.consistent.iter().all(at) {
+        let text = format!("the rows fit {}", family_at(family, claimed.time_unit));
+        return Some(answer(Support::Agrees, text));
+    }
+    let sharp = |family: &&Family| {
+        family.reading == Reading::AtNodes
+            && family.steps <= MANY_STEPS
+            && !family.free
+            && family.apart > SHARP * family.fit.ratio
+            && family.apart > 1.0
+    };
+    let family = evidence.consistent.iter().find(sharp)?;
+    if evidence.consistent.iter().any(at) {
+        return None;
+    }
+    let text = format!(
+        "the rows fit {}, and no method at step {}",
+        family_at(family, claimed.time_unit),
+        plain(stated)
+    );
+    Some(answer(Support::Contradicts, text))
 }
 
 /// A family with its step, in words.

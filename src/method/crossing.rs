@@ -4,15 +4,53 @@
 //! A program that restarts at a jump off its grid takes steps of its own there: only jumps
 //! on the grid of the steps say something.
 
-use super::linear::Side;
+use super::exponential::exponential;
+use super::linear::{Linear, Side};
 use super::march::{NEAR, Sides};
 use super::record::{Piece, Record, Window};
+use super::recurrence::dense;
 use super::scale::Rows;
 use super::trial::{Fit, Trial};
 
 /// Intervals that are compared at most, and steps that one of them may take.
 const MOST_INTERVALS: usize = 24;
 const MOST_STEPS: u64 = 2000;
+
+/// How far the rows leave the exact solution in the steps at jumps, in terms of what their
+/// digits resolve: as far as the side that a method sees can be told from it.
+pub(super) fn kicked(linear: &Linear, record: &Record) -> f64 {
+    let onward = record.spacing.zip(record.states(linear.size()));
+    let onward = onward.and_then(|((spacing, _), places)| {
+        let onward = exponential(&dense(&linear.matrix), spacing)?;
+        Some((onward.past.into_iter().next()?, places))
+    });
+    let Some((onward, places)) = onward else {
+        return 0.0;
+    };
+    let peaks = record.peaks();
+    let mut most = 0.0f64;
+    for window in &record.windows {
+        for row in 1..window.rows() {
+            let near = NEAR * (window.times[row] - window.times[row - 1]);
+            let (from, to) = (window.times[row - 1] - near, window.times[row] + near);
+            if !record.follows(window, row) || !linear.jumps_within(from, to) {
+                continue;
+            }
+            let at = |values: &[f64], row: usize| -> Vec<f64> {
+                let line = &values[row * record.width()..];
+                places.iter().map(|&place| line[place]).collect()
+            };
+            let carried = onward.apply(&at(&window.errors, row - 1));
+            let doubts = onward.map(f64::abs).apply(&at(&window.doubts, row - 1));
+            let (errors, own) = (at(&window.errors, row), at(&window.doubts, row));
+            for (i, &place) in places.iter().enumerate() {
+                let noise = own[i] + doubts[i] + 32.0 * record.unit * peaks[place];
+                most = most.max((errors[i] - carried[i]).abs() / noise);
+            }
+        }
+    }
+    most
+}
 
 impl Trial<'_> {
     /// Compares the rows before and after every jump, for a method without a memory and a
@@ -29,9 +67,8 @@ impl Trial<'_> {
         let peaks = rows.peaks();
         let mut intervals = Vec::new();
         for window in &record.windows {
-            let touched = (0..window.rows().saturating_sub(1)).filter(|&row| {
-                record.follows(window, row + 1) && self.meets_jump(window, row)
-            });
+            let touched = (0..window.rows().saturating_sub(1))
+                .filter(|&row| record.follows(window, row + 1) && self.meets_jump(window, row));
             intervals.extend(touched.map(|row| (window, row)));
         }
         let stride = intervals.len() / MOST_INTERVALS + 1;
@@ -63,14 +100,7 @@ impl Trial<'_> {
         met
     }
 
-    fn over(
-        &self,
-        rows: &Rows,
-        window: &Window,
-        row: usize,
-        peaks: &[f64],
-        sides: Sides,
-    ) -> Fit {
+    fn over(&self, rows: &Rows, window: &Window, row: usize, peaks: &[f64], sides: Sides) -> Fit {
         let time = window.times[row];
         let piece = Piece {
             window: 0,
@@ -93,8 +123,7 @@ impl Trial<'_> {
         let mut fit = Fit::NOTHING;
         for (i, line) in self.across().rows().enumerate() {
             let carried = line.iter().zip(&doubts).map(|(m, d)| m.abs() * d);
-            let allowed =
-                next_doubts[i] + rounding[i] + rates[i] * stamp + carried.sum::<f64>();
+            let allowed = next_doubts[i] + rounding[i] + rates[i] * stamp + carried.sum::<f64>();
             let residual = (next[i] - predicted[i]).abs();
             if residual.is_finite() {
                 fit.add(residual, allowed, peaks[i]);

@@ -4,6 +4,7 @@
 use super::exponential::exponential;
 use super::linear::{Linear, Side};
 use super::march::{March, Sides};
+use super::powers::identity;
 use super::record::{Piece, Record};
 use super::recurrence::dense;
 use super::search::{Search, Variant};
@@ -48,13 +49,17 @@ impl Targets {
             return Targets::default();
         };
         let size = linear.size();
-        let onward = record.states(size).zip(exponential(&dense(&linear.matrix), spacing));
+        let onward = record
+            .states(size)
+            .zip(exponential(&dense(&linear.matrix), spacing));
         let Some((places, onward)) = onward else {
             let start = Targets {
                 start: linear.start.clone(),
                 ..Targets::default()
             };
-            return start.with_points(record, MOST_ROWS, |_, errors| (errors, vec![0.0; record.width()]));
+            return start.with_points(record, MOST_ROWS, |errors| {
+                (errors, vec![0.0; record.width()])
+            });
         };
         let of_piece = |piece: &Piece| {
             let window = &record.windows[piece.window];
@@ -62,19 +67,27 @@ impl Targets {
                 let line = &values[row * record.width()..];
                 places.iter().map(|&place| line[place]).collect()
             };
+            let mut start = at(&window.values, piece.start);
             let mut error = at(&window.errors, piece.start);
             let mut doubt = at(&window.doubts, piece.start);
+            let first = window.first == 0 && piece.start == 0;
+            if first && error.iter().zip(&doubt).all(|(e, d)| e.abs() <= *d) {
+                start = linear.start.clone();
+                error.fill(0.0);
+                doubt.fill(0.0);
+            }
             let targets = Targets {
                 window: piece.window,
                 begin: piece.start,
-                start: at(&window.values, piece.start),
+                start,
                 points: Vec::new(),
             };
+            let mut power = identity(size);
             let rows = piece.rows.min(MOST_ROWS);
-            targets.with_points(record, rows, |_, mut errors| {
+            targets.with_points(record, rows, |mut errors| {
+                power = onward.past[0].product(&power);
                 // Less what has come of the error at the start.
-                error = onward.past[0].apply(&error);
-                doubt = onward.past[0].map(f64::abs).apply(&doubt);
+                let (error, doubt) = (power.apply(&error), power.map(f64::abs).apply(&doubt));
                 let mut doubts = vec![0.0; record.width()];
                 for (state, &place) in places.iter().enumerate() {
                     errors[place] -= error[state];
@@ -88,13 +101,13 @@ impl Targets {
         best.unwrap_or_default()
     }
 
-    /// `since` takes the number of a row and the errors written there, and gives those
-    /// that have come about since the start with what is in doubt about them.
+    /// `since` takes the errors of row after row, and gives those that have come about since
+    /// the start with what is in doubt about them.
     fn with_points(
         mut self,
         record: &Record,
         rows: usize,
-        mut since: impl FnMut(usize, Vec<f64>) -> (Vec<f64>, Vec<f64>),
+        mut since: impl FnMut(Vec<f64>) -> (Vec<f64>, Vec<f64>),
     ) -> Targets {
         let Some(window) = record.windows.get(self.window) else {
             return self;
@@ -107,7 +120,7 @@ impl Targets {
                 break;
             }
             let line = row * width..(row + 1) * width;
-            let (errors, doubts) = since(row, window.errors[line.clone()].to_vec());
+            let (errors, doubts) = since(window.errors[line.clone()].to_vec());
             let rows_on = row - self.begin;
             if rows_on > GLANCE && !rows_on.is_multiple_of(stride) {
                 continue;
@@ -133,7 +146,10 @@ impl Targets {
 
     /// The largest error in terms of what its digits resolve.
     pub(super) fn clearness(&self) -> f64 {
-        let clear = self.points.iter().map(|target| target.error.abs() / target.noise);
+        let clear = self
+            .points
+            .iter()
+            .map(|target| target.error.abs() / target.noise);
         clear.fold(0.0, f64::max)
     }
 }

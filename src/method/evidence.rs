@@ -6,6 +6,7 @@
 //! the set of consistent pairs, methods that these rows cannot tell apart under one name.
 
 use super::catalogue::{METHODS, Method};
+use super::crossing::kicked;
 use super::estimate::Targets;
 use super::linear::Linear;
 use super::record::{Piece, Record};
@@ -89,6 +90,9 @@ const SAME: f64 = 1e-11;
 /// Residuals so many times those of another pair are no roundings of the pair's own: the
 /// other one has them in the way, too.
 const OUTDONE: f64 = 12.0;
+/// A pair is told from the exact solution where that is so many times further from the rows
+/// than digits and rounding allow.
+const TOLD: f64 = 3.0;
 
 impl Tried {
     /// How many times closer than another consistent pair this one comes to the rows, in
@@ -220,7 +224,7 @@ pub fn evidence(
             search.method(method, Reading::EitherSide);
         }
     }
-    let consistent = families(&search.tried, record.unit);
+    let consistent = families(&search.tried, record.unit, kicked(linear, record));
     Evidence {
         tried: search.tried,
         exact_between_jumps: search.targets.clearness() <= 1.0,
@@ -285,20 +289,27 @@ fn steepest(record: &Record, window: &super::record::Window) -> Vec<f64> {
     rates
 }
 
-/// Consistent pairs, those of one effect together.
-fn families(tried: &[Tried], unit: f64) -> Vec<Family> {
+/// Consistent pairs, those of one effect together. `kicked` is how far the file leaves the
+/// exact solution at jumps.
+fn families(tried: &[Tried], unit: f64, kicked: f64) -> Vec<Family> {
     let mut families: Vec<(Family, &Vec<f64>)> = Vec::new();
     let holding = || tried.iter().filter(|tried| tried.fit.holds());
-    // Jumps tell as soon as anything explains them.
+    // Jumps tell as soon as anything explains them, and alone where the exact solution does
+    // not.
     let met = holding().any(|other| other.at_jumps.holds());
+    let met_only = met && kicked > OUTDONE;
     // Nor does a start that is free to choose, and would make the exact solution fit as well,
     // explain what something without such freedom does.
     let outdone = |one: &Tried| {
         let by = |other: &Tried| {
             other.outdoes(one, unit) > OUTDONE
-                || (one.free && !other.free && other.apart > OUTDONE)
+                || (one.free
+                    && !other.free
+                    && other.apart > if one.apart > 1.0 { OUTDONE } else { TOLD })
         };
-        (met && one.at_jumps.ratio > 1.0) || holding().any(by)
+        (met && one.at_jumps.ratio > 1.0)
+            || (met_only && one.at_jumps.compared == 0)
+            || holding().any(by)
     };
     for one in holding().filter(|one| !outdone(one)) {
         let same = |(family, print): &&mut (Family, &Vec<f64>)| {

@@ -172,27 +172,24 @@ impl Search<'_> {
             } else {
                 (count, count)
             };
-            let (apart, at_jumps, print) = if fit.holds() {
-                (
-                    self.fit(&trial, &self.solution, variant.reading).ratio,
-                    trial.across_jumps(self.record),
-                    self.print(&trial),
-                )
-            } else {
-                (f64::NAN, Fit::NOTHING, Vec::new())
-            };
-            self.tried.push(Tried {
+            let mut tried = Tried {
                 method: variant.method,
                 reading: variant.reading,
                 steps: count,
                 range,
                 step: Some(spacing / count as f64),
                 fit,
-                apart,
-                at_jumps,
+                apart: f64::NAN,
+                at_jumps: Fit::NOTHING,
                 free: self.is_free(&trial),
-                print,
-            });
+                print: Vec::new(),
+            };
+            if fit.holds() {
+                tried.apart = self.fit(&trial, &self.solution, variant.reading).ratio;
+                tried.at_jumps = trial.across_jumps(self.record);
+                tried.print = self.print(&trial);
+            }
+            self.tried.push(tried);
         }
     }
 
@@ -295,7 +292,8 @@ impl Search<'_> {
             let fit = self.uneven_fit(variant, self.record, &pairs, steps);
             let (apart, print) = if fit.holds() {
                 (
-                    self.uneven_fit(variant, &self.solution, &pairs, steps).ratio,
+                    self.uneven_fit(variant, &self.solution, &pairs, steps)
+                        .ratio,
                     self.uneven_print(variant, &pairs, steps),
                 )
             } else {

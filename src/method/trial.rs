@@ -307,7 +307,10 @@ impl<'a> Trial<'a> {
         let long = pieces.iter().filter(|piece| piece.rows > back);
         long.fold(0.0, |most, piece| {
             let window = &record.windows[piece.window];
-            larger(most, self.global(&rows, window, *piece, &peaks, true).residual)
+            larger(
+                most,
+                self.global(&rows, window, *piece, &peaks, true).residual,
+            )
         })
     }
 
@@ -351,6 +354,18 @@ impl<'a> Trial<'a> {
         fit
     }
 
+    /// The start of the case in place of the first row of the file, where that is it to its
+    /// digits.
+    fn known_start(&self, rows: &Rows, window: &Window, row: usize) -> Option<Vec<f64>> {
+        if window.first + row as u64 > 0 || self.recurrence.back() > 1 {
+            return None;
+        }
+        let (written, doubts) = (rows.values(window, row), rows.doubts(window, row));
+        let start = &self.linear.start;
+        let near = |i: usize| (written[i] - start[i]).abs() <= doubts[i];
+        (0..start.len()).all(near).then(|| start.clone())
+    }
+
     /// To the end of the piece, or only up to the first row that the method does not meet.
     fn global(
         &self,
@@ -366,7 +381,11 @@ impl<'a> Trial<'a> {
         let first = piece.start + self.recurrence.back() - 1;
         let most = GLOBAL_WORK / stacked.pow(3).max(1);
         let last = (piece.start + piece.rows - 1).min(first + most.max(4));
-        let (mut states, start_doubts) = self.stack(rows, window, first);
+        let (states, start_doubts) = self.stack(rows, window, first);
+        let (mut states, start_doubts) = match self.known_start(rows, window, first) {
+            Some(start) => (start, vec![0.0; stacked]),
+            None => (states, start_doubts),
+        };
         let mut power = identity(stacked);
         let mut gathered = vec![0.0; stacked];
         let steepest = rows.steepest(window, piece);

@@ -209,3 +209,13 @@ proptest! {
         prop_assert_ne!(audited.order_verdict, Some(stepgauge::Verdict::Fail), "{:?}", audited.orders);
     }
 }
+
+/// Errors that no method made, so small that something fits them by chance: the step that
+/// is stated stays as believable as it was. Found by `proptest`, in CI.
+#[test]
+fn a_step_stated_without_a_method_is_not_contradicted_by_chance() {
+    let case = oscillator(4.623261694023371, 0.0, 0.7);
+    let outcome = planted(&case, 5.0, 0.001, 16);
+    let audited = &outcome.submissions[0];
+    assert_eq!(audited.verdict, stepgauge::Verdict::Pass, "{:?}", audited.reasons);
+}

@@ -397,6 +397,7 @@ pub fn truth(case: &Case, times: &[f64]) -> Vec<Vec<Double>> {
 }
 
 /// What the library would keep of a file with these rows.
+#[derive(Clone)]
 pub struct Kept<'a> {
     pub times: &'a [f64],
     pub states: &'a [Vec<f64>],
