@@ -117,7 +117,8 @@ fn method(
     let telling = |evidence: &crate::method::Evidence| evidence.is_any() && !evidence.is_exact();
     let mut only = None;
     for (_, found) in result.filter(|(_, found)| telling(&found.evidence)) {
-        let [family] = &found.evidence.consistent[..] else {
+        let told: Vec<_> = found.evidence.told().collect();
+        let [family] = told[..] else {
             return None;
         };
         if family.reading != Reading::AtNodes {

@@ -241,13 +241,15 @@ fn of_order(order: f64, found: &[RunFound], audited: &Audited) -> ClaimOutcome {
     }
     let telling = found
         .iter()
-        .filter(|found| !found.evidence.is_exact() && !found.evidence.consistent.is_empty());
+        .filter(|found| !found.evidence.is_exact() && found.evidence.told().next().is_some());
     let mut orders: Vec<f64> = Vec::new();
+    let mut beyond_chance = false;
     for found in telling {
-        for family in &found.evidence.consistent {
+        for family in found.evidence.told() {
             if family.reading != crate::method::Reading::AtNodes {
                 continue;
             }
+            beyond_chance |= family.is_beyond_chance();
             orders.extend(family.methods.iter().map(|method| f64::from(method.order)));
         }
     }
@@ -260,7 +262,7 @@ fn of_order(order: f64, found: &[RunFound], audited: &Audited) -> ClaimOutcome {
     if orders.is_empty() {
         let text = "runs at three or more steps would show it";
         claim(Support::CannotTell, text.to_owned())
-    } else if orders.iter().all(|&of| of < order - 0.5) {
+    } else if beyond_chance && orders.iter().all(|&of| of < order - 0.5) {
         let text = format!(
             "the methods that fit the rows are of order {}",
             list(&orders)
@@ -285,13 +287,17 @@ fn of_order(order: f64, found: &[RunFound], audited: &Audited) -> ClaimOutcome {
 fn common(found: &[RunFound]) -> Vec<String> {
     let telling: Vec<&RunFound> = found
         .iter()
-        .filter(|found| found.evidence.is_any() && !found.evidence.is_exact())
+        .filter(|found| {
+            let evidence = &found.evidence;
+            let open = !evidence.consistent.is_empty() && evidence.told().next().is_none();
+            evidence.is_any() && !evidence.is_exact() && !open
+        })
         .collect();
     let Some((first, others)) = telling.split_first() else {
         return Vec::new();
     };
     let names = |found: &RunFound| -> Vec<&'static str> {
-        let families = found.evidence.consistent.iter();
+        let families = found.evidence.told();
         families
             .flat_map(|family| family.methods.iter().map(|method| method.name))
             .collect()

@@ -76,9 +76,6 @@ const MANY_STEPS: u64 = 64;
 const BY_CHANCE: f64 = 0.05;
 /// The same for a method whose start is free to choose.
 const BY_CHANCE_FREE: f64 = 0.01;
-/// A method that comes so many times closer to the rows than the exact solution is not met
-/// by chance, whatever methods there are beside the catalogue.
-const SHARP: f64 = 1e6;
 
 /// Lays the rows of one run beside every method and says what they say of its claim. A
 /// claim that single precision would explain, with digits that do not show it, is left open.
@@ -287,7 +284,10 @@ fn of_method(evidence: &Evidence, claimed: &Claimed, cannot: &dyn Fn(String) -> 
             text,
         };
     }
-    if let Some(family) = evidence.consistent.first() {
+    // Without a step not every step was tried: what is left free says nothing against it.
+    let mut others = evidence.consistent.iter();
+    let other = others.find(|family| claimed.step.is_some() || family.is_beyond_chance());
+    if let Some(family) = other {
         let text = format!(
             "the rows fit {}, not {label}{off}",
             family_at(family, claimed.time_unit)
@@ -373,14 +373,8 @@ fn of_step_alone(evidence: &Evidence, claimed: &Claimed) -> Option<Answer> {
         let text = format!("the rows fit {}", family_at(family, claimed.time_unit));
         return Some(answer(Support::Agrees, text));
     }
-    let sharp = |family: &&Family| {
-        family.reading == Reading::AtNodes
-            && family.steps <= MANY_STEPS
-            && !family.free
-            && family.apart > SHARP * family.fit.ratio
-            && family.apart > 1.0
-    };
-    let family = evidence.consistent.iter().find(sharp)?;
+    let mut families = evidence.consistent.iter();
+    let family = families.find(|family| family.is_beyond_chance())?;
     if evidence.consistent.iter().any(at) {
         return None;
     }

@@ -57,7 +57,7 @@ pub struct Family {
     pub step: Option<f64>,
     /// The better of the fits.
     pub fit: Fit,
-    /// How far the exact solution is from it, see [`Tried::apart`].
+    /// How far the exact solution is from it, see [`Tried::apart`], at jumps as well.
     pub apart: f64,
     /// How well it agrees with the steps at jumps of an input, see [`Tried::at_jumps`].
     pub at_jumps: Fit,
@@ -81,6 +81,10 @@ pub struct Evidence {
     pub skipped: Vec<(&'static Method, u64)>,
 }
 
+/// More steps from row to row than this come near to the exact solution in most methods.
+const MANY_STEPS: u64 = 64;
+/// So many times closer to the rows than the exact solution comes nothing by chance.
+const SHARP: f64 = 1e6;
 /// Pieces that are compared at most, the first one among them.
 const MOST_PIECES: usize = 16;
 /// Entries of the matrices of two methods that differ by less than this part of them are
@@ -115,6 +119,24 @@ impl Tried {
     }
 }
 
+impl Family {
+    /// True where the exact solution is clearly further from the rows; a start that is free
+    /// to choose has to do more than that.
+    pub fn is_told(&self) -> bool {
+        self.apart > if self.free { OUTDONE } else { TOLD }
+    }
+
+    /// True where it comes so much closer to the rows than the exact solution that no method
+    /// outside the catalogue would meet them by chance.
+    pub fn is_beyond_chance(&self) -> bool {
+        self.reading == Reading::AtNodes
+            && self.steps <= MANY_STEPS
+            && !self.free
+            && self.apart > 1.0
+            && self.apart > SHARP * self.fit.ratio
+    }
+}
+
 impl Evidence {
     /// True where the rows are no further from the exact solution than digits and rounding
     /// allow.
@@ -133,6 +155,12 @@ impl Evidence {
         self.skipped.iter().any(|(skipped, count)| {
             methods.iter().any(|m| m.name == skipped.name) && steps.is_none_or(|s| s == *count)
         })
+    }
+
+    /// The consistent families that can be told from the exact solution: only these say
+    /// what wrote the rows.
+    pub fn told(&self) -> impl Iterator<Item = &Family> {
+        self.consistent.iter().filter(|family| family.is_told())
     }
 
     /// What agrees with the steps at jumps of an input where a pair that agrees between them
@@ -196,8 +224,11 @@ pub fn evidence(
         search.method(method, Reading::AtNodes);
     }
     let told = |tried: &Tried| tried.fit.holds() && tried.apart > 1.0;
-    if claimed.is_empty() && !search.tried.iter().any(told) && !exact.holds() {
-        METHODS.iter().for_each(|method| search.sweep(method));
+    if claimed_steps.is_empty() && !search.tried.iter().any(told) && !exact.holds() {
+        let wanted =
+            |method: &&Method| claimed.is_empty() || claimed.iter().any(|m| m.name == method.name);
+        let wanted = METHODS.iter().filter(wanted);
+        wanted.for_each(|method| search.sweep(method));
     }
     // Other ways to read the inputs are looked at where the plain one explains nothing, or
     // not the claim.
@@ -332,7 +363,11 @@ fn families(tried: &[Tried], unit: f64, kicked: f64) -> Vec<Family> {
                     range: one.range,
                     step: one.step,
                     fit: one.fit,
-                    apart: one.apart,
+                    apart: if one.at_jumps.holds() {
+                        one.apart.max(kicked)
+                    } else {
+                        one.apart
+                    },
                     at_jumps: one.at_jumps,
                     free: one.free,
                 };

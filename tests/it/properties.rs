@@ -217,5 +217,10 @@ fn a_step_stated_without_a_method_is_not_contradicted_by_chance() {
     let case = oscillator(4.623261694023371, 0.0, 0.7);
     let outcome = planted(&case, 5.0, 0.001, 16);
     let audited = &outcome.submissions[0];
-    assert_eq!(audited.verdict, stepgauge::Verdict::Pass, "{:?}", audited.reasons);
+    assert_eq!(
+        audited.verdict,
+        stepgauge::Verdict::Pass,
+        "{:?}",
+        audited.reasons
+    );
 }
