@@ -75,6 +75,7 @@ fn ask_one(
         step,
         steps,
         adaptive: matches!(run.outcome.setting, Setting::Tolerance(_)),
+        unit: run.record.unit,
         time_unit: &model.case.time.unit,
     };
     let record = thinner.as_ref().unwrap_or(&run.record);

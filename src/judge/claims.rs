@@ -40,6 +40,8 @@ pub struct Claimed<'a> {
     pub steps: Option<u64>,
     /// True for a run with an error setting: its steps are its own business.
     pub adaptive: bool,
+    /// Unit roundoff of the arithmetic that the rows show.
+    pub unit: f64,
     /// The unit of time.
     pub time_unit: &'a str,
 }
@@ -71,6 +73,9 @@ const NEARLY: f64 = 4.0;
 const LAST_DIGITS: f64 = 256.0 * f64::EPSILON;
 /// More steps from row to row than this come near to the exact solution in most methods.
 const MANY_STEPS: u64 = 64;
+/// A pair that fits within a wide bound is not what wrote the rows where another one comes
+/// so many times closer.
+const FAR_BEYOND: f64 = 100.0;
 /// A fit that leaves no more than this part of the residual of another one is not met by
 /// chance, over eight comparisons or more.
 const BY_CHANCE: f64 = 0.05;
@@ -194,6 +199,16 @@ fn of_method(evidence: &Evidence, claimed: &Claimed, cannot: &dyn Fn(String) -> 
             );
             return cannot(text);
         }
+        let outdone = evidence.outdone(own, claimed.unit);
+        if let Some((times, family)) = outdone.filter(|(times, _)| *times > FAR_BEYOND) {
+            let text = format!(
+                "the rows fit {}, {} times closer than {label}, whose roundings would stand in \
+                 the way of both",
+                family_at(family, claimed.time_unit),
+                short(times)
+            );
+            return all(Support::Contradicts, text);
+        }
         if let Some(family) = evidence.better_at_jumps(own) {
             let text = format!(
                 "the steps at jumps of the inputs fit {}, not {label} on either side of them",
@@ -220,6 +235,17 @@ fn of_method(evidence: &Evidence, claimed: &Claimed, cannot: &dyn Fn(String) -> 
         ));
     }
     if evidence.is_skipped(claimed.methods, claimed.steps) {
+        let other = |family: &&Family| {
+            let names = |m: &&Method| claimed.methods.iter().all(|c| c.name != m.name);
+            family.is_beyond_chance() && family.methods.iter().all(names)
+        };
+        if let Some(family) = evidence.consistent.iter().find(other) {
+            let text = format!(
+                "the rows fit {}, not {name}",
+                family_at(family, claimed.time_unit)
+            );
+            return all(Support::Contradicts, text);
+        }
         return cannot(format!(
             "the rows are too few for every form of {name} to be run beside them; write more \
              rows, or every step"

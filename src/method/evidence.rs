@@ -157,6 +157,20 @@ impl Evidence {
         })
     }
 
+    /// How many times closer to the rows than a consistent pair something else comes that has
+    /// no start of its own choosing, see [`Tried::outdoes`]; with what that is.
+    pub fn outdone(&self, own: &Tried, unit: f64) -> Option<(f64, &Family)> {
+        let families = self.consistent.iter();
+        let plain = families.filter(|f| f.is_told() && !f.free && f.reading == Reading::AtNodes);
+        let pairs = plain.filter_map(|family| {
+            let name = family.methods.first()?.name;
+            let mut tried = self.tried.iter();
+            let other = tried.find(|t| t.method.name == name && t.steps == family.steps)?;
+            Some((other.outdoes(own, unit), family))
+        });
+        pairs.max_by(|a, b| a.0.total_cmp(&b.0))
+    }
+
     /// The consistent families that can be told from the exact solution: only these say
     /// what wrote the rows.
     pub fn told(&self) -> impl Iterator<Item = &Family> {

@@ -51,6 +51,7 @@ pub fn claim<'a>(methods: &'a [&'static Method], step: f64, steps: Option<u64>) 
         step: Some(step),
         steps,
         adaptive: false,
+        unit: f64::EPSILON / 2.0,
         time_unit: "s",
     }
 }

@@ -216,7 +216,7 @@ fn explaining_families<'a>(trouble: &Trouble<'a>) -> Vec<&'a Family> {
     }
     let is_claimed = |m: &&Method| trouble.methods.iter().any(|c| c.name == m.name);
     let named =
-        |family: &&Family| family.is_told() || family.methods.iter().any(|m| is_claimed(&m));
+        |family: &&Family| family.is_told() || family.methods.iter().any(|m| is_claimed(m));
     let mut families: Vec<&Family> = evidence.consistent.iter().filter(named).collect();
     families.sort_by_key(|family| !family.methods.iter().copied().any(|m| is_claimed(&m)));
     families
