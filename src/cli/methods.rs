@@ -153,7 +153,11 @@ fn written(scheme: &Scheme, coefficients: &Coefficients) -> Written {
             alpha: rows(alpha),
             shift: rows(shift),
             weights: row(weights),
-            slopes: slopes != Slopes::Left,
+            slopes: match slopes {
+                Slopes::Known => Some(None),
+                Slopes::Ahead(part) => Some(Some(part)),
+                Slopes::Left => None,
+            },
         },
         Scheme::Multistep { alpha, beta } => Written::Multistep {
             alpha: row(alpha),

@@ -177,6 +177,10 @@ fn of_jumps(computed: &Computed, time_unit: &str) -> Option<String> {
 /// Where a run fails at a step with which its method would keep the limit.
 fn not_the_step(computed: &Computed, taken: f64) -> Option<String> {
     let kept = computed.method.largest.kept.as_ref();
+    let stable = computed.method.largest.approx_stable;
+    if stable.is_some_and(|stable| taken > stable) {
+        return None;
+    }
     if kept.is_some_and(|kept| taken <= kept.step) {
         return Some("the step is not what fails here".to_owned());
     }

@@ -73,6 +73,9 @@ const NEARLY: f64 = 4.0;
 const LAST_DIGITS: f64 = 256.0 * f64::EPSILON;
 /// More steps from row to row than this come near to the exact solution in most methods.
 const MANY_STEPS: u64 = 64;
+/// Jumps that are looked at, and how near to a step they are at it, in steps.
+const MOST_JUMPS: usize = 1000;
+const ON_GRID: f64 = 1e-6;
 /// A pair that fits within a wide bound is not what wrote the rows where another one comes
 /// so many times closer.
 const FAR_BEYOND: f64 = 100.0;
@@ -91,7 +94,20 @@ pub fn ask(linear: &Linear, record: &Record, claimed: &Claimed) -> (Evidence, Op
         let near = |own: &Tried| own.fit.ratio <= NEARLY;
         let close = found.best(claimed.methods, claimed.steps).is_some_and(near);
         let open = (found.consistent.is_empty() || close) && !claimed.methods.is_empty();
-        if answer.support != Support::Contradicts || !open {
+        if answer.support != Support::Contradicts {
+            return answer;
+        }
+        if record.states(linear.size()).is_none() && misses_jumps(linear, record, claimed) {
+            return Answer {
+                support: Support::CannotTell,
+                method: answer.method.map(|_| Support::CannotTell),
+                step: answer.step.map(|_| Support::CannotTell),
+                text: "states are missing and inputs jump between the steps, where programs \
+                       take steps of their own; write every state"
+                    .to_owned(),
+            };
+        }
+        if !open {
             return answer;
         }
         let Some(single) = record.in_single() else {
@@ -114,6 +130,23 @@ pub fn ask(linear: &Linear, record: &Record, claimed: &Claimed) -> (Evidence, Op
         }
     });
     (found, answer)
+}
+
+/// True where an input jumps off the grid of the claimed steps.
+fn misses_jumps(linear: &Linear, record: &Record, claimed: &Claimed) -> bool {
+    let times = record
+        .windows
+        .first()
+        .map_or(&[][..], |window| &window.times);
+    let (Some(step), Some(&from), Some(&to)) = (claimed.step, times.first(), times.last()) else {
+        return false;
+    };
+    let next = |time: &f64| linear.next_jump(*time).filter(|jump| *jump < to);
+    let jumps = std::iter::successors(next(&from), next);
+    jumps.take(MOST_JUMPS).any(|jump| {
+        let count = (jump - from) / step;
+        (count - count.round()).abs() > ON_GRID
+    })
 }
 
 /// What the rows of one run say of its claim; `None` where nothing is claimed.
@@ -146,10 +179,18 @@ pub fn of_claim(evidence: &Evidence, claimed: &Claimed) -> Option<Answer> {
     }
     if claimed.name.is_none() {
         return Some(of_step_alone(evidence, claimed).unwrap_or_else(|| {
-            cannot(
+            let text = if claimed.adaptive {
+                "a run with an error setting chooses its own steps"
+            } else if evidence.is_exact() {
+                "the rows cannot be told from the exact solution, so nothing says what the step was"
+            } else if claimed.steps.is_none() {
+                "rows are not a whole number of steps apart; write rows at steps"
+            } else if evidence.consistent.is_empty() {
                 "no method fits the rows, so none says what the step was; name the method"
-                    .to_owned(),
-            )
+            } else {
+                "methods at several steps fit the rows; name the method"
+            };
+            cannot(text.to_owned())
         }));
     }
     Some(of_method(evidence, claimed, &cannot))
@@ -278,6 +319,7 @@ fn of_method(evidence: &Evidence, claimed: &Claimed, cannot: &dyn Fn(String) -> 
     let exactly = evidence.exact.residual / evidence.exact.ratio;
     let stopped_early = own.filter(|own| {
         let loose = own.fit.residual <= ITERATION
+            && own.fit.astray <= ITERATION.sqrt()
             && !evidence.consistent.iter().any(|family| binds(family, own))
             && !(evidence.is_exact() && own.fit.residual > 2.0 * exactly);
         let explained = evidence.is_exact() || !evidence.consistent.is_empty();
@@ -310,10 +352,9 @@ fn of_method(evidence: &Evidence, claimed: &Claimed, cannot: &dyn Fn(String) -> 
             text,
         };
     }
-    // Without a step not every step was tried: what is left free says nothing against it.
+    // What fits by chance, or with a start of its own choosing, is no name for the rows.
     let mut others = evidence.consistent.iter();
-    let other = others.find(|family| claimed.step.is_some() || family.is_beyond_chance());
-    if let Some(family) = other {
+    if let Some(family) = others.find(|family| family.is_beyond_chance()) {
         let text = format!(
             "the rows fit {}, not {label}{off}",
             family_at(family, claimed.time_unit)
@@ -343,13 +384,25 @@ fn of_method(evidence: &Evidence, claimed: &Claimed, cannot: &dyn Fn(String) -> 
     if implicit && own.fit.residual <= ITERATION {
         return cannot(early(own, &label));
     }
+    let corrects = |m: &&Method| m.schemes.iter().any(|scheme| scheme.is_predicted());
+    if claimed.methods.iter().any(corrects) {
+        return cannot(format!(
+            "the rows do not follow {name} that predicts, evaluates, corrects and evaluates{off}; \
+             programs that correct more often, or do not evaluate again, are not in the catalogue"
+        ));
+    }
     if claimed.step.is_none() {
         return cannot(format!(
             "no method of the catalogue fits the rows (interpolated output, an adaptive code, or a \
              fault); state the step to have {name} tested at it"
         ));
     }
-    let text = format!("the rows do not follow {label}{off}, nor any method of the catalogue");
+    let nor = if evidence.consistent.is_empty() {
+        ", nor any method of the catalogue"
+    } else {
+        ""
+    };
+    let text = format!("the rows do not follow {label}{off}{nor}");
     all(Support::Contradicts, text)
 }
 

@@ -83,7 +83,13 @@ pub const METHODS: &[Method] = &[
     ),
     method(
         "backward Euler",
-        &["implicit Euler", "BDF 1", "Radau IIA 1"],
+        &[
+            "implicit Euler",
+            "linearly implicit Euler",
+            "semi-implicit Euler",
+            "BDF 1",
+            "Radau IIA 1",
+        ],
         1,
         EULERS,
         &[stages("1", "1")],
@@ -274,7 +280,13 @@ pub const METHODS: &[Method] = &[
     ),
     method(
         "Runge-Kutta-Fehlberg 4",
-        &["Fehlberg 4", "RKF4", "RKF45", "Runge-Kutta-Fehlberg"],
+        &[
+            "Fehlberg 4",
+            "RKF4",
+            "RKF45",
+            "RK45",
+            "Runge-Kutta-Fehlberg",
+        ],
         4,
         "[hairer-norsett-wanner-1993] II.5",
         &[stages(FEHLBERG, "25/216 0 1408/2565 2197/4104 -1/5 0")],
@@ -298,7 +310,13 @@ pub const METHODS: &[Method] = &[
     ),
     method(
         "Runge-Kutta-Fehlberg 5",
-        &["Fehlberg 5", "RKF5", "RKF45", "Runge-Kutta-Fehlberg"],
+        &[
+            "Fehlberg 5",
+            "RKF5",
+            "RKF45",
+            "RK45",
+            "Runge-Kutta-Fehlberg",
+        ],
         5,
         "[hairer-norsett-wanner-1993] II.5",
         &[stages(
@@ -308,7 +326,7 @@ pub const METHODS: &[Method] = &[
     ),
     method(
         "Cash-Karp 5",
-        &["Cash-Karp", "RKCK"],
+        &["Cash-Karp", "RKCK", "RK45"],
         5,
         "[cash-karp-1990]",
         &[stages(

@@ -160,8 +160,13 @@ impl Evidence {
     /// How many times closer to the rows than a consistent pair something else comes that has
     /// no start of its own choosing, see [`Tried::outdoes`]; with what that is.
     pub fn outdone(&self, own: &Tried, unit: f64) -> Option<(f64, &Family)> {
+        // Some other form of the method may be the one.
+        let same = |f: &&Family| {
+            f.steps == own.steps && f.methods.iter().any(|m| m.name == own.method.name)
+        };
         let families = self.consistent.iter();
         let plain = families.filter(|f| f.is_told() && !f.free && f.reading == Reading::AtNodes);
+        let plain = plain.filter(|f| !same(f));
         let pairs = plain.filter_map(|family| {
             let name = family.methods.first()?.name;
             let mut tried = self.tried.iter();
@@ -180,8 +185,11 @@ impl Evidence {
     /// What agrees with the steps at jumps of an input where a pair that agrees between them
     /// does not.
     pub fn better_at_jumps(&self, own: &Tried) -> Option<&Family> {
+        // Some other form of the method may be the one.
+        let same = |t: &Tried| t.method.name == own.method.name && t.steps == own.steps;
+        let any = self.tried.iter().any(|t| same(t) && t.at_jumps.holds());
         let mut families = self.consistent.iter();
-        families.find(|family| own.at_jumps.ratio > 1.0 && family.at_jumps.holds())
+        families.find(|family| !any && own.at_jumps.ratio > 1.0 && family.at_jumps.holds())
     }
 
     /// The best fit of one method at any step.

@@ -211,6 +211,11 @@ impl Scheme {
         }
     }
 
+    /// True where one formula predicts and another corrects.
+    pub fn is_predicted(&self) -> bool {
+        matches!(self, Scheme::Predicted { .. })
+    }
+
     /// True where a step has to be solved for.
     pub fn is_implicit(&self) -> bool {
         match self.coefficients() {

@@ -21,11 +21,14 @@ const SWEPT: [u64; 19] = [
 const MOST_SWEPT: usize = 24;
 /// Most steps from row to row.
 pub const MOST_STEPS: u64 = 200_000;
+/// A semi-implicit step of so many states is tried in every order of them.
+const MOST_ORDERED: usize = 4;
 /// Pairs of rows that are compared where the spacing varies.
 const MOST_PAIRS: usize = 120;
 
 /// The orders in which a semi-implicit step may move the states: positions after the rates
-/// that they follow or before them where there are such, else one by one.
+/// that they follow or before them where there are such, else one by one, in any order
+/// where there are few.
 pub fn rank_orders(linear: &Linear) -> Vec<Ranks> {
     let size = linear.size();
     let is_position = |i: usize| {
@@ -43,10 +46,30 @@ pub fn rank_orders(linear: &Linear) -> Vec<Ranks> {
         orders.push(positions.iter().map(|p| usize::from(*p)).collect());
         orders.push(positions.iter().map(|p| usize::from(!*p)).collect());
     }
-    orders.push((0..size).collect());
-    orders.push((0..size).rev().collect());
+    if size <= MOST_ORDERED {
+        orders.extend(permutations(size));
+    } else {
+        orders.push((0..size).collect());
+        orders.push((0..size).rev().collect());
+    }
     orders.dedup();
     orders
+}
+
+/// Every order of so many states.
+fn permutations(size: usize) -> Vec<Ranks> {
+    let Some(last) = size.checked_sub(1) else {
+        return vec![Ranks::new()];
+    };
+    let shorter = permutations(last);
+    let with_last = |order: Ranks| {
+        (0..size).rev().map(move |place| {
+            let mut order = order.clone();
+            order.insert(place, last);
+            order
+        })
+    };
+    shorter.into_iter().flat_map(with_last).collect()
 }
 
 pub(super) struct Search<'a> {
@@ -185,9 +208,13 @@ impl Search<'_> {
                 print: Vec::new(),
             };
             if fit.holds() {
+                tried.print = self.print(&trial);
+            }
+            if fit.holds() && self.exact {
+                tried.apart = fit.ratio;
+            } else if fit.holds() {
                 tried.apart = self.fit(&trial, &self.solution, variant.reading).ratio;
                 tried.at_jumps = trial.across_jumps(self.record);
-                tried.print = self.print(&trial);
             }
             self.tried.push(tried);
         }

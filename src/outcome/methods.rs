@@ -85,8 +85,9 @@ pub enum Written {
         shift: Vec<Vec<&'static str>>,
         /// Weights of the stages.
         weights: Vec<&'static str>,
-        /// False where the rate of the inputs is left out.
-        slopes: bool,
+        /// The rate of the inputs: known, or a difference over a part of the step; absent
+        /// where it is left out.
+        slopes: Option<Option<&'static str>>,
     },
     /// A linear combination of several steps, oldest first.
     Multistep {

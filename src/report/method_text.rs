@@ -199,13 +199,17 @@ fn coefficients(written: &Written, screen: Screen, lines: &mut Vec<String>) {
                     lines.push(format!("  gamma({}, {}) = {entry}", i + 1, j + 1));
                 }
             }
-            let rate = if *slopes { " + gamma_i h^2 df/dt" } else { "" };
+            let rate = slopes.map_or("", |_| " + gamma_i h^2 df/dt");
             let sentence = format!(
                 "  k_i = h f(t + node_i h, x + sum alpha_ij k_j) + h J sum gamma_ij k_j{rate}"
             );
             lines.push(sentence);
-            if !slopes {
-                lines.push("  The rate of the inputs is left out.".to_owned());
+            match slopes {
+                None => lines.push("  The rate of the inputs is left out.".to_owned()),
+                Some(Some(part)) => lines.push(format!(
+                    "  The rate of the inputs is a difference over {part} of the step."
+                )),
+                Some(None) => {}
             }
         }
         Written::Multistep { alpha, beta } => {

@@ -214,11 +214,10 @@ fn explaining_families<'a>(trouble: &Trouble<'a>) -> Vec<&'a Family> {
     if evidence.is_exact() {
         return Vec::new();
     }
-    let is_claimed = |m: &&Method| trouble.methods.iter().any(|c| c.name == m.name);
-    let named =
-        |family: &&Family| family.is_told() || family.methods.iter().any(|m| is_claimed(m));
+    let is_claimed = |m: &&'static Method| trouble.methods.iter().any(|c| c.name == m.name);
+    let named = |family: &&Family| family.is_told() || family.methods.iter().any(&is_claimed);
     let mut families: Vec<&Family> = evidence.consistent.iter().filter(named).collect();
-    families.sort_by_key(|family| !family.methods.iter().copied().any(|m| is_claimed(&m)));
+    families.sort_by_key(|family| !family.methods.iter().any(&is_claimed));
     families
 }
 
@@ -280,6 +279,10 @@ fn of_method(
     let has_memory = method.schemes.iter().any(|scheme| scheme.steps_back() > 1);
     let Some(way) = way else {
         // The start of a method with a memory is its own business.
+        if has_memory {
+            let own = method::candidates(linear, rows, names, method, step, &rows.written);
+            candidates.extend(own.into_iter().filter(|own| own.kind == Kind::UnstableStep));
+        }
         let told = has_memory && !candidates.is_empty();
         return told.then(|| done(candidates)).flatten();
     };
