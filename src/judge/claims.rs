@@ -4,7 +4,7 @@
 //! would have written by more than digits and rounding allow, and nothing honest explains
 //! it (a solution by iteration, an adaptive code, a step that nobody stated).
 
-use crate::method::{Evidence, Family, Linear, Method, Reading, Record, Tried, evidence};
+use crate::method::{Evidence, Family, Method, Reading, Tried};
 use crate::number::{plain, short};
 
 /// What the rows say of a claim.
@@ -65,17 +65,13 @@ const FAR_BELOW: f64 = 0.05;
 /// of the state (common practice, no source).
 const ITERATION: f64 = 1e-5;
 
-/// Where another method fits, single precision is thought of up to this many times what
-/// digits and double precision allow: few digits are coarser than its roundings by then.
-const NEARLY: f64 = 4.0;
 /// What an iteration may leave of the peak however tight its tolerance: it stops where its
 /// own roundings end.
 const LAST_DIGITS: f64 = 256.0 * f64::EPSILON;
 /// More steps from row to row than this come near to the exact solution in most methods.
 const MANY_STEPS: u64 = 64;
-/// Jumps that are looked at, and how near to a step they are at it, in steps.
-const MOST_JUMPS: usize = 1000;
-const ON_GRID: f64 = 1e-6;
+/// A fit speaks for a method where the exact solution is so many times what is allowed away.
+pub(super) const APART: f64 = 3.0;
 /// A pair that fits within a wide bound is not what wrote the rows where another one comes
 /// so many times closer.
 const FAR_BEYOND: f64 = 100.0;
@@ -84,70 +80,6 @@ const FAR_BEYOND: f64 = 100.0;
 const BY_CHANCE: f64 = 0.05;
 /// The same for a method whose start is free to choose.
 const BY_CHANCE_FREE: f64 = 0.01;
-
-/// Lays the rows of one run beside every method and says what they say of its claim. A
-/// claim that single precision would explain, with digits that do not show it, is left open.
-pub fn ask(linear: &Linear, record: &Record, claimed: &Claimed) -> (Evidence, Option<Answer>) {
-    let steps: Vec<u64> = claimed.steps.into_iter().collect();
-    let found = evidence(linear, record, claimed.methods, &steps);
-    let answer = of_claim(&found, claimed).map(|answer| {
-        let near = |own: &Tried| own.fit.ratio <= NEARLY;
-        let close = found.best(claimed.methods, claimed.steps).is_some_and(near);
-        let open = (found.consistent.is_empty() || close) && !claimed.methods.is_empty();
-        if answer.support != Support::Contradicts {
-            return answer;
-        }
-        if record.states(linear.size()).is_none() && misses_jumps(linear, record, claimed) {
-            return Answer {
-                support: Support::CannotTell,
-                method: answer.method.map(|_| Support::CannotTell),
-                step: answer.step.map(|_| Support::CannotTell),
-                text: "states are missing and inputs jump between the steps, where programs \
-                       take steps of their own; write every state"
-                    .to_owned(),
-            };
-        }
-        if !open {
-            return answer;
-        }
-        let Some(single) = record.in_single() else {
-            return answer;
-        };
-        let again = evidence(linear, &single, claimed.methods, &steps);
-        let own = again.best(claimed.methods, claimed.steps);
-        if !own.is_some_and(|own| own.fit.holds()) {
-            return answer;
-        }
-        Answer {
-            support: Support::CannotTell,
-            method: answer.method.map(|_| Support::CannotTell),
-            step: answer.step.map(|_| Support::CannotTell),
-            text: format!(
-                "the rows are off {} by more than digits and the rounding of double precision \
-                 allow; single precision arithmetic would explain it; print more digits",
-                claimed.name.unwrap_or_default()
-            ),
-        }
-    });
-    (found, answer)
-}
-
-/// True where an input jumps off the grid of the claimed steps.
-fn misses_jumps(linear: &Linear, record: &Record, claimed: &Claimed) -> bool {
-    let times = record
-        .windows
-        .first()
-        .map_or(&[][..], |window| &window.times);
-    let (Some(step), Some(&from), Some(&to)) = (claimed.step, times.first(), times.last()) else {
-        return false;
-    };
-    let next = |time: &f64| linear.next_jump(*time).filter(|jump| *jump < to);
-    let jumps = std::iter::successors(next(&from), next);
-    jumps.take(MOST_JUMPS).any(|jump| {
-        let count = (jump - from) / step;
-        (count - count.round()).abs() > ON_GRID
-    })
-}
 
 /// What the rows of one run say of its claim; `None` where nothing is claimed.
 pub fn of_claim(evidence: &Evidence, claimed: &Claimed) -> Option<Answer> {
@@ -241,7 +173,8 @@ fn of_method(evidence: &Evidence, claimed: &Claimed, cannot: &dyn Fn(String) -> 
             return cannot(text);
         }
         let outdone = evidence.outdone(own, claimed.unit);
-        if let Some((times, family)) = outdone.filter(|(times, _)| *times > FAR_BEYOND) {
+        let far = outdone.filter(|(times, _)| *times > FAR_BEYOND && !own.free);
+        if let Some((times, family)) = far {
             let text = format!(
                 "the rows fit {}, {} times closer than {label}, whose roundings would stand in \
                  the way of both",
@@ -250,12 +183,29 @@ fn of_method(evidence: &Evidence, claimed: &Claimed, cannot: &dyn Fn(String) -> 
             );
             return all(Support::Contradicts, text);
         }
+        if evidence.is_left_out(own) && own.at_jumps.ratio <= 1.0 {
+            return cannot(format!(
+                "the rows fit {label} within what its steps can round, yet something else comes \
+                 closer; print more digits, or write every state and every step"
+            ));
+        }
+        if own.at_jumps.ratio > 1.0 && own.at_jumps.residual <= ITERATION && is_implicit(own.method)
+        {
+            return cannot(early(own, &label));
+        }
         if let Some(family) = evidence.better_at_jumps(own) {
             let text = format!(
                 "the steps at jumps of the inputs fit {}, not {label} on either side of them",
                 family_at(family, claimed.time_unit)
             );
             return all(Support::Contradicts, text);
+        }
+        if own.at_jumps.ratio > 1.0 && !evidence.any_at_jumps(own) {
+            return cannot(format!(
+                "the rows fit {label} between the jumps of the inputs and not at them ({} of the \
+                 peak off, on whichever side); a case without jumps would tell",
+                short(own.at_jumps.residual)
+            ));
         }
         let mut text = format!(
             "the rows fit {label}: the largest residual is {} of what digits and rounding allow",
@@ -278,7 +228,8 @@ fn of_method(evidence: &Evidence, claimed: &Claimed, cannot: &dyn Fn(String) -> 
     if evidence.is_skipped(claimed.methods, claimed.steps) {
         let other = |family: &&Family| {
             let names = |m: &&Method| claimed.methods.iter().all(|c| c.name != m.name);
-            family.is_beyond_chance() && family.methods.iter().all(names)
+            let bounded = evidence.exact.residual <= 1.0;
+            bounded && family.is_beyond_chance() && family.methods.iter().all(names)
         };
         if let Some(family) = evidence.consistent.iter().find(other) {
             let text = format!(
@@ -312,10 +263,7 @@ fn of_method(evidence: &Evidence, claimed: &Claimed, cannot: &dyn Fn(String) -> 
         ));
     }
     // A solver that stops early leaves a residual that something free enough may fit.
-    let implicit = own.is_some_and(|own| {
-        let mut schemes = own.method.schemes.iter();
-        schemes.any(|scheme| scheme.is_implicit())
-    });
+    let implicit = own.is_some_and(|own| is_implicit(own.method));
     let exactly = evidence.exact.residual / evidence.exact.ratio;
     let stopped_early = own.filter(|own| {
         let loose = own.fit.residual <= ITERATION
@@ -336,7 +284,7 @@ fn of_method(evidence: &Evidence, claimed: &Claimed, cannot: &dyn Fn(String) -> 
     }
     let at_other_step = evidence
         .best(claimed.methods, None)
-        .filter(|own| own.fit.holds());
+        .filter(|own| own.fit.holds() && !own.free && own.apart > APART);
     if let (Some(other), Some(stated)) = (at_other_step, claimed.step) {
         let step = other.step.map_or(String::new(), |step| {
             format!(" {} {}", short(step), claimed.time_unit)
@@ -384,6 +332,13 @@ fn of_method(evidence: &Evidence, claimed: &Claimed, cannot: &dyn Fn(String) -> 
     if implicit && own.fit.residual <= ITERATION {
         return cannot(early(own, &label));
     }
+    if own.fit.residual <= ITERATION && evidence.told().next().is_none() {
+        return cannot(format!(
+            "the rows are {} of the peak away from {label}, which coarser arithmetic or constants \
+             would explain; run it in double precision with the constants of the case",
+            short(own.fit.residual)
+        ));
+    }
     let corrects = |m: &&Method| m.schemes.iter().any(|scheme| scheme.is_predicted());
     if claimed.methods.iter().any(corrects) {
         return cannot(format!(
@@ -404,6 +359,10 @@ fn of_method(evidence: &Evidence, claimed: &Claimed, cannot: &dyn Fn(String) -> 
     };
     let text = format!("the rows do not follow {label}{off}{nor}");
     all(Support::Contradicts, text)
+}
+
+fn is_implicit(method: &Method) -> bool {
+    method.schemes.iter().any(|scheme| scheme.is_implicit())
 }
 
 fn early(own: &Tried, label: &str) -> String {
@@ -448,7 +407,7 @@ fn of_step_alone(evidence: &Evidence, claimed: &Claimed) -> Option<Answer> {
         text,
     };
     let family = evidence.consistent.first()?;
-    if evidence.consistent.iter().all(at) {
+    if evidence.consistent.iter().all(at) && family.is_told() {
         let text = format!("the rows fit {}", family_at(family, claimed.time_unit));
         return Some(answer(Support::Agrees, text));
     }
@@ -497,6 +456,7 @@ pub fn reading(reading: Reading) -> &'static str {
         Reading::Held => "held from the start of each step",
         Reading::FromEnd => "held from the end of each step",
         Reading::Mean => "averaged over each step",
+        Reading::Linear => "tabulated at the steps and linear in between",
         Reading::EitherSide => "read on either side of their jumps",
     }
 }

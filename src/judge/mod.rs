@@ -3,9 +3,11 @@
 //! Acceptance and rejection are guarded: a verdict is given only where what the file
 //! can resolve does not change it (`[jcgm-106]` in [`crate::references`]).
 
+mod ask;
 mod claims;
 
-pub use claims::{Answer, Claimed, Support, ask, family_at, family_name, of_claim, reading};
+pub use ask::ask;
+pub use claims::{Answer, Claimed, Support, family_at, family_name, of_claim, reading};
 
 use crate::compare::{Deviation, Margin, Pair, Sight};
 

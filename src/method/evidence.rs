@@ -83,6 +83,8 @@ pub struct Evidence {
 
 /// More steps from row to row than this come near to the exact solution in most methods.
 const MANY_STEPS: u64 = 64;
+/// Fewer comparisons may be met by chance.
+const MANY_COMPARED: usize = 16;
 /// So many times closer to the rows than the exact solution comes nothing by chance.
 const SHARP: f64 = 1e6;
 /// Pieces that are compared at most, the first one among them.
@@ -98,6 +100,10 @@ const OUTDONE: f64 = 12.0;
 /// than digits and rounding allow.
 const TOLD: f64 = 3.0;
 
+/// Without a start of its own choosing, a pair that comes so many times closer to the rows
+/// than the exact solution explains them, however wide its bound is.
+const CLOSER: f64 = 100.0;
+
 impl Tried {
     /// How many times closer than another consistent pair this one comes to the rows, in
     /// terms of what the steps of that pair round in any case.
@@ -111,7 +117,8 @@ impl Tried {
         // steps are scattered.
         let steps = if self.free { steps } else { steps.sqrt() };
         let rounded = 4.0 * unit * steps;
-        if self.apart > 1.0 {
+        let closer = !self.free && self.apart > CLOSER * self.fit.ratio;
+        if self.apart > 1.0 || closer {
             other.fit.residual / self.fit.residual.max(rounded)
         } else {
             0.0
@@ -132,6 +139,7 @@ impl Family {
         self.reading == Reading::AtNodes
             && self.steps <= MANY_STEPS
             && !self.free
+            && self.fit.compared >= MANY_COMPARED
             && self.apart > 1.0
             && self.apart > SHARP * self.fit.ratio
     }
@@ -165,7 +173,7 @@ impl Evidence {
             f.steps == own.steps && f.methods.iter().any(|m| m.name == own.method.name)
         };
         let families = self.consistent.iter();
-        let plain = families.filter(|f| f.is_told() && !f.free && f.reading == Reading::AtNodes);
+        let plain = families.filter(|f| !f.free && f.reading == Reading::AtNodes);
         let plain = plain.filter(|f| !same(f));
         let pairs = plain.filter_map(|family| {
             let name = family.methods.first()?.name;
@@ -182,12 +190,25 @@ impl Evidence {
         self.consistent.iter().filter(|family| family.is_told())
     }
 
+    /// True where a pair that agrees was left out of the consistent ones: something else
+    /// explains the rows better.
+    pub fn is_left_out(&self, own: &Tried) -> bool {
+        let has = |m: &&Method| m.name == own.method.name;
+        let own = |f: &Family| f.steps == own.steps && f.methods.iter().any(has);
+        !self.consistent.iter().any(own)
+    }
+
+    /// True where any form of the method agrees with the steps at jumps.
+    pub fn any_at_jumps(&self, own: &Tried) -> bool {
+        let same = |t: &Tried| t.method.name == own.method.name && t.steps == own.steps;
+        self.tried.iter().any(|t| same(t) && t.at_jumps.holds())
+    }
+
     /// What agrees with the steps at jumps of an input where a pair that agrees between them
     /// does not.
     pub fn better_at_jumps(&self, own: &Tried) -> Option<&Family> {
         // Some other form of the method may be the one.
-        let same = |t: &Tried| t.method.name == own.method.name && t.steps == own.steps;
-        let any = self.tried.iter().any(|t| same(t) && t.at_jumps.holds());
+        let any = self.any_at_jumps(own);
         let mut families = self.consistent.iter();
         families.find(|family| !any && own.at_jumps.ratio > 1.0 && family.at_jumps.holds())
     }
@@ -263,7 +284,12 @@ pub fn evidence(
         search.tried.iter().any(holds)
     };
     if !linear.is_steady() && !explained(&search) && !exact.holds() {
-        for reading in [Reading::Held, Reading::FromEnd, Reading::Mean] {
+        for reading in [
+            Reading::Held,
+            Reading::FromEnd,
+            Reading::Mean,
+            Reading::Linear,
+        ] {
             for method in METHODS {
                 search.method(method, reading);
             }

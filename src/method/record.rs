@@ -107,6 +107,22 @@ impl Record {
         })
     }
 
+    /// The same without its first rows.
+    pub fn from_row(&self, row: usize) -> Record {
+        let mut rest = self.clone();
+        if let Some(window) = rest.windows.first_mut() {
+            let row = row.min(window.rows());
+            window.first += row as u64;
+            window.times.drain(..row);
+            window.time_doubts.drain(..row);
+            let values = row * self.channels.len();
+            for list in [&mut window.values, &mut window.errors, &mut window.doubts] {
+                list.drain(..values);
+            }
+        }
+        rest
+    }
+
     /// The same rows with the exact values in place of those written.
     pub(super) fn solution(&self) -> Record {
         let mut solution = self.clone();

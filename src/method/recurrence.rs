@@ -19,6 +19,8 @@ pub enum Reading {
     FromEnd,
     /// The mean of the values at start and end.
     Mean,
+    /// On the line from the value at the start to that at the end.
+    Linear,
     /// At the method's own nodes, where a node on a jump sees either side of it.
     EitherSide,
 }
@@ -107,12 +109,15 @@ impl Recurrence {
     pub fn with_reading(mut self, reading: Reading) -> Recurrence {
         let size = self.size();
         let within = |node: &Node| node.at >= 0.0;
+        if reading == Reading::Linear {
+            return self.on_lines();
+        }
         let mut sum: Matrix<f64> = Matrix::zero(size);
         for node in self.nodes.iter().filter(|node| within(node) && !node.slope) {
             sum = sum.zip(&node.weight, |a, b| a + b);
         }
         let moved: Vec<(f64, f64)> = match reading {
-            Reading::AtNodes | Reading::EitherSide => return self,
+            Reading::AtNodes | Reading::EitherSide | Reading::Linear => return self,
             Reading::Held => vec![(0.0, 1.0)],
             Reading::FromEnd => vec![(1.0, 1.0)],
             Reading::Mean => vec![(0.0, 0.5), (1.0, 0.5)],
@@ -123,6 +128,27 @@ impl Recurrence {
             slope: false,
             weight: sum.map(|w| share * w),
         }));
+        self
+    }
+
+    /// The same step where the inputs are known at its start and end only.
+    fn on_lines(mut self) -> Recurrence {
+        let step = self.step;
+        let known = |node: &Node| node.at < 0.0 || !node.slope && [0.0, 1.0].contains(&node.at);
+        let (mut nodes, others): (Vec<Node>, Vec<Node>) = self.nodes.drain(..).partition(known);
+        for node in others {
+            let (start, end) = if node.slope {
+                (-1.0 / step, 1.0 / step)
+            } else {
+                (1.0 - node.at, node.at)
+            };
+            nodes.extend([(0.0, start), (1.0, end)].map(|(at, share)| Node {
+                at,
+                slope: false,
+                weight: node.weight.map(|w| share * w),
+            }));
+        }
+        self.nodes = merged(nodes);
         self
     }
 

@@ -12,7 +12,7 @@ use super::starts::with_hidden_start;
 use super::trial::{Fit, GLANCE, Trial, larger};
 
 /// Steps from row to row that are tried whatever the errors say.
-const ALWAYS: [u64; 3] = [1, 2, 4];
+const ALWAYS: [u64; 4] = [1, 2, 4, 10];
 /// Those that a method with a memory is tried at where nothing else explains the rows.
 const SWEPT: [u64; 19] = [
     3, 5, 6, 7, 8, 9, 10, 12, 15, 16, 20, 24, 25, 30, 32, 40, 50, 64, 100,

@@ -1,0 +1,114 @@
+//! The rows of one run beside every method, with the second looks that an honest claim
+//! deserves before it is contradicted: single precision that the digits do not show, another
+//! method for the first step, steps of its own at jumps where states are missing.
+
+use super::claims::{APART, Answer, Claimed, Support, of_claim};
+use crate::method::{Evidence, Linear, Method, Reading, Record, Tried, evidence};
+
+/// Where another method fits, single precision is thought of up to this many times what
+/// digits and double precision allow: few digits are coarser than its roundings by then.
+const NEARLY: f64 = 4.0;
+/// Jumps that are looked at, and how near to a step they are at it, in steps.
+const MOST_JUMPS: usize = 1000;
+const ON_GRID: f64 = 1e-6;
+/// Rows that another method may have made at the start: up to four short steps.
+const OTHER_START: usize = 4;
+
+/// Lays the rows of one run beside every method and says what they say of its claim. A
+/// claim that single precision would explain, with digits that do not show it, is left open.
+pub fn ask(linear: &Linear, record: &Record, claimed: &Claimed) -> (Evidence, Option<Answer>) {
+    let steps: Vec<u64> = claimed.steps.into_iter().collect();
+    let found = evidence(linear, record, claimed.methods, &steps);
+    let answer = of_claim(&found, claimed).map(|answer| {
+        let near = |own: &Tried| own.fit.ratio <= NEARLY;
+        let close = found.best(claimed.methods, claimed.steps).is_some_and(near);
+        let known = found
+            .consistent
+            .iter()
+            .any(|family| family.is_beyond_chance());
+        let open = (!known || close) && !claimed.methods.is_empty();
+        if answer.support != Support::Contradicts {
+            return answer;
+        }
+        if starts_otherwise(linear, record, claimed) {
+            return Answer {
+                support: Support::CannotTell,
+                method: answer.method.map(|_| Support::CannotTell),
+                step: answer.step.map(|_| Support::CannotTell),
+                text: format!(
+                    "the rows fit {} but for the first of them: another method has made the first \
+                     step, to damp what is fast or to start",
+                    claimed.name.unwrap_or_default()
+                ),
+            };
+        }
+        if record.states(linear.size()).is_none() && misses_jumps(linear, record, claimed) {
+            return Answer {
+                support: Support::CannotTell,
+                method: answer.method.map(|_| Support::CannotTell),
+                step: answer.step.map(|_| Support::CannotTell),
+                text: "states are missing and inputs jump between the steps, where programs \
+                       take steps of their own; write every state"
+                    .to_owned(),
+            };
+        }
+        if !open {
+            return answer;
+        }
+        let Some(single) = record.in_single() else {
+            return answer;
+        };
+        let again = evidence(linear, &single, claimed.methods, &steps);
+        let own = again.best(claimed.methods, claimed.steps);
+        if !own.is_some_and(|own| own.fit.holds()) {
+            return answer;
+        }
+        Answer {
+            support: Support::CannotTell,
+            method: answer.method.map(|_| Support::CannotTell),
+            step: answer.step.map(|_| Support::CannotTell),
+            text: format!(
+                "the rows are off {} by more than digits and the rounding of double precision \
+                 allow; single precision arithmetic would explain it; print more digits",
+                claimed.name.unwrap_or_default()
+            ),
+        }
+    });
+    (found, answer)
+}
+
+/// True where a method without a memory fits all rows but the first few, and can be told
+/// from the exact solution on them.
+fn starts_otherwise(linear: &Linear, record: &Record, claimed: &Claimed) -> bool {
+    let remembers = |m: &&Method| m.schemes.iter().any(|scheme| scheme.steps_back() > 1);
+    let all = record.states(linear.size()).is_some() && claimed.step.is_some();
+    if !all || claimed.methods.is_empty() || claimed.methods.iter().any(remembers) {
+        return false;
+    }
+    let steps: Vec<u64> = claimed.steps.into_iter().collect();
+    let rest = evidence(
+        linear,
+        &record.from_row(OTHER_START),
+        claimed.methods,
+        &steps,
+    );
+    let own = rest.best(claimed.methods, claimed.steps);
+    own.is_some_and(|own| own.fit.holds() && own.reading == Reading::AtNodes && own.apart > APART)
+}
+
+/// True where an input jumps off the grid of the claimed steps.
+fn misses_jumps(linear: &Linear, record: &Record, claimed: &Claimed) -> bool {
+    let times = record
+        .windows
+        .first()
+        .map_or(&[][..], |window| &window.times);
+    let (Some(step), Some(&from), Some(&to)) = (claimed.step, times.first(), times.last()) else {
+        return false;
+    };
+    let next = |time: &f64| linear.next_jump(*time).filter(|jump| *jump < to);
+    let jumps = std::iter::successors(next(&from), next);
+    jumps.take(MOST_JUMPS).any(|jump| {
+        let count = (jump - from) / step;
+        (count - count.round()).abs() > ON_GRID
+    })
+}
