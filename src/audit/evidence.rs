@@ -97,12 +97,13 @@ pub(super) fn conclude(
     audited: &mut Audited,
 ) {
     let pairs = || runs.iter().zip(found);
+    let methods = claimed_methods(submission);
     let run_evidence = pairs().map(|(run, found)| RunEvidence {
         file: run.outcome.file.clone(),
         method: submission.claims.method.clone(),
         step: run.outcome.setting.step(),
         support: found.answer.as_ref().map(|answer| answer.support),
-        consistent: found.evidence.consistent.iter().map(consistent).collect(),
+        consistent: shown(found, &methods).map(consistent).collect(),
         exact: found.evidence.is_exact(),
         note: found.answer.as_ref().map(|answer| answer.text.clone()),
         growth: Vec::new(),
@@ -161,6 +162,17 @@ pub(super) fn conclude(
         runs: run_evidence,
         growth: None,
     });
+}
+
+/// The consistent families; of a run that cannot be told from the exact solution, which any
+/// method comes to in the end, those of the claim.
+fn shown<'a>(
+    found: &'a RunFound,
+    claimed: &'a [&'static Method],
+) -> impl Iterator<Item = &'a crate::method::Family> {
+    let families = found.evidence.consistent.iter();
+    let of_claim = |m: &&Method| claimed.iter().any(|c| c.name == m.name);
+    families.filter(move |family| !found.evidence.is_exact() || family.methods.iter().any(of_claim))
 }
 
 fn consistent(family: &crate::method::Family) -> Consistent {

@@ -302,7 +302,11 @@ fn of_method(evidence: &Evidence, claimed: &Claimed, cannot: &dyn Fn(String) -> 
     }
     // What fits by chance, or with a start of its own choosing, is no name for the rows.
     let mut others = evidence.consistent.iter();
-    if let Some(family) = others.find(|family| family.is_beyond_chance()) {
+    let by_name = |family: &&Family| {
+        let bound = |own: &Tried| family.is_told() && !family.free && binds(family, own);
+        family.is_beyond_chance() || (claimed.step.is_some() && own.is_some_and(bound))
+    };
+    if let Some(family) = others.find(by_name) {
         let text = format!(
             "the rows fit {}, not {label}{off}",
             family_at(family, claimed.time_unit)
