@@ -2,8 +2,8 @@
 //! deserves before it is contradicted: single precision that the digits do not show, another
 //! method for the first step, steps of its own at jumps where states are missing.
 
-use super::claims::{APART, Answer, Claimed, Support, of_claim};
-use crate::method::{Evidence, Linear, Method, Reading, Record, Tried, evidence};
+use super::claims::{Answer, Claimed, Support, of_claim};
+use crate::method::{Evidence, Family, Linear, Method, Reading, Record, Tried, evidence};
 
 /// Where another method fits, single precision is thought of up to this many times what
 /// digits and double precision allow: few digits are coarser than its roundings by then.
@@ -20,39 +20,25 @@ pub fn ask(linear: &Linear, record: &Record, claimed: &Claimed) -> (Evidence, Op
     let steps: Vec<u64> = claimed.steps.into_iter().collect();
     let found = evidence(linear, record, claimed.methods, &steps);
     let answer = of_claim(&found, claimed).map(|answer| {
-        let near = |own: &Tried| own.fit.ratio <= NEARLY;
-        let close = found.best(claimed.methods, claimed.steps).is_some_and(near);
-        let known = found
-            .consistent
-            .iter()
-            .any(|family| family.is_beyond_chance());
-        let open = (!known || close) && !claimed.methods.is_empty();
         if answer.support != Support::Contradicts {
             return answer;
         }
         if starts_otherwise(linear, record, claimed) {
-            return Answer {
-                support: Support::CannotTell,
-                method: answer.method.map(|_| Support::CannotTell),
-                step: answer.step.map(|_| Support::CannotTell),
-                text: format!(
-                    "the rows fit {} but for the first of them: another method has made the first \
-                     step, to damp what is fast or to start",
-                    claimed.name.unwrap_or_default()
-                ),
-            };
+            return answer.left_open(format!(
+                "the rows fit {} but for the first of them: another method has made the first \
+                 step, to damp what is fast or to start",
+                claimed.name.unwrap_or_default()
+            ));
         }
         if record.states(linear.size()).is_none() && misses_jumps(linear, record, claimed) {
-            return Answer {
-                support: Support::CannotTell,
-                method: answer.method.map(|_| Support::CannotTell),
-                step: answer.step.map(|_| Support::CannotTell),
-                text: "states are missing and inputs jump between the steps, where programs \
-                       take steps of their own; write every state"
-                    .to_owned(),
-            };
+            let text = "states are missing and inputs jump between the steps, where programs take \
+                        steps of their own; write every state";
+            return answer.left_open(text.to_owned());
         }
-        if !open {
+        let near = |own: &Tried| own.fit.ratio <= NEARLY;
+        let close = found.best(claimed.methods, claimed.steps).is_some_and(near);
+        let known = found.consistent.iter().any(Family::is_beyond_chance);
+        if claimed.methods.is_empty() || (known && !close) {
             return answer;
         }
         let Some(single) = record.in_single() else {
@@ -63,16 +49,11 @@ pub fn ask(linear: &Linear, record: &Record, claimed: &Claimed) -> (Evidence, Op
         if !own.is_some_and(|own| own.fit.holds()) {
             return answer;
         }
-        Answer {
-            support: Support::CannotTell,
-            method: answer.method.map(|_| Support::CannotTell),
-            step: answer.step.map(|_| Support::CannotTell),
-            text: format!(
-                "the rows are off {} by more than digits and the rounding of double precision \
-                 allow; single precision arithmetic would explain it; print more digits",
-                claimed.name.unwrap_or_default()
-            ),
-        }
+        answer.left_open(format!(
+            "the rows are off {} by more than digits and the rounding of double precision \
+             allow; single precision arithmetic would explain it; print more digits",
+            claimed.name.unwrap_or_default()
+        ))
     });
     (found, answer)
 }
@@ -93,7 +74,7 @@ fn starts_otherwise(linear: &Linear, record: &Record, claimed: &Claimed) -> bool
         &steps,
     );
     let own = rest.best(claimed.methods, claimed.steps);
-    own.is_some_and(|own| own.fit.holds() && own.reading == Reading::AtNodes && own.apart > APART)
+    own.is_some_and(|own| own.fit.holds() && own.reading == Reading::AtNodes && own.is_told())
 }
 
 /// True where an input jumps off the grid of the claimed steps.

@@ -59,6 +59,19 @@ pub struct Answer {
     pub text: String,
 }
 
+impl Answer {
+    /// The same claim, left open after all.
+    pub(super) fn left_open(self, text: String) -> Answer {
+        let open = |_| Support::CannotTell;
+        Answer {
+            support: Support::CannotTell,
+            method: self.method.map(open),
+            step: self.step.map(open),
+            text,
+        }
+    }
+}
+
 /// A residual this many times below that of every other method is near to its own.
 const FAR_BELOW: f64 = 0.05;
 /// Codes that solve implicit steps by iteration stop at tolerances up to about this part
@@ -68,10 +81,6 @@ const ITERATION: f64 = 1e-5;
 /// What an iteration may leave of the peak however tight its tolerance: it stops where its
 /// own roundings end.
 const LAST_DIGITS: f64 = 256.0 * f64::EPSILON;
-/// More steps from row to row than this come near to the exact solution in most methods.
-const MANY_STEPS: u64 = 64;
-/// A fit speaks for a method where the exact solution is so many times what is allowed away.
-pub(super) const APART: f64 = 3.0;
 /// A pair that fits within a wide bound is not what wrote the rows where another one comes
 /// so many times closer.
 const FAR_BEYOND: f64 = 100.0;
@@ -284,7 +293,7 @@ fn of_method(evidence: &Evidence, claimed: &Claimed, cannot: &dyn Fn(String) -> 
     }
     let at_other_step = evidence
         .best(claimed.methods, None)
-        .filter(|own| own.fit.holds() && !own.free && own.apart > APART);
+        .filter(|own| own.fit.holds() && !own.free && own.is_told());
     if let (Some(other), Some(stated)) = (at_other_step, claimed.step) {
         let step = other.step.map_or(String::new(), |step| {
             format!(" {} {}", short(step), claimed.time_unit)
@@ -386,7 +395,7 @@ fn binds(family: &Family, own: &Tried) -> bool {
         BY_CHANCE
     };
     family.reading == Reading::AtNodes
-        && family.steps <= MANY_STEPS
+        && family.steps <= Family::MANY_STEPS
         && (family.fit.residual <= by_chance * own.fit.residual
             || family.fit.astray <= by_chance * own.fit.astray)
 }

@@ -81,8 +81,6 @@ pub struct Evidence {
     pub skipped: Vec<(&'static Method, u64)>,
 }
 
-/// More steps from row to row than this come near to the exact solution in most methods.
-const MANY_STEPS: u64 = 64;
 /// Fewer comparisons may be met by chance.
 const MANY_COMPARED: usize = 16;
 /// So many times closer to the rows than the exact solution comes nothing by chance.
@@ -104,7 +102,16 @@ const TOLD: f64 = 3.0;
 /// than the exact solution explains them, however wide its bound is.
 const CLOSER: f64 = 100.0;
 
+fn told(apart: f64, free: bool) -> bool {
+    apart > if free { OUTDONE } else { TOLD }
+}
+
 impl Tried {
+    /// See [`Family::is_told`].
+    pub fn is_told(&self) -> bool {
+        told(self.apart, self.free)
+    }
+
     /// How many times closer than another consistent pair this one comes to the rows, in
     /// terms of what the steps of that pair round in any case.
     ///
@@ -127,17 +134,20 @@ impl Tried {
 }
 
 impl Family {
+    /// More steps from row to row than this come near to the exact solution in most methods.
+    pub const MANY_STEPS: u64 = 64;
+
     /// True where the exact solution is clearly further from the rows; a start that is free
     /// to choose has to do more than that.
     pub fn is_told(&self) -> bool {
-        self.apart > if self.free { OUTDONE } else { TOLD }
+        told(self.apart, self.free)
     }
 
     /// True where it comes so much closer to the rows than the exact solution that no method
     /// outside the catalogue would meet them by chance.
     pub fn is_beyond_chance(&self) -> bool {
         self.reading == Reading::AtNodes
-            && self.steps <= MANY_STEPS
+            && self.steps <= Family::MANY_STEPS
             && !self.free
             && self.fit.compared >= MANY_COMPARED
             && self.apart > 1.0

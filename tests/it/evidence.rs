@@ -77,6 +77,12 @@ pub fn load(name: &str) -> Case {
     Library::new().load(name, &Default::default()).unwrap()
 }
 
+/// The cases with their numbers.
+fn cases() -> Vec<(usize, Case)> {
+    let cases = CASES.iter().map(|(name, _)| load(name));
+    cases.enumerate().collect()
+}
+
 /// What became of one entry of a matrix.
 #[derive(Debug, Default)]
 pub struct Tally {
@@ -192,11 +198,7 @@ const STARTS: [Start; 3] = [Start::Runge, Start::Exact, Start::Euler];
 /// from row to row and three numbers of digits; of those only each `every`-th run.
 /// Starts, sums of time and sides of jumps take turns.
 fn matrix(every: usize, channels: impl Fn(&Linear) -> Option<Vec<usize>> + Sync) -> Tally {
-    let cases: Vec<(usize, Case)> = CASES
-        .iter()
-        .map(|(name, _)| load(name))
-        .enumerate()
-        .collect();
+    let cases = cases();
     let said = shared(&cases, |(index, case)| {
         let linear = Linear::new(case);
         let mut said = Vec::new();
@@ -289,11 +291,7 @@ fn the_true_pair_is_consistent_with_parts_of_the_states() {
 
 /// Single precision and loose iterations: an honest program all the same.
 fn honest(every: usize) -> Tally {
-    let cases: Vec<(usize, Case)> = CASES
-        .iter()
-        .map(|(name, _)| load(name))
-        .enumerate()
-        .collect();
+    let cases = cases();
     let said = shared(&cases, |(index, case)| {
         let linear = Linear::new(case);
         let channels: Vec<usize> = (0..linear.size()).collect();
@@ -365,11 +363,7 @@ fn honest_programs_are_never_contradicted_anywhere() {
 /// Steps as an adaptive code accepts them, every state written.
 #[test]
 fn one_step_methods_are_found_at_varying_steps() {
-    let cases: Vec<(usize, Case)> = CASES
-        .iter()
-        .map(|(name, _)| load(name))
-        .enumerate()
-        .collect();
+    let cases = cases();
     let said = shared(&cases, |(index, case)| {
         let linear = Linear::new(case);
         let channels: Vec<usize> = (0..linear.size()).collect();
@@ -421,11 +415,7 @@ fn one_step_methods_are_found_at_varying_steps() {
 /// No claim at all: what wrote the rows is found, or nothing can be told from the solution.
 #[test]
 fn the_true_pair_is_found_without_a_claim() {
-    let cases: Vec<(usize, Case)> = CASES
-        .iter()
-        .map(|(name, _)| load(name))
-        .enumerate()
-        .collect();
+    let cases = cases();
     let said = shared(&cases, |(index, case)| {
         let linear = Linear::new(case);
         let channels: Vec<usize> = (0..linear.size()).collect();
@@ -526,11 +516,7 @@ fn leaves(sharp: &Option<Evidence>, method: &Method, steps: u64, digits: usize) 
 }
 
 fn power(every: usize) -> Vec<Power> {
-    let cases: Vec<(usize, Case)> = CASES
-        .iter()
-        .map(|(name, _)| load(name))
-        .enumerate()
-        .collect();
+    let cases = cases();
     let all = variants();
     shared(&cases, |(index, case)| {
         let linear = Linear::new(case);
