@@ -87,8 +87,8 @@ const FAR_BEYOND: f64 = 100.0;
 /// A fit that leaves no more than this part of the residual of another one is not met by
 /// chance, over eight comparisons or more.
 const BY_CHANCE: f64 = 0.05;
-/// The same for a method whose start is free to choose.
-const BY_CHANCE_FREE: f64 = 0.01;
+/// The same for a method whose start is free to choose, over more comparisons than a few.
+const BY_CHANCE_FREE: f64 = 1e-3;
 
 /// What the rows of one run say of its claim; `None` where nothing is claimed.
 pub fn of_claim(evidence: &Evidence, claimed: &Claimed) -> Option<Answer> {
@@ -291,9 +291,16 @@ fn of_method(evidence: &Evidence, claimed: &Claimed, cannot: &dyn Fn(String) -> 
             format!("the values are closer to the exact solution than {label} can come{off}");
         return all(Support::Contradicts, text);
     }
-    let at_other_step = evidence
-        .best(claimed.methods, None)
-        .filter(|own| own.fit.holds() && !own.free && own.is_told());
+    let explains = |family: &Family| {
+        let bound = |own| (family.free || family.is_told()) && binds(family, own);
+        family.is_beyond_chance() || (claimed.step.is_some() && own.is_some_and(bound))
+    };
+    let named = |family: &&Family| {
+        let is_claimed = |m: &&Method| claimed.methods.iter().any(|c| c.name == m.name);
+        family.methods.iter().any(is_claimed)
+            && (explains(family) || (!family.free && family.is_told()))
+    };
+    let at_other_step = evidence.consistent.iter().find(named);
     if let (Some(other), Some(stated)) = (at_other_step, claimed.step) {
         let step = other.step.map_or(String::new(), |step| {
             format!(" {} {}", short(step), claimed.time_unit)
@@ -311,11 +318,7 @@ fn of_method(evidence: &Evidence, claimed: &Claimed, cannot: &dyn Fn(String) -> 
     }
     // What fits by chance, or with a start of its own choosing, is no name for the rows.
     let mut others = evidence.consistent.iter();
-    let by_name = |family: &&Family| {
-        let bound = |own: &Tried| family.is_told() && !family.free && binds(family, own);
-        family.is_beyond_chance() || (claimed.step.is_some() && own.is_some_and(bound))
-    };
-    if let Some(family) = others.find(by_name) {
+    if let Some(family) = others.find(|family| explains(family)) {
         let text = format!(
             "the rows fit {}, not {label}{off}",
             family_at(family, claimed.time_unit)
@@ -389,15 +392,17 @@ fn early(own: &Tried, label: &str) -> String {
 /// True where a family fits so closely that what an iteration had left would have had to
 /// hit it by chance: the exact solution is no such family, see [`Evidence::is_exact`].
 fn binds(family: &Family, own: &Tried) -> bool {
-    let by_chance = if family.free {
-        BY_CHANCE_FREE
-    } else {
-        BY_CHANCE
+    let closer = |by_chance: f64| {
+        family.fit.residual <= by_chance * own.fit.residual
+            || family.fit.astray <= by_chance * own.fit.astray
     };
     family.reading == Reading::AtNodes
         && family.steps <= Family::MANY_STEPS
-        && (family.fit.residual <= by_chance * own.fit.residual
-            || family.fit.astray <= by_chance * own.fit.astray)
+        && if family.free {
+            family.is_compared_well() && closer(BY_CHANCE_FREE)
+        } else {
+            closer(BY_CHANCE)
+        }
 }
 
 /// A step without a method: what the consistent methods say.

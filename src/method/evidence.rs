@@ -148,10 +148,14 @@ impl Family {
     pub fn is_beyond_chance(&self) -> bool {
         self.reading == Reading::AtNodes
             && self.steps <= Family::MANY_STEPS
-            && !self.free
-            && self.fit.compared >= MANY_COMPARED
+            && self.is_compared_well()
             && self.apart > 1.0
             && self.apart > SHARP * self.fit.ratio
+    }
+
+    /// True over more comparisons than a few.
+    pub fn is_compared_well(&self) -> bool {
+        self.fit.compared >= MANY_COMPARED
     }
 }
 

@@ -23,6 +23,10 @@ use crate::number::Matrix;
 const MOST_ROWS: usize = 120;
 /// Rows whose allowance exceeds this part of the peak are no comparison.
 const TELLING: f64 = 1e-2;
+/// Comparisons beyond the unknowns that rule a method out at least.
+const LEAST_LEFT: usize = 2;
+/// Fewer of them are met by too many starts to say that it fits.
+const FEW_LEFT: usize = 8;
 /// Multiplications at most.
 const MOST_WORK: usize = 40_000_000;
 
@@ -61,7 +65,7 @@ pub(super) fn with_hidden_start(
     };
     let enough = |stretch: &Stretch| {
         let unknowns = unknowns + if stretch.from_start { 0 } else { size };
-        stretch.rows.saturating_sub(1) * record.width() >= unknowns + 8
+        stretch.rows.saturating_sub(1) * record.width() >= unknowns + LEAST_LEFT
     };
     // Through jumps where there is no choice; with all states only up to the first, or,
     // where that comes too soon, from any row between two jumps.
@@ -237,7 +241,7 @@ impl System {
             }
         }
         let finite = lines.iter().chain(&right).all(|x| x.is_finite());
-        if !finite || of_row.len() < unknowns + 8 {
+        if !finite || of_row.len() < unknowns + LEAST_LEFT {
             return None;
         }
         Some(System {
@@ -297,7 +301,8 @@ impl System {
         // What is left over beyond the noise speaks, however large that is; what is not may
         // be hidden in it.
         let hidden = noise > 0.5 * (equations as f64).sqrt();
-        if noise.is_nan() || (hidden && ratio <= 1.0) {
+        let few = equations - unknowns < FEW_LEFT;
+        if noise.is_nan() || ((hidden || few) && ratio <= 1.0) {
             return Fit::NOTHING;
         }
         let peaks = record.peaks();
@@ -313,7 +318,7 @@ impl System {
             ratio,
             residual,
             astray: residual,
-            compared: equations,
+            compared: equations - unknowns,
         }
     }
 }

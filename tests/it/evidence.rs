@@ -481,6 +481,8 @@ struct Power {
     alone: Option<bool>,
     false_claims: usize,
     seen_through: usize,
+    /// False claims of methods that explain the rows with some start.
+    open_starts: usize,
     texts: Vec<String>,
 }
 
@@ -506,13 +508,18 @@ fn differ(a: &[Vec<f64>], b: &[Vec<f64>], digits: usize) -> bool {
 }
 
 /// Does a method leave more than four times what the print resolves, whatever its start?
-fn leaves(sharp: &Option<Evidence>, method: &Method, steps: u64, digits: usize) -> bool {
-    let own = sharp.iter().flat_map(|found| &found.tried);
+/// Not where the rows are too few to say.
+fn leaves(sharp: &Evidence, method: &Method, steps: u64, digits: usize) -> bool {
+    let own = sharp.tried.iter();
     let own = own.filter(|tried| tried.method.name == method.name && tried.steps == steps);
-    let least = own
-        .map(|tried| tried.fit.residual)
-        .fold(f64::INFINITY, f64::min);
-    least > 4.0 * (0.5 * 0.1f64.powi(digits as i32 - 1) + 64.0 * f64::EPSILON)
+    let least = own.map(|tried| tried.fit.residual).reduce(f64::min);
+    let resolved = 0.5 * 0.1f64.powi(digits as i32 - 1) + 64.0 * f64::EPSILON;
+    least.is_some_and(|least| least > 4.0 * resolved)
+}
+
+/// Are earlier states hidden that a step of the scheme needs?
+fn is_free(method: &Method, scheme: usize, steps: u64) -> bool {
+    method.schemes[scheme].steps_back() > 1 && steps > 1
 }
 
 fn power(every: usize) -> Vec<Power> {
@@ -571,6 +578,7 @@ fn power(every: usize) -> Vec<Power> {
                             alone: None,
                             false_claims: 0,
                             seen_through: 0,
+                            open_starts: 0,
                             texts: Vec::new(),
                         };
                         let label = format!(
@@ -579,9 +587,10 @@ fn power(every: usize) -> Vec<Power> {
                         );
                         let found = evidence(&linear, &record, &[], &[]);
                         let free = found.consistent.iter().filter(|family| family.free);
-                        let (named, counts): (Vec<_>, Vec<u64>) = free
-                            .flat_map(|f| f.methods.iter().map(|m| (*m, f.steps)))
-                            .unzip();
+                        let free = free.flat_map(|f| f.methods.iter().map(|m| (*m, f.steps)));
+                        let claims_free = claims.iter().filter(|((m, s), n)| is_free(m, *s, *n));
+                        let claims_free = claims_free.map(|&((m, _), n)| (m, n));
+                        let (named, counts): (Vec<_>, Vec<u64>) = free.chain(claims_free).unzip();
                         let kept17 = Kept {
                             digits: 17,
                             ..kept.clone()
@@ -590,6 +599,10 @@ fn power(every: usize) -> Vec<Power> {
                             let record = kept17.record(&linear, run.seen);
                             evidence(&linear, &record, &named, &counts)
                         });
+                        let leaves = |method: &Method, steps| {
+                            let mut sharp = sharp.iter();
+                            sharp.any(|sharp| leaves(sharp, method, steps, digits))
+                        };
                         if !found.is_exact() {
                             let own = |m: &&Method| m.name == method.name;
                             let others: Vec<_> = found
@@ -604,7 +617,7 @@ fn power(every: usize) -> Vec<Power> {
                                     });
                                     m.all(|m| {
                                         if family.free {
-                                            return leaves(&sharp, m, family.steps, digits);
+                                            return leaves(m, family.steps);
                                         }
                                         (0..m.schemes.len()).all(|scheme| {
                                             let other = of((m, scheme), family.steps);
@@ -632,6 +645,10 @@ fn power(every: usize) -> Vec<Power> {
                             if !(0..other.schemes.len()).all(twin) {
                                 continue;
                             }
+                            if is_free(other, scheme, n) && !leaves(other, n) {
+                                power.open_starts += 1;
+                                continue;
+                            }
                             let claimed = [other];
                             let claim = claim(&claimed, spacing / n as f64, Some(n));
                             let answer = judge::ask(&linear, &record, &claim).1.unwrap();
@@ -657,16 +674,18 @@ fn power(every: usize) -> Vec<Power> {
 /// Digits, and the shares wanted of sets with one family and of false claims.
 fn check_power(every: usize, wanted: [(usize, f64, f64); 2]) {
     let results = power(every);
+    let mut missed = Vec::new();
     for (digits, alone_wanted, claims_wanted) in wanted {
         let of = || results.iter().filter(|power| power.digits == digits);
         let entries = of().filter(|power| power.alone.is_some()).count();
         let alone = of().filter(|power| power.alone == Some(true)).count();
         let claims: usize = of().map(|power| power.false_claims).sum();
         let seen: usize = of().map(|power| power.seen_through).sum();
+        let open: usize = of().map(|power| power.open_starts).sum();
         let share = |a: usize, b: usize| a as f64 / b.max(1) as f64;
         println!(
             "{digits} digits: alone in {alone} of {entries} ({:.1} %), {seen} of {claims} false \
-             claims contradicted ({:.1} %)",
+             claims contradicted ({:.1} %), {open} more explain the rows with some start",
             100.0 * share(alone, entries),
             100.0 * share(seen, claims)
         );
@@ -674,12 +693,13 @@ fn check_power(every: usize, wanted: [(usize, f64, f64); 2]) {
             let texts: Vec<&str> = of().flat_map(|p| &p.texts).map(String::as_str).collect();
             println!("{}", texts.join("\n"));
         }
-        assert!(
-            share(alone, entries) >= alone_wanted,
-            "{alone} of {entries}"
-        );
-        assert!(share(seen, claims) >= claims_wanted, "{seen} of {claims}");
+        if share(alone, entries) < alone_wanted || share(seen, claims) < claims_wanted {
+            missed.push(format!(
+                "{digits} digits: {alone} of {entries}, {seen} of {claims}"
+            ));
+        }
     }
+    assert!(missed.is_empty(), "{}", missed.join("\n"));
 }
 
 /// A thin sample; the shares wanted are those of the larger ones (see DEVELOPERS.md): at nine
