@@ -266,33 +266,27 @@ fn of_order(order: f64, found: &[RunFound], audited: &Audited) -> ClaimOutcome {
             orders.extend(family.methods.iter().map(|method| f64::from(method.order)));
         }
     }
-    let list = |orders: &[f64]| {
-        let mut texts: Vec<String> = orders.iter().map(|order| plain(*order)).collect();
-        texts.sort();
-        texts.dedup();
-        texts.join(", ")
+    let more = if found.len() < 3 {
+        "runs at three or more steps would show it"
+    } else {
+        "the ladder of runs leaves it open"
     };
     if orders.is_empty() {
-        let text = "runs at three or more steps would show it";
-        claim(Support::CannotTell, text.to_owned())
-    } else if beyond_chance && orders.iter().all(|&of| of < order - 0.5) {
-        let text = format!(
-            "the methods that fit the rows are of order {}",
-            list(&orders)
-        );
-        claim(Support::Contradicts, text)
+        return claim(Support::CannotTell, more.to_owned());
+    }
+    let mut texts: Vec<String> = orders.iter().map(|order| plain(*order)).collect();
+    texts.sort();
+    texts.dedup();
+    let fitting = format!(
+        "the methods that fit the rows are of order {}",
+        texts.join(", ")
+    );
+    if beyond_chance && orders.iter().all(|&of| of < order - 0.5) {
+        claim(Support::Contradicts, fitting)
     } else if orders.iter().all(|&of| of >= order) {
-        let text = format!(
-            "the methods that fit the rows are of order {}",
-            list(&orders)
-        );
-        claim(Support::Agrees, text)
+        claim(Support::Agrees, fitting)
     } else {
-        let text = format!(
-            "the methods that fit the rows are of order {}; runs at three or more steps would tell",
-            list(&orders)
-        );
-        claim(Support::CannotTell, text)
+        claim(Support::CannotTell, format!("{fitting}; {more}"))
     }
 }
 

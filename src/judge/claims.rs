@@ -4,7 +4,7 @@
 //! would have written by more than digits and rounding allow, and nothing honest explains
 //! it (a solution by iteration, an adaptive code, a step that nobody stated).
 
-use crate::method::{Evidence, Family, Method, Reading, Tried};
+use crate::method::{Evidence, Family, Method, Reading, Skipped, Tried};
 use crate::number::{plain, short};
 
 /// What the rows say of a claim.
@@ -87,8 +87,11 @@ const FAR_BEYOND: f64 = 100.0;
 /// A fit that leaves no more than this part of the residual of another one is not met by
 /// chance, over eight comparisons or more.
 const BY_CHANCE: f64 = 0.05;
-/// The same for a method whose start is free to choose, over more comparisons than a few.
+/// The same for a method whose start is free to choose, over more comparisons than a few, and
+/// for one that the exact solution is near to.
 const BY_CHANCE_FREE: f64 = 1e-3;
+/// The same over few comparisons, for the method claimed at another step.
+const BY_CHANCE_FEW: f64 = 1e-4;
 
 /// What the rows of one run say of its claim; `None` where nothing is claimed.
 pub fn of_claim(evidence: &Evidence, claimed: &Claimed) -> Option<Answer> {
@@ -292,19 +295,31 @@ fn of_method(evidence: &Evidence, claimed: &Claimed, cannot: &dyn Fn(String) -> 
         return all(Support::Contradicts, text);
     }
     let explains = |family: &Family| {
+        if own.is_some_and(|own| is_unfinished(family, own)) {
+            return false;
+        }
         let bound = |own| (family.free || family.is_told()) && binds(family, own);
         family.is_beyond_chance() || (claimed.step.is_some() && own.is_some_and(bound))
     };
+    let is_claimed = |m: &&'static Method| claimed.methods.iter().any(|c| c.name == m.name);
     let named = |family: &&Family| {
-        let is_claimed = |m: &&Method| claimed.methods.iter().any(|c| c.name == m.name);
-        family.methods.iter().any(is_claimed)
-            && (explains(family) || (!family.free && family.is_told()))
+        let plain =
+            !family.free && (family.is_told() || own.is_some_and(|own| far_closer(family, own)));
+        family.methods.iter().any(is_claimed) && (explains(family) || plain)
     };
-    let at_other_step = evidence.consistent.iter().find(named);
+    let at_other_step = evidence.consistent.iter().find(named).map(|f| f.steps);
+    // Rows that some start meets, if ever so few of them, for the very method claimed.
+    let meets = |skipped: &&Skipped| {
+        skipped.fit.compared > 0
+            && skipped.steps <= Family::MANY_STEPS
+            && is_claimed(&skipped.method)
+            && own.is_some_and(|own| skipped.fit.residual <= BY_CHANCE_FEW * own.fit.residual)
+    };
+    let at_other_step =
+        at_other_step.or_else(|| evidence.skipped.iter().find(meets).map(|s| s.steps));
     if let (Some(other), Some(stated)) = (at_other_step, claimed.step) {
-        let step = other.step.map_or(String::new(), |step| {
-            format!(" {} {}", short(step), claimed.time_unit)
-        });
+        let step = stated * claimed.steps.unwrap_or_default() as f64 / other as f64;
+        let step = format!(" {} {}", short(step), claimed.time_unit);
         let text = format!(
             "the rows fit {name} at step{step}, not {}{off}",
             plain(stated)
@@ -348,7 +363,7 @@ fn of_method(evidence: &Evidence, claimed: &Claimed, cannot: &dyn Fn(String) -> 
     if implicit && own.fit.residual <= ITERATION {
         return cannot(early(own, &label));
     }
-    if own.fit.residual <= ITERATION && evidence.told().next().is_none() {
+    if own.fit.residual <= ITERATION && evidence.consistent.is_empty() {
         return cannot(format!(
             "the rows are {} of the peak away from {label}, which coarser arithmetic or constants \
              would explain; run it in double precision with the constants of the case",
@@ -392,17 +407,31 @@ fn early(own: &Tried, label: &str) -> String {
 /// True where a family fits so closely that what an iteration had left would have had to
 /// hit it by chance: the exact solution is no such family, see [`Evidence::is_exact`].
 fn binds(family: &Family, own: &Tried) -> bool {
-    let closer = |by_chance: f64| {
-        family.fit.residual <= by_chance * own.fit.residual
-            || family.fit.astray <= by_chance * own.fit.astray
-    };
+    if family.free {
+        family.is_compared_well() && far_closer(family, own)
+    } else {
+        closer(family, own, BY_CHANCE)
+    }
+}
+
+/// True where a family without an iteration may be the claimed one with a given number of
+/// iterations: from row to row both are polynomials of the step, and close to each other.
+fn is_unfinished(family: &Family, own: &Tried) -> bool {
+    is_implicit(own.method)
+        && own.fit.residual <= ITERATION
+        && family.steps == own.steps
+        && !family.methods.iter().all(|method| is_implicit(method))
+}
+
+fn far_closer(family: &Family, own: &Tried) -> bool {
+    closer(family, own, BY_CHANCE_FREE)
+}
+
+fn closer(family: &Family, own: &Tried, by_chance: f64) -> bool {
     family.reading == Reading::AtNodes
         && family.steps <= Family::MANY_STEPS
-        && if family.free {
-            family.is_compared_well() && closer(BY_CHANCE_FREE)
-        } else {
-            closer(BY_CHANCE)
-        }
+        && (family.fit.residual <= by_chance * own.fit.residual
+            || family.fit.astray <= by_chance * own.fit.astray)
 }
 
 /// A step without a method: what the consistent methods say.

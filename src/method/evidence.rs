@@ -42,6 +42,17 @@ pub struct Tried {
     pub(super) print: Vec<f64>,
 }
 
+/// One method at one step that the rows are too few for.
+#[derive(Clone, Debug)]
+pub struct Skipped {
+    /// The method.
+    pub method: &'static Method,
+    /// Steps from row to row.
+    pub steps: u64,
+    /// Nothing compared, or so few rows more than hidden states that some start meets them.
+    pub fit: Fit,
+}
+
 /// Methods that these rows cannot tell apart, at one step.
 #[derive(Clone, Debug)]
 pub struct Family {
@@ -77,8 +88,8 @@ pub struct Evidence {
     /// True where what has gone astray since a jump or since the start is within digits and
     /// roundings: between jumps no method can be told from the exact solution.
     pub exact_between_jumps: bool,
-    /// What the rows are too few for, with the steps from row to row.
-    pub skipped: Vec<(&'static Method, u64)>,
+    /// What the rows are too few for.
+    pub skipped: Vec<Skipped>,
 }
 
 /// Fewer comparisons may be met by chance.
@@ -125,8 +136,16 @@ impl Tried {
         let steps = if self.free { steps } else { steps.sqrt() };
         let rounded = 4.0 * unit * steps;
         let closer = !self.free && self.apart > CLOSER * self.fit.ratio;
+        // From row to row, unless one of them runs on from its start.
+        let of = |fit: &Fit| {
+            if self.free || other.free {
+                fit.astray
+            } else {
+                fit.residual
+            }
+        };
         if self.apart > 1.0 || closer {
-            other.fit.residual / self.fit.residual.max(rounded)
+            (of(&other.fit) - other.fit.blur) / of(&self.fit).max(rounded)
         } else {
             0.0
         }
@@ -174,20 +193,23 @@ impl Evidence {
     /// True where one of the methods, in any of its forms, could not be compared at so many
     /// steps from row to row.
     pub fn is_skipped(&self, methods: &[&Method], steps: Option<u64>) -> bool {
-        self.skipped.iter().any(|(skipped, count)| {
-            methods.iter().any(|m| m.name == skipped.name) && steps.is_none_or(|s| s == *count)
+        self.skipped.iter().any(|skipped| {
+            methods.iter().any(|m| m.name == skipped.method.name)
+                && steps.is_none_or(|steps| steps == skipped.steps)
         })
     }
 
-    /// How many times closer to the rows than a consistent pair something else comes that has
-    /// no start of its own choosing, see [`Tried::outdoes`]; with what that is.
+    /// How many times closer to the rows than a consistent pair something else comes, see [`Tried::outdoes`]; with what that is.
     pub fn outdone(&self, own: &Tried, unit: f64) -> Option<(f64, &Family)> {
         // Some other form of the method may be the one.
         let same = |f: &&Family| {
             f.steps == own.steps && f.methods.iter().any(|m| m.name == own.method.name)
         };
         let families = self.consistent.iter();
-        let plain = families.filter(|f| !f.free && f.reading == Reading::AtNodes);
+        let well = |f: &&Family| !f.free || f.is_compared_well();
+        let plain = families
+            .filter(|f| f.reading == Reading::AtNodes)
+            .filter(well);
         let plain = plain.filter(|f| !same(f));
         let pairs = plain.filter_map(|family| {
             let name = family.methods.first()?.name;

@@ -31,7 +31,7 @@ mod trial;
 pub use catalogue::{METHODS, Method, find, find_all};
 pub use characteristic::Characteristic;
 pub use drive::Drive;
-pub use evidence::{Evidence, Family, Tried, evidence};
+pub use evidence::{Evidence, Family, Skipped, Tried, evidence};
 pub use growth::{Growth, Likeness, Unmeasured, growth, likeness};
 pub use linear::{Linear, Side, Signal};
 pub use march::{March, NEAR, Sides, add_forcing};

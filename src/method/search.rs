@@ -2,13 +2,13 @@
 
 use super::catalogue::Method;
 use super::estimate::{Estimate, Targets};
-use super::evidence::Tried;
+use super::evidence::{Skipped, Tried};
 use super::linear::Linear;
 use super::march::Sides;
 use super::record::{Piece, Record};
 use super::recurrence::{Ranks, Reading, Recurrence};
 use super::scheme::{Coefficients, Scheme};
-use super::starts::with_hidden_start;
+use super::starts::{FEW_LEFT, with_hidden_start};
 use super::trial::{Fit, GLANCE, Trial, larger};
 
 /// Steps from row to row that are tried whatever the errors say.
@@ -87,8 +87,7 @@ pub(super) struct Search<'a> {
     pub(super) claimed: &'a [&'static Method],
     pub(super) claimed_steps: &'a [u64],
     pub(super) tried: Vec<Tried>,
-    /// What the rows are too few for, with the steps from row to row.
-    pub(super) skipped: Vec<(&'static Method, u64)>,
+    pub(super) skipped: Vec<Skipped>,
 }
 
 impl Search<'_> {
@@ -181,11 +180,17 @@ impl Search<'_> {
             };
             let trial = Trial::new(self.linear, recurrence, count, self.record.unit);
             let mut fit = self.fit(&trial, self.record, variant.reading);
-            if self.is_claimed(variant) && self.claimed_steps.contains(&count) && !fit.holds() {
+            let free = self.is_free(&trial);
+            let claimed = self.is_claimed(variant) && self.claimed_steps.contains(&count);
+            if claimed && !free && !fit.holds() {
                 fit.astray = larger(fit.astray, trial.astray(self.record, &self.pieces));
             }
-            if fit.compared == 0 {
-                self.skipped.push((variant.method, count));
+            if fit.compared == 0 || (free && fit.compared < FEW_LEFT && fit.holds()) {
+                self.skipped.push(Skipped {
+                    method: variant.method,
+                    steps: count,
+                    fit,
+                });
                 continue;
             }
             // Few digits leave a range of steps open.
@@ -204,7 +209,7 @@ impl Search<'_> {
                 fit,
                 apart: f64::NAN,
                 at_jumps: Fit::NOTHING,
-                free: self.is_free(&trial),
+                free,
                 print: Vec::new(),
             };
             if fit.holds() {

@@ -26,7 +26,7 @@ const TELLING: f64 = 1e-2;
 /// Comparisons beyond the unknowns that rule a method out at least.
 const LEAST_LEFT: usize = 2;
 /// Fewer of them are met by too many starts to say that it fits.
-const FEW_LEFT: usize = 8;
+pub(super) const FEW_LEFT: usize = 8;
 /// Multiplications at most.
 const MOST_WORK: usize = 40_000_000;
 
@@ -296,13 +296,12 @@ impl System {
                 start = start.hypot(along[i] / values[i]);
             }
         }
-        let rest = right.rows(unknowns, equations - unknowns).norm_squared();
-        let ratio = (rest.sqrt() - noise).max(0.0) / (equations as f64).sqrt();
+        let rest = right.rows(unknowns, equations - unknowns).norm();
+        let ratio = (rest - noise).max(0.0) / (equations as f64).sqrt();
         // What is left over beyond the noise speaks, however large that is; what is not may
         // be hidden in it.
         let hidden = noise > 0.5 * (equations as f64).sqrt();
-        let few = equations - unknowns < FEW_LEFT;
-        if noise.is_nan() || ((hidden || few) && ratio <= 1.0) {
+        if noise.is_nan() || (hidden && ratio <= 1.0) {
             return Fit::NOTHING;
         }
         let peaks = record.peaks();
@@ -313,11 +312,12 @@ impl System {
         let share = shares.fold(0.0f64, |sum, &(column, allowed)| {
             sum + allowed / peaks[column]
         });
-        let residual = (rest / equations as f64).sqrt() * share / equations as f64;
+        let scale = share / equations as f64 / (equations as f64).sqrt();
         Fit {
             ratio,
-            residual,
-            astray: residual,
+            residual: rest * scale,
+            astray: rest * scale,
+            blur: noise.min(rest) * scale,
             compared: equations - unknowns,
         }
     }

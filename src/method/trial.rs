@@ -32,7 +32,9 @@ pub struct Fit {
     /// The largest relative to the peak when the method has run on from the first row of a
     /// stretch, where that was looked at.
     pub astray: f64,
-    /// Comparisons made.
+    /// What the comparison itself may have made of both of them.
+    pub blur: f64,
+    /// Comparisons made, less what was free to choose.
     pub compared: usize,
 }
 
@@ -69,6 +71,7 @@ impl Fit {
         ratio: 0.0,
         residual: 0.0,
         astray: 0.0,
+        blur: 0.0,
         compared: 0,
     };
 
@@ -92,6 +95,7 @@ impl Fit {
             ratio: larger(self.ratio, other.ratio),
             residual: larger(self.residual, other.residual),
             astray: larger(self.astray, other.astray),
+            blur: larger(self.blur, other.blur),
             compared: self.compared + other.compared,
         }
     }

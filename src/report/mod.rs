@@ -5,6 +5,7 @@
 
 mod case_json;
 mod case_text;
+mod claims_text;
 mod csv_values;
 mod growth_text;
 mod json;

@@ -5,6 +5,7 @@ use std::cmp::Ordering;
 
 use comfy_table::{ColumnConstraint, Table};
 
+use super::claims_text::claims_text;
 use super::growth_text::{FEW, growth_text};
 use super::style::{Screen, Tone, coloured, toned};
 use super::{NOT_FOR_DOSING, SCOPE};
@@ -34,6 +35,7 @@ pub fn audit_text(outcome: &Outcome, screen: Screen) -> String {
     if !settings.is_empty() {
         text += &format!("\nError settings:\n{settings}");
     }
+    text += &claims_text(outcome, screen);
     text += &growth_text(outcome, screen);
     let notes = notes(outcome, screen);
     if !notes.is_empty() {
@@ -387,7 +389,8 @@ fn notes(outcome: &Outcome, screen: Screen) -> String {
         .collect()
 }
 
-fn line(screen: Screen, name: &str, text: &str) -> String {
+/// One thing to be said, with what it is said of.
+pub(super) fn line(screen: Screen, name: &str, text: &str) -> String {
     let text = if name.is_empty() {
         text.to_owned()
     } else {

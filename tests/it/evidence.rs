@@ -44,14 +44,19 @@ pub fn rows(linear: &Linear, spacing: f64) -> usize {
     ((span / spacing) as usize).min(60) + 1
 }
 
-pub fn claim<'a>(methods: &'a [&'static Method], step: f64, steps: Option<u64>) -> Claimed<'a> {
+pub fn claim<'a>(
+    methods: &'a [&'static Method],
+    step: f64,
+    steps: Option<u64>,
+    unit: f64,
+) -> Claimed<'a> {
     Claimed {
         name: Some(methods[0].name),
         methods,
         step: Some(step),
         steps,
         adaptive: false,
-        unit: f64::EPSILON / 2.0,
+        unit,
         time_unit: "s",
     }
 }
@@ -172,7 +177,11 @@ pub fn ask(linear: &Linear, record: &Record, run: &Run, digits: usize, strict: b
     }
     let claimed = [method];
     let step = run.spacing / run.steps as f64;
-    let (found, answer) = judge::ask(linear, record, &claim(&claimed, step, Some(run.steps)));
+    let (found, answer) = judge::ask(
+        linear,
+        record,
+        &claim(&claimed, step, Some(run.steps), record.unit),
+    );
     let best = found.best(&[method], Some(run.steps));
     let answer = answer.unwrap();
     match best {
@@ -650,7 +659,7 @@ fn power(every: usize) -> Vec<Power> {
                                 continue;
                             }
                             let claimed = [other];
-                            let claim = claim(&claimed, spacing / n as f64, Some(n));
+                            let claim = claim(&claimed, spacing / n as f64, Some(n), record.unit);
                             let answer = judge::ask(&linear, &record, &claim).1.unwrap();
                             power.false_claims += 1;
                             if answer.support == Support::Contradicts {
