@@ -3,7 +3,9 @@
 //! method for the first step, steps of its own at jumps where states are missing.
 
 use super::claims::{Answer, Claimed, Support, of_claim};
-use crate::method::{Evidence, Family, Linear, Method, Reading, Record, Tried, evidence};
+use crate::method::{
+    Evidence, Family, Linear, Method, Reading, Record, Tried, evidence, evidence_of,
+};
 
 /// Where another method fits, single precision is thought of up to this many times what
 /// digits and double precision allow: few digits are coarser than its roundings by then.
@@ -44,7 +46,7 @@ pub fn ask(linear: &Linear, record: &Record, claimed: &Claimed) -> (Evidence, Op
         let Some(single) = record.in_single() else {
             return answer;
         };
-        let again = evidence(linear, &single, claimed.methods, &steps);
+        let again = evidence_of(linear, &single, claimed.methods, &steps);
         let own = again.best(claimed.methods, claimed.steps);
         // Nothing is compared where its roundings hide all.
         if own.is_some_and(|own| !own.fit.holds()) {
@@ -68,12 +70,8 @@ fn starts_otherwise(linear: &Linear, record: &Record, claimed: &Claimed) -> bool
         return false;
     }
     let steps: Vec<u64> = claimed.steps.into_iter().collect();
-    let rest = evidence(
-        linear,
-        &record.from_row(OTHER_START),
-        claimed.methods,
-        &steps,
-    );
+    let rest = record.from_row(OTHER_START);
+    let rest = evidence_of(linear, &rest, claimed.methods, &steps);
     let own = rest.best(claimed.methods, claimed.steps);
     own.is_some_and(|own| own.fit.holds() && own.reading == Reading::AtNodes && own.is_told())
 }

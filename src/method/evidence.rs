@@ -5,13 +5,15 @@
 //! how many internal steps lie between two rows, if that method wrote them. What is left is
 //! the set of consistent pairs, methods that these rows cannot tell apart under one name.
 
+use rayon::prelude::*;
+
 use super::catalogue::{METHODS, Method};
 use super::crossing::kicked;
 use super::estimate::Targets;
 use super::linear::Linear;
 use super::record::{Piece, Record};
 use super::recurrence::Reading;
-use super::search::{Search, rank_orders};
+use super::search::{Found, Search, Sheet, rank_orders};
 use super::trial::Fit;
 
 /// One method at one step, compared with the rows.
@@ -281,70 +283,97 @@ pub fn evidence(
     claimed: &[&'static Method],
     claimed_steps: &[u64],
 ) -> Evidence {
-    let mut pieces = record.pieces(linear);
-    thin(&mut pieces);
+    let search = search(linear, record, claimed, claimed_steps);
     let exact = exact_fit(record);
-    let mut search = Search {
-        linear,
-        record,
-        solution: record.solution(),
-        complete: record.states(linear.size()).is_some(),
-        targets: Targets::new(linear, record, &pieces),
-        pieces,
-        orders: rank_orders(linear),
-        gauss: super::find("Gauss 6").map(|method| method.schemes[0].coefficients()),
-        exact: exact.holds(),
-        claimed,
-        claimed_steps,
-        tried: Vec::new(),
-        skipped: Vec::new(),
-    };
-    for method in METHODS {
-        search.method(method, Reading::AtNodes);
-    }
+    let all: Vec<&'static Method> = METHODS.iter().collect();
+    let with = |reading: Reading| each(&all, |method| search.method(method, reading));
+    let mut found = with(Reading::AtNodes);
     let told = |tried: &Tried| tried.fit.holds() && tried.apart > 1.0;
-    if claimed_steps.is_empty() && !search.tried.iter().any(told) && !exact.holds() {
-        let wanted =
-            |method: &&Method| claimed.is_empty() || claimed.iter().any(|m| m.name == method.name);
-        let wanted = METHODS.iter().filter(wanted);
-        wanted.for_each(|method| search.sweep(method));
+    if claimed_steps.is_empty() && !found.tried.iter().any(told) && !exact.holds() {
+        let wanted = if claimed.is_empty() { &all } else { claimed };
+        found.add(each(wanted, |method| search.sweep(method)));
     }
     // Other ways to read the inputs are looked at where the plain one explains nothing, or
     // not the claim.
-    let explained = |search: &Search| {
+    let explained = |found: &Found| {
         let holds = |tried: &Tried| {
             let wanted = claimed.is_empty() || claimed.iter().any(|m| m.name == tried.method.name);
             let step = claimed_steps.is_empty() || claimed_steps.contains(&tried.steps);
             tried.fit.holds() && wanted && step
         };
-        search.tried.iter().any(holds)
+        found.tried.iter().any(holds)
     };
-    if !linear.is_steady() && !explained(&search) && !exact.holds() {
+    if !linear.is_steady() && !explained(&found) && !exact.holds() {
         for reading in [
             Reading::Held,
             Reading::FromEnd,
             Reading::Mean,
             Reading::Linear,
         ] {
-            for method in METHODS {
-                search.method(method, reading);
-            }
+            found.add(with(reading));
         }
     }
     // A program whose time misses the jumps by roundings sees now one side, now the other.
     let (from, to) = linear.window;
     let jumps = !search.complete && linear.jumps_within(from, to);
-    if jumps && !explained(&search) && (!exact.holds() || !claimed.is_empty()) {
-        for method in METHODS {
-            search.method(method, Reading::EitherSide);
-        }
+    if jumps && !explained(&found) && (!exact.holds() || !claimed.is_empty()) {
+        found.add(with(Reading::EitherSide));
     }
-    let consistent = families(&search.tried, record.unit, kicked(linear, record));
+    conclude(&search, found, exact)
+}
+
+/// The same for the claimed methods alone, with inputs read as usual: what else there may be
+/// is known or does not matter.
+pub fn evidence_of(
+    linear: &Linear,
+    record: &Record,
+    claimed: &[&'static Method],
+    claimed_steps: &[u64],
+) -> Evidence {
+    let search = search(linear, record, claimed, claimed_steps);
+    let found = each(claimed, |method| search.method(method, Reading::AtNodes));
+    conclude(&search, found, exact_fit(record))
+}
+
+fn search<'a>(
+    linear: &'a Linear,
+    record: &'a Record,
+    claimed: &'a [&'static Method],
+    claimed_steps: &'a [u64],
+) -> Search<'a> {
+    let mut pieces = record.pieces(linear);
+    thin(&mut pieces);
+    Search {
+        linear,
+        record,
+        sheet: Sheet::new(linear, record.clone(), &pieces),
+        solution: Sheet::new(linear, record.solution(), &pieces),
+        complete: record.states(linear.size()).is_some(),
+        targets: Targets::new(linear, record, &pieces),
+        pieces,
+        orders: rank_orders(linear),
+        gauss: super::find("Gauss 6").map(|method| method.schemes[0].coefficients()),
+        exact: exact_fit(record).holds(),
+        claimed,
+        claimed_steps,
+    }
+}
+
+/// Does work for each method on all processors; the order stays that of the methods.
+fn each(methods: &[&'static Method], work: impl Fn(&'static Method) -> Found + Sync) -> Found {
+    let found: Vec<Found> = methods.par_iter().map(|method| work(method)).collect();
+    let mut all = Found::default();
+    found.into_iter().for_each(|one| all.add(one));
+    all
+}
+
+fn conclude(search: &Search, found: Found, exact: Fit) -> Evidence {
+    let kicked = kicked(search.linear, search.record);
     Evidence {
-        tried: search.tried,
+        consistent: families(&found.tried, search.record.unit, kicked),
+        tried: found.tried,
         exact_between_jumps: search.targets.clearness() <= 1.0,
-        skipped: search.skipped,
-        consistent,
+        skipped: found.skipped,
         exact,
     }
 }

@@ -7,6 +7,7 @@
 //! matrices; `record` is what is kept of a file and `evidence` lays the two beside each other;
 //! `growth` reads the factor of a step off the rows without knowing the method.
 
+mod against;
 mod catalogue;
 mod characteristic;
 mod crossing;
@@ -16,6 +17,7 @@ mod evidence;
 mod exponential;
 mod growth;
 mod jumps;
+mod laid;
 mod linear;
 mod march;
 mod powers;
@@ -31,7 +33,7 @@ mod trial;
 pub use catalogue::{METHODS, Method, find, find_all};
 pub use characteristic::Characteristic;
 pub use drive::Drive;
-pub use evidence::{Evidence, Family, Skipped, Tried, evidence};
+pub use evidence::{Evidence, Family, Skipped, Tried, evidence, evidence_of};
 pub use growth::{Growth, Likeness, Unmeasured, growth, likeness};
 pub use linear::{Linear, Side, Signal};
 pub use march::{March, NEAR, Sides, add_forcing};

@@ -5,6 +5,7 @@ use super::linear::{Linear, Side};
 use super::record::{Piece, Record, Window};
 
 /// The largest states and forcing within a piece, which roundings are relative to.
+#[derive(Clone, Debug)]
 pub(super) struct Scale {
     pub(super) states: Vec<f64>,
     pub(super) forcing: Vec<f64>,

@@ -1,8 +1,10 @@
 //! The search through the catalogue: every method at the steps that are worth a look.
 
 use super::catalogue::Method;
+use super::drive::Drive;
 use super::estimate::{Estimate, Targets};
 use super::evidence::{Skipped, Tried};
+use super::laid::Laid;
 use super::linear::Linear;
 use super::march::Sides;
 use super::record::{Piece, Record};
@@ -72,11 +74,50 @@ fn permutations(size: usize) -> Vec<Ranks> {
     shorter.into_iter().flat_map(with_last).collect()
 }
 
+/// Rows laid out for the comparison: of the file, or the exact values in their place.
+pub(super) struct Sheet {
+    record: Record,
+    peaks: Vec<f64>,
+    /// Stretches without a jump, or pairs of rows where the spacing varies; none where states
+    /// are missing.
+    laid: Vec<Laid>,
+}
+
+impl Sheet {
+    pub(super) fn new(linear: &Linear, record: Record, pieces: &[Piece]) -> Sheet {
+        let drive = Drive::new(linear);
+        let lay = |piece: Piece| Laid::new(linear, &drive, &record, piece);
+        let laid = if record.spacing.is_some() {
+            pieces.iter().filter_map(|piece| lay(*piece)).collect()
+        } else {
+            let pairs = pieces.iter().flat_map(|piece| {
+                let rows = piece.start..piece.start + piece.rows - 1;
+                rows.map(|start| Piece {
+                    start,
+                    rows: 2,
+                    ..*piece
+                })
+            });
+            let pairs: Vec<Piece> = pairs.collect();
+            let stride = pairs.len() / MOST_PAIRS + 1;
+            pairs.into_iter().step_by(stride).filter_map(lay).collect()
+        };
+        let all = record.peaks();
+        let places = record.states(linear.size()).unwrap_or_default();
+        Sheet {
+            peaks: places.iter().map(|&place| all[place]).collect(),
+            record,
+            laid,
+        }
+    }
+}
+
 pub(super) struct Search<'a> {
     pub(super) linear: &'a Linear,
     pub(super) record: &'a Record,
+    pub(super) sheet: Sheet,
     /// The same rows with the exact values in them.
-    pub(super) solution: Record,
+    pub(super) solution: Sheet,
     pub(super) complete: bool,
     pub(super) pieces: Vec<Piece>,
     pub(super) targets: Targets,
@@ -86,8 +127,20 @@ pub(super) struct Search<'a> {
     pub(super) exact: bool,
     pub(super) claimed: &'a [&'static Method],
     pub(super) claimed_steps: &'a [u64],
+}
+
+/// What came of methods.
+#[derive(Default)]
+pub(super) struct Found {
     pub(super) tried: Vec<Tried>,
     pub(super) skipped: Vec<Skipped>,
+}
+
+impl Found {
+    pub(super) fn add(&mut self, other: Found) {
+        self.tried.extend(other.tried);
+        self.skipped.extend(other.skipped);
+    }
 }
 
 impl Search<'_> {
@@ -96,7 +149,8 @@ impl Search<'_> {
         Recurrence::new(self.gauss.as_ref()?, self.linear, step, &Ranks::new())
     }
 
-    pub(super) fn method(&mut self, method: &'static Method, reading: Reading) {
+    pub(super) fn method(&self, method: &'static Method, reading: Reading) -> Found {
+        let mut found = Found::default();
         for scheme in method.schemes {
             let coefficients = scheme.coefficients();
             let orders = match scheme {
@@ -111,11 +165,12 @@ impl Search<'_> {
                     ranks: &ranks,
                 };
                 match self.record.spacing {
-                    Some((spacing, _)) => self.even(&variant, spacing),
-                    None => self.uneven(&variant),
+                    Some((spacing, _)) => self.even(&variant, spacing, &mut found),
+                    None => self.uneven(&variant, &mut found),
                 }
             }
         }
+        found
     }
 
     fn is_claimed(&self, variant: &Variant) -> bool {
@@ -124,23 +179,27 @@ impl Search<'_> {
     }
 
     /// Rows at one spacing.
-    fn even(&mut self, variant: &Variant, spacing: f64) {
+    fn even(&self, variant: &Variant, spacing: f64, found: &mut Found) {
         let claimed = self.is_claimed(variant);
         let mut counts: Vec<u64> = ALWAYS.to_vec();
         counts.extend(self.claimed_steps.iter().filter(|&&m| claimed || m <= 64));
         let estimate = self.estimate(variant, spacing);
         counts.extend(estimate.iter().flat_map(Estimate::counts));
         counts.retain(|&count| count > 0 && count <= MOST_STEPS);
-        counts.sort_unstable();
+        // Plain numbers before others, those nearest to the estimate first.
+        let plain = |count: &u64| ALWAYS.contains(count) || self.claimed_steps.contains(count);
+        let guess = estimate.map_or(0, |estimate| estimate.steps);
+        counts.sort_unstable_by_key(|count| (!plain(count), count.abs_diff(guess), *count));
         counts.dedup();
-        self.at_counts(variant, spacing, counts, estimate);
+        self.at_counts(variant, spacing, counts, estimate, found);
     }
 
     /// A method with a memory whose start has made larger errors than its steps: they do not
     /// tell how many there are, and beside the right number no start fits.
-    pub(super) fn sweep(&mut self, method: &'static Method) {
+    pub(super) fn sweep(&self, method: &'static Method) -> Found {
+        let mut found = Found::default();
         let Some((spacing, _)) = self.record.spacing else {
-            return;
+            return found;
         };
         for scheme in method.schemes {
             let back = scheme.steps_back();
@@ -154,24 +213,31 @@ impl Search<'_> {
                 reading: Reading::AtNodes,
                 ranks: &Ranks::new(),
             };
-            self.at_counts(&variant, spacing, SWEPT.to_vec(), None);
+            self.at_counts(&variant, spacing, SWEPT.to_vec(), None, &mut found);
         }
+        found
     }
 
     fn at_counts(
-        &mut self,
+        &self,
         variant: &Variant,
         spacing: f64,
         counts: Vec<u64>,
         estimate: Option<Estimate>,
+        found: &mut Found,
     ) {
+        let first = found.tried.len();
+        let near = |count: u64| estimate.is_some_and(|estimate| estimate.admits(count));
         for count in counts {
-            let known = self.tried.last().is_some_and(|last| {
-                last.method.name == variant.method.name
-                    && last.fit.holds()
-                    && (last.range.0..=last.range.1).contains(&count)
+            // Few digits leave a range of steps open.
+            let mut holding = found.tried[first..]
+                .iter()
+                .filter(|tried| tried.fit.holds());
+            let known = holding.any(|tried| {
+                (tried.range.0..=tried.range.1).contains(&count)
+                    || (!self.wants_ranges() && near(tried.steps) && near(count))
             });
-            if known {
+            if known && !self.claimed_steps.contains(&count) {
                 continue;
             }
             // What cannot be solved, or reads its inputs no other way, has not run.
@@ -179,23 +245,24 @@ impl Search<'_> {
                 continue;
             };
             let trial = Trial::new(self.linear, recurrence, count, self.record.unit);
-            let mut fit = self.fit(&trial, self.record, variant.reading);
+            let mut fit = self.fit(&trial, &self.sheet, variant.reading);
             let free = self.is_free(&trial);
             let claimed = self.is_claimed(variant) && self.claimed_steps.contains(&count);
             if claimed && !free && !fit.holds() {
-                fit.astray = larger(fit.astray, trial.astray(self.record, &self.pieces));
+                fit.astray = larger(
+                    fit.astray,
+                    trial.astray(&self.sheet.laid, &self.sheet.peaks),
+                );
             }
             if fit.compared == 0 || (free && fit.compared < FEW_LEFT && fit.holds()) {
-                self.skipped.push(Skipped {
+                found.skipped.push(Skipped {
                     method: variant.method,
                     steps: count,
                     fit,
                 });
                 continue;
             }
-            // Few digits leave a range of steps open.
-            let near_estimate = estimate.is_some_and(|estimate| estimate.admits(count));
-            let range = if fit.holds() && near_estimate && !self.exact {
+            let range = if fit.holds() && near(count) && !self.exact && self.wants_ranges() {
                 self.range(variant, spacing, count)
             } else {
                 (count, count)
@@ -221,8 +288,13 @@ impl Search<'_> {
                 tried.apart = self.fit(&trial, &self.solution, variant.reading).ratio;
                 tried.at_jumps = trial.across_jumps(self.record);
             }
-            self.tried.push(tried);
+            found.tried.push(tried);
         }
+    }
+
+    /// True where no method is claimed: else the numbers of steps that matter are tried.
+    fn wants_ranges(&self) -> bool {
+        self.claimed.is_empty()
     }
 
     /// True where earlier states that a step needs are not all among the rows.
@@ -230,18 +302,22 @@ impl Search<'_> {
         trial.recurrence.back() > 1 && (trial.steps > 1 || !self.complete)
     }
 
-    fn fit_at(&self, variant: &Variant, spacing: f64, steps: u64) -> Option<Fit> {
-        let recurrence = variant.recurrence(self.linear, spacing / steps as f64)?;
-        let trial = Trial::new(self.linear, recurrence, steps, self.record.unit);
-        Some(self.fit(&trial, self.record, variant.reading))
+    /// True where a number of steps agrees, at first sight where every state is there.
+    fn may_hold(&self, variant: &Variant, spacing: f64, steps: u64) -> bool {
+        let recurrence = variant.recurrence(self.linear, spacing / steps as f64);
+        recurrence.is_some_and(|recurrence| {
+            let trial = Trial::new(self.linear, recurrence, steps, self.record.unit);
+            if !self.complete || self.is_free(&trial) {
+                return self.fit(&trial, &self.sheet, variant.reading).holds();
+            }
+            let Sheet { laid, peaks, .. } = &self.sheet;
+            trial.is_finite() && trial.against_rows(laid, peaks, true).holds()
+        })
     }
 
     /// How far numbers of steps about one that agrees agree too.
     fn range(&self, variant: &Variant, spacing: f64, steps: u64) -> (u64, u64) {
-        let holds = |count: u64| {
-            let fit = self.fit_at(variant, spacing, count);
-            fit.is_some_and(|fit| fit.holds())
-        };
+        let holds = |count: u64| self.may_hold(variant, spacing, count);
         let far = |towards: &dyn Fn(u64) -> u64| {
             let (mut inside, mut stride) = (steps, 1);
             while inside.abs_diff(steps) < 3 * steps {
@@ -270,11 +346,12 @@ impl Search<'_> {
     }
 
     /// Nothing is compared where a matrix has overflowed.
-    fn fit(&self, trial: &Trial, record: &Record, reading: Reading) -> Fit {
+    fn fit(&self, trial: &Trial, sheet: &Sheet, reading: Reading) -> Fit {
         if !trial.is_finite() {
             return Fit::NOTHING;
         }
         let either = reading == Reading::EitherSide;
+        let record = &sheet.record;
         if self.is_free(trial) {
             return match self.reference(trial.recurrence.step) {
                 Some(reference) => {
@@ -284,9 +361,9 @@ impl Search<'_> {
             };
         }
         if self.complete {
-            let glance = trial.against_rows(record, &self.pieces, true);
+            let glance = trial.against_rows(&sheet.laid, &sheet.peaks, true);
             if glance.holds() {
-                return trial.against_rows(record, &self.pieces, false);
+                return trial.against_rows(&sheet.laid, &sheet.peaks, false);
             }
             return glance;
         }
@@ -304,7 +381,7 @@ impl Search<'_> {
     }
 
     /// Rows at many spacings: each of them is one step or two.
-    fn uneven(&mut self, variant: &Variant) {
+    fn uneven(&self, variant: &Variant, found: &mut Found) {
         if !self.complete
             || matches!(
                 variant.coefficients,
@@ -313,26 +390,18 @@ impl Search<'_> {
         {
             return;
         }
-        let pairs: Vec<(usize, usize)> = self
-            .pieces
-            .iter()
-            .flat_map(|piece| {
-                (piece.start..piece.start + piece.rows - 1).map(|row| (piece.window, row))
-            })
-            .collect();
         for steps in [1, 2] {
-            let fit = self.uneven_fit(variant, self.record, &pairs, steps);
+            let fit = self.uneven_fit(variant, &self.sheet, steps);
             let (apart, print) = if fit.holds() {
                 (
-                    self.uneven_fit(variant, &self.solution, &pairs, steps)
-                        .ratio,
-                    self.uneven_print(variant, &pairs, steps),
+                    self.uneven_fit(variant, &self.solution, steps).ratio,
+                    self.uneven_print(variant, steps),
                 )
             } else {
                 (f64::NAN, Vec::new())
             };
             if fit.compared > 0 {
-                self.tried.push(Tried {
+                found.tried.push(Tried {
                     method: variant.method,
                     reading: variant.reading,
                     steps,
@@ -348,28 +417,20 @@ impl Search<'_> {
         }
     }
 
-    fn uneven_fit(
-        &self,
-        variant: &Variant,
-        record: &Record,
-        pairs: &[(usize, usize)],
-        steps: u64,
-    ) -> Fit {
-        let stride = pairs.len() / MOST_PAIRS + 1;
+    /// A step from a row to the next, whatever that is.
+    fn over_pair(&self, variant: &Variant, pair: &Laid, steps: u64) -> Option<Trial<'_>> {
+        let step = (pair.times[1] - pair.times[0]) / steps as f64;
+        let recurrence = variant.recurrence(self.linear, step)?;
+        Some(Trial::new(self.linear, recurrence, steps, self.record.unit))
+    }
+
+    fn uneven_fit(&self, variant: &Variant, sheet: &Sheet, steps: u64) -> Fit {
         let mut fit = Fit::NOTHING;
-        for &(window, row) in pairs.iter().step_by(stride) {
-            let times = &record.windows[window].times;
-            let step = (times[row + 1] - times[row]) / steps as f64;
-            let Some(recurrence) = variant.recurrence(self.linear, step) else {
+        for pair in &sheet.laid {
+            let Some(trial) = self.over_pair(variant, pair, steps) else {
                 return Fit::NOTHING;
             };
-            let trial = Trial::new(self.linear, recurrence, steps, record.unit);
-            let piece = Piece {
-                window,
-                start: row,
-                rows: 2,
-            };
-            fit = fit.and(trial.against_rows(record, &[piece], true));
+            fit = fit.and(trial.against_rows(std::slice::from_ref(pair), &sheet.peaks, true));
             if fit.ratio > 1.0 && fit.compared > GLANCE * self.linear.size() {
                 break;
             }
@@ -396,20 +457,17 @@ impl Search<'_> {
         print
     }
 
-    fn uneven_print(&self, variant: &Variant, pairs: &[(usize, usize)], steps: u64) -> Vec<f64> {
-        let Some(&(window, row)) = pairs.get(pairs.len() / 2) else {
-            return Vec::new();
-        };
-        let times = &self.record.windows[window].times;
-        let step = (times[row + 1] - times[row]) / steps as f64;
-        variant
-            .recurrence(self.linear, step)
-            .map_or(Vec::new(), |recurrence| {
-                let trial = Trial::new(self.linear, recurrence, steps, self.record.unit);
-                let mut print: Vec<f64> = trial.across().rows().flatten().copied().collect();
-                print.extend(trial.forced(times[row]));
-                print
-            })
+    fn uneven_print(&self, variant: &Variant, steps: u64) -> Vec<f64> {
+        let laid = &self.sheet.laid;
+        let trial = laid.get(laid.len() / 2).and_then(|pair| {
+            let trial = self.over_pair(variant, pair, steps)?;
+            Some((trial, pair.times[0]))
+        });
+        trial.map_or(Vec::new(), |(trial, time)| {
+            let mut print: Vec<f64> = trial.across().rows().flatten().copied().collect();
+            print.extend(trial.forced(time));
+            print
+        })
     }
 }
 

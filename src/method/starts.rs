@@ -28,7 +28,7 @@ const LEAST_LEFT: usize = 2;
 /// Fewer of them are met by too many starts to say that it fits.
 pub(super) const FEW_LEFT: usize = 8;
 /// Multiplications at most.
-const MOST_WORK: usize = 40_000_000;
+const MOST_WORK: usize = 1_500_000;
 
 /// Lays a method with a memory beside the rows from the start of the file. `reference` is a
 /// one-step recurrence of high order at the same step, which gives a start to correct.
@@ -49,7 +49,8 @@ pub(super) fn with_hidden_start(
         return Fit::NOTHING;
     };
     let per_row = trial.stacked().pow(3) + trial.stacked().pow(2) * unknowns;
-    let most = MOST_ROWS.min(MOST_WORK / per_row.max(1));
+    let fewest = 2 * unknowns.div_ceil(record.width().max(1)) + 8;
+    let most = MOST_ROWS.min((MOST_WORK / per_row.max(1)).max(fewest));
     // An input that jumps at the very start leaves the first row out of every piece.
     let (from, at_start) = (linear.window.0, NEAR * trial.recurrence.step);
     let jumps_at_start = linear.jumps_within(from - at_start, from + at_start);

@@ -16,9 +16,9 @@ use super::jumps::Doubts;
 use super::linear::{Linear, Side};
 use super::march::{March, NEAR, Sides};
 use super::powers::{corner, gathered, identity, to_the_power};
-use super::record::{Piece, Record, Window};
+use super::record::Record;
 use super::recurrence::Recurrence;
-use super::scale::{Rows, Scale};
+use super::scale::Scale;
 use crate::number::Matrix;
 
 /// How well rows agree with a prediction.
@@ -57,11 +57,11 @@ pub struct Trial<'a> {
     /// Its part for the states.
     across: Matrix<f64>,
     /// `sum |C^j|` over the steps of one row: how roundings of single steps add up.
-    gathered: Matrix<f64>,
+    pub(super) gathered: Matrix<f64>,
 }
 
 /// Work in multiplications that one global comparison may cost.
-const GLOBAL_WORK: usize = 20_000_000;
+pub(super) const GLOBAL_WORK: usize = 4_000_000;
 /// Rows compared where only a first impression is wanted.
 pub const GLANCE: usize = 24;
 
@@ -143,6 +143,16 @@ impl<'a> Trial<'a> {
         finite(&self.across) && finite(&self.gathered)
     }
 
+    /// One row on, over the stack and what the inputs are made of.
+    pub(super) fn joined(&self) -> &Matrix<f64> {
+        &self.joined
+    }
+
+    /// Entries of what the inputs are made of.
+    pub(super) fn drive_size(&self) -> usize {
+        self.drive.size
+    }
+
     /// The matrix from row to row.
     pub fn across(&self) -> &Matrix<f64> {
         &self.across
@@ -204,27 +214,7 @@ impl<'a> Trial<'a> {
         self.row_on(&vec![0.0; self.stacked()], time)
     }
 
-    /// What roundings of the steps between two rows can come to, given the largest states
-    /// and the largest forcing with its rate, the time and the number of the row.
-    pub(super) fn rounding(&self, scale: &Scale, time: f64, row: u64) -> Vec<f64> {
-        let recurrence = &self.recurrence;
-        let size = recurrence.size();
-        let spread = recurrence.spread.apply(&scale.states);
-        let pull = recurrence.pull.apply(&scale.forcing);
-        // Times that are summed step by step drift by half a unit in the last place each.
-        let count = (row + 1) as f64 * self.steps as f64;
-        let drift = (count + 4.0) * 0.5 * f64::EPSILON * time.abs() + scale.time_doubt;
-        let swept = recurrence.pull.apply(&scale.slopes);
-        let mut step = vec![0.0; self.stacked()];
-        let newest = self.stacked() - size;
-        for i in 0..size {
-            step[newest + i] =
-                self.unit * recurrence.roundings * (spread[i] + pull[i]) + swept[i] * drift;
-        }
-        self.gathered.apply(&step)
-    }
-
-    /// The same from the largest states alone, with the forcing at the start of the window
+    /// The roundings between two rows from the largest states alone, with the forcing at the start of the window
     /// and over it.
     pub(super) fn noise_between_rows(&self, states: &[f64], row: u64) -> Vec<f64> {
         let linear = self.linear;
@@ -243,183 +233,6 @@ impl<'a> Trial<'a> {
         linear.forcing_slope(time.min(to), Side::After, 0.0, &mut forcing);
         scale.see_slopes(&forcing);
         self.rounding(&scale, time, row)
-    }
-
-    /// Compares a file that holds every state, piece by piece. `glance` looks at few rows
-    /// only.
-    pub fn against_rows(&self, record: &Record, pieces: &[Piece], glance: bool) -> Fit {
-        let Some(places) = record.states(self.linear.size()) else {
-            return Fit::NOTHING;
-        };
-        let rows = Rows { record, places };
-        let peaks = rows.peaks();
-        let mut fit = Fit::NOTHING;
-        for piece in pieces {
-            let window = &record.windows[piece.window];
-            // A method with a memory may have begun anew after a jump.
-            let memory = self.recurrence.back() - 1;
-            let fresh = window.first + piece.start as u64 == 0;
-            let skip = if fresh { 0 } else { memory };
-            let mut piece = *piece;
-            let end = window.times[piece.start + piece.rows - 1];
-            let reach = self.reach();
-            if reach > 0.0 && self.linear.jumps_within(end, end + reach * (1.0 + NEAR)) {
-                piece.rows -= 1;
-            }
-            if piece.rows < skip + memory + 2 {
-                continue;
-            }
-            let piece = Piece {
-                start: piece.start + skip,
-                rows: piece.rows - skip,
-                ..piece
-            };
-            let piece = if glance {
-                Piece {
-                    rows: piece.rows.min(GLANCE),
-                    ..piece
-                }
-            } else {
-                piece
-            };
-            let own = self.local(&rows, window, piece, &peaks);
-            fit = fit.and(own);
-            if !glance && fit.ratio <= 1.0 {
-                let global = self.global(&rows, window, piece, &peaks, false);
-                fit = fit.and(Fit {
-                    residual: 0.0,
-                    astray: global.residual,
-                    ..global
-                });
-            }
-            if fit.ratio > 1.0 && !glance {
-                break;
-            }
-        }
-        fit
-    }
-
-    /// How far the method goes astray from the rows, relative to the peak, when it runs on
-    /// from the first row of each piece; for a method that does not fit them.
-    pub(super) fn astray(&self, record: &Record, pieces: &[Piece]) -> f64 {
-        let Some(places) = record.states(self.linear.size()) else {
-            return 0.0;
-        };
-        let rows = Rows { record, places };
-        let peaks = rows.peaks();
-        let back = self.recurrence.back();
-        let long = pieces.iter().filter(|piece| piece.rows > back);
-        long.fold(0.0, |most, piece| {
-            let window = &record.windows[piece.window];
-            larger(
-                most,
-                self.global(&rows, window, *piece, &peaks, true).residual,
-            )
-        })
-    }
-
-    fn stack(&self, rows: &Rows, window: &Window, row: usize) -> (Vec<f64>, Vec<f64>) {
-        let back = self.recurrence.back();
-        let (mut states, mut doubts) = (Vec::new(), Vec::new());
-        for earlier in (0..back).rev() {
-            states.extend(rows.values(window, row - earlier));
-            doubts.extend(rows.doubts(window, row - earlier));
-        }
-        (states, doubts)
-    }
-
-    fn local(&self, rows: &Rows, window: &Window, piece: Piece, peaks: &[f64]) -> Fit {
-        let size = self.linear.size();
-        let newest = self.stacked() - size;
-        let scale = rows.scale(self.linear, window, piece);
-        let mut fit = Fit::NOTHING;
-        let first = piece.start + self.recurrence.back() - 1;
-        for row in first..piece.start + piece.rows - 1 {
-            let time = window.times[row];
-            let (states, doubts) = self.stack(rows, window, row);
-            let predicted = self.row_on(&states, time);
-            let number = window.first + row as u64;
-            let rounding = self.rounding(&scale, time, number);
-            let next = rows.values(window, row + 1);
-            let next_doubt = rows.doubts(window, row + 1);
-            let rates = rows.rates(window, piece, row);
-            let stamp = 2.0 * f64::EPSILON * window.times[row + 1].abs() + scale.spacing_doubt;
-            for i in 0..size {
-                let line = self.across.row(newest + i);
-                let mut allowed = next_doubt[i] + rounding[newest + i] + rates[i] * stamp;
-                allowed += line
-                    .iter()
-                    .zip(&doubts)
-                    .map(|(m, d)| m.abs() * d)
-                    .sum::<f64>();
-                fit.add((next[i] - predicted[newest + i]).abs(), allowed, peaks[i]);
-            }
-        }
-        fit
-    }
-
-    /// The start of the case in place of the first row of the file, where that is it to its
-    /// digits.
-    fn known_start(&self, rows: &Rows, window: &Window, row: usize) -> Option<Vec<f64>> {
-        if window.first + row as u64 > 0 || self.recurrence.back() > 1 {
-            return None;
-        }
-        let (written, doubts) = (rows.values(window, row), rows.doubts(window, row));
-        let start = &self.linear.start;
-        let near = |i: usize| (written[i] - start[i]).abs() <= doubts[i];
-        (0..start.len()).all(near).then(|| start.clone())
-    }
-
-    /// To the end of the piece, or only up to the first row that the method does not meet.
-    fn global(
-        &self,
-        rows: &Rows,
-        window: &Window,
-        piece: Piece,
-        peaks: &[f64],
-        to_the_end: bool,
-    ) -> Fit {
-        let (size, stacked) = (self.linear.size(), self.stacked());
-        let newest = stacked - size;
-        let scale = rows.scale(self.linear, window, piece);
-        let first = piece.start + self.recurrence.back() - 1;
-        let most = GLOBAL_WORK / stacked.pow(3).max(1);
-        let last = (piece.start + piece.rows - 1).min(first + most.max(4));
-        let (states, start_doubts) = self.stack(rows, window, first);
-        let (mut states, start_doubts) = match self.known_start(rows, window, first) {
-            Some(start) => (start, vec![0.0; stacked]),
-            None => (states, start_doubts),
-        };
-        let mut power = identity(stacked);
-        let mut gathered = vec![0.0; stacked];
-        let steepest = rows.steepest(window, piece);
-        let mut fit = Fit::NOTHING;
-        for row in first..last {
-            let time = window.times[row];
-            states = self.row_on(&states, time);
-            let noise = self.rounding(&scale, time, window.first + row as u64);
-            let carried = power.map(f64::abs).apply(&noise);
-            gathered
-                .iter_mut()
-                .zip(carried)
-                .for_each(|(sum, x)| *sum += x);
-            power = self.across.product(&power);
-            let from_start = power.map(f64::abs).apply(&start_doubts);
-            let written = rows.values(window, row + 1);
-            let doubts = rows.doubts(window, row + 1);
-            let since = (row + 1 - first) as f64;
-            let stamp = (since * self.steps as f64 + 2.0) * f64::EPSILON * time.abs()
-                + since * scale.spacing_doubt;
-            for i in 0..size {
-                let at = newest + i;
-                let allowed = doubts[i] + from_start[at] + gathered[at] + steepest[i] * stamp;
-                fit.add((written[i] - states[at]).abs(), allowed, peaks[i]);
-            }
-            if fit.ratio > 1.0 && !to_the_end {
-                break;
-            }
-        }
-        fit
     }
 
     /// Compares a file that does not hold every state: the method runs from the start of

@@ -13,6 +13,8 @@ mod model;
 mod shape;
 mod written;
 
+use rayon::prelude::*;
+
 use bench::{Gap, Rows, Stepping, Way, trajectory};
 pub use kind::Kind;
 
@@ -156,9 +158,10 @@ pub fn causes(trouble: &Trouble) -> Vec<Cause> {
     let pairs = families
         .iter()
         .flat_map(|family| family.methods.iter().map(move |&method| (*family, method)));
+    let pairs: Vec<_> = pairs.take(MOST_TRIED).collect();
     let by_method = pairs
-        .take(MOST_TRIED)
-        .find_map(|(family, method)| of_method(trouble, &rows, &names, (family, method), before));
+        .par_iter()
+        .find_map_first(|pair| of_method(trouble, &rows, &names, *pair, before));
     let mut found = by_method.unwrap_or_else(|| of_faults(trouble, &rows, &names, before));
     if found.is_empty()
         && let Some(family) = families.first()
@@ -303,7 +306,7 @@ fn of_method(
             sides: Sides::After,
             ..stepping.clone()
         });
-        let late = model::candidates(linear, rows, names, &after, step).into_iter();
+        let late = model::candidates(linear, rows, names, &after, step, before).into_iter();
         candidates.extend(
             late.filter(|late| late.kind == Kind::InputLate && rows.gap(&late.values).is_closed())
                 .map(|late| Candidate {
@@ -341,6 +344,15 @@ fn not_as_claimed(trouble: &Trouble, family: &Family) -> Option<Candidate> {
     };
     let text = format!("{what}: the rows are those of {at}");
     Some(Candidate::new(kind, 0, family.step, Vec::new(), text))
+}
+
+/// Faults on top of one way to make the rows: those that leave nothing, those that leave what
+/// a method would, and noise.
+#[derive(Default)]
+struct Beside {
+    found: Vec<Ranked>,
+    loose: Vec<Ranked>,
+    smooth: Option<Candidate>,
 }
 
 /// No method explains the rows: faults on top of the exact solution, of the claimed method
@@ -388,8 +400,6 @@ fn of_faults(trouble: &Trouble, rows: &Rows, names: &Names, before: Gap) -> Vec<
         }
     }
     let model_step = step.unwrap_or(0.0);
-    let mut loose: Vec<Ranked> = Vec::new();
-    let mut smooth: Option<Candidate> = None;
     let healthy = healthy_share(trouble, rows, step);
     // Any method moves the rates of a model a little, by up to half of what the fastest
     // mode does in a step: a scale within that is no fault.
@@ -399,12 +409,13 @@ fn of_faults(trouble: &Trouble, rows: &Rows, names: &Names, before: Gap) -> Vec<
             .number
             .is_some_and(|factor| factor.ln().abs() > 0.6 * fastest)
     };
-    for (way, method) in &ways {
+    let beside = |(way, method): &(Way, Option<&'static Method>)| {
+        let mut one = Beside::default();
         let base = match way {
             Way::Exact => Some(rows.exact.clone()),
             way => trajectory(linear, rows, way),
         };
-        let Some(base) = base else { continue };
+        let Some(base) = base else { return one };
         let mut candidates = written::candidates(rows, names, &base, 0.0);
         let exact = matches!(way, Way::Exact);
         if exact {
@@ -417,7 +428,9 @@ fn of_faults(trouble: &Trouble, rows: &Rows, names: &Names, before: Gap) -> Vec<
             ));
         }
         if model_step > 0.0 {
-            candidates.extend(model::candidates(linear, rows, names, way, model_step));
+            candidates.extend(model::candidates(
+                linear, rows, names, way, model_step, before,
+            ));
         }
         for candidate in candidates {
             let after = rows.gap(&candidate.values);
@@ -425,16 +438,27 @@ fn of_faults(trouble: &Trouble, rows: &Rows, names: &Names, before: Gap) -> Vec<
             // A number that was looked for is known to its own rounding only.
             let tight = after.is_closed() || left_over <= FOUND;
             if tight && !(exact && candidate.kind == Kind::RateScaled && !fast_enough(&candidate)) {
-                found.push(ranked(candidate, left_over, *method, after.ratio));
+                let one_more = ranked(candidate, left_over, *method, after.ratio);
+                one.found.push(one_more);
             } else if exact
                 && before.share >= STANDS_OUT * healthy
                 && after.share <= 1.5 * healthy
                 && left_over <= TAKES_AWAY
             {
-                loose.push(ranked(candidate, left_over, None, after.share));
+                let one_more = ranked(candidate, left_over, None, after.share);
+                one.loose.push(one_more);
             }
         }
-        if let Some(candidate) = shape::noise(rows, names, &base)
+        one.smooth = shape::noise(rows, names, &base);
+        one
+    };
+    let all: Vec<Beside> = ways.par_iter().map(beside).collect();
+    let mut loose: Vec<Ranked> = Vec::new();
+    let mut smooth: Option<Candidate> = None;
+    for one in all {
+        found.extend(one.found);
+        loose.extend(one.loose);
+        if let Some(candidate) = one.smooth
             && smooth
                 .as_ref()
                 .is_none_or(|known| candidate.number < known.number)

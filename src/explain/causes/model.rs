@@ -1,23 +1,25 @@
 //! Faults in the model that was run: inputs late, early, held or missing, a wrong start, a
 //! rate scaled, jumps between steps or at stages, pulses that no step has seen.
 
-use super::bench::{Rows, Way, trajectory};
+use super::bench::{Gap, Rows, Way, trajectory};
 use super::written::slip;
-use super::{Candidate, Kind, Names};
+use super::{Candidate, FOUND, Kind, Names};
 use crate::method::{Linear, Reading, Signal};
 use crate::number::{plain, short};
 
 /// Every fault of this kind that could have turned the model, solved in one way, into what
-/// is written. `step` is the one of the program, as far as it is known.
+/// is written. `step` is the one of the program, as far as it is known; what cannot explain
+/// an error of `before` need not be among them.
 pub(super) fn candidates(
     linear: &Linear,
     rows: &Rows,
     names: &Names,
     way: &Way,
     step: f64,
+    before: Gap,
 ) -> Vec<Candidate> {
     let mut found = Vec::new();
-    found.extend(moved_inputs(linear, rows, names, way, step));
+    found.extend(moved_inputs(linear, rows, names, way, step, before));
     found.extend(missing_inputs(linear, rows, names, way, step));
     found.extend(scaled_inputs(linear, rows, names, way));
     found.extend(held(linear, rows, names, way, step));
@@ -35,8 +37,19 @@ fn moved_inputs(
     names: &Names,
     way: &Way,
     step: f64,
+    before: Gap,
 ) -> Vec<Candidate> {
     let mut found = Vec::new();
+    // There are many shifts: the first rows rule most of them out.
+    let few = rows.few();
+    let exact = matches!(way, Way::Exact);
+    let may_explain = |moved: &Linear| {
+        exact
+            || trajectory(moved, &few, way).is_some_and(|values| {
+                let gap = few.gap(&values);
+                gap.is_closed() || gap.share <= FOUND * before.share
+            })
+    };
     let moving: Vec<usize> = (0..linear.signals.len())
         .filter(
             |&input| !matches!(&linear.signals[input], Signal::Held(_, edges) if edges.is_empty()),
@@ -53,6 +66,9 @@ fn moved_inputs(
                 let mut moved = linear.clone();
                 for &input in &inputs {
                     moved.signals[input] = linear.signals[input].later(by);
+                }
+                if !may_explain(&moved) {
+                    continue;
                 }
                 let Some(values) = trajectory(&moved, rows, way) else {
                     continue;

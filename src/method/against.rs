@@ -1,0 +1,213 @@
+//! A method beside a file that holds every state: the local and the global test.
+
+use super::laid::Laid;
+use super::march::NEAR;
+use super::powers::identity;
+use super::scale::Scale;
+use super::trial::{Fit, GLANCE, GLOBAL_WORK, Trial, larger};
+use crate::number::dot;
+
+/// What roundings of the steps between two rows can come to: a part of its own, and one
+/// that grows with how far times have drifted.
+struct Noise {
+    fixed: Vec<f64>,
+    swept: Vec<f64>,
+    time_doubt: f64,
+    steps: f64,
+}
+
+impl Noise {
+    /// How far the times of the steps after a row can have drifted: times that are summed
+    /// step by step drift by half a unit in the last place each.
+    fn drift(&self, time: f64, row: u64) -> f64 {
+        let count = (row + 1) as f64 * self.steps;
+        (count + 4.0) * 0.5 * f64::EPSILON * time.abs() + self.time_doubt
+    }
+}
+
+impl Trial<'_> {
+    fn noise(&self, scale: &Scale) -> Noise {
+        let recurrence = &self.recurrence;
+        let size = recurrence.size();
+        let spread = recurrence.spread.apply(&scale.states);
+        let pull = recurrence.pull.apply(&scale.forcing);
+        let slopes = recurrence.pull.apply(&scale.slopes);
+        let newest = self.stacked() - size;
+        let (mut fixed, mut swept) = (vec![0.0; self.stacked()], vec![0.0; self.stacked()]);
+        for i in 0..size {
+            fixed[newest + i] = self.unit * recurrence.roundings * (spread[i] + pull[i]);
+            swept[newest + i] = slopes[i];
+        }
+        Noise {
+            fixed: self.gathered.apply(&fixed),
+            swept: self.gathered.apply(&swept),
+            time_doubt: scale.time_doubt,
+            steps: self.steps as f64,
+        }
+    }
+
+    /// What roundings of the steps between two rows can come to, given the largest states
+    /// and the largest forcing with its rate, the time and the number of the row.
+    pub(super) fn rounding(&self, scale: &Scale, time: f64, row: u64) -> Vec<f64> {
+        let noise = self.noise(scale);
+        let drift = noise.drift(time, row);
+        let pairs = noise.fixed.iter().zip(&noise.swept);
+        pairs.map(|(fixed, swept)| fixed + swept * drift).collect()
+    }
+
+    /// Compares a file that holds every state, piece by piece. `glance` looks at few rows
+    /// only.
+    pub(super) fn against_rows(&self, pieces: &[Laid], peaks: &[f64], glance: bool) -> Fit {
+        let mut fit = Fit::NOTHING;
+        for laid in pieces {
+            let Some((start, mut end)) = self.compared(laid) else {
+                continue;
+            };
+            if glance {
+                end = end.min(start + GLANCE);
+            }
+            let noise = self.noise(&laid.scale);
+            fit = fit.and(self.local(laid, &noise, start, end, peaks));
+            if !glance && fit.ratio <= 1.0 {
+                let global = self.global(laid, &noise, start, end, peaks, false);
+                fit = fit.and(Fit {
+                    residual: 0.0,
+                    astray: global.residual,
+                    ..global
+                });
+            }
+            if fit.ratio > 1.0 && !glance {
+                break;
+            }
+        }
+        fit
+    }
+
+    /// The first row that a step is started from with all that came before it, and the end of
+    /// the rows; `None` where too few are left.
+    fn compared(&self, laid: &Laid) -> Option<(usize, usize)> {
+        // A method with a memory may have begun anew after a jump.
+        let memory = self.recurrence.back() - 1;
+        let skip = if laid.first == 0 { 0 } else { memory };
+        let mut rows = laid.rows();
+        let end = laid.times[rows - 1];
+        let reach = self.reach();
+        if reach > 0.0 && self.linear.jumps_within(end, end + reach * (1.0 + NEAR)) {
+            rows -= 1;
+        }
+        (rows >= skip + memory + 2).then_some((skip, rows))
+    }
+
+    /// How far the method goes astray from the rows, relative to the peak, when it runs on
+    /// from the first row of each piece; for a method that does not fit them.
+    pub(super) fn astray(&self, pieces: &[Laid], peaks: &[f64]) -> f64 {
+        let long = pieces
+            .iter()
+            .filter(|laid| laid.rows() > self.recurrence.back());
+        long.fold(0.0, |most, laid| {
+            let noise = self.noise(&laid.scale);
+            let global = self.global(laid, &noise, 0, laid.rows(), peaks, true);
+            larger(most, global.residual)
+        })
+    }
+
+    /// Consecutive rows put into the difference equation of the method.
+    fn local(&self, laid: &Laid, noise: &Noise, start: usize, end: usize, peaks: &[f64]) -> Fit {
+        let (size, stacked) = (self.linear.size(), self.stacked());
+        let (newest, driven) = (stacked - size, self.drive_size());
+        let mut fit = Fit::NOTHING;
+        for row in start + self.recurrence.back() - 1..end - 1 {
+            let time = laid.times[row];
+            let stack = (row + 1) * size - stacked..(row + 1) * size;
+            let drive = &laid.drive[row * driven..][..driven];
+            let drift = noise.drift(time, laid.first + row as u64);
+            let stamp = 2.0 * f64::EPSILON * laid.times[row + 1].abs() + laid.scale.spacing_doubt;
+            for (i, peak) in peaks.iter().enumerate() {
+                let line = self.joined().row(newest + i);
+                let values = &laid.values[stack.clone()];
+                let predicted = dot(&line[..stacked], values) + dot(&line[stacked..], drive);
+                let doubts = laid.doubts[stack.clone()].iter();
+                let carried = line.iter().zip(doubts);
+                let carried: f64 = carried.map(|(m, d)| m.abs() * d).sum();
+                let next = (row + 1) * size + i;
+                let rounding = noise.fixed[newest + i] + noise.swept[newest + i] * drift;
+                let allowed =
+                    laid.doubts[next] + rounding + laid.rates[row * size + i] * stamp + carried;
+                fit.add((laid.values[next] - predicted).abs(), allowed, *peak);
+            }
+        }
+        fit
+    }
+
+    /// The start of the case in place of the first row of the file, where that is it to its
+    /// digits.
+    fn known_start(&self, laid: &Laid, row: usize) -> Option<Vec<f64>> {
+        if laid.first + row as u64 > 0 || self.recurrence.back() > 1 {
+            return None;
+        }
+        let start = &self.linear.start;
+        let near = |i: usize| (laid.values[i] - start[i]).abs() <= laid.doubts[i];
+        (0..start.len()).all(near).then(|| start.clone())
+    }
+
+    /// The method run on to the end, or only up to the first row that it does not meet.
+    fn global(
+        &self,
+        laid: &Laid,
+        noise: &Noise,
+        start: usize,
+        end: usize,
+        peaks: &[f64],
+        to_the_end: bool,
+    ) -> Fit {
+        let (size, stacked) = (self.linear.size(), self.stacked());
+        let (newest, driven) = (stacked - size, self.drive_size());
+        let first = start + self.recurrence.back() - 1;
+        let most = GLOBAL_WORK / stacked.pow(3).max(1);
+        let last = (end - 1).min(first + most.max(4));
+        let stack = (first + 1) * size - stacked..(first + 1) * size;
+        let (mut states, start_doubts) = match self.known_start(laid, first) {
+            Some(start) => (start, vec![0.0; stacked]),
+            None => (
+                laid.values[stack.clone()].to_vec(),
+                laid.doubts[stack].to_vec(),
+            ),
+        };
+        let mut power = identity(stacked);
+        let mut gathered = vec![0.0; stacked];
+        let mut fit = Fit::NOTHING;
+        for row in first..last {
+            let time = laid.times[row];
+            let drive = &laid.drive[row * driven..][..driven];
+            let lines = self.joined().rows().take(stacked);
+            let on = |line: &[f64]| dot(&line[..stacked], &states) + dot(&line[stacked..], drive);
+            states = lines.map(on).collect();
+            let drift = noise.drift(time, laid.first + row as u64);
+            let made = noise.fixed.iter().zip(&noise.swept);
+            let made: Vec<f64> = made.map(|(fixed, swept)| fixed + swept * drift).collect();
+            for (sum, line) in gathered.iter_mut().zip(power.rows()) {
+                *sum += absolute_dot(line, &made);
+            }
+            power = self.across().product(&power);
+            let since = (row + 1 - first) as f64;
+            let stamp = (since * self.steps as f64 + 2.0) * f64::EPSILON * time.abs()
+                + since * laid.scale.spacing_doubt;
+            for (i, peak) in peaks.iter().enumerate() {
+                let at = newest + i;
+                let next = (row + 1) * size + i;
+                let from_start = absolute_dot(power.row(at), &start_doubts);
+                let allowed =
+                    laid.doubts[next] + from_start + gathered[at] + laid.steepest[i] * stamp;
+                fit.add((laid.values[next] - states[at]).abs(), allowed, *peak);
+            }
+            if fit.ratio > 1.0 && !to_the_end {
+                break;
+            }
+        }
+        fit
+    }
+}
+
+fn absolute_dot(line: &[f64], values: &[f64]) -> f64 {
+    line.iter().zip(values).map(|(m, x)| m.abs() * x).sum()
+}
