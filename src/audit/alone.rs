@@ -248,7 +248,7 @@ fn judge_alone(names: &[String], runs: &[Sampled], submission: &Submission, audi
                 large: false,
             }
         };
-        let order = judge::of_order(&sight, claimed, slack, false);
+        let order = judge::of_order(&sight, claimed, slack, None);
         if let Some(share) = share {
             audited.notes.push(format!(
                 "`{name}`: the finest run lies within {:.2} % of the peak (grid convergence index)",

@@ -179,14 +179,15 @@ fn audit_one(
     }
     assign_roles(&mut compared);
     note_hidden_rungs(&compared, &mut audited.notes);
+    let mut found = evidence::ask(&model, submission, &compared);
     judge_orders(
         &model.case,
         submission,
         &compared,
+        &found,
         model.time_constant,
         &mut audited,
     );
-    let mut found = evidence::ask(&model, submission, &compared);
     audited.runs = compared.iter().map(|one| one.outcome.clone()).collect();
     judge_runs(&mut audited);
     causes::look(&model, submission, &compared, &mut found, &mut audited);

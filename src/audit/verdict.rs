@@ -1,11 +1,12 @@
 //! The runs of a submission together: which are results, what order they show, what
 //! the whole comes to.
 
+use super::evidence::{RunFound, claimed_methods};
 use super::run::RunCompared;
 use crate::case::Case;
 use crate::compare::{Rung, Sight, observe};
 use crate::explain::{self, Place};
-use crate::judge::{self, Verdict};
+use crate::judge::{self, Support, Verdict};
 use crate::method;
 use crate::number::{plain, short};
 use crate::outcome::{Audited, ChannelOutcome, OrderOutcome, RunOutcome};
@@ -70,10 +71,23 @@ pub(super) fn rung_setting(run: &RunOutcome) -> Option<f64> {
     }
 }
 
+/// True where the rows are those of a method of two steps: a first step at one order less
+/// leaves the order as it is, yet counts as much as all others at moderate steps.
+fn starts_low(submission: &Submission, found: &[RunFound]) -> bool {
+    let methods = claimed_methods(submission);
+    let two = |m: &&crate::method::Method| m.schemes.iter().all(|scheme| scheme.steps_back() == 2);
+    let agrees = |one: &RunFound| {
+        let answer = one.answer.as_ref();
+        answer.is_some_and(|answer| answer.method == Some(Support::Agrees))
+    };
+    !methods.is_empty() && methods.iter().all(two) && found.iter().all(agrees)
+}
+
 pub(super) fn judge_orders(
     case: &Case,
     submission: &Submission,
     runs: &[RunCompared],
+    found: &[RunFound],
     time_constant: Option<f64>,
     audited: &mut Audited,
 ) {
@@ -127,7 +141,14 @@ pub(super) fn judge_orders(
         .iter()
         .filter_map(|run| rung_setting(&run.outcome))
         .fold(f64::INFINITY, f64::min);
-    let unresolved = time_constant.is_some_and(|constant| finest > constant) && !tolerances;
+    let fast = time_constant.is_some_and(|constant| finest > constant) && !tolerances;
+    let unsettled = if fast {
+        Some("the steps do not resolve the fastest mode")
+    } else if starts_low(submission, found) {
+        Some("the first steps, made at a lower order, still count")
+    } else {
+        None
+    };
     for (index, channel) in case.channels().iter().enumerate() {
         let rungs: Option<Vec<Rung>> = runs.iter().map(|run| rung(run, index)).collect();
         let sight = match rungs {
@@ -144,7 +165,7 @@ pub(super) fn judge_orders(
             }
             None => Sight::TooFew("not every run has a step and values".to_owned()),
         };
-        let mut order = judge::of_order(&sight, claimed, slack, unresolved);
+        let mut order = judge::of_order(&sight, claimed, slack, unsettled);
         if let Some(claimed) = claimed
             && let Some(reason) = explain::order_reason(channel.name, claimed, &order)
         {

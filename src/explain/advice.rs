@@ -93,7 +93,8 @@ pub fn advice(asked: &Asked, computed: Option<Computed>) -> Option<AdviceOutcome
             let kept = largest.kept.as_ref().or(hits);
             largest_step = kept.map(|run| run.step);
             ruled_by = largest.ruled_by.filter(|_| kept.is_some());
-        } else if let (Some(stable), Some(step)) = (stable, largest_step)
+        }
+        if let (Some(stable), Some(step)) = (stable, largest_step)
             && step > stable
         {
             largest_step = rounded_down(stable);
@@ -123,6 +124,12 @@ fn of_method(method: &MethodSteps, time_unit: &str) -> String {
         Some(0.0) => "stable at no step".to_owned(),
         Some(stable) => format!("stable up to {} {time_unit}", few(*stable)),
     };
+    // It keeps the limit only because the window ends before it has run away.
+    let too_long = |stable: &f64| kept.as_ref().is_some_and(|kept| kept.step > *stable);
+    if let Some(stable) = approx_stable.filter(|stable| *stable > 0.0 && too_long(stable)) {
+        let few = few(stable);
+        return format!("{name} by itself: up to {few} {time_unit} (stability rules)");
+    }
     match kept {
         Some(kept) => {
             let rule = match ruled_by {

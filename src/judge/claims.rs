@@ -1,9 +1,14 @@
 //! What the rows say of a claimed method and step: they agree, contradict, or cannot tell.
 //!
-//! A claim is contradicted only by a bound: the rows differ from what the claimed method
-//! would have written by more than digits and rounding allow, and nothing honest explains
-//! it (a solution by iteration, an adaptive code, a step that nobody stated).
+//! A claim is contradicted only where a bound is broken: the rows differ from what the claimed
+//! method would have written by more than digits and rounding allow. Beyond the bound, what an
+//! honest program may leave (a solution by iteration, an adaptive code, a step that nobody
+//! stated) is told by thresholds, see `chance.rs`, that only ever leave a claim open.
 
+use super::chance::{
+    BY_CHANCE_FEW, ITERATION, LAST_DIGITS, binds, far_closer, is_implicit, is_unfinished,
+};
+use super::words::{family_at, of_peak, reading, share};
 use crate::method::{Evidence, Family, Method, Reading, Skipped, Tried};
 use crate::number::{plain, short};
 
@@ -74,25 +79,9 @@ impl Answer {
 
 /// A residual this many times below that of every other method is near to its own.
 const FAR_BELOW: f64 = 0.05;
-/// Codes that solve implicit steps by iteration stop at tolerances up to about this part
-/// of the state (common practice, no source).
-const ITERATION: f64 = 1e-5;
-
-/// What an iteration may leave of the peak however tight its tolerance: it stops where its
-/// own roundings end.
-const LAST_DIGITS: f64 = 256.0 * f64::EPSILON;
 /// A pair that fits within a wide bound is not what wrote the rows where another one comes
 /// so many times closer.
 const FAR_BEYOND: f64 = 100.0;
-/// A fit that leaves no more than this part of the residual of another one is not met by
-/// chance, over eight comparisons or more.
-const BY_CHANCE: f64 = 0.05;
-/// The same for a method whose start is free to choose, over more comparisons than a few, and
-/// for one that the exact solution is near to.
-const BY_CHANCE_FREE: f64 = 1e-3;
-/// The same over few comparisons, for the method claimed at another step.
-const BY_CHANCE_FEW: f64 = 1e-4;
-
 /// What the rows of one run say of its claim; `None` where nothing is claimed.
 pub fn of_claim(evidence: &Evidence, claimed: &Claimed) -> Option<Answer> {
     if claimed.name.is_none() && claimed.step.is_none() {
@@ -184,7 +173,7 @@ fn of_method(evidence: &Evidence, claimed: &Claimed, cannot: &dyn Fn(String) -> 
             );
             return cannot(text);
         }
-        let outdone = evidence.outdone(own, claimed.unit);
+        let outdone = evidence.outdone(own, claimed.methods, claimed.unit);
         let far = outdone.filter(|(times, _)| *times > FAR_BEYOND && !own.free);
         if let Some((times, family)) = far {
             let text = format!(
@@ -195,7 +184,7 @@ fn of_method(evidence: &Evidence, claimed: &Claimed, cannot: &dyn Fn(String) -> 
             );
             return all(Support::Contradicts, text);
         }
-        if evidence.is_left_out(own) && own.at_jumps.ratio <= 1.0 {
+        if evidence.is_left_out(own, claimed.methods) && own.at_jumps.ratio <= 1.0 {
             return cannot(format!(
                 "the rows fit {label} within what its steps can round, yet something else comes \
                  closer; print more digits, or write every state and every step"
@@ -205,18 +194,24 @@ fn of_method(evidence: &Evidence, claimed: &Claimed, cannot: &dyn Fn(String) -> 
         {
             return cannot(early(own, &label));
         }
-        if let Some(family) = evidence.better_at_jumps(own) {
+        if let Some(family) = evidence.better_at_jumps(own, claimed.methods) {
             let text = format!(
                 "the steps at jumps of the inputs fit {}, not {label} on either side of them",
                 family_at(family, claimed.time_unit)
             );
             return all(Support::Contradicts, text);
         }
-        if own.at_jumps.ratio > 1.0 && !evidence.any_at_jumps(own) {
+        if own.at_jumps.ratio > 1.0 && !evidence.any_at_jumps(own, claimed.methods) {
             return cannot(format!(
                 "the rows fit {label} between the jumps of the inputs and not at them ({} of the \
                  peak off, on whichever side); a case without jumps would tell",
                 short(own.at_jumps.residual)
+            ));
+        }
+        if own.apart <= 1.0 {
+            return cannot(format!(
+                "the rows fit {label}, and the exact solution as well; more digits, a larger step \
+                 or a case with a moving input would tell them apart"
             ));
         }
         let mut text = format!(
@@ -257,8 +252,8 @@ fn of_method(evidence: &Evidence, claimed: &Claimed, cannot: &dyn Fn(String) -> 
     }
     let off = own.map_or(String::new(), |own| {
         format!(
-            " (off by {} of the peak, {} times what digits and rounding allow)",
-            short(own.fit.residual),
+            " (off by {}, {} times what digits and rounding allow)",
+            of_peak(own.fit.residual),
             short(own.fit.ratio)
         )
     });
@@ -321,8 +316,9 @@ fn of_method(evidence: &Evidence, claimed: &Claimed, cannot: &dyn Fn(String) -> 
         let step = stated * claimed.steps.unwrap_or_default() as f64 / other as f64;
         let step = format!(" {} {}", short(step), claimed.time_unit);
         let text = format!(
-            "the rows fit {name} at step{step}, not {}{off}",
-            plain(stated)
+            "the rows fit {name} at step{step}, not {} {}{off}",
+            plain(stated),
+            claimed.time_unit
         );
         return Answer {
             support: Support::Contradicts,
@@ -392,46 +388,12 @@ fn of_method(evidence: &Evidence, claimed: &Claimed, cannot: &dyn Fn(String) -> 
     all(Support::Contradicts, text)
 }
 
-fn is_implicit(method: &Method) -> bool {
-    method.schemes.iter().any(|scheme| scheme.is_implicit())
-}
-
 fn early(own: &Tried, label: &str) -> String {
     format!(
         "the rows are {} of the peak away from {label}, which an iteration that stops early would \
          explain; a tighter tolerance of its solver would settle it",
         short(own.fit.residual)
     )
-}
-
-/// True where a family fits so closely that what an iteration had left would have had to
-/// hit it by chance: the exact solution is no such family, see [`Evidence::is_exact`].
-fn binds(family: &Family, own: &Tried) -> bool {
-    if family.free {
-        family.is_compared_well() && far_closer(family, own)
-    } else {
-        closer(family, own, BY_CHANCE)
-    }
-}
-
-/// True where a family without an iteration may be the claimed one with a given number of
-/// iterations: from row to row both are polynomials of the step, and close to each other.
-fn is_unfinished(family: &Family, own: &Tried) -> bool {
-    is_implicit(own.method)
-        && own.fit.residual <= ITERATION
-        && family.steps == own.steps
-        && !family.methods.iter().all(|method| is_implicit(method))
-}
-
-fn far_closer(family: &Family, own: &Tried) -> bool {
-    closer(family, own, BY_CHANCE_FREE)
-}
-
-fn closer(family: &Family, own: &Tried, by_chance: f64) -> bool {
-    family.reading == Reading::AtNodes
-        && family.steps <= Family::MANY_STEPS
-        && (family.fit.residual <= by_chance * own.fit.residual
-            || family.fit.astray <= by_chance * own.fit.astray)
 }
 
 /// A step without a method: what the consistent methods say.
@@ -464,54 +426,10 @@ fn of_step_alone(evidence: &Evidence, claimed: &Claimed) -> Option<Answer> {
         return None;
     }
     let text = format!(
-        "the rows fit {}, and no method at step {}",
+        "the rows fit {}, and no method at step {} {}",
         family_at(family, claimed.time_unit),
-        plain(stated)
+        plain(stated),
+        claimed.time_unit
     );
     Some(answer(Support::Contradicts, text))
-}
-
-/// A family with its step, in words.
-pub fn family_at(family: &Family, time_unit: &str) -> String {
-    let mut text = family_name(family);
-    if let Some(step) = family.step {
-        text += &format!(" at step {} {time_unit}", short(step));
-    } else if family.steps == 1 {
-        text += " at the spacing of the rows";
-    } else {
-        text += " at half the spacing of the rows";
-    }
-    if family.reading != Reading::AtNodes {
-        text += &format!(" with inputs {}", reading(family.reading));
-    }
-    text
-}
-
-/// The methods of a family under one name.
-pub fn family_name(family: &Family) -> String {
-    let names: Vec<&str> = family.methods.iter().map(|method| method.name).collect();
-    match names.len() {
-        0..=4 => names.join(" / "),
-        more => format!("{} and {} more", names[..3].join(" / "), more - 3),
-    }
-}
-
-/// How inputs are read, in words.
-pub fn reading(reading: Reading) -> &'static str {
-    match reading {
-        Reading::AtNodes => "read at the stages",
-        Reading::Held => "held from the start of each step",
-        Reading::FromEnd => "held from the end of each step",
-        Reading::Mean => "averaged over each step",
-        Reading::Linear => "tabulated at the steps and linear in between",
-        Reading::EitherSide => "read on either side of their jumps",
-    }
-}
-
-fn share(ratio: f64) -> String {
-    if ratio < 0.005 {
-        "less than 1 %".to_owned()
-    } else {
-        format!("{:.0} %", 100.0 * ratio)
-    }
 }

@@ -4,10 +4,13 @@
 //! can resolve does not change it (`[jcgm-106]` in [`crate::references`]).
 
 mod ask;
+mod chance;
 mod claims;
+mod words;
 
 pub use ask::ask;
-pub use claims::{Answer, Claimed, Support, family_at, family_name, of_claim, reading};
+pub use claims::{Answer, Claimed, Support, of_claim};
+pub use words::{family_at, family_name, reading};
 
 use crate::compare::{Deviation, Margin, Pair, Sight};
 
@@ -87,10 +90,15 @@ pub fn of_deviation(deviation: &Deviation, rows: u64) -> Verdict {
     }
 }
 
-/// The verdict on an order; `unresolved` where even the finest step is longer than the
-/// shortest time constant, so that no order can be expected yet.
-pub fn of_order(sight: &Sight, claimed: Option<f64>, slack: f64, unresolved: bool) -> OrderVerdict {
-    let mut unresolved = unresolved;
+/// The verdict on an order; `unsettled` is why no order can be expected yet, if so: even the
+/// finest step is longer than the shortest time constant, say.
+pub fn of_order(
+    sight: &Sight,
+    claimed: Option<f64>,
+    slack: f64,
+    unsettled: Option<&str>,
+) -> OrderVerdict {
+    let mut unsettled = unsettled;
     let (pairs, agreeing, usable) = match sight {
         Sight::ExactForThisCase => {
             return OrderVerdict {
@@ -114,13 +122,15 @@ pub fn of_order(sight: &Sight, claimed: Option<f64>, slack: f64, unresolved: boo
             usable,
             large,
         } => {
-            unresolved |= large;
+            if *large {
+                unsettled = unsettled.or(Some("the errors are too large for it"));
+            }
             (pairs, *agreeing, *usable)
         }
     };
     let Some(&finest) = pairs.last() else {
         let none = Sight::TooFew("no pair of runs".to_owned());
-        return of_order(&none, claimed, slack, unresolved);
+        return of_order(&none, claimed, slack, unsettled);
     };
     let list = || {
         let orders: Vec<String> = pairs
@@ -154,11 +164,11 @@ pub fn of_order(sight: &Sight, claimed: Option<f64>, slack: f64, unresolved: boo
             _ => 0.0,
         };
         let on_its_way = finest.high + ahead >= claimed - slack;
-        if settled && !on_its_way && !unresolved {
+        if settled && !on_its_way && unsettled.is_none() {
             return Verdict::Fail;
         }
         if pairs.len() == 1 {
-            if finest.high < claimed - slack.max(SINGLE_PAIR_SLACK) && !unresolved {
+            if finest.high < claimed - slack.max(SINGLE_PAIR_SLACK) && unsettled.is_none() {
                 return Verdict::Fail;
             }
             note = Some("one pair of runs cannot show that the order has settled".to_owned());
@@ -169,17 +179,14 @@ pub fn of_order(sight: &Sight, claimed: Option<f64>, slack: f64, unresolved: boo
         // Nor do pairs that move away from it and never were there.
         let falls = pairs.len() > 2 && pairs.windows(2).all(|two| two[1].order < two[0].order);
         let leaves = falls && !pairs.iter().any(reaches);
-        if (hopeless || leaves) && !on_its_way && !unresolved {
+        if (hopeless || leaves) && !on_its_way && unsettled.is_none() {
             return Verdict::Fail;
         }
-        note = Some(if unresolved {
-            format!(
-                "the steps do not resolve the fastest mode: {}; add finer runs",
-                list()
-            )
-        } else {
-            format!("the order has not settled: {}; add finer runs", list())
-        });
+        let why = unsettled.map_or(String::new(), |why| format!(": {why}"));
+        note = Some(format!(
+            "the order has not settled ({}){why}; add finer runs",
+            list()
+        ));
         Verdict::Undecided
     });
     if verdict.is_none() && !settled && pairs.len() > 1 {
@@ -246,7 +253,7 @@ mod tests {
             usable,
             large: false,
         };
-        of_order(&sight, Some(claimed), ORDER_SLACK, false)
+        of_order(&sight, Some(claimed), ORDER_SLACK, None)
             .verdict
             .unwrap()
     }

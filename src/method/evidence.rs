@@ -98,6 +98,8 @@ pub struct Evidence {
 const MANY_COMPARED: usize = 16;
 /// So many times closer to the rows than the exact solution comes nothing by chance.
 const SHARP: f64 = 1e6;
+/// A residual below this part of what is allowed says no more than one at it.
+const LEAST_RATIO: f64 = 1e-3;
 /// Pieces that are compared at most, the first one among them.
 const MOST_PIECES: usize = 16;
 /// Entries of the matrices of two methods that differ by less than this part of them are
@@ -171,7 +173,7 @@ impl Family {
             && self.steps <= Family::MANY_STEPS
             && self.is_compared_well()
             && self.apart > 1.0
-            && self.apart > SHARP * self.fit.ratio
+            && self.apart > SHARP * self.fit.ratio.max(LEAST_RATIO)
     }
 
     /// True over more comparisons than a few.
@@ -202,11 +204,9 @@ impl Evidence {
     }
 
     /// How many times closer to the rows than a consistent pair something else comes, see [`Tried::outdoes`]; with what that is.
-    pub fn outdone(&self, own: &Tried, unit: f64) -> Option<(f64, &Family)> {
-        // Some other form of the method may be the one.
-        let same = |f: &&Family| {
-            f.steps == own.steps && f.methods.iter().any(|m| m.name == own.method.name)
-        };
+    pub fn outdone(&self, own: &Tried, claimed: &[&Method], unit: f64) -> Option<(f64, &Family)> {
+        // Some other form of the method, or another one of its name, may be the one.
+        let same = |f: &&Family| f.steps == own.steps && is_any(&f.methods, claimed);
         let families = self.consistent.iter();
         let well = |f: &&Family| !f.free || f.is_compared_well();
         let plain = families
@@ -230,23 +230,21 @@ impl Evidence {
 
     /// True where a pair that agrees was left out of the consistent ones: something else
     /// explains the rows better.
-    pub fn is_left_out(&self, own: &Tried) -> bool {
-        let has = |m: &&Method| m.name == own.method.name;
-        let own = |f: &Family| f.steps == own.steps && f.methods.iter().any(has);
+    pub fn is_left_out(&self, own: &Tried, claimed: &[&Method]) -> bool {
+        let own = |f: &Family| f.steps == own.steps && is_any(&f.methods, claimed);
         !self.consistent.iter().any(own)
     }
 
-    /// True where any form of the method agrees with the steps at jumps.
-    pub fn any_at_jumps(&self, own: &Tried) -> bool {
-        let same = |t: &Tried| t.method.name == own.method.name && t.steps == own.steps;
+    /// True where any form of the claimed methods agrees with the steps at jumps.
+    pub fn any_at_jumps(&self, own: &Tried, claimed: &[&Method]) -> bool {
+        let same = |t: &Tried| is_any(&[t.method], claimed) && t.steps == own.steps;
         self.tried.iter().any(|t| same(t) && t.at_jumps.holds())
     }
 
     /// What agrees with the steps at jumps of an input where a pair that agrees between them
     /// does not.
-    pub fn better_at_jumps(&self, own: &Tried) -> Option<&Family> {
-        // Some other form of the method may be the one.
-        let any = self.any_at_jumps(own);
+    pub fn better_at_jumps(&self, own: &Tried, claimed: &[&Method]) -> Option<&Family> {
+        let any = self.any_at_jumps(own, claimed);
         let mut families = self.consistent.iter();
         families.find(|family| !any && own.at_jumps.ratio > 1.0 && family.at_jumps.holds())
     }
@@ -268,8 +266,23 @@ impl Evidence {
                         || tried.fit.holds() && (tried.range.0..=tried.range.1).contains(&steps)
                 })
         });
-        wanted.min_by(|a, b| a.fit.ratio.total_cmp(&b.fit.ratio))
+        // Of methods of one name, one that meets the jumps as well.
+        let rank = |tried: &Tried| {
+            (
+                tried.fit.holds() && tried.at_jumps.ratio > 1.0,
+                tried.fit.ratio,
+            )
+        };
+        wanted.min_by(|a, b| {
+            let ((a, a_ratio), (b, b_ratio)) = (rank(a), rank(b));
+            a.cmp(&b).then(a_ratio.total_cmp(&b_ratio))
+        })
     }
+}
+
+fn is_any(methods: &[&'static Method], claimed: &[&Method]) -> bool {
+    let mut methods = methods.iter();
+    methods.any(|m| claimed.iter().any(|c| c.name == m.name))
 }
 
 /// Compares the rows with every method. `claimed` are the methods and the numbers of steps

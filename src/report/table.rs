@@ -265,7 +265,8 @@ fn order_text(submission: &Audited) -> String {
         Some((value, low, high)) if high - low > 0.3 => {
             format!("{value:.1} ({low:.1} to {high:.1}){claim}")
         }
-        Some((value, ..)) => format!("{value:.2}{claim}"),
+        // No minus in front of nothing.
+        Some((value, ..)) => format!("{:.2}{claim}", (100.0 * value).round() / 100.0 + 0.0),
         None if order
             .note
             .as_deref()

@@ -143,7 +143,8 @@ const MOST_NAMED: usize = 4;
 /// The causes that explain a failing run; none where nothing does.
 pub fn causes(trouble: &Trouble) -> Vec<Cause> {
     let rows = Rows::new(trouble.record);
-    if rows.len() < 5 || rows.width() == 0 {
+    // What digits and roundings explain has no other cause.
+    if rows.len() < 5 || rows.width() == 0 || trouble.evidence.is_exact() {
         return Vec::new();
     }
     let column = |&channel: &usize| trouble.channels.get(channel).cloned().unwrap_or_default();
@@ -264,7 +265,9 @@ fn of_method(
     let Some(step) = family.step else {
         return done(candidates);
     };
-    candidates.extend(method::low_order_start(linear, rows, method, step));
+    if family.is_told() {
+        candidates.extend(method::low_order_start(linear, rows, method, step));
+    }
     // Which value counted at a jump is the program's own business.
     let own = Stepping::all(method, linear, step)
         .into_iter()

@@ -287,7 +287,11 @@ fn start(linear: &Linear, rows: &Rows, names: &Names, way: &Way) -> Vec<Candidat
             .map(|(x, r)| x + share * (r - x))
             .collect();
         let value = linear.start[state] + share * unit;
-        if (share * unit).abs() <= 1e-9 * unit {
+        // The first row itself leaves so much of it open.
+        let first = rows.channels.iter().position(|&channel| channel == state);
+        let open = first.filter(|_| rows.numbers.first() == Some(&0));
+        let open = open.map_or(0.0, |place| rows.allowed[place]);
+        if (share * unit).abs() <= open.max(1e-9 * unit) {
             return None;
         }
         let text = format!(

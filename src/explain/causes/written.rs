@@ -121,6 +121,11 @@ fn gains(rows: &Rows, names: &Names, base: &[f64], bad: &[usize]) -> Vec<Candida
         .iter()
         .all(|&c| (factors[c] / factor - 1.0).abs() < 1e-3);
     let which = names.list(bad);
+    let (is, has) = if bad.len() > 1 {
+        ("are", "have")
+    } else {
+        ("is", "has")
+    };
     let list = || {
         let each = bad
             .iter()
@@ -130,18 +135,18 @@ fn gains(rows: &Rows, names: &Names, base: &[f64], bad: &[usize]) -> Vec<Candida
     let (kind, text) = if same && (factor + 1.0).abs() < 1e-3 {
         (
             Kind::Sign,
-            format!("{which} has the wrong sign; write its negative"),
+            format!("{which} {has} the wrong sign; write the negative"),
         )
     } else if let Some(slip) = slip(factor).filter(|_| same) {
         let text = format!(
-            "{which} is {} times too large, as from a slip of units ({slip}); state the unit under \
+            "{which} {is} {} times too large, as from a slip of units ({slip}); state the unit under \
              `[columns]` or convert what is written",
             short(factor)
         );
         (Kind::Unit, text)
     } else if same {
         let text = format!(
-            "{which} is multiplied by {}; divide what is written by it",
+            "{which} {is} multiplied by {}; divide what is written by it",
             short(factor)
         );
         (Kind::Gain, text)
