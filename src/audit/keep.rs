@@ -76,6 +76,14 @@ impl Keeping {
                 let converted = self.columns.get(place).is_some_and(|(_, c)| !c.is_none());
                 window.doubts.push(value.map_or(f64::NAN, |v| {
                     let digits = v.doubts[usize::from(full(place))];
+                    // A column in full for all that its pattern shows, yet of few digits: a
+                    // method is held against what they may have been rounded to.
+                    let few = survey.longest.get(place).copied().flatten();
+                    let few = few.filter(|_| full(place)).map_or(0.0, |few| {
+                        let conversion = self.columns[place].1;
+                        conversion.stretch(Resolution::Significant(few).at(v.written))
+                    });
+                    let digits = digits.max(few);
                     // A program that writes in another unit has rounded once more.
                     let more = if converted {
                         4.0 * f64::EPSILON * v.value.abs()

@@ -4,12 +4,15 @@
 
 use super::claims::{Answer, Claimed, Support, of_claim};
 use crate::method::{
-    Evidence, Family, Linear, Method, Reading, Record, Tried, evidence, evidence_of,
+    Evidence, Family, Linear, Method, Reading, Record, Scheme, Tried, evidence, evidence_of,
 };
 
 /// Where another method fits, single precision is thought of up to this many times what
 /// digits and double precision allow: few digits are coarser than its roundings by then.
 const NEARLY: f64 = 4.0;
+/// Roundings of `y + h f` with `f` of a stiff state found by iteration, in units of those of
+/// `h |A|`.
+const STIFF: f64 = 4.0;
 /// Jumps that are looked at, and how near to a step they are at it, in steps.
 const MOST_JUMPS: usize = 1000;
 const ON_GRID: f64 = 1e-6;
@@ -35,6 +38,15 @@ pub fn ask(linear: &Linear, record: &Record, claimed: &Claimed) -> (Evidence, Op
         if record.states(linear.size()).is_none() && misses_jumps(linear, record, claimed) {
             let text = "states are missing and inputs jump between the steps, where programs take \
                         steps of their own; write every state";
+            return answer.left_open(text.to_owned());
+        }
+        if let Some(step) = claimed.step
+            && let Some(own) = found.best(claimed.methods, claimed.steps)
+            && own.fit.residual <= STIFF * record.unit * step * linear.matrix.row_sum_norm()
+            && own.method.schemes.iter().any(Scheme::is_implicit)
+        {
+            let text = "the rates are so fast for the step that the roundings of its solution may be \
+                        all that is left; a smaller step would tell";
             return answer.left_open(text.to_owned());
         }
         let near = |own: &Tried| own.fit.ratio <= NEARLY;

@@ -6,7 +6,7 @@
 //! stated) is told by thresholds, see `chance.rs`, that only ever leave a claim open.
 
 use super::chance::{
-    BY_CHANCE_FEW, ITERATION, LAST_DIGITS, binds, far_closer, is_implicit, is_unfinished,
+    BY_CHANCE_FEW, LAST_DIGITS, binds, far_closer, is_implicit, is_unfinished, of_iteration,
 };
 use super::words::{family_at, of_peak, reading, share};
 use crate::method::{Evidence, Family, Method, Reading, Skipped, Tried};
@@ -190,7 +190,9 @@ fn of_method(evidence: &Evidence, claimed: &Claimed, cannot: &dyn Fn(String) -> 
                  closer; print more digits, or write every state and every step"
             ));
         }
-        if own.at_jumps.ratio > 1.0 && own.at_jumps.residual <= ITERATION && is_implicit(own.method)
+        if own.at_jumps.ratio > 1.0
+            && own.at_jumps.residual <= of_iteration(own.steps)
+            && is_implicit(own.method)
         {
             return cannot(early(own, &label));
         }
@@ -206,6 +208,12 @@ fn of_method(evidence: &Evidence, claimed: &Claimed, cannot: &dyn Fn(String) -> 
                 "the rows fit {label} between the jumps of the inputs and not at them ({} of the \
                  peak off, on whichever side); a case without jumps would tell",
                 short(own.at_jumps.residual)
+            ));
+        }
+        if own.free && evidence.jumps && own.at_jumps.compared == 0 {
+            return cannot(format!(
+                "the rows fit {label} between the jumps of the inputs; its steps at them are not \
+                 among the rows; write every step"
             ));
         }
         if own.apart <= 1.0 {
@@ -273,8 +281,8 @@ fn of_method(evidence: &Evidence, claimed: &Claimed, cannot: &dyn Fn(String) -> 
     let implicit = own.is_some_and(|own| is_implicit(own.method));
     let exactly = evidence.exact.residual / evidence.exact.ratio;
     let stopped_early = own.filter(|own| {
-        let loose = own.fit.residual <= ITERATION
-            && own.fit.astray <= ITERATION.sqrt()
+        let loose = own.fit.residual <= of_iteration(own.steps)
+            && own.fit.astray <= of_iteration(own.steps).sqrt()
             && !evidence.consistent.iter().any(|family| binds(family, own))
             && !(evidence.is_exact() && own.fit.residual > 2.0 * exactly);
         let explained = evidence.is_exact() || !evidence.consistent.is_empty();
@@ -356,10 +364,10 @@ fn of_method(evidence: &Evidence, claimed: &Claimed, cannot: &dyn Fn(String) -> 
         );
         return all(Support::Agrees, text);
     }
-    if implicit && own.fit.residual <= ITERATION {
+    if implicit && own.fit.residual <= of_iteration(own.steps) {
         return cannot(early(own, &label));
     }
-    if own.fit.residual <= ITERATION && evidence.consistent.is_empty() {
+    if own.fit.residual <= of_iteration(own.steps) && evidence.consistent.is_empty() {
         return cannot(format!(
             "the rows are {} of the peak away from {label}, which coarser arithmetic or constants \
              would explain; run it in double precision with the constants of the case",

@@ -90,6 +90,9 @@ pub struct Evidence {
     /// True where what has gone astray since a jump or since the start is within digits and
     /// roundings: between jumps no method can be told from the exact solution.
     pub exact_between_jumps: bool,
+    /// True where inputs jump or have a kink between the rows that are compared, and every
+    /// state is there.
+    pub jumps: bool,
     /// What the rows are too few for.
     pub skipped: Vec<Skipped>,
 }
@@ -105,6 +108,8 @@ const MOST_PIECES: usize = 16;
 /// Entries of the matrices of two methods that differ by less than this part of them are
 /// the same: they are computed along different ways.
 const SAME: f64 = 1e-11;
+/// The same in terms of the largest entry, where a stiff step cancels.
+const SAME_COMPUTED: f64 = 1e-12;
 
 /// Residuals so many times those of another pair are no roundings of the pair's own: the
 /// other one has them in the way, too.
@@ -134,6 +139,10 @@ impl Tried {
     /// that a pair really made stand in the residuals of every other pair as well, which
     /// cannot come much closer to the rows than they are large.
     pub fn outdoes(&self, other: &Tried, unit: f64) -> f64 {
+        // Methods of one effect differ by how they are computed here.
+        if self.steps == other.steps && alike(&self.print, &other.print, SAME_COMPUTED) {
+            return 0.0;
+        }
         let steps = other.steps.max(self.steps) as f64;
         // A start that is free to choose follows what drifts, else the roundings of many
         // steps are scattered.
@@ -386,6 +395,7 @@ fn conclude(search: &Search, found: Found, exact: Fit) -> Evidence {
         consistent: families(&found.tried, search.record.unit, kicked),
         tried: found.tried,
         exact_between_jumps: search.targets.clearness() <= 1.0,
+        jumps: search.complete && search.jumps_within_rows(),
         skipped: found.skipped,
         exact,
     }
@@ -470,7 +480,7 @@ fn families(tried: &[Tried], unit: f64, kicked: f64) -> Vec<Family> {
     };
     for one in holding().filter(|one| !outdone(one)) {
         let same = |(family, print): &&mut (Family, &Vec<f64>)| {
-            family.steps == one.steps && alike(print, &one.print)
+            family.steps == one.steps && alike(print, &one.print, f64::EPSILON)
         };
         match families.iter_mut().find(same) {
             Some((family, _)) => {
@@ -507,12 +517,12 @@ fn families(tried: &[Tried], unit: f64, kicked: f64) -> Vec<Family> {
     families
 }
 
-fn alike(a: &[f64], b: &[f64]) -> bool {
+/// `near` is what entries may differ by in terms of the largest.
+fn alike(a: &[f64], b: &[f64], near: f64) -> bool {
     let largest = a
         .iter()
         .chain(b)
         .fold(0.0f64, |largest, x| largest.max(x.abs()));
-    let same =
-        |x: &f64, y: &f64| (x - y).abs() <= SAME * x.abs().max(y.abs()) + f64::EPSILON * largest;
+    let same = |x: &f64, y: &f64| (x - y).abs() <= SAME * x.abs().max(y.abs()) + near * largest;
     a.len() == b.len() && a.iter().zip(b).all(|(x, y)| same(x, y))
 }

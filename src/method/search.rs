@@ -173,6 +173,14 @@ impl Search<'_> {
         found
     }
 
+    /// True where an input jumps or has a kink within a window of the record.
+    pub(super) fn jumps_within_rows(&self) -> bool {
+        self.record.windows.iter().any(|window| {
+            let ends = window.times.first().zip(window.times.last());
+            ends.is_some_and(|(from, to)| self.linear.jumps_within(from.next_up(), *to))
+        })
+    }
+
     fn is_claimed(&self, variant: &Variant) -> bool {
         let mut claimed = self.claimed.iter();
         claimed.any(|method| method.name == variant.method.name)

@@ -158,6 +158,13 @@ impl Pattern {
         self.conclude(None) != Resolution::Full
     }
 
+    /// The digits of the longest value, where they are fewer than those of numbers in full:
+    /// what the column may have been rounded to, whatever pattern it shows.
+    pub(super) fn longest(&self) -> Option<u8> {
+        let most = self.by_digits.iter().rposition(|&count| count > 0)?;
+        (self.telling >= 8 && (4..=12).contains(&most)).then_some(most as u8)
+    }
+
     /// All but a few: of two shortest texts that are equally near, programs write
     /// either.
     fn is_single(&self) -> bool {

@@ -34,6 +34,8 @@ pub struct Survey {
     /// Digits after the decimal sign and whether with an exponent, where that is the
     /// same in every row of a channel.
     pub even: Vec<Option<(u8, bool)>>,
+    /// Digits of the longest value of each channel, where they are few.
+    pub longest: Vec<Option<u8>>,
     /// Digits that nearly every value of a channel has, zero where that is not clear.
     pub usual_digits: Vec<usize>,
     /// The first stamp.
@@ -138,6 +140,7 @@ impl Survey {
             grid: finder.conclude(time),
             time,
             channels: resolutions(&patterns, stated.digits),
+            longest: patterns.iter().map(Pattern::longest).collect(),
             usual_digits: patterns.iter().map(Pattern::usual_digits).collect(),
             even: patterns.iter().map(Pattern::even).collect(),
             layout,

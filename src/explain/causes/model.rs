@@ -291,7 +291,7 @@ fn start(linear: &Linear, rows: &Rows, names: &Names, way: &Way) -> Vec<Candidat
         let first = rows.channels.iter().position(|&channel| channel == state);
         let open = first.filter(|_| rows.numbers.first() == Some(&0));
         let open = open.map_or(0.0, |place| rows.allowed[place]);
-        if (share * unit).abs() <= open.max(1e-9 * unit) {
+        if !share.is_finite() || (share * unit).abs() <= open.max(1e-9 * unit) {
             return None;
         }
         let text = format!(
