@@ -276,15 +276,13 @@ impl Evidence {
                 })
         });
         // Of methods of one name, one that meets the jumps as well.
-        let rank = |tried: &Tried| {
-            (
-                tried.fit.holds() && tried.at_jumps.ratio > 1.0,
-                tried.fit.ratio,
-            )
+        let rank = |tried: &Tried| match tried.fit.holds() {
+            true => u8::from(tried.at_jumps.ratio > 1.0),
+            false => 2,
         };
         wanted.min_by(|a, b| {
-            let ((a, a_ratio), (b, b_ratio)) = (rank(a), rank(b));
-            a.cmp(&b).then(a_ratio.total_cmp(&b_ratio))
+            let ranks = rank(a).cmp(&rank(b));
+            ranks.then(a.fit.ratio.total_cmp(&b.fit.ratio))
         })
     }
 }

@@ -83,6 +83,13 @@ impl Rows {
         self.times.len()
     }
 
+    /// What the first row leaves open of a state, where it is the start.
+    pub(super) fn open_at_start(&self, state: usize) -> f64 {
+        let place = self.channels.iter().position(|&channel| channel == state);
+        let place = place.filter(|_| self.numbers.first() == Some(&0));
+        place.map_or(0.0, |place| self.allowed[place])
+    }
+
     /// One channel of some values.
     pub(super) fn column<'a>(
         &self,

@@ -143,8 +143,7 @@ const MOST_NAMED: usize = 4;
 /// The causes that explain a failing run; none where nothing does.
 pub fn causes(trouble: &Trouble) -> Vec<Cause> {
     let rows = Rows::new(trouble.record);
-    // What digits and roundings explain has no other cause.
-    if rows.len() < 5 || rows.width() == 0 || trouble.evidence.is_exact() {
+    if rows.len() < 5 || rows.width() == 0 {
         return Vec::new();
     }
     let column = |&channel: &usize| trouble.channels.get(channel).cloned().unwrap_or_default();
@@ -174,7 +173,12 @@ pub fn causes(trouble: &Trouble) -> Vec<Cause> {
         });
         found.extend(candidates.map(|candidate| ranked(candidate, 1.0, Some(method), 0.0)));
     }
-    chosen(found, trouble.methods)
+    let mut causes = chosen(found, trouble.methods);
+    if trouble.evidence.is_exact() {
+        // What digits and roundings explain has no other cause than these.
+        causes.retain(|cause| cause.kind == Kind::SinglePrecision);
+    }
+    causes
 }
 
 /// A cause with what orders it among others.

@@ -42,13 +42,10 @@ fn moved_inputs(
     let mut found = Vec::new();
     // There are many shifts: the first rows rule most of them out.
     let few = rows.few();
-    let exact = matches!(way, Way::Exact);
+    let closes = |gap: Gap| gap.is_closed() || gap.share <= FOUND * before.share;
     let may_explain = |moved: &Linear| {
-        exact
-            || trajectory(moved, &few, way).is_some_and(|values| {
-                let gap = few.gap(&values);
-                gap.is_closed() || gap.share <= FOUND * before.share
-            })
+        let values = trajectory(moved, &few, way);
+        matches!(way, Way::Exact) || values.is_some_and(|values| closes(few.gap(&values)))
     };
     let moving: Vec<usize> = (0..linear.signals.len())
         .filter(
@@ -287,11 +284,8 @@ fn start(linear: &Linear, rows: &Rows, names: &Names, way: &Way) -> Vec<Candidat
             .map(|(x, r)| x + share * (r - x))
             .collect();
         let value = linear.start[state] + share * unit;
-        // The first row itself leaves so much of it open.
-        let first = rows.channels.iter().position(|&channel| channel == state);
-        let open = first.filter(|_| rows.numbers.first() == Some(&0));
-        let open = open.map_or(0.0, |place| rows.allowed[place]);
-        if !share.is_finite() || (share * unit).abs() <= open.max(1e-9 * unit) {
+        let least = rows.open_at_start(state).max(1e-9 * unit);
+        if !share.is_finite() || (share * unit).abs() <= least {
             return None;
         }
         let text = format!(
