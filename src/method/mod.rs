@@ -14,6 +14,7 @@ mod crossing;
 mod drive;
 mod estimate;
 mod evidence;
+mod exactly;
 mod exponential;
 mod growth;
 mod jumps;

@@ -1,0 +1,69 @@
+//! What an honest program can leave of its method, and what fits rows too closely to have met
+//! them by chance.
+
+use crate::method::{Family, Method, Reading, Tried};
+
+/// Codes that solve implicit steps by iteration stop at tolerances up to about this part
+/// of the state, over several steps from row to row (common practice, no source).
+const ITERATION: f64 = 1e-5;
+/// More steps than this from row to row may leave more in proportion.
+const FEW_STEPS: f64 = 5.0;
+
+/// What an iteration that stops early may leave from row to row.
+pub(super) fn of_iteration(steps: u64) -> f64 {
+    ITERATION * (steps as f64 / FEW_STEPS).max(1.0)
+}
+
+/// What an iteration may leave of the peak however tight its tolerance: it stops where its
+/// own roundings end.
+pub(super) const LAST_DIGITS: f64 = 256.0 * f64::EPSILON;
+/// A fit that leaves no more than this part of the residual of another one is not met by
+/// chance, over eight comparisons or more.
+pub(super) const BY_CHANCE: f64 = 0.05;
+/// The same for a method whose start is free to choose, over more comparisons than a few, and
+/// for one that the exact solution is near to.
+pub(super) const BY_CHANCE_FREE: f64 = 1e-3;
+/// The same over few comparisons, for the method claimed at another step.
+pub(super) const BY_CHANCE_FEW: f64 = 1e-4;
+
+/// True where a step of the method has to be solved for.
+pub(super) fn is_implicit(method: &Method) -> bool {
+    method.schemes.iter().any(|scheme| scheme.is_implicit())
+}
+
+/// True where a family fits so closely that what an iteration had left would have had to
+/// hit it by chance: the exact solution is no such family, see `Evidence::is_exact`.
+pub(super) fn binds(family: &Family, own: &Tried) -> bool {
+    if is_unfinished(family, own) {
+        return false;
+    }
+    if family.free {
+        family.apart > 1.0 && family.is_compared_well() && far_closer(family, own)
+    } else {
+        closer(family, own, BY_CHANCE)
+    }
+}
+
+/// True where the rows of a family may be those of the claimed method with iterations that
+/// stopped early. Given a number of iterations a step is a polynomial as that of an explicit
+/// method, and close to the full one. And a method with a memory passes over the first rows,
+/// where rows that soon settle hold all that an iteration has left.
+pub(super) fn is_unfinished(family: &Family, own: &Tried) -> bool {
+    let same = family.methods.iter().any(|m| m.name == own.method.name);
+    let memory = |m: &&Method| m.schemes.iter().all(|scheme| scheme.steps_back() > 1);
+    let explicit = !family.methods.iter().all(|method| is_implicit(method));
+    is_implicit(own.method)
+        && own.fit.residual <= of_iteration(own.steps)
+        && ((family.steps == own.steps && explicit) || (family.methods.iter().all(memory) && !same))
+}
+
+pub(super) fn far_closer(family: &Family, own: &Tried) -> bool {
+    closer(family, own, BY_CHANCE_FREE)
+}
+
+pub(super) fn closer(family: &Family, own: &Tried, by_chance: f64) -> bool {
+    family.reading == Reading::AtNodes
+        && family.steps <= Family::MANY_STEPS
+        && (family.fit.residual <= by_chance * own.fit.residual
+            || family.fit.astray <= by_chance * own.fit.astray)
+}
