@@ -114,10 +114,7 @@ pub(super) fn look(
 /// A contradiction that a fault explains is none of the claim.
 fn take_back(answer: &mut Answer, text: String) {
     if answer.support == Support::Contradicts {
-        answer.support = Support::CannotTell;
-        answer.method = answer.method.map(|_| Support::CannotTell);
-        answer.step = answer.step.map(|_| Support::CannotTell);
-        answer.text = text;
+        *answer = answer.clone().left_open(text);
     }
 }
 

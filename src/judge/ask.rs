@@ -2,10 +2,9 @@
 //! deserves before it is contradicted: single precision that the digits do not show, another
 //! method for the first step, steps of its own at jumps where states are missing.
 
+use super::chance::is_implicit;
 use super::claims::{Answer, Claimed, Support, of_claim};
-use crate::method::{
-    Evidence, Family, Linear, Method, Reading, Record, Scheme, Tried, evidence, evidence_of,
-};
+use crate::method::{Evidence, Family, Linear, Method, Reading, Record, evidence, evidence_of};
 
 /// Where another method fits, single precision is thought of up to this many times what
 /// digits and double precision allow: few digits are coarser than its roundings by then.
@@ -28,7 +27,7 @@ pub fn ask(linear: &Linear, record: &Record, claimed: &Claimed) -> (Evidence, Op
         if answer.support != Support::Contradicts {
             return answer;
         }
-        if starts_otherwise(linear, record, claimed) {
+        if starts_otherwise(linear, record, claimed, &steps) {
             return answer.left_open(format!(
                 "the rows fit {} but for the first of them: another method has made the first \
                  step, to damp what is fast or to start",
@@ -40,17 +39,16 @@ pub fn ask(linear: &Linear, record: &Record, claimed: &Claimed) -> (Evidence, Op
                         steps of their own; write every state";
             return answer.left_open(text.to_owned());
         }
-        if let Some(step) = claimed.step
-            && let Some(own) = found.best(claimed.methods, claimed.steps)
+        let own = found.best(claimed.methods, claimed.steps);
+        if let Some((step, own)) = claimed.step.zip(own)
             && own.fit.residual <= STIFF * record.unit * step * linear.matrix.row_sum_norm()
-            && own.method.schemes.iter().any(Scheme::is_implicit)
+            && is_implicit(own.method)
         {
             let text = "the rates are so fast for the step that the roundings of its solution may be \
                         all that is left; a smaller step would tell";
             return answer.left_open(text.to_owned());
         }
-        let near = |own: &Tried| own.fit.ratio <= NEARLY;
-        let close = found.best(claimed.methods, claimed.steps).is_some_and(near);
+        let close = own.is_some_and(|own| own.fit.ratio <= NEARLY);
         let known = found.consistent.iter().any(Family::is_beyond_chance);
         if claimed.methods.is_empty() || (known && !close) {
             return answer;
@@ -75,15 +73,14 @@ pub fn ask(linear: &Linear, record: &Record, claimed: &Claimed) -> (Evidence, Op
 
 /// True where a method without a memory fits all rows but the first few, and can be told
 /// from the exact solution on them.
-fn starts_otherwise(linear: &Linear, record: &Record, claimed: &Claimed) -> bool {
+fn starts_otherwise(linear: &Linear, record: &Record, claimed: &Claimed, steps: &[u64]) -> bool {
     let remembers = |m: &&Method| m.schemes.iter().any(|scheme| scheme.steps_back() > 1);
     let all = record.states(linear.size()).is_some() && claimed.step.is_some();
     if !all || claimed.methods.is_empty() || claimed.methods.iter().any(remembers) {
         return false;
     }
-    let steps: Vec<u64> = claimed.steps.into_iter().collect();
     let rest = record.from_row(OTHER_START);
-    let rest = evidence_of(linear, &rest, claimed.methods, &steps);
+    let rest = evidence_of(linear, &rest, claimed.methods, steps);
     let own = rest.best(claimed.methods, claimed.steps);
     own.is_some_and(|own| own.fit.holds() && own.reading == Reading::AtNodes && own.is_told())
 }

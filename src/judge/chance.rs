@@ -19,10 +19,10 @@ pub(super) fn of_iteration(steps: u64) -> f64 {
 pub(super) const LAST_DIGITS: f64 = 256.0 * f64::EPSILON;
 /// A fit that leaves no more than this part of the residual of another one is not met by
 /// chance, over eight comparisons or more.
-pub(super) const BY_CHANCE: f64 = 0.05;
+const BY_CHANCE: f64 = 0.05;
 /// The same for a method whose start is free to choose, over more comparisons than a few, and
 /// for one that the exact solution is near to.
-pub(super) const BY_CHANCE_FREE: f64 = 1e-3;
+const BY_CHANCE_FREE: f64 = 1e-3;
 /// The same over few comparisons, for the method claimed at another step.
 pub(super) const BY_CHANCE_FEW: f64 = 1e-4;
 
@@ -57,11 +57,13 @@ pub(super) fn is_unfinished(family: &Family, own: &Tried) -> bool {
         && ((family.steps == own.steps && explicit) || (family.methods.iter().all(memory) && !same))
 }
 
+/// True where a family comes so much closer to the rows that even a free start would not do so
+/// by chance.
 pub(super) fn far_closer(family: &Family, own: &Tried) -> bool {
     closer(family, own, BY_CHANCE_FREE)
 }
 
-pub(super) fn closer(family: &Family, own: &Tried, by_chance: f64) -> bool {
+fn closer(family: &Family, own: &Tried, by_chance: f64) -> bool {
     family.reading == Reading::AtNodes
         && family.steps <= Family::MANY_STEPS
         && (family.fit.residual <= by_chance * own.fit.residual

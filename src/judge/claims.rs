@@ -66,7 +66,7 @@ pub struct Answer {
 
 impl Answer {
     /// The same claim, left open after all.
-    pub(super) fn left_open(self, text: String) -> Answer {
+    pub fn left_open(self, text: String) -> Answer {
         let open = |_| Support::CannotTell;
         Answer {
             support: Support::CannotTell,
@@ -82,6 +82,7 @@ const FAR_BELOW: f64 = 0.05;
 /// A pair that fits within a wide bound is not what wrote the rows where another one comes
 /// so many times closer.
 const FAR_BEYOND: f64 = 100.0;
+
 /// What the rows of one run say of its claim; `None` where nothing is claimed.
 pub fn of_claim(evidence: &Evidence, claimed: &Claimed) -> Option<Answer> {
     if claimed.name.is_none() && claimed.step.is_none() {

@@ -202,7 +202,7 @@ impl Search<'_> {
         let step = spacing / steps as f64;
         let recurrence = variant.recurrence(self.linear, step)?;
         let targets = &self.targets;
-        let window = self.record.windows.get(targets.window)?;
+        let window = self.sheet.record.windows.get(targets.window)?;
         let last = targets.points.last()?.rows_on;
         let origin = window.times[targets.begin];
         if !self
@@ -223,7 +223,7 @@ impl Search<'_> {
             }
         }
         let size = self.linear.size();
-        let trial = Trial::new(self.linear, recurrence, steps, self.record.unit);
+        let trial = Trial::new(self.linear, recurrence, steps, self.sheet.record.unit);
         let mut stack: Vec<f64> = known.iter().flatten().copied().collect();
         let mut done = memory;
         let (mut own, mut both, mut largest) = (0.0f64, 0.0f64, 0.0f64);
@@ -240,7 +240,7 @@ impl Search<'_> {
                 _ => &stack[stack.len() - size..],
             };
             while let Some(target) = points.next_if(|target| target.rows_on == row) {
-                let channel = self.record.channels[target.place];
+                let channel = self.sheet.record.channels[target.place];
                 let time = window.times[targets.begin + row];
                 let value = self.linear.observe(channel, state, time, Side::After, 0.0);
                 let error = value - target.exact;

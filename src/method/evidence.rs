@@ -305,7 +305,7 @@ pub fn evidence(
     claimed_steps: &[u64],
 ) -> Evidence {
     let search = search(linear, record, claimed, claimed_steps);
-    let exact = exact_fit(record);
+    let exact = search.exact;
     let all: Vec<&'static Method> = METHODS.iter().collect();
     let with = |reading: Reading| each(&all, |method| search.method(method, reading));
     let mut found = with(Reading::AtNodes);
@@ -318,7 +318,7 @@ pub fn evidence(
     // not the claim.
     let explained = |found: &Found| {
         let holds = |tried: &Tried| {
-            let wanted = claimed.is_empty() || claimed.iter().any(|m| m.name == tried.method.name);
+            let wanted = claimed.is_empty() || is_any(&[tried.method], claimed);
             let step = claimed_steps.is_empty() || claimed_steps.contains(&tried.steps);
             tried.fit.holds() && wanted && step
         };
@@ -340,7 +340,7 @@ pub fn evidence(
     if jumps && !explained(&found) && (!exact.holds() || !claimed.is_empty()) {
         found.add(with(Reading::EitherSide));
     }
-    conclude(&search, found, exact)
+    conclude(&search, found)
 }
 
 /// The same for the claimed methods alone, with inputs read as usual: what else there may be
@@ -353,12 +353,12 @@ pub fn evidence_of(
 ) -> Evidence {
     let search = search(linear, record, claimed, claimed_steps);
     let found = each(claimed, |method| search.method(method, Reading::AtNodes));
-    conclude(&search, found, exact_fit(record))
+    conclude(&search, found)
 }
 
 fn search<'a>(
     linear: &'a Linear,
-    record: &'a Record,
+    record: &Record,
     claimed: &'a [&'static Method],
     claimed_steps: &'a [u64],
 ) -> Search<'a> {
@@ -366,7 +366,6 @@ fn search<'a>(
     thin(&mut pieces);
     Search {
         linear,
-        record,
         sheet: Sheet::new(linear, record.clone(), &pieces),
         solution: Sheet::new(linear, record.solution(), &pieces),
         complete: record.states(linear.size()).is_some(),
@@ -374,7 +373,7 @@ fn search<'a>(
         pieces,
         orders: rank_orders(linear),
         gauss: super::find("Gauss 6").map(|method| method.schemes[0].coefficients()),
-        exact: exact_fit(record).holds(),
+        exact: exact_fit(record),
         claimed,
         claimed_steps,
     }
@@ -388,15 +387,16 @@ fn each(methods: &[&'static Method], work: impl Fn(&'static Method) -> Found + S
     all
 }
 
-fn conclude(search: &Search, found: Found, exact: Fit) -> Evidence {
-    let kicked = kicked(search.linear, search.record);
+fn conclude(search: &Search, found: Found) -> Evidence {
+    let record = &search.sheet.record;
+    let kicked = kicked(search.linear, record);
     Evidence {
-        consistent: families(&found.tried, search.record.unit, kicked),
+        consistent: families(&found.tried, record.unit, kicked),
         tried: found.tried,
         exact_between_jumps: search.targets.clearness() <= 1.0,
         jumps: search.complete && search.jumps_within_rows(),
         skipped: found.skipped,
-        exact,
+        exact: search.exact,
     }
 }
 

@@ -76,7 +76,7 @@ fn permutations(size: usize) -> Vec<Ranks> {
 
 /// Rows laid out for the comparison: of the file, or the exact values in their place.
 pub(super) struct Sheet {
-    record: Record,
+    pub(super) record: Record,
     peaks: Vec<f64>,
     /// Stretches without a jump, or pairs of rows where the spacing varies; none where states
     /// are missing.
@@ -114,7 +114,6 @@ impl Sheet {
 
 pub(super) struct Search<'a> {
     pub(super) linear: &'a Linear,
-    pub(super) record: &'a Record,
     pub(super) sheet: Sheet,
     /// The same rows with the exact values in them.
     pub(super) solution: Sheet,
@@ -123,8 +122,8 @@ pub(super) struct Search<'a> {
     pub(super) targets: Targets,
     pub(super) orders: Vec<Ranks>,
     pub(super) gauss: Option<Coefficients>,
-    /// The file cannot be told from the exact solution.
-    pub(super) exact: bool,
+    /// The exact solution in place of a method.
+    pub(super) exact: Fit,
     pub(super) claimed: &'a [&'static Method],
     pub(super) claimed_steps: &'a [u64],
 }
@@ -164,7 +163,7 @@ impl Search<'_> {
                     reading,
                     ranks: &ranks,
                 };
-                match self.record.spacing {
+                match self.sheet.record.spacing {
                     Some((spacing, _)) => self.even(&variant, spacing, &mut found),
                     None => self.uneven(&variant, &mut found),
                 }
@@ -175,7 +174,7 @@ impl Search<'_> {
 
     /// True where an input jumps or has a kink within a window of the record.
     pub(super) fn jumps_within_rows(&self) -> bool {
-        self.record.windows.iter().any(|window| {
+        self.sheet.record.windows.iter().any(|window| {
             let ends = window.times.first().zip(window.times.last());
             ends.is_some_and(|(from, to)| self.linear.jumps_within(from.next_up(), *to))
         })
@@ -206,7 +205,7 @@ impl Search<'_> {
     /// tell how many there are, and beside the right number no start fits.
     pub(super) fn sweep(&self, method: &'static Method) -> Found {
         let mut found = Found::default();
-        let Some((spacing, _)) = self.record.spacing else {
+        let Some((spacing, _)) = self.sheet.record.spacing else {
             return found;
         };
         for scheme in method.schemes {
@@ -252,7 +251,7 @@ impl Search<'_> {
             let Some(recurrence) = variant.recurrence(self.linear, spacing / count as f64) else {
                 continue;
             };
-            let trial = Trial::new(self.linear, recurrence, count, self.record.unit);
+            let trial = Trial::new(self.linear, recurrence, count, self.sheet.record.unit);
             let mut fit = self.fit(&trial, &self.sheet, variant.reading);
             let free = self.is_free(&trial);
             let claimed = self.is_claimed(variant) && self.claimed_steps.contains(&count);
@@ -270,7 +269,8 @@ impl Search<'_> {
                 });
                 continue;
             }
-            let range = if fit.holds() && near(count) && !self.exact && self.wants_ranges() {
+            let range = if fit.holds() && near(count) && !self.exact.holds() && self.wants_ranges()
+            {
                 self.range(variant, spacing, count)
             } else {
                 (count, count)
@@ -290,11 +290,11 @@ impl Search<'_> {
             if fit.holds() {
                 tried.print = self.print(&trial);
             }
-            if fit.holds() && self.exact {
+            if fit.holds() && self.exact.holds() {
                 tried.apart = fit.ratio;
             } else if fit.holds() {
                 tried.apart = self.fit(&trial, &self.solution, variant.reading).ratio;
-                tried.at_jumps = trial.across_jumps(self.record);
+                tried.at_jumps = trial.across_jumps(&self.sheet.record);
             }
             found.tried.push(tried);
         }
@@ -314,7 +314,7 @@ impl Search<'_> {
     fn may_hold(&self, variant: &Variant, spacing: f64, steps: u64) -> bool {
         let recurrence = variant.recurrence(self.linear, spacing / steps as f64);
         recurrence.is_some_and(|recurrence| {
-            let trial = Trial::new(self.linear, recurrence, steps, self.record.unit);
+            let trial = Trial::new(self.linear, recurrence, steps, self.sheet.record.unit);
             if !self.complete || self.is_free(&trial) {
                 return self.fit(&trial, &self.sheet, variant.reading).holds();
             }
@@ -429,7 +429,12 @@ impl Search<'_> {
     fn over_pair(&self, variant: &Variant, pair: &Laid, steps: u64) -> Option<Trial<'_>> {
         let step = (pair.times[1] - pair.times[0]) / steps as f64;
         let recurrence = variant.recurrence(self.linear, step)?;
-        Some(Trial::new(self.linear, recurrence, steps, self.record.unit))
+        Some(Trial::new(
+            self.linear,
+            recurrence,
+            steps,
+            self.sheet.record.unit,
+        ))
     }
 
     fn uneven_fit(&self, variant: &Variant, sheet: &Sheet, steps: u64) -> Fit {
@@ -452,7 +457,7 @@ impl Search<'_> {
         let mut print = vec![trial.recurrence.back() as f64];
         print.extend(trial.across().rows().flatten());
         let places = self.pieces.iter().take(4).map(|piece| {
-            let window = &self.record.windows[piece.window];
+            let window = &self.sheet.record.windows[piece.window];
             window.times[piece.start + piece.rows / 2]
         });
         for time in places {

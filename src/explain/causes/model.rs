@@ -44,8 +44,8 @@ fn moved_inputs(
     let few = rows.few();
     let closes = |gap: Gap| gap.is_closed() || gap.share <= FOUND * before.share;
     let may_explain = |moved: &Linear| {
-        let values = trajectory(moved, &few, way);
-        matches!(way, Way::Exact) || values.is_some_and(|values| closes(few.gap(&values)))
+        let meets = |values: Vec<f64>| closes(few.gap(&values));
+        matches!(way, Way::Exact) || trajectory(moved, &few, way).is_some_and(meets)
     };
     let moving: Vec<usize> = (0..linear.signals.len())
         .filter(
