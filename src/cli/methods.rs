@@ -12,7 +12,7 @@ use crate::references;
 use crate::report::{Screen, method_list, method_text};
 
 /// How many near misses are named.
-const NEAR_MISSES: usize = 3;
+const NEAR_MISSES: usize = 4;
 
 /// What `methods` prints.
 pub fn methods_text(arguments: &MethodsArguments, screen: Screen) -> Result<String, Fault> {

@@ -153,6 +153,14 @@ fn run_exact(arguments: &ExactArguments) -> Result<u8, Stop> {
     let (case, exact) = load(&arguments.choice)?;
     let channels = case.channels();
     let names: Vec<&str> = channels.iter().map(|channel| channel.name).collect();
+    // What is asked for is read before anything is written.
+    let times = &arguments.times;
+    let listed = times.at.iter().flatten();
+    let listed: Vec<Double> = listed
+        .map(|text| Ok(decimal(text, "--at")?.to_double()))
+        .collect::<Result<_, Fault>>()?;
+    let grid = times.step.as_deref().map(|text| grid(&case, text));
+    let grid = grid.transpose()?;
     let mut walk = exact.walk_rounded();
     let mut writer = ValueWriter::new(io::BufWriter::new(io::stdout().lock()), &names)?;
     let mut write = |time: Double| -> Result<(), Stop> {
@@ -160,15 +168,17 @@ fn run_exact(arguments: &ExactArguments) -> Result<u8, Stop> {
         writer.row(time.to_f64(), &values)?;
         Ok(())
     };
-    let times = &arguments.times;
-    if let Some(list) = &times.at {
-        for text in list {
-            write(decimal(text, "--at")?.to_double())?;
+    for time in listed {
+        write(time)?;
+    }
+    if let Some((length, count)) = grid {
+        let (from, to) = (case.time.from, case.time.to);
+        for index in 0..=count {
+            let time = from + length * Double::from(index as f64);
+            write(if time > to { to } else { time })?;
         }
-    } else if let Some(text) = &times.step {
-        let step = decimal(text, "--step")?;
-        on_grid(&case, step, &mut write)?;
-    } else if let Some(path) = &times.times {
+    }
+    if let Some(path) = &times.times {
         at_stamps(path, &mut write)?;
     }
     writer.finish()?;
@@ -196,23 +206,15 @@ fn decimal(text: &str, option: &str) -> Result<Decimal, Fault> {
     Decimal::parse(text.trim()).ok_or_else(complain)
 }
 
-fn on_grid(
-    case: &Case,
-    step: Decimal,
-    write: &mut dyn FnMut(Double) -> Result<(), Stop>,
-) -> Result<(), Stop> {
-    let (from, to) = (case.time.from, case.time.to);
-    let length = step.to_double();
-    let count = ((to - from) / length).to_f64();
+/// A grid over the window: its step, and how many of them there are.
+fn grid(case: &Case, text: &str) -> Result<(Double, u64), Fault> {
+    let length = decimal(text, "--step")?.to_double();
+    let count = ((case.time.to - case.time.from) / length).to_f64();
     if !(length.to_f64() > 0.0 && count.is_finite() && count < 1e12) {
         let text = "--step must be above zero and not absurdly small for the window";
-        return Err(Fault::new(text).into());
+        return Err(Fault::new(text));
     }
-    for index in 0..=(count * (1.0 + 1e-12)).floor() as u64 {
-        let time = from + length * Double::from(index as f64);
-        write(if time > to { to } else { time })?;
-    }
-    Ok(())
+    Ok((length, (count * (1.0 + 1e-12)).floor() as u64))
 }
 
 /// The stamps of a file: its column `t` or `time`, else its first column.

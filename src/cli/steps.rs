@@ -6,7 +6,7 @@ use crate::compare::Limit;
 use crate::exact::Exact;
 use crate::explain::{self, MOST_STEPS, Question};
 use crate::fault::{Fault, nearest, quoted};
-use crate::method::{METHODS, Method, find};
+use crate::method::{METHODS, Method, find_all};
 use crate::number::{Decimal, Double, plain};
 use crate::outcome::StepsOutcome;
 
@@ -46,10 +46,15 @@ pub(super) fn steps(
         named().collect()
     };
     for name in names {
-        match find(name) {
-            Some(method) if methods.iter().any(|known| known.name == method.name) => {}
-            Some(method) => methods.push(method),
-            None => faults.push(unknown(name)),
+        // Some names are those of several methods.
+        let found = find_all(name);
+        if found.is_empty() {
+            faults.push(unknown(name));
+        }
+        for method in found {
+            if methods.iter().all(|known| known.name != method.name) {
+                methods.push(method);
+            }
         }
     }
     let mut stated = Vec::new();

@@ -2,9 +2,12 @@
 //! deserves before it is contradicted: single precision that the digits do not show, another
 //! method for the first step, steps of its own at jumps where states are missing.
 
-use super::chance::is_implicit;
-use super::claims::{Answer, Claimed, Support, of_claim};
-use crate::method::{Evidence, Family, Linear, Method, Reading, Record, evidence, evidence_of};
+use super::chance::{binds, is_implicit, of_iteration};
+use super::claims::{Answer, Claimed, Support, early, of_claim};
+use crate::method::{
+    Evidence, Family, Linear, Method, Reading, Record, evidence, evidence_of, fitting, forms,
+};
+use crate::number::plain;
 
 /// Where another method fits, single precision is thought of up to this many times what
 /// digits and double precision allow: few digits are coarser than its roundings by then.
@@ -33,6 +36,9 @@ pub fn ask(linear: &Linear, record: &Record, claimed: &Claimed) -> (Evidence, Op
                  step, to damp what is fast or to start",
                 claimed.name.unwrap_or_default()
             ));
+        }
+        if let Some(text) = unfinished(linear, record, claimed, &found) {
+            return answer.left_open(text);
         }
         if record.states(linear.size()).is_none() && misses_jumps(linear, record, claimed) {
             let text = "states are missing and inputs jump between the steps, where programs take \
@@ -71,10 +77,63 @@ pub fn ask(linear: &Linear, record: &Record, claimed: &Claimed) -> (Evidence, Op
     (found, answer)
 }
 
+/// What leaves the claim of an implicit method open, where the program may have given its
+/// solution up after so many iterations.
+fn unfinished(
+    linear: &Linear,
+    record: &Record,
+    claimed: &Claimed,
+    found: &Evidence,
+) -> Option<String> {
+    let steps = claimed.steps?;
+    let label = || {
+        let name = claimed.name.unwrap_or_default();
+        let step = claimed.step.map(|step| (step, claimed.time_unit));
+        step.map_or(name.to_owned(), |(step, unit)| {
+            format!("{name} at step {} {unit}", plain(step))
+        })
+    };
+    let own = found.best(claimed.methods, Some(steps));
+    let close = own.filter(|own| own.fit.residual <= of_iteration(steps));
+    // Far from the method, the rows of another one have its name, however it came to them.
+    if close.is_some() || !found.consistent.iter().any(Family::is_beyond_chance) {
+        for &method in claimed.methods {
+            let forms = forms(method);
+            if let Some(form) = fitting(linear, record, method, &forms, steps) {
+                return Some(format!(
+                    "the rows are those of {} {}, which is another method than the one solved to \
+                     the end; let iterations run to a tolerance",
+                    label(),
+                    form.text
+                ));
+            }
+        }
+    }
+    // A method with a memory passes over the first rows, where rows that soon settle hold
+    // all that an iteration has left.
+    let own = close.filter(|own| is_implicit(own.method))?;
+    let is_claimed = |m: &&'static Method| claimed.methods.iter().any(|c| c.name == m.name);
+    if found
+        .consistent
+        .iter()
+        .any(|f| f.methods.iter().any(is_claimed))
+    {
+        return None;
+    }
+    let back = |family: &Family| family.methods.iter().map(|m| m.steps_back()).min();
+    let passed = found.consistent.iter().map(|f| back(f).unwrap_or(1));
+    let passed = passed.min().filter(|&passed| passed > 1)?;
+    let rest = record.from_row(passed);
+    let rest = evidence_of(linear, &rest, claimed.methods, &[steps]);
+    let same = rest.best(claimed.methods, Some(steps))?;
+    let open = same.fit.holds() || !found.consistent.iter().any(|family| binds(family, same));
+    open.then(|| early(own, &label()))
+}
+
 /// True where a method without a memory fits all rows but the first few, and can be told
 /// from the exact solution on them.
 fn starts_otherwise(linear: &Linear, record: &Record, claimed: &Claimed, steps: &[u64]) -> bool {
-    let remembers = |m: &&Method| m.schemes.iter().any(|scheme| scheme.steps_back() > 1);
+    let remembers = |m: &&Method| m.steps_back() > 1;
     let all = record.states(linear.size()).is_some() && claimed.step.is_some();
     if !all || claimed.methods.is_empty() || claimed.methods.iter().any(remembers) {
         return false;

@@ -23,6 +23,8 @@ const BY_CHANCE: f64 = 0.05;
 /// The same for a method whose start is free to choose, over more comparisons than a few, and
 /// for one that the exact solution is near to.
 const BY_CHANCE_FREE: f64 = 1e-3;
+/// Residuals so many times what digits and rounding allow another method are about as small.
+const AS_CLOSE: f64 = 4.0;
 /// The same over few comparisons, for the method claimed at another step.
 pub(super) const BY_CHANCE_FEW: f64 = 1e-4;
 
@@ -34,9 +36,6 @@ pub(super) fn is_implicit(method: &Method) -> bool {
 /// True where a family fits so closely that what an iteration had left would have had to
 /// hit it by chance: the exact solution is no such family, see `Evidence::is_exact`.
 pub(super) fn binds(family: &Family, own: &Tried) -> bool {
-    if is_unfinished(family, own) {
-        return false;
-    }
     if family.free {
         family.apart > 1.0 && family.is_compared_well() && far_closer(family, own)
     } else {
@@ -44,17 +43,11 @@ pub(super) fn binds(family: &Family, own: &Tried) -> bool {
     }
 }
 
-/// True where the rows of a family may be those of the claimed method with iterations that
-/// stopped early. Given a number of iterations a step is a polynomial as that of an explicit
-/// method, and close to the full one. And a method with a memory passes over the first rows,
-/// where rows that soon settle hold all that an iteration has left.
-pub(super) fn is_unfinished(family: &Family, own: &Tried) -> bool {
-    let same = family.methods.iter().any(|m| m.name == own.method.name);
-    let memory = |m: &&Method| m.schemes.iter().all(|scheme| scheme.steps_back() > 1);
-    let explicit = !family.methods.iter().all(|method| is_implicit(method));
-    is_implicit(own.method)
-        && own.fit.residual <= of_iteration(own.steps)
-        && ((family.steps == own.steps && explicit) || (family.methods.iter().all(memory) && !same))
+/// True where a family that has a wide bound comes about as close to the rows as the digits
+/// let a claimed method come, or far closer than that does.
+pub(super) fn is_sharp(family: &Family, own: &Tried) -> bool {
+    let digits = own.fit.residual / own.fit.ratio;
+    family.fit.residual <= AS_CLOSE * digits || far_closer(family, own)
 }
 
 /// True where a family comes so much closer to the rows that even a free start would not do so

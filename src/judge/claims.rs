@@ -6,7 +6,7 @@
 //! stated) is told by thresholds, see `chance.rs`, that only ever leave a claim open.
 
 use super::chance::{
-    BY_CHANCE_FEW, LAST_DIGITS, binds, far_closer, is_implicit, is_unfinished, of_iteration,
+    BY_CHANCE_FEW, LAST_DIGITS, binds, far_closer, is_implicit, is_sharp, of_iteration,
 };
 use super::words::{family_at, of_peak, reading, share};
 use crate::method::{Evidence, Family, Method, Reading, Skipped, Tried};
@@ -284,7 +284,10 @@ fn of_method(evidence: &Evidence, claimed: &Claimed, cannot: &dyn Fn(String) -> 
     let stopped_early = own.filter(|own| {
         let loose = own.fit.residual <= of_iteration(own.steps)
             && own.fit.astray <= of_iteration(own.steps).sqrt()
-            && !evidence.consistent.iter().any(|family| binds(family, own))
+            && !evidence
+                .consistent
+                .iter()
+                .any(|f| binds(f, own) && is_sharp(f, own))
             && !(evidence.is_exact() && own.fit.residual > 2.0 * exactly);
         let explained = evidence.is_exact() || !evidence.consistent.is_empty();
         implicit && explained && (loose || own.fit.residual <= LAST_DIGITS)
@@ -299,7 +302,9 @@ fn of_method(evidence: &Evidence, claimed: &Claimed, cannot: &dyn Fn(String) -> 
         return all(Support::Contradicts, text);
     }
     let explains = |family: &Family| {
-        if own.is_some_and(|own| is_unfinished(family, own)) {
+        // An iteration that stops early leaves most where rows move most.
+        let loose = |own: &&Tried| implicit && own.fit.residual <= of_iteration(own.steps);
+        if own.filter(loose).is_some_and(|own| !is_sharp(family, own)) {
             return false;
         }
         let bound = |own| (family.free || family.is_told()) && binds(family, own);
@@ -375,13 +380,6 @@ fn of_method(evidence: &Evidence, claimed: &Claimed, cannot: &dyn Fn(String) -> 
             short(own.fit.residual)
         ));
     }
-    let corrects = |m: &&Method| m.schemes.iter().any(|scheme| scheme.is_predicted());
-    if claimed.methods.iter().any(corrects) {
-        return cannot(format!(
-            "the rows do not follow {name} that predicts, evaluates, corrects and evaluates{off}; \
-             programs that correct more often, or do not evaluate again, are not in the catalogue"
-        ));
-    }
     if claimed.step.is_none() {
         return cannot(format!(
             "no method of the catalogue fits the rows (interpolated output, an adaptive code, or a \
@@ -397,7 +395,7 @@ fn of_method(evidence: &Evidence, claimed: &Claimed, cannot: &dyn Fn(String) -> 
     all(Support::Contradicts, text)
 }
 
-fn early(own: &Tried, label: &str) -> String {
+pub(super) fn early(own: &Tried, label: &str) -> String {
     format!(
         "the rows are {} of the peak away from {label}, which an iteration that stops early would \
          explain; a tighter tolerance of its solver would settle it",

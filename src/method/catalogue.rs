@@ -473,6 +473,14 @@ const fn multistep(
     method(name, aliases, order, ADAMS, schemes)
 }
 
+impl Method {
+    /// How many earlier values a step needs, in the form that needs most.
+    pub fn steps_back(&self) -> usize {
+        let back = self.schemes.iter().map(Scheme::steps_back);
+        back.max().unwrap_or(1)
+    }
+}
+
 /// All methods that go by a name, without regard to case, blanks and hyphens: the one of
 /// that very name first, then those that have it among their other names.
 pub fn find_all(name: &str) -> Vec<&'static Method> {

@@ -51,7 +51,9 @@ impl Characteristic {
                 let past = (0..newest).map(term);
                 past.chain([vec![Double::ONE]]).collect()
             }
-            Coefficients::SemiImplicit | Coefficients::Exponential { .. } => return None,
+            Coefficients::Iterated(_)
+            | Coefficients::SemiImplicit
+            | Coefficients::Exponential { .. } => return None,
         };
         Some(Characteristic { terms })
     }

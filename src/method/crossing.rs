@@ -10,7 +10,7 @@ use super::march::{NEAR, Sides};
 use super::record::{Piece, Record, Window};
 use super::recurrence::dense;
 use super::scale::Rows;
-use super::trial::{Fit, Trial};
+use super::trial::{Fit, Leaps, Trial};
 
 /// Intervals that are compared at most, and steps that one of them may take.
 const MOST_INTERVALS: usize = 24;
@@ -115,7 +115,14 @@ impl Trial<'_> {
             scale.see_forcing(&before);
         }
         let states = rows.values(window, row);
-        let predicted = self.advance(&states, time, self.steps, sides);
+        let mut predicted = states.clone();
+        self.advance(
+            &mut Leaps::default(),
+            &mut predicted,
+            time,
+            self.steps,
+            sides,
+        );
         let rounding = self.rounding(&scale, time, window.first + row as u64);
         let (doubts, next_doubts) = (rows.doubts(window, row), rows.doubts(window, row + 1));
         let (next, rates) = (rows.values(window, row + 1), rows.rates(window, piece, row));

@@ -44,11 +44,23 @@ impl Drive {
     /// `w` at a time.
     pub fn state(&self, linear: &Linear, time: f64, side: Side, near: f64) -> Vec<f64> {
         let mut state = Vec::with_capacity(self.size);
-        state.push(1.0);
-        for signal in &linear.signals {
-            signal.entries_at(time, side, near, &mut state);
-        }
+        self.extend(linear, time, side, near, &mut state);
         state
+    }
+
+    /// Puts `w` at a time behind other numbers.
+    pub fn extend(
+        &self,
+        linear: &Linear,
+        time: f64,
+        side: Side,
+        near: f64,
+        numbers: &mut Vec<f64>,
+    ) {
+        numbers.push(1.0);
+        for signal in &linear.signals {
+            signal.entries_at(time, side, near, numbers);
+        }
     }
 
     /// `exp(G s)`.

@@ -8,7 +8,7 @@ use super::powers::identity;
 use super::record::{Piece, Record};
 use super::recurrence::dense;
 use super::search::{Search, Variant};
-use super::trial::{GLANCE, Trial};
+use super::trial::{GLANCE, Leaps, Trial};
 
 /// More steps from row to row than this are tried only where they are claimed.
 const MOST_GUESSED: u64 = 10_000;
@@ -225,14 +225,15 @@ impl Search<'_> {
         let size = self.linear.size();
         let trial = Trial::new(self.linear, recurrence, steps, self.sheet.record.unit);
         let mut stack: Vec<f64> = known.iter().flatten().copied().collect();
+        let mut leaps = Leaps::default();
         let mut done = memory;
         let (mut own, mut both, mut largest) = (0.0f64, 0.0f64, 0.0f64);
         let mut points = targets.points.iter().peekable();
-        for row in 1..=last {
+        while let Some(row) = points.peek().map(|target| target.rows_on) {
             let wanted = row as u64 * steps;
             if wanted > done {
                 let time = origin + done as f64 * step;
-                stack = trial.advance(&stack, time, wanted - done, Sides::After);
+                trial.advance(&mut leaps, &mut stack, time, wanted - done, Sides::After);
                 done = wanted;
             }
             let state = match known.get(wanted as usize) {

@@ -11,6 +11,7 @@ use super::catalogue::{METHODS, Method};
 use super::crossing::kicked;
 use super::estimate::Targets;
 use super::exactly::exact_fit;
+use super::iterated::Form;
 use super::linear::Linear;
 use super::record::{Piece, Record};
 use super::recurrence::Reading;
@@ -354,6 +355,25 @@ pub fn evidence_of(
     let search = search(linear, record, claimed, claimed_steps);
     let found = each(claimed, |method| search.method(method, Reading::AtNodes));
     conclude(&search, found)
+}
+
+/// The first of some forms of a method that fits the rows at so many steps from row to row
+/// and can be told from the exact solution.
+pub fn fitting<'a>(
+    linear: &Linear,
+    record: &Record,
+    method: &'static Method,
+    forms: &'a [Form],
+    steps: u64,
+) -> Option<&'a Form> {
+    let (claimed, claimed_steps) = ([method], [steps]);
+    let search = search(linear, record, &claimed, &claimed_steps);
+    let fits = |form: &&Form| {
+        let found = search.form(method, &form.coefficients, Reading::AtNodes);
+        let mut tried = found.tried.iter().filter(|tried| tried.steps == steps);
+        tried.any(|tried| tried.fit.holds() && tried.is_told())
+    };
+    forms.par_iter().find_first(fits)
 }
 
 fn search<'a>(

@@ -17,6 +17,7 @@ mod evidence;
 mod exactly;
 mod exponential;
 mod growth;
+mod iterated;
 mod jumps;
 mod laid;
 mod linear;
@@ -34,8 +35,9 @@ mod trial;
 pub use catalogue::{METHODS, Method, find, find_all};
 pub use characteristic::Characteristic;
 pub use drive::Drive;
-pub use evidence::{Evidence, Family, Skipped, Tried, evidence, evidence_of};
+pub use evidence::{Evidence, Family, Skipped, Tried, evidence, evidence_of, fitting};
 pub use growth::{Growth, Likeness, Unmeasured, growth, likeness};
+pub use iterated::{Form, Iterated, forms};
 pub use linear::{Linear, Side, Signal};
 pub use march::{March, NEAR, Sides, add_forcing};
 pub use record::{Piece, Record, START_ROWS, Window, windows};
@@ -45,4 +47,4 @@ pub use search::{MOST_STEPS, rank_orders};
 pub use stability::{
     Rational, Stability, amplification, approx_stability, approx_stable_length, of_stages, roots,
 };
-pub use trial::{Fit, Trial};
+pub use trial::{Fit, Leaps, Trial};

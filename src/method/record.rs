@@ -49,7 +49,7 @@ pub struct Piece {
 }
 
 /// Rows of the window at the start, of each later window, and how many of those there are.
-pub const START_ROWS: u64 = 1500;
+pub const START_ROWS: u64 = 800;
 const LATER_ROWS: u64 = 48;
 const LATER_WINDOWS: u64 = 16;
 

@@ -4,6 +4,7 @@
 use nalgebra::DMatrix;
 
 use super::exponential::{by_state, exponential};
+use super::iterated::iterated;
 use super::linear::Linear;
 use super::scheme::{Coefficients, Stages};
 use crate::number::{Double, Matrix};
@@ -83,6 +84,7 @@ impl Recurrence {
                 predictor,
                 corrector,
             } => predicted(predictor, corrector, &matrix, step),
+            Coefficients::Iterated(form) => iterated(form, &matrix, step),
             Coefficients::SemiImplicit => semi_implicit(ranks, &matrix, step),
             Coefficients::Exponential { by_state: false } => exponential(&matrix, step),
             Coefficients::Exponential { by_state: true } => by_state(&matrix, step),

@@ -3,6 +3,7 @@
 use std::sync::LazyLock;
 
 use super::catalogue::METHODS;
+use super::iterated::Iterated;
 use crate::formula::Formula;
 use crate::number::{Decimal, Double};
 
@@ -86,6 +87,8 @@ pub enum Coefficients {
         /// Of the implicit formula.
         corrector: Vec<Double>,
     },
+    /// A multistep formula that is not solved to the end; no scheme of the catalogue.
+    Iterated(Iterated),
     /// See [`Scheme::SemiImplicit`].
     SemiImplicit,
     /// See [`Scheme::Exponential`].
@@ -303,7 +306,9 @@ mod tests {
                         near(sum(&predictor), 1.0);
                         near(sum(&corrector), 1.0);
                     }
-                    Coefficients::SemiImplicit | Coefficients::Exponential { .. } => {}
+                    Coefficients::Iterated(_)
+                    | Coefficients::SemiImplicit
+                    | Coefficients::Exponential { .. } => {}
                 }
             }
         }

@@ -9,7 +9,7 @@ use super::linear::Linear;
 use super::march::Sides;
 use super::record::{Piece, Record};
 use super::recurrence::{Ranks, Reading, Recurrence};
-use super::scheme::{Coefficients, Scheme};
+use super::scheme::Coefficients;
 use super::starts::{FEW_LEFT, with_hidden_start};
 use super::trial::{Fit, GLANCE, Trial, larger};
 
@@ -151,22 +151,33 @@ impl Search<'_> {
     pub(super) fn method(&self, method: &'static Method, reading: Reading) -> Found {
         let mut found = Found::default();
         for scheme in method.schemes {
-            let coefficients = scheme.coefficients();
-            let orders = match scheme {
-                Scheme::SemiImplicit => self.orders.clone(),
-                _ => vec![Ranks::new()],
+            found.add(self.form(method, &scheme.coefficients(), reading));
+        }
+        found
+    }
+
+    /// One form of a method; semi-implicit ones in every order.
+    pub(super) fn form(
+        &self,
+        method: &'static Method,
+        coefficients: &Coefficients,
+        reading: Reading,
+    ) -> Found {
+        let mut found = Found::default();
+        let orders = match coefficients {
+            Coefficients::SemiImplicit => self.orders.clone(),
+            _ => vec![Ranks::new()],
+        };
+        for ranks in orders {
+            let variant = Variant {
+                method,
+                coefficients,
+                reading,
+                ranks: &ranks,
             };
-            for ranks in orders {
-                let variant = Variant {
-                    method,
-                    coefficients: &coefficients,
-                    reading,
-                    ranks: &ranks,
-                };
-                match self.sheet.record.spacing {
-                    Some((spacing, _)) => self.even(&variant, spacing, &mut found),
-                    None => self.uneven(&variant, &mut found),
-                }
+            match self.sheet.record.spacing {
+                Some((spacing, _)) => self.even(&variant, spacing, &mut found),
+                None => self.uneven(&variant, &mut found),
             }
         }
         found
@@ -393,7 +404,9 @@ impl Search<'_> {
         if !self.complete
             || matches!(
                 variant.coefficients,
-                Coefficients::Multistep { .. } | Coefficients::Predicted { .. }
+                Coefficients::Multistep { .. }
+                    | Coefficients::Predicted { .. }
+                    | Coefficients::Iterated(_)
             )
         {
             return;

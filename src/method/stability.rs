@@ -5,8 +5,9 @@
 use nalgebra::{Complex, DMatrix, DVector};
 
 use super::characteristic::Characteristic;
+use super::iterated::iterated;
 use super::scheme::{Coefficients, Stages};
-use crate::number::Double;
+use crate::number::{Double, Matrix};
 
 /// The stability function of a one-step method as a quotient of two polynomials in
 /// `z = h lambda`, lowest power first.
@@ -121,6 +122,14 @@ pub fn roots(coefficients: &Coefficients, z: Complex<f64>) -> Vec<Complex<f64>> 
     match coefficients {
         Coefficients::Stages(stages) => vec![of_stages(stages, z)],
         Coefficients::Exponential { .. } => vec![z.exp()],
+        // A complex number as a matrix: the entries of its first column.
+        Coefficients::Iterated(form) => {
+            let turn = DMatrix::from_row_slice(2, 2, &[z.re, -z.im, z.im, z.re]);
+            let past = iterated(form, &turn, 1.0).map_or(Vec::new(), |step| step.past);
+            let term = |m: &Matrix<f64>| -Complex::new(m[(0, 0)], m[(1, 0)]);
+            let terms = past.iter().map(term).chain([Complex::new(1.0, 0.0)]);
+            zeros(&terms.collect::<Vec<_>>())
+        }
         // On an oscillator: a pair of states takes turns. A single state has none to wait
         // for.
         Coefficients::SemiImplicit if z.im == 0.0 => vec![1.0 + z],

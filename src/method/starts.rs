@@ -16,7 +16,7 @@ use super::march::{March, NEAR, Sides};
 use super::powers::identity;
 use super::record::{Piece, Record, Window};
 use super::recurrence::Recurrence;
-use super::trial::{Fit, Trial};
+use super::trial::{Fit, Leaps, Trial};
 use crate::number::Matrix;
 
 /// Rows compared at most.
@@ -168,6 +168,7 @@ impl System {
         let across = to_dense(trial.across());
         let mut allowance = Allowance::new(trial, either);
         let mut step = memory;
+        let mut leaps = Leaps::default();
         let (mut lines, mut right, mut of_row) = (Vec::new(), Vec::new(), Vec::new());
         let peaks = record.peaks();
         for count in usize::from(stretch.from_start)..stretch.rows {
@@ -181,7 +182,7 @@ impl System {
                 if let Some(doubts) = &mut allowance.doubts {
                     doubts.next_row(trial, at(step), count);
                 }
-                stack = trial.advance(&stack, at(step), count, sides);
+                trial.advance(&mut leaps, &mut stack, at(step), count, sides);
                 effect = if count == trial.steps {
                     &across * &effect
                 } else {

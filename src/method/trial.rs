@@ -19,7 +19,7 @@ use super::powers::{corner, gathered, identity, to_the_power};
 use super::record::Record;
 use super::recurrence::Recurrence;
 use super::scale::Scale;
-use crate::number::Matrix;
+use crate::number::{Matrix, dot};
 
 /// How well rows agree with a prediction.
 #[derive(Clone, Copy, Debug, PartialEq)]
@@ -58,6 +58,32 @@ pub struct Trial<'a> {
     across: Matrix<f64>,
     /// `sum |C^j|` over the steps of one row: how roundings of single steps add up.
     pub(super) gathered: Matrix<f64>,
+}
+
+/// What steps at once need again: their matrices by their number, and room for numbers.
+#[derive(Clone, Debug, Default)]
+pub struct Leaps {
+    known: Vec<(u64, Matrix<f64>)>,
+    all: Vec<f64>,
+}
+
+/// Numbers of steps whose matrices are kept.
+const MOST_LEAPS: usize = 16;
+
+fn over<'a>(
+    known: &'a mut Vec<(u64, Matrix<f64>)>,
+    single: &Matrix<f64>,
+    steps: u64,
+) -> &'a Matrix<f64> {
+    let place = known.iter().position(|(known, _)| *known == steps);
+    let place = place.unwrap_or_else(|| {
+        if known.len() == MOST_LEAPS {
+            known.remove(0);
+        }
+        known.push((steps, to_the_power(single, steps)));
+        known.len() - 1
+    });
+    &known[place].1
 }
 
 /// Work in multiplications that one global comparison may cost.
@@ -160,20 +186,30 @@ impl<'a> Trial<'a> {
 
     /// The stack one row on, where no input jumps in between.
     pub fn row_on(&self, stack: &[f64], time: f64) -> Vec<f64> {
-        self.steps_on(&self.joined, stack, time)
+        let mut stack = stack.to_vec();
+        self.steps_on(&self.joined, &mut stack, &mut Vec::new(), time);
+        stack
     }
 
-    fn steps_on(&self, joined: &Matrix<f64>, stack: &[f64], time: f64) -> Vec<f64> {
+    fn steps_on(&self, joined: &Matrix<f64>, stack: &mut [f64], all: &mut Vec<f64>, time: f64) {
         let near = NEAR * self.recurrence.step;
-        let mut all = stack.to_vec();
-        all.extend(self.drive.state(self.linear, time, Side::After, near));
-        let rows = joined.rows().take(stack.len());
-        rows.map(|row| row.iter().zip(&all).map(|(m, x)| m * x).sum())
-            .collect()
+        all.clear();
+        all.extend_from_slice(stack);
+        self.drive.extend(self.linear, time, Side::After, near, all);
+        for (x, row) in stack.iter_mut().zip(joined.rows()) {
+            *x = dot(row, all);
+        }
     }
 
-    /// The stack so many steps on, through jumps.
-    pub fn advance(&self, stack: &[f64], time: f64, steps: u64, sides: Sides) -> Vec<f64> {
+    /// The stack so many steps on, through jumps. `leaps` keeps what will be needed again.
+    pub fn advance(
+        &self,
+        leaps: &mut Leaps,
+        stack: &mut Vec<f64>,
+        time: f64,
+        steps: u64,
+        sides: Sides,
+    ) {
         let step = self.recurrence.step;
         let (near, size) = (NEAR * step, self.linear.size());
         let behind = (self.recurrence.back() - 1) as f64 * step;
@@ -184,17 +220,20 @@ impl<'a> Trial<'a> {
             Sides::After | Sides::Own => time - behind + near,
         };
         if !self.linear.jumps_within(first, end + near) {
-            if steps == self.steps {
-                return self.row_on(stack, time);
-            }
-            return self.steps_on(&to_the_power(&self.single, steps), stack, time);
+            let Leaps { known, all } = leaps;
+            let joined = match steps == self.steps {
+                true => &self.joined,
+                false => over(known, &self.single, steps),
+            };
+            return self.steps_on(joined, stack, all, time);
         }
         let states = stack.chunks_exact(size).map(<[f64]>::to_vec);
         let mut march = March::new(&self.recurrence, self.linear, sides, states, time, 0);
         for _ in 0..steps {
             march.step();
         }
-        march.history().flatten().copied().collect()
+        stack.clear();
+        stack.extend(march.history().flatten());
     }
 
     /// How far beyond its end a step reads the inputs: the first stage of one SDIRK method
@@ -202,6 +241,14 @@ impl<'a> Trial<'a> {
     pub(super) fn reach(&self) -> f64 {
         let furthest = self.recurrence.nodes.iter().map(|node| node.at);
         (furthest.fold(1.0, f64::max) - 1.0) * self.recurrence.step
+    }
+
+    /// The matrix over so many rows, and how roundings of single rows add up over them.
+    pub(super) fn over_rows(&self, rows: u64) -> (Matrix<f64>, Matrix<f64>) {
+        (
+            to_the_power(&self.across, rows),
+            gathered(&self.across, rows),
+        )
     }
 
     /// The matrix over so many steps.
@@ -262,6 +309,7 @@ impl<'a> Trial<'a> {
         let mut forcing = vec![0.0; linear.size()];
         let mut fit = Fit::NOTHING;
         let mut doubts = either.then(|| Doubts::new(self));
+        let mut leaps = Leaps::default();
         for row in 0..=last {
             let time = window.times[row];
             if row > 0 {
@@ -269,7 +317,7 @@ impl<'a> Trial<'a> {
                     break;
                 }
                 let before = origin + ((row - 1) as f64) * self.steps as f64 * self.recurrence.step;
-                state = self.advance(&state, before, self.steps, sides);
+                self.advance(&mut leaps, &mut state, before, self.steps, sides);
                 if let Some(doubts) = &mut doubts {
                     doubts.next_row(self, before, self.steps);
                 }

@@ -4,8 +4,8 @@
 use nalgebra::DMatrix;
 
 use crate::method::{
-    Coefficients, Drive, Linear, Method, Ranks, Reading, Record, Recurrence, Scheme, Side, Sides,
-    Trial, rank_orders,
+    Coefficients, Drive, Leaps, Linear, Method, Ranks, Reading, Record, Recurrence, Scheme, Side,
+    Sides, Trial, rank_orders,
 };
 
 /// The rows of a file that are looked at.
@@ -107,9 +107,9 @@ impl Rows {
     pub(super) fn few(&self) -> Rows {
         let early = (0..self.len()).take_while(|&row| self.numbers[row] < 300);
         let count = early.count();
-        let stride = (count / 60).max(1);
+        let stride = (count / 30).max(1);
         let keep: Vec<usize> = (0..count)
-            .filter(|row| row % stride == 0 || *row < 40)
+            .filter(|row| row % stride == 0 || *row < 24)
             .collect();
         let width = self.width();
         let pick = |values: &[f64]| -> Vec<f64> {
@@ -357,6 +357,7 @@ fn stepped(linear: &Linear, rows: &Rows, stepping: &Stepping) -> Option<Vec<f64>
     let memory = recurrence.back() as u64 - 1;
     let size = linear.size();
     let trial = Trial::new(linear, recurrence, steps, f64::EPSILON / 2.0);
+    let mut leaps = Leaps::default();
     let origin = linear.window.0;
     // A method with a memory begins with exact values.
     let mut stack = linear.start.clone();
@@ -379,7 +380,7 @@ fn stepped(linear: &Linear, rows: &Rows, stepping: &Stepping) -> Option<Vec<f64>
             let smooth =
                 leap > steps && !linear.jumps_within(at - (memory + 1) as f64 * step, time + step);
             let count = if smooth { leap } else { leap.min(steps) };
-            stack = trial.advance(&stack, at, count, stepping.sides);
+            trial.advance(&mut leaps, &mut stack, at, count, stepping.sides);
             done += count;
         }
         let state = if wanted < done && wanted <= memory {
@@ -410,6 +411,7 @@ pub(super) fn stopping_at(
         return None;
     }
     let trial = Trial::new(linear, whole, steps, f64::EPSILON / 2.0);
+    let mut leaps = Leaps::default();
     let origin = linear.window.0;
     let mut state = linear.start.clone();
     let mut done = 0;
@@ -425,7 +427,7 @@ pub(super) fn stopping_at(
                 .filter(|&jump| jump > at + near && jump < at + step - near)
                 .collect();
             if edges.is_empty() {
-                state = trial.advance(&state, at, 1, Sides::Own);
+                trial.advance(&mut leaps, &mut state, at, 1, Sides::Own);
                 done += 1;
                 continue;
             }
@@ -435,7 +437,7 @@ pub(super) fn stopping_at(
                 let part = Recurrence::new(&coefficients, linear, edge - from, &stepping.ranks)?
                     .with_reading(stepping.reading);
                 let part = Trial::new(linear, part, 1, f64::EPSILON / 2.0);
-                state = part.advance(&state, from, 1, Sides::Own);
+                part.advance(&mut Leaps::default(), &mut state, from, 1, Sides::Own);
                 from = edge;
             }
             done += 1;

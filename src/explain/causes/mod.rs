@@ -286,7 +286,7 @@ fn of_method(
         let gap = trajectory(linear, rows, way).map(|values| rows.gap(&values));
         gap.is_some_and(|gap| gap.is_closed() || gap.share <= FOUND * before.share)
     });
-    let has_memory = method.schemes.iter().any(|scheme| scheme.steps_back() > 1);
+    let has_memory = method.steps_back() > 1;
     let Some(way) = way else {
         // The start of a method with a memory is its own business.
         if has_memory {
@@ -313,7 +313,7 @@ fn of_method(
             sides: Sides::After,
             ..stepping.clone()
         });
-        let late = model::candidates(linear, rows, names, &after, step, before).into_iter();
+        let late = model::moved_inputs(linear, rows, names, &after, step, before).into_iter();
         candidates.extend(
             late.filter(|late| late.kind == Kind::InputLate && rows.gap(&late.values).is_closed())
                 .map(|late| Candidate {
@@ -416,6 +416,7 @@ fn of_faults(trouble: &Trouble, rows: &Rows, names: &Names, before: Gap) -> Vec<
             .number
             .is_some_and(|factor| factor.ln().abs() > 0.6 * fastest)
     };
+    let rough = model::Rough::new(linear, rows);
     let beside = |(way, method): &(Way, Option<&'static Method>)| {
         let mut one = Beside::default();
         let base = match way {
@@ -436,7 +437,7 @@ fn of_faults(trouble: &Trouble, rows: &Rows, names: &Names, before: Gap) -> Vec<
         }
         if model_step > 0.0 {
             candidates.extend(model::candidates(
-                linear, rows, names, way, model_step, before,
+                linear, rows, names, way, model_step, before, &rough,
             ));
         }
         for candidate in candidates {

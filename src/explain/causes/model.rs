@@ -17,6 +17,7 @@ pub(super) fn candidates(
     way: &Way,
     step: f64,
     before: Gap,
+    rough: &Rough,
 ) -> Vec<Candidate> {
     let mut found = Vec::new();
     found.extend(moved_inputs(linear, rows, names, way, step, before));
@@ -24,14 +25,15 @@ pub(super) fn candidates(
     found.extend(scaled_inputs(linear, rows, names, way));
     found.extend(held(linear, rows, names, way, step));
     found.extend(start(linear, rows, names, way));
-    found.extend(rates(linear, rows, names, way));
+    found.extend(rates(linear, rows, names, way, rough));
     found
 }
 
 /// Steps by which an input may be late.
 const SHIFTS: [f64; 7] = [1.0, 0.5, 2.0, 3.0, 4.0, 5.0, 10.0];
 
-fn moved_inputs(
+/// Inputs that act early or late.
+pub(super) fn moved_inputs(
     linear: &Linear,
     rows: &Rows,
     names: &Names,
@@ -369,36 +371,68 @@ const FACTORS: [f64; 31] = [
     3600.0,
 ];
 
+/// What may be scaled, each with the place of the factor that fits the exact solution best:
+/// methods come about as close with one near to it.
+pub(super) struct Rough(Vec<(Scaled, usize)>);
+
+/// Places to either side that a method may prefer.
+const ASIDE: usize = 3;
+
+impl Rough {
+    pub(super) fn new(linear: &Linear, rows: &Rows) -> Rough {
+        let mut kinds = vec![Scaled::All];
+        if !linear.is_steady()
+            || linear.constant.iter().any(|c| *c != 0.0)
+            || !linear.signals.is_empty()
+        {
+            kinds.push(Scaled::Time);
+        }
+        if linear.size() > 1 {
+            kinds.extend((0..linear.size()).map(Scaled::One));
+        }
+        let few = rows.few();
+        let best = |scaled: Scaled| {
+            let all = 0..FACTORS.len();
+            let best = nearest(linear, &few, &Way::Exact, scaled, all)?;
+            Some((scaled, best))
+        };
+        Rough(kinds.into_iter().filter_map(best).collect())
+    }
+}
+
+/// How far the rows are from a model with something scaled. Squares: smooth in the factor, so
+/// that it can be refined.
+fn miss(linear: &Linear, few: &Rows, way: &Way, scaled: Scaled, factor: f64) -> f64 {
+    let values = trajectory(&scaled.apply(linear, factor), few, way);
+    values.map_or(f64::INFINITY, |values| few.squares(&values))
+}
+
+/// The best of some factors.
+fn nearest(
+    linear: &Linear,
+    few: &Rows,
+    way: &Way,
+    scaled: Scaled,
+    places: std::ops::Range<usize>,
+) -> Option<usize> {
+    let tried = places.map(|place| (place, miss(linear, few, way, scaled, FACTORS[place])));
+    let best = tried.min_by(|a, b| a.1.total_cmp(&b.1))?;
+    best.1.is_finite().then_some(best.0)
+}
+
 /// Rates that are scaled, by a factor that is looked for.
-fn rates(linear: &Linear, rows: &Rows, names: &Names, way: &Way) -> Vec<Candidate> {
-    let mut kinds = vec![Scaled::All];
-    if !linear.is_steady()
-        || linear.constant.iter().any(|c| *c != 0.0)
-        || !linear.signals.is_empty()
-    {
-        kinds.push(Scaled::Time);
-    }
-    if linear.size() > 1 {
-        kinds.extend((0..linear.size()).map(Scaled::One));
-    }
+fn rates(linear: &Linear, rows: &Rows, names: &Names, way: &Way, rough: &Rough) -> Vec<Candidate> {
     let few = rows.few();
     let mut found = Vec::new();
-    for scaled in kinds {
-        let miss = |factor: f64| -> f64 {
-            let values = trajectory(&scaled.apply(linear, factor), &few, way);
-            // Squares: smooth in the factor, so that it can be refined.
-            values.map_or(f64::INFINITY, |values| few.squares(&values))
-        };
-        let tried: Vec<f64> = FACTORS.iter().map(|&factor| miss(factor)).collect();
-        let Some(best) = (0..FACTORS.len()).min_by(|&a, &b| tried[a].total_cmp(&tried[b])) else {
+    for &(scaled, rough) in &rough.0 {
+        let near = rough.saturating_sub(ASIDE)..(rough + ASIDE + 1).min(FACTORS.len());
+        let Some(best) = nearest(linear, &few, way, scaled, near) else {
             continue;
         };
-        if !tried[best].is_finite() {
-            continue;
-        }
         let low = FACTORS[best.saturating_sub(1)];
         let high = FACTORS[(best + 1).min(FACTORS.len() - 1)];
-        let factor = least(&|x| miss(x.exp()), low.ln(), high.ln()).exp();
+        let far = |x: f64| miss(linear, &few, way, scaled, x.exp());
+        let factor = least(&far, low.ln(), high.ln()).exp();
         // Known slips are exact.
         let factor = [1e3, 60.0, 3600.0, std::f64::consts::TAU]
             .into_iter()
@@ -440,7 +474,7 @@ fn least(function: &dyn Fn(f64) -> f64, low: f64, high: f64) -> f64 {
     let (mut a, mut b) = (low, high);
     let (mut c, mut d) = (b - golden * (b - a), a + golden * (b - a));
     let (mut fc, mut fd) = (function(c), function(d));
-    for _ in 0..40 {
+    for _ in 0..16 {
         if fc <= fd {
             (b, d, fd) = (d, c, fc);
             c = b - golden * (b - a);
@@ -451,10 +485,10 @@ fn least(function: &dyn Fn(f64) -> f64, low: f64, high: f64) -> f64 {
             fd = function(d);
         }
     }
-    // Squares are flat about their least value: the vertex of a parabola through wider
-    // points is known better than the golden sections end.
-    let (mut middle, mut width) = (0.5 * (a + b), 1e-4);
-    for _ in 0..3 {
+    // Squares are flat about their least value, where golden sections see roundings: the
+    // vertices of ever narrower parabolas are known better.
+    let (mut middle, mut width) = (0.5 * (a + b), (b - a).max(1e-4));
+    for _ in 0..4 {
         let (left, at, right) = (
             function(middle - width),
             function(middle),
