@@ -3,8 +3,10 @@
 use super::Model;
 use super::evidence::{RunFound, claimed_methods};
 use super::run::RunCompared;
-use crate::explain::{Cause, Trouble, causes};
+use crate::case::Library;
+use crate::explain::{Cause, Kind, Parameters, Trouble, causes};
 use crate::judge::{Answer, Support, Verdict};
+use crate::method::Linear;
 use crate::outcome::{Audited, CauseOutcome};
 use crate::submission::{Role, Submission};
 
@@ -15,6 +17,7 @@ const MOST_RUNS: usize = 2;
 /// contradiction back where the claimed method explains all that a fault leaves.
 pub(super) fn look(
     model: &Model,
+    library: &Library,
     submission: &Submission,
     runs: &[RunCompared],
     found: &mut [RunFound],
@@ -33,6 +36,22 @@ pub(super) fn look(
         .iter()
         .map(|input| input.name.clone())
         .collect();
+    let given = &model.case.parameters;
+    let scaled = |place: usize, factor: f64| {
+        let mut replaced = submission.parameters.clone();
+        let parameter = &given[place];
+        let value = parameter.value.to_f64() * factor;
+        replaced.insert(parameter.name.clone(), value);
+        let case = library.load(submission.case.as_deref()?, &replaced).ok()?;
+        Some(Linear::new(&case))
+    };
+    let parameters = Parameters {
+        names: given
+            .iter()
+            .map(|parameter| parameter.name.clone())
+            .collect(),
+        scaled: &scaled,
+    };
     let mut looked = 0;
     let mut mended_by: Option<String> = None;
     // The finest run decides on the order; results decide on limits.
@@ -73,10 +92,16 @@ pub(super) fn look(
             step,
             channels: &channels,
             inputs: &inputs,
+            parameters: &parameters,
             time_unit: &model.case.time.unit,
         };
         let causes = causes(&trouble);
+        // The claimed method at another step than the stated one is no fault of the model.
+        let at_other_step = |answer: &&mut Answer| answer.method == Some(Support::Agrees);
+        let other = |cause: &Cause| matches!(cause.kind, Kind::CoarserStep | Kind::OtherMethod);
         if let Some(answer) = found.answer.as_mut().filter(|_| contradicted)
+            && !at_other_step(&answer)
+            && !causes.iter().any(other)
             && let Some(cause) = mended(&causes, &methods)
         {
             let text = format!(
@@ -123,11 +148,10 @@ fn mended<'a>(
     causes: &'a [Cause],
     methods: &[&'static crate::method::Method],
 ) -> Option<&'a Cause> {
-    use crate::explain::Kind::{CoarserStep, OtherMethod};
     causes.iter().find(|cause| {
         let claimed = cause
             .method
             .is_some_and(|own| methods.iter().any(|m| m.name == own.name));
-        claimed && !matches!(cause.kind, CoarserStep | OtherMethod)
+        claimed && !matches!(cause.kind, Kind::CoarserStep | Kind::OtherMethod)
     })
 }

@@ -190,7 +190,14 @@ fn audit_one(
     );
     audited.runs = compared.iter().map(|one| one.outcome.clone()).collect();
     judge_runs(&mut audited);
-    causes::look(&model, submission, &compared, &mut found, &mut audited);
+    causes::look(
+        &model,
+        library,
+        submission,
+        &compared,
+        &mut found,
+        &mut audited,
+    );
     evidence::conclude(submission, &compared, &found, &mut audited);
     growth::measure(&model, &compared, &mut audited);
     settings::settings(&model.case, &compared, &mut audited);

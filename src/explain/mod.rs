@@ -8,7 +8,7 @@ mod settings;
 mod steps;
 
 pub use advice::{Asked, Computed, advice, measured_step};
-pub use causes::{Cause, Kind, Trouble, causes};
+pub use causes::{Cause, Kind, Parameters, Trouble, causes};
 pub use reasons::{Place, fatal_finding, limit_broken, limit_hidden, order_reason, without_values};
 pub use settings::{SLOPE, SPREAD, is_proportional, needed_setting, settings_text};
 pub use steps::{

@@ -102,7 +102,11 @@ pub fn limit_hidden(place: &Place, errors: &ErrorOutcome, stamps: &str) -> Strin
             (false, true) => "the values",
             (false, false) => "both",
         };
-        format!("{text}; print {what} to {more} digits more")
+        if more.is_finite() {
+            format!("{text}; print {what} to {more} digits more")
+        } else {
+            format!("{text}; no number of digits would do for a limit of zero")
+        }
     }
 }
 

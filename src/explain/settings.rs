@@ -60,10 +60,13 @@ pub fn settings_text(
         None => {}
     }
     if let Some(needed) = needed {
-        text += &format!(
-            "; a setting of {} keeps the limit by this slope",
-            plain(needed)
-        );
+        let needed = plain(needed);
+        text += &match proportional {
+            Some(false) => {
+                format!("; should its slope hold, a setting of {needed} keeps the limit")
+            }
+            _ => format!("; a setting of {needed} keeps the limit by this slope"),
+        };
     }
     text
 }

@@ -2,12 +2,12 @@
 //! deserves before it is contradicted: single precision that the digits do not show, another
 //! method for the first step, steps of its own at jumps where states are missing.
 
-use super::chance::{binds, is_implicit, of_iteration};
+use super::chance::{binds, of_iteration};
 use super::claims::{Answer, Claimed, Support, early, of_claim};
 use crate::method::{
-    Evidence, Family, Linear, Method, Reading, Record, evidence, evidence_of, fitting, forms,
+    Evidence, Family, Linear, Method, Reading, Record, Scheme, evidence, evidence_of, fitting,
+    forms,
 };
-use crate::number::plain;
 
 /// Where another method fits, single precision is thought of up to this many times what
 /// digits and double precision allow: few digits are coarser than its roundings by then.
@@ -48,7 +48,6 @@ pub fn ask(linear: &Linear, record: &Record, claimed: &Claimed) -> (Evidence, Op
         let own = found.best(claimed.methods, claimed.steps);
         if let Some((step, own)) = claimed.step.zip(own)
             && own.fit.residual <= STIFF * record.unit * step * linear.matrix.row_sum_norm()
-            && is_implicit(own.method)
         {
             let text = "the rates are so fast for the step that the roundings of its solution may be \
                         all that is left; a smaller step would tell";
@@ -86,13 +85,6 @@ fn unfinished(
     found: &Evidence,
 ) -> Option<String> {
     let steps = claimed.steps?;
-    let label = || {
-        let name = claimed.name.unwrap_or_default();
-        let step = claimed.step.map(|step| (step, claimed.time_unit));
-        step.map_or(name.to_owned(), |(step, unit)| {
-            format!("{name} at step {} {unit}", plain(step))
-        })
-    };
     let own = found.best(claimed.methods, Some(steps));
     let close = own.filter(|own| own.fit.residual <= of_iteration(steps));
     // Far from the method, the rows of another one have its name, however it came to them.
@@ -101,23 +93,23 @@ fn unfinished(
             let forms = forms(method);
             if let Some(form) = fitting(linear, record, method, &forms, steps) {
                 return Some(format!(
-                    "the rows are those of {} {}, which is another method than the one solved to \
-                     the end; let iterations run to a tolerance",
-                    label(),
-                    form.text
+                    "the rows are those of {} {}, and not of the formula as it stands; {}",
+                    claimed.label(),
+                    form.text,
+                    if method.schemes.iter().any(Scheme::is_predicted) {
+                        "predict, evaluate, correct once and evaluate to have it confirmed"
+                    } else {
+                        "let iterations run to a tolerance"
+                    }
                 ));
             }
         }
     }
     // A method with a memory passes over the first rows, where rows that soon settle hold
     // all that an iteration has left.
-    let own = close.filter(|own| is_implicit(own.method))?;
-    let is_claimed = |m: &&'static Method| claimed.methods.iter().any(|c| c.name == m.name);
-    if found
-        .consistent
-        .iter()
-        .any(|f| f.methods.iter().any(is_claimed))
-    {
+    let own = close.filter(|_| claimed.is_iterated())?;
+    let of_claim = |family: &Family| family.methods.iter().any(|m| claimed.is_claimed(m));
+    if found.consistent.iter().any(of_claim) {
         return None;
     }
     let back = |family: &Family| family.methods.iter().map(|m| m.steps_back()).min();
@@ -127,7 +119,7 @@ fn unfinished(
     let rest = evidence_of(linear, &rest, claimed.methods, &[steps]);
     let same = rest.best(claimed.methods, Some(steps))?;
     let open = same.fit.holds() || !found.consistent.iter().any(|family| binds(family, same));
-    open.then(|| early(own, &label()))
+    open.then(|| early(own, &claimed.label()))
 }
 
 /// True where a method without a memory fits all rows but the first few, and can be told

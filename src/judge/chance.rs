@@ -3,9 +3,9 @@
 
 use crate::method::{Family, Method, Reading, Tried};
 
-/// Codes that solve implicit steps by iteration stop at tolerances up to about this part
-/// of the state, over several steps from row to row (common practice, no source).
-const ITERATION: f64 = 1e-5;
+/// Codes that solve implicit steps by iteration stop at tolerances up to about a third of this
+/// part of the state, and leave some times their tolerance, over several steps from row to row (common practice, no source).
+const ITERATION: f64 = 3e-5;
 /// More steps than this from row to row may leave more in proportion.
 const FEW_STEPS: f64 = 5.0;
 

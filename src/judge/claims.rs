@@ -51,6 +51,27 @@ pub struct Claimed<'a> {
     pub time_unit: &'a str,
 }
 
+impl Claimed<'_> {
+    /// Method and step for a sentence.
+    pub(super) fn label(&self) -> String {
+        let name = self.name.unwrap_or_default();
+        match self.step {
+            Some(step) => format!("{name} at step {} {}", plain(step), self.time_unit),
+            None => name.to_owned(),
+        }
+    }
+
+    /// True where the name means a method whose steps have to be solved for.
+    pub(super) fn is_iterated(&self) -> bool {
+        self.methods.iter().any(|method| is_implicit(method))
+    }
+
+    /// True for the methods that the name means.
+    pub(super) fn is_claimed(&self, method: &Method) -> bool {
+        self.methods.iter().any(|own| own.name == method.name)
+    }
+}
+
 /// The answer for one run.
 #[derive(Clone, Debug, PartialEq)]
 pub struct Answer {
@@ -132,10 +153,7 @@ pub fn of_claim(evidence: &Evidence, claimed: &Claimed) -> Option<Answer> {
 
 fn of_method(evidence: &Evidence, claimed: &Claimed, cannot: &dyn Fn(String) -> Answer) -> Answer {
     let name = claimed.name.unwrap_or_default();
-    let label = match claimed.step {
-        Some(step) => format!("{name} at step {} {}", plain(step), claimed.time_unit),
-        None => name.to_owned(),
-    };
+    let label = claimed.label();
     let all = |support: Support, text: String| Answer {
         support,
         method: Some(support),
@@ -175,7 +193,9 @@ fn of_method(evidence: &Evidence, claimed: &Claimed, cannot: &dyn Fn(String) -> 
             return cannot(text);
         }
         let outdone = evidence.outdone(own, claimed.methods, claimed.unit);
-        let far = outdone.filter(|(times, _)| *times > FAR_BEYOND && !own.free);
+        // A stiff step is computed in more ways than one, each with roundings of its own.
+        let rounded = own.fit.residual <= own.coarse;
+        let far = outdone.filter(|(times, _)| *times > FAR_BEYOND && !own.free && !rounded);
         if let Some((times, family)) = far {
             let text = format!(
                 "the rows fit {}, {} times closer than {label}, whose roundings would stand in \
@@ -193,7 +213,7 @@ fn of_method(evidence: &Evidence, claimed: &Claimed, cannot: &dyn Fn(String) -> 
         }
         if own.at_jumps.ratio > 1.0
             && own.at_jumps.residual <= of_iteration(own.steps)
-            && is_implicit(own.method)
+            && claimed.is_iterated()
         {
             return cannot(early(own, &label));
         }
@@ -243,7 +263,7 @@ fn of_method(evidence: &Evidence, claimed: &Claimed, cannot: &dyn Fn(String) -> 
     }
     if evidence.is_skipped(claimed.methods, claimed.steps) {
         let other = |family: &&Family| {
-            let names = |m: &&Method| claimed.methods.iter().all(|c| c.name != m.name);
+            let names = |m: &&Method| !claimed.is_claimed(m);
             let bounded = evidence.exact.residual <= 1.0;
             bounded && family.is_beyond_chance() && family.methods.iter().all(names)
         };
@@ -269,7 +289,7 @@ fn of_method(evidence: &Evidence, claimed: &Claimed, cannot: &dyn Fn(String) -> 
     if own.is_none() && claimed.step.is_some() {
         if claimed.steps.is_none() {
             return cannot(format!(
-                "rows are not a whole number of steps of {} {} apart; write rows at steps",
+                "rows are not all one whole number of steps of {} {} apart; write rows at even distances",
                 plain(claimed.step.unwrap_or_default()),
                 claimed.time_unit
             ));
@@ -279,7 +299,7 @@ fn of_method(evidence: &Evidence, claimed: &Claimed, cannot: &dyn Fn(String) -> 
         ));
     }
     // A solver that stops early leaves a residual that something free enough may fit.
-    let implicit = own.is_some_and(|own| is_implicit(own.method));
+    let implicit = own.is_some() && claimed.is_iterated();
     let exactly = evidence.exact.residual / evidence.exact.ratio;
     let stopped_early = own.filter(|own| {
         let loose = own.fit.residual <= of_iteration(own.steps)
@@ -310,7 +330,7 @@ fn of_method(evidence: &Evidence, claimed: &Claimed, cannot: &dyn Fn(String) -> 
         let bound = |own| (family.free || family.is_told()) && binds(family, own);
         family.is_beyond_chance() || (claimed.step.is_some() && own.is_some_and(bound))
     };
-    let is_claimed = |m: &&'static Method| claimed.methods.iter().any(|c| c.name == m.name);
+    let is_claimed = |m: &&'static Method| claimed.is_claimed(m);
     let named = |family: &&Family| {
         let plain =
             !family.free && (family.is_told() || own.is_some_and(|own| far_closer(family, own)));
@@ -358,10 +378,10 @@ fn of_method(evidence: &Evidence, claimed: &Claimed, cannot: &dyn Fn(String) -> 
     let nearest_other = evidence
         .tried
         .iter()
-        .filter(|tried| claimed.methods.iter().all(|m| m.name != tried.method.name))
+        .filter(|tried| !claimed.is_claimed(tried.method))
         .map(|tried| tried.fit.residual)
         .fold(evidence.exact.residual, f64::min);
-    if own.fit.residual <= FAR_BELOW * nearest_other {
+    if own.fit.residual < FAR_BELOW * nearest_other {
         let text = format!(
             "the rows are close to {label}: {} of the peak away, every other method is more than \
              {} times further",

@@ -188,7 +188,9 @@ impl Trial<'_> {
             std::mem::swap(&mut states, &mut next_states);
             let count = row + 1 - first;
             let (over, sum) = match &leap {
-                Some(leap) if count > DENSE && count % SPARSE == 0 => (&leap.0, Some(&leap.1)),
+                Some(leap) if count > DENSE && count.is_multiple_of(SPARSE) => {
+                    (&leap.0, Some(&leap.1))
+                }
                 _ if count > DENSE => continue,
                 _ => (self.across(), None),
             };

@@ -57,7 +57,7 @@ pub fn forms(method: &Method) -> Vec<Form> {
                     let starts = [Start::State, Start::Euler, Start::Known];
                     let unfinished = starts.map(|start| unfinished(&stages, times, start));
                     forms.extend(unfinished.map(|stages| Form {
-                        text: format!("with {times} fixed-point iterations a step"),
+                        text: rounds(times),
                         coefficients: Coefficients::Stages(stages),
                     }));
                 }
@@ -65,7 +65,7 @@ pub fn forms(method: &Method) -> Vec<Form> {
             Coefficients::Multistep { alpha, beta } => {
                 for guess in guesses(alpha.len() - 1) {
                     forms.extend((1..=MOST_TIMES).map(|times| Form {
-                        text: format!("with {times} fixed-point iterations a step"),
+                        text: rounds(times),
                         coefficients: Coefficients::Iterated(Iterated {
                             alpha: alpha.clone(),
                             beta: beta.clone(),
@@ -85,6 +85,13 @@ pub fn forms(method: &Method) -> Vec<Form> {
         }
     }
     forms
+}
+
+fn rounds(times: usize) -> String {
+    match times {
+        1 => "with one fixed-point iteration a step".to_owned(),
+        more => format!("with {more} fixed-point iterations a step"),
+    }
 }
 
 /// What the iterations of a stage begin with.
@@ -146,12 +153,12 @@ fn unfinished(stages: &Stages, times: usize, start: Start) -> Stages {
     } else {
         for time in 0..times {
             let known = newest.clone();
-            for stage in 0..count {
+            for (stage, place) in newest.iter_mut().enumerate() {
                 let row = match time {
                     0 => first(stage, &[], length),
                     _ => combined(stage, &known, length),
                 };
-                newest[stage] = Some(add(stage, row));
+                *place = Some(add(stage, row));
                 length += 1;
             }
         }
@@ -182,7 +189,9 @@ fn guesses(back: usize) -> Vec<Guess> {
     let none = vec![Double::ZERO; back];
     let mut newest = none.clone();
     newest[back - 1] = Double::ONE;
+    // From nothing at all, one round later, it is what the formula knows already.
     let mut guesses = vec![
+        (none.clone(), none.clone()),
         (newest.clone(), none.clone()),
         (newest.clone(), newest.clone()),
     ];
@@ -217,8 +226,13 @@ fn modes(predictor: &[Double], corrector: &[Double]) -> Vec<Form> {
     let mut forms: Vec<Form> = modes
         .map(|(times, evaluates)| Form {
             text: format!(
-                "with {times} corrections a step and {} evaluation after the last",
-                if evaluates { "an" } else { "no" }
+                "with {} a step and {} evaluation after {}",
+                match times {
+                    1 => "one correction".to_owned(),
+                    more => format!("{more} corrections"),
+                },
+                if evaluates { "an" } else { "no" },
+                if times == 1 { "it" } else { "the last" }
             ),
             coefficients: Coefficients::Iterated(Iterated {
                 alpha: alpha.clone(),
@@ -497,8 +511,11 @@ mod tests {
                 rates.push(newest);
             }
             let last = if evaluates { "an" } else { "no" };
-            let text =
-                format!("with {times} corrections a step and {last} evaluation after the last");
+            let (count, after) = match times {
+                1 => ("one correction".to_owned(), "it"),
+                more => (format!("{more} corrections"), "the last"),
+            };
+            let text = format!("with {count} a step and {last} evaluation after {after}");
             let found = fitting("Adams-Bashforth-Moulton 3", &rows);
             assert!(found.contains(&text), "{text}: {found:?}");
             assert!(found.len() <= 2, "{found:?}");

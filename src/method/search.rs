@@ -297,6 +297,7 @@ impl Search<'_> {
                 at_jumps: Fit::NOTHING,
                 free,
                 print: Vec::new(),
+                coarse: self.coarse(spacing / count as f64),
             };
             if fit.holds() {
                 tried.print = self.print(&trial);
@@ -314,6 +315,11 @@ impl Search<'_> {
     /// True where no method is claimed: else the numbers of steps that matter are tried.
     fn wants_ranges(&self) -> bool {
         self.claimed.is_empty()
+    }
+
+    /// What the matrix of a step is rounded by: elimination with `I - h A` in it.
+    fn coarse(&self, step: f64) -> f64 {
+        16.0 * f64::EPSILON * step * self.linear.matrix.row_sum_norm()
     }
 
     /// True where earlier states that a step needs are not all among the rows.
@@ -432,6 +438,7 @@ impl Search<'_> {
                     apart,
                     at_jumps: Fit::NOTHING,
                     free: false,
+                    coarse: 0.0,
                     print,
                 });
             }

@@ -6,6 +6,18 @@ pub fn short(value: f64) -> String {
     shown(value, 3)
 }
 
+/// A value with so many digits that three are left of what it differs by from another one, nine
+/// at most; three at least.
+pub fn beside(value: f64, difference: f64) -> String {
+    let more = (value.abs() / difference.abs()).log10().ceil();
+    let more = if more.is_finite() {
+        more.clamp(0.0, 6.0)
+    } else {
+        0.0
+    };
+    shown(value, 3 + more as usize)
+}
+
 /// A measured value with as many digits as its doubt leaves, three at most.
 fn short_within(value: f64, doubt: f64) -> String {
     let known = (value.abs() / doubt).log10().floor() + 1.0;

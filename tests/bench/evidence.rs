@@ -7,7 +7,7 @@ use std::time::{Duration, Instant};
 
 use stepgauge::Case;
 use stepgauge::case::Library;
-use stepgauge::explain::{Trouble, causes};
+use stepgauge::explain::{Parameters, Trouble, causes};
 use stepgauge::judge::{Claimed, ask};
 use stepgauge::method::{
     Linear, March, Method, Ranks, Record, Recurrence, Sides, Window, find, growth, windows,
@@ -80,6 +80,10 @@ fn tell(case: &Case, linear: &Linear, record: &Record, step: f64, fails: bool) {
         step: Some(step),
         channels: &channels,
         inputs: &inputs,
+        parameters: &Parameters {
+            names: Vec::new(),
+            scaled: &|_, _| None,
+        },
         time_unit: "s",
     };
     if fails {

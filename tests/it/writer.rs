@@ -37,6 +37,10 @@ pub enum Solver {
     Fixed(f64),
     /// Newton's method with the matrix of a step a tenth shorter, likewise.
     Loose(f64),
+    /// So many rounds of fixed-point iteration and no more.
+    Rounds(u32),
+    /// A predictor, corrected so many times, with or without an evaluation after the last.
+    Corrections(u32, bool),
 }
 
 /// Numbers that the program computes with.
@@ -139,9 +143,17 @@ impl<'a, T: Number> Program<'a, T> {
         &self.matrix * x + self.forcing(t, share)
     }
 
-    fn solve(&self, m: DMatrix<T>, right: &DVector<T>) -> Option<DVector<T>> {
+    /// `guess` is where a fixed number of rounds begins.
+    fn solve(&self, m: DMatrix<T>, right: &DVector<T>, guess: &DVector<T>) -> Option<DVector<T>> {
         let (inverse, tolerance) = match self.solver {
-            Solver::Direct => return m.lu().solve(right),
+            Solver::Direct | Solver::Corrections(..) => return m.lu().solve(right),
+            Solver::Rounds(rounds) => {
+                let mut x = guess.clone();
+                for _ in 0..rounds {
+                    x = right + &x - &m * &x;
+                }
+                return Some(x);
+            }
             Solver::Fixed(tolerance) => (DMatrix::identity(m.nrows(), m.ncols()), tolerance),
             Solver::Loose(tolerance) => {
                 let unit = DMatrix::identity(m.nrows(), m.ncols());
@@ -194,7 +206,7 @@ impl<'a, T: Number> Program<'a, T> {
                             f
                         } else {
                             let m = DMatrix::identity(n, n) - &self.matrix * own;
-                            self.solve(m, &f)?
+                            self.solve(m, &f, &f)?
                         });
                     }
                 } else {
@@ -207,7 +219,7 @@ impl<'a, T: Number> Program<'a, T> {
                         let f = self.rate(t + c(stages.nodes[i]) * h, share(i), x);
                         right.rows_mut(i * n, n).copy_from(&f);
                     }
-                    let all = self.solve(m, &right)?;
+                    let all = self.solve(m, &right, &right)?;
                     k.extend((0..s).map(|i| all.rows(i * n, n).into_owned()));
                 }
                 let mut next = x.clone();
@@ -251,7 +263,8 @@ impl<'a, T: Number> Program<'a, T> {
         }
     }
 
-    /// One step of a multistep method from the states so far and their rates.
+    /// One step of a multistep method from the states so far and their rates; with the new
+    /// rate where the method has one of its own.
     fn multistep(
         &self,
         method: &Coefficients,
@@ -259,7 +272,7 @@ impl<'a, T: Number> Program<'a, T> {
         h: T,
         past: &[DVector<T>],
         rates: &[DVector<T>],
-    ) -> Option<DVector<T>> {
+    ) -> Option<(DVector<T>, Option<DVector<T>>)> {
         let n = self.linear.size();
         let c = |v: &Double| T::of(v.to_f64());
         match method {
@@ -270,11 +283,11 @@ impl<'a, T: Number> Program<'a, T> {
                     right += &rates[j] * (h * c(&beta[j])) - &past[j] * c(&alpha[j]);
                 }
                 if beta[k].to_f64() == 0.0 {
-                    return Some(right);
+                    return Some((right, None));
                 }
                 right += self.forcing(t + h, 1.0) * (h * c(&beta[k]));
                 let m = DMatrix::identity(n, n) - &self.matrix * (h * c(&beta[k]));
-                self.solve(m, &right)
+                self.solve(m, &right, &past[k - 1]).map(|x| (x, None))
             }
             Coefficients::Predicted {
                 predictor,
@@ -287,7 +300,17 @@ impl<'a, T: Number> Program<'a, T> {
                     foreseen += &rates[j] * (h * c(&predictor[j]));
                     next += &rates[j] * (h * c(&corrector[j]));
                 }
-                Some(next + self.rate(t + h, 1.0, &foreseen) * (h * c(&corrector[k])))
+                let (times, evaluates) = match self.solver {
+                    Solver::Corrections(times, evaluates) => (times, evaluates),
+                    _ => (1, true),
+                };
+                let known = next;
+                let (mut next, mut newest) = (foreseen, DVector::zeros(n));
+                for _ in 0..times {
+                    newest = self.rate(t + h, 1.0, &next);
+                    next = &known + &newest * (h * c(&corrector[k]));
+                }
+                Some((next, (!evaluates).then_some(newest)))
             }
             other => panic!("{other:?} is no multistep method"),
         }
@@ -333,6 +356,7 @@ impl Run<'_> {
                 T::of(from) + T::of((count + 1) as f64) * h
             };
             let newest = past.last().unwrap().clone();
+            let mut own_rate = None;
             let next = if back == 1 {
                 program.step(&coefficients, t, h, &newest)?
             } else if past.len() < back {
@@ -345,10 +369,12 @@ impl Run<'_> {
                     Start::Euler => program.step(&of("forward Euler"), t, h, &newest)?,
                 }
             } else {
-                program.multistep(&coefficients, t, h, &past, &rates)?
+                let (next, rate) = program.multistep(&coefficients, t, h, &past, &rates)?;
+                own_rate = rate;
+                next
             };
             t = after;
-            rates.push(program.rate(t, 0.0, &next));
+            rates.push(own_rate.unwrap_or_else(|| program.rate(t, 0.0, &next)));
             past.push(next.clone());
             if past.len() > back {
                 past.remove(0);

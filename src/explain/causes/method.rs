@@ -96,6 +96,11 @@ pub(super) fn low_order_start(
     if back < 2 || (spacing / step).round() != 1.0 || rows.len() < back + 4 {
         return None;
     }
+    // Where the first rows are right, so is what made them.
+    let mut first = 0..(back * rows.width()).min(rows.written.len());
+    if first.all(|at| (rows.written[at] - rows.exact[at]).abs() <= rows.allowed[at]) {
+        return None;
+    }
     let written = rows.error_of(&rows.written);
     let mut ways = Stepping::all(method, linear, step).into_iter();
     let well_started = ways.any(|stepping| {
@@ -182,7 +187,7 @@ pub(super) fn single_precision_time(
     let step = trouble.step.unwrap_or(spacing);
     let methods = trouble.methods.iter().copied();
     let methods = methods.chain(
-        super::USUAL
+        super::faults::USUAL
             .iter()
             .filter_map(|name| crate::method::find(name)),
     );
@@ -192,7 +197,7 @@ pub(super) fn single_precision_time(
     let fits = std::iter::once(Way::Exact).chain(stepped).find_map(|way| {
         let values = trajectory(linear, &at_even, &way)?;
         let gap = rows.gap(&values);
-        (gap.is_closed() || gap.share <= super::TAKES_AWAY * before.share).then_some(values)
+        (gap.is_closed() || gap.share <= super::faults::TAKES_AWAY * before.share).then_some(values)
     })?;
     let text = format!(
         "time is summed in single precision: the stamps are up to {} {} off the steps; count steps and \

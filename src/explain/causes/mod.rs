@@ -6,10 +6,12 @@
 //! and all that are equally simple.
 
 mod bench;
+mod faults;
 mod jumps;
 mod kind;
 mod method;
 mod model;
+mod rates;
 mod shape;
 mod written;
 
@@ -17,9 +19,10 @@ use rayon::prelude::*;
 
 use bench::{Gap, Rows, Stepping, Way, trajectory};
 pub use kind::Kind;
+pub use rates::Parameters;
 
 use crate::judge::{Answer, Support, family_at};
-use crate::method::{Evidence, Family, Linear, Method, Reading, Record, Sides, find};
+use crate::method::{Evidence, Family, Linear, Method, Reading, Record, Sides};
 
 /// A cause that explains a failing run.
 #[derive(Clone, Debug, PartialEq)]
@@ -55,6 +58,8 @@ pub struct Trouble<'a> {
     pub channels: &'a [(String, String)],
     /// Names of the inputs.
     pub inputs: &'a [String],
+    /// The parameters of the case.
+    pub parameters: &'a Parameters<'a>,
     /// The unit of time.
     pub time_unit: &'a str,
 }
@@ -117,24 +122,11 @@ impl Candidate {
     }
 }
 
-/// Methods that are tried beside the claimed one.
-const USUAL: [&str; 8] = [
-    "Heun",
-    "classical RK4",
-    "forward Euler",
-    "backward Euler",
-    "trapezoidal",
-    "explicit midpoint",
-    "implicit midpoint",
-    "exponential Euler",
-];
-/// A fault of unknown company has to stand out of what the method leaves by this factor,
-/// and to take away all but this part of the error.
-const STANDS_OUT: f64 = 3.0;
-const TAKES_AWAY: f64 = 0.03;
 /// A fault with a number that was looked for explains a run where it leaves this part of
 /// the error.
 const FOUND: f64 = 1e-6;
+/// Single precision is the cause where the method run without it leaves less than this part.
+const MOSTLY: f64 = 0.5;
 /// Methods that are asked whether they come from the start of the case to the rows.
 const MOST_TRIED: usize = 24;
 /// Causes named at most.
@@ -162,7 +154,7 @@ pub fn causes(trouble: &Trouble) -> Vec<Cause> {
     let by_method = pairs
         .par_iter()
         .find_map_first(|pair| of_method(trouble, &rows, &names, *pair, before));
-    let mut found = by_method.unwrap_or_else(|| of_faults(trouble, &rows, &names, before));
+    let mut found = by_method.unwrap_or_else(|| faults::of_faults(trouble, &rows, &names, before));
     if found.is_empty()
         && let Some(family) = families.first()
         && let (Some(&method), Some(step)) = (family.methods.first(), family.step)
@@ -185,11 +177,12 @@ pub fn causes(trouble: &Trouble) -> Vec<Cause> {
 type Ranked = (u8, f64, Cause);
 
 fn chosen(mut found: Vec<Ranked>, claimed: &[&'static Method]) -> Vec<Cause> {
-    // Of equal explanations the one with the claimed method at work comes first.
-    let other = |one: &Ranked| {
-        let is_own = |m: &'static Method| claimed.iter().any(|c| c.name == m.name);
-        !one.2.method.is_some_and(is_own)
-    };
+    // Of equal explanations those with the claimed method at work leave no room for others.
+    let is_own = |m: &'static Method| claimed.iter().any(|c| c.name == m.name);
+    if found.iter().any(|one| one.2.method.is_some_and(is_own)) {
+        found.retain(|one| one.2.method.is_none_or(is_own));
+    }
+    let other = |one: &Ranked| !one.2.method.is_some_and(is_own);
     found.sort_by(|a, b| {
         let order = a.0.cmp(&b.0).then(other(a).cmp(&other(b)));
         order.then(a.1.total_cmp(&b.1))
@@ -269,7 +262,7 @@ fn of_method(
     let Some(step) = family.step else {
         return done(candidates);
     };
-    if family.is_told() {
+    if family.is_told() && family.reading == Reading::AtNodes {
         candidates.extend(method::low_order_start(linear, rows, method, step));
     }
     // Which value counted at a jump is the program's own business.
@@ -325,7 +318,10 @@ fn of_method(
     if family.reading == Reading::Held {
         candidates.extend(model::held_as_found(linear, rows, names, &way, step));
     }
-    if trouble.record.unit > f64::EPSILON {
+    let exactly_run = trajectory(linear, rows, &way).map(|values| rows.error_of(&values));
+    if trouble.record.unit > f64::EPSILON
+        && exactly_run.is_some_and(|own| own < MOSTLY * before.share)
+    {
         candidates.extend(written::single_arithmetic());
     }
     done(candidates)
@@ -351,155 +347,4 @@ fn not_as_claimed(trouble: &Trouble, family: &Family) -> Option<Candidate> {
     };
     let text = format!("{what}: the rows are those of {at}");
     Some(Candidate::new(kind, 0, family.step, Vec::new(), text))
-}
-
-/// Faults on top of one way to make the rows: those that leave nothing, those that leave what
-/// a method would, and noise.
-#[derive(Default)]
-struct Beside {
-    found: Vec<Ranked>,
-    loose: Vec<Ranked>,
-    smooth: Option<Candidate>,
-}
-
-/// No method explains the rows: faults on top of the exact solution, of the claimed method
-/// and of usual ones.
-fn of_faults(trouble: &Trouble, rows: &Rows, names: &Names, before: Gap) -> Vec<Ranked> {
-    let linear = trouble.linear;
-    let mut found = Vec::new();
-    let own = |candidate: Candidate| ranked(candidate, 0.0, None, 0.0);
-    if let Some(candidate) = shape::interpolated(rows, names) {
-        return vec![own(candidate)];
-    }
-    if let Some(candidate) = method::single_precision_time(linear, rows, names, trouble, before) {
-        return vec![own(candidate)];
-    }
-    let step = trouble.step.or(rows.spacing);
-    let mut ways: Vec<(Way, Option<&'static Method>)> = vec![(Way::Exact, None)];
-    if let Some(step) = step.filter(|&step| rows.spacing.is_some_and(|h| step <= h * (1.0 + 1e-9)))
-    {
-        let usual = USUAL.iter().filter_map(|name| find(name));
-        let mut methods: Vec<&'static Method> = trouble.methods.to_vec();
-        methods.extend(usual);
-        for (place, &method) in methods.iter().enumerate() {
-            if methods[..place]
-                .iter()
-                .any(|known| known.name == method.name)
-            {
-                continue;
-            }
-            // The claimed method may see either value at a jump.
-            let claimed = place < trouble.methods.len();
-            let sides: &[Sides] =
-                match claimed && linear.jumps_within(linear.window.0, linear.window.1) {
-                    true => &[Sides::After, Sides::Own],
-                    false => &[Sides::After],
-                };
-            for stepping in Stepping::all(method, linear, step) {
-                ways.extend(sides.iter().map(|&sides| {
-                    let stepping = Stepping {
-                        sides,
-                        ..stepping.clone()
-                    };
-                    (Way::Stepped(stepping), Some(method))
-                }));
-            }
-        }
-    }
-    let model_step = step.unwrap_or(0.0);
-    let healthy = healthy_share(trouble, rows, step);
-    // Any method moves the rates of a model a little, by up to half of what the fastest
-    // mode does in a step: a scale within that is no fault.
-    let fastest = linear.matrix.row_sum_norm() * model_step;
-    let fast_enough = |candidate: &Candidate| {
-        candidate
-            .number
-            .is_some_and(|factor| factor.ln().abs() > 0.6 * fastest)
-    };
-    let rough = model::Rough::new(linear, rows);
-    let beside = |(way, method): &(Way, Option<&'static Method>)| {
-        let mut one = Beside::default();
-        let base = match way {
-            Way::Exact => Some(rows.exact.clone()),
-            way => trajectory(linear, rows, way),
-        };
-        let Some(base) = base else { return one };
-        let mut candidates = written::candidates(rows, names, &base, 0.0);
-        let exact = matches!(way, Way::Exact);
-        if exact {
-            candidates.extend(written::half_shifted(linear, rows, names));
-            candidates.extend(written::candidates(
-                rows,
-                names,
-                &base,
-                STANDS_OUT * healthy,
-            ));
-        }
-        if model_step > 0.0 {
-            candidates.extend(model::candidates(
-                linear, rows, names, way, model_step, before, &rough,
-            ));
-        }
-        for candidate in candidates {
-            let after = rows.gap(&candidate.values);
-            let left_over = after.share / before.share.max(f64::MIN_POSITIVE);
-            // A number that was looked for is known to its own rounding only.
-            let tight = after.is_closed() || left_over <= FOUND;
-            if tight && !(exact && candidate.kind == Kind::RateScaled && !fast_enough(&candidate)) {
-                let one_more = ranked(candidate, left_over, *method, after.ratio);
-                one.found.push(one_more);
-            } else if exact
-                && before.share >= STANDS_OUT * healthy
-                && after.share <= 1.5 * healthy
-                && left_over <= TAKES_AWAY
-            {
-                let one_more = ranked(candidate, left_over, None, after.share);
-                one.loose.push(one_more);
-            }
-        }
-        one.smooth = shape::noise(rows, names, &base);
-        one
-    };
-    let all: Vec<Beside> = ways.par_iter().map(beside).collect();
-    let mut loose: Vec<Ranked> = Vec::new();
-    let mut smooth: Option<Candidate> = None;
-    for one in all {
-        found.extend(one.found);
-        loose.extend(one.loose);
-        if let Some(candidate) = one.smooth
-            && smooth
-                .as_ref()
-                .is_none_or(|known| candidate.number < known.number)
-        {
-            smooth = Some(candidate);
-        }
-    }
-    if found.is_empty() {
-        found = loose;
-    }
-    if found.is_empty() {
-        found.extend(smooth.map(own));
-    }
-    found
-}
-
-/// What the claimed method leaves at the step, or forward Euler where none is claimed, or
-/// backward Euler where that is not stable.
-fn healthy_share(trouble: &Trouble, rows: &Rows, step: Option<f64>) -> f64 {
-    let Some(step) = step else { return 1e-3 };
-    let shares = |methods: &[&'static Method]| -> Option<f64> {
-        let ways = methods
-            .iter()
-            .flat_map(|m| Stepping::all(m, trouble.linear, step));
-        let shares = ways.filter_map(|stepping| {
-            let values = trajectory(trouble.linear, rows, &Way::Stepped(stepping))?;
-            Some(rows.error_of(&values)).filter(|share| *share < 1.0)
-        });
-        shares.reduce(f64::max)
-    };
-    let usual = |name: &str| find(name).and_then(|method| shares(&[method]));
-    shares(trouble.methods)
-        .or_else(|| usual("forward Euler"))
-        .or_else(|| usual("backward Euler"))
-        .unwrap_or(1e-2)
 }

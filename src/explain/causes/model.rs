@@ -1,11 +1,11 @@
-//! Faults in the model that was run: inputs late, early, held or missing, a wrong start, a
-//! rate scaled, jumps between steps or at stages, pulses that no step has seen.
+//! Faults in the model that was run: inputs late, early, held or missing, scaled, a wrong start,
+//! pulses that no step has seen.
 
 use super::bench::{Gap, Rows, Way, trajectory};
 use super::written::slip;
-use super::{Candidate, FOUND, Kind, Names};
+use super::{Candidate, FOUND, Kind, Names, rates};
 use crate::method::{Linear, Reading, Signal};
-use crate::number::{plain, short};
+use crate::number::{beside, plain, short};
 
 /// Every fault of this kind that could have turned the model, solved in one way, into what
 /// is written. `step` is the one of the program, as far as it is known; what cannot explain
@@ -17,7 +17,7 @@ pub(super) fn candidates(
     way: &Way,
     step: f64,
     before: Gap,
-    rough: &Rough,
+    rough: &rates::Rough,
 ) -> Vec<Candidate> {
     let mut found = Vec::new();
     found.extend(moved_inputs(linear, rows, names, way, step, before));
@@ -25,7 +25,7 @@ pub(super) fn candidates(
     found.extend(scaled_inputs(linear, rows, names, way));
     found.extend(held(linear, rows, names, way, step));
     found.extend(start(linear, rows, names, way));
-    found.extend(rates(linear, rows, names, way, rough));
+    found.extend(rates::candidates(linear, rows, names, way, rough));
     found
 }
 
@@ -41,7 +41,7 @@ pub(super) fn moved_inputs(
     step: f64,
     before: Gap,
 ) -> Vec<Candidate> {
-    let mut found = Vec::new();
+    let mut found: Vec<Candidate> = Vec::new();
     // There are many shifts: the first rows rule most of them out.
     let few = rows.few();
     let closes = |gap: Gap| gap.is_closed() || gap.share <= FOUND * before.share;
@@ -72,6 +72,10 @@ pub(super) fn moved_inputs(
                 let Some(values) = trajectory(&moved, rows, way) else {
                     continue;
                 };
+                // To a method that looks at steps only, half a step is a whole one.
+                if found.iter().any(|other| other.values == values) {
+                    continue;
+                }
                 let list: Vec<String> = inputs
                     .iter()
                     .map(|&i| format!("`{}`", names.inputs[i]))
@@ -193,7 +197,7 @@ fn scaled_inputs(linear: &Linear, rows: &Rows, names: &Names, way: &Way) -> Vec<
         } else {
             let text = format!(
                 "input `{name}` is multiplied by {}; check its size",
-                short(factor)
+                beside(factor, factor - 1.0)
             );
             (Kind::Gain, text)
         };
@@ -293,7 +297,7 @@ fn start(linear: &Linear, rows: &Rows, names: &Names, way: &Way) -> Vec<Candidat
         let text = format!(
             "`{}` starts at {} {} where the case starts it at {}",
             names.states[state].0,
-            short(value),
+            beside(value, value - linear.start[state]),
             names.states[state].1,
             plain(linear.start[state])
         );
@@ -306,201 +310,6 @@ fn start(linear: &Linear, rows: &Rows, names: &Names, way: &Way) -> Vec<Candidat
         ))
     };
     (0..linear.size()).filter_map(one).collect()
-}
-
-/// What is scaled: every rate, or that of one state.
-#[derive(Clone, Copy, PartialEq)]
-enum Scaled {
-    All,
-    Time,
-    One(usize),
-}
-
-impl Scaled {
-    fn apply(self, linear: &Linear, factor: f64) -> Linear {
-        let mut scaled = linear.clone();
-        let hit = |state: usize| match self {
-            Scaled::One(one) => one == state,
-            Scaled::All | Scaled::Time => true,
-        };
-        for state in (0..linear.size()).filter(|&state| hit(state)) {
-            for column in 0..linear.size() {
-                scaled.matrix[(state, column)] *= factor;
-            }
-            if self != Scaled::Time {
-                scaled.drive[state].iter_mut().for_each(|d| *d *= factor);
-                scaled.constant[state] *= factor;
-            }
-        }
-        scaled
-    }
-}
-
-/// Factors that are tried before the best of them is refined.
-const FACTORS: [f64; 31] = [
-    1e-3,
-    3e-3,
-    1e-2,
-    1.0 / 60.0,
-    0.03,
-    0.1,
-    0.159,
-    0.3,
-    0.5,
-    0.7,
-    0.8,
-    0.9,
-    0.95,
-    0.99,
-    0.999,
-    1.001,
-    1.01,
-    1.05,
-    1.1,
-    1.2,
-    1.5,
-    2.0,
-    3.0,
-    std::f64::consts::TAU,
-    10.0,
-    30.0,
-    60.0,
-    100.0,
-    300.0,
-    1000.0,
-    3600.0,
-];
-
-/// What may be scaled, each with the place of the factor that fits the exact solution best:
-/// methods come about as close with one near to it.
-pub(super) struct Rough(Vec<(Scaled, usize)>);
-
-/// Places to either side that a method may prefer.
-const ASIDE: usize = 3;
-
-impl Rough {
-    pub(super) fn new(linear: &Linear, rows: &Rows) -> Rough {
-        let mut kinds = vec![Scaled::All];
-        if !linear.is_steady()
-            || linear.constant.iter().any(|c| *c != 0.0)
-            || !linear.signals.is_empty()
-        {
-            kinds.push(Scaled::Time);
-        }
-        if linear.size() > 1 {
-            kinds.extend((0..linear.size()).map(Scaled::One));
-        }
-        let few = rows.few();
-        let best = |scaled: Scaled| {
-            let all = 0..FACTORS.len();
-            let best = nearest(linear, &few, &Way::Exact, scaled, all)?;
-            Some((scaled, best))
-        };
-        Rough(kinds.into_iter().filter_map(best).collect())
-    }
-}
-
-/// How far the rows are from a model with something scaled. Squares: smooth in the factor, so
-/// that it can be refined.
-fn miss(linear: &Linear, few: &Rows, way: &Way, scaled: Scaled, factor: f64) -> f64 {
-    let values = trajectory(&scaled.apply(linear, factor), few, way);
-    values.map_or(f64::INFINITY, |values| few.squares(&values))
-}
-
-/// The best of some factors.
-fn nearest(
-    linear: &Linear,
-    few: &Rows,
-    way: &Way,
-    scaled: Scaled,
-    places: std::ops::Range<usize>,
-) -> Option<usize> {
-    let tried = places.map(|place| (place, miss(linear, few, way, scaled, FACTORS[place])));
-    let best = tried.min_by(|a, b| a.1.total_cmp(&b.1))?;
-    best.1.is_finite().then_some(best.0)
-}
-
-/// Rates that are scaled, by a factor that is looked for.
-fn rates(linear: &Linear, rows: &Rows, names: &Names, way: &Way, rough: &Rough) -> Vec<Candidate> {
-    let few = rows.few();
-    let mut found = Vec::new();
-    for &(scaled, rough) in &rough.0 {
-        let near = rough.saturating_sub(ASIDE)..(rough + ASIDE + 1).min(FACTORS.len());
-        let Some(best) = nearest(linear, &few, way, scaled, near) else {
-            continue;
-        };
-        let low = FACTORS[best.saturating_sub(1)];
-        let high = FACTORS[(best + 1).min(FACTORS.len() - 1)];
-        let far = |x: f64| miss(linear, &few, way, scaled, x.exp());
-        let factor = least(&far, low.ln(), high.ln()).exp();
-        // Known slips are exact.
-        let factor = [1e3, 60.0, 3600.0, std::f64::consts::TAU]
-            .into_iter()
-            .flat_map(|known| [known, 1.0 / known])
-            .find(|known| (factor / known - 1.0).abs() < 2e-4)
-            .unwrap_or(factor);
-        if (factor - 1.0).abs() < 1e-9 {
-            continue;
-        }
-        let Some(values) = trajectory(&scaled.apply(linear, factor), rows, way) else {
-            continue;
-        };
-        let what = match scaled {
-            Scaled::All => "every rate is".to_owned(),
-            Scaled::Time => "every coefficient of the states, but not the inputs, is".to_owned(),
-            Scaled::One(state) => format!("the rate of `{}` is", names.states[state].0),
-        };
-        let mut text = format!("{what} scaled by {}", short(factor));
-        if let Some(slip) = slip(factor) {
-            text += &format!(", as from a slip of units ({slip})");
-        } else {
-            text += "; check the parameters that go into it";
-        }
-        let complexity = if scaled == Scaled::All { 1 } else { 2 };
-        found.push(Candidate::new(
-            Kind::RateScaled,
-            complexity,
-            Some(factor),
-            values,
-            text,
-        ));
-    }
-    found
-}
-
-/// Where a smooth function of one number is least, by golden sections and a parabola.
-fn least(function: &dyn Fn(f64) -> f64, low: f64, high: f64) -> f64 {
-    let golden = 0.5 * (5f64.sqrt() - 1.0);
-    let (mut a, mut b) = (low, high);
-    let (mut c, mut d) = (b - golden * (b - a), a + golden * (b - a));
-    let (mut fc, mut fd) = (function(c), function(d));
-    for _ in 0..16 {
-        if fc <= fd {
-            (b, d, fd) = (d, c, fc);
-            c = b - golden * (b - a);
-            fc = function(c);
-        } else {
-            (a, c, fc) = (c, d, fd);
-            d = a + golden * (b - a);
-            fd = function(d);
-        }
-    }
-    // Squares are flat about their least value, where golden sections see roundings: the
-    // vertices of ever narrower parabolas are known better.
-    let (mut middle, mut width) = (0.5 * (a + b), (b - a).max(1e-4));
-    for _ in 0..4 {
-        let (left, at, right) = (
-            function(middle - width),
-            function(middle),
-            function(middle + width),
-        );
-        let bend = left - 2.0 * at + right;
-        if bend > 0.0 && bend.is_finite() {
-            middle += (0.5 * width * (left - right) / bend).clamp(-width, width);
-        }
-        width *= 0.1;
-    }
-    middle
 }
 
 impl Signal {

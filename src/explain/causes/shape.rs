@@ -4,7 +4,7 @@
 use super::bench::Rows;
 use super::written::with_channels;
 use super::{Candidate, Kind, Names};
-use crate::number::{plain, short};
+use crate::number::{beside, plain, short};
 
 pub(super) fn clipped(rows: &Rows, names: &Names, base: &[f64], bad: &[usize]) -> Vec<Candidate> {
     let mut found = Vec::new();
@@ -46,7 +46,7 @@ pub(super) fn clipped(rows: &Rows, names: &Names, base: &[f64], bad: &[usize]) -
         let text = format!(
             "{} is clipped at {} {}: values {} that are missing; widen the range of what is written",
             names.list(&clipped),
-            plain(limits[first]),
+            beside(limits[first], limits[first]),
             names.unit(first),
             if low { "below" } else { "above" }
         );

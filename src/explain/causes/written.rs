@@ -5,7 +5,7 @@
 use super::bench::{Rows, exactly};
 use super::{Candidate, Kind, Names, shape};
 use crate::method::Linear;
-use crate::number::{plain, short};
+use crate::number::{beside, plain, short};
 
 /// Factors that a slip of units causes, with what it is.
 const SLIPS: [(f64, &str); 22] = [
@@ -127,9 +127,13 @@ fn gains(rows: &Rows, names: &Names, base: &[f64], bad: &[usize]) -> Vec<Candida
         ("is", "has")
     };
     let list = || {
-        let each = bad
-            .iter()
-            .map(|&c| format!("{} by {}", names.channel(c), short(factors[c])));
+        let each = bad.iter().map(|&c| {
+            format!(
+                "{} by {}",
+                names.channel(c),
+                beside(factors[c], factors[c] - 1.0)
+            )
+        });
         each.collect::<Vec<_>>().join(", ")
     };
     let (kind, text) = if same && (factor + 1.0).abs() < 1e-3 {
@@ -139,15 +143,20 @@ fn gains(rows: &Rows, names: &Names, base: &[f64], bad: &[usize]) -> Vec<Candida
         )
     } else if let Some(slip) = slip(factor).filter(|_| same) {
         let text = format!(
-            "{which} {is} {} times too large, as from a slip of units ({slip}); state the unit under \
+            "{which} {is} {} times too {}, as from a slip of units ({slip}); state the unit under \
              `[columns]` or convert what is written",
-            short(factor)
+            short(if factor.abs() < 1.0 {
+                1.0 / factor
+            } else {
+                factor
+            }),
+            if factor.abs() < 1.0 { "small" } else { "large" }
         );
         (Kind::Unit, text)
     } else if same {
         let text = format!(
             "{which} {is} multiplied by {}; divide what is written by it",
-            short(factor)
+            beside(factor, factor - 1.0)
         );
         (Kind::Gain, text)
     } else {
@@ -192,13 +201,14 @@ fn offsets(rows: &Rows, names: &Names, base: &[f64], bad: &[usize]) -> Vec<Candi
         format!(
             "{} by {} {}",
             names.channel(c),
-            short(offsets[c]),
+            beside(offsets[c], rows.peaks[c]),
             names.unit(c)
         )
     });
     let offset = bad.first().map_or(0.0, |&c| offsets[c]);
     let mut text = format!("offset: {}", each.collect::<Vec<_>>().join(", "));
-    text += if (offset.abs() - 273.15).abs() < 0.05 {
+    let warm = bad.iter().all(|&c| ["K", "degC"].contains(&names.unit(c)));
+    text += if warm && (offset.abs() - 273.15).abs() < 0.05 {
         ", which is the difference of K and degC; state the unit under `[columns]`"
     } else {
         "; subtract it from what is written"
