@@ -13,9 +13,10 @@ use super::estimate::Targets;
 use super::exactly::exact_fit;
 use super::iterated::Form;
 use super::linear::Linear;
+use super::ranks::rank_orders;
 use super::record::{Piece, Record};
 use super::recurrence::Reading;
-use super::search::{Found, Search, Sheet, rank_orders};
+use super::search::{Found, Search, Sheet};
 use super::trial::Fit;
 
 /// One method at one step, compared with the rows.

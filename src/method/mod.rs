@@ -23,6 +23,7 @@ mod laid;
 mod linear;
 mod march;
 mod powers;
+mod ranks;
 mod record;
 mod recurrence;
 mod scale;
@@ -40,10 +41,11 @@ pub use growth::{Growth, Likeness, Unmeasured, growth, likeness};
 pub use iterated::{Form, Iterated, forms};
 pub use linear::{Linear, Side, Signal};
 pub use march::{March, NEAR, Sides, add_forcing};
+pub use ranks::rank_orders;
 pub use record::{Piece, Record, START_ROWS, Window, windows};
 pub use recurrence::{Node, Ranks, Reading, Recurrence};
 pub use scheme::{Coefficients, Scheme, Slopes, Stages};
-pub use search::{MOST_STEPS, rank_orders};
+pub use search::MOST_STEPS;
 pub use stability::{
     Rational, Stability, amplification, approx_stability, approx_stable_length, of_stages, roots,
 };
