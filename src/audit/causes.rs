@@ -6,7 +6,7 @@ use super::run::RunCompared;
 use crate::case::Library;
 use crate::explain::{Cause, Kind, Parameters, Trouble, causes};
 use crate::judge::{Answer, Support, Verdict};
-use crate::method::Linear;
+use crate::method::{Linear, Method};
 use crate::outcome::{Audited, CauseOutcome};
 use crate::submission::{Role, Submission};
 
@@ -96,12 +96,9 @@ pub(super) fn look(
             time_unit: &model.case.time.unit,
         };
         let causes = causes(&trouble);
-        // The claimed method at another step than the stated one is no fault of the model.
-        let at_other_step = |answer: &&mut Answer| answer.method == Some(Support::Agrees);
-        let other = |cause: &Cause| matches!(cause.kind, Kind::CoarserStep | Kind::OtherMethod);
         if let Some(answer) = found.answer.as_mut().filter(|_| contradicted)
-            && !at_other_step(&answer)
-            && !causes.iter().any(other)
+            // The claimed method at another step than the stated one is no fault of the model.
+            && answer.method != Some(Support::Agrees)
             && let Some(cause) = mended(&causes, &methods)
         {
             let text = format!(
@@ -143,15 +140,15 @@ fn take_back(answer: &mut Answer, text: String) {
     }
 }
 
-/// A fault that leaves exactly what the claimed method would have written.
-fn mended<'a>(
-    causes: &'a [Cause],
-    methods: &[&'static crate::method::Method],
-) -> Option<&'a Cause> {
-    causes.iter().find(|cause| {
-        let claimed = cause
-            .method
-            .is_some_and(|own| methods.iter().any(|m| m.name == own.name));
-        claimed && !matches!(cause.kind, Kind::CoarserStep | Kind::OtherMethod)
-    })
+/// A fault that leaves exactly what the claimed method would have written; none where another
+/// method or step has been at work.
+fn mended<'a>(causes: &'a [Cause], methods: &[&'static Method]) -> Option<&'a Cause> {
+    let other = |cause: &Cause| matches!(cause.kind, Kind::CoarserStep | Kind::OtherMethod);
+    if causes.iter().any(other) {
+        return None;
+    }
+    let is_claimed = |own: &'static Method| methods.iter().any(|m| m.name == own.name);
+    causes
+        .iter()
+        .find(|cause| cause.method.is_some_and(is_claimed))
 }

@@ -4,7 +4,8 @@
 use crate::method::{Family, Method, Reading, Tried};
 
 /// Codes that solve implicit steps by iteration stop at tolerances up to about a third of this
-/// part of the state, and leave some times their tolerance, over several steps from row to row (common practice, no source).
+/// part of the state, and leave some times their tolerance, over several steps from row to
+/// row (common practice, no source).
 const ITERATION: f64 = 3e-5;
 /// More steps than this from row to row may leave more in proportion.
 const FEW_STEPS: f64 = 5.0;
@@ -23,10 +24,10 @@ const BY_CHANCE: f64 = 0.05;
 /// The same for a method whose start is free to choose, over more comparisons than a few, and
 /// for one that the exact solution is near to.
 const BY_CHANCE_FREE: f64 = 1e-3;
-/// Residuals so many times what digits and rounding allow another method are about as small.
-const AS_CLOSE: f64 = 4.0;
 /// The same over few comparisons, for the method claimed at another step.
 pub(super) const BY_CHANCE_FEW: f64 = 1e-4;
+/// Residuals so many times what digits and rounding allow another method are about as small.
+const AS_CLOSE: f64 = 4.0;
 
 /// True where a step of the method has to be solved for.
 pub(super) fn is_implicit(method: &Method) -> bool {

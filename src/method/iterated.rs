@@ -109,6 +109,7 @@ enum Start {
 /// came out; stages that look at each other all together.
 fn unfinished(stages: &Stages, times: usize, start: Start) -> Stages {
     let count = stages.weights.len();
+    // Rows grow to the size of the whole tableau at the end.
     let mut rows: Vec<Vec<Double>> = Vec::new();
     let mut nodes: Vec<Double> = Vec::new();
     if start == Start::Euler {
@@ -117,49 +118,43 @@ fn unfinished(stages: &Stages, times: usize, start: Start) -> Stages {
     }
     // Where the newest value of each stage is.
     let mut newest: Vec<Option<usize>> = vec![None; count];
-    let combined = |stage: usize, newest: &[Option<usize>], length: usize| {
-        let mut row = vec![Double::ZERO; length];
-        for (other, place) in newest.iter().enumerate() {
+    let combined = |stage: usize, known: &[Option<usize>]| {
+        let end = known.iter().flatten().max().map_or(0, |last| last + 1);
+        let mut row = vec![Double::ZERO; end];
+        for (place, &link) in known.iter().zip(&stages.matrix[stage]) {
             if let Some(place) = place {
-                row[*place] += stages.matrix[stage][other];
+                row[*place] += link;
             }
         }
         row
     };
-    let first = |stage: usize, newest: &[Option<usize>], length: usize| match start {
+    let first = |stage: usize, known: &[Option<usize>]| match start {
         Start::State => Vec::new(),
         Start::Euler => vec![stages.nodes[stage]],
-        Start::Known => combined(stage, newest, length),
+        Start::Known => combined(stage, known),
     };
-    let mut add = |stage: usize, row: Vec<Double>| {
-        rows.push(row);
-        nodes.push(stages.nodes[stage]);
-        rows.len() - 1
-    };
-    let mut length = usize::from(start == Start::Euler);
     if stages.is_lower_triangular() {
         for stage in 0..count {
             let solved = stages.matrix[stage][stage].to_f64() != 0.0;
             for time in 0..if solved { times } else { 1 } {
-                let row = if solved && time == 0 {
-                    first(stage, &newest, length)
-                } else {
-                    combined(stage, &newest, length)
-                };
-                newest[stage] = Some(add(stage, row));
-                length += 1;
+                rows.push(match solved && time == 0 {
+                    true => first(stage, &newest),
+                    false => combined(stage, &newest),
+                });
+                nodes.push(stages.nodes[stage]);
+                newest[stage] = Some(rows.len() - 1);
             }
         }
     } else {
         for time in 0..times {
             let known = newest.clone();
             for (stage, place) in newest.iter_mut().enumerate() {
-                let row = match time {
-                    0 => first(stage, &[], length),
-                    _ => combined(stage, &known, length),
-                };
-                *place = Some(add(stage, row));
-                length += 1;
+                rows.push(match time {
+                    0 => first(stage, &[]),
+                    _ => combined(stage, &known),
+                });
+                nodes.push(stages.nodes[stage]);
+                *place = Some(rows.len() - 1);
             }
         }
     }
@@ -183,7 +178,7 @@ fn unfinished(stages: &Stages, times: usize, start: Start) -> Stages {
 /// Weights of earlier states and of their rates.
 type Guess = (Vec<Double>, Vec<Double>);
 
-/// What iterations start from: the newest state, an explicit Euler step, the polynomial through
+/// What iterations start from: nothing, the newest state, an explicit Euler step, the polynomial through
 /// earlier states, an explicit Adams formula of as many of them.
 fn guesses(back: usize) -> Vec<Guess> {
     let none = vec![Double::ZERO; back];

@@ -599,8 +599,8 @@ fn check(plants: &[Plant]) -> (usize, usize) {
     let mut named = 0;
     for plant in plants {
         let causes = &plant.audited.causes;
-        let mut right = causes.iter().filter(|cause| cause.kind == plant.kind);
-        let number = right.any(|cause| match (plant.number, cause.number) {
+        let right = causes.iter().find(|cause| cause.kind == plant.kind);
+        let number = right.is_some_and(|cause| match (plant.number, cause.number) {
             (Some(wanted), Some(found)) => (found / wanted - 1.0).abs() <= 0.05,
             (Some(_), None) => false,
             (None, _) => true,
@@ -694,7 +694,7 @@ fn nothing_is_named_where_nothing_is_wrong() {
 
 #[test]
 fn wrong_parameters_are_named() {
-    let mut plants = Vec::new();
+    let (mut named, mut all) = (0, 0);
     for (name, parameter) in [
         ("mechanical/two-masses", "k"),
         ("electrical/rlc-underdamped", "R"),
@@ -714,15 +714,19 @@ fn wrong_parameters_are_named() {
                 let spacing = spacing_of(&Linear::new(&case));
                 let track = track(&wrong, base, spacing, ROWS);
                 let audited = judge(&case, &track, base, Some(spacing), &in_full);
-                plants.push(Plant {
-                    kind: "rate-scaled",
-                    case: name,
-                    base,
-                    number: Some(factor),
-                    audited,
+                // `k` too large and `m` too small are one fault: both are named.
+                let right = audited.causes.iter().any(|cause| {
+                    let number = cause.number.unwrap_or(f64::NAN);
+                    cause.kind == "rate-scaled" && (number / factor - 1.0).abs() <= 0.05
                 });
+                all += 1;
+                named += usize::from(right);
+                if !right {
+                    let texts: Vec<&str> = audited.causes.iter().map(|c| &c.text[..]).collect();
+                    println!("{name} {parameter} {factor} {base:?}: {texts:?}");
+                }
             }
         }
     }
-    nearly_all_are_named(&plants);
+    assert!(named as f64 >= 0.95 * all as f64, "{named} of {all}");
 }

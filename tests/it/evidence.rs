@@ -8,6 +8,7 @@ use stepgauge::Library;
 use stepgauge::case::Case;
 use stepgauge::judge::{self, Claimed, Support};
 use stepgauge::method::{Evidence, Linear, METHODS, Method, Record, Scheme, evidence};
+use stepgauge::number::Double;
 
 use crate::writer::{Kept, Run, Seen, Solver, Start, resolution, truth};
 
@@ -236,16 +237,8 @@ fn matrix(every: usize, channels: impl Fn(&Linear) -> Option<Vec<usize>> + Sync)
                     };
                     let (times, states) = run.states().unwrap();
                     for digits in [6, 9, 17] {
-                        let kept = Kept {
-                            times: &times,
-                            states: &states,
-                            truth: &truth,
-                            digits,
-                            channels: &channels,
-                            spacing: Some(spacing),
-                            single: false,
-                        };
-                        let record = kept.record(&linear, run.seen);
+                        let record =
+                            printed(&run, &linear, &channels, (&times, &states, &truth), digits);
                         said.push(ask(&linear, &record, &run, digits, true));
                     }
                 }
@@ -298,6 +291,26 @@ fn the_true_pair_is_consistent_with_parts_of_the_states() {
     matrix(2, outputs).check("outputs", 0.05);
 }
 
+/// What is kept of a run whose program prints so many digits.
+fn printed(
+    run: &Run,
+    linear: &Linear,
+    channels: &[usize],
+    (times, states, truth): (&[f64], &[Vec<f64>], &[Vec<Double>]),
+    digits: usize,
+) -> Record {
+    let kept = Kept {
+        times,
+        states,
+        truth,
+        digits,
+        channels,
+        spacing: run.varied.is_none().then_some(run.spacing),
+        single: run.single,
+    };
+    kept.record(linear, run.seen)
+}
+
 /// Single precision and loose iterations: an honest program all the same.
 fn honest(every: usize) -> Tally {
     let cases = cases();
@@ -338,16 +351,8 @@ fn honest(every: usize) -> Tally {
                     };
                     let truth = truth(case, &times);
                     for digits in [6, 9, 17] {
-                        let kept = Kept {
-                            times: &times,
-                            states: &states,
-                            truth: &truth,
-                            digits,
-                            channels: &channels,
-                            spacing: Some(spacing),
-                            single: run.single,
-                        };
-                        let record = kept.record(&linear, run.seen);
+                        let record =
+                            printed(&run, &linear, &channels, (&times, &states, &truth), digits);
                         said.push(ask(&linear, &record, &run, digits, false));
                     }
                 }
@@ -414,16 +419,8 @@ fn unfinished(every: usize) -> Tally {
                         continue;
                     }
                     for digits in [6, 9, 17] {
-                        let kept = Kept {
-                            times: &times,
-                            states: &states,
-                            truth: &truth,
-                            digits,
-                            channels: &channels,
-                            spacing: Some(spacing),
-                            single: false,
-                        };
-                        let record = kept.record(&linear, run.seen);
+                        let record =
+                            printed(&run, &linear, &channels, (&times, &states, &truth), digits);
                         said.push(match ask(&linear, &record, &run, digits, false) {
                             // Far from the formula, and to the last digit what an explicit
                             // method of that name writes.
@@ -501,16 +498,7 @@ fn one_step_methods_are_found_at_varying_steps() {
             let (times, states) = run.states().unwrap();
             let truth = truth(case, &times);
             for digits in [6, 9, 17] {
-                let kept = Kept {
-                    times: &times,
-                    states: &states,
-                    truth: &truth,
-                    digits,
-                    channels: &channels,
-                    spacing: None,
-                    single: false,
-                };
-                let record = kept.record(&linear, run.seen);
+                let record = printed(&run, &linear, &channels, (&times, &states, &truth), digits);
                 said.push(ask(&linear, &record, &run, digits, true));
             }
         }
@@ -544,16 +532,8 @@ fn the_true_pair_is_found_without_a_claim() {
                     let (times, states) = run.states().unwrap();
                     let truth = truth(case, &times);
                     for digits in [6, 9, 17] {
-                        let kept = Kept {
-                            times: &times,
-                            states: &states,
-                            truth: &truth,
-                            digits,
-                            channels: &channels,
-                            spacing: Some(spacing),
-                            single: false,
-                        };
-                        let record = kept.record(&linear, run.seen);
+                        let record =
+                            printed(&run, &linear, &channels, (&times, &states, &truth), digits);
                         let label = format!(
                             "{} {}#{scheme} {spacing} x{steps} {digits} digits {:?}",
                             case.name, method.name, run.start
@@ -667,16 +647,8 @@ fn power(every: usize) -> Vec<Power> {
                         run.states().unwrap().1
                     };
                     for digits in [9, 17] {
-                        let kept = Kept {
-                            times: &times,
-                            states: &states,
-                            truth: &truth,
-                            digits,
-                            channels: &channels,
-                            spacing: Some(spacing),
-                            single: false,
-                        };
-                        let record = kept.record(&linear, run.seen);
+                        let record =
+                            printed(&run, &linear, &channels, (&times, &states, &truth), digits);
                         if record.windows[0].rows() < 3 {
                             continue;
                         }
@@ -698,12 +670,9 @@ fn power(every: usize) -> Vec<Power> {
                         let claims_free = claims.iter().filter(|((m, s), n)| is_free(m, *s, *n));
                         let claims_free = claims_free.map(|&((m, _), n)| (m, n));
                         let (named, counts): (Vec<_>, Vec<u64>) = free.chain(claims_free).unzip();
-                        let kept17 = Kept {
-                            digits: 17,
-                            ..kept.clone()
-                        };
                         let sharp = (!named.is_empty()).then(|| {
-                            let record = kept17.record(&linear, run.seen);
+                            let all = (&times[..], &states[..], &truth[..]);
+                            let record = printed(&run, &linear, &channels, all, 17);
                             evidence(&linear, &record, &named, &counts)
                         });
                         let leaves = |method: &Method, steps| {

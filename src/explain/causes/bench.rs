@@ -171,6 +171,10 @@ impl Rows {
     }
 }
 
+/// A fault with a number that was looked for explains a run where it leaves this part of
+/// the error.
+const FOUND: f64 = 1e-6;
+
 /// A distance between what is written and what is assumed.
 #[derive(Clone, Copy, Debug, PartialEq)]
 pub(super) struct Gap {
@@ -201,6 +205,12 @@ impl Gap {
     /// Nothing is left but digits and rounding.
     pub(super) fn is_closed(&self) -> bool {
         self.ratio <= 1.0 || self.share <= 1e-11
+    }
+
+    /// Nothing is left of another gap but that, or what a number that was looked for leaves:
+    /// it is known to its own rounding only.
+    pub(super) fn closes(&self, before: Gap) -> bool {
+        self.is_closed() || self.share <= FOUND * before.share
     }
 }
 

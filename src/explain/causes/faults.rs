@@ -5,9 +5,9 @@ use rayon::prelude::*;
 
 use super::bench::{Gap, Rows, Stepping, Way, trajectory};
 use super::{
-    Candidate, FOUND, Kind, Names, Ranked, Trouble, method, model, ranked, rates, shape, written,
+    Candidate, Kind, Names, Ranked, Trouble, method, model, ranked, rates, shape, written,
 };
-use crate::method::{Method, Sides, find};
+use crate::method::{Linear, Method, Sides, find};
 
 /// Methods that are tried beside the claimed one.
 pub(super) const USUAL: [&str; 8] = [
@@ -24,6 +24,7 @@ pub(super) const USUAL: [&str; 8] = [
 /// and to take away all but this part of the error.
 const STANDS_OUT: f64 = 3.0;
 pub(super) const TAKES_AWAY: f64 = 0.03;
+
 /// Faults on top of one way to make the rows: those that leave nothing, those that leave what
 /// a method would, and noise.
 #[derive(Default)]
@@ -81,14 +82,6 @@ pub(super) fn of_faults(trouble: &Trouble, rows: &Rows, names: &Names, before: G
     }
     let model_step = step.unwrap_or(0.0);
     let healthy = healthy_share(trouble, rows, step);
-    // Any method moves the rates of a model a little, by up to half of what the fastest
-    // mode does in a step: a scale within that is no fault.
-    let fastest = linear.matrix.row_sum_norm() * model_step;
-    let fast_enough = |candidate: &Candidate| {
-        candidate
-            .number
-            .is_some_and(|factor| factor.ln().abs() > 0.6 * fastest)
-    };
     let rough = rates::Rough::new(linear, rows);
     let beside = |(way, method): &(Way, Option<&'static Method>)| {
         let mut one = Beside::default();
@@ -98,7 +91,7 @@ pub(super) fn of_faults(trouble: &Trouble, rows: &Rows, names: &Names, before: G
         };
         let Some(base) = base else { return one };
         let own = rows.gap(&base);
-        if !matches!(way, Way::Exact) && (own.is_closed() || own.share <= FOUND * before.share) {
+        if !matches!(way, Way::Exact) && own.closes(before) {
             // All is the error of the method, but for coarse constants or arithmetic.
             one.explained = true;
             return one;
@@ -122,9 +115,7 @@ pub(super) fn of_faults(trouble: &Trouble, rows: &Rows, names: &Names, before: G
         for candidate in candidates {
             let after = rows.gap(&candidate.values);
             let left_over = after.share / before.share.max(f64::MIN_POSITIVE);
-            // A number that was looked for is known to its own rounding only.
-            let tight = after.is_closed() || left_over <= FOUND;
-            if tight && !(exact && candidate.kind == Kind::RateScaled && !fast_enough(&candidate)) {
+            if after.closes(before) && !(exact && may_be_a_method(linear, &candidate, model_step)) {
                 let one_more = ranked(candidate, left_over, *method, after.ratio);
                 one.found.push(one_more);
             } else if exact
@@ -157,7 +148,7 @@ pub(super) fn of_faults(trouble: &Trouble, rows: &Rows, names: &Names, before: G
         }
     }
     if found.is_empty() {
-        found = of_parameters(trouble, rows, &ways, before);
+        found = of_parameters(trouble, rows, &ways, model_step, before);
     }
     if found.is_empty() {
         found = loose;
@@ -168,25 +159,35 @@ pub(super) fn of_faults(trouble: &Trouble, rows: &Rows, names: &Names, before: G
     found
 }
 
+/// Any method moves the rates of a model a little, by up to half of what the fastest mode
+/// does in a step: a scale within that, on top of the exact solution, is no fault.
+fn may_be_a_method(linear: &Linear, candidate: &Candidate, step: f64) -> bool {
+    let least = 0.6 * linear.matrix.row_sum_norm() * step;
+    let moves_more = |factor: f64| factor.ln().abs() > least;
+    candidate.kind == Kind::RateScaled && !candidate.number.is_some_and(moves_more)
+}
+
 /// A parameter by a factor off, with the exact solution, the claimed method or, where none is
 /// claimed, a usual one at work.
 fn of_parameters(
     trouble: &Trouble,
     rows: &Rows,
     ways: &[(Way, Option<&'static Method>)],
+    step: f64,
     before: Gap,
 ) -> Vec<Ranked> {
-    let own = |method: &&'static Method| trouble.methods.iter().any(|m| m.name == method.name);
-    let wanted = ways
-        .iter()
-        .filter(|(_, method)| trouble.methods.is_empty() || method.as_ref().is_none_or(own));
+    let wanted = ways.iter().filter(|(_, method)| {
+        trouble.methods.is_empty() || method.is_none_or(|method| trouble.is_claimed(method))
+    });
     let wanted: Vec<_> = wanted.collect();
     let each = wanted.par_iter().flat_map_iter(|(way, method)| {
         let found = rates::parameters(trouble.linear, trouble.parameters, rows, way).into_iter();
         found.filter_map(|candidate| {
             let after = rows.gap(&candidate.values);
             let left_over = after.share / before.share.max(f64::MIN_POSITIVE);
-            let tight = after.is_closed() || left_over <= FOUND;
+            let exact = matches!(way, Way::Exact);
+            let tight = after.closes(before)
+                && !(exact && may_be_a_method(trouble.linear, &candidate, step));
             tight.then(|| ranked(candidate, left_over, *method, after.ratio))
         })
     });

@@ -64,6 +64,18 @@ pub struct Trouble<'a> {
     pub time_unit: &'a str,
 }
 
+impl Trouble<'_> {
+    /// True for the methods that the claim means.
+    fn is_claimed(&self, method: &Method) -> bool {
+        self.methods.iter().any(|own| own.name == method.name)
+    }
+
+    /// True for a family with one of them in it.
+    fn is_of_claim(&self, family: &Family) -> bool {
+        family.methods.iter().any(|method| self.is_claimed(method))
+    }
+}
+
 /// Names for sentences.
 #[derive(Debug)]
 struct Names<'a> {
@@ -122,9 +134,6 @@ impl Candidate {
     }
 }
 
-/// A fault with a number that was looked for explains a run where it leaves this part of
-/// the error.
-const FOUND: f64 = 1e-6;
 /// Single precision is the cause where the method run without it leaves less than this part.
 const MOSTLY: f64 = 0.5;
 /// Methods that are asked whether they come from the start of the case to the rows.
@@ -165,7 +174,7 @@ pub fn causes(trouble: &Trouble) -> Vec<Cause> {
         });
         found.extend(candidates.map(|candidate| ranked(candidate, 1.0, Some(method), 0.0)));
     }
-    let mut causes = chosen(found, trouble.methods);
+    let mut causes = chosen(found, trouble);
     if trouble.evidence.is_exact() {
         // What digits and roundings explain has no other cause than these.
         causes.retain(|cause| cause.kind == Kind::SinglePrecision);
@@ -176,9 +185,9 @@ pub fn causes(trouble: &Trouble) -> Vec<Cause> {
 /// A cause with what orders it among others.
 type Ranked = (u8, f64, Cause);
 
-fn chosen(mut found: Vec<Ranked>, claimed: &[&'static Method]) -> Vec<Cause> {
+fn chosen(mut found: Vec<Ranked>, trouble: &Trouble) -> Vec<Cause> {
     // Of equal explanations those with the claimed method at work leave no room for others.
-    let is_own = |m: &'static Method| claimed.iter().any(|c| c.name == m.name);
+    let is_own = |method: &'static Method| trouble.is_claimed(method);
     if found.iter().any(|one| one.2.method.is_some_and(is_own)) {
         found.retain(|one| one.2.method.is_none_or(is_own));
     }
@@ -215,10 +224,9 @@ fn explaining_families<'a>(trouble: &Trouble<'a>) -> Vec<&'a Family> {
     if evidence.is_exact() {
         return Vec::new();
     }
-    let is_claimed = |m: &&'static Method| trouble.methods.iter().any(|c| c.name == m.name);
-    let named = |family: &&Family| family.is_told() || family.methods.iter().any(&is_claimed);
+    let named = |family: &&Family| family.is_told() || trouble.is_of_claim(family);
     let mut families: Vec<&Family> = evidence.consistent.iter().filter(named).collect();
-    families.sort_by_key(|family| !family.methods.iter().any(&is_claimed));
+    families.sort_by_key(|family| !trouble.is_of_claim(family));
     families
 }
 
@@ -277,7 +285,7 @@ fn of_method(
         });
     let way = own.map(Way::Stepped).find(|way| {
         let gap = trajectory(linear, rows, way).map(|values| rows.gap(&values));
-        gap.is_some_and(|gap| gap.is_closed() || gap.share <= FOUND * before.share)
+        gap.is_some_and(|gap| gap.closes(before))
     });
     let has_memory = method.steps_back() > 1;
     let Some(way) = way else {
@@ -318,9 +326,9 @@ fn of_method(
     if family.reading == Reading::Held {
         candidates.extend(model::held_as_found(linear, rows, names, &way, step));
     }
-    let exactly_run = trajectory(linear, rows, &way).map(|values| rows.error_of(&values));
     if trouble.record.unit > f64::EPSILON
-        && exactly_run.is_some_and(|own| own < MOSTLY * before.share)
+        && let Some(exactly_run) = trajectory(linear, rows, &way)
+        && rows.error_of(&exactly_run) < MOSTLY * before.share
     {
         candidates.extend(written::single_arithmetic());
     }
@@ -333,8 +341,7 @@ fn not_as_claimed(trouble: &Trouble, family: &Family) -> Option<Candidate> {
     if answer.support != Support::Contradicts || trouble.methods.is_empty() {
         return None;
     }
-    let is_claimed = |m: &&Method| trouble.methods.iter().any(|c| c.name == m.name);
-    let claimed = family.methods.iter().any(is_claimed);
+    let claimed = trouble.is_of_claim(family);
     let longer = family
         .step
         .zip(trouble.step)

@@ -3,7 +3,7 @@
 
 use super::bench::{Gap, Rows, Way, trajectory};
 use super::written::slip;
-use super::{Candidate, FOUND, Kind, Names, rates};
+use super::{Candidate, Kind, Names, rates};
 use crate::method::{Linear, Reading, Signal};
 use crate::number::{beside, plain, short};
 
@@ -44,9 +44,8 @@ pub(super) fn moved_inputs(
     let mut found: Vec<Candidate> = Vec::new();
     // There are many shifts: the first rows rule most of them out.
     let few = rows.few();
-    let closes = |gap: Gap| gap.is_closed() || gap.share <= FOUND * before.share;
     let may_explain = |moved: &Linear| {
-        let meets = |values: Vec<f64>| closes(few.gap(&values));
+        let meets = |values: Vec<f64>| few.gap(&values).closes(before);
         matches!(way, Way::Exact) || trajectory(moved, &few, way).is_some_and(meets)
     };
     let moving: Vec<usize> = (0..linear.signals.len())
