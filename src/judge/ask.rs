@@ -2,7 +2,7 @@
 //! deserves before it is contradicted: single precision that the digits do not show, another
 //! method for the first step, steps of its own at jumps where states are missing.
 
-use super::chance::{binds, of_iteration};
+use super::chance::{binds, elsewhere, is_plain, of_iteration};
 use super::claims::{Answer, Claimed, Support, early, of_claim};
 use crate::method::{
     Evidence, Family, Linear, Method, Reading, Record, Scheme, evidence, evidence_of, fitting,
@@ -18,6 +18,9 @@ const STIFF: f64 = 4.0;
 /// Jumps that are looked at, and how near to a step they are at it, in steps.
 const MOST_JUMPS: usize = 1000;
 const ON_GRID: f64 = 1e-6;
+/// A method of its own without a start to choose comes so many times closer to rows that have
+/// its name than the exact solution.
+const NAMED: f64 = 1e4;
 /// Rows that another method may have made at the start: up to four short steps.
 const OTHER_START: usize = 4;
 
@@ -37,7 +40,9 @@ pub fn ask(linear: &Linear, record: &Record, claimed: &Claimed) -> (Evidence, Op
                 claimed.name.unwrap_or_default()
             ));
         }
-        if let Some(text) = unfinished(linear, record, claimed, &found) {
+        let own = found.best(claimed.methods, claimed.steps);
+        let elsewhere = own.is_some_and(|own| elsewhere(&found, claimed, own).is_some());
+        if let Some(text) = unfinished(linear, record, claimed, &found).filter(|_| !elsewhere) {
             return answer.left_open(text);
         }
         if record.states(linear.size()).is_none() && misses_jumps(linear, record, claimed) {
@@ -45,7 +50,6 @@ pub fn ask(linear: &Linear, record: &Record, claimed: &Claimed) -> (Evidence, Op
                         steps of their own; write every state";
             return answer.left_open(text.to_owned());
         }
-        let own = found.best(claimed.methods, claimed.steps);
         if let Some((step, own)) = claimed.step.zip(own)
             && own.fit.residual <= STIFF * record.unit * step * linear.matrix.row_sum_norm()
         {
@@ -88,10 +92,11 @@ fn unfinished(
     let own = found.best(claimed.methods, Some(steps));
     let close = own.filter(|own| own.fit.residual <= of_iteration(steps));
     // Far from the method, the rows of another one have its name, however it came to them.
-    if close.is_some() || !found.consistent.iter().any(Family::is_beyond_chance) {
+    if close.is_some() || !found.consistent.iter().any(has_a_name) {
+        let few = !found.consistent.iter().any(has_a_name);
         for &method in claimed.methods {
             let forms = forms(method);
-            if let Some(form) = fitting(linear, record, method, &forms, steps) {
+            if let Some(form) = fitting(linear, record, method, &forms, steps, few) {
                 return Some(format!(
                     "the rows are those of {} {}, and not of the formula as it stands; {}",
                     claimed.label(),
@@ -120,6 +125,12 @@ fn unfinished(
     let same = rest.best(claimed.methods, Some(steps))?;
     let open = same.fit.holds() || !found.consistent.iter().any(|family| binds(family, same));
     open.then(|| early(own, &claimed.label()))
+}
+
+/// True where rows are those of a family that can be told from the exact solution so well that
+/// they have its name.
+fn has_a_name(family: &Family) -> bool {
+    is_plain(family) && !family.free && family.apart > NAMED * family.fit.ratio
 }
 
 /// True where a method without a memory fits all rows but the first few, and can be told

@@ -1,7 +1,8 @@
 //! What an honest program can leave of its method, and what fits rows too closely to have met
 //! them by chance.
 
-use crate::method::{Family, Method, Reading, Tried};
+use super::claims::Claimed;
+use crate::method::{Evidence, Family, Method, Reading, Tried};
 
 /// Codes that solve implicit steps by iteration stop at tolerances up to about a third of this
 /// part of the state, and leave some times their tolerance, over several steps from row to
@@ -15,6 +16,11 @@ pub(super) fn of_iteration(steps: u64) -> f64 {
     ITERATION * (steps as f64 / FEW_STEPS).max(1.0)
 }
 
+/// What coarser arithmetic may leave from row to row.
+pub(super) fn of_arithmetic(steps: u64) -> f64 {
+    of_iteration(steps) * COARSE / ITERATION
+}
+
 /// What an iteration may leave of the peak however tight its tolerance: it stops where its
 /// own roundings end.
 pub(super) const LAST_DIGITS: f64 = 256.0 * f64::EPSILON;
@@ -26,8 +32,55 @@ const BY_CHANCE: f64 = 0.05;
 const BY_CHANCE_FREE: f64 = 1e-3;
 /// The same over few comparisons, for the method claimed at another step.
 pub(super) const BY_CHANCE_FEW: f64 = 1e-4;
+/// The same for one that nothing tells from the exact solution between rows.
+const FAR_CLOSER: f64 = 0.01;
 /// Residuals so many times what digits and rounding allow another method are about as small.
-const AS_CLOSE: f64 = 4.0;
+const AS_CLOSE: f64 = 10.0;
+
+/// Coarser arithmetic or constants of the program leave up to this part of the peak, some
+/// ten roundings of single precision in every step.
+const COARSE: f64 = 3e-6;
+/// Where the method claimed fits at another step, so many times what digits and rounding
+/// allow at the stated one is more than an iteration would leave by chance.
+const BY_CHANCE_ELSEWHERE: f64 = 8.0;
+
+/// The claimed method at another step, where that fits so much better that the stated one is
+/// not it, however it was solved: what an iteration has left would have had to be the
+/// difference of the two steps.
+pub(super) fn elsewhere<'a>(
+    evidence: &'a Evidence,
+    claimed: &Claimed,
+    own: &Tried,
+) -> Option<&'a Family> {
+    let is_claimed = |m: &&'static Method| claimed.is_claimed(m);
+    let clearly = own.fit.ratio > BY_CHANCE_ELSEWHERE && claimed.step.is_some();
+    evidence.consistent.iter().find(|family| {
+        clearly
+            && family.methods.iter().any(is_claimed)
+            && family.steps != own.steps
+            && is_plain(family)
+            && family.apart > 1.0
+    })
+}
+
+/// True where the exact solution, or a method between rows that nothing tells from it, is so
+/// near to the rows that what an iteration had left would have had to undo the errors of
+/// the method.
+pub(super) fn is_undone(evidence: &Evidence, own: &Tried) -> bool {
+    let nearest = evidence.exact.residual <= BY_CHANCE * own.fit.residual;
+    let between = |family: &Family| {
+        !family.free
+            && family.is_compared_well()
+            && is_sharp(family, own)
+            && is_plain(family)
+            && family.fit.residual <= FAR_CLOSER * own.fit.residual
+    };
+    nearest || (!own.free && evidence.consistent.iter().any(between))
+}
+
+pub(super) fn is_plain(family: &Family) -> bool {
+    family.reading == Reading::AtNodes && family.steps <= Family::MANY_STEPS
+}
 
 /// True where a step of the method has to be solved for.
 pub(super) fn is_implicit(method: &Method) -> bool {
@@ -58,8 +111,7 @@ pub(super) fn far_closer(family: &Family, own: &Tried) -> bool {
 }
 
 fn closer(family: &Family, own: &Tried, by_chance: f64) -> bool {
-    family.reading == Reading::AtNodes
-        && family.steps <= Family::MANY_STEPS
+    is_plain(family)
         && (family.fit.residual <= by_chance * own.fit.residual
             || family.fit.astray <= by_chance * own.fit.astray)
 }

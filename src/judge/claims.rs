@@ -6,7 +6,8 @@
 //! stated) is told by thresholds, see `chance.rs`, that only ever leave a claim open.
 
 use super::chance::{
-    BY_CHANCE_FEW, LAST_DIGITS, binds, far_closer, is_implicit, is_sharp, of_iteration,
+    BY_CHANCE_FEW, LAST_DIGITS, binds, elsewhere, far_closer, is_implicit, is_sharp, is_undone,
+    of_arithmetic, of_iteration,
 };
 use super::words::{family_at, of_peak, reading, share};
 use crate::method::{Evidence, Family, Method, Reading, Skipped, Tried};
@@ -308,6 +309,8 @@ fn of_method(evidence: &Evidence, claimed: &Claimed, cannot: &dyn Fn(String) -> 
                 .consistent
                 .iter()
                 .any(|f| binds(f, own) && is_sharp(f, own))
+            && !is_undone(evidence, own)
+            && elsewhere(evidence, claimed, own).is_none()
             && !(evidence.is_exact() && own.fit.residual > 2.0 * exactly);
         let explained = evidence.is_exact() || !evidence.consistent.is_empty();
         implicit && explained && (loose || own.fit.residual <= LAST_DIGITS)
@@ -316,10 +319,10 @@ fn of_method(evidence: &Evidence, claimed: &Claimed, cannot: &dyn Fn(String) -> 
         return cannot(early(own, &label));
     }
     // Something else explains the rows to the last digit.
+    let closer_to_exact =
+        || format!("the values are closer to the exact solution than {label} can come{off}");
     if evidence.is_exact() && claimed.step.is_some() {
-        let text =
-            format!("the values are closer to the exact solution than {label} can come{off}");
-        return all(Support::Contradicts, text);
+        return all(Support::Contradicts, closer_to_exact());
     }
     let explains = |family: &Family| {
         // An iteration that stops early leaves most where rows move most.
@@ -336,7 +339,10 @@ fn of_method(evidence: &Evidence, claimed: &Claimed, cannot: &dyn Fn(String) -> 
             !family.free && (family.is_told() || own.is_some_and(|own| far_closer(family, own)));
         family.methods.iter().any(is_claimed) && (explains(family) || plain)
     };
-    let at_other_step = evidence.consistent.iter().find(named).map(|f| f.steps);
+    let at_other_step = own
+        .and_then(|own| elsewhere(evidence, claimed, own))
+        .or_else(|| evidence.consistent.iter().find(named))
+        .map(|family| family.steps);
     // Rows that some start meets, if ever so few of them, for the very method claimed.
     let meets = |skipped: &&Skipped| {
         skipped.fit.compared > 0
@@ -373,6 +379,9 @@ fn of_method(evidence: &Evidence, claimed: &Claimed, cannot: &dyn Fn(String) -> 
     let Some(own) = own else {
         return cannot(format!("nothing could be compared with {label}"));
     };
+    if implicit && claimed.step.is_some() && is_undone(evidence, own) {
+        return all(Support::Contradicts, closer_to_exact());
+    }
     // Nothing fits: the claim is near, or an iteration has left its tolerance, or it is not
     // true.
     let nearest_other = evidence
@@ -393,7 +402,7 @@ fn of_method(evidence: &Evidence, claimed: &Claimed, cannot: &dyn Fn(String) -> 
     if implicit && own.fit.residual <= of_iteration(own.steps) {
         return cannot(early(own, &label));
     }
-    if own.fit.residual <= of_iteration(own.steps) && evidence.consistent.is_empty() {
+    if own.fit.residual <= of_arithmetic(own.steps) && evidence.consistent.is_empty() {
         return cannot(format!(
             "the rows are {} of the peak away from {label}, which coarser arithmetic or constants \
              would explain; run it in double precision with the constants of the case",

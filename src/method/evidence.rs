@@ -367,21 +367,23 @@ pub fn evidence_of(
     conclude(&search, found)
 }
 
-/// The first of some forms of a method that fits the rows at so many steps from row to row, or
-/// that the rows are too few for.
+/// The first of some forms of a method that fits the rows at so many steps from row to row;
+/// where `few` allows it, or that the rows are too few for.
 pub fn fitting<'a>(
     linear: &Linear,
     record: &Record,
     method: &'static Method,
     forms: &'a [Form],
     steps: u64,
+    few: bool,
 ) -> Option<&'a Form> {
     let (claimed, claimed_steps) = ([method], [steps]);
     let search = search(linear, record, &claimed, &claimed_steps);
     let fits = |form: &&Form| {
         let found = search.form(method, &form.coefficients, Reading::AtNodes);
         let mut tried = found.tried.iter().filter(|tried| tried.steps == steps);
-        tried.any(|tried| tried.fit.holds()) || found.skipped.iter().any(|s| s.steps == steps)
+        tried.any(|tried| tried.fit.holds())
+            || (few && found.skipped.iter().any(|s| s.steps == steps))
     };
     forms.par_iter().find_first(fits)
 }

@@ -43,6 +43,10 @@ pub struct Iterated {
 /// Most evaluations of a right side in one step.
 const MOST_TIMES: usize = 12;
 
+/// Most corrections where none is evaluated after the last: nobody evaluates often and then
+/// leaves the result (common practice, no source).
+const MOST_OPEN: usize = 3;
+
 /// The forms of a method that stop after a fixed number of fixed-point iterations; for pairs
 /// of a predictor and a corrector the usual modes, and the corrector solved to the end.
 pub fn forms(method: &Method) -> Vec<Form> {
@@ -215,9 +219,10 @@ fn modes(predictor: &[Double], corrector: &[Double]) -> Vec<Form> {
     stay[newest - 1] = Double::ONE;
     let mut alpha: Vec<Double> = stay.iter().map(|&x| -x).collect();
     alpha.push(Double::ONE);
-    let modes = [true, false]
-        .into_iter()
-        .flat_map(|evaluates| (1..=MOST_TIMES).map(move |times| (times, evaluates)));
+    let modes = [true, false].into_iter().flat_map(|evaluates| {
+        let most = if evaluates { MOST_TIMES } else { MOST_OPEN };
+        (1..=most).map(move |times| (times, evaluates))
+    });
     let mut forms: Vec<Form> = modes
         .map(|(times, evaluates)| Form {
             text: format!(
