@@ -196,7 +196,9 @@ fn of_method(evidence: &Evidence, claimed: &Claimed, cannot: &dyn Fn(String) -> 
         let outdone = evidence.outdone(own, claimed.methods, claimed.unit);
         // A stiff step is computed in more ways than one, each with roundings of its own.
         let rounded = own.fit.residual <= own.coarse;
-        let far = outdone.filter(|(times, _)| *times > FAR_BEYOND && !own.free && !rounded);
+        let far = outdone.filter(|(times, family)| {
+            *times > FAR_BEYOND && family.steps <= Family::MANY_STEPS && !own.free && !rounded
+        });
         if let Some((times, family)) = far {
             let text = format!(
                 "the rows fit {}, {} times closer than {label}, whose roundings would stand in \

@@ -456,6 +456,8 @@ fn families(tried: &[Tried], unit: f64, kicked: f64) -> Vec<Family> {
     let met_only = met && kicked > OUTDONE;
     // Nor does a start that is free to choose, and would make the exact solution fit as well,
     // explain what something without such freedom does.
+    let beside_jumps =
+        |one: &Tried| (met && one.at_jumps.ratio > 1.0) || (met_only && one.at_jumps.compared == 0);
     let outdone = |one: &Tried| {
         let by = |other: &Tried| {
             other.outdoes(one, unit) > OUTDONE
@@ -463,9 +465,8 @@ fn families(tried: &[Tried], unit: f64, kicked: f64) -> Vec<Family> {
                     && !other.free
                     && other.apart > if one.apart > 1.0 { OUTDONE } else { TOLD })
         };
-        (met && one.at_jumps.ratio > 1.0)
-            || (met_only && one.at_jumps.compared == 0)
-            || holding().any(by)
+        let mut others = holding().filter(|other| !beside_jumps(other));
+        beside_jumps(one) || others.any(by)
     };
     for one in holding().filter(|one| !outdone(one)) {
         let same = |(family, print): &&mut (Family, &Vec<f64>)| {

@@ -23,6 +23,7 @@ mod laid;
 mod linear;
 mod march;
 mod powers;
+mod precise;
 mod ranks;
 mod record;
 mod recurrence;

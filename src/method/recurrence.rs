@@ -6,6 +6,7 @@ use nalgebra::DMatrix;
 use super::exponential::{by_state, exponential};
 use super::iterated::iterated;
 use super::linear::Linear;
+use super::precise::{Precise, precise};
 use super::scheme::{Coefficients, Stages};
 use crate::number::{Double, Matrix};
 
@@ -215,17 +216,19 @@ fn eliminated(system: &DMatrix<f64>) -> DMatrix<f64> {
 /// Gathers the weights of the stages into a step.
 fn of_weights(
     stages: &Stages,
-    weights: &[DMatrix<f64>],
+    weights: Vec<DMatrix<f64>>,
     matrix: &DMatrix<f64>,
     step: f64,
     mut magnitudes: Magnitudes,
 ) -> Recurrence {
     let size = matrix.nrows();
-    let mut stay = identity(size);
+    let Precise { weights, stay } = precise(stages, matrix, step).unwrap_or_else(|| {
+        let moved = weights.iter().map(|weight| weight * matrix);
+        let stay = moved.fold(identity(size), |stay, moved| stay + moved);
+        Precise { weights, stay }
+    });
     let mut nodes = Vec::new();
     for (stage, weight) in weights.iter().enumerate() {
-        let moved = weight * matrix;
-        stay += moved;
         let node = |at: f64, slope: bool, weight: DMatrix<f64>| Node {
             at,
             slope,
@@ -355,7 +358,7 @@ fn one_by_one(stages: &Stages, matrix: &DMatrix<f64>, step: f64) -> Option<Recur
         magnitudes.add(&weights[i], share, &right, &solved, &slope);
         slopes.push(slope);
     }
-    Some(of_weights(stages, &weights, matrix, step, magnitudes))
+    Some(of_weights(stages, weights, matrix, step, magnitudes))
 }
 
 /// Stages that have to be solved for together.
@@ -393,7 +396,7 @@ fn together(stages: &Stages, matrix: &DMatrix<f64>, step: f64) -> Option<Recurre
         let (sum, slope) = (sums.each_ref().map(part), slopes.each_ref().map(part));
         magnitudes.add(weight, share, &right, &sum, &slope);
     }
-    Some(of_weights(stages, &weights, matrix, step, magnitudes))
+    Some(of_weights(stages, weights, matrix, step, magnitudes))
 }
 
 fn multistep(
