@@ -41,7 +41,10 @@ pub fn ask(linear: &Linear, record: &Record, claimed: &Claimed) -> (Evidence, Op
             ));
         }
         let own = found.best(claimed.methods, claimed.steps);
-        let elsewhere = own.is_some_and(|own| elsewhere(&found, claimed, own).is_some());
+        // A mode of a pair and the pair at another step may both meet the digits.
+        let pair = |method: &&Method| method.schemes.iter().any(Scheme::is_predicted);
+        let elsewhere = !claimed.methods.iter().any(pair)
+            && own.is_some_and(|own| elsewhere(&found, claimed, own).is_some());
         if let Some(text) = unfinished(linear, record, claimed, &found).filter(|_| !elsewhere) {
             return answer.left_open(text);
         }

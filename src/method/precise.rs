@@ -6,6 +6,7 @@
 
 use nalgebra::DMatrix;
 
+use super::recurrence::identity;
 use super::scheme::Stages;
 use crate::number::Double;
 
@@ -14,17 +15,35 @@ const STIFF: f64 = 32.0;
 /// Equations for all stages together that are worth it.
 const MOST_EQUATIONS: usize = 96;
 
-/// What each stage's right side does to the new state, and the matrix of the step.
-pub(super) struct Precise {
+/// A whole step.
+pub(super) struct Whole {
+    /// What each stage's right side does to the new state.
     pub(super) weights: Vec<DMatrix<f64>>,
+    /// What the old state does to it.
     pub(super) stay: DMatrix<f64>,
+}
+
+impl Whole {
+    /// From weights in double precision, which do where the step is not stiff.
+    pub(super) fn new(
+        stages: &Stages,
+        weights: Vec<DMatrix<f64>>,
+        matrix: &DMatrix<f64>,
+        step: f64,
+    ) -> Whole {
+        precise(stages, matrix, step).unwrap_or_else(|| {
+            let moved = weights.iter().map(|weight| weight * matrix);
+            let stay = moved.fold(identity(matrix.nrows()), |stay, moved| stay + moved);
+            Whole { weights, stay }
+        })
+    }
 }
 
 /// `None` where double precision does, or where the stages cannot be solved for.
 ///
 /// # Formula
 /// `(W_1 ... W_s) (I - h a (x) A) = h (b_1 I ... b_s I)` and `I + sum W_i A`.
-pub(super) fn precise(stages: &Stages, matrix: &DMatrix<f64>, step: f64) -> Option<Precise> {
+fn precise(stages: &Stages, matrix: &DMatrix<f64>, step: f64) -> Option<Whole> {
     let (size, count) = (matrix.nrows(), stages.weights.len());
     let norm = |row: usize| matrix.row(row).iter().map(|x| x.abs()).sum::<f64>();
     let stiffness = step * (0..size).map(norm).fold(0.0, f64::max);
@@ -68,7 +87,7 @@ pub(super) fn precise(stages: &Stages, matrix: &DMatrix<f64>, step: f64) -> Opti
         }
         sum.to_f64()
     });
-    Some(Precise {
+    Some(Whole {
         weights: weights.collect(),
         stay,
     })
@@ -95,7 +114,7 @@ fn eliminate(rows: &mut [Vec<Double>], size: usize) -> Option<()> {
                 continue;
             }
             for (entry, &x) in other[column..].iter_mut().zip(&own[column..]) {
-                *entry = *entry - factor * x;
+                *entry -= factor * x;
             }
         }
     }

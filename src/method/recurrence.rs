@@ -6,7 +6,7 @@ use nalgebra::DMatrix;
 use super::exponential::{by_state, exponential};
 use super::iterated::iterated;
 use super::linear::Linear;
-use super::precise::{Precise, precise};
+use super::precise::Whole;
 use super::scheme::{Coefficients, Stages};
 use crate::number::{Double, Matrix};
 
@@ -222,11 +222,7 @@ fn of_weights(
     mut magnitudes: Magnitudes,
 ) -> Recurrence {
     let size = matrix.nrows();
-    let Precise { weights, stay } = precise(stages, matrix, step).unwrap_or_else(|| {
-        let moved = weights.iter().map(|weight| weight * matrix);
-        let stay = moved.fold(identity(size), |stay, moved| stay + moved);
-        Precise { weights, stay }
-    });
+    let Whole { weights, stay } = Whole::new(stages, weights, matrix, step);
     let mut nodes = Vec::new();
     for (stage, weight) in weights.iter().enumerate() {
         let node = |at: f64, slope: bool, weight: DMatrix<f64>| Node {
