@@ -507,6 +507,37 @@ fn one_step_methods_are_found_at_varying_steps() {
     Tally::of(said).check("varying steps", 0.03);
 }
 
+/// Steps of up to half a million times the fast time constant: what a step of the catalogue is computed by
+/// rounds like the one that a program made.
+#[test]
+fn stiff_steps_are_not_contradicted() {
+    let case = load("stress/stiff-1e6");
+    let linear = Linear::new(&case);
+    let channels = all_states(&linear).unwrap();
+    let mut said = Vec::new();
+    for (spacing, count) in [(0.05, 100), (0.5, 20)] {
+        let implicit = |(method, scheme): &(&'static Method, usize)| {
+            method.schemes[*scheme].is_implicit() && method.schemes[*scheme].steps_back() == 1
+        };
+        for (method, scheme) in variants().into_iter().filter(implicit) {
+            for steps in [1, 4] {
+                let run = Run {
+                    scheme,
+                    ..Run::new(&case, method, spacing, steps, count)
+                };
+                let (times, states) = run.states().unwrap();
+                let truth = truth(&case, &times);
+                for digits in [9, 17] {
+                    let record =
+                        printed(&run, &linear, &channels, (&times, &states, &truth), digits);
+                    said.push(ask(&linear, &record, &run, digits, true));
+                }
+            }
+        }
+    }
+    Tally::of(said).check("stiff steps", 0.0);
+}
+
 /// No claim at all: what wrote the rows is found, or nothing can be told from the solution.
 #[test]
 fn the_true_pair_is_found_without_a_claim() {
