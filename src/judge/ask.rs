@@ -42,10 +42,9 @@ pub fn ask(linear: &Linear, record: &Record, claimed: &Claimed) -> (Evidence, Op
         }
         let own = found.best(claimed.methods, claimed.steps);
         // A mode of a pair and the pair at another step may both meet the digits.
-        let pair = |method: &&Method| method.schemes.iter().any(Scheme::is_predicted);
-        let elsewhere = !claimed.methods.iter().any(pair)
+        let elsewhere = !claimed.methods.iter().any(|method| is_pair(method))
             && own.is_some_and(|own| elsewhere(&found, claimed, own).is_some());
-        if let Some(text) = unfinished(linear, record, claimed, &found).filter(|_| !elsewhere) {
+        if !elsewhere && let Some(text) = unfinished(linear, record, claimed, &found) {
             return answer.left_open(text);
         }
         if record.states(linear.size()).is_none() && misses_jumps(linear, record, claimed) {
@@ -95,16 +94,16 @@ fn unfinished(
     let own = found.best(claimed.methods, Some(steps));
     let close = own.filter(|own| own.fit.residual <= of_iteration(steps));
     // Far from the method, the rows of another one have its name, however it came to them.
-    if close.is_some() || !found.consistent.iter().any(has_a_name) {
-        let few = !found.consistent.iter().any(has_a_name);
+    let named = found.consistent.iter().any(has_a_name);
+    if close.is_some() || !named {
         for &method in claimed.methods {
             let forms = forms(method);
-            if let Some(form) = fitting(linear, record, method, &forms, steps, few) {
+            if let Some(form) = fitting(linear, record, method, &forms, steps, !named) {
                 return Some(format!(
                     "the rows are those of {} {}, and not of the formula as it stands; {}",
                     claimed.label(),
                     form.text,
-                    if method.schemes.iter().any(Scheme::is_predicted) {
+                    if is_pair(method) {
                         "predict, evaluate, correct once and evaluate to have it confirmed"
                     } else {
                         "let iterations run to a tolerance"
@@ -128,6 +127,11 @@ fn unfinished(
     let same = rest.best(claimed.methods, Some(steps))?;
     let open = same.fit.holds() || !found.consistent.iter().any(|family| binds(family, same));
     open.then(|| early(own, &claimed.label()))
+}
+
+/// True for a predictor with its corrector.
+fn is_pair(method: &Method) -> bool {
+    method.schemes.iter().any(Scheme::is_predicted)
 }
 
 /// True where rows are those of a family that can be told from the exact solution so well that

@@ -78,6 +78,7 @@ pub(super) fn is_undone(evidence: &Evidence, own: &Tried) -> bool {
     nearest || (!own.free && evidence.consistent.iter().any(between))
 }
 
+/// True for inputs read at the stages and no more steps to a row than tell a method.
 pub(super) fn is_plain(family: &Family) -> bool {
     family.reading == Reading::AtNodes && family.steps <= Family::MANY_STEPS
 }

@@ -60,12 +60,7 @@ fn precise(stages: &Stages, matrix: &DMatrix<f64>, step: f64) -> Option<Whole> {
         for (column, entry) in equation[..all].iter_mut().enumerate() {
             let (i, k) = (column / size, column % size);
             let link = step * stages.matrix[i][j] * Double::from(matrix[(k, l)]);
-            let one = if row == column {
-                Double::ONE
-            } else {
-                Double::ZERO
-            };
-            *entry = one - link;
+            *entry = one(row == column) - link;
         }
         equation[all + l] = step * stages.weights[j];
     }
@@ -74,12 +69,7 @@ fn precise(stages: &Stages, matrix: &DMatrix<f64>, step: f64) -> Option<Whole> {
     let weights = (0..count)
         .map(|i| DMatrix::from_fn(size, size, |row, column| weight(i, row, column).to_f64()));
     let stay = DMatrix::from_fn(size, size, |row, column| {
-        let one = if row == column {
-            Double::ONE
-        } else {
-            Double::ZERO
-        };
-        let mut sum = one;
+        let mut sum = one(row == column);
         for i in 0..count {
             for k in 0..size {
                 sum += weight(i, row, k) * Double::from(matrix[(k, column)]);
@@ -91,6 +81,14 @@ fn precise(stages: &Stages, matrix: &DMatrix<f64>, step: f64) -> Option<Whole> {
         weights: weights.collect(),
         stay,
     })
+}
+
+/// An entry of the identity.
+fn one(on_diagonal: bool) -> Double {
+    match on_diagonal {
+        true => Double::ONE,
+        false => Double::ZERO,
+    }
 }
 
 /// Gauss-Jordan with row exchanges; the right sides behind the first `size` columns become the

@@ -236,11 +236,8 @@ fn matrix(every: usize, channels: impl Fn(&Linear) -> Option<Vec<usize>> + Sync)
                         ..Run::new(case, method, spacing, steps, count)
                     };
                     let (times, states) = run.states().unwrap();
-                    for digits in [6, 9, 17] {
-                        let record =
-                            printed(&run, &linear, &channels, (&times, &states, &truth), digits);
-                        said.push(ask(&linear, &record, &run, digits, true));
-                    }
+                    let written = (&times[..], &states[..], &truth[..]);
+                    said.extend(asked(&run, &linear, &channels, written, &DIGITS, true));
                 }
             }
         }
@@ -289,6 +286,24 @@ fn the_true_pair_is_consistent_with_parts_of_the_states() {
         (outputs > 0).then(|| (linear.size()..linear.size() + outputs).collect())
     };
     matrix(2, outputs).check("outputs", 0.05);
+}
+
+const DIGITS: [usize; 3] = [6, 9, 17];
+
+/// Asks for the honest claim of a run, printed with each of these numbers of digits.
+fn asked(
+    run: &Run,
+    linear: &Linear,
+    channels: &[usize],
+    written: (&[f64], &[Vec<f64>], &[Vec<Double>]),
+    digits: &[usize],
+    strict: bool,
+) -> Vec<Said> {
+    let one = |&digits: &usize| {
+        let record = printed(run, linear, channels, written, digits);
+        ask(linear, &record, run, digits, strict)
+    };
+    digits.iter().map(one).collect()
 }
 
 /// What is kept of a run whose program prints so many digits.
@@ -350,11 +365,8 @@ fn honest(every: usize) -> Tally {
                         continue;
                     };
                     let truth = truth(case, &times);
-                    for digits in [6, 9, 17] {
-                        let record =
-                            printed(&run, &linear, &channels, (&times, &states, &truth), digits);
-                        said.push(ask(&linear, &record, &run, digits, false));
-                    }
+                    let written = (&times[..], &states[..], &truth[..]);
+                    said.extend(asked(&run, &linear, &channels, written, &DIGITS, false));
                 }
             }
         }
@@ -418,10 +430,10 @@ fn unfinished(every: usize) -> Tally {
                     if own.is_nan() || own > 3.0 * true_one {
                         continue;
                     }
-                    for digits in [6, 9, 17] {
-                        let record =
-                            printed(&run, &linear, &channels, (&times, &states, &truth), digits);
-                        said.push(match ask(&linear, &record, &run, digits, false) {
+                    let written = (&times[..], &states[..], &truth[..]);
+                    let all = asked(&run, &linear, &channels, written, &DIGITS, false);
+                    said.extend(all.into_iter().map(|said| {
+                        match said {
                             // Far from the formula, and to the last digit what an explicit
                             // method of that name writes.
                             Said::Contradicted(text)
@@ -432,8 +444,8 @@ fn unfinished(every: usize) -> Tally {
                                 Said::Fine
                             }
                             said => said,
-                        });
-                    }
+                        }
+                    }));
                 }
             }
         }
@@ -497,10 +509,8 @@ fn one_step_methods_are_found_at_varying_steps() {
             };
             let (times, states) = run.states().unwrap();
             let truth = truth(case, &times);
-            for digits in [6, 9, 17] {
-                let record = printed(&run, &linear, &channels, (&times, &states, &truth), digits);
-                said.push(ask(&linear, &record, &run, digits, true));
-            }
+            let written = (&times[..], &states[..], &truth[..]);
+            said.extend(asked(&run, &linear, &channels, written, &DIGITS, true));
         }
         said
     });
@@ -527,11 +537,8 @@ fn stiff_steps_are_not_contradicted() {
                 };
                 let (times, states) = run.states().unwrap();
                 let truth = truth(&case, &times);
-                for digits in [9, 17] {
-                    let record =
-                        printed(&run, &linear, &channels, (&times, &states, &truth), digits);
-                    said.push(ask(&linear, &record, &run, digits, true));
-                }
+                let written = (&times[..], &states[..], &truth[..]);
+                said.extend(asked(&run, &linear, &channels, written, &[9, 17], true));
             }
         }
     }
