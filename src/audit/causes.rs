@@ -1,7 +1,7 @@
 //! Likely causes for the runs of a submission that does not pass.
 
 use super::Model;
-use super::evidence::{RunFound, claimed_methods};
+use super::evidence::{RunFound, ask_at_steps, claimed_methods};
 use super::run::RunCompared;
 use crate::case::Library;
 use crate::explain::{Cause, Kind, Parameters, Trouble, causes};
@@ -54,6 +54,7 @@ pub(super) fn look(
     };
     let mut looked = 0;
     let mut mended_by: Option<String> = None;
+    let mut between_steps: Option<u64> = None;
     // The finest run decides on the order; results decide on limits.
     let mut order: Vec<usize> = (0..runs.len()).collect();
     order.sort_by_key(|&index| runs[index].outcome.role != Role::Result);
@@ -76,7 +77,11 @@ pub(super) fn look(
         }
         if looked >= MOST_RUNS {
             // The runs of a ladder share their fault.
-            if let (Some(text), Some(answer)) = (&mended_by, &mut found.answer) {
+            if let Some(count) = between_steps
+                && let Some(at_steps) = ask_at_steps(model, submission, &methods, run, count)
+            {
+                found.answer = Some(at_steps);
+            } else if let (Some(text), Some(answer)) = (&mended_by, &mut found.answer) {
                 take_back(answer, text.clone());
             }
             continue;
@@ -96,7 +101,14 @@ pub(super) fn look(
             time_unit: &model.case.time.unit,
         };
         let causes = causes(&trouble);
-        if let Some(answer) = found.answer.as_mut().filter(|_| contradicted)
+        if let Some(cause) = causes.iter().find(|c| c.kind == Kind::InterpolatedRows)
+            && let (Some(step), Some((spacing, _))) = (cause.number, run.record.spacing)
+            && let count = (step / spacing).round() as u64
+            && let Some(at_steps) = ask_at_steps(model, submission, &methods, run, count)
+        {
+            found.answer = Some(at_steps);
+            between_steps = Some(count);
+        } else if let Some(answer) = found.answer.as_mut().filter(|_| contradicted)
             // The claimed method at another step than the stated one is no fault of the model.
             && answer.method != Some(Support::Agrees)
             && let Some(cause) = mended(&causes, &methods)

@@ -69,7 +69,30 @@ fn ask_one(
         None => (None, None),
     };
     let thinner = thinned.map(|count| run.record.every(count));
-    let claimed = Claimed {
+    let claimed = claimed(model, submission, methods, run, (step, steps));
+    let record = thinner.as_ref().unwrap_or(&run.record);
+    let (found, mut answer) = judge::ask(&model.linear, record, &claimed);
+    if let (Some(answer), Some(count)) = (&mut answer, thinned) {
+        answer.text += &rows_between(count);
+    }
+    RunFound {
+        evidence: found,
+        answer,
+    }
+}
+
+fn rows_between(count: u64) -> String {
+    format!("; {} of {count} rows lie between the steps", count - 1)
+}
+
+fn claimed<'a>(
+    model: &'a Model,
+    submission: &'a Submission,
+    methods: &'a [&'static Method],
+    run: &RunCompared,
+    (step, steps): (Option<f64>, Option<u64>),
+) -> Claimed<'a> {
+    Claimed {
         name: submission.claims.method.as_deref(),
         methods,
         step,
@@ -77,16 +100,29 @@ fn ask_one(
         adaptive: matches!(run.outcome.setting, Setting::Tolerance(_)),
         unit: run.record.unit,
         time_unit: &model.case.time.unit,
+    }
+}
+
+/// Asks only every `count`-th row of a run whose other rows were found to be interpolated:
+/// an answer where the method claimed wrote these.
+pub(super) fn ask_at_steps(
+    model: &Model,
+    submission: &Submission,
+    methods: &[&'static Method],
+    run: &RunCompared,
+    count: u64,
+) -> Option<Answer> {
+    let (spacing, _) = run.record.spacing?;
+    let apart = spacing * count as f64;
+    let step = run.outcome.setting.step().unwrap_or(apart);
+    let Some(Among::StepsPerRow(steps)) = steps_among_rows(apart, step) else {
+        return None;
     };
-    let record = thinner.as_ref().unwrap_or(&run.record);
-    let (found, mut answer) = judge::ask(&model.linear, record, &claimed);
-    if let (Some(answer), Some(count)) = (&mut answer, thinned) {
-        answer.text += &format!("; {} of {count} rows lie between the steps", count - 1);
-    }
-    RunFound {
-        evidence: found,
-        answer,
-    }
+    let claimed = claimed(model, submission, methods, run, (Some(step), Some(steps)));
+    let (_, answer) = judge::ask(&model.linear, &run.record.every(count), &claimed);
+    let mut answer = answer.filter(|answer| answer.method == Some(Support::Agrees))?;
+    answer.text += &rows_between(count);
+    Some(answer)
 }
 
 /// Fills in the evidence and lets a contradicted claim fail the submission.

@@ -7,6 +7,7 @@ use crate::compare::{Compared, Comparison, Deviation, Keeper, Limit, Spot};
 use crate::fault::Fault;
 use crate::judge;
 use crate::method::Record;
+use crate::number::counted;
 use crate::outcome::{ChannelOutcome, ErrorOutcome, RowOutcome, RunOutcome};
 use crate::submission::{
     Column, LimitsStated, Matched, Role, Run, Setting, Submission, match_columns,
@@ -139,8 +140,9 @@ pub(super) fn compare(
     }
     if compared.outside > 0 {
         notes.push(format!(
-            "{}: {} row(s) outside the window are not compared",
-            run.file, compared.outside
+            "{}: {} outside the window not compared",
+            run.file,
+            counted(compared.outside, "row")
         ));
     }
     outcome.step = step.or(compared

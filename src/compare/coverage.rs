@@ -1,6 +1,7 @@
 //! Whether the rows of a run cover the window: from its start to its end, without a
 //! stretch left out.
 
+use crate::number::counted;
 use crate::trajectory::{Findings, Kind};
 
 /// A start or an end within this fraction of the window counts as reached: codes that
@@ -153,7 +154,10 @@ impl<'a> Coverage<'a> {
             findings.fatal(Kind::WindowNotCovered, None, text);
         }
         if rows < least_rows {
-            let text = format!("{rows} row(s) within the window, at least {least_rows} are needed");
+            let text = format!(
+                "{} within the window, at least {least_rows} are needed",
+                counted(rows, "row")
+            );
             findings.fatal(Kind::TooFewRows, None, text);
         }
         (rows, outside)

@@ -1,6 +1,7 @@
 //! Rows that are missing although the step is stated: stamps are whole multiples of it,
 //! and the same number of steps apart but for a few.
 
+use crate::number::counted;
 use crate::trajectory::{Findings, Kind};
 
 /// A stamp counts as a multiple of the step within this fraction of it: stamps can be
@@ -98,9 +99,13 @@ impl Strides {
             if size.stride > usual.stride && whole && size.longest_run < PHASE {
                 let missing = size.stride / usual.stride - 1.0;
                 let text = format!(
-                    "{missing} row(s) missing before t = {} {unit}, {} time(s) in the file: rows \
-                     lie {} steps of {} apart elsewhere",
-                    size.time, size.count, usual.stride, self.step
+                    "{} missing before t = {} {unit}, {} in the file: rows lie {} steps of {} apart \
+                     elsewhere",
+                    counted(missing as u64, "row"),
+                    size.time,
+                    counted(size.count, "time"),
+                    usual.stride,
+                    self.step
                 );
                 findings.fatal(Kind::MissingRows, size.line, text);
             }

@@ -117,7 +117,8 @@ pub fn of_claim(evidence: &Evidence, claimed: &Claimed) -> Option<Answer> {
         text,
     };
     if let (Some(name), true) = (claimed.name, claimed.methods.is_empty()) {
-        let text = format!("`{name}` is not in the catalogue; `stepgauge methods` lists it");
+        let text =
+            format!("`{name}` is not in the catalogue; `stepgauge methods` lists what it holds");
         return Some(of_step_alone(evidence, claimed).map_or_else(
             || cannot(text.clone()),
             |step| Answer {

@@ -127,6 +127,8 @@ struct System {
     reach: Vec<f64>,
     /// Channel and allowance of each equation.
     of_row: Vec<(usize, f64)>,
+    /// Equations of rows that move: where they rest, every method would.
+    telling: usize,
 }
 
 impl System {
@@ -170,6 +172,7 @@ impl System {
         let mut step = memory;
         let mut leaps = Leaps::default();
         let (mut lines, mut right, mut of_row) = (Vec::new(), Vec::new(), Vec::new());
+        let mut telling = 0;
         let peaks = record.peaks();
         for count in usize::from(stretch.from_start)..stretch.rows {
             let row = begin + count;
@@ -238,6 +241,9 @@ impl System {
                     linear.observe_change(channel, &of_state)
                 };
                 lines.extend((0..unknowns).map(|u| effect_on(u) / allowed));
+                let rests =
+                    row > 0 && (written - window.values[at - record.width()]).abs() <= allowed;
+                telling += usize::from(!rests);
                 right.push((written - predicted) / allowed);
                 of_row.push((column, allowed));
             }
@@ -251,6 +257,7 @@ impl System {
             right: DVector::from_vec(right),
             reach,
             of_row,
+            telling,
         })
     }
 
@@ -320,7 +327,7 @@ impl System {
             residual: rest * scale,
             astray: rest * scale,
             blur: noise.min(rest) * scale,
-            compared: equations - unknowns,
+            compared: self.telling.saturating_sub(unknowns),
         }
     }
 }

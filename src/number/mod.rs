@@ -25,4 +25,4 @@ pub use expm::{Flow, Propagator, Step};
 pub use matrix::{Matrix, dot};
 pub use quad::Quad;
 pub use real::Real;
-pub use short::{beside, measured, plain, short};
+pub use short::{beside, counted, measured, plain, short};

@@ -40,6 +40,12 @@ pub fn measured(value: f64, doubt: f64) -> String {
     }
 }
 
+/// So many of a thing: "1 row", "2 rows".
+pub fn counted(count: u64, what: &str) -> String {
+    let end = if count == 1 { "" } else { "s" };
+    format!("{count} {what}{end}")
+}
+
 /// A number as it was given: plain where that is short, all its digits.
 pub fn plain(value: f64) -> String {
     let size = value.abs();

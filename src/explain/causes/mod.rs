@@ -224,7 +224,10 @@ fn explaining_families<'a>(trouble: &Trouble<'a>) -> Vec<&'a Family> {
     if evidence.is_exact() {
         return Vec::new();
     }
-    let named = |family: &&Family| family.is_told() || trouble.is_of_claim(family);
+    // With a start of its own choosing and ever smaller steps many a method meets the rows.
+    let by_chance = |family: &Family| family.free && family.steps > Family::MANY_STEPS;
+    let named =
+        |family: &&Family| trouble.is_of_claim(family) || (family.is_told() && !by_chance(family));
     let mut families: Vec<&Family> = evidence.consistent.iter().filter(named).collect();
     families.sort_by_key(|family| !trouble.is_of_claim(family));
     families

@@ -141,8 +141,8 @@ pub(super) fn interpolated(rows: &Rows, names: &Names) -> Option<Candidate> {
     }
     let stride = ruler?;
     let text = format!(
-        "{} of {stride} rows lie on straight lines between the steps, which are {} {} long; write the \
-         rows of the steps, or interpolate at the order of the method",
+        "{} of {stride} rows lie on straight lines between rows {} {} apart; write the rows of the steps, \
+         or interpolate at the order of the method",
         stride - 1,
         short(spacing * stride as f64),
         names.time_unit
