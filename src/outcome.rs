@@ -4,6 +4,7 @@ mod advice;
 mod causes;
 mod evidence;
 mod methods;
+mod plots;
 mod steps;
 
 use crate::fault::Fault;
@@ -17,6 +18,7 @@ pub use evidence::{
     ClaimOutcome, Consistent, Damping, EvidenceOutcome, GrowthOutcome, GrowthSummary, RunEvidence,
 };
 pub use methods::{AliasFacts, Factor, FormFacts, MethodFacts, SourceFacts, Written};
+pub use plots::{ExactCurve, PlotPoint};
 pub use steps::{
     ChannelError, ChannelLimit, JumpGrid, LargestStep, MethodSteps, OnJumps, Rule, StepRun,
     StepsOutcome,
@@ -79,6 +81,8 @@ pub struct Audited {
     pub settings: Vec<SettingsOutcome>,
     /// Which step the limits need, as far as it can be told.
     pub advice: Option<AdviceOutcome>,
+    /// The exact solution for plots; empty where none are wanted.
+    pub curves: Vec<ExactCurve>,
 }
 
 /// Whose limits an audit has used.
@@ -103,6 +107,8 @@ pub struct RunOutcome {
     pub setting: Setting,
     /// The step, stated or read off the time stamps.
     pub step: Option<f64>,
+    /// What it cost, as stated, in any unit.
+    pub cost: Option<f64>,
     /// Rows within the window.
     pub rows: u64,
     /// How the file is laid out, in words.
@@ -126,6 +132,8 @@ pub struct ChannelOutcome {
     pub errors: Option<ErrorOutcome>,
     /// Of this channel.
     pub verdict: Verdict,
+    /// Rows for a plot; empty where none is wanted.
+    pub trace: Vec<PlotPoint>,
 }
 
 /// The errors of one channel.
@@ -217,6 +225,7 @@ impl Audited {
             causes: Vec::new(),
             settings: Vec::new(),
             advice: None,
+            curves: Vec::new(),
         }
     }
 

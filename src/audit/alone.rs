@@ -126,6 +126,7 @@ fn survey_alone(run: &Run, submission: &Submission) -> Result<(RunOutcome, Optio
         role: Role::Rung,
         setting: run.setting,
         step: None,
+        cost: run.cost,
         rows: 0,
         layout: "no rows".to_owned(),
         stamps: String::new(),

@@ -6,6 +6,7 @@
 mod advice;
 mod alone;
 mod causes;
+mod curves;
 mod evidence;
 mod growth;
 mod keep;
@@ -38,6 +39,8 @@ pub struct Plan {
     pub unreadable: Vec<NotAudited>,
     /// Threads to work with.
     pub threads: usize,
+    /// True where the outcome is to hold points for plots.
+    pub traced: bool,
 }
 
 /// One submission of a plan.
@@ -82,7 +85,7 @@ pub fn audit(plan: &Plan) -> Outcome {
                         break;
                     };
                     let few = plan.submissions.len() <= FEW;
-                    let result = audit_one(planned, &plan.library, &models, few);
+                    let result = audit_one(planned, plan, &models, few);
                     lock(&done).insert(index, result);
                 }
             });
@@ -138,11 +141,11 @@ fn model(
 /// Audits one submission; what is wrong with it as such is placed in its file.
 fn audit_one(
     planned: &Planned,
-    library: &Library,
+    plan: &Plan,
     models: &Models,
     few: bool,
 ) -> Result<Audited, Vec<Fault>> {
-    let submission = &planned.submission;
+    let (submission, library) = (&planned.submission, &plan.library);
     let place = |fault: Fault| match &planned.file {
         Some(file) => fault.in_file(file),
         None => fault,
@@ -170,7 +173,7 @@ fn audit_one(
     );
     let mut compared = Vec::new();
     for run in &submission.runs {
-        let one = compare(run, submission, &model, &mut audited.notes);
+        let one = compare(run, submission, &model, plan.traced, &mut audited.notes);
         // A complaint with a line is about the submission, one without about the run.
         compared.push(one.map_err(|fault| match (fault.line, &planned.file) {
             (Some(_), Some(file)) if fault.path.is_none() => vec![fault.in_file(file)],
@@ -202,6 +205,9 @@ fn audit_one(
     growth::measure(&model, &compared, &mut audited);
     settings::settings(&model.case, &compared, &mut audited);
     advice::advise(&model, submission, &compared, &found, few, &mut audited);
+    if plan.traced {
+        audited.curves = curves::exact_curves(&model);
+    }
     Ok(audited)
 }
 

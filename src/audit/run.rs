@@ -1,13 +1,14 @@
 //! One run of a submission: open, match, survey, compare.
 
 use super::Model;
+use super::curves::plot_points;
 use super::keep::Keeping;
 use crate::case::Case;
 use crate::compare::{Compared, Comparison, Deviation, Keeper, Limit, Spot};
 use crate::fault::Fault;
 use crate::judge;
 use crate::method::Record;
-use crate::number::counted;
+use crate::number::{Conversion, counted};
 use crate::outcome::{ChannelOutcome, ErrorOutcome, RowOutcome, RunOutcome};
 use crate::submission::{
     Column, LimitsStated, Matched, Role, Run, Setting, Submission, match_columns,
@@ -54,6 +55,7 @@ pub(super) fn compare(
     run: &Run,
     submission: &Submission,
     model: &Model,
+    traced: bool,
     notes: &mut Vec<String>,
 ) -> Result<RunCompared, Fault> {
     let placed = |fault: Fault| fault.in_file(&run.path);
@@ -64,6 +66,7 @@ pub(super) fn compare(
         role: run.role.unwrap_or(Role::Result),
         setting: run.setting,
         step,
+        cost: run.cost,
         rows: 0,
         layout: "no rows".to_owned(),
         stamps: String::new(),
@@ -124,6 +127,7 @@ pub(super) fn compare(
         step,
         least_rows: model.case.time.least_rows,
         time_unit: &model.case.time.unit,
+        traced,
     };
     let columns = channels.iter().map(|&(c, conversion, _)| (c, conversion));
     let mut keeping = Keeping::new(survey.rows, columns.collect());
@@ -150,7 +154,7 @@ pub(super) fn compare(
         .filter(|_| run.setting == Setting::Unstated));
     outcome.rows = compared.rows;
     outcome.findings = findings.into_list();
-    outcome.channels = channel_outcomes(model, &matched, &compared);
+    outcome.channels = channel_outcomes(model, &matched, &compared, &channels);
     let spacing = compared.spacing;
     let time = &model.case.time;
     let latest = time.from.to_f64().abs().max(time.to.to_f64().abs());
@@ -170,9 +174,14 @@ pub(super) fn compare(
     })
 }
 
-fn channel_outcomes(model: &Model, matched: &Matched, compared: &Compared) -> Vec<ChannelOutcome> {
+fn channel_outcomes(
+    model: &Model,
+    matched: &Matched,
+    compared: &Compared,
+    limits: &[(usize, Conversion, Limit)],
+) -> Vec<ChannelOutcome> {
     let channels = model.case.channels();
-    let outcome = |(column, deviation): (&Column, &Deviation)| {
+    let outcome = |(place, (column, deviation)): (usize, (&Column, &Deviation))| {
         let digits = deviation.resolution.describe();
         let errors = (deviation.rows > 0).then_some(ErrorOutcome {
             worst: deviation.worst,
@@ -194,12 +203,16 @@ fn channel_outcomes(model: &Model, matched: &Matched, compared: &Compared) -> Ve
             unit: channel.unit.to_owned(),
             errors,
             verdict: judge::of_deviation(deviation, compared.rows),
+            trace: compared.traces.get(place).map_or(Vec::new(), |traced| {
+                plot_points(traced, deviation, &limits[place].2)
+            }),
         }
     };
     matched
         .channels
         .iter()
         .zip(&compared.channels)
+        .enumerate()
         .map(outcome)
         .collect()
 }

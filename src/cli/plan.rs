@@ -40,6 +40,10 @@ pub(super) fn plan(arguments: &AuditArguments) -> Result<Plan, Vec<Fault>> {
         submissions: Vec::new(),
         unreadable: Vec::new(),
         threads,
+        traced: arguments
+            .write
+            .iter()
+            .any(|p| p.extension().is_some_and(|e| e == "html")),
     };
     match &arguments.case {
         Some(case) => single_files(case, arguments, &mut plan)?,
@@ -110,6 +114,7 @@ fn single_files(case: &str, arguments: &AuditArguments, plan: &mut Plan) -> Resu
                 file,
                 path: path.clone(),
                 setting,
+                cost: None,
                 role: None,
             }],
         };
@@ -235,7 +240,7 @@ fn check_reports(arguments: &AuditArguments, plan: &Plan) -> Result<(), Vec<Faul
         let folder = path
             .parent()
             .filter(|folder| !folder.as_os_str().is_empty());
-        if ending != "json" {
+        if ending != "json" && ending != "html" {
             let fault = Fault::new(format!(
                 "no report is known by the ending {}",
                 quoted(&ending)

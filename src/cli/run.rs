@@ -92,7 +92,13 @@ fn run_audit(arguments: &AuditArguments) -> Result<u8, Stop> {
     let outcome = audit(&plan);
     // Reports first: a closed pipe must not cost them.
     for path in &arguments.write {
-        write_atomically(path, audit_json(&outcome).as_bytes())?;
+        let html = path.extension().is_some_and(|ending| ending == "html");
+        let text = if html {
+            crate::report::audit_html(&outcome)
+        } else {
+            audit_json(&outcome)
+        };
+        write_atomically(path, text.as_bytes())?;
     }
     let status = if !outcome.not_audited.is_empty() {
         NOT_DONE

@@ -3,6 +3,7 @@
 use super::coverage::Coverage;
 use super::margin::{Deviation, Limit, Sums};
 use super::stride::Strides;
+use super::trace::{Trace, Traced};
 use crate::exact::{Exact, Walk};
 use crate::fault::Result;
 use crate::number::{Conversion, Decimal, Double};
@@ -28,6 +29,8 @@ pub struct Comparison<'a> {
     pub least_rows: u64,
     /// The unit of time of the case, for findings.
     pub time_unit: &'a str,
+    /// True where points for a plot are wanted.
+    pub traced: bool,
 }
 
 /// What came out for one run.
@@ -41,6 +44,8 @@ pub struct Compared {
     pub spacing: Option<f64>,
     /// In the order of the selected columns.
     pub channels: Vec<Deviation>,
+    /// Points for a plot of each of them; empty where none are wanted.
+    pub traces: Vec<Vec<Traced>>,
 }
 
 /// One row as it is handed on to whoever looks closer, in the units of the case.
@@ -130,6 +135,10 @@ impl<'a> Comparison<'a> {
             rows,
             outside,
             spacing,
+            traces: std::mem::take(&mut pass.traces)
+                .into_iter()
+                .map(Trace::conclude)
+                .collect(),
             channels: pass.conclude(),
         })
     }
@@ -181,11 +190,19 @@ struct Pass<'c, 'a, 'k> {
     walk: Walk<'a>,
     sides: Option<[Walk<'a>; 2]>,
     sums: Vec<Sums>,
+    /// One for each of them, or none at all.
+    traces: Vec<Trace>,
 }
 
 impl<'c, 'a, 'k> Pass<'c, 'a, 'k> {
     fn new(comparison: &'c Comparison<'a>, keeper: &'c mut Keeper<'k>) -> Pass<'c, 'a, 'k> {
         let sums = comparison.channels.iter().map(|_| Sums::new()).collect();
+        let trace = Trace::new(comparison.exact.from(), comparison.exact.to());
+        let traced = if comparison.traced {
+            comparison.channels.len()
+        } else {
+            0
+        };
         Pass {
             comparison,
             keeper,
@@ -193,6 +210,7 @@ impl<'c, 'a, 'k> Pass<'c, 'a, 'k> {
             walk: comparison.exact.walk(),
             sides: None,
             sums,
+            traces: vec![trace; traced],
         }
     }
 
@@ -239,6 +257,14 @@ impl<'c, 'a, 'k> Pass<'c, 'a, 'k> {
                     written,
                     error,
                     doubts: digits,
+                });
+            }
+            if let Some(trace) = self.traces.get_mut(place) {
+                trace.add(Traced {
+                    time: time.to_f64(),
+                    written: value.to_f64(),
+                    error,
+                    doubts,
                 });
             }
             sums.written(written);

@@ -9,8 +9,10 @@ mod deviation;
 mod margin;
 mod order;
 mod stride;
+mod trace;
 
 pub use convergence::{Convergence, grid_convergence, order_of_three};
 pub use deviation::{Compared, Comparison, Keeper, Kept, KeptValue};
 pub use margin::{Deviation, Limit, Margin, Spot};
 pub use order::{Pair, Rung, Sight, agreeing, observe};
+pub use trace::Traced;

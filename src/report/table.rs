@@ -131,7 +131,7 @@ fn badness(channel: &ChannelOutcome) -> (Verdict, f64) {
     (channel.verdict, used)
 }
 
-fn worse(a: &ChannelOutcome, b: &ChannelOutcome) -> Ordering {
+pub(super) fn worse(a: &ChannelOutcome, b: &ChannelOutcome) -> Ordering {
     let ((a, a_used), (b, b_used)) = (badness(a), badness(b));
     a.cmp(&b).then(a_used.total_cmp(&b_used))
 }
@@ -186,7 +186,7 @@ fn cells(
     ]
 }
 
-fn step_text(run: &RunOutcome) -> String {
+pub(super) fn step_text(run: &RunOutcome) -> String {
     match (run.setting, run.step) {
         (Setting::Tolerance(tolerance), _) => format!("tol. {}", plain(tolerance)),
         (_, Some(step)) => plain_short(step),
@@ -244,7 +244,7 @@ fn short_percent(percent: f64) -> String {
     }
 }
 
-fn order_text(submission: &Audited) -> String {
+pub(super) fn order_text(submission: &Audited) -> String {
     // The channel that decides: the worst verdict first, else the lowest order.
     let low = |order: &OrderOutcome| order.observed.map_or(f64::INFINITY, |(value, ..)| value);
     let all_undecided = submission.order_verdict == Some(Verdict::Undecided);
@@ -433,7 +433,7 @@ fn summary(outcome: &Outcome) -> String {
     format!("{count} {noun}: {}. {word}", parts.join(", "))
 }
 
-fn scope(outcome: &Outcome) -> String {
+pub(super) fn scope(outcome: &Outcome) -> String {
     let drugs = outcome
         .submissions
         .iter()

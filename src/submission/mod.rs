@@ -126,6 +126,8 @@ pub struct Run {
     pub path: PathBuf,
     /// Where its rungs come from.
     pub setting: Setting,
+    /// What the run cost, in a unit of the submitter's own: evaluations, seconds.
+    pub cost: Option<f64>,
     /// Result or rung, if stated.
     pub role: Option<Role>,
 }

@@ -64,6 +64,7 @@ struct RunEntry {
     file: Spanned<String>,
     step: Option<Spanned<f64>>,
     tolerance: Option<Spanned<f64>>,
+    cost: Option<Spanned<f64>>,
     role: Option<Spanned<String>>,
 }
 
@@ -469,13 +470,17 @@ impl Reader<'_> {
     fn run(&mut self, entry: Spanned<RunEntry>) -> Option<Run> {
         let offset = entry.span().start;
         let entry = entry.into_inner();
-        for value in [&entry.step, &entry.tolerance].into_iter().flatten() {
+        for value in [&entry.step, &entry.tolerance, &entry.cost]
+            .into_iter()
+            .flatten()
+        {
             if !(*value.get_ref() > 0.0 && value.get_ref().is_finite()) {
-                let text = "`step` and `tolerance` must be finite and above zero";
+                let text = "`step`, `tolerance` and `cost` must be finite and above zero";
                 self.complain(text, value.span().start);
             }
         }
         let number = |value: Option<Spanned<f64>>| value.map(Spanned::into_inner);
+        let cost = number(entry.cost);
         let setting = match (number(entry.step), number(entry.tolerance)) {
             (Some(_), Some(_)) => {
                 self.complain("a run has either `step` or `tolerance`, not both", offset);
@@ -493,6 +498,7 @@ impl Reader<'_> {
                 file,
                 path,
                 setting,
+                cost,
                 role,
             }),
             Err(fault) => {

@@ -83,6 +83,7 @@ fn run(files: &[(Value, Option<&str>)]) -> Vec<Audited> {
                         _ => Setting::Unstated,
                     },
                     role: None,
+                    cost: None,
                 }],
                 ..Submission::default()
             },
@@ -95,6 +96,7 @@ fn run(files: &[(Value, Option<&str>)]) -> Vec<Audited> {
         submissions: files.iter().enumerate().map(planned).collect(),
         unreadable: Vec::new(),
         threads: 2,
+        traced: false,
     });
     assert!(outcome.not_audited.is_empty(), "{:?}", outcome.not_audited);
     outcome.submissions

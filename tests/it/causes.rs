@@ -109,6 +109,7 @@ pub fn judge(
             path,
             setting: step.map_or(Setting::Unstated, Setting::Step),
             role: Some(Role::Result),
+            cost: None,
         }],
         ..Submission::default()
     };
@@ -122,6 +123,7 @@ pub fn judge(
         }],
         unreadable: Vec::new(),
         threads: 1,
+        traced: false,
     };
     let outcome = audit(&plan);
     assert!(outcome.not_audited.is_empty(), "{:?}", outcome.not_audited);

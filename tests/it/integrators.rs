@@ -32,6 +32,7 @@ fn submission(case: &str, files: &[(&str, Setting)], limits: LimitsStated) -> Su
         path: folder().join("runs").join(file),
         setting: *setting,
         role: None,
+        cost: None,
     };
     Submission {
         case: Some(case.to_owned()),
@@ -56,6 +57,7 @@ fn run(submissions: Vec<Submission>) -> Outcome {
         submissions,
         unreadable: Vec::new(),
         threads: 2,
+        traced: false,
     });
     assert!(outcome.not_audited.is_empty(), "{:?}", outcome.not_audited);
     outcome

@@ -60,3 +60,6 @@ mod growth;
 
 /// Which step or error setting a submission is told to take, and that it helps.
 mod advice;
+
+/// The HTML report as a strict parser sees it.
+mod html;

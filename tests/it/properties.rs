@@ -117,6 +117,7 @@ fn planted(case: &Case, order: f64, size: f64, digits: usize) -> Outcome {
             path,
             setting: Setting::Step(step),
             role: None,
+            cost: None,
         });
     }
     std::fs::write(folder.join("cases/o.toml"), case_file(case)).unwrap();
@@ -151,6 +152,7 @@ fn planted(case: &Case, order: f64, size: f64, digits: usize) -> Outcome {
         submissions: vec![planned],
         unreadable: Vec::new(),
         threads: 1,
+        traced: false,
     });
     std::fs::remove_dir_all(&folder).unwrap();
     outcome

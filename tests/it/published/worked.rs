@@ -81,6 +81,7 @@ fn audited(name: &str, library: Library, case: &str, claims: &str, runs: &[Writt
         submissions: vec![planned],
         unreadable: Vec::new(),
         threads: 1,
+        traced: false,
     };
     let mut outcome = audit(&plan);
     assert!(

@@ -1,0 +1,129 @@
+//! Points for a plot, gathered while the rows go by: the window is cut into equal
+//! stretches, and of each the rows stay that a thinner plot would hide — the smallest and
+//! the largest value and the largest error. However long the file is, the worst row of
+//! all is among them.
+
+use crate::number::Double;
+
+/// Stretches of the window: two for every few pixels of a plot.
+const STRETCHES: usize = 120;
+
+/// One row of one channel, in the units of the case.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct Traced {
+    /// Its time.
+    pub time: f64,
+    /// The value as written.
+    pub written: f64,
+    /// `written - exact`.
+    pub error: f64,
+    /// What its digits resolve: as their pattern says, and in full.
+    pub doubts: [f64; 2],
+}
+
+/// Gathers the points of one channel.
+#[derive(Clone, Debug)]
+pub(super) struct Trace {
+    from: f64,
+    span: f64,
+    stretches: Vec<Option<Stretch>>,
+}
+
+#[derive(Clone, Copy, Debug)]
+struct Stretch {
+    first: Traced,
+    smallest: Traced,
+    largest: Traced,
+    worst: Traced,
+    last: Traced,
+}
+
+impl Trace {
+    pub(super) fn new(from: Double, to: Double) -> Trace {
+        Trace {
+            from: from.to_f64(),
+            span: (to - from).to_f64(),
+            stretches: vec![None; STRETCHES],
+        }
+    }
+
+    pub(super) fn add(&mut self, row: Traced) {
+        let share = (row.time - self.from) / self.span;
+        let place = (share * STRETCHES as f64).clamp(0.0, STRETCHES as f64 - 1.0) as usize;
+        match &mut self.stretches[place] {
+            Some(stretch) => stretch.add(row),
+            empty => {
+                *empty = Some(Stretch {
+                    first: row,
+                    smallest: row,
+                    largest: row,
+                    worst: row,
+                    last: row,
+                });
+            }
+        }
+    }
+
+    /// In the order of time.
+    pub(super) fn conclude(self) -> Vec<Traced> {
+        let mut points = Vec::new();
+        for stretch in self.stretches.into_iter().flatten() {
+            let mut rows = [
+                stretch.first,
+                stretch.smallest,
+                stretch.largest,
+                stretch.worst,
+                stretch.last,
+            ];
+            rows.sort_by(|a, b| a.time.total_cmp(&b.time));
+            for row in rows {
+                if points.last().is_none_or(|last: &Traced| *last != row) {
+                    points.push(row);
+                }
+            }
+        }
+        points
+    }
+}
+
+impl Stretch {
+    fn add(&mut self, row: Traced) {
+        if row.written < self.smallest.written {
+            self.smallest = row;
+        }
+        if row.written > self.largest.written {
+            self.largest = row;
+        }
+        if row.error.abs() > self.worst.error.abs() {
+            self.worst = row;
+        }
+        self.last = row;
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    /// One bad row in a hundred thousand and the extremes of a spike stay.
+    #[test]
+    fn extremes_stay_however_long_the_file_is() {
+        let mut trace = Trace::new(Double::from(0.0), Double::from(1.0));
+        for row in 0..100_000 {
+            let time = f64::from(row) / 1e5;
+            let odd = row == 54_321;
+            trace.add(Traced {
+                time,
+                written: if odd { 7.0 } else { time },
+                error: if odd { -7.0 } else { 1e-9 * time },
+                doubts: [0.0; 2],
+            });
+        }
+        let points = trace.conclude();
+        assert!(points.len() <= 5 * STRETCHES, "{}", points.len());
+        assert!(points.iter().any(|p| p.error == -7.0 && p.written == 7.0));
+        assert!(points.windows(2).all(|pair| pair[0].time < pair[1].time));
+        assert_eq!(points[0].time, 0.0);
+        assert_eq!(points[points.len() - 1].time, 0.99999);
+    }
+}

@@ -1,0 +1,199 @@
+//! What is wrong and where, before anything else, and the table of all submissions.
+
+use maud::{Markup, html};
+
+use super::{anchor, outside};
+use crate::judge::{Support, Verdict};
+use crate::number::{counted, measured};
+use crate::outcome::{Audited, ChannelOutcome, Outcome, RunOutcome};
+use crate::report::table::{order_text, used_text, worse};
+use crate::submission::{Expect, Role};
+
+/// Submissions named on top.
+const MOST_TROUBLES: usize = 12;
+/// Files of one of them.
+const MOST_FILES: usize = 6;
+
+/// The whole in a sentence.
+pub(super) fn headline(outcome: &Outcome) -> String {
+    let all = outcome.submissions.len() + outcome.not_audited.len();
+    let wrong = troubled(outcome).count() + outcome.not_audited.len();
+    let things = if all == 1 {
+        "submission is"
+    } else {
+        "submissions are"
+    };
+    match (all, wrong) {
+        (0, _) => "nothing was audited".to_owned(),
+        (1, 0) => "the submission is in order".to_owned(),
+        (1, _) => "the submission is not in order".to_owned(),
+        (_, 0) => format!("all {all} {things} in order"),
+        _ => format!("{wrong} of {all} {things} not in order"),
+    }
+}
+
+/// In the order of the report, with their numbers.
+fn troubled(outcome: &Outcome) -> impl Iterator<Item = (usize, &Audited)> {
+    let numbered = outcome.submissions.iter().enumerate();
+    numbered.filter(|(_, audited)| !audited.in_order())
+}
+
+/// Every submission that is not in order with what is wrong and the likely cause.
+pub(super) fn troubles(outcome: &Outcome) -> Markup {
+    let count = troubled(outcome).count();
+    html! {
+        @if count > 0 || !outcome.not_audited.is_empty() {
+            ul class="troubles" {
+                @for (number, audited) in troubled(outcome).take(MOST_TROUBLES) {
+                    li {
+                        (badge(audited)) " "
+                        a href={ "#" (anchor(number)) } { (outside(&audited.name)) }
+                        @for reason in first_reasons(audited) { "; " (reason) }
+                        @if let Some(cause) = audited.causes.first() {
+                            span class="cause" { " Likely cause: " (outside(&cause.text)) "." }
+                        }
+                    }
+                }
+                @for (number, audited) in troubled(outcome).skip(MOST_TROUBLES) {
+                    li class="brief" { (badge(audited)) " " a href={ "#" (anchor(number)) } { (outside(&audited.name)) } }
+                }
+                @for missing in outcome.not_audited.iter().take(MOST_TROUBLES) {
+                    li {
+                        span class="badge fail" { "not audited" } " " strong { (outside(&missing.name)) }
+                        @for fault in missing.faults.iter().take(3) { " " (outside(&fault.to_string())) }
+                    }
+                }
+                @if outcome.not_audited.len() > MOST_TROUBLES {
+                    li { (outcome.not_audited.len() - MOST_TROUBLES) " more were not audited; the JSON report has all" }
+                }
+            }
+        }
+        (controls(outcome))
+    }
+}
+
+/// Those that are wrong on purpose, and why they are.
+fn controls(outcome: &Outcome) -> Markup {
+    let numbered = outcome.submissions.iter().enumerate();
+    let controls: Vec<(usize, &Audited)> = numbered
+        .filter(|(_, audited)| audited.in_order() && audited.expect != Expect::Pass)
+        .collect();
+    html! {
+        @if !controls.is_empty() {
+            details open[controls.len() <= MOST_TROUBLES] {
+                summary { (counted(controls.len() as u64, "control")) ", as expected" }
+                ul class="troubles controls" {
+                    @for (number, audited) in controls {
+                        li {
+                            (badge(audited)) " "
+                            a href={ "#" (anchor(number)) } { (outside(&audited.name)) }
+                            @if let Some(reason) = audited.reasons.first() { ": " (outside(reason)) }
+                        }
+                    }
+                }
+            }
+        }
+    }
+}
+
+/// What is wrong in each file, else the first reason.
+fn first_reasons(audited: &Audited) -> Vec<String> {
+    match audited.expect {
+        Expect::Pass => {}
+        Expect::Fail => return vec!["was expected to fail".to_owned()],
+        Expect::Undecided => return vec!["was expected to stay undecided".to_owned()],
+    }
+    let of_file = |run: &RunOutcome| {
+        let mut reasons = audited.reasons.iter();
+        reasons.find(|reason| reason.starts_with(&format!("{}:", run.file)))
+    };
+    let files = audited.runs.iter().filter_map(of_file).take(MOST_FILES);
+    let reasons: Vec<String> = files.map(|reason| outside(reason)).collect();
+    if reasons.is_empty() {
+        let first = audited.reasons.first();
+        return first.map(|reason| outside(reason)).into_iter().collect();
+    }
+    reasons
+}
+
+/// The verdict in a word, with a shape of its own for those who see no colour.
+pub(super) fn badge(audited: &Audited) -> Markup {
+    let word = audited.verdict.word();
+    let expected = audited.expect != Expect::Pass && audited.in_order();
+    html! {
+        span class={ "badge " (if expected { "control" } else { word }) } {
+            (match audited.verdict { Verdict::Pass => "✓ ", Verdict::Fail => "✗ ", Verdict::Undecided => "? " })
+            (word)
+            @if expected { ", as expected" }
+        }
+    }
+}
+
+/// All submissions, a row each; those that are not in order first.
+pub(super) fn table(outcome: &Outcome) -> Markup {
+    let mut rows: Vec<(usize, &Audited)> = outcome.submissions.iter().enumerate().collect();
+    rows.sort_by_key(|(_, audited)| audited.in_order());
+    html! {
+        section aria-labelledby="all" {
+            h2 id="all" { "All submissions" }
+            div class="wide" tabindex="0" role="region" aria-labelledby="all" {
+                table {
+                    thead {
+                        tr {
+                            th scope="col" { "verdict" }
+                            th scope="col" { "submission" }
+                            th scope="col" { "case" }
+                            th scope="col" { "producer" }
+                            th scope="col" { "channel" }
+                            th scope="col" class="number" { "worst error" }
+                            th scope="col" class="number" { "limit used" }
+                            th scope="col" { "order" }
+                            th scope="col" { "claims" }
+                        }
+                    }
+                    tbody { @for (number, audited) in rows { (row(number, audited)) } }
+                }
+            }
+        }
+    }
+}
+
+fn row(number: usize, audited: &Audited) -> Markup {
+    let worst = worst(audited);
+    let errors = worst.and_then(|(_, channel)| Some((channel, channel.errors.as_ref()?)));
+    html! {
+        tr {
+            td { (badge(audited)) }
+            th scope="row" { a href={ "#" (anchor(number)) } { (outside(&audited.name)) } }
+            td { (audited.case.as_deref().unwrap_or("none")) }
+            td { (outside(audited.producer.as_deref().unwrap_or(""))) }
+            td { @if let Some((_, channel)) = worst { (outside(&channel.name)) } }
+            td class="number" {
+                @if let Some((channel, e)) = errors { (measured(e.worst, e.resolution)) " " (channel.unit) }
+            }
+            td class="number" {
+                @if let Some((channel, e)) = errors {
+                    @if channel.verdict == Verdict::Undecided { "open" } @else { (used_text(e.limit_used)) }
+                }
+            }
+            td { (order_text(audited)) }
+            td { (claims(audited)) }
+        }
+    }
+}
+
+/// What the rows say of all claims together.
+fn claims(audited: &Audited) -> &'static str {
+    let support = audited
+        .evidence
+        .as_ref()
+        .and_then(|evidence| evidence.support);
+    support.map_or("", Support::word)
+}
+
+/// The channel that decides, with its run.
+fn worst(audited: &Audited) -> Option<(&RunOutcome, &ChannelOutcome)> {
+    let results = audited.runs.iter().filter(|run| run.role == Role::Result);
+    let channels = results.flat_map(|run| run.channels.iter().map(move |channel| (run, channel)));
+    channels.max_by(|a, b| worse(a.1, b.1))
+}

@@ -1,0 +1,173 @@
+//! Over time: the exact curve with the written points on it, and the errors beside limit
+//! and resolution.
+
+use super::axis::Axis;
+use super::draw::{ACROSS, Look, Plot, Series, UP};
+use crate::number::{measured, plain};
+use crate::outcome::{Audited, ChannelOutcome, PlotPoint, RunOutcome};
+
+/// Runs beside the one that is judged.
+const MOST_OTHERS: usize = 4;
+/// Written values so many times beyond the range of the exact ones are drawn at the edge.
+const BEYOND: f64 = 3.0;
+
+/// Exact curve and written points of one channel.
+pub(super) fn values(
+    audited: &Audited,
+    run: &RunOutcome,
+    channel: &ChannelOutcome,
+) -> Option<Plot> {
+    let errors = channel.errors.as_ref()?;
+    let curve = audited.curves.iter().find(|c| c.channel == channel.name)?;
+    let written = || channel.trace.iter().map(|point| point.written);
+    let exact = || curve.points.iter().map(|(_, x)| *x);
+    let (low, high) = exact().fold((f64::INFINITY, f64::NEG_INFINITY), |(low, high), x| {
+        (low.min(x), high.max(x))
+    });
+    let room = BEYOND * (high - low).max(1e-3 * high.abs());
+    let seen = written().filter(|x| (low - room..=high + room).contains(x));
+    let beyond = written().any(|x| !(low - room..=high + room).contains(&x));
+    let mut finding = format!(
+        "{}: the largest error is {} {} at t = {} {}.",
+        run.file,
+        measured(errors.worst, errors.resolution),
+        channel.unit,
+        plain(errors.at),
+        audited.time_unit
+    );
+    if beyond {
+        finding += " Values far beyond the exact ones are drawn at the edge.";
+    }
+    Some(Plot {
+        title: format!("{} over time.", channel.name),
+        finding,
+        across: time_axis(audited, curve.points.iter().map(|(t, _)| *t)),
+        up: Axis::linear(label(&channel.name, &channel.unit), exact().chain(seen), UP),
+        series: vec![
+            Series {
+                look: Look::Exact,
+                name: "exact".to_owned(),
+                points: curve.points.clone(),
+                dots: false,
+            },
+            Series {
+                look: Look::Written,
+                name: "written".to_owned(),
+                points: channel.trace.iter().map(|p| (p.time, p.written)).collect(),
+                dots: true,
+            },
+        ],
+    })
+}
+
+/// Errors of one channel in all runs, with limit and resolution of the one that is judged.
+pub(super) fn errors(
+    audited: &Audited,
+    run: &RunOutcome,
+    channel: &ChannelOutcome,
+) -> Option<Plot> {
+    let errors = channel.errors.as_ref()?;
+    if channel.trace.is_empty() {
+        return None;
+    }
+    let of = |read: fn(&PlotPoint) -> f64| -> Vec<(f64, f64)> {
+        channel.trace.iter().map(|p| (p.time, read(p))).collect()
+    };
+    let line = |look, name: &str, points| Series {
+        look,
+        name: name.to_owned(),
+        points,
+        dots: false,
+    };
+    let mut series = vec![
+        line(Look::Resolution, "resolution", steady(of(|p| p.resolution))),
+        line(Look::Limit, "limit", steady(of(|p| p.limit))),
+    ];
+    let others = audited.runs.iter().filter(|other| other.file != run.file);
+    for (number, other) in others.take(MOST_OTHERS).enumerate() {
+        if let Some(same) = other.channels.iter().find(|c| c.name == channel.name) {
+            let points = peaks(&same.trace);
+            series.push(line(Look::Other(number), &other.file, points));
+        }
+    }
+    series.push(line(Look::Written, &run.file, peaks(&channel.trace)));
+    let verdict = if errors.limit_used > 1.0 {
+        "breaks"
+    } else {
+        "keeps"
+    };
+    let finding = format!(
+        "{} {verdict} the limit: {} of it is used at t = {} {}.",
+        run.file,
+        super::super::table::used_text(errors.limit_used),
+        plain(errors.decisive.at),
+        audited.time_unit
+    );
+    let shown = series.iter().flat_map(|s| s.points.iter().map(|p| p.1));
+    let shown: Vec<f64> = shown.collect();
+    Some(Plot {
+        title: format!("Errors of {}.", channel.name),
+        finding,
+        across: time_axis(audited, channel.trace.iter().map(|p| p.time)),
+        up: Axis::log(
+            label(&format!("|error| of {}", channel.name), &channel.unit),
+            shown.into_iter(),
+            UP,
+        ),
+        series,
+    })
+}
+
+fn time_axis(audited: &Audited, times: impl Iterator<Item = f64>) -> Axis {
+    Axis::tight(label("t", &audited.time_unit), times, ACROSS)
+}
+
+/// Quantity and unit.
+pub(super) fn label(name: &str, unit: &str) -> String {
+    let name: String = name.chars().take(30).collect();
+    match unit {
+        "" | "1" => name,
+        _ => format!("{name} in {unit}"),
+    }
+}
+
+/// The largest errors: one for every few units of the page.
+fn peaks(trace: &[PlotPoint]) -> Vec<(f64, f64)> {
+    let (Some(first), Some(last)) = (trace.first(), trace.last()) else {
+        return Vec::new();
+    };
+    let width = (last.time - first.time) / 90.0;
+    let mut points: Vec<(f64, f64)> = Vec::new();
+    let mut cell = -1.0;
+    for point in trace {
+        let (error, own) = (
+            point.error.abs(),
+            ((point.time - first.time) / width).floor(),
+        );
+        match points.last_mut() {
+            Some(kept) if own == cell => {
+                if error > kept.1 || !kept.1.is_finite() {
+                    *kept = (point.time, error);
+                }
+            }
+            _ => points.push((point.time, error)),
+        }
+        cell = own;
+    }
+    points
+}
+
+/// A line that never changes needs its ends only.
+fn steady(points: Vec<(f64, f64)>) -> Vec<(f64, f64)> {
+    let mut kept: Vec<(f64, f64)> = Vec::new();
+    for (index, &point) in points.iter().enumerate() {
+        let same = |other: Option<&(f64, f64)>| {
+            other.is_some_and(|other| (other.1 / point.1 - 1.0).abs() < 0.02)
+        };
+        if same(kept.last()) && same(points.get(index + 1)) {
+            continue;
+        }
+        kept.push(point);
+    }
+    kept
+}
