@@ -155,17 +155,7 @@ fn edits(a: &str, b: &str, most: usize) -> usize {
     if a.len().abs_diff(b.len()) > most {
         return most + 1;
     }
-    let mut row: Vec<usize> = (0..=b.len()).collect();
-    for (i, x) in a.iter().enumerate() {
-        let mut diagonal = row[0];
-        row[0] = i + 1;
-        for (j, y) in b.iter().enumerate() {
-            let replaced = diagonal + usize::from(x != y);
-            diagonal = row[j + 1];
-            row[j + 1] = replaced.min(row[j] + 1).min(row[j + 1] + 1);
-        }
-    }
-    row[b.len()]
+    strsim::generic_levenshtein(&a, &b)
 }
 
 #[cfg(test)]

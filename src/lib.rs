@@ -62,7 +62,9 @@ pub mod report;
 pub mod submission;
 pub mod trajectory;
 
+pub use audit::{Rows, audit_rows};
 pub use case::{Case, Library};
 pub use exact::{Exact, Value};
 pub use fault::Fault;
 pub use judge::Verdict;
+pub use submission::Claims;

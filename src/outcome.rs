@@ -31,6 +31,8 @@ pub struct Outcome {
     pub submissions: Vec<Audited>,
     /// Submissions that could not be audited, with the complaints.
     pub not_audited: Vec<NotAudited>,
+    /// Submissions that nobody looked at, since the audit was interrupted.
+    pub left: usize,
 }
 
 /// A submission that could not be audited.
@@ -252,7 +254,7 @@ impl Outcome {
     /// True where everything was audited and is as expected, and there was anything.
     pub fn in_order(&self) -> bool {
         let all = self.submissions.iter().all(Audited::in_order);
-        all && self.not_audited.is_empty() && !self.submissions.is_empty()
+        all && self.left == 0 && self.not_audited.is_empty() && !self.submissions.is_empty()
     }
 }
 

@@ -10,7 +10,7 @@ use crate::judge::{self, Verdict};
 use crate::method;
 use crate::outcome::{Audited, LimitsFrom, OrderOutcome, RunOutcome};
 use crate::submission::{ColumnName, Role, Run, Setting, Submission};
-use crate::trajectory::{Findings, Grid, Kind, Selection, Source, Survey, is_time_name, open};
+use crate::trajectory::{Findings, Grid, Kind, Selection, Source, Survey, is_time_name};
 
 /// Stamps at which the runs are compared, at most.
 const MOST_STAMPS: u64 = 2000;
@@ -119,7 +119,7 @@ fn columns(
 
 /// Faults and step of one run.
 fn survey_alone(run: &Run, submission: &Submission) -> Result<(RunOutcome, Option<f64>), Fault> {
-    let source = open(&run.path)?;
+    let source = run.open()?;
     let mut findings = Findings::default();
     let mut outcome = RunOutcome {
         file: run.file.clone(),
@@ -162,7 +162,7 @@ fn sample(
     let mut runs = Vec::new();
     for &(setting, run) in order {
         let placed = |fault: Fault| vec![fault.in_file(&run.path)];
-        let source = open(&run.path).map_err(placed)?;
+        let source = run.open().map_err(placed)?;
         let Some((channels, survey)) = columns(&source, submission).map_err(placed)? else {
             continue;
         };

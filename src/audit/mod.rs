@@ -10,9 +10,11 @@ mod curves;
 mod evidence;
 mod growth;
 mod keep;
+mod rows;
 mod run;
 mod settings;
 mod verdict;
+mod watch;
 
 use std::collections::BTreeMap;
 use std::path::PathBuf;
@@ -24,9 +26,13 @@ use crate::exact::{Exact, approx_time_scales};
 use crate::fault::Fault;
 use crate::method::Linear;
 use crate::outcome::{Audited, LimitsFrom, NotAudited, Outcome};
+
 use crate::submission::{LimitStated, Submission};
 use run::compare;
 use verdict::{assign_roles, judge_orders, judge_runs, note_hidden_rungs};
+
+pub use rows::{Rows, audit_rows};
+pub use watch::Watch;
 
 /// What is to be audited.
 #[derive(Debug)]
@@ -73,9 +79,13 @@ type Models = Mutex<BTreeMap<String, Arc<Model>>>;
 
 /// Audits everything in the plan. The outcome does not depend on the threads.
 pub fn audit(plan: &Plan) -> Outcome {
+    audit_watched(plan, &Watch::default())
+}
+
+/// The same for somebody who watches, and who may stop waiting.
+pub fn audit_watched(plan: &Plan, watch: &Watch) -> Outcome {
     let models = Models::default();
     let next = AtomicUsize::new(0);
-    let done = Mutex::new(BTreeMap::new());
     std::thread::scope(|scope| {
         for _ in 0..plan.threads.clamp(1, plan.submissions.len().max(1)) {
             scope.spawn(|| {
@@ -84,27 +94,12 @@ pub fn audit(plan: &Plan) -> Outcome {
                     let Some(planned) = plan.submissions.get(index) else {
                         break;
                     };
-                    let few = plan.submissions.len() <= FEW;
-                    let result = audit_one(planned, plan, &models, few);
-                    lock(&done).insert(index, result);
+                    watch.finished(index, audit_one(planned, plan, &models, watch));
                 }
             });
         }
     });
-    let mut outcome = Outcome {
-        submissions: Vec::new(),
-        not_audited: plan.unreadable.clone(),
-    };
-    for (index, result) in std::mem::take(&mut *lock(&done)) {
-        match result {
-            Ok(audited) => outcome.submissions.push(audited),
-            Err(faults) => {
-                let name = plan.submissions[index].name.clone();
-                outcome.not_audited.push(NotAudited { name, faults });
-            }
-        }
-    }
-    outcome
+    watch.outcome(plan)
 }
 
 /// A lock whose data is whole even if another thread has panicked.
@@ -143,9 +138,10 @@ fn audit_one(
     planned: &Planned,
     plan: &Plan,
     models: &Models,
-    few: bool,
+    watch: &Watch,
 ) -> Result<Audited, Vec<Fault>> {
     let (submission, library) = (&planned.submission, &plan.library);
+    let few = plan.submissions.len() <= FEW;
     let place = |fault: Fault| match &planned.file {
         Some(file) => fault.in_file(file),
         None => fault,
@@ -174,6 +170,7 @@ fn audit_one(
     let mut compared = Vec::new();
     for run in &submission.runs {
         let one = compare(run, submission, &model, plan.traced, &mut audited.notes);
+        watch.compared(one.as_ref().map_or(0, |one| one.bytes));
         // A complaint with a line is about the submission, one without about the run.
         compared.push(one.map_err(|fault| match (fault.line, &planned.file) {
             (Some(_), Some(file)) if fault.path.is_none() => vec![fault.in_file(file)],

@@ -13,7 +13,7 @@ use crate::outcome::{ChannelOutcome, ErrorOutcome, RowOutcome, RunOutcome};
 use crate::submission::{
     Column, LimitsStated, Matched, Role, Run, Setting, Submission, match_columns,
 };
-use crate::trajectory::{Findings, Grid, Kind, Survey, open};
+use crate::trajectory::{Findings, Grid, Kind, Survey};
 
 /// One run with what the ladder needs of it.
 pub(super) struct RunCompared {
@@ -27,6 +27,8 @@ pub(super) struct RunCompared {
     pub spacing: Option<f64>,
     /// Rows that are asked for their method.
     pub record: Record,
+    /// Size of the file.
+    pub bytes: u64,
 }
 
 /// The limit of one channel: what the submission states, else what the case has. A
@@ -59,7 +61,7 @@ pub(super) fn compare(
     notes: &mut Vec<String>,
 ) -> Result<RunCompared, Fault> {
     let placed = |fault: Fault| fault.in_file(&run.path);
-    let source = open(&run.path)?;
+    let source = run.open()?;
     let step = run.setting.step();
     let mut outcome = RunOutcome {
         file: run.file.clone(),
@@ -84,6 +86,7 @@ pub(super) fn compare(
             latest: 0.0,
             spacing: None,
             record: Record::default(),
+            bytes: source.size(),
         });
     };
     let matched = match_columns(&model.case, &layout, &submission.columns)?;
@@ -171,6 +174,7 @@ pub(super) fn compare(
         latest,
         spacing,
         record,
+        bytes: source.size(),
     })
 }
 

@@ -4,6 +4,8 @@ use std::path::PathBuf;
 
 use clap::{Args, Parser, Subcommand, ValueEnum};
 
+use super::manual::{CompletionArguments, ManualArguments};
+
 /// Audits what a time-stepping simulator wrote: errors against exact solutions of
 /// linear models, order across steps, verdicts against limits.
 #[derive(Debug, Parser)]
@@ -39,6 +41,10 @@ pub enum Command {
     Methods(MethodsArguments),
     /// Shows which step a case needs, method by method
     Steps(StepsArguments),
+    /// Writes completions for a shell
+    Completions(CompletionArguments),
+    /// Writes a manual page
+    Manual(ManualArguments),
 }
 
 /// Where cases come from.
@@ -86,6 +92,9 @@ pub struct AuditArguments {
     /// Writes a report whose kind follows from its ending: .json (repeatable)
     #[arg(long, value_name = "FILE")]
     pub write: Vec<PathBuf>,
+    /// Prints nothing but complaints; reports and the exit status tell
+    #[arg(long, short)]
+    pub quiet: bool,
     /// Threads to work with [default: all processors]
     #[arg(long, value_name = "N", value_parser = clap::value_parser!(u16).range(1..=256))]
     pub threads: Option<u16>,

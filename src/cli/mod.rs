@@ -1,10 +1,12 @@
 //! The command line: what was typed, what will be done, and the doing.
 
 mod args;
+mod manual;
 mod methods;
 mod plan;
 mod run;
 mod steps;
+mod watched;
 
 pub use args::Arguments;
 pub use run::run;

@@ -116,6 +116,7 @@ fn single_files(case: &str, arguments: &AuditArguments, plan: &mut Plan) -> Resu
                 setting,
                 cost: None,
                 role: None,
+                text: None,
             }],
         };
         let name = path.to_string_lossy().into_owned();

@@ -7,9 +7,9 @@ use super::args::{
     Arguments, AuditArguments, CaseArguments, CaseChoice, CasesArguments, Command, ExactArguments,
     MethodsArguments, StepsArguments,
 };
+use super::manual::{CompletionArguments, ManualArguments, completions, manual};
 use super::methods::methods_text;
-use super::{plan, steps};
-use crate::audit::audit;
+use super::{plan, steps, watched};
 use crate::case::{Case, Library, Replacements};
 use crate::exact::{Exact, approx_time_scales};
 use crate::fault::{Fault, quoted};
@@ -63,6 +63,8 @@ pub fn run(arguments: &Arguments) -> ExitCode {
         Command::Exact(arguments) => run_exact(arguments),
         Command::Methods(arguments) => run_methods(arguments),
         Command::Steps(arguments) => run_steps(arguments),
+        Command::Completions(arguments) => run_completions(arguments),
+        Command::Manual(arguments) => run_manual(arguments),
     };
     let status = match result {
         Ok(status) => status,
@@ -89,7 +91,7 @@ pub fn run(arguments: &Arguments) -> ExitCode {
 
 fn run_audit(arguments: &AuditArguments) -> Result<u8, Stop> {
     let plan = plan::plan(arguments)?;
-    let outcome = audit(&plan);
+    let outcome = watched::audit(plan, arguments.quiet);
     // Reports first: a closed pipe must not cost them.
     for path in &arguments.write {
         let html = path.extension().is_some_and(|ending| ending == "html");
@@ -100,13 +102,16 @@ fn run_audit(arguments: &AuditArguments) -> Result<u8, Stop> {
         };
         write_atomically(path, text.as_bytes())?;
     }
-    let status = if !outcome.not_audited.is_empty() {
+    let status = if !outcome.not_audited.is_empty() || outcome.left > 0 {
         NOT_DONE
     } else if outcome.in_order() {
         IN_ORDER
     } else {
         NOT_IN_ORDER
     };
+    if arguments.quiet {
+        return Ok(status);
+    }
     match print(&audit_text(&outcome, screen())) {
         // The verdict stands whether or not anybody reads the table to its end.
         Err(error) if error.kind() == io::ErrorKind::BrokenPipe => Ok(status),
@@ -204,6 +209,17 @@ fn run_steps(arguments: &StepsArguments) -> Result<u8, Stop> {
     } else {
         print(&steps_text(&case, &outcome, screen()))?;
     }
+    Ok(IN_ORDER)
+}
+
+fn run_completions(arguments: &CompletionArguments) -> Result<u8, Stop> {
+    io::stdout().write_all(&completions(arguments))?;
+    Ok(IN_ORDER)
+}
+
+fn run_manual(arguments: &ManualArguments) -> Result<u8, Stop> {
+    let page = manual(arguments)?;
+    io::stdout().write_all(&page)?;
     Ok(IN_ORDER)
 }
 

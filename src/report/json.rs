@@ -35,6 +35,7 @@ pub fn audit_json(outcome: &Outcome) -> String {
                 faults: missing.faults.iter().map(ToString::to_string).collect(),
             })
             .collect(),
+        left: outcome.left,
         scope: SCOPE.to_owned(),
     };
     text(&report)

@@ -419,12 +419,15 @@ fn summary(outcome: &Outcome) -> String {
     if !outcome.not_audited.is_empty() {
         parts.push(format!("{} not audited", outcome.not_audited.len()));
     }
+    if outcome.left > 0 {
+        parts.push(format!("{} left when interrupted", outcome.left));
+    }
     let word = if outcome.in_order() {
         toned(Tone::Good, "All in order.")
     } else {
         toned(Tone::Bad, "Not in order.")
     };
-    let count = outcome.submissions.len() + outcome.not_audited.len();
+    let count = outcome.submissions.len() + outcome.not_audited.len() + outcome.left;
     let noun = if count == 1 {
         "submission"
     } else {

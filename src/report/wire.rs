@@ -16,6 +16,9 @@ pub struct AuditReport {
     pub summary: Summary,
     pub submissions: Vec<SubmissionReport>,
     pub not_audited: Vec<NotAuditedReport>,
+    /// Submissions that nobody looked at since the audit was interrupted: the report is
+    /// partial.
+    pub left: usize,
     pub scope: String,
 }
 

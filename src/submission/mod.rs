@@ -11,10 +11,11 @@ mod units;
 
 use std::collections::BTreeMap;
 use std::path::PathBuf;
+use std::sync::Arc;
 
 use crate::case::Replacements;
-use crate::fault::Fault;
-use crate::trajectory::Stated;
+use crate::fault::{Fault, Result};
+use crate::trajectory::{Source, Stated, open};
 
 pub use columns::{Column, Matched, match_columns};
 pub use find::{MOST_DEPTH, Place, confined, discover};
@@ -130,6 +131,21 @@ pub struct Run {
     pub cost: Option<f64>,
     /// Result or rung, if stated.
     pub role: Option<Role>,
+    /// What would be read at the path, where it is in memory.
+    pub text: Option<Arc<str>>,
+}
+
+impl Run {
+    /// The rows, wherever they are.
+    ///
+    /// # Errors
+    /// A file that is not there, or is no plain file.
+    pub fn open(&self) -> Result<Source> {
+        match &self.text {
+            Some(text) => Ok(Source::memory(text.as_bytes().to_vec())),
+            None => open(&self.path),
+        }
+    }
 }
 
 /// What sets a run apart from the others of its ladder.

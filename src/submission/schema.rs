@@ -500,6 +500,7 @@ impl Reader<'_> {
                 setting,
                 cost,
                 role,
+                text: None,
             }),
             Err(fault) => {
                 self.faults

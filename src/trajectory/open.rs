@@ -57,6 +57,14 @@ impl Source {
         }
     }
 
+    /// How many bytes there are, as far as that can be known without reading them.
+    pub fn size(&self) -> u64 {
+        match &self.origin {
+            Origin::Memory(bytes, _) => bytes.len() as u64,
+            Origin::File(path) => std::fs::metadata(path).map_or(0, |data| data.len()),
+        }
+    }
+
     /// Hands the bytes over block by block, at most `most` of them.
     fn blocks(&self, most: usize, each: &mut dyn FnMut(&[u8]) -> Result<()>) -> Result<()> {
         let path = match &self.origin {

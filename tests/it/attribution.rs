@@ -84,6 +84,7 @@ fn run(files: &[(Value, Option<&str>)]) -> Vec<Audited> {
                     },
                     role: None,
                     cost: None,
+                    text: None,
                 }],
                 ..Submission::default()
             },

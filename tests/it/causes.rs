@@ -110,6 +110,7 @@ pub fn judge(
             setting: step.map_or(Setting::Unstated, Setting::Step),
             role: Some(Role::Result),
             cost: None,
+            text: None,
         }],
         ..Submission::default()
     };

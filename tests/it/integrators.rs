@@ -33,6 +33,7 @@ fn submission(case: &str, files: &[(&str, Setting)], limits: LimitsStated) -> Su
         setting: *setting,
         role: None,
         cost: None,
+        text: None,
     };
     Submission {
         case: Some(case.to_owned()),

@@ -63,3 +63,6 @@ mod advice;
 
 /// The HTML report as a strict parser sees it.
 mod html;
+
+/// Quiet runs, interruption, completions, manual pages, suggestions.
+mod comfort;

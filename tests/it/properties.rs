@@ -118,6 +118,7 @@ fn planted(case: &Case, order: f64, size: f64, digits: usize) -> Outcome {
             setting: Setting::Step(step),
             role: None,
             cost: None,
+            text: None,
         });
     }
     std::fs::write(folder.join("cases/o.toml"), case_file(case)).unwrap();

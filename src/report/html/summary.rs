@@ -23,6 +23,10 @@ pub(super) fn headline(outcome: &Outcome) -> String {
     } else {
         "submissions are"
     };
+    if outcome.left > 0 {
+        let left = counted(outcome.left as u64, "submission");
+        return format!("interrupted: {wrong} of {all} not in order, {left} left");
+    }
     match (all, wrong) {
         (0, _) => "nothing was audited".to_owned(),
         (1, 0) => "the submission is in order".to_owned(),
