@@ -266,8 +266,12 @@ impl Matcher<'_> {
         self.unique(name, headers, &[&exact, &|header| header.name == name])
             .map(|found| {
                 found.ok_or_else(|| {
+                    let near = nearest(name, headers.iter().map(|header| header.name));
+                    let near = near.map_or(String::new(), |near| {
+                        format!(", did you mean {}?", quoted(near))
+                    });
                     format!(
-                        "there is no column {}, the header has {}",
+                        "there is no column {}, the header has {}{near}",
                         quoted(name),
                         self.list()
                     )
