@@ -2,6 +2,7 @@
 
 mod advice;
 mod causes;
+mod changes;
 mod evidence;
 mod methods;
 mod steps;
@@ -13,6 +14,7 @@ use crate::trajectory::Finding;
 
 pub use advice::{AdviceOutcome, SettingRung, SettingsOutcome};
 pub use causes::CauseOutcome;
+pub use changes::{Change, ChangeKind, Changes};
 pub use evidence::{
     ClaimOutcome, Consistent, Damping, EvidenceOutcome, GrowthOutcome, GrowthSummary, RunEvidence,
 };
@@ -29,6 +31,8 @@ pub struct Outcome {
     pub submissions: Vec<Audited>,
     /// Submissions that could not be audited, with the complaints.
     pub not_audited: Vec<NotAudited>,
+    /// What changed since an earlier audit, where there was one to compare with.
+    pub changes: Option<Changes>,
 }
 
 /// A submission that could not be audited.
@@ -238,6 +242,12 @@ impl Outcome {
             .iter()
             .filter(|submission| submission.verdict == verdict)
             .count()
+    }
+
+    /// True where something became worse since an earlier audit.
+    pub fn became_worse(&self) -> bool {
+        let changes = self.changes.as_ref();
+        changes.is_some_and(|changes| !changes.worse.is_empty())
     }
 
     /// True where everything was audited and is as expected, and there was anything.

@@ -91,6 +91,7 @@ pub fn audit(plan: &Plan) -> Outcome {
     let mut outcome = Outcome {
         submissions: Vec::new(),
         not_audited: plan.unreadable.clone(),
+        changes: None,
     };
     for (index, result) in std::mem::take(&mut *lock(&done)) {
         match result {

@@ -1,8 +1,10 @@
 //! The command line: what was typed, what will be done, and the doing.
 
 mod args;
+mod earlier;
 mod methods;
 mod plan;
+mod reports;
 mod run;
 mod steps;
 
