@@ -64,7 +64,8 @@ pub(super) fn markdown_text(text: &str, most: usize) -> String {
             ',' | ';' | '/' | '%' | '\'' | '"' | '?' => true,
             // Not `1.` at the start, nor `www.`.
             '.' | ')' => {
-                let number = cut[..index].iter().all(char::is_ascii_digit);
+                let ends = after.is_none_or(char::is_whitespace);
+                let number = ends && cut[..index].iter().all(char::is_ascii_digit);
                 let address = index >= 3 && cut[index - 3..index].iter().all(|c| "wW".contains(*c));
                 !number && !address
             }
@@ -123,7 +124,7 @@ mod tests {
             ("www.x", "www&#46;x"),
             ("1. x", "1&#46; x"),
             ("- x", "&#45; x"),
-            ("1.5", "1&#46;5"),
+            ("1.5", "1.5"),
             ("a\nb\u{202e}", "a&#92;nb&#92;u&#123;202e&#125;"),
         ] {
             assert_eq!(markdown_text(text, 100), out, "{text}");

@@ -60,3 +60,9 @@ mod growth;
 
 /// Which step or error setting a submission is told to take, and that it helps.
 mod advice;
+
+/// What became worse since an earlier report.
+mod against;
+
+/// Reports of every kind: where they may lie, what they hold, hostile names.
+mod reports;
