@@ -37,14 +37,16 @@
 //! | [`judge`] | verdicts |
 //! | [`explain`] | sentences: what, where, how to mend it; which step a case needs |
 //! | [`outcome`] | results as plain data |
-//! | [`report`] | terminal, JSON, CSV |
+//! | [`report`] | terminal, JSON, JUnit XML, Markdown, CSV |
 //! | [`audit`] | the pipeline on one screen |
+//! | [`against`] | an audit beside an earlier report: what became worse |
 //! | [`cli`] | arguments, plan, printing, exit status |
 //! | [`references`] | the published sources that doc comments and methods cite |
 
 #![deny(missing_docs)]
 #![forbid(unsafe_code)]
 
+pub mod against;
 pub mod audit;
 pub mod case;
 pub mod cli;

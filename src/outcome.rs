@@ -2,6 +2,7 @@
 
 mod advice;
 mod causes;
+mod changes;
 mod evidence;
 mod methods;
 mod plots;
@@ -14,6 +15,7 @@ use crate::trajectory::Finding;
 
 pub use advice::{AdviceOutcome, SettingRung, SettingsOutcome};
 pub use causes::CauseOutcome;
+pub use changes::{Change, ChangeKind, Changes};
 pub use evidence::{
     ClaimOutcome, Consistent, Damping, EvidenceOutcome, GrowthOutcome, GrowthSummary, RunEvidence,
 };
@@ -33,6 +35,8 @@ pub struct Outcome {
     pub not_audited: Vec<NotAudited>,
     /// Submissions that nobody looked at, since the audit was interrupted.
     pub left: usize,
+    /// What changed since an earlier audit, where there was one to compare with.
+    pub changes: Option<Changes>,
 }
 
 /// A submission that could not be audited.
@@ -249,6 +253,12 @@ impl Outcome {
             .iter()
             .filter(|submission| submission.verdict == verdict)
             .count()
+    }
+
+    /// True where something became worse since an earlier audit.
+    pub fn became_worse(&self) -> bool {
+        let changes = self.changes.as_ref();
+        changes.is_some_and(|changes| !changes.worse.is_empty())
     }
 
     /// True where everything was audited and is as expected, and there was anything.

@@ -44,6 +44,7 @@ impl Watch {
             submissions: Vec::new(),
             not_audited: plan.unreadable.clone(),
             left: 0,
+            changes: None,
         };
         let done = self.lock();
         for (index, planned) in plan.submissions.iter().enumerate() {

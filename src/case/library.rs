@@ -184,6 +184,13 @@ impl Library {
         Ok(())
     }
 
+    /// The files of cases that were added from folders.
+    pub fn files(&self) -> impl Iterator<Item = &Path> {
+        let built_in = |name: &str| built_in().iter().any(|&(known, _)| known == name);
+        let added = self.entries.iter().filter(move |(name, _)| !built_in(name));
+        added.map(|(_, entry)| entry.path.as_path())
+    }
+
     /// All names, in alphabetical order.
     pub fn names(&self) -> impl Iterator<Item = &str> {
         self.entries.keys().map(String::as_str)

@@ -62,8 +62,8 @@ Example: one file of a simulator, written at a step of 10 s
   stepgauge audit run.csv --case thermal/cold-room-defrost --column air=T1 --step 10 \\
       --absolute 1e-3
 
-Exit status: 0 all in order, 1 something failed, is undecided or not as expected,
-2 the audit could not be done.")]
+Exit status: 0 all in order, 1 something failed, is undecided, not as expected or became
+worse, 2 the audit could not be done.")]
 pub struct AuditArguments {
     /// Folders with submission.toml files, or trajectory files together with --case
     #[arg(required = true, value_name = "PATH")]
@@ -89,12 +89,20 @@ pub struct AuditArguments {
     /// What the relative limit is a fraction of
     #[arg(long, value_name = "WHAT")]
     pub relative_to: Option<RelativeTo>,
-    /// Writes a report whose kind follows from its ending: .json (repeatable)
+    /// Writes a report whose kind follows from its ending: .html, .json, .xml (JUnit),
+    /// .md, .csv (repeatable)
     #[arg(long, value_name = "FILE")]
     pub write: Vec<PathBuf>,
     /// Prints nothing but complaints; reports and the exit status tell
     #[arg(long, short)]
     pub quiet: bool,
+    /// Compares with an earlier .json report and says what became worse or better
+    #[arg(long, value_name = "EARLIER.json")]
+    pub against: Option<PathBuf>,
+    /// By what share a worst error must have grown to be worse, as in 0.2 for 20 %
+    /// [default: 0.2]
+    #[arg(long, value_name = "SHARE", requires = "against", allow_negative_numbers = true, value_parser = not_negative)]
+    pub worse_by: Option<f64>,
     /// Threads to work with [default: all processors]
     #[arg(long, value_name = "N", value_parser = clap::value_parser!(u16).range(1..=256))]
     pub threads: Option<u16>,

@@ -1,9 +1,11 @@
 //! The command line: what was typed, what will be done, and the doing.
 
 mod args;
+mod earlier;
 mod manual;
 mod methods;
 mod plan;
+mod reports;
 mod run;
 mod steps;
 mod watched;

@@ -2,9 +2,10 @@
 //! submissions, limits of the command line put in.
 
 use std::collections::BTreeMap;
-use std::path::{Path, PathBuf};
+use std::path::PathBuf;
 
 use super::args::{AuditArguments, RelativeTo, Sources};
+use super::reports;
 use crate::audit::{Plan, Planned};
 use crate::case::{Library, Replacements};
 use crate::fault::{Fault, quoted};
@@ -40,16 +41,12 @@ pub(super) fn plan(arguments: &AuditArguments) -> Result<Plan, Vec<Fault>> {
         submissions: Vec::new(),
         unreadable: Vec::new(),
         threads,
-        traced: arguments
-            .write
-            .iter()
-            .any(|p| p.extension().is_some_and(|e| e == "html")),
+        traced: arguments.write.iter().any(|path| reports::has_plots(path)),
     };
     match &arguments.case {
         Some(case) => single_files(case, arguments, &mut plan)?,
         None => submissions(arguments, &mut plan)?,
     }
-    check_reports(arguments, &plan)?;
     Ok(plan)
 }
 
@@ -222,42 +219,5 @@ fn planned(
         file,
         submission,
         limits_from_command_line,
-    }
-}
-
-/// A report must be of a kind that is known and must not take the place of an input.
-fn check_reports(arguments: &AuditArguments, plan: &Plan) -> Result<(), Vec<Fault>> {
-    let mut faults = Vec::new();
-    let inputs: Vec<PathBuf> = (plan.submissions.iter())
-        .flat_map(|planned| &planned.submission.runs)
-        .filter_map(|run| run.path.canonicalize().ok())
-        .collect();
-    for path in &arguments.write {
-        let ending = path
-            .extension()
-            .unwrap_or_default()
-            .to_string_lossy()
-            .to_lowercase();
-        let folder = path
-            .parent()
-            .filter(|folder| !folder.as_os_str().is_empty());
-        if ending != "json" && ending != "html" {
-            let fault = Fault::new(format!(
-                "no report is known by the ending {}",
-                quoted(&ending)
-            ));
-            faults.push(fault.help("reports end in .json").in_file(path));
-        } else if !folder.unwrap_or(Path::new(".")).is_dir() {
-            let fault = Fault::new("the folder of this report is not there");
-            faults.push(fault.help("make the folder first").in_file(path));
-        } else if path.canonicalize().is_ok_and(|path| inputs.contains(&path)) {
-            let fault = Fault::new("this report would overwrite a file that is audited");
-            faults.push(fault.help("give the report another name").in_file(path));
-        }
-    }
-    if faults.is_empty() {
-        Ok(())
-    } else {
-        Err(faults)
     }
 }

@@ -7,23 +7,23 @@ use super::args::{
     Arguments, AuditArguments, CaseArguments, CaseChoice, CasesArguments, Command, ExactArguments,
     MethodsArguments, StepsArguments,
 };
+use super::earlier::Earlier;
 use super::manual::{CompletionArguments, ManualArguments, completions, manual};
 use super::methods::methods_text;
-use super::{plan, steps, watched};
+use super::{plan, reports, steps, watched};
 use crate::case::{Case, Library, Replacements};
 use crate::exact::{Exact, approx_time_scales};
 use crate::fault::{Fault, quoted};
 use crate::number::{Decimal, Double};
 use crate::outcome::CaseFacts;
 use crate::report::{
-    Screen, ValueWriter, WIDEST, audit_json, audit_text, case_json, case_list, case_text,
-    steps_csv, steps_text, write_atomically,
+    Screen, ValueWriter, WIDEST, audit_text, case_json, case_list, case_text, steps_csv, steps_text,
 };
 use crate::trajectory::{Findings, Selection, Stated, Survey, is_time_name, open};
 
 /// All in order.
 const IN_ORDER: u8 = 0;
-/// Something failed, is undecided or not as expected.
+/// Something failed, is undecided, not as expected or became worse.
 const NOT_IN_ORDER: u8 = 1;
 /// The audit could not be done.
 const NOT_DONE: u8 = 2;
@@ -91,20 +91,15 @@ pub fn run(arguments: &Arguments) -> ExitCode {
 
 fn run_audit(arguments: &AuditArguments) -> Result<u8, Stop> {
     let plan = plan::plan(arguments)?;
-    let outcome = watched::audit(plan, arguments.quiet);
+    let asked = reports::check(arguments, &plan)?;
+    let earlier = Earlier::read(arguments)?;
+    let mut outcome = watched::audit(plan, arguments.quiet);
+    outcome.changes = earlier.map(|earlier| earlier.changes(&outcome));
     // Reports first: a closed pipe must not cost them.
-    for path in &arguments.write {
-        let html = path.extension().is_some_and(|ending| ending == "html");
-        let text = if html {
-            crate::report::audit_html(&outcome)
-        } else {
-            audit_json(&outcome)
-        };
-        write_atomically(path, text.as_bytes())?;
-    }
+    reports::write(&asked, &outcome)?;
     let status = if !outcome.not_audited.is_empty() || outcome.left > 0 {
         NOT_DONE
-    } else if outcome.in_order() {
+    } else if outcome.in_order() && !outcome.became_worse() {
         IN_ORDER
     } else {
         NOT_IN_ORDER

@@ -2,22 +2,27 @@
 
 use super::SCOPE;
 use super::wire::{
-    AdviceReport, AuditReport, CauseReport, ChannelReport, ClaimReport, ConsistentReport,
-    DampingReport, EvidenceReport, FindingReport, GrowthReport, GrowthSummaryReport,
-    NotAuditedReport, OrderReport, PairReport, RunEvidenceReport, RunReport, SCHEMA,
-    SettingRungReport, SettingsReport, SubmissionReport, Summary,
+    AdviceReport, AuditReport, CauseReport, ChangeReport, ChangesReport, ChannelReport,
+    ClaimReport, ConsistentReport, DampingReport, EvidenceReport, FindingReport, GrowthReport,
+    GrowthSummaryReport, NotAuditedReport, OrderReport, PairReport, RunEvidenceReport, RunReport,
+    SCHEMA, SettingRungReport, SettingsReport, SubmissionReport, Summary,
 };
 use crate::judge::Verdict;
 use crate::outcome::{
-    AdviceOutcome, Audited, CauseOutcome, ChannelOutcome, ClaimOutcome, Consistent, Damping,
-    EvidenceOutcome, GrowthOutcome, GrowthSummary, LimitsFrom, Outcome, Rule, RunEvidence,
-    RunOutcome, SettingRung, SettingsOutcome,
+    AdviceOutcome, Audited, CauseOutcome, Change, Changes, ChannelOutcome, ClaimOutcome,
+    Consistent, Damping, EvidenceOutcome, GrowthOutcome, GrowthSummary, LimitsFrom, Outcome, Rule,
+    RunEvidence, RunOutcome, SettingRung, SettingsOutcome,
 };
 use crate::submission::{Expect, Role, Setting};
 
 /// The report as text, ending with a line end.
 pub fn audit_json(outcome: &Outcome) -> String {
-    let report = AuditReport {
+    text(&audit_report(outcome))
+}
+
+/// The report as data, as it is read back.
+pub fn audit_report(outcome: &Outcome) -> AuditReport {
+    AuditReport {
         stepgauge: env!("CARGO_PKG_VERSION").to_owned(),
         schema: SCHEMA,
         summary: Summary {
@@ -37,8 +42,29 @@ pub fn audit_json(outcome: &Outcome) -> String {
             .collect(),
         left: outcome.left,
         scope: SCOPE.to_owned(),
+        changes: outcome.changes.as_ref().map(changes),
+    }
+}
+
+fn changes(changes: &Changes) -> ChangesReport {
+    let one = |change: &Change| ChangeReport {
+        kind: change.kind.word().to_owned(),
+        submission: change.submission.clone(),
+        file: change.file.clone(),
+        channel: change.channel.clone(),
+        earlier: change.earlier.and_then(finite),
+        now: change.now.and_then(finite),
+        text: change.text.clone(),
     };
-    text(&report)
+    ChangesReport {
+        earlier: changes.earlier.clone(),
+        worse_by: changes.worse_by,
+        compared: changes.compared,
+        worse: changes.worse.iter().map(one).collect(),
+        better: changes.better.iter().map(one).collect(),
+        other: changes.other.iter().map(one).collect(),
+        new_submissions: changes.new_submissions.clone(),
+    }
 }
 
 /// JSON text of anything of `wire`: such types hold nothing that cannot be written.

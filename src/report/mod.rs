@@ -1,15 +1,19 @@
-//! Outcomes and cases to bytes: the terminal table, JSON, CSV.
+//! Outcomes and cases to bytes: the terminal table, JSON, JUnit XML, Markdown, CSV.
 //!
 //! A report knows results and cases but no solver; every format takes its numbers
 //! from the same outcome.
 
 mod case_json;
 mod case_text;
+mod changes_text;
 mod claims_text;
+mod csv_errors;
 mod csv_values;
 mod growth_text;
 mod html;
 mod json;
+mod junit;
+mod markdown;
 mod method_text;
 mod plot;
 mod polynomial;
@@ -17,14 +21,18 @@ mod steps_csv;
 mod steps_text;
 mod style;
 mod table;
+mod text;
 mod wire;
 mod write;
 
 pub use case_json::case_json;
 pub use case_text::{case_list, case_text};
+pub use csv_errors::{CSV_HEADER, audit_csv};
 pub use csv_values::ValueWriter;
 pub use html::audit_html;
-pub use json::audit_json;
+pub use json::{audit_json, audit_report};
+pub use junit::audit_junit;
+pub use markdown::audit_markdown;
 pub use method_text::{method_list, method_text};
 pub use steps_csv::steps_csv;
 pub use steps_text::steps_text;

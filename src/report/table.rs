@@ -5,6 +5,7 @@ use std::cmp::Ordering;
 
 use comfy_table::{ColumnConstraint, Table};
 
+use super::changes_text::{changes_text, worse_count};
 use super::claims_text::claims_text;
 use super::growth_text::{FEW, growth_text};
 use super::style::{Screen, Tone, coloured, toned};
@@ -41,6 +42,7 @@ pub fn audit_text(outcome: &Outcome, screen: Screen) -> String {
     if !notes.is_empty() {
         text += &format!("\nNotes:\n{notes}");
     }
+    text += &changes_text(outcome, screen);
     text += &format!("\n{}\n", summary(outcome));
     text += &toned(Tone::Quiet, &screen.wrap(&scope(outcome), 0));
     text.push('\n');
@@ -50,17 +52,9 @@ pub fn audit_text(outcome: &Outcome, screen: Screen) -> String {
 fn table(outcome: &Outcome, screen: Screen) -> String {
     let mut table: Option<Table> = None;
     for submission in &outcome.submissions {
-        let results = submission
-            .runs
-            .iter()
-            .filter(|run| run.role == Role::Result);
-        let channels = results
-            .clone()
-            .flat_map(|run| run.channels.iter().map(move |c| (run, c)));
-        let worst = channels.max_by(|a, b| worse(a.1, b.1));
-        let run = worst.map(|(run, _)| run).or_else(|| results.clone().next());
+        let (run, channel) = decisive(submission);
         let narrow = screen.width < 100;
-        let mut cells = cells(submission, run, worst.map(|(_, channel)| channel), narrow);
+        let mut cells = cells(submission, run, channel, narrow);
         cells.retain(|cell| cell.from_width <= screen.width);
         let table = table.get_or_insert_with(|| {
             let headings: Vec<&str> = cells.iter().map(|cell| cell.heading).collect();
@@ -121,6 +115,18 @@ fn folded(text: &str, longest: usize) -> String {
     out + &line
 }
 
+/// The run and the channel that stand for a submission.
+pub(super) fn decisive(submission: &Audited) -> (Option<&RunOutcome>, Option<&ChannelOutcome>) {
+    let runs = submission.runs.iter();
+    let results = runs.filter(|run| run.role == Role::Result);
+    let channels = results
+        .clone()
+        .flat_map(|run| run.channels.iter().map(move |c| (run, c)));
+    let worst = channels.max_by(|a, b| worse(a.1, b.1));
+    let run = worst.map(|(run, _)| run).or_else(|| results.clone().next());
+    (run, worst.map(|(_, channel)| channel))
+}
+
 /// Which channel of a submission is shown: one that fails before one that is open,
 /// then the one that uses most of its limit.
 fn badness(channel: &ChannelOutcome) -> (Verdict, f64) {
@@ -156,17 +162,7 @@ fn cells(
     let outside = |heading, from_width, text: Option<String>| {
         cell(heading, from_width, Outside(text.unwrap_or_default()))
     };
-    let is_faulty = |run: &RunOutcome| run.findings.iter().any(|finding| finding.fatal);
-    let faulty = submission.runs.iter().any(is_faulty);
-    let used = |channel: &ChannelOutcome| match channel.verdict {
-        // A share that the digits do not support would read like a verdict.
-        Verdict::Undecided => Some("open".to_owned()),
-        Verdict::Pass if faulty => Some("file fault".to_owned()),
-        _ => channel
-            .errors
-            .as_ref()
-            .map(|errors| used_text(errors.limit_used)),
-    };
+    let used = |channel: &ChannelOutcome| share_text(submission, channel);
     let error = |e: &ErrorOutcome| format!("{} {unit}", measured(e.worst, e.resolution));
     let at = |e: &ErrorOutcome| format!("{} {}", plain(e.at), submission.time_unit);
     vec![
@@ -184,6 +180,21 @@ fn cells(
         own("order", 0, Some(order_text(submission))),
         own(">rms error", 190, errors.map(|errors| short(errors.rms))),
     ]
+}
+
+/// The share of the limit that a channel uses, where it says something.
+pub(super) fn share_text(submission: &Audited, channel: &ChannelOutcome) -> Option<String> {
+    let is_faulty = |run: &RunOutcome| run.findings.iter().any(|finding| finding.fatal);
+    let faulty = submission.runs.iter().any(is_faulty);
+    match channel.verdict {
+        // A share that the digits do not support would read like a verdict.
+        Verdict::Undecided => Some("open".to_owned()),
+        Verdict::Pass if faulty => Some("file fault".to_owned()),
+        _ => channel
+            .errors
+            .as_ref()
+            .map(|errors| used_text(errors.limit_used)),
+    }
 }
 
 pub(super) fn step_text(run: &RunOutcome) -> String {
@@ -404,7 +415,8 @@ pub(super) fn line(screen: Screen, name: &str, text: &str) -> String {
     format!("  {}\n", within.wrap(&screen.clean(&text), 4))
 }
 
-fn summary(outcome: &Outcome) -> String {
+/// How many submissions there are, by their verdicts.
+pub(super) fn counts(outcome: &Outcome) -> String {
     let mut parts = Vec::new();
     for (verdict, word) in [
         (Verdict::Pass, "pass"),
@@ -422,18 +434,26 @@ fn summary(outcome: &Outcome) -> String {
     if outcome.left > 0 {
         parts.push(format!("{} left when interrupted", outcome.left));
     }
-    let word = if outcome.in_order() {
-        toned(Tone::Good, "All in order.")
-    } else {
-        toned(Tone::Bad, "Not in order.")
-    };
     let count = outcome.submissions.len() + outcome.not_audited.len() + outcome.left;
     let noun = if count == 1 {
         "submission"
     } else {
         "submissions"
     };
-    format!("{count} {noun}: {}. {word}", parts.join(", "))
+    format!("{count} {noun}: {}.", parts.join(", "))
+}
+
+fn summary(outcome: &Outcome) -> String {
+    let word = if outcome.in_order() {
+        toned(Tone::Good, "All in order.")
+    } else {
+        toned(Tone::Bad, "Not in order.")
+    };
+    let mut text = format!("{} {word}", counts(outcome));
+    if let Some(worse) = worse_count(outcome) {
+        text += &format!(" {}", toned(Tone::Bad, &worse));
+    }
+    text
 }
 
 pub(super) fn scope(outcome: &Outcome) -> String {

@@ -20,6 +20,43 @@ pub struct AuditReport {
     /// partial.
     pub left: usize,
     pub scope: String,
+    /// What `--against` has found; the field is absent where nothing was compared, so that
+    /// such reports are those of before.
+    #[serde(default, skip_serializing_if = "Option::is_none")]
+    pub changes: Option<ChangesReport>,
+}
+
+/// An audit beside an earlier one.
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
+#[allow(missing_docs)]
+pub struct ChangesReport {
+    /// The earlier report, as named.
+    pub earlier: String,
+    pub worse_by: f64,
+    /// Submissions that both have.
+    pub compared: usize,
+    pub worse: Vec<ChangeReport>,
+    pub better: Vec<ChangeReport>,
+    /// What changed and is neither.
+    pub other: Vec<ChangeReport>,
+    pub new_submissions: Vec<String>,
+}
+
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
+#[allow(missing_docs)]
+pub struct ChangeReport {
+    /// `error`, `order`, `method`, `claim`, `verdict`, `case`, `limits`, `not-audited`,
+    /// `submission-vanished`, `run-vanished`, `channel-vanished` or `run-added`.
+    pub kind: String,
+    pub submission: String,
+    pub file: Option<String>,
+    pub channel: Option<String>,
+    /// The number then and now, where it is about one.
+    pub earlier: Option<f64>,
+    pub now: Option<f64>,
+    pub text: String,
 }
 
 #[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]

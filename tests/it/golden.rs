@@ -128,6 +128,63 @@ fn the_json_report_of_the_demo() {
     assert!(report.summary.in_order);
 }
 
+/// The other reports of the demo, and the screen beside an earlier one.
+#[test]
+fn the_other_reports_of_the_demo() {
+    let folder = tempfile::tempdir().unwrap();
+    let path = |name: &str| folder.path().join(name).to_str().unwrap().to_owned();
+    let names = ["audit.xml", "audit.md", "audit.csv"];
+    let mut arguments = vec!["audit".to_owned(), "demo-runs".to_owned()];
+    for name in names {
+        arguments.extend(["--write".to_owned(), path(name)]);
+    }
+    let arguments: Vec<&str> = arguments.iter().map(String::as_str).collect();
+    screen(&arguments, "C", "100");
+    for name in names {
+        compare(name, &std::fs::read_to_string(path(name)).unwrap());
+    }
+    // Winch as it would be beside a better past: alder was printed in full, birch came to
+    // less, cedar was believed.
+    let kept = std::fs::read_to_string(root().join("tests/golden/audit.json")).unwrap();
+    let mut kept: serde_json::Value = serde_json::from_str(&kept).unwrap();
+    let winch = kept["submissions"].as_array_mut().unwrap();
+    winch.retain(|one| one["name"].as_str().unwrap().starts_with("winch/"));
+    for one in winch.iter_mut() {
+        let name = one["name"].as_str().unwrap().replace("winch/", "");
+        one["name"] = name.as_str().into();
+        match name.as_str() {
+            "alder" => one["verdict"] = "pass".into(),
+            "birch" => {
+                for run in one["runs"].as_array_mut().unwrap() {
+                    run["channels"][0]["worst_error"] = 1e-12.into();
+                }
+            }
+            _ => {
+                one["orders"][0]["observed"] = 4.01.into();
+                one["orders"][0]["low"] = 4.0.into();
+                one["evidence"]["families"] = vec!["classical RK4"].into();
+            }
+        }
+    }
+    let mut gone = winch[0].clone();
+    gone["name"] = "aspen".into();
+    winch.push(gone);
+    let earlier = "target/golden-earlier.json";
+    std::fs::write(root().join(earlier), kept.to_string()).unwrap();
+    let report = path("against.md");
+    let arguments = [
+        "audit",
+        "demo-runs/winch",
+        "--against",
+        earlier,
+        "--write",
+        &report,
+    ];
+    compare("against-100.txt", &screen(&arguments, "C.UTF-8", "100"));
+    compare("against.md", &std::fs::read_to_string(report).unwrap());
+    std::fs::remove_file(root().join(earlier)).unwrap();
+}
+
 /// The reports do not depend on the number of threads.
 #[test]
 fn any_number_of_threads_gives_the_same_bytes() {

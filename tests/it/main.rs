@@ -66,3 +66,9 @@ mod html;
 
 /// Quiet runs, interruption, completions, manual pages, suggestions.
 mod comfort;
+
+/// What became worse since an earlier report.
+mod against;
+
+/// Reports of every kind: where they may lie, what they hold, hostile names.
+mod reports;

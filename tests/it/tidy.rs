@@ -83,9 +83,11 @@ fn allowed() -> BTreeMap<&'static str, Vec<&'static str>> {
                 "trajectory",
             ]),
         ),
+        ("against", with(&["outcome", "report"])),
         (
             "cli",
             with(&[
+                "against",
                 "audit",
                 "case",
                 "compare",

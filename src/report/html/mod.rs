@@ -2,6 +2,7 @@
 //! artefact of CI. The summary says what is wrong and where; a section for each submission
 //! follows. Templates by maud, which escapes at compile time.
 
+mod changes;
 mod submission;
 mod summary;
 
@@ -49,6 +50,7 @@ pub fn audit_html(outcome: &Outcome) -> String {
                     (summary::troubles(outcome))
                 }
                 main {
+                    (changes::section(outcome))
                     (summary::table(outcome))
                     @if !costs.is_empty() {
                         section aria-labelledby="costs" {

@@ -27,6 +27,14 @@ pub(super) fn headline(outcome: &Outcome) -> String {
         let left = counted(outcome.left as u64, "submission");
         return format!("interrupted: {wrong} of {all} not in order, {left} left");
     }
+    let worse = outcome
+        .changes
+        .as_ref()
+        .map_or(0, |changes| changes.worse.len());
+    if worse > 0 {
+        let things = counted(worse as u64, "thing");
+        return format!("{things} became worse, {wrong} of {all} not in order");
+    }
     match (all, wrong) {
         (0, _) => "nothing was audited".to_owned(),
         (1, 0) => "the submission is in order".to_owned(),
