@@ -219,10 +219,11 @@ fn modes(predictor: &[Double], corrector: &[Double]) -> Vec<Form> {
     stay[newest - 1] = Double::ONE;
     let mut alpha: Vec<Double> = stay.iter().map(|&x| -x).collect();
     alpha.push(Double::ONE);
-    let modes = [true, false].into_iter().flat_map(|evaluates| {
-        let most = if evaluates { MOST_TIMES } else { MOST_OPEN };
-        (1..=most).map(move |times| (times, evaluates))
-    });
+    // Corrected once and evaluated again is the pair itself.
+    let modes = [(2..=MOST_TIMES, true), (1..=MOST_OPEN, false)];
+    let modes = modes
+        .into_iter()
+        .flat_map(|(times, evaluates)| times.map(move |times| (times, evaluates)));
     let mut forms: Vec<Form> = modes
         .map(|(times, evaluates)| Form {
             text: format!(
