@@ -148,7 +148,7 @@ fn planted_changes_are_named() {
     submission(&folder, "claimed", claim, &one(Made::Euler));
     folder.write("runs/broken/submission.toml", "case = 3\n");
     submission(&folder, "shrunk", "", &one(Made::Off(1e-4, 0)));
-    submission(&folder, "risen", "", &ladder(Made::Off(1e-4, 2)));
+    submission(&folder, "risen", "", &ladder(Made::Off(6e-6, 2)));
     submission(&folder, "fresh", "", &one(Made::Heun));
     let ran = against(&folder, &[]);
     let worse = told(&ran, "worse");
