@@ -39,6 +39,7 @@
 //! | [`outcome`] | results as plain data |
 //! | [`report`] | terminal, JSON, CSV |
 //! | [`audit`] | the pipeline on one screen |
+//! | [`draft`] | files to a first `submission.toml`: likely case, columns, units, steps |
 //! | [`cli`] | arguments, plan, printing, exit status |
 //! | [`references`] | the published sources that doc comments and methods cite |
 
@@ -49,6 +50,7 @@ pub mod audit;
 pub mod case;
 pub mod cli;
 pub mod compare;
+pub mod draft;
 pub mod exact;
 pub mod explain;
 pub mod fault;

@@ -2,6 +2,7 @@
 
 mod advice;
 mod causes;
+mod draft;
 mod evidence;
 mod methods;
 mod steps;
@@ -13,6 +14,9 @@ use crate::trajectory::Finding;
 
 pub use advice::{AdviceOutcome, SettingRung, SettingsOutcome};
 pub use causes::CauseOutcome;
+pub use draft::{
+    By, Candidate, ColumnGuess, Cover, DraftRun, Drafted, NO_FIT, StatedCase, Step,
+};
 pub use evidence::{
     ClaimOutcome, Consistent, Damping, EvidenceOutcome, GrowthOutcome, GrowthSummary, RunEvidence,
 };

@@ -4,6 +4,8 @@ use std::path::PathBuf;
 
 use clap::{Args, Parser, Subcommand, ValueEnum};
 
+use super::draft::DraftArguments;
+
 /// Audits what a time-stepping simulator wrote: errors against exact solutions of
 /// linear models, order across steps, verdicts against limits.
 #[derive(Debug, Parser)]
@@ -35,6 +37,8 @@ pub enum Command {
     Case(CaseArguments),
     /// Writes exact values of a case as CSV
     Exact(ExactArguments),
+    /// Looks at files and writes a first submission.toml for them
+    Draft(DraftArguments),
     /// Lists integration methods, or shows one in full: coefficients, stability, source
     Methods(MethodsArguments),
     /// Shows which step a case needs, method by method

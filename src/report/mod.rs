@@ -7,6 +7,8 @@ mod case_json;
 mod case_text;
 mod claims_text;
 mod csv_values;
+mod draft_text;
+mod draft_toml;
 mod growth_text;
 mod json;
 mod method_text;
@@ -21,6 +23,8 @@ mod write;
 pub use case_json::case_json;
 pub use case_text::{case_list, case_text};
 pub use csv_values::ValueWriter;
+pub use draft_text::draft_text;
+pub use draft_toml::draft_toml;
 pub use json::audit_json;
 pub use method_text::{method_list, method_text};
 pub use steps_csv::steps_csv;
@@ -28,7 +32,7 @@ pub use steps_text::steps_text;
 pub use style::{Screen, WIDEST};
 pub use table::audit_text;
 pub use wire::*;
-pub use write::write_atomically;
+pub use write::{write_atomically, write_new};
 
 /// What every report says of a pass.
 pub const SCOPE: &str = "A pass covers the linear case that was run, in its window, within its limit. \

@@ -84,11 +84,23 @@ fn allowed() -> BTreeMap<&'static str, Vec<&'static str>> {
             ]),
         ),
         (
+            "draft",
+            with(&[
+                "case",
+                "compare",
+                "exact",
+                "outcome",
+                "submission",
+                "trajectory",
+            ]),
+        ),
+        (
             "cli",
             with(&[
                 "audit",
                 "case",
                 "compare",
+                "draft",
                 "exact",
                 "explain",
                 "method",
