@@ -14,9 +14,7 @@ use crate::trajectory::Finding;
 
 pub use advice::{AdviceOutcome, SettingRung, SettingsOutcome};
 pub use causes::CauseOutcome;
-pub use draft::{
-    By, Candidate, ColumnGuess, Cover, DraftRun, Drafted, NO_FIT, StatedCase, Step,
-};
+pub use draft::{By, Candidate, ColumnGuess, Cover, DraftRun, Drafted, NO_FIT, StatedCase, Step};
 pub use evidence::{
     ClaimOutcome, Consistent, Damping, EvidenceOutcome, GrowthOutcome, GrowthSummary, RunEvidence,
 };

@@ -17,8 +17,8 @@ use crate::fault::{Fault, quoted};
 use crate::number::{Decimal, Double};
 use crate::outcome::CaseFacts;
 use crate::report::{
-    Screen, ValueWriter, WIDEST, audit_json, audit_text, case_json, case_list, case_text, draft_text,
-    steps_csv, steps_text, write_atomically,
+    Screen, ValueWriter, WIDEST, audit_json, audit_text, case_json, case_list, case_text,
+    draft_text, steps_csv, steps_text, write_atomically,
 };
 use crate::trajectory::{Findings, Selection, Stated, Survey, is_time_name, open};
 

@@ -75,7 +75,11 @@ impl Assigner<'_> {
     }
 
     fn values(&self, column: usize) -> Option<&[Option<f64>]> {
-        let found = self.clock.columns.iter().find(|(known, _)| *known == column);
+        let found = self
+            .clock
+            .columns
+            .iter()
+            .find(|(known, _)| *known == column);
         found.map(|(_, values)| values.as_slice())
     }
 
@@ -114,7 +118,9 @@ impl Assigner<'_> {
         let other = || {
             let values = self.values(column)?;
             let reading = self.bench.in_any_unit(channel, target, values, None)?;
-            reading.fits.then(|| reading.unit.unwrap_or(target.to_owned()))
+            reading
+                .fits
+                .then(|| reading.unit.unwrap_or(target.to_owned()))
         };
         let fits_in = said.filter(|_| !fits).and_then(|_| other());
         self.found.push(Assigned {
@@ -189,7 +195,10 @@ impl Assigner<'_> {
         let open = |&c: &usize| !self.channels[c].is_state && self.is_open(c);
         let channels: Vec<usize> = (0..self.channels.len()).filter(open).collect();
         // No better than the states do, an output need not be.
-        let errors = self.found.iter().filter_map(|one| Some(one.reading.as_ref()?.error));
+        let errors = self
+            .found
+            .iter()
+            .filter_map(|one| Some(one.reading.as_ref()?.error));
         let worst = errors.fold(0.0, f64::max);
         if !self.found.is_empty() {
             self.by_fit(&channels, (NEARLY * worst).clamp(OUTPUT_FITS, NO_FIT));

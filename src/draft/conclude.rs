@@ -91,7 +91,7 @@ impl Beside {
     fn share(&self, place: usize) -> Option<f64> {
         let deviation = self.compared.channels.get(place)?;
         let share = deviation.worst / deviation.peak;
-        (deviation.rows > 0 && !share.is_nan()).then_some(share)
+        (deviation.rows > 0 && share.is_finite()).then_some(share)
     }
 
     fn worst(&self) -> Option<(usize, f64)> {
@@ -148,7 +148,9 @@ fn candidate(likely: &Likely, looked: &Looked, beside: &Beside) -> Candidate {
         states: case.states.len(),
         time: time_guess(likely, looked, time),
         channels: guesses.collect(),
-        missing: missing.map(|state| channels[state].name.to_owned()).collect(),
+        missing: missing
+            .map(|state| channels[state].name.to_owned())
+            .collect(),
         unused: unused.map(|column| looked.in_words(column)).collect(),
         error: beside.worst().map(|(_, error)| error),
         cover: likely.frame.cover,

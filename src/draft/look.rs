@@ -127,7 +127,8 @@ fn differs(first: &Looked, other: &Looked) -> Option<Fault> {
             quoted(&first.file),
             of(first)
         );
-        Fault::new(text).help("the files of one submission have the same columns; draft the others apart")
+        Fault::new(text)
+            .help("the files of one submission have the same columns; draft the others apart")
     })
 }
 
@@ -227,7 +228,10 @@ impl Looked {
             Ok(())
         })?;
         let Some((first, last)) = stamps else {
-            return Err(Fault::new(format!("{} has no numbers", self.in_words(column))));
+            return Err(Fault::new(format!(
+                "{} has no numbers",
+                self.in_words(column)
+            )));
         };
         // Columns of words are no channels.
         columns.retain(|(_, values)| values.iter().flatten().count() * 2 >= values.len());

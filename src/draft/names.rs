@@ -64,14 +64,21 @@ pub(super) fn is_like_time(name: &str) -> bool {
     let words = words(name);
     words.first().is_some_and(|first| first == "t")
         || words.iter().any(|word| {
-            let whole = ["stamp", "clock", "seconds", "minutes", "hours", "sec", "days"];
+            let whole = [
+                "stamp", "clock", "seconds", "minutes", "hours", "sec", "days",
+            ];
             word.contains("time") || whole.contains(&word.as_str())
         })
 }
 
 /// The unit of time that a name says.
 pub(super) fn time_hint(name: &str) -> Option<String> {
-    let whole = [("seconds", "s"), ("minutes", "min"), ("hours", "h"), ("days", "d")];
+    let whole = [
+        ("seconds", "s"),
+        ("minutes", "min"),
+        ("hours", "h"),
+        ("days", "d"),
+    ];
     let lower = name.to_lowercase();
     let said = whole.iter().find(|(word, _)| lower.contains(word));
     match said {

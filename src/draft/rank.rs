@@ -118,13 +118,19 @@ fn judge(
         + 0.5 * unused as f64
         + (states - found) as f64
         + 0.1 * units as f64
-        + if whole { 0.0 } else { 1.5 }
-        + if frame.unit.is_some() { 0.1 } else { 0.0 };
+        + match (whole, frame.unit.is_some()) {
+            (true, false) => 0.0,
+            (true, true) => 0.1,
+            (false, false) => 1.5,
+            (false, true) => 3.5,
+        };
     Some((frame, assigned, score))
 }
 
 /// Largest error of all that could be compared.
 fn worst(assigned: &[Assigned]) -> Option<f64> {
-    let errors = assigned.iter().filter_map(|one| Some(one.reading.as_ref()?.error));
+    let errors = assigned
+        .iter()
+        .filter_map(|one| Some(one.reading.as_ref()?.error));
     errors.reduce(f64::max)
 }

@@ -157,7 +157,11 @@ fn notes(drafted: &Drafted) -> Vec<String> {
             error_text(best.error)
         ));
     }
-    notes.extend(std::iter::once(&best.time).chain(&best.channels).filter_map(column_note));
+    notes.extend(
+        std::iter::once(&best.time)
+            .chain(&best.channels)
+            .filter_map(column_note),
+    );
     if !best.missing.is_empty() {
         notes.push(format!(
             "not found and left out: {}",
@@ -165,7 +169,10 @@ fn notes(drafted: &Drafted) -> Vec<String> {
         ));
     }
     for run in &drafted.runs {
-        let faults = run.faults.iter().map(|fault| format!("{}: {fault}", run.file));
+        let faults = run
+            .faults
+            .iter()
+            .map(|fault| format!("{}: {fault}", run.file));
         notes.extend(faults);
     }
     notes
@@ -185,10 +192,15 @@ fn column_note(guess: &ColumnGuess) -> Option<String> {
         By::Position => parts.push("guessed from its place".to_owned()),
     }
     if let Some(unit) = &guess.unit_guessed {
-        parts.push(format!("unit guessed to be {unit}, in the case it is {}", guess.unit));
+        parts.push(format!(
+            "unit guessed to be {unit}, in the case it is {}",
+            guess.unit
+        ));
     }
     if let Some(unit) = &guess.fits_in {
-        parts.push(format!("would fit in {unit}, though its header says otherwise"));
+        parts.push(format!(
+            "would fit in {unit}, though its header says otherwise"
+        ));
     }
     if !guess.rivals.is_empty() {
         parts.push(format!("fits nearly as well: {}", guess.rivals.join(", ")));
@@ -266,5 +278,8 @@ fn nothing(drafted: &Drafted, screen: Screen) -> String {
             );
         }
     }
-    format!("\nWhich case it is could not be known:\n{}", list(&lines, screen))
+    format!(
+        "\nWhich case it is could not be known:\n{}",
+        list(&lines, screen)
+    )
 }

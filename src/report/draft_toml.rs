@@ -128,7 +128,12 @@ fn column_part(best: &Candidate) -> String {
         text += &format!("# {} = NUMBER\n", key(state));
     }
     if !best.unused.is_empty() {
-        let some: Vec<String> = best.unused.iter().take(8).map(|name| escaped(name)).collect();
+        let some: Vec<String> = best
+            .unused
+            .iter()
+            .take(8)
+            .map(|name| escaped(name))
+            .collect();
         let more = best.unused.len().saturating_sub(some.len());
         let more = if more > 0 {
             format!(" and {more} more")
@@ -230,7 +235,11 @@ fn run_part(run: &DraftRun, best: &Candidate) -> String {
     let rows = counted(run.rows, "row");
     text += &match &run.worst {
         Some((error, channel)) => {
-            format!("  # {rows}, {} (`{}`)\n", error_text(Some(*error)), escaped(channel))
+            format!(
+                "  # {rows}, {} (`{}`)\n",
+                error_text(Some(*error)),
+                escaped(channel)
+            )
         }
         None => format!("  # {rows}\n"),
     };
@@ -312,7 +321,13 @@ mod tests {
 
     #[test]
     fn texts_read_back() {
-        for text in ["T \"air\" [K]", "a\\b", "tab\there", "\u{202e}turned", "\u{b0}C"] {
+        for text in [
+            "T \"air\" [K]",
+            "a\\b",
+            "tab\there",
+            "\u{202e}turned",
+            "\u{b0}C",
+        ] {
             let line = format!("x = {}", literal(text));
             let table: toml::Table = toml::from_str(&line).unwrap();
             assert_eq!(table["x"].as_str(), Some(text));
@@ -324,6 +339,9 @@ mod tests {
     #[test]
     fn remarks_are_comments_to_the_end() {
         let text = remark(&"word ".repeat(60));
-        assert!(text.lines().all(|l| l.starts_with("# ") && l.chars().count() <= WIDTH));
+        assert!(
+            text.lines()
+                .all(|l| l.starts_with("# ") && l.chars().count() <= WIDTH)
+        );
     }
 }

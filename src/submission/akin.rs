@@ -71,9 +71,8 @@ mod tests {
             ("1", "%"),
         ] {
             let found = akin(unit);
-            let same = |known: &String| {
-                convert(known, other).is_ok_and(|conversion| conversion.is_none())
-            };
+            let same =
+                |known: &String| convert(known, other).is_ok_and(|conversion| conversion.is_none());
             assert!(found.iter().any(same), "{unit} {other}: {found:?}");
             assert!(!found.iter().any(|known| known == unit));
         }

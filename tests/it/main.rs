@@ -58,5 +58,8 @@ mod methods;
 /// Factors of single modes: measured against published ones.
 mod growth;
 
+/// Drafts of submissions against those of a person who knows the files.
+mod draft;
+
 /// Which step or error setting a submission is told to take, and that it helps.
 mod advice;
