@@ -1,6 +1,8 @@
 //! How well the numbers of a column fit a channel: the largest error at the sampled rows
 //! as a share of the channel's peak.
 
+use std::cell::OnceCell;
+
 use super::Model;
 use super::clock::Frame;
 use super::look::Clock;
@@ -41,6 +43,8 @@ pub(super) struct Bench {
     /// Rows at which an input jumps, where an output has two values.
     jumps: Vec<bool>,
     states: usize,
+    /// By channel: other units that it may have been written in.
+    akin: Vec<OnceCell<Vec<(String, Conversion)>>>,
 }
 
 impl Bench {
@@ -82,7 +86,17 @@ impl Bench {
             sizes,
             jumps,
             states: model.case.states.len(),
+            akin: vec![OnceCell::new(); channels],
         }
+    }
+
+    fn akin(&self, channel: usize, target: &str) -> &[(String, Conversion)] {
+        self.akin[channel].get_or_init(|| {
+            let known = akin(target).into_iter();
+            known
+                .filter_map(|unit| convert(&unit, target).ok().map(|by| (unit, by)))
+                .collect()
+        })
     }
 
     /// True where enough rows lie within the window.
@@ -148,12 +162,10 @@ impl Bench {
     ) -> Option<Reading> {
         let plain = self.as_said(channel, target, values, None)?;
         let mut tried: Vec<Reading> = Vec::new();
-        for unit in hint.map(str::to_owned).into_iter().chain(akin(target)) {
-            let Ok(conversion) = convert(&unit, target) else {
-                continue;
-            };
-            if let Some(error) = self.error(channel, values, conversion) {
-                tried.push(self.reading(channel, Some(unit), error));
+        let hinted = hint.and_then(|unit| Some((unit.to_owned(), convert(unit, target).ok()?)));
+        for (unit, conversion) in hinted.iter().chain(self.akin(channel, target)) {
+            if let Some(error) = self.error(channel, values, *conversion) {
+                tried.push(self.reading(channel, Some(unit.clone()), error));
             }
         }
         // The first of equals is the usual name.

@@ -34,8 +34,8 @@ pub(super) fn rank(cases: Vec<Case>, looked: &Looked, is_stated: bool) -> (Vec<L
     let mut no_window = true;
     for case in cases {
         let frames = frames(&case, &looked.clocks);
-        no_window &= frames.is_empty();
         let whole = frames.iter().any(|frame| frame.cover == Cover::Whole);
+        no_window &= !whole && !(is_stated && !frames.is_empty());
         // Without a window or a name in common there is nothing to go by, and exact
         // solutions take time.
         if !(whole || is_stated || !frames.is_empty() && shares_names(&case, looked)) {

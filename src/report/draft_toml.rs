@@ -201,13 +201,16 @@ fn reason(guess: &ColumnGuess) -> String {
 }
 
 fn layout_part(drafted: &Drafted) -> String {
-    let Some(run) = drafted.runs.first() else {
-        return String::new();
-    };
+    let mut layouts: Vec<&str> = Vec::new();
+    for run in &drafted.runs {
+        if !layouts.contains(&run.layout.as_str()) {
+            layouts.push(&run.layout);
+        }
+    }
     let mut text = "\n".to_owned();
     text += &remark(&format!(
         "The layout is found from the files ({}) and need not be stated.",
-        run.layout
+        layouts.join("; ")
     ));
     let mut digits: Vec<&str> = Vec::new();
     for words in drafted.runs.iter().flat_map(|run| &run.digits) {
