@@ -14,7 +14,9 @@ use crate::trajectory::Finding;
 
 pub use advice::{AdviceOutcome, SettingRung, SettingsOutcome};
 pub use causes::CauseOutcome;
-pub use draft::{By, Candidate, ColumnGuess, Cover, DraftRun, Drafted, NO_FIT, StatedCase, Step};
+pub use draft::{
+    By, Candidate, ColumnGuess, Cover, DraftRun, Drafted, LOOSE_FIT, NO_FIT, StatedCase, Step,
+};
 pub use evidence::{
     ClaimOutcome, Consistent, Damping, EvidenceOutcome, GrowthOutcome, GrowthSummary, RunEvidence,
 };

@@ -264,8 +264,8 @@ fn in_every_order(errors: &[Vec<Option<f64>>], columns: usize) -> Vec<Option<usi
             }
             return;
         };
-        for column in 0..search.used.len() {
-            let Some(error) = row[column].filter(|_| !search.used[column]) else {
+        for (column, error) in row.iter().enumerate() {
+            let Some(error) = error.filter(|_| !search.used[column]) else {
                 continue;
             };
             search.used[column] = true;

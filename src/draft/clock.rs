@@ -81,7 +81,8 @@ fn cover(case: &Case, clock: &Clock, conversion: Conversion) -> Option<Cover> {
     let (first, last) = (at(clock.first), at(clock.last));
     let spacing = (last - first) / clock.rows.saturating_sub(1).max(1) as f64;
     let slack = (SLACK_STEPS * spacing).min(SLACK_PART * span);
-    if first > from + slack || !(last - first > 0.0) {
+    let rises = last > first;
+    if first > from + slack || !rises {
         return None;
     }
     let inside = |time: &&Double| {

@@ -35,7 +35,7 @@ pub(super) fn rank(cases: Vec<Case>, looked: &Looked, is_stated: bool) -> (Vec<L
     for case in cases {
         let frames = frames(&case, &looked.clocks);
         let whole = frames.iter().any(|frame| frame.cover == Cover::Whole);
-        no_window &= !whole && !(is_stated && !frames.is_empty());
+        no_window &= !(whole || is_stated && !frames.is_empty());
         // Without a window or a name in common there is nothing to go by, and exact
         // solutions take time.
         if !(whole || is_stated || !frames.is_empty() && shares_names(&case, looked)) {

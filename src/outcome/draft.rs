@@ -5,6 +5,9 @@ use crate::submission::ColumnName;
 
 /// An error above this share of the channel's peak is no fit.
 pub const NO_FIT: f64 = 0.2;
+/// An error above this share, with no name that speaks for the case, is a loose fit: another
+/// model of the same kind comes as near.
+pub const LOOSE_FIT: f64 = 0.02;
 
 /// Everything that a draft of a submission is written from.
 #[derive(Clone, Debug)]
@@ -102,6 +105,12 @@ impl Candidate {
     /// True where the errors leave no doubt that the files and the case belong together.
     pub fn fits(&self) -> bool {
         self.error.is_some_and(|error| error <= NO_FIT)
+    }
+
+    /// True where the fit is all there is, and not a close one.
+    pub fn is_loose(&self) -> bool {
+        let named = |guess: &ColumnGuess| matches!(guess.by, By::Name | By::LikeName);
+        self.fits() && self.error > Some(LOOSE_FIT) && !self.channels.iter().any(named)
     }
 }
 

@@ -150,6 +150,13 @@ fn notes(drafted: &Drafted) -> Vec<String> {
             }
         });
     }
+    if best.is_loose() && drafted.stated.is_none() {
+        notes.push(
+            "a loose fit, and no name speaks for it: another model of the same kind can come as \
+             near; name the case with `--case NAME`"
+                .to_owned(),
+        );
+    }
     if !best.fits() {
         notes.push(format!(
             "the files do not fit the case ({}): the simulator is wrong, or it is another case, \

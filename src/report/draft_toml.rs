@@ -40,6 +40,12 @@ fn case_part(drafted: &Drafted, best: &Candidate) -> String {
             error_text(best.error)
         ));
     }
+    if best.is_loose() && drafted.stated.is_none() {
+        text += &remark(
+            "A loose fit, and no name speaks for it: another model of the same kind can come as \
+             near. Do not rely on it.",
+        );
+    }
     match best.cover {
         Cover::Whole => {}
         Cover::Longer => text += &remark("Rows beyond the end of its window are not compared."),

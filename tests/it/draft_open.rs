@@ -104,6 +104,38 @@ fn cases_that_fit_alike_are_all_named() {
     assert!(!ran.stdout.contains("Other cases"));
 }
 
+// A bead that cools at another rate than that of the library, without a header: what comes
+// near is named, and that it does no more than that.
+#[test]
+fn a_loose_fit_is_called_one() {
+    let row = |k: u32| {
+        let t = f64::from(k) * 0.06;
+        format!("{t},{}\n", 22.0 + 173.0 * (-t / 2.5).exp())
+    };
+    let (folder, ran) = drafted(&(0..=400).map(row).collect::<String>(), &[]);
+    says(
+        &ran,
+        0,
+        &[
+            "a loose fit, and no name speaks for it",
+            "written thermal/cooling-body",
+        ],
+    );
+    let text = std::fs::read_to_string(folder.path("s/submission.toml")).unwrap();
+    assert!(
+        text.contains("# A loose fit, and no name speaks for it"),
+        "{text}"
+    );
+    // Exact values under no name are close.
+    let close = even("thermal/cooling-body", 400, 1e-4).write("", &PLAIN, |r| r[..2].to_vec());
+    let (_, ran) = drafted(&close, &[]);
+    assert!(
+        ran.status == 0 && !ran.seen().contains("loose"),
+        "{}",
+        ran.seen()
+    );
+}
+
 #[test]
 fn names_without_a_fit_are_drafted_with_a_warning() {
     let far = even(COLD, 240, 0.6).plain(2);
