@@ -40,6 +40,7 @@
 //! | [`report`] | terminal, JSON, JUnit XML, Markdown, CSV |
 //! | [`audit`] | the pipeline on one screen |
 //! | [`against`] | an audit beside an earlier report: what became worse |
+//! | [`draft`] | files to a first `submission.toml`: likely case, columns, units, steps |
 //! | [`cli`] | arguments, plan, printing, exit status |
 //! | [`references`] | the published sources that doc comments and methods cite |
 
@@ -51,6 +52,7 @@ pub mod audit;
 pub mod case;
 pub mod cli;
 pub mod compare;
+pub mod draft;
 pub mod exact;
 pub mod explain;
 pub mod fault;

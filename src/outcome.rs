@@ -3,6 +3,7 @@
 mod advice;
 mod causes;
 mod changes;
+mod draft;
 mod evidence;
 mod methods;
 mod plots;
@@ -16,6 +17,9 @@ use crate::trajectory::Finding;
 pub use advice::{AdviceOutcome, SettingRung, SettingsOutcome};
 pub use causes::CauseOutcome;
 pub use changes::{Change, ChangeKind, Changes};
+pub use draft::{
+    By, Candidate, ColumnGuess, Cover, DraftRun, Drafted, LOOSE_FIT, NO_FIT, StatedCase, Step,
+};
 pub use evidence::{
     ClaimOutcome, Consistent, Damping, EvidenceOutcome, GrowthOutcome, GrowthSummary, RunEvidence,
 };

@@ -4,6 +4,7 @@ use std::path::PathBuf;
 
 use clap::{Args, Parser, Subcommand, ValueEnum};
 
+use super::draft::DraftArguments;
 use super::manual::{CompletionArguments, ManualArguments};
 
 /// Audits what a time-stepping simulator wrote: errors against exact solutions of
@@ -37,6 +38,8 @@ pub enum Command {
     Case(CaseArguments),
     /// Writes exact values of a case as CSV
     Exact(ExactArguments),
+    /// Looks at files and writes a first submission.toml for them
+    Draft(DraftArguments),
     /// Lists integration methods, or shows one in full: coefficients, stability, source
     Methods(MethodsArguments),
     /// Shows which step a case needs, method by method

@@ -1,6 +1,7 @@
 //! The command line: what was typed, what will be done, and the doing.
 
 mod args;
+mod draft;
 mod earlier;
 mod manual;
 mod methods;

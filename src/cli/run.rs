@@ -7,6 +7,7 @@ use super::args::{
     Arguments, AuditArguments, CaseArguments, CaseChoice, CasesArguments, Command, ExactArguments,
     MethodsArguments, StepsArguments,
 };
+use super::draft::{Draft, DraftArguments, run_draft};
 use super::earlier::Earlier;
 use super::manual::{CompletionArguments, ManualArguments, completions, manual};
 use super::methods::methods_text;
@@ -17,7 +18,8 @@ use crate::fault::{Fault, quoted};
 use crate::number::{Decimal, Double};
 use crate::outcome::CaseFacts;
 use crate::report::{
-    Screen, ValueWriter, WIDEST, audit_text, case_json, case_list, case_text, steps_csv, steps_text,
+    Screen, ValueWriter, WIDEST, audit_text, case_json, case_list, case_text, draft_text,
+    steps_csv, steps_text,
 };
 use crate::trajectory::{Findings, Selection, Stated, Survey, is_time_name, open};
 
@@ -61,6 +63,7 @@ pub fn run(arguments: &Arguments) -> ExitCode {
         Command::Cases(arguments) => run_cases(arguments),
         Command::Case(arguments) => run_case(arguments),
         Command::Exact(arguments) => run_exact(arguments),
+        Command::Draft(arguments) => run_drafting(arguments),
         Command::Methods(arguments) => run_methods(arguments),
         Command::Steps(arguments) => run_steps(arguments),
         Command::Completions(arguments) => run_completions(arguments),
@@ -188,6 +191,28 @@ fn run_exact(arguments: &ExactArguments) -> Result<u8, Stop> {
         at_stamps(path, &mut write)?;
     }
     writer.finish()?;
+    Ok(IN_ORDER)
+}
+
+fn run_drafting(arguments: &DraftArguments) -> Result<u8, Stop> {
+    let Draft {
+        drafted,
+        toml,
+        written,
+    } = run_draft(arguments)?;
+    let written = written.map(|path| path.display().to_string());
+    let text = draft_text(&drafted, written.as_deref(), screen());
+    let Some(toml) = toml else {
+        print(&text)?;
+        return Ok(NOT_IN_ORDER);
+    };
+    if arguments.print {
+        // The submission alone may go into a file.
+        let _ = anstream::stderr().write_all(text.as_bytes());
+        print(&toml)?;
+    } else {
+        print(&text)?;
+    }
     Ok(IN_ORDER)
 }
 

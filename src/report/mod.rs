@@ -9,6 +9,8 @@ mod changes_text;
 mod claims_text;
 mod csv_errors;
 mod csv_values;
+mod draft_text;
+mod draft_toml;
 mod growth_text;
 mod html;
 mod json;
@@ -29,6 +31,8 @@ pub use case_json::case_json;
 pub use case_text::{case_list, case_text};
 pub use csv_errors::{CSV_HEADER, audit_csv};
 pub use csv_values::ValueWriter;
+pub use draft_text::draft_text;
+pub use draft_toml::draft_toml;
 pub use html::audit_html;
 pub use json::{audit_json, audit_report};
 pub use junit::audit_junit;
@@ -39,7 +43,7 @@ pub use steps_text::steps_text;
 pub use style::{Screen, WIDEST};
 pub use table::audit_text;
 pub use wire::*;
-pub use write::write_atomically;
+pub use write::{write_atomically, write_new};
 
 /// What every report says of a pass.
 pub const SCOPE: &str = "A pass covers the linear case that was run, in its window, within its limit. \

@@ -11,6 +11,18 @@ use crate::fault::{Fault, Result};
 /// # Errors
 /// A folder that is not there or cannot be written to, a full disk.
 pub fn write_atomically(path: &Path, bytes: &[u8]) -> Result<()> {
+    write(path, bytes, true)
+}
+
+/// As [`write_atomically`], but never in the place of another file.
+///
+/// # Errors
+/// As there, and where there is something at that place.
+pub fn write_new(path: &Path, bytes: &[u8]) -> Result<()> {
+    write(path, bytes, false)
+}
+
+fn write(path: &Path, bytes: &[u8], overwrite: bool) -> Result<()> {
     let complain =
         |error: std::io::Error| Fault::new(format!("cannot be written: {error}")).in_file(path);
     let folder = match path.parent() {
@@ -37,6 +49,11 @@ pub fn write_atomically(path: &Path, bytes: &[u8]) -> Result<()> {
             .set_permissions(permissions)
             .map_err(complain)?;
     }
-    file.persist(path).map_err(|error| complain(error.error))?;
+    let kept = if overwrite {
+        file.persist(path)
+    } else {
+        file.persist_noclobber(path)
+    };
+    kept.map_err(|error| complain(error.error))?;
     Ok(())
 }

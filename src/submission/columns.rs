@@ -91,6 +91,13 @@ impl<'a> Header<'a> {
     }
 }
 
+/// A header split into its name and a unit in brackets, after a `/` or in a line of its own
+/// below it; the unit only where it is one that is known.
+pub fn name_and_unit<'a>(full: &'a str, below: Option<&'a str>) -> (&'a str, Option<&'a str>) {
+    let header = Header::new(full, below);
+    (header.name, header.unit.filter(|unit| is_known(unit)))
+}
+
 /// With the place where the column is stated, if it is stated in a file.
 fn placed(fault: Fault, stated: Option<&ColumnStated>) -> Fault {
     match stated.and_then(|stated| stated.place) {

@@ -4,6 +4,7 @@
 //! A submission comes from outside. It is data and nothing in it is run; its files
 //! have to lie in its own folder.
 
+mod akin;
 mod columns;
 mod find;
 mod schema;
@@ -17,7 +18,8 @@ use crate::case::Replacements;
 use crate::fault::{Fault, Result};
 use crate::trajectory::{Source, Stated, open};
 
-pub use columns::{Column, Matched, match_columns};
+pub use akin::akin;
+pub use columns::{Column, Matched, match_columns, name_and_unit};
 pub use find::{MOST_DEPTH, Place, confined, discover};
 pub use schema::{MOST_RUNS, MOST_SUBMISSION_BYTES};
 pub use units::convert;

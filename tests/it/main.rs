@@ -58,6 +58,12 @@ mod methods;
 /// Factors of single modes: measured against published ones.
 mod growth;
 
+/// Drafts of submissions against those of a person who knows the files.
+mod draft;
+
+/// What a draft cannot know is said; nothing is overwritten, nothing guessed without ground.
+mod draft_open;
+
 /// Which step or error setting a submission is told to take, and that it helps.
 mod advice;
 

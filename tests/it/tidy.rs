@@ -85,12 +85,24 @@ fn allowed() -> BTreeMap<&'static str, Vec<&'static str>> {
         ),
         ("against", with(&["outcome", "report"])),
         (
+            "draft",
+            with(&[
+                "case",
+                "compare",
+                "exact",
+                "outcome",
+                "submission",
+                "trajectory",
+            ]),
+        ),
+        (
             "cli",
             with(&[
                 "against",
                 "audit",
                 "case",
                 "compare",
+                "draft",
                 "exact",
                 "explain",
                 "method",
