@@ -78,3 +78,6 @@ mod against;
 
 /// Reports of every kind: where they may lie, what they hold, hostile names.
 mod reports;
+
+/// The commands of README.md, run as they stand.
+mod readme;
