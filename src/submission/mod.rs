@@ -7,6 +7,7 @@
 mod columns;
 mod find;
 mod schema;
+mod terms;
 mod units;
 
 use std::collections::BTreeMap;
@@ -19,6 +20,7 @@ use crate::trajectory::Stated;
 pub use columns::{Column, Matched, match_columns};
 pub use find::{MOST_DEPTH, Place, confined, discover};
 pub use schema::{MOST_RUNS, MOST_SUBMISSION_BYTES};
+pub use terms::Terms;
 pub use units::convert;
 
 /// What a producer hands in, with defaults filled.
