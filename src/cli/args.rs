@@ -2,6 +2,7 @@
 
 use std::path::PathBuf;
 
+use super::drive::DriveArguments;
 use clap::{Args, Parser, Subcommand, ValueEnum};
 
 /// Audits what a time-stepping simulator wrote: errors against exact solutions of
@@ -39,6 +40,8 @@ pub enum Command {
     Methods(MethodsArguments),
     /// Shows which step a case needs, method by method
     Steps(StepsArguments),
+    /// Runs a simulator over cases and steps as a plan says, and audits what it wrote
+    Drive(DriveArguments),
 }
 
 /// Where cases come from.

@@ -1,6 +1,8 @@
 //! The command line: what was typed, what will be done, and the doing.
 
 mod args;
+mod drive;
+mod facts;
 mod methods;
 mod plan;
 mod run;

@@ -45,7 +45,11 @@ pub(super) fn plan(arguments: &AuditArguments) -> Result<Plan, Vec<Fault>> {
         Some(case) => single_files(case, arguments, &mut plan)?,
         None => submissions(arguments, &mut plan)?,
     }
-    check_reports(arguments, &plan)?;
+    let inputs: Vec<PathBuf> = (plan.submissions.iter())
+        .flat_map(|planned| &planned.submission.runs)
+        .filter_map(|run| run.path.canonicalize().ok())
+        .collect();
+    check_reports(&arguments.write, &inputs)?;
     Ok(plan)
 }
 
@@ -220,13 +224,9 @@ fn planned(
 }
 
 /// A report must be of a kind that is known and must not take the place of an input.
-fn check_reports(arguments: &AuditArguments, plan: &Plan) -> Result<(), Vec<Fault>> {
+pub(super) fn check_reports(reports: &[PathBuf], inputs: &[PathBuf]) -> Result<(), Vec<Fault>> {
     let mut faults = Vec::new();
-    let inputs: Vec<PathBuf> = (plan.submissions.iter())
-        .flat_map(|planned| &planned.submission.runs)
-        .filter_map(|run| run.path.canonicalize().ok())
-        .collect();
-    for path in &arguments.write {
+    for path in reports {
         let ending = path
             .extension()
             .unwrap_or_default()

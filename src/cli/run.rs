@@ -1,20 +1,23 @@
 //! From arguments to an exit status; the only module that prints.
 
 use std::io::{self, IsTerminal, Write};
+use std::path::PathBuf;
 use std::process::ExitCode;
 
 use super::args::{
     Arguments, AuditArguments, CaseArguments, CaseChoice, CasesArguments, Command, ExactArguments,
     MethodsArguments, StepsArguments,
 };
+use super::drive::{DriveArguments, drive};
+use super::facts::facts;
 use super::methods::methods_text;
 use super::{plan, steps};
 use crate::audit::audit;
 use crate::case::{Case, Library, Replacements};
-use crate::exact::{Exact, approx_time_scales};
-use crate::fault::{Fault, quoted};
+use crate::exact::Exact;
+use crate::fault::{Fault, escaped, quoted};
 use crate::number::{Decimal, Double};
-use crate::outcome::CaseFacts;
+use crate::outcome::Outcome;
 use crate::report::{
     Screen, ValueWriter, WIDEST, audit_json, audit_text, case_json, case_list, case_text,
     steps_csv, steps_text, write_atomically,
@@ -63,6 +66,7 @@ pub fn run(arguments: &Arguments) -> ExitCode {
         Command::Exact(arguments) => run_exact(arguments),
         Command::Methods(arguments) => run_methods(arguments),
         Command::Steps(arguments) => run_steps(arguments),
+        Command::Drive(arguments) => run_drive(arguments),
     };
     let status = match result {
         Ok(status) => status,
@@ -89,10 +93,25 @@ pub fn run(arguments: &Arguments) -> ExitCode {
 
 fn run_audit(arguments: &AuditArguments) -> Result<u8, Stop> {
     let plan = plan::plan(arguments)?;
-    let outcome = audit(&plan);
+    conclude(&audit(&plan), &arguments.write)
+}
+
+fn run_drive(arguments: &DriveArguments) -> Result<u8, Stop> {
+    let driven = drive(arguments)?;
+    let status = conclude(&driven.outcome, &arguments.write);
+    if let Some(folder) = driven.kept {
+        let folder = escaped(&folder.display().to_string());
+        // Nothing is left to do where even this cannot be written.
+        let _ = writeln!(anstream::stderr(), "the runs are kept in {folder}");
+    }
+    status
+}
+
+/// Reports, screen and exit status of an audit.
+fn conclude(outcome: &Outcome, reports: &[PathBuf]) -> Result<u8, Stop> {
     // Reports first: a closed pipe must not cost them.
-    for path in &arguments.write {
-        write_atomically(path, audit_json(&outcome).as_bytes())?;
+    for path in reports {
+        write_atomically(path, audit_json(outcome).as_bytes())?;
     }
     let status = if !outcome.not_audited.is_empty() {
         NOT_DONE
@@ -101,7 +120,7 @@ fn run_audit(arguments: &AuditArguments) -> Result<u8, Stop> {
     } else {
         NOT_IN_ORDER
     };
-    match print(&audit_text(&outcome, screen())) {
+    match print(&audit_text(outcome, screen())) {
         // The verdict stands whether or not anybody reads the table to its end.
         Err(error) if error.kind() == io::ErrorKind::BrokenPipe => Ok(status),
         other => Ok(other.map(|()| status)?),
@@ -133,13 +152,7 @@ fn load(choice: &CaseChoice) -> Result<(Case, Exact), Stop> {
 
 fn run_case(arguments: &CaseArguments) -> Result<u8, Stop> {
     let (case, exact) = load(&arguments.choice)?;
-    let scales = approx_time_scales(&case);
-    let facts = CaseFacts {
-        jumps: exact.jumps().collect(),
-        closed_form_gap: exact.closed_form_gap(),
-        shortest_time_constant: scales.time_constant,
-        shortest_period: scales.period,
-    };
+    let facts = facts(&case, &exact);
     let text = if arguments.json {
         case_json(&case, &facts)
     } else {

@@ -91,6 +91,7 @@ fn allowed() -> BTreeMap<&'static str, Vec<&'static str>> {
                 "compare",
                 "exact",
                 "explain",
+                "judge",
                 "method",
                 "outcome",
                 "references",
