@@ -2,6 +2,7 @@
 
 use std::path::PathBuf;
 
+use super::drive::DriveArguments;
 use clap::{Args, Parser, Subcommand, ValueEnum};
 
 use super::draft::DraftArguments;
@@ -48,6 +49,8 @@ pub enum Command {
     Completions(CompletionArguments),
     /// Writes a manual page
     Manual(ManualArguments),
+    /// Runs a simulator over cases and steps as a plan says, and audits what it wrote
+    Drive(DriveArguments),
 }
 
 /// Where cases come from.

@@ -2,7 +2,9 @@
 
 mod args;
 mod draft;
+mod drive;
 mod earlier;
+mod facts;
 mod manual;
 mod methods;
 mod plan;

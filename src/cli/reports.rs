@@ -72,12 +72,11 @@ pub(super) fn write(asked: &[Asked], outcome: &Outcome) -> Result<(), Fault> {
 ///
 /// # Errors
 /// Everything that is wrong with any of them; then none is written.
-pub(super) fn check(arguments: &AuditArguments, plan: &Plan) -> Result<Vec<Asked>, Vec<Fault>> {
-    let inputs = Inputs::of(arguments, plan);
+pub(super) fn check(reports: &[PathBuf], inputs: &Inputs) -> Result<Vec<Asked>, Vec<Fault>> {
     let mut taken: BTreeSet<PathBuf> = BTreeSet::new();
     let mut asked = Vec::new();
     let mut faults = Vec::new();
-    for path in &arguments.write {
+    for path in reports {
         let checked = kind(path).and_then(|kind| {
             let place = place(path)?;
             inputs.spare(path, &place, kind)?;
@@ -138,7 +137,7 @@ fn place(path: &Path) -> Result<PathBuf, Fault> {
 }
 
 /// What an audit reads.
-struct Inputs {
+pub(super) struct Inputs {
     /// Files by their true paths.
     files: BTreeSet<PathBuf>,
     /// The report of `--against`.
@@ -148,7 +147,16 @@ struct Inputs {
 }
 
 impl Inputs {
-    fn of(arguments: &AuditArguments, plan: &Plan) -> Inputs {
+    /// One file and nothing else.
+    pub(super) fn file(path: &Path) -> Inputs {
+        Inputs {
+            files: path.canonicalize().into_iter().collect(),
+            earlier: None,
+            unread: Vec::new(),
+        }
+    }
+
+    pub(super) fn of(arguments: &AuditArguments, plan: &Plan) -> Inputs {
         let submissions = plan.submissions.iter();
         let runs = submissions
             .clone()

@@ -8,15 +8,18 @@ use super::args::{
     MethodsArguments, StepsArguments,
 };
 use super::draft::{Draft, DraftArguments, run_draft};
+use super::drive::{DriveArguments, drive};
 use super::earlier::Earlier;
+use super::facts::facts;
 use super::manual::{CompletionArguments, ManualArguments, completions, manual};
 use super::methods::methods_text;
+use super::reports::{Asked, Inputs};
 use super::{plan, reports, steps, watched};
 use crate::case::{Case, Library, Replacements};
-use crate::exact::{Exact, approx_time_scales};
-use crate::fault::{Fault, quoted};
+use crate::exact::Exact;
+use crate::fault::{Fault, escaped, quoted};
 use crate::number::{Decimal, Double};
-use crate::outcome::CaseFacts;
+use crate::outcome::Outcome;
 use crate::report::{
     Screen, ValueWriter, WIDEST, audit_text, case_json, case_list, case_text, draft_text,
     steps_csv, steps_text,
@@ -68,6 +71,7 @@ pub fn run(arguments: &Arguments) -> ExitCode {
         Command::Steps(arguments) => run_steps(arguments),
         Command::Completions(arguments) => run_completions(arguments),
         Command::Manual(arguments) => run_manual(arguments),
+        Command::Drive(arguments) => run_drive(arguments),
     };
     let status = match result {
         Ok(status) => status,
@@ -94,12 +98,28 @@ pub fn run(arguments: &Arguments) -> ExitCode {
 
 fn run_audit(arguments: &AuditArguments) -> Result<u8, Stop> {
     let plan = plan::plan(arguments)?;
-    let asked = reports::check(arguments, &plan)?;
+    let asked = reports::check(&arguments.write, &Inputs::of(arguments, &plan))?;
     let earlier = Earlier::read(arguments)?;
     let mut outcome = watched::audit(plan, arguments.quiet);
     outcome.changes = earlier.map(|earlier| earlier.changes(&outcome));
+    conclude(&outcome, &asked, arguments.quiet)
+}
+
+fn run_drive(arguments: &DriveArguments) -> Result<u8, Stop> {
+    let driven = drive(arguments)?;
+    let status = conclude(&driven.outcome, &driven.reports, false);
+    if let Some(folder) = driven.kept {
+        let folder = escaped(&folder.display().to_string());
+        // Nothing is left to do where even this cannot be written.
+        let _ = writeln!(anstream::stderr(), "the runs are kept in {folder}");
+    }
+    status
+}
+
+/// Reports, screen and exit status of an audit.
+fn conclude(outcome: &Outcome, asked: &[Asked], quiet: bool) -> Result<u8, Stop> {
     // Reports first: a closed pipe must not cost them.
-    reports::write(&asked, &outcome)?;
+    reports::write(asked, outcome)?;
     let status = if !outcome.not_audited.is_empty() || outcome.left > 0 {
         NOT_DONE
     } else if outcome.in_order() && !outcome.became_worse() {
@@ -107,10 +127,10 @@ fn run_audit(arguments: &AuditArguments) -> Result<u8, Stop> {
     } else {
         NOT_IN_ORDER
     };
-    if arguments.quiet {
+    if quiet {
         return Ok(status);
     }
-    match print(&audit_text(&outcome, screen())) {
+    match print(&audit_text(outcome, screen())) {
         // The verdict stands whether or not anybody reads the table to its end.
         Err(error) if error.kind() == io::ErrorKind::BrokenPipe => Ok(status),
         other => Ok(other.map(|()| status)?),
@@ -142,13 +162,7 @@ fn load(choice: &CaseChoice) -> Result<(Case, Exact), Stop> {
 
 fn run_case(arguments: &CaseArguments) -> Result<u8, Stop> {
     let (case, exact) = load(&arguments.choice)?;
-    let scales = approx_time_scales(&case);
-    let facts = CaseFacts {
-        jumps: exact.jumps().collect(),
-        closed_form_gap: exact.closed_form_gap(),
-        shortest_time_constant: scales.time_constant,
-        shortest_period: scales.period,
-    };
+    let facts = facts(&case, &exact);
     let text = if arguments.json {
         case_json(&case, &facts)
     } else {

@@ -334,7 +334,7 @@ fn reasons(submission: &Audited, screen: Screen) -> String {
         let file = submission.runs.first().map_or("", |run| run.file.as_str());
         lines += &match reason
             .strip_prefix(file)
-            .filter(|_| submission.name.ends_with(file))
+            .filter(|_| !file.is_empty() && submission.name.ends_with(file))
         {
             Some(rest) => line(screen, "", &format!("{}{rest}", submission.name)),
             None => line(screen, &submission.name, reason),

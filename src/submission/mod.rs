@@ -8,6 +8,7 @@ mod akin;
 mod columns;
 mod find;
 mod schema;
+mod terms;
 mod units;
 
 use std::collections::BTreeMap;
@@ -22,6 +23,7 @@ pub use akin::akin;
 pub use columns::{Column, Matched, match_columns, name_and_unit};
 pub use find::{MOST_DEPTH, Place, confined, discover};
 pub use schema::{MOST_RUNS, MOST_SUBMISSION_BYTES};
+pub use terms::Terms;
 pub use units::convert;
 
 /// What a producer hands in, with defaults filled.

@@ -52,7 +52,9 @@ fn the_commands_run_as_they_stand() {
     copy(&root.join("demo-runs"), &folder.path("demo-runs"));
     let commands = commands(&readme);
     assert!(commands.len() >= 8, "{commands:?}");
-    let python = std::process::Command::new("python3").arg("--version").output();
+    let python = std::process::Command::new("python3")
+        .arg("--version")
+        .output();
     for command in commands {
         let arguments: Vec<&str> = command.iter().map(String::as_str).collect();
         assert_eq!(arguments[0], "stepgauge");

@@ -105,6 +105,7 @@ fn allowed() -> BTreeMap<&'static str, Vec<&'static str>> {
                 "draft",
                 "exact",
                 "explain",
+                "judge",
                 "method",
                 "outcome",
                 "references",

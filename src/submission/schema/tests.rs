@@ -1,3 +1,4 @@
+use super::super::ColumnName;
 use super::*;
 
 fn parse(text: &str) -> Result<Submission, Vec<Fault>> {
