@@ -273,7 +273,8 @@ fn nothing(drafted: &Drafted, screen: Screen) -> String {
                     "no case has a window that the time stamps, {span}, cover in any unit of time"
                 ),
                 false => format!(
-                    "no case has channels of these names, and none fits within {} % of the peak",
+                    "no case has its states under these names in this window, and none fits \
+                     within {} % of the peak",
                     plain(100.0 * NO_FIT)
                 ),
             };

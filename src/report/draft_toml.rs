@@ -232,7 +232,7 @@ fn layout_part(drafted: &Drafted) -> String {
         text += &format!("# [layout]\n# digits = {open}\n");
     } else if !digits.is_empty() {
         text += &remark(&format!(
-            "Values look printed to {}; `digits = N` under [layout] settles it otherwise.",
+            "Values look printed to {}; if that is wrong, state `digits = N` under [layout].",
             digits.join(" or ")
         ));
     }

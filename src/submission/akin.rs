@@ -64,7 +64,7 @@ mod tests {
             ("rad/s", "rpm"),
             ("rad/s", "deg/s"),
             ("m/s", "km/h"),
-            ("mm/ms", "m/s"),
+            ("mm/ms", "mm/s"),
             ("mg/L", "ug/L"),
             ("m3/min", "L/min"),
             ("m3/s", "m3/h"),
