@@ -561,16 +561,14 @@ fn hostile_names_are_text_in_every_report() {
         );
     }
     // Narrow and plain, no name stops the table either.
-    for columns in ["40", "200"] {
-        let output = std::process::Command::new(crate::folder::program())
-            .args(common)
-            .current_dir(folder.path(""))
-            .env("COLUMNS", columns)
-            .env("LC_ALL", "C")
-            .output()
-            .unwrap();
-        assert!(output.stdout.is_ascii() && output.status.code() == Some(2));
-    }
+    let output = std::process::Command::new(crate::folder::program())
+        .args(common)
+        .current_dir(folder.path(""))
+        .env("COLUMNS", "40")
+        .env("LC_ALL", "C")
+        .output()
+        .unwrap();
+    assert!(output.stdout.is_ascii() && output.status.code() == Some(2));
 }
 
 /// The table against the JSON report: the same rows, the same numbers.
