@@ -9,6 +9,10 @@ use crate::outcome::{Change, Changes, Outcome};
 const MOST_WORSE: usize = 200;
 const MOST_OTHER: usize = 20;
 
+/// Names of submissions depend on the paths that an audit was given.
+pub(super) const NOTHING_COMPARED: &str = "No submission has the name of an earlier one, so nothing \
+was compared: audit the same paths as then.";
+
 /// The sections, where there was an earlier audit; else nothing.
 pub(super) fn changes_text(outcome: &Outcome, screen: Screen) -> String {
     let Some(changes) = &outcome.changes else {
@@ -21,6 +25,9 @@ pub(super) fn changes_text(outcome: &Outcome, screen: Screen) -> String {
     } else {
         text += &format!("\nWorse than in {name}:\n");
         text += &lines(&changes.worse, MOST_WORSE, screen);
+    }
+    if changes.compared == 0 {
+        text += &line(screen, "", NOTHING_COMPARED);
     }
     if !changes.better.is_empty() {
         text += &format!("\nBetter than in {name}:\n");

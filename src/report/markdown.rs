@@ -2,10 +2,10 @@
 //! table, then the sentences of what is not in order. It is cut with a count where it would
 //! be long, since such summaries have a limit.
 
-use super::changes_text::worse_count;
+use super::changes_text::{NOTHING_COMPARED, worse_count};
 use super::table::{counts, decisive, order_text, scope, share_text};
 use super::text::markdown_text;
-use crate::number::measured;
+use crate::number::{counted, measured};
 use crate::outcome::{Audited, Change, NotAudited, Outcome};
 use crate::submission::Expect;
 
@@ -110,10 +110,20 @@ impl Page {
                 self.fill(list.iter().map(line), CHANGES_UP_TO, "changes are");
             }
         }
-        let (other, new) = (changes.other.len(), changes.new_submissions.len());
-        if other + new > 0 {
-            let text = "changed without being worse or better; submissions that are new:";
-            self.text += &format!("\nThings that {text} {other}; {new}.\n");
+        if changes.compared == 0 {
+            self.text += &format!("\n{}\n", markdown_text(NOTHING_COMPARED, SENTENCE));
+        }
+        let (other, new) = (
+            changes.other.len() as u64,
+            changes.new_submissions.len() as u64,
+        );
+        if other > 0 {
+            let things = counted(other, "thing");
+            self.text += &format!("\n{things} changed without being worse or better.\n");
+        }
+        if new > 0 {
+            let submissions = counted(new, "submission");
+            self.text += &format!("\n{submissions} more than in {name}.\n");
         }
     }
 }

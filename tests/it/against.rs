@@ -123,6 +123,17 @@ fn nothing_changed_on_the_same_data() {
         ran.stdout
             .contains("Nothing became worse since earlier.json.")
     );
+    // Names follow the paths: where none is known, that is said.
+    let one = folder.audit(&["runs/calm", "--against", "earlier.json"]);
+    assert_eq!(one.status, 1);
+    assert_eq!(told(&one, "worse").len(), 12, "{}", one.stdout);
+    let other = folder.audit(&[".", "--against", "earlier.json"]);
+    assert!(
+        other.stdout.contains("audit the same paths as then"),
+        "{}",
+        other.stdout
+    );
+    assert_eq!(against(&folder, &[]).status, 0);
     // A report with changes is as good an earlier one.
     std::fs::copy(folder.path("report.json"), folder.path("earlier.json")).unwrap();
     assert_eq!(against(&folder, &[]).status, 0);
