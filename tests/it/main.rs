@@ -61,6 +61,9 @@ mod growth;
 /// Drafts of submissions against those of a person who knows the files.
 mod draft;
 
+/// The files of those drafts, with what a person writes for them.
+mod draft_layouts;
+
 /// What a draft cannot know is said; nothing is overwritten, nothing guessed without ground.
 mod draft_open;
 
