@@ -18,6 +18,7 @@ pub struct AuditReport {
     pub not_audited: Vec<NotAuditedReport>,
     /// Submissions that nobody looked at since the audit was interrupted: the report is
     /// partial.
+    #[serde(default)]
     pub left: usize,
     pub scope: String,
     /// What `--against` has found; the field is absent where nothing was compared, so that
