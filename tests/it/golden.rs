@@ -73,7 +73,16 @@ fn cases_and_help() {
     let steps = ["steps", "thermal/cold-room-defrost"];
     compare("steps-100.txt", &screen(&steps, "C.UTF-8", "100"));
     for command in [
-        "audit", "cases", "case", "draft", "exact", "methods", "steps",
+        "audit",
+        "cases",
+        "case",
+        "draft",
+        "drive",
+        "exact",
+        "methods",
+        "steps",
+        "completions",
+        "manual",
     ] {
         compare(
             &format!("help-{command}.txt"),

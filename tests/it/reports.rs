@@ -85,7 +85,10 @@ fn nothing_is_written_where_one_report_cannot_be() {
             &["--write", "r.txt"][..],
             "r.txt: no report is known by the ending `txt`",
         ),
-        (&["--write", "r"], "reports end in .json, .xml, .md or .csv"),
+        (
+            &["--write", "r"],
+            "reports end in .json, .xml, .md, .csv or .html",
+        ),
         (
             &["--write", "no/r.xml"],
             "the folder of this report is not there",

@@ -12,6 +12,9 @@ use crate::outcome::{Audited, ChannelOutcome, ErrorOutcome, Outcome, RunOutcome}
 /// Submissions in a plot of costs.
 const MOST_COSTS: usize = 6;
 
+/// A submission with its costs and shares of the limit.
+type Costed<'a> = (&'a Audited, Vec<(f64, f64)>);
+
 /// Worst error against step, with the line of the order seen, that of the order claimed and
 /// what digits resolve.
 pub(super) fn orders(audited: &Audited, channel: &ChannelOutcome) -> Option<Plot> {
@@ -106,7 +109,7 @@ fn of_channel<'a>(run: &'a RunOutcome, name: &str) -> Option<&'a ErrorOutcome> {
 /// For every case with stated costs: worst share of the limit against cost, a series for
 /// each submission.
 pub(super) fn costs(outcome: &Outcome) -> Vec<Plot> {
-    let mut cases: BTreeMap<&str, Vec<(&Audited, Vec<(f64, f64)>)>> = BTreeMap::new();
+    let mut cases: BTreeMap<&str, Vec<Costed>> = BTreeMap::new();
     for audited in &outcome.submissions {
         let Some(case) = audited.case.as_deref() else {
             continue;
@@ -130,7 +133,7 @@ fn cost(run: &RunOutcome) -> Option<(f64, f64)> {
     (used > 0.0).then_some((run.cost?, used))
 }
 
-fn of_case(case: &str, submissions: &[(&Audited, Vec<(f64, f64)>)]) -> Plot {
+fn of_case(case: &str, submissions: &[Costed]) -> Plot {
     // Within the limit at least cost.
     let enough = submissions.iter().flat_map(|(audited, points)| {
         let keeps = points.iter().filter(|(_, used)| *used <= 1.0);
