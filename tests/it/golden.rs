@@ -72,7 +72,9 @@ fn cases_and_help() {
     );
     let steps = ["steps", "thermal/cold-room-defrost"];
     compare("steps-100.txt", &screen(&steps, "C.UTF-8", "100"));
-    for command in ["audit", "cases", "case", "exact", "methods", "steps"] {
+    for command in [
+        "audit", "cases", "case", "exact", "methods", "steps", "drive",
+    ] {
         compare(
             &format!("help-{command}.txt"),
             &screen(&[command, "--help"], "C.UTF-8", "100"),

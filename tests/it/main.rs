@@ -60,3 +60,6 @@ mod growth;
 
 /// Which step or error setting a submission is told to take, and that it helps.
 mod advice;
+
+/// `drive`: a simulator over cases and steps, commands that fail, plans with errors.
+mod drive;
