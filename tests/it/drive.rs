@@ -268,6 +268,38 @@ fn commands_that_hang_stay_silent_or_write_nonsense() {
     }
 }
 
+/// What a command has started ends with it, at its time limit and at its own end.
+#[cfg(target_os = "linux")]
+#[test]
+fn nothing_stays_behind() {
+    if !available("sh") {
+        return;
+    }
+    for script in [
+        "sleep 600 & echo $! > pid; wait",
+        "sleep 600 & echo $! > pid",
+    ] {
+        let folder = Folder::new();
+        drive(&folder, &plan(script, "time_limit = 2"));
+        for step in ["60", "120"] {
+            let path = folder.path(&format!("{CASE_FOLDER}/step-{step}/pid"));
+            let number = std::fs::read_to_string(path).unwrap();
+            let stat = format!("/proc/{}/stat", number.trim());
+            // Gone, or dead and not yet taken note of by its parent.
+            let gone = || {
+                let stat = std::fs::read_to_string(&stat).unwrap_or_default();
+                stat.is_empty() || stat.contains(") Z ") || stat.contains(") X ")
+            };
+            // Dying takes the system a moment.
+            let soon = (0..1000).any(|_| {
+                std::thread::sleep(std::time::Duration::from_millis(5));
+                gone()
+            });
+            assert!(soon, "{script}: {}", number.trim());
+        }
+    }
+}
+
 #[test]
 fn a_chattering_command_is_cut_and_not_held_up() {
     if !available("sh") {
