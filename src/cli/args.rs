@@ -19,8 +19,8 @@ use super::manual::{CompletionArguments, ManualArguments};
 Example: audit every submission below a folder, and keep the numbers
   stepgauge audit demo-runs --write report.json
 
-Exit status: 0 all in order, 1 something failed, is undecided or not as expected,
-2 the audit could not be done."
+Exit status: 0 all in order, 1 something failed, is undecided, not as expected or became
+worse, 2 the audit could not be done."
 )]
 pub struct Arguments {
     /// What to do.
@@ -33,14 +33,16 @@ pub struct Arguments {
 pub enum Command {
     /// Audits every submission below the paths, or single files with --case
     Audit(AuditArguments),
+    /// Runs a simulator over cases and steps as a plan says, and audits what it wrote
+    Drive(DriveArguments),
+    /// Looks at files and writes a first submission.toml for them
+    Draft(DraftArguments),
     /// Lists the cases
     Cases(CasesArguments),
     /// Shows one case in full: equations, numbers, inputs, exact solution
     Case(CaseArguments),
     /// Writes exact values of a case as CSV
     Exact(ExactArguments),
-    /// Looks at files and writes a first submission.toml for them
-    Draft(DraftArguments),
     /// Lists integration methods, or shows one in full: coefficients, stability, source
     Methods(MethodsArguments),
     /// Shows which step a case needs, method by method
@@ -49,8 +51,6 @@ pub enum Command {
     Completions(CompletionArguments),
     /// Writes a manual page
     Manual(ManualArguments),
-    /// Runs a simulator over cases and steps as a plan says, and audits what it wrote
-    Drive(DriveArguments),
 }
 
 /// Where cases come from.

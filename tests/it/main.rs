@@ -84,3 +84,6 @@ mod reports;
 
 /// The commands of README.md, run as they stand.
 mod readme;
+
+/// `drive`: a simulator over cases and steps, commands that fail, plans with errors.
+mod drive;
