@@ -95,7 +95,10 @@ fn unfinished(
     let close = own.filter(|own| own.fit.residual <= of_iteration(steps));
     // Far from the method, the rows of another one have its name, however it came to them.
     let named = found.consistent.iter().any(has_a_name);
-    if close.is_some() || !named {
+    // A pair that leaves its result as corrected steps like its predictor: the name of that
+    // says nothing against it.
+    let pair = claimed.methods.iter().any(|method| is_pair(method));
+    if close.is_some() || !named || pair {
         for &method in claimed.methods {
             let forms = forms(method);
             if let Some(form) = fitting(linear, record, method, &forms, steps, !named) {
