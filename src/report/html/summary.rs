@@ -6,7 +6,7 @@ use super::{anchor, outside};
 use crate::judge::{Support, Verdict};
 use crate::number::{counted, measured};
 use crate::outcome::{Audited, ChannelOutcome, Outcome, RunOutcome};
-use crate::report::table::{order_text, used_text, worse};
+use crate::report::table::{order_text, share_text, worse};
 use crate::submission::{Expect, Role};
 
 /// Submissions named on top.
@@ -184,11 +184,9 @@ fn row(number: usize, audited: &Audited) -> Markup {
                 @if let Some((channel, e)) = errors { (measured(e.worst, e.resolution)) " " (channel.unit) }
             }
             td class="number" {
-                @if let Some((channel, e)) = errors {
-                    @if channel.verdict == Verdict::Undecided { "open" } @else { (used_text(e.limit_used)) }
-                }
+                @if let Some((channel, _)) = errors { (share_text(audited, channel).unwrap_or_default()) }
             }
-            td { (order_text(audited)) }
+            td class="brief" { (order_text(audited)) }
             td { (claims(audited)) }
         }
     }
