@@ -139,6 +139,18 @@ fn the_page_of_the_demo() {
         assert!(header.contains(failing), "{header}");
     }
     assert!(all(&document, "svg").count() > 40);
+    // Digits that leave the verdict open are not said to break the limit.
+    let says = |found: &str| {
+        let mut plots = all(&document, "svg");
+        plots.any(|plot| plot.attribute("aria-label").unwrap().contains(found))
+    };
+    assert!(says(
+        "winch_20ms.csv: somewhere the digits leave open whether the limit is kept."
+    ));
+    assert!(says("h10.csv keeps the limit: 83 % of it is used"));
+    assert!(says(
+        "bus_100us.tsv breaks the limit: 65.8 times of it is used"
+    ));
     assert!(text_of(document.root_element()).contains("It is no approval of a simulator"));
 }
 

@@ -3,8 +3,10 @@
 
 use super::axis::Axis;
 use super::draw::{ACROSS, Look, Plot, Series, UP};
+use crate::judge::Verdict;
 use crate::number::{measured, plain};
 use crate::outcome::{Audited, ChannelOutcome, PlotPoint, RunOutcome};
+use crate::report::table::used_text;
 
 /// Runs beside the one that is judged.
 const MOST_OTHERS: usize = 4;
@@ -91,18 +93,19 @@ pub(super) fn errors(
         }
     }
     series.push(line(Look::Written, &run.file, peaks(&channel.trace)));
-    let verdict = if errors.limit_used > 1.0 {
-        "breaks"
-    } else {
-        "keeps"
-    };
-    let finding = format!(
-        "{} {verdict} the limit: {} of it is used at t = {} {}.",
-        run.file,
-        super::super::table::used_text(errors.limit_used),
-        plain(errors.decisive.at),
-        audited.time_unit
+    let (used, at) = (
+        used_text(errors.limit_used),
+        format!("t = {} {}", plain(errors.decisive.at), audited.time_unit),
     );
+    let file = &run.file;
+    let finding = match channel.verdict {
+        Verdict::Pass => format!("{file} keeps the limit: {used} of it is used at {at}."),
+        _ if errors.broken => format!("{file} breaks the limit: {used} of it is used at {at}."),
+        Verdict::Undecided => {
+            format!("{file}: somewhere the digits leave open whether the limit is kept.")
+        }
+        Verdict::Fail => format!("{file}: rows are missing; {used} of the limit is used at {at}."),
+    };
     let shown = series.iter().flat_map(|s| s.points.iter().map(|p| p.1));
     let shown: Vec<f64> = shown.collect();
     Some(Plot {
