@@ -67,6 +67,7 @@ fn bar(plan: &Plan, quiet: bool) -> ProgressBar {
     let runs = plan.submissions.iter().flat_map(|one| &one.submission.runs);
     let bytes = runs.map(|run| std::fs::metadata(&run.path).map_or(0, |data| data.len()));
     let bar = ProgressBar::with_draw_target(Some(bytes.sum()), ProgressDrawTarget::stderr());
+    bar.set_message("0 files");
     let style = ProgressStyle::with_template("{bytes} of {total_bytes} compared, {msg} {wide_bar}");
     match style {
         Ok(style) => bar.with_style(style),

@@ -196,6 +196,17 @@ fn the_other_reports_of_the_demo() {
     std::fs::remove_file(root().join(earlier)).unwrap();
 }
 
+#[test]
+fn a_draft() {
+    let arguments = [
+        "draft",
+        "demo-runs/cold-room/birch/defrost_15.txt",
+        "demo-runs/cold-room/birch/defrost_30.txt",
+        "--print",
+    ];
+    compare("draft-100.txt", &screen(&arguments, "C.UTF-8", "100"));
+}
+
 /// The reports do not depend on the number of threads.
 #[test]
 fn any_number_of_threads_gives_the_same_bytes() {

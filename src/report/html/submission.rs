@@ -9,7 +9,7 @@ use crate::judge::Verdict;
 use crate::number::{measured, plain, short};
 use crate::outcome::{Audited, ClaimOutcome, LimitsFrom, RunOutcome};
 use crate::report::plot;
-use crate::report::table::{order_text, step_text, used_text};
+use crate::report::table::{order_text, share_text, step_text};
 use crate::submission::{Expect, Role};
 
 /// Sentences, rows and findings shown of one submission.
@@ -177,7 +177,7 @@ fn run_rows(audited: &Audited, run: &RunOutcome) -> Vec<Markup> {
                 @if let Some(e) = e {
                     td class="number" { (measured(e.worst, e.resolution)) " " (channel.unit) }
                     td class="number" { (plain(e.at)) " " (audited.time_unit) }
-                    td class="number" { (used_text(e.limit_used)) }
+                    td class="number" { (share_text(audited, channel).unwrap_or_default()) }
                     td class="number" { (short(e.rms)) }
                     td class="number" { (short(e.resolution)) }
                 } @else {
