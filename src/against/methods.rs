@@ -8,8 +8,14 @@ use crate::report::{ClaimReport, EvidenceReport, SubmissionReport};
 
 /// Methods and claims of a submission.
 pub(super) fn methods(before: &SubmissionReport, after: &SubmissionReport, sink: &mut Sink) {
-    let (Some(then), Some(now)) = (&before.evidence, &after.evidence) else {
-        return;
+    let (then, now) = match (&before.evidence, &after.evidence) {
+        (Some(then), Some(now)) => (then, now),
+        (Some(_), None) => {
+            let text = "the rows are not asked for their method any more".to_owned();
+            sink.tell(Way::Worse, ChangeKind::Method, text);
+            return;
+        }
+        (None, _) => return,
     };
     families(then, now, sink);
     claims(then, now, sink);

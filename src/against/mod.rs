@@ -50,6 +50,11 @@ pub fn compare(earlier: &AuditReport, now: &AuditReport, name: &str, worse_by: f
                 let text = format!("cannot be audited any more, was {}", before.verdict);
                 sink.tell(Way::Worse, ChangeKind::NotAudited, text);
             }
+            // An audit that was interrupted does not say that anything is gone.
+            None if now.left > 0 => {
+                let text = format!("was not looked at: the audit was interrupted; was {}", before.verdict);
+                sink.tell(Way::Other, ChangeKind::NotAudited, text);
+            }
             None => {
                 let text = format!("is not there any more, was {}", before.verdict);
                 sink.tell(Way::Worse, ChangeKind::SubmissionVanished, text);
@@ -58,7 +63,7 @@ pub fn compare(earlier: &AuditReport, now: &AuditReport, name: &str, worse_by: f
     }
     for before in &earlier.not_audited {
         let there = now.submissions.iter().any(|one| one.name == before.name);
-        if !there && !unread_now(&before.name) {
+        if !there && !unread_now(&before.name) && now.left == 0 {
             let text = "is not there any more, could not be audited earlier".to_owned();
             Sink::new(&mut changes, &before.name).tell(
                 Way::Worse,
@@ -248,6 +253,14 @@ fn whole_verdict(before: &SubmissionReport, after: &SubmissionReport, sink: &mut
         _ => way_of_verdict(&before.verdict, &after.verdict),
     };
     let Some(way) = way else {
+        if before.expect != after.expect {
+            // What fails and is said to be meant so is not better for it.
+            let text = format!(
+                "{} is expected now, {} earlier; the verdict is {}",
+                after.expect, before.expect, after.verdict
+            );
+            sink.tell(Way::Worse, ChangeKind::Verdict, text);
+        }
         return;
     };
     let mut text = format!("the verdict is {}, was {}", after.verdict, before.verdict);

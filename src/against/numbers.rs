@@ -36,10 +36,33 @@ pub(super) fn channels(before: &RunReport, after: &RunReport, worse_by: f64, sin
                 "`{name}`: the verdict is {}, was {}",
                 now.verdict, then.verdict
             );
+            // Nothing is better for being measured by a wider limit.
+            let way = match way {
+                Way::Better if is_wider(then, now) => Way::Other,
+                way => way,
+            };
             sink.tell_of(way, ChangeKind::Verdict, Some(name), [None, None], text);
+        }
+        if results && is_wider(then, now) {
+            let (new, old) = (now.limit.unwrap_or(0.0), then.limit.unwrap_or(0.0));
+            let text = format!(
+                "`{name}`: the limit is {} {unit}, was {} {unit}",
+                short(new),
+                short(old),
+                unit = now.unit
+            );
+            let numbers = [then.limit, now.limit];
+            sink.tell_of(Way::Other, ChangeKind::Limits, Some(name), numbers, text);
         }
         errors(then, now, worse_by, sink);
     }
+}
+
+/// True where a channel is allowed more than it was. Relative limits are those of the row with
+/// the worst error, which may have moved: a tenth is no change of limits.
+fn is_wider(then: &ChannelReport, now: &ChannelReport) -> bool {
+    let limits = then.limit.zip(now.limit);
+    limits.is_some_and(|(old, new)| new > 1.1 * old)
 }
 
 /// Which way an error went. It has to leave what both files resolve, and the share.

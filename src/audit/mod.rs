@@ -26,7 +26,6 @@ use crate::exact::{Exact, approx_time_scales};
 use crate::fault::Fault;
 use crate::method::Linear;
 use crate::outcome::{Audited, LimitsFrom, NotAudited, Outcome};
-
 use crate::submission::{LimitStated, Submission};
 use run::compare;
 use verdict::{assign_roles, judge_orders, judge_runs, note_hidden_rungs};
@@ -99,7 +98,7 @@ pub fn audit_watched(plan: &Plan, watch: &Watch) -> Outcome {
             });
         }
     });
-    watch.outcome(plan)
+    watch.take(plan)
 }
 
 /// A lock whose data is whole even if another thread has panicked.

@@ -28,7 +28,7 @@ pub struct Rows {
 /// Those of the case.
 ///
 /// # Errors
-/// An unknown case, rows that are fewer or longer than the case has states.
+/// An unknown case, a step that is none, rows with more or fewer values than the case has states.
 ///
 /// # Example
 /// ```
@@ -62,7 +62,11 @@ pub fn audit_rows(case: &str, claims: Claims, runs: &[Rows]) -> Result<Audited, 
         claims,
         limits: LimitsStated::default(),
         columns: BTreeMap::new(),
-        layout: Stated::default(),
+        // Every digit that is needed is there.
+        layout: Stated {
+            digits: Some(17),
+            ..Stated::default()
+        },
         places: BTreeMap::new(),
         runs: runs.map_err(|fault| vec![fault])?,
     };
@@ -91,6 +95,10 @@ pub fn audit_rows(case: &str, claims: Claims, runs: &[Rows]) -> Result<Audited, 
 /// The rows as a file of comma-separated values would hold them: shortest digits that read
 /// back.
 fn run(rows: &Rows, names: &[&str]) -> Result<Run, Fault> {
+    if !(rows.step > 0.0 && rows.step.is_finite()) {
+        let fault = Fault::new(format!("a step of {} is none", rows.step));
+        return Err(fault.help("give a step that is finite and above zero"));
+    }
     let mut text = format!("t,{}\n", names.join(","));
     for (number, (time, values)) in rows.rows.iter().enumerate() {
         if values.len() != names.len() {

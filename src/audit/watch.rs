@@ -37,6 +37,25 @@ impl Watch {
         self.lock().insert(index, result);
     }
 
+    /// All results, once everything is done.
+    pub(super) fn take(&self, plan: &Plan) -> Outcome {
+        let done = std::mem::take(&mut *self.lock());
+        let mut outcome = Outcome {
+            not_audited: plan.unreadable.clone(),
+            ..Outcome::default()
+        };
+        for (index, result) in done {
+            match result {
+                Ok(audited) => outcome.submissions.push(audited),
+                Err(faults) => {
+                    let name = plan.submissions[index].name.clone();
+                    outcome.not_audited.push(NotAudited { name, faults });
+                }
+            }
+        }
+        outcome
+    }
+
     /// What is known up to now, in the order of the plan. Submissions that are not done are
     /// counted as left.
     pub fn outcome(&self, plan: &Plan) -> Outcome {

@@ -101,9 +101,13 @@ pub(super) fn drive(arguments: &DriveArguments) -> Result<Driven, Vec<Fault>> {
     let stop = Stop::listen();
     let failures = run_all(&plan, root.path(), &stop.asked);
     stop.done.store(true, Ordering::Relaxed);
-    let failures = failures.map_err(|fault| vec![fault.in_file(&arguments.plan)])?;
-    let outcome =
-        judge(&plan, &failures, root.path(), library, drawn).map_err(|fault| vec![fault])?;
+    let judged = failures
+        .map_err(|fault| fault.in_file(&arguments.plan))
+        .and_then(|failures| judge(&plan, &failures, root.path(), library, drawn));
+    let outcome = match judged {
+        Ok(outcome) => outcome,
+        Err(fault) => return Err(vec![fault, kept(root)]),
+    };
     let kept = match root {
         Root::Temporary(folder) if !outcome.in_order() => Some(folder.keep()),
         _ => None,
@@ -113,6 +117,15 @@ pub(super) fn drive(arguments: &DriveArguments) -> Result<Driven, Vec<Fault>> {
         reports,
         kept,
     })
+}
+
+/// What was run before everything ended stays where it is.
+fn kept(root: Root) -> Fault {
+    let folder = match root {
+        Root::Wished(path) => path,
+        Root::Temporary(folder) => folder.keep(),
+    };
+    Fault::new("the runs that were made are kept here").in_file(&folder)
 }
 
 /// How the user stops everything: the commands are in groups of their own, which the

@@ -65,6 +65,11 @@ fn table(outcome: &Outcome) -> io::Result<Vec<u8>> {
         csv.write_record(std::iter::once(name).chain(blank).chain(last))
             .map_err(kept)?;
     }
+    if outcome.left > 0 {
+        let blank = std::iter::repeat_n(String::new(), CSV_HEADER.len() - 1);
+        let last = std::iter::once(format!("interrupted, {} left", outcome.left));
+        csv.write_record(blank.chain(last)).map_err(kept)?;
+    }
     csv.into_inner()
         .map_err(|error| io::Error::other(error.to_string()))
 }

@@ -30,6 +30,9 @@ pub fn audit_junit(outcome: &Outcome) -> Result<Vec<u8>> {
     for missing in &outcome.not_audited {
         report.add_test_suite(not_audited(missing));
     }
+    if outcome.left > 0 {
+        report.add_test_suite(interrupted(outcome.left));
+    }
     if let Some(changes) = &outcome.changes {
         report.add_test_suite(changes_suite(changes));
     }
@@ -269,6 +272,17 @@ fn not_audited(missing: &NotAudited) -> TestSuite {
     let mut case = TestCase::new("audit", status);
     case.set_classname(name.clone());
     let mut suite = TestSuite::new(name);
+    suite.add_test_case(case);
+    suite
+}
+
+/// An audit that was interrupted is none that passed.
+fn interrupted(left: usize) -> TestSuite {
+    let text = format!("the audit was interrupted: {left} submissions were not looked at");
+    let status = not_passed(NonSuccessKind::Error, "interrupted", &[text]);
+    let mut case = TestCase::new("audit", status);
+    case.set_classname("interrupted");
+    let mut suite = TestSuite::new("interrupted");
     suite.add_test_case(case);
     suite
 }

@@ -101,17 +101,18 @@ pub(super) fn run(
     let mut child = command.spawn()?;
     let readers = [listen(child.stdout.take()), listen(child.stderr.take())];
     let end = wait(&mut child, limit, stop);
-    // Also where waiting has failed: nothing stays behind.
-    if !matches!(end, Ok(End::Ended(_))) {
-        end_group(&child);
-        let _ = child.kill();
-        let _ = child.wait();
-    }
-    if !silent_within(&readers, GRACE) {
-        // Somebody of the group still holds the pipes.
-        end_group(&child);
-        silent_within(&readers, GRACE);
-    }
+    // Nothing of the group stays behind, however the command has ended or waiting has failed;
+    // until the command is asked for its status, its number is nobody else's.
+    end_group(&child);
+    let _ = child.kill();
+    let status = child.wait();
+    let end = match end {
+        Ok(None) => status.map(End::Ended),
+        Ok(Some(end)) => Ok(end),
+        Err(error) => Err(error),
+    };
+    // Whoever holds the pipes has left the group: it is not waited for.
+    silent_within(&readers, GRACE);
     let [output, errors] = readers.map(|(kept, _)| {
         let mut kept = kept.lock().unwrap_or_else(PoisonError::into_inner);
         std::mem::take(&mut *kept)
@@ -123,23 +124,39 @@ pub(super) fn run(
     })
 }
 
-fn wait(child: &mut Child, limit: Duration, stop: &AtomicBool) -> io::Result<End> {
+/// Waits for the end of a command; `None` where it has ended by itself.
+fn wait(child: &mut Child, limit: Duration, stop: &AtomicBool) -> io::Result<Option<End>> {
     let began = Instant::now();
     let mut pause = Duration::from_millis(1);
     loop {
-        if let Some(status) = child.try_wait()? {
-            return Ok(End::Ended(status));
+        if has_ended(child)? {
+            return Ok(None);
         }
         if stop.load(Ordering::Relaxed) {
-            return Ok(End::Stopped);
+            return Ok(Some(End::Stopped));
         }
         let left = limit.saturating_sub(began.elapsed());
         if left.is_zero() {
-            return Ok(End::TimeLimit);
+            return Ok(Some(End::TimeLimit));
         }
         std::thread::sleep(pause.min(left));
         pause = (2 * pause).min(PAUSE);
     }
+}
+
+/// True for a command that has ended, which is left unasked for its status.
+#[cfg(unix)]
+fn has_ended(child: &mut Child) -> io::Result<bool> {
+    use nix::sys::wait::{Id, WaitPidFlag, WaitStatus, waitid};
+    let number = i32::try_from(child.id()).map_err(io::Error::other)?;
+    let look = WaitPidFlag::WEXITED | WaitPidFlag::WNOHANG | WaitPidFlag::WNOWAIT;
+    let seen = waitid(Id::Pid(nix::unistd::Pid::from_raw(number)), look)?;
+    Ok(seen != WaitStatus::StillAlive)
+}
+
+#[cfg(not(unix))]
+fn has_ended(child: &mut Child) -> io::Result<bool> {
+    Ok(child.try_wait()?.is_some())
 }
 
 type Listening = (Arc<Mutex<Kept>>, Option<JoinHandle<()>>);
@@ -182,8 +199,8 @@ fn silent_within(readers: &[Listening], grace: Duration) -> bool {
     true
 }
 
-/// Ends the command with everything it has started. The group has the number of the
-/// command, which nobody else can get while a member is left.
+/// Ends the command with everything it has started in its group, which has the number of
+/// the command.
 #[cfg(unix)]
 fn end_group(child: &Child) {
     use nix::sys::signal::{Signal, killpg};
