@@ -52,7 +52,10 @@ pub fn compare(earlier: &AuditReport, now: &AuditReport, name: &str, worse_by: f
             }
             // An audit that was interrupted does not say that anything is gone.
             None if now.left > 0 => {
-                let text = format!("was not looked at: the audit was interrupted; was {}", before.verdict);
+                let text = format!(
+                    "was not looked at: the audit was interrupted; was {}",
+                    before.verdict
+                );
                 sink.tell(Way::Other, ChangeKind::NotAudited, text);
             }
             None => {

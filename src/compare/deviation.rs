@@ -260,12 +260,19 @@ impl<'c, 'a, 'k> Pass<'c, 'a, 'k> {
                 });
             }
             if let Some(trace) = self.traces.get_mut(place) {
-                trace.add(Traced {
+                let traced = Traced {
                     time: time.to_f64(),
                     written: value.to_f64(),
                     error,
                     doubts,
-                });
+                };
+                // Where the limit is a part of the peak, which is known at the end only, it
+                // is the same in all rows.
+                let allowed = match limit.of_peak {
+                    true => 1.0,
+                    false => limit.at(truth.to_f64().abs()),
+                };
+                trace.add(traced, error.abs() / allowed);
             }
             sums.written(written);
             sums.add(time.to_f64(), error, truth.to_f64().abs(), doubts, limit);

@@ -1,7 +1,7 @@
 //! Points for a plot, gathered while the rows go by: the window is cut into equal
 //! stretches, and of each the rows stay that a thinner plot would hide — the smallest and
-//! the largest value and the largest error. However long the file is, the worst row of
-//! all is among them.
+//! the largest value, the largest error and the largest part of the limit. However long the
+//! file is, the worst row of all is among them.
 
 use crate::number::Double;
 
@@ -35,6 +35,8 @@ struct Stretch {
     smallest: Traced,
     largest: Traced,
     worst: Traced,
+    /// With the part of the limit that it uses.
+    decisive: (Traced, f64),
     last: Traced,
 }
 
@@ -47,17 +49,19 @@ impl Trace {
         }
     }
 
-    pub(super) fn add(&mut self, row: Traced) {
+    /// `used` is the part of the limit that the error uses, up to a factor that all rows share.
+    pub(super) fn add(&mut self, row: Traced, used: f64) {
         let share = (row.time - self.from) / self.span;
         let place = (share * STRETCHES as f64).clamp(0.0, STRETCHES as f64 - 1.0) as usize;
         match &mut self.stretches[place] {
-            Some(stretch) => stretch.add(row),
+            Some(stretch) => stretch.add(row, used),
             empty => {
                 *empty = Some(Stretch {
                     first: row,
                     smallest: row,
                     largest: row,
                     worst: row,
+                    decisive: (row, used),
                     last: row,
                 });
             }
@@ -73,6 +77,7 @@ impl Trace {
                 stretch.smallest,
                 stretch.largest,
                 stretch.worst,
+                stretch.decisive.0,
                 stretch.last,
             ];
             rows.sort_by(|a, b| a.time.total_cmp(&b.time));
@@ -87,7 +92,7 @@ impl Trace {
 }
 
 impl Stretch {
-    fn add(&mut self, row: Traced) {
+    fn add(&mut self, row: Traced, used: f64) {
         if row.written < self.smallest.written {
             self.smallest = row;
         }
@@ -97,6 +102,9 @@ impl Stretch {
         if row.error.abs() > self.worst.error.abs() {
             self.worst = row;
         }
+        if used > self.decisive.1 {
+            self.decisive = (row, used);
+        }
         self.last = row;
     }
 }
@@ -105,6 +113,10 @@ impl Stretch {
 mod tests {
     use super::*;
 
+    fn row_of_limit(time: f64) -> bool {
+        time == 0.12345
+    }
+
     /// One bad row in a hundred thousand and the extremes of a spike stay.
     #[test]
     fn extremes_stay_however_long_the_file_is() {
@@ -112,15 +124,18 @@ mod tests {
         for row in 0..100_000 {
             let time = f64::from(row) / 1e5;
             let odd = row == 54_321;
-            trace.add(Traced {
+            let row = Traced {
                 time,
                 written: if odd { 7.0 } else { time },
                 error: if odd { -7.0 } else { 1e-9 * time },
                 doubts: [0.0; 2],
-            });
+            };
+            // The tightest limit is elsewhere.
+            trace.add(row, if row_of_limit(row.time) { 9.0 } else { 1.0 });
         }
         let points = trace.conclude();
-        assert!(points.len() <= 5 * STRETCHES, "{}", points.len());
+        assert!(points.iter().any(|p| row_of_limit(p.time)));
+        assert!(points.len() <= 6 * STRETCHES, "{}", points.len());
         assert!(points.iter().any(|p| p.error == -7.0 && p.written == 7.0));
         assert!(points.windows(2).all(|pair| pair[0].time < pair[1].time));
         assert_eq!(points[0].time, 0.0);

@@ -72,7 +72,7 @@ pub fn audit_html(outcome: &Outcome) -> String {
 }
 
 /// Text from outside: nothing that steers, no more than fits.
-fn outside(text: &str) -> String {
+pub(super) fn outside(text: &str) -> String {
     let clean = escaped(text);
     if clean.chars().count() <= MOST_CHARACTERS {
         return clean;

@@ -1,6 +1,6 @@
 //! An axis of a plot: from numbers to places on the page, and the numbers written at it.
 
-use crate::number::plain;
+use crate::number::{plain, short};
 
 /// Places on the page that belong to the ends of an axis, and how numbers lie in between.
 #[derive(Clone, Debug)]
@@ -85,8 +85,8 @@ impl Axis {
         }
     }
 
-    /// The place of a number; `None` for what a log axis has no place for. What lies beyond
-    /// the ends is drawn at them.
+    /// The place of a number, beyond the ends as well; `None` for what a log axis has no
+    /// place for.
     pub fn place(&self, number: f64) -> Option<f64> {
         let number = if self.kind == Kind::Log {
             number.log10()
@@ -97,8 +97,14 @@ impl Axis {
             return None;
         }
         let (low, high) = self.ends;
-        let share = ((number - low) / (high - low)).clamp(0.0, 1.0);
+        let share = (number - low) / (high - low);
         Some(self.places.0 + share * (self.places.1 - self.places.0))
+    }
+
+    /// The least and the greatest place on the page between the ends.
+    pub fn reach(&self) -> (f64, f64) {
+        let (from, to) = self.places;
+        (from.min(to), from.max(to))
     }
 
     /// Numbers to write at the axis with their places.
@@ -109,7 +115,13 @@ impl Axis {
             self.steps()
         };
         let placed = |(number, text): (f64, String)| Some((self.place(number)?, text));
-        marks.into_iter().filter_map(placed).collect()
+        let (least, most) = self.reach();
+        let within = |(place, _): &(f64, String)| (least - 1e-6..=most + 1e-6).contains(place);
+        marks
+            .into_iter()
+            .filter_map(placed)
+            .filter(within)
+            .collect()
     }
 
     fn steps(&self) -> Vec<(f64, String)> {
@@ -132,14 +144,16 @@ impl Axis {
             .take(12)
             .map(|k| {
                 let number = k as f64 * step;
-                // No digits that only the product has made.
-                let digits = (-step.log10().floor()).max(0.0) as usize;
-                let text = if number == 0.0 {
+                // No digits that only the product has made, and as many as tell the marks
+                // apart.
+                let decimals = (-step.log10() - 1e-9).ceil().max(0.0) as usize;
+                let text = if number.abs() < 1e-6 * step {
                     "0".to_owned()
-                } else if digits > 4 || number.abs() >= 1e6 {
-                    format!("{number:.1e}").replace(".0e", "e")
+                } else if decimals > 5 || number.abs() >= 1e6 {
+                    let digits = (number.abs() / step).log10().floor().max(0.0) as usize;
+                    format!("{number:.digits$e}")
                 } else {
-                    format!("{number:.digits$}")
+                    format!("{number:.decimals$}")
                 };
                 (number, text)
             })
@@ -172,6 +186,14 @@ impl Axis {
                     marks.push((number, text));
                 }
             }
+        }
+        if marks.len() < 2 {
+            // Within one digit there is no round number: the ends are written.
+            let end = |logarithm: f64| {
+                let number = 10f64.powf(logarithm);
+                (number, short(number))
+            };
+            return vec![end(low), end(high)];
         }
         marks
     }
@@ -245,6 +267,9 @@ mod tests {
     #[test]
     fn odd_numbers_leave_an_axis() {
         for numbers in [
+            vec![2.9, 3.5],
+            vec![0.98, 0.9801],
+            vec![1e9, 1e9 + 1.0],
             vec![],
             vec![3.0],
             vec![f64::NAN, f64::INFINITY],
@@ -256,11 +281,10 @@ mod tests {
                 Axis::tight(String::new(), numbers.iter().copied(), (0.0, 1.0)),
             ] {
                 assert!(axis.marks().len() < 50);
-                assert!(
-                    axis.marks()
-                        .iter()
-                        .all(|(place, _)| (0.0..=1.0).contains(place))
-                );
+                let texts: Vec<String> = axis.marks().into_iter().map(|(_, text)| text).collect();
+                let mut unique = texts.clone();
+                unique.dedup();
+                assert_eq!(unique, texts);
             }
         }
     }

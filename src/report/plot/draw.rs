@@ -9,6 +9,7 @@ use std::fmt::Write;
 use maud::{Markup, PreEscaped, html};
 
 use super::axis::Axis;
+use crate::report::html::outside;
 
 /// Size of a plot in its own units; the page scales it.
 const WIDTH: f64 = 440.0;
@@ -57,6 +58,29 @@ pub(super) struct Series {
     pub points: Vec<(f64, f64)>,
     /// Dots in place of a line.
     pub dots: bool,
+    /// Filled down to the bottom.
+    pub area: bool,
+}
+
+impl Series {
+    /// A line.
+    pub fn line(look: Look, name: impl Into<String>, points: Vec<(f64, f64)>) -> Series {
+        Series {
+            look,
+            name: name.into(),
+            points,
+            dots: false,
+            area: false,
+        }
+    }
+
+    /// Dots.
+    pub fn dots(look: Look, name: impl Into<String>, points: Vec<(f64, f64)>) -> Series {
+        Series {
+            dots: true,
+            ..Series::line(look, name, points)
+        }
+    }
 }
 
 /// A whole plot.
@@ -74,16 +98,17 @@ pub(super) struct Plot {
 impl Plot {
     /// As a figure with a caption.
     pub fn draw(&self) -> Markup {
+        let (title, finding) = (outside(&self.title), outside(&self.finding));
         html! {
             figure {
                 svg xmlns="http://www.w3.org/2000/svg" role="img" viewBox=(format!("0 0 {WIDTH} {HEIGHT}"))
-                    aria-label=(format!("{}. {}", self.title, self.finding)) {
+                    aria-label=(format!("{title} {finding}")) {
                     (self.grid())
                     (self.labels())
                     @for series in &self.series { (self.one(series)) }
                     (self.legend())
                 }
-                figcaption { strong { (self.title) } " " (self.finding) }
+                figcaption { strong { (title) } " " (finding) }
             }
         }
     }
@@ -109,59 +134,119 @@ impl Plot {
         let (bottom, top) = UP;
         let middle = 0.5 * (bottom + top);
         html! {
-            text class="axis" x=(0.5 * (left + right)) y=(HEIGHT - 16.0) text-anchor="middle" { (self.across.label) }
+            text class="axis" x=(0.5 * (left + right)) y=(HEIGHT - 16.0) text-anchor="middle" { (outside(&self.across.label)) }
             text class="axis" x="13" y=(middle) text-anchor="middle" transform=(format!("rotate(-90 13 {middle})")) {
-                (self.up.label)
+                (outside(&self.up.label))
             }
         }
     }
 
     fn one(&self, series: &Series) -> Markup {
-        let path = if series.dots {
-            self.dots(series)
-        } else {
-            self.line(series)
+        let class = series.look.class();
+        let (line, mut dots) = match series.dots {
+            true => (String::new(), String::new()),
+            false => self.line(&series.points),
         };
-        let kind = if series.dots { "dots " } else { "line " };
+        if series.dots {
+            dots = self.dots(&series.points);
+        }
         html! {
-            @if !path.is_empty() {
-                path class=(format!("{kind}{}", series.look.class())) d=(path) {}
+            @if series.area {
+                path class=(format!("area {class}")) d=(self.area(&series.points)) {}
             }
+            @if !line.is_empty() { path class=(format!("line {class}")) d=(line) {} }
+            @if !dots.is_empty() { path class=(format!("dots {class}")) d=(dots) {} }
         }
     }
 
-    /// Lines with a gap where a point has no place.
-    fn line(&self, series: &Series) -> String {
-        let mut path = String::new();
-        let mut pen_is_down = false;
-        let mut last: Option<(f64, f64)> = None;
-        for &(x, y) in &series.points {
-            let (Some(x), Some(y)) = (self.across.place(x), self.up.place(y)) else {
-                pen_is_down = false;
-                continue;
-            };
-            let near = |(a, b): (f64, f64)| (a - x).abs() < 0.05 && (b - y).abs() < 0.05;
-            if pen_is_down && last.is_some_and(near) {
+    /// The place of a point, on the page or beyond.
+    fn place(&self, (x, y): (f64, f64)) -> Option<(f64, f64)> {
+        Some((self.across.place(x)?, self.up.place(y)?))
+    }
+
+    /// Lines with a gap where a point has no place, cut off at the frame; points that stand
+    /// alone as dots.
+    fn line(&self, points: &[(f64, f64)]) -> (String, String) {
+        let (mut path, mut alone) = (String::new(), String::new());
+        let pieces = points.split(|&point| self.place(point).is_none());
+        for piece in pieces.filter(|piece| !piece.is_empty()) {
+            let placed: Vec<(f64, f64)> = piece.iter().filter_map(|&p| self.place(p)).collect();
+            if let [(x, y)] = placed[..] {
+                if self.is_within((x, y)) {
+                    // Nothing can fail that writes to a string.
+                    let _ = write!(alone, "M{x:.1} {y:.1}h0");
+                }
                 continue;
             }
-            let pen = if pen_is_down { 'L' } else { 'M' };
-            // Nothing can fail that writes to a string.
-            let _ = write!(path, "{pen}{x:.1} {y:.1}");
-            pen_is_down = true;
-            last = Some((x, y));
+            let mut pen: Option<(f64, f64)> = None;
+            for pair in placed.windows(2) {
+                let Some((from, to)) = self.cut(pair[0], pair[1]) else {
+                    pen = None;
+                    continue;
+                };
+                if pen != Some(from) {
+                    let _ = write!(path, "M{:.1} {:.1}", from.0, from.1);
+                }
+                let _ = write!(path, "L{:.1} {:.1}", to.0, to.1);
+                pen = Some(to);
+            }
         }
+        (path, alone)
+    }
+
+    fn is_within(&self, (x, y): (f64, f64)) -> bool {
+        let ((left, right), (top, bottom)) = (self.across.reach(), self.up.reach());
+        (left - 0.01..=right + 0.01).contains(&x) && (top - 0.01..=bottom + 0.01).contains(&y)
+    }
+
+    /// The part of a stroke between top and bottom of the frame.
+    fn cut(&self, from: (f64, f64), to: (f64, f64)) -> Option<((f64, f64), (f64, f64))> {
+        let (top, bottom) = self.up.reach();
+        let (mut start, mut end) = (0.0f64, 1.0f64);
+        let rise = to.1 - from.1;
+        for (edge, side) in [(top, 1.0), (bottom, -1.0)] {
+            // Inside is where `side * (y - edge)` is not below zero.
+            let (a, b) = (side * (from.1 - edge), side * (to.1 - edge));
+            if a < 0.0 && b < 0.0 {
+                return None;
+            }
+            if a < 0.0 {
+                start = start.max((edge - from.1) / rise);
+            } else if b < 0.0 {
+                end = end.min((edge - from.1) / rise);
+            }
+        }
+        let at = |share: f64| match share {
+            0.0 => from,
+            1.0 => to,
+            _ => (from.0 + share * (to.0 - from.0), from.1 + share * rise),
+        };
+        (start <= end).then(|| (at(start), at(end)))
+    }
+
+    /// What lies between a line and the bottom.
+    fn area(&self, points: &[(f64, f64)]) -> String {
+        let placed: Vec<(f64, f64)> = points.iter().filter_map(|&p| self.place(p)).collect();
+        let (Some(first), Some(last)) = (placed.first(), placed.last()) else {
+            return String::new();
+        };
+        let (top, bottom) = self.up.reach();
+        let mut path = format!("M{:.1} {bottom:.1}", first.0);
+        for (x, y) in &placed {
+            let _ = write!(path, "L{x:.1} {:.1}", y.clamp(top, bottom));
+        }
+        let _ = write!(path, "L{:.1} {bottom:.1}Z", last.0);
         path
     }
 
     /// Strokes of no length, which round ends turn into dots; one for each cell of the page
-    /// that can be told from the next.
-    fn dots(&self, series: &Series) -> String {
+    /// that can be told from the next. What lies beyond top or bottom is drawn there.
+    fn dots(&self, points: &[(f64, f64)]) -> String {
         let mut path = String::new();
         let mut seen = std::collections::BTreeSet::new();
-        for &(x, y) in &series.points {
-            let (Some(x), Some(y)) = (self.across.place(x), self.up.place(y)) else {
-                continue;
-            };
+        let (top, bottom) = self.up.reach();
+        for (x, y) in points.iter().filter_map(|&point| self.place(point)) {
+            let y = y.clamp(top, bottom);
             if seen.insert(((x / 1.5) as i64, (y / 1.5) as i64)) {
                 let _ = write!(path, "M{x:.1} {y:.1}h0");
             }
@@ -173,7 +258,7 @@ impl Plot {
         let mut entries = Vec::new();
         let (mut x, mut y) = (ACROSS.0, 12.0);
         for series in self.series.iter().filter(|series| !series.name.is_empty()) {
-            let name = shortened(&series.name);
+            let name = shortened(&outside(&series.name));
             let width = 30.0 + 6.2 * name.chars().count() as f64;
             if x + width > WIDTH && x > ACROSS.0 {
                 (x, y) = (ACROSS.0, y + 14.0);

@@ -7,7 +7,10 @@ use crate::number::short;
 use crate::outcome::{Audited, Consistent, GrowthOutcome, RunEvidence};
 
 /// Methods shown.
-const MOST_METHODS: usize = 6;
+const MOST_METHODS: usize = 4;
+
+/// A smaller residual is drawn as this one.
+const LEAST: f64 = 1e-12;
 
 /// Residuals of the methods that fit a run, against what digits and rounding allow.
 pub(super) fn consistent(audited: &Audited) -> Option<Plot> {
@@ -30,24 +33,17 @@ pub(super) fn consistent(audited: &Audited) -> Option<Plot> {
         short(best.largest_residual)
     );
     let shown = families.iter().take(MOST_METHODS);
-    let mut series = vec![Series {
-        look: Look::Limit,
-        name: "allowed".to_owned(),
-        points: vec![(1.0, 0.5), (1.0, MOST_METHODS as f64 + 0.5)],
-        dots: false,
-    }];
+    let allowed = vec![(1.0, 0.5), (1.0, MOST_METHODS as f64 + 0.5)];
+    let mut series = vec![Series::line(Look::Limit, "allowed", allowed)];
     series.extend(shown.enumerate().map(|(rank, family)| {
         let step = family
             .step
             .map_or(String::new(), |step| format!(", step {}", short(step)));
-        Series {
-            look: Look::Other(rank),
-            name: format!("{}. {}{step}", rank + 1, family.family),
-            points: vec![(family.largest_residual.max(1e-12), rank as f64 + 1.0)],
-            dots: true,
-        }
+        let name = format!("{}. {}{step}", rank + 1, family.family);
+        let place = (family.largest_residual.max(LEAST), rank as f64 + 1.0);
+        Series::dots(Look::Other(rank), name, vec![place])
     }));
-    let residuals = families.iter().map(|f| f.largest_residual.max(1e-12));
+    let residuals = families.iter().map(|f| f.largest_residual.max(LEAST));
     Some(Plot {
         title: "Methods that fit.".to_owned(),
         finding,
@@ -61,19 +57,20 @@ pub(super) fn consistent(audited: &Audited) -> Option<Plot> {
     })
 }
 
-/// Factors from row to row against z; complex ones by magnitude.
+/// Magnitudes of the factors from row to row against that of z, beside those of `exp(z)`:
+/// dots, since it is no function of `|z|` where modes turn.
 pub(super) fn growth(audited: &Audited) -> Option<Plot> {
     let evidence = audited.evidence.as_ref()?;
     let modes: Vec<&GrowthOutcome> = evidence.runs.iter().flat_map(|run| &run.growth).collect();
-    let decaying: Vec<&GrowthOutcome> = modes
+    let measured: Vec<&GrowthOutcome> = modes
         .into_iter()
         .filter(|mode| size(mode.z) > 0.0 && size(mode.factor) > 0.0)
         .collect();
-    if decaying.is_empty() {
+    if measured.is_empty() {
         return None;
     }
     let sorted = |read: &dyn Fn(&GrowthOutcome) -> f64| {
-        let mut points: Vec<(f64, f64)> = decaying
+        let mut points: Vec<(f64, f64)> = measured
             .iter()
             .map(|mode| (size(mode.z), read(mode)))
             .collect();
@@ -95,6 +92,11 @@ pub(super) fn growth(audited: &Audited) -> Option<Plot> {
         }
         None => "The factors say nothing of the order.".to_owned(),
     };
+    let turns = measured.iter().any(|mode| mode.factor.1 != 0.0);
+    let finding = match turns {
+        true => finding + " Magnitudes only: an error of phase is not seen here.",
+        false => finding,
+    };
     let all: Vec<f64> = exact.iter().chain(&seen).map(|p| p.1).collect();
     let least = all.iter().copied().fold(f64::INFINITY, f64::min);
     let up_label = "|factor| from row to row".to_owned();
@@ -113,18 +115,8 @@ pub(super) fn growth(audited: &Audited) -> Option<Plot> {
         ),
         up,
         series: vec![
-            Series {
-                look: Look::Exact,
-                name: "|exp(z)|".to_owned(),
-                points: exact,
-                dots: false,
-            },
-            Series {
-                look: Look::Written,
-                name: "measured".to_owned(),
-                points: seen,
-                dots: true,
-            },
+            Series::dots(Look::Exact, "|exp(z)|", exact),
+            Series::dots(Look::Written, "measured", seen),
         ],
     })
 }

@@ -46,18 +46,12 @@ pub(super) fn values(
         across: time_axis(audited, curve.points.iter().map(|(t, _)| *t)),
         up: Axis::linear(label(&channel.name, &channel.unit), exact().chain(seen), UP),
         series: vec![
-            Series {
-                look: Look::Exact,
-                name: "exact".to_owned(),
-                points: curve.points.clone(),
-                dots: false,
-            },
-            Series {
-                look: Look::Written,
-                name: "written".to_owned(),
-                points: channel.trace.iter().map(|p| (p.time, p.written)).collect(),
-                dots: true,
-            },
+            Series::line(Look::Exact, "exact", curve.points.clone()),
+            Series::dots(
+                Look::Written,
+                "written",
+                channel.trace.iter().map(|p| (p.time, p.written)).collect(),
+            ),
         ],
     })
 }
@@ -75,37 +69,46 @@ pub(super) fn errors(
     let of = |read: fn(&PlotPoint) -> f64| -> Vec<(f64, f64)> {
         channel.trace.iter().map(|p| (p.time, read(p))).collect()
     };
-    let line = |look, name: &str, points| Series {
-        look,
-        name: name.to_owned(),
-        points,
-        dots: false,
-    };
     let mut series = vec![
-        line(Look::Resolution, "resolution", steady(of(|p| p.resolution))),
-        line(Look::Limit, "limit", steady(of(|p| p.limit))),
+        Series::line(Look::Resolution, "resolution", steady(of(|p| p.resolution))),
+        Series::line(Look::Limit, "limit", steady(of(|p| p.limit))),
     ];
-    let others = audited.runs.iter().filter(|other| other.file != run.file);
+    let others = audited
+        .runs
+        .iter()
+        .filter(|other| !std::ptr::eq(*other, run));
+    let more = others.clone().count().saturating_sub(MOST_OTHERS);
     for (number, other) in others.take(MOST_OTHERS).enumerate() {
         if let Some(same) = other.channels.iter().find(|c| c.name == channel.name) {
             let points = peaks(&same.trace);
-            series.push(line(Look::Other(number), &other.file, points));
+            series.push(Series::line(Look::Other(number), &other.file, points));
         }
     }
-    series.push(line(Look::Written, &run.file, peaks(&channel.trace)));
-    let (used, at) = (
-        used_text(errors.limit_used),
-        format!("t = {} {}", plain(errors.decisive.at), audited.time_unit),
-    );
+    series.push(Series::line(
+        Look::Written,
+        &run.file,
+        peaks(&channel.trace),
+    ));
+    let used = match used_text(errors.limit_used) {
+        used if used.ends_with('%') => format!("{used} of the limit"),
+        used => format!("{used} the limit"),
+    };
+    let at = format!("t = {} {}", plain(errors.decisive.at), audited.time_unit);
     let file = &run.file;
-    let finding = match channel.verdict {
-        Verdict::Pass => format!("{file} keeps the limit: {used} of it is used at {at}."),
-        _ if errors.broken => format!("{file} breaks the limit: {used} of it is used at {at}."),
+    let mut finding = match channel.verdict {
+        Verdict::Pass => format!("{file} keeps its limit: {used} at {at}."),
+        _ if errors.broken => format!("{file} breaks its limit: {used} at {at}."),
         Verdict::Undecided => {
             format!("{file}: somewhere the digits leave open whether the limit is kept.")
         }
-        Verdict::Fail => format!("{file}: rows are missing; {used} of the limit is used at {at}."),
+        Verdict::Fail => format!("{file}: rows are missing; {used} at {at}."),
     };
+    if channel.trace.iter().any(|point| point.error == 0.0) {
+        finding += " Rows without any error have no place on this axis.";
+    }
+    if more > 0 {
+        finding += &format!(" {more} more runs are not drawn.");
+    }
     let shown = series.iter().flat_map(|s| s.points.iter().map(|p| p.1));
     let shown: Vec<f64> = shown.collect();
     Some(Plot {
@@ -134,28 +137,30 @@ pub(super) fn label(name: &str, unit: &str) -> String {
     }
 }
 
-/// The largest errors: one for every few units of the page.
+/// The rows that matter within every few units of the page: the largest error, and the
+/// largest part of the limit.
 fn peaks(trace: &[PlotPoint]) -> Vec<(f64, f64)> {
     let (Some(first), Some(last)) = (trace.first(), trace.last()) else {
         return Vec::new();
     };
     let width = (last.time - first.time) / 90.0;
-    let mut points: Vec<(f64, f64)> = Vec::new();
-    let mut cell = -1.0;
-    for point in trace {
-        let (error, own) = (
-            point.error.abs(),
-            ((point.time - first.time) / width).floor(),
+    let cell = |point: &PlotPoint| ((point.time - first.time) / width).floor();
+    let mut points = Vec::new();
+    for cell in trace.chunk_by(|a, b| cell(a) == cell(b)) {
+        let most = |size: &dyn Fn(&PlotPoint) -> f64| {
+            (0..cell.len()).max_by(|&a, &b| size(&cell[a]).total_cmp(&size(&cell[b])))
+        };
+        let mut kept = [
+            most(&|point| point.error.abs()),
+            most(&|point| point.error.abs() / point.limit.max(f64::MIN_POSITIVE)),
+        ];
+        kept.sort();
+        let mut kept: Vec<usize> = kept.into_iter().flatten().collect();
+        kept.dedup();
+        points.extend(
+            kept.into_iter()
+                .map(|at| (cell[at].time, cell[at].error.abs())),
         );
-        match points.last_mut() {
-            Some(kept) if own == cell => {
-                if error > kept.1 || !kept.1.is_finite() {
-                    *kept = (point.time, error);
-                }
-            }
-            _ => points.push((point.time, error)),
-        }
-        cell = own;
     }
     points
 }
