@@ -96,14 +96,18 @@ fn claims(then: &EvidenceReport, now: &EvidenceReport, sink: &mut Sink) {
             // Where the method is not believed, no step of it needs a word.
             continue;
         }
-        let word = |verdict: &str| match verdict {
+        let is = match new.verdict.as_str() {
             "agrees" => "agree with",
             "contradicts" => "contradict",
-            _ => "cannot tell",
+            _ => "cannot tell of",
         };
-        let (is, was) = (word(&new.verdict), word(&old.verdict));
+        let was = match old.verdict.as_str() {
+            "agrees" => "agreed with it",
+            "contradicts" => "contradicted it",
+            _ => "could not tell",
+        };
         let text = format!(
-            "the rows {is} the {what} claimed, {}; earlier: {was}; {}",
+            "the rows {is} the {what} claimed, {}; earlier they {was}; {}",
             new.stated, new.text
         );
         sink.tell(way, ChangeKind::Claim, text);

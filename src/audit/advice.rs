@@ -51,7 +51,13 @@ pub(super) fn advise(
         run.role == Role::Result && errors.into_iter().any(|errors| errors.broken)
     };
     let broken = audited.runs.iter().filter(breaks);
+    // A step that was not taken is no matter.
+    let believed = audited.evidence.as_ref().is_none_or(|evidence| {
+        let mut claims = evidence.claims.iter();
+        claims.all(|claim| claim.what == "order" || claim.support != Support::Contradicts)
+    });
     let failing = broken.filter_map(|run| run.step).reduce(f64::max);
+    let failing = failing.filter(|_| believed);
     let asked = explain::Asked {
         measured,
         jumps: model
@@ -59,6 +65,10 @@ pub(super) fn advise(
             .jump_after(model.exact.from(), f64::INFINITY)
             .is_some(),
         failing,
+        explained: audited
+            .causes
+            .iter()
+            .any(|cause| !cause.kind.starts_with("jump")),
         time_unit: &audited.time_unit,
     };
     audited.advice = explain::advice(&asked, computed);

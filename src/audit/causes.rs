@@ -123,7 +123,13 @@ pub(super) fn look(
                 cause.text
             );
             take_back(answer, text.clone());
-            mended_by.get_or_insert(text);
+            mended_by.get_or_insert_with(|| {
+                format!(
+                    "the rows do not follow the method as they stand; nor do those of {}, for which this \
+                     is likely: {}",
+                    run.outcome.file, cause.text
+                )
+            });
         }
         for cause in causes {
             let known = |other: &CauseOutcome| other.kind == cause.kind.word();

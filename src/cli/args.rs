@@ -107,7 +107,7 @@ pub struct AuditArguments {
     pub against: Option<PathBuf>,
     /// By what share a worst error must have grown to be worse, as in 0.2 for 20 %
     /// [default: 0.2]
-    #[arg(long, value_name = "SHARE", requires = "against", allow_negative_numbers = true, value_parser = not_negative)]
+    #[arg(long, value_name = "SHARE", requires = "against", allow_negative_numbers = true, value_parser = share)]
     pub worse_by: Option<f64>,
     /// Threads to work with [default: all processors]
     #[arg(long, value_name = "N", value_parser = clap::value_parser!(u16).range(1..=256))]
@@ -285,6 +285,13 @@ fn not_negative(text: &str) -> Result<f64, String> {
             Err("expected a number not below zero".to_owned())
         }
     })
+}
+
+pub(super) fn share(text: &str) -> Result<f64, String> {
+    if text.contains('%') {
+        return Err("expected a share, as in 0.2 for 20 %".to_owned());
+    }
+    not_negative(text)
 }
 
 #[cfg(test)]

@@ -16,7 +16,7 @@ use std::sync::atomic::{AtomicBool, Ordering};
 use clap::Args;
 use tempfile::TempDir;
 
-use super::args::Sources;
+use super::args::{Sources, share};
 use super::plan::library;
 use super::reports::{self, Asked, Inputs};
 use crate::audit::{Plan, Planned, audit};
@@ -43,7 +43,7 @@ Example: a plan with the command of a simulator, the cases and the steps
 
 The command is run without a shell, in a folder of its own for each run. {case} is a
 file as `stepgauge case NAME --json` writes it, {step} the step in the time unit of the
-case, {output} the file to write, {plan} the folder of the plan. A plan may also hold
+case (parts of a time constant are rounded down to steps that divide the window), {output} the file to write, {plan} the folder of the plan. A plan may also hold
 jobs, [limits], [columns] and [layout], the latter as in submission.toml.
 
 Exit status: 0 all in order, 1 a run or its audit failed or is undecided, 2 the plan
@@ -59,6 +59,13 @@ pub struct DriveArguments {
     /// Writes a report whose kind follows from its ending, as `audit` does (repeatable)
     #[arg(long, value_name = "FILE")]
     pub write: Vec<PathBuf>,
+    /// Compares with an earlier .json report and says what became worse or better
+    #[arg(long, value_name = "EARLIER.json")]
+    pub against: Option<PathBuf>,
+    /// By what share a worst error must have grown to be worse, as in 0.2 for 20 %
+    /// [default: 0.2]
+    #[arg(long, value_name = "SHARE", requires = "against", allow_negative_numbers = true, value_parser = share)]
+    pub worse_by: Option<f64>,
     /// Cases beside the built-in ones
     #[command(flatten)]
     pub sources: Sources,
@@ -95,7 +102,10 @@ impl Root {
 pub(super) fn drive(arguments: &DriveArguments) -> Result<Driven, Vec<Fault>> {
     let library = library(&arguments.sources)?;
     let plan = plan::read(&arguments.plan, &library)?;
-    let reports = reports::check(&arguments.write, &Inputs::file(&arguments.plan))?;
+    let reports = reports::check(
+        &arguments.write,
+        &Inputs::files([Some(&arguments.plan), arguments.against.as_ref()]),
+    )?;
     let drawn = arguments.write.iter().any(|path| reports::has_plots(path));
     let root = root(arguments.into.as_deref()).map_err(|fault| vec![fault])?;
     let stop = Stop::listen();

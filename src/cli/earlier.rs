@@ -3,7 +3,6 @@
 use std::io::Read;
 use std::path::Path;
 
-use super::args::AuditArguments;
 use crate::against::{WORSE_BY, compare, read};
 use crate::fault::{Fault, Result};
 use crate::outcome::{Changes, Outcome};
@@ -24,15 +23,15 @@ impl Earlier {
     ///
     /// # Errors
     /// A file that is not there or too large, and what is wrong with its text.
-    pub(super) fn read(arguments: &AuditArguments) -> Result<Option<Earlier>> {
-        let Some(path) = &arguments.against else {
+    pub(super) fn read(path: Option<&Path>, worse_by: Option<f64>) -> Result<Option<Earlier>> {
+        let Some(path) = path else {
             return Ok(None);
         };
         let text = text(path).map_err(|fault| fault.in_file(path))?;
         Ok(Some(Earlier {
             report: read(&text).map_err(|fault| fault.in_file(path))?,
             name: path.to_string_lossy().into_owned(),
-            worse_by: arguments.worse_by.unwrap_or(WORSE_BY),
+            worse_by: worse_by.unwrap_or(WORSE_BY),
         }))
     }
 

@@ -147,10 +147,11 @@ pub(super) struct Inputs {
 }
 
 impl Inputs {
-    /// One file and nothing else.
-    pub(super) fn file(path: &Path) -> Inputs {
+    /// These files and nothing else.
+    pub(super) fn files<'p>(paths: impl IntoIterator<Item = Option<&'p PathBuf>>) -> Inputs {
+        let paths = paths.into_iter().flatten();
         Inputs {
-            files: path.canonicalize().into_iter().collect(),
+            files: paths.filter_map(|path| path.canonicalize().ok()).collect(),
             earlier: None,
             unread: Vec::new(),
         }

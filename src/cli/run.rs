@@ -99,14 +99,16 @@ pub fn run(arguments: &Arguments) -> ExitCode {
 fn run_audit(arguments: &AuditArguments) -> Result<u8, Stop> {
     let plan = plan::plan(arguments)?;
     let asked = reports::check(&arguments.write, &Inputs::of(arguments, &plan))?;
-    let earlier = Earlier::read(arguments)?;
+    let earlier = Earlier::read(arguments.against.as_deref(), arguments.worse_by)?;
     let mut outcome = watched::audit(plan, arguments.quiet);
     outcome.changes = earlier.map(|earlier| earlier.changes(&outcome));
     conclude(&outcome, &asked, arguments.quiet)
 }
 
 fn run_drive(arguments: &DriveArguments) -> Result<u8, Stop> {
-    let driven = drive(arguments)?;
+    let earlier = Earlier::read(arguments.against.as_deref(), arguments.worse_by)?;
+    let mut driven = drive(arguments)?;
+    driven.outcome.changes = earlier.map(|earlier| earlier.changes(&driven.outcome));
     let status = conclude(&driven.outcome, &driven.reports, false);
     if let Some(folder) = driven.kept {
         let folder = escaped(&folder.display().to_string());

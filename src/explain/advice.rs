@@ -55,6 +55,8 @@ pub struct Asked<'a> {
     pub jumps: bool,
     /// The step of the result, where it breaks its limit.
     pub failing: Option<f64>,
+    /// True where something else than jumps is likely to be the cause.
+    pub explained: bool,
     /// The unit of time of the case.
     pub time_unit: &'a str,
 }
@@ -64,6 +66,7 @@ pub fn advice(asked: &Asked, computed: Option<Computed>) -> Option<AdviceOutcome
     let Asked {
         measured,
         failing,
+        explained,
         time_unit,
         ..
     } = *asked;
@@ -85,7 +88,7 @@ pub fn advice(asked: &Asked, computed: Option<Computed>) -> Option<AdviceOutcome
         parts.push(of_method(computed.method, time_unit));
         parts.extend(of_jumps(&computed, time_unit));
         let largest = &computed.method.largest;
-        parts.extend(failing.and_then(|taken| not_the_step(&computed, taken)));
+        parts.extend(failing.and_then(|taken| not_the_step(&computed, taken, explained)));
         let stable = largest.approx_stable.filter(|&stable| stable > 0.0);
         if largest_step.is_none() {
             let on_jumps = computed.method.on_jumps.as_ref();
@@ -182,7 +185,7 @@ fn of_jumps(computed: &Computed, time_unit: &str) -> Option<String> {
 }
 
 /// Where a run fails at a step with which its method would keep the limit.
-fn not_the_step(computed: &Computed, taken: f64) -> Option<String> {
+fn not_the_step(computed: &Computed, taken: f64, explained: bool) -> Option<String> {
     let kept = computed.method.largest.kept.as_ref();
     let stable = computed.method.largest.approx_stable;
     if stable.is_some_and(|stable| taken > stable) {
@@ -191,7 +194,8 @@ fn not_the_step(computed: &Computed, taken: f64) -> Option<String> {
     if kept.is_some_and(|kept| taken <= kept.step) {
         return Some("the step is not what fails here".to_owned());
     }
-    let own = computed.method.on_jumps.as_ref()?.own.as_ref()?;
+    let own = computed.method.on_jumps.as_ref()?.own.as_ref();
+    let own = own.filter(|_| !explained)?;
     let count = computed.jumps.common_with_end? / taken;
     let meets = (count - count.round()).abs() <= 1e-6 * count && count >= 0.5;
     (meets && taken <= own.step).then(|| {
@@ -250,6 +254,7 @@ mod tests {
             measured: Some((1.0, 2.0)),
             jumps: false,
             failing: None,
+            explained: false,
             time_unit: "s",
         };
         let advice = advice(&asked, Some(computed)).unwrap();
@@ -305,6 +310,7 @@ mod tests {
                 measured: None,
                 jumps: true,
                 failing,
+                explained: false,
                 time_unit: "s",
             };
             advice(&asked, Some(computed)).unwrap().text

@@ -9,8 +9,10 @@ use super::chance::{
     BY_CHANCE_FEW, LAST_DIGITS, binds, elsewhere, far_closer, is_implicit, is_sharp, is_undone,
     of_arithmetic, of_iteration,
 };
+use super::stated::{at_no_such_step, no_such_step, of_step_alone};
 use super::words::{family_at, of_peak, reading, share};
-use crate::method::{Evidence, Family, Method, Reading, Skipped, Tried};
+use crate::fault::nearest;
+use crate::method::{Evidence, Family, METHODS, Method, Reading, Skipped, Tried};
 use crate::number::{plain, short};
 
 /// What the rows say of a claim.
@@ -117,8 +119,14 @@ pub fn of_claim(evidence: &Evidence, claimed: &Claimed) -> Option<Answer> {
         text,
     };
     if let (Some(name), true) = (claimed.name, claimed.methods.is_empty()) {
-        let text =
-            format!("`{name}` is not in the catalogue; `stepgauge methods` lists what it holds");
+        let known = METHODS
+            .iter()
+            .flat_map(|m| std::iter::once(m.name).chain(m.aliases.iter().copied()));
+        let near = nearest(name, known);
+        let near = near.map_or(String::new(), |near| format!(", did you mean `{near}`?"));
+        let text = format!(
+            "`{name}` is not in the catalogue{near}; `stepgauge methods` lists what it holds"
+        );
         return Some(of_step_alone(evidence, claimed).map_or_else(
             || cannot(text.clone()),
             |step| Answer {
@@ -292,8 +300,22 @@ fn of_method(evidence: &Evidence, claimed: &Claimed, cannot: &dyn Fn(String) -> 
     });
     if own.is_none() && claimed.step.is_some() {
         if claimed.steps.is_none() {
+            if let Some(family) = at_no_such_step(evidence, claimed) {
+                let own = family.methods.iter().any(|m| claimed.is_claimed(m));
+                let method = if own {
+                    Support::Agrees
+                } else {
+                    Support::Contradicts
+                };
+                return Answer {
+                    support: Support::Contradicts,
+                    method: Some(method),
+                    step: Some(Support::Contradicts),
+                    text: no_such_step(family, claimed),
+                };
+            }
             return cannot(format!(
-                "rows are not all one whole number of steps of {} {} apart; write rows at even distances",
+                "rows do not lie a whole number of steps of {} {} apart; write rows at steps",
                 plain(claimed.step.unwrap_or_default()),
                 claimed.time_unit
             ));
@@ -433,42 +455,4 @@ pub(super) fn early(own: &Tried, label: &str) -> String {
          explain; a tighter tolerance of its solver would settle it",
         short(own.fit.residual)
     )
-}
-
-/// A step without a method: what the consistent methods say.
-///
-/// A method that nobody named may be one that the catalogue does not hold. Only a fit that
-/// no such method would meet by chance speaks against the step.
-fn of_step_alone(evidence: &Evidence, claimed: &Claimed) -> Option<Answer> {
-    let steps = claimed.steps?;
-    let stated = claimed.step?;
-    if evidence.is_exact() || claimed.adaptive {
-        return None;
-    }
-    let at = |family: &Family| {
-        family.steps == steps || (family.range.0..=family.range.1).contains(&steps)
-    };
-    let answer = |support: Support, text: String| Answer {
-        support,
-        method: None,
-        step: Some(support),
-        text,
-    };
-    let family = evidence.consistent.first()?;
-    if evidence.consistent.iter().all(at) && family.is_told() {
-        let text = format!("the rows fit {}", family_at(family, claimed.time_unit));
-        return Some(answer(Support::Agrees, text));
-    }
-    let mut families = evidence.consistent.iter();
-    let family = families.find(|family| family.is_beyond_chance())?;
-    if evidence.consistent.iter().any(at) {
-        return None;
-    }
-    let text = format!(
-        "the rows fit {}, and no method at step {} {}",
-        family_at(family, claimed.time_unit),
-        plain(stated),
-        claimed.time_unit
-    );
-    Some(answer(Support::Contradicts, text))
 }

@@ -6,6 +6,7 @@
 mod ask;
 mod chance;
 mod claims;
+mod stated;
 mod words;
 
 pub use ask::ask;

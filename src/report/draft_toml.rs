@@ -233,7 +233,7 @@ fn layout_part(drafted: &Drafted) -> String {
     } else if !digits.is_empty() {
         text += &remark(&format!(
             "Values look printed to {}; if that is wrong, state `digits = N` under [layout].",
-            digits.join(" or ")
+            digits.join("; ")
         ));
     }
     text

@@ -2,8 +2,9 @@
 
 use maud::{Markup, html};
 
-use super::outside;
+use super::{more, outside};
 use crate::outcome::{Change, Outcome};
+use crate::report::changes_text::NOTHING_COMPARED;
 
 /// Changes shown of each sort.
 const MOST: usize = 100;
@@ -17,13 +18,17 @@ pub(super) fn section(outcome: &Outcome) -> Markup {
     html! {
         section aria-labelledby="changes" {
             h2 id="changes" { "Since " (name) }
+            @if changes.compared == 0 { p { (NOTHING_COMPARED) } }
             @if changes.worse.is_empty() { p { "Nothing became worse." } }
             (list("Worse", &changes.worse))
             (list("Better", &changes.better))
             (list("Changed, neither worse nor better", &changes.other))
             @if !changes.new_submissions.is_empty() {
                 h3 { "Not in " (name) }
-                ul { @for new in changes.new_submissions.iter().take(MOST) { li { (outside(new)) } } }
+                ul {
+                    @for new in changes.new_submissions.iter().take(MOST) { li { (outside(new)) } }
+                    (more(changes.new_submissions.len(), MOST))
+                }
             }
         }
     }
@@ -37,7 +42,7 @@ fn list(heading: &str, changes: &[Change]) -> Markup {
                 @for change in changes.iter().take(MOST) {
                     li { strong { (outside(&change.submission)) } ": " (outside(&change.text)) }
                 }
-                @if changes.len() > MOST { li { (changes.len() - MOST) " more; the JSON report has all" } }
+                (more(changes.len(), MOST))
             }
         }
     }

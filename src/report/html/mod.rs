@@ -6,7 +6,7 @@ mod changes;
 mod submission;
 mod summary;
 
-use maud::{DOCTYPE, PreEscaped, html};
+use maud::{DOCTYPE, Markup, PreEscaped, html};
 
 use super::plot;
 use crate::fault::escaped;
@@ -14,6 +14,8 @@ use crate::outcome::Outcome;
 
 /// The page keeps below two megabytes: many submissions have one channel drawn each.
 const ROOM: usize = 12;
+/// Bytes of plots: tables and sentences need the rest.
+const MOST_PLOTTED: usize = 1_400_000;
 /// Channels drawn while there is room.
 const MOST_CHANNELS: usize = 4;
 /// Characters of a name or a sentence from outside.
@@ -27,6 +29,7 @@ pub fn audit_html(outcome: &Outcome) -> String {
         1
     };
     let costs = plot::of_costs(outcome);
+    let plots = plots(outcome, channels);
     let page = html! {
         (DOCTYPE)
         html lang="en" {
@@ -59,7 +62,7 @@ pub fn audit_html(outcome: &Outcome) -> String {
                         }
                     }
                     @for (number, audited) in outcome.submissions.iter().enumerate() {
-                        (submission::section(audited, number, channels))
+                        (submission::section(audited, number, &plots[number]))
                     }
                 }
                 footer { p { (super::table::scope(outcome)) } }
@@ -69,6 +72,29 @@ pub fn audit_html(outcome: &Outcome) -> String {
     let mut text = page.into_string();
     text.push('\n');
     text
+}
+
+/// Plots of every submission, of those that are not in order first, as long as there is room.
+fn plots(outcome: &Outcome, channels: usize) -> Vec<Vec<Markup>> {
+    let mut order: Vec<usize> = (0..outcome.submissions.len()).collect();
+    order.sort_by_key(|&number| outcome.submissions[number].in_order());
+    let mut plots = vec![Vec::new(); outcome.submissions.len()];
+    let mut room = MOST_PLOTTED;
+    for number in order {
+        let drawn = plot::of_submission(&outcome.submissions[number], channels);
+        let size: usize = drawn.iter().map(|plot| plot.0.len()).sum();
+        let Some(left) = room.checked_sub(size) else {
+            break;
+        };
+        room = left;
+        plots[number] = drawn;
+    }
+    plots
+}
+
+/// How many of a list are not shown.
+fn more(all: usize, most: usize) -> Markup {
+    html! { @if all > most { li { (all - most) " more; the JSON report has all" } } }
 }
 
 /// Text from outside: nothing that steers, no more than fits.

@@ -4,26 +4,25 @@
 use maud::{Markup, html};
 
 use super::summary::badge;
-use super::{anchor, outside};
+use super::{anchor, more, outside};
 use crate::judge::Verdict;
 use crate::number::{measured, plain, short};
 use crate::outcome::{Audited, ClaimOutcome, LimitsFrom, RunOutcome};
-use crate::report::plot;
 use crate::report::table::{order_text, share_text, step_text};
 use crate::submission::{Expect, Role};
 
 /// Sentences, rows and findings shown of one submission.
 const MOST: usize = 24;
 
-pub(super) fn section(audited: &Audited, number: usize, channels: usize) -> Markup {
+pub(super) fn section(audited: &Audited, number: usize, plots: &[Markup]) -> Markup {
     let id = anchor(number);
-    let plots = plot::of_submission(audited, channels);
     html! {
         section class="submission" aria-labelledby=(id) {
             h2 id=(id) { (badge(audited)) " " (outside(&audited.name)) }
             (facts(audited))
             (sentences(audited))
-            @if !plots.is_empty() { div class="plots" { @for plot in &plots { (plot) } } }
+            @if plots.is_empty() && !audited.curves.is_empty() { p { "No plots: the page would grow too large. Audit it alone to see them." } }
+            @if !plots.is_empty() { div class="plots" { @for plot in plots { (plot) } } }
             (numbers(audited))
             (findings(audited))
             p { a href="#all" { "Back to all submissions" } }
@@ -101,7 +100,7 @@ fn sentences(audited: &Audited) -> Markup {
             h3 { "Why" }
             ul {
                 @for reason in audited.reasons.iter().take(MOST) { li { (outside(reason)) } }
-                @if audited.reasons.len() > MOST { li { (audited.reasons.len() - MOST) " more; the JSON report has all" } }
+                (more(audited.reasons.len(), MOST))
             }
         }
         @if !audited.causes.is_empty() {
@@ -115,11 +114,17 @@ fn sentences(audited: &Audited) -> Markup {
         @if let Some(advice) = &audited.advice { h3 { "Step" } p { (outside(&advice.text)) } }
         @if !audited.settings.is_empty() {
             h3 { "Error settings" }
-            ul { @for settings in audited.settings.iter().take(MOST) { li { (outside(&settings.text)) } } }
+            ul {
+                @for settings in audited.settings.iter().take(MOST) { li { (outside(&settings.text)) } }
+                (more(audited.settings.len(), MOST))
+            }
         }
         @if !audited.notes.is_empty() {
             h3 { "Notes" }
-            ul { @for note in audited.notes.iter().take(MOST) { li { (outside(note)) } } }
+            ul {
+                @for note in audited.notes.iter().take(MOST) { li { (outside(note)) } }
+                (more(audited.notes.len(), MOST))
+            }
         }
     }
 }
@@ -210,7 +215,7 @@ fn findings(audited: &Audited) -> Markup {
                         ": " (outside(&finding.text))
                     }
                 }
-                @if found.len() > MOST { li { (found.len() - MOST) " more; the JSON report has all" } }
+                (more(found.len(), MOST))
             }
         }
     }

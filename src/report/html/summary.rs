@@ -154,13 +154,13 @@ pub(super) fn table(outcome: &Outcome) -> Markup {
                         tr {
                             th scope="col" { "verdict" }
                             th scope="col" { "submission" }
-                            th scope="col" { "case" }
-                            th scope="col" { "producer" }
                             th scope="col" { "channel" }
                             th scope="col" class="number" { "worst error" }
                             th scope="col" class="number" { "limit used" }
                             th scope="col" { "order" }
                             th scope="col" { "claims" }
+                            th scope="col" { "case" }
+                            th scope="col" { "producer" }
                         }
                     }
                     tbody { @for (number, audited) in rows { (row(number, audited)) } }
@@ -177,8 +177,6 @@ fn row(number: usize, audited: &Audited) -> Markup {
         tr {
             td { (badge(audited)) }
             th scope="row" { a href={ "#" (anchor(number)) } { (outside(&audited.name)) } }
-            td { (audited.case.as_deref().unwrap_or("none")) }
-            td { (outside(audited.producer.as_deref().unwrap_or(""))) }
             td { @if let Some((_, channel)) = worst { (outside(&channel.name)) } }
             td class="number" {
                 @if let Some((channel, e)) = errors { (measured(e.worst, e.resolution)) " " (channel.unit) }
@@ -188,6 +186,8 @@ fn row(number: usize, audited: &Audited) -> Markup {
             }
             td class="brief" { (order_text(audited)) }
             td { (claims(audited)) }
+            td { (audited.case.as_deref().unwrap_or("none")) }
+            td { (outside(audited.producer.as_deref().unwrap_or(""))) }
         }
     }
 }

@@ -16,7 +16,7 @@ const WIDTH: f64 = 440.0;
 const HEIGHT: f64 = 290.0;
 /// Places of the ends of the axes.
 pub(super) const ACROSS: (f64, f64) = (62.0, 428.0);
-pub(super) const UP: (f64, f64) = (236.0, 40.0);
+pub(super) const UP: (f64, f64) = (236.0, 52.0);
 
 /// How a series is drawn; the page has a style for each.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
@@ -279,7 +279,7 @@ impl Plot {
 
 /// A name that fits into a legend.
 fn shortened(name: &str) -> String {
-    const MOST: usize = 34;
+    const MOST: usize = 24;
     if name.chars().count() <= MOST {
         return name.to_owned();
     }

@@ -19,7 +19,8 @@ pub(super) fn consistent(audited: &Audited) -> Option<Plot> {
     let run = evidence.runs.iter().find(telling)?;
     let mut families: Vec<&Consistent> = run.consistent.iter().collect();
     families.sort_by(|a, b| a.largest_residual.total_cmp(&b.largest_residual));
-    let best = families.first()?;
+    // One alone needs no picture: the claims name it.
+    let best = families.first().filter(|_| families.len() > 1)?;
     let finding = format!(
         "{}: {} {} within what digits and rounding allow; the closest is {} with {} of it.",
         run.file,

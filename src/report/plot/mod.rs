@@ -41,14 +41,10 @@ pub(super) fn of_costs(outcome: &Outcome) -> Vec<Markup> {
 /// The run that the table shows: the result with the worst channel.
 fn shown_run(audited: &Audited) -> Option<&RunOutcome> {
     let results = audited.runs.iter().filter(|run| run.role == Role::Result);
-    let worst = |run: &&RunOutcome| {
-        let channels = run.channels.iter();
-        channels.max_by(|a, b| super::table::worse(a, b)).cloned()
-    };
-    results
-        .max_by(|a, b| match (worst(a), worst(b)) {
-            (Some(a), Some(b)) => super::table::worse(&a, &b),
-            (a, b) => a.is_some().cmp(&b.is_some()),
-        })
-        .or(audited.runs.first())
+    let channels = results
+        .clone()
+        .flat_map(|run| run.channels.iter().map(move |c| (run, c)));
+    let worst = channels.max_by(|a, b| super::table::worse(a.1, b.1));
+    let first = || results.clone().next().or(audited.runs.first());
+    worst.map(|(run, _)| run).or_else(first)
 }

@@ -109,8 +109,15 @@ pub(super) fn errors(
     if more > 0 {
         finding += &format!(" {more} more runs are not drawn.");
     }
-    let shown = series.iter().flat_map(|s| s.points.iter().map(|p| p.1));
-    let shown: Vec<f64> = shown.collect();
+    // What digits resolve of a zero would squeeze the rest.
+    let errors = series
+        .iter()
+        .skip(1)
+        .flat_map(|s| s.points.iter().map(|p| p.1));
+    let mut shown: Vec<f64> = errors.filter(|&error| error > 0.0).collect();
+    let least = 1e-3 * shown.iter().copied().fold(f64::INFINITY, f64::min);
+    let resolutions = series[0].points.iter().map(|p| p.1);
+    shown.extend(resolutions.filter(|&resolution| resolution >= least));
     Some(Plot {
         title: format!("Errors of {}.", channel.name),
         finding,
