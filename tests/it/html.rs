@@ -147,9 +147,9 @@ fn the_page_of_the_demo() {
     assert!(says(
         "winch_20ms.csv: somewhere the digits leave open whether the limit is kept."
     ));
-    assert!(says("h10.csv keeps the limit: 83 % of it is used"));
+    assert!(says("h10.csv keeps its limit: 83 % of the limit at t ="));
     assert!(says(
-        "bus_100us.tsv breaks the limit: 65.8 times of it is used"
+        "bus_100us.tsv breaks its limit: 65.8 times the limit at t ="
     ));
     assert!(text_of(document.root_element()).contains("It is no approval of a simulator"));
 }

@@ -18,11 +18,6 @@ const MOST_FILES: usize = 6;
 pub(super) fn headline(outcome: &Outcome) -> String {
     let all = outcome.submissions.len() + outcome.not_audited.len();
     let wrong = troubled(outcome).count() + outcome.not_audited.len();
-    let things = if all == 1 {
-        "submission is"
-    } else {
-        "submissions are"
-    };
     if outcome.left > 0 {
         let left = counted(outcome.left as u64, "submission");
         return format!("interrupted: {wrong} of {all} not in order, {left} left");
@@ -39,8 +34,9 @@ pub(super) fn headline(outcome: &Outcome) -> String {
         (0, _) => "nothing was audited".to_owned(),
         (1, 0) => "the submission is in order".to_owned(),
         (1, _) => "the submission is not in order".to_owned(),
-        (_, 0) => format!("all {all} {things} in order"),
-        _ => format!("{wrong} of {all} {things} not in order"),
+        (_, 0) => format!("all {all} submissions are in order"),
+        (_, 1) => format!("1 of {all} submissions is not in order"),
+        _ => format!("{wrong} of {all} submissions are not in order"),
     }
 }
 
