@@ -162,6 +162,13 @@ impl Library {
             .unwrap_or_default()
             .to_string_lossy()
             .into_owned();
+        // The name is that of folders and files that `drive` makes.
+        let plain = |c: char| c.is_ascii_alphanumeric() || "-_.".contains(c);
+        if slug.starts_with('.') || !slug.chars().all(plain) {
+            let fault =
+                Fault::new("a case is named by its file, and this name has other characters");
+            return Err(placed(fault.help("use a-z, 0-9, - and _ only")));
+        }
         let case = Case::parse(&slug, &text, &Replacements::new()).map_err(|faults| {
             faults
                 .into_iter()

@@ -28,6 +28,7 @@ use crate::submission::{LimitsStated, Submission};
 use handed_in::submission_toml;
 use plan::{Chosen, DrivePlan};
 use runs::{Failures, run_all, run_name, unwritten, write};
+use words::Filling;
 
 /// Arguments of `drive`.
 #[derive(Debug, Args)]
@@ -102,10 +103,7 @@ impl Root {
 pub(super) fn drive(arguments: &DriveArguments) -> Result<Driven, Vec<Fault>> {
     let library = library(&arguments.sources)?;
     let plan = plan::read(&arguments.plan, &library)?;
-    let reports = reports::check(
-        &arguments.write,
-        &Inputs::files([Some(&arguments.plan), arguments.against.as_ref()]),
-    )?;
+    let reports = reports::check(&arguments.write, &inputs(arguments, &plan))?;
     let drawn = arguments.write.iter().any(|path| reports::has_plots(path));
     let root = root(arguments.into.as_deref()).map_err(|fault| vec![fault])?;
     let stop = Stop::listen();
@@ -136,6 +134,26 @@ fn kept(root: Root) -> Fault {
         Root::Temporary(folder) => folder.keep(),
     };
     Fault::new("the runs that were made are kept here").in_file(&folder)
+}
+
+/// What a plan and its command read: no report may take its place.
+fn inputs(arguments: &DriveArguments, plan: &DrivePlan) -> Inputs {
+    let nothing = Path::new("");
+    let filling = Filling {
+        case: nothing,
+        step: "",
+        output: nothing,
+        plan: &plan.folder,
+    };
+    let words = plan.command.iter().map(|word| word.fill(&filling));
+    // As in --config=FILE.
+    let paths = words.flat_map(|word| {
+        let text = word.to_string_lossy().into_owned();
+        let value = text.split_once('=').map(|(_, value)| PathBuf::from(value));
+        [Some(PathBuf::from(word)), value]
+    });
+    let named = [Some(arguments.plan.clone()), arguments.against.clone()];
+    Inputs::files(named.into_iter().chain(paths).flatten())
 }
 
 /// How the user stops everything: the commands are in groups of their own, which the

@@ -148,8 +148,8 @@ pub(super) struct Inputs {
 
 impl Inputs {
     /// These files and nothing else.
-    pub(super) fn files<'p>(paths: impl IntoIterator<Item = Option<&'p PathBuf>>) -> Inputs {
-        let paths = paths.into_iter().flatten();
+    pub(super) fn files(paths: impl IntoIterator<Item = PathBuf>) -> Inputs {
+        let paths = paths.into_iter();
         Inputs {
             files: paths.filter_map(|path| path.canonicalize().ok()).collect(),
             earlier: None,
@@ -174,7 +174,8 @@ impl Inputs {
             true => Path::new("."),
             false => folder,
         });
-        let true_path = |path: &Path| path.canonicalize().ok();
+        // A run that is named is an input even where it is missing.
+        let true_path = |path: &Path| path.canonicalize().ok().or_else(|| place(path).ok());
         Inputs {
             files: files.chain(cases).filter_map(true_path).collect(),
             earlier: arguments.against.as_deref().and_then(true_path),
@@ -184,10 +185,9 @@ impl Inputs {
 
     /// That a report leaves all of them alone.
     fn spare(&self, path: &Path, place: &Path, kind: Kind) -> Result<(), Fault> {
-        // What is not there yet is nobody's input.
-        let Ok(found) = path.canonicalize() else {
-            return Ok(());
-        };
+        let there = path.canonicalize().ok();
+        let is_there = there.is_some();
+        let found = there.unwrap_or_else(|| place.to_owned());
         let help = "give the report another name";
         if self.earlier.as_ref() == Some(&found) {
             let text = "this report would overwrite the one that `--against` compares with";
@@ -197,7 +197,7 @@ impl Inputs {
             let text = "this report would overwrite a file that is audited";
             return Err(Fault::new(text).help(help));
         }
-        let unread = self.unread.iter().any(|folder| place.starts_with(folder));
+        let unread = is_there && self.unread.iter().any(|folder| place.starts_with(folder));
         if unread && kind == Kind::Csv && !is_own_table(path) {
             let text = "this report would overwrite a file beside a submission that cannot be \
                         read, perhaps one of its runs";

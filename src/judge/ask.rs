@@ -40,7 +40,9 @@ pub fn ask(linear: &Linear, record: &Record, claimed: &Claimed) -> (Evidence, Op
                 claimed.name.unwrap_or_default()
             ));
         }
+        // A step that does not divide the rows has no pair beside them.
         let own = found.best(claimed.methods, claimed.steps);
+        let own = own.filter(|_| claimed.divides_rows());
         // A mode of a pair and the pair at another step may both meet the digits.
         let elsewhere = !claimed.methods.iter().any(|method| is_pair(method))
             && own.is_some_and(|own| elsewhere(&found, claimed, own).is_some());
@@ -148,7 +150,11 @@ fn has_a_name(family: &Family) -> bool {
 fn starts_otherwise(linear: &Linear, record: &Record, claimed: &Claimed, steps: &[u64]) -> bool {
     let remembers = |m: &&Method| m.steps_back() > 1;
     let all = record.states(linear.size()).is_some() && claimed.step.is_some();
-    if !all || claimed.methods.is_empty() || claimed.methods.iter().any(remembers) {
+    if !all
+        || !claimed.divides_rows()
+        || claimed.methods.is_empty()
+        || claimed.methods.iter().any(remembers)
+    {
         return false;
     }
     let rest = record.from_row(OTHER_START);

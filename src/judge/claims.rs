@@ -69,6 +69,11 @@ impl Claimed<'_> {
         self.methods.iter().any(|method| is_implicit(method))
     }
 
+    /// True unless a step is stated of which the rows do not lie a whole number apart.
+    pub(super) fn divides_rows(&self) -> bool {
+        self.step.is_none() || self.steps.is_some()
+    }
+
     /// True for the methods that the name means.
     pub(super) fn is_claimed(&self, method: &Method) -> bool {
         self.methods.iter().any(|own| own.name == method.name)
@@ -170,9 +175,8 @@ fn of_method(evidence: &Evidence, claimed: &Claimed, cannot: &dyn Fn(String) -> 
         step: claimed.step.map(|_| support),
         text,
     };
-    let fits_rows = claimed.step.is_none() || claimed.steps.is_some();
     let own = evidence.best(claimed.methods, claimed.steps);
-    let own = own.filter(|_| fits_rows);
+    let own = own.filter(|_| claimed.divides_rows());
     if let Some(own) = own.filter(|own| own.fit.holds()) {
         let others = evidence.tried.iter().filter(|tried| tried.fit.compared > 0);
         let ruled_out: std::collections::BTreeSet<&str> = others

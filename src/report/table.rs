@@ -190,6 +190,10 @@ pub(super) fn share_text(submission: &Audited, channel: &ChannelOutcome) -> Opti
         // A share that the digits do not support would read like a verdict.
         Verdict::Undecided => Some("open".to_owned()),
         Verdict::Pass if faulty => Some("file fault".to_owned()),
+        // It fails by rows without a value, not by its errors.
+        Verdict::Fail if channel.errors.as_ref().is_some_and(|errors| !errors.broken) => {
+            Some("file fault".to_owned())
+        }
         _ => channel
             .errors
             .as_ref()

@@ -32,21 +32,22 @@ fn write(path: &Path, bytes: &[u8], overwrite: bool) -> Result<()> {
     if path.is_dir() {
         return Err(Fault::new("cannot be written: this is a folder").in_file(path));
     }
-    let mut file = tempfile::Builder::new()
-        .prefix(".stepgauge-")
-        .tempfile_in(folder)
-        .map_err(complain)?;
-    file.write_all(bytes).map_err(complain)?;
-    file.as_file().sync_all().map_err(complain)?;
-    // A temporary file is for its owner alone; a report is for everyone who may read
-    // the folder.
+    let mut builder = tempfile::Builder::new();
+    builder.prefix(".stepgauge-");
+    // A temporary file is for its owner alone; a report is for everyone whom the user lets
+    // read new files, or whom the report before let.
     #[cfg(unix)]
     {
         use std::os::unix::fs::PermissionsExt;
-        let mode = std::fs::metadata(path).map_or(0o644, |old| old.permissions().mode() & 0o777);
-        let permissions = std::fs::Permissions::from_mode(mode);
+        builder.permissions(std::fs::Permissions::from_mode(0o666));
+    }
+    let mut file = builder.tempfile_in(folder).map_err(complain)?;
+    file.write_all(bytes).map_err(complain)?;
+    file.as_file().sync_all().map_err(complain)?;
+    let before = std::fs::symlink_metadata(path).ok();
+    if let Some(before) = before.filter(std::fs::Metadata::is_file) {
         file.as_file()
-            .set_permissions(permissions)
+            .set_permissions(before.permissions())
             .map_err(complain)?;
     }
     let kept = if overwrite {

@@ -434,3 +434,32 @@ fn an_earlier_report_that_cannot_be_read() {
         good
     );
 }
+
+/// What fails is no better for being meant to, nor for a wider limit.
+#[test]
+fn an_expectation_or_a_wider_limit_is_no_progress() {
+    let folder = Folder::new();
+    let one = [("h1.csv", 1.0, Made::Off(1.0, 0))];
+    submission(&folder, "meant", "", &one);
+    submission(&folder, "wide", "", &one);
+    let ran = folder.run(&["audit", "runs", "--write", "earlier.json"]);
+    assert_eq!(ran.status, 1);
+    submission(&folder, "meant", "expect = \"fail\"", &one);
+    let path = folder.path("runs/wide/submission.toml");
+    let text = std::fs::read_to_string(&path).unwrap();
+    std::fs::write(&path, text.replace("absolute = 0.05", "absolute = 5")).unwrap();
+    let ran = folder.audit(&["runs", "--against", "earlier.json"]);
+    assert_eq!(ran.status, 1);
+    let texts = |list: &str| ran.report["changes"][list].to_string();
+    assert!(
+        texts("worse").contains("fail is expected now, pass earlier"),
+        "{}",
+        texts("worse")
+    );
+    assert!(
+        texts("other").contains("the limit is 5.00"),
+        "{}",
+        texts("other")
+    );
+    assert!(!texts("better").contains("`parent`"), "{}", texts("better"));
+}

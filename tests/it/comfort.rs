@@ -56,7 +56,16 @@ fn an_interrupted_audit_reports_what_was_finished() {
         );
     }
     let mut child = Command::new(program())
-        .args(["audit", "all", "--threads", "1", "--write", "r.json"])
+        .args([
+            "audit",
+            "all",
+            "--threads",
+            "1",
+            "--write",
+            "r.json",
+            "--write",
+            "r.xml",
+        ])
         .current_dir(folder.path("."))
         .stdout(Stdio::piped())
         .spawn()
@@ -84,6 +93,12 @@ fn an_interrupted_audit_reports_what_was_finished() {
     let left = report["left"].as_u64().unwrap();
     assert!(left > 0 && done + left == 400, "{done} done, {left} left");
     assert_eq!(report["summary"]["in_order"], false);
+    // A server that reads JUnit sees no green audit.
+    let suites = std::fs::read_to_string(folder.path("r.xml")).unwrap();
+    assert!(
+        suites.contains("errors=\"1\"") && suites.contains("were not looked at"),
+        "{suites}"
+    );
 }
 
 #[test]

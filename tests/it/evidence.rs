@@ -518,6 +518,45 @@ fn honest_programs_are_never_contradicted_anywhere() {
     honest(6).check("all honest programs", 0.03);
 }
 
+/// Rows that a method has written at a step of their spacing were not written at one that
+/// does not divide it.
+#[test]
+fn a_step_that_does_not_divide_the_rows_is_contradicted() {
+    let case = load("electrical/rc-constant");
+    let linear = Linear::new(&case);
+    let (method, scheme) = variants()
+        .into_iter()
+        .find(|(m, _)| m.name == "Heun")
+        .unwrap();
+    let run = Run {
+        scheme,
+        ..Run::new(&case, method, 0.05, 1, 61)
+    };
+    let (times, states) = run.states().unwrap();
+    let truth = truth(&case, &times);
+    let record = printed(&run, &linear, &[0], (&times, &states, &truth), 17);
+    for (stated, support, of_method) in [
+        (0.03, Support::Contradicts, Support::Agrees),
+        (0.04, Support::Contradicts, Support::Agrees),
+        // Perhaps one that was stated to a few digits.
+        (0.0501, Support::CannotTell, Support::CannotTell),
+    ] {
+        let claimed = [method];
+        let (_, answer) = judge::ask(
+            &linear,
+            &record,
+            &claim(&claimed, stated, None, record.unit),
+        );
+        let answer = answer.unwrap();
+        assert_eq!(
+            (answer.support, answer.method),
+            (support, Some(of_method)),
+            "{stated}: {}",
+            answer.text
+        );
+    }
+}
+
 /// Steps as an adaptive code accepts them, every state written.
 #[test]
 fn one_step_methods_are_found_at_varying_steps() {

@@ -13,6 +13,7 @@ use super::process::{End, Finished, run};
 use super::words::Filling;
 use crate::fault::{Fault, escaped};
 use crate::number::plain;
+use crate::report::write_atomically;
 
 /// The file that a run writes.
 pub(super) const TRAJECTORY: &str = "trajectory.csv";
@@ -124,13 +125,24 @@ fn run_one(
             )));
         }
     };
-    write(&folder.join("output.txt"), &finished.output.to_file())?;
-    write(&folder.join("errors.txt"), &finished.errors.to_file())?;
     let failure = failure(plan, &finished, &output);
-    if failure.is_some() && output.symlink_metadata().is_ok() {
-        let aside = folder.join(UNFINISHED);
-        std::fs::rename(&output, &aside).map_err(|error| unwritten(&aside, &error))?;
-    }
+    let aside = folder.join(UNFINISHED);
+    let kept = write(&folder.join("output.txt"), &finished.output.to_file())
+        .and_then(|()| write(&folder.join("errors.txt"), &finished.errors.to_file()))
+        .and_then(
+            |()| match failure.is_some() && output.symlink_metadata().is_ok() {
+                true => std::fs::rename(&output, &aside).map_err(|error| unwritten(&aside, &error)),
+                false => Ok(()),
+            },
+        );
+    // What a command has made of its folder is its own failure.
+    let failure = failure.or_else(|| {
+        let fault = kept.err()?;
+        Some(format!(
+            "its folder cannot be used any more: {}",
+            fault.text
+        ))
+    });
     Ok(failure.map(|text| format!("{}: {text}{}", run_name(step), last_words(&finished))))
 }
 
@@ -200,7 +212,8 @@ fn unstarted(plan: &DrivePlan, words: &[OsString], error: &std::io::Error) -> Fa
 }
 
 pub(super) fn write(path: &Path, bytes: &[u8]) -> Result<(), Fault> {
-    std::fs::write(path, bytes).map_err(|error| unwritten(path, &error))
+    // Links and pipes that a command has laid there are replaced, not followed.
+    write_atomically(path, bytes)
 }
 
 /// A complaint of the operating system about a file or folder that is to be written.

@@ -180,8 +180,8 @@ fn run_rows(audited: &Audited, run: &RunOutcome) -> Vec<Markup> {
                 td { (outside(&channel.name)) }
                 td { (channel.verdict.word()) }
                 @if let Some(e) = e {
-                    td class="number" { (measured(e.worst, e.resolution)) " " (channel.unit) }
-                    td class="number" { (plain(e.at)) " " (audited.time_unit) }
+                    td class="number" { (measured(e.worst, e.resolution)) " " (outside(&channel.unit)) }
+                    td class="number" { (plain(e.at)) " " (outside(&audited.time_unit)) }
                     td class="number" { (share_text(audited, channel).unwrap_or_default()) }
                     td class="number" { (short(e.rms)) }
                     td class="number" { (short(e.resolution)) }

@@ -175,14 +175,14 @@ fn row(number: usize, audited: &Audited) -> Markup {
             th scope="row" { a href={ "#" (anchor(number)) } { (outside(&audited.name)) } }
             td { @if let Some((_, channel)) = worst { (outside(&channel.name)) } }
             td class="number" {
-                @if let Some((channel, e)) = errors { (measured(e.worst, e.resolution)) " " (channel.unit) }
+                @if let Some((channel, e)) = errors { (measured(e.worst, e.resolution)) " " (outside(&channel.unit)) }
             }
             td class="number" {
                 @if let Some((channel, _)) = errors { (share_text(audited, channel).unwrap_or_default()) }
             }
             td class="brief" { (order_text(audited)) }
             td { (claims(audited)) }
-            td { (audited.case.as_deref().unwrap_or("none")) }
+            td { (outside(audited.case.as_deref().unwrap_or("none"))) }
             td { (outside(audited.producer.as_deref().unwrap_or(""))) }
         }
     }
