@@ -181,13 +181,13 @@ fn failing_files_are_named_on_top_with_their_cause() {
 #[test]
 fn hostile_names_come_out_as_text() {
     let folder = Folder::new();
-    folder.write("a<b>&'q'/run \"1\".csv", sound());
+    folder.write("a<b>&'q'/run \"1\" \u{202e}<i>.csv", sound());
     let long = "x".repeat(10_000);
     folder.write(
         "a<b>&'q'/submission.toml",
         format!(
             "case = \"{CASE}\"\nproducer = \"<script>alert(1)</script> \\u202E \\u0007 {long}\"\n[claims]\nmethod = \"<img src=x onerror=y>\"\n\
-             [[runs]]\nfile = \"run \\\"1\\\".csv\"\nstep = {STEP}\n"
+             [[runs]]\nfile = \"run \\\"1\\\" \\u202E<i>.csv\"\nstep = {STEP}\n"
         ),
     );
     let page = page_of(&folder, ".");
@@ -198,6 +198,8 @@ fn hostile_names_come_out_as_text() {
     let shown = text_of(document.root_element());
     assert!(shown.contains("<script>alert(1)</script>"));
     assert!(shown.contains("<img src=x onerror=y>"));
+    // Also where a plot names its file.
+    assert!(shown.contains("run \"1\" \\u{202e}<i>.csv keeps its limit"));
     assert!(!page.contains('\u{202e}') && !page.contains('\u{7}'));
     assert!(!page.contains(&"x".repeat(2000)));
 }
