@@ -150,7 +150,8 @@ impl Axis {
                 let text = if number.abs() < 1e-6 * step {
                     "0".to_owned()
                 } else if decimals > 5 || number.abs() >= 1e6 {
-                    let digits = (number.abs() / step).log10().floor().max(0.0) as usize;
+                    let decades = number.abs().log10().floor() - (step.log10() + 1e-9).floor();
+                    let digits = decades.max(0.0) as usize;
                     format!("{number:.digits$e}")
                 } else {
                     format!("{number:.decimals$}")
