@@ -29,6 +29,11 @@ pub struct Fault {
 pub type Result<T> = std::result::Result<T, Fault>;
 
 impl Fault {
+    /// As it is printed, with the cure in the same line.
+    pub fn in_one_line(&self) -> String {
+        self.to_string().replace("\n  help:", "; help:")
+    }
+
     /// A complaint without a place yet.
     pub fn new(text: impl Into<String>) -> Fault {
         Fault {

@@ -122,7 +122,7 @@ pub(super) fn look(
                     .unwrap_or("the claimed method"),
                 cause.text
             );
-            take_back(answer, text.clone());
+            take_back(answer, text);
             mended_by.get_or_insert_with(|| {
                 format!(
                     "the rows do not follow the method as they stand; nor do those of {}, for which this \

@@ -1,14 +1,13 @@
 //! Rows in memory to a verdict: for the tests of an integrator written in Rust.
 
-use std::collections::BTreeMap;
 use std::fmt::Write;
 use std::path::PathBuf;
 
-use super::{Plan, Planned, Watch, audit_watched};
+use super::{Plan, Planned, audit};
 use crate::case::{Library, Replacements};
 use crate::fault::Fault;
 use crate::outcome::Audited;
-use crate::submission::{Claims, Expect, LimitsStated, Run, Setting, Submission};
+use crate::submission::{Claims, Run, Setting, Submission};
 use crate::trajectory::Stated;
 
 /// What an integrator has computed at one step.
@@ -56,19 +55,14 @@ pub fn audit_rows(case: &str, claims: Claims, runs: &[Rows]) -> Result<Audited, 
     let runs = runs.collect::<Result<Vec<Run>, Fault>>();
     let submission = Submission {
         case: Some(case.to_owned()),
-        producer: None,
-        expect: Expect::Pass,
-        parameters: Replacements::new(),
         claims,
-        limits: LimitsStated::default(),
-        columns: BTreeMap::new(),
         // Every digit that is needed is there.
         layout: Stated {
             digits: Some(17),
             ..Stated::default()
         },
-        places: BTreeMap::new(),
         runs: runs.map_err(|fault| vec![fault])?,
+        ..Submission::default()
     };
     let plan = Plan {
         library,
@@ -82,7 +76,7 @@ pub fn audit_rows(case: &str, claims: Claims, runs: &[Rows]) -> Result<Audited, 
         threads: 1,
         traced: false,
     };
-    let mut outcome = audit_watched(&plan, &Watch::default());
+    let mut outcome = audit(&plan);
     match outcome.submissions.pop() {
         Some(audited) => Ok(audited),
         None => Err(outcome

@@ -9,12 +9,15 @@ use super::Plan;
 use crate::fault::Fault;
 use crate::outcome::{Audited, NotAudited, Outcome};
 
+/// Results by the place of their submission in the plan.
+type Done = BTreeMap<usize, Result<Audited, Vec<Fault>>>;
+
 /// Counters and results of an audit that goes on.
 #[derive(Debug, Default)]
 pub struct Watch {
     files: AtomicU64,
     bytes: AtomicU64,
-    done: Mutex<BTreeMap<usize, Result<Audited, Vec<Fault>>>>,
+    done: Mutex<Done>,
 }
 
 impl Watch {
@@ -39,48 +42,35 @@ impl Watch {
 
     /// All results, once everything is done.
     pub(super) fn take(&self, plan: &Plan) -> Outcome {
-        let done = std::mem::take(&mut *self.lock());
-        let mut outcome = Outcome {
-            not_audited: plan.unreadable.clone(),
-            ..Outcome::default()
-        };
-        for (index, result) in done {
-            match result {
-                Ok(audited) => outcome.submissions.push(audited),
-                Err(faults) => {
-                    let name = plan.submissions[index].name.clone();
-                    outcome.not_audited.push(NotAudited { name, faults });
-                }
-            }
-        }
-        outcome
+        gathered(plan, std::mem::take(&mut *self.lock()))
     }
 
-    /// What is known up to now, in the order of the plan. Submissions that are not done are
-    /// counted as left.
+    /// What is known up to now, while the audit goes on.
     pub fn outcome(&self, plan: &Plan) -> Outcome {
-        let mut outcome = Outcome {
-            submissions: Vec::new(),
-            not_audited: plan.unreadable.clone(),
-            left: 0,
-            changes: None,
-        };
-        let done = self.lock();
-        for (index, planned) in plan.submissions.iter().enumerate() {
-            match done.get(&index) {
-                Some(Ok(audited)) => outcome.submissions.push(audited.clone()),
-                Some(Err(faults)) => outcome.not_audited.push(NotAudited {
-                    name: planned.name.clone(),
-                    faults: faults.clone(),
-                }),
-                None => outcome.left += 1,
-            }
-        }
-        outcome
+        gathered(plan, self.lock().clone())
     }
 
     /// The data is whole even if another thread has panicked.
-    fn lock(&self) -> MutexGuard<'_, BTreeMap<usize, Result<Audited, Vec<Fault>>>> {
+    fn lock(&self) -> MutexGuard<'_, Done> {
         self.done.lock().unwrap_or_else(PoisonError::into_inner)
     }
+}
+
+/// Results in the order of the plan; submissions that are not among them are counted as left.
+fn gathered(plan: &Plan, done: Done) -> Outcome {
+    let mut outcome = Outcome {
+        not_audited: plan.unreadable.clone(),
+        left: plan.submissions.len() - done.len(),
+        ..Outcome::default()
+    };
+    for (index, result) in done {
+        match result {
+            Ok(audited) => outcome.submissions.push(audited),
+            Err(faults) => {
+                let name = plan.submissions[index].name.clone();
+                outcome.not_audited.push(NotAudited { name, faults });
+            }
+        }
+    }
+    outcome
 }

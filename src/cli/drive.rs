@@ -17,7 +17,7 @@ use clap::Args;
 use tempfile::TempDir;
 
 use super::args::{Sources, share};
-use super::plan::library;
+use super::plan::{library, processors};
 use super::reports::{self, Asked, Inputs};
 use crate::audit::{Plan, Planned, audit};
 use crate::case::Library;
@@ -44,8 +44,9 @@ Example: a plan with the command of a simulator, the cases and the steps
 
 The command is run without a shell, in a folder of its own for each run. {case} is a
 file as `stepgauge case NAME --json` writes it, {step} the step in the time unit of the
-case (parts of a time constant are rounded down to steps that divide the window), {output} the file to write, {plan} the folder of the plan. A plan may also hold
-jobs, [limits], [columns] and [layout], the latter as in submission.toml.
+case (parts of a time constant are rounded down to steps that divide the window),
+{output} the file to write, {plan} the folder of the plan. A plan may also hold jobs,
+[limits], [columns] and [layout], the latter as in submission.toml.
 
 Exit status: 0 all in order, 1 a run or its audit failed or is undecided, 2 the plan
 could not be carried out.")]
@@ -104,7 +105,7 @@ pub(super) fn drive(arguments: &DriveArguments) -> Result<Driven, Vec<Fault>> {
     let library = library(&arguments.sources)?;
     let plan = plan::read(&arguments.plan, &library)?;
     let reports = reports::check(&arguments.write, &inputs(arguments, &plan))?;
-    let drawn = arguments.write.iter().any(|path| reports::has_plots(path));
+    let drawn = reports::any_plots(&arguments.write);
     let root = root(arguments.into.as_deref()).map_err(|fault| vec![fault])?;
     let stop = Stop::listen();
     let failures = run_all(&plan, root.path(), &stop.asked);
@@ -216,12 +217,11 @@ fn judge(
     library: Library,
     drawn: bool,
 ) -> Result<Outcome, Fault> {
-    let threads = std::thread::available_parallelism().map_or(1, usize::from);
     let mut audits = Plan {
         library,
         submissions: Vec::new(),
         unreadable: Vec::new(),
-        threads,
+        threads: processors(),
         traced: drawn,
     };
     let mut reasons: Vec<Vec<String>> = Vec::new();
@@ -290,7 +290,6 @@ fn merged(
     }
     Outcome {
         submissions,
-        not_audited: Vec::new(),
         ..Outcome::default()
     }
 }

@@ -25,6 +25,11 @@ pub(super) fn library(sources: &Sources) -> Result<Library, Vec<Fault>> {
     Ok(library)
 }
 
+/// How many threads can work at once.
+pub(super) fn processors() -> usize {
+    std::thread::available_parallelism().map_or(1, usize::from)
+}
+
 /// The plan of an audit.
 ///
 /// # Errors
@@ -34,14 +39,14 @@ pub(super) fn plan(arguments: &AuditArguments) -> Result<Plan, Vec<Fault>> {
     let library = library(&arguments.sources)?;
     let threads = match arguments.threads {
         Some(threads) => usize::from(threads),
-        None => std::thread::available_parallelism().map_or(1, usize::from),
+        None => processors(),
     };
     let mut plan = Plan {
         library,
         submissions: Vec::new(),
         unreadable: Vec::new(),
         threads,
-        traced: arguments.write.iter().any(|path| reports::has_plots(path)),
+        traced: reports::any_plots(&arguments.write),
     };
     match &arguments.case {
         Some(case) => single_files(case, arguments, &mut plan)?,

@@ -101,9 +101,10 @@ pub(super) fn check(reports: &[PathBuf], inputs: &Inputs) -> Result<Vec<Asked>, 
     }
 }
 
-/// True for a report that shows plots.
-pub(super) fn has_plots(path: &Path) -> bool {
-    kind(path).is_ok_and(|kind| kind == Kind::Html)
+/// True where one of the reports shows plots.
+pub(super) fn any_plots(reports: &[PathBuf]) -> bool {
+    let drawn = |path: &PathBuf| kind(path).is_ok_and(|kind| kind == Kind::Html);
+    reports.iter().any(drawn)
 }
 
 fn kind(path: &Path) -> Result<Kind, Fault> {

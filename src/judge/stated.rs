@@ -38,23 +38,18 @@ pub(super) fn of_step_alone(evidence: &Evidence, claimed: &Claimed) -> Option<An
     if evidence.is_exact() || claimed.adaptive {
         return None;
     }
-    if claimed.steps.is_none() {
-        return at_no_such_step(evidence, claimed).map(|family| Answer {
-            support: Support::Contradicts,
-            method: None,
-            step: Some(Support::Contradicts),
-            text: no_such_step(family, claimed),
-        });
-    }
-    let steps = claimed.steps?;
-    let at = |family: &Family| {
-        family.steps == steps || (family.range.0..=family.range.1).contains(&steps)
-    };
     let answer = |support: Support, text: String| Answer {
         support,
         method: None,
         step: Some(support),
         text,
+    };
+    let Some(steps) = claimed.steps else {
+        let family = at_no_such_step(evidence, claimed)?;
+        return Some(answer(Support::Contradicts, no_such_step(family, claimed)));
+    };
+    let at = |family: &Family| {
+        family.steps == steps || (family.range.0..=family.range.1).contains(&steps)
     };
     let family = evidence.consistent.first()?;
     if evidence.consistent.iter().all(at) && family.is_told() {

@@ -7,7 +7,7 @@ use super::csv_values::{kept, shortest};
 use super::text::csv_text;
 use crate::fault::{Fault, Result};
 use crate::outcome::{Audited, ChannelOutcome, ErrorOutcome, Outcome, RunOutcome};
-use crate::submission::{Role, Setting};
+use crate::submission::Setting;
 
 /// The names of the columns.
 pub const CSV_HEADER: [&str; 17] = [
@@ -80,15 +80,11 @@ fn start(submission: &Audited, run: &RunOutcome) -> [String; 6] {
         Setting::Tolerance(tolerance) => Some(tolerance),
         Setting::Step(_) | Setting::Unstated => None,
     };
-    let role = match run.role {
-        Role::Result => "result",
-        Role::Rung => "rung",
-    };
     [
         csv_text(&submission.name),
         csv_text(submission.case.as_deref().unwrap_or_default()),
         csv_text(&run.file),
-        role.to_owned(),
+        run.role.word().to_owned(),
         number(run.step),
         number(tolerance),
     ]

@@ -27,7 +27,7 @@ pub fn draft_toml(drafted: &Drafted) -> Option<String> {
 }
 
 fn case_part(drafted: &Drafted, best: &Candidate) -> String {
-    let case = literal(&best.case);
+    let case = toml_literal(&best.case);
     let from = match &drafted.stated {
         Some(_) => "as named with --case".to_owned(),
         None => format!("guessed from {}", grounds(best)),
@@ -69,7 +69,7 @@ fn case_part(drafted: &Drafted, best: &Candidate) -> String {
         };
         text += &remark(&format!("Other cases {what}:"));
         for other in others {
-            let case = literal(&other.case);
+            let case = toml_literal(&other.case);
             text += &format!("# case = {case}  # {}\n", error_text(other.error));
         }
     }
@@ -153,11 +153,11 @@ fn column_part(best: &Candidate) -> String {
 
 fn column_line(guess: &ColumnGuess) -> String {
     let column = match &guess.column {
-        ColumnName::Name(name) => literal(name),
+        ColumnName::Name(name) => toml_literal(name),
         ColumnName::Number(number) => number.to_string(),
     };
     let value = match &guess.unit_guessed {
-        Some(unit) => format!("{{ column = {column}, unit = {} }}", literal(unit)),
+        Some(unit) => format!("{{ column = {column}, unit = {} }}", toml_literal(unit)),
         None => column,
     };
     let mut text = format!("{} = {value}  # {}\n", key(&guess.channel), reason(guess));
@@ -240,7 +240,7 @@ fn layout_part(drafted: &Drafted) -> String {
 }
 
 fn run_part(run: &DraftRun, best: &Candidate) -> String {
-    let mut text = format!("\n[[runs]]\nfile = {}", literal(&run.file));
+    let mut text = format!("\n[[runs]]\nfile = {}", toml_literal(&run.file));
     let rows = counted(run.rows, "row");
     text += &match &run.worst {
         Some((error, channel)) => {
@@ -303,12 +303,12 @@ fn key(name: &str) -> String {
     if !name.is_empty() && name.chars().all(bare) {
         name.to_owned()
     } else {
-        literal(name)
+        toml_literal(name)
     }
 }
 
 /// A text of TOML in quotes.
-pub(super) fn literal(text: &str) -> String {
+pub fn toml_literal(text: &str) -> String {
     let mut out = "\"".to_owned();
     for c in text.chars() {
         match c {
@@ -337,7 +337,7 @@ mod tests {
             "\u{202e}turned",
             "\u{b0}C",
         ] {
-            let line = format!("x = {}", literal(text));
+            let line = format!("x = {}", toml_literal(text));
             let table: toml::Table = toml::from_str(&line).unwrap();
             assert_eq!(table["x"].as_str(), Some(text));
         }

@@ -13,7 +13,7 @@ use crate::outcome::{
     Consistent, Damping, EvidenceOutcome, GrowthOutcome, GrowthSummary, LimitsFrom, Outcome, Rule,
     RunEvidence, RunOutcome, SettingRung, SettingsOutcome,
 };
-use crate::submission::{Expect, Role, Setting};
+use crate::submission::Setting;
 
 /// The report as text, ending with a line end.
 pub fn audit_json(outcome: &Outcome) -> String {
@@ -84,12 +84,7 @@ fn submission(audited: &Audited) -> SubmissionReport {
         name: audited.name.clone(),
         case: audited.case.clone(),
         producer: audited.producer.clone(),
-        expect: match audited.expect {
-            Expect::Pass => "pass",
-            Expect::Fail => "fail",
-            Expect::Undecided => "undecided",
-        }
-        .to_owned(),
+        expect: audited.expect.word().to_owned(),
         verdict: audited.verdict.word().to_owned(),
         in_order: audited.in_order(),
         reasons: audited.reasons.clone(),
@@ -160,11 +155,7 @@ fn settings(settings: &SettingsOutcome) -> SettingsReport {
 fn run(run: &RunOutcome) -> RunReport {
     RunReport {
         file: run.file.clone(),
-        role: match run.role {
-            Role::Result => "result",
-            Role::Rung => "rung",
-        }
-        .to_owned(),
+        role: run.role.word().to_owned(),
         step: run.step,
         tolerance: match run.setting {
             Setting::Tolerance(tolerance) => Some(tolerance),

@@ -221,11 +221,7 @@ impl Cases<'_> {
     /// The expectation of a control; else what no other case tells.
     fn whole(&mut self, submission: &Audited) {
         let is = submission.verdict.word();
-        let expected = match submission.expect {
-            Expect::Pass => "pass",
-            Expect::Fail => "fail",
-            Expect::Undecided => "undecided",
-        };
+        let expected = submission.expect.word();
         let in_order = submission.in_order();
         if self.is_control {
             let ended = match in_order {
@@ -263,11 +259,7 @@ fn not_passed(how: NonSuccessKind, kind: &str, texts: &[String]) -> TestCaseStat
 
 fn not_audited(missing: &NotAudited) -> TestSuite {
     let name = xml_text(&missing.name);
-    let texts: Vec<String> = missing
-        .faults
-        .iter()
-        .map(|fault| fault.to_string().replace("\n  help:", "; help:"))
-        .collect();
+    let texts: Vec<String> = missing.faults.iter().map(Fault::in_one_line).collect();
     let status = not_passed(NonSuccessKind::Error, "not audited", &texts);
     let mut case = TestCase::new("audit", status);
     case.set_classname(name.clone());

@@ -178,19 +178,15 @@ fn sentence(name: &str, text: &str) -> String {
 
 fn faults(missing: &NotAudited) -> Vec<String> {
     let faults = missing.faults.iter().take(MOST_REASONS);
-    let text = |fault: &crate::fault::Fault| fault.to_string().replace("\n  help:", "; help:");
     faults
-        .map(|fault| sentence(&missing.name, &format!("not audited: {}", text(fault))))
+        .map(|fault| format!("not audited: {}", fault.in_one_line()))
+        .map(|text| sentence(&missing.name, &text))
         .collect()
 }
 
 fn reasons(submission: &Audited) -> Vec<String> {
     let name = submission.name.as_str();
-    let expected = match submission.expect {
-        Expect::Pass => None,
-        Expect::Fail => Some("was expected to fail".to_owned()),
-        Expect::Undecided => Some("was expected to stay undecided".to_owned()),
-    };
+    let expected = submission.expect.missed().map(str::to_owned);
     let all = submission.reasons.len();
     let reasons = submission.reasons.iter().take(MOST_REASONS).cloned();
     let more = all.checked_sub(MOST_REASONS).filter(|&more| more > 0);

@@ -32,7 +32,7 @@ pub use case_text::{case_list, case_text};
 pub use csv_errors::{CSV_HEADER, audit_csv};
 pub use csv_values::ValueWriter;
 pub use draft_text::draft_text;
-pub use draft_toml::draft_toml;
+pub use draft_toml::{draft_toml, toml_literal};
 pub use html::audit_html;
 pub use json::{audit_json, audit_report};
 pub use junit::audit_junit;

@@ -11,7 +11,7 @@ use super::growth_text::{FEW, growth_text};
 use super::style::{Screen, Tone, coloured, toned};
 use super::{NOT_FOR_DOSING, SCOPE};
 use crate::judge::Verdict;
-use crate::number::{measured, plain, short};
+use crate::number::{counted, measured, plain, short};
 use crate::outcome::{
     Audited, ChannelOutcome, ErrorOutcome, LimitsFrom, OrderOutcome, Outcome, RunOutcome,
 };
@@ -300,19 +300,15 @@ fn troubles(outcome: &Outcome, screen: Screen) -> String {
         .iter()
         .filter(|submission| !submission.in_order())
     {
-        match submission.expect {
-            Expect::Pass => {}
-            Expect::Fail => lines += &line(screen, &submission.name, "was expected to fail"),
-            Expect::Undecided => {
-                lines += &line(screen, &submission.name, "was expected to stay undecided")
-            }
+        if let Some(missed) = submission.expect.missed() {
+            lines += &line(screen, &submission.name, missed);
         }
         lines += &reasons(submission, screen);
     }
     for missing in &outcome.not_audited {
         for fault in &missing.faults {
-            let text = fault.to_string().replace("\n  help:", "; help:");
-            lines += &line(screen, &missing.name, &format!("not audited: {text}"));
+            let text = format!("not audited: {}", fault.in_one_line());
+            lines += &line(screen, &missing.name, &text);
         }
     }
     lines
@@ -439,12 +435,8 @@ pub(super) fn counts(outcome: &Outcome) -> String {
         parts.push(format!("{} left when interrupted", outcome.left));
     }
     let count = outcome.submissions.len() + outcome.not_audited.len() + outcome.left;
-    let noun = if count == 1 {
-        "submission"
-    } else {
-        "submissions"
-    };
-    format!("{count} {noun}: {}.", parts.join(", "))
+    let count = counted(count as u64, "submission");
+    format!("{count}: {}.", parts.join(", "))
 }
 
 fn summary(outcome: &Outcome) -> String {

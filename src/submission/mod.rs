@@ -72,6 +72,26 @@ pub enum Expect {
     Undecided,
 }
 
+impl Expect {
+    /// The word in submissions and reports.
+    pub fn word(self) -> &'static str {
+        match self {
+            Expect::Pass => "pass",
+            Expect::Fail => "fail",
+            Expect::Undecided => "undecided",
+        }
+    }
+
+    /// What is to be said of a control that turned out otherwise.
+    pub fn missed(self) -> Option<&'static str> {
+        match self {
+            Expect::Pass => None,
+            Expect::Fail => Some("was expected to fail"),
+            Expect::Undecided => Some("was expected to stay undecided"),
+        }
+    }
+}
+
 /// What the producer states of its method.
 #[derive(Clone, Debug, Default, PartialEq)]
 pub struct Claims {
@@ -180,4 +200,14 @@ pub enum Role {
     Result,
     /// It serves the order.
     Rung,
+}
+
+impl Role {
+    /// The word in submissions and reports.
+    pub fn word(self) -> &'static str {
+        match self {
+            Role::Result => "result",
+            Role::Rung => "rung",
+        }
+    }
 }

@@ -4,52 +4,55 @@
 use super::plan::{Chosen, DrivePlan};
 use super::runs::{TRAJECTORY, run_name};
 use crate::number::plain;
+use crate::report::toml_literal;
 use crate::submission::{ColumnName, LimitStated};
 
 /// The text of the file for these steps.
 pub(super) fn submission_toml(plan: &DrivePlan, chosen: &Chosen, steps: &[f64]) -> String {
     let terms = &chosen.terms;
     let mut text = String::from("# Written by `stepgauge drive`.\n");
-    text += &line("case", Some(quote(&chosen.case.name)));
-    text += &line("producer", plan.producer.as_deref().map(quote));
+    text += &line("case", Some(toml_literal(&chosen.case.name)));
+    text += &line("producer", plan.producer.as_deref().map(toml_literal));
     let claims = [
-        line("method", terms.claims.method.as_deref().map(quote)),
-        line("order", terms.claims.order.map(number)),
+        line("method", terms.claims.method.as_deref().map(toml_literal)),
+        line("order", terms.claims.order.map(plain)),
     ];
     text += &table("claims", claims.concat());
     let limits = &terms.limits;
     let mut lines = limit_parts(&limits.general)
         .map(|(key, value)| line(key, value))
         .concat();
-    lines += &line("order_slack", limits.order_slack.map(number));
+    lines += &line("order_slack", limits.order_slack.map(plain));
     for (channel, limit) in &limits.channels {
-        lines += &line(&quote(channel), Some(inline(limit_parts(limit))));
+        lines += &line(&toml_literal(channel), Some(inline(limit_parts(limit))));
     }
     text += &table("limits", lines);
     let mut lines = String::new();
     for (channel, stated) in &terms.columns {
         let column = stated.column.as_ref().map(|column| match column {
-            ColumnName::Name(name) => quote(name),
+            ColumnName::Name(name) => toml_literal(name),
             ColumnName::Number(number) => number.to_string(),
         });
         let parts = [
             ("column", column),
-            ("unit", stated.unit.as_deref().map(quote)),
+            ("unit", stated.unit.as_deref().map(toml_literal)),
         ];
-        lines += &line(&quote(channel), Some(inline(parts)));
+        lines += &line(&toml_literal(channel), Some(inline(parts)));
     }
     text += &table("columns", lines);
     let layout = &terms.layout;
     let decimal = layout
         .decimal_comma
-        .map(|comma| quote(if comma { "," } else { "." }));
+        .map(|comma| toml_literal(if comma { "," } else { "." }));
     let lines = [
         line(
             "separator",
-            layout.separator.map(|separator| quote(separator.word())),
+            layout
+                .separator
+                .map(|separator| toml_literal(separator.word())),
         ),
         line("decimal", decimal),
-        line("comment", layout.comment.as_deref().map(quote)),
+        line("comment", layout.comment.as_deref().map(toml_literal)),
         line(
             "skip_lines",
             layout.skip_lines.map(|count| count.to_string()),
@@ -61,8 +64,8 @@ pub(super) fn submission_toml(plan: &DrivePlan, chosen: &Chosen, steps: &[f64]) 
         let file = format!("{}/{TRAJECTORY}", run_name(step));
         text += &format!(
             "\n[[runs]]\nfile = {}\nstep = {}\n",
-            quote(&file),
-            number(step)
+            toml_literal(&file),
+            plain(step)
         );
     }
     text
@@ -71,10 +74,10 @@ pub(super) fn submission_toml(plan: &DrivePlan, chosen: &Chosen, steps: &[f64]) 
 fn limit_parts(limit: &LimitStated) -> [(&'static str, Option<String>); 3] {
     let relative_to = limit
         .of_peak
-        .map(|peak| quote(if peak { "peak" } else { "value" }));
+        .map(|peak| toml_literal(if peak { "peak" } else { "value" }));
     [
-        ("absolute", limit.absolute.map(number)),
-        ("relative", limit.relative.map(number)),
+        ("absolute", limit.absolute.map(plain)),
+        ("relative", limit.relative.map(plain)),
         ("relative_to", relative_to),
     ]
 }
@@ -97,22 +100,4 @@ fn inline<const N: usize>(parts: [(&str, Option<String>); N]) -> String {
         .filter_map(|(key, value)| Some(format!("{key} = {}", value?)))
         .collect();
     format!("{{ {} }}", stated.join(", "))
-}
-
-fn number(value: f64) -> String {
-    plain(value)
-}
-
-/// Text in quotes, with what may not stand there escaped.
-fn quote(text: &str) -> String {
-    let mut quoted = String::from("\"");
-    for c in text.chars() {
-        match c {
-            '"' | '\\' => quoted.extend(['\\', c]),
-            c if c.is_control() => quoted += &format!("\\u{:04X}", u32::from(c)),
-            c => quoted.push(c),
-        }
-    }
-    quoted.push('"');
-    quoted
 }

@@ -15,6 +15,7 @@ use super::steps::Steps;
 use super::words::{Placeholder, Word};
 use crate::case::{Case, Library, Replacements};
 use crate::cli::facts::facts;
+use crate::cli::plan::processors;
 use crate::fault::{Fault, in_plain_words, nearest, quoted};
 use crate::number::plain;
 use crate::report::case_json;
@@ -400,9 +401,8 @@ impl Reader<'_> {
     }
 
     fn jobs(&mut self, entry: Option<Spanned<i64>>) -> usize {
-        let available = || std::thread::available_parallelism().map_or(1, usize::from);
         let Some(jobs) = entry else {
-            return available();
+            return processors();
         };
         if !(1..=MOST_JOBS).contains(jobs.get_ref()) {
             let fault = Fault::new(format!("`jobs` is {}", jobs.get_ref()));

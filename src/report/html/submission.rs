@@ -9,7 +9,7 @@ use crate::judge::Verdict;
 use crate::number::{measured, plain, short};
 use crate::outcome::{Audited, ClaimOutcome, LimitsFrom, RunOutcome};
 use crate::report::table::{order_text, share_text, step_text};
-use crate::submission::{Expect, Role};
+use crate::submission::Expect;
 
 /// Sentences, rows and findings shown of one submission.
 const MOST: usize = 24;
@@ -34,11 +34,6 @@ pub(super) fn section(audited: &Audited, number: usize, plots: &[Markup]) -> Mar
 fn facts(audited: &Audited) -> Markup {
     let evidence = audited.evidence.as_ref();
     let claims = evidence.map_or(&[][..], |evidence| &evidence.claims);
-    let expected = match audited.expect {
-        Expect::Pass => "pass",
-        Expect::Fail => "fail (a control)",
-        Expect::Undecided => "undecided (a control)",
-    };
     let limits = match audited.limits_from {
         LimitsFrom::Case => "those of the case",
         LimitsFrom::Submission => "the submission's own",
@@ -48,7 +43,7 @@ fn facts(audited: &Audited) -> Markup {
         dl {
             dt { "case" } dd { (audited.case.as_deref().unwrap_or("none: runs are compared with each other")) }
             @if let Some(producer) = &audited.producer { dt { "producer" } dd { (outside(producer)) } }
-            dt { "expected" } dd { (expected) }
+            dt { "expected" } dd { (audited.expect.word()) @if audited.expect != Expect::Pass { " (a control)" } }
             dt { "limits" } dd { (limits) }
             @if !audited.parameters.is_empty() {
                 dt { "parameters of its own" }
@@ -165,16 +160,12 @@ fn numbers(audited: &Audited) -> Markup {
 }
 
 fn run_rows(audited: &Audited, run: &RunOutcome) -> Vec<Markup> {
-    let role = match run.role {
-        Role::Result => "result",
-        Role::Rung => "rung",
-    };
     let row = |channel: &crate::outcome::ChannelOutcome| {
         let e = channel.errors.as_ref();
         html! {
             tr {
                 th scope="row" { (outside(&run.file)) }
-                td { (role) }
+                td { (run.role.word()) }
                 td class="number" { (step_text(run)) }
                 td class="number" { (run.rows) }
                 td { (outside(&channel.name)) }

@@ -5,9 +5,9 @@ use maud::{Markup, html};
 use super::{anchor, outside};
 use crate::judge::{Support, Verdict};
 use crate::number::{counted, measured};
-use crate::outcome::{Audited, ChannelOutcome, Outcome, RunOutcome};
-use crate::report::table::{order_text, share_text, worse};
-use crate::submission::{Expect, Role};
+use crate::outcome::{Audited, Outcome, RunOutcome};
+use crate::report::table::{decisive, order_text, share_text};
+use crate::submission::Expect;
 
 /// Submissions named on top.
 const MOST_TROUBLES: usize = 12;
@@ -106,10 +106,8 @@ fn controls(outcome: &Outcome) -> Markup {
 
 /// What is wrong in each file, else the first reason.
 fn first_reasons(audited: &Audited) -> Vec<String> {
-    match audited.expect {
-        Expect::Pass => {}
-        Expect::Fail => return vec!["was expected to fail".to_owned()],
-        Expect::Undecided => return vec!["was expected to stay undecided".to_owned()],
+    if let Some(missed) = audited.expect.missed() {
+        return vec![missed.to_owned()];
     }
     let of_file = |run: &RunOutcome| {
         let mut reasons = audited.reasons.iter();
@@ -167,13 +165,13 @@ pub(super) fn table(outcome: &Outcome) -> Markup {
 }
 
 fn row(number: usize, audited: &Audited) -> Markup {
-    let worst = worst(audited);
-    let errors = worst.and_then(|(_, channel)| Some((channel, channel.errors.as_ref()?)));
+    let (_, worst) = decisive(audited);
+    let errors = worst.and_then(|channel| Some((channel, channel.errors.as_ref()?)));
     html! {
         tr {
             td { (badge(audited)) }
             th scope="row" { a href={ "#" (anchor(number)) } { (outside(&audited.name)) } }
-            td { @if let Some((_, channel)) = worst { (outside(&channel.name)) } }
+            td { @if let Some(channel) = worst { (outside(&channel.name)) } }
             td class="number" {
                 @if let Some((channel, e)) = errors { (measured(e.worst, e.resolution)) " " (outside(&channel.unit)) }
             }
@@ -195,11 +193,4 @@ fn claims(audited: &Audited) -> &'static str {
         .as_ref()
         .and_then(|evidence| evidence.support);
     support.map_or("", Support::word)
-}
-
-/// The channel that decides, with its run.
-fn worst(audited: &Audited) -> Option<(&RunOutcome, &ChannelOutcome)> {
-    let results = audited.runs.iter().filter(|run| run.role == Role::Result);
-    let channels = results.flat_map(|run| run.channels.iter().map(move |channel| (run, channel)));
-    channels.max_by(|a, b| worse(a.1, b.1))
 }

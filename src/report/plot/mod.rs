@@ -11,12 +11,12 @@ mod trajectory;
 
 use maud::Markup;
 
-use crate::outcome::{Audited, ChannelOutcome, Outcome, RunOutcome};
-use crate::submission::Role;
+use crate::outcome::{Audited, ChannelOutcome, Outcome};
 
 /// All plots of a submission; further channels where there is room for them.
 pub(super) fn of_submission(audited: &Audited, most_channels: usize) -> Vec<Markup> {
-    let Some(run) = shown_run(audited) else {
+    let shown = super::table::decisive(audited).0;
+    let Some(run) = shown.or(audited.runs.first()) else {
         return Vec::new();
     };
     let mut plots: Vec<draw::Plot> = Vec::new();
@@ -36,15 +36,4 @@ pub(super) fn of_submission(audited: &Audited, most_channels: usize) -> Vec<Mark
 pub(super) fn of_costs(outcome: &Outcome) -> Vec<Markup> {
     let plots = ladder::costs(outcome);
     plots.iter().map(draw::Plot::draw).collect()
-}
-
-/// The run that the table shows: the result with the worst channel.
-fn shown_run(audited: &Audited) -> Option<&RunOutcome> {
-    let results = audited.runs.iter().filter(|run| run.role == Role::Result);
-    let channels = results
-        .clone()
-        .flat_map(|run| run.channels.iter().map(move |c| (run, c)));
-    let worst = channels.max_by(|a, b| super::table::worse(a.1, b.1));
-    let first = || results.clone().next().or(audited.runs.first());
-    worst.map(|(run, _)| run).or_else(first)
 }
