@@ -166,17 +166,22 @@ impl Looked {
         if let [column] = sure[..] {
             return Ok((vec![column], true));
         }
-        let mut columns = named(&is_like_time);
+        let alike = named(&is_like_time);
         // A column of another name counts where it rises, as time does.
+        let mut rising = Vec::new();
         for column in all.clone().take(MOST_COLUMNS_KEPT) {
-            if columns.len() >= MOST_CLOCKS {
+            if alike.len() + rising.len() >= MOST_CLOCKS {
                 break;
             }
-            if !columns.contains(&column) && self.rises(column)? {
-                columns.push(column);
+            if !alike.contains(&column) && self.rises(column)? {
+                rising.push(column);
             }
         }
-        columns.retain(|&column| self.rises(column).unwrap_or(false));
+        let alike = alike.into_iter();
+        let mut columns: Vec<usize> = alike
+            .filter(|&column| self.rises(column).unwrap_or(false))
+            .collect();
+        columns.append(&mut rising);
         if columns.is_empty() {
             let fault = Fault::new("no column rises from row to row as time stamps do");
             return Err(fault.help("write the time stamps in a column of their own, named `t`"));
