@@ -201,8 +201,8 @@ fn sample(
             {
                 for (channel, place) in known.iter().enumerate() {
                     let Some(place) = *place else { continue };
-                    values[near][channel] = row.values[place];
-                    if let Some(value) = row.values[place] {
+                    values[near][channel] = row.value(place);
+                    if let Some(value) = row.value(place) {
                         let resolution = survey.channels[place].at(value);
                         resolutions[channel] = resolutions[channel].max(resolution);
                     }

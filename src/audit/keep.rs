@@ -7,33 +7,23 @@ use crate::trajectory::{Grid, Resolution, Survey};
 
 /// Gathers the rows of a few windows while the file is compared.
 pub(super) struct Keeping {
-    windows: Vec<(u64, u64)>,
     /// Channel of the case and conversion of each selected column.
     columns: Vec<(usize, Conversion)>,
     kept: Vec<Kept>,
 }
 
 impl Keeping {
-    pub(super) fn new(rows: u64, columns: Vec<(usize, Conversion)>) -> Keeping {
+    /// Of the rows that were handed on, those of the windows of a file with so many rows.
+    pub(super) fn new(compared: &Compared, columns: Vec<(usize, Conversion)>) -> Keeping {
+        let windows = windows(compared.rows);
+        let wanted = |row: &&Kept| {
+            let inside = |&(first, rows): &(u64, u64)| (first..first + rows).contains(&row.number);
+            windows.iter().any(inside)
+        };
         Keeping {
-            windows: windows(rows),
             columns,
-            kept: Vec::new(),
+            kept: compared.kept.iter().filter(wanted).cloned().collect(),
         }
-    }
-
-    pub(super) fn wants(windows: &[(u64, u64)], row: u64) -> bool {
-        windows
-            .iter()
-            .any(|&(first, rows)| (first..first + rows).contains(&row))
-    }
-
-    pub(super) fn windows(&self) -> Vec<(u64, u64)> {
-        self.windows.clone()
-    }
-
-    pub(super) fn take(&mut self, row: Kept) {
-        self.kept.push(row);
     }
 
     /// The record, once the digits and the grid are known for good. A stated step that
@@ -41,10 +31,10 @@ impl Keeping {
     pub(super) fn conclude(
         self,
         compared: &Compared,
-        survey: &Survey,
         time: Conversion,
         step: Option<f64>,
     ) -> Record {
+        let survey = &compared.survey;
         let full = |place: usize| {
             let deviation = compared.channels.get(place);
             deviation.is_some_and(|d| d.resolution == Resolution::Full)

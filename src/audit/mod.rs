@@ -27,6 +27,7 @@ use crate::fault::Fault;
 use crate::method::Linear;
 use crate::outcome::{Audited, LimitsFrom, NotAudited, Outcome};
 use crate::submission::{LimitStated, Submission};
+use crate::trajectory::Crew;
 use run::compare;
 use verdict::{assign_roles, judge_orders, judge_runs, note_hidden_rungs};
 
@@ -85,16 +86,20 @@ pub fn audit(plan: &Plan) -> Outcome {
 pub fn audit_watched(plan: &Plan, watch: &Watch) -> Outcome {
     let models = Models::default();
     let next = AtomicUsize::new(0);
+    let threads = plan.threads.clamp(1, plan.submissions.len().max(1));
+    // Threads without a submission of their own help with those that are long.
+    let crew = Crew::new(plan.threads.saturating_sub(threads));
     std::thread::scope(|scope| {
-        for _ in 0..plan.threads.clamp(1, plan.submissions.len().max(1)) {
+        for _ in 0..threads {
             scope.spawn(|| {
                 loop {
                     let index = next.fetch_add(1, Ordering::Relaxed);
                     let Some(planned) = plan.submissions.get(index) else {
                         break;
                     };
-                    watch.finished(index, audit_one(planned, plan, &models, watch));
+                    watch.finished(index, audit_one(planned, plan, &models, watch, &crew));
                 }
+                crew.release();
             });
         }
     });
@@ -138,6 +143,7 @@ fn audit_one(
     plan: &Plan,
     models: &Models,
     watch: &Watch,
+    crew: &Crew,
 ) -> Result<Audited, Vec<Fault>> {
     let (submission, library) = (&planned.submission, &plan.library);
     let few = plan.submissions.len() <= FEW;
@@ -168,7 +174,13 @@ fn audit_one(
     );
     let mut compared = Vec::new();
     for run in &submission.runs {
-        let one = compare(run, submission, &model, plan.traced, &mut audited.notes);
+        let one = compare(
+            run,
+            submission,
+            &model,
+            (plan.traced, crew),
+            &mut audited.notes,
+        );
         watch.compared(one.as_ref().map_or(0, |one| one.bytes));
         // A complaint with a line is about the submission, one without about the run.
         compared.push(one.map_err(|fault| match (fault.line, &planned.file) {

@@ -4,16 +4,16 @@ use super::Model;
 use super::curves::plot_points;
 use super::keep::Keeping;
 use crate::case::Case;
-use crate::compare::{Compared, Comparison, Deviation, Keeper, Limit, Spot};
+use crate::compare::{Compared, Comparison, Deviation, Limit, Spot};
 use crate::fault::Fault;
 use crate::judge;
-use crate::method::Record;
+use crate::method::{LATER_ROWS, Record, may_be_wanted};
 use crate::number::{Conversion, counted};
 use crate::outcome::{ChannelOutcome, ErrorOutcome, RowOutcome, RunOutcome};
 use crate::submission::{
     Column, LimitsStated, Matched, Role, Run, Setting, Submission, match_columns,
 };
-use crate::trajectory::{Findings, Grid, Kind, Survey};
+use crate::trajectory::{Crew, Findings, Grid, Kind};
 
 /// One run with what the ladder needs of it.
 pub(super) struct RunCompared {
@@ -57,7 +57,7 @@ pub(super) fn compare(
     run: &Run,
     submission: &Submission,
     model: &Model,
-    traced: bool,
+    (traced, crew): (bool, &Crew),
     notes: &mut Vec<String>,
 ) -> Result<RunCompared, Fault> {
     let placed = |fault: Fault| fault.in_file(&run.path);
@@ -115,32 +115,31 @@ pub(super) fn compare(
             )
         })
         .collect();
-    let survey = Survey::new(&source, layout, matched.selection(), &submission.layout);
-    let survey = survey.map_err(placed)?;
-    outcome.stamps = match survey.grid {
-        Grid::Uniform { exact: Some(_), .. } => "an exact grid".to_owned(),
-        _ => survey.time.describe(),
-    };
     let comparison = Comparison {
         exact: &model.exact,
         source: &source,
-        survey: &survey,
+        layout: &layout,
+        selection: &matched.selection(),
+        stated: &submission.layout,
         time: matched.time_conversion,
         channels: &channels,
         step,
         least_rows: model.case.time.least_rows,
         time_unit: &model.case.time.unit,
         traced,
+        wanted: &may_be_wanted,
+        last_rows: LATER_ROWS as usize,
+        crew,
+    };
+    let compared = comparison.run(&mut findings).map_err(placed)?;
+    let survey = &compared.survey;
+    outcome.stamps = match survey.grid {
+        Grid::Uniform { exact: Some(_), .. } => "an exact grid".to_owned(),
+        _ => survey.time.describe(),
     };
     let columns = channels.iter().map(|&(c, conversion, _)| (c, conversion));
-    let mut keeping = Keeping::new(survey.rows, columns.collect());
-    let windows = keeping.windows();
-    let mut keeper = Keeper {
-        wanted: &|row| Keeping::wants(&windows, row),
-        take: &mut |row| keeping.take(row),
-    };
-    let compared = comparison.run(&mut findings, &mut keeper).map_err(placed)?;
-    let record = keeping.conclude(&compared, &survey, matched.time_conversion, step);
+    let keeping = Keeping::new(&compared, columns.collect());
+    let record = keeping.conclude(&compared, matched.time_conversion, step);
     if channels.is_empty() {
         let text = "no column of the file is a channel of the case";
         findings.fatal(Kind::ColumnMissing, None, text);

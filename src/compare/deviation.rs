@@ -1,23 +1,29 @@
 //! Errors of one run in one pass over its rows.
 
-use super::coverage::Coverage;
-use super::margin::{Deviation, Limit, Sums};
-use super::stride::Strides;
+use super::chunk::{Chunk, Part, Pass};
+use super::margin::{Deviation, Limit};
+use super::stage::Stage;
 use super::trace::{Trace, Traced};
-use crate::exact::{Exact, Walk};
+use crate::exact::{Exact, Nodes};
 use crate::fault::Result;
-use crate::number::{Conversion, Decimal, Double};
-use crate::trajectory::{Findings, Grid, Kind, Resolution, Row, Source, Survey};
+use crate::number::Conversion;
+use crate::trajectory::{
+    Batch, Crew, Findings, Grid, Layout, Sample, Selection, Source, Stages, Stated, Survey,
+};
 
 /// One run to be compared.
-#[derive(Clone, Copy, Debug)]
+#[derive(Clone, Copy)]
 pub struct Comparison<'a> {
     /// The truth.
     pub exact: &'a Exact,
     /// The bytes.
     pub source: &'a Source,
-    /// What the first pass has found.
-    pub survey: &'a Survey,
+    /// How the rows are laid out, and which columns are read.
+    pub layout: &'a Layout,
+    /// The columns that are read.
+    pub selection: &'a Selection,
+    /// What the submission says of the layout.
+    pub stated: &'a Stated,
     /// From the file's unit of time to the case's.
     pub time: Conversion,
     /// For each selected column: place among the channels of the case, conversion to
@@ -31,11 +37,19 @@ pub struct Comparison<'a> {
     pub time_unit: &'a str,
     /// True where points for a plot are wanted.
     pub traced: bool,
+    /// Which rows are handed on, by their number within the window, and how many of the last.
+    pub wanted: &'a (dyn Fn(u64) -> bool + Sync),
+    /// So many of the last rows are handed on as well.
+    pub last_rows: usize,
+    /// Threads that may help.
+    pub crew: &'a Crew,
 }
 
 /// What came out for one run.
 #[derive(Clone, Debug)]
 pub struct Compared {
+    /// What the file looks like as a whole.
+    pub survey: Survey,
     /// Rows within the window.
     pub rows: u64,
     /// Rows outside the window, which are not compared.
@@ -46,6 +60,8 @@ pub struct Compared {
     pub channels: Vec<Deviation>,
     /// Points for a plot of each of them; empty where none are wanted.
     pub traces: Vec<Vec<Traced>>,
+    /// The rows that were wanted, in their order.
+    pub kept: Vec<Kept>,
 }
 
 /// One row as it is handed on to whoever looks closer, in the units of the case.
@@ -72,262 +88,145 @@ pub struct KeptValue {
     pub doubts: [f64; 2],
 }
 
-/// Takes some of the rows along.
-pub struct Keeper<'k> {
-    /// Which rows.
-    pub wanted: &'k dyn Fn(u64) -> bool,
-    /// What to do with them.
-    pub take: &'k mut dyn FnMut(Kept),
-}
+/// With fewer rows the quick way does not pay for its table.
+const MANY_ROWS: u64 = 4096;
+/// A guess that did not come true is replaced by what was seen; a file that then still looks
+/// different is being written to.
+const MOST_GUESSES: usize = 3;
 
-/// Time constants or radians within the rounding of one stamp that are still followed.
-const MOST_TURNS: f64 = 16.0;
-impl<'a> Comparison<'a> {
-    /// Goes through the rows of the run.
+impl Comparison<'_> {
+    /// Goes through the rows of the run: with a guess of what the file looks like as a whole,
+    /// and with plain `f64` where rows are dense; again where the guess does not come true or
+    /// the exact values turn out to be needed more sharply.
     ///
     /// # Errors
     /// A file that cannot be read.
-    pub fn run(&self, findings: &mut Findings, keeper: &mut Keeper) -> Result<Compared> {
-        let (from, to) = (self.exact.from(), self.exact.to());
-        let span = (to - from).to_f64();
-        let mut pass = Pass::new(self, keeper);
-        let is_event = |stamp: f64| {
-            let time = self.time.apply(Double::from(stamp));
-            self.exact.jumps_near(time, 1e-9 * span)
-        };
-        // Findings of the rows and of their coverage come in turn.
-        let mut gaps = Findings::default();
-        let (start, end) = (from.to_f64(), to.to_f64());
-        let mut coverage = Coverage::new(start, end, self.time_unit);
-        let mut strides = self.step.map(|step| Strides::new(start, step));
-        let rounded_start = self.start_is_rounded();
-        self.survey
-            .rows(self.source, findings, &is_event, &mut |row| {
-                let time = self.time.apply(row.time);
-                let printed = self.survey.time.at(row.time.to_f64());
-                let printed = self.time.stretch(printed);
-                let blur = match rounded_start {
-                    true => printed,
-                    false => self.time.stretch(row.time_resolution),
-                };
-                if coverage.add(row.line, time.to_f64(), printed, &mut gaps) {
-                    if let Some(strides) = &mut strides {
-                        strides.add(row.line, time.to_f64());
+    pub fn run(&self, findings: &mut Findings) -> Result<Compared> {
+        let sample = self
+            .source
+            .sample_rows(self.layout, self.selection, self.stated)?;
+        let Sample {
+            survey: mut guess,
+            batches,
+        } = sample;
+        let batches = batches.as_deref();
+        let (mut quick, mut guesses) = (true, 1);
+        loop {
+            let many = batches.is_none() || guess.rows >= MANY_ROWS;
+            let step = self.time.stretch(guess.mean_step);
+            let nodes = if quick && many {
+                self.exact.nodes(step)
+            } else {
+                None
+            };
+            let done = self.pass(&guess, nodes.as_ref(), batches)?;
+            let came_true = done.survey.confirms(&guess, done.largest_step, done.open);
+            if !came_true && guesses < MOST_GUESSES {
+                guess = done.survey;
+                guesses += 1;
+                continue;
+            }
+            let mut sharp = done.part.sums.iter().zip(&guess.channels);
+            if nodes.is_some() && !sharp.all(|(sums, &printed)| sums.is_sharp(printed)) {
+                quick = false;
+                guess = done.survey;
+                continue;
+            }
+            findings.append(done.findings.clone());
+            return Ok(self.conclude(done));
+        }
+    }
+
+    /// Once through the file.
+    fn pass(
+        &self,
+        guess: &Survey,
+        nodes: Option<&Nodes>,
+        batches: Option<&[Batch]>,
+    ) -> Result<Done> {
+        let is_event = |stamp: f64| self.is_event(stamp);
+        let mut stage = Stage::new(self, guess, &is_event);
+        let mut part = Part::new(self);
+        let apart = |chunk: Chunk| Pass::new(self, guess, nodes).run(&chunk);
+        match batches {
+            Some(batches) => {
+                for batch in batches {
+                    for chunk in stage.take(batch) {
+                        part.join(apart(chunk));
                     }
-                    let (time, blur) = self.on_step(time, blur);
-                    pass.add(if time < from { from } else { time }, blur, row);
                 }
-                Ok(())
-            })?;
-        if let Some(strides) = strides.filter(|_| !findings.has(Kind::MissingRows)) {
-            strides.conclude(self.time_unit, findings);
+            }
+            None => self.source.stream(
+                self.layout,
+                self.selection,
+                self.crew,
+                Stages {
+                    in_order: &mut |batch| stage.take(batch),
+                    apart: &apart,
+                    gather: &mut |next| part.join(next),
+                },
+            )?,
         }
-        if !findings.has(Kind::MissingRows) {
-            // Single rows that are missing from a uniform grid are seen by the reader.
-            findings.append(gaps);
+        let staged = stage.finish();
+        part.join(apart(staged.chunk));
+        let mut last = Pass::new(self, guess, None).keep(&staged.last_rows);
+        let first = last.first().map_or(0, |row| row.number);
+        part.kept.retain(|row| row.number < first);
+        part.kept.append(&mut last);
+        if nodes.is_some() {
+            let mut pass = Pass::new(self, guess, None);
+            for (place, sums) in part.sums.iter_mut().enumerate() {
+                sums.marks()
+                    .for_each(|mark| *mark = pass.again(place, mark));
+            }
         }
-        let (rows, outside) = coverage.conclude(self.least_rows, findings);
-        let spacing = match self.survey.grid {
+        Ok(Done {
+            survey: staged.survey,
+            findings: staged.findings,
+            rows: staged.rows,
+            outside: staged.outside,
+            largest_step: staged.largest_step,
+            open: staged.open,
+            part,
+        })
+    }
+}
+
+/// One pass over a file.
+struct Done {
+    survey: Survey,
+    findings: Findings,
+    rows: u64,
+    outside: u64,
+    largest_step: f64,
+    open: bool,
+    part: Part,
+}
+
+impl Comparison<'_> {
+    /// True where an input jumps at a stamp.
+    fn is_event(&self, stamp: f64) -> bool {
+        let span = (self.exact.to() - self.exact.from()).to_f64();
+        let time = self.time.apply(stamp.into());
+        self.exact.jumps_near(time, 1e-9 * span)
+    }
+
+    fn conclude(&self, done: Done) -> Compared {
+        let spacing = match done.survey.grid {
             Grid::Uniform { spacing, .. } => Some(self.time.stretch(spacing)),
             Grid::Varied => None,
         };
-        Ok(Compared {
-            rows,
-            outside,
+        let sums = done.part.sums.into_iter().zip(&done.survey.channels);
+        Compared {
+            rows: done.rows,
+            outside: done.outside,
             spacing,
-            traces: std::mem::take(&mut pass.traces)
-                .into_iter()
-                .map(Trace::conclude)
+            channels: sums
+                .map(|(sums, &printed)| sums.conclude(printed))
                 .collect(),
-            channels: pass.conclude(),
-        })
-    }
-
-    /// An even grid whose first stamp misses the start of the window, but no further than
-    /// its digits allow: every stamp is off by as much as the first.
-    fn start_is_rounded(&self) -> bool {
-        let Some(first) = self.survey.first else {
-            return false;
-        };
-        let first = first.to_double();
-        let gap = (self.time.apply(first) - self.exact.from()).abs().to_f64();
-        let printed = self.time.stretch(self.survey.time.at(first.to_f64()));
-        let start = self.exact.from().to_f64().abs();
-        gap > 4.0 * f64::EPSILON * start && gap <= 1.0001 * printed
-    }
-
-    /// The exact multiple of the stated step, where the stamp agrees with it to its
-    /// printed digits.
-    fn on_step(&self, time: Double, blur: f64) -> (Double, f64) {
-        let Some(step) = self.step else {
-            return (time, blur);
-        };
-        if blur == 0.0 {
-            return (time, blur);
+            traces: done.part.traces.into_iter().map(Trace::conclude).collect(),
+            kept: done.part.kept,
+            survey: done.survey,
         }
-        let since = time - self.exact.from();
-        let count = (since.to_f64() / step).round();
-        // The step as it is written is meant, not the f64 nearest to it.
-        let exact = Decimal::shortest(step).map_or(Double::from(step), Decimal::to_double);
-        let multiple = exact * Double::from(count);
-        // Of a step finer than the stamps every stamp would be a multiple.
-        // A product in f64 is off by a unit in the last place.
-        let allowed = (1.0001 * blur).max(2.0 * f64::EPSILON * time.to_f64().abs());
-        let agrees = (since - multiple).abs().to_f64() <= allowed && step > 8.0 * blur;
-        if count.abs() < 1e15 && agrees {
-            (self.exact.from() + multiple, 0.0)
-        } else {
-            (time, blur)
-        }
-    }
-}
-
-/// The walk along the exact solution and the sums of all channels.
-struct Pass<'c, 'a, 'k> {
-    comparison: &'c Comparison<'a>,
-    keeper: &'c mut Keeper<'k>,
-    rows: u64,
-    walk: Walk<'a>,
-    sides: Option<[Walk<'a>; 2]>,
-    sums: Vec<Sums>,
-    /// One for each of them, or none at all.
-    traces: Vec<Trace>,
-}
-
-impl<'c, 'a, 'k> Pass<'c, 'a, 'k> {
-    fn new(comparison: &'c Comparison<'a>, keeper: &'c mut Keeper<'k>) -> Pass<'c, 'a, 'k> {
-        let sums = comparison.channels.iter().map(|_| Sums::new()).collect();
-        let trace = Trace::new(comparison.exact.from(), comparison.exact.to());
-        let traced = if comparison.traced {
-            comparison.channels.len()
-        } else {
-            0
-        };
-        Pass {
-            comparison,
-            keeper,
-            rows: 0,
-            walk: comparison.exact.walk(),
-            sides: None,
-            sums,
-            traces: vec![trace; traced],
-        }
-    }
-
-    fn add(&mut self, time: Double, blur: f64, row: &Row) {
-        let exact = self.comparison.exact;
-        // A stamp that fell short of a jump by its rounding alone is at the jump.
-        let ulps = 4.0 * f64::EPSILON * time.to_f64().abs();
-        let time = match exact.has_feed_through() {
-            true => exact.jump_after(time, ulps).unwrap_or(time),
-            false => time,
-        };
-        self.walk.go(time);
-        let moved = self.moved_by(time, blur);
-        let values = self.walk.values();
-        let number = self.rows;
-        self.rows += 1;
-        let mut kept = (self.keeper.wanted)(number).then(|| Kept {
-            number,
-            time: (time.to_f64(), blur),
-            channels: vec![None; self.sums.len()],
-        });
-        let channels = self
-            .comparison
-            .channels
-            .iter()
-            .zip(&mut self.sums)
-            .enumerate();
-        for (place, ((channel, conversion, limit), sums)) in channels {
-            let Some(written) = row.values[place] else {
-                continue;
-            };
-            let truth = values.value[*channel];
-            sums.slope(time.to_f64(), truth.to_f64());
-            let value = conversion.apply(Double::from(written));
-            let error = (value - truth).to_f64();
-            let rest = moved.as_ref().map_or(0.0, |moved| moved[*channel]) + values.bound[*channel];
-            let as_printed = self.comparison.survey.channels[place];
-            let digits = [as_printed, Resolution::Full]
-                .map(|resolution| conversion.stretch(resolution.at(written)));
-            let doubts = digits.map(|digits| digits + rest);
-            if let Some(kept) = &mut kept {
-                kept.channels[place] = Some(KeptValue {
-                    value: value.to_f64(),
-                    written,
-                    error,
-                    doubts: digits,
-                });
-            }
-            if let Some(trace) = self.traces.get_mut(place) {
-                let traced = Traced {
-                    time: time.to_f64(),
-                    written: value.to_f64(),
-                    error,
-                    doubts,
-                };
-                // Where the limit is a part of the peak, which is known at the end only, it
-                // is the same in all rows.
-                let allowed = match limit.of_peak {
-                    true => 1.0,
-                    false => limit.at(truth.to_f64().abs()),
-                };
-                trace.add(traced, error.abs() / allowed);
-            }
-            sums.written(written);
-            sums.add(time.to_f64(), error, truth.to_f64().abs(), doubts, limit);
-        }
-        if let Some(kept) = kept {
-            (self.keeper.take)(kept);
-        }
-    }
-
-    /// How far the exact values move within the rounding of the stamp.
-    fn moved_by(&mut self, time: Double, blur: f64) -> Option<Vec<f64>> {
-        if blur == 0.0 {
-            return None;
-        }
-        let exact = self.comparison.exact;
-        // While the fastest mode hardly moves, the rate tells; its own change within
-        // the blur is covered by a tenth.
-        let slow = exact.fastest_rate() * blur < 0.05;
-        if slow && !exact.jumps_near(time, blur) {
-            let rates = self.walk.approx_rates();
-            return Some(rates.iter().map(|rate| 1.1 * rate.abs() * blur).collect());
-        }
-        let middle = &self.walk.values().value;
-        let turns = exact.fastest_rate() * blur;
-        if turns > MOST_TURNS {
-            // Anything can have happened meanwhile.
-            return Some(exact.peaks().iter().map(|peak| 2.0 * peak).collect());
-        }
-        // Densely enough that no swing of the fastest mode hides between the points.
-        let points = (4.0 * turns).ceil().max(1.0);
-        let [before, after] = self
-            .sides
-            .get_or_insert_with(|| [exact.walk(), exact.walk()]);
-        let mut moved = vec![0.0f64; middle.len()];
-        for point in 1..=points as u32 {
-            let shift = blur * f64::from(point) / points;
-            for (walk, shift) in [(&mut *before, -shift), (&mut *after, shift)] {
-                let there = walk.go(time + Double::from(shift));
-                for ((moved, there), middle) in moved.iter_mut().zip(&there.value).zip(middle) {
-                    *moved = moved.max((*there - *middle).abs().to_f64());
-                }
-            }
-        }
-        Some(moved)
-    }
-
-    fn conclude(self) -> Vec<Deviation> {
-        let channels = self
-            .comparison
-            .channels
-            .iter()
-            .zip(&self.comparison.survey.channels);
-        let concluded = channels.zip(self.sums);
-        concluded
-            .map(|(((_, _, limit), printed), sums)| sums.conclude(limit, *printed))
-            .collect()
     }
 }

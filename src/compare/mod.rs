@@ -3,16 +3,19 @@
 //!
 //! Nothing is judged here; [`crate::judge`] does that with the numbers found.
 
+mod chunk;
 mod convergence;
 mod coverage;
 mod deviation;
 mod margin;
 mod order;
+mod stage;
 mod stride;
+mod sums;
 mod trace;
 
 pub use convergence::{Convergence, grid_convergence, order_of_three};
-pub use deviation::{Compared, Comparison, Keeper, Kept, KeptValue};
+pub use deviation::{Compared, Comparison, Kept, KeptValue};
 pub use margin::{Deviation, Limit, Margin, Spot};
 pub use order::{Pair, Rung, Sight, agreeing, observe};
 pub use trace::Traced;

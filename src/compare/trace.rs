@@ -68,6 +68,17 @@ impl Trace {
         }
     }
 
+    /// Takes in the rows after these.
+    pub(super) fn join(&mut self, next: &Trace) {
+        for (own, next) in self.stretches.iter_mut().zip(&next.stretches) {
+            match (own, next) {
+                (_, None) => {}
+                (Some(own), Some(next)) => own.join(next),
+                (own, Some(next)) => *own = Some(*next),
+            }
+        }
+    }
+
     /// In the order of time.
     pub(super) fn conclude(self) -> Vec<Traced> {
         let mut points = Vec::new();
@@ -92,6 +103,14 @@ impl Trace {
 }
 
 impl Stretch {
+    fn join(&mut self, next: &Stretch) {
+        for row in [next.smallest, next.largest, next.worst] {
+            self.add(row, 0.0);
+        }
+        self.add(next.decisive.0, next.decisive.1);
+        self.last = next.last;
+    }
+
     fn add(&mut self, row: Traced, used: f64) {
         if row.written < self.smallest.written {
             self.smallest = row;

@@ -3,12 +3,12 @@
 use super::assign::Assigned;
 use super::look::Looked;
 use super::rank::Likely;
-use crate::compare::{Compared, Comparison, Keeper, Limit};
+use crate::compare::{Compared, Comparison, Limit};
 use crate::fault::Fault;
 use crate::number::{Conversion, Double};
 use crate::outcome::{By, Candidate, ColumnGuess, DraftRun, Step};
 use crate::submission::convert;
-use crate::trajectory::{Findings, Grid, Resolution, Selection, Stated, Survey};
+use crate::trajectory::{Crew, Findings, Grid, Resolution, Selection, Stated, Survey};
 
 /// Faults of one file that are told.
 const MOST_FAULTS: usize = 3;
@@ -50,7 +50,12 @@ impl Beside {
             channels: likely.assigned.iter().map(|one| one.column).collect(),
         };
         let stated = Stated::default();
-        let survey = Survey::new(&looked.source, looked.layout.clone(), selection, &stated);
+        let survey = Survey::new(
+            &looked.source,
+            looked.layout.clone(),
+            selection.clone(),
+            &stated,
+        );
         let survey = survey.map_err(placed)?;
         let limit = Limit {
             absolute: case.limits.absolute,
@@ -66,20 +71,21 @@ impl Beside {
         let comparison = Comparison {
             exact: &likely.model.exact,
             source: &looked.source,
-            survey: &survey,
+            layout: &looked.layout,
+            selection: &selection,
+            stated: &stated,
             time: likely.frame.conversion,
             channels: &channels,
             step,
             least_rows: case.time.least_rows,
             time_unit: &case.time.unit,
             traced: false,
+            wanted: &|_| false,
+            last_rows: 0,
+            crew: &Crew::default(),
         };
         let mut findings = Findings::default();
-        let mut keeper = Keeper {
-            wanted: &|_| false,
-            take: &mut |_| {},
-        };
-        let compared = comparison.run(&mut findings, &mut keeper).map_err(placed)?;
+        let compared = comparison.run(&mut findings).map_err(placed)?;
         Ok(Beside {
             survey,
             compared,

@@ -226,8 +226,8 @@ impl Looked {
             number += 1;
             if (number - 1) % stride == 0 || number == survey.rows {
                 times.push(row.time);
-                for ((_, values), value) in columns.iter_mut().zip(row.values) {
-                    values.push(*value);
+                for (place, (_, values)) in columns.iter_mut().enumerate() {
+                    values.push(row.value(place));
                 }
             }
             Ok(())

@@ -5,6 +5,7 @@
 //! and on to any time. Nothing here is integrated step by step: see
 //! [`crate::number::Propagator`].
 
+mod near;
 mod propagate;
 mod scales;
 mod segments;
@@ -15,6 +16,7 @@ use crate::case::Case;
 use crate::fault::Fault;
 use crate::number::{Double, Flow, Propagator, Quad};
 
+pub use near::{Near, Nodes};
 pub use propagate::{Values, Walk};
 pub use scales::{TimeScales, approx_time_scales};
 use segments::{Jump, System};

@@ -45,11 +45,11 @@ pub(super) fn anchors<T: Real>(
 
 impl Exact {
     /// Number of jumps at or before a time.
-    fn segment(&self, time: Double) -> usize {
+    pub(super) fn segment(&self, time: Double) -> usize {
         self.system.jumps.partition_point(|jump| jump.time <= time)
     }
 
-    fn segment_start(&self, segment: usize) -> Double {
+    pub(super) fn segment_start(&self, segment: usize) -> Double {
         if segment == 0 {
             self.from
         } else {
@@ -67,7 +67,7 @@ impl Exact {
         }
     }
 
-    fn flow_at(&self, segment: usize, time: Double) -> Flow<Double> {
+    pub(super) fn flow_at(&self, segment: usize, time: Double) -> Flow<Double> {
         let mut flow = self.anchors[segment].clone();
         self.table.advance(&mut flow, self.since(segment, time));
         flow
@@ -103,7 +103,7 @@ impl Exact {
         }
     }
 
-    fn states(&self) -> usize {
+    pub(super) fn states(&self) -> usize {
         self.system.channels.len() - self.outputs()
     }
 

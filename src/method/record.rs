@@ -48,24 +48,40 @@ pub struct Piece {
     pub rows: usize,
 }
 
-/// Rows of the window at the start, of each later window, and how many of those there are.
+/// Rows of the window at the start and of each later window, and about how many of those there
+/// are.
 pub const START_ROWS: u64 = 800;
-const LATER_ROWS: u64 = 48;
+/// Rows of a later window; the last one ends with the last row.
+pub const LATER_ROWS: u64 = 48;
 const LATER_WINDOWS: u64 = 16;
+
+/// From the start of one later window to that of the next: a power of two, so that the windows of
+/// a long file are among those of its beginning, and can be kept before its length is known.
+fn stride(rows: u64) -> u64 {
+    let rest = rows.saturating_sub(START_ROWS);
+    rest.div_ceil(LATER_WINDOWS).next_power_of_two().max(64)
+}
+
+/// True where a row may belong to a window of a file that has more rows than this one's number.
+pub fn may_be_wanted(row: u64) -> bool {
+    let all = START_ROWS + LATER_ROWS * LATER_WINDOWS;
+    row < all || (row - START_ROWS) % stride(row + 1) < LATER_ROWS
+}
 
 /// The windows of a file with so many rows: first row and number of rows.
 pub fn windows(rows: u64) -> Vec<(u64, u64)> {
-    let later = LATER_ROWS * LATER_WINDOWS;
-    if rows <= START_ROWS + later {
+    let all = START_ROWS + LATER_ROWS * LATER_WINDOWS;
+    if rows <= all {
         return vec![(0, rows)];
     }
-    let mut windows = vec![(0, START_ROWS)];
-    let rest = rows - START_ROWS;
-    for number in 1..=LATER_WINDOWS {
-        // The last one ends with the last row.
-        let end = START_ROWS + rest * number / LATER_WINDOWS;
-        windows.push((end - LATER_ROWS, LATER_ROWS));
-    }
+    let last = rows - LATER_ROWS;
+    let stride = stride(rows);
+    let later = (1..).map(|number| START_ROWS + number * stride);
+    let later = later.take_while(|first| first + LATER_ROWS <= last);
+    let ends = [(0, START_ROWS), (last, LATER_ROWS)];
+    let mut windows = vec![ends[0]];
+    windows.extend(later.map(|first| (first, LATER_ROWS)));
+    windows.push(ends[1]);
     windows
 }
 

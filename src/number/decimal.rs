@@ -24,11 +24,30 @@ impl Decimal {
                 exponent: 0,
             });
         }
+        // 64 bits at once where they are enough: it is done for every stamp of a file.
+        if let Ok(short) = i64::try_from(digits) {
+            let (short, zeros) = without_zeros(short.unsigned_abs());
+            let digits = i128::from(short) * digits.signum();
+            return Some(Decimal {
+                digits,
+                exponent: exponent + zeros,
+            });
+        }
         while digits % 10 == 0 {
             digits /= 10;
             exponent += 1;
         }
         (digits.unsigned_abs() < 10u128.pow(MOST_DIGITS)).then_some(Decimal { digits, exponent })
+    }
+
+    /// From a sign, at most 19 digits and an exponent.
+    pub fn of_digits(negative: bool, digits: u64, exponent: i32) -> Decimal {
+        let (digits, zeros) = without_zeros(digits);
+        let size = i128::from(digits);
+        Decimal {
+            digits: if negative { -size } else { size },
+            exponent: if digits == 0 { 0 } else { exponent + zeros },
+        }
     }
 
     /// Reads plain or exponential decimal text (`.` as the decimal sign).
@@ -81,6 +100,11 @@ impl Decimal {
             return Some(self);
         }
         let exponent = self.exponent.min(other.exponent);
+        if let (Some(a), Some(b)) = (self.in_units(exponent), other.in_units(exponent))
+            && let Some(rest) = a.checked_sub(b)
+        {
+            return Some(Decimal::of_digits(rest < 0, rest.unsigned_abs(), exponent));
+        }
         let align = |d: Decimal| {
             let shift = u32::try_from(d.exponent - exponent)
                 .ok()
@@ -88,6 +112,16 @@ impl Decimal {
             d.digits.checked_mul(10i128.pow(shift))
         };
         Decimal::new(align(self)?.checked_sub(align(other)?)?, exponent)
+    }
+
+    /// The number in units of `10^exponent`, which is not above its own, if that fits 64 bits.
+    fn in_units(self, exponent: i32) -> Option<i64> {
+        let digits = i64::try_from(self.digits).ok()?;
+        match self.exponent - exponent {
+            0 => Some(digits),
+            shift @ 1..=18 => digits.checked_mul(10i64.pow(shift.unsigned_abs())),
+            _ => None,
+        }
     }
 
     /// A whole multiple; `None` where it needs more than 36 digits.
@@ -102,6 +136,18 @@ impl Decimal {
 
     /// To double-double; relative error below `20 * 2^-106` (zero below 1e-290).
     pub fn to_double(self) -> Double {
+        if let (Ok(digits), -22..=22) = (i64::try_from(self.digits), self.exponent) {
+            let high = digits as f64;
+            // What is left is small, and exact.
+            let low = (i128::from(digits) - high as i128) as f64;
+            let power = POWERS[self.exponent.unsigned_abs() as usize];
+            let digits = Double::from_sum(high, low);
+            return match self.exponent {
+                0 => digits,
+                1.. => digits * Double::from(power),
+                _ => digits.over(power),
+            };
+        }
         const CHUNK: i128 = 1 << 52;
         let low = self.digits % CHUNK;
         let middle = self.digits / CHUNK % CHUNK;
@@ -118,6 +164,22 @@ impl Decimal {
             digits / ten.powi(150) / ten.powi((-self.exponent).min(440) - 150)
         }
     }
+}
+
+/// Powers of ten that an `f64` holds exactly.
+const POWERS: [f64; 23] = [
+    1e0, 1e1, 1e2, 1e3, 1e4, 1e5, 1e6, 1e7, 1e8, 1e9, 1e10, 1e11, 1e12, 1e13, 1e14, 1e15, 1e16,
+    1e17, 1e18, 1e19, 1e20, 1e21, 1e22,
+];
+
+/// Digits without zeros at their end, and how many there were.
+fn without_zeros(mut digits: u64) -> (u64, i32) {
+    let mut zeros = 0;
+    while digits != 0 && digits.is_multiple_of(10) {
+        digits /= 10;
+        zeros += 1;
+    }
+    (digits, zeros)
 }
 
 impl From<Decimal> for Double {

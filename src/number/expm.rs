@@ -40,6 +40,8 @@ use super::{Double, Real};
 pub struct Propagator<T> {
     generator: Matrix<T>,
     magnitude: Matrix<f64>,
+    /// The matrix in `f64`.
+    plain: Matrix<f64>,
     norm: f64,
     base: f64,
     levels: Vec<Step<T>>,
@@ -120,6 +122,7 @@ impl<T: Real> Propagator<T> {
         let mut table = Propagator {
             nearby: Matrix::zero(generator.size()),
             reach: Matrix::zero(generator.size()),
+            plain: generator.map(Double::to_f64),
             generator: exact,
             magnitude,
             norm,
@@ -428,6 +431,10 @@ impl<T: Real> Step<T> {
         whole
     }
 }
+
+mod expand;
+
+pub use expand::{Expansion, Nearby};
 
 #[cfg(test)]
 mod tests;

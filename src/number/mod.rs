@@ -21,7 +21,7 @@ pub use closed::{closed_form, fraction};
 pub use conversion::Conversion;
 pub use decimal::Decimal;
 pub use double::Double;
-pub use expm::{Flow, Propagator, Step};
+pub use expm::{Expansion, Flow, Nearby, Propagator, Step};
 pub use matrix::{Matrix, dot};
 pub use quad::Quad;
 pub use real::Real;

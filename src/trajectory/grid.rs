@@ -2,7 +2,7 @@
 //! and where rows are missing.
 
 use super::number::Printed;
-use super::resolution::Resolution;
+use super::resolution::{Resolution, decade, power_of_ten};
 use crate::number::Decimal;
 
 /// What the stamps of a file have in common.
@@ -62,6 +62,16 @@ pub(super) struct GridFinder {
 }
 
 impl GridFinder {
+    /// The average step.
+    pub(super) fn mean_step(&self) -> f64 {
+        self.sum / self.steps.max(1) as f64
+    }
+
+    /// The stamp that comes next does not follow the last one.
+    pub(super) fn interrupt(&mut self) {
+        self.last = None;
+    }
+
     pub(super) fn add(&mut self, time: f64, exact: Option<Decimal>, printed: Printed) {
         self.most_significant = self.most_significant.max(printed.significant);
         let unit = self.unit(time, printed);
@@ -82,13 +92,9 @@ impl GridFinder {
 
     /// One unit in the last place that the stamp was printed to, as far as it shows.
     fn unit(&mut self, time: f64, printed: Printed) -> f64 {
-        let own = |decimals: i32| 10f64.powi(-decimals);
-        let exponent = if printed.scientific && time != 0.0 {
-            time.abs().log10().floor()
-        } else {
-            0.0
-        };
-        let decimals = i32::from(printed.decimals) - exponent as i32;
+        let own = |decimals: i32| power_of_ten(-decimals);
+        let exponent = if printed.scientific { decade(time) } else { 0 };
+        let decimals = i32::from(printed.decimals) - exponent;
         if !printed.scientific {
             self.most_decimals = self.most_decimals.max(printed.decimals);
         }
@@ -109,12 +115,13 @@ impl GridFinder {
         // Where stamps are printed to few digits for their step, equal decimals tell
         // more than a tolerance as wide as the step itself.
         let coarse = tolerance > 0.3 * step;
-        let known = self.clusters.iter().position(|cluster| {
+        let same = |cluster: &Cluster| {
             // Whichever of the two was printed more coarsely.
             let near =
                 (cluster.spacing - step).abs() <= tolerance.max(cluster.tolerance) && !coarse;
             near || exact.is_some() && exact == cluster.exact
-        });
+        };
+        let known = self.clusters.iter().position(same);
         let place = match known {
             Some(place) => place,
             None if self.clusters.len() < MOST_CLUSTERS => {
@@ -236,7 +243,9 @@ mod tests {
             finder.add(time, Decimal::parse(&text), printed);
             pattern.add(time, printed);
         }
-        finder.conclude(pattern.conclude(None))
+        let mut whole = Pattern::new();
+        whole.join(&pattern);
+        finder.conclude(whole.conclude(None))
     }
 
     fn spacing(grid: Grid) -> (f64, bool) {

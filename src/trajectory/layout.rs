@@ -25,6 +25,16 @@ impl Separator {
         }
     }
 
+    /// The byte between two fields; `None` where it is any number of blanks.
+    pub(super) fn byte(self) -> Option<u8> {
+        match self {
+            Separator::Comma => Some(b','),
+            Separator::Semicolon => Some(b';'),
+            Separator::Tab => Some(b'\t'),
+            Separator::Blank => None,
+        }
+    }
+
     /// From the word in a submission.
     pub fn find(word: &str) -> Option<Separator> {
         let all = [
@@ -288,8 +298,8 @@ impl Layout {
         if memchr::memchr(b'"', line).is_some() {
             return self.split_quoted(line, each);
         }
-        match self.separator {
-            Separator::Blank => {
+        match self.separator.byte() {
+            None => {
                 let fields = line
                     .split(|b| matches!(b, b' ' | b'\t'))
                     .filter(|f| !f.is_empty());
@@ -297,8 +307,7 @@ impl Layout {
                     .enumerate()
                     .for_each(|(index, field)| each(index, field));
             }
-            separator => {
-                let byte = delimiter(separator);
+            Some(byte) => {
                 let fields = line.split(|b| *b == byte).enumerate();
                 fields.for_each(|(index, field)| each(index, field.trim_ascii()));
             }
@@ -309,7 +318,7 @@ impl Layout {
         let mut reader = csv::ReaderBuilder::new()
             .has_headers(false)
             .flexible(true)
-            .delimiter(delimiter(self.separator))
+            .delimiter(self.separator.byte().unwrap_or(b' '))
             .trim(csv::Trim::All)
             .from_reader(line);
         let mut record = csv::ByteRecord::new();
@@ -355,15 +364,6 @@ fn names_time(names: &[String]) -> bool {
 /// temperature or a period as often as a time.
 pub fn is_time_name(name: &str) -> bool {
     name == "t" || name.eq_ignore_ascii_case("time")
-}
-
-fn delimiter(separator: Separator) -> u8 {
-    match separator {
-        Separator::Comma => b',',
-        Separator::Semicolon => b';',
-        Separator::Tab => b'\t',
-        Separator::Blank => b' ',
-    }
 }
 
 fn is_comment(line: &[u8], comments: &[String]) -> bool {

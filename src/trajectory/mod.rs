@@ -7,24 +7,35 @@
 //! grow with their number. A reader knows no case; `open` is the only place with
 //! I/O, everything else takes bytes.
 
+mod batch;
 mod finding;
 mod grid;
 mod layout;
-mod lines;
 mod number;
 mod open;
+mod pieces;
 mod resolution;
 mod rows;
+mod sample;
+mod scan;
+mod stream;
 mod survey;
 
+pub(crate) use batch::Batch;
 pub use finding::{Finding, Findings, Kind};
 pub use grid::Grid;
 pub use layout::{Layout, Separator, Stated, is_time_name};
-pub use lines::{Lines, MOST_LINE_BYTES};
 pub use number::{Field, Printed};
 pub use open::{Source, open};
+pub use pieces::MOST_LINE_BYTES;
 pub use resolution::Resolution;
+pub(crate) use resolution::half_ulp;
 pub use rows::Row;
+pub(crate) use rows::{IsEvent, Order};
+pub(crate) use sample::Sample;
+pub use stream::Crew;
+pub(crate) use stream::Stages;
+pub(crate) use survey::Surveyor;
 pub use survey::{Selection, Survey};
 
 /// Most columns of a file.

@@ -15,7 +15,7 @@ pub enum Field {
 }
 
 /// How a number was printed.
-#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+#[derive(Clone, Copy, Debug, Default, PartialEq, Eq)]
 pub struct Printed {
     /// Digits from the first that is not zero, trailing zeros included.
     pub significant: u8,
@@ -26,7 +26,7 @@ pub struct Printed {
 }
 
 /// Longest text that is taken for a number.
-const MOST_CHARACTERS: usize = 64;
+pub(super) const MOST_CHARACTERS: usize = 64;
 
 /// Words that programs write for a value that is missing or not finite.
 const ABSENT: [&str; 15] = [

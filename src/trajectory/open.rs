@@ -4,26 +4,29 @@ use std::fs::File;
 use std::io::{ErrorKind, Read};
 use std::path::{Path, PathBuf};
 
-use super::lines::Lines;
+use super::batch::{Batch, Columns};
+use super::layout::Layout;
+use super::pieces::Pieces;
+use super::survey::Selection;
 use crate::fault::{Fault, Result};
 
 /// Where the bytes of a trajectory come from.
 #[derive(Clone, Debug)]
 pub struct Source {
-    origin: Origin,
+    pub(super) origin: Origin,
 }
 
 #[derive(Clone, Debug)]
-enum Origin {
+pub(super) enum Origin {
     File(PathBuf),
     /// The bytes, handed out in pieces of this size.
     Memory(Vec<u8>, usize),
 }
 
-/// Takes a line with its number and whether it had an end.
-pub(super) type EachLine<'a> = dyn FnMut(u64, &[u8], bool) -> Result<()> + 'a;
-
-const BLOCK_BYTES: usize = 256 * 1024;
+const BLOCK_BYTES: usize = 64 * 1024;
+/// Bytes that are parsed at a time: they stay near the processor, and a few thousand rows are
+/// enough work to be handed to another one.
+const PIECE_BYTES: usize = 256 * 1024;
 
 /// Looks at a file without reading it.
 ///
@@ -46,12 +49,12 @@ pub fn open(path: &Path) -> Result<Source> {
 impl Source {
     /// Bytes that are already in memory.
     pub fn memory(bytes: Vec<u8>) -> Source {
-        Source::pieces(bytes, BLOCK_BYTES)
+        Source::in_pieces(bytes, PIECE_BYTES)
     }
 
     /// Bytes in memory that come in pieces of a given size, as from a slow writer;
     /// what is read must not depend on it.
-    pub fn pieces(bytes: Vec<u8>, size: usize) -> Source {
+    pub fn in_pieces(bytes: Vec<u8>, size: usize) -> Source {
         Source {
             origin: Origin::Memory(bytes, size.max(1)),
         }
@@ -105,12 +108,41 @@ impl Source {
         Ok((sample, whole))
     }
 
-    /// Every line with its number; the flag is false for a last line without an end.
-    pub(super) fn each_line(&self, each: &mut EachLine) -> Result<()> {
-        let mut lines = Lines::default();
-        self.blocks(usize::MAX, &mut |block| {
-            lines.feed(block, &mut |number, line| each(number, line, true))
-        })?;
-        lines.finish(&mut |number, line| each(number, line, false))
+    /// Every batch of rows, in order.
+    pub(super) fn batches(
+        &self,
+        layout: &Layout,
+        of: &Selection,
+        each: &mut dyn FnMut(Batch) -> Result<()>,
+    ) -> Result<()> {
+        let columns = Columns::new(layout, of);
+        let mut pieces = self.pieces(layout)?;
+        let mut lines = layout.first_row - 1;
+        while let Some(piece) = pieces.next().map_err(|fault| after(fault, lines))? {
+            let batch = columns.parse(&piece).map_err(|fault| after(fault, lines))?;
+            lines += batch.lines;
+            each(batch)?;
+        }
+        Ok(())
     }
+
+    /// The text from the first row on, in pieces.
+    pub(super) fn pieces(&self, layout: &Layout) -> Result<Pieces<Box<dyn Read + Send + '_>>> {
+        let (input, size): (Box<dyn Read + Send>, usize) = match &self.origin {
+            Origin::Memory(bytes, size) => (Box::new(&bytes[..]), *size),
+            Origin::File(path) => {
+                let file = File::open(path).map_err(|error| Fault::io(path, &error))?;
+                (Box::new(file), PIECE_BYTES)
+            }
+        };
+        let mut pieces = Pieces::new(input, size);
+        pieces.skip_lines(layout.first_row - 1)?;
+        Ok(pieces)
+    }
+}
+
+/// A complaint about a line of a piece, as one about a line of the file.
+pub(super) fn after(mut fault: Fault, lines: u64) -> Fault {
+    fault.line = fault.line.map(|line| lines + line);
+    fault
 }

@@ -1,6 +1,8 @@
 //! What printed digits can resolve: a pattern found over a whole column, and from it
 //! half a unit in the last place of every value.
 
+use std::sync::LazyLock;
+
 use super::number::Printed;
 
 /// How finely a column was printed.
@@ -25,13 +27,13 @@ impl Resolution {
         let full = half_ulp(value);
         match self {
             Resolution::Full => full,
-            Resolution::Decimals(decimals) => (0.5 * 10f64.powi(-i32::from(decimals))).max(full),
+            Resolution::Decimals(decimals) => (0.5 * power_of_ten(-i32::from(decimals))).max(full),
             Resolution::Significant(digits) => {
                 if value == 0.0 {
                     return full;
                 }
                 let decade = decade(value);
-                (0.5 * 10f64.powi(decade + 1 - i32::from(digits))).max(full)
+                (0.5 * power_of_ten(decade + 1 - i32::from(digits))).max(full)
             }
             Resolution::Coarser(decimals, digits) => {
                 let decimals = Resolution::Decimals(decimals).at(value);
@@ -58,14 +60,36 @@ impl Resolution {
     }
 }
 
-/// The power of ten of the leading digit.
-fn decade(value: f64) -> i32 {
-    // Exact from the shortest text; log10 errs at powers of ten.
-    let text = format!("{:e}", value.abs());
-    text.rsplit('e')
-        .next()
-        .and_then(|exponent| exponent.parse().ok())
-        .unwrap_or(0)
+/// Powers of ten as `f64` reads them, from the smallest to the largest.
+static POWERS: LazyLock<Vec<f64>> = LazyLock::new(|| {
+    let power = |exponent: i32| format!("1e{exponent}").parse().unwrap_or(f64::INFINITY);
+    (SMALLEST_POWER..=308).map(power).collect()
+});
+const SMALLEST_POWER: i32 = -323;
+
+/// The `f64` nearest to a power of ten.
+pub(super) fn power_of_ten(exponent: i32) -> f64 {
+    let place = (exponent - SMALLEST_POWER).clamp(0, 631);
+    POWERS[place as usize]
+}
+
+/// The power of ten of the leading digit of the shortest text of a number.
+pub(super) fn decade(value: f64) -> i32 {
+    let size = value.abs();
+    if !(size.is_finite() && size > 0.0) {
+        return 0;
+    }
+    // The binary exponent tells it to one; below the f64 nearest to a power of ten the
+    // shortest text has one digit less before the point.
+    let binary = (size.to_bits() >> 52) as i32 - 1023;
+    let mut decade = (f64::from(binary) * std::f64::consts::LOG10_2).floor() as i32;
+    while decade < 308 && size >= power_of_ten(decade + 1) {
+        decade += 1;
+    }
+    while decade > SMALLEST_POWER && size < power_of_ten(decade) {
+        decade -= 1;
+    }
+    decade
 }
 
 /// Half a unit in the last place of an `f64`.
@@ -97,6 +121,8 @@ pub(super) struct Pattern {
     constant: bool,
     /// Values that are not the shortest text of an f32.
     not_single: u64,
+    /// The first value and how it was printed, and the last value.
+    first: Option<(f64, Printed)>,
     last: f64,
 }
 
@@ -113,38 +139,79 @@ impl Pattern {
             divisor: 0,
             constant: true,
             not_single: 0,
+            first: None,
             last: f64::NAN,
         }
     }
 
     pub(super) fn add(&mut self, value: f64, printed: Printed) {
         let Printed {
-            significant,
             decimals,
             scientific,
+            ..
         } = printed;
         let known = self.decimals.is_none_or(|known| known == decimals);
         self.even &= known && (self.rows == 0 || self.scientific == scientific);
         self.decimals = Some(decimals);
         self.scientific = scientific;
         if self.even && !scientific && self.divisor != 1 {
-            let units = (value.abs() * 10f64.powi(i32::from(decimals))).round();
+            let units = (value.abs() * power_of_ten(i32::from(decimals))).round();
             self.divisor = common_divisor(self.divisor, units.min(1e18) as u64);
         }
         if self.rows > 0 && value != self.last {
             self.constant = false;
         }
-        if value != 0.0 && value != self.last {
-            self.telling += 1;
-            self.by_digits[usize::from(significant).min(64)] += 1;
-            if !scientific {
-                self.by_decimals[usize::from(decimals).min(64)] += 1;
-            }
-            let single = significant <= 9 && is_shortest_single(value);
-            self.not_single += u64::from(!single);
+        // Whether the first value of a piece is new shows where it is joined to the rows before.
+        if self.first.is_none() {
+            self.first = Some((value, printed));
+        } else if value != 0.0 && value != self.last {
+            self.tell(value, printed);
         }
         self.rows += 1;
         self.last = value;
+    }
+
+    fn tell(&mut self, value: f64, printed: Printed) {
+        self.telling += 1;
+        self.by_digits[usize::from(printed.significant).min(64)] += 1;
+        if !printed.scientific {
+            self.by_decimals[usize::from(printed.decimals).min(64)] += 1;
+        }
+        let single = printed.significant <= 9 && is_shortest_single(value, printed.significant);
+        self.not_single += u64::from(!single);
+    }
+
+    /// Takes in what the rows after these show.
+    pub(super) fn join(&mut self, next: &Pattern) {
+        let Some((value, printed)) = next.first else {
+            return;
+        };
+        let is_first = self.rows == 0;
+        if value != 0.0 && (is_first || value != self.last) {
+            self.tell(value, printed);
+        }
+        self.constant &= next.constant && (is_first || value == self.last);
+        let same = self.decimals == next.decimals && self.scientific == next.scientific;
+        self.even &= next.even && (is_first || same);
+        self.divisor = common_divisor(self.divisor, next.divisor);
+        (self.decimals, self.scientific) = (next.decimals, next.scientific);
+        self.telling += next.telling;
+        self.not_single += next.not_single;
+        self.rows += next.rows;
+        self.last = next.last;
+        for (counts, more) in [
+            (&mut self.by_digits, &next.by_digits),
+            (&mut self.by_decimals, &next.by_decimals),
+        ] {
+            for (count, more) in counts.iter_mut().zip(more) {
+                *count += more;
+            }
+        }
+    }
+
+    /// The row after this one does not follow it.
+    pub(super) fn interrupt(&mut self) {
+        self.last = f64::NAN;
     }
 
     /// Decimals and whether with an exponent, where every row has the same.
@@ -256,7 +323,12 @@ fn common_divisor(a: u64, b: u64) -> u64 {
     a
 }
 
-fn is_shortest_single(value: f64) -> bool {
+fn is_shortest_single(value: f64, digits: u8) -> bool {
+    // Numbers of six digits are all told apart by single precision, so that there is no
+    // shorter text for any of them.
+    if digits <= 6 && (1e-30..1e30).contains(&value.abs()) {
+        return true;
+    }
     let text = format!("{:e}", value as f32);
     text.parse::<f64>().is_ok_and(|shortest| shortest == value)
 }
@@ -278,7 +350,13 @@ mod tests {
                 other => panic!("{text}: {other:?}"),
             }
         }
-        pattern
+        joined(&pattern)
+    }
+
+    fn joined(pattern: &Pattern) -> Pattern {
+        let mut whole = Pattern::new();
+        whole.join(pattern);
+        whole
     }
 
     fn printed(print: impl Fn(f64) -> String) -> Resolution {

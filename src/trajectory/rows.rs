@@ -1,8 +1,9 @@
 //! The second pass: row by row, with the faults of the file on the way.
 
+use super::batch::{Batch, Odd, Open};
 use super::finding::{Findings, Kind};
 use super::grid::Grid;
-use super::number::{Field, Printed};
+use super::number::Printed;
 use super::open::Source;
 use super::resolution::half_ulp;
 use super::survey::Survey;
@@ -18,23 +19,208 @@ pub struct Row<'a> {
     pub time: Double,
     /// How far the time behind the stamp may lie from it; zero on an exact grid.
     pub time_resolution: f64,
-    /// Values of the selected channels; absent ones are `None`.
-    pub values: &'a [Option<f64>],
+    /// Values of the selected channels; NaN where there is none.
+    pub values: &'a [f64],
 }
 
-/// What is remembered from row to row.
-struct State {
-    last: Option<(f64, Vec<Option<f64>>)>,
+impl Row<'_> {
+    /// The value of a selected channel, if there is one.
+    pub fn value(&self, place: usize) -> Option<f64> {
+        self.values
+            .get(place)
+            .copied()
+            .filter(|value| !value.is_nan())
+    }
+}
+
+/// Whether something jumps at a stamp.
+pub(crate) type IsEvent<'a> = dyn Fn(f64) -> bool + Sync + 'a;
+
+/// Looks at the rows of a file in their order, batch by batch: what is wrong with each, and with
+/// what lies between them.
+pub(crate) struct Order<'a> {
+    survey: &'a Survey,
+    is_event: &'a IsEvent<'a>,
+    /// Lines before the next batch.
+    lines: u64,
+    /// The row before, if its stamp is known, with its values.
+    last: Option<f64>,
+    last_values: Vec<f64>,
     latest: f64,
     /// A finding whose kind shows only with the next row: a row that equals the one
     /// before it, or one that leaves a hole which it may have been swapped into.
     pending: Option<Pending>,
+    /// The largest step between rows that follow each other.
+    largest_step: f64,
 }
 
 struct Pending {
     kind: Kind,
     line: u64,
     text: String,
+}
+
+impl<'a> Order<'a> {
+    pub(crate) fn new(survey: &'a Survey, is_event: &'a IsEvent<'a>) -> Order<'a> {
+        Order {
+            survey,
+            is_event,
+            lines: survey.layout.first_row - 1,
+            last: None,
+            last_values: vec![f64::NAN; survey.selection.channels.len()],
+            latest: f64::NEG_INFINITY,
+            pending: None,
+            largest_step: 0.0,
+        }
+    }
+
+    /// Hands out every row of the next batch that can be used.
+    pub(crate) fn take(
+        &mut self,
+        batch: &Batch,
+        findings: &mut Findings,
+        each: &mut dyn FnMut(&Row),
+    ) {
+        let channels = self.last_values.len();
+        let mut odd = batch.odd.iter();
+        for (index, row) in batch.rows.iter().enumerate() {
+            let values = &batch.values[index * channels..][..channels];
+            let line = self.lines + u64::from(row.number) + 1;
+            if row.is_odd
+                && let Some(odd) = odd.next()
+            {
+                let open = batch.open.filter(|_| index + 1 == batch.rows.len());
+                if !self.is_usable(line, odd, open, findings) {
+                    let known = open.is_none() && !row.time.is_nan();
+                    // What lies between the rows around it cannot be told without a stamp; one
+                    // that is there still counts, or the next row would seem to leave a hole.
+                    self.last = known.then_some(row.time);
+                    if known {
+                        self.last_values.copy_from_slice(values);
+                        self.latest = self.latest.max(row.time);
+                    }
+                    continue;
+                }
+            }
+            if row.time.is_nan() {
+                self.last = None;
+                continue;
+            }
+            let resolution = self.survey.time_resolution(row.time, row.exact);
+            self.order((line, row.time, resolution), values, findings);
+            each(&Row {
+                line,
+                time: row.exact.map_or(Double::from(row.time), Decimal::to_double),
+                time_resolution: resolution,
+                values,
+            });
+        }
+        self.lines += batch.lines;
+    }
+
+    /// What shows only at the end.
+    pub(crate) fn finish(&mut self, findings: &mut Findings) {
+        if let Some(Pending {
+            kind: Kind::MissingRows,
+            line,
+            text,
+        }) = self.pending.take()
+        {
+            findings.fatal(Kind::MissingRows, line, text);
+        }
+    }
+
+    /// The largest step between two rows, for whoever has only guessed the grid.
+    pub(crate) fn largest_step(&self) -> f64 {
+        self.largest_step
+    }
+
+    /// Takes note of what is wrong with a row; false where it cannot be used.
+    fn is_usable(&self, line: u64, odd: &Odd, open: Option<Open>, findings: &mut Findings) -> bool {
+        let Odd { columns, strange } = odd;
+        let layout = &self.survey.layout;
+        let expected = layout.columns;
+        if let Some(open) = open {
+            let short = |(place, printed)| self.survey.is_short(place, printed);
+            if *columns != expected || strange.is_some() || open.last.is_some_and(short) {
+                let text =
+                    "the last line breaks off: the file was cut short or is still being written";
+                findings.fatal(Kind::CutOffLine, line, text);
+                return false;
+            }
+        }
+        if *columns != expected {
+            let text = format!("this row has {columns} fields, the others have {expected}");
+            findings.fatal(Kind::RowLength, line, text);
+            return false;
+        }
+        if let Some((column, field)) = strange {
+            let name = layout.names.as_ref().and_then(|names| names.get(*column));
+            let name = name.map_or(format!("{}", column + 1), |name| quoted(name));
+            let found = if field.is_empty() {
+                "empty".to_owned()
+            } else {
+                quoted(field)
+            };
+            let text = format!("column {name} is {found}, not a number");
+            findings.fatal(Kind::NotANumber, line, text);
+        }
+        true
+    }
+
+    /// Order, repetition and holes of the stamps.
+    fn order(
+        &mut self,
+        (line, time, resolution): (u64, f64, f64),
+        values: &[f64],
+        findings: &mut Findings,
+    ) {
+        let survey = self.survey;
+        if let Some(Pending { kind, line, text }) = self.pending.take() {
+            // A row that comes out of order fills the hole that seemed to be there; one
+            // step between two phases of output need not fit either.
+            let step = self.last.map_or(0.0, |last| time - last);
+            let between = kind == Kind::MissingRows && survey.is_phase(step, resolution);
+            if kind == Kind::RepeatedStamp || time >= self.latest && !between {
+                findings.fatal(kind, line, text);
+            }
+        }
+        if time < self.latest {
+            let text = format!("t = {time} comes after t = {}", self.latest);
+            findings.fatal(Kind::TimeNotIncreasing, line, text);
+        } else if let Some(last) = self.last {
+            let from = last.max(self.latest);
+            self.largest_step = self.largest_step.max(time - from);
+            if time == last {
+                let uniform = matches!(survey.grid, Grid::Uniform { .. });
+                let same = |(a, b): (&f64, &f64)| a == b || a.is_nan() && b.is_nan();
+                let repeats = uniform && self.last_values.iter().zip(values).all(same);
+                if repeats && !(self.is_event)(time) {
+                    // At the very end it can be a last tiny step of a code that adds
+                    // up its time, printed to few digits.
+                    let text = format!("this row repeats the one before it, t = {time}");
+                    self.pending = Some(Pending {
+                        kind: Kind::RepeatedStamp,
+                        line,
+                        text,
+                    });
+                } else {
+                    let text = format!("t = {time} stands here a second time");
+                    findings.note(Kind::RepeatedStamp, line, text);
+                }
+            } else {
+                let hole = survey.hole(from, time, resolution);
+                self.pending = hole.map(|text| Pending {
+                    kind: Kind::MissingRows,
+                    line,
+                    text,
+                });
+            }
+        }
+        self.latest = self.latest.max(time);
+        self.last = Some(time);
+        self.last_values.copy_from_slice(values);
+    }
 }
 
 impl Survey {
@@ -47,125 +233,21 @@ impl Survey {
         &self,
         source: &Source,
         findings: &mut Findings,
-        is_event: &dyn Fn(f64) -> bool,
+        is_event: &IsEvent,
         each: &mut dyn FnMut(&Row) -> Result<()>,
     ) -> Result<()> {
-        let mut state = State {
-            last: None,
-            latest: f64::NEG_INFINITY,
-            pending: None,
-        };
-        let mut values = vec![None; self.selection.channels.len()];
-        let result = source.each_line(&mut |line, text, ended| {
-            if line < self.layout.first_row || self.layout.passes_over(text) {
-                return Ok(());
-            }
-            values.fill(None);
-            let (stamp, usable) = self.row(line, text, ended, &mut values, findings);
-            let Some((time, exact)) = stamp else {
-                // What lies between the rows around it cannot be told.
-                state.last = None;
-                return Ok(());
-            };
-            if !usable {
-                // Its stamp still counts, or the next row would seem to leave a hole.
-                state.last = Some((time, values.clone()));
-                state.latest = state.latest.max(time);
-                return Ok(());
-            }
-            let resolution = self.time_resolution(time, exact);
-            self.order(
-                (line, time, resolution),
-                &values,
-                is_event,
-                &mut state,
-                findings,
-            );
-            each(&Row {
-                line,
-                time: exact.map_or(Double::from(time), Decimal::to_double),
-                time_resolution: resolution,
-                values: &values,
-            })
+        let mut order = Order::new(self, is_event);
+        let result = source.batches(&self.layout, &self.selection, &mut |batch| {
+            let mut result = Ok(());
+            order.take(&batch, findings, &mut |row| {
+                if result.is_ok() {
+                    result = each(row);
+                }
+            });
+            result
         });
-        if let Some(Pending {
-            kind: Kind::MissingRows,
-            line,
-            text,
-        }) = state.pending.take()
-        {
-            findings.fatal(Kind::MissingRows, line, text);
-        }
+        order.finish(findings);
         result
-    }
-
-    /// Reads one line: its stamp, and whether it is a usable row; what it is not is a
-    /// finding.
-    fn row(
-        &self,
-        line: u64,
-        text: &[u8],
-        ended: bool,
-        values: &mut [Option<f64>],
-        findings: &mut Findings,
-    ) -> (Option<(f64, Option<Decimal>)>, bool) {
-        let comma = self.layout.decimal_comma;
-        let mut time = None;
-        let mut columns = 0;
-        let mut strange: Option<(usize, String)> = None;
-        let mut short = false;
-        self.layout.split(text, &mut |column, field| {
-            columns += 1;
-            let place = self.selection.channels.iter().position(|&c| c == column);
-            if column != self.selection.time && place.is_none() {
-                return;
-            }
-            let read = Field::read(field, comma);
-            match (read, place) {
-                (Field::Number(value, _), None) => {
-                    time = Some((value, Field::decimal(field, comma)))
-                }
-                (Field::Number(value, printed), Some(place)) => {
-                    values[place] = Some(value);
-                    let last = column + 1 == self.layout.columns;
-                    short = last && self.is_short(place, printed);
-                }
-                _ if strange.is_none() => {
-                    strange = Some((column, String::from_utf8_lossy(field).into_owned()));
-                }
-                _ => {}
-            }
-        });
-        let expected = self.layout.columns;
-        if !ended && (columns != expected || strange.is_some() || short) {
-            let text = "the last line breaks off: the file was cut short or is still being written";
-            findings.fatal(Kind::CutOffLine, line, text);
-            return (None, false);
-        }
-        if columns != expected {
-            let text = format!("this row has {columns} fields, the others have {expected}");
-            findings.fatal(Kind::RowLength, line, text);
-            return (time, false);
-        }
-        if let Some((column, field)) = strange {
-            let name = self
-                .layout
-                .names
-                .as_ref()
-                .and_then(|names| names.get(column));
-            let name = name.map_or(format!("{}", column + 1), |name| quoted(name));
-            let found = if field.is_empty() {
-                "empty".to_owned()
-            } else {
-                quoted(&field)
-            };
-            findings.fatal(
-                Kind::NotANumber,
-                line,
-                format!("column {name} is {found}, not a number"),
-            );
-        }
-        (time, true)
     }
 
     /// Fewer digits than every other row has: the end of the number is missing.
@@ -175,63 +257,6 @@ impl Survey {
         });
         // Trailing zeros that are not printed make a number a digit or two shorter.
         even || usize::from(printed.significant) + 2 < self.usual_digits[place]
-    }
-
-    /// Order, repetition and holes of the stamps.
-    fn order(
-        &self,
-        (line, time, resolution): (u64, f64, f64),
-        values: &[Option<f64>],
-        is_event: &dyn Fn(f64) -> bool,
-        state: &mut State,
-        findings: &mut Findings,
-    ) {
-        if let Some(Pending { kind, line, text }) = state.pending.take() {
-            // A row that comes out of order fills the hole that seemed to be there; one
-            // step between two phases of output need not fit either.
-            let step = state.last.as_ref().map_or(0.0, |(last, _)| time - last);
-            let between = kind == Kind::MissingRows && self.is_phase(step, resolution);
-            if kind == Kind::RepeatedStamp || time >= state.latest && !between {
-                findings.fatal(kind, line, text);
-            }
-        }
-        if time < state.latest {
-            let text = format!("t = {time} comes after t = {}", state.latest);
-            findings.fatal(Kind::TimeNotIncreasing, line, text);
-        } else if let Some((last, last_values)) = &state.last {
-            let from = last.max(state.latest);
-            if time == *last {
-                let uniform = matches!(self.grid, Grid::Uniform { .. });
-                if uniform && last_values == values && !is_event(time) {
-                    // At the very end it can be a last tiny step of a code that adds
-                    // up its time, printed to few digits.
-                    let text = format!("this row repeats the one before it, t = {time}");
-                    state.pending = Some(Pending {
-                        kind: Kind::RepeatedStamp,
-                        line,
-                        text,
-                    });
-                } else {
-                    let text = format!("t = {time} stands here a second time");
-                    findings.note(Kind::RepeatedStamp, line, text);
-                }
-            } else {
-                let hole = self.hole(from, time, resolution);
-                state.pending = hole.map(|text| Pending {
-                    kind: Kind::MissingRows,
-                    line,
-                    text,
-                });
-            }
-        }
-        state.latest = state.latest.max(time);
-        match &mut state.last {
-            Some((last, last_values)) => {
-                *last = time;
-                last_values.copy_from_slice(values);
-            }
-            None => state.last = Some((time, values.to_vec())),
-        }
     }
 
     /// What is missing between two stamps of a uniform grid.

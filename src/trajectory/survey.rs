@@ -1,11 +1,13 @@
 //! The first pass: what can be known only after every row was seen.
 
+use super::batch::Batch;
 use super::grid::{Grid, GridFinder};
 use super::layout::{Layout, SAMPLE_BYTES, Stated};
-use super::number::Field;
 use super::open::Source;
+use super::pieces::{check_length, line_end};
 use super::resolution::{Pattern, Resolution};
 use crate::fault::{Fault, Result};
+use crate::number::Decimal;
 
 /// Which columns are read, counted from zero.
 #[derive(Clone, Debug, PartialEq)]
@@ -27,6 +29,8 @@ pub struct Survey {
     pub rows: u64,
     /// The grid of the stamps.
     pub grid: Grid,
+    /// The average step between stamps.
+    pub mean_step: f64,
     /// How finely the stamps are printed, where they are not exact multiples.
     pub time: Resolution,
     /// How finely each channel is printed.
@@ -39,7 +43,7 @@ pub struct Survey {
     /// Digits that nearly every value of a channel has, zero where that is not clear.
     pub usual_digits: Vec<usize>,
     /// The first stamp.
-    pub first: Option<crate::number::Decimal>,
+    pub first: Option<Decimal>,
 }
 
 impl Source {
@@ -74,21 +78,112 @@ fn layout_of(sample: &[u8], whole: bool, stated: &Stated) -> Result<Option<Layou
         let fault = Fault::new(format!("this file is {format}"));
         return Err(fault.help("this build reads plain text files; write CSV"));
     }
-    let mut owned: Vec<Vec<u8>> = Vec::new();
-    let mut lines = super::lines::Lines::default();
-    let mut keep = |_: u64, line: &[u8]| {
-        owned.push(line.to_vec());
-        Ok(())
-    };
-    lines.feed(sample, &mut keep)?;
-    if whole {
-        lines.finish(&mut keep)?;
+    let mut lines = Vec::new();
+    let mut rest = sample.strip_prefix(b"\xef\xbb\xbf").unwrap_or(sample);
+    while let Some((end, next)) = line_end(rest, whole) {
+        check_length(end).map_err(|fault| fault.at(lines.len() as u64 + 1, 1))?;
+        lines.push(&rest[..end]);
+        rest = &rest[next..];
     }
-    let lines: Vec<&[u8]> = owned.iter().map(Vec::as_slice).collect();
+    check_length(rest.len()).map_err(|fault| fault.at(lines.len() as u64 + 1, 1))?;
+    if whole && !rest.is_empty() {
+        lines.push(rest);
+    }
     Layout::find(&lines, stated)
 }
 
+/// Gathers what the batches of a file show, in their order.
+#[derive(Debug)]
+pub(crate) struct Surveyor {
+    channels: Vec<Pattern>,
+    time: Pattern,
+    grid: GridFinder,
+    rows: u64,
+    first: Option<Decimal>,
+}
+
+impl Surveyor {
+    pub(crate) fn new(channels: usize) -> Surveyor {
+        Surveyor {
+            channels: vec![Pattern::new(); channels],
+            time: Pattern::new(),
+            grid: GridFinder::default(),
+            rows: 0,
+            first: None,
+        }
+    }
+
+    pub(crate) fn add(&mut self, batch: &Batch) {
+        self.time.join(&batch.time);
+        for (pattern, more) in self.channels.iter_mut().zip(&batch.channels) {
+            pattern.join(more);
+        }
+        for row in batch.rows.iter().filter(|row| !row.time.is_nan()) {
+            if self.rows == 0 {
+                self.first = row.exact;
+            }
+            self.rows += 1;
+            self.grid.add(row.time, row.exact, row.printed);
+        }
+    }
+
+    /// Rows are left out here: a sample goes on elsewhere in the file.
+    pub(crate) fn interrupt(&mut self) {
+        self.grid.interrupt();
+        self.time.interrupt();
+        self.channels.iter_mut().for_each(Pattern::interrupt);
+    }
+
+    pub(crate) fn conclude(&self, layout: &Layout, of: &Selection, stated: &Stated) -> Survey {
+        // Stamps show their own pattern: what is stated is how values were printed.
+        let digits = stated.digits.filter(|_| !self.time.is_clear());
+        let time = self.time.conclude_stamps(digits);
+        let patterns = &self.channels;
+        Survey {
+            grid: self.grid.conclude(time),
+            mean_step: self.grid.mean_step(),
+            time,
+            channels: resolutions(patterns, stated.digits),
+            longest: patterns.iter().map(Pattern::longest).collect(),
+            usual_digits: patterns.iter().map(Pattern::usual_digits).collect(),
+            even: patterns.iter().map(Pattern::even).collect(),
+            layout: layout.clone(),
+            selection: of.clone(),
+            rows: self.rows,
+            first: self.first,
+        }
+    }
+}
+
 impl Survey {
+    /// True where rows that were read with a guess of the survey came out as with this one.
+    /// Holes and phases of a grid are looked for with its step as it was known then: that does
+    /// not matter as long as no step between rows was notably `largest`.
+    pub(crate) fn confirms(&self, guess: &Survey, largest: f64, open: bool) -> bool {
+        let digits = self.channels == guess.channels && self.time == guess.time;
+        let end = !open || self.even == guess.even && self.usual_digits == guess.usual_digits;
+        let grid = self.grid == guess.grid
+            || match (self.grid, guess.grid) {
+                (
+                    Grid::Uniform {
+                        spacing,
+                        exact,
+                        phases,
+                    },
+                    Grid::Uniform {
+                        spacing: guessed,
+                        exact: exactly,
+                        phases: guessed_phases,
+                    },
+                ) => {
+                    let near = (spacing - guessed).abs() <= 1e-3 * spacing;
+                    near && exact == exactly && phases == guessed_phases && largest < 1.4 * spacing
+                }
+                _ => false,
+            };
+        digits && end && grid && self.first == guess.first
+    }
+
     /// Goes through the whole file once.
     ///
     /// # Errors
@@ -99,55 +194,12 @@ impl Survey {
         selection: Selection,
         stated: &Stated,
     ) -> Result<Survey> {
-        let mut patterns = vec![Pattern::new(); selection.channels.len()];
-        let mut time_pattern = Pattern::new();
-        let mut finder = GridFinder::default();
-        let mut rows = 0;
-        let mut first = None;
-        source.each_line(&mut |number, line, ended| {
-            if number < layout.first_row || layout.passes_over(line) {
-                return Ok(());
-            }
-            layout.split(line, &mut |column, field| {
-                if column == selection.time
-                    && let Field::Number(time, printed) = Field::read(field, layout.decimal_comma)
-                {
-                    let exact = Field::decimal(field, layout.decimal_comma);
-                    if rows == 0 {
-                        first = exact;
-                    }
-                    rows += 1;
-                    time_pattern.add(time, printed);
-                    finder.add(time, exact, printed);
-                }
-                // A last line without an end may be cut off: it must not spoil the pattern.
-                // A column can serve two channels only by mistake, which is refused
-                // before; the first place is the only one.
-                if let Some(place) = selection
-                    .channels
-                    .iter()
-                    .position(|&c| ended && c == column)
-                    && let Field::Number(value, printed) = Field::read(field, layout.decimal_comma)
-                {
-                    patterns[place].add(value, printed);
-                }
-            });
+        let mut surveyor = Surveyor::new(selection.channels.len());
+        source.batches(&layout, &selection, &mut |batch| {
+            surveyor.add(&batch);
             Ok(())
         })?;
-        // Stamps show their own pattern: what is stated is how values were printed.
-        let time = time_pattern.conclude_stamps(stated.digits.filter(|_| !time_pattern.is_clear()));
-        Ok(Survey {
-            grid: finder.conclude(time),
-            time,
-            channels: resolutions(&patterns, stated.digits),
-            longest: patterns.iter().map(Pattern::longest).collect(),
-            usual_digits: patterns.iter().map(Pattern::usual_digits).collect(),
-            even: patterns.iter().map(Pattern::even).collect(),
-            layout,
-            selection,
-            rows,
-            first,
-        })
+        Ok(surveyor.conclude(&layout, &selection, stated))
     }
 }
 

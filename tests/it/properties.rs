@@ -8,7 +8,7 @@ use stepgauge::trajectory::{Findings, Selection, Source, Stated, Survey};
 
 /// Everything that a file is read as, in one piece of text.
 fn read(bytes: &[u8], piece: usize) -> String {
-    let source = Source::pieces(bytes.to_vec(), piece);
+    let source = Source::in_pieces(bytes.to_vec(), piece);
     let stated = Stated::default();
     let layout = match source.layout(&stated) {
         Ok(Some(layout)) => layout,

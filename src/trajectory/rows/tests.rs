@@ -16,7 +16,9 @@ fn read(text: &str, stated: &Stated) -> (Rows, Vec<Finding>) {
                 row.line,
                 row.time.to_f64(),
                 row.time_resolution,
-                row.values.to_vec(),
+                (0..row.values.len())
+                    .map(|place| row.value(place))
+                    .collect(),
             ));
             Ok(())
         })

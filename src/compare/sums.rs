@@ -1,0 +1,518 @@
+//! Running sums of one channel: its errors, how they lie to the limit, and whether its
+//! digits carry more than their pattern says. Sums over parts of a file are joined in the
+//! order of the parts.
+
+use super::margin::{Deviation, Limit, Margin, Spot};
+use super::trace::Traced;
+use crate::number::Double;
+use crate::trajectory::{Resolution, half_ulp};
+
+/// Rows that must all lie far below the assumed resolution before it is dropped.
+const ROWS_TO_REFUTE: u64 = 8;
+/// How far: where digits are really rounded, one row in ten lies below this.
+const FAR_BELOW: f64 = 0.1;
+/// Errors that are known to this part of their root mean square show it to all the digits
+/// that are printed anywhere; below the rounding of the peak nobody looks for digits.
+const SHARP: f64 = 1.0 / 2048.0;
+
+/// One value of a row and what it comes to.
+#[derive(Clone, Copy, Debug)]
+pub(super) struct Mark {
+    /// The time of the row, and how far it is known.
+    pub time: Double,
+    pub blur: f64,
+    /// As written, not converted.
+    pub written: f64,
+    /// `written - exact`, converted.
+    pub signed: f64,
+    /// The magnitude of the exact value.
+    pub size: f64,
+    /// What the digits resolve: as their pattern says, and in full.
+    pub doubts: [f64; 2],
+}
+
+/// Running sums of one channel.
+#[derive(Clone, Debug)]
+pub(super) struct Sums {
+    limit: Limit,
+    rows: u64,
+    worst: Option<Mark>,
+    squares: f64,
+    last: Option<Mark>,
+    peak: f64,
+    steepest: f64,
+    /// First and last time and exact value.
+    ends: Option<[(f64, f64); 2]>,
+    /// First and last value written.
+    written: Option<[f64; 2]>,
+    /// Rows that tell of the digits, and the largest error in units of the resolution.
+    telling: u64,
+    largest_in_units: f64,
+    /// With the digits as their pattern says, and in full.
+    with: [Against; 2],
+    /// The most that any exact value may be off by.
+    loosest: f64,
+}
+
+/// Extremes of one assumption on the digits.
+#[derive(Clone, Copy, Debug)]
+struct Against {
+    /// Against the limit of each row.
+    margin: Margin,
+    decisive: Option<Mark>,
+    doubtful: Option<Mark>,
+    /// The row farthest from the exact value at most, for a limit that is known only
+    /// at the end; and the largest certain error.
+    above: Option<Mark>,
+    below: f64,
+}
+
+/// `error / limit`, with no error using nothing of any limit.
+fn share(error: f64, limit: f64) -> f64 {
+    if error == 0.0 { 0.0 } else { error / limit }
+}
+
+impl Mark {
+    fn error(&self) -> f64 {
+        self.signed.abs()
+    }
+
+    /// As a point of a plot.
+    pub(super) fn traced(&self, value: f64) -> Traced {
+        Traced {
+            time: self.time.to_f64(),
+            written: value,
+            error: self.signed,
+            doubts: self.doubts,
+        }
+    }
+
+    /// The part of the limit that the error uses; where the limit is a part of the peak, which
+    /// is known at the end only, it is the same in all rows.
+    pub(super) fn share_of(&self, limit: &Limit) -> f64 {
+        let allowed = match limit.of_peak {
+            true => 1.0,
+            false => limit.at(self.size),
+        };
+        self.error() / allowed
+    }
+
+    fn spot(&self, limit: &Limit, with: usize) -> Spot {
+        Spot {
+            at: self.time.to_f64(),
+            error: self.error(),
+            resolution: self.doubts[with],
+            limit: limit.at(self.size),
+        }
+    }
+}
+
+impl Against {
+    const NOTHING: Against = Against {
+        margin: Margin::NOTHING,
+        decisive: None,
+        doubtful: None,
+        above: None,
+        below: f64::NEG_INFINITY,
+    };
+
+    fn add(&mut self, mark: &Mark, limit: &Limit, with: usize) {
+        let row = mark.spot(limit, with);
+        // f64::max would pass over what is not a number.
+        let certain = row.most() - row.limit;
+        let certain = if certain.is_nan() {
+            f64::INFINITY
+        } else {
+            certain
+        };
+        self.margin.certain = self.margin.certain.max(certain);
+        let broken = row.error - row.resolution - row.limit;
+        self.margin.broken = self.margin.broken.max(broken);
+        self.below = self.below.max(row.error - row.resolution);
+        self.consider(mark, limit, with);
+    }
+
+    /// Keeps a row where it goes before those kept so far.
+    fn consider(&mut self, mark: &Mark, limit: &Limit, with: usize) {
+        let row = mark.spot(limit, with);
+        let used = share(row.error, row.limit);
+        if self.decisive.is_none() || used > self.margin.used {
+            self.margin.used = used;
+            self.decisive = Some(*mark);
+        }
+        let share_of = |mark: &Mark| {
+            let row = mark.spot(limit, with);
+            share(row.most(), row.limit)
+        };
+        if self.doubtful.is_none_or(|d| share_of(mark) > share_of(&d)) {
+            self.doubtful = Some(*mark);
+        }
+        let above = self.above.map(|above| above.error() + above.doubts[with]);
+        if above.is_none_or(|above| row.most() > above) {
+            self.above = Some(*mark);
+        }
+    }
+
+    fn join(&mut self, next: &Against, limit: &Limit, with: usize) {
+        self.margin.certain = self.margin.certain.max(next.margin.certain);
+        self.margin.broken = self.margin.broken.max(next.margin.broken);
+        self.below = self.below.max(next.below);
+        for mark in [&next.decisive, &next.doubtful, &next.above]
+            .into_iter()
+            .flatten()
+        {
+            self.consider(mark, limit, with);
+        }
+    }
+
+    fn marks(&mut self) -> impl Iterator<Item = &mut Mark> {
+        let marks = [&mut self.decisive, &mut self.doubtful, &mut self.above];
+        marks.into_iter().flatten()
+    }
+}
+
+/// Rows of one channel that follow each other, list by list.
+#[derive(Debug, Default)]
+pub(super) struct Group {
+    times: Vec<Double>,
+    blurs: Vec<f64>,
+    written: Vec<f64>,
+    exact: Vec<f64>,
+    signed: Vec<f64>,
+    doubts: [Vec<f64>; 2],
+    /// Working space.
+    limits: Vec<f64>,
+    scores: Vec<f64>,
+}
+
+impl Group {
+    pub(super) fn clear(&mut self) {
+        let [pattern, full] = &mut self.doubts;
+        self.times.clear();
+        for list in [
+            &mut self.blurs,
+            &mut self.written,
+            &mut self.exact,
+            &mut self.signed,
+            pattern,
+            full,
+        ] {
+            list.clear();
+        }
+    }
+
+    /// One more row; of the value: exact, `written - exact`, and what its digits resolve.
+    pub(super) fn push(
+        &mut self,
+        time: Double,
+        blur: f64,
+        written: f64,
+        (exact, signed, doubts): (f64, f64, [f64; 2]),
+    ) {
+        self.times.push(time);
+        self.blurs.push(blur);
+        self.written.push(written);
+        self.exact.push(exact);
+        self.signed.push(signed);
+        self.doubts[0].push(doubts[0]);
+        self.doubts[1].push(doubts[1]);
+    }
+
+    /// Every row with its converted value.
+    pub(super) fn each(&self, mut each: impl FnMut(Mark, f64)) {
+        for row in 0..self.times.len() {
+            each(self.mark(row), self.exact[row] + self.signed[row]);
+        }
+    }
+
+    fn mark(&self, row: usize) -> Mark {
+        Mark {
+            time: self.times[row],
+            blur: self.blurs[row],
+            written: self.written[row],
+            signed: self.signed[row],
+            size: self.exact[row].abs(),
+            doubts: [self.doubts[0][row], self.doubts[1][row]],
+        }
+    }
+}
+
+/// The largest number of a list and its first place.
+fn first_largest(list: &[f64]) -> (usize, f64) {
+    let largest = list.iter().fold(f64::NEG_INFINITY, |most, &x| most.max(x));
+    let place = list.iter().position(|&x| x == largest);
+    (place.unwrap_or(0), largest)
+}
+
+impl Sums {
+    pub(super) fn new(limit: Limit) -> Sums {
+        Sums {
+            limit,
+            rows: 0,
+            worst: None,
+            squares: 0.0,
+            last: None,
+            peak: 0.0,
+            steepest: 0.0,
+            ends: None,
+            written: None,
+            telling: 0,
+            largest_in_units: 0.0,
+            with: [Against::NOTHING; 2],
+            loosest: 0.0,
+        }
+    }
+
+    /// How steeply the exact value changes up to the next row.
+    fn slope(&mut self, next: (f64, f64)) {
+        if let Some([_, (time, value)]) = self.ends
+            && next.0 > time
+        {
+            self.steepest = self.steepest.max((next.1 - value).abs() / (next.0 - time));
+        }
+    }
+
+    /// Only values that move, and are not rounded away to zero, tell of the digits.
+    fn tells(&self, written: f64) -> bool {
+        written != 0.0 && self.written.is_none_or(|[_, last]| last != written)
+    }
+
+    /// The next row, whose exact value is `exact`, with its bound.
+    pub(super) fn add(&mut self, mark: Mark, exact: f64, bound: f64) {
+        let here = (mark.time.to_f64(), exact);
+        self.slope(here);
+        self.telling += u64::from(self.tells(mark.written));
+        self.ends = Some([self.ends.map_or(here, |[first, _]| first), here]);
+        let first = self.written.map_or(mark.written, |[first, _]| first);
+        self.written = Some([first, mark.written]);
+        let error = mark.error();
+        if self.worst.is_none_or(|worst| error > worst.error()) {
+            self.worst = Some(mark);
+        }
+        self.rows += 1;
+        self.squares += error * error;
+        self.last = Some(mark);
+        self.peak = self.peak.max(mark.size);
+        let in_units = share(error, mark.doubts[0]);
+        self.largest_in_units = self.largest_in_units.max(in_units);
+        for (with, against) in self.with.iter_mut().enumerate() {
+            against.add(&mark, &self.limit, with);
+        }
+        self.loosest = self.loosest.max(bound);
+    }
+
+    /// The next rows, whose exact values may all be off by `bound`: what comes out is the same as
+    /// row by row, but for the order in which squares are added.
+    pub(super) fn add_group(&mut self, group: &mut Group, bound: f64) {
+        let rows = group.times.len();
+        let tame = |list: &[f64]| list.iter().all(|x| x.is_finite());
+        if !tame(&group.signed) || rows < 4 {
+            for row in 0..rows {
+                self.add(group.mark(row), group.exact[row], bound);
+            }
+            return;
+        }
+        let ends = [0, rows - 1].map(|row| (group.times[row].to_f64(), group.exact[row]));
+        self.slope(ends[0]);
+        self.telling += u64::from(self.tells(group.written[0]));
+        for (pair, values) in group.times.windows(2).zip(group.exact.windows(2)) {
+            let span = pair[1].to_f64() - pair[0].to_f64();
+            let slope = (values[1] - values[0]).abs() / span;
+            // No span gives infinity or no number, and neither is a slope.
+            self.steepest = self.steepest.max(if span > 0.0 { slope } else { 0.0 });
+        }
+        let moving = group.written.windows(2);
+        self.telling += moving.filter(|w| w[1] != 0.0 && w[1] != w[0]).count() as u64;
+        self.ends = Some([self.ends.map_or(ends[0], |[first, _]| first), ends[1]]);
+        let first = self.written.map_or(group.written[0], |[first, _]| first);
+        self.written = Some([first, group.written[rows - 1]]);
+        self.rows += rows as u64;
+        self.squares += squares(&group.signed);
+        self.last = Some(group.mark(rows - 1));
+        let (_, peak) = largest_of(&mut group.scores, rows, |row| group.exact[row].abs());
+        self.peak = self.peak.max(peak);
+        let (place, worst) = largest_of(&mut group.scores, rows, |row| group.signed[row].abs());
+        if self.worst.is_none_or(|known| worst > known.error()) {
+            self.worst = Some(group.mark(place));
+        }
+        let (_, in_units) = largest_of(&mut group.scores, rows, |row| {
+            share(group.signed[row].abs(), group.doubts[0][row])
+        });
+        self.largest_in_units = self.largest_in_units.max(in_units);
+        group.limits.clear();
+        let limits = group.exact.iter().map(|exact| self.limit.at(exact.abs()));
+        group.limits.extend(limits);
+        for (with, against) in self.with.iter_mut().enumerate() {
+            against.add_group(group, &self.limit, with);
+        }
+        self.loosest = self.loosest.max(bound);
+    }
+
+    /// Takes in what the rows after these come to.
+    pub(super) fn join(&mut self, next: &Sums) {
+        let (Some([first, last]), Some([written, last_written])) = (next.ends, next.written) else {
+            return;
+        };
+        self.slope(first);
+        // The first row of a part counts as one that moves unless it is zero.
+        let counted = written != 0.0;
+        self.telling += next.telling - u64::from(counted) + u64::from(self.tells(written));
+        self.ends = Some([self.ends.map_or(first, |[first, _]| first), last]);
+        let first = self.written.map_or(written, |[first, _]| first);
+        self.written = Some([first, last_written]);
+        self.steepest = self.steepest.max(next.steepest);
+        self.rows += next.rows;
+        self.squares += next.squares;
+        self.last = next.last;
+        self.peak = self.peak.max(next.peak);
+        self.largest_in_units = self.largest_in_units.max(next.largest_in_units);
+        if let Some(worst) = next.worst
+            && self.worst.is_none_or(|known| worst.error() > known.error())
+        {
+            self.worst = Some(worst);
+        }
+        for (with, (own, next)) in self.with.iter_mut().zip(&next.with).enumerate() {
+            own.join(next, &self.limit, with);
+        }
+        self.loosest = self.loosest.max(next.loosest);
+    }
+
+    /// Every row that is quoted, to be computed once more.
+    pub(super) fn marks(&mut self) -> impl Iterator<Item = &mut Mark> {
+        let [pattern, full] = &mut self.with;
+        let own = [&mut self.worst, &mut self.last].into_iter().flatten();
+        own.chain(pattern.marks()).chain(full.marks())
+    }
+
+    /// True where the exact values are known well enough for every digit that is printed and
+    /// for every decision.
+    pub(super) fn is_sharp(&self, printed: Resolution) -> bool {
+        let floor = self.root_mean_square().max(half_ulp(self.peak));
+        let place = usize::from(self.refuted(printed));
+        let Margin {
+            certain, broken, ..
+        } = self.margin(place);
+        let bound = 2.0 * self.loosest;
+        let near = |number: f64| number.abs() <= bound;
+        let units = (self.largest_in_units - FAR_BELOW).abs();
+        self.loosest <= SHARP * floor && !near(certain) && !near(broken) && units > 1e-3
+    }
+
+    fn root_mean_square(&self) -> f64 {
+        (self.squares / self.rows.max(1) as f64).sqrt()
+    }
+
+    fn refuted(&self, printed: Resolution) -> bool {
+        let guessed = printed != Resolution::Full;
+        guessed && self.telling >= ROWS_TO_REFUTE && self.largest_in_units < FAR_BELOW
+    }
+
+    fn margin(&self, place: usize) -> Margin {
+        let with = &self.with[place];
+        if !self.limit.of_peak {
+            return with.margin;
+        }
+        let allowed = self.limit.at(self.peak);
+        let above = with
+            .above
+            .map_or(0.0, |above| above.error() + above.doubts[place]);
+        Margin {
+            certain: above - allowed,
+            broken: with.below - allowed,
+            used: share(self.worst.map_or(0.0, |worst| worst.error()), allowed),
+        }
+    }
+
+    pub(super) fn conclude(self, printed: Resolution) -> Deviation {
+        let refuted = self.refuted(printed);
+        let place = usize::from(refuted);
+        let with = self.with[place];
+        let spot =
+            |mark: Option<Mark>| mark.map_or(Spot::NOWHERE, |mark| mark.spot(&self.limit, place));
+        let mut margin = self.margin(place);
+        let (mut worst, mut doubtful) = (spot(self.worst), spot(with.doubtful));
+        let mut decisive = spot(with.decisive);
+        if self.limit.of_peak {
+            let allowed = self.limit.at(self.peak);
+            worst.limit = allowed;
+            decisive = worst;
+            doubtful = Spot {
+                limit: allowed,
+                ..spot(with.above)
+            };
+        } else if with.decisive.is_some() {
+            margin.used = share(decisive.error, decisive.limit);
+        }
+        Deviation {
+            rows: self.rows,
+            worst: worst.error,
+            worst_at: worst.at,
+            worst_resolution: worst.resolution,
+            worst_limit: worst.limit,
+            rms: self.root_mean_square(),
+            end: self.last.map_or(0.0, |last| last.signed),
+            peak: self.peak,
+            steepest: self.steepest,
+            resolution: if refuted { Resolution::Full } else { printed },
+            margin,
+            decisive,
+            doubtful,
+        }
+    }
+}
+
+impl Against {
+    fn add_group(&mut self, group: &mut Group, limit: &Limit, with: usize) {
+        let rows = group.times.len();
+        let mut scores = std::mem::take(&mut group.scores);
+        let row = |row: usize| {
+            let error = group.signed[row].abs();
+            (error, group.doubts[with][row], group.limits[row])
+        };
+        let (_, certain) = largest_of(&mut scores, rows, |index| {
+            let (error, doubt, limit) = row(index);
+            (error + doubt) - limit
+        });
+        let (_, broken) = largest_of(&mut scores, rows, |index| {
+            let (error, doubt, limit) = row(index);
+            error - doubt - limit
+        });
+        let (_, below) = largest_of(&mut scores, rows, |index| row(index).0 - row(index).1);
+        self.margin.certain = self.margin.certain.max(certain);
+        self.margin.broken = self.margin.broken.max(broken);
+        self.below = self.below.max(below);
+        let (decisive, _) = largest_of(&mut scores, rows, |index| {
+            let (error, _, limit) = row(index);
+            share(error, limit)
+        });
+        let (doubtful, _) = largest_of(&mut scores, rows, |index| {
+            let (error, doubt, limit) = row(index);
+            share(error + doubt, limit)
+        });
+        let (above, _) = largest_of(&mut scores, rows, |index| row(index).0 + row(index).1);
+        group.scores = scores;
+        for place in [decisive, doubtful, above] {
+            self.consider(&group.mark(place), limit, with);
+        }
+    }
+}
+
+/// The largest score of any row and the first row that has it.
+fn largest_of(scores: &mut Vec<f64>, rows: usize, score: impl Fn(usize) -> f64) -> (usize, f64) {
+    scores.clear();
+    scores.extend((0..rows).map(score));
+    first_largest(scores)
+}
+
+/// Four sums beside each other, so that none waits for the last.
+fn squares(list: &[f64]) -> f64 {
+    let mut sums = [0.0; 4];
+    let fours = list.chunks_exact(4);
+    let rest: f64 = fours.remainder().iter().map(|x| x * x).sum();
+    for four in fours {
+        for (sum, x) in sums.iter_mut().zip(four) {
+            *sum += x * x;
+        }
+    }
+    (sums[0] + sums[1]) + (sums[2] + sums[3]) + rest
+}

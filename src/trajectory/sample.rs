@@ -1,0 +1,109 @@
+//! What a file most likely looks like as a whole, from a part of it: a file of moderate size is
+//! read once and kept, of a larger one a few stretches are read. A guess is never the last
+//! word: whoever goes through all rows with it looks whether it has come true.
+
+use std::fs::File;
+use std::io::{Read, Seek, SeekFrom};
+
+use super::batch::{Batch, Columns};
+use super::layout::{Layout, Stated};
+use super::open::{Origin, Source};
+use super::pieces::{Piece, Pieces, last_line_end};
+use super::survey::{Selection, Survey, Surveyor};
+use crate::fault::{Fault, Result};
+
+/// A guess, and all rows where there are few.
+pub(crate) struct Sample {
+    pub survey: Survey,
+    pub batches: Option<Vec<Batch>>,
+}
+
+/// A file up to this size is read at once.
+const WHOLE_BYTES: u64 = 512 * 1024;
+/// Stretches of a larger file beside its beginning, and their size.
+const STRETCHES: u64 = 8;
+const STRETCH_BYTES: u64 = 64 * 1024;
+
+impl Source {
+    /// Looks at a part of the rows.
+    ///
+    /// # Errors
+    /// A file that cannot be read.
+    pub(crate) fn sample_rows(
+        &self,
+        layout: &Layout,
+        of: &Selection,
+        stated: &Stated,
+    ) -> Result<Sample> {
+        let columns = Columns::new(layout, of);
+        let mut surveyor = Surveyor::new(of.channels.len());
+        let (mut batches, mut bytes, mut lines) = (Vec::new(), 0, layout.first_row - 1);
+        let mut pieces = self.pieces(layout)?;
+        let whole = loop {
+            let piece = pieces
+                .next()
+                .map_err(|fault| super::open::after(fault, lines))?;
+            let Some(piece) = piece else {
+                break true;
+            };
+            bytes += piece.text.len() as u64;
+            let batch = columns
+                .parse(&piece)
+                .map_err(|fault| super::open::after(fault, lines))?;
+            lines += batch.lines;
+            surveyor.add(&batch);
+            batches.push(batch);
+            if bytes > WHOLE_BYTES {
+                break false;
+            }
+        };
+        if !whole {
+            self.stretches(&mut |text| {
+                let piece = Piece { text, last: false };
+                // A line that is too long is complained of when its turn comes.
+                if let Ok(batch) = columns.parse(&piece) {
+                    surveyor.interrupt();
+                    surveyor.add(&batch);
+                }
+            })?;
+        }
+        Ok(Sample {
+            survey: surveyor.conclude(layout, of, stated),
+            batches: whole.then_some(batches),
+        })
+    }
+
+    /// Whole lines from here and there in a file that can be read from anywhere.
+    fn stretches(&self, each: &mut dyn FnMut(Vec<u8>)) -> Result<()> {
+        let size = self.size();
+        for number in 1..=STRETCHES {
+            let from = (size * number / STRETCHES).saturating_sub(STRETCH_BYTES);
+            let mut text = Vec::new();
+            match &self.origin {
+                Origin::Memory(bytes, _) => {
+                    let from = from as usize;
+                    let to = (from + STRETCH_BYTES as usize).min(bytes.len());
+                    text.extend_from_slice(&bytes[from.min(to)..to]);
+                }
+                Origin::File(path) => {
+                    let read = |text: &mut Vec<u8>| {
+                        let mut file = File::open(path)?;
+                        file.seek(SeekFrom::Start(from))?;
+                        file.take(STRETCH_BYTES).read_to_end(text)
+                    };
+                    read(&mut text).map_err(|error| Fault::io(path, &error))?;
+                }
+            }
+            let begin = memchr::memchr(b'\n', &text).map(|end| end + 1);
+            let end = last_line_end(&text);
+            if let (Some(begin), Some(end)) = (begin, end)
+                && begin < end
+            {
+                text.truncate(end);
+                text.drain(..begin);
+                each(text);
+            }
+        }
+        Ok(())
+    }
+}
