@@ -7,7 +7,7 @@ use crate::case::Case;
 use crate::compare::{Compared, Comparison, Deviation, Limit, Spot};
 use crate::fault::Fault;
 use crate::judge;
-use crate::method::{LATER_ROWS, Record, may_be_wanted};
+use crate::method::{LATER_ROWS, Record, next_wanted};
 use crate::number::{Conversion, counted};
 use crate::outcome::{ChannelOutcome, ErrorOutcome, RowOutcome, RunOutcome};
 use crate::submission::{
@@ -127,7 +127,7 @@ pub(super) fn compare(
         least_rows: model.case.time.least_rows,
         time_unit: &model.case.time.unit,
         traced,
-        wanted: &may_be_wanted,
+        next_wanted: &next_wanted,
         last_rows: LATER_ROWS as usize,
         crew,
     };

@@ -3,14 +3,14 @@
 //! depend on how a file was read.
 
 use super::deviation::{Comparison, Kept, KeptValue};
-use super::sums::{Group, Mark, Sums};
-use super::trace::{Trace, Traced};
+use super::sums::{Mark, Rows, Sums};
+use super::trace::Trace;
 use crate::exact::{Near, Nodes, Walk};
 use crate::number::{Conversion, Double, Nearby};
-use crate::trajectory::{Resolution, Survey};
+use crate::trajectory::{Resolution, Survey, half_ulp};
 
 /// Rows of a chunk.
-pub(super) const CHUNK_ROWS: usize = 4096;
+pub(super) const CHUNK_ROWS: usize = 8192;
 /// Time constants or radians within the rounding of one stamp that are still followed.
 const MOST_TURNS: f64 = 16.0;
 /// While the fastest mode moves less than this within the blur, the rate tells how far.
@@ -43,9 +43,9 @@ pub(super) struct Pass<'a> {
     walk: Walk<'a>,
     sides: Option<[Walk<'a>; 2]>,
     near: Option<Near<'a>>,
-    /// Rows of the chunk that are near one node, with their offsets from it.
-    group: Vec<(usize, f64)>,
-    lists: Group,
+    /// Offsets of the last rows from the node that they are near.
+    offsets: Vec<f64>,
+    lists: Lists,
     part: Part,
 }
 
@@ -88,8 +88,8 @@ impl<'a> Pass<'a> {
             walk: comparison.exact.walk(),
             sides: None,
             near: nodes.map(|nodes| comparison.exact.near(nodes)),
-            group: Vec::new(),
-            lists: Group::default(),
+            offsets: Vec::new(),
+            lists: Lists::default(),
             part: Part::new(comparison),
         }
     }
@@ -97,28 +97,33 @@ impl<'a> Pass<'a> {
     /// All rows of a chunk.
     pub(super) fn run(mut self, chunk: &Chunk) -> Part {
         let norm = self.comparison.exact.fastest_rate();
+        let mut wanted = (self.comparison.next_wanted)(chunk.first);
         for row in 0..chunk.times.len() {
             let (time, blur) = (chunk.times[row], chunk.blurs[row]);
-            let kept = (self.comparison.wanted)(chunk.first + row as u64);
+            let number = chunk.first + row as u64;
+            let kept = number == wanted;
+            if kept {
+                wanted = (self.comparison.next_wanted)(number + 1);
+            }
             let Some(near) = self.near.as_mut().filter(|_| !kept && norm * blur < SLOW) else {
-                self.end_group(chunk);
+                self.end_group(chunk, row);
                 self.add(chunk, row, kept);
                 continue;
             };
             // A stamp that fell short of a jump by its rounding alone is at the jump.
             let clear = blur.max(4.0 * f64::EPSILON * time.to_f64().abs());
             if let Some(offset) = near.offset(time, clear) {
-                self.group.push((row, offset));
+                self.offsets.push(offset);
                 continue;
             }
-            self.end_group(chunk);
+            self.end_group(chunk, row);
             let near = self.near.as_mut();
             match near.and_then(|near| near.place(time, clear)) {
-                Some(offset) => self.group.push((row, offset)),
+                Some(offset) => self.offsets.push(offset),
                 None => self.add(chunk, row, false),
             }
         }
-        self.end_group(chunk);
+        self.end_group(chunk, chunk.times.len());
         self.part
     }
 
@@ -130,33 +135,50 @@ impl<'a> Pass<'a> {
         self.part.kept
     }
 
-    /// The rows that were gathered near one node, channel by channel.
-    fn end_group(&mut self, chunk: &Chunk) {
-        let Some(near) = &self.near else { return };
-        if self.group.is_empty() {
+    /// The rows that were gathered near one node, up to this one, channel by channel.
+    fn end_group(&mut self, chunk: &Chunk, end: usize) {
+        let Some(near) = self.near.as_ref().filter(|_| !self.offsets.is_empty()) else {
             return;
-        }
-        let channels = self.comparison.channels;
-        for (place, (channel, conversion, limit)) in channels.iter().enumerate() {
+        };
+        let start = end - self.offsets.len();
+        let (times, blurs) = (&chunk.times[start..end], &chunk.blurs[start..end]);
+        let steps = times
+            .windows(2)
+            .map(|pair| pair[1].to_f64() - pair[0].to_f64());
+        let shortest = steps.fold(f64::INFINITY, f64::min);
+        let columns = self.comparison.channels.len();
+        for (place, (channel, conversion, limit)) in self.comparison.channels.iter().enumerate() {
             let nearby = &near.channels()[*channel];
             let printed = self.survey.channels[place];
+            let values = chunk.values[start * columns..end * columns].iter();
             let lists = &mut self.lists;
-            lists.clear();
-            for &(row, offset) in &self.group {
-                let written = chunk.values[row * channels.len() + place];
-                if written.is_nan() {
-                    continue;
+            lists.written.clear();
+            lists.written.extend(values.skip(place).step_by(columns));
+            lists.fill(nearby, &self.offsets, blurs, *conversion, printed);
+            let rows = Rows {
+                shortest,
+                rate: nearby.fastest(),
+                in_full: printed == Resolution::Full,
+                ..lists.rows(times, blurs)
+            };
+            let sums = &mut self.part.sums[place];
+            let there = |row: &usize| !rows.written[*row].is_nan();
+            let complete = (0..rows.written.len()).all(|row| there(&row));
+            if complete {
+                sums.add_group(&rows, nearby.bound);
+            } else {
+                for row in (0..rows.written.len()).filter(there) {
+                    sums.add(rows.mark(row), rows.exact[row], nearby.bound);
                 }
-                let blur = chunk.blurs[row];
-                let value = quick(nearby, offset, blur, written, *conversion, printed);
-                lists.push(chunk.times[row], blur, written, value);
             }
             if let Some(trace) = self.part.traces.get_mut(place) {
-                lists.each(|mark, exact| trace.add(mark.traced(exact), mark.share_of(limit)));
+                for row in (0..rows.written.len()).filter(there) {
+                    let (mark, value) = (rows.mark(row), rows.exact[row] + rows.signed[row]);
+                    trace.add(mark.traced(value), mark.share_of(limit));
+                }
             }
-            self.part.sums[place].add_group(lists, nearby.bound);
         }
-        self.group.clear();
+        self.offsets.clear();
     }
 
     /// One row by way of double-double.
@@ -280,32 +302,76 @@ impl<'a> Pass<'a> {
 /// What a rate may change by within a blur that hardly moves the fastest mode.
 const MORE: f64 = 1.1;
 
-/// Exact value, `written - exact` and what the digits resolve, near a node.
-fn quick(
-    nearby: &Nearby,
-    offset: f64,
-    blur: f64,
-    written: f64,
-    conversion: Conversion,
-    printed: Resolution,
-) -> (f64, f64, [f64; 2]) {
-    let moved = nearby.moved(offset);
-    let exact = nearby.value.to_f64() + (nearby.value.low() + moved);
-    let signed = if conversion.is_none() {
-        (written - nearby.value.to_f64()) - (nearby.value.low() + moved)
-    } else {
-        let value = conversion.apply(Double::from(written));
-        (value - nearby.value).to_f64() - moved
-    };
-    let rest = if blur == 0.0 {
-        nearby.bound
-    } else {
-        nearby.bound + MORE * nearby.rate(offset).abs() * blur
-    };
-    let full = conversion.stretch(Resolution::Full.at(written)) + rest;
-    let as_printed = match printed {
-        Resolution::Full => full,
-        printed => conversion.stretch(printed.at(written)) + rest,
-    };
-    (exact, signed, [as_printed, full])
+/// The rows near one node, of one channel.
+#[derive(Debug, Default)]
+struct Lists {
+    written: Vec<f64>,
+    moved: Vec<f64>,
+    exact: Vec<f64>,
+    signed: Vec<f64>,
+    pattern: Vec<f64>,
+    full: Vec<f64>,
+}
+
+impl Lists {
+    /// Exact values, `written - exact` and what the digits resolve.
+    fn fill(
+        &mut self,
+        nearby: &Nearby,
+        offsets: &[f64],
+        blurs: &[f64],
+        conversion: Conversion,
+        printed: Resolution,
+    ) {
+        nearby.moved(offsets, &mut self.moved);
+        let (high, low) = (nearby.value.to_f64(), nearby.value.low());
+        let moved = self.moved.iter();
+        self.exact.clear();
+        self.exact
+            .extend(moved.clone().map(|moved| high + (low + moved)));
+        self.signed.clear();
+        let written = self.written.iter().zip(moved);
+        if conversion.is_none() {
+            let signed = written.map(|(written, moved)| (written - high) - (low + moved));
+            self.signed.extend(signed);
+        } else {
+            self.signed.extend(written.map(|(&written, moved)| {
+                let value = conversion.apply(Double::from(written));
+                (value - nearby.value).to_f64() - moved
+            }));
+        }
+        let known = self.written.iter().zip(offsets).zip(blurs);
+        let rest = |offset: f64, blur: f64| nearby.bound + MORE * nearby.rate(offset) * blur;
+        let stretch = conversion.stretch(1.0);
+        self.full.clear();
+        self.full.extend(
+            known.clone().map(|((&written, &offset), &blur)| {
+                stretch * half_ulp(written) + rest(offset, blur)
+            }),
+        );
+        self.pattern.clear();
+        if printed == Resolution::Full {
+            self.pattern.extend_from_slice(&self.full);
+        } else {
+            let mut digits = printed.of_neighbours();
+            self.pattern
+                .extend(known.map(|((&written, &offset), &blur)| {
+                    stretch * digits.at(written) + rest(offset, blur)
+                }));
+        }
+    }
+
+    fn rows<'a>(&'a self, times: &'a [Double], blurs: &'a [f64]) -> Rows<'a> {
+        Rows {
+            times,
+            blurs,
+            written: &self.written,
+            exact: &self.exact,
+            signed: &self.signed,
+            doubts: [&self.pattern, &self.full],
+            shortest: 0.0,
+            rate: f64::INFINITY,
+            in_full: false,
+        }
+    }
 }

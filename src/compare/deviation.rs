@@ -37,8 +37,8 @@ pub struct Comparison<'a> {
     pub time_unit: &'a str,
     /// True where points for a plot are wanted.
     pub traced: bool,
-    /// Which rows are handed on, by their number within the window, and how many of the last.
-    pub wanted: &'a (dyn Fn(u64) -> bool + Sync),
+    /// The first row from this one on that is handed on, by its number within the window.
+    pub next_wanted: &'a (dyn Fn(u64) -> u64 + Sync),
     /// So many of the last rows are handed on as well.
     pub last_rows: usize,
     /// Threads that may help.
@@ -145,7 +145,7 @@ impl Comparison<'_> {
         batches: Option<&[Batch]>,
     ) -> Result<Done> {
         let is_event = |stamp: f64| self.is_event(stamp);
-        let mut stage = Stage::new(self, guess, &is_event);
+        let mut stage = Stage::new(self, guess, batches.is_some(), &is_event);
         let mut part = Part::new(self);
         let apart = |chunk: Chunk| Pass::new(self, guess, nodes).run(&chunk);
         match batches {
@@ -157,8 +157,7 @@ impl Comparison<'_> {
                 }
             }
             None => self.source.stream(
-                self.layout,
-                self.selection,
+                guess,
                 self.crew,
                 Stages {
                     in_order: &mut |batch| stage.take(batch),

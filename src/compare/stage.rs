@@ -15,6 +15,8 @@ pub(super) struct Stage<'a> {
     findings: Findings,
     /// True where the last line had no end.
     open: bool,
+    /// True where the survey is no guess.
+    whole: bool,
     window: Window<'a>,
 }
 
@@ -57,6 +59,7 @@ impl<'a> Stage<'a> {
     pub(super) fn new(
         comparison: &'a Comparison<'a>,
         survey: &'a Survey,
+        whole: bool,
         is_event: &'a IsEvent<'a>,
     ) -> Stage<'a> {
         let exact = comparison.exact;
@@ -69,6 +72,7 @@ impl<'a> Stage<'a> {
             surveyor: Surveyor::new(comparison.channels.len()),
             findings: Findings::default(),
             open: false,
+            whole,
             window: Window {
                 comparison,
                 survey,
@@ -89,7 +93,9 @@ impl<'a> Stage<'a> {
 
     /// The next batch; gives the chunks that are full now.
     pub(super) fn take(&mut self, batch: &Batch) -> Vec<Chunk> {
-        self.surveyor.add(batch);
+        if !self.whole {
+            self.surveyor.add(batch);
+        }
         self.open |= batch.open.is_some();
         let window = &mut self.window;
         self.order
@@ -99,8 +105,6 @@ impl<'a> Stage<'a> {
 
     pub(super) fn finish(mut self) -> Staged {
         let Comparison {
-            layout,
-            selection,
             stated,
             last_rows,
             least_rows,
@@ -121,7 +125,11 @@ impl<'a> Stage<'a> {
         let mut last = window.tail;
         last.append(&window.chunk);
         Staged {
-            survey: self.surveyor.conclude(layout, selection, stated),
+            survey: if self.whole {
+                window.survey.clone()
+            } else {
+                self.surveyor.conclude_with(window.survey, stated)
+            },
             findings,
             rows,
             outside,

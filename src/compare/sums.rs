@@ -16,7 +16,7 @@ const FAR_BELOW: f64 = 0.1;
 const SHARP: f64 = 1.0 / 2048.0;
 
 /// One value of a row and what it comes to.
-#[derive(Clone, Copy, Debug)]
+#[derive(Clone, Copy, Debug, PartialEq)]
 pub(super) struct Mark {
     /// The time of the row, and how far it is known.
     pub time: Double,
@@ -172,60 +172,23 @@ impl Against {
 }
 
 /// Rows of one channel that follow each other, list by list.
-#[derive(Debug, Default)]
-pub(super) struct Group {
-    times: Vec<Double>,
-    blurs: Vec<f64>,
-    written: Vec<f64>,
-    exact: Vec<f64>,
-    signed: Vec<f64>,
-    doubts: [Vec<f64>; 2],
-    /// Working space.
-    limits: Vec<f64>,
-    scores: Vec<f64>,
+#[derive(Clone, Copy, Debug)]
+pub(super) struct Rows<'a> {
+    pub times: &'a [Double],
+    pub blurs: &'a [f64],
+    pub written: &'a [f64],
+    pub exact: &'a [f64],
+    pub signed: &'a [f64],
+    pub doubts: [&'a [f64]; 2],
+    /// The shortest time between two of them, and a bound of the rate of change.
+    pub shortest: f64,
+    pub rate: f64,
+    /// True where the digits are in full, and both kinds of doubt are the same.
+    pub in_full: bool,
 }
 
-impl Group {
-    pub(super) fn clear(&mut self) {
-        let [pattern, full] = &mut self.doubts;
-        self.times.clear();
-        for list in [
-            &mut self.blurs,
-            &mut self.written,
-            &mut self.exact,
-            &mut self.signed,
-            pattern,
-            full,
-        ] {
-            list.clear();
-        }
-    }
-
-    /// One more row; of the value: exact, `written - exact`, and what its digits resolve.
-    pub(super) fn push(
-        &mut self,
-        time: Double,
-        blur: f64,
-        written: f64,
-        (exact, signed, doubts): (f64, f64, [f64; 2]),
-    ) {
-        self.times.push(time);
-        self.blurs.push(blur);
-        self.written.push(written);
-        self.exact.push(exact);
-        self.signed.push(signed);
-        self.doubts[0].push(doubts[0]);
-        self.doubts[1].push(doubts[1]);
-    }
-
-    /// Every row with its converted value.
-    pub(super) fn each(&self, mut each: impl FnMut(Mark, f64)) {
-        for row in 0..self.times.len() {
-            each(self.mark(row), self.exact[row] + self.signed[row]);
-        }
-    }
-
-    fn mark(&self, row: usize) -> Mark {
+impl Rows<'_> {
+    pub(super) fn mark(&self, row: usize) -> Mark {
         Mark {
             time: self.times[row],
             blur: self.blurs[row],
@@ -235,13 +198,59 @@ impl Group {
             doubts: [self.doubts[0][row], self.doubts[1][row]],
         }
     }
+
+    /// Bounds of what any of the rows can come to, with the digits of their pattern.
+    fn extremes(&self) -> Extremes {
+        let [_, error] = ends_of(self.signed);
+        let [smallest, size] = ends_of(self.exact);
+        let [finest, coarsest] = ends_of(self.doubts[0]);
+        Extremes {
+            error,
+            smallest,
+            size,
+            finest,
+            coarsest,
+        }
+    }
 }
 
-/// The largest number of a list and its first place.
-fn first_largest(list: &[f64]) -> (usize, f64) {
-    let largest = list.iter().fold(f64::NEG_INFINITY, |most, &x| most.max(x));
-    let place = list.iter().position(|&x| x == largest);
-    (place.unwrap_or(0), largest)
+/// Magnitudes that no row goes beyond.
+struct Extremes {
+    error: f64,
+    smallest: f64,
+    size: f64,
+    finest: f64,
+    coarsest: f64,
+}
+
+/// The smallest and the largest magnitude of a list; four lanes, so that none waits for
+/// another.
+fn ends_of(list: &[f64]) -> [f64; 2] {
+    let (mut low, mut high) = ([f64::INFINITY; 4], [0.0f64; 4]);
+    let fours = list.chunks_exact(4);
+    let rest = fours.remainder();
+    for four in fours {
+        for lane in 0..4 {
+            let x = four[lane].abs();
+            low[lane] = if x < low[lane] { x } else { low[lane] };
+            high[lane] = if x > high[lane] { x } else { high[lane] };
+        }
+    }
+    let low = low.into_iter().chain(rest.iter().map(|x| x.abs()));
+    let high = high.into_iter().chain(rest.iter().map(|x| x.abs()));
+    [low.fold(f64::INFINITY, f64::min), high.fold(0.0, f64::max)]
+}
+
+/// The largest score of any row and the first row that has it.
+fn largest_of(rows: usize, score: impl Fn(usize) -> f64) -> (usize, f64) {
+    let mut best = (0, f64::NEG_INFINITY);
+    for row in 0..rows {
+        let score = score(row);
+        if score > best.1 {
+            best = (row, score);
+        }
+    }
+    best
 }
 
 impl Sums {
@@ -302,11 +311,12 @@ impl Sums {
     }
 
     /// The next rows, whose exact values may all be off by `bound`: what comes out is the same as
-    /// row by row, but for the order in which squares are added.
-    pub(super) fn add_group(&mut self, group: &mut Group, bound: f64) {
+    /// row by row, but for the order in which squares are added. Rows are looked at one by one
+    /// only where together they could go beyond what was seen before.
+    pub(super) fn add_group(&mut self, group: &Rows, bound: f64) {
         let rows = group.times.len();
-        let tame = |list: &[f64]| list.iter().all(|x| x.is_finite());
-        if !tame(&group.signed) || rows < 4 {
+        let own = group.extremes();
+        if rows < 4 || !(own.error + own.size + own.coarsest).is_finite() {
             for row in 0..rows {
                 self.add(group.mark(row), group.exact[row], bound);
             }
@@ -314,38 +324,59 @@ impl Sums {
         }
         let ends = [0, rows - 1].map(|row| (group.times[row].to_f64(), group.exact[row]));
         self.slope(ends[0]);
+        self.slopes(group, own.size);
         self.telling += u64::from(self.tells(group.written[0]));
-        for (pair, values) in group.times.windows(2).zip(group.exact.windows(2)) {
-            let span = pair[1].to_f64() - pair[0].to_f64();
-            let slope = (values[1] - values[0]).abs() / span;
-            // No span gives infinity or no number, and neither is a slope.
-            self.steepest = self.steepest.max(if span > 0.0 { slope } else { 0.0 });
-        }
         let moving = group.written.windows(2);
         self.telling += moving.filter(|w| w[1] != 0.0 && w[1] != w[0]).count() as u64;
         self.ends = Some([self.ends.map_or(ends[0], |[first, _]| first), ends[1]]);
         let first = self.written.map_or(group.written[0], |[first, _]| first);
         self.written = Some([first, group.written[rows - 1]]);
         self.rows += rows as u64;
-        self.squares += squares(&group.signed);
+        self.squares += squares(group.signed);
         self.last = Some(group.mark(rows - 1));
-        let (_, peak) = largest_of(&mut group.scores, rows, |row| group.exact[row].abs());
-        self.peak = self.peak.max(peak);
-        let (place, worst) = largest_of(&mut group.scores, rows, |row| group.signed[row].abs());
-        if self.worst.is_none_or(|known| worst > known.error()) {
+        self.peak = self.peak.max(own.size);
+        if self.worst.is_none_or(|known| own.error > known.error()) {
+            let (place, _) = largest_of(rows, |row| group.signed[row].abs());
             self.worst = Some(group.mark(place));
         }
-        let (_, in_units) = largest_of(&mut group.scores, rows, |row| {
-            share(group.signed[row].abs(), group.doubts[0][row])
-        });
-        self.largest_in_units = self.largest_in_units.max(in_units);
-        group.limits.clear();
-        let limits = group.exact.iter().map(|exact| self.limit.at(exact.abs()));
-        group.limits.extend(limits);
-        for (with, against) in self.with.iter_mut().enumerate() {
-            against.add_group(group, &self.limit, with);
+        if share(own.error, own.finest) > self.largest_in_units {
+            let in_units = |row: usize| share(group.signed[row].abs(), group.doubts[0][row]);
+            let (_, in_units) = largest_of(rows, in_units);
+            self.largest_in_units = self.largest_in_units.max(in_units);
+        }
+        let [pattern, full] = &mut self.with;
+        if pattern.could_grow(&own, &self.limit, 0) {
+            pattern.add_group(group, &self.limit, 0);
+        }
+        // Digits in full have no pattern that could be given up.
+        if !group.in_full {
+            let [finest, coarsest] = ends_of(group.doubts[1]);
+            let own = Extremes {
+                finest,
+                coarsest,
+                ..own
+            };
+            if full.could_grow(&own, &self.limit, 1) {
+                full.add_group(group, &self.limit, 1);
+            }
         }
         self.loosest = self.loosest.max(bound);
+    }
+
+    /// The steepest change between two rows of a group.
+    fn slopes(&mut self, group: &Rows, size: f64) {
+        let change = |pair: &[f64]| (pair[1] - pair[0]).abs();
+        // Nowhere steeper than the rate of change, but for the rounding of two values.
+        let rounding = 4.0 * half_ulp(size);
+        if group.shortest > 0.0 && group.rate + rounding / group.shortest <= self.steepest {
+            return;
+        }
+        for (pair, values) in group.times.windows(2).zip(group.exact.windows(2)) {
+            let span = pair[1].to_f64() - pair[0].to_f64();
+            if span > 0.0 {
+                self.steepest = self.steepest.max(change(values) / span);
+            }
+        }
     }
 
     /// Takes in what the rows after these come to.
@@ -462,46 +493,41 @@ impl Sums {
 }
 
 impl Against {
-    fn add_group(&mut self, group: &mut Group, limit: &Limit, with: usize) {
-        let rows = group.times.len();
-        let mut scores = std::mem::take(&mut group.scores);
-        let row = |row: usize| {
-            let error = group.signed[row].abs();
-            (error, group.doubts[with][row], group.limits[row])
+    /// False where no row within these bounds can go beyond what was seen before: every score
+    /// rises with the error and falls with the limit, and rounding keeps that so.
+    fn could_grow(&self, rows: &Extremes, limit: &Limit, with: usize) -> bool {
+        let (Some(doubtful), Some(above)) = (&self.doubtful, &self.above) else {
+            return true;
         };
-        let (_, certain) = largest_of(&mut scores, rows, |index| {
-            let (error, doubt, limit) = row(index);
-            (error + doubt) - limit
-        });
-        let (_, broken) = largest_of(&mut scores, rows, |index| {
-            let (error, doubt, limit) = row(index);
-            error - doubt - limit
-        });
-        let (_, below) = largest_of(&mut scores, rows, |index| row(index).0 - row(index).1);
+        let least = limit.at(rows.smallest);
+        let most = rows.error + rows.coarsest;
+        let doubtful = doubtful.spot(limit, with);
+        most - least > self.margin.certain
+            || rows.error - rows.finest - least > self.margin.broken
+            || rows.error - rows.finest > self.below
+            || share(rows.error, least) > self.margin.used
+            || share(most, least) > share(doubtful.most(), doubtful.limit)
+            || most > above.error() + above.doubts[with]
+    }
+
+    fn add_group(&mut self, group: &Rows, limit: &Limit, with: usize) {
+        let rows = group.times.len();
+        let error = |row: usize| group.signed[row].abs();
+        let doubt = |row: usize| group.doubts[with][row];
+        let limit_at = |row: usize| limit.at(group.exact[row].abs());
+        let (_, certain) = largest_of(rows, |row| (error(row) + doubt(row)) - limit_at(row));
+        let (_, broken) = largest_of(rows, |row| error(row) - doubt(row) - limit_at(row));
+        let (_, below) = largest_of(rows, |row| error(row) - doubt(row));
         self.margin.certain = self.margin.certain.max(certain);
         self.margin.broken = self.margin.broken.max(broken);
         self.below = self.below.max(below);
-        let (decisive, _) = largest_of(&mut scores, rows, |index| {
-            let (error, _, limit) = row(index);
-            share(error, limit)
-        });
-        let (doubtful, _) = largest_of(&mut scores, rows, |index| {
-            let (error, doubt, limit) = row(index);
-            share(error + doubt, limit)
-        });
-        let (above, _) = largest_of(&mut scores, rows, |index| row(index).0 + row(index).1);
-        group.scores = scores;
+        let (decisive, _) = largest_of(rows, |row| share(error(row), limit_at(row)));
+        let (doubtful, _) = largest_of(rows, |row| share(error(row) + doubt(row), limit_at(row)));
+        let (above, _) = largest_of(rows, |row| error(row) + doubt(row));
         for place in [decisive, doubtful, above] {
             self.consider(&group.mark(place), limit, with);
         }
     }
-}
-
-/// The largest score of any row and the first row that has it.
-fn largest_of(scores: &mut Vec<f64>, rows: usize, score: impl Fn(usize) -> f64) -> (usize, f64) {
-    scores.clear();
-    scores.extend((0..rows).map(score));
-    first_largest(scores)
 }
 
 /// Four sums beside each other, so that none waits for the last.

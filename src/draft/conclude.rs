@@ -80,7 +80,7 @@ impl Beside {
             least_rows: case.time.least_rows,
             time_unit: &case.time.unit,
             traced: false,
-            wanted: &|_| false,
+            next_wanted: &|_| u64::MAX,
             last_rows: 0,
             crew: &Crew::default(),
         };

@@ -6,7 +6,7 @@ use super::Exact;
 use crate::number::{Double, Expansion, Flow, Nearby, Step};
 
 /// Rows that share a node, about: enough to pay for it, few enough to stay close to it.
-const ROWS_OF_A_NODE: f64 = 32.0;
+const ROWS_OF_A_NODE: f64 = 64.0;
 /// With fewer rows the way through double-double costs no more.
 const FEWEST_ROWS: f64 = 4.0;
 /// Nodes before the vector is computed directly again, so that nothing drifts.
@@ -84,7 +84,9 @@ impl Near<'_> {
     /// than `clear`.
     pub fn offset(&self, time: Double, clear: f64) -> Option<f64> {
         let node = self.node.as_ref()?;
-        let offset = (time - node.time).to_f64();
+        // The difference of the upper words loses nothing that this close to the node counts.
+        let high = time.to_f64() - node.time.to_f64();
+        let offset = high + (time.low() - node.time.low());
         let inside = offset >= node.from && offset < node.to;
         (inside && node.is_clear(offset, clear)).then_some(offset)
     }

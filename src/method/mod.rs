@@ -43,7 +43,7 @@ pub use iterated::{Form, Iterated, forms};
 pub use linear::{Linear, Side, Signal};
 pub use march::{March, NEAR, Sides, add_forcing};
 pub use ranks::rank_orders;
-pub use record::{LATER_ROWS, Piece, Record, START_ROWS, Window, may_be_wanted, windows};
+pub use record::{LATER_ROWS, Piece, Record, START_ROWS, Window, next_wanted, windows};
 pub use recurrence::{Node, Ranks, Reading, Recurrence};
 pub use scheme::{Coefficients, Scheme, Slopes, Stages};
 pub use search::MOST_STEPS;

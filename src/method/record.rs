@@ -62,10 +62,19 @@ fn stride(rows: u64) -> u64 {
     rest.div_ceil(LATER_WINDOWS).next_power_of_two().max(64)
 }
 
-/// True where a row may belong to a window of a file that has more rows than this one's number.
-pub fn may_be_wanted(row: u64) -> bool {
+/// The first row from this one on that may belong to a window, however many rows follow.
+pub fn next_wanted(row: u64) -> u64 {
     let all = START_ROWS + LATER_ROWS * LATER_WINDOWS;
-    row < all || (row - START_ROWS) % stride(row + 1) < LATER_ROWS
+    if row < all {
+        return row;
+    }
+    let stride = stride(row + 1);
+    let within = (row - START_ROWS) % stride;
+    if within < LATER_ROWS {
+        row
+    } else {
+        row - within + stride
+    }
 }
 
 /// The windows of a file with so many rows: first row and number of rows.

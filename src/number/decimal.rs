@@ -136,10 +136,13 @@ impl Decimal {
 
     /// To double-double; relative error below `20 * 2^-106` (zero below 1e-290).
     pub fn to_double(self) -> Double {
-        if let (Ok(digits), -22..=22) = (i64::try_from(self.digits), self.exponent) {
+        let short = i64::try_from(self.digits).ok();
+        if let Some(digits) = short.filter(|d| d.unsigned_abs() < 1 << 62)
+            && self.exponent.abs() <= 22
+        {
             let high = digits as f64;
             // What is left is small, and exact.
-            let low = (i128::from(digits) - high as i128) as f64;
+            let low = (digits - high as i64) as f64;
             let power = POWERS[self.exponent.unsigned_abs() as usize];
             let digits = Double::from_sum(high, low);
             return match self.exponent {

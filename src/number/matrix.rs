@@ -85,6 +85,15 @@ impl<T: Copy + Default + Add<Output = T> + Mul<Output = T> + PartialZero> Matrix
     }
 }
 
+impl Matrix<f64> {
+    /// `factor` times matrix times vector.
+    pub fn apply_into(&self, vector: &[f64], factor: f64, result: &mut [f64]) {
+        for (entry, row) in result.iter_mut().zip(self.rows()) {
+            *entry = dot(row, vector) * factor;
+        }
+    }
+}
+
 /// Sum of products of two slices of one length.
 pub fn dot<T: Copy + Default + Add<Output = T> + Mul<Output = T>>(a: &[T], b: &[T]) -> T {
     a.iter()

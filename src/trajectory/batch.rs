@@ -9,7 +9,7 @@ use super::resolution::Pattern;
 use super::scan::{Scanned, scan};
 use super::survey::Selection;
 use crate::fault::Result;
-use crate::number::Decimal;
+use crate::number::{Decimal, Double};
 
 /// Rows that follow each other.
 #[derive(Debug)]
@@ -23,8 +23,8 @@ pub(crate) struct Batch {
     /// What is wrong with those that are marked, in their order.
     pub odd: Vec<Odd>,
     /// How the stamps and each channel are printed.
-    pub time: Pattern,
-    pub channels: Vec<Pattern>,
+    pub(super) time: Pattern,
+    pub(super) channels: Vec<Pattern>,
     /// Of a last line without an end: how a number was printed that may be cut off.
     pub open: Option<Open>,
 }
@@ -40,7 +40,8 @@ pub(crate) struct Line {
     pub printed: Printed,
     /// The stamp; NaN where there is none.
     pub time: f64,
-    /// The same, exactly as printed.
+    /// The same exactly as printed, in double-double and as a decimal.
+    pub moment: Double,
     pub exact: Option<Decimal>,
 }
 
@@ -69,8 +70,24 @@ pub(crate) struct Columns<'a> {
     /// Byte between fields, `None` for blanks.
     separator: Option<u8>,
     point: u8,
+    known: Known,
     /// False where a plain row could be a comment.
     quick: bool,
+}
+
+/// Columns of which more rows cannot change what their text shows.
+#[derive(Clone, Debug, Default, PartialEq)]
+pub(crate) struct Known {
+    /// The stamps.
+    pub time: bool,
+    /// The channels; those beyond the end are not known.
+    pub channels: Vec<bool>,
+}
+
+impl Known {
+    pub(crate) fn channel(&self, place: usize) -> bool {
+        self.channels.get(place).copied().unwrap_or(false)
+    }
 }
 
 #[derive(Clone, Copy, Debug, PartialEq)]
@@ -81,7 +98,7 @@ enum Role {
 }
 
 impl<'a> Columns<'a> {
-    pub(crate) fn new(layout: &'a Layout, selection: &Selection) -> Columns<'a> {
+    pub(crate) fn new(layout: &'a Layout, selection: &Selection, known: Known) -> Columns<'a> {
         let role = |column| {
             let place = selection.channels.iter().position(|&c| c == column);
             match place {
@@ -98,6 +115,7 @@ impl<'a> Columns<'a> {
             channels: selection.channels.len(),
             separator: layout.separator.byte(),
             point: if layout.decimal_comma { b',' } else { b'.' },
+            known,
             quick: !layout.comments.iter().any(begins_a_number),
         }
     }
@@ -140,15 +158,21 @@ impl<'a> Columns<'a> {
             batch.values.truncate(start);
             return None;
         };
-        for ((pattern, &value), &printed) in batch.channels.iter_mut().zip(&*values).zip(&*looks) {
-            pattern.add(value, printed);
+        let looks = values.iter().zip(&*looks);
+        for (place, ((&value, &printed), pattern)) in looks.zip(&mut batch.channels).enumerate() {
+            if !self.known.channel(place) {
+                pattern.add(value, printed);
+            }
         }
-        batch.time.add(stamp.value, stamp.printed);
+        if !self.known.time {
+            batch.time.add(stamp.value, stamp.printed);
+        }
         batch.rows.push(Line {
             number: batch.lines as u32,
             is_odd: false,
             printed: stamp.printed,
             time: stamp.value,
+            moment: stamp.double(),
             exact: Some(stamp.decimal()),
         });
         Some(next)
@@ -224,6 +248,7 @@ impl<'a> Columns<'a> {
             is_odd: false,
             printed: Printed::default(),
             time: f64::NAN,
+            moment: Double::ZERO,
             exact: None,
         };
         let (mut columns, mut strange, mut last) = (0, None, None);
@@ -236,14 +261,17 @@ impl<'a> Columns<'a> {
             match (Field::read(field, comma), role) {
                 (Field::Number(time, printed), Role::Time) => {
                     row.exact = Field::decimal(field, comma);
+                    row.moment = row.exact.map_or(Double::from(time), Decimal::to_double);
                     (row.time, row.printed) = (time, printed);
-                    batch.time.add(time, printed);
+                    if !self.known.time {
+                        batch.time.add(time, printed);
+                    }
                 }
                 (Field::Number(value, printed), Role::Channel(place)) => {
                     batch.values[start + place] = value;
                     last = (column + 1 == self.roles.len()).then_some((place, printed));
                     // A last line without an end may be cut off: it must not spoil the pattern.
-                    if ended {
+                    if ended && !self.known.channel(place) {
                         batch.channels[place].add(value, printed);
                     }
                 }

@@ -79,7 +79,7 @@ impl GridFinder {
             let step = time - last;
             self.repeats += u64::from(step == 0.0);
             if step > 0.0 {
-                let exact = exact.zip(last_exact).and_then(|(a, b)| a.minus(b));
+                let exact = || exact.zip(last_exact).and_then(|(a, b)| a.minus(b));
                 // Two rounded stamps each: a step is off by half their units together,
                 // and two steps are compared.
                 let rounding = 4.0 * f64::EPSILON * time.abs();
@@ -109,9 +109,23 @@ impl GridFinder {
         }
     }
 
-    fn count(&mut self, step: f64, exact: Option<Decimal>, tolerance: f64) {
+    fn count(&mut self, step: f64, exact: impl Fn() -> Option<Decimal>, tolerance: f64) {
         self.steps += 1;
         self.sum += step;
+        // Nearly always the step is that of the row before, and nothing new.
+        let again = self.clusters.first_mut().filter(|first| {
+            let near = (first.spacing - step).abs() <= tolerance.max(first.tolerance);
+            self.latest == 0 && near && tolerance <= 0.3 * step && !first.identical
+        });
+        if let Some(first) = again {
+            first.tolerance = first.tolerance.max(tolerance);
+            first.sum += step;
+            first.count += 1;
+            first.run += 1;
+            first.longest_run = first.longest_run.max(first.run);
+            return;
+        }
+        let exact = exact();
         // Where stamps are printed to few digits for their step, equal decimals tell
         // more than a tolerance as wide as the step itself.
         let coarse = tolerance > 0.3 * step;
@@ -163,8 +177,9 @@ impl GridFinder {
         };
         // A step of one unit of the last decimal, with steps of none or two among them:
         // the true step lies between, and its stamps were rounded.
-        let one_unit = matches!(printed, Resolution::Decimals(decimals)
-            if (most.spacing * 10f64.powi(i32::from(decimals)) - 1.0).abs() < 1e-6);
+        let last = self.last.map_or(0.0, |(time, ..)| time);
+        let unit = 2.0 * printed.at(last);
+        let one_unit = printed != Resolution::Full && (most.spacing / unit - 1.0).abs() < 1e-6;
         let two_units = |cluster: &&Cluster| (1.5..2.5).contains(&(cluster.spacing / most.spacing));
         let doubles: u64 = self
             .clusters
@@ -190,7 +205,6 @@ impl GridFinder {
         };
         if (most.count as f64) < share * self.steps as f64 {
             let mean = self.sum / self.steps as f64;
-            let last = self.last.map_or(0.0, |(time, ..)| time);
             let near = |c: &Cluster| (c.spacing - mean).abs() <= 2.1 * printed.at(last);
             let rounded = !self.overflowed && self.clusters.iter().all(near);
             // Steps that differ by no more than the rounding of their stamps.

@@ -4,9 +4,9 @@ use std::fs::File;
 use std::io::{ErrorKind, Read};
 use std::path::{Path, PathBuf};
 
-use super::batch::{Batch, Columns};
+use super::batch::{Batch, Columns, Known};
 use super::layout::Layout;
-use super::pieces::Pieces;
+use super::pieces::{Piece, Pieces};
 use super::survey::Selection;
 use crate::fault::{Fault, Result};
 
@@ -115,10 +115,14 @@ impl Source {
         of: &Selection,
         each: &mut dyn FnMut(Batch) -> Result<()>,
     ) -> Result<()> {
-        let columns = Columns::new(layout, of);
+        let columns = Columns::new(layout, of, Known::default());
         let mut pieces = self.pieces(layout)?;
         let mut lines = layout.first_row - 1;
-        while let Some(piece) = pieces.next().map_err(|fault| after(fault, lines))? {
+        let mut piece = Piece::default();
+        while pieces
+            .next(&mut piece)
+            .map_err(|fault| after(fault, lines))?
+        {
             let batch = columns.parse(&piece).map_err(|fault| after(fault, lines))?;
             lines += batch.lines;
             each(batch)?;

@@ -50,7 +50,7 @@ impl<R: Read> Pieces<R> {
                     self.rest.drain(..at);
                     at = 0;
                     check_length(self.rest.len()).map_err(|fault| fault.at(skipped + 1, 1))?;
-                    self.fill()?;
+                    self.done = fill(&mut self.input, self.size, &mut self.rest)?;
                 }
                 _ if begun => {
                     at = self.rest.len();
@@ -67,44 +67,42 @@ impl<R: Read> Pieces<R> {
         Ok(())
     }
 
-    /// The next piece; `None` at the end.
+    /// The next piece, in the memory of one that is not needed any more; false at the end.
     ///
     /// # Errors
     /// What the stream fails with, or the first line of a piece that is too long.
-    pub(super) fn next(&mut self) -> Result<Option<Piece>> {
+    pub(super) fn next(&mut self, piece: &mut Piece) -> Result<bool> {
+        piece.text.clear();
+        std::mem::swap(&mut piece.text, &mut self.rest);
+        // What was the rest of the last piece is the beginning of this one.
+        let text = &mut piece.text;
         loop {
-            if self.done {
-                let text = std::mem::take(&mut self.rest);
-                return Ok((!text.is_empty()).then_some(Piece { text, last: true }));
-            }
-            if self.rest.len() < self.size {
-                self.fill()?;
+            if !self.done && text.len() < self.size {
+                self.done = fill(&mut self.input, self.size - text.len(), text)?;
                 continue;
             }
-            if let Some(cut) = last_line_end(&self.rest) {
-                let rest = self.rest.split_off(cut);
-                let text = std::mem::replace(&mut self.rest, rest);
-                self.rest.reserve(self.size);
-                return Ok(Some(Piece { text, last: false }));
+            if self.done {
+                piece.last = true;
+                return Ok(!text.is_empty());
             }
-            check_length(self.rest.len()).map_err(|fault| fault.at(1, 1))?;
-            self.fill()?;
+            if let Some(cut) = last_line_end(text) {
+                self.rest.clear();
+                self.rest.extend_from_slice(&text[cut..]);
+                text.truncate(cut);
+                piece.last = false;
+                return Ok(true);
+            }
+            check_length(text.len()).map_err(|fault| fault.at(1, 1))?;
+            self.done = fill(&mut self.input, self.size, text)?;
         }
-    }
-
-    /// Reads on, at most as much as a piece holds.
-    fn fill(&mut self) -> Result<()> {
-        let wanted = self
-            .size
-            .saturating_sub(self.rest.len())
-            .max(self.size.min(4096));
-        let mut limited = (&mut self.input).take(wanted as u64);
-        let read = limited.read_to_end(&mut self.rest);
-        self.done = read.map_err(|error| Fault::new(error.to_string()))? == 0;
-        Ok(())
     }
 }
 
+/// Reads on, at most so many bytes; true at the end of the stream.
+fn fill(input: &mut impl Read, bytes: usize, text: &mut Vec<u8>) -> Result<bool> {
+    let read = input.take(bytes as u64).read_to_end(text);
+    Ok(read.map_err(|error| Fault::new(error.to_string()))? == 0)
+}
 /// The length of the first line and where the next one begins; `None` where its end is not
 /// there yet. Lines end with `\n`, `\r\n` or a lone `\r`.
 pub(super) fn line_end(text: &[u8], is_all: bool) -> Option<(usize, usize)> {
@@ -140,8 +138,9 @@ mod tests {
         let mut pieces = Pieces::new(text.as_bytes(), size);
         pieces.skip_lines(skip).unwrap();
         let mut found = Vec::new();
-        while let Some(piece) = pieces.next().unwrap() {
-            found.push(String::from_utf8(piece.text).unwrap());
+        let mut piece = Piece::default();
+        while pieces.next(&mut piece).unwrap() {
+            found.push(String::from_utf8(piece.text.clone()).unwrap());
         }
         found
     }
@@ -183,6 +182,6 @@ mod tests {
     fn a_line_without_end_is_refused() {
         let long = vec![b'x'; MOST_LINE_BYTES + 1000];
         let mut pieces = Pieces::new(&long[..], 500);
-        assert!(pieces.next().is_err());
+        assert!(pieces.next(&mut Piece::default()).is_err());
     }
 }

@@ -46,6 +46,16 @@ impl Resolution {
         }
     }
 
+    /// The same for one value after the other, which mostly are of one decade.
+    pub(crate) fn of_neighbours(self) -> Neighbours {
+        Neighbours {
+            resolution: self,
+            from: f64::INFINITY,
+            to: 0.0,
+            digits: 0.0,
+        }
+    }
+
     /// In words, for reports.
     pub fn describe(self) -> String {
         match self {
@@ -57,6 +67,35 @@ impl Resolution {
             }
             Resolution::Single => "single precision".to_owned(),
         }
+    }
+}
+
+/// What the digits resolve, remembered for values of one size.
+#[derive(Debug)]
+pub(crate) struct Neighbours {
+    resolution: Resolution,
+    from: f64,
+    to: f64,
+    digits: f64,
+}
+
+impl Neighbours {
+    /// As [`Resolution::at`].
+    pub(crate) fn at(&mut self, value: f64) -> f64 {
+        let size = value.abs();
+        if self.resolution == Resolution::Single {
+            // The number of single precision may lie in the next power of two.
+            return self.resolution.at(value);
+        }
+        if !(size >= self.from && size < self.to) {
+            self.digits = self.resolution.at(value);
+            // Within a decade and a power of two nothing changes.
+            let binary = f64::from_bits(size.to_bits() & 0x7ff << 52);
+            let decade = decade(value);
+            self.from = power_of_ten(decade).max(binary);
+            self.to = power_of_ten(decade + 1).min(2.0 * binary);
+        }
+        self.digits
     }
 }
 
@@ -92,10 +131,10 @@ pub(super) fn decade(value: f64) -> i32 {
     decade
 }
 
-/// Half a unit in the last place of an `f64`.
+/// Half a unit in the last place of a finite `f64`: its exponent alone, times `2^-53`.
 pub fn half_ulp(value: f64) -> f64 {
-    let size = value.abs();
-    0.5 * (size.next_up() - size)
+    const EXPONENT: u64 = 0x7ff << 52;
+    f64::from_bits(value.to_bits() & EXPONENT) * (f64::EPSILON / 2.0)
 }
 
 /// From this many digits on a column is in full: the last one is finer than an `f64`
@@ -207,6 +246,15 @@ impl Pattern {
                 *count += more;
             }
         }
+    }
+
+    /// True where no further row can change what was found: a value in full, of a column whose
+    /// values move and have no pattern.
+    pub(super) fn is_settled(&self) -> bool {
+        let in_full = self.by_digits[usize::from(DIGITS_IN_FULL)..]
+            .iter()
+            .any(|&n| n > 0);
+        in_full && !self.even && !self.constant && self.rows > 2
     }
 
     /// The row after this one does not follow it.
@@ -326,9 +374,11 @@ fn common_divisor(a: u64, b: u64) -> u64 {
 fn is_shortest_single(value: f64, digits: u8) -> bool {
     // Numbers of six digits are all told apart by single precision, so that there is no
     // shorter text for any of them.
-    if digits <= 6 && (1e-30..1e30).contains(&value.abs()) {
-        return true;
-    }
+    digits <= 6 && (1e-30..1e30).contains(&value.abs()) || prints_as_single(value)
+}
+
+#[cold]
+fn prints_as_single(value: f64) -> bool {
     let text = format!("{:e}", value as f32);
     text.parse::<f64>().is_ok_and(|shortest| shortest == value)
 }
@@ -422,6 +472,25 @@ mod tests {
         assert_eq!(Resolution::Significant(3).at(-999.0), 0.5);
         assert_eq!(Resolution::Full.at(1.0), f64::EPSILON / 2.0);
         assert_eq!(Resolution::Decimals(30).at(1.0), f64::EPSILON / 2.0);
+        for value in [
+            0.0,
+            5e-324,
+            1e-310,
+            -2.5e-308,
+            0.1,
+            -1.0,
+            1.5,
+            7e300,
+            f64::MAX,
+        ] {
+            let size: f64 = f64::abs(value);
+            let ulp = if value == f64::MAX {
+                size - size.next_down()
+            } else {
+                size.next_up() - size
+            };
+            assert_eq!(half_ulp(value), 0.5 * ulp, "{value}");
+        }
         assert_eq!(Resolution::Single.at(1.0), f64::from(f32::EPSILON));
     }
 }

@@ -110,7 +110,7 @@ impl<'a> Order<'a> {
             self.order((line, row.time, resolution), values, findings);
             each(&Row {
                 line,
-                time: row.exact.map_or(Double::from(row.time), Decimal::to_double),
+                time: row.moment,
                 time_resolution: resolution,
                 values,
             });
@@ -265,6 +265,9 @@ impl Survey {
             return None;
         };
         let step = to - from;
+        if step < 1.4 * spacing {
+            return None;
+        }
         // Each of the two stamps may be off by its resolution.
         let slack = 2.1 * resolution.max(half_ulp(to));
         // Steps of a code that chooses them are no whole multiples.

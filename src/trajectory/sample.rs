@@ -5,10 +5,10 @@
 use std::fs::File;
 use std::io::{Read, Seek, SeekFrom};
 
-use super::batch::{Batch, Columns};
+use super::batch::{Batch, Columns, Known};
 use super::layout::{Layout, Stated};
-use super::open::{Origin, Source};
-use super::pieces::{Piece, Pieces, last_line_end};
+use super::open::{Origin, Source, after};
+use super::pieces::{Piece, last_line_end};
 use super::survey::{Selection, Survey, Surveyor};
 use crate::fault::{Fault, Result};
 
@@ -21,7 +21,7 @@ pub(crate) struct Sample {
 /// A file up to this size is read at once.
 const WHOLE_BYTES: u64 = 512 * 1024;
 /// Stretches of a larger file beside its beginning, and their size.
-const STRETCHES: u64 = 8;
+const STRETCHES: u64 = 16;
 const STRETCH_BYTES: u64 = 64 * 1024;
 
 impl Source {
@@ -35,28 +35,30 @@ impl Source {
         of: &Selection,
         stated: &Stated,
     ) -> Result<Sample> {
-        let columns = Columns::new(layout, of);
-        let mut surveyor = Surveyor::new(of.channels.len());
+        let columns = Columns::new(layout, of, Known::default());
         let (mut batches, mut bytes, mut lines) = (Vec::new(), 0, layout.first_row - 1);
-        let mut pieces = self.pieces(layout)?;
-        let whole = loop {
-            let piece = pieces
-                .next()
-                .map_err(|fault| super::open::after(fault, lines))?;
-            let Some(piece) = piece else {
-                break true;
-            };
-            bytes += piece.text.len() as u64;
-            let batch = columns
-                .parse(&piece)
-                .map_err(|fault| super::open::after(fault, lines))?;
+        let (mut pieces, mut piece) = (self.pieces(layout)?, Piece::default());
+        let mut whole = true;
+        while pieces
+            .next(&mut piece)
+            .map_err(|fault| after(fault, lines))?
+        {
+            let batch = columns.parse(&piece).map_err(|fault| after(fault, lines))?;
             lines += batch.lines;
-            surveyor.add(&batch);
             batches.push(batch);
+            bytes += piece.text.len() as u64;
             if bytes > WHOLE_BYTES {
-                break false;
+                whole = false;
+                break;
             }
-        };
+        }
+        let mut surveyor = Surveyor::new(of.channels.len());
+        // Of a larger file the beginning counts no more than any other stretch.
+        let beginning = if whole { batches.len() } else { 1 };
+        batches
+            .iter()
+            .take(beginning)
+            .for_each(|batch| surveyor.add(batch));
         if !whole {
             self.stretches(&mut |text| {
                 let piece = Piece { text, last: false };

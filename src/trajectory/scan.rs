@@ -4,7 +4,7 @@
 //! [`Field::read`](super::number::Field::read), which gives the same where both apply.
 
 use super::number::{MOST_CHARACTERS, Printed};
-use crate::number::Decimal;
+use crate::number::{Decimal, Double};
 
 /// One number as it stands in a file.
 #[derive(Clone, Copy, Debug, PartialEq)]
@@ -23,6 +23,21 @@ impl Scanned {
     pub fn decimal(&self) -> Decimal {
         Decimal::of_digits(self.negative, self.digits, self.exponent)
     }
+
+    /// The same to double-double: what the nearest `f64` leaves, over the power of ten.
+    pub fn double(&self) -> Double {
+        let power = EXACT_POWERS.get(self.exponent.unsigned_abs() as usize);
+        let (Some(&power), true) = (power, self.exponent <= 0 && self.digits < 1 << 62) else {
+            return self.decimal().to_double();
+        };
+        let high = self.digits as f64;
+        // What is left is small, and exact.
+        let low = (self.digits as i64 - high as i64) as f64;
+        let product = Double::from_product(self.value.abs(), power);
+        let rest = ((high - product.to_f64()) - product.low()) + low;
+        let moment = Double::from_sum(self.value.abs(), rest / power);
+        if self.negative { -moment } else { moment }
+    }
 }
 
 /// So many digits fit 64 bits whatever they are.
@@ -31,23 +46,27 @@ const MOST_DIGITS: usize = 19;
 /// The number that a text begins with, and the length of it; `None` where it is not plain: no
 /// number at all, too many digits, out of the range of normal numbers, or so near the middle
 /// of two of them that 64 bits do not tell.
+///
+/// Where the next number begins must not wait for the value of this one: lengths are found by
+/// branches, which a processor foresees, and not by arithmetic.
+#[inline(always)]
 pub(super) fn scan(text: &[u8], point: u8) -> Option<(Scanned, usize)> {
     let negative = text.first() == Some(&b'-');
     let start = usize::from(negative || text.first() == Some(&b'+'));
     let mut digits = 0;
-    let first = zeros(text, start);
-    let mut at = run_of_digits(text, first, &mut digits);
+    let first = after_zeros(text, start);
+    let mut at = one_by_one(text, first, &mut digits);
     let (whole, mut counted) = (at - start, at - first);
     let mut decimals = 0;
     if text.get(at) == Some(&point) {
         let fraction = at + 1;
         // Zeros after the point of a number below one are no digits of it.
-        let first = if counted == 0 {
-            zeros(text, fraction)
-        } else {
-            fraction
+        let first = match counted {
+            0 => after_zeros(text, fraction),
+            _ => fraction,
         };
-        at = run_of_digits(text, first, &mut digits);
+        at = eight_by_eight(text, first, &mut digits);
+        at = one_by_one(text, at, &mut digits);
         counted += at - first;
         decimals = at - fraction;
     }
@@ -56,16 +75,8 @@ pub(super) fn scan(text: &[u8], point: u8) -> Option<(Scanned, usize)> {
     }
     let (mut exponent, mut scientific) = (0, false);
     if let Some(b'e' | b'E' | b'd' | b'D') = text.get(at) {
-        let sign = text.get(at + 1).copied();
-        let begin = at + 1 + usize::from(matches!(sign, Some(b'+' | b'-')));
-        let mut size = 0;
-        let end = run_of_digits(text, begin, &mut size);
-        if end == begin || end - begin > 6 {
-            return None;
-        }
-        let size = size as i32;
-        exponent = if sign == Some(b'-') { -size } else { size };
-        (at, scientific) = (end, true);
+        (exponent, at) = exponent_at(text, at + 1)?;
+        scientific = true;
     }
     if at > MOST_CHARACTERS {
         return None;
@@ -87,8 +98,22 @@ pub(super) fn scan(text: &[u8], point: u8) -> Option<(Scanned, usize)> {
     Some((scanned, at))
 }
 
+/// A whole number with or without a sign, and the place after it.
+fn exponent_at(text: &[u8], at: usize) -> Option<(i32, usize)> {
+    let sign = text.get(at).copied();
+    let begin = at + usize::from(matches!(sign, Some(b'+' | b'-')));
+    let mut size = 0;
+    let end = one_by_one(text, begin, &mut size);
+    if end == begin || end - begin > 6 {
+        return None;
+    }
+    let size = size as i32;
+    Some((if sign == Some(b'-') { -size } else { size }, end))
+}
+
 /// The place after a run of zeros.
-fn zeros(text: &[u8], mut at: usize) -> usize {
+#[inline(always)]
+fn after_zeros(text: &[u8], mut at: usize) -> usize {
     while text.get(at) == Some(&b'0') {
         at += 1;
     }
@@ -97,25 +122,8 @@ fn zeros(text: &[u8], mut at: usize) -> usize {
 
 /// The place after a run of digits, which are taken in; more than [`MOST_DIGITS`] leave
 /// nothing sensible in `digits`.
-fn run_of_digits(text: &[u8], mut at: usize, digits: &mut u64) -> usize {
-    while let Some(eight) = text.get(at..).and_then(|rest| rest.first_chunk::<8>()) {
-        let word = u64::from_le_bytes(*eight) ^ 0x3030_3030_3030_3030;
-        // The highest bit of a byte above nine; what a carry does to those after the first
-        // such byte does not matter.
-        let beyond = (word.wrapping_add(0x7676_7676_7676_7676) | word) & 0x8080_8080_8080_8080;
-        let count = (beyond.trailing_zeros() / 8) as usize;
-        if count == 0 {
-            return at;
-        }
-        let eight = word << (64 - 8 * count);
-        *digits = digits
-            .wrapping_mul(TEN_TO[count])
-            .wrapping_add(number_of_eight(eight));
-        at += count;
-        if count < 8 {
-            return at;
-        }
-    }
+#[inline(always)]
+fn one_by_one(text: &[u8], mut at: usize, digits: &mut u64) -> usize {
     while let Some(digit) = text.get(at).map(|byte| byte.wrapping_sub(b'0'))
         && digit < 10
     {
@@ -125,20 +133,26 @@ fn run_of_digits(text: &[u8], mut at: usize, digits: &mut u64) -> usize {
     at
 }
 
-const TEN_TO: [u64; 9] = [
-    1,
-    10,
-    100,
-    1000,
-    10_000,
-    100_000,
-    1_000_000,
-    10_000_000,
-    100_000_000,
-];
+/// The same for as many whole eights of digits as there are.
+#[inline(always)]
+fn eight_by_eight(text: &[u8], mut at: usize, digits: &mut u64) -> usize {
+    while let Some(eight) = text.get(at..).and_then(|rest| rest.first_chunk::<8>()) {
+        let word = u64::from_le_bytes(*eight) ^ 0x3030_3030_3030_3030;
+        // The highest bit of a byte above nine; a carry comes from such a byte only.
+        let beyond = word.wrapping_add(0x7676_7676_7676_7676) | word;
+        if beyond & 0x8080_8080_8080_8080 != 0 {
+            break;
+        }
+        let number = number_of_eight(word);
+        *digits = digits.wrapping_mul(100_000_000).wrapping_add(number);
+        at += 8;
+    }
+    at
+}
 
 /// The number of eight digits, one in each byte, the first one lowest: neighbours are joined
 /// to pairs, then four pairs with two products.
+#[inline(always)]
 fn number_of_eight(digits: u64) -> u64 {
     const PAIR: u64 = 0x0000_00ff_0000_00ff;
     let pairs = digits.wrapping_mul(10).wrapping_add(digits >> 8);
@@ -154,13 +168,15 @@ const EXACT_POWERS: [f64; 23] = [
 ];
 
 /// The `f64` nearest to `digits * 10^exponent`.
+#[inline(always)]
 fn nearest(digits: u64, exponent: i32) -> Option<f64> {
     if digits < 1 << 53 {
         // Both numbers are exact, and the result is rounded once.
+        let number = digits as i64 as f64;
         let power = EXACT_POWERS.get(exponent.unsigned_abs() as usize);
         match power {
-            Some(power) if exponent < 0 => return Some(digits as f64 / power),
-            Some(power) => return Some(digits as f64 * power),
+            Some(power) if exponent < 0 => return Some(number / power),
+            Some(power) => return Some(number * power),
             None if digits == 0 => return Some(0.0),
             None => {}
         }
@@ -171,22 +187,18 @@ fn nearest(digits: u64, exponent: i32) -> Option<f64> {
     let product = u128::from(digits << shift) * u128::from(power);
     // The table is short of the true power by less than one unit, so the upper word is short
     // of the true quotient by less than two.
-    let high = (product >> 64) as u64;
-    let up = u32::from(high < 1 << 63);
-    let high = (product >> (64 - up)) as u64;
+    let (high, low) = ((product >> 64) as u64, product as u64);
+    let up = 1 - (high >> 63) as i32;
+    let high = if up == 0 { high } else { high << 1 | low >> 63 };
     let rest = high & 0x7ff;
     if (0x3fa..=0x406).contains(&rest) {
         return None;
     }
-    let mut mantissa = (high >> 11) + u64::from(rest > 0x400);
-    let mut power_of_two = binary + 64 - shift as i32 - up as i32 + 11;
-    if mantissa == 1 << 53 {
-        mantissa >>= 1;
-        power_of_two += 1;
-    }
-    let biased = power_of_two + 52 + 1023;
-    let normal = (1..=2046).contains(&biased);
-    normal.then(|| f64::from_bits((biased as u64) << 52 | (mantissa & ((1 << 52) - 1))))
+    // A mantissa that is rounded up to the next power of two carries into the exponent.
+    let rounded = (high >> 11) + u64::from(rest > 0x400);
+    let biased = binary + 64 - shift as i32 - up + 11 + 52 + 1022;
+    let value = f64::from_bits(((biased as u64) << 52).wrapping_add(rounded));
+    ((0..=2045).contains(&biased) && value.is_finite()).then_some(value)
 }
 
 /// `10^k = power * 2^binary` for `k` from minus this on, `power` with its highest bit set and
@@ -247,6 +259,9 @@ mod tests {
             Field::decimal(whole, false),
             "{text}"
         );
+        let (double, decimal) = (scanned.double(), scanned.decimal().to_double());
+        let gap = (double - decimal).abs().to_f64();
+        assert!(gap <= 1e-31 * value.abs(), "{text}: {gap:e}");
         true
     }
 

@@ -7,10 +7,9 @@ use std::sync::atomic::{AtomicUsize, Ordering};
 use std::sync::{Condvar, Mutex, MutexGuard, PoisonError};
 
 use super::batch::{Batch, Columns};
-use super::layout::Layout;
 use super::open::{Source, after};
-use super::pieces::Pieces;
-use super::survey::Selection;
+use super::pieces::{Piece, Pieces};
+use super::survey::Survey;
 use crate::fault::Result;
 
 /// Threads that have nothing to do, for whoever has work that can be shared.
@@ -86,13 +85,13 @@ impl Source {
     /// A file that cannot be read, or a line too long.
     pub(crate) fn stream<W: Send, D: Send>(
         &self,
-        layout: &Layout,
-        of: &Selection,
+        guess: &Survey,
         crew: &Crew,
         stages: Stages<W, D>,
     ) -> Result<()> {
+        let layout = &guess.layout;
         let shared = Shared {
-            columns: Columns::new(layout, of),
+            columns: Columns::new(layout, &guess.selection, guess.known.clone()),
             input: Mutex::new((self.pieces(layout)?, 0)),
             turn: Mutex::new(Turn {
                 next: 0,
@@ -134,15 +133,16 @@ impl<W, D> Shared<'_, W, D> {
     /// Piece after piece, as long as there are any.
     fn work(&self, between: &mut dyn FnMut()) {
         let guard = Guard(self);
+        let mut piece = Piece::default();
         loop {
-            let (number, piece) = {
+            let (number, read) = {
                 let (input, count) = &mut *lock(&self.input);
                 *count += 1;
-                (*count - 1, input.next())
+                (*count - 1, input.next(&mut piece))
             };
-            let batch = match piece {
-                Ok(None) => break,
-                Ok(Some(piece)) => {
+            let batch = match read {
+                Ok(false) => break,
+                Ok(true) => {
                     if !piece.last {
                         between();
                     }

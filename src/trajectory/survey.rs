@@ -1,6 +1,6 @@
 //! The first pass: what can be known only after every row was seen.
 
-use super::batch::Batch;
+use super::batch::{Batch, Known};
 use super::grid::{Grid, GridFinder};
 use super::layout::{Layout, SAMPLE_BYTES, Stated};
 use super::open::Source;
@@ -44,6 +44,8 @@ pub struct Survey {
     pub usual_digits: Vec<usize>,
     /// The first stamp.
     pub first: Option<Decimal>,
+    /// Columns whose text shows the same whatever other rows there are.
+    pub(crate) known: Known,
 }
 
 impl Source {
@@ -134,6 +136,23 @@ impl Surveyor {
         self.channels.iter_mut().for_each(Pattern::interrupt);
     }
 
+    /// What was found; of columns that had been known before, what was known.
+    pub(crate) fn conclude_with(&self, guess: &Survey, stated: &Stated) -> Survey {
+        let mut survey = self.conclude(&guess.layout, &guess.selection, stated);
+        for place in (0..self.channels.len()).filter(|&place| guess.known.channel(place)) {
+            survey.channels[place] = guess.channels[place];
+            survey.longest[place] = guess.longest[place];
+            survey.usual_digits[place] = guess.usual_digits[place];
+            survey.even[place] = guess.even[place];
+        }
+        if guess.known.time {
+            survey.time = guess.time;
+            survey.grid = self.grid.conclude(guess.time);
+        }
+        survey.known = guess.known.clone();
+        survey
+    }
+
     pub(crate) fn conclude(&self, layout: &Layout, of: &Selection, stated: &Stated) -> Survey {
         // Stamps show their own pattern: what is stated is how values were printed.
         let digits = stated.digits.filter(|_| !self.time.is_clear());
@@ -151,6 +170,10 @@ impl Surveyor {
             selection: of.clone(),
             rows: self.rows,
             first: self.first,
+            known: Known {
+                time: self.time.is_settled(),
+                channels: patterns.iter().map(Pattern::is_settled).collect(),
+            },
         }
     }
 }

@@ -13,11 +13,12 @@ use crate::number::{Double, dot};
 pub struct Expansion {
     value: Vec<Double>,
     bound: Vec<f64>,
-    /// `M^k z / k!` for `k` from one, and the same of magnitudes.
+    /// `M^k z / k!` for `k` from one, and the same of magnitudes from zero.
     terms: Vec<Vec<f64>>,
     sizes: Vec<Vec<f64>>,
     /// What follows the last term.
     tail: Vec<f64>,
+    next: Vec<f64>,
     reach: f64,
 }
 
@@ -30,21 +31,36 @@ pub struct Nearby {
     pub terms: Vec<f64>,
     /// What the sum may be off by.
     pub bound: f64,
+    /// The rate of change at the node, its own rate, and what the other terms add at most.
+    rates: [f64; 3],
+    reach: f64,
 }
 
 const UNIT: f64 = f64::EPSILON / 2.0;
 
 impl Nearby {
-    /// How far the value lies from that at the node.
-    pub fn moved(&self, offset: f64) -> f64 {
-        let sum = |sum, &term: &f64| sum * offset + term;
-        self.terms.iter().rev().fold(0.0, sum) * offset
+    /// How far the values at some offsets lie from that at the node.
+    pub fn moved(&self, offsets: &[f64], moved: &mut Vec<f64>) {
+        moved.clear();
+        moved.resize(offsets.len(), 0.0);
+        // Term by term over all offsets: they do not wait for each other.
+        for &term in self.terms.iter().rev() {
+            for (sum, offset) in moved.iter_mut().zip(offsets) {
+                *sum = (*sum + term) * offset;
+            }
+        }
     }
 
-    /// The rate of change.
+    /// No rate of change within the reach is larger.
+    pub fn fastest(&self) -> f64 {
+        let [rate, change, rest] = self.rates;
+        rate.abs() + change.abs() * self.reach + rest
+    }
+
+    /// No rate of change at an offset is larger.
     pub fn rate(&self, offset: f64) -> f64 {
-        let terms = self.terms.iter().enumerate().rev();
-        terms.fold(0.0, |sum, (k, &term)| sum * offset + (k + 1) as f64 * term)
+        let [rate, change, rest] = self.rates;
+        (rate + change * offset).abs() + rest
     }
 }
 
@@ -63,32 +79,38 @@ impl Propagator<Double> {
 
     /// Fills in the polynomial around a vector; `reach` is at most [`Propagator::base`].
     pub fn expand(&self, flow: &Flow<Double>, count: usize, reach: f64, into: &mut Expansion) {
+        let size = self.size();
         into.reach = reach;
         into.value.clone_from(&flow.value);
         into.bound = self.bound(flow);
-        into.terms.resize(count, Vec::new());
-        into.sizes.resize(count, Vec::new());
-        let mut size: Vec<f64> = flow.value.iter().map(|x| x.to_f64().abs()).collect();
-        let rates = self.generator.apply(&flow.value);
-        let mut term: Vec<f64> = rates.iter().map(|x| x.to_f64()).collect();
-        for k in 1..=count {
-            let divisor = k as f64;
-            if k > 1 {
-                term = self.plain.apply(&term);
-                term.iter_mut().for_each(|x| *x /= divisor);
-            }
-            size = self.magnitude.apply(&size);
-            size.iter_mut().for_each(|x| *x *= UPWARD / divisor);
-            into.terms[k - 1].clone_from(&term);
-            into.sizes[k - 1].clone_from(&size);
+        into.terms.resize_with(count, || vec![0.0; size]);
+        into.sizes.resize_with(count + 1, || vec![0.0; size]);
+        let [first, ..] = &mut into.terms[..] else {
+            return;
+        };
+        for (i, rate) in first.iter_mut().enumerate() {
+            *rate = dot(self.generator.row(i), &flow.value).to_f64();
         }
-        let next = self.magnitude.apply(&size);
-        let power = reach.powi(count as i32 + 1) / (count + 1) as f64;
-        let tail = self
-            .nearby
-            .rows()
-            .map(|row| dot(row, &next) * power * UPWARD);
-        into.tail = tail.collect();
+        for k in 1..count {
+            let (before, after) = into.terms.split_at_mut(k);
+            self.plain
+                .apply_into(&before[k - 1], 1.0 / (k + 1) as f64, &mut after[0]);
+        }
+        for (entry, value) in into.sizes[0].iter_mut().zip(&flow.value) {
+            *entry = value.to_f64().abs();
+        }
+        for k in 1..=count {
+            let (before, after) = into.sizes.split_at_mut(k);
+            self.magnitude
+                .apply_into(&before[k - 1], UPWARD / k as f64, &mut after[0]);
+        }
+        // One term more, and what `exp(|M| s)` makes of it.
+        let power = reach.powi(count as i32 + 1) / (count + 1) as f64 * UPWARD;
+        into.next.resize(size, 0.0);
+        self.magnitude
+            .apply_into(&into.sizes[count], power, &mut into.next);
+        into.tail.resize(size, 0.0);
+        self.nearby.apply_into(&into.next, 1.0, &mut into.tail);
     }
 }
 
@@ -98,6 +120,8 @@ impl Expansion {
         into.value = self.value[entry];
         into.terms.clear();
         into.terms.extend(self.terms.iter().map(|term| term[entry]));
+        into.rates = self.rates(&into.terms);
+        into.reach = self.reach;
         let lost = self.lost(|list| list[entry].abs());
         into.bound = (lost + self.tail[entry] + self.bound[entry]) * UPWARD;
     }
@@ -131,12 +155,23 @@ impl Expansion {
         into.bound = (lost + size(&self.tail) + size(&self.bound)) * UPWARD;
     }
 
+    fn rates(&self, terms: &[f64]) -> [f64; 3] {
+        let term = |k: usize| terms.get(k).copied().unwrap_or(0.0);
+        let mut power = self.reach;
+        let mut rest = 0.0;
+        for (k, term) in terms.iter().enumerate().skip(2) {
+            power *= self.reach;
+            rest += (k + 1) as f64 * term.abs() * power;
+        }
+        [term(0), 2.0 * term(1), rest]
+    }
+
     /// What Horner's rule and the terms themselves lose within the reach. The first term comes
     /// from double-double; each later one is a sum of products of the one before it.
     fn lost(&self, of: impl Fn(&[f64]) -> f64) -> f64 {
         let products = self.value.len() as f64 + 5.0;
         let (mut power, mut sum) = (1.0, 0.0);
-        for (index, (term, size)) in self.terms.iter().zip(&self.sizes).enumerate() {
+        for (index, (term, size)) in self.terms.iter().zip(&self.sizes[1..]).enumerate() {
             power *= self.reach;
             let k = (index + 1) as f64;
             let own = if index == 0 { 1.0 } else { products * k };
