@@ -3,7 +3,8 @@
 //! depend on how a file was read.
 
 use super::deviation::{Comparison, Kept, KeptValue};
-use super::sums::{Mark, Rows, Sums};
+use super::group::Rows;
+use super::sums::{Mark, Sums};
 use super::trace::Trace;
 use crate::exact::{Near, Nodes, Walk};
 use crate::number::{Conversion, Double, Nearby};

@@ -7,6 +7,7 @@ mod chunk;
 mod convergence;
 mod coverage;
 mod deviation;
+mod group;
 mod margin;
 mod order;
 mod stage;

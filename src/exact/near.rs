@@ -6,7 +6,7 @@ use super::Exact;
 use crate::number::{Double, Expansion, Flow, Nearby, Step};
 
 /// Rows that share a node, about: enough to pay for it, few enough to stay close to it.
-const ROWS_OF_A_NODE: f64 = 64.0;
+const ROWS_OF_A_NODE: f64 = 128.0;
 /// With fewer rows the way through double-double costs no more.
 const FEWEST_ROWS: f64 = 4.0;
 /// Nodes before the vector is computed directly again, so that nothing drifts.

@@ -22,6 +22,8 @@ pub(crate) struct Batch {
     pub values: Vec<f64>,
     /// What is wrong with those that are marked, in their order.
     pub odd: Vec<Odd>,
+    /// Stamps of more digits than most.
+    long: Vec<Decimal>,
     /// How the stamps and each channel are printed.
     pub(super) time: Pattern,
     pub(super) channels: Vec<Pattern>,
@@ -42,7 +44,20 @@ pub(crate) struct Line {
     pub time: f64,
     /// The same exactly as printed, in double-double and as a decimal.
     pub moment: Double,
-    pub exact: Option<Decimal>,
+    exact: Digits,
+}
+
+/// A decimal in little room: one is kept for every row.
+#[derive(Clone, Copy, Debug)]
+enum Digits {
+    None,
+    Short {
+        negative: bool,
+        exponent: i16,
+        digits: u64,
+    },
+    /// A place among the long ones of the batch.
+    Long(u32),
 }
 
 /// A row that is not as it should be.
@@ -71,6 +86,7 @@ pub(crate) struct Columns<'a> {
     separator: Option<u8>,
     point: u8,
     known: Known,
+    all_known: bool,
     /// False where a plain row could be a comment.
     quick: bool,
 }
@@ -115,6 +131,7 @@ impl<'a> Columns<'a> {
             channels: selection.channels.len(),
             separator: layout.separator.byte(),
             point: if layout.decimal_comma { b',' } else { b'.' },
+            all_known: (0..selection.channels.len()).all(|place| known.channel(place)),
             known,
             quick: !layout.comments.iter().any(begins_a_number),
         }
@@ -135,7 +152,8 @@ impl<'a> Columns<'a> {
             let next = match quick.flatten() {
                 Some(next) => next,
                 None => {
-                    let found = line_end(rest, piece.last);
+                    // A piece ends with a whole line end, or with the file.
+                    let found = line_end(rest, true);
                     let (end, next) = found.unwrap_or((rest.len(), rest.len()));
                     check_length(end).map_err(|fault| fault.at(batch.lines + 1, 1))?;
                     self.slow_row(&rest[..end], found.is_some(), &mut batch);
@@ -158,10 +176,12 @@ impl<'a> Columns<'a> {
             batch.values.truncate(start);
             return None;
         };
-        let looks = values.iter().zip(&*looks);
-        for (place, ((&value, &printed), pattern)) in looks.zip(&mut batch.channels).enumerate() {
-            if !self.known.channel(place) {
-                pattern.add(value, printed);
+        if !self.all_known {
+            let looks = values.iter().zip(&*looks).zip(&mut batch.channels);
+            for (place, ((&value, &printed), pattern)) in looks.enumerate() {
+                if !self.known.channel(place) {
+                    pattern.add(value, printed);
+                }
             }
         }
         if !self.known.time {
@@ -173,7 +193,7 @@ impl<'a> Columns<'a> {
             printed: stamp.printed,
             time: stamp.value,
             moment: stamp.double(),
-            exact: Some(stamp.decimal()),
+            exact: stamp.digits(),
         });
         Some(next)
     }
@@ -249,7 +269,7 @@ impl<'a> Columns<'a> {
             printed: Printed::default(),
             time: f64::NAN,
             moment: Double::ZERO,
-            exact: None,
+            exact: Digits::None,
         };
         let (mut columns, mut strange, mut last) = (0, None, None);
         self.layout.split(text, &mut |column, field| {
@@ -260,8 +280,12 @@ impl<'a> Columns<'a> {
             }
             match (Field::read(field, comma), role) {
                 (Field::Number(time, printed), Role::Time) => {
-                    row.exact = Field::decimal(field, comma);
-                    row.moment = row.exact.map_or(Double::from(time), Decimal::to_double);
+                    let exact = Field::decimal(field, comma);
+                    row.moment = exact.map_or(Double::from(time), Decimal::to_double);
+                    if let Some(exact) = exact {
+                        row.exact = Digits::Long(batch.long.len() as u32);
+                        batch.long.push(exact);
+                    }
                     (row.time, row.printed) = (time, printed);
                     if !self.known.time {
                         batch.time.add(time, printed);
@@ -300,9 +324,51 @@ impl Batch {
             rows: Vec::with_capacity(numbers / (channels + 1) + 1),
             values: Vec::with_capacity(numbers + 1),
             odd: Vec::new(),
+            long: Vec::new(),
             time: Pattern::new(),
             channels: vec![Pattern::new(); channels],
             open: None,
+        }
+    }
+
+    /// The stamp of a row exactly as printed.
+    pub(super) fn exact(&self, row: &Line) -> Exactly {
+        match row.exact {
+            Digits::None => Exactly::Decimal(None),
+            Digits::Short {
+                negative,
+                exponent,
+                digits,
+            } => Exactly::Digits(negative, digits, i32::from(exponent)),
+            Digits::Long(place) => Exactly::Decimal(self.long.get(place as usize).copied()),
+        }
+    }
+}
+
+/// A decimal that is put together only where somebody asks for it.
+#[derive(Clone, Copy, Debug)]
+pub(super) enum Exactly {
+    Digits(bool, u64, i32),
+    Decimal(Option<Decimal>),
+}
+
+impl Exactly {
+    pub(super) fn decimal(self) -> Option<Decimal> {
+        match self {
+            Exactly::Digits(negative, digits, exponent) => {
+                Some(Decimal::of_digits(negative, digits, exponent))
+            }
+            Exactly::Decimal(decimal) => decimal,
+        }
+    }
+}
+
+impl Scanned {
+    fn digits(&self) -> Digits {
+        Digits::Short {
+            negative: self.negative,
+            exponent: self.exponent as i16,
+            digits: self.digits,
         }
     }
 }

@@ -1,6 +1,7 @@
 //! The grid of the time stamps: how far they are apart, whether as exact decimals,
 //! and where rows are missing.
 
+use super::batch::Exactly;
 use super::number::Printed;
 use super::resolution::{Resolution, decade, power_of_ten};
 use crate::number::Decimal;
@@ -49,7 +50,7 @@ const PHASE: u64 = 3;
 /// Gathers the steps between stamps.
 #[derive(Clone, Debug, Default)]
 pub(super) struct GridFinder {
-    last: Option<(f64, Option<Decimal>, f64)>,
+    last: Option<(f64, Exactly, f64)>,
     most_significant: u8,
     most_decimals: u8,
     steps: u64,
@@ -72,14 +73,14 @@ impl GridFinder {
         self.last = None;
     }
 
-    pub(super) fn add(&mut self, time: f64, exact: Option<Decimal>, printed: Printed) {
+    pub(super) fn add(&mut self, time: f64, exact: Exactly, printed: Printed) {
         self.most_significant = self.most_significant.max(printed.significant);
         let unit = self.unit(time, printed);
         if let Some((last, last_exact, last_unit)) = self.last {
             let step = time - last;
             self.repeats += u64::from(step == 0.0);
             if step > 0.0 {
-                let exact = || exact.zip(last_exact).and_then(|(a, b)| a.minus(b));
+                let exact = || exact.decimal()?.minus(last_exact.decimal()?);
                 // Two rounded stamps each: a step is off by half their units together,
                 // and two steps are compared.
                 let rounding = 4.0 * f64::EPSILON * time.abs();
@@ -254,7 +255,7 @@ mod tests {
             let Field::Number(time, printed) = Field::read(text.as_bytes(), false) else {
                 panic!("{text}")
             };
-            finder.add(time, Decimal::parse(&text), printed);
+            finder.add(time, Exactly::Decimal(Decimal::parse(&text)), printed);
             pattern.add(time, printed);
         }
         let mut whole = Pattern::new();

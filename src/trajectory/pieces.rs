@@ -46,7 +46,7 @@ impl<R: Read> Pieces<R> {
                     at += next;
                     skipped += 1;
                 }
-                _ if self.rest.len() < 3 && !self.done || begun && !self.done => {
+                _ if (begun || self.rest.len() < 3) && !self.done => {
                     self.rest.drain(..at);
                     at = 0;
                     check_length(self.rest.len()).map_err(|fault| fault.at(skipped + 1, 1))?;

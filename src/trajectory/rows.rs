@@ -1,6 +1,6 @@
 //! The second pass: row by row, with the faults of the file on the way.
 
-use super::batch::{Batch, Odd, Open};
+use super::batch::{Batch, Exactly, Odd, Open};
 use super::finding::{Findings, Kind};
 use super::grid::Grid;
 use super::number::Printed;
@@ -8,7 +8,7 @@ use super::open::Source;
 use super::resolution::half_ulp;
 use super::survey::Survey;
 use crate::fault::{Result, quoted};
-use crate::number::{Decimal, Double};
+use crate::number::Double;
 
 /// One row of a trajectory.
 #[derive(Debug)]
@@ -106,7 +106,7 @@ impl<'a> Order<'a> {
                 self.last = None;
                 continue;
             }
-            let resolution = self.survey.time_resolution(row.time, row.exact);
+            let resolution = self.survey.time_resolution(row.time, batch.exact(row));
             self.order((line, row.time, resolution), values, findings);
             each(&Row {
                 line,
@@ -296,13 +296,13 @@ impl Survey {
     }
 
     /// Zero for a stamp that is an exact decimal multiple of the grid's step.
-    fn time_resolution(&self, time: f64, exact: Option<Decimal>) -> f64 {
+    fn time_resolution(&self, time: f64, exact: Exactly) -> f64 {
         if let Grid::Uniform {
             spacing,
             exact: Some(step),
             ..
         } = self.grid
-            && let (Some(exact), Some(first)) = (exact, self.first)
+            && let (Some(exact), Some(first)) = (exact.decimal(), self.first)
         {
             let since = exact.minus(first);
             let count = since.map(|since| (since.to_double().to_f64() / spacing).round());

@@ -13,9 +13,10 @@ pub(super) struct Scanned {
     pub value: f64,
     /// How it was printed.
     pub printed: Printed,
-    negative: bool,
-    digits: u64,
-    exponent: i32,
+    pub negative: bool,
+    /// The number is `digits * 10^exponent`; the exponent stays within 2000.
+    pub digits: u64,
+    pub exponent: i32,
 }
 
 impl Scanned {

@@ -122,10 +122,10 @@ impl Surveyor {
         }
         for row in batch.rows.iter().filter(|row| !row.time.is_nan()) {
             if self.rows == 0 {
-                self.first = row.exact;
+                self.first = batch.exact(row).decimal();
             }
             self.rows += 1;
-            self.grid.add(row.time, row.exact, row.printed);
+            self.grid.add(row.time, batch.exact(row), row.printed);
         }
     }
 

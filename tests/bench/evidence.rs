@@ -122,8 +122,7 @@ fn record(case: &Case, path: &Path, step: f64) -> Record {
         window.times.push(time);
         window.time_doubts.push(f64::EPSILON * time.abs());
         let truth = walk.at(row.time).unwrap();
-        for (value, exact) in row.values.iter().zip(truth) {
-            let value = value.unwrap();
+        for (&value, exact) in row.values.iter().zip(truth) {
             window.values.push(value);
             window.errors.push(value - exact.value);
             window.doubts.push(0.5 * f64::EPSILON * value.abs());

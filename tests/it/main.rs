@@ -40,6 +40,9 @@ mod published;
 /// A folder made for one test, and the command run on it.
 mod folder;
 
+/// Long files: threads, blocks, guesses and quick arithmetic do not show.
+mod long_files;
+
 /// The same trajectory in every layout.
 mod layouts;
 
