@@ -68,12 +68,23 @@ impl Findings {
         });
     }
 
-    /// Takes note of a fault that does not decide.
-    pub fn note(&mut self, kind: Kind, line: impl Into<Option<u64>>, text: impl Into<String>) {
+    /// Takes note of a fault that does not decide; of one that is seen in every other row the
+    /// words are found only as long as they are kept.
+    pub fn note(
+        &mut self,
+        kind: Kind,
+        line: impl Into<Option<u64>>,
+        text: impl FnOnce() -> String,
+    ) {
+        let known = self.counts.iter_mut().find(|(known, _)| *known == kind);
+        if let Some((_, count)) = known.filter(|(_, count)| *count >= KEPT_OF_A_KIND) {
+            *count += 1;
+            return;
+        }
         self.add(Finding {
             kind,
             line: line.into(),
-            text: text.into(),
+            text: text(),
             fatal: false,
         });
     }
@@ -135,7 +146,7 @@ mod tests {
     fn only_the_first_few_are_kept_but_all_are_counted() {
         let mut findings = Findings::default();
         for line in 0..10 {
-            findings.note(Kind::RepeatedStamp, line, "again");
+            findings.note(Kind::RepeatedStamp, line, || "again".to_owned());
         }
         findings.fatal(Kind::RepeatedStamp, 11, "doubled");
         assert!(findings.any_fatal());

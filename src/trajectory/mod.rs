@@ -1,11 +1,11 @@
 //! Trajectory files: bytes to rows of a time stamp and channel values, with what the
 //! printed digits can resolve and what is wrong with the file.
 //!
-//! A file is gone through twice. The first pass ([`Survey`]) finds the layout, the
-//! pattern of the digits and the grid of the time stamps, which need every row; the
-//! second ([`Survey::rows`]) hands out the rows one by one, so that memory does not
-//! grow with their number. A reader knows no case; `open` is the only place with
-//! I/O, everything else takes bytes.
+//! Text is cut into pieces of whole lines, which are parsed to batches of rows apart from each
+//! other. What needs every row — the layout's digits, the grid of the stamps — is gathered batch
+//! by batch ([`Survey`]); what is wrong between rows is looked for in their order
+//! ([`Survey::rows`]). Memory does not grow with the file. A reader knows no case; `open` is the
+//! only place with I/O, everything else takes bytes.
 
 mod batch;
 mod finding;

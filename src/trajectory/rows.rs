@@ -192,7 +192,9 @@ impl<'a> Order<'a> {
             let from = last.max(self.latest);
             self.largest_step = self.largest_step.max(time - from);
             if time == last {
-                let uniform = matches!(survey.grid, Grid::Uniform { .. });
+                // Stamps that are too coarse for the step repeat by themselves.
+                let uniform = matches!(survey.grid, Grid::Uniform { spacing, exact, .. }
+                    if exact.is_some() || spacing > 2.1 * survey.time.at(time));
                 let same = |(a, b): (&f64, &f64)| a == b || a.is_nan() && b.is_nan();
                 let repeats = uniform && self.last_values.iter().zip(values).all(same);
                 if repeats && !(self.is_event)(time) {
@@ -205,7 +207,7 @@ impl<'a> Order<'a> {
                         text,
                     });
                 } else {
-                    let text = format!("t = {time} stands here a second time");
+                    let text = || format!("t = {time} stands here a second time");
                     findings.note(Kind::RepeatedStamp, line, text);
                 }
             } else {

@@ -107,3 +107,18 @@ fn stated_digits_hold_for_values_and_uneven_stamps() {
     let (rows, _) = read("t,x\n0,1\n0.5,2\n1.75,3\n2.25,5\n4.5,6\n", &stated);
     assert_eq!(rows[3].2, 0.005);
 }
+
+/// Steps of less than a unit of the stamps' last digit: rows at rest repeat, and nothing is wrong.
+#[test]
+fn stamps_too_coarse_for_the_step_repeat_by_themselves() {
+    for print in [
+        |time: f64| format!("{time:.1}"),
+        // Six digits, as C prints them: one decimal from ten thousand on.
+        |time: f64| format!("{:.1}", 10_000.0 + time),
+    ] {
+        let line = |k: i32| format!("{},{}\n", print(0.0864 * f64::from(k)), k.min(40));
+        let text = "t,x\n".to_owned() + &(0..400).map(line).collect::<String>();
+        let found = findings(&text);
+        assert!(found.iter().all(|(_, _, fatal)| !fatal), "{found:?}");
+    }
+}
