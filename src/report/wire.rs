@@ -25,6 +25,42 @@ pub struct AuditReport {
     /// such reports are those of before.
     #[serde(default, skip_serializing_if = "Option::is_none")]
     pub changes: Option<ChangesReport>,
+    /// Which part of a divided audit this is; absent in the report of a whole one.
+    #[serde(default, skip_serializing_if = "Option::is_none")]
+    pub part: Option<PartReport>,
+}
+
+/// One part of an audit that was divided. Places number the submissions of the whole audit
+/// from zero, those that could not be read first.
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
+#[allow(missing_docs)]
+pub struct PartReport {
+    /// Counted from one.
+    pub number: u32,
+    pub of: u32,
+    pub whole: WholeReport,
+    /// Of `submissions`, in their order.
+    pub places: Vec<u64>,
+    /// Of `not_audited`, in their order.
+    pub places_not_audited: Vec<u64>,
+}
+
+/// What was divided: equal in all parts of one audit.
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
+#[allow(missing_docs)]
+pub struct WholeReport {
+    pub paths: Vec<String>,
+    pub options: Vec<String>,
+    pub submissions: u64,
+    pub unreadable: u64,
+    pub bytes: u64,
+    /// Digests, in hexadecimal digits.
+    pub names: String,
+    pub sizes: String,
+    pub texts: String,
+    pub cases: String,
 }
 
 /// An audit beside an earlier one.
