@@ -30,7 +30,9 @@ impl Earlier {
         };
         let text = text(path).map_err(|fault| fault.in_file(path))?;
         Ok(Some(Earlier {
-            report: read_report(&text).and_then(whole).map_err(|fault| fault.in_file(path))?,
+            report: read_report(&text)
+                .and_then(whole)
+                .map_err(|fault| fault.in_file(path))?,
             name: path.to_string_lossy().into_owned(),
             worse_by: worse_by.unwrap_or(WORSE_BY),
         }))

@@ -22,8 +22,8 @@ use crate::fault::{Fault, escaped, quoted};
 use crate::number::{Decimal, Double};
 use crate::outcome::Outcome;
 use crate::report::{
-    Screen, ValueWriter, WIDEST, audit_report, audit_text, case_json, case_list, case_text, draft_text,
-    merged_text, steps_csv, steps_text,
+    Screen, ValueWriter, WIDEST, audit_report, audit_text, case_json, case_list, case_text,
+    draft_text, merged_text, steps_csv, steps_text,
 };
 use crate::trajectory::{Findings, Selection, Stated, Survey, is_time_name, open};
 

@@ -159,7 +159,8 @@ fn missing(parts: &BTreeMap<u32, (Given, PartReport)>, of: u32) -> Option<Fault>
     if count > listed.len() {
         text += &format!(", and {} more", count - listed.len());
     }
-    let help = format!("audit with `--part {example}/{of} --write FILE.json`, and give all reports");
+    let help =
+        format!("audit with `--part {example}/{of} --write FILE.json`, and give all reports");
     Some(Fault::new(text).help(help))
 }
 
@@ -180,7 +181,11 @@ fn whole(
         places.extend(part.places.iter().chain(&part.places_not_audited).copied());
         submissions.extend(part.places.into_iter().zip(read));
         not_audited.extend(part.places_not_audited.into_iter().zip(unread));
-        frame.get_or_insert((given.report.stepgauge, given.report.schema, given.report.scope));
+        frame.get_or_insert((
+            given.report.stepgauge,
+            given.report.schema,
+            given.report.scope,
+        ));
     }
     places.sort_unstable();
     let Some((stepgauge, schema, scope)) = frame.filter(|_| places.iter().copied().eq(0..count))

@@ -56,7 +56,9 @@ fn placed(error: serde_json::Error) -> Fault {
         None => &text,
     };
     let what = match error.classify() {
-        serde_json::error::Category::Data => "this is no report of an audit as this version writes it",
+        serde_json::error::Category::Data => {
+            "this is no report of an audit as this version writes it"
+        }
         _ => "this is not JSON",
     };
     let shown = crate::fault::escaped(text);

@@ -100,11 +100,7 @@ fn run(report: &RunReport) -> Option<RunOutcome> {
         layout: report.layout.clone(),
         stamps: String::new(),
         findings: Vec::new(),
-        channels: report
-            .channels
-            .iter()
-            .map(channel)
-            .collect::<Option<_>>()?,
+        channels: report.channels.iter().map(channel).collect::<Option<_>>()?,
     })
 }
 

@@ -85,10 +85,7 @@ fn allowed() -> BTreeMap<&'static str, Vec<&'static str>> {
         ),
         ("against", with(&["outcome", "report"])),
         // It takes a plan apart and reports together: both sides of an audit.
-        (
-            "parts",
-            with(&["audit", "outcome", "report", "submission"]),
-        ),
+        ("parts", with(&["audit", "outcome", "report", "submission"])),
         (
             "draft",
             with(&[
