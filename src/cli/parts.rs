@@ -145,7 +145,9 @@ pub(super) fn merge(arguments: &MergeArguments) -> Result<Merged, Vec<Fault>> {
         Ok(_) => return Err(faults),
         Err(more) => {
             // A part that cannot be read is not missing too.
-            faults.extend(more.into_iter().filter(|fault| fault.path.is_some()));
+            let all_read = faults.is_empty();
+            let told = more.into_iter();
+            faults.extend(told.filter(|fault| all_read || fault.path.is_some()));
             return Err(faults);
         }
     };
