@@ -40,6 +40,7 @@
 //! | [`report`] | terminal, JSON, JUnit XML, Markdown, CSV |
 //! | [`audit`] | the pipeline on one screen |
 //! | [`against`] | an audit beside an earlier report: what became worse |
+//! | [`parts`] | an audit divided among machines: the share of one, the reports of all joined |
 //! | [`draft`] | files to a first `submission.toml`: likely case, columns, units, steps |
 //! | [`cli`] | arguments, plan, printing, exit status |
 //! | [`references`] | the published sources that doc comments and methods cite |
@@ -61,6 +62,7 @@ pub mod judge;
 pub mod method;
 pub mod number;
 pub mod outcome;
+pub mod parts;
 pub mod references;
 pub mod report;
 pub mod submission;

@@ -6,6 +6,7 @@ mod changes;
 mod draft;
 mod evidence;
 mod methods;
+mod part;
 mod plots;
 mod steps;
 
@@ -24,6 +25,7 @@ pub use evidence::{
     ClaimOutcome, Consistent, Damping, EvidenceOutcome, GrowthOutcome, GrowthSummary, RunEvidence,
 };
 pub use methods::{AliasFacts, Factor, FormFacts, MethodFacts, SourceFacts, Written};
+pub use part::{Part, Whole};
 pub use plots::{ExactCurve, PlotPoint};
 pub use steps::{
     ChannelError, ChannelLimit, JumpGrid, LargestStep, MethodSteps, OnJumps, Rule, StepRun,
@@ -41,6 +43,8 @@ pub struct Outcome {
     pub left: usize,
     /// What changed since an earlier audit, where there was one to compare with.
     pub changes: Option<Changes>,
+    /// Which part of a divided audit this is; `None` for a whole one.
+    pub part: Option<Part>,
 }
 
 /// A submission that could not be audited.
@@ -265,10 +269,12 @@ impl Outcome {
         changes.is_some_and(|changes| !changes.worse.is_empty())
     }
 
-    /// True where everything was audited and is as expected, and there was anything.
+    /// True where everything was audited and is as expected, and there was anything: only a
+    /// part may have nothing to do, where there are more parts than submissions.
     pub fn in_order(&self) -> bool {
         let all = self.submissions.iter().all(Audited::in_order);
-        all && self.left == 0 && self.not_audited.is_empty() && !self.submissions.is_empty()
+        let any = !self.submissions.is_empty() || self.part.is_some();
+        all && any && self.left == 0 && self.not_audited.is_empty()
     }
 }
 

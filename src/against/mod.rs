@@ -1,21 +1,17 @@
 //! An audit beside an earlier report: what became worse, and what became better.
 //!
 //! Both sides are the types of the JSON report, so that nothing is compared that a report
-//! does not keep. Submissions are matched by name, runs by file, channels by name. `read`
-//! reads the earlier one, `numbers` compares errors and orders, `methods` what the rows
+//! does not keep. Submissions are matched by name, runs by file, channels by name. `numbers` compares errors and orders, `methods` what the rows
 //! say of methods and claims. Doubt never speaks for a change to the better: what cannot
 //! be compared any more counts as worse.
 
 mod methods;
 mod numbers;
-mod read;
 
 use std::collections::{BTreeMap, VecDeque};
 
 use crate::outcome::{Change, ChangeKind, Changes};
 use crate::report::{AuditReport, RunReport, SubmissionReport};
-
-pub use read::read;
 
 /// The share by which a worst error must have grown to be worse, unless stated.
 pub const WORSE_BY: f64 = 0.2;

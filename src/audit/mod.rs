@@ -25,7 +25,7 @@ use crate::case::{Case, Library};
 use crate::exact::{Exact, approx_time_scales};
 use crate::fault::Fault;
 use crate::method::Linear;
-use crate::outcome::{Audited, LimitsFrom, NotAudited, Outcome};
+use crate::outcome::{Audited, LimitsFrom, NotAudited, Outcome, Part};
 use crate::submission::{LimitStated, Submission};
 use crate::trajectory::Crew;
 use run::compare;
@@ -47,6 +47,18 @@ pub struct Plan {
     pub threads: usize,
     /// True where the outcome is to hold points for plots.
     pub traced: bool,
+    /// Which part of a divided audit this is.
+    pub part: Option<Part>,
+}
+
+impl Plan {
+    /// Submissions that can be read, those of other parts included: what is looked at closely
+    /// must not depend on the division.
+    fn readable(&self) -> usize {
+        let here = self.submissions.len();
+        let all = self.part.as_ref().map(Part::readable);
+        all.map_or(here, |all| usize::try_from(all).unwrap_or(usize::MAX))
+    }
 }
 
 /// One submission of a plan.
@@ -146,7 +158,7 @@ fn audit_one(
     crew: &Crew,
 ) -> Result<Audited, Vec<Fault>> {
     let (submission, library) = (&planned.submission, &plan.library);
-    let few = plan.submissions.len() <= FEW;
+    let few = plan.readable() <= FEW;
     let place = |fault: Fault| match &planned.file {
         Some(file) => fault.in_file(file),
         None => fault,

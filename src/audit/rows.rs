@@ -75,6 +75,7 @@ pub fn audit_rows(case: &str, claims: Claims, runs: &[Rows]) -> Result<Audited, 
         unreadable: Vec::new(),
         threads: 1,
         traced: false,
+        part: None,
     };
     let mut outcome = audit(&plan);
     match outcome.submissions.pop() {

@@ -61,9 +61,21 @@ fn gathered(plan: &Plan, done: Done) -> Outcome {
     let mut outcome = Outcome {
         not_audited: plan.unreadable.clone(),
         left: plan.submissions.len() - done.len(),
+        part: plan.part.clone(),
         ..Outcome::default()
     };
+    let planned = plan.part.as_ref().map_or(&[][..], |part| &part.places);
+    if let Some(part) = &mut outcome.part {
+        part.places.clear();
+    }
     for (index, result) in done {
+        let failed = result.is_err();
+        if let (Some(part), Some(&place)) = (&mut outcome.part, planned.get(index)) {
+            match failed {
+                true => part.places_not_audited.push(place),
+                false => part.places.push(place),
+            }
+        }
         match result {
             Ok(audited) => outcome.submissions.push(audited),
             Err(faults) => {

@@ -3,6 +3,7 @@
 use std::path::PathBuf;
 
 use super::drive::DriveArguments;
+use super::parts::{MergeArguments, share_of};
 use clap::{Args, Parser, Subcommand, ValueEnum};
 
 use super::draft::DraftArguments;
@@ -35,6 +36,8 @@ pub enum Command {
     Audit(AuditArguments),
     /// Runs a simulator over cases and steps as a plan says, and audits what it wrote
     Drive(DriveArguments),
+    /// Joins the .json reports of an audit that was divided by --part
+    Merge(MergeArguments),
     /// Looks at files and writes a first submission.toml for them
     Draft(DraftArguments),
     /// Lists the cases
@@ -109,6 +112,10 @@ pub struct AuditArguments {
     /// [default: 0.2]
     #[arg(long, value_name = "SHARE", requires = "against", allow_negative_numbers = true, value_parser = share)]
     pub worse_by: Option<f64>,
+    /// Audits one share of the submissions found, as in 2/8; `stepgauge merge` joins the
+    /// .json reports of all shares
+    #[arg(long, value_name = "I/N", value_parser = share_of)]
+    pub part: Option<(u32, u32)>,
     /// Threads to work with [default: all processors]
     #[arg(long, value_name = "N", value_parser = clap::value_parser!(u16).range(1..=256))]
     pub threads: Option<u16>,

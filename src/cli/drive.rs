@@ -223,6 +223,7 @@ fn judge(
         unreadable: Vec::new(),
         threads: processors(),
         traced: drawn,
+        part: None,
     };
     let mut reasons: Vec<Vec<String>> = Vec::new();
     for (chosen, failures) in plan.cases.iter().zip(failures) {

@@ -3,10 +3,11 @@
 use std::io::Read;
 use std::path::Path;
 
-use crate::against::{WORSE_BY, compare, read};
+use super::parts::whole;
+use crate::against::{WORSE_BY, compare};
 use crate::fault::{Fault, Result};
-use crate::outcome::{Changes, Outcome};
-use crate::report::{AuditReport, audit_report};
+use crate::outcome::Changes;
+use crate::report::{AuditReport, read_report};
 
 /// Largest report that is read: that of some ten thousand submissions.
 const MOST_BYTES: u64 = 1 << 28;
@@ -29,20 +30,25 @@ impl Earlier {
         };
         let text = text(path).map_err(|fault| fault.in_file(path))?;
         Ok(Some(Earlier {
-            report: read(&text).map_err(|fault| fault.in_file(path))?,
+            report: read_report(&text)
+                .and_then(whole)
+                .map_err(|fault| fault.in_file(path))?,
             name: path.to_string_lossy().into_owned(),
             worse_by: worse_by.unwrap_or(WORSE_BY),
         }))
     }
 
     /// What changed since.
-    pub(super) fn changes(&self, outcome: &Outcome) -> Changes {
-        let now = audit_report(outcome);
-        compare(&self.report, &now, &self.name, self.worse_by)
+    pub(super) fn changes(&self, now: &AuditReport) -> Changes {
+        compare(&self.report, now, &self.name, self.worse_by)
     }
 }
 
-fn text(path: &Path) -> Result<String> {
+/// The text of a report.
+///
+/// # Errors
+/// As for [`Earlier::read`].
+pub(super) fn text(path: &Path) -> Result<String> {
     let io = |error: std::io::Error| {
         let fault = Fault::io(path, &error);
         match error.kind() {
@@ -59,7 +65,7 @@ fn text(path: &Path) -> Result<String> {
         .map_err(io)?;
     if bytes.len() as u64 > MOST_BYTES {
         let fault = Fault::new(format!("has more than {MOST_BYTES} bytes"));
-        return Err(fault.help("compare parts of the audit with reports of their own"));
+        return Err(fault.help("audit fewer submissions at once, with a report for each"));
     }
     String::from_utf8(bytes).map_err(|error| {
         let valid = error.utf8_error().valid_up_to();

@@ -7,6 +7,7 @@ mod earlier;
 mod facts;
 mod manual;
 mod methods;
+mod parts;
 mod plan;
 mod reports;
 mod run;

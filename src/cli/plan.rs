@@ -47,6 +47,7 @@ pub(super) fn plan(arguments: &AuditArguments) -> Result<Plan, Vec<Fault>> {
         unreadable: Vec::new(),
         threads,
         traced: reports::any_plots(&arguments.write),
+        part: None,
     };
     match &arguments.case {
         Some(case) => single_files(case, arguments, &mut plan)?,

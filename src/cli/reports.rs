@@ -101,6 +101,21 @@ pub(super) fn check(reports: &[PathBuf], inputs: &Inputs) -> Result<Vec<Asked>, 
     }
 }
 
+/// The same for the report of `merge`, which is made from JSON reports and holds no more.
+///
+/// # Errors
+/// What is wrong with it.
+pub(super) fn check_merged(path: &Path, inputs: &Inputs) -> Result<(), Fault> {
+    let written = kind(path).and_then(|kind| match kind {
+        Kind::Json => inputs.spare(path, &place(path)?, kind),
+        _ => {
+            let fault = Fault::new("merge writes .json reports only");
+            Err(fault.help("let each part write reports of other kinds for itself"))
+        }
+    });
+    written.map_err(|fault| fault.in_file(path))
+}
+
 /// True where one of the reports shows plots.
 pub(super) fn any_plots(reports: &[PathBuf]) -> bool {
     let drawn = |path: &PathBuf| kind(path).is_ok_and(|kind| kind == Kind::Html);
@@ -155,6 +170,14 @@ impl Inputs {
             files: paths.filter_map(|path| path.canonicalize().ok()).collect(),
             earlier: None,
             unread: Vec::new(),
+        }
+    }
+
+    /// Reports of parts that are merged, and the one that they are compared with.
+    pub(super) fn merged(parts: &[PathBuf], earlier: Option<&Path>) -> Inputs {
+        Inputs {
+            earlier: earlier.and_then(|path| path.canonicalize().ok()),
+            ..Inputs::files(parts.iter().cloned())
         }
     }
 

@@ -13,6 +13,7 @@ use super::earlier::Earlier;
 use super::facts::facts;
 use super::manual::{CompletionArguments, ManualArguments, completions, manual};
 use super::methods::methods_text;
+use super::parts::{self, MergeArguments};
 use super::reports::{Asked, Inputs};
 use super::{plan, reports, steps, watched};
 use crate::case::{Case, Library, Replacements};
@@ -21,8 +22,8 @@ use crate::fault::{Fault, escaped, quoted};
 use crate::number::{Decimal, Double};
 use crate::outcome::Outcome;
 use crate::report::{
-    Screen, ValueWriter, WIDEST, audit_text, case_json, case_list, case_text, draft_text,
-    steps_csv, steps_text,
+    Screen, ValueWriter, WIDEST, audit_report, audit_text, case_json, case_list, case_text,
+    draft_text, merged_text, steps_csv, steps_text,
 };
 use crate::trajectory::{Findings, Selection, Stated, Survey, is_time_name, open};
 
@@ -72,6 +73,7 @@ pub fn run(arguments: &Arguments) -> ExitCode {
         Command::Completions(arguments) => run_completions(arguments),
         Command::Manual(arguments) => run_manual(arguments),
         Command::Drive(arguments) => run_drive(arguments),
+        Command::Merge(arguments) => run_merge(arguments),
     };
     let status = match result {
         Ok(status) => status,
@@ -97,18 +99,21 @@ pub fn run(arguments: &Arguments) -> ExitCode {
 }
 
 fn run_audit(arguments: &AuditArguments) -> Result<u8, Stop> {
-    let plan = plan::plan(arguments)?;
+    let mut plan = plan::plan(arguments)?;
+    // Files of other parts are inputs too.
     let asked = reports::check(&arguments.write, &Inputs::of(arguments, &plan))?;
+    parts::take(arguments, &mut plan)?;
     let earlier = Earlier::read(arguments.against.as_deref(), arguments.worse_by)?;
     let mut outcome = watched::audit(plan, arguments.quiet);
-    outcome.changes = earlier.map(|earlier| earlier.changes(&outcome));
+    outcome.changes = earlier.map(|earlier| earlier.changes(&audit_report(&outcome)));
     conclude(&outcome, &asked, arguments.quiet)
 }
 
 fn run_drive(arguments: &DriveArguments) -> Result<u8, Stop> {
     let earlier = Earlier::read(arguments.against.as_deref(), arguments.worse_by)?;
     let mut driven = drive(arguments)?;
-    driven.outcome.changes = earlier.map(|earlier| earlier.changes(&driven.outcome));
+    let now = audit_report(&driven.outcome);
+    driven.outcome.changes = earlier.map(|earlier| earlier.changes(&now));
     let status = conclude(&driven.outcome, &driven.reports, false);
     if let Some(folder) = driven.kept {
         let folder = escaped(&folder.display().to_string());
@@ -132,11 +137,33 @@ fn conclude(outcome: &Outcome, asked: &[Asked], quiet: bool) -> Result<u8, Stop>
     if quiet {
         return Ok(status);
     }
-    match print(&audit_text(outcome, screen())) {
-        // The verdict stands whether or not anybody reads the table to its end.
+    shown(&audit_text(outcome, screen()), status)
+}
+
+/// The verdict stands whether or not anybody reads the table to its end.
+fn shown(text: &str, status: u8) -> Result<u8, Stop> {
+    match print(text) {
         Err(error) if error.kind() == io::ErrorKind::BrokenPipe => Ok(status),
         other => Ok(other.map(|()| status)?),
     }
+}
+
+/// Joined parts: screen and exit status of the audit that was divided.
+fn run_merge(arguments: &MergeArguments) -> Result<u8, Stop> {
+    let merged = parts::merge(arguments)?;
+    let (report, changes) = (&merged.report, merged.changes.as_ref());
+    let worse = changes.is_some_and(|changes| !changes.worse.is_empty());
+    let status = if !report.not_audited.is_empty() {
+        NOT_DONE
+    } else if report.summary.in_order && !worse {
+        IN_ORDER
+    } else {
+        NOT_IN_ORDER
+    };
+    if arguments.quiet {
+        return Ok(status);
+    }
+    shown(&merged_text(report, changes, screen())?, status)
 }
 
 fn run_cases(arguments: &CasesArguments) -> Result<u8, Stop> {

@@ -4,20 +4,25 @@ use super::SCOPE;
 use super::wire::{
     AdviceReport, AuditReport, CauseReport, ChangeReport, ChangesReport, ChannelReport,
     ClaimReport, ConsistentReport, DampingReport, EvidenceReport, FindingReport, GrowthReport,
-    GrowthSummaryReport, NotAuditedReport, OrderReport, PairReport, RunEvidenceReport, RunReport,
-    SCHEMA, SettingRungReport, SettingsReport, SubmissionReport, Summary,
+    GrowthSummaryReport, NotAuditedReport, OrderReport, PairReport, PartReport, RunEvidenceReport,
+    RunReport, SCHEMA, SettingRungReport, SettingsReport, SubmissionReport, Summary, WholeReport,
 };
 use crate::judge::Verdict;
 use crate::outcome::{
     AdviceOutcome, Audited, CauseOutcome, Change, Changes, ChannelOutcome, ClaimOutcome,
-    Consistent, Damping, EvidenceOutcome, GrowthOutcome, GrowthSummary, LimitsFrom, Outcome, Rule,
-    RunEvidence, RunOutcome, SettingRung, SettingsOutcome,
+    Consistent, Damping, EvidenceOutcome, GrowthOutcome, GrowthSummary, LimitsFrom, Outcome, Part,
+    Rule, RunEvidence, RunOutcome, SettingRung, SettingsOutcome,
 };
 use crate::submission::Setting;
 
 /// The report as text, ending with a line end.
 pub fn audit_json(outcome: &Outcome) -> String {
     text(&audit_report(outcome))
+}
+
+/// A report that was read or joined, as text.
+pub fn report_json(report: &AuditReport) -> String {
+    text(report)
 }
 
 /// The report as data, as it is read back.
@@ -42,11 +47,34 @@ pub fn audit_report(outcome: &Outcome) -> AuditReport {
             .collect(),
         left: outcome.left,
         scope: SCOPE.to_owned(),
-        changes: outcome.changes.as_ref().map(changes),
+        changes: outcome.changes.as_ref().map(changes_report),
+        part: outcome.part.as_ref().map(part),
     }
 }
 
-fn changes(changes: &Changes) -> ChangesReport {
+fn part(part: &Part) -> PartReport {
+    let whole = &part.whole;
+    PartReport {
+        number: part.number,
+        of: part.of,
+        whole: WholeReport {
+            paths: whole.paths.clone(),
+            options: whole.options.clone(),
+            submissions: whole.submissions,
+            unreadable: whole.unreadable,
+            bytes: whole.bytes,
+            names: whole.names.clone(),
+            sizes: whole.sizes.clone(),
+            texts: whole.texts.clone(),
+            cases: whole.cases.clone(),
+        },
+        places: part.places.clone(),
+        places_not_audited: part.places_not_audited.clone(),
+    }
+}
+
+/// What changed since an earlier audit, as a report holds it.
+pub fn changes_report(changes: &Changes) -> ChangesReport {
     let one = |change: &Change| ChangeReport {
         kind: change.kind.word().to_owned(),
         submission: change.submission.clone(),

@@ -23,7 +23,10 @@ use crate::submission::{Expect, Role};
 /// # Errors
 /// None that text in memory can have; the writer may say otherwise.
 pub fn audit_junit(outcome: &Outcome) -> Result<Vec<u8>> {
-    let mut report = Report::new("stepgauge");
+    let mut report = Report::new(match &outcome.part {
+        Some(part) => format!("stepgauge, {}", part.name()),
+        None => "stepgauge".to_owned(),
+    });
     for submission in &outcome.submissions {
         report.add_test_suite(suite(submission));
     }

@@ -24,6 +24,13 @@ pub fn audit_text(outcome: &Outcome, screen: Screen) -> String {
     if !outcome.submissions.is_empty() {
         text += &table(outcome, screen);
     }
+    text += &below(outcome, screen);
+    coloured(&screen.plain(&text))
+}
+
+/// All that stands below the table.
+pub(super) fn below(outcome: &Outcome, screen: Screen) -> String {
+    let mut text = String::new();
     let troubles = troubles(outcome, screen);
     if !troubles.is_empty() {
         text += &format!("\nNot in order:\n{troubles}");
@@ -46,7 +53,7 @@ pub fn audit_text(outcome: &Outcome, screen: Screen) -> String {
     text += &format!("\n{}\n", summary(outcome));
     text += &toned(Tone::Quiet, &screen.wrap(&scope(outcome), 0));
     text.push('\n');
-    coloured(&screen.plain(&text))
+    text
 }
 
 fn table(outcome: &Outcome, screen: Screen) -> String {
@@ -101,7 +108,7 @@ enum Text {
 }
 
 /// Long names go over several lines, broken where a name may be.
-fn folded(text: &str, longest: usize) -> String {
+pub(super) fn folded(text: &str, longest: usize) -> String {
     let mut out = String::new();
     let mut line = String::new();
     for part in text.split_inclusive(['/', '-', '_', ' ']) {
@@ -215,7 +222,7 @@ fn plain_short(value: f64) -> String {
     if full.len() <= 8 { full } else { short(value) }
 }
 
-fn verdict_text(submission: &Audited, narrow: bool) -> String {
+pub(super) fn verdict_text(submission: &Audited, narrow: bool) -> String {
     let word = submission.verdict.word();
     let loud = word.to_uppercase();
     let (tone, word, remark) = match (submission.in_order(), submission.expect) {
@@ -435,8 +442,17 @@ pub(super) fn counts(outcome: &Outcome) -> String {
         parts.push(format!("{} left when interrupted", outcome.left));
     }
     let count = outcome.submissions.len() + outcome.not_audited.len() + outcome.left;
-    let count = counted(count as u64, "submission");
-    format!("{count}: {}.", parts.join(", "))
+    let mut text = match &outcome.part {
+        Some(part) => {
+            let all = counted(part.whole.submissions, "submission");
+            format!("Part {} of {}, {count} of {all}", part.number, part.of)
+        }
+        None => counted(count as u64, "submission"),
+    };
+    if !parts.is_empty() {
+        text += &format!(": {}", parts.join(", "));
+    }
+    text + "."
 }
 
 fn summary(outcome: &Outcome) -> String {

@@ -1,12 +1,25 @@
 //! The versioned shape of the JSON reports, apart from the inner types: names here
 //! stay when those inside change, and [`SCHEMA`] rises when one of these does.
 
-use serde::{Deserialize, Serialize};
+use serde::{Deserialize, Deserializer, Serialize};
 
 /// Version of the names in the JSON reports.
 pub const SCHEMA: u32 = 1;
 
-/// A whole audit.
+/// A number that stands as null where it is not finite, as JSON has it: a report that was
+/// written must be readable.
+fn number<'a, D: Deserializer<'a>>(reader: D) -> Result<f64, D::Error> {
+    let value = Option::<f64>::deserialize(reader)?;
+    Ok(value.unwrap_or(f64::NAN))
+}
+
+/// The same for real and imaginary part.
+fn pair<'a, D: Deserializer<'a>>(reader: D) -> Result<[f64; 2], D::Error> {
+    let parts = <[Option<f64>; 2]>::deserialize(reader)?;
+    Ok(parts.map(|part| part.unwrap_or(f64::NAN)))
+}
+
+/// A whole audit, or a part of one.
 #[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
 #[serde(deny_unknown_fields)]
 #[allow(missing_docs)]
@@ -25,6 +38,42 @@ pub struct AuditReport {
     /// such reports are those of before.
     #[serde(default, skip_serializing_if = "Option::is_none")]
     pub changes: Option<ChangesReport>,
+    /// Which part of a divided audit this is; absent in the report of a whole one.
+    #[serde(default, skip_serializing_if = "Option::is_none")]
+    pub part: Option<PartReport>,
+}
+
+/// One part of an audit that was divided. Places number the submissions of the whole audit
+/// from zero, those that could not be read first.
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
+#[allow(missing_docs)]
+pub struct PartReport {
+    /// Counted from one.
+    pub number: u32,
+    pub of: u32,
+    pub whole: WholeReport,
+    /// Of `submissions`, in their order.
+    pub places: Vec<u64>,
+    /// Of `not_audited`, in their order.
+    pub places_not_audited: Vec<u64>,
+}
+
+/// What was divided: equal in all parts of one audit.
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
+#[allow(missing_docs)]
+pub struct WholeReport {
+    pub paths: Vec<String>,
+    pub options: Vec<String>,
+    pub submissions: u64,
+    pub unreadable: u64,
+    pub bytes: u64,
+    /// Digests, in hexadecimal digits.
+    pub names: String,
+    pub sizes: String,
+    pub texts: String,
+    pub cases: String,
 }
 
 /// An audit beside an earlier one.
@@ -197,10 +246,14 @@ pub struct GrowthSummaryReport {
 #[serde(deny_unknown_fields)]
 #[allow(missing_docs)]
 pub struct DampingReport {
+    #[serde(deserialize_with = "pair")]
     pub z: [f64; 2],
     /// Magnitude of the factor from row to row.
+    #[serde(deserialize_with = "number")]
     pub factor: f64,
+    #[serde(deserialize_with = "number")]
     pub doubt: f64,
+    #[serde(deserialize_with = "number")]
     pub exact: f64,
 }
 
@@ -255,10 +308,15 @@ pub struct ConsistentReport {
 #[serde(deny_unknown_fields)]
 #[allow(missing_docs)]
 pub struct GrowthReport {
+    #[serde(deserialize_with = "pair")]
     pub eigenvalue: [f64; 2],
+    #[serde(deserialize_with = "pair")]
     pub z: [f64; 2],
+    #[serde(deserialize_with = "pair")]
     pub factor: [f64; 2],
+    #[serde(deserialize_with = "number")]
     pub doubt: f64,
+    #[serde(deserialize_with = "pair")]
     pub exact: [f64; 2],
     /// Null where no step is stated.
     pub steps_per_row: Option<u64>,
@@ -372,4 +430,32 @@ pub struct OutputReport {
     pub C: Vec<f64>,
     pub D: Vec<f64>,
     pub constant: f64,
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    /// What is not finite is null, and null again once it was read.
+    #[test]
+    fn a_factor_without_a_number_is_read_back() {
+        let growth = GrowthReport {
+            eigenvalue: [800.0, 0.0],
+            z: [800.0, -0.0],
+            factor: [f64::INFINITY, 0.1 + 0.2],
+            doubt: f64::NAN,
+            exact: [f64::INFINITY, f64::NAN],
+            steps_per_row: None,
+            per_step: None,
+            per_step_doubt: None,
+        };
+        let text = serde_json::to_string(&growth).unwrap();
+        assert!(text.contains("null,0.30000000000000004"), "{text}");
+        let read: GrowthReport = serde_json::from_str(&text).unwrap();
+        assert_eq!(serde_json::to_string(&read).unwrap(), text);
+        // A missing number is a fault all the same.
+        assert!(
+            serde_json::from_str::<GrowthReport>(&text.replace("\"doubt\":null,", "")).is_err()
+        );
+    }
 }

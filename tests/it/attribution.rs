@@ -98,6 +98,7 @@ fn run(files: &[(Value, Option<&str>)]) -> Vec<Audited> {
         unreadable: Vec::new(),
         threads: 2,
         traced: false,
+        part: None,
     });
     assert!(outcome.not_audited.is_empty(), "{:?}", outcome.not_audited);
     outcome.submissions

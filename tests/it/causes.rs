@@ -125,6 +125,7 @@ pub fn judge(
         unreadable: Vec::new(),
         threads: 1,
         traced: false,
+        part: None,
     };
     let outcome = audit(&plan);
     assert!(outcome.not_audited.is_empty(), "{:?}", outcome.not_audited);

@@ -2,11 +2,12 @@ use std::process::{Command, Stdio};
 
 use crate::folder::{CASE, Folder, STEP, cell, program, sound};
 
-const COMMANDS: [&str; 9] = [
+const COMMANDS: [&str; 10] = [
     "audit",
     "cases",
     "case",
     "exact",
+    "merge",
     "methods",
     "steps",
     "completions",

@@ -79,6 +79,7 @@ fn cases_and_help() {
         "draft",
         "drive",
         "exact",
+        "merge",
         "methods",
         "steps",
         "completions",
@@ -194,6 +195,34 @@ fn the_other_reports_of_the_demo() {
     compare("against-100.txt", &screen(&arguments, "C.UTF-8", "100"));
     compare("against.md", &std::fs::read_to_string(report).unwrap());
     std::fs::remove_file(root().join(earlier)).unwrap();
+}
+
+#[test]
+fn merged_parts_of_the_demo() {
+    let folder = tempfile::tempdir().unwrap();
+    let path = |name: &str| folder.path().join(name).to_str().unwrap().to_owned();
+    let mut merge = vec!["merge".to_owned()];
+    for part in ["1/3", "2/3", "3/3"] {
+        let report = path(&format!("{}.json", &part[..1]));
+        let arguments = ["audit", "demo-runs", "--part", part, "--write", &report];
+        let found = screen(&arguments, "C.UTF-8", "100");
+        if part == "2/3" {
+            compare("part-100.txt", &found);
+        }
+        merge.push(report);
+    }
+    let merge: Vec<&str> = merge.iter().map(String::as_str).collect();
+    for (name, locale, columns) in [
+        ("merge-80-ascii.txt", "C", "80"),
+        ("merge-100.txt", "C.UTF-8", "100"),
+    ] {
+        let found = screen(&merge, locale, columns);
+        compare(name, &found);
+        assert!(
+            found.lines().all(|line| line.chars().count() <= 100),
+            "{name}"
+        );
+    }
 }
 
 #[test]

@@ -59,6 +59,7 @@ fn run(submissions: Vec<Submission>) -> Outcome {
         unreadable: Vec::new(),
         threads: 2,
         traced: false,
+        part: None,
     });
     assert!(outcome.not_audited.is_empty(), "{:?}", outcome.not_audited);
     outcome

@@ -82,6 +82,9 @@ mod comfort;
 /// What became worse since an earlier report.
 mod against;
 
+/// One audit in parts, joined again: the bytes of the undivided one, and every refusal.
+mod merge;
+
 /// Reports of every kind: where they may lie, what they hold, hostile names.
 mod reports;
 

@@ -154,6 +154,7 @@ fn planted(case: &Case, order: f64, size: f64, digits: usize) -> Outcome {
         unreadable: Vec::new(),
         threads: 1,
         traced: false,
+        part: None,
     });
     std::fs::remove_dir_all(&folder).unwrap();
     outcome

@@ -84,6 +84,8 @@ fn allowed() -> BTreeMap<&'static str, Vec<&'static str>> {
             ]),
         ),
         ("against", with(&["outcome", "report"])),
+        // It takes a plan apart and reports together: both sides of an audit.
+        ("parts", with(&["audit", "outcome", "report", "submission"])),
         (
             "draft",
             with(&[
@@ -108,6 +110,7 @@ fn allowed() -> BTreeMap<&'static str, Vec<&'static str>> {
                 "judge",
                 "method",
                 "outcome",
+                "parts",
                 "references",
                 "report",
                 "submission",

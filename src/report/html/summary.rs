@@ -16,6 +16,13 @@ const MOST_FILES: usize = 6;
 
 /// The whole in a sentence.
 pub(super) fn headline(outcome: &Outcome) -> String {
+    match &outcome.part {
+        Some(part) => format!("{}: {}", part.name(), found(outcome)),
+        None => found(outcome),
+    }
+}
+
+fn found(outcome: &Outcome) -> String {
     let all = outcome.submissions.len() + outcome.not_audited.len();
     let wrong = troubled(outcome).count() + outcome.not_audited.len();
     if outcome.left > 0 {

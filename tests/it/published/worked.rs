@@ -82,6 +82,7 @@ fn audited(name: &str, library: Library, case: &str, claims: &str, runs: &[Writt
         unreadable: Vec::new(),
         threads: 1,
         traced: false,
+        part: None,
     };
     let mut outcome = audit(&plan);
     assert!(

@@ -1,9 +1,9 @@
-//! The earlier report: text to the types of the report, or a complaint with its line.
+//! A JSON report back from its text: to the types of the report, or a complaint with its line.
 
 use serde::Deserialize;
 
+use super::wire::{AuditReport, SCHEMA};
 use crate::fault::{Fault, Result, quoted};
-use crate::report::{AuditReport, SCHEMA};
 
 /// The part of a report that stays whatever else changes.
 #[derive(Deserialize)]
@@ -19,7 +19,7 @@ const CURE: &str = "give a .json report that `audit --write` of this version wro
 /// # Errors
 /// Text that is no JSON, JSON that is no report, fields that are not known, another
 /// schema.
-pub fn read(text: &str) -> Result<AuditReport> {
+pub fn read_report(text: &str) -> Result<AuditReport> {
     let head: Head = serde_json::from_str(text).map_err(|error| match error.is_data() {
         true => Fault::new("this is no report of an audit")
             .help(CURE)
@@ -31,7 +31,7 @@ pub fn read(text: &str) -> Result<AuditReport> {
         Some(schema) => {
             let shown = quoted(&schema.to_string());
             let text_of = format!("the report has schema {shown}, this version reads {SCHEMA}");
-            let fault = Fault::new(text_of).help("write the earlier report anew with this version");
+            let fault = Fault::new(text_of).help("write the report anew with this version");
             return Err(fault.at_offset(text, text.find("\"schema\"").unwrap_or(0)));
         }
         None => {
@@ -56,7 +56,9 @@ fn placed(error: serde_json::Error) -> Fault {
         None => &text,
     };
     let what = match error.classify() {
-        serde_json::error::Category::Data => "this is no report that can be compared with",
+        serde_json::error::Category::Data => {
+            "this is no report of an audit as this version writes it"
+        }
         _ => "this is not JSON",
     };
     let shown = crate::fault::escaped(text);
@@ -89,12 +91,12 @@ mod tests {
                 "unknown field `more`",
             ),
         ] {
-            let fault = read(text).unwrap_err();
+            let fault = read_report(text).unwrap_err();
             assert_eq!(fault.line, Some(line), "{text}: {fault}");
             assert!(fault.text.contains(said), "{text}: {fault}");
             assert!(fault.help.is_some(), "{text}");
         }
         // Deep nesting is refused, not followed.
-        assert!(read(&"[".repeat(100_000)).is_err());
+        assert!(read_report(&"[".repeat(100_000)).is_err());
     }
 }
