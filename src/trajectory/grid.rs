@@ -189,10 +189,13 @@ impl GridFinder {
             .map(|cluster| cluster.count)
             .sum();
         let others = doubles + self.repeats;
-        if one_unit && 20 * others > self.steps {
-            let spacing = self.sum / (self.steps + self.repeats) as f64;
+        let mean = self.sum / (self.steps + self.repeats) as f64;
+        // So many rows share a stamp that the step is less than a unit of the last digits: whatever
+        // steps the stamps show are those of their rounding.
+        let shared = printed != Resolution::Full && mean <= unit && 20 * self.repeats > self.steps;
+        if one_unit && 20 * others > self.steps || shared {
             return Grid::Uniform {
-                spacing,
+                spacing: mean,
                 exact: None,
                 phases: [0.0; 2],
             };

@@ -115,10 +115,18 @@ fn stamps_too_coarse_for_the_step_repeat_by_themselves() {
         |time: f64| format!("{time:.1}"),
         // Six digits, as C prints them: one decimal from ten thousand on.
         |time: f64| format!("{:.1}", 10_000.0 + time),
+        |time: f64| format!("{:.*}", if time < 10.0 { 2 } else { 1 }, time),
     ] {
         let line = |k: i32| format!("{},{}\n", print(0.0864 * f64::from(k)), k.min(40));
         let text = "t,x\n".to_owned() + &(0..400).map(line).collect::<String>();
         let found = findings(&text);
         assert!(found.iter().all(|(_, _, fatal)| !fatal), "{found:?}");
+        // No stamp is taken for exact.
+        let (rows, _) = read(&text, &Stated::default());
+        assert!(
+            rows.iter().skip(1).all(|row| row.2 > 0.0),
+            "{:?}",
+            &rows[..40]
+        );
     }
 }
