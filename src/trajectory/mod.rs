@@ -7,12 +7,14 @@
 //! grow with their number. A reader knows no case; `open` is the only place with
 //! I/O, everything else takes bytes.
 
+pub mod columns;
 mod finding;
 mod grid;
 mod layout;
 mod lines;
 mod number;
 mod open;
+pub mod packed;
 mod resolution;
 mod rows;
 mod survey;

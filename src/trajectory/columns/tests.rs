@@ -1,0 +1,1 @@
+//! Readers against hostile headers.
