@@ -63,9 +63,10 @@ impl<R: BufRead> Frames<R> {
                     self.given = 0;
                     return Ok(true);
                 }
-                Err(FrameDecoderError::ReadFrameHeaderError(
-                    ReadFrameHeaderError::SkipFrame { length, .. },
-                )) => {
+                Err(FrameDecoderError::ReadFrameHeaderError(ReadFrameHeaderError::SkipFrame {
+                    length,
+                    ..
+                })) => {
                     let length = u64::from(length);
                     let mut skipped = (&mut self.bytes).take(length);
                     if std::io::copy(&mut skipped, &mut std::io::sink())? != length {

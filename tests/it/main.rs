@@ -87,3 +87,6 @@ mod readme;
 
 /// `drive`: a simulator over cases and steps, commands that fail, plans with errors.
 mod drive;
+
+/// Binary tables and packed text of other programs beside their twin as text.
+mod formats;

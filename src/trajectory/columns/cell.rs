@@ -91,7 +91,11 @@ mod tests {
             (Kind::Float(2), vec![0xff, 0x7b], 65504.0),
             (Kind::Signed(1), vec![0xfe], -2.0),
             (Kind::Signed(4), (-7i32).to_le_bytes().to_vec(), -7.0),
-            (Kind::Signed(8), i64::MIN.to_le_bytes().to_vec(), -2f64.powi(63)),
+            (
+                Kind::Signed(8),
+                i64::MIN.to_le_bytes().to_vec(),
+                -2f64.powi(63),
+            ),
             (Kind::Unsigned(2), vec![0xff, 0xff], 65535.0),
             (Kind::Unsigned(8), vec![0xff; 8], 2f64.powi(64)),
         ] {

@@ -61,7 +61,10 @@ impl Walk {
             return Ok(());
         }
         self.seen.push(group.address());
-        let (groups, mut sets) = group.members().map_err(refused)?;
+        let (mut groups, mut sets) = group.members().map_err(refused)?;
+        // Some files list members by a hash of the name.
+        groups.sort_by(|a, b| a.name().cmp(b.name()));
+        sets.sort_by(|a, b| a.name().cmp(b.name()));
         let is_octave = group.attribute("OCTAVE_NEW_FORMAT").is_ok();
         if is_octave {
             // A variable of Octave is a group with the name of its type and its value.
@@ -157,7 +160,10 @@ impl Tree {
         if let [only] = entries.as_mut_slice() {
             let prefix = format!("{}.", only.name);
             for field in &mut only.fields {
-                let short = field.name.as_ref().and_then(|name| name.strip_prefix(&prefix));
+                let short = field
+                    .name
+                    .as_ref()
+                    .and_then(|name| name.strip_prefix(&prefix));
                 field.name = short.map(str::to_owned);
             }
         }
@@ -170,7 +176,11 @@ impl Tree {
 }
 
 /// A dataset as an array of the table, or why it is none.
-fn entry(name: &str, set: &Dataset, turned: bool) -> std::result::Result<(Entry, Vec<Field>), String> {
+fn entry(
+    name: &str,
+    set: &Dataset,
+    turned: bool,
+) -> std::result::Result<(Entry, Vec<Field>), String> {
     let mut shape = set.shape().to_vec();
     if turned {
         shape.reverse();
@@ -193,10 +203,11 @@ fn entry(name: &str, set: &Dataset, turned: bool) -> std::result::Result<(Entry,
     entry.fields = fields
         .iter()
         .map(|field| Head {
-        name: Some(format!("{name}.{}", field.name)),
-        single: field.cell.is_single(),
-        whole: field.cell.is_whole(),
-    }).collect();
+            name: Some(format!("{name}.{}", field.name)),
+            single: field.cell.is_single(),
+            whole: field.cell.is_whole(),
+        })
+        .collect();
     Ok((entry, fields))
 }
 

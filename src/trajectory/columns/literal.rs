@@ -153,7 +153,18 @@ mod tests {
         assert_eq!(pairs.len(), 3);
         let three_two = vec![Literal::Number(3), Literal::Number(2)];
         assert_eq!(pairs[2].1, Literal::Series(three_two));
-        for text in ["", "{", "{'a'}", "(1 2)", "'a", "1.5", "-1", "x", "{} {}", "99999999999999999999"] {
+        for text in [
+            "",
+            "{",
+            "{'a'}",
+            "(1 2)",
+            "'a",
+            "1.5",
+            "-1",
+            "x",
+            "{} {}",
+            "99999999999999999999",
+        ] {
             assert!(parse(text).is_err(), "{text}");
         }
         assert!(parse(&"(".repeat(100_000)).is_err());

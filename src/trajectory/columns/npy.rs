@@ -76,7 +76,9 @@ impl Array {
             return Err(Fault::new("the header of the array is no dictionary"));
         };
         let find = |name: &str| {
-            let mut found = pairs.iter().filter(|(key, _)| matches!(key, Literal::Text(text) if text == name));
+            let mut found = pairs
+                .iter()
+                .filter(|(key, _)| matches!(key, Literal::Text(text) if text == name));
             match (found.next(), found.next()) {
                 (Some((_, value)), None) => Some(value),
                 _ => None,
@@ -138,15 +140,15 @@ impl Array {
     /// columns are the rows of the array.
     pub fn lie(&self, rows: u64, columns: u64, lies: bool) -> Option<Lie> {
         match &self.elements {
-            Elements::Plain(cell) => Some(Lie::matrix(
-                rows,
-                columns,
-                *cell,
-                self.by_columns != lies,
-            )),
+            Elements::Plain(cell) => {
+                Some(Lie::matrix(rows, columns, *cell, self.by_columns != lies))
+            }
             Elements::Records { size, fields } => Some(Lie::Rows {
                 stride: *size as usize,
-                columns: fields.iter().map(|(_, offset, cell)| (*offset, *cell)).collect(),
+                columns: fields
+                    .iter()
+                    .map(|(_, offset, cell)| (*offset, *cell))
+                    .collect(),
             }),
             Elements::Foreign(_) => None,
         }
@@ -262,7 +264,9 @@ impl Npy {
         let length = data.length()?;
         let array = Array::parse(&mut data.piece(0, length)?)?;
         if let Elements::Foreign(what) = &array.elements {
-            return Err(Fault::new(format!("the array holds {what}, expected numbers")));
+            return Err(Fault::new(format!(
+                "the array holds {what}, expected numbers"
+            )));
         }
         let (rows, columns) = match (array.shape.as_slice(), &array.elements) {
             (&[rows], Elements::Plain(_)) => (rows, 1),

@@ -121,7 +121,12 @@ impl Table {
         Ok(table)
     }
 
-    fn group(&self, group: &dyn RowGroupReader, wanted: &[usize], each: &mut EachBlock) -> Result<()> {
+    fn group(
+        &self,
+        group: &dyn RowGroupReader,
+        wanted: &[usize],
+        each: &mut EachBlock,
+    ) -> Result<()> {
         let mut readers = Vec::new();
         for &column in wanted {
             let (index, unsigned) = self.places[column];
@@ -225,7 +230,9 @@ fn spread<T: DataType>(
     }
     let there = levels.iter().filter(|&&level| level > 0).count();
     if levels.len() != rows || there != values.len() {
-        return Err(Fault::new("the nulls of a column do not agree with its values"));
+        return Err(Fault::new(
+            "the nulls of a column do not agree with its values",
+        ));
     }
     let mut values = values.iter();
     to.extend(levels.iter().map(|&level| match level {

@@ -37,7 +37,10 @@ const BEGINNINGS: [(&[u8], Format); 18] = [
     (b"\x93NUMPY", Format::Npy),
     (HDF5, Format::Hdf5),
     (b"PAR1", Format::Parquet),
-    (b"PARE", Format::Other("Parquet data with an encrypted footer")),
+    (
+        b"PARE",
+        Format::Other("Parquet data with an encrypted footer"),
+    ),
     (b"\x1f\x8b", Format::Gzip),
     (b"\x28\xb5\x2f\xfd", Format::Zstd),
     (b"PK\x05\x06", Format::Zip),
@@ -70,7 +73,10 @@ pub fn recognise(first_bytes: &[u8]) -> Option<Format> {
     if matches!(first_bytes, [0x50..=0x5f, 0x2a, 0x4d, 0x18, ..]) {
         return Some(Format::Zstd);
     }
-    if matches!(first_bytes.get(124..128), Some(b"\x00\x01IM" | b"\x01\x00MI")) {
+    if matches!(
+        first_bytes.get(124..128),
+        Some(b"\x00\x01IM" | b"\x01\x00MI")
+    ) {
         return Some(Format::Mat5);
     }
     // HDF5 may stand behind a block of the user's at any power of two from 512.
@@ -171,7 +177,13 @@ mod tests {
 
     #[test]
     fn text_is_no_format_and_beginnings_are() {
-        for text in ["", "t,x\n0,1\n", "PK", "0 1 2 3 4 5 6 7 8 9\n", "\u{feff}t,x\n"] {
+        for text in [
+            "",
+            "t,x\n0,1\n",
+            "PK",
+            "0 1 2 3 4 5 6 7 8 9\n",
+            "\u{feff}t,x\n",
+        ] {
             assert_eq!(recognise(text.as_bytes()), None, "{text:?}");
         }
         assert_eq!(recognise(&"1,2\n".repeat(1000).into_bytes()), None);
@@ -184,7 +196,10 @@ mod tests {
         let version_4 = [0, 3, 1, 0, 2].map(u32::to_le_bytes).concat();
         let version_4 = [&version_4[..], b"x\0"].concat();
         assert_eq!(recognise(&version_4), Some(Format::Mat4));
-        assert_eq!(recognise(b"\xff\xfet\0"), Some(Format::Other("text in UTF-16")));
+        assert_eq!(
+            recognise(b"\xff\xfet\0"),
+            Some(Format::Other("text in UTF-16"))
+        );
     }
 
     #[test]

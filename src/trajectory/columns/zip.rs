@@ -69,7 +69,10 @@ fn broken(why: &str) -> Fault {
 
 fn number(bytes: &[u8], at: usize, size: usize) -> Option<u64> {
     let part = bytes.get(at..at.checked_add(size)?)?;
-    let number = part.iter().rev().fold(0u64, |n, &byte| n << 8 | u64::from(byte));
+    let number = part
+        .iter()
+        .rev()
+        .fold(0u64, |n, &byte| n << 8 | u64::from(byte));
     Some(number)
 }
 
@@ -180,7 +183,9 @@ fn located(data: &Data, mut member: Member, end: u64) -> Result<Member> {
     if !header.starts_with(b"PK\x03\x04") || field(8, 2) != method {
         return Err(broken("a member is not where the directory says"));
     }
-    member.start = member.start.saturating_add(30 + field(26, 2) + field(28, 2));
+    member.start = member
+        .start
+        .saturating_add(30 + field(26, 2) + field(28, 2));
     let fits = member.start.checked_add(member.packed);
     if fits.is_none_or(|stop| stop > end) || (!member.deflated && member.packed != member.length) {
         return Err(broken("the size of a member is wrong"));

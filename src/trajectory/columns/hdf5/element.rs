@@ -95,7 +95,7 @@ fn words(dtype: &Datatype) -> &'static str {
         Datatype::Compound { .. } => "records of too many fields",
         Datatype::Reference { .. } => "references",
         Datatype::Enum { .. } => "names of an enumeration",
-        Datatype::VarLen { .. } => "lists of varying length",
+        Datatype::VarLen { .. } => "text or lists of varying length",
         Datatype::Array { .. } => "arrays within its elements",
         _ => "no numbers",
     }

@@ -155,7 +155,9 @@ impl Scan {
             });
         }
         if upper > 4 {
-            return Err(Fault::new("a short part of an array is longer than four bytes"));
+            return Err(Fault::new(
+                "a short part of an array is longer than four bytes",
+            ));
         }
         Ok(Part {
             kind,
@@ -223,7 +225,8 @@ impl Scan {
             5 => "is a sparse matrix",
             _ => "is an object",
         };
-        self.left_out.push(format!("{} {what}", quoted(&front.name)));
+        self.left_out
+            .push(format!("{} {what}", quoted(&front.name)));
         self.pass(self.end - self.at)
     }
 
@@ -242,19 +245,24 @@ impl Scan {
             13 => Kind::Unsigned(8),
             other => {
                 let name = quoted(&front.name);
-                return Err(Fault::new(format!("{name} holds numbers of unknown type {other}")));
+                return Err(Fault::new(format!(
+                    "{name} holds numbers of unknown type {other}"
+                )));
             }
         };
         let cell = Cell {
             kind,
             big: self.big,
         };
-        let bytes = front.shape.iter().try_fold(cell.size() as u64, |bytes, &side| {
-            bytes.checked_mul(side)
-        });
+        let bytes = front
+            .shape
+            .iter()
+            .try_fold(cell.size() as u64, |bytes, &side| bytes.checked_mul(side));
         if bytes != Some(part.size) {
             let name = quoted(&front.name);
-            return Err(Fault::new(format!("{name} has another size than its sides say")));
+            return Err(Fault::new(format!(
+                "{name} has another size than its sides say"
+            )));
         }
         let start = self.at;
         self.pass(part.size)?;
