@@ -97,6 +97,9 @@ pub(super) fn compare(
             format!("`{channel}` is missing: {reason}"),
         );
     }
+    for left in source.left_out() {
+        notes.push(format!("{}: {left}", run.file));
+    }
     for note in &matched.notes {
         if !notes.contains(note) {
             notes.push(note.clone());

@@ -187,14 +187,9 @@ impl<'a> Columns<'a> {
         if !self.known.time {
             batch.time.add(stamp.value, stamp.printed);
         }
-        batch.rows.push(Line {
-            number: batch.lines as u32,
-            is_odd: false,
-            printed: stamp.printed,
-            time: stamp.value,
-            moment: stamp.double(),
-            exact: stamp.digits(),
-        });
+        batch
+            .rows
+            .push(Line::of_stamp(batch.lines as u32, false, &stamp));
         Some(next)
     }
 
@@ -263,14 +258,7 @@ impl<'a> Columns<'a> {
         let comma = self.layout.decimal_comma;
         let start = batch.values.len();
         batch.values.resize(start + self.channels, f64::NAN);
-        let mut row = Line {
-            number: batch.lines as u32,
-            is_odd: false,
-            printed: Printed::default(),
-            time: f64::NAN,
-            moment: Double::ZERO,
-            exact: Digits::None,
-        };
+        let mut row = Line::without_stamp(batch.lines as u32, false);
         let (mut columns, mut strange, mut last) = (0, None, None);
         self.layout.split(text, &mut |column, field| {
             columns += 1;
@@ -359,6 +347,30 @@ impl Exactly {
                 Some(Decimal::of_digits(negative, digits, exponent))
             }
             Exactly::Decimal(decimal) => decimal,
+        }
+    }
+}
+
+impl Line {
+    pub(super) fn of_stamp(number: u32, is_odd: bool, stamp: &Scanned) -> Line {
+        Line {
+            number,
+            is_odd,
+            printed: stamp.printed,
+            time: stamp.value,
+            moment: stamp.double(),
+            exact: stamp.digits(),
+        }
+    }
+
+    pub(super) fn without_stamp(number: u32, is_odd: bool) -> Line {
+        Line {
+            number,
+            is_odd,
+            printed: Printed::default(),
+            time: f64::NAN,
+            moment: Double::ZERO,
+            exact: Digits::None,
         }
     }
 }

@@ -12,6 +12,8 @@ pub enum Separator {
     Semicolon,
     Tab,
     Blank,
+    /// None: the file holds numbers in columns and no text.
+    Columns,
 }
 
 impl Separator {
@@ -22,6 +24,7 @@ impl Separator {
             Separator::Semicolon => ";",
             Separator::Tab => "tab",
             Separator::Blank => "blank",
+            Separator::Columns => "columns",
         }
     }
 
@@ -31,7 +34,7 @@ impl Separator {
             Separator::Comma => Some(b','),
             Separator::Semicolon => Some(b';'),
             Separator::Tab => Some(b'\t'),
-            Separator::Blank => None,
+            Separator::Blank | Separator::Columns => None,
         }
     }
 
@@ -339,6 +342,7 @@ impl Layout {
             Separator::Semicolon => "semicolon",
             Separator::Tab => "tab",
             Separator::Blank => "blanks",
+            Separator::Columns => "numbers in columns",
         };
         let decimal = if self.decimal_comma {
             ", decimal comma"

@@ -5,14 +5,17 @@
 //! other. What needs every row — the layout's digits, the grid of the stamps — is gathered batch
 //! by batch ([`Survey`]); what is wrong between rows is looked for in their order
 //! ([`Survey::rows`]). Memory does not grow with the file. A reader knows no case; `open` is the
-//! only place with I/O, everything else takes bytes.
+//! place that looks at files, everything else takes bytes. Packed text ([`packed`]) goes the same
+//! way; files of numbers in columns ([`columns`]) come as batches from the start (`tables`).
 
 mod batch;
+pub mod columns;
 mod finding;
 mod grid;
 mod layout;
 mod number;
 mod open;
+pub mod packed;
 mod pieces;
 mod resolution;
 mod rows;
@@ -20,6 +23,7 @@ mod sample;
 mod scan;
 mod stream;
 mod survey;
+mod tables;
 
 pub(crate) use batch::Batch;
 pub use finding::{Finding, Findings, Kind};

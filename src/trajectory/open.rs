@@ -1,13 +1,17 @@
-//! The only opener of trajectory files: plain files in blocks, or bytes in memory.
+//! The only opener of trajectory files: text, packed or not, tables, or bytes in memory.
 
 use std::fs::File;
 use std::io::{ErrorKind, Read};
 use std::path::{Path, PathBuf};
+use std::sync::Arc;
 
-use super::batch::{Batch, Columns, Known};
+use super::batch::{self, Batch, Known};
+use super::columns::{self, Columns, Data, FIRST_BYTES, Format, recognise};
 use super::layout::Layout;
+use super::packed;
 use super::pieces::{Piece, Pieces};
 use super::survey::Selection;
+use super::tables;
 use crate::fault::{Fault, Result};
 
 /// Where the bytes of a trajectory come from.
@@ -21,9 +25,21 @@ pub(super) enum Origin {
     File(PathBuf),
     /// The bytes, handed out in pieces of this size.
     Memory(Vec<u8>, usize),
+    /// Text behind a compression.
+    Packed(PathBuf, Format),
+    Table(PathBuf, Table),
 }
 
-const BLOCK_BYTES: usize = 64 * 1024;
+/// Numbers in columns.
+#[derive(Clone)]
+pub(super) struct Table(pub Arc<dyn Columns>);
+
+impl std::fmt::Debug for Table {
+    fn fmt(&self, f: &mut std::fmt::Formatter) -> std::fmt::Result {
+        f.debug_tuple("Table").field(&self.0.heads()).finish()
+    }
+}
+
 /// Bytes that are parsed at a time: they stay near the processor, and a few thousand rows are
 /// enough work to be handed to another one.
 const PIECE_BYTES: usize = 256 * 1024;
@@ -41,9 +57,14 @@ pub fn open(path: &Path) -> Result<Source> {
     if !data.is_file() {
         return Err(Fault::new("this is not a plain file").in_file(path));
     }
-    Ok(Source {
-        origin: Origin::File(path.to_owned()),
-    })
+    let (path, file) = (path.to_owned(), Data::File(path.to_owned()));
+    let first = (data.len() as usize).min(FIRST_BYTES);
+    let origin = match recognise(&file.exactly(0, first)?) {
+        None => Origin::File(path),
+        Some(format @ (Format::Gzip | Format::Zstd)) => Origin::Packed(path, format),
+        Some(format) => Origin::Table(path, Table(columns::open(&file, format)?.into())),
+    };
+    Ok(Source { origin })
 }
 
 impl Source {
@@ -64,45 +85,48 @@ impl Source {
     pub fn size(&self) -> u64 {
         match &self.origin {
             Origin::Memory(bytes, _) => bytes.len() as u64,
-            Origin::File(path) => std::fs::metadata(path).map_or(0, |data| data.len()),
+            Origin::File(path) | Origin::Packed(path, _) | Origin::Table(path, _) => {
+                std::fs::metadata(path).map_or(0, |data| data.len())
+            }
         }
     }
 
-    /// Hands the bytes over block by block, at most `most` of them.
-    fn blocks(&self, most: usize, each: &mut dyn FnMut(&[u8]) -> Result<()>) -> Result<()> {
-        let path = match &self.origin {
-            Origin::Memory(bytes, size) => {
-                return bytes[..bytes.len().min(most)]
-                    .chunks(*size)
-                    .try_for_each(each);
-            }
-            Origin::File(path) => path,
-        };
-        let mut file = File::open(path).map_err(|error| Fault::io(path, &error))?;
-        let mut block = vec![0; BLOCK_BYTES.min(most)];
-        let mut left = most;
-        while left > 0 {
-            let wanted = block.len().min(left);
-            match file.read(&mut block[..wanted]) {
-                Ok(0) => break,
-                Ok(length) => {
-                    left -= length;
-                    each(&block[..length]).map_err(|fault| fault.in_file(path))?;
-                }
-                Err(error) if error.kind() == ErrorKind::Interrupted => {}
-                Err(error) => return Err(Fault::io(path, &error)),
-            }
+    /// The columns, where the file is no text.
+    pub(super) fn table(&self) -> Option<&dyn Columns> {
+        match &self.origin {
+            Origin::Table(_, table) => Some(&*table.0),
+            _ => None,
         }
-        Ok(())
     }
 
-    /// The first bytes, and whether they are all.
+    /// Sentences on what is in the file and not read as a column.
+    pub fn left_out(&self) -> &[String] {
+        self.table().map_or(&[], |table| table.left_out())
+    }
+
+    /// The text from its beginning, and how much of it to parse at a time.
+    fn text(&self) -> Result<(Box<dyn Read + Send + '_>, usize)> {
+        Ok(match &self.origin {
+            Origin::Memory(bytes, size) => (Box::new(&bytes[..]), *size),
+            Origin::File(path) => {
+                let file = File::open(path).map_err(|error| Fault::io(path, &error))?;
+                (Box::new(file), PIECE_BYTES)
+            }
+            Origin::Packed(path, format) => (
+                packed::open(&Data::File(path.clone()), *format)?,
+                PIECE_BYTES,
+            ),
+            // Nothing of a table is text.
+            Origin::Table(..) => (Box::new(std::io::empty()), PIECE_BYTES),
+        })
+    }
+
+    /// The first bytes of the text, and whether they are all.
     pub(super) fn sample(&self, most: usize) -> Result<(Vec<u8>, bool)> {
         let mut sample = Vec::new();
-        self.blocks(most + 1, &mut |block| {
-            sample.extend_from_slice(block);
-            Ok(())
-        })?;
+        let (text, _) = self.text()?;
+        let read = text.take(most as u64 + 1).read_to_end(&mut sample);
+        read.map_err(|error| Fault::new(error.to_string()))?;
         let whole = sample.len() <= most;
         sample.truncate(most);
         Ok((sample, whole))
@@ -115,7 +139,10 @@ impl Source {
         of: &Selection,
         each: &mut dyn FnMut(Batch) -> Result<()>,
     ) -> Result<()> {
-        let columns = Columns::new(layout, of, Known::default());
+        if let Some(table) = self.table() {
+            return tables::batches(table, of, each);
+        }
+        let columns = batch::Columns::new(layout, of, Known::default());
         let mut pieces = self.pieces(layout)?;
         let mut lines = layout.first_row - 1;
         let mut piece = Piece::default();
@@ -132,13 +159,7 @@ impl Source {
 
     /// The text from the first row on, in pieces.
     pub(super) fn pieces(&self, layout: &Layout) -> Result<Pieces<Box<dyn Read + Send + '_>>> {
-        let (input, size): (Box<dyn Read + Send>, usize) = match &self.origin {
-            Origin::Memory(bytes, size) => (Box::new(&bytes[..]), *size),
-            Origin::File(path) => {
-                let file = File::open(path).map_err(|error| Fault::io(path, &error))?;
-                (Box::new(file), PIECE_BYTES)
-            }
-        };
+        let (input, size) = self.text()?;
         let mut pieces = Pieces::new(input, size);
         pieces.skip_lines(layout.first_row - 1)?;
         Ok(pieces)

@@ -20,6 +20,8 @@ pub(crate) struct Sample {
 
 /// A file up to this size is read at once.
 const WHOLE_BYTES: u64 = 512 * 1024;
+/// The same for a table.
+const WHOLE_ROWS: u64 = 10_000;
 /// Stretches of a larger file beside its beginning, and their size.
 const STRETCHES: u64 = 16;
 const STRETCH_BYTES: u64 = 64 * 1024;
@@ -35,6 +37,9 @@ impl Source {
         of: &Selection,
         stated: &Stated,
     ) -> Result<Sample> {
+        if let Some(table) = self.table() {
+            return self.sample_table(table, layout, of, stated);
+        }
         let columns = Columns::new(layout, of, Known::default());
         let (mut batches, mut bytes, mut lines) = (Vec::new(), 0, layout.first_row - 1);
         let (mut pieces, mut piece) = (self.pieces(layout)?, Piece::default());
@@ -75,6 +80,32 @@ impl Source {
         })
     }
 
+    /// Of a table with more than a few rows the survey is made first: it is quickly read.
+    fn sample_table(
+        &self,
+        table: &dyn super::columns::Columns,
+        layout: &Layout,
+        of: &Selection,
+        stated: &Stated,
+    ) -> Result<Sample> {
+        let whole = table.rows() <= WHOLE_ROWS;
+        let mut batches = Vec::new();
+        let mut surveyor = Surveyor::new(of.channels.len());
+        self.batches(layout, of, &mut |batch| {
+            surveyor.add(&batch);
+            if whole {
+                batches.push(batch);
+            }
+            Ok(())
+        })?;
+        let mut survey = surveyor.conclude(layout, of, stated);
+        super::tables::stored(table, &mut survey, stated.digits);
+        Ok(Sample {
+            survey,
+            batches: whole.then_some(batches),
+        })
+    }
+
     /// Whole lines from here and there in a file that can be read from anywhere.
     fn stretches(&self, each: &mut dyn FnMut(Vec<u8>)) -> Result<()> {
         let size = self.size();
@@ -87,6 +118,8 @@ impl Source {
                     let to = (from + STRETCH_BYTES as usize).min(bytes.len());
                     text.extend_from_slice(&bytes[from.min(to)..to]);
                 }
+                // Packed text can be read from its beginning only.
+                Origin::Packed(..) | Origin::Table(..) => return Ok(()),
                 Origin::File(path) => {
                     let read = |text: &mut Vec<u8>| {
                         let mut file = File::open(path)?;

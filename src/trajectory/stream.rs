@@ -90,6 +90,14 @@ impl Source {
         stages: Stages<W, D>,
     ) -> Result<()> {
         let layout = &guess.layout;
+        if self.table().is_some() {
+            return self.batches(layout, &guess.selection, &mut |batch| {
+                for work in (stages.in_order)(&batch) {
+                    (stages.gather)((stages.apart)(work));
+                }
+                Ok(())
+            });
+        }
         let shared = Shared {
             columns: Columns::new(layout, &guess.selection, guess.known.clone()),
             input: Mutex::new((self.pieces(layout)?, 0)),

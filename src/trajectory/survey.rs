@@ -1,11 +1,13 @@
 //! The first pass: what can be known only after every row was seen.
 
 use super::batch::{Batch, Known};
+use super::columns::recognise;
 use super::grid::{Grid, GridFinder};
 use super::layout::{Layout, SAMPLE_BYTES, Stated};
 use super::open::Source;
 use super::pieces::{check_length, line_end};
 use super::resolution::{Pattern, Resolution};
+use super::tables;
 use crate::fault::{Fault, Result};
 use crate::number::Decimal;
 
@@ -54,6 +56,9 @@ impl Source {
     /// # Errors
     /// A file that cannot be read, is no text, or fits no layout.
     pub fn layout(&self, stated: &Stated) -> Result<Option<Layout>> {
+        if let Some(table) = self.table() {
+            return tables::layout(table);
+        }
         // A long preamble can fill the first sample; a larger one is taken only then.
         let (small, large) = SAMPLE_BYTES;
         let (sample, whole) = self.sample(small)?;
@@ -67,18 +72,12 @@ impl Source {
 }
 
 fn layout_of(sample: &[u8], whole: bool, stated: &Stated) -> Result<Option<Layout>> {
-    let format = match *sample {
-        [0x1f, 0x8b, ..] => Some("gzip data"),
-        [0x28, 0xb5, 0x2f, 0xfd, ..] => Some("zstd data"),
-        [b'P', b'A', b'R', b'1', ..] => Some("Parquet data"),
-        [0x93, b'N', b'U', b'M', ..] => Some("a NumPy array"),
-        [b'P', b'K', 3, 4, ..] => Some("a zip archive"),
-        [0xff, 0xfe, ..] | [0xfe, 0xff, ..] => Some("UTF-16 text"),
-        _ => memchr::memchr(0, sample).map(|_| "not text: it holds zero bytes"),
-    };
-    if let Some(format) = format {
-        let fault = Fault::new(format!("this file is {format}"));
-        return Err(fault.help("this build reads plain text files; write CSV"));
+    if let Some(format) = recognise(sample) {
+        return Err(format.refusal());
+    }
+    if memchr::memchr(0, sample).is_some() {
+        let fault = Fault::new("this file is not text: it holds zero bytes");
+        return Err(fault.help("write CSV, or one of the binary formats that README.md names"));
     }
     let mut lines = Vec::new();
     let mut rest = sample.strip_prefix(b"\xef\xbb\xbf").unwrap_or(sample);
@@ -222,7 +221,11 @@ impl Survey {
             surveyor.add(&batch);
             Ok(())
         })?;
-        Ok(surveyor.conclude(&layout, &selection, stated))
+        let mut survey = surveyor.conclude(&layout, &selection, stated);
+        if let Some(table) = source.table() {
+            tables::stored(table, &mut survey, stated.digits);
+        }
+        Ok(survey)
     }
 }
 

@@ -40,6 +40,9 @@ mod published;
 /// A folder made for one test, and the command run on it.
 mod folder;
 
+/// Binary files and packed text through the whole audit.
+mod tables;
+
 /// Long files: threads, blocks, guesses and quick arithmetic do not show.
 mod long_files;
 
@@ -93,3 +96,6 @@ mod readme;
 
 /// `drive`: a simulator over cases and steps, commands that fail, plans with errors.
 mod drive;
+
+/// Binary tables and packed text of other programs beside their twin as text.
+mod formats;
