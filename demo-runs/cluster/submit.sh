@@ -45,5 +45,5 @@ audit=${audit%%;*}
 wait=()
 [ "${WAIT:-0}" = 1 ] && wait=(--wait)
 echo "job $audit audits $parts parts, the table will be in $reports/merge.log"
-exec sbatch --parsable --dependency="afterany:$audit" "${wait[@]}" \
+exec sbatch --dependency="afterany:$audit" "${wait[@]}" \
     --output="$reports/merge.log" "$here/merge.sh" "$parts" "$reports"
