@@ -19,10 +19,23 @@ use crate::fault::Result;
 /// The file cannot be opened, or the format is no packed text.
 pub fn open(data: &Data, format: Format) -> Result<Box<dyn Read + Send>> {
     let bytes = BufReader::new(data.handle()?);
+    let name = format.name();
     match format {
-        Format::Gzip => Ok(Box::new(MultiGzDecoder::new(bytes))),
-        Format::Zstd => Ok(Box::new(Frames::new(bytes))),
+        Format::Gzip => Ok(Box::new(Named(MultiGzDecoder::new(bytes), name))),
+        Format::Zstd => Ok(Box::new(Named(Frames::new(bytes), name))),
         other => Err(data.named(other.refusal())),
+    }
+}
+
+/// A stream whose complaints say what it is.
+struct Named<R>(R, &'static str);
+
+impl<R: Read> Read for Named<R> {
+    fn read(&mut self, buffer: &mut [u8]) -> std::io::Result<usize> {
+        self.0.read(buffer).map_err(|error| {
+            let text = format!("the {} is damaged or cut off: {error}", self.1);
+            std::io::Error::new(error.kind(), text)
+        })
     }
 }
 
