@@ -120,7 +120,7 @@ impl Comparison<'_> {
                 None
             };
             let done = self.pass(&guess, nodes.as_ref(), batches)?;
-            let came_true = done.survey.confirms(&guess, done.largest_step, done.open);
+            let came_true = done.survey.confirms(&guess, done.largest_gap, done.open);
             if !came_true && guesses < MOST_GUESSES {
                 guess = done.survey;
                 guesses += 1;
@@ -184,7 +184,7 @@ impl Comparison<'_> {
             findings: staged.findings,
             rows: staged.rows,
             outside: staged.outside,
-            largest_step: staged.largest_step,
+            largest_gap: staged.largest_gap,
             open: staged.open,
             part,
         })
@@ -197,7 +197,7 @@ struct Done {
     findings: Findings,
     rows: u64,
     outside: u64,
-    largest_step: f64,
+    largest_gap: f64,
     open: bool,
     part: Part,
 }

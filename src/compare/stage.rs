@@ -48,7 +48,7 @@ pub(super) struct Staged {
     pub findings: Findings,
     pub rows: u64,
     pub outside: u64,
-    pub largest_step: f64,
+    pub largest_gap: f64,
     pub open: bool,
     /// The rows that no full chunk has.
     pub chunk: Chunk,
@@ -133,7 +133,7 @@ impl<'a> Stage<'a> {
             findings,
             rows,
             outside,
-            largest_step: self.order.largest_step(),
+            largest_gap: self.order.largest_gap(),
             open: self.open,
             last_rows: last.last(last_rows),
             chunk: window.chunk,

@@ -50,8 +50,8 @@ pub(crate) struct Order<'a> {
     /// A finding whose kind shows only with the next row: a row that equals the one
     /// before it, or one that leaves a hole which it may have been swapped into.
     pending: Option<Pending>,
-    /// The largest step between rows that follow each other.
-    largest_step: f64,
+    /// The largest step that could be a hole in a grid of its size, see [`Order::largest_gap`].
+    largest_gap: f64,
 }
 
 struct Pending {
@@ -70,7 +70,7 @@ impl<'a> Order<'a> {
             last_values: vec![f64::NAN; survey.selection.channels.len()],
             latest: f64::NEG_INFINITY,
             pending: None,
-            largest_step: 0.0,
+            largest_gap: 0.0,
         }
     }
 
@@ -130,9 +130,10 @@ impl<'a> Order<'a> {
         }
     }
 
-    /// The largest step between two rows, for whoever has only guessed the grid.
-    pub(crate) fn largest_step(&self) -> f64 {
-        self.largest_step
+    /// For whoever has only guessed the grid: with a spacing above this there is no hole, for a
+    /// hole is longer than the spacing by more than its stamps are rounded, and half as long again.
+    pub(crate) fn largest_gap(&self) -> f64 {
+        self.largest_gap
     }
 
     /// Takes note of what is wrong with a row; false where it cannot be used.
@@ -190,7 +191,9 @@ impl<'a> Order<'a> {
             findings.fatal(Kind::TimeNotIncreasing, line, text);
         } else if let Some(last) = self.last {
             let from = last.max(self.latest);
-            self.largest_step = self.largest_step.max(time - from);
+            let step = time - from;
+            let gap = (step - slack(time, resolution)).min(step / 1.5);
+            self.largest_gap = self.largest_gap.max(gap);
             if time == last {
                 // Stamps that are too coarse for the step repeat by themselves.
                 let uniform = matches!(survey.grid, Grid::Uniform { spacing, exact, .. }
@@ -270,8 +273,7 @@ impl Survey {
         if step < 1.4 * spacing {
             return None;
         }
-        // Each of the two stamps may be off by its resolution.
-        let slack = 2.1 * resolution.max(half_ulp(to));
+        let slack = slack(to, resolution);
         // Steps of a code that chooses them are no whole multiples.
         let missing = (step / spacing).round() - 1.0;
         let off_grid = (step - (missing + 1.0) * spacing).abs();
@@ -317,6 +319,11 @@ impl Survey {
         }
         self.time.at(time)
     }
+}
+
+/// How far a step may be off by the rounding of its two stamps.
+fn slack(time: f64, resolution: f64) -> f64 {
+    2.1 * resolution.max(half_ulp(time))
 }
 
 #[cfg(test)]

@@ -179,9 +179,9 @@ impl Surveyor {
 
 impl Survey {
     /// True where rows that were read with a guess of the survey came out as with this one.
-    /// Holes and phases of a grid are looked for with its step as it was known then: that does
-    /// not matter as long as no step between rows was notably `largest`.
-    pub(crate) fn confirms(&self, guess: &Survey, largest: f64, open: bool) -> bool {
+    /// Holes of a grid are looked for with its step as it was known then: that does not matter as
+    /// long as no gap between rows could be one with either step.
+    pub(crate) fn confirms(&self, guess: &Survey, largest_gap: f64, open: bool) -> bool {
         let digits = self.channels == guess.channels && self.time == guess.time;
         let end = !open || self.even == guess.even && self.usual_digits == guess.usual_digits;
         let grid = self.grid == guess.grid
@@ -198,8 +198,9 @@ impl Survey {
                         phases: guessed_phases,
                     },
                 ) => {
-                    let near = (spacing - guessed).abs() <= 1e-3 * spacing;
-                    near && exact == exactly && phases == guessed_phases && largest < 1.4 * spacing
+                    let near = (spacing - guessed).abs() <= 0.02 * spacing;
+                    let holes = largest_gap >= 0.95 * spacing.min(guessed);
+                    near && exact == exactly && phases == guessed_phases && !holes
                 }
                 _ => false,
             };
