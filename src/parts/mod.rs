@@ -76,7 +76,8 @@ mod tests {
 
     #[test]
     fn the_largest_go_first_and_nothing_is_left_over() {
-        assert_eq!(shares(&[1, 9, 4, 5], 2), [1, 0, 1, 1]);
+        // 9 to the first; 5 and 4 to the second; 1 where there are fewer.
+        assert_eq!(shares(&[1, 9, 4, 5], 2), [0, 0, 1, 1]);
         assert_eq!(shares(&[0, 0, 0], 2), [0, 1, 0]);
         assert_eq!(shares(&[3], 4), [0]);
         assert_eq!(shares(&[], 3), [0; 0]);

@@ -401,11 +401,11 @@ fn arguments_that_do_not_go_together() {
         ),
         (
             &["audit", "s", "--against", "p-1.json"],
-            "p-1.json: this is the report of part `1 of 1` of an audit",
+            "p-1.json: this is the report of part 1 of 1, not of a whole audit",
         ),
         (
             &["merge", "p-1.json", "--against", "p-1.json"],
-            "p-1.json: this is the report of part `1 of 1` of an audit",
+            "p-1.json: this is the report of part 1 of 1, not of a whole audit",
         ),
         (
             &["merge", "p-1.json", "--write", "m.xml"],
@@ -413,7 +413,7 @@ fn arguments_that_do_not_go_together() {
         ),
         (
             &["merge", "p-1.json", "--write", "./p-1.json"],
-            "would overwrite",
+            "would overwrite the one of a part",
         ),
         (
             &[
