@@ -8,7 +8,7 @@ use super::args::{AuditArguments, RelativeTo, share};
 use super::earlier::{self, Earlier};
 use super::reports::{Inputs, check_merged};
 use crate::audit::Plan;
-use crate::fault::{Fault, quoted};
+use crate::fault::Fault;
 use crate::outcome::Changes;
 use crate::parts::{Asked, Given, MOST_PARTS, divide, join};
 use crate::report::{AuditReport, changes_report, read_report, report_json, write_atomically};
@@ -176,8 +176,10 @@ pub(super) fn whole(report: AuditReport) -> Result<AuditReport, Fault> {
     match &report.part {
         None => Ok(report),
         Some(part) => {
-            let name = quoted(&format!("{} of {}", part.number, part.of));
-            let fault = Fault::new(format!("this is the report of part {name} of an audit"));
+            let name = format!("part {} of {}", part.number, part.of);
+            let fault = Fault::new(format!(
+                "this is the report of {name}, not of a whole audit"
+            ));
             Err(fault.help("join all parts with `stepgauge merge --write FILE.json` first"))
         }
     }

@@ -107,7 +107,15 @@ pub(super) fn check(reports: &[PathBuf], inputs: &Inputs) -> Result<Vec<Asked>, 
 /// What is wrong with it.
 pub(super) fn check_merged(path: &Path, inputs: &Inputs) -> Result<(), Fault> {
     let written = kind(path).and_then(|kind| match kind {
-        Kind::Json => inputs.spare(path, &place(path)?, kind),
+        Kind::Json => {
+            let place = place(path)?;
+            let there = path.canonicalize();
+            if there.is_ok_and(|there| inputs.files.contains(&there)) {
+                let fault = Fault::new("this report would overwrite the one of a part");
+                return Err(fault.help("give the report another name"));
+            }
+            inputs.spare(path, &place, kind)
+        }
         _ => {
             let fault = Fault::new("merge writes .json reports only");
             Err(fault.help("let each part write reports of other kinds for itself"))
