@@ -14,16 +14,14 @@ pub(super) struct Keeping {
 
 impl Keeping {
     /// Of the rows that were handed on, those of the windows of a file with so many rows.
-    pub(super) fn new(compared: &Compared, columns: Vec<(usize, Conversion)>) -> Keeping {
+    pub(super) fn new(compared: &mut Compared, columns: Vec<(usize, Conversion)>) -> Keeping {
         let windows = windows(compared.rows);
-        let wanted = |row: &&Kept| {
+        let mut kept = std::mem::take(&mut compared.kept);
+        kept.retain(|row| {
             let inside = |&(first, rows): &(u64, u64)| (first..first + rows).contains(&row.number);
             windows.iter().any(inside)
-        };
-        Keeping {
-            columns,
-            kept: compared.kept.iter().filter(wanted).cloned().collect(),
-        }
+        });
+        Keeping { columns, kept }
     }
 
     /// The record, once the digits and the grid are known for good. A stated step that

@@ -134,14 +134,14 @@ pub(super) fn compare(
         last_rows: LATER_ROWS as usize,
         crew,
     };
-    let compared = comparison.run(&mut findings).map_err(placed)?;
+    let mut compared = comparison.run(&mut findings).map_err(placed)?;
     let survey = &compared.survey;
     outcome.stamps = match survey.grid {
         Grid::Uniform { exact: Some(_), .. } => "an exact grid".to_owned(),
         _ => survey.time.describe(),
     };
     let columns = channels.iter().map(|&(c, conversion, _)| (c, conversion));
-    let keeping = Keeping::new(&compared, columns.collect());
+    let keeping = Keeping::new(&mut compared, columns.collect());
     let record = keeping.conclude(&compared, matched.time_conversion, step);
     if channels.is_empty() {
         let text = "no column of the file is a channel of the case";

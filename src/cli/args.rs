@@ -64,6 +64,18 @@ pub struct Sources {
     pub cases: Vec<PathBuf>,
 }
 
+/// An earlier report to compare with.
+#[derive(Debug, Args)]
+pub struct Before {
+    /// Compares with an earlier .json report and says what became worse or better
+    #[arg(long, value_name = "EARLIER.json")]
+    pub against: Option<PathBuf>,
+    /// By what share a worst error must have grown to be worse, as in 0.2 for 20 %
+    /// [default: 0.2]
+    #[arg(long, value_name = "SHARE", requires = "against", allow_negative_numbers = true, value_parser = share)]
+    pub worse_by: Option<f64>,
+}
+
 /// Arguments of `audit`.
 #[derive(Debug, Args)]
 #[command(after_help = "\
@@ -105,13 +117,9 @@ pub struct AuditArguments {
     /// Prints nothing but complaints; reports and the exit status tell
     #[arg(long, short)]
     pub quiet: bool,
-    /// Compares with an earlier .json report and says what became worse or better
-    #[arg(long, value_name = "EARLIER.json")]
-    pub against: Option<PathBuf>,
-    /// By what share a worst error must have grown to be worse, as in 0.2 for 20 %
-    /// [default: 0.2]
-    #[arg(long, value_name = "SHARE", requires = "against", allow_negative_numbers = true, value_parser = share)]
-    pub worse_by: Option<f64>,
+    /// An earlier report to compare with
+    #[command(flatten)]
+    pub before: Before,
     /// Audits one share of the submissions found, as in 2/8; `stepgauge merge` joins the
     /// .json reports of all shares
     #[arg(long, value_name = "I/N", value_parser = share_of)]

@@ -16,7 +16,7 @@ use std::sync::atomic::{AtomicBool, Ordering};
 use clap::Args;
 use tempfile::TempDir;
 
-use super::args::{Sources, share};
+use super::args::{Before, Sources};
 use super::plan::{library, processors};
 use super::reports::{self, Asked, Inputs};
 use crate::audit::{Plan, Planned, audit};
@@ -61,13 +61,9 @@ pub struct DriveArguments {
     /// Writes a report whose kind follows from its ending, as `audit` does (repeatable)
     #[arg(long, value_name = "FILE")]
     pub write: Vec<PathBuf>,
-    /// Compares with an earlier .json report and says what became worse or better
-    #[arg(long, value_name = "EARLIER.json")]
-    pub against: Option<PathBuf>,
-    /// By what share a worst error must have grown to be worse, as in 0.2 for 20 %
-    /// [default: 0.2]
-    #[arg(long, value_name = "SHARE", requires = "against", allow_negative_numbers = true, value_parser = share)]
-    pub worse_by: Option<f64>,
+    /// An earlier report to compare with
+    #[command(flatten)]
+    pub before: Before,
     /// Cases beside the built-in ones
     #[command(flatten)]
     pub sources: Sources,
@@ -153,7 +149,10 @@ fn inputs(arguments: &DriveArguments, plan: &DrivePlan) -> Inputs {
         let value = text.split_once('=').map(|(_, value)| PathBuf::from(value));
         [Some(PathBuf::from(word)), value]
     });
-    let named = [Some(arguments.plan.clone()), arguments.against.clone()];
+    let named = [
+        Some(arguments.plan.clone()),
+        arguments.before.against.clone(),
+    ];
     Inputs::files(named.into_iter().chain(paths).flatten())
 }
 

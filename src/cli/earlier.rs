@@ -3,6 +3,7 @@
 use std::io::Read;
 use std::path::Path;
 
+use super::args::Before;
 use super::parts::whole;
 use crate::against::{WORSE_BY, compare};
 use crate::fault::{Fault, Result};
@@ -24,8 +25,8 @@ impl Earlier {
     ///
     /// # Errors
     /// A file that is not there or too large, and what is wrong with its text.
-    pub(super) fn read(path: Option<&Path>, worse_by: Option<f64>) -> Result<Option<Earlier>> {
-        let Some(path) = path else {
+    pub(super) fn read(before: &Before) -> Result<Option<Earlier>> {
+        let Some(path) = before.against.as_deref() else {
             return Ok(None);
         };
         let text = text(path).map_err(|fault| fault.in_file(path))?;
@@ -34,7 +35,7 @@ impl Earlier {
                 .and_then(whole)
                 .map_err(|fault| fault.in_file(path))?,
             name: path.to_string_lossy().into_owned(),
-            worse_by: worse_by.unwrap_or(WORSE_BY),
+            worse_by: before.worse_by.unwrap_or(WORSE_BY),
         }))
     }
 

@@ -4,7 +4,7 @@ use std::path::{Path, PathBuf};
 
 use clap::Args;
 
-use super::args::{AuditArguments, RelativeTo, share};
+use super::args::{AuditArguments, Before, RelativeTo};
 use super::earlier::{self, Earlier};
 use super::reports::{Inputs, check_merged};
 use crate::audit::Plan;
@@ -37,13 +37,9 @@ pub struct MergeArguments {
     /// Prints nothing but complaints; the report and the exit status tell
     #[arg(long, short)]
     pub quiet: bool,
-    /// Compares with an earlier .json report and says what became worse or better
-    #[arg(long, value_name = "EARLIER.json")]
-    pub against: Option<PathBuf>,
-    /// By what share a worst error must have grown to be worse, as in 0.2 for 20 %
-    /// [default: 0.2]
-    #[arg(long, value_name = "SHARE", requires = "against", allow_negative_numbers = true, value_parser = share)]
-    pub worse_by: Option<f64>,
+    /// An earlier report to compare with
+    #[command(flatten)]
+    pub before: Before,
 }
 
 /// What `--part` says: which part, of how many.
@@ -67,7 +63,7 @@ pub(super) fn take(arguments: &AuditArguments, plan: &mut Plan) -> Result<(), Fa
     let Some((part, of)) = arguments.part else {
         return Ok(());
     };
-    if arguments.against.is_some() {
+    if arguments.before.against.is_some() {
         let fault = Fault::new("--against goes with a whole audit, --part audits a share of it");
         return Err(fault.help("give `--against` to `stepgauge merge`"));
     }
@@ -126,11 +122,11 @@ pub(super) struct Merged {
 /// # Errors
 /// All that is wrong with the reports; then nothing is written.
 pub(super) fn merge(arguments: &MergeArguments) -> Result<Merged, Vec<Fault>> {
-    let inputs = Inputs::merged(&arguments.parts, arguments.against.as_deref());
+    let inputs = Inputs::merged(&arguments.parts, arguments.before.against.as_deref());
     if let Some(path) = &arguments.write {
         check_merged(path, &inputs).map_err(|fault| vec![fault])?;
     }
-    let earlier = Earlier::read(arguments.against.as_deref(), arguments.worse_by);
+    let earlier = Earlier::read(&arguments.before);
     let earlier = earlier.map_err(|fault| vec![fault])?;
     let (mut given, mut faults) = (Vec::new(), Vec::new());
     for path in &arguments.parts {

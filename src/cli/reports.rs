@@ -210,7 +210,7 @@ impl Inputs {
         let true_path = |path: &Path| path.canonicalize().ok().or_else(|| place(path).ok());
         Inputs {
             files: files.chain(cases).filter_map(true_path).collect(),
-            earlier: arguments.against.as_deref().and_then(true_path),
+            earlier: arguments.before.against.as_deref().and_then(true_path),
             unread: folders.filter_map(true_path).collect(),
         }
     }

@@ -103,14 +103,14 @@ fn run_audit(arguments: &AuditArguments) -> Result<u8, Stop> {
     // Files of other parts are inputs too.
     let asked = reports::check(&arguments.write, &Inputs::of(arguments, &plan))?;
     parts::take(arguments, &mut plan)?;
-    let earlier = Earlier::read(arguments.against.as_deref(), arguments.worse_by)?;
+    let earlier = Earlier::read(&arguments.before)?;
     let mut outcome = watched::audit(plan, arguments.quiet);
     outcome.changes = earlier.map(|earlier| earlier.changes(&audit_report(&outcome)));
     conclude(&outcome, &asked, arguments.quiet)
 }
 
 fn run_drive(arguments: &DriveArguments) -> Result<u8, Stop> {
-    let earlier = Earlier::read(arguments.against.as_deref(), arguments.worse_by)?;
+    let earlier = Earlier::read(&arguments.before)?;
     let mut driven = drive(arguments)?;
     let now = audit_report(&driven.outcome);
     driven.outcome.changes = earlier.map(|earlier| earlier.changes(&now));

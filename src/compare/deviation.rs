@@ -2,7 +2,7 @@
 
 use super::chunk::{Chunk, Part, Pass};
 use super::margin::{Deviation, Limit};
-use super::stage::Stage;
+use super::stage::{Stage, Staged};
 use super::trace::{Trace, Traced};
 use crate::exact::{Exact, Nodes};
 use crate::fault::Result;
@@ -119,21 +119,20 @@ impl Comparison<'_> {
             } else {
                 None
             };
-            let done = self.pass(&guess, nodes.as_ref(), batches)?;
-            let came_true = done.survey.confirms(&guess, done.largest_gap, done.open);
+            let Done { staged, part } = self.pass(&guess, nodes.as_ref(), batches)?;
+            let came_true = (staged.survey).confirms(&guess, staged.largest_gap, staged.open);
             if !came_true && guesses < MOST_GUESSES {
-                guess = done.survey;
+                guess = staged.survey;
                 guesses += 1;
                 continue;
             }
-            let mut sharp = done.part.sums.iter().zip(&guess.channels);
+            let mut sharp = part.sums.iter().zip(&guess.channels);
             if nodes.is_some() && !sharp.all(|(sums, &printed)| sums.is_sharp(printed)) {
                 quick = false;
-                guess = done.survey;
+                guess = staged.survey;
                 continue;
             }
-            findings.append(done.findings.clone());
-            return Ok(self.conclude(done));
+            return Ok(self.conclude(staged, part, findings));
         }
     }
 
@@ -166,12 +165,16 @@ impl Comparison<'_> {
                 },
             )?,
         }
-        let staged = stage.finish();
-        part.join(apart(staged.chunk));
-        let mut last = Pass::new(self, guess, None).keep(&staged.last_rows);
-        let first = last.first().map_or(0, |row| row.number);
-        part.kept.retain(|row| row.number < first);
-        part.kept.append(&mut last);
+        let mut staged = stage.finish();
+        part.join(apart(std::mem::take(&mut staged.chunk)));
+        // The last rows, but for those that were wanted anyway.
+        let first = staged.last_rows.first;
+        let known = part.kept.partition_point(|row| row.number < first);
+        if part.kept.len() - known < staged.last_rows.times.len() {
+            part.kept.truncate(known);
+            let mut last = Pass::new(self, guess, None).keep(&staged.last_rows);
+            part.kept.append(&mut last);
+        }
         if nodes.is_some() {
             let mut pass = Pass::new(self, guess, None);
             for (place, sums) in part.sums.iter_mut().enumerate() {
@@ -179,26 +182,13 @@ impl Comparison<'_> {
                     .for_each(|mark| *mark = pass.again(place, mark));
             }
         }
-        Ok(Done {
-            survey: staged.survey,
-            findings: staged.findings,
-            rows: staged.rows,
-            outside: staged.outside,
-            largest_gap: staged.largest_gap,
-            open: staged.open,
-            part,
-        })
+        Ok(Done { staged, part })
     }
 }
 
 /// One pass over a file.
 struct Done {
-    survey: Survey,
-    findings: Findings,
-    rows: u64,
-    outside: u64,
-    largest_gap: f64,
-    open: bool,
+    staged: Staged,
     part: Part,
 }
 
@@ -210,22 +200,23 @@ impl Comparison<'_> {
         self.exact.jumps_near(time, 1e-9 * span)
     }
 
-    fn conclude(&self, done: Done) -> Compared {
-        let spacing = match done.survey.grid {
+    fn conclude(&self, staged: Staged, part: Part, findings: &mut Findings) -> Compared {
+        findings.append(staged.findings);
+        let spacing = match staged.survey.grid {
             Grid::Uniform { spacing, .. } => Some(self.time.stretch(spacing)),
             Grid::Varied => None,
         };
-        let sums = done.part.sums.into_iter().zip(&done.survey.channels);
+        let sums = part.sums.into_iter().zip(&staged.survey.channels);
         Compared {
-            rows: done.rows,
-            outside: done.outside,
+            rows: staged.rows,
+            outside: staged.outside,
             spacing,
             channels: sums
                 .map(|(sums, &printed)| sums.conclude(printed))
                 .collect(),
-            traces: done.part.traces.into_iter().map(Trace::conclude).collect(),
-            kept: done.part.kept,
-            survey: done.survey,
+            traces: part.traces.into_iter().map(Trace::conclude).collect(),
+            kept: part.kept,
+            survey: staged.survey,
         }
     }
 }

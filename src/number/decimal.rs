@@ -140,11 +140,8 @@ impl Decimal {
         if let Some(digits) = short.filter(|d| d.unsigned_abs() < 1 << 62)
             && self.exponent.abs() <= 22
         {
-            let high = digits as f64;
-            // What is left is small, and exact.
-            let low = (digits - high as i64) as f64;
-            let power = POWERS[self.exponent.unsigned_abs() as usize];
-            let digits = Double::from_sum(high, low);
+            let power = EXACT_POWERS[self.exponent.unsigned_abs() as usize];
+            let digits = Double::whole(digits);
             return match self.exponent {
                 0 => digits,
                 1.. => digits * Double::from(power),
@@ -170,7 +167,7 @@ impl Decimal {
 }
 
 /// Powers of ten that an `f64` holds exactly.
-const POWERS: [f64; 23] = [
+pub(crate) const EXACT_POWERS: [f64; 23] = [
     1e0, 1e1, 1e2, 1e3, 1e4, 1e5, 1e6, 1e7, 1e8, 1e9, 1e10, 1e11, 1e12, 1e13, 1e14, 1e15, 1e16,
     1e17, 1e18, 1e19, 1e20, 1e21, 1e22,
 ];

@@ -120,6 +120,14 @@ impl Double {
         }
     }
 
+    /// A whole number below `2^62`, exactly.
+    pub(crate) fn whole(number: i64) -> Double {
+        let high = number as f64;
+        // What is left is small, and exact.
+        let low = (number - high as i64) as f64;
+        Double { high, low }
+    }
+
     /// Divided by an `f64`: one correction of the first quotient, which leaves `8 * 2^-106`.
     pub fn over(self, divisor: f64) -> Double {
         let first = self.high / divisor;

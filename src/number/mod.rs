@@ -20,6 +20,7 @@ mod short;
 pub use closed::{closed_form, fraction};
 pub use conversion::Conversion;
 pub use decimal::Decimal;
+pub(crate) use decimal::EXACT_POWERS;
 pub use double::Double;
 pub use expm::{Expansion, Flow, Nearby, Propagator, Step};
 pub use matrix::{Matrix, dot};

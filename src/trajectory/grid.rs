@@ -113,29 +113,21 @@ impl GridFinder {
     fn count(&mut self, step: f64, exact: impl Fn() -> Option<Decimal>, tolerance: f64) {
         self.steps += 1;
         self.sum += step;
-        // Nearly always the step is that of the row before, and nothing new.
-        let again = self.clusters.first_mut().filter(|first| {
-            let near = (first.spacing - step).abs() <= tolerance.max(first.tolerance);
-            self.latest == 0 && near && tolerance <= 0.3 * step && !first.identical
-        });
-        if let Some(first) = again {
-            first.tolerance = first.tolerance.max(tolerance);
-            first.sum += step;
-            first.count += 1;
-            first.run += 1;
-            first.longest_run = first.longest_run.max(first.run);
-            return;
-        }
-        let exact = exact();
         // Where stamps are printed to few digits for their step, equal decimals tell
         // more than a tolerance as wide as the step itself.
         let coarse = tolerance > 0.3 * step;
-        let same = |cluster: &Cluster| {
-            // Whichever of the two was printed more coarsely.
-            let near =
-                (cluster.spacing - step).abs() <= tolerance.max(cluster.tolerance) && !coarse;
-            near || exact.is_some() && exact == cluster.exact
+        // Whichever of the two was printed more coarsely.
+        let near = |cluster: &Cluster| {
+            (cluster.spacing - step).abs() <= tolerance.max(cluster.tolerance) && !coarse
         };
+        // Nearly always the step is that of the first rows; whether as a decimal as well matters
+        // only as long as all of them were.
+        let first = self.clusters.first();
+        let exact = match first.is_some_and(|first| near(first) && !first.identical) {
+            true => None,
+            false => exact(),
+        };
+        let same = |cluster: &Cluster| near(cluster) || exact.is_some() && exact == cluster.exact;
         let known = self.clusters.iter().position(same);
         let place = match known {
             Some(place) => place,

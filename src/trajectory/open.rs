@@ -44,11 +44,11 @@ impl std::fmt::Debug for Table {
 /// enough work to be handed to another one.
 const PIECE_BYTES: usize = 256 * 1024;
 
-/// Looks at a file without reading it.
+/// Looks at the first bytes of a file, and at what a table says of itself.
 ///
 /// # Errors
 /// A file that is not there, or is no plain file: a pipe or a device could keep the
-/// audit waiting for ever.
+/// audit waiting for ever; a table that is damaged or of a kind that is not read.
 pub fn open(path: &Path) -> Result<Source> {
     let data = std::fs::metadata(path).map_err(|error| match error.kind() {
         ErrorKind::NotFound => Fault::new("there is no such file").in_file(path),
@@ -61,7 +61,7 @@ pub fn open(path: &Path) -> Result<Source> {
     let first = (data.len() as usize).min(FIRST_BYTES);
     let origin = match recognise(&file.exactly(0, first)?) {
         None => Origin::File(path),
-        Some(format @ (Format::Gzip | Format::Zstd)) => Origin::Packed(path, format),
+        Some(format) if format.is_packed() => Origin::Packed(path, format),
         Some(format) => Origin::Table(path, Table(columns::open(&file, format)?.into())),
     };
     Ok(Source { origin })
@@ -143,6 +143,18 @@ impl Source {
             return tables::batches(table, of, each);
         }
         let columns = batch::Columns::new(layout, of, Known::default());
+        self.text_batches(layout, &columns, &mut |batch, _| each(batch).map(|()| true))
+            .map(|_| ())
+    }
+
+    /// Batches of text with their bytes, in order, as long as `each` wants more; true where the
+    /// text ended before that.
+    pub(super) fn text_batches(
+        &self,
+        layout: &Layout,
+        columns: &batch::Columns,
+        each: &mut dyn FnMut(Batch, usize) -> Result<bool>,
+    ) -> Result<bool> {
         let mut pieces = self.pieces(layout)?;
         let mut lines = layout.first_row - 1;
         let mut piece = Piece::default();
@@ -152,9 +164,11 @@ impl Source {
         {
             let batch = columns.parse(&piece).map_err(|fault| after(fault, lines))?;
             lines += batch.lines;
-            each(batch)?;
+            if !each(batch, piece.text.len())? {
+                return Ok(false);
+            }
         }
-        Ok(())
+        Ok(true)
     }
 
     /// The text from the first row on, in pieces.

@@ -103,6 +103,7 @@ fn fill(input: &mut impl Read, bytes: usize, text: &mut Vec<u8>) -> Result<bool>
     let read = input.take(bytes as u64).read_to_end(text);
     Ok(read.map_err(|error| Fault::new(error.to_string()))? == 0)
 }
+
 /// The length of the first line and where the next one begins; `None` where its end is not
 /// there yet. Lines end with `\n`, `\r\n` or a lone `\r`.
 pub(super) fn line_end(text: &[u8], is_all: bool) -> Option<(usize, usize)> {

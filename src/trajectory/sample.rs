@@ -7,7 +7,7 @@ use std::io::{Read, Seek, SeekFrom};
 
 use super::batch::{Batch, Columns, Known};
 use super::layout::{Layout, Stated};
-use super::open::{Origin, Source, after};
+use super::open::{Origin, Source};
 use super::pieces::{Piece, last_line_end};
 use super::survey::{Selection, Survey, Surveyor};
 use crate::fault::{Fault, Result};
@@ -19,7 +19,7 @@ pub(crate) struct Sample {
 }
 
 /// A file up to this size is read at once.
-const WHOLE_BYTES: u64 = 512 * 1024;
+const WHOLE_BYTES: usize = 512 * 1024;
 /// The same for a table.
 const WHOLE_ROWS: u64 = 10_000;
 /// Stretches of a larger file beside its beginning, and their size.
@@ -41,22 +41,12 @@ impl Source {
             return self.sample_table(table, layout, of, stated);
         }
         let columns = Columns::new(layout, of, Known::default());
-        let (mut batches, mut bytes, mut lines) = (Vec::new(), 0, layout.first_row - 1);
-        let (mut pieces, mut piece) = (self.pieces(layout)?, Piece::default());
-        let mut whole = true;
-        while pieces
-            .next(&mut piece)
-            .map_err(|fault| after(fault, lines))?
-        {
-            let batch = columns.parse(&piece).map_err(|fault| after(fault, lines))?;
-            lines += batch.lines;
+        let (mut batches, mut read) = (Vec::new(), 0);
+        let whole = self.text_batches(layout, &columns, &mut |batch, bytes| {
             batches.push(batch);
-            bytes += piece.text.len() as u64;
-            if bytes > WHOLE_BYTES {
-                whole = false;
-                break;
-            }
-        }
+            read += bytes;
+            Ok(read <= WHOLE_BYTES)
+        })?;
         let mut surveyor = Surveyor::new(of.channels.len());
         // Of a larger file the beginning counts no more than any other stretch.
         let beginning = if whole { batches.len() } else { 1 };
@@ -90,16 +80,11 @@ impl Source {
     ) -> Result<Sample> {
         let whole = table.rows() <= WHOLE_ROWS;
         let mut batches = Vec::new();
-        let mut surveyor = Surveyor::new(of.channels.len());
-        self.batches(layout, of, &mut |batch| {
-            surveyor.add(&batch);
+        let survey = self.survey(layout, of, stated, &mut |batch| {
             if whole {
                 batches.push(batch);
             }
-            Ok(())
         })?;
-        let mut survey = surveyor.conclude(layout, of, stated);
-        super::tables::stored(table, &mut survey, stated.digits);
         Ok(Sample {
             survey,
             batches: whole.then_some(batches),

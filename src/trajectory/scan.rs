@@ -4,7 +4,7 @@
 //! [`Field::read`](super::number::Field::read), which gives the same where both apply.
 
 use super::number::{MOST_CHARACTERS, Printed};
-use crate::number::{Decimal, Double};
+use crate::number::{Decimal, Double, EXACT_POWERS};
 
 /// One number as it stands in a file.
 #[derive(Clone, Copy, Debug, PartialEq)]
@@ -31,11 +31,9 @@ impl Scanned {
         let (Some(&power), true) = (power, self.exponent <= 0 && self.digits < 1 << 62) else {
             return self.decimal().to_double();
         };
-        let high = self.digits as f64;
-        // What is left is small, and exact.
-        let low = (self.digits as i64 - high as i64) as f64;
+        let digits = Double::whole(self.digits as i64);
         let product = Double::from_product(self.value.abs(), power);
-        let rest = ((high - product.to_f64()) - product.low()) + low;
+        let rest = ((digits.to_f64() - product.to_f64()) - product.low()) + digits.low();
         let moment = Double::from_sum(self.value.abs(), rest / power);
         if self.negative { -moment } else { moment }
     }
@@ -161,12 +159,6 @@ fn number_of_eight(digits: u64) -> u64 {
     let inner = ((pairs >> 16) & PAIR).wrapping_mul(1 + (10_000 << 32));
     outer.wrapping_add(inner) >> 32
 }
-
-/// Powers of ten that an `f64` holds exactly.
-const EXACT_POWERS: [f64; 23] = [
-    1e0, 1e1, 1e2, 1e3, 1e4, 1e5, 1e6, 1e7, 1e8, 1e9, 1e10, 1e11, 1e12, 1e13, 1e14, 1e15, 1e16,
-    1e17, 1e18, 1e19, 1e20, 1e21, 1e22,
-];
 
 /// The `f64` nearest to `digits * 10^exponent`.
 #[inline(always)]

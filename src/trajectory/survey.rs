@@ -217,13 +217,27 @@ impl Survey {
         selection: Selection,
         stated: &Stated,
     ) -> Result<Survey> {
-        let mut surveyor = Surveyor::new(selection.channels.len());
-        source.batches(&layout, &selection, &mut |batch| {
+        source.survey(&layout, &selection, stated, &mut |_| {})
+    }
+}
+
+impl Source {
+    /// Goes through the whole file once; `each` gets every batch.
+    pub(super) fn survey(
+        &self,
+        layout: &Layout,
+        of: &Selection,
+        stated: &Stated,
+        each: &mut dyn FnMut(Batch),
+    ) -> Result<Survey> {
+        let mut surveyor = Surveyor::new(of.channels.len());
+        self.batches(layout, of, &mut |batch| {
             surveyor.add(&batch);
+            each(batch);
             Ok(())
         })?;
-        let mut survey = surveyor.conclude(&layout, &selection, stated);
-        if let Some(table) = source.table() {
+        let mut survey = surveyor.conclude(layout, of, stated);
+        if let Some(table) = self.table() {
             tables::stored(table, &mut survey, stated.digits);
         }
         Ok(survey)
