@@ -24,7 +24,7 @@ use std::sync::{Arc, Mutex};
 use crate::case::{Case, Library};
 use crate::exact::{Exact, approx_time_scales};
 use crate::fault::Fault;
-use crate::method::Linear;
+use crate::method::{Linear, Shelf};
 use crate::outcome::{Audited, LimitsFrom, NotAudited, Outcome, Part};
 use crate::submission::{LimitStated, Submission};
 use crate::trajectory::Crew;
@@ -87,7 +87,12 @@ struct Model {
 /// Up to so many submissions each is looked at closely, whether it passes or not.
 const FEW: usize = 3;
 
-type Models = Mutex<BTreeMap<String, Arc<Model>>>;
+/// The models so far, and what is known of methods on them.
+#[derive(Default)]
+struct Models {
+    known: Mutex<BTreeMap<String, Arc<Model>>>,
+    shelf: Arc<Shelf>,
+}
 
 /// Audits everything in the plan. The outcome does not depend on the threads.
 pub fn audit(plan: &Plan) -> Outcome {
@@ -101,20 +106,24 @@ pub fn audit_watched(plan: &Plan, watch: &Watch) -> Outcome {
     let threads = plan.threads.clamp(1, plan.submissions.len().max(1));
     // Threads without a submission of their own help with those that are long.
     let crew = Crew::new(plan.threads.saturating_sub(threads));
-    std::thread::scope(|scope| {
-        for _ in 0..threads {
-            scope.spawn(|| {
-                loop {
-                    let index = next.fetch_add(1, Ordering::Relaxed);
-                    let Some(planned) = plan.submissions.get(index) else {
-                        break;
-                    };
-                    watch.finished(index, audit_one(planned, plan, &models, watch, &crew));
-                }
-                crew.release();
-            });
+    let work = || {
+        loop {
+            let index = next.fetch_add(1, Ordering::Relaxed);
+            let Some(planned) = plan.submissions.get(index) else {
+                break;
+            };
+            watch.finished(index, audit_one(planned, plan, &models, watch, &crew));
         }
-    });
+        crew.release();
+    };
+    // Each submission is shared out among the threads as well.
+    let pool = rayon::ThreadPoolBuilder::new()
+        .num_threads(plan.threads)
+        .build();
+    match pool {
+        Ok(pool) => pool.scope(|scope| (0..threads).for_each(|_| scope.spawn(|_| work()))),
+        Err(_) => work(),
+    }
     watch.take(plan)
 }
 
@@ -132,7 +141,7 @@ fn model(
     models: &Models,
 ) -> Result<Arc<Model>, Vec<Fault>> {
     let key = format!("{name} {:?}", submission.parameters);
-    if let Some(model) = lock(models).get(&key) {
+    if let Some(model) = lock(&models.known).get(&key) {
         return Ok(Arc::clone(model));
     }
     // The lock is not held meanwhile: two threads may do the same work once.
@@ -140,12 +149,12 @@ fn model(
     let exact = case.exact().map_err(|fault| vec![fault])?;
     let time_constant = approx_time_scales(&case).time_constant;
     let model = Arc::new(Model {
-        linear: Linear::new(&case),
+        linear: Linear::new(&case).on(&models.shelf),
         case,
         exact,
         time_constant,
     });
-    lock(models).insert(key, Arc::clone(&model));
+    lock(&models.known).insert(key, Arc::clone(&model));
     Ok(model)
 }
 

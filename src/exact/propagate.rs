@@ -219,17 +219,20 @@ impl<'a> Walk<'a> {
         let norm = table.norm();
         let follows = segment == self.segment && step.to_f64() >= 0.0;
         let fresh = self.since_anchor < STEPS_PER_ANCHOR;
+        let short = step.to_f64() <= table.base();
+        // A short step takes few terms, yet more than what a grid leaves of it.
+        let far = if short { 1e-6 } else { 0.25 };
         let on_grid =
-            |(spacing, _): &(Double, Step<Double>)| norm * (step - *spacing).abs().to_f64() <= 0.25;
-        if follows && fresh && step.to_f64() <= table.base() {
-            table.nudge(&mut self.flow, step);
-            self.since_anchor += 1;
-        } else if follows
+            |(spacing, _): &(Double, Step<Double>)| norm * (step - *spacing).abs().to_f64() <= far;
+        if follows
             && fresh
             && let Some((spacing, grid)) = self.grid.as_ref().filter(|g| on_grid(g))
         {
             table.step(&mut self.flow, grid);
             table.nudge(&mut self.flow, step - *spacing);
+            self.since_anchor += 1;
+        } else if follows && fresh && short {
+            table.nudge(&mut self.flow, step);
             self.since_anchor += 1;
         } else {
             self.flow = self.exact.flow_at(segment, time);

@@ -1,6 +1,7 @@
 //! A method beside a file that holds every state: the local and the global test.
 
 use super::laid::Laid;
+use super::leg::Rounded;
 use super::march::NEAR;
 use super::powers::identity;
 use super::scale::Scale;
@@ -20,39 +21,42 @@ impl Noise {
     /// How far the times of the steps after a row can have drifted: times that are summed
     /// step by step drift by half a unit in the last place each.
     fn drift(&self, time: f64, row: u64) -> f64 {
-        let count = (row + 1) as f64 * self.steps;
-        (count + 4.0) * 0.5 * f64::EPSILON * time.abs() + self.time_doubt
+        drift(self.steps, self.time_doubt, time, row)
     }
+}
+
+fn drift(steps: f64, time_doubt: f64, time: f64, row: u64) -> f64 {
+    let count = (row + 1) as f64 * steps;
+    (count + 4.0) * 0.5 * f64::EPSILON * time.abs() + time_doubt
 }
 
 impl Trial<'_> {
     fn noise(&self, scale: &Scale) -> Noise {
-        let recurrence = &self.recurrence;
-        let size = recurrence.size();
-        let spread = recurrence.spread.apply(&scale.states);
-        let pull = recurrence.pull.apply(&scale.forcing);
-        let slopes = recurrence.pull.apply(&scale.slopes);
-        let newest = self.stacked() - size;
-        let (mut fixed, mut swept) = (vec![0.0; self.stacked()], vec![0.0; self.stacked()]);
-        for i in 0..size {
-            fixed[newest + i] = self.unit * recurrence.roundings * (spread[i] + pull[i]);
-            swept[newest + i] = slopes[i];
-        }
+        let Rounded { spread, pull } = self.leg.rounded();
+        let unit = self.unit * self.leg.recurrence.roundings;
+        let pairs = apply(spread, &scale.states).zip(apply(pull, &scale.forcing));
         Noise {
-            fixed: self.gathered.apply(&fixed),
-            swept: self.gathered.apply(&swept),
+            fixed: pairs.map(|(spread, pull)| unit * (spread + pull)).collect(),
+            swept: apply(pull, &scale.slopes).collect(),
             time_doubt: scale.time_doubt,
-            steps: self.steps as f64,
+            steps: self.leg.steps as f64,
         }
     }
 
     /// What roundings of the steps between two rows can come to, given the largest states
     /// and the largest forcing with its rate, the time and the number of the row.
-    pub(super) fn rounding(&self, scale: &Scale, time: f64, row: u64) -> Vec<f64> {
-        let noise = self.noise(scale);
-        let drift = noise.drift(time, row);
-        let pairs = noise.fixed.iter().zip(&noise.swept);
-        pairs.map(|(fixed, swept)| fixed + swept * drift).collect()
+    pub(super) fn rounding<'s>(
+        &'s self,
+        scale: &'s Scale,
+        time: f64,
+        row: u64,
+    ) -> impl Iterator<Item = f64> + 's {
+        let Rounded { spread, pull } = self.leg.rounded();
+        let unit = self.unit * self.leg.recurrence.roundings;
+        let drift = drift(self.leg.steps as f64, scale.time_doubt, time, row);
+        let fixed = apply(spread, &scale.states).zip(apply(pull, &scale.forcing));
+        let pairs = fixed.zip(apply(pull, &scale.slopes));
+        pairs.map(move |((spread, pull), swept)| unit * (spread + pull) + swept * drift)
     }
 
     /// Compares a file that holds every state, piece by piece. `glance` looks at few rows
@@ -87,7 +91,7 @@ impl Trial<'_> {
     /// the rows; `None` where too few are left.
     fn compared(&self, laid: &Laid) -> Option<(usize, usize)> {
         // A method with a memory may have begun anew after a jump.
-        let memory = self.recurrence.back() - 1;
+        let memory = self.leg.recurrence.back() - 1;
         let skip = if laid.first == 0 { 0 } else { memory };
         let mut rows = laid.rows();
         let end = laid.times[rows - 1];
@@ -103,7 +107,7 @@ impl Trial<'_> {
     pub(super) fn astray(&self, pieces: &[Laid], peaks: &[f64]) -> f64 {
         let long = pieces
             .iter()
-            .filter(|laid| laid.rows() > self.recurrence.back());
+            .filter(|laid| laid.rows() > self.leg.recurrence.back());
         long.fold(0.0, |most, laid| {
             let noise = self.noise(&laid.scale);
             let global = self.global(laid, &noise, 0, laid.rows(), peaks, true);
@@ -114,16 +118,16 @@ impl Trial<'_> {
     /// Consecutive rows put into the difference equation of the method.
     fn local(&self, laid: &Laid, noise: &Noise, start: usize, end: usize, peaks: &[f64]) -> Fit {
         let (size, stacked) = (self.linear.size(), self.stacked());
-        let (newest, driven) = (stacked - size, self.drive_size());
+        let (newest, driven) = (stacked - size, self.leg.drive.size);
         let mut fit = Fit::NOTHING;
-        for row in start + self.recurrence.back() - 1..end - 1 {
+        for row in start + self.leg.recurrence.back() - 1..end - 1 {
             let time = laid.times[row];
             let stack = (row + 1) * size - stacked..(row + 1) * size;
             let drive = &laid.drive[row * driven..][..driven];
             let drift = noise.drift(time, laid.first + row as u64);
             let stamp = 2.0 * f64::EPSILON * laid.times[row + 1].abs() + laid.scale.spacing_doubt;
             for (i, peak) in peaks.iter().enumerate() {
-                let line = self.joined().row(newest + i);
+                let line = self.leg.joined.row(newest + i);
                 let values = &laid.values[stack.clone()];
                 let predicted = dot(&line[..stacked], values) + dot(&line[stacked..], drive);
                 let doubts = laid.doubts[stack.clone()].iter();
@@ -142,7 +146,7 @@ impl Trial<'_> {
     /// The start of the case in place of the first row of the file, where that is it to its
     /// digits.
     fn known_start(&self, laid: &Laid, row: usize) -> Option<Vec<f64>> {
-        if laid.first + row as u64 > 0 || self.recurrence.back() > 1 {
+        if laid.first + row as u64 > 0 || self.leg.recurrence.back() > 1 {
             return None;
         }
         let start = &self.linear.start;
@@ -161,8 +165,8 @@ impl Trial<'_> {
         to_the_end: bool,
     ) -> Fit {
         let (size, stacked) = (self.linear.size(), self.stacked());
-        let (newest, driven) = (stacked - size, self.drive_size());
-        let first = start + self.recurrence.back() - 1;
+        let (newest, driven) = (stacked - size, self.leg.drive.size);
+        let first = start + self.leg.recurrence.back() - 1;
         let most = GLOBAL_WORK / stacked.pow(3).max(1);
         let last = (end - 1).min(first + most.max(4));
         let stack = (first + 1) * size - stacked..(first + 1) * size;
@@ -182,7 +186,7 @@ impl Trial<'_> {
         for row in first..last {
             let time = laid.times[row];
             let drive = &laid.drive[row * driven..][..driven];
-            for (next, line) in next_states.iter_mut().zip(self.joined().rows()) {
+            for (next, line) in next_states.iter_mut().zip(self.leg.joined.rows()) {
                 *next = dot(&line[..stacked], &states) + dot(&line[stacked..], drive);
             }
             std::mem::swap(&mut states, &mut next_states);
@@ -207,7 +211,7 @@ impl Trial<'_> {
             }
             power = over.product(&power);
             let since = count as f64;
-            let stamp = (since * self.steps as f64 + 2.0) * f64::EPSILON * time.abs()
+            let stamp = (since * self.leg.steps as f64 + 2.0) * f64::EPSILON * time.abs()
                 + since * laid.scale.spacing_doubt;
             for (i, peak) in peaks.iter().enumerate() {
                 let at = newest + i;
@@ -230,6 +234,10 @@ impl Trial<'_> {
 const DENSE: usize = 16;
 const SPARSE: usize = 8;
 
-fn absolute_dot(line: &[f64], values: &[f64]) -> f64 {
+fn apply<'m>(lines: &'m [f64], values: &'m [f64]) -> impl Iterator<Item = f64> + 'm {
+    lines.chunks_exact(values.len().max(1)).map(|line| dot(line, values))
+}
+
+pub(super) fn absolute_dot(line: &[f64], values: &[f64]) -> f64 {
     line.iter().zip(values).map(|(m, x)| m.abs() * x).sum()
 }

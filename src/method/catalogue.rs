@@ -73,7 +73,7 @@ const FEHLBERG: &str = "0; 1/4; 3/32 9/32; 1932/2197 -7200/2197 7296/2197; \
     439/216 -8 3680/513 -845/4104; -8/27 2 -3544/2565 1859/4104 -11/40";
 
 /// All methods: one-step methods by order, then multistep methods.
-pub const METHODS: &[Method] = &[
+pub static METHODS: &[Method] = &[
     method(
         "forward Euler",
         &["explicit Euler", "Euler", "RK1", "Adams-Bashforth 1", "AB1"],

@@ -10,7 +10,7 @@ use super::march::{NEAR, Sides};
 use super::record::{Piece, Record, Window};
 use super::recurrence::dense;
 use super::scale::Rows;
-use super::trial::{Fit, Leaps, Trial};
+use super::trial::{Fit, Trial};
 
 /// Intervals that are compared at most, and steps that one of them may take.
 const MOST_INTERVALS: usize = 24;
@@ -60,7 +60,7 @@ impl Trial<'_> {
         let Some(places) = record.states(size) else {
             return Fit::NOTHING;
         };
-        if self.recurrence.back() > 1 || self.steps > MOST_STEPS {
+        if self.leg.recurrence.back() > 1 || self.leg.steps > MOST_STEPS {
             return Fit::NOTHING;
         }
         let rows = Rows { record, places };
@@ -85,7 +85,7 @@ impl Trial<'_> {
     /// True where jumps lie between a row and the next or at them, and all of them on the
     /// grid of the steps.
     fn meets_jump(&self, window: &Window, row: usize) -> bool {
-        let step = self.recurrence.step;
+        let step = self.leg.recurrence.step;
         let near = NEAR * step;
         let (from, to) = (window.times[row] - near, window.times[row + 1] + near);
         let mut time = from.next_down();
@@ -110,20 +110,21 @@ impl Trial<'_> {
         let mut scale = rows.scale(self.linear, window, piece);
         let mut before = vec![0.0; self.linear.size()];
         for time in &window.times[row..row + 2] {
-            let near = NEAR * self.recurrence.step;
+            let near = NEAR * self.leg.recurrence.step;
             self.linear.forcing(*time, Side::Before, near, &mut before);
             scale.see_forcing(&before);
         }
         let states = rows.values(window, row);
         let mut predicted = states.clone();
         self.advance(
-            &mut Leaps::default(),
+            &mut Vec::new(),
             &mut predicted,
             time,
-            self.steps,
+            self.leg.steps,
             sides,
         );
         let rounding = self.rounding(&scale, time, window.first + row as u64);
+        let rounding: Vec<f64> = rounding.collect();
         let (doubts, next_doubts) = (rows.doubts(window, row), rows.doubts(window, row + 1));
         let (next, rates) = (rows.values(window, row + 1), rows.rates(window, piece, row));
         let stamp = 2.0 * f64::EPSILON * window.times[row + 1].abs() + scale.spacing_doubt;

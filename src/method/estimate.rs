@@ -8,7 +8,7 @@ use super::powers::identity;
 use super::record::{Piece, Record};
 use super::recurrence::dense;
 use super::search::{Search, Variant};
-use super::trial::{GLANCE, Leaps, Trial};
+use super::trial::GLANCE;
 
 /// More steps from row to row than this are tried only where they are claimed.
 const MOST_GUESSED: u64 = 10_000;
@@ -200,7 +200,7 @@ impl Search<'_> {
     /// The errors of the method at the rows of the targets, laid along those in the file.
     fn projected(&self, variant: &Variant, spacing: f64, steps: u64) -> Option<Projected> {
         let step = spacing / steps as f64;
-        let recurrence = variant.recurrence(self.linear, step)?;
+        let trial = self.trial(variant, step, steps)?;
         let targets = &self.targets;
         let window = self.sheet.record.windows.get(targets.window)?;
         let last = targets.points.last()?.rows_on;
@@ -212,20 +212,20 @@ impl Search<'_> {
         {
             return None;
         }
-        let memory = recurrence.back() as u64 - 1;
+        let memory = trial.leg.recurrence.back() as u64 - 1;
         let start = targets.start.clone();
         let mut known = vec![start.clone()];
         if memory > 0 {
             let reference = self.reference(step)?;
-            let mut first = March::new(&reference, self.linear, Sides::After, [start], origin, 0);
+            let reference = &reference.recurrence;
+            let mut first = March::new(reference, self.linear, Sides::After, [start], origin, 0);
             for _ in 0..memory {
                 known.push(first.step().to_vec());
             }
         }
         let size = self.linear.size();
-        let trial = Trial::new(self.linear, recurrence, steps, self.sheet.record.unit);
         let mut stack: Vec<f64> = known.iter().flatten().copied().collect();
-        let mut leaps = Leaps::default();
+        let mut room = Vec::new();
         let mut done = memory;
         let (mut own, mut both, mut largest) = (0.0f64, 0.0f64, 0.0f64);
         let mut points = targets.points.iter().peekable();
@@ -233,7 +233,7 @@ impl Search<'_> {
             let wanted = row as u64 * steps;
             if wanted > done {
                 let time = origin + done as f64 * step;
-                trial.advance(&mut leaps, &mut stack, time, wanted - done, Sides::After);
+                trial.advance(&mut room, &mut stack, time, wanted - done, Sides::After);
                 done = wanted;
             }
             let state = match known.get(wanted as usize) {

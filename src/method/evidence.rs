@@ -380,7 +380,7 @@ pub fn fitting<'a>(
     let (claimed, claimed_steps) = ([method], [steps]);
     let search = search(linear, record, &claimed, &claimed_steps);
     let fits = |form: &&Form| {
-        let found = search.form(method, &form.coefficients, Reading::AtNodes);
+        let found = search.form(method, (None, &form.coefficients), Reading::AtNodes);
         let mut tried = found.tried.iter().filter(|tried| tried.steps == steps);
         tried.any(|tried| tried.fit.holds())
             || (few && found.skipped.iter().any(|s| s.steps == steps))
@@ -404,7 +404,7 @@ fn search<'a>(
         targets: Targets::new(linear, record, &pieces),
         pieces,
         orders: rank_orders(linear),
-        gauss: super::find("Gauss 6").map(|method| method.schemes[0].coefficients()),
+        reference: super::find("Gauss 6"),
         exact: exact_fit(record),
         claimed,
         claimed_steps,

@@ -50,7 +50,7 @@ impl Doubts {
 }
 
 fn of_steps(trial: &Trial, time: f64, steps: u64) -> Option<Vec<f64>> {
-    let (recurrence, linear) = (&trial.recurrence, trial.linear);
+    let (recurrence, linear) = (&trial.leg.recurrence, trial.linear);
     let (size, stacked, step) = (linear.size(), trial.stacked(), recurrence.step);
     let near = NEAR * step;
     let behind = (recurrence.back() - 1) as f64 * step;

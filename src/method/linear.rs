@@ -1,6 +1,9 @@
 //! A case as a time-stepping program sees it: matrices in `f64`, inputs as functions of
 //! time with a value on either side of a jump.
 
+use std::sync::Arc;
+
+use super::leg::{Section, Shelf};
 use crate::case::{Case, Shape};
 use crate::number::Matrix;
 
@@ -33,6 +36,8 @@ pub struct Linear {
     pub signals: Vec<Signal>,
     /// Rows over states of every output, the same over inputs, and its constant.
     pub outputs: Vec<(Vec<f64>, Vec<f64>, f64)>,
+    /// Steps of methods over it that were worked out before.
+    pub(super) legs: Section,
 }
 
 /// One input in `f64`.
@@ -88,7 +93,14 @@ impl Linear {
             window: (case.time.from.to_f64(), case.time.to.to_f64()),
             signals: case.inputs.iter().map(|i| Signal::new(&i.shape)).collect(),
             outputs: case.outputs.iter().map(output).collect(),
+            legs: Section::default(),
         }
+    }
+
+    /// The same with a shelf for the steps of methods over it.
+    pub fn on(mut self, shelf: &Arc<Shelf>) -> Linear {
+        self.legs = Section::on(shelf);
+        self
     }
 
     /// Number of states.

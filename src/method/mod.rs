@@ -20,6 +20,7 @@ mod growth;
 mod iterated;
 mod jumps;
 mod laid;
+mod leg;
 mod linear;
 mod march;
 mod powers;
@@ -40,6 +41,7 @@ pub use drive::Drive;
 pub use evidence::{Evidence, Family, Skipped, Tried, evidence, evidence_of, fitting};
 pub use growth::{Growth, Likeness, Unmeasured, growth, likeness};
 pub use iterated::{Form, Iterated, forms};
+pub use leg::{Leg, Shelf};
 pub use linear::{Linear, Side, Signal};
 pub use march::{March, NEAR, Sides, add_forcing};
 pub use ranks::rank_orders;
@@ -50,4 +52,4 @@ pub use search::MOST_STEPS;
 pub use stability::{
     Rational, Stability, amplification, approx_stability, approx_stable_length, of_stages, roots,
 };
-pub use trial::{Fit, Leaps, Trial};
+pub use trial::{Fit, Trial};

@@ -14,19 +14,19 @@ pub(super) fn corner(matrix: &Matrix<f64>, size: usize) -> Matrix<f64> {
 }
 
 pub(super) fn to_the_power(matrix: &Matrix<f64>, count: u64) -> Matrix<f64> {
-    let mut power = identity(matrix.size());
+    let mut power: Option<Matrix<f64>> = None;
     let mut block = matrix.clone();
     let mut rest = count;
     while rest > 0 {
         if rest & 1 == 1 {
-            power = block.product(&power);
+            power = Some(power.map_or_else(|| block.clone(), |power| block.product(&power)));
         }
         rest >>= 1;
         if rest > 0 {
             block = block.product(&block);
         }
     }
-    power
+    power.unwrap_or_else(|| identity(matrix.size()))
 }
 
 pub(super) fn identity(size: usize) -> Matrix<f64> {

@@ -11,7 +11,7 @@ use super::scheme::{Coefficients, Stages};
 use crate::number::{Double, Matrix};
 
 /// How a program looks at its inputs within a step.
-#[derive(Clone, Copy, Debug, PartialEq, Eq, PartialOrd, Ord)]
+#[derive(Clone, Copy, Debug, PartialEq, Eq, PartialOrd, Ord, Hash)]
 pub enum Reading {
     /// At the method's own nodes.
     AtNodes,

@@ -1,16 +1,19 @@
 //! The search through the catalogue: every method at the steps that are worth a look.
 
-use super::catalogue::Method;
+use std::sync::{Arc, LazyLock};
+
+use super::catalogue::{METHODS, Method};
 use super::drive::Drive;
 use super::estimate::{Estimate, Targets};
 use super::evidence::{Skipped, Tried};
 use super::laid::Laid;
+use super::leg::{Leg, Title};
 use super::linear::Linear;
 use super::march::Sides;
 use super::record::{Piece, Record};
 use super::recurrence::{Ranks, Reading, Recurrence};
-use super::scheme::Coefficients;
-use super::starts::{FEW_LEFT, with_hidden_start};
+use super::scheme::{Coefficients, Scheme};
+use super::starts::{FEW_LEFT, MOST_ROWS, with_hidden_start};
 use super::trial::{Fit, GLANCE, Trial, larger};
 
 /// Steps from row to row that are tried whatever the errors say.
@@ -73,7 +76,8 @@ pub(super) struct Search<'a> {
     pub(super) pieces: Vec<Piece>,
     pub(super) targets: Targets,
     pub(super) orders: Vec<Ranks>,
-    pub(super) gauss: Option<Coefficients>,
+    /// The method for starts.
+    pub(super) reference: Option<&'static Method>,
     /// The exact solution in place of a method.
     pub(super) exact: Fit,
     pub(super) claimed: &'a [&'static Method],
@@ -96,23 +100,31 @@ impl Found {
 
 impl Search<'_> {
     /// A step of high order, for starts.
-    pub(super) fn reference(&self, step: f64) -> Option<Recurrence> {
-        Recurrence::new(self.gauss.as_ref()?, self.linear, step, &Ranks::new())
+    pub(super) fn reference(&self, step: f64) -> Option<Arc<Leg>> {
+        let variant = Variant {
+            method: self.reference?,
+            form: Some(0),
+            coefficients: forms_of(self.reference?).first()?,
+            reading: Reading::AtNodes,
+            ranks: &Ranks::new(),
+        };
+        variant.leg(self.linear, step, 1)
     }
 
     pub(super) fn method(&self, method: &'static Method, reading: Reading) -> Found {
         let mut found = Found::default();
-        for scheme in method.schemes {
-            found.add(self.form(method, &scheme.coefficients(), reading));
+        for (place, coefficients) in forms_of(method).iter().enumerate() {
+            found.add(self.form(method, (Some(place), coefficients), reading));
         }
         found
     }
 
-    /// One form of a method; semi-implicit ones in every order.
+    /// One form of a method, with its place among those of the catalogue; semi-implicit ones
+    /// in every order.
     pub(super) fn form(
         &self,
         method: &'static Method,
-        coefficients: &Coefficients,
+        (form, coefficients): (Option<usize>, &Coefficients),
         reading: Reading,
     ) -> Found {
         let mut found = Found::default();
@@ -123,6 +135,7 @@ impl Search<'_> {
         for ranks in orders {
             let variant = Variant {
                 method,
+                form,
                 coefficients,
                 reading,
                 ranks: &ranks,
@@ -171,15 +184,15 @@ impl Search<'_> {
         let Some((spacing, _)) = self.sheet.record.spacing else {
             return found;
         };
-        for scheme in method.schemes {
+        for (place, scheme) in method.schemes.iter().enumerate() {
             let back = scheme.steps_back();
             if back < 2 || back * self.linear.size() > MOST_SWEPT {
                 continue;
             }
-            let coefficients = scheme.coefficients();
             let variant = Variant {
                 method,
-                coefficients: &coefficients,
+                form: Some(place),
+                coefficients: &forms_of(method)[place],
                 reading: Reading::AtNodes,
                 ranks: &Ranks::new(),
             };
@@ -211,13 +224,12 @@ impl Search<'_> {
                 continue;
             }
             // What cannot be solved, or reads its inputs no other way, has not run.
-            let Some(recurrence) = variant.recurrence(self.linear, spacing / count as f64) else {
+            let Some(trial) = self.trial(variant, spacing / count as f64, count) else {
                 continue;
             };
-            let trial = Trial::new(self.linear, recurrence, count, self.sheet.record.unit);
-            let mut fit = self.fit(&trial, &self.sheet, variant.reading);
             let free = self.is_free(&trial);
             let claimed = self.is_claimed(variant) && self.claimed_steps.contains(&count);
+            let mut fit = self.fit(&trial, &self.sheet, variant.reading, claimed);
             if claimed && !free && !fit.holds() {
                 fit.astray = larger(
                     fit.astray,
@@ -257,7 +269,7 @@ impl Search<'_> {
             if fit.holds() && self.exact.holds() {
                 tried.apart = fit.ratio;
             } else if fit.holds() {
-                tried.apart = self.fit(&trial, &self.solution, variant.reading).ratio;
+                tried.apart = self.fit(&trial, &self.solution, variant.reading, true).ratio;
                 tried.at_jumps = trial.across_jumps(&self.sheet.record);
             }
             found.tried.push(tried);
@@ -269,6 +281,15 @@ impl Search<'_> {
         self.claimed.is_empty()
     }
 
+    /// A method at a step; `None` where that cannot be worked out.
+    pub(super) fn trial(&self, variant: &Variant, step: f64, steps: u64) -> Option<Trial<'_>> {
+        Some(Trial {
+            linear: self.linear,
+            leg: variant.leg(self.linear, step, steps)?,
+            unit: self.sheet.record.unit,
+        })
+    }
+
     /// What the matrix of a step is rounded by: elimination with `I - h A` in it.
     fn coarse(&self, step: f64) -> f64 {
         16.0 * f64::EPSILON * step * self.linear.matrix.row_sum_norm()
@@ -276,16 +297,17 @@ impl Search<'_> {
 
     /// True where earlier states that a step needs are not all among the rows.
     fn is_free(&self, trial: &Trial) -> bool {
-        trial.recurrence.back() > 1 && (trial.steps > 1 || !self.complete)
+        trial.leg.recurrence.back() > 1 && (trial.leg.steps > 1 || !self.complete)
     }
 
     /// True where a number of steps agrees, at first sight where every state is there.
     fn may_hold(&self, variant: &Variant, spacing: f64, steps: u64) -> bool {
-        let recurrence = variant.recurrence(self.linear, spacing / steps as f64);
-        recurrence.is_some_and(|recurrence| {
-            let trial = Trial::new(self.linear, recurrence, steps, self.sheet.record.unit);
+        let trial = self.trial(variant, spacing / steps as f64, steps);
+        trial.is_some_and(|trial| {
             if !self.complete || self.is_free(&trial) {
-                return self.fit(&trial, &self.sheet, variant.reading).holds();
+                return self
+                    .fit(&trial, &self.sheet, variant.reading, false)
+                    .holds();
             }
             let Sheet { laid, peaks, .. } = &self.sheet;
             trial.is_finite() && trial.against_rows(laid, peaks, true).holds()
@@ -322,17 +344,27 @@ impl Search<'_> {
         (down, up)
     }
 
-    /// Nothing is compared where a matrix has overflowed.
-    fn fit(&self, trial: &Trial, sheet: &Sheet, reading: Reading) -> Fit {
+    /// Nothing is compared where a matrix has overflowed. `whole` asks how far rows are that
+    /// few of them rule out already.
+    fn fit(&self, trial: &Trial, sheet: &Sheet, reading: Reading, whole: bool) -> Fit {
         if !trial.is_finite() {
             return Fit::NOTHING;
         }
         let either = reading == Reading::EitherSide;
         let record = &sheet.record;
         if self.is_free(trial) {
-            return match self.reference(trial.recurrence.step) {
+            return match self.reference(trial.leg.recurrence.step) {
                 Some(reference) => {
-                    with_hidden_start(trial, &reference, record, &self.pieces, either)
+                    let reference = &reference.recurrence;
+                    let over =
+                        |rows| with_hidden_start(trial, reference, record, &self.pieces, either, rows);
+                    if !whole {
+                        let glance = over(GLANCE);
+                        if glance.ratio > 1.0 {
+                            return glance;
+                        }
+                    }
+                    over(MOST_ROWS)
                 }
                 None => Fit::NOTHING,
             };
@@ -400,13 +432,7 @@ impl Search<'_> {
     /// A step from a row to the next, whatever that is.
     fn over_pair(&self, variant: &Variant, pair: &Laid, steps: u64) -> Option<Trial<'_>> {
         let step = (pair.times[1] - pair.times[0]) / steps as f64;
-        let recurrence = variant.recurrence(self.linear, step)?;
-        Some(Trial::new(
-            self.linear,
-            recurrence,
-            steps,
-            self.sheet.record.unit,
-        ))
+        self.trial(variant, step, steps)
     }
 
     fn uneven_fit(&self, variant: &Variant, sheet: &Sheet, steps: u64) -> Fit {
@@ -426,7 +452,7 @@ impl Search<'_> {
     /// Numbers that are the same for methods which these rows cannot tell apart: the
     /// matrix from row to row and what the forcing does in a few places.
     fn print(&self, trial: &Trial) -> Vec<f64> {
-        let mut print = vec![trial.recurrence.back() as f64];
+        let mut print = vec![trial.leg.recurrence.back() as f64];
         print.extend(trial.across().rows().flatten());
         let places = self.pieces.iter().take(4).map(|piece| {
             let window = &self.sheet.record.windows[piece.window];
@@ -456,8 +482,20 @@ impl Search<'_> {
     }
 }
 
+/// The coefficients of every form of a method of the catalogue.
+fn forms_of(method: &'static Method) -> &'static [Coefficients] {
+    static READ: LazyLock<Vec<Vec<Coefficients>>> = LazyLock::new(|| {
+        let of = |method: &Method| method.schemes.iter().map(Scheme::coefficients).collect();
+        METHODS.iter().map(of).collect()
+    });
+    let place = METHODS.iter().position(|known| std::ptr::eq(known, method));
+    place.map_or(&[], |place| &READ[place])
+}
+
 pub(super) struct Variant<'a> {
     pub(super) method: &'static Method,
+    /// The place among the forms of the method, where it is one of the catalogue.
+    form: Option<usize>,
     coefficients: &'a Coefficients,
     reading: Reading,
     ranks: &'a Ranks,
@@ -466,12 +504,26 @@ pub(super) struct Variant<'a> {
 impl Variant<'_> {
     /// `None` where the step cannot be solved, or where another way to read the inputs
     /// changes nothing.
-    pub(super) fn recurrence(&self, linear: &Linear, step: f64) -> Option<Recurrence> {
-        let plain = Recurrence::new(self.coefficients, linear, step, self.ranks)?;
-        match self.reading {
-            Reading::AtNodes | Reading::EitherSide => Some(plain),
-            Reading::Held if !plain.looks_ahead() => None,
-            reading => Some(plain.with_reading(reading)),
-        }
+    fn leg(&self, linear: &Linear, step: f64, steps: u64) -> Option<Arc<Leg>> {
+        let new = || {
+            let plain = Recurrence::new(self.coefficients, linear, step, self.ranks)?;
+            let recurrence = match self.reading {
+                Reading::AtNodes | Reading::EitherSide => plain,
+                Reading::Held if !plain.looks_ahead() => return None,
+                reading => plain.with_reading(reading),
+            };
+            Some(Leg::new(linear, recurrence, steps))
+        };
+        let Some(form) = self.form else {
+            return new().map(Arc::new);
+        };
+        let title = || Title {
+            form: (self.method.name, form),
+            reading: self.reading,
+            ranks: self.ranks.clone(),
+            step: step.to_bits(),
+            steps,
+        };
+        linear.legs.leg(title, new)
     }
 }

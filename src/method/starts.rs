@@ -10,17 +10,19 @@
 
 use nalgebra::{DMatrix, DVector};
 
+use super::against::absolute_dot;
 use super::jumps::Doubts;
 use super::linear::{Linear, Side};
 use super::march::{March, NEAR, Sides};
 use super::powers::identity;
 use super::record::{Piece, Record, Window};
 use super::recurrence::Recurrence;
-use super::trial::{Fit, Leaps, Trial};
+use super::scale::Scale;
+use super::trial::{Fit, Trial};
 use crate::number::Matrix;
 
 /// Rows compared at most.
-const MOST_ROWS: usize = 120;
+pub(super) const MOST_ROWS: usize = 120;
 /// Rows whose allowance exceeds this part of the peak are no comparison.
 const TELLING: f64 = 1e-2;
 /// Comparisons beyond the unknowns that rule a method out at least.
@@ -33,16 +35,17 @@ const MOST_WORK: usize = 1_500_000;
 /// Lays a method with a memory beside the rows from the start of the file. `reference` is a
 /// one-step recurrence of high order at the same step, which gives a start to correct.
 /// Nothing is compared where the rows are too few for the unknowns. `either` allows for
-/// nodes on jumps that see either side of them.
+/// nodes on jumps that see either side of them; `rows` are compared at most.
 pub(super) fn with_hidden_start(
     trial: &Trial,
     reference: &Recurrence,
     record: &Record,
     pieces: &[Piece],
     either: bool,
+    rows: usize,
 ) -> Fit {
     let linear = trial.linear;
-    let (size, back) = (linear.size(), trial.recurrence.back());
+    let (size, back) = (linear.size(), trial.leg.recurrence.back());
     let unknowns = size * (back - 1);
     let complete = record.states(size).is_some();
     let Some(first_window) = record.windows.first() else {
@@ -50,9 +53,9 @@ pub(super) fn with_hidden_start(
     };
     let per_row = trial.stacked().pow(3) + trial.stacked().pow(2) * unknowns;
     let fewest = 2 * unknowns.div_ceil(record.width().max(1)) + 8;
-    let most = MOST_ROWS.min((MOST_WORK / per_row.max(1)).max(fewest));
+    let most = rows.min((MOST_WORK / per_row.max(1)).max(fewest));
     // An input that jumps at the very start leaves the first row out of every piece.
-    let (from, at_start) = (linear.window.0, NEAR * trial.recurrence.step);
+    let (from, at_start) = (linear.window.0, NEAR * trial.leg.recurrence.step);
     let jumps_at_start = linear.jumps_within(from - at_start, from + at_start);
     let begins = |piece: &Piece| {
         first_window.first == 0 && piece.window == 0 && piece.start <= usize::from(jumps_at_start)
@@ -95,7 +98,7 @@ pub(super) fn with_hidden_start(
         }
     }
     // A program may have begun anew after the jump: so many rows are of its start.
-    let skip = (back as u64 - 1).div_ceil(trial.steps) as usize;
+    let skip = (back as u64 - 1).div_ceil(trial.leg.steps) as usize;
     let later = pieces
         .iter()
         .filter(|piece| !begins(piece) && piece.rows > skip);
@@ -145,9 +148,9 @@ impl System {
         let (window, begin) = (stretch.window, stretch.begin);
         let offset = if stretch.from_start { size } else { 0 };
         let unknowns = stacked - offset;
-        let memory = trial.recurrence.back() as u64 - 1;
+        let memory = trial.leg.recurrence.back() as u64 - 1;
         let origin = window.times[begin];
-        let at = |count: u64| origin + count as f64 * trial.recurrence.step;
+        let at = |count: u64| origin + count as f64 * trial.leg.recurrence.step;
         let start = if stretch.from_start {
             linear.start.clone()
         } else {
@@ -162,7 +165,7 @@ impl System {
             known.push(first.step().to_vec());
         }
         let mut stack: Vec<f64> = known.iter().flatten().copied().collect();
-        let reach = reach(&known, linear, trial.recurrence.step);
+        let reach = reach(&known, linear, trial.leg.recurrence.step);
         let reach = reach[offset..].to_vec();
         // How the unknown states act on the stack.
         let unit = |i: usize, u: usize| if i == u + offset { 1.0 } else { 0.0 };
@@ -170,7 +173,7 @@ impl System {
         let across = to_dense(trial.across());
         let mut allowance = Allowance::new(trial, either);
         let mut step = memory;
-        let mut leaps = Leaps::default();
+        let mut room = Vec::new();
         let (mut lines, mut right, mut of_row) = (Vec::new(), Vec::new(), Vec::new());
         let mut telling = 0;
         let peaks = record.peaks();
@@ -179,14 +182,14 @@ impl System {
             if count > 0 && !record.follows(window, row) {
                 break;
             }
-            let wanted = count as u64 * trial.steps;
+            let wanted = count as u64 * trial.leg.steps;
             if wanted > step {
                 let count = wanted - step;
                 if let Some(doubts) = &mut allowance.doubts {
                     doubts.next_row(trial, at(step), count);
                 }
-                trial.advance(&mut leaps, &mut stack, at(step), count, sides);
-                effect = if count == trial.steps {
+                trial.advance(&mut room, &mut stack, at(step), count, sides);
+                effect = if count == trial.leg.steps {
                     &across * &effect
                 } else {
                     to_dense(&trial.power(count)) * &effect
@@ -208,7 +211,7 @@ impl System {
             let number = window.first + row as u64;
             allowance.next_row(state, record.states_at(window, row, size), number);
             let time = window.times[row];
-            let near = NEAR * trial.recurrence.step;
+            let near = NEAR * trial.leg.recurrence.step;
             if !stretch.complete && linear.jumps_within(time - near, time + near) {
                 continue;
             }
@@ -362,48 +365,67 @@ fn to_dense(matrix: &Matrix<f64>) -> DMatrix<f64> {
 struct Allowance<'t, 'a> {
     trial: &'t Trial<'a>,
     power: Matrix<f64>,
+    room: Matrix<f64>,
     gathered: Vec<f64>,
-    states: Vec<f64>,
+    /// The largest states so far, and the forcing at the row.
+    scale: Scale,
+    noise: Vec<f64>,
     doubts: Option<Doubts>,
 }
 
 impl<'t, 'a> Allowance<'t, 'a> {
     fn new(trial: &'t Trial<'a>, either: bool) -> Allowance<'t, 'a> {
-        let stacked = trial.stacked();
+        let (linear, stacked) = (trial.linear, trial.stacked());
         Allowance {
             trial,
             power: identity(stacked),
+            room: Matrix::zero(stacked),
             gathered: vec![0.0; stacked],
+            scale: Scale {
+                states: linear.start.iter().map(|x| x.abs()).collect(),
+                forcing: vec![0.0; linear.size()],
+                slopes: vec![0.0; linear.size()],
+                time_doubt: 0.0,
+                spacing_doubt: 0.0,
+            },
+            noise: Vec::new(),
             doubts: either.then(|| Doubts::new(trial)),
-            states: trial.linear.start.iter().map(|x| x.abs()).collect(),
         }
     }
 
     /// The state of the first guess there, and those that were written: a start that
     /// overshoots makes larger roundings.
     fn next_row(&mut self, state: &[f64], written: impl Iterator<Item = (usize, f64)>, row: u64) {
+        let (trial, linear, scale) = (self.trial, self.trial.linear, &mut self.scale);
         let guessed = state.iter().copied().enumerate();
         for (place, x) in guessed.chain(written) {
-            self.states[place] = self.states[place].max(x.abs());
+            scale.states[place] = scale.states[place].max(x.abs());
         }
-        let noise = self.trial.noise_between_rows(&self.states, row);
-        let carried = self.power.map(f64::abs).apply(&noise);
-        self.gathered
-            .iter_mut()
-            .zip(carried)
-            .for_each(|(sum, x)| *sum += x);
-        self.power = self.trial.across().product(&self.power);
+        let (from, to) = linear.window;
+        let leg = &trial.leg;
+        let time = from + (row + 1) as f64 * leg.steps as f64 * leg.recurrence.step;
+        linear.forcing(time.min(to), Side::After, 0.0, &mut scale.forcing);
+        linear.forcing_slope(time.min(to), Side::After, 0.0, &mut scale.slopes);
+        let moving = scale.forcing.iter_mut().chain(&mut scale.slopes);
+        moving.for_each(|x| *x = x.abs());
+        self.noise.clear();
+        self.noise.extend(trial.rounding(scale, time, row));
+        for (sum, line) in self.gathered.iter_mut().zip(self.power.rows()) {
+            *sum += absolute_dot(line, &self.noise);
+        }
+        trial.across().product_into(&self.power, &mut self.room);
+        std::mem::swap(&mut self.power, &mut self.room);
     }
 
     fn of(&self, linear: &Linear, channel: usize) -> f64 {
         let newest = self.trial.stacked() - linear.size();
-        let mut noise = self.gathered[newest..].to_vec();
-        if let Some(doubts) = &self.doubts {
-            let other = doubts.now();
-            let other = other[newest..].iter();
-            noise.iter_mut().zip(other).for_each(|(sum, x)| *sum += x);
-        }
-        linear.observe_noise(channel, &noise, self.trial.unit, &self.states)
+        let (unit, states) = (self.trial.unit, &self.scale.states);
+        let Some(doubts) = &self.doubts else {
+            return linear.observe_noise(channel, &self.gathered[newest..], unit, states);
+        };
+        let pairs = self.gathered.iter().zip(doubts.now());
+        let noise: Vec<f64> = pairs.skip(newest).map(|(a, b)| a + b).collect();
+        linear.observe_noise(channel, &noise, unit, states)
     }
 }
 

@@ -11,8 +11,11 @@
 //! `d_k + |Phi^k| d_0 + sum_(j<k) |Phi^j| eps`, each with what moving the time by its own
 //! rounding does to inputs and states.
 
-use super::drive::Drive;
+use std::sync::Arc;
+
+use super::against::absolute_dot;
 use super::jumps::Doubts;
+use super::leg::Leg;
 use super::linear::{Linear, Side};
 use super::march::{March, NEAR, Sides};
 use super::powers::{corner, gathered, identity, to_the_power};
@@ -43,47 +46,10 @@ pub struct Fit {
 pub struct Trial<'a> {
     /// The model.
     pub linear: &'a Linear,
-    /// One step.
-    pub recurrence: Recurrence,
-    /// Steps from row to row.
-    pub steps: u64,
+    /// The steps from row to row.
+    pub leg: Arc<Leg>,
     /// Unit roundoff of the program's arithmetic.
     pub unit: f64,
-    drive: Drive,
-    /// One step, over all earlier states that the method needs and the inputs.
-    single: Matrix<f64>,
-    /// The same from row to row.
-    joined: Matrix<f64>,
-    /// Its part for the states.
-    across: Matrix<f64>,
-    /// `sum |C^j|` over the steps of one row: how roundings of single steps add up.
-    pub(super) gathered: Matrix<f64>,
-}
-
-/// What steps at once need again: their matrices by their number, and room for numbers.
-#[derive(Clone, Debug, Default)]
-pub struct Leaps {
-    known: Vec<(u64, Matrix<f64>)>,
-    all: Vec<f64>,
-}
-
-/// Numbers of steps whose matrices are kept.
-const MOST_LEAPS: usize = 16;
-
-fn over<'a>(
-    known: &'a mut Vec<(u64, Matrix<f64>)>,
-    single: &Matrix<f64>,
-    steps: u64,
-) -> &'a Matrix<f64> {
-    let place = known.iter().position(|(known, _)| *known == steps);
-    let place = place.unwrap_or_else(|| {
-        if known.len() == MOST_LEAPS {
-            known.remove(0);
-        }
-        known.push((steps, to_the_power(single, steps)));
-        known.len() - 1
-    });
-    &known[place].1
 }
 
 /// Work in multiplications that one global comparison may cost.
@@ -140,79 +106,55 @@ pub(super) fn larger(a: f64, b: f64) -> f64 {
 impl<'a> Trial<'a> {
     /// A step that is taken so many times from row to row.
     pub fn new(linear: &'a Linear, recurrence: Recurrence, steps: u64, unit: f64) -> Trial<'a> {
-        let drive = Drive::new(linear);
-        let single = drive.joined(linear, &recurrence);
-        let stacked = recurrence.size() * recurrence.back();
-        let gathered = gathered(&corner(&single, stacked), steps);
-        let joined = to_the_power(&single, steps);
-        Trial {
-            linear,
-            recurrence,
-            steps,
-            unit,
-            across: corner(&joined, stacked),
-            drive,
-            single,
-            joined,
-            gathered,
-        }
+        let leg = Arc::new(Leg::new(linear, recurrence, steps));
+        Trial { linear, leg, unit }
     }
 
     /// States and earlier states together.
     pub fn stacked(&self) -> usize {
-        self.recurrence.size() * self.recurrence.back()
+        self.leg.stacked()
     }
 
     /// True where no entry has overflowed.
     pub fn is_finite(&self) -> bool {
         let finite = |matrix: &Matrix<f64>| matrix.rows().flatten().all(|x| x.is_finite());
-        finite(&self.across) && finite(&self.gathered)
-    }
-
-    /// One row on, over the stack and what the inputs are made of.
-    pub(super) fn joined(&self) -> &Matrix<f64> {
-        &self.joined
-    }
-
-    /// Entries of what the inputs are made of.
-    pub(super) fn drive_size(&self) -> usize {
-        self.drive.size
+        finite(&self.leg.across) && finite(self.leg.gathered())
     }
 
     /// The matrix from row to row.
     pub fn across(&self) -> &Matrix<f64> {
-        &self.across
+        &self.leg.across
     }
 
     /// The stack one row on, where no input jumps in between.
     pub fn row_on(&self, stack: &[f64], time: f64) -> Vec<f64> {
         let mut stack = stack.to_vec();
-        self.steps_on(&self.joined, &mut stack, &mut Vec::new(), time);
+        self.steps_on(&self.leg.joined, &mut stack, &mut Vec::new(), time);
         stack
     }
 
     fn steps_on(&self, joined: &Matrix<f64>, stack: &mut [f64], all: &mut Vec<f64>, time: f64) {
-        let near = NEAR * self.recurrence.step;
+        let near = NEAR * self.leg.recurrence.step;
         all.clear();
         all.extend_from_slice(stack);
-        self.drive.extend(self.linear, time, Side::After, near, all);
+        self.leg.drive.extend(self.linear, time, Side::After, near, all);
         for (x, row) in stack.iter_mut().zip(joined.rows()) {
             *x = dot(row, all);
         }
     }
 
-    /// The stack so many steps on, through jumps. `leaps` keeps what will be needed again.
+    /// The stack so many steps on, through jumps. `all` is room for numbers.
     pub fn advance(
         &self,
-        leaps: &mut Leaps,
+        all: &mut Vec<f64>,
         stack: &mut Vec<f64>,
         time: f64,
         steps: u64,
         sides: Sides,
     ) {
-        let step = self.recurrence.step;
+        let step = self.leg.recurrence.step;
         let (near, size) = (NEAR * step, self.linear.size());
-        let behind = (self.recurrence.back() - 1) as f64 * step;
+        let behind = (self.leg.recurrence.back() - 1) as f64 * step;
         let end = time + steps as f64 * step + self.reach();
         // A jump at the very start is behind, unless a program still sees the value before it.
         let first = match sides {
@@ -220,15 +162,13 @@ impl<'a> Trial<'a> {
             Sides::After | Sides::Own => time - behind + near,
         };
         if !self.linear.jumps_within(first, end + near) {
-            let Leaps { known, all } = leaps;
-            let joined = match steps == self.steps {
-                true => &self.joined,
-                false => over(known, &self.single, steps),
-            };
-            return self.steps_on(joined, stack, all, time);
+            if steps == self.leg.steps {
+                return self.steps_on(&self.leg.joined, stack, all, time);
+            }
+            return self.steps_on(&self.leg.over(steps), stack, all, time);
         }
         let states = stack.chunks_exact(size).map(<[f64]>::to_vec);
-        let mut march = March::new(&self.recurrence, self.linear, sides, states, time, 0);
+        let mut march = March::new(&self.leg.recurrence, self.linear, sides, states, time, 0);
         for _ in 0..steps {
             march.step();
         }
@@ -239,47 +179,26 @@ impl<'a> Trial<'a> {
     /// How far beyond its end a step reads the inputs: the first stage of one SDIRK method
     /// lies there.
     pub(super) fn reach(&self) -> f64 {
-        let furthest = self.recurrence.nodes.iter().map(|node| node.at);
-        (furthest.fold(1.0, f64::max) - 1.0) * self.recurrence.step
+        let furthest = self.leg.recurrence.nodes.iter().map(|node| node.at);
+        (furthest.fold(1.0, f64::max) - 1.0) * self.leg.recurrence.step
     }
 
     /// The matrix over so many rows, and how roundings of single rows add up over them.
     pub(super) fn over_rows(&self, rows: u64) -> (Matrix<f64>, Matrix<f64>) {
         (
-            to_the_power(&self.across, rows),
-            gathered(&self.across, rows),
+            to_the_power(&self.leg.across, rows),
+            gathered(&self.leg.across, rows),
         )
     }
 
     /// The matrix over so many steps.
     pub(super) fn power(&self, steps: u64) -> Matrix<f64> {
-        corner(&to_the_power(&self.single, steps), self.stacked())
+        corner(&to_the_power(&self.leg.single, steps), self.stacked())
     }
 
     /// What the forcing has done from a row to the next, over all states of the stack.
     pub fn forced(&self, time: f64) -> Vec<f64> {
         self.row_on(&vec![0.0; self.stacked()], time)
-    }
-
-    /// The roundings between two rows from the largest states alone, with the forcing at the start of the window
-    /// and over it.
-    pub(super) fn noise_between_rows(&self, states: &[f64], row: u64) -> Vec<f64> {
-        let linear = self.linear;
-        let (from, to) = linear.window;
-        let mut scale = Scale {
-            states: states.to_vec(),
-            forcing: vec![0.0; linear.size()],
-            slopes: vec![0.0; linear.size()],
-            time_doubt: 0.0,
-            spacing_doubt: 0.0,
-        };
-        let time = from + (row + 1) as f64 * self.steps as f64 * self.recurrence.step;
-        let mut forcing = vec![0.0; linear.size()];
-        linear.forcing(time.min(to), Side::After, 0.0, &mut forcing);
-        scale.see_forcing(&forcing);
-        linear.forcing_slope(time.min(to), Side::After, 0.0, &mut forcing);
-        scale.see_slopes(&forcing);
-        self.rounding(&scale, time, row)
     }
 
     /// Compares a file that does not hold every state: the method runs from the start of
@@ -291,7 +210,7 @@ impl<'a> Trial<'a> {
             return Fit::NOTHING;
         };
         let stacked = self.stacked();
-        if self.recurrence.back() > 1 || window.rows() < 2 {
+        if self.leg.recurrence.back() > 1 || window.rows() < 2 {
             return Fit::NOTHING;
         }
         let peaks = record.peaks();
@@ -305,36 +224,36 @@ impl<'a> Trial<'a> {
         let mut scale = Scale::of_start(linear, &start, record);
         let mut power = identity(stacked);
         let mut gathered = vec![0.0; stacked];
+        let mut noise = Vec::new();
         let mut steepest = vec![0.0f64; width];
         let mut forcing = vec![0.0; linear.size()];
         let mut fit = Fit::NOTHING;
         let mut doubts = either.then(|| Doubts::new(self));
-        let mut leaps = Leaps::default();
+        let mut room = Vec::new();
         for row in 0..=last {
             let time = window.times[row];
             if row > 0 {
                 if !record.follows(window, row) {
                     break;
                 }
-                let before = origin + ((row - 1) as f64) * self.steps as f64 * self.recurrence.step;
-                self.advance(&mut leaps, &mut state, before, self.steps, sides);
+                let before = origin + ((row - 1) as f64) * self.leg.steps as f64 * self.leg.recurrence.step;
+                self.advance(&mut room, &mut state, before, self.leg.steps, sides);
                 if let Some(doubts) = &mut doubts {
-                    doubts.next_row(self, before, self.steps);
+                    doubts.next_row(self, before, self.leg.steps);
                 }
                 scale.see(&state);
                 linear.forcing(time, Side::After, 0.0, &mut forcing);
                 scale.see_forcing(&forcing);
                 linear.forcing_slope(time, Side::After, 0.0, &mut forcing);
                 scale.see_slopes(&forcing);
-                let noise = self.rounding(&scale, time, row as u64);
-                let carried = power.map(f64::abs).apply(&noise);
-                gathered
-                    .iter_mut()
-                    .zip(carried)
-                    .for_each(|(sum, x)| *sum += x);
-                power = self.across.product(&power);
+                noise.clear();
+                noise.extend(self.rounding(&scale, time, row as u64));
+                for (sum, line) in gathered.iter_mut().zip(power.rows()) {
+                    *sum += absolute_dot(line, &noise);
+                }
+                power = self.leg.across.product(&power);
             }
-            let near = (NEAR * self.recurrence.step).max(window.time_doubts[row]);
+            let near = (NEAR * self.leg.recurrence.step).max(window.time_doubts[row]);
             if linear.jumps_within(time - near, time + near) {
                 // An output may jump with the input: either value could stand here.
                 continue;
@@ -359,7 +278,7 @@ impl<'a> Trial<'a> {
                 }
                 let predicted = linear.observe(channel, &state, time, Side::After, near);
                 let noise = linear.observe_noise(channel, &unsure, self.unit, &scale.states);
-                let stamp = (row as f64 * self.steps as f64 + 2.0) * f64::EPSILON * time.abs()
+                let stamp = (row as f64 * self.leg.steps as f64 + 2.0) * f64::EPSILON * time.abs()
                     + row as f64 * scale.spacing_doubt
                     + window.time_doubts[row];
                 let allowed = window.doubts[at] + noise + steepest[place] * stamp;

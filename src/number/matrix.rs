@@ -64,6 +64,13 @@ impl<T: Copy + Default + Add<Output = T> + Mul<Output = T> + PartialZero> Matrix
     /// matrices of chains and ladders are mostly zeros.
     pub fn product(&self, other: &Matrix<T>) -> Matrix<T> {
         let mut result = Matrix::zero(self.size);
+        self.product_into(other, &mut result);
+        result
+    }
+
+    /// The same into a matrix that is there.
+    pub fn product_into(&self, other: &Matrix<T>, result: &mut Matrix<T>) {
+        result.entries.fill(T::default());
         for i in 0..self.size {
             for k in 0..self.size {
                 let factor = self[(i, k)];
@@ -76,7 +83,6 @@ impl<T: Copy + Default + Add<Output = T> + Mul<Output = T> + PartialZero> Matrix
                 }
             }
         }
-        result
     }
 
     /// Matrix times vector.

@@ -4,7 +4,7 @@
 use nalgebra::DMatrix;
 
 use crate::method::{
-    Coefficients, Drive, Leaps, Linear, Method, Ranks, Reading, Record, Recurrence, Scheme, Side,
+    Coefficients, Drive, Linear, Method, Ranks, Reading, Record, Recurrence, Scheme, Side,
     Sides, Trial, rank_orders,
 };
 
@@ -367,7 +367,7 @@ fn stepped(linear: &Linear, rows: &Rows, stepping: &Stepping) -> Option<Vec<f64>
     let memory = recurrence.back() as u64 - 1;
     let size = linear.size();
     let trial = Trial::new(linear, recurrence, steps, f64::EPSILON / 2.0);
-    let mut leaps = Leaps::default();
+    let mut room = Vec::new();
     let origin = linear.window.0;
     // A method with a memory begins with exact values.
     let mut stack = linear.start.clone();
@@ -390,7 +390,7 @@ fn stepped(linear: &Linear, rows: &Rows, stepping: &Stepping) -> Option<Vec<f64>
             let smooth =
                 leap > steps && !linear.jumps_within(at - (memory + 1) as f64 * step, time + step);
             let count = if smooth { leap } else { leap.min(steps) };
-            trial.advance(&mut leaps, &mut stack, at, count, stepping.sides);
+            trial.advance(&mut room, &mut stack, at, count, stepping.sides);
             done += count;
         }
         let state = if wanted < done && wanted <= memory {
@@ -421,7 +421,7 @@ pub(super) fn stopping_at(
         return None;
     }
     let trial = Trial::new(linear, whole, steps, f64::EPSILON / 2.0);
-    let mut leaps = Leaps::default();
+    let mut room = Vec::new();
     let origin = linear.window.0;
     let mut state = linear.start.clone();
     let mut done = 0;
@@ -437,7 +437,7 @@ pub(super) fn stopping_at(
                 .filter(|&jump| jump > at + near && jump < at + step - near)
                 .collect();
             if edges.is_empty() {
-                trial.advance(&mut leaps, &mut state, at, 1, Sides::Own);
+                trial.advance(&mut room, &mut state, at, 1, Sides::Own);
                 done += 1;
                 continue;
             }
@@ -447,7 +447,7 @@ pub(super) fn stopping_at(
                 let part = Recurrence::new(&coefficients, linear, edge - from, &stepping.ranks)?
                     .with_reading(stepping.reading);
                 let part = Trial::new(linear, part, 1, f64::EPSILON / 2.0);
-                part.advance(&mut Leaps::default(), &mut state, from, 1, Sides::Own);
+                part.advance(&mut Vec::new(), &mut state, from, 1, Sides::Own);
                 from = edge;
             }
             done += 1;

@@ -1,0 +1,193 @@
+//! The steps of a method from one row to the next as matrices, and a shelf for them: runs of
+//! one model at the same spacing are held against the same steps.
+
+use std::collections::HashMap;
+use std::sync::atomic::{AtomicU64, Ordering};
+use std::sync::{Arc, OnceLock, PoisonError, RwLock};
+
+use super::drive::Drive;
+use super::linear::Linear;
+use super::powers::{corner, gathered, to_the_power};
+use super::recurrence::{Ranks, Reading, Recurrence};
+use crate::number::Matrix;
+
+/// Numbers on a shelf at most; it is cleared then, so that memory does not grow with what is
+/// audited.
+const MOST_NUMBERS: usize = 2_500_000;
+/// Numbers of steps whose matrices a leg keeps.
+const MOST_LEAPS: usize = 3;
+
+/// Steps of one length from a row to the next.
+#[derive(Debug)]
+pub struct Leg {
+    /// One step.
+    pub recurrence: Recurrence,
+    /// Steps from row to row.
+    pub steps: u64,
+    pub(super) drive: Drive,
+    /// One step, over all earlier states that the method needs and the inputs.
+    pub(super) single: Matrix<f64>,
+    /// The same from row to row.
+    pub(super) joined: Matrix<f64>,
+    /// Its part for the states.
+    pub(super) across: Matrix<f64>,
+    gathered: OnceLock<Matrix<f64>>,
+    rounded: OnceLock<Rounded>,
+    /// Other numbers of steps that were asked for.
+    leaps: RwLock<Vec<(u64, Arc<Matrix<f64>>)>>,
+}
+
+/// What a rounding of size one in every step comes to from a row to the next: a line for each
+/// entry of the stack, over the states.
+#[derive(Debug)]
+pub(super) struct Rounded {
+    /// Per unit of the states.
+    pub(super) spread: Vec<f64>,
+    /// Per unit of the forcing.
+    pub(super) pull: Vec<f64>,
+}
+
+impl Leg {
+    pub(super) fn new(linear: &Linear, recurrence: Recurrence, steps: u64) -> Leg {
+        let drive = Drive::new(linear);
+        let single = drive.joined(linear, &recurrence);
+        let joined = to_the_power(&single, steps);
+        Leg {
+            across: corner(&joined, recurrence.size() * recurrence.back()),
+            recurrence,
+            steps,
+            drive,
+            single,
+            joined,
+            gathered: OnceLock::new(),
+            rounded: OnceLock::new(),
+            leaps: RwLock::default(),
+        }
+    }
+
+    /// States and earlier states together.
+    pub(super) fn stacked(&self) -> usize {
+        self.recurrence.size() * self.recurrence.back()
+    }
+
+    /// `sum |C^j|` over the steps of one row: how roundings of single steps add up.
+    pub(super) fn gathered(&self) -> &Matrix<f64> {
+        let of = || gathered(&corner(&self.single, self.stacked()), self.steps);
+        self.gathered.get_or_init(of)
+    }
+
+    /// What the roundings of each step come to from a row to the next.
+    pub(super) fn rounded(&self) -> &Rounded {
+        self.rounded.get_or_init(|| {
+            let newest = self.stacked() - self.recurrence.size();
+            let lines = |of: &Matrix<f64>| {
+                let line = |row: &[f64]| {
+                    let sum = |column: usize| {
+                        let terms = row[newest..].iter().zip(of.rows());
+                        terms.map(|(g, line)| g * line[column]).sum::<f64>()
+                    };
+                    (0..of.size()).map(sum).collect::<Vec<f64>>()
+                };
+                self.gathered().rows().flat_map(line).collect()
+            };
+            Rounded {
+                spread: lines(&self.recurrence.spread),
+                pull: lines(&self.recurrence.pull),
+            }
+        })
+    }
+
+    /// As many steps at once as are asked for.
+    pub(super) fn over(&self, steps: u64) -> Arc<Matrix<f64>> {
+        let leaps = self.leaps.read().unwrap_or_else(PoisonError::into_inner);
+        if let Some((_, matrix)) = leaps.iter().find(|(known, _)| *known == steps) {
+            return Arc::clone(matrix);
+        }
+        drop(leaps);
+        let matrix = Arc::new(to_the_power(&self.single, steps));
+        let mut leaps = self.leaps.write().unwrap_or_else(PoisonError::into_inner);
+        if leaps.len() == MOST_LEAPS {
+            leaps.remove(0);
+        }
+        leaps.push((steps, Arc::clone(&matrix)));
+        matrix
+    }
+
+    /// About how many numbers it holds.
+    fn numbers(&self) -> usize {
+        let (size, stacked) = (self.recurrence.size(), self.stacked());
+        let recurrence = self.recurrence.past.len() + self.recurrence.nodes.len() + 2;
+        let (single, across) = (self.single.size().pow(2), stacked * stacked);
+        let rounded = 2 * stacked * size;
+        recurrence * size * size + rounded + (2 + MOST_LEAPS) * single + 2 * across + 64
+    }
+}
+
+/// What tells the legs of one model apart.
+#[derive(Clone, Debug, PartialEq, Eq, Hash)]
+pub(super) struct Title {
+    /// The name of the method and the place of its form.
+    pub(super) form: (&'static str, usize),
+    pub(super) reading: Reading,
+    pub(super) ranks: Ranks,
+    /// The bits of the step.
+    pub(super) step: u64,
+    pub(super) steps: u64,
+}
+
+/// Legs that were worked out before, shared by the models of an audit.
+#[derive(Debug, Default)]
+pub struct Shelf {
+    kept: RwLock<Kept>,
+    models: AtomicU64,
+}
+
+#[derive(Debug, Default)]
+struct Kept {
+    legs: HashMap<(u64, Title), Arc<Leg>>,
+    numbers: usize,
+}
+
+/// The part of a shelf that is for one model.
+#[derive(Debug, Default)]
+pub(super) struct Section(Option<(Arc<Shelf>, u64)>);
+
+/// A model that is copied is going to be changed: its legs are others.
+impl Clone for Section {
+    fn clone(&self) -> Section {
+        Section(None)
+    }
+}
+
+impl Section {
+    pub(super) fn on(shelf: &Arc<Shelf>) -> Section {
+        let model = shelf.models.fetch_add(1, Ordering::Relaxed);
+        Section(Some((Arc::clone(shelf), model)))
+    }
+
+    /// A leg from the shelf, else a new one; `None` where it cannot be worked out.
+    pub(super) fn leg(
+        &self,
+        title: impl FnOnce() -> Title,
+        new: impl FnOnce() -> Option<Leg>,
+    ) -> Option<Arc<Leg>> {
+        let Some((shelf, model)) = &self.0 else {
+            return new().map(Arc::new);
+        };
+        let title = (*model, title());
+        let kept = shelf.kept.read().unwrap_or_else(PoisonError::into_inner);
+        if let Some(leg) = kept.legs.get(&title) {
+            return Some(Arc::clone(leg));
+        }
+        drop(kept);
+        let leg = Arc::new(new()?);
+        let mut kept = shelf.kept.write().unwrap_or_else(PoisonError::into_inner);
+        kept.numbers += leg.numbers();
+        if kept.numbers > MOST_NUMBERS {
+            kept.legs.clear();
+            kept.numbers = leg.numbers();
+        }
+        kept.legs.insert(title, Arc::clone(&leg));
+        Some(leg)
+    }
+}
