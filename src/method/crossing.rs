@@ -10,7 +10,8 @@ use super::march::{NEAR, Sides};
 use super::record::{Piece, Record, Window};
 use super::recurrence::dense;
 use super::scale::Rows;
-use super::trial::{Fit, Trial};
+use super::sheet::Sheet;
+use super::trial::{Fit, Room, Trial};
 
 /// Intervals that are compared at most, and steps that one of them may take.
 const MOST_INTERVALS: usize = 24;
@@ -55,7 +56,8 @@ pub(super) fn kicked(linear: &Linear, record: &Record) -> f64 {
 impl Trial<'_> {
     /// Compares the rows before and after every jump, for a method without a memory and a
     /// file with every state.
-    pub(super) fn across_jumps(&self, record: &Record) -> Fit {
+    pub(super) fn across_jumps(&self, sheet: &Sheet) -> Fit {
+        let (record, peaks) = (&sheet.record, &sheet.peaks);
         let size = self.linear.size();
         let Some(places) = record.states(size) else {
             return Fit::NOTHING;
@@ -64,7 +66,6 @@ impl Trial<'_> {
             return Fit::NOTHING;
         }
         let rows = Rows { record, places };
-        let peaks = rows.peaks();
         let mut intervals = Vec::new();
         for window in &record.windows {
             let touched = (0..window.rows().saturating_sub(1))
@@ -75,7 +76,7 @@ impl Trial<'_> {
         let mut fit = Fit::NOTHING;
         for &(window, row) in intervals.iter().step_by(stride) {
             let sides = [Sides::After, Sides::Own, Sides::Before];
-            let tried = sides.map(|sides| self.over(&rows, window, row, &peaks, sides));
+            let tried = sides.map(|sides| self.over(&rows, window, row, peaks, sides));
             let best = tried.into_iter().min_by(|a, b| a.ratio.total_cmp(&b.ratio));
             fit = fit.and(best.unwrap_or(Fit::NOTHING));
         }
@@ -117,7 +118,7 @@ impl Trial<'_> {
         let states = rows.values(window, row);
         let mut predicted = states.clone();
         self.advance(
-            &mut Vec::new(),
+            &mut Room::default(),
             &mut predicted,
             time,
             self.leg.steps,

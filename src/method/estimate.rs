@@ -2,13 +2,14 @@
 //! step, so the error in the file tells.
 
 use super::exponential::exponential;
+use super::leg::Leg;
 use super::linear::{Linear, Side};
 use super::march::{March, Sides};
 use super::powers::identity;
 use super::record::{Piece, Record};
 use super::recurrence::dense;
 use super::search::{Search, Variant};
-use super::trial::GLANCE;
+use super::trial::{GLANCE, Room, Trial};
 
 /// More steps from row to row than this are tried only where they are claimed.
 const MOST_GUESSED: u64 = 10_000;
@@ -26,16 +27,19 @@ pub(super) struct Targets {
     begin: usize,
     /// The state there.
     start: Vec<f64>,
+    /// How many rows on the points are.
+    rows: Vec<usize>,
     points: Vec<Target>,
 }
 
-/// One of them: how many rows on, which channel, how large and how far it is known.
+/// One of them: which of the rows, which channel, how large and how far it is known.
 #[derive(Clone, Copy, Debug)]
 struct Target {
-    rows_on: usize,
+    row: usize,
     place: usize,
     error: f64,
     noise: f64,
+    weight: f64,
     exact: f64,
     peak: f64,
 }
@@ -80,7 +84,7 @@ impl Targets {
                 window: piece.window,
                 begin: piece.start,
                 start,
-                points: Vec::new(),
+                ..Targets::default()
             };
             let mut power = identity(size);
             let rows = piece.rows.min(MOST_ROWS);
@@ -130,11 +134,15 @@ impl Targets {
                 let (error, exact) = (errors[place], window.values[at] - errors[place]);
                 let noise = window.doubts[at] + doubts[place] + 32.0 * record.unit * peak;
                 if error.is_finite() && peak > 0.0 {
+                    if self.rows.last() != Some(&rows_on) {
+                        self.rows.push(rows_on);
+                    }
                     self.points.push(Target {
-                        rows_on,
+                        row: self.rows.len() - 1,
                         place,
                         error,
                         noise,
+                        weight: noise.powi(-2),
                         exact,
                         peak,
                     });
@@ -203,7 +211,7 @@ impl Search<'_> {
         let trial = self.trial(variant, step, steps)?;
         let targets = &self.targets;
         let window = self.sheet.record.windows.get(targets.window)?;
-        let last = targets.points.last()?.rows_on;
+        let last = *targets.rows.last()?;
         let origin = window.times[targets.begin];
         if !self
             .linear
@@ -212,47 +220,23 @@ impl Search<'_> {
         {
             return None;
         }
-        let memory = trial.leg.recurrence.back() as u64 - 1;
-        let start = targets.start.clone();
-        let mut known = vec![start.clone()];
-        if memory > 0 {
-            let reference = self.reference(step)?;
-            let reference = &reference.recurrence;
-            let mut first = March::new(reference, self.linear, Sides::After, [start], origin, 0);
-            for _ in 0..memory {
-                known.push(first.step().to_vec());
-            }
-        }
+        let course = trial.leg.course(&targets.start, origin, &targets.rows, || {
+            self.course(&trial, origin)
+        })?;
         let size = self.linear.size();
-        let mut stack: Vec<f64> = known.iter().flatten().copied().collect();
-        let mut room = Vec::new();
-        let mut done = memory;
         let (mut own, mut both, mut largest) = (0.0f64, 0.0f64, 0.0f64);
-        let mut points = targets.points.iter().peekable();
-        while let Some(row) = points.peek().map(|target| target.rows_on) {
-            let wanted = row as u64 * steps;
-            if wanted > done {
-                let time = origin + done as f64 * step;
-                trial.advance(&mut room, &mut stack, time, wanted - done, Sides::After);
-                done = wanted;
+        for target in &targets.points {
+            let state = &course[target.row * size..][..size];
+            let channel = self.sheet.record.channels[target.place];
+            let time = window.times[targets.begin + targets.rows[target.row]];
+            let value = self.linear.observe(channel, state, time, Side::After, 0.0);
+            let error = value - target.exact;
+            if !error.is_finite() {
+                return None;
             }
-            let state = match known.get(wanted as usize) {
-                Some(known) if wanted < done => &known[..],
-                _ => &stack[stack.len() - size..],
-            };
-            while let Some(target) = points.next_if(|target| target.rows_on == row) {
-                let channel = self.sheet.record.channels[target.place];
-                let time = window.times[targets.begin + row];
-                let value = self.linear.observe(channel, state, time, Side::After, 0.0);
-                let error = value - target.exact;
-                if !error.is_finite() {
-                    return None;
-                }
-                let weight = target.noise.powi(-2);
-                own += weight * error * error;
-                both += weight * error * target.error;
-                largest = largest.max(error.abs() / target.peak);
-            }
+            own += target.weight * error * error;
+            both += target.weight * error * target.error;
+            largest = largest.max(error.abs() / target.peak);
         }
         (both != 0.0).then(|| Projected {
             along: own / both,
@@ -260,6 +244,42 @@ impl Search<'_> {
             doubt: 3.0 * own.sqrt() / both.abs(),
             size: largest,
         })
+    }
+
+    /// The states that a method comes to at the rows of the targets.
+    fn course(&self, trial: &Trial, origin: f64) -> Option<Vec<f64>> {
+        let (size, targets) = (self.linear.size(), &self.targets);
+        let Leg {
+            recurrence, steps, ..
+        } = &*trial.leg;
+        let memory = recurrence.back() as u64 - 1;
+        let start = targets.start.clone();
+        let mut known = vec![start.clone()];
+        if memory > 0 {
+            let reference = self.reference(recurrence.step)?;
+            let reference = &reference.recurrence;
+            let mut first = March::new(reference, self.linear, Sides::After, [start], origin, 0);
+            for _ in 0..memory {
+                known.push(first.step().to_vec());
+            }
+        }
+        let mut stack: Vec<f64> = known.iter().flatten().copied().collect();
+        let mut room = Room::default();
+        let mut done = memory;
+        let mut course = Vec::with_capacity(targets.rows.len() * size);
+        for row in &targets.rows {
+            let wanted = *row as u64 * steps;
+            if wanted > done {
+                let time = origin + done as f64 * recurrence.step;
+                trial.advance(&mut room, &mut stack, time, wanted - done, Sides::After);
+                done = wanted;
+            }
+            course.extend_from_slice(match known.get(wanted as usize) {
+                Some(known) if wanted < done => known,
+                _ => &stack[stack.len() - size..],
+            });
+        }
+        Some(course)
     }
 }
 

@@ -16,7 +16,8 @@ use super::linear::Linear;
 use super::ranks::rank_orders;
 use super::record::{Piece, Record};
 use super::recurrence::Reading;
-use super::search::{Found, Search, Sheet};
+use super::search::{Found, Search};
+use super::sheet::Sheet;
 use super::trial::Fit;
 
 /// One method at one step, compared with the rows.

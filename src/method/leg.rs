@@ -35,6 +35,17 @@ pub struct Leg {
     rounded: OnceLock<Rounded>,
     /// Other numbers of steps that were asked for.
     leaps: RwLock<Vec<(u64, Arc<Matrix<f64>>)>>,
+    /// Where it came to from a start.
+    course: RwLock<Option<Arc<Course>>>,
+}
+
+/// The states after so many rows from a start.
+#[derive(Debug)]
+struct Course {
+    start: Vec<f64>,
+    origin: f64,
+    rows: Vec<usize>,
+    states: Arc<Vec<f64>>,
 }
 
 /// What a rounding of size one in every step comes to from a row to the next: a line for each
@@ -62,6 +73,7 @@ impl Leg {
             gathered: OnceLock::new(),
             rounded: OnceLock::new(),
             leaps: RwLock::default(),
+            course: RwLock::default(),
         }
     }
 
@@ -113,21 +125,51 @@ impl Leg {
         matrix
     }
 
+    /// The states after so many rows from a start at a time, `find` where it is not the last
+    /// one asked for; `None` where there are none.
+    pub(super) fn course(
+        &self,
+        start: &[f64],
+        origin: f64,
+        rows: &[usize],
+        find: impl FnOnce() -> Option<Vec<f64>>,
+    ) -> Option<Arc<Vec<f64>>> {
+        let last = self.course.read().unwrap_or_else(PoisonError::into_inner);
+        if let Some(last) = &*last
+            && last.start == start
+            && last.origin.to_bits() == origin.to_bits()
+            && last.rows == rows
+        {
+            return Some(Arc::clone(&last.states));
+        }
+        drop(last);
+        let states = Arc::new(find()?);
+        let mut last = self.course.write().unwrap_or_else(PoisonError::into_inner);
+        *last = Some(Arc::new(Course {
+            start: start.to_vec(),
+            origin,
+            rows: rows.to_vec(),
+            states: Arc::clone(&states),
+        }));
+        Some(states)
+    }
+
     /// About how many numbers it holds.
     fn numbers(&self) -> usize {
         let (size, stacked) = (self.recurrence.size(), self.stacked());
         let recurrence = self.recurrence.past.len() + self.recurrence.nodes.len() + 2;
         let (single, across) = (self.single.size().pow(2), stacked * stacked);
         let rounded = 2 * stacked * size;
-        recurrence * size * size + rounded + (2 + MOST_LEAPS) * single + 2 * across + 64
+        let course = 64 * (size + 1);
+        recurrence * size * size + rounded + course + (2 + MOST_LEAPS) * single + 2 * across
     }
 }
 
 /// What tells the legs of one model apart.
 #[derive(Clone, Debug, PartialEq, Eq, Hash)]
 pub(super) struct Title {
-    /// The name of the method and the place of its form.
-    pub(super) form: (&'static str, usize),
+    /// Where the method lies in memory, and the place of its form.
+    pub(super) form: (usize, usize),
     pub(super) reading: Reading,
     pub(super) ranks: Ranks,
     /// The bits of the step.

@@ -31,6 +31,7 @@ mod recurrence;
 mod scale;
 mod scheme;
 mod search;
+mod sheet;
 mod stability;
 mod starts;
 mod trial;
@@ -52,4 +53,4 @@ pub use search::MOST_STEPS;
 pub use stability::{
     Rational, Stability, amplification, approx_stability, approx_stable_length, of_stages, roots,
 };
-pub use trial::{Fit, Trial};
+pub use trial::{Fit, Room, Trial};

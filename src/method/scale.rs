@@ -55,11 +55,6 @@ pub(super) struct Rows<'a> {
 }
 
 impl Rows<'_> {
-    pub(super) fn peaks(&self) -> Vec<f64> {
-        let peaks = self.record.peaks();
-        self.places.iter().map(|&place| peaks[place]).collect()
-    }
-
     pub(super) fn values(&self, window: &Window, row: usize) -> Vec<f64> {
         let line = &window.values[row * self.record.width()..];
         self.places.iter().map(|&place| line[place]).collect()

@@ -3,16 +3,16 @@
 use std::sync::{Arc, LazyLock};
 
 use super::catalogue::{METHODS, Method};
-use super::drive::Drive;
 use super::estimate::{Estimate, Targets};
 use super::evidence::{Skipped, Tried};
 use super::laid::Laid;
 use super::leg::{Leg, Title};
 use super::linear::Linear;
 use super::march::Sides;
-use super::record::{Piece, Record};
+use super::record::Piece;
 use super::recurrence::{Ranks, Reading, Recurrence};
 use super::scheme::{Coefficients, Scheme};
+use super::sheet::Sheet;
 use super::starts::{FEW_LEFT, MOST_ROWS, with_hidden_start};
 use super::trial::{Fit, GLANCE, Trial, larger};
 
@@ -26,46 +26,6 @@ const SWEPT: [u64; 19] = [
 const MOST_SWEPT: usize = 24;
 /// Most steps from row to row.
 pub const MOST_STEPS: u64 = 200_000;
-/// Pairs of rows that are compared where the spacing varies.
-const MOST_PAIRS: usize = 120;
-
-/// Rows laid out for the comparison: of the file, or the exact values in their place.
-pub(super) struct Sheet {
-    pub(super) record: Record,
-    peaks: Vec<f64>,
-    /// Stretches without a jump, or pairs of rows where the spacing varies; none where states
-    /// are missing.
-    laid: Vec<Laid>,
-}
-
-impl Sheet {
-    pub(super) fn new(linear: &Linear, record: Record, pieces: &[Piece]) -> Sheet {
-        let drive = Drive::new(linear);
-        let lay = |piece: Piece| Laid::new(linear, &drive, &record, piece);
-        let laid = if record.spacing.is_some() {
-            pieces.iter().filter_map(|piece| lay(*piece)).collect()
-        } else {
-            let pairs = pieces.iter().flat_map(|piece| {
-                let rows = piece.start..piece.start + piece.rows - 1;
-                rows.map(|start| Piece {
-                    start,
-                    rows: 2,
-                    ..*piece
-                })
-            });
-            let pairs: Vec<Piece> = pairs.collect();
-            let stride = pairs.len() / MOST_PAIRS + 1;
-            pairs.into_iter().step_by(stride).filter_map(lay).collect()
-        };
-        let all = record.peaks();
-        let places = record.states(linear.size()).unwrap_or_default();
-        Sheet {
-            peaks: places.iter().map(|&place| all[place]).collect(),
-            record,
-            laid,
-        }
-    }
-}
 
 pub(super) struct Search<'a> {
     pub(super) linear: &'a Linear,
@@ -270,7 +230,7 @@ impl Search<'_> {
                 tried.apart = fit.ratio;
             } else if fit.holds() {
                 tried.apart = self.fit(&trial, &self.solution, variant.reading, true).ratio;
-                tried.at_jumps = trial.across_jumps(&self.sheet.record);
+                tried.at_jumps = trial.across_jumps(&self.sheet);
             }
             found.tried.push(tried);
         }
@@ -351,20 +311,18 @@ impl Search<'_> {
             return Fit::NOTHING;
         }
         let either = reading == Reading::EitherSide;
-        let record = &sheet.record;
         if self.is_free(trial) {
             return match self.reference(trial.leg.recurrence.step) {
                 Some(reference) => {
                     let reference = &reference.recurrence;
                     let over =
-                        |rows| with_hidden_start(trial, reference, record, &self.pieces, either, rows);
-                    if !whole {
-                        let glance = over(GLANCE);
-                        if glance.ratio > 1.0 {
-                            return glance;
-                        }
-                    }
-                    over(MOST_ROWS)
+                        |rows| with_hidden_start(trial, reference, sheet, &self.pieces, either, rows);
+                    // A few rows more than there are unknowns rule most methods out.
+                    let few = trial.leg.recurrence.back() + FEW_LEFT / 2;
+                    let glances = if whole { &[][..] } else { &[few, GLANCE] };
+                    let mut glances = glances.iter().map(|&rows| over(rows));
+                    let ruled_out = glances.find(|glance| glance.ratio > 1.0);
+                    ruled_out.unwrap_or_else(|| over(MOST_ROWS))
                 }
                 None => Fit::NOTHING,
             };
@@ -376,11 +334,11 @@ impl Search<'_> {
             }
             return glance;
         }
-        let mut best = trial.from_start(record, Sides::After, either);
+        let mut best = trial.from_start(sheet, Sides::After, either);
         let (from, to) = self.linear.window;
         if !best.holds() && !either && self.linear.jumps_within(from, to) {
             for sides in [Sides::Own, Sides::Before] {
-                let other = trial.from_start(record, sides, either);
+                let other = trial.from_start(sheet, sides, either);
                 if other.ratio < best.ratio {
                     best = other;
                 }
@@ -518,7 +476,7 @@ impl Variant<'_> {
             return new().map(Arc::new);
         };
         let title = || Title {
-            form: (self.method.name, form),
+            form: (std::ptr::from_ref(self.method).addr(), form),
             reading: self.reading,
             ranks: self.ranks.clone(),
             step: step.to_bits(),

@@ -18,7 +18,8 @@ use super::powers::identity;
 use super::record::{Piece, Record, Window};
 use super::recurrence::Recurrence;
 use super::scale::Scale;
-use super::trial::{Fit, Trial};
+use super::sheet::Sheet;
+use super::trial::{Fit, Room, Trial};
 use crate::number::Matrix;
 
 /// Rows compared at most.
@@ -39,11 +40,12 @@ const MOST_WORK: usize = 1_500_000;
 pub(super) fn with_hidden_start(
     trial: &Trial,
     reference: &Recurrence,
-    record: &Record,
+    sheet: &Sheet,
     pieces: &[Piece],
     either: bool,
     rows: usize,
 ) -> Fit {
+    let record = &sheet.record;
     let linear = trial.linear;
     let (size, back) = (linear.size(), trial.leg.recurrence.back());
     let unknowns = size * (back - 1);
@@ -79,8 +81,8 @@ pub(super) fn with_hidden_start(
         _ => None,
     };
     let fit = |stretch: &Stretch, sides: Sides| {
-        let system = System::new(trial, reference, record, stretch, sides, either);
-        system.map_or(Fit::NOTHING, |system| system.solve(record))
+        let system = System::new(trial, reference, sheet, stretch, sides, either);
+        system.map_or(Fit::NOTHING, |system| system.solve(&sheet.all_peaks))
     };
     let mut found = Fit::NOTHING;
     if let Some(start) = start.filter(enough) {
@@ -138,11 +140,12 @@ impl System {
     fn new(
         trial: &Trial,
         reference: &Recurrence,
-        record: &Record,
+        sheet: &Sheet,
         stretch: &Stretch,
         sides: Sides,
         either: bool,
     ) -> Option<System> {
+        let (record, peaks) = (&sheet.record, &sheet.all_peaks);
         let linear = trial.linear;
         let (size, stacked) = (linear.size(), trial.stacked());
         let (window, begin) = (stretch.window, stretch.begin);
@@ -173,10 +176,9 @@ impl System {
         let across = to_dense(trial.across());
         let mut allowance = Allowance::new(trial, either);
         let mut step = memory;
-        let mut room = Vec::new();
+        let mut room = Room::default();
         let (mut lines, mut right, mut of_row) = (Vec::new(), Vec::new(), Vec::new());
         let mut telling = 0;
-        let peaks = record.peaks();
         for count in usize::from(stretch.from_start)..stretch.rows {
             let row = begin + count;
             if count > 0 && !record.follows(window, row) {
@@ -274,7 +276,7 @@ impl System {
     /// true one, whose size is at most that of the states: the best `k` is taken. (The plain
     /// solution, all of them, grows without bound where columns are parallel, as those of
     /// parasitic modes that have died out are.)
-    fn solve(self, record: &Record) -> Fit {
+    fn solve(self, peaks: &[f64]) -> Fit {
         let (equations, unknowns) = self.matrix.shape();
         let mut matrix = self.matrix;
         let mut furthest = 0.0f64;
@@ -316,7 +318,6 @@ impl System {
         if noise.is_nan() || (hidden && ratio <= 1.0) {
             return Fit::NOTHING;
         }
-        let peaks = record.peaks();
         let shares = self
             .of_row
             .iter()

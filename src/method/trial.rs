@@ -19,9 +19,9 @@ use super::leg::Leg;
 use super::linear::{Linear, Side};
 use super::march::{March, NEAR, Sides};
 use super::powers::{corner, gathered, identity, to_the_power};
-use super::record::Record;
 use super::recurrence::Recurrence;
 use super::scale::Scale;
+use super::sheet::Sheet;
 use crate::number::{Matrix, dot};
 
 /// How well rows agree with a prediction.
@@ -50,6 +50,14 @@ pub struct Trial<'a> {
     pub leg: Arc<Leg>,
     /// Unit roundoff of the program's arithmetic.
     pub unit: f64,
+}
+
+/// What steps at once leave behind for those after them: the matrix of a number of steps, and
+/// room for numbers.
+#[derive(Clone, Debug, Default)]
+pub struct Room {
+    leap: Option<(u64, Arc<Matrix<f64>>)>,
+    all: Vec<f64>,
 }
 
 /// Work in multiplications that one global comparison may cost.
@@ -143,10 +151,10 @@ impl<'a> Trial<'a> {
         }
     }
 
-    /// The stack so many steps on, through jumps. `all` is room for numbers.
+    /// The stack so many steps on, through jumps. A room is for one trial.
     pub fn advance(
         &self,
-        all: &mut Vec<f64>,
+        room: &mut Room,
         stack: &mut Vec<f64>,
         time: f64,
         steps: u64,
@@ -162,10 +170,15 @@ impl<'a> Trial<'a> {
             Sides::After | Sides::Own => time - behind + near,
         };
         if !self.linear.jumps_within(first, end + near) {
+            let Room { leap, all } = room;
             if steps == self.leg.steps {
                 return self.steps_on(&self.leg.joined, stack, all, time);
             }
-            return self.steps_on(&self.leg.over(steps), stack, all, time);
+            let leap = match leap.take() {
+                Some((known, matrix)) if known == steps => leap.insert((known, matrix)),
+                _ => leap.insert((steps, self.leg.over(steps))),
+            };
+            return self.steps_on(&leap.1, stack, all, time);
         }
         let states = stack.chunks_exact(size).map(<[f64]>::to_vec);
         let mut march = March::new(&self.leg.recurrence, self.linear, sides, states, time, 0);
@@ -204,8 +217,8 @@ impl<'a> Trial<'a> {
     /// Compares a file that does not hold every state: the method runs from the start of
     /// the window, through jumps, and meets the rows of the first window. `either` allows
     /// for nodes on jumps that see the other side than the one given.
-    pub fn from_start(&self, record: &Record, sides: Sides, either: bool) -> Fit {
-        let linear = self.linear;
+    pub(super) fn from_start(&self, sheet: &Sheet, sides: Sides, either: bool) -> Fit {
+        let (linear, record, peaks) = (self.linear, &sheet.record, &sheet.all_peaks);
         let Some(window) = record.windows.first() else {
             return Fit::NOTHING;
         };
@@ -213,7 +226,6 @@ impl<'a> Trial<'a> {
         if self.leg.recurrence.back() > 1 || window.rows() < 2 {
             return Fit::NOTHING;
         }
-        let peaks = record.peaks();
         let width = record.width();
         let most = (GLOBAL_WORK / stacked.pow(3).max(1)).max(4);
         let last = (window.rows() - 1).min(most);
@@ -229,7 +241,7 @@ impl<'a> Trial<'a> {
         let mut forcing = vec![0.0; linear.size()];
         let mut fit = Fit::NOTHING;
         let mut doubts = either.then(|| Doubts::new(self));
-        let mut room = Vec::new();
+        let mut room = Room::default();
         for row in 0..=last {
             let time = window.times[row];
             if row > 0 {

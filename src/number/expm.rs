@@ -318,7 +318,10 @@ impl<T: Real> Propagator<T> {
             term = self.generator.apply(&term);
             size = self.magnitude.apply(&size);
             for (x, s) in term.iter_mut().zip(&mut size) {
-                *x = (*x * time_exact).divide(k);
+                *x = *x * time_exact;
+                if k > 1 {
+                    *x = x.divide(k);
+                }
                 *s *= time_size / f64::from(k) * UPWARD;
             }
             for (i, &x) in term.iter().enumerate() {

@@ -4,7 +4,7 @@
 use nalgebra::DMatrix;
 
 use crate::method::{
-    Coefficients, Drive, Linear, Method, Ranks, Reading, Record, Recurrence, Scheme, Side,
+    Coefficients, Drive, Linear, Method, Ranks, Reading, Record, Recurrence, Room, Scheme, Side,
     Sides, Trial, rank_orders,
 };
 
@@ -367,7 +367,7 @@ fn stepped(linear: &Linear, rows: &Rows, stepping: &Stepping) -> Option<Vec<f64>
     let memory = recurrence.back() as u64 - 1;
     let size = linear.size();
     let trial = Trial::new(linear, recurrence, steps, f64::EPSILON / 2.0);
-    let mut room = Vec::new();
+    let mut room = Room::default();
     let origin = linear.window.0;
     // A method with a memory begins with exact values.
     let mut stack = linear.start.clone();
@@ -421,7 +421,7 @@ pub(super) fn stopping_at(
         return None;
     }
     let trial = Trial::new(linear, whole, steps, f64::EPSILON / 2.0);
-    let mut room = Vec::new();
+    let mut room = Room::default();
     let origin = linear.window.0;
     let mut state = linear.start.clone();
     let mut done = 0;
@@ -447,7 +447,7 @@ pub(super) fn stopping_at(
                 let part = Recurrence::new(&coefficients, linear, edge - from, &stepping.ranks)?
                     .with_reading(stepping.reading);
                 let part = Trial::new(linear, part, 1, f64::EPSILON / 2.0);
-                part.advance(&mut Vec::new(), &mut state, from, 1, Sides::Own);
+                part.advance(&mut Room::default(), &mut state, from, 1, Sides::Own);
                 from = edge;
             }
             done += 1;
