@@ -220,9 +220,11 @@ impl Search<'_> {
         {
             return None;
         }
-        let course = trial.leg.course(&targets.start, origin, &targets.rows, || {
-            self.course(&trial, origin)
-        })?;
+        let course = trial
+            .leg
+            .course(&targets.start, origin, &targets.rows, || {
+                self.course(&trial, origin)
+            })?;
         let size = self.linear.size();
         let (mut own, mut both, mut largest) = (0.0f64, 0.0f64, 0.0f64);
         for target in &targets.points {

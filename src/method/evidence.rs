@@ -405,7 +405,7 @@ fn search<'a>(
         targets: Targets::new(linear, record, &pieces),
         pieces,
         orders: rank_orders(linear),
-        reference: super::find("Gauss 6"),
+        reference: METHODS.iter().find(|method| method.name == "Gauss 6"),
         exact: exact_fit(record),
         claimed,
         claimed_steps,

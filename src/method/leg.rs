@@ -8,7 +8,7 @@ use std::sync::{Arc, OnceLock, PoisonError, RwLock};
 use super::drive::Drive;
 use super::linear::Linear;
 use super::powers::{corner, gathered, to_the_power};
-use super::recurrence::{Ranks, Reading, Recurrence};
+use super::recurrence::{Reading, Recurrence};
 use crate::number::Matrix;
 
 /// Numbers on a shelf at most; it is cleared then, so that memory does not grow with what is
@@ -166,12 +166,13 @@ impl Leg {
 }
 
 /// What tells the legs of one model apart.
-#[derive(Clone, Debug, PartialEq, Eq, Hash)]
+#[derive(Clone, Copy, Debug, PartialEq, Eq, Hash)]
 pub(super) struct Title {
     /// Where the method lies in memory, and the place of its form.
     pub(super) form: (usize, usize),
     pub(super) reading: Reading,
-    pub(super) ranks: Ranks,
+    /// Which of the orders of states.
+    pub(super) order: usize,
     /// The bits of the step.
     pub(super) step: u64,
     pub(super) steps: u64,

@@ -86,32 +86,25 @@ impl Rows<'_> {
         let mut rates = vec![0.0f64; self.places.len()];
         let first = row.saturating_sub(1).max(piece.start);
         let last = (row + 1).min(piece.start + piece.rows - 1);
-        for at in first..last {
-            let gap = window.times[at + 1] - window.times[at];
-            let pairs = self
-                .values(window, at)
-                .into_iter()
-                .zip(self.values(window, at + 1));
-            for (rate, (before, after)) in rates.iter_mut().zip(pairs) {
-                *rate = rate.max((after - before).abs() / gap);
-            }
-        }
+        (first..last).for_each(|at| self.see_rate(window, at, &mut rates));
         rates
     }
 
     pub(super) fn steepest(&self, window: &Window, piece: Piece) -> Vec<f64> {
         let mut steepest = vec![0.0f64; self.places.len()];
-        for row in piece.start..piece.start + piece.rows - 1 {
-            let gap = window.times[row + 1] - window.times[row];
-            let pairs = self
-                .values(window, row)
-                .into_iter()
-                .zip(self.values(window, row + 1));
-            for (rate, (before, after)) in steepest.iter_mut().zip(pairs) {
-                *rate = rate.max((after - before).abs() / gap);
-            }
-        }
+        let rows = piece.start..piece.start + piece.rows - 1;
+        rows.for_each(|row| self.see_rate(window, row, &mut steepest));
         steepest
+    }
+
+    /// How fast each state moves from a row to the next, where that is faster.
+    fn see_rate(&self, window: &Window, row: usize, rates: &mut [f64]) {
+        let gap = window.times[row + 1] - window.times[row];
+        let (before, after) =
+            window.values[row * self.record.width()..].split_at(self.record.width());
+        for (rate, &place) in rates.iter_mut().zip(&self.places) {
+            *rate = rate.max((after[place] - before[place]).abs() / gap);
+        }
     }
 }
 

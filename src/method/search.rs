@@ -67,6 +67,7 @@ impl Search<'_> {
             coefficients: forms_of(self.reference?).first()?,
             reading: Reading::AtNodes,
             ranks: &Ranks::new(),
+            order: 0,
         };
         variant.leg(self.linear, step, 1)
     }
@@ -92,13 +93,14 @@ impl Search<'_> {
             Coefficients::SemiImplicit => self.orders.clone(),
             _ => vec![Ranks::new()],
         };
-        for ranks in orders {
+        for (order, ranks) in orders.iter().enumerate() {
             let variant = Variant {
                 method,
                 form,
                 coefficients,
                 reading,
-                ranks: &ranks,
+                ranks,
+                order,
             };
             match self.sheet.record.spacing {
                 Some((spacing, _)) => self.even(&variant, spacing, &mut found),
@@ -155,6 +157,7 @@ impl Search<'_> {
                 coefficients: &forms_of(method)[place],
                 reading: Reading::AtNodes,
                 ranks: &Ranks::new(),
+                order: 0,
             };
             self.at_counts(&variant, spacing, SWEPT.to_vec(), None, &mut found);
         }
@@ -229,7 +232,9 @@ impl Search<'_> {
             if fit.holds() && self.exact.holds() {
                 tried.apart = fit.ratio;
             } else if fit.holds() {
-                tried.apart = self.fit(&trial, &self.solution, variant.reading, true).ratio;
+                tried.apart = self
+                    .fit(&trial, &self.solution, variant.reading, true)
+                    .ratio;
                 tried.at_jumps = trial.across_jumps(&self.sheet);
             }
             found.tried.push(tried);
@@ -315,8 +320,9 @@ impl Search<'_> {
             return match self.reference(trial.leg.recurrence.step) {
                 Some(reference) => {
                     let reference = &reference.recurrence;
-                    let over =
-                        |rows| with_hidden_start(trial, reference, sheet, &self.pieces, either, rows);
+                    let over = |rows| {
+                        with_hidden_start(trial, reference, sheet, &self.pieces, either, rows)
+                    };
                     // A few rows more than there are unknowns rule most methods out.
                     let few = trial.leg.recurrence.back() + FEW_LEFT / 2;
                     let glances = if whole { &[][..] } else { &[few, GLANCE] };
@@ -456,7 +462,9 @@ pub(super) struct Variant<'a> {
     form: Option<usize>,
     coefficients: &'a Coefficients,
     reading: Reading,
+    /// The ranks of the states, and which of their orders that is.
     ranks: &'a Ranks,
+    order: usize,
 }
 
 impl Variant<'_> {
@@ -478,7 +486,7 @@ impl Variant<'_> {
         let title = || Title {
             form: (std::ptr::from_ref(self.method).addr(), form),
             reading: self.reading,
-            ranks: self.ranks.clone(),
+            order: self.order,
             step: step.to_bits(),
             steps,
         };

@@ -14,7 +14,7 @@ use super::against::absolute_dot;
 use super::jumps::Doubts;
 use super::linear::{Linear, Side};
 use super::march::{March, NEAR, Sides};
-use super::powers::identity;
+use super::powers::{corner, identity};
 use super::record::{Piece, Record, Window};
 use super::recurrence::Recurrence;
 use super::scale::Scale;
@@ -194,7 +194,7 @@ impl System {
                 effect = if count == trial.leg.steps {
                     &across * &effect
                 } else {
-                    to_dense(&trial.power(count)) * &effect
+                    to_dense(&corner(&trial.leg.over(count), stacked)) * &effect
                 };
                 step = wanted;
             }
@@ -345,12 +345,13 @@ fn reach(known: &[Vec<f64>], linear: &Linear, step: f64) -> Vec<f64> {
         let pairs = largest.iter_mut().zip(state);
         pairs.for_each(|(largest, x)| *largest = largest.max(x.abs()));
     }
+    let size = linear.matrix.map(f64::abs);
     let mut reach = Vec::new();
     for _ in known {
         reach.extend_from_slice(&largest);
         let mut term = largest.clone();
         for k in 1..=4 {
-            term = linear.matrix.map(f64::abs).apply(&term);
+            term = size.apply(&term);
             term.iter_mut().for_each(|x| *x *= step / f64::from(k));
             largest.iter_mut().zip(&term).for_each(|(sum, x)| *sum += x);
         }

@@ -314,9 +314,12 @@ impl<T: Real> Propagator<T> {
         let mut term = flow.value.clone();
         let mut size: Vec<f64> = flow.value.iter().map(|x| x.to_f64().abs()).collect();
         let mut lost = size.clone();
+        let (mut next_term, mut next_size) = (term.clone(), size.clone());
         for k in 1..=count {
-            term = self.generator.apply(&term);
-            size = self.magnitude.apply(&size);
+            self.generator.apply_to(&term, &mut next_term);
+            self.magnitude.apply_to(&size, &mut next_size);
+            std::mem::swap(&mut term, &mut next_term);
+            std::mem::swap(&mut size, &mut next_size);
             for (x, s) in term.iter_mut().zip(&mut size) {
                 *x = *x * time_exact;
                 if k > 1 {

@@ -85,6 +85,13 @@ impl<T: Copy + Default + Add<Output = T> + Mul<Output = T> + PartialZero> Matrix
         }
     }
 
+    /// Matrix times vector into another one.
+    pub fn apply_to(&self, vector: &[T], result: &mut [T]) {
+        for (entry, row) in result.iter_mut().zip(self.rows()) {
+            *entry = dot(row, vector);
+        }
+    }
+
     /// Matrix times vector.
     pub fn apply(&self, vector: &[T]) -> Vec<T> {
         self.rows().map(|row| dot(row, vector)).collect()

@@ -109,17 +109,34 @@ impl Layout {
         ];
         // Rows of numbers alone come first; a column of words is borne where it must be.
         let mut best: Option<((bool, usize), Layout)> = None;
-        for (words, separator) in [false, true]
-            .into_iter()
-            .flat_map(|words| separators.map(|s| (words, s)))
-        {
-            if words && best.is_some() {
+        let holds = |byte: u8| {
+            lines
+                .iter()
+                .any(|line| memchr::memchr(byte, line).is_some())
+        };
+        let comma = holds(b',');
+        // What does not occur makes single numbers of whole lines: looked at last.
+        let (there, absent): (Vec<_>, Vec<_>) = separators.into_iter().partition(|s| match s {
+            Separator::Blank => holds(b' ') || holds(b'\t'),
+            other => other.byte().is_some_and(holds),
+        });
+        let of_words = |words: bool| {
+            let there = there.iter().map(move |s| (words, false, *s));
+            there.chain(absent.iter().map(move |s| (words, true, *s)))
+        };
+        for (words, absent, separator) in of_words(false).chain(of_words(true)) {
+            let found = best.as_ref().map(|(rank, _)| *rank);
+            if words && found.is_some() {
                 break;
+            }
+            if absent && found.is_some_and(|(several, _)| several) {
+                continue;
             }
             for decimal_comma in [false, true] {
                 let allowed = stated.separator.is_none_or(|s| s == separator)
                     && stated.decimal_comma.is_none_or(|d| d == decimal_comma)
-                    && !(separator == Separator::Comma && decimal_comma);
+                    && !(separator == Separator::Comma && decimal_comma)
+                    && (comma || !decimal_comma || stated.decimal_comma.is_some());
                 if !allowed {
                     continue;
                 }
