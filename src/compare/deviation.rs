@@ -3,6 +3,7 @@
 use super::chunk::{Chunk, Part, Pass};
 use super::margin::{Deviation, Limit};
 use super::stage::{Stage, Staged};
+use super::sums::Sums;
 use super::trace::{Trace, Traced};
 use crate::exact::{Exact, Nodes};
 use crate::fault::Result;
@@ -120,7 +121,14 @@ impl Comparison<'_> {
                 None
             };
             let Done { staged, part } = self.pass(&guess, nodes.as_ref(), batches)?;
-            let came_true = (staged.survey).confirms(&guess, staged.largest_gap, staged.open);
+            let sizes = part.sums.iter().map(Sums::sizes);
+            let Staged {
+                survey,
+                largest_gap,
+                open,
+                ..
+            } = &staged;
+            let came_true = survey.confirms(&guess, sizes, *largest_gap, *open);
             if !came_true && guesses < MOST_GUESSES {
                 guess = staged.survey;
                 guesses += 1;

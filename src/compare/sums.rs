@@ -46,6 +46,8 @@ pub(super) struct Sums {
     ends: Option<[(f64, f64); 2]>,
     /// First and last value written.
     written: Option<[f64; 2]>,
+    /// The smallest and the largest magnitude of them; of values in full nobody asks.
+    sizes: [f64; 2],
     /// Rows that tell of the digits, and the largest error in units of the resolution.
     telling: u64,
     largest_in_units: f64,
@@ -184,6 +186,7 @@ impl Sums {
             steepest: 0.0,
             ends: None,
             written: None,
+            sizes: [f64::INFINITY, 0.0],
             telling: 0,
             largest_in_units: 0.0,
             with: [Against::NOTHING; 2],
@@ -205,6 +208,15 @@ impl Sums {
         written != 0.0 && self.written.is_none_or(|[_, last]| last != written)
     }
 
+    fn see(&mut self, [smallest, largest]: [f64; 2]) {
+        self.sizes = [self.sizes[0].min(smallest), self.sizes[1].max(largest)];
+    }
+
+    /// The smallest and the largest magnitude of values that were not printed in full.
+    pub(super) fn sizes(&self) -> [f64; 2] {
+        self.sizes
+    }
+
     /// The next row, whose exact value is `exact`, with its bound.
     pub(super) fn add(&mut self, mark: Mark, exact: f64, bound: f64) {
         let here = (mark.time.to_f64(), exact);
@@ -213,6 +225,7 @@ impl Sums {
         self.ends = Some([self.ends.map_or(here, |[first, _]| first), here]);
         let first = self.written.map_or(mark.written, |[first, _]| first);
         self.written = Some([first, mark.written]);
+        self.see([mark.written.abs(); 2]);
         let error = mark.error();
         if self.worst.is_none_or(|worst| error > worst.error()) {
             self.worst = Some(mark);
@@ -250,6 +263,10 @@ impl Sums {
         self.ends = Some([self.ends.map_or(ends[0], |[first, _]| first), ends[1]]);
         let first = self.written.map_or(group.written[0], |[first, _]| first);
         self.written = Some([first, group.written[rows - 1]]);
+        self.see(match group.in_full {
+            true => [0.0, f64::INFINITY],
+            false => ends_of(group.written),
+        });
         self.rows += rows as u64;
         self.squares += squares(group.signed);
         self.last = Some(group.mark(rows - 1));
@@ -310,6 +327,7 @@ impl Sums {
         self.ends = Some([self.ends.map_or(first, |[first, _]| first), last]);
         let first = self.written.map_or(written, |[first, _]| first);
         self.written = Some([first, last_written]);
+        self.see(next.sizes);
         self.steepest = self.steepest.max(next.steepest);
         self.rows += next.rows;
         self.squares += next.squares;

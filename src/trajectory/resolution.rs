@@ -46,6 +46,23 @@ impl Resolution {
         }
     }
 
+    /// True where it says the same as another one of every value between two magnitudes.
+    pub(crate) fn agrees_with(self, other: Resolution, [smallest, largest]: [f64; 2]) -> bool {
+        if self == other {
+            return true;
+        }
+        let single = [self, other].contains(&Resolution::Single);
+        if single || !(0.0 < smallest && smallest <= largest && largest.is_finite()) {
+            return false;
+        }
+        // Within a decade only the rounding of the numbers changes, which is the same in both.
+        let mut decades = decade(smallest)..=decade(largest);
+        decades.all(|decade| {
+            let value = power_of_ten(decade);
+            self.at(value) == other.at(value)
+        })
+    }
+
     /// The same for one value after the other, which mostly are of one decade.
     pub(crate) fn of_neighbours(self) -> Neighbours {
         Neighbours {
@@ -387,6 +404,27 @@ fn prints_as_single(value: f64) -> bool {
 mod tests {
     use super::super::number::Field;
     use super::*;
+
+    #[test]
+    fn patterns_agree_over_the_values_that_they_say_the_same_of() {
+        let (six, five) = (Resolution::Significant(6), Resolution::Decimals(5));
+        let coarser = Resolution::Coarser(5, 6);
+        for (one, other, range, agree) in [
+            (coarser, six, [1.0, 5e4], true),
+            (coarser, six, [0.999, 5e4], false),
+            (coarser, six, [0.0, 5e4], false),
+            (coarser, five, [1e-3, 9.99], true),
+            (coarser, five, [1e-3, 10.0], false),
+            (six, five, [1.0, 9.99], true),
+            (six, five, [1.0, 10.0], false),
+            (Resolution::Single, six, [1.0, 2.0], false),
+            (Resolution::Full, Resolution::Decimals(16), [10.0, 99.0], true),
+            (Resolution::Full, Resolution::Decimals(16), [0.5, 99.0], false),
+        ] {
+            assert_eq!(one.agrees_with(other, range), agree, "{one:?} {other:?} {range:?}");
+            assert_eq!(other.agrees_with(one, range), agree, "{other:?} {one:?} {range:?}");
+        }
+    }
 
     fn conclude<'a>(column: impl IntoIterator<Item = &'a str>) -> Resolution {
         gather(column).conclude(None)

@@ -180,9 +180,18 @@ impl Surveyor {
 impl Survey {
     /// True where rows that were read with a guess of the survey came out as with this one.
     /// Holes of a grid are looked for with its step as it was known then: that does not matter as
-    /// long as no gap between rows could be one with either step.
-    pub(crate) fn confirms(&self, guess: &Survey, largest_gap: f64, open: bool) -> bool {
-        let digits = self.channels == guess.channels && self.time == guess.time;
+    /// long as no gap between rows could be one with either step. `sizes` are the smallest and
+    /// the largest magnitude of each channel.
+    pub(crate) fn confirms(
+        &self,
+        guess: &Survey,
+        sizes: impl Iterator<Item = [f64; 2]>,
+        largest_gap: f64,
+        open: bool,
+    ) -> bool {
+        let mut pairs = self.channels.iter().zip(&guess.channels).zip(sizes);
+        let digits = self.time == guess.time
+            && pairs.all(|((seen, &guessed), sizes)| seen.agrees_with(guessed, sizes));
         let end = !open || self.even == guess.even && self.usual_digits == guess.usual_digits;
         let grid = self.grid == guess.grid
             || match (self.grid, guess.grid) {
