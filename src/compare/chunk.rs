@@ -8,7 +8,7 @@ use super::sums::{Mark, Sums};
 use super::trace::Trace;
 use crate::exact::{Near, Nodes, Walk};
 use crate::number::{Conversion, Double, Nearby};
-use crate::trajectory::{Resolution, Survey, half_ulp};
+use crate::trajectory::{Neighbours, Resolution, Survey, half_ulp};
 
 /// Rows of a chunk.
 pub(super) const CHUNK_ROWS: usize = 8192;
@@ -46,6 +46,8 @@ pub(super) struct Pass<'a> {
     near: Option<Near<'a>>,
     /// Offsets of the last rows from the node that they are near.
     offsets: Vec<f64>,
+    /// What the digits of each channel resolve.
+    digits: Vec<Neighbours>,
     lists: Lists,
     part: Part,
 }
@@ -90,6 +92,7 @@ impl<'a> Pass<'a> {
             sides: None,
             near: nodes.map(|nodes| comparison.exact.near(nodes)),
             offsets: Vec::new(),
+            digits: survey.channels.iter().map(|r| r.of_neighbours()).collect(),
             lists: Lists::default(),
             part: Part::new(comparison),
         }
@@ -155,7 +158,8 @@ impl<'a> Pass<'a> {
             let lists = &mut self.lists;
             lists.written.clear();
             lists.written.extend(values.skip(place).step_by(columns));
-            lists.fill(nearby, &self.offsets, blurs, *conversion, printed);
+            let digits = &mut self.digits[place];
+            lists.fill(nearby, &self.offsets, blurs, *conversion, digits);
             let rows = Rows {
                 shortest,
                 rate: nearby.fastest(),
@@ -322,7 +326,7 @@ impl Lists {
         offsets: &[f64],
         blurs: &[f64],
         conversion: Conversion,
-        printed: Resolution,
+        digits: &mut Neighbours,
     ) {
         nearby.moved(offsets, &mut self.moved);
         let (high, low) = (nearby.value.to_f64(), nearby.value.low());
@@ -351,10 +355,9 @@ impl Lists {
             }),
         );
         self.pattern.clear();
-        if printed == Resolution::Full {
+        if digits.are_full() {
             self.pattern.extend_from_slice(&self.full);
         } else {
-            let mut digits = printed.of_neighbours();
             self.pattern
                 .extend(known.map(|((&written, &offset), &blur)| {
                     stretch * digits.at(written) + rest(offset, blur)

@@ -145,7 +145,7 @@ impl Window<'_> {
     fn add(&mut self, row: &Row) {
         let Comparison { time, exact, .. } = *self.comparison;
         let at = time.apply(row.time);
-        let printed = time.stretch(self.survey.time.at(row.time.to_f64()));
+        let printed = time.stretch(row.stamp_resolution);
         let blur = match self.rounded_start {
             true => printed,
             false => time.stretch(row.time_resolution),

@@ -33,7 +33,7 @@ pub use number::{Field, Printed};
 pub use open::{Source, open};
 pub use pieces::MOST_LINE_BYTES;
 pub use resolution::Resolution;
-pub(crate) use resolution::half_ulp;
+pub(crate) use resolution::{Neighbours, half_ulp};
 pub use rows::Row;
 pub(crate) use rows::{IsEvent, Order};
 pub(crate) use sample::Sample;

@@ -97,6 +97,10 @@ pub(crate) struct Neighbours {
 }
 
 impl Neighbours {
+    pub(crate) fn are_full(&self) -> bool {
+        self.resolution == Resolution::Full
+    }
+
     /// As [`Resolution::at`].
     pub(crate) fn at(&mut self, value: f64) -> f64 {
         let size = value.abs();
@@ -129,6 +133,9 @@ pub(super) fn power_of_ten(exponent: i32) -> f64 {
     POWERS[place as usize]
 }
 
+/// `log10(2)` in units of `2^-16`: near enough for every binary exponent.
+const LOG_OF_TWO: i32 = 19_728;
+
 /// The power of ten of the leading digit of the shortest text of a number.
 pub(super) fn decade(value: f64) -> i32 {
     let size = value.abs();
@@ -138,7 +145,7 @@ pub(super) fn decade(value: f64) -> i32 {
     // The binary exponent tells it to one; below the f64 nearest to a power of ten the
     // shortest text has one digit less before the point.
     let binary = (size.to_bits() >> 52) as i32 - 1023;
-    let mut decade = (f64::from(binary) * std::f64::consts::LOG10_2).floor() as i32;
+    let mut decade = (binary * LOG_OF_TWO) >> 16;
     while decade < 308 && size >= power_of_ten(decade + 1) {
         decade += 1;
     }
@@ -418,11 +425,29 @@ mod tests {
             (six, five, [1.0, 9.99], true),
             (six, five, [1.0, 10.0], false),
             (Resolution::Single, six, [1.0, 2.0], false),
-            (Resolution::Full, Resolution::Decimals(16), [10.0, 99.0], true),
-            (Resolution::Full, Resolution::Decimals(16), [0.5, 99.0], false),
+            (
+                Resolution::Full,
+                Resolution::Decimals(16),
+                [10.0, 99.0],
+                true,
+            ),
+            (
+                Resolution::Full,
+                Resolution::Decimals(16),
+                [0.5, 99.0],
+                false,
+            ),
         ] {
-            assert_eq!(one.agrees_with(other, range), agree, "{one:?} {other:?} {range:?}");
-            assert_eq!(other.agrees_with(one, range), agree, "{other:?} {one:?} {range:?}");
+            assert_eq!(
+                one.agrees_with(other, range),
+                agree,
+                "{one:?} {other:?} {range:?}"
+            );
+            assert_eq!(
+                other.agrees_with(one, range),
+                agree,
+                "{other:?} {one:?} {range:?}"
+            );
         }
     }
 

@@ -5,7 +5,7 @@ use super::finding::{Findings, Kind};
 use super::grid::Grid;
 use super::number::Printed;
 use super::open::Source;
-use super::resolution::half_ulp;
+use super::resolution::{Neighbours, half_ulp};
 use super::survey::Survey;
 use crate::fault::{Result, quoted};
 use crate::number::Double;
@@ -19,6 +19,8 @@ pub struct Row<'a> {
     pub time: Double,
     /// How far the time behind the stamp may lie from it; zero on an exact grid.
     pub time_resolution: f64,
+    /// What the digits of the stamp resolve, on a grid or not.
+    pub stamp_resolution: f64,
     /// Values of the selected channels; NaN where there is none.
     pub values: &'a [f64],
 }
@@ -41,6 +43,8 @@ pub(crate) type IsEvent<'a> = dyn Fn(f64) -> bool + Sync + 'a;
 pub(crate) struct Order<'a> {
     survey: &'a Survey,
     is_event: &'a IsEvent<'a>,
+    /// What the digits of the stamps resolve.
+    digits: Neighbours,
     /// Lines before the next batch.
     lines: u64,
     /// The row before, if its stamp is known, with its values.
@@ -71,6 +75,7 @@ impl<'a> Order<'a> {
             latest: f64::NEG_INFINITY,
             pending: None,
             largest_gap: 0.0,
+            digits: survey.time.of_neighbours(),
         }
     }
 
@@ -106,12 +111,17 @@ impl<'a> Order<'a> {
                 self.last = None;
                 continue;
             }
-            let resolution = self.survey.time_resolution(row.time, batch.exact(row));
+            let printed = self.digits.at(row.time);
+            let resolution = match self.survey.is_on_grid(batch.exact(row)) {
+                true => 0.0,
+                false => printed,
+            };
             self.order((line, row.time, resolution), values, findings);
             each(&Row {
                 line,
                 time: row.moment,
                 time_resolution: resolution,
+                stamp_resolution: printed,
                 values,
             });
         }
@@ -299,25 +309,22 @@ impl Survey {
             .any(|&phase| phase > 0.0 && (step - phase).abs() <= slack)
     }
 
-    /// Zero for a stamp that is an exact decimal multiple of the grid's step.
-    fn time_resolution(&self, time: f64, exact: Exactly) -> f64 {
-        if let Grid::Uniform {
+    /// True for a stamp that is an exact decimal multiple of the grid's step.
+    fn is_on_grid(&self, exact: Exactly) -> bool {
+        let Grid::Uniform {
             spacing,
             exact: Some(step),
             ..
         } = self.grid
-            && let (Some(exact), Some(first)) = (exact.decimal(), self.first)
-        {
-            let since = exact.minus(first);
-            let count = since.map(|since| (since.to_double().to_f64() / spacing).round());
-            if let (Some(since), Some(count)) = (since, count)
-                && count.abs() < 1e15
-                && step.times(count as i64) == Some(since)
-            {
-                return 0.0;
-            }
-        }
-        self.time.at(time)
+        else {
+            return false;
+        };
+        let since = exact.decimal().zip(self.first);
+        let since = since.and_then(|(exact, first)| exact.minus(first));
+        since.is_some_and(|since| {
+            let count = (since.to_double().to_f64() / spacing).round();
+            count.abs() < 1e15 && step.times(count as i64) == Some(since)
+        })
     }
 }
 

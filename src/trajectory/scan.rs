@@ -65,6 +65,7 @@ pub(super) fn scan(text: &[u8], point: u8) -> Option<(Scanned, usize)> {
             _ => fraction,
         };
         at = eight_by_eight(text, first, &mut digits);
+        at = four_at_once(text, at, &mut digits);
         at = one_by_one(text, at, &mut digits);
         counted += at - first;
         decimals = at - fraction;
@@ -147,6 +148,23 @@ fn eight_by_eight(text: &[u8], mut at: usize, digits: &mut u64) -> usize {
         at += 8;
     }
     at
+}
+
+/// The same for four digits, if there are so many.
+#[inline(always)]
+fn four_at_once(text: &[u8], at: usize, digits: &mut u64) -> usize {
+    let Some(four) = text.get(at..).and_then(|rest| rest.first_chunk::<4>()) else {
+        return at;
+    };
+    let word = u32::from_le_bytes(*four) ^ 0x3030_3030;
+    let beyond = word.wrapping_add(0x7676_7676) | word;
+    if beyond & 0x8080_8080 != 0 {
+        return at;
+    }
+    let pairs = word.wrapping_mul(10).wrapping_add(word >> 8);
+    let number = (pairs & 0xff) * 100 + (pairs >> 16 & 0xff);
+    *digits = digits.wrapping_mul(10_000).wrapping_add(u64::from(number));
+    at + 4
 }
 
 /// The number of eight digits, one in each byte, the first one lowest: neighbours are joined
