@@ -11,8 +11,9 @@ use stepgauge::number::Double;
 use crate::chain::{self, SPAN};
 use crate::stamps::Stamps;
 
-/// What the errors come to, in kelvin; the limits of the chains are near 1e-6 and above.
-const ERROR: f64 = 1e-9;
+/// What a simulator of fine steps would leave, in kelvin; the limits of the chains are near 1e-6
+/// and above.
+pub const ERROR: f64 = 1e-9;
 
 /// What a file looks like.
 #[derive(Clone, Copy, Debug)]
@@ -21,6 +22,8 @@ pub struct Shape {
     pub states: usize,
     pub digits: usize,
     pub stamps: Stamps,
+    /// The largest, in kelvin.
+    pub error: f64,
 }
 
 impl fmt::Display for Shape {
@@ -30,6 +33,7 @@ impl fmt::Display for Shape {
             states,
             digits,
             stamps,
+            ..
         } = self;
         write!(
             f,
@@ -49,6 +53,7 @@ impl Shape {
                     states,
                     digits,
                     stamps,
+                    error: ERROR,
                 }));
             }
         }
@@ -62,6 +67,7 @@ impl Shape {
             states,
             digits,
             stamps,
+            error,
         } = *self;
         let exact = chain::case(states).exact().unwrap();
         let mut file = BufWriter::new(std::fs::File::create(path).unwrap());
@@ -79,7 +85,7 @@ impl Shape {
                 for (place, value) in values.iter().enumerate() {
                     line.push(',');
                     let wave = (f64::from(number) / 139.0 + place as f64).sin();
-                    print(value + ERROR * wave, digits, &mut line);
+                    print(value + error * wave, digits, &mut line);
                 }
                 line.push('\n');
                 file.write_all(line.as_bytes()).unwrap();
