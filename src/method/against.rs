@@ -235,9 +235,7 @@ const DENSE: usize = 16;
 const SPARSE: usize = 8;
 
 fn apply<'m>(lines: &'m [f64], values: &'m [f64]) -> impl Iterator<Item = f64> + 'm {
-    lines
-        .chunks_exact(values.len().max(1))
-        .map(|line| dot(line, values))
+    lines.chunks_exact(values.len().max(1)).map(|line| dot(line, values))
 }
 
 pub(super) fn absolute_dot(line: &[f64], values: &[f64]) -> f64 {

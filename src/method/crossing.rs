@@ -116,7 +116,13 @@ impl Trial<'_> {
         }
         let states = rows.values(window, row);
         let mut predicted = states.clone();
-        self.advance(&mut Vec::new(), &mut predicted, time, self.leg.steps, sides);
+        self.advance(
+            &mut Vec::new(),
+            &mut predicted,
+            time,
+            self.leg.steps,
+            sides,
+        );
         let rounding = self.rounding(&scale, time, window.first + row as u64);
         let rounding: Vec<f64> = rounding.collect();
         let (doubts, next_doubts) = (rows.doubts(window, row), rows.doubts(window, row + 1));

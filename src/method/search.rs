@@ -269,9 +269,7 @@ impl Search<'_> {
             if fit.holds() && self.exact.holds() {
                 tried.apart = fit.ratio;
             } else if fit.holds() {
-                tried.apart = self
-                    .fit(&trial, &self.solution, variant.reading, true)
-                    .ratio;
+                tried.apart = self.fit(&trial, &self.solution, variant.reading, true).ratio;
                 tried.at_jumps = trial.across_jumps(&self.sheet.record);
             }
             found.tried.push(tried);
@@ -358,9 +356,8 @@ impl Search<'_> {
             return match self.reference(trial.leg.recurrence.step) {
                 Some(reference) => {
                     let reference = &reference.recurrence;
-                    let over = |rows| {
-                        with_hidden_start(trial, reference, record, &self.pieces, either, rows)
-                    };
+                    let over =
+                        |rows| with_hidden_start(trial, reference, record, &self.pieces, either, rows);
                     if !whole {
                         let glance = over(GLANCE);
                         if glance.ratio > 1.0 {

@@ -137,9 +137,7 @@ impl<'a> Trial<'a> {
         let near = NEAR * self.leg.recurrence.step;
         all.clear();
         all.extend_from_slice(stack);
-        self.leg
-            .drive
-            .extend(self.linear, time, Side::After, near, all);
+        self.leg.drive.extend(self.linear, time, Side::After, near, all);
         for (x, row) in stack.iter_mut().zip(joined.rows()) {
             *x = dot(row, all);
         }
@@ -238,8 +236,7 @@ impl<'a> Trial<'a> {
                 if !record.follows(window, row) {
                     break;
                 }
-                let before =
-                    origin + ((row - 1) as f64) * self.leg.steps as f64 * self.leg.recurrence.step;
+                let before = origin + ((row - 1) as f64) * self.leg.steps as f64 * self.leg.recurrence.step;
                 self.advance(&mut room, &mut state, before, self.leg.steps, sides);
                 if let Some(doubts) = &mut doubts {
                     doubts.next_row(self, before, self.leg.steps);

@@ -4,8 +4,8 @@
 use nalgebra::DMatrix;
 
 use crate::method::{
-    Coefficients, Drive, Linear, Method, Ranks, Reading, Record, Recurrence, Scheme, Side, Sides,
-    Trial, rank_orders,
+    Coefficients, Drive, Linear, Method, Ranks, Reading, Record, Recurrence, Scheme, Side,
+    Sides, Trial, rank_orders,
 };
 
 /// The rows of a file that are looked at.
