@@ -61,4 +61,5 @@ def main():
             print(f"  one thread's wall, of two          {ratio(0, 'stepgauge, 1 thread', 'stepgauge'):.2f}", flush=True)
 
 
-main()
+if __name__ == "__main__":
+    main()
