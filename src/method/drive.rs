@@ -21,7 +21,7 @@ impl Drive {
     /// The system behind the forcing of a model.
     pub fn new(linear: &Linear) -> Drive {
         let mut size = 1;
-        let mut places = Vec::new();
+        let mut places = Vec::with_capacity(linear.signals.len());
         for signal in &linear.signals {
             places.push(size);
             size += signal.entries();
@@ -39,6 +39,11 @@ impl Drive {
             size,
             places,
         }
+    }
+
+    /// Number of entries of `w` for a model.
+    pub(super) fn width(linear: &Linear) -> usize {
+        1 + linear.signals.iter().map(Signal::entries).sum::<usize>()
     }
 
     /// `w` at a time.

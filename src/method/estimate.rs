@@ -8,8 +8,9 @@ use super::march::{March, Sides};
 use super::powers::identity;
 use super::record::{Piece, Record};
 use super::recurrence::dense;
-use super::search::{Search, Variant};
+use super::search::Search;
 use super::trial::{GLANCE, Room, Trial};
+use super::variant::Variant;
 
 /// More steps from row to row than this are tried only where they are claimed.
 const MOST_GUESSED: u64 = 10_000;

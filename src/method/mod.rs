@@ -35,6 +35,7 @@ mod sheet;
 mod stability;
 mod starts;
 mod trial;
+mod variant;
 
 pub use catalogue::{METHODS, Method, find, find_all};
 pub use characteristic::Characteristic;

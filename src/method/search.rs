@@ -1,20 +1,21 @@
 //! The search through the catalogue: every method at the steps that are worth a look.
 
-use std::sync::{Arc, LazyLock};
+use std::sync::Arc;
 
-use super::catalogue::{METHODS, Method};
+use super::catalogue::Method;
 use super::estimate::{Estimate, Targets};
 use super::evidence::{Skipped, Tried};
 use super::laid::Laid;
-use super::leg::{Leg, Title};
+use super::leg::Leg;
 use super::linear::Linear;
 use super::march::Sides;
 use super::record::Piece;
-use super::recurrence::{Ranks, Reading, Recurrence};
-use super::scheme::{Coefficients, Scheme};
+use super::recurrence::{Ranks, Reading};
+use super::scheme::Coefficients;
 use super::sheet::Sheet;
 use super::starts::{FEW_LEFT, MOST_ROWS, with_hidden_start};
 use super::trial::{Fit, GLANCE, Trial, larger};
+use super::variant::{Variant, forms_of};
 
 /// Steps from row to row that are tried whatever the errors say.
 const ALWAYS: [u64; 4] = [1, 2, 4, 10];
@@ -61,15 +62,9 @@ impl Found {
 impl Search<'_> {
     /// A step of high order, for starts.
     pub(super) fn reference(&self, step: f64) -> Option<Arc<Leg>> {
-        let variant = Variant {
-            method: self.reference?,
-            form: Some(0),
-            coefficients: forms_of(self.reference?).first()?,
-            reading: Reading::AtNodes,
-            ranks: &Ranks::new(),
-            order: 0,
-        };
-        variant.leg(self.linear, step, 1)
+        let (method, none) = (self.reference?, Ranks::new());
+        let form = (Some(0), forms_of(method).first()?);
+        Variant::new(method, form, Reading::AtNodes, (0, &none)).leg(self.linear, step, 1)
     }
 
     pub(super) fn method(&self, method: &'static Method, reading: Reading) -> Found {
@@ -94,14 +89,8 @@ impl Search<'_> {
             _ => vec![Ranks::new()],
         };
         for (order, ranks) in orders.iter().enumerate() {
-            let variant = Variant {
-                method,
-                form,
-                coefficients,
-                reading,
-                ranks,
-                order,
-            };
+            let form = (form, coefficients);
+            let variant = Variant::new(method, form, reading, (order, ranks));
             match self.sheet.record.spacing {
                 Some((spacing, _)) => self.even(&variant, spacing, &mut found),
                 None => self.uneven(&variant, &mut found),
@@ -151,14 +140,8 @@ impl Search<'_> {
             if back < 2 || back * self.linear.size() > MOST_SWEPT {
                 continue;
             }
-            let variant = Variant {
-                method,
-                form: Some(place),
-                coefficients: &forms_of(method)[place],
-                reading: Reading::AtNodes,
-                ranks: &Ranks::new(),
-                order: 0,
-            };
+            let (form, none) = ((Some(place), &forms_of(method)[place]), Ranks::new());
+            let variant = Variant::new(method, form, Reading::AtNodes, (0, &none));
             self.at_counts(&variant, spacing, SWEPT.to_vec(), None, &mut found);
         }
         found
@@ -246,8 +229,14 @@ impl Search<'_> {
         self.claimed.is_empty()
     }
 
-    /// A method at a step; `None` where that cannot be worked out.
+    /// A method at a step; `None` where that cannot be worked out, or would cost too much
+    /// and is not claimed.
     pub(super) fn trial(&self, variant: &Variant, step: f64, steps: u64) -> Option<Trial<'_>> {
+        let claimed = self.is_claimed(variant)
+            && (self.claimed_steps.is_empty() || self.claimed_steps.contains(&steps));
+        if !(variant.affords(self.linear, steps, self.complete) || claimed) {
+            return None;
+        }
         Some(Trial {
             linear: self.linear,
             leg: variant.leg(self.linear, step, steps)?,
@@ -443,53 +432,5 @@ impl Search<'_> {
             print.extend(trial.forced(time));
             print
         })
-    }
-}
-
-/// The coefficients of every form of a method of the catalogue.
-fn forms_of(method: &'static Method) -> &'static [Coefficients] {
-    static READ: LazyLock<Vec<Vec<Coefficients>>> = LazyLock::new(|| {
-        let of = |method: &Method| method.schemes.iter().map(Scheme::coefficients).collect();
-        METHODS.iter().map(of).collect()
-    });
-    let place = METHODS.iter().position(|known| std::ptr::eq(known, method));
-    place.map_or(&[], |place| &READ[place])
-}
-
-pub(super) struct Variant<'a> {
-    pub(super) method: &'static Method,
-    /// The place among the forms of the method, where it is one of the catalogue.
-    form: Option<usize>,
-    coefficients: &'a Coefficients,
-    reading: Reading,
-    /// The ranks of the states, and which of their orders that is.
-    ranks: &'a Ranks,
-    order: usize,
-}
-
-impl Variant<'_> {
-    /// `None` where the step cannot be solved, or where another way to read the inputs
-    /// changes nothing.
-    fn leg(&self, linear: &Linear, step: f64, steps: u64) -> Option<Arc<Leg>> {
-        let new = || {
-            let plain = Recurrence::new(self.coefficients, linear, step, self.ranks)?;
-            let recurrence = match self.reading {
-                Reading::AtNodes | Reading::EitherSide => plain,
-                Reading::Held if !plain.looks_ahead() => return None,
-                reading => plain.with_reading(reading),
-            };
-            Some(Leg::new(linear, recurrence, steps))
-        };
-        let Some(form) = self.form else {
-            return new().map(Arc::new);
-        };
-        let title = || Title {
-            form: (std::ptr::from_ref(self.method).addr(), form),
-            reading: self.reading,
-            order: self.order,
-            step: step.to_bits(),
-            steps,
-        };
-        linear.legs.leg(title, new)
     }
 }

@@ -33,6 +33,17 @@ pub(super) const FEW_LEFT: usize = 8;
 /// Multiplications at most.
 const MOST_WORK: usize = 1_500_000;
 
+/// Multiplications for one row.
+fn work_of_row(size: usize, back: usize) -> usize {
+    (size * back).pow(2) * (size * back + size * (back - 1))
+}
+
+/// Multiplications that a hidden start costs at most where every state is written.
+pub(super) fn work_of_start(size: usize, back: usize) -> f64 {
+    let (row, fewest) = (work_of_row(size, back), 2 * back + 8);
+    (MOST_ROWS * row).min(MOST_WORK.max(fewest * row)) as f64
+}
+
 /// Lays a method with a memory beside the rows from the start of the file. `reference` is a
 /// one-step recurrence of high order at the same step, which gives a start to correct.
 /// Nothing is compared where the rows are too few for the unknowns. `either` allows for
@@ -53,7 +64,7 @@ pub(super) fn with_hidden_start(
     let Some(first_window) = record.windows.first() else {
         return Fit::NOTHING;
     };
-    let per_row = trial.stacked().pow(3) + trial.stacked().pow(2) * unknowns;
+    let per_row = work_of_row(size, back);
     let fewest = 2 * unknowns.div_ceil(record.width().max(1)) + 8;
     let most = rows.min((MOST_WORK / per_row.max(1)).max(fewest));
     // An input that jumps at the very start leaves the first row out of every piece.
