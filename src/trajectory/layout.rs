@@ -1,5 +1,8 @@
 //! How the rows of a text file are laid out: found from its first lines, or stated.
 
+use std::sync::Arc;
+
+use super::long::{Long, LongStated};
 use super::number::Field;
 use super::{MOST_COLUMNS, MOST_LINE_BYTES};
 use crate::fault::{Fault, Result, quoted};
@@ -50,6 +53,14 @@ impl Separator {
     }
 }
 
+/// A column by the name in the header or by number from one.
+#[derive(Clone, Debug, PartialEq)]
+#[allow(missing_docs)]
+pub enum ColumnName {
+    Name(String),
+    Number(usize),
+}
+
 /// What a submission says of the layout; the rest is found.
 #[derive(Clone, Debug, Default, PartialEq)]
 pub struct Stated {
@@ -63,6 +74,8 @@ pub struct Stated {
     pub skip_lines: Option<u64>,
     /// Significant digits that the producer printed.
     pub digits: Option<u8>,
+    /// That there is one row for each time and channel.
+    pub long: Option<LongStated>,
 }
 
 /// The layout of one file.
@@ -84,11 +97,23 @@ pub struct Layout {
     pub names: Option<Vec<String>>,
     /// Units in a line of their own below the names.
     pub units: Option<Vec<String>>,
+    /// A column holds words, which may be the names of channels.
+    pub words: bool,
+    /// Of a long table, how it is read: columns, names and units are those of the table that
+    /// its rows make side by side.
+    pub long: Option<Arc<Long>>,
 }
 
+/// In the order in which they are tried.
+pub(super) const SEPARATORS: [Separator; 4] = [
+    Separator::Tab,
+    Separator::Semicolon,
+    Separator::Comma,
+    Separator::Blank,
+];
 const USUAL_COMMENTS: [&str; 4] = ["#", "%", "//", "!"];
 /// Rows of the sample that are tried on each layout.
-const ROWS_TRIED: usize = 200;
+pub(super) const ROWS_TRIED: usize = 200;
 
 impl Layout {
     /// Finds the layout from the first lines of a file (the last one whole); `None`
@@ -97,41 +122,18 @@ impl Layout {
     /// # Errors
     /// Lines that fit no layout, and a layout stated that does not fit.
     pub fn find(lines: &[&[u8]], stated: &Stated) -> Result<Option<Layout>> {
-        let comments = match &stated.comment {
-            Some(comment) => vec![comment.clone()],
-            None => USUAL_COMMENTS.map(str::to_owned).to_vec(),
-        };
-        let separators = [
-            Separator::Tab,
-            Separator::Semicolon,
-            Separator::Comma,
-            Separator::Blank,
-        ];
         // Rows of numbers alone come first; a column of words is borne where it must be.
         let mut best: Option<((bool, usize), Layout)> = None;
         for (words, separator) in [false, true]
             .into_iter()
-            .flat_map(|words| separators.map(|s| (words, s)))
+            .flat_map(|words| SEPARATORS.map(|s| (words, s)))
         {
             if words && best.is_some() {
                 break;
             }
             for decimal_comma in [false, true] {
-                let allowed = stated.separator.is_none_or(|s| s == separator)
-                    && stated.decimal_comma.is_none_or(|d| d == decimal_comma)
-                    && !(separator == Separator::Comma && decimal_comma);
-                if !allowed {
+                let Some(layout) = Layout::bare(separator, decimal_comma, stated) else {
                     continue;
-                }
-                let layout = Layout {
-                    separator,
-                    decimal_comma,
-                    comments: comments.clone(),
-                    columns: 0,
-                    first_row: 0,
-                    last_is_empty: false,
-                    names: None,
-                    units: None,
                 };
                 let Some((fits, layout)) = layout.try_on(lines, stated.skip_lines, words) else {
                     continue;
@@ -144,7 +146,7 @@ impl Layout {
             }
         }
         let Some((_, mut layout)) = best else {
-            return Layout::complain(lines, &comments, stated.skip_lines);
+            return Layout::complain(lines, &comments(stated), stated.skip_lines);
         };
         if layout.columns > MOST_COLUMNS {
             let text = format!(
@@ -155,6 +157,36 @@ impl Layout {
         }
         layout.find_names(lines);
         Ok(Some(layout))
+    }
+
+    /// Without columns yet; `None` where something else is stated.
+    pub(super) fn bare(
+        separator: Separator,
+        decimal_comma: bool,
+        stated: &Stated,
+    ) -> Option<Layout> {
+        let allowed = stated.separator.is_none_or(|s| s == separator)
+            && stated.decimal_comma.is_none_or(|d| d == decimal_comma)
+            && !(separator == Separator::Comma && decimal_comma);
+        allowed.then(|| Layout {
+            separator,
+            decimal_comma,
+            comments: comments(stated),
+            columns: 0,
+            first_row: 0,
+            last_is_empty: false,
+            names: None,
+            units: None,
+            words: false,
+            long: None,
+        })
+    }
+
+    /// Fields of a line that is as it should be.
+    pub(super) fn fields(&self) -> usize {
+        self.long
+            .as_ref()
+            .map_or(self.columns, |long| long.fields())
     }
 
     /// Without any row of numbers: nothing there, or nothing that could be read.
@@ -223,24 +255,21 @@ impl Layout {
             nothing_last = field.is_empty()
         });
         self.last_is_empty = nothing_last;
+        self.words = words;
         Some((fits, self))
     }
 
     /// Names: the last line before the rows that has as many fields and is told in
     /// words, be it a comment; above it there may be names, and it has the units.
     fn find_names(&mut self, lines: &[&[u8]]) {
-        let before = &lines[..(self.first_row - 1) as usize];
+        let before = lines[..(self.first_row - 1) as usize].iter().rev();
         let mut found: Vec<(bool, Vec<String>)> = Vec::new();
-        for line in before.iter().rev().map(|line| line.trim_ascii()) {
-            let mark = self
-                .comments
-                .iter()
-                .find(|mark| line.starts_with(mark.as_bytes()));
-            let bare = mark.map_or(line, |mark| line[mark.len()..].trim_ascii());
+        for line in before {
+            let (is_comment, bare) = self.without_mark(line);
             match self.name_fields(bare) {
-                Some(names) => found.push((mark.is_some(), names)),
+                Some(names) => found.push((is_comment, names)),
                 // Remarks may stand between names and rows, anything else may not.
-                None if mark.is_some() || line.is_empty() => {}
+                None if is_comment || bare.is_empty() => {}
                 None => break,
             }
             if found.len() == 2 {
@@ -264,10 +293,20 @@ impl Layout {
         }
     }
 
+    /// What a comment says, or a line that is none.
+    pub(super) fn without_mark<'l>(&self, line: &'l [u8]) -> (bool, &'l [u8]) {
+        let line = line.trim_ascii();
+        let starts = |mark: &&String| line.starts_with(mark.as_bytes());
+        match self.comments.iter().find(starts) {
+            Some(mark) => (true, line[mark.len()..].trim_ascii()),
+            None => (false, line),
+        }
+    }
+
     /// The fields of a line, if they can be names of the columns: as many, with words.
     /// A separator at the end of the rows alone, or of this line alone, is borne, and
     /// blanks between names above rows that have another separator.
-    fn name_fields(&self, line: &[u8]) -> Option<Vec<String>> {
+    pub(super) fn name_fields(&self, line: &[u8]) -> Option<Vec<String>> {
         let blank = Layout {
             separator: Separator::Blank,
             ..self.clone()
@@ -354,7 +393,11 @@ impl Layout {
         } else {
             ", no header"
         };
-        format!("{separator}{decimal}{header}")
+        let long = match self.long {
+            Some(_) => ", a row for each time and channel",
+            None => "",
+        };
+        format!("{separator}{decimal}{header}{long}")
     }
 }
 
@@ -368,6 +411,13 @@ fn names_time(names: &[String]) -> bool {
 /// temperature or a period as often as a time.
 pub fn is_time_name(name: &str) -> bool {
     name == "t" || name.eq_ignore_ascii_case("time")
+}
+
+fn comments(stated: &Stated) -> Vec<String> {
+    match &stated.comment {
+        Some(comment) => vec![comment.clone()],
+        None => USUAL_COMMENTS.map(str::to_owned).to_vec(),
+    }
 }
 
 fn is_comment(line: &[u8], comments: &[String]) -> bool {
