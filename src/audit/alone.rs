@@ -91,6 +91,7 @@ fn columns(
         .get("time")
         .and_then(|time| time.column.as_ref());
     let time = match stated {
+        _ if layout.long.is_some() => 0,
         Some(ColumnName::Number(number)) => number - 1,
         Some(ColumnName::Name(name)) => names.iter().position(|n| n == name).unwrap_or(usize::MAX),
         None => names

@@ -110,6 +110,10 @@ struct Matcher<'a> {
     headers: Option<Vec<Header<'a>>>,
     columns: usize,
     stated: &'a BTreeMap<String, ColumnStated>,
+    /// True where names stand in the rows; the reader has put the time before them.
+    long: bool,
+    /// True where a column holds words and could have such names.
+    words: bool,
     notes: Vec<String>,
 }
 
@@ -156,6 +160,8 @@ pub fn match_columns(
         headers,
         columns: layout.columns,
         stated,
+        long: layout.long.is_some(),
+        words: layout.words,
         notes: Vec::new(),
     };
     let (time, time_conversion) = matcher.time(case)?;
@@ -220,6 +226,7 @@ impl Matcher<'_> {
         let unit = &case.time.unit;
         let stated = self.stated.get("time");
         let column = match stated.and_then(|stated| stated.column.as_ref()) {
+            _ if self.long => 0,
             Some(name) => self.stated_column(name)?.map_err(|reason| {
                 Fault::new(format!("no time stamps: {reason}"))
                     .help("correct `time` under `[columns]` in submission.toml")
@@ -278,9 +285,9 @@ impl Matcher<'_> {
                         format!(", did you mean {}?", quoted(near))
                     });
                     format!(
-                        "there is no column {}, the header has {}{near}",
+                        "there is no column {}, {}{near}",
                         quoted(name),
-                        self.list()
+                        self.there_is()
                     )
                 })
             })
@@ -325,6 +332,14 @@ impl Matcher<'_> {
     ) -> Result<std::result::Result<(usize, Conversion), String>> {
         let stated = self.stated.get(channel.name);
         let column = match stated.and_then(|stated| stated.column.as_ref()) {
+            Some(ColumnName::Number(_)) if self.long => {
+                let text = "the channels of a long table have names and no numbers";
+                let help = format!(
+                    "write `{} = \"NAME\"` under `[columns]`, as it stands in the rows",
+                    channel.name
+                );
+                return Err(placed(Fault::new(text).help(help), stated));
+            }
             Some(name) => self.stated_column(name)?,
             None => self.named_channel(channel, channels, time)?,
         };
@@ -361,12 +376,7 @@ impl Matcher<'_> {
         let bare = |header: &Header| header.name == name;
         let any_case = |header: &Header| header.name.eq_ignore_ascii_case(name);
         let found = self.unique(name, headers, &[&same, &bare, &any_case])?;
-        Ok(found.ok_or_else(|| {
-            format!(
-                "there is no column `{name}`, the header has {}",
-                self.list()
-            )
-        }))
+        Ok(found.ok_or_else(|| format!("there is no column `{name}`, {}", self.there_is())))
     }
 
     /// The conversion to a unit of the case, from the unit stated or the one in the
@@ -408,11 +418,25 @@ impl Matcher<'_> {
         }
     }
 
+    fn there_is(&self) -> String {
+        let what = if self.long {
+            "the names of the rows are"
+        } else {
+            "the header has"
+        };
+        let hint = match self.words {
+            true => "; if a column holds the names of channels, state `long` under `[layout]`",
+            false => "",
+        };
+        format!("{what} {}{hint}", self.list())
+    }
+
     fn list(&self) -> String {
         let headers = self
             .headers
             .iter()
             .flatten()
+            .skip(usize::from(self.long))
             .map(|header| quoted(header.full));
         let mut names: Vec<String> = headers.take(12).collect();
         if self.columns > 12 {

@@ -19,6 +19,7 @@ use crate::case::Replacements;
 use crate::fault::{Fault, Result};
 use crate::trajectory::{Source, Stated, open};
 
+pub use crate::trajectory::ColumnName;
 pub use akin::akin;
 pub use columns::{Column, Matched, match_columns, name_and_unit};
 pub use find::{MOST_DEPTH, Place, confined, discover};
@@ -132,14 +133,6 @@ pub struct ColumnStated {
     pub unit: Option<String>,
     /// Line and column where that is stated, in a file.
     pub place: Option<(u64, u64)>,
-}
-
-/// A column by the name in the header or by number from one.
-#[derive(Clone, Debug, PartialEq)]
-#[allow(missing_docs)]
-pub enum ColumnName {
-    Name(String),
-    Number(usize),
 }
 
 /// One file of a submission.

@@ -12,7 +12,7 @@ use toml::Spanned;
 use super::schema::Reader;
 use super::{Claims, ColumnName, ColumnStated, LimitStated, LimitsStated};
 use crate::fault::{Fault, in_plain_words, quoted};
-use crate::trajectory::{Separator, Stated};
+use crate::trajectory::{LongStated, Separator, Stated};
 
 /// What holds for every run of a submission.
 #[derive(Clone, Debug, Default)]
@@ -71,6 +71,14 @@ pub(super) struct LayoutEntry {
     comment: Option<Spanned<String>>,
     skip_lines: Option<u64>,
     digits: Option<Spanned<u8>>,
+    long: Option<Spanned<LongEntry>>,
+}
+
+#[derive(serde::Deserialize)]
+#[serde(deny_unknown_fields)]
+struct LongEntry {
+    name: ColumnKey,
+    value: ColumnKey,
 }
 
 /// A number or word for all channels, or a table for one.
@@ -205,11 +213,13 @@ impl Reader<'_> {
             let place = Some(self.place(&name));
             stated.insert(name.into_inner(), ColumnStated { place, ..entry.0 });
         }
+        let time = stated.get("time").and_then(|time| time.column.clone());
+        let layout = layout.map_or_else(Stated::default, |layout| self.layout(layout, time));
         Terms {
             claims: claims.map_or_else(Claims::default, |claims| self.claims(claims)),
             limits: self.limits(limits),
             columns: stated,
-            layout: layout.map_or_else(Stated::default, |layout| self.layout(layout)),
+            layout,
             places,
         }
     }
@@ -302,7 +312,7 @@ impl Reader<'_> {
         }
     }
 
-    fn layout(&mut self, entry: LayoutEntry) -> Stated {
+    fn layout(&mut self, entry: LayoutEntry, time: Option<ColumnName>) -> Stated {
         use Separator::{Blank, Comma, Semicolon, Tab};
         let separators = [Comma, Semicolon, Tab, Blank].map(|s| (s.word(), s));
         let decimal_place = entry
@@ -332,7 +342,20 @@ impl Reader<'_> {
             }
             digits.into_inner()
         });
+        let long = entry.long.map(|long| {
+            let place = long.span().start;
+            let LongEntry { name, value } = long.into_inner();
+            if name.0 == value.0 {
+                self.complain("`name` and `value` of `long` are the same column", place);
+            }
+            LongStated {
+                name: name.0,
+                value: value.0,
+                time,
+            }
+        });
         Stated {
+            long,
             separator,
             decimal_comma,
             comment,

@@ -1,5 +1,8 @@
 //! How the rows of a text file are laid out: found from its first lines, or stated.
 
+use std::sync::Arc;
+
+use super::long::{Long, LongStated};
 use super::number::Field;
 use super::{MOST_COLUMNS, MOST_LINE_BYTES};
 use crate::fault::{Fault, Result, quoted};
@@ -50,6 +53,14 @@ impl Separator {
     }
 }
 
+/// A column by the name in the header or by number from one.
+#[derive(Clone, Debug, PartialEq)]
+#[allow(missing_docs)]
+pub enum ColumnName {
+    Name(String),
+    Number(usize),
+}
+
 /// What a submission says of the layout; the rest is found.
 #[derive(Clone, Debug, Default, PartialEq)]
 pub struct Stated {
@@ -63,6 +74,8 @@ pub struct Stated {
     pub skip_lines: Option<u64>,
     /// Significant digits that the producer printed.
     pub digits: Option<u8>,
+    /// That there is one row for each time and channel.
+    pub long: Option<LongStated>,
 }
 
 /// The layout of one file.
@@ -84,11 +97,23 @@ pub struct Layout {
     pub names: Option<Vec<String>>,
     /// Units in a line of their own below the names.
     pub units: Option<Vec<String>>,
+    /// A column holds words, which may be the names of channels.
+    pub words: bool,
+    /// Of a long table, how it is read: columns, names and units are those of the table that
+    /// its rows make side by side.
+    pub long: Option<Arc<Long>>,
 }
 
+/// In the order in which they are tried.
+pub(super) const SEPARATORS: [Separator; 4] = [
+    Separator::Tab,
+    Separator::Semicolon,
+    Separator::Comma,
+    Separator::Blank,
+];
 const USUAL_COMMENTS: [&str; 4] = ["#", "%", "//", "!"];
 /// Rows of the sample that are tried on each layout.
-const ROWS_TRIED: usize = 200;
+pub(super) const ROWS_TRIED: usize = 200;
 
 impl Layout {
     /// Finds the layout from the first lines of a file (the last one whole); `None`
@@ -97,16 +122,6 @@ impl Layout {
     /// # Errors
     /// Lines that fit no layout, and a layout stated that does not fit.
     pub fn find(lines: &[&[u8]], stated: &Stated) -> Result<Option<Layout>> {
-        let comments = match &stated.comment {
-            Some(comment) => vec![comment.clone()],
-            None => USUAL_COMMENTS.map(str::to_owned).to_vec(),
-        };
-        let separators = [
-            Separator::Tab,
-            Separator::Semicolon,
-            Separator::Comma,
-            Separator::Blank,
-        ];
         // Rows of numbers alone come first; a column of words is borne where it must be.
         let mut best: Option<((bool, usize), Layout)> = None;
         let holds = |byte: u8| {
@@ -116,7 +131,7 @@ impl Layout {
         };
         let comma = holds(b',');
         // What does not occur makes single numbers of whole lines: looked at last.
-        let (there, absent): (Vec<_>, Vec<_>) = separators.into_iter().partition(|s| match s {
+        let (there, absent): (Vec<_>, Vec<_>) = SEPARATORS.into_iter().partition(|s| match s {
             Separator::Blank => holds(b' ') || holds(b'\t'),
             other => other.byte().is_some_and(holds),
         });
@@ -133,22 +148,12 @@ impl Layout {
                 continue;
             }
             for decimal_comma in [false, true] {
-                let allowed = stated.separator.is_none_or(|s| s == separator)
-                    && stated.decimal_comma.is_none_or(|d| d == decimal_comma)
-                    && !(separator == Separator::Comma && decimal_comma)
-                    && (comma || !decimal_comma || stated.decimal_comma.is_some());
-                if !allowed {
+                // Without a comma both signs are the same.
+                if decimal_comma && !comma && stated.decimal_comma.is_none() {
                     continue;
                 }
-                let layout = Layout {
-                    separator,
-                    decimal_comma,
-                    comments: comments.clone(),
-                    columns: 0,
-                    first_row: 0,
-                    last_is_empty: false,
-                    names: None,
-                    units: None,
+                let Some(layout) = Layout::bare(separator, decimal_comma, stated) else {
+                    continue;
                 };
                 let Some((fits, layout)) = layout.try_on(lines, stated.skip_lines, words) else {
                     continue;
@@ -161,7 +166,7 @@ impl Layout {
             }
         }
         let Some((_, mut layout)) = best else {
-            return Layout::complain(lines, &comments, stated.skip_lines);
+            return Layout::complain(lines, &comments(stated), stated.skip_lines);
         };
         if layout.columns > MOST_COLUMNS {
             let text = format!(
@@ -172,6 +177,36 @@ impl Layout {
         }
         layout.find_names(lines);
         Ok(Some(layout))
+    }
+
+    /// Without columns yet; `None` where something else is stated.
+    pub(super) fn bare(
+        separator: Separator,
+        decimal_comma: bool,
+        stated: &Stated,
+    ) -> Option<Layout> {
+        let allowed = stated.separator.is_none_or(|s| s == separator)
+            && stated.decimal_comma.is_none_or(|d| d == decimal_comma)
+            && !(separator == Separator::Comma && decimal_comma);
+        allowed.then(|| Layout {
+            separator,
+            decimal_comma,
+            comments: comments(stated),
+            columns: 0,
+            first_row: 0,
+            last_is_empty: false,
+            names: None,
+            units: None,
+            words: false,
+            long: None,
+        })
+    }
+
+    /// Fields of a line that is as it should be.
+    pub(super) fn fields(&self) -> usize {
+        self.long
+            .as_ref()
+            .map_or(self.columns, |long| long.fields())
     }
 
     /// Without any row of numbers: nothing there, or nothing that could be read.
@@ -240,24 +275,21 @@ impl Layout {
             nothing_last = field.is_empty()
         });
         self.last_is_empty = nothing_last;
+        self.words = words;
         Some((fits, self))
     }
 
     /// Names: the last line before the rows that has as many fields and is told in
     /// words, be it a comment; above it there may be names, and it has the units.
     fn find_names(&mut self, lines: &[&[u8]]) {
-        let before = &lines[..(self.first_row - 1) as usize];
+        let before = lines[..(self.first_row - 1) as usize].iter().rev();
         let mut found: Vec<(bool, Vec<String>)> = Vec::new();
-        for line in before.iter().rev().map(|line| line.trim_ascii()) {
-            let mark = self
-                .comments
-                .iter()
-                .find(|mark| line.starts_with(mark.as_bytes()));
-            let bare = mark.map_or(line, |mark| line[mark.len()..].trim_ascii());
+        for line in before {
+            let (is_comment, bare) = self.without_mark(line);
             match self.name_fields(bare) {
-                Some(names) => found.push((mark.is_some(), names)),
+                Some(names) => found.push((is_comment, names)),
                 // Remarks may stand between names and rows, anything else may not.
-                None if mark.is_some() || line.is_empty() => {}
+                None if is_comment || bare.is_empty() => {}
                 None => break,
             }
             if found.len() == 2 {
@@ -281,10 +313,20 @@ impl Layout {
         }
     }
 
+    /// What a comment says, or a line that is none.
+    pub(super) fn without_mark<'l>(&self, line: &'l [u8]) -> (bool, &'l [u8]) {
+        let line = line.trim_ascii();
+        let starts = |mark: &&String| line.starts_with(mark.as_bytes());
+        match self.comments.iter().find(starts) {
+            Some(mark) => (true, line[mark.len()..].trim_ascii()),
+            None => (false, line),
+        }
+    }
+
     /// The fields of a line, if they can be names of the columns: as many, with words.
     /// A separator at the end of the rows alone, or of this line alone, is borne, and
     /// blanks between names above rows that have another separator.
-    fn name_fields(&self, line: &[u8]) -> Option<Vec<String>> {
+    pub(super) fn name_fields(&self, line: &[u8]) -> Option<Vec<String>> {
         let blank = Layout {
             separator: Separator::Blank,
             ..self.clone()
@@ -371,7 +413,11 @@ impl Layout {
         } else {
             ", no header"
         };
-        format!("{separator}{decimal}{header}")
+        let long = match self.long {
+            Some(_) => ", a row for each time and channel",
+            None => "",
+        };
+        format!("{separator}{decimal}{header}{long}")
     }
 }
 
@@ -387,6 +433,13 @@ pub fn is_time_name(name: &str) -> bool {
     name == "t" || name.eq_ignore_ascii_case("time")
 }
 
+fn comments(stated: &Stated) -> Vec<String> {
+    match &stated.comment {
+        Some(comment) => vec![comment.clone()],
+        None => USUAL_COMMENTS.map(str::to_owned).to_vec(),
+    }
+}
+
 fn is_comment(line: &[u8], comments: &[String]) -> bool {
     comments
         .iter()
@@ -398,85 +451,4 @@ fn is_comment(line: &[u8], comments: &[String]) -> bool {
 pub(super) const SAMPLE_BYTES: (usize, usize) = (64 * 1024, 4 * MOST_LINE_BYTES);
 
 #[cfg(test)]
-mod tests {
-    use super::*;
-
-    fn find(text: &str, stated: &Stated) -> Result<Option<Layout>> {
-        let lines: Vec<&[u8]> = text.lines().map(str::as_bytes).collect();
-        Layout::find(&lines, stated)
-    }
-
-    fn found(text: &str) -> Layout {
-        find(text, &Stated::default()).unwrap().unwrap()
-    }
-
-    #[test]
-    fn separators_and_decimal_signs_are_told_apart() {
-        use Separator::*;
-        for (text, separator, decimal_comma, columns) in [
-            ("t,x\n0,1\n1,2\n", Comma, false, 2),
-            ("t;x\n0;1\n1;2\n", Semicolon, false, 2),
-            ("t;x\n0,5;1\n1,5;2\n", Semicolon, true, 2),
-            ("t\tx\n0.5\t1\n", Tab, false, 2),
-            ("t\tx\n0,5\t1\n", Tab, true, 2),
-            ("t x\n 0.5   1\n 1.5  2\n", Blank, false, 2),
-            ("0,5 1,5\n1,5 2,5\n", Blank, true, 2),
-            ("0.5, 1.5, 2\n1.5, 2.5, 3\n", Comma, false, 3),
-            ("0 \t 1\n1 \t 2\n", Tab, false, 2),
-            ("t,x\n0,nan\n1,2\n", Comma, false, 2),
-            ("0.5\n1.5\n", Tab, false, 1),
-        ] {
-            let layout = found(text);
-            let shape = (layout.separator, layout.decimal_comma, layout.columns);
-            assert_eq!(shape, (separator, decimal_comma, columns), "{text:?}");
-        }
-    }
-
-    #[test]
-    fn names_are_found_above_the_rows_in_quotes_or_in_a_comment() {
-        let names = |text: &str| found(text).names.map(|names| names.join("|"));
-        assert_eq!(
-            names("\"t\",\"T, air\"\n0,1\n").as_deref(),
-            Some("t|T, air")
-        );
-        assert_eq!(names("# t x v\n0 1 2\n").as_deref(), Some("t|x|v"));
-        assert_eq!(
-            names("run of today\nstep 0.1\nt;x\n0;1\n").as_deref(),
-            Some("t|x")
-        );
-        assert_eq!(names("0;1\n1;2\n"), None);
-        let units = found("t,x\ns,degC\n0,1\n");
-        assert_eq!(units.names.unwrap(), ["t", "x"]);
-        assert_eq!(units.units.unwrap(), ["s", "degC"]);
-    }
-
-    #[test]
-    fn what_is_stated_holds() {
-        let stated = Stated {
-            comment: Some("@".into()),
-            ..Stated::default()
-        };
-        let layout = find("@ a\nt,x\n0,1\n", &stated).unwrap().unwrap();
-        assert_eq!((layout.first_row, layout.names.unwrap().len()), (3, 2));
-        let stated = Stated {
-            skip_lines: Some(2),
-            ..Stated::default()
-        };
-        let layout = find("1,2\nt,x\n0,1\n", &stated).unwrap().unwrap();
-        assert_eq!(layout.first_row, 3);
-        assert_eq!(layout.names.unwrap(), ["t", "x"]);
-    }
-
-    #[test]
-    fn files_without_rows() {
-        assert_eq!(find("", &Stated::default()).unwrap(), None);
-        assert_eq!(find("t,x\n\n", &Stated::default()).unwrap(), None);
-        let fault = find("a story\nof two lines\n", &Stated::default()).unwrap_err();
-        assert!(
-            fault
-                .text
-                .starts_with("no rows of numbers found: this line is `of two lines`")
-        );
-        assert_eq!(fault.line, Some(2));
-    }
-}
+mod tests;

@@ -6,13 +6,15 @@
 //! by batch ([`Survey`]); what is wrong between rows is looked for in their order
 //! ([`Survey::rows`]). Memory does not grow with the file. A reader knows no case; `open` is the
 //! place that looks at files, everything else takes bytes. Packed text ([`packed`]) goes the same
-//! way; files of numbers in columns ([`columns`]) come as batches from the start (`tables`).
+//! way, long tables ([`Long`]) put
+//! their rows side by side before; files of numbers in columns ([`columns`]) come as batches from the start (`tables`).
 
 mod batch;
 pub mod columns;
 mod finding;
 mod grid;
 mod layout;
+mod long;
 mod number;
 mod open;
 pub mod packed;
@@ -28,7 +30,8 @@ mod tables;
 pub(crate) use batch::Batch;
 pub use finding::{Finding, Findings, Kind};
 pub use grid::Grid;
-pub use layout::{Layout, Separator, Stated, is_time_name};
+pub use layout::{ColumnName, Layout, Separator, Stated, is_time_name};
+pub use long::{Long, LongStated};
 pub use number::{Field, Printed};
 pub use open::{Source, open};
 pub use pieces::MOST_LINE_BYTES;

@@ -142,6 +142,10 @@ impl Source {
         if let Some(table) = self.table() {
             return tables::batches(table, of, each);
         }
+        if let Some(long) = &layout.long {
+            let mut take = |batch, _| each(batch).map(|()| true);
+            return self.long_batches(long, of, &mut take).map(|_| ());
+        }
         let columns = batch::Columns::new(layout, of, Known::default());
         self.text_batches(layout, &columns, &mut |batch, _| each(batch).map(|()| true))
             .map(|_| ())

@@ -150,7 +150,7 @@ impl<'a> Order<'a> {
     fn is_usable(&self, line: u64, odd: &Odd, open: Option<Open>, findings: &mut Findings) -> bool {
         let Odd { columns, strange } = odd;
         let layout = &self.survey.layout;
-        let expected = layout.columns;
+        let expected = layout.fields();
         if let Some(open) = open {
             let short = |(place, printed)| self.survey.is_short(place, printed);
             if *columns != expected || strange.is_some() || open.last.is_some_and(short) {
@@ -173,7 +173,12 @@ impl<'a> Order<'a> {
             } else {
                 quoted(field)
             };
-            let text = format!("column {name} is {found}, not a number");
+            let text = match layout.long {
+                Some(_) if field.is_empty() && *column > 0 => {
+                    format!("there is no value of {name} at this time")
+                }
+                _ => format!("column {name} is {found}, not a number"),
+            };
             findings.fatal(Kind::NotANumber, line, text);
         }
         true

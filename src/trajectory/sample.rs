@@ -42,11 +42,15 @@ impl Source {
         }
         let columns = Columns::new(layout, of, Known::default());
         let (mut batches, mut read) = (Vec::new(), 0);
-        let whole = self.text_batches(layout, &columns, &mut |batch, bytes| {
+        let mut take = |batch, bytes| {
             batches.push(batch);
             read += bytes;
             Ok(read <= WHOLE_BYTES)
-        })?;
+        };
+        let whole = match &layout.long {
+            Some(long) => self.long_batches(long, of, &mut take),
+            None => self.text_batches(layout, &columns, &mut take),
+        }?;
         let mut surveyor = Surveyor::new(of.channels.len());
         // Of a larger file the beginning counts no more than any other stretch.
         let beginning = if whole { batches.len() } else { 1 };
@@ -54,7 +58,8 @@ impl Source {
             .iter()
             .take(beginning)
             .for_each(|batch| surveyor.add(batch));
-        if !whole {
+        // Rows of a long table cannot be cut out of its middle.
+        if !whole && layout.long.is_none() {
             self.stretches(&mut |text| {
                 let piece = Piece { text, last: false };
                 // A line that is too long is complained of when its turn comes.

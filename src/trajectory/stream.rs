@@ -90,7 +90,7 @@ impl Source {
         stages: Stages<W, D>,
     ) -> Result<()> {
         let layout = &guess.layout;
-        if self.table().is_some() {
+        if self.table().is_some() || layout.long.is_some() {
             return self.batches(layout, &guess.selection, &mut |batch| {
                 for work in (stages.in_order)(&batch) {
                     (stages.gather)((stages.apart)(work));

@@ -4,6 +4,7 @@ use super::batch::{Batch, Known};
 use super::columns::recognise;
 use super::grid::{Grid, GridFinder};
 use super::layout::{Layout, SAMPLE_BYTES, Stated};
+use super::long::{self, Head};
 use super::open::Source;
 use super::pieces::{check_length, line_end};
 use super::resolution::{Pattern, Resolution};
@@ -57,21 +58,36 @@ impl Source {
     /// A file that cannot be read, is no text, or fits no layout.
     pub fn layout(&self, stated: &Stated) -> Result<Option<Layout>> {
         if let Some(table) = self.table() {
-            return tables::layout(table);
+            return match stated.long {
+                Some(_) => Err(long::refusal()),
+                None => tables::layout(table),
+            };
         }
-        // A long preamble can fill the first sample; a larger one is taken only then.
+        let Some(columns) = &stated.long else {
+            return self.first_lines(&|lines| Layout::find(lines, stated));
+        };
+        let head = self.first_lines(&|lines| Head::find(lines, stated, columns))?;
+        head.map_or(Ok(None), |head| self.long_layout(head).map(Some))
+    }
+
+    /// What is found in the first lines. A long preamble can fill the first sample; a larger one
+    /// is taken only then.
+    fn first_lines<T>(&self, find: &Find<T>) -> Result<Option<T>> {
         let (small, large) = SAMPLE_BYTES;
         let (sample, whole) = self.sample(small)?;
-        let found = layout_of(&sample, whole, stated);
+        let found = find(&lines(&sample, whole)?);
         if whole || matches!(found, Ok(Some(_))) {
             return found;
         }
         let (sample, whole) = self.sample(large)?;
-        layout_of(&sample, whole, stated)
+        find(&lines(&sample, whole)?)
     }
 }
 
-fn layout_of(sample: &[u8], whole: bool, stated: &Stated) -> Result<Option<Layout>> {
+type Find<'a, T> = dyn Fn(&[&[u8]]) -> Result<Option<T>> + 'a;
+
+/// The whole lines of a text.
+fn lines(sample: &[u8], whole: bool) -> Result<Vec<&[u8]>> {
     if let Some(format) = recognise(sample) {
         return Err(format.refusal());
     }
@@ -90,7 +106,7 @@ fn layout_of(sample: &[u8], whole: bool, stated: &Stated) -> Result<Option<Layou
     if whole && !rest.is_empty() {
         lines.push(rest);
     }
-    Layout::find(&lines, stated)
+    Ok(lines)
 }
 
 /// Gathers what the batches of a file show, in their order.

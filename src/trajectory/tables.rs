@@ -34,6 +34,8 @@ pub(super) fn layout(table: &dyn Columns) -> Result<Option<Layout>> {
         last_is_empty: false,
         names: named.then(|| names.collect()),
         units: None,
+        words: false,
+        long: None,
     };
     Ok((table.rows() > 0).then_some(layout))
 }

@@ -5,6 +5,7 @@ use std::fmt::Write;
 
 use stepgauge::case::{Case, Library, Replacements};
 use stepgauge::compare::{Compared, Comparison, Limit};
+use stepgauge::fault::Fault;
 use stepgauge::number::{Conversion, Decimal, Double};
 use stepgauge::trajectory::{Crew, Finding, Findings, Kind, Selection, Source, Stated};
 
@@ -40,7 +41,16 @@ fn full(x: f64) -> String {
 }
 
 fn compare(case: &Case, source: &Source, stated: &Stated) -> (Compared, Vec<Finding>) {
-    let layout = source.layout(stated).unwrap().unwrap();
+    try_compare(case, source, stated).unwrap()
+}
+
+/// The same for a file whose rows may not be readable.
+pub fn try_compare(
+    case: &Case,
+    source: &Source,
+    stated: &Stated,
+) -> Result<(Compared, Vec<Finding>), Fault> {
+    let layout = source.layout(stated)?.unwrap();
     let exact = case.exact().unwrap();
     let limit = Limit {
         absolute: 1e-3,
@@ -70,8 +80,8 @@ fn compare(case: &Case, source: &Source, stated: &Stated) -> (Compared, Vec<Find
         crew: &Crew::default(),
     };
     let mut findings = Findings::default();
-    let compared = comparison.run(&mut findings).unwrap();
-    (compared, findings.into_list())
+    let compared = comparison.run(&mut findings)?;
+    Ok((compared, findings.into_list()))
 }
 
 fn text(lines: &[String]) -> Vec<u8> {

@@ -49,6 +49,9 @@ mod long_files;
 /// The same trajectory in every layout.
 mod layouts;
 
+/// One row for each time and channel: the report of the wide twin, in every order, cut anywhere.
+mod long_tables;
+
 /// Broken files and submissions: finding, line, exit status.
 mod broken;
 

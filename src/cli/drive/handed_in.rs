@@ -29,10 +29,7 @@ pub(super) fn submission_toml(plan: &DrivePlan, chosen: &Chosen, steps: &[f64]) 
     text += &table("limits", lines);
     let mut lines = String::new();
     for (channel, stated) in &terms.columns {
-        let column = stated.column.as_ref().map(|column| match column {
-            ColumnName::Name(name) => toml_literal(name),
-            ColumnName::Number(number) => number.to_string(),
-        });
+        let column = stated.column.as_ref().map(column);
         let parts = [
             ("column", column),
             ("unit", stated.unit.as_deref().map(toml_literal)),
@@ -44,6 +41,10 @@ pub(super) fn submission_toml(plan: &DrivePlan, chosen: &Chosen, steps: &[f64]) 
     let decimal = layout
         .decimal_comma
         .map(|comma| toml_literal(if comma { "," } else { "." }));
+    let long = layout.long.as_ref().map(|long| {
+        let [name, value] = [&long.name, &long.value].map(|name| Some(column(name)));
+        inline([("name", name), ("value", value)])
+    });
     let lines = [
         line(
             "separator",
@@ -58,6 +59,7 @@ pub(super) fn submission_toml(plan: &DrivePlan, chosen: &Chosen, steps: &[f64]) 
             layout.skip_lines.map(|count| count.to_string()),
         ),
         line("digits", layout.digits.map(|count| count.to_string())),
+        line("long", long),
     ];
     text += &table("layout", lines.concat());
     for &step in steps {
@@ -69,6 +71,13 @@ pub(super) fn submission_toml(plan: &DrivePlan, chosen: &Chosen, steps: &[f64]) 
         );
     }
     text
+}
+
+fn column(column: &ColumnName) -> String {
+    match column {
+        ColumnName::Name(name) => toml_literal(name),
+        ColumnName::Number(number) => number.to_string(),
+    }
 }
 
 fn limit_parts(limit: &LimitStated) -> [(&'static str, Option<String>); 3] {
