@@ -329,11 +329,11 @@ impl Search<'_> {
             }
             return glance;
         }
-        let mut best = trial.from_start(sheet, Sides::After, either);
+        let mut best = trial.run_from_start(sheet, Sides::After, either);
         let (from, to) = self.linear.window;
         if !best.holds() && !either && self.linear.jumps_within(from, to) {
             for sides in [Sides::Own, Sides::Before] {
-                let other = trial.from_start(sheet, sides, either);
+                let other = trial.run_from_start(sheet, sides, either);
                 if other.ratio < best.ratio {
                     best = other;
                 }

@@ -219,7 +219,7 @@ impl<'a> Trial<'a> {
     /// Compares a file that does not hold every state: the method runs from the start of
     /// the window, through jumps, and meets the rows of the first window. `either` allows
     /// for nodes on jumps that see the other side than the one given.
-    pub(super) fn from_start(&self, sheet: &Sheet, sides: Sides, either: bool) -> Fit {
+    pub(super) fn run_from_start(&self, sheet: &Sheet, sides: Sides, either: bool) -> Fit {
         let (linear, record, peaks) = (self.linear, &sheet.record, &sheet.all_peaks);
         let Some(window) = record.windows.first() else {
             return Fit::NOTHING;

@@ -13,8 +13,11 @@ use super::scheme::{Coefficients, Scheme};
 use super::starts::work_of_start;
 
 /// Multiplications that a form is worth where it is not claimed: with many states and a long
-/// memory a single number of steps can cost a second.
+/// memory a single number of steps can cost a second. More where each number of steps is
+/// cheap, since a range of them may be searched.
 const MOST_WORK: f64 = 5e7;
+const MOST_CHEAP_WORK: f64 = 2.5e8;
+const CHEAP: f64 = 1e7;
 
 /// The coefficients of every form of a method of the catalogue.
 pub(super) fn forms_of(method: &'static Method) -> &'static [Coefficients] {
@@ -88,9 +91,14 @@ impl<'a> Variant<'a> {
         } else {
             0.0
         };
-        self.spent
-            .set(self.spent.get() + of_step + of_leg + of_start);
-        self.spent.get() <= MOST_WORK
+        let cost = of_step + of_leg + of_start;
+        self.spent.set(self.spent.get() + cost);
+        let most = if cost <= CHEAP {
+            MOST_CHEAP_WORK
+        } else {
+            MOST_WORK
+        };
+        self.spent.get() <= most
     }
 
     /// `None` where the step cannot be solved, or where another way to read the inputs
