@@ -13,24 +13,16 @@ use crate::number::dot;
 struct Noise {
     fixed: Vec<f64>,
     swept: Vec<f64>,
-    time_doubt: f64,
-    steps: f64,
-}
-
-impl Noise {
-    /// How far the times of the steps after a row can have drifted: times that are summed
-    /// step by step drift by half a unit in the last place each.
-    fn drift(&self, time: f64, row: u64) -> f64 {
-        drift(self.steps, self.time_doubt, time, row)
-    }
-}
-
-fn drift(steps: f64, time_doubt: f64, time: f64, row: u64) -> f64 {
-    let count = (row + 1) as f64 * steps;
-    (count + 4.0) * 0.5 * f64::EPSILON * time.abs() + time_doubt
 }
 
 impl Trial<'_> {
+    /// How far the times of the steps after a row can have drifted: times that are summed
+    /// step by step drift by half a unit in the last place each.
+    fn drift(&self, scale: &Scale, time: f64, row: u64) -> f64 {
+        let count = (row + 1) as f64 * self.leg.steps as f64;
+        (count + 4.0) * 0.5 * f64::EPSILON * time.abs() + scale.time_doubt
+    }
+
     fn noise(&self, scale: &Scale) -> Noise {
         let Rounded { spread, pull } = self.leg.rounded();
         let unit = self.unit * self.leg.recurrence.roundings;
@@ -38,8 +30,6 @@ impl Trial<'_> {
         Noise {
             fixed: pairs.map(|(spread, pull)| unit * (spread + pull)).collect(),
             swept: apply(pull, &scale.slopes).collect(),
-            time_doubt: scale.time_doubt,
-            steps: self.leg.steps as f64,
         }
     }
 
@@ -53,7 +43,7 @@ impl Trial<'_> {
     ) -> impl Iterator<Item = f64> + 's {
         let Rounded { spread, pull } = self.leg.rounded();
         let unit = self.unit * self.leg.recurrence.roundings;
-        let drift = drift(self.leg.steps as f64, scale.time_doubt, time, row);
+        let drift = self.drift(scale, time, row);
         let fixed = apply(spread, &scale.states).zip(apply(pull, &scale.forcing));
         let pairs = fixed.zip(apply(pull, &scale.slopes));
         pairs.map(move |((spread, pull), swept)| unit * (spread + pull) + swept * drift)
@@ -124,7 +114,7 @@ impl Trial<'_> {
             let time = laid.times[row];
             let stack = (row + 1) * size - stacked..(row + 1) * size;
             let drive = &laid.drive[row * driven..][..driven];
-            let drift = noise.drift(time, laid.first + row as u64);
+            let drift = self.drift(&laid.scale, time, laid.first + row as u64);
             let stamp = 2.0 * f64::EPSILON * laid.times[row + 1].abs() + laid.scale.spacing_doubt;
             for (i, peak) in peaks.iter().enumerate() {
                 let line = self.leg.joined.row(newest + i);
@@ -199,7 +189,10 @@ impl Trial<'_> {
                 _ => (self.across(), None),
             };
             // It is largest at one of the ends of what was passed over.
-            let before = std::mem::replace(&mut drift, noise.drift(time, laid.first + row as u64));
+            let before = std::mem::replace(
+                &mut drift,
+                self.drift(&laid.scale, time, laid.first + row as u64),
+            );
             let made = noise.fixed.iter().zip(&noise.swept);
             let made = made.map(|(fixed, swept)| fixed + swept * drift.max(before));
             let mut made: Vec<f64> = made.collect();

@@ -1,19 +1,13 @@
-//! The steps of a method from one row to the next as matrices, and a shelf for them: runs of
-//! one model at the same spacing are held against the same steps.
+//! The steps of a method from one row to the next as matrices, and where they lead to.
 
-use std::collections::HashMap;
-use std::sync::atomic::{AtomicU64, Ordering};
 use std::sync::{Arc, OnceLock, PoisonError, RwLock};
 
 use super::drive::Drive;
 use super::linear::Linear;
 use super::powers::{corner, gathered, to_the_power};
-use super::recurrence::{Reading, Recurrence};
+use super::recurrence::Recurrence;
 use crate::number::Matrix;
 
-/// Numbers on a shelf at most; it is cleared then, so that memory does not grow with what is
-/// audited.
-const MOST_NUMBERS: usize = 2_500_000;
 /// Numbers of steps whose matrices a leg keeps.
 const MOST_LEAPS: usize = 3;
 
@@ -36,7 +30,7 @@ pub struct Leg {
     /// Other numbers of steps that were asked for.
     leaps: RwLock<Vec<(u64, Arc<Matrix<f64>>)>>,
     /// Where it came to from a start.
-    course: RwLock<Option<Arc<Course>>>,
+    course: RwLock<Option<Course>>,
 }
 
 /// The states after so many rows from a start.
@@ -145,92 +139,22 @@ impl Leg {
         drop(last);
         let states = Arc::new(find()?);
         let mut last = self.course.write().unwrap_or_else(PoisonError::into_inner);
-        *last = Some(Arc::new(Course {
+        *last = Some(Course {
             start: start.to_vec(),
             origin,
             rows: rows.to_vec(),
             states: Arc::clone(&states),
-        }));
+        });
         Some(states)
     }
 
     /// About how many numbers it holds.
-    fn numbers(&self) -> usize {
+    pub(super) fn numbers(&self) -> usize {
         let (size, stacked) = (self.recurrence.size(), self.stacked());
         let recurrence = self.recurrence.past.len() + self.recurrence.nodes.len() + 2;
         let (single, across) = (self.single.size().pow(2), stacked * stacked);
         let rounded = 2 * stacked * size;
         let course = 64 * (size + 1);
         recurrence * size * size + rounded + course + (2 + MOST_LEAPS) * single + 2 * across
-    }
-}
-
-/// What tells the legs of one model apart.
-#[derive(Clone, Copy, Debug, PartialEq, Eq, Hash)]
-pub(super) struct Title {
-    /// Where the method lies in memory, and the place of its form.
-    pub(super) form: (usize, usize),
-    pub(super) reading: Reading,
-    /// Which of the orders of states.
-    pub(super) order: usize,
-    /// The bits of the step.
-    pub(super) step: u64,
-    pub(super) steps: u64,
-}
-
-/// Legs that were worked out before, shared by the models of an audit.
-#[derive(Debug, Default)]
-pub struct Shelf {
-    kept: RwLock<Kept>,
-    models: AtomicU64,
-}
-
-#[derive(Debug, Default)]
-struct Kept {
-    legs: HashMap<(u64, Title), Arc<Leg>>,
-    numbers: usize,
-}
-
-/// The part of a shelf that is for one model.
-#[derive(Debug, Default)]
-pub(super) struct Section(Option<(Arc<Shelf>, u64)>);
-
-/// A model that is copied is going to be changed: its legs are others.
-impl Clone for Section {
-    fn clone(&self) -> Section {
-        Section(None)
-    }
-}
-
-impl Section {
-    pub(super) fn on(shelf: &Arc<Shelf>) -> Section {
-        let model = shelf.models.fetch_add(1, Ordering::Relaxed);
-        Section(Some((Arc::clone(shelf), model)))
-    }
-
-    /// A leg from the shelf, else a new one; `None` where it cannot be worked out.
-    pub(super) fn leg(
-        &self,
-        title: impl FnOnce() -> Title,
-        new: impl FnOnce() -> Option<Leg>,
-    ) -> Option<Arc<Leg>> {
-        let Some((shelf, model)) = &self.0 else {
-            return new().map(Arc::new);
-        };
-        let title = (*model, title());
-        let kept = shelf.kept.read().unwrap_or_else(PoisonError::into_inner);
-        if let Some(leg) = kept.legs.get(&title) {
-            return Some(Arc::clone(leg));
-        }
-        drop(kept);
-        let leg = Arc::new(new()?);
-        let mut kept = shelf.kept.write().unwrap_or_else(PoisonError::into_inner);
-        kept.numbers += leg.numbers();
-        if kept.numbers > MOST_NUMBERS {
-            kept.legs.clear();
-            kept.numbers = leg.numbers();
-        }
-        kept.legs.insert(title, Arc::clone(&leg));
-        Some(leg)
     }
 }

@@ -3,7 +3,7 @@
 
 use std::sync::Arc;
 
-use super::leg::{Section, Shelf};
+use super::shelf::{Section, Shelf};
 use crate::case::{Case, Shape};
 use crate::number::Matrix;
 

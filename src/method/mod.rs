@@ -32,6 +32,7 @@ mod scale;
 mod scheme;
 mod search;
 mod sheet;
+mod shelf;
 mod stability;
 mod starts;
 mod trial;
@@ -43,7 +44,7 @@ pub use drive::Drive;
 pub use evidence::{Evidence, Family, Skipped, Tried, evidence, evidence_of, fitting};
 pub use growth::{Growth, Likeness, Unmeasured, growth, likeness};
 pub use iterated::{Form, Iterated, forms};
-pub use leg::{Leg, Shelf};
+pub use leg::Leg;
 pub use linear::{Linear, Side, Signal};
 pub use march::{March, NEAR, Sides, add_forcing};
 pub use ranks::rank_orders;
@@ -51,6 +52,7 @@ pub use record::{LATER_ROWS, Piece, Record, START_ROWS, Window, next_wanted, win
 pub use recurrence::{Node, Ranks, Reading, Recurrence};
 pub use scheme::{Coefficients, Scheme, Slopes, Stages};
 pub use search::MOST_STEPS;
+pub use shelf::Shelf;
 pub use stability::{
     Rational, Stability, amplification, approx_stability, approx_stable_length, of_stages, roots,
 };

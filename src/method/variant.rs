@@ -6,10 +6,11 @@ use std::sync::{Arc, LazyLock};
 
 use super::catalogue::{METHODS, Method};
 use super::drive::Drive;
-use super::leg::{Leg, Title};
+use super::leg::Leg;
 use super::linear::Linear;
 use super::recurrence::{Ranks, Reading, Recurrence};
 use super::scheme::{Coefficients, Scheme};
+use super::shelf::Title;
 use super::starts::work_of_start;
 
 /// Multiplications that a form is worth where it is not claimed: with many states and a long

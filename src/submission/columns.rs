@@ -8,7 +8,7 @@ use super::{ColumnName, ColumnStated};
 use crate::case::{Case, Channel};
 use crate::fault::{Fault, Result, nearest, quoted};
 use crate::number::{Conversion, Double};
-use crate::trajectory::{Layout, Selection, is_time_name};
+use crate::trajectory::{Layout, Selection, bare_unit, is_time_name, unit_in_brackets};
 
 /// A channel of the case with its place in the file.
 #[derive(Clone, Debug, PartialEq)]
@@ -57,20 +57,12 @@ struct Header<'a> {
 impl<'a> Header<'a> {
     fn new(full: &'a str, below: Option<&'a str>) -> Header<'a> {
         let full = full.trim();
-        let bare = full.trim_end();
-        for (open, close) in [('[', ']'), ('(', ')')] {
-            if let Some(inner) = bare.strip_suffix(close)
-                && let Some(at) = inner.rfind(open)
-            {
-                let (name, unit) = (bare[..at].trim(), inner[at + 1..].trim());
-                if !name.is_empty() {
-                    return Header {
-                        full,
-                        name,
-                        unit: Some(unit),
-                    };
-                }
-            }
+        if let Some((name, unit)) = unit_in_brackets(full) {
+            return Header {
+                full,
+                name,
+                unit: Some(unit),
+            };
         }
         if let Some((name, unit)) = full.split_once('/')
             && !name.trim().is_empty()
@@ -82,7 +74,7 @@ impl<'a> Header<'a> {
                 unit: Some(unit.trim()),
             };
         }
-        let below = below.map(|unit| unit.trim_matches(['[', ']', '(', ')', ' ']));
+        let below = below.map(bare_unit);
         Header {
             full,
             name: full,

@@ -433,6 +433,21 @@ pub fn is_time_name(name: &str) -> bool {
     name == "t" || name.eq_ignore_ascii_case("time")
 }
 
+/// A header split into a name and a unit in brackets.
+pub(crate) fn unit_in_brackets(header: &str) -> Option<(&str, &str)> {
+    [('[', ']'), ('(', ')')]
+        .into_iter()
+        .find_map(|(open, close)| {
+            let (name, unit) = header.strip_suffix(close)?.rsplit_once(open)?;
+            (!name.trim().is_empty()).then(|| (name.trim(), unit.trim()))
+        })
+}
+
+/// A unit in a line of its own below the names, with or without brackets.
+pub(crate) fn bare_unit(below: &str) -> &str {
+    below.trim_matches(['[', ']', '(', ')', ' '])
+}
+
 fn comments(stated: &Stated) -> Vec<String> {
     match &stated.comment {
         Some(comment) => vec![comment.clone()],

@@ -31,6 +31,7 @@ pub(crate) use batch::Batch;
 pub use finding::{Finding, Findings, Kind};
 pub use grid::Grid;
 pub use layout::{ColumnName, Layout, Separator, Stated, is_time_name};
+pub(crate) use layout::{bare_unit, unit_in_brackets};
 pub use long::{Long, LongStated};
 pub use number::{Field, Printed};
 pub use open::{Source, open};

@@ -1,7 +1,8 @@
 //! Which columns of a long table hold time, name and value: as stated, the time by its name.
 
 use super::super::layout::{
-    ColumnName, Layout, ROWS_TRIED, SEPARATORS, Separator, Stated, is_time_name,
+    ColumnName, Layout, ROWS_TRIED, SEPARATORS, Separator, Stated, bare_unit, is_time_name,
+    unit_in_brackets,
 };
 use super::super::number::Field;
 use super::LongStated;
@@ -93,17 +94,8 @@ fn in_words(name: &ColumnName) -> String {
     }
 }
 
-/// A header split into a name and a unit in brackets.
 fn name_and_unit(header: &str) -> (&str, &str) {
-    for (open, close) in [('[', ']'), ('(', ')')] {
-        if let Some(inner) = header.strip_suffix(close)
-            && let Some((name, unit)) = inner.rsplit_once(open)
-            && !name.trim().is_empty()
-        {
-            return (name.trim(), unit.trim());
-        }
-    }
-    (header, "")
+    unit_in_brackets(header).unwrap_or((header, ""))
 }
 
 /// The column of a name or number; `None` where it is not there.
@@ -335,11 +327,7 @@ fn rows(
             .iter()
             .all(|(_, other)| other.get(name) != row.get(name))
     {
-        let bare = |place: usize| {
-            row[place]
-                .trim_matches(['[', ']', '(', ')', ' '])
-                .to_owned()
-        };
+        let bare = |place: usize| bare_unit(&row[place]).to_owned();
         units = (bare(time), bare(value));
         first_row = *number;
     }
