@@ -128,6 +128,10 @@ impl Comparison<'_> {
                 open,
                 ..
             } = &staged;
+            if batches.is_none() && guess.has_guessed_end(*open) {
+                guess.known.channels.clear();
+                continue;
+            }
             let came_true = survey.confirms(&guess, sizes, *largest_gap, *open);
             if !came_true && guesses < MOST_GUESSES {
                 guess = staged.survey;

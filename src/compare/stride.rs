@@ -2,7 +2,7 @@
 //! and the same number of steps apart but for a few.
 
 use crate::number::counted;
-use crate::trajectory::{Findings, Kind};
+use crate::trajectory::{Findings, Kind, LEAST_SHARE, LONG_PHASE};
 
 /// A stamp counts as a multiple of the step within this fraction of it: stamps can be
 /// printed coarsely or kept in single precision.
@@ -95,8 +95,10 @@ impl Strides {
             return;
         }
         for size in &self.sizes {
-            let whole = (size.stride / usual.stride).fract() == 0.0;
-            if size.stride > usual.stride && whole && size.longest_run < PHASE {
+            let factor = size.stride / usual.stride;
+            let long = size.longest_run >= PHASE
+                && (factor <= LONG_PHASE || size.count as f64 >= LEAST_SHARE * strides as f64);
+            if size.stride > usual.stride && factor.fract() == 0.0 && !long {
                 let missing = size.stride / usual.stride - 1.0;
                 let text = format!(
                     "{} missing before t = {} {unit}, {} in the file: rows lie {} steps of {} apart \

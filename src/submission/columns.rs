@@ -57,7 +57,9 @@ struct Header<'a> {
 impl<'a> Header<'a> {
     fn new(full: &'a str, below: Option<&'a str>) -> Header<'a> {
         let full = full.trim();
-        if let Some((name, unit)) = unit_in_brackets(full) {
+        if let Some((name, unit)) = unit_in_brackets(full)
+            && !is_place(full, unit)
+        {
             return Header {
                 full,
                 name,
@@ -81,6 +83,12 @@ impl<'a> Header<'a> {
             unit: below.filter(|unit| !unit.is_empty()),
         }
     }
+}
+
+/// True for the place of a column in a matrix, as in `x[2]`, which is no unit.
+fn is_place(full: &str, unit: &str) -> bool {
+    let whole = !unit.is_empty() && unit.bytes().all(|byte| byte.is_ascii_digit());
+    whole && full.ends_with(']') && !full[..full.len() - unit.len() - 2].ends_with(' ')
 }
 
 /// A header split into its name and a unit in brackets, after a `/` or in a line of its own

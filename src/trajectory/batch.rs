@@ -247,7 +247,9 @@ impl<'a> Columns<'a> {
             None => matches!(byte, b' ' | b'\t' | b'\n' | b'\r' | b'"'),
         };
         let length = text.iter().position(is_end)?;
-        (text[length] != b'"').then_some(length)
+        // Between blanks there is no empty field: the row is shorter than the others.
+        let is_missing = length == 0 && self.separator.is_none();
+        (text[length] != b'"' && !is_missing).then_some(length)
     }
 
     /// Any line, without its end.

@@ -47,6 +47,14 @@ const EXACT_SHARE: f64 = 0.5;
 /// So many larger steps in a row are a phase of coarser output and no hole.
 const PHASE: u64 = 3;
 
+/// Steps of a phase that are longer than this many of the others must make up at least this share
+/// of all steps: a few rows across a long stretch do not stand for the rows that are missing.
+pub(crate) const LONG_PHASE: f64 = 20.0;
+pub(crate) const LEAST_SHARE: f64 = 0.02;
+/// Where stamps are rounded to units of about the step, steps are of one of two sizes, but for so
+/// many: those are holes.
+const ROUNDED_SHARE: f64 = 0.95;
+
 /// Gathers the steps between stamps.
 #[derive(Clone, Debug, Default)]
 pub(super) struct GridFinder {
@@ -163,6 +171,39 @@ impl GridFinder {
         self.latest = place;
     }
 
+    /// The step of stamps that were rounded to whole units about as long as it: steps of one unit,
+    /// with others of none or of two units among them as evenly as rounding puts them there. Steps
+    /// that were chosen come in longer runs, or in more sizes.
+    fn rounded_to(&self, unit: f64) -> Option<f64> {
+        let of_size = |units: f64| {
+            let near = move |cluster: &&Cluster| (cluster.spacing / unit - units).abs() < 0.1;
+            self.clusters.iter().find(near)
+        };
+        let (ones, twos) = (of_size(1.0)?, of_size(2.0));
+        let doubles = twos.map_or(0, |twos| twos.count);
+        let steps = ones.count + doubles + self.repeats;
+        let others = doubles + self.repeats;
+        let all = self.steps + self.repeats;
+        if 20 * others <= self.steps || (steps as f64) < ROUNDED_SHARE * all as f64 {
+            return None;
+        }
+        let sum = ones.sum + twos.map_or(0.0, |twos| twos.sum);
+        let step = sum / steps as f64;
+        // Of `k` steps in a row, rounding makes a unit more or less at the latest after the
+        // reciprocal of what one of them is beyond a whole unit; and no sooner than that.
+        let units = step / unit;
+        let longest = |share: f64| 2.0 * (1.0 / share + 2.0);
+        let (of_ones, of_twos) = match units > 1.0 {
+            true => (units - 1.0, 2.0 - units),
+            // Steps of none do not end a run.
+            false => (0.0, 1.0),
+        };
+        let even = |run: u64, share: f64| run as f64 <= longest(share.max(1e-9));
+        let even = even(ones.longest_run, of_ones)
+            && twos.is_none_or(|twos| even(twos.longest_run, of_twos));
+        even.then_some(step)
+    }
+
     /// The grid, with how finely the stamps turned out to be printed.
     pub(super) fn conclude(&self, printed: Resolution) -> Grid {
         let Some(most) = self.clusters.iter().max_by_key(|cluster| cluster.count) else {
@@ -173,35 +214,35 @@ impl GridFinder {
         let last = self.last.map_or(0.0, |(time, ..)| time);
         let unit = 2.0 * printed.at(last);
         let one_unit = printed != Resolution::Full && (most.spacing / unit - 1.0).abs() < 1e-6;
-        let two_units = |cluster: &&Cluster| (1.5..2.5).contains(&(cluster.spacing / most.spacing));
-        let doubles: u64 = self
-            .clusters
-            .iter()
-            .filter(two_units)
-            .map(|cluster| cluster.count)
-            .sum();
-        let others = doubles + self.repeats;
         let mean = self.sum / (self.steps + self.repeats) as f64;
         // So many rows share a stamp that the step is less than a unit of the last digits: whatever
         // steps the stamps show are those of their rounding.
         let shared = printed != Resolution::Full && mean <= unit && 20 * self.repeats > self.steps;
-        if one_unit && 20 * others > self.steps || shared {
+        let rounded = self.rounded_to(unit).filter(|_| one_unit);
+        if let Some(spacing) = rounded.or(shared.then_some(mean)) {
             return Grid::Uniform {
-                spacing: mean,
+                spacing,
                 exact: None,
                 phases: [0.0; 2],
             };
         }
         // Exact decimals that are all multiples of one step leave little doubt.
         let exact_grid = most.identical && most.exact.is_some();
-        let share = if exact_grid {
-            EXACT_SHARE
-        } else {
-            UNIFORM_SHARE
+        // Of a schedule that goes over to longer steps for good, the short ones are no grid.
+        let returns = self
+            .clusters
+            .first()
+            .is_some_and(|first| most.runs > u64::from(!std::ptr::eq(first, most)));
+        let share = match exact_grid && returns {
+            true => EXACT_SHARE,
+            false => UNIFORM_SHARE,
         };
         if (most.count as f64) < share * self.steps as f64 {
             let mean = self.sum / self.steps as f64;
-            let near = |c: &Cluster| (c.spacing - mean).abs() <= 2.1 * printed.at(last);
+            // Rounding that doubles a step would leave out others: see above.
+            let near = |c: &Cluster| {
+                (c.spacing - mean).abs() <= 2.1 * printed.at(last) && c.spacing <= 2.0 * mean
+            };
             let rounded = !self.overflowed && self.clusters.iter().all(near);
             // Steps that differ by no more than the rounding of their stamps.
             return if rounded {
@@ -224,7 +265,9 @@ impl GridFinder {
             .filter(|cluster| {
                 let together = cluster.count >= PHASE * cluster.runs;
                 let long = cluster.longest_run >= PHASE;
-                cluster.spacing > 1.5 * spacing && long && together
+                let short = cluster.spacing <= LONG_PHASE * spacing;
+                let enough = cluster.count as f64 >= LEAST_SHARE * self.steps as f64;
+                cluster.spacing > 1.5 * spacing && long && together && (short || enough)
             });
         for (phase, cluster) in phases.iter_mut().zip(coarser) {
             *phase = cluster.spacing;

@@ -30,6 +30,7 @@ mod tables;
 pub(crate) use batch::Batch;
 pub use finding::{Finding, Findings, Kind};
 pub use grid::Grid;
+pub(crate) use grid::{LEAST_SHARE, LONG_PHASE};
 pub use layout::{ColumnName, Layout, Separator, Stated, is_time_name};
 pub(crate) use layout::{bare_unit, unit_in_brackets};
 pub use long::{Long, LongStated};

@@ -16,6 +16,8 @@ pub enum Resolution {
     Significant(u8),
     /// Whichever is coarser of so many decimals and so many significant digits.
     Coarser(u8, u8),
+    /// Numbers stored in half precision: half a unit in the last place of a binary16.
+    Half,
     /// Shortest text of single-precision numbers: one unit in the last place of an
     /// `f32`, half for the rounding to it and half for the shortest text.
     Single,
@@ -39,6 +41,8 @@ impl Resolution {
                 let decimals = Resolution::Decimals(decimals).at(value);
                 decimals.max(Resolution::Significant(digits).at(value))
             }
+            // Eleven bits; below 2^-14 the last one stands for 2^-24.
+            Resolution::Half => (full * 2f64.powi(42)).max(2f64.powi(-25)),
             Resolution::Single => {
                 let single = value.abs() as f32;
                 f64::from(single.next_up() - single)
@@ -51,8 +55,10 @@ impl Resolution {
         if self == other {
             return true;
         }
-        let single = [self, other].contains(&Resolution::Single);
-        if single || !(0.0 < smallest && smallest <= largest && largest.is_finite()) {
+        let stored = [self, other]
+            .iter()
+            .any(|one| matches!(one, Resolution::Single | Resolution::Half));
+        if stored || !(0.0 < smallest && smallest <= largest && largest.is_finite()) {
             return false;
         }
         // Within a decade only the rounding of the numbers changes, which is the same in both.
@@ -82,6 +88,7 @@ impl Resolution {
             Resolution::Coarser(decimals, digits) => {
                 format!("{decimals} decimals or {digits} significant digits")
             }
+            Resolution::Half => "half precision".to_owned(),
             Resolution::Single => "single precision".to_owned(),
         }
     }
@@ -168,6 +175,9 @@ const DIGITS_IN_FULL: u8 = 17;
 /// that the producer printed. Nine in ten do where trailing zeros are dropped.
 const MOST_ROWS: f64 = 0.5;
 
+/// Chance below which it is none that values in single precision show no more decimals.
+const CHANCE_OF_NO_MORE: f64 = 1e-3;
+
 /// Gathers how the values of one column were printed.
 #[derive(Clone, Debug)]
 pub(super) struct Pattern {
@@ -184,6 +194,8 @@ pub(super) struct Pattern {
     constant: bool,
     /// Values that are not the shortest text of an f32.
     not_single: u64,
+    /// The largest magnitude of the values that tell.
+    largest: f64,
     /// The first value and how it was printed, and the last value.
     first: Option<(f64, Printed)>,
     last: f64,
@@ -202,6 +214,7 @@ impl Pattern {
             divisor: 0,
             constant: true,
             not_single: 0,
+            largest: 0.0,
             first: None,
             last: f64::NAN,
         }
@@ -242,6 +255,7 @@ impl Pattern {
         }
         let single = printed.significant <= 9 && is_shortest_single(value, printed.significant);
         self.not_single += u64::from(!single);
+        self.largest = self.largest.max(value.abs());
     }
 
     /// Takes in what the rows after these show.
@@ -260,6 +274,7 @@ impl Pattern {
         (self.decimals, self.scientific) = (next.decimals, next.scientific);
         self.telling += next.telling;
         self.not_single += next.not_single;
+        self.largest = self.largest.max(next.largest);
         self.rows += next.rows;
         self.last = next.last;
         for (counts, more) in [
@@ -308,6 +323,16 @@ impl Pattern {
     /// either.
     fn is_single(&self) -> bool {
         30 * self.not_single <= self.telling
+    }
+
+    /// True where values in single precision would show more decimals than any of these has: the
+    /// numbers of so many decimals are so far apart that some of single precision lie between them,
+    /// and all values are small enough for that.
+    fn would_show_more(&self, decimals: u8) -> bool {
+        let single = 2.0 * half_ulp(self.largest) * 2f64.powi(29);
+        // A number of single precision has one of so many decimals near it with this chance.
+        let chance = single * power_of_ten(i32::from(decimals));
+        self.telling as f64 * chance.ln() < CHANCE_OF_NO_MORE.ln()
     }
 
     /// True where all values are equal, so that the column tells nothing by itself.
@@ -362,25 +387,27 @@ impl Pattern {
         }
         // Eight or nine digits, every value the shortest text of an f32: of other numbers
         // of eight digits only every second one is.
-        if self.is_single() && most >= 8 && self.telling >= 8 {
-            return Resolution::Single;
-        }
         let most_rows = |count: u64| count as f64 > MOST_ROWS * self.telling as f64;
-        let digits = most_rows(self.by_digits[usize::from(most)]);
-        // Rounded to decimals, trailing zeros dropped, over numbers of several decades.
         let decimals = self
             .by_decimals
             .iter()
             .rposition(|&count| count > 0)
             .unwrap_or(0);
+        let rounded = most_rows(self.by_decimals[decimals]);
+        let is_single = self.is_single() && !(rounded && self.would_show_more(decimals as u8));
+        if is_single && most >= 8 && self.telling >= 8 {
+            return Resolution::Single;
+        }
+        let digits = most_rows(self.by_digits[usize::from(most)]);
+        // Rounded to decimals, trailing zeros dropped, over numbers of several decades.
         let lengths = self.by_digits.iter().filter(|&&count| count > 0).count();
-        let rounded = most_rows(self.by_decimals[decimals]) && lengths > 1 && self.telling >= 8;
+        let rounded = rounded && lengths > 1 && self.telling >= 8;
         match (rounded, digits) {
             (true, true) => Resolution::Coarser(decimals as u8, most),
             (true, false) => Resolution::Decimals(decimals as u8),
             (false, true) => Resolution::Significant(most),
             // Seven to nine digits without a pattern: the shortest text of an f32.
-            (false, false) if self.is_single() && most >= 7 => Resolution::Single,
+            (false, false) if is_single && most >= 7 => Resolution::Single,
             (false, false) => Resolution::Full,
         }
     }

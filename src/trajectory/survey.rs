@@ -194,6 +194,12 @@ impl Surveyor {
 }
 
 impl Survey {
+    /// True where a last line without an end was held against digits that only samples of the file
+    /// have shown: whether it is cut off is for all rows to say.
+    pub(crate) fn has_guessed_end(&self, open: bool) -> bool {
+        open && self.known.channels.contains(&true)
+    }
+
     /// True where rows that were read with a guess of the survey came out as with this one.
     /// Holes of a grid are looked for with its step as it was known then: that does not matter as
     /// long as no gap between rows could be one with either step. `sizes` are the smallest and

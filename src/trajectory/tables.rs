@@ -2,7 +2,7 @@
 //! of that precision gives, and the same findings.
 
 use super::batch::{Batch, Line, Odd};
-use super::columns::Columns;
+use super::columns::{Columns, Precision};
 use super::layout::{Layout, Separator};
 use super::resolution::Resolution;
 use super::scan::scan;
@@ -97,16 +97,20 @@ fn line(row: usize, time: f64, is_odd: bool) -> Line {
 /// What is known of a table's digits without looking at any number.
 pub(super) fn stored(table: &dyn Columns, survey: &mut Survey, digits: Option<u8>) {
     let heads = table.heads();
-    let single = |column: usize| heads.get(column).is_some_and(|head| head.single);
-    let resolution = |column: usize| match digits {
-        _ if single(column) => Resolution::Single,
-        Some(digits) if digits < 17 => Resolution::Significant(digits),
-        _ => Resolution::Full,
+    let stored = |column: usize| match heads.get(column).map(|head| head.precision) {
+        Some(Precision::Half) => Some(Resolution::Half),
+        Some(Precision::Single) => Some(Resolution::Single),
+        _ => None,
     };
-    survey.time = match single(survey.selection.time) {
-        true => Resolution::Single,
-        false => Resolution::Full,
+    let whole = |column: usize| heads.get(column).is_some_and(|head| head.whole);
+    let resolution = |column: usize| match (stored(column), digits) {
+        (Some(resolution), _) => resolution,
+        (None, Some(digits)) if digits < 17 => Resolution::Significant(digits),
+        // As their text shows it.
+        (None, _) if whole(column) => Resolution::Decimals(0),
+        (None, _) => Resolution::Full,
     };
+    survey.time = stored(survey.selection.time).unwrap_or(Resolution::Full);
     let channels = survey.selection.channels.clone();
     survey.channels = channels.iter().map(|&column| resolution(column)).collect();
     survey.known.time = true;

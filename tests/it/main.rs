@@ -63,6 +63,7 @@ mod cheats;
 
 /// Every method of the catalogue: its order, its stability as published.
 mod methods;
+mod misread;
 
 /// Factors of single modes: measured against published ones.
 mod growth;

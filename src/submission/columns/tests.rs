@@ -104,3 +104,20 @@ fn missing_columns_are_named() {
         ["state `wall` is not in the file and not compared"]
     );
 }
+
+#[test]
+fn the_place_of_a_column_in_a_matrix_is_no_unit() {
+    for (header, name, unit) in [
+        ("x[1]", "x[1]", None),
+        ("x[12]", "x[12]", None),
+        ("x [1]", "x", Some("1")),
+        ("x[ 1 ]", "x", Some("1")),
+        ("x(1)", "x", Some("1")),
+        ("air[degC]", "air", Some("degC")),
+    ] {
+        assert_eq!(name_and_unit(header, None), (name, unit), "{header}");
+    }
+    let stated =
+        "case = 'thermal/cold-room-defrost'\n[columns]\ntime = 'y[1]'\nair = 'y[2]'\nwall = 'y[3]'";
+    assert_eq!(columns("y[1],y[2],y[3]", stated).0, 0);
+}

@@ -20,6 +20,18 @@ pub enum Kind {
     Unsigned(u8),
 }
 
+/// Precision of stored numbers.
+#[derive(Clone, Copy, Debug, Default, PartialEq, Eq)]
+pub enum Precision {
+    /// IEEE binary16.
+    Half,
+    /// IEEE binary32.
+    Single,
+    /// IEEE binary64, and all else.
+    #[default]
+    Double,
+}
+
 impl Cell {
     /// Bytes of one number.
     pub fn size(self) -> usize {
@@ -28,9 +40,13 @@ impl Cell {
         }
     }
 
-    /// True below double precision.
-    pub fn is_single(self) -> bool {
-        matches!(self.kind, Kind::Float(2 | 4))
+    /// How finely numbers are stored; whole ones count as they are.
+    pub fn precision(self) -> Precision {
+        match self.kind {
+            Kind::Float(2) => Precision::Half,
+            Kind::Float(4) => Precision::Single,
+            _ => Precision::Double,
+        }
     }
 
     /// True for whole numbers.

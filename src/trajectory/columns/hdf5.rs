@@ -191,8 +191,8 @@ fn entry(
         ..Entry::default()
     };
     let fields = match element::kind(set)? {
-        Kind::Plain { single, whole } => {
-            (entry.single, entry.whole) = (single, whole);
+        Kind::Plain { precision, whole } => {
+            (entry.precision, entry.whole) = (precision, whole);
             Vec::new()
         }
         Kind::Records(fields) => fields,
@@ -204,7 +204,7 @@ fn entry(
         .iter()
         .map(|field| Head {
             name: Some(format!("{name}.{}", field.name)),
-            single: field.cell.is_single(),
+            precision: field.cell.precision(),
             whole: field.cell.is_whole(),
         })
         .collect();

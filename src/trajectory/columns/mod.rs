@@ -24,7 +24,7 @@ mod zip;
 #[cfg(test)]
 mod tests;
 
-pub use cell::{Cell, Kind};
+pub use cell::{Cell, Kind, Precision};
 pub use data::{Data, Handle, Piece};
 pub use recognise::{FIRST_BYTES, Format, recognise};
 
@@ -42,7 +42,7 @@ pub struct Head {
     /// Its name, if the file has one.
     pub name: Option<String>,
     /// True where numbers are stored below double precision.
-    pub single: bool,
+    pub precision: Precision,
     /// True where whole numbers are stored; beyond 2^53 they are rounded.
     pub whole: bool,
 }

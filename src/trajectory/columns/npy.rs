@@ -3,7 +3,7 @@
 
 use std::io::Read;
 
-use super::cell::{Cell, Kind};
+use super::cell::{Cell, Kind, Precision};
 use super::literal::{Literal, parse};
 use super::strip::{Lie, pour, skip};
 use super::{Columns, Data, EachBlock, Head, checked, data};
@@ -115,11 +115,11 @@ impl Array {
             .try_fold(size, |bytes, &side| bytes.checked_mul(side))
     }
 
-    /// Single and whole, for plain numbers.
-    pub fn nature(&self) -> (bool, bool) {
+    /// How finely plain numbers are stored, and whether they are whole.
+    pub fn nature(&self) -> (Precision, bool) {
         match self.elements {
-            Elements::Plain(cell) => (cell.is_single(), cell.is_whole()),
-            _ => (false, false),
+            Elements::Plain(cell) => (cell.precision(), cell.is_whole()),
+            _ => (Precision::Double, false),
         }
     }
 
@@ -130,7 +130,7 @@ impl Array {
         };
         let head = |(name, _, cell): &(String, usize, Cell)| Head {
             name: Some(name.clone()),
-            single: cell.is_single(),
+            precision: cell.precision(),
             whole: cell.is_whole(),
         };
         fields.iter().map(head).collect()
@@ -287,10 +287,10 @@ impl Npy {
         agree(claimed, length.saturating_sub(array.header), rows)?;
         let heads = match array.fields() {
             fields if fields.is_empty() => {
-                let (single, whole) = array.nature();
+                let (precision, whole) = array.nature();
                 let head = Head {
                     name: None,
-                    single,
+                    precision,
                     whole,
                 };
                 vec![head; columns as usize]

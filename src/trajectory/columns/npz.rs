@@ -49,7 +49,7 @@ impl Npz {
 }
 
 fn entry(name: &str, array: &Array) -> Entry {
-    let (single, whole) = array.nature();
+    let (precision, whole) = array.nature();
     let mut fields = array.fields();
     for field in &mut fields {
         let inner = field.name.take().unwrap_or_default();
@@ -59,7 +59,7 @@ fn entry(name: &str, array: &Array) -> Entry {
         name: name.to_owned(),
         shape: array.shape.clone(),
         fields,
-        single,
+        precision,
         whole,
     }
 }

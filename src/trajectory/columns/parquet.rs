@@ -14,7 +14,7 @@ use parquet::file::reader::{ChunkReader, FileReader, Length, RowGroupReader};
 use parquet::file::serialized_reader::SerializedFileReader;
 use parquet::schema::types::ColumnDescriptor;
 
-use super::{BLOCK_ROWS, Columns, Data, EachBlock, Head, checked, guarded};
+use super::{BLOCK_ROWS, Columns, Data, EachBlock, Head, Precision, checked, guarded};
 use crate::fault::{Fault, Result, quoted};
 use crate::trajectory::MOST_COLUMNS;
 
@@ -93,11 +93,11 @@ impl Table {
         for (index, column) in schema.columns().iter().enumerate() {
             let name = column.path().string();
             match nature(column) {
-                Ok((single, whole, unsigned)) => {
+                Ok((precision, whole, unsigned)) => {
                     table.places.push((index, unsigned));
                     table.heads.push(Head {
                         name: Some(name),
-                        single,
+                        precision,
                         whole,
                     });
                 }
@@ -165,8 +165,8 @@ fn count(number: i64) -> Result<u64> {
     u64::try_from(number).map_err(|_| Fault::new("the file claims a negative number of rows"))
 }
 
-/// Single, whole and without a sign, or why the column is not part of the table.
-fn nature(column: &ColumnDescriptor) -> std::result::Result<(bool, bool, bool), &'static str> {
+/// How finely numbers are stored, whether they are whole and without a sign, or why the column is not part of the table.
+fn nature(column: &ColumnDescriptor) -> std::result::Result<(Precision, bool, bool), &'static str> {
     if column.max_rep_level() > 0 || column.path().parts().len() != 1 {
         return Err("is nested");
     }
@@ -184,10 +184,10 @@ fn nature(column: &ColumnDescriptor) -> std::result::Result<(bool, bool, bool), 
         Some(_) => return Err("holds no plain numbers"),
     };
     match column.physical_type() {
-        Physical::DOUBLE => Ok((false, false, false)),
-        Physical::FLOAT => Ok((true, false, false)),
-        Physical::INT32 | Physical::INT64 => Ok((false, true, unsigned)),
-        Physical::BOOLEAN => Ok((false, true, false)),
+        Physical::DOUBLE => Ok((Precision::Double, false, false)),
+        Physical::FLOAT => Ok((Precision::Single, false, false)),
+        Physical::INT32 | Physical::INT64 => Ok((Precision::Double, true, unsigned)),
+        Physical::BOOLEAN => Ok((Precision::Double, true, false)),
         Physical::INT96 => Err("holds dates or times of day"),
         Physical::BYTE_ARRAY | Physical::FIXED_LEN_BYTE_ARRAY => Err("holds bytes or text"),
     }

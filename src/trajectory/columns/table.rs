@@ -1,7 +1,7 @@
 //! Named arrays of any shapes to one table: which belong to it, under which names,
 //! and a sentence for each that does not.
 
-use super::Head;
+use super::{Head, Precision};
 use crate::fault::{Fault, Result, quoted};
 use crate::trajectory::MOST_COLUMNS;
 
@@ -13,7 +13,7 @@ pub(super) struct Entry {
     pub shape: Vec<u64>,
     /// Fields of each element, where the elements are records.
     pub fields: Vec<Head>,
-    pub single: bool,
+    pub precision: Precision,
     pub whole: bool,
 }
 
@@ -114,7 +114,7 @@ pub(super) fn lay(entries: &[Entry], left_out: Vec<String>) -> Result<Table> {
                     1 => entry.name.clone(),
                     _ => format!("{}[{column}]", entry.name),
                 }),
-                single: entry.single,
+                precision: entry.precision,
                 whole: entry.whole,
             }));
         }

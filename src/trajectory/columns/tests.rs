@@ -113,7 +113,7 @@ fn whole_numbers_and_truth_values_are_read() {
         let header = format!("{{'descr': {descr}, 'fortran_order': False, 'shape': (1,)}}\n");
         let bytes = [npy(&header, 0), data].concat();
         let file = open(&Data::memory(bytes), Format::Npy).unwrap();
-        assert!(file.heads()[0].whole && !file.heads()[0].single);
+        assert!(file.heads()[0].whole && file.heads()[0].precision == Precision::Double);
         file.read(&[0], &mut |block| {
             assert_eq!(block, [[value]]);
             Ok(())

@@ -4,12 +4,12 @@
 use hdf5_reader::error::{Error, Result as Hdf5Result};
 use hdf5_reader::{ByteOrder, Dataset, Datatype, H5Type};
 
-use super::super::cell::{self, Cell};
+use super::super::cell::{self, Cell, Precision};
 use crate::trajectory::MOST_COLUMNS;
 
 /// What a dataset holds.
 pub(super) enum Kind {
-    Plain { single: bool, whole: bool },
+    Plain { precision: Precision, whole: bool },
     Records(Vec<Field>),
 }
 
@@ -55,7 +55,7 @@ pub(super) fn kind(set: &Dataset) -> Result<Kind, String> {
                 return Err("holds whole numbers of an unusual kind".to_owned());
             }
             Ok(Kind::Plain {
-                single: cell.is_single(),
+                precision: cell.precision(),
                 whole: cell.is_whole(),
             })
         }

@@ -4,7 +4,7 @@
 
 use std::io::Read;
 
-use super::super::cell::{Cell, Kind};
+use super::super::cell::{Cell, Kind, Precision};
 use super::super::data;
 use super::super::strip::skip;
 use super::super::table::Entry;
@@ -27,7 +27,7 @@ pub(super) struct Found {
     pub shape: Vec<u64>,
     /// How they are stored, which may be shorter than what they are.
     pub cell: Cell,
-    pub single: bool,
+    pub precision: Precision,
     pub whole: bool,
     /// Bytes of the stream before the first.
     pub start: u64,
@@ -39,7 +39,7 @@ impl Found {
             name: self.name.clone(),
             shape: self.shape.clone(),
             fields: Vec::new(),
-            single: self.single,
+            precision: self.precision,
             whole: self.whole,
         }
     }
@@ -272,7 +272,10 @@ impl Scan {
             name: front.name,
             shape: front.shape,
             cell,
-            single: front.class == 7 || cell.is_single(),
+            precision: match front.class {
+                7 => Precision::Single,
+                _ => cell.precision(),
+            },
             whole: front.class > 7 || front.logical,
             start,
         });
