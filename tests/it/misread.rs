@@ -85,7 +85,7 @@ fn all_rows_say_whether_the_last_one_is_cut_off() {
     let rows = exact(even(150_000));
     let print = |row: usize, value: f64| {
         let place = (row * 16) as f64 / rows.len() as f64 % 1.0;
-        match ((0.4..0.7).contains(&place) && row % 4 == 0) || row + 1 == rows.len() {
+        match ((0.4..0.7).contains(&place) && row.is_multiple_of(4)) || row + 1 == rows.len() {
             true => format!("{value:.4}"),
             false => format!("{value:.16}"),
         }
@@ -99,7 +99,7 @@ fn all_rows_say_whether_the_last_one_is_cut_off() {
     // The other way round: in the stretches some are short, in the file next to none.
     let print = |row: usize, value: f64| {
         let place = (row * 16) as f64 / rows.len() as f64 % 1.0;
-        match !(0.3..0.9).contains(&place) && row % 40 == 20 {
+        match !(0.3..0.9).contains(&place) && (row + 20).is_multiple_of(40) {
             true => format!("{value:.4}"),
             false => format!("{value:.16}"),
         }
@@ -126,7 +126,7 @@ fn a_few_rows_across_a_long_stretch_do_not_stand_for_it() {
     };
     let missing = (1, Some("missing-rows".to_owned()));
     let apart = |from: usize, to: usize, stride: usize| {
-        move |k: usize| !(from..to).contains(&k) || k % stride == 0
+        move |k: usize| !(from..to).contains(&k) || k.is_multiple_of(stride)
     };
     assert_eq!(audit(&apart(2000, 6000, 1000), &[]), missing);
     assert_eq!(
