@@ -1,5 +1,6 @@
 //! What a reviewer requires beside what was found: a requirement is met by one submission that
-//! passes, is no control, has the parameters of the case, enough runs and the right method.
+//! passes, is no control, has the parameters of the case, enough runs and rows, and the right
+//! method.
 
 use super::verdict::rung_setting;
 use crate::fault::quoted;
@@ -7,7 +8,7 @@ use crate::judge::{Support, Verdict};
 use crate::method::{Method, find_all};
 use crate::number::counted;
 use crate::outcome::{Audited, Outcome, Required};
-use crate::submission::{Expect, Requirement, Setting};
+use crate::submission::{Expect, Requirement, Role, Setting};
 
 /// Steps that differ by a smaller factor show nothing of an order: they count once.
 const APART: f64 = 1.05;
@@ -28,6 +29,7 @@ pub fn required(requirements: &[Requirement], outcome: &Outcome) -> Vec<Required
         Required {
             case: requirement.case.clone(),
             runs: requirement.runs,
+            rows: requirement.rows,
             methods: requirement.methods.clone(),
             method_shown: requirement.method_shown,
             text: format!("{}: {}", wanted(requirement), found(&met_by, &short)),
@@ -39,11 +41,16 @@ pub fn required(requirements: &[Requirement], outcome: &Outcome) -> Vec<Required
 
 fn wanted(requirement: &Requirement) -> String {
     let mut text = format!("case {}", requirement.case);
+    let mut counts = Vec::new();
     if requirement.runs > 1 {
-        text += &format!(
-            " with at least {} runs at different steps",
-            requirement.runs
-        );
+        counts.push(format!("{} runs at different steps", requirement.runs));
+    }
+    if requirement.rows > 0 {
+        let rows = counted(requirement.rows, "row");
+        counts.push(format!("{rows} in each result"));
+    }
+    if !counts.is_empty() {
+        text += &format!(" with at least {}", counts.join(" and "));
     }
     match (&requirement.methods[..], requirement.method_shown) {
         ([], false) => {}
@@ -93,6 +100,11 @@ fn shortcoming(audited: &Audited, requirement: &Requirement) -> Option<String> {
     let rungs = rungs(audited);
     if rungs < requirement.runs {
         return Some(format!("has {} at different steps", counted(rungs, "run")));
+    }
+    let results = audited.runs.iter().filter(|run| run.role == Role::Result);
+    let rows = results.map(|run| run.rows).min().unwrap_or(0);
+    if rows < requirement.rows {
+        return Some(format!("has a result with {}", counted(rows, "row")));
     }
     if requirement.methods.is_empty() && !requirement.method_shown {
         return None;

@@ -184,6 +184,10 @@ fn submissions(arguments: &AuditArguments, plan: &mut Plan) -> Result<(), Vec<Fa
 
 fn read(place: &Place) -> Result<Submission, Vec<Fault>> {
     let path = &place.file;
+    if !place.is_plain {
+        let fault = Fault::new("this is a link or no plain file, so it was not opened");
+        return Err(vec![fault.help("put the file itself into the folder")]);
+    }
     let io = |error: std::io::Error| vec![Fault::io(path, &error)];
     let size = std::fs::metadata(path).map_err(io)?.len();
     if size > MOST_SUBMISSION_BYTES {

@@ -24,6 +24,8 @@ pub struct Required {
     pub case: String,
     /// Runs at different steps, at least.
     pub runs: u64,
+    /// Rows of each result, at least; zero where nothing is said of them.
+    pub rows: u64,
     /// Methods of which one has to be claimed; empty where any will do.
     pub methods: Vec<String>,
     /// Whether the rows have to agree with the method.

@@ -59,6 +59,7 @@ fn review(review: &Review) -> ReviewReport {
     let required = |one: &Required| RequiredReport {
         case: one.case.clone(),
         runs: one.runs,
+        rows: one.rows,
         methods: one.methods.clone(),
         method_shown: one.method_shown,
         met_by: one.met_by.clone(),

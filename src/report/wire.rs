@@ -68,6 +68,7 @@ pub struct ReviewReport {
 pub struct RequiredReport {
     pub case: String,
     pub runs: u64,
+    pub rows: u64,
     pub methods: Vec<String>,
     pub method_shown: bool,
     /// Empty where it is missing, which is never in order.

@@ -42,6 +42,8 @@ pub struct Requirement {
     pub case: String,
     /// Its runs at different steps, at least.
     pub runs: u64,
+    /// Rows of each of its results, at least; zero where the case alone says how many.
+    pub rows: u64,
     /// It has to claim one of these; empty where any will do.
     pub methods: Vec<String>,
     /// True where its rows have to agree with the method, so that "cannot tell" is not enough.
@@ -77,6 +79,7 @@ type LimitsTable = BTreeMap<Spanned<String>, Spanned<LimitEntry>>;
 struct RequireEntry {
     case: Spanned<String>,
     runs: Option<Spanned<i64>>,
+    rows: Option<Spanned<i64>>,
     methods: Option<Spanned<Vec<Spanned<String>>>>,
     #[serde(default)]
     method_shown: bool,
@@ -190,6 +193,15 @@ impl Reader<'_> {
             }
             whole
         });
+        let rows = entry.rows.map_or(0, |rows| {
+            let whole = u64::try_from(*rows.get_ref()).unwrap_or(0);
+            if whole == 0 {
+                let fault = Fault::new(format!("`rows` is {}", rows.get_ref()));
+                let help = "give the rows of a result from the start of the window to its end";
+                self.complain_of(fault.help(help), rows.span().start);
+            }
+            whole
+        });
         let mut methods = Vec::new();
         if let Some(list) = entry.methods {
             if list.get_ref().is_empty() {
@@ -205,6 +217,7 @@ impl Reader<'_> {
         Requirement {
             case: entry.case.into_inner(),
             runs,
+            rows,
             methods,
             method_shown: entry.method_shown,
         }
