@@ -158,9 +158,9 @@ fn method_shortcoming(audited: &Audited, requirement: &Requirement) -> Option<St
         return Some(format!("claims {name}, which can be another method"));
     }
     let claims = audited.evidence.iter().flat_map(|found| &found.claims);
-    let of_method = claims.filter(|claim| claim.what == "method");
-    let agrees = of_method.map(|claim| claim.support == Support::Agrees);
-    if requirement.method_shown && !agrees.last().unwrap_or(false) {
+    let mut of_method = claims.filter(|claim| claim.what == "method");
+    let agrees = of_method.any(|claim| claim.support == Support::Agrees);
+    if requirement.method_shown && !agrees {
         let name = quoted(name);
         return Some(format!("claims {name}, and its rows cannot tell"));
     }

@@ -92,7 +92,7 @@ Example: what others hand in, by the rules of whoever accepts it
   [[require]]
   case = \"thermal/cold-room-defrost\"
   runs = 3                       # at different steps
-  methods = [\"RK4\"]            # claimed, and not contradicted
+  methods = [\"RK4\"]              # claimed, and not contradicted
 
 Exit status: 0 all in order, 1 something failed, is undecided, not as expected or became
 worse, 2 the audit could not be done.")]
