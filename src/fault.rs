@@ -116,6 +116,21 @@ pub fn in_plain_words(message: &str) -> String {
     text
 }
 
+/// A complaint of the TOML reader; a key that is not known is compared with those that it lists.
+pub fn misread(message: &str) -> Fault {
+    let fault = Fault::new(in_plain_words(message));
+    let Some(rest) = message.strip_prefix("unknown field `") else {
+        return fault;
+    };
+    // Every other piece between backticks is a name.
+    let mut names = rest.split('`').step_by(2);
+    let near = names.next().and_then(|key| nearest(key, names));
+    match near {
+        Some(near) => fault.help(format!("did you mean `{near}`?")),
+        None => fault.help("leave it out, or write one of the keys that are expected"),
+    }
+}
+
 /// User text in backticks: control characters escaped, cut at 40 characters.
 pub fn quoted(text: &str) -> String {
     let escaped = escaped(text);

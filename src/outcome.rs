@@ -8,6 +8,7 @@ mod evidence;
 mod methods;
 mod part;
 mod plots;
+mod review;
 mod steps;
 
 use crate::fault::Fault;
@@ -27,6 +28,7 @@ pub use evidence::{
 pub use methods::{AliasFacts, Factor, FormFacts, MethodFacts, SourceFacts, Written};
 pub use part::{Part, Whole};
 pub use plots::{ExactCurve, PlotPoint};
+pub use review::{Required, Review};
 pub use steps::{
     ChannelError, ChannelLimit, JumpGrid, LargestStep, MethodSteps, OnJumps, Rule, StepRun,
     StepsOutcome,
@@ -45,6 +47,8 @@ pub struct Outcome {
     pub changes: Option<Changes>,
     /// Which part of a divided audit this is; `None` for a whole one.
     pub part: Option<Part>,
+    /// By what rules of a reviewer it was audited, if by any.
+    pub review: Option<Review>,
 }
 
 /// A submission that could not be audited.
@@ -108,6 +112,38 @@ pub enum LimitsFrom {
     Submission,
     /// Those of the command line.
     CommandLine,
+    /// Those of the reviewer's file.
+    Reviewer,
+}
+
+impl LimitsFrom {
+    /// All of them.
+    pub const ALL: [LimitsFrom; 4] = [
+        LimitsFrom::Case,
+        LimitsFrom::Submission,
+        LimitsFrom::CommandLine,
+        LimitsFrom::Reviewer,
+    ];
+
+    /// The word in reports for programs.
+    pub fn word(self) -> &'static str {
+        match self {
+            LimitsFrom::Case => "case",
+            LimitsFrom::Submission => "submission",
+            LimitsFrom::CommandLine => "command-line",
+            LimitsFrom::Reviewer => "reviewer",
+        }
+    }
+
+    /// Whose they are, for people.
+    pub fn whose(self) -> &'static str {
+        match self {
+            LimitsFrom::Case => "the case",
+            LimitsFrom::Submission => "the submission's own",
+            LimitsFrom::CommandLine => "the command line",
+            LimitsFrom::Reviewer => "the reviewer's file",
+        }
+    }
 }
 
 /// One file.
@@ -269,12 +305,20 @@ impl Outcome {
         changes.is_some_and(|changes| !changes.worse.is_empty())
     }
 
-    /// True where everything was audited and is as expected, and there was anything: only a
-    /// part may have nothing to do, where there are more parts than submissions.
+    /// What a reviewer requires and no submission meets.
+    pub fn missing(&self) -> impl Iterator<Item = &Required> {
+        let required = self.review.iter().flat_map(|review| &review.required);
+        required.filter(|one| !one.is_met())
+    }
+
+    /// True where everything was audited and is as expected, nothing that is required is
+    /// missing, and there was anything: only a part may have nothing to do, where there are
+    /// more parts than submissions.
     pub fn in_order(&self) -> bool {
         let all = self.submissions.iter().all(Audited::in_order);
         let any = !self.submissions.is_empty() || self.part.is_some();
-        all && any && self.left == 0 && self.not_audited.is_empty()
+        let there = self.missing().next().is_none();
+        all && any && there && self.left == 0 && self.not_audited.is_empty()
     }
 }
 

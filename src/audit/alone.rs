@@ -38,7 +38,10 @@ pub(super) fn audit_alone(planned: &Planned) -> Result<Audited, Vec<Fault>> {
         None,
         String::new(),
         submission,
-        LimitsFrom::Submission,
+        match planned.reviewed.limits_from {
+            Some(LimitsFrom::Reviewer) => LimitsFrom::Reviewer,
+            _ => LimitsFrom::Submission,
+        },
     );
     let mut order: Vec<(f64, &Run)> = Vec::new();
     for run in &submission.runs {

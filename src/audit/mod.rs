@@ -10,6 +10,7 @@ mod curves;
 mod evidence;
 mod growth;
 mod keep;
+mod required;
 mod rows;
 mod run;
 mod settings;
@@ -24,6 +25,7 @@ use std::sync::{Arc, Mutex};
 use crate::case::{Case, Library};
 use crate::exact::{Exact, approx_time_scales};
 use crate::fault::Fault;
+use crate::judge::Verdict;
 use crate::method::{Linear, Shelf};
 use crate::outcome::{Audited, LimitsFrom, NotAudited, Outcome, Part};
 use crate::submission::{LimitStated, Submission};
@@ -31,6 +33,7 @@ use crate::trajectory::Crew;
 use run::compare;
 use verdict::{assign_roles, judge_orders, judge_runs, note_hidden_rungs};
 
+pub use required::required;
 pub use rows::{Rows, audit_rows};
 pub use watch::Watch;
 
@@ -70,8 +73,30 @@ pub struct Planned {
     pub file: Option<PathBuf>,
     /// What was handed in.
     pub submission: Submission,
-    /// True where the limits come from the command line.
-    pub limits_from_command_line: bool,
+    /// What a reviewer's rules and the command line make of it.
+    pub reviewed: Reviewed,
+}
+
+/// What is laid down for a submission, whatever it states itself.
+#[derive(Clone, Debug, Default)]
+pub struct Reviewed {
+    /// Whose limits it was given; `None` where its own count, or those of the case.
+    pub limits_from: Option<LimitsFrom>,
+    /// Why it fails, whatever its numbers say.
+    pub refused: Vec<String>,
+    /// What else to know.
+    pub notes: Vec<String>,
+}
+
+impl Reviewed {
+    /// What is refused fails, and is told first.
+    fn conclude(&self, audited: &mut Audited) {
+        if !self.refused.is_empty() {
+            audited.verdict = Verdict::Fail;
+            audited.reasons.splice(0..0, self.refused.iter().cloned());
+        }
+        audited.notes.extend(self.notes.iter().cloned());
+    }
 }
 
 /// A case with its solution, shared by the submissions that name it.
@@ -174,7 +199,9 @@ fn audit_one(
     };
     let placed = |faults: Vec<Fault>| faults.into_iter().map(place).collect::<Vec<_>>();
     let Some(name) = submission.case.as_deref() else {
-        return alone::audit_alone(planned).map_err(placed);
+        let mut audited = alone::audit_alone(planned).map_err(placed)?;
+        planned.reviewed.conclude(&mut audited);
+        return Ok(audited);
     };
     let keyed = |faults: Vec<Fault>| {
         placed(
@@ -185,7 +212,10 @@ fn audit_one(
         )
     };
     let model = model(name, submission, library, models).map_err(keyed)?;
-    check_limited_channels(&model.case, submission).map_err(placed)?;
+    // Those of a reviewer are for many cases, and were looked at before.
+    if planned.reviewed.limits_from != Some(LimitsFrom::Reviewer) {
+        check_limited_channels(&model.case, submission).map_err(placed)?;
+    }
     let mut audited = Audited::new(
         planned.name.clone(),
         Some(model.case.name.clone()),
@@ -237,14 +267,15 @@ fn audit_one(
     if plan.traced {
         audited.curves = curves::exact_curves(&model);
     }
+    planned.reviewed.conclude(&mut audited);
     Ok(audited)
 }
 
 fn limits_from(planned: &Planned) -> LimitsFrom {
     let limits = &planned.submission.limits;
     let states = |limit: &LimitStated| *limit != LimitStated::default();
-    if planned.limits_from_command_line {
-        LimitsFrom::CommandLine
+    if let Some(from) = planned.reviewed.limits_from {
+        from
     } else if states(&limits.general)
         || limits.channels.values().any(states)
         || limits.order_slack.is_some()

@@ -198,6 +198,13 @@ impl Library {
         added.map(|(_, entry)| entry.path.as_path())
     }
 
+    /// The file of a case that was added from a folder; `None` for a built-in one.
+    pub fn file(&self, name: &str) -> Option<&Path> {
+        let built_in = built_in().iter().any(|&(known, _)| known == name);
+        let entry = self.entries.get(name).filter(|_| !built_in);
+        entry.map(|entry| entry.path.as_path())
+    }
+
     /// All names, in alphabetical order.
     pub fn names(&self) -> impl Iterator<Item = &str> {
         self.entries.keys().map(String::as_str)

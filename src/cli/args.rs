@@ -83,6 +83,17 @@ Example: one file of a simulator, written at a step of 10 s
   stepgauge audit run.csv --case thermal/cold-room-defrost --column air=T1 --step 10 \\
       --absolute 1e-3
 
+Example: what others hand in, by the rules of whoever accepts it
+  stepgauge audit incoming --require rules.toml --own-parameters refuse
+
+  # rules.toml
+  [limits]                       # as in submission.toml; for one case:
+  absolute = 1e-3                # [case_limits.\"thermal/cold-room-defrost\"]
+  [[require]]
+  case = \"thermal/cold-room-defrost\"
+  runs = 3                       # at different steps
+  methods = [\"RK4\"]              # claimed, and not contradicted
+
 Exit status: 0 all in order, 1 something failed, is undecided, not as expected or became
 worse, 2 the audit could not be done.")]
 pub struct AuditArguments {
@@ -110,6 +121,9 @@ pub struct AuditArguments {
     /// What the relative limit is a fraction of
     #[arg(long, value_name = "WHAT")]
     pub relative_to: Option<RelativeTo>,
+    /// What a reviewer lays down
+    #[command(flatten)]
+    pub review: ReviewArguments,
     /// Writes a report whose kind follows from its ending: .html, .json, .xml (JUnit),
     /// .md, .csv (repeatable)
     #[arg(long, value_name = "FILE")]
@@ -130,6 +144,31 @@ pub struct AuditArguments {
     /// Cases beside the built-in ones
     #[command(flatten)]
     pub sources: Sources,
+}
+
+/// What a reviewer lays down for whatever is handed in.
+#[derive(Debug, Args)]
+pub struct ReviewArguments {
+    /// Limits of the reviewer, a TOML file with `[limits]` or `[case_limits."FIELD/NAME"]`;
+    /// those of submissions do not count then
+    #[arg(long, value_name = "FILE.toml")]
+    pub limits: Option<PathBuf>,
+    /// What has to be there, a TOML file with `[[require]]`, and limits as for --limits; what
+    /// is missing fails the audit
+    #[arg(long, value_name = "FILE.toml")]
+    pub require: Option<PathBuf>,
+    /// Whether a submission may replace parameters of its case [default: allow]
+    #[arg(long, value_name = "WHETHER")]
+    pub own_parameters: Option<Whether>,
+}
+
+/// Whether something is allowed.
+#[derive(Clone, Copy, Debug, PartialEq, Eq, ValueEnum)]
+pub enum Whether {
+    /// It is shown in every report.
+    Allow,
+    /// The submission fails by it.
+    Refuse,
 }
 
 /// What a relative limit is a fraction of.

@@ -247,7 +247,7 @@ fn judge(
                     name: chosen.case.name.clone(),
                     file: Some(file),
                     submission,
-                    limits_from_command_line: false,
+                    reviewed: Default::default(),
                 }),
                 Err(faults) => told.extend(faults.iter().map(|fault| sentence(fault, &folder))),
             }

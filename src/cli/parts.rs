@@ -4,13 +4,13 @@ use std::path::{Path, PathBuf};
 
 use clap::Args;
 
-use super::args::{AuditArguments, Before, RelativeTo};
+use super::args::{AuditArguments, Before, RelativeTo, Whether};
 use super::earlier::{self, Earlier};
 use super::reports::{Inputs, check_merged};
 use crate::audit::Plan;
 use crate::fault::Fault;
 use crate::outcome::Changes;
-use crate::parts::{Asked, Given, MOST_PARTS, divide, join};
+use crate::parts::{Asked, Given, MOST_PARTS, digest, divide, join};
 use crate::report::{AuditReport, changes_report, read_report, report_json, write_atomically};
 
 /// Arguments of `merge`.
@@ -58,7 +58,8 @@ pub(super) fn share_of(text: &str) -> Result<(u32, u32), String> {
 /// Leaves the part of a plan that was asked for.
 ///
 /// # Errors
-/// `--against` beside it: what other parts audit would seem to be gone.
+/// `--against` and `--require` beside it: what other parts audit would seem to be gone, or
+/// missing.
 pub(super) fn take(arguments: &AuditArguments, plan: &mut Plan) -> Result<(), Fault> {
     let Some((part, of)) = arguments.part else {
         return Ok(());
@@ -66,6 +67,12 @@ pub(super) fn take(arguments: &AuditArguments, plan: &mut Plan) -> Result<(), Fa
     if arguments.before.against.is_some() {
         let fault = Fault::new("--against goes with a whole audit, --part audits a share of it");
         return Err(fault.help("give `--against` to `stepgauge merge`"));
+    }
+    if arguments.review.require.is_some() {
+        let text = "--require goes with a whole audit, --part audits a share of it";
+        let help = "audit the whole tree with `--require`; `--limits` and `--own-parameters` \
+                    go with `--part`";
+        return Err(Fault::new(text).help(help));
     }
     let shown = |path: &PathBuf| path.to_string_lossy().into_owned();
     let asked = Asked {
@@ -101,6 +108,18 @@ fn options(arguments: &AuditArguments) -> Vec<String> {
     match arguments.relative_to {
         Some(RelativeTo::Value) => add("relative-to", "value"),
         Some(RelativeTo::Peak) => add("relative-to", "peak"),
+        None => {}
+    }
+    if let Some(file) = &arguments.review.limits {
+        // Limits may have been changed between two parts, under the same name.
+        add(
+            "limits",
+            &format!("{} {}", file.to_string_lossy(), digest(file)),
+        );
+    }
+    match arguments.review.own_parameters {
+        Some(Whether::Refuse) => add("own-parameters", "refuse"),
+        Some(Whether::Allow) => add("own-parameters", "allow"),
         None => {}
     }
     for folder in &arguments.sources.cases {

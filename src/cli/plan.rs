@@ -6,10 +6,12 @@ use std::path::PathBuf;
 
 use super::args::{AuditArguments, RelativeTo, Sources};
 use super::reports;
-use crate::audit::{Plan, Planned};
+use super::reviewer::Reviewer;
+use crate::audit::{Plan, Planned, Reviewed};
 use crate::case::{Library, Replacements};
 use crate::fault::{Fault, quoted};
-use crate::outcome::NotAudited;
+use crate::number::plain;
+use crate::outcome::{LimitsFrom, NotAudited};
 use crate::submission::{
     Claims, ColumnName, ColumnStated, Expect, LimitStated, LimitsStated, MOST_SUBMISSION_BYTES,
     Place, Run, Setting, Submission, discover,
@@ -30,13 +32,14 @@ pub(super) fn processors() -> usize {
     std::thread::available_parallelism().map_or(1, usize::from)
 }
 
-/// The plan of an audit.
+/// The plan of an audit, and the reviewer who judges what came of it.
 ///
 /// # Errors
 /// What keeps the whole audit from being done; a single submission that cannot be read
 /// is part of the plan.
-pub(super) fn plan(arguments: &AuditArguments) -> Result<Plan, Vec<Fault>> {
+pub(super) fn plan(arguments: &AuditArguments) -> Result<(Plan, Reviewer), Vec<Fault>> {
     let library = library(&arguments.sources)?;
+    let reviewer = Reviewer::read(arguments, &library)?;
     let threads = match arguments.threads {
         Some(threads) => usize::from(threads),
         None => processors(),
@@ -53,7 +56,11 @@ pub(super) fn plan(arguments: &AuditArguments) -> Result<Plan, Vec<Fault>> {
         Some(case) => single_files(case, arguments, &mut plan)?,
         None => submissions(arguments, &mut plan)?,
     }
-    Ok(plan)
+    for planned in &mut plan.submissions {
+        reviewer.review(planned, &plan.library);
+        limits_of_command_line(planned, arguments);
+    }
+    Ok((plan, reviewer))
 }
 
 fn single_files(case: &str, arguments: &AuditArguments, plan: &mut Plan) -> Result<(), Vec<Fault>> {
@@ -123,8 +130,7 @@ fn single_files(case: &str, arguments: &AuditArguments, plan: &mut Plan) -> Resu
             }],
         };
         let name = path.to_string_lossy().into_owned();
-        plan.submissions
-            .push(planned(name, None, submission, arguments));
+        plan.submissions.push(planned(name, None, submission));
     }
     if faults.is_empty() {
         Ok(())
@@ -158,7 +164,7 @@ fn submissions(arguments: &AuditArguments, plan: &mut Plan) -> Result<(), Vec<Fa
     for place in places {
         match read(&place) {
             Ok(submission) => {
-                let one = planned(place.name, Some(place.file), submission, arguments);
+                let one = planned(place.name, Some(place.file), submission);
                 plan.submissions.push(one);
             }
             Err(faults) => {
@@ -178,6 +184,10 @@ fn submissions(arguments: &AuditArguments, plan: &mut Plan) -> Result<(), Vec<Fa
 
 fn read(place: &Place) -> Result<Submission, Vec<Fault>> {
     let path = &place.file;
+    if !place.is_plain {
+        let fault = Fault::new("this is a link or no plain file, so it was not opened");
+        return Err(vec![fault.help("put the file itself into the folder")]);
+    }
     let io = |error: std::io::Error| vec![Fault::io(path, &error)];
     let size = std::fs::metadata(path).map_err(io)?.len();
     if size > MOST_SUBMISSION_BYTES {
@@ -198,32 +208,41 @@ fn read(place: &Place) -> Result<Submission, Vec<Fault>> {
     Submission::parse(&text, &place.folder)
 }
 
-/// Limits of the command line go before all others, those of channels included.
-fn planned(
-    name: String,
-    file: Option<PathBuf>,
-    mut submission: Submission,
-    arguments: &AuditArguments,
-) -> Planned {
-    let limits_from_command_line = arguments.absolute.is_some() || arguments.relative.is_some();
-    if limits_from_command_line {
-        let of_peak = match arguments.relative_to {
-            Some(what) => Some(what == RelativeTo::Peak),
-            None => submission.limits.general.of_peak,
-        };
-        submission.limits.general = LimitStated {
-            absolute: arguments.absolute,
-            relative: arguments.relative,
-            of_peak,
-        };
-        submission.limits.channels.clear();
-    } else if let Some(what) = arguments.relative_to {
-        submission.limits.general.of_peak = Some(what == RelativeTo::Peak);
-    }
+/// Before what is laid down.
+fn planned(name: String, file: Option<PathBuf>, submission: Submission) -> Planned {
     Planned {
         name,
         file,
         submission,
-        limits_from_command_line,
+        reviewed: Reviewed::default(),
     }
+}
+
+/// Limits of the command line go before all others, those of channels included.
+fn limits_of_command_line(planned: &mut Planned, arguments: &AuditArguments) {
+    let limits = &mut planned.submission.limits;
+    let of_peak = arguments
+        .relative_to
+        .map(|what| what == RelativeTo::Peak)
+        .or(limits.general.of_peak);
+    if arguments.absolute.is_none() && arguments.relative.is_none() {
+        limits.general.of_peak = of_peak;
+        return;
+    }
+    limits.general = LimitStated {
+        absolute: arguments.absolute,
+        relative: arguments.relative,
+        of_peak,
+    };
+    limits.channels.clear();
+    let reviewed = &mut planned.reviewed;
+    if let Some(slack) = limits.order_slack
+        && reviewed.limits_from.is_none()
+    {
+        let slack = plain(slack);
+        reviewed.notes.push(format!(
+            "`order_slack = {slack}` is the submission's own, the limits are not"
+        ));
+    }
+    reviewed.limits_from = Some(LimitsFrom::CommandLine);
 }

@@ -200,6 +200,9 @@ impl Inputs {
             faults.filter_map(|fault| fault.path.as_ref())
         };
         let cases = plan.library.files();
+        let review = &arguments.review;
+        let rules = review.limits.iter().chain(&review.require);
+        let cases = cases.chain(rules.map(PathBuf::as_path));
         let files = runs.chain(described).chain(unread()).map(PathBuf::as_path);
         let folders = unread().filter_map(|file| file.parent());
         let folders = folders.map(|folder| match folder.as_os_str().is_empty() {

@@ -99,12 +99,13 @@ pub fn run(arguments: &Arguments) -> ExitCode {
 }
 
 fn run_audit(arguments: &AuditArguments) -> Result<u8, Stop> {
-    let mut plan = plan::plan(arguments)?;
+    let (mut plan, reviewer) = plan::plan(arguments)?;
     // Files of other parts are inputs too.
     let asked = reports::check(&arguments.write, &Inputs::of(arguments, &plan))?;
     parts::take(arguments, &mut plan)?;
     let earlier = Earlier::read(&arguments.before)?;
     let mut outcome = watched::audit(plan, arguments.quiet);
+    reviewer.conclude(&mut outcome);
     outcome.changes = earlier.map(|earlier| earlier.changes(&audit_report(&outcome)));
     conclude(&outcome, &asked, arguments.quiet)
 }

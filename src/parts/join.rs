@@ -114,7 +114,8 @@ fn sound(report: &mut AuditReport) -> Result<PartReport, Fault> {
         && summary == report.summary
         && rises(read)
         && read.iter().all(|place| *place >= whole.unreadable)
-        && report.changes.is_none();
+        && report.changes.is_none()
+        && (report.review.as_ref()).is_none_or(|review| review.required.is_empty());
     if !complete {
         let text = format!("{} is damaged: its lists and counts disagree", name(&part));
         return Err(Fault::new(text).help(again));
@@ -185,10 +186,12 @@ fn whole(
             given.report.stepgauge,
             given.report.schema,
             given.report.scope,
+            given.report.review,
         ));
     }
     places.sort_unstable();
-    let Some((stepgauge, schema, scope)) = frame.filter(|_| places.iter().copied().eq(0..count))
+    let Some((stepgauge, schema, scope, review)) =
+        frame.filter(|_| places.iter().copied().eq(0..count))
     else {
         let text = "the parts do not cover every submission once: one of them is damaged";
         return Err(Fault::new(text).help("audit all parts again"));
@@ -214,5 +217,6 @@ fn whole(
         scope,
         changes: None,
         part: None,
+        review,
     })
 }

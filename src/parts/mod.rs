@@ -15,7 +15,7 @@ use crate::audit::Plan;
 use crate::outcome::Part;
 
 pub use join::{Given, join};
-pub use whole::{Asked, whole};
+pub use whole::{Asked, digest, whole};
 
 /// Most parts that an audit is divided into.
 pub const MOST_PARTS: u32 = 10_000;

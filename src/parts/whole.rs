@@ -63,6 +63,13 @@ pub fn whole(plan: &Plan, asked: &Asked) -> (Whole, Vec<u64>) {
     (whole, bytes)
 }
 
+/// Of a file that a user names beside the submissions, such as that of `--limits`.
+pub fn digest(file: &Path) -> String {
+    let mut digest = Digest::new();
+    digest.add(&start(file));
+    digest.text()
+}
+
 /// As much of a small file as is ever read of one; nothing where it cannot be read, which is
 /// complained of elsewhere.
 fn start(file: &Path) -> Vec<u8> {

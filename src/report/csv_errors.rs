@@ -4,13 +4,14 @@
 use std::io;
 
 use super::csv_values::{kept, shortest};
+use super::review_text::own_parameters;
 use super::text::csv_text;
 use crate::fault::{Fault, Result};
 use crate::outcome::{Audited, ChannelOutcome, ErrorOutcome, Outcome, RunOutcome};
 use crate::submission::Setting;
 
 /// The names of the columns.
-pub const CSV_HEADER: [&str; 17] = [
+pub const CSV_HEADER: [&str; 19] = [
     "submission",
     "case",
     "file",
@@ -28,12 +29,17 @@ pub const CSV_HEADER: [&str; 17] = [
     "limit",
     "limit_used",
     "verdict",
+    "limits_from",
+    "parameters",
 ];
+/// Where the verdict stands, and how many columns follow it.
+const VERDICT: usize = 16;
+const AFTER_VERDICT: usize = CSV_HEADER.len() - VERDICT - 1;
 
 /// The table, in the order of submissions, runs and channels. What is absent is empty;
 /// numbers have the shortest digits that read back. A run without channels has one row
 /// without numbers, a submission that could not be audited one with the verdict
-/// `not audited`. Text from outside never begins like a formula.
+/// `not audited`, a case that a reviewer requires in vain one with `required, missing`. Text from outside never begins like a formula.
 ///
 /// # Errors
 /// None that a table in memory can have; the writer may say otherwise.
@@ -45,30 +51,43 @@ fn table(outcome: &Outcome) -> io::Result<Vec<u8>> {
     let mut csv = csv::WriterBuilder::new().from_writer(Vec::new());
     csv.write_record(CSV_HEADER).map_err(kept)?;
     for submission in &outcome.submissions {
+        let terms = [
+            submission.limits_from.word().to_owned(),
+            csv_text(&own_parameters(submission).unwrap_or_default()),
+        ];
         for run in &submission.runs {
             let start = start(submission, run);
+            let mut write = |rest: &[String]| {
+                let row = start.iter().chain(rest).chain(&terms);
+                csv.write_record(row).map_err(kept)
+            };
             if run.channels.is_empty() {
-                let rest = std::iter::repeat_n(String::new(), CSV_HEADER.len() - start.len());
-                csv.write_record(start.iter().cloned().chain(rest))
-                    .map_err(kept)?;
+                write(&vec![
+                    String::new();
+                    CSV_HEADER.len() - start.len() - terms.len()
+                ])?;
             }
             for channel in &run.channels {
-                csv.write_record(start.iter().cloned().chain(numbers(channel)))
-                    .map_err(kept)?;
+                write(&numbers(channel))?;
             }
         }
     }
+    // What has no numbers: its name, its case, and what is to be said in place of a verdict.
+    let mut bare = |name: &str, case: &str, verdict: &str| {
+        let blank = |count| std::iter::repeat_n(String::new(), count);
+        let start = [csv_text(name), csv_text(case)].into_iter();
+        let row = start.chain(blank(VERDICT - 2));
+        let row = row.chain([verdict.to_owned()]).chain(blank(AFTER_VERDICT));
+        csv.write_record(row).map_err(kept)
+    };
     for missing in &outcome.not_audited {
-        let name = csv_text(&missing.name);
-        let blank = std::iter::repeat_n(String::new(), CSV_HEADER.len() - 2);
-        let last = std::iter::once("not audited".to_owned());
-        csv.write_record(std::iter::once(name).chain(blank).chain(last))
-            .map_err(kept)?;
+        bare(&missing.name, "", "not audited")?;
+    }
+    for missing in outcome.missing() {
+        bare("", &missing.case, "required, missing")?;
     }
     if outcome.left > 0 {
-        let blank = std::iter::repeat_n(String::new(), CSV_HEADER.len() - 1);
-        let last = std::iter::once(format!("interrupted, {} left", outcome.left));
-        csv.write_record(blank.chain(last)).map_err(kept)?;
+        bare("", "", &format!("interrupted, {} left", outcome.left))?;
     }
     csv.into_inner()
         .map_err(|error| io::Error::other(error.to_string()))

@@ -4,14 +4,15 @@ use super::SCOPE;
 use super::wire::{
     AdviceReport, AuditReport, CauseReport, ChangeReport, ChangesReport, ChannelReport,
     ClaimReport, ConsistentReport, DampingReport, EvidenceReport, FindingReport, GrowthReport,
-    GrowthSummaryReport, NotAuditedReport, OrderReport, PairReport, PartReport, RunEvidenceReport,
-    RunReport, SCHEMA, SettingRungReport, SettingsReport, SubmissionReport, Summary, WholeReport,
+    GrowthSummaryReport, NotAuditedReport, OrderReport, PairReport, PartReport, RequiredReport,
+    ReviewReport, RunEvidenceReport, RunReport, SCHEMA, SettingRungReport, SettingsReport,
+    SubmissionReport, Summary, WholeReport,
 };
 use crate::judge::Verdict;
 use crate::outcome::{
     AdviceOutcome, Audited, CauseOutcome, Change, Changes, ChannelOutcome, ClaimOutcome,
-    Consistent, Damping, EvidenceOutcome, GrowthOutcome, GrowthSummary, LimitsFrom, Outcome, Part,
-    Rule, RunEvidence, RunOutcome, SettingRung, SettingsOutcome,
+    Consistent, Damping, EvidenceOutcome, GrowthOutcome, GrowthSummary, Outcome, Part, Required,
+    Review, Rule, RunEvidence, RunOutcome, SettingRung, SettingsOutcome,
 };
 use crate::submission::Setting;
 
@@ -49,6 +50,28 @@ pub fn audit_report(outcome: &Outcome) -> AuditReport {
         scope: SCOPE.to_owned(),
         changes: outcome.changes.as_ref().map(changes_report),
         part: outcome.part.as_ref().map(part),
+        review: outcome.review.as_ref().map(review),
+    }
+}
+
+fn review(review: &Review) -> ReviewReport {
+    let word = |refuses: bool| if refuses { "refuse" } else { "allow" }.to_owned();
+    let required = |one: &Required| RequiredReport {
+        case: one.case.clone(),
+        runs: one.runs,
+        rows: one.rows,
+        methods: one.methods.clone(),
+        method_shown: one.method_shown,
+        met_by: one.met_by.clone(),
+        text: one.text.clone(),
+    };
+    ReviewReport {
+        limits: review.limits.clone(),
+        require: review.require.clone(),
+        own_parameters: word(review.refuses_own_parameters),
+        own_cases: word(review.refuses_own_cases),
+        controls: word(review.refuses_controls),
+        required: review.required.iter().map(required).collect(),
     }
 }
 
@@ -118,12 +141,7 @@ fn submission(audited: &Audited) -> SubmissionReport {
         reasons: audited.reasons.clone(),
         notes: audited.notes.clone(),
         parameters: audited.parameters.iter().cloned().collect(),
-        limits_from: match audited.limits_from {
-            LimitsFrom::Case => "case",
-            LimitsFrom::Submission => "submission",
-            LimitsFrom::CommandLine => "command-line",
-        }
-        .to_owned(),
+        limits_from: audited.limits_from.word().to_owned(),
         runs: audited.runs.iter().map(run).collect(),
         orders: audited
             .orders

@@ -9,12 +9,13 @@ use std::collections::BTreeMap;
 
 use quick_junit::{NonSuccessKind, Report, TestCase, TestCaseStatus, TestSuite};
 
+use super::review_text::own_parameters;
 use super::text::xml_text;
 use crate::fault::{Fault, Result};
 use crate::judge::{Support, Verdict};
 use crate::number::plain;
 use crate::outcome::{
-    Audited, Changes, ClaimOutcome, NotAudited, OrderOutcome, Outcome, RunOutcome,
+    Audited, Changes, ClaimOutcome, NotAudited, OrderOutcome, Outcome, Required, RunOutcome,
 };
 use crate::submission::{Expect, Role};
 
@@ -29,6 +30,13 @@ pub fn audit_junit(outcome: &Outcome) -> Result<Vec<u8>> {
     });
     for submission in &outcome.submissions {
         report.add_test_suite(suite(submission));
+    }
+    if let Some(review) = outcome
+        .review
+        .as_ref()
+        .filter(|one| !one.required.is_empty())
+    {
+        report.add_test_suite(required(&review.required));
     }
     for missing in &outcome.not_audited {
         report.add_test_suite(not_audited(missing));
@@ -90,6 +98,12 @@ fn suite(submission: &Audited) -> TestSuite {
         cases.claim(claim);
     }
     cases.whole(submission);
+    let limits = submission.limits_from.word();
+    cases.suite.add_property(("limits", limits));
+    if let Some(parameters) = own_parameters(submission) {
+        let parameters = xml_text(&parameters);
+        (cases.suite).add_property(("parameters", parameters.as_str()));
+    }
     if !submission.in_order() {
         let causes = submission.causes.iter();
         let causes = causes.map(|cause| format!("likely cause: {}", cause.text));
@@ -104,6 +118,18 @@ fn suite(submission: &Audited) -> TestSuite {
 }
 
 impl Cases<'_> {
+    /// Of no submission.
+    fn of(class: String) -> Cases<'static> {
+        Cases {
+            suite: TestSuite::new(class.clone()),
+            class,
+            reasons: Vec::new(),
+            is_control: false,
+            failed: false,
+            names: BTreeMap::new(),
+        }
+    }
+
     /// The reasons that one case tells.
     fn told(&mut self, is: impl Fn(&str) -> bool) -> Vec<String> {
         let mut told = Vec::new();
@@ -282,17 +308,22 @@ fn interrupted(left: usize) -> TestSuite {
     suite
 }
 
+/// What a reviewer requires, a case each.
+fn required(required: &[Required]) -> TestSuite {
+    let mut cases = Cases::of("required".to_owned());
+    for one in required {
+        let ended = match one.is_met() {
+            true => Ended::Passed,
+            false => Ended::Failed("missing", vec![one.text.clone()]),
+        };
+        cases.add(format!("case {}", one.case), ended);
+    }
+    cases.suite
+}
+
 /// What became worse since an earlier audit, a case each.
 fn changes_suite(changes: &Changes) -> TestSuite {
-    let class = xml_text(&format!("changes since {}", changes.earlier));
-    let mut cases = Cases {
-        suite: TestSuite::new(class.clone()),
-        class,
-        reasons: Vec::new(),
-        is_control: false,
-        failed: false,
-        names: BTreeMap::new(),
-    };
+    let mut cases = Cases::of(xml_text(&format!("changes since {}", changes.earlier)));
     for change in &changes.worse {
         let parts = [change.file.as_deref(), change.channel.as_deref()];
         let mut name = format!("{}: {}", change.submission, change.kind.word());

@@ -3,18 +3,21 @@
 //! be long, since such summaries have a limit.
 
 use super::changes_text::{NOTHING_COMPARED, worse_count};
+use super::review_text::{Notes, missing_count, word};
 use super::table::{counts, decisive, order_text, scope, share_text};
 use super::text::markdown_text;
 use crate::number::{counted, measured};
-use crate::outcome::{Audited, Change, NotAudited, Outcome};
+use crate::outcome::{Audited, Change, NotAudited, Outcome, Required};
 use crate::submission::Expect;
 
 /// Bytes of a whole report at most, and how far each part may fill it; what follows needs
 /// less than is left.
 const MOST_BYTES: usize = 60_000;
-const TABLE_UP_TO: usize = 30_000;
+const TABLE_UP_TO: usize = 28_000;
+const REQUIRED_UP_TO: usize = 34_000;
 const SENTENCES_UP_TO: usize = 46_000;
-const CHANGES_UP_TO: usize = 56_000;
+const CHANGES_UP_TO: usize = 53_000;
+const TERMS_UP_TO: usize = 57_000;
 /// Characters of one cell, and of one sentence.
 const CELL: usize = 60;
 const SENTENCE: usize = 400;
@@ -33,10 +36,15 @@ pub fn audit_markdown(outcome: &Outcome) -> String {
     if let Some(worse) = worse_count(outcome) {
         page.text += &format!(" {worse}");
     }
+    if let Some(missing) = missing_count(outcome) {
+        page.text += &format!(" {missing}");
+    }
     page.text.push('\n');
     page.table(outcome);
+    page.required(outcome);
     page.sentences(outcome);
     page.changes(outcome);
+    page.terms(outcome);
     page.text += &format!("\n{}\n", markdown_text(&scope(outcome), SENTENCE));
     debug_assert!(page.text.len() < MOST_BYTES);
     page.text
@@ -82,6 +90,41 @@ impl Page {
             outcome.submissions.iter().partition(|one| one.in_order());
         let audited = bad.into_iter().chain(good).map(submission_row);
         self.fill(missing.chain(audited), TABLE_UP_TO, "rows are");
+    }
+
+    /// What is missing first: the rest may be cut.
+    fn required(&mut self, outcome: &Outcome) {
+        let Some(review) = outcome
+            .review
+            .as_ref()
+            .filter(|one| !one.required.is_empty())
+        else {
+            return;
+        };
+        let name = markdown_text(review.require.as_deref().unwrap_or_default(), CELL);
+        self.text += &format!("\n### Required by {name}\n\n");
+        let (met, missing): (Vec<&Required>, Vec<&Required>) =
+            review.required.iter().partition(|one| one.is_met());
+        let all = missing.into_iter().chain(met);
+        let lines = all.map(|one| sentence(word(one), &one.text));
+        self.fill(lines, REQUIRED_UP_TO, "requirements are");
+    }
+
+    /// With whose numbers all of it was judged.
+    fn terms(&mut self, outcome: &Outcome) {
+        let mut notes = Notes::default();
+        outcome.submissions.iter().for_each(|one| notes.terms(one));
+        let lines = notes.list(|names, text| {
+            let (names, text) = (
+                markdown_text(names, SENTENCE),
+                markdown_text(text, SENTENCE),
+            );
+            format!("- {names}: {text}\n")
+        });
+        if !lines.is_empty() {
+            self.text += "\n### Terms\n\n";
+            self.fill(lines.into_iter(), TERMS_UP_TO, "terms are");
+        }
     }
 
     fn sentences(&mut self, outcome: &Outcome) {

@@ -22,6 +22,7 @@ mod plot;
 mod polynomial;
 mod read;
 mod restored;
+mod review_text;
 mod steps_csv;
 mod steps_text;
 mod style;

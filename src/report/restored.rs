@@ -2,12 +2,12 @@
 //! the terminal need. What the JSON report does not hold stays empty, so this is for
 //! `merged_text` alone.
 
-use super::wire::{AuditReport, ChannelReport, RunReport, SubmissionReport};
+use super::wire::{AuditReport, ChannelReport, ReviewReport, RunReport, SubmissionReport};
 use crate::fault::Fault;
 use crate::judge::Verdict;
 use crate::outcome::{
     AdviceOutcome, Audited, CauseOutcome, ChannelOutcome, ErrorOutcome, LimitsFrom, NotAudited,
-    Outcome, RowOutcome, RunOutcome, SettingsOutcome,
+    Outcome, Review, RowOutcome, RunOutcome, SettingsOutcome,
 };
 use crate::submission::{Expect, Role, Setting, Submission};
 
@@ -21,8 +21,21 @@ pub(super) fn restored(report: &AuditReport) -> Option<Outcome> {
     Some(Outcome {
         submissions: submissions.collect::<Option<_>>()?,
         not_audited: not_audited.collect(),
+        review: report.review.as_ref().map(review),
         ..Outcome::default()
     })
+}
+
+/// Parts have no requirements.
+fn review(report: &ReviewReport) -> Review {
+    Review {
+        limits: report.limits.clone(),
+        require: report.require.clone(),
+        refuses_own_parameters: report.own_parameters == "refuse",
+        refuses_own_cases: report.own_cases == "refuse",
+        refuses_controls: report.controls == "refuse",
+        required: Vec::new(),
+    }
 }
 
 fn verdict(word: &str) -> Option<Verdict> {
@@ -35,12 +48,8 @@ fn submission(report: &SubmissionReport) -> Option<Audited> {
     let expect = expectations
         .into_iter()
         .find(|expect| expect.word() == report.expect)?;
-    let limits_from = match report.limits_from.as_str() {
-        "case" => LimitsFrom::Case,
-        "submission" => LimitsFrom::Submission,
-        "command-line" => LimitsFrom::CommandLine,
-        _ => return None,
-    };
+    let mut known = LimitsFrom::ALL.into_iter();
+    let limits_from = known.find(|from| from.word() == report.limits_from)?;
     let stated = Submission {
         producer: report.producer.clone(),
         expect,

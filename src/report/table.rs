@@ -8,13 +8,12 @@ use comfy_table::{ColumnConstraint, Table};
 use super::changes_text::{changes_text, worse_count};
 use super::claims_text::claims_text;
 use super::growth_text::{FEW, growth_text};
+use super::review_text::{Notes, missing_count, review_text};
 use super::style::{Screen, Tone, coloured, toned};
 use super::{NOT_FOR_DOSING, SCOPE};
 use crate::judge::Verdict;
 use crate::number::{counted, measured, plain, short};
-use crate::outcome::{
-    Audited, ChannelOutcome, ErrorOutcome, LimitsFrom, OrderOutcome, Outcome, RunOutcome,
-};
+use crate::outcome::{Audited, ChannelOutcome, ErrorOutcome, OrderOutcome, Outcome, RunOutcome};
 use crate::submission::{Expect, Role, Setting};
 
 /// The report as text with terminal codes for colour; write it to a stream that
@@ -39,6 +38,7 @@ pub(super) fn below(outcome: &Outcome, screen: Screen) -> String {
     if !controls.is_empty() {
         text += &format!("\nControls, as expected:\n{controls}");
     }
+    text += &review_text(outcome, screen);
     let settings = settings(outcome, screen);
     if !settings.is_empty() {
         text += &format!("\nError settings:\n{settings}");
@@ -378,34 +378,14 @@ fn settings(outcome: &Outcome, screen: Screen) -> String {
 
 /// Notes, each once with the submissions that it holds for.
 fn notes(outcome: &Outcome, screen: Screen) -> String {
-    let mut notes: Vec<(String, Vec<&str>)> = Vec::new();
-    let mut note = |text: String, name| match notes.iter_mut().find(|(known, _)| *known == text) {
-        Some((_, names)) => names.push(name),
-        None => notes.push((text, vec![name])),
-    };
+    let mut notes = Notes::default();
     for submission in &outcome.submissions {
-        let name = submission.name.as_str();
         for text in &submission.notes {
-            note(text.clone(), name);
+            notes.add(text.clone(), &submission.name);
         }
-        if !submission.parameters.is_empty() {
-            let list = submission.parameters.iter();
-            let list: Vec<String> = list
-                .map(|(name, value)| format!("{name} = {}", plain(*value)))
-                .collect();
-            note(
-                format!("parameters of the submission's own: {}", list.join(", ")),
-                name,
-            );
-        }
-        if submission.limits_from == LimitsFrom::Submission && submission.case.is_some() {
-            note("judged by limits of the submission's own".to_owned(), name);
-        }
+        notes.terms(submission);
     }
-    notes
-        .iter()
-        .map(|(text, names)| line(screen, &names.join(", "), text))
-        .collect()
+    notes.list(|names, text| line(screen, names, text)).concat()
 }
 
 /// One thing to be said, with what it is said of.
@@ -462,8 +442,9 @@ fn summary(outcome: &Outcome) -> String {
         toned(Tone::Bad, "Not in order.")
     };
     let mut text = format!("{} {word}", counts(outcome));
-    if let Some(worse) = worse_count(outcome) {
-        text += &format!(" {}", toned(Tone::Bad, &worse));
+    let counts = [missing_count(outcome), worse_count(outcome)];
+    for count in counts.into_iter().flatten() {
+        text += &format!(" {}", toned(Tone::Bad, &count));
     }
     text
 }

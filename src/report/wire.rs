@@ -41,6 +41,39 @@ pub struct AuditReport {
     /// Which part of a divided audit this is; absent in the report of a whole one.
     #[serde(default, skip_serializing_if = "Option::is_none")]
     pub part: Option<PartReport>,
+    /// By what rules of a reviewer it was made; absent where none were laid down.
+    #[serde(default, skip_serializing_if = "Option::is_none")]
+    pub review: Option<ReviewReport>,
+}
+
+/// The rules of a reviewer, and what came of them.
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
+#[allow(missing_docs)]
+pub struct ReviewReport {
+    /// The files of `--limits` and `--require`, as named.
+    pub limits: Option<String>,
+    pub require: Option<String>,
+    /// `allow` or `refuse`, as the next two.
+    pub own_parameters: String,
+    pub own_cases: String,
+    pub controls: String,
+    pub required: Vec<RequiredReport>,
+}
+
+/// One thing that has to be there.
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
+#[allow(missing_docs)]
+pub struct RequiredReport {
+    pub case: String,
+    pub runs: u64,
+    pub rows: u64,
+    pub methods: Vec<String>,
+    pub method_shown: bool,
+    /// Empty where it is missing, which is never in order.
+    pub met_by: Vec<String>,
+    pub text: String,
 }
 
 /// One part of an audit that was divided. Places number the submissions of the whole audit

@@ -20,6 +20,8 @@ pub struct Place {
     pub folder: PathBuf,
     /// The `submission.toml`.
     pub file: PathBuf,
+    /// False for a link, a pipe or a device of that name, which nobody opens.
+    pub is_plain: bool,
 }
 
 /// Every `submission.toml` at or below a path, in order of their names. Links are not
@@ -35,8 +37,12 @@ pub fn discover(path: &Path, prefix: bool) -> std::result::Result<Vec<Place>, Ve
         match entry {
             Ok(entry) => {
                 let named = entry.depth() == 0 || entry.file_name() == "submission.toml";
-                if named && entry.file_type().is_file() {
-                    places.push(place(path, entry.path(), prefix));
+                // What has the name and is no file is not passed over in silence.
+                let kind = entry.file_type();
+                let is_plain = kind.is_file();
+                if named && (is_plain || entry.depth() > 0 && !kind.is_dir()) {
+                    let place = place(path, entry.path(), prefix);
+                    places.push(Place { is_plain, ..place });
                 }
             }
             Err(error) => {
@@ -80,6 +86,7 @@ fn place(root: &Path, file: &Path, prefix: bool) -> Place {
         name,
         folder,
         file: file.to_owned(),
+        is_plain: true,
     }
 }
 

@@ -240,7 +240,10 @@ impl Reader<'_> {
         }
     }
 
-    fn limits(&mut self, entries: BTreeMap<Spanned<String>, Spanned<LimitEntry>>) -> LimitsStated {
+    pub(super) fn limits(
+        &mut self,
+        entries: BTreeMap<Spanned<String>, Spanned<LimitEntry>>,
+    ) -> LimitsStated {
         let mut limits = LimitsStated::default();
         for (name, entry) in entries {
             let offset = entry.span().start;

@@ -75,7 +75,7 @@ fn plan(folder: &Path, runs: &Path) -> Plan {
             name: place.name,
             submission: Submission::parse(&text, &place.folder).unwrap(),
             file: Some(place.file),
-            limits_from_command_line: false,
+            reviewed: Default::default(),
         });
     }
     Plan {

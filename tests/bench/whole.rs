@@ -72,7 +72,7 @@ fn audited(bencher: Bencher, shape: &Shape) {
                 }],
                 ..Submission::default()
             },
-            limits_from_command_line: false,
+            reviewed: Default::default(),
         }],
         unreadable: Vec::new(),
         threads: 1,

@@ -89,7 +89,7 @@ fn run(files: &[(Value, Option<&str>)]) -> Vec<Audited> {
                 ..Submission::default()
             },
             file: None,
-            limits_from_command_line: false,
+            reviewed: Default::default(),
         }
     };
     let outcome = audit(&Plan {

@@ -120,7 +120,7 @@ pub fn judge(
             name: "planted".to_owned(),
             submission,
             file: None,
-            limits_from_command_line: false,
+            reviewed: Default::default(),
         }],
         unreadable: Vec::new(),
         threads: 1,

@@ -50,7 +50,7 @@ fn run(submissions: Vec<Submission>) -> Outcome {
         name: index.to_string(),
         submission,
         file: None,
-        limits_from_command_line: false,
+        reviewed: Default::default(),
     };
     let submissions = submissions.into_iter().enumerate().map(planned).collect();
     let outcome = audit(&Plan {

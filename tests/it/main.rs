@@ -61,6 +61,15 @@ mod steps;
 /// Ways to an undeserved pass, closed.
 mod cheats;
 
+/// Limits, requirements and refusals of a reviewer.
+mod reviewers;
+
+/// Files of rules with mistakes, and in an audit that is divided.
+mod rules;
+
+/// Submissions that look better than they are.
+mod disguises;
+
 /// Every method of the catalogue: its order, its stability as published.
 mod methods;
 mod misread;

@@ -146,7 +146,7 @@ fn planted(case: &Case, order: f64, size: f64, digits: usize) -> Outcome {
         name: "planted".to_owned(),
         submission,
         file: None,
-        limits_from_command_line: false,
+        reviewed: Default::default(),
     };
     let outcome = audit(&Plan {
         library,

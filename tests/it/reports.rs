@@ -145,14 +145,14 @@ fn runs_of_an_unreadable_submission_are_spared() {
         assert_eq!(ran.status, 2);
         let table = read(&folder, "s/alder/errors.csv");
         assert!(
-            table.ends_with("alder,,,,,,,,,,,,,,,,not audited\n"),
+            table.ends_with("alder,,,,,,,,,,,,,,,,not audited,,\n"),
             "{table}"
         );
     }
 }
 
 /// Elements with the attributes that they must have, and the children that they may have.
-const ELEMENTS: [(&str, &[&str], &[&str]); 7] = [
+const ELEMENTS: [(&str, &[&str], &[&str]); 9] = [
     (
         "testsuites",
         &["tests", "failures", "errors", "skipped"],
@@ -161,8 +161,10 @@ const ELEMENTS: [(&str, &[&str], &[&str]); 7] = [
     (
         "testsuite",
         &["name", "tests", "failures", "errors", "skipped"],
-        &["testcase", "system-out"],
+        &["properties", "testcase", "system-out"],
     ),
+    ("properties", &[], &["property"]),
+    ("property", &["name", "value"], &[]),
     (
         "testcase",
         &["name", "classname"],
@@ -614,6 +616,7 @@ fn check_table(text: &str, json: &Value) {
             let mut row = BTreeMap::from([
                 ("submission", submission["name"].clone()),
                 ("case", submission["case"].clone()),
+                ("limits_from", submission["limits_from"].clone()),
             ]);
             for key in ["file", "role", "step", "tolerance"] {
                 row.insert(key, run[key].clone());

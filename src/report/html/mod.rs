@@ -53,6 +53,7 @@ pub fn audit_html(outcome: &Outcome) -> String {
                     (summary::troubles(outcome))
                 }
                 main {
+                    (summary::required(outcome))
                     (changes::section(outcome))
                     (summary::table(outcome))
                     @if !costs.is_empty() {

@@ -35,9 +35,8 @@ fn facts(audited: &Audited) -> Markup {
     let evidence = audited.evidence.as_ref();
     let claims = evidence.map_or(&[][..], |evidence| &evidence.claims);
     let limits = match audited.limits_from {
-        LimitsFrom::Case => "those of the case",
-        LimitsFrom::Submission => "the submission's own",
-        LimitsFrom::CommandLine => "those of the command line",
+        LimitsFrom::Submission => "the submission's own".to_owned(),
+        other => format!("those of {}", other.whose()),
     };
     html! {
         dl {

@@ -2,15 +2,17 @@
 
 use maud::{Markup, html};
 
-use super::{anchor, outside};
+use super::{anchor, more, outside};
 use crate::judge::{Support, Verdict};
 use crate::number::{counted, measured};
-use crate::outcome::{Audited, Outcome, RunOutcome};
+use crate::outcome::{Audited, Outcome, Required, RunOutcome};
 use crate::report::table::{decisive, order_text, share_text};
 use crate::submission::Expect;
 
 /// Submissions named on top.
 const MOST_TROUBLES: usize = 12;
+/// Requirements shown.
+const MOST_REQUIRED: usize = 100;
 /// Files of one of them.
 const MOST_FILES: usize = 6;
 
@@ -28,6 +30,11 @@ fn found(outcome: &Outcome) -> String {
     if outcome.left > 0 {
         let left = counted(outcome.left as u64, "submission");
         return format!("interrupted: {wrong} of {all} not in order, {left} left");
+    }
+    let missing = outcome.missing().count() as u64;
+    if missing > 0 {
+        let things = counted(missing, "requirement");
+        return format!("{things} not met, {wrong} of {all} not in order");
     }
     let worse = outcome
         .changes
@@ -84,6 +91,37 @@ pub(super) fn troubles(outcome: &Outcome) -> Markup {
             }
         }
         (controls(outcome))
+    }
+}
+
+/// What a reviewer requires, what is missing first; nothing where nothing is required.
+pub(super) fn required(outcome: &Outcome) -> Markup {
+    let mut required: Vec<&Required> = outcome
+        .review
+        .iter()
+        .flat_map(|one| &one.required)
+        .collect();
+    required.sort_by_key(|one| one.is_met());
+    let name = outcome
+        .review
+        .as_ref()
+        .and_then(|one| one.require.as_deref());
+    html! {
+        @if !required.is_empty() {
+            section aria-labelledby="required" {
+                h2 id="required" { "Required by " (outside(name.unwrap_or_default())) }
+                ul class="troubles" {
+                    @for one in required.iter().take(MOST_REQUIRED) {
+                        li {
+                            @if one.is_met() { span class="badge pass" { "✓ there" } }
+                            @else { span class="badge fail" { "✗ missing" } }
+                            " " (outside(&one.text))
+                        }
+                    }
+                    (more(required.len(), MOST_REQUIRED))
+                }
+            }
+        }
     }
 }
 

@@ -74,7 +74,7 @@ fn audited(name: &str, library: Library, case: &str, claims: &str, runs: &[Writt
         file: None,
         name: name.to_owned(),
         submission,
-        limits_from_command_line: false,
+        reviewed: Default::default(),
     };
     let plan = Plan {
         library,
