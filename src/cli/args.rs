@@ -226,7 +226,9 @@ pub struct CaseArguments {
 #[derive(Debug, Args)]
 #[command(after_help = "\
 Example: the exact trajectory every ten minutes
-  stepgauge exact thermal/cold-room-defrost --step 600")]
+  stepgauge exact thermal/cold-room-defrost --step 600
+
+`--check` exits with 0 where both routes agree to one unit in the last place, else with 1.")]
 pub struct ExactArguments {
     /// Which case.
     #[command(flatten)]
@@ -268,6 +270,10 @@ pub struct Times {
     /// At the time stamps of a file
     #[arg(long, value_name = "FILE")]
     pub times: Option<PathBuf>,
+    /// Nowhere: computes the case once more by a second route instead, in twice the precision
+    /// and by its closed form, and shows the largest differences
+    #[arg(long)]
+    pub check: bool,
 }
 
 /// Arguments of `steps`.

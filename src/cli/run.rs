@@ -22,8 +22,8 @@ use crate::fault::{Fault, escaped, quoted};
 use crate::number::{Decimal, Double};
 use crate::outcome::Outcome;
 use crate::report::{
-    Screen, ValueWriter, WIDEST, audit_report, audit_text, case_json, case_list, case_text,
-    draft_text, merged_text, steps_csv, steps_text,
+    ChannelCheck, Screen, ValueWriter, WIDEST, audit_report, audit_text, case_json, case_list,
+    case_text, check_text, draft_text, merged_text, steps_csv, steps_text,
 };
 use crate::trajectory::{Findings, Selection, Stated, Survey, is_time_name, open};
 
@@ -204,6 +204,9 @@ fn run_case(arguments: &CaseArguments) -> Result<u8, Stop> {
 
 fn run_exact(arguments: &ExactArguments) -> Result<u8, Stop> {
     let (case, exact) = load(&arguments.choice)?;
+    if arguments.times.check {
+        return check(&case, &exact);
+    }
     let channels = case.channels();
     let names: Vec<&str> = channels.iter().map(|channel| channel.name).collect();
     // What is asked for is read before anything is written.
@@ -236,6 +239,23 @@ fn run_exact(arguments: &ExactArguments) -> Result<u8, Stop> {
     }
     writer.finish()?;
     Ok(IN_ORDER)
+}
+
+/// The exact solution by a second route.
+fn check(case: &Case, exact: &Exact) -> Result<u8, Stop> {
+    let checked = exact.check(case)?;
+    let channels = checked.channels.iter().map(|gap| ChannelCheck {
+        units: gap.units,
+        at: gap.at,
+        closed_form: gap.closed_form,
+    });
+    let channels: Vec<ChannelCheck> = channels.collect();
+    let result = (checked.times, checked.agrees());
+    print(&check_text(case, &channels, result, screen()))?;
+    Ok(match checked.agrees() {
+        true => IN_ORDER,
+        false => NOT_IN_ORDER,
+    })
 }
 
 fn run_drafting(arguments: &DraftArguments) -> Result<u8, Stop> {

@@ -5,6 +5,7 @@
 //! and on to any time. Nothing here is integrated step by step: see
 //! [`crate::number::Propagator`].
 
+mod check;
 mod near;
 mod propagate;
 mod scales;
@@ -16,6 +17,7 @@ use crate::case::Case;
 use crate::fault::Fault;
 use crate::number::{Double, Flow, Propagator, Quad};
 
+pub use check::{Gap, SecondRoute};
 pub use near::{Near, Nodes};
 pub use propagate::{Values, Walk};
 pub use scales::{TimeScales, approx_time_scales};

@@ -11,7 +11,7 @@ const STEPS_PER_ANCHOR: u32 = 256;
 /// the last place.
 const RELATIVE_PROMISE: f64 = 5.551_115_123_125_783e-17; // 2^-54
 /// The promise where the value is smaller than the channel's peak can resolve.
-const PEAK_PROMISE: f64 = 1e-24;
+pub(super) const PEAK_PROMISE: f64 = 1e-24;
 
 /// Values of all channels at one time, with their bounds.
 #[derive(Clone, Debug, Default)]
@@ -119,8 +119,8 @@ impl Exact {
         })
     }
 
-    /// The same in quad-double, for values whose bound was not good enough.
-    fn refine(&self, segment: usize, time: Double, values: &mut Values) {
+    /// Values in quad-double, from the last jump before a time; `None` out of its range.
+    pub(super) fn in_quad(&self, segment: usize, time: Double) -> Option<Values> {
         let fine = self.fine.get_or_init(|| {
             let span = (self.to - self.from).to_f64();
             let table = Propagator::<Quad>::new(&self.system.matrix, span)?;
@@ -128,11 +128,19 @@ impl Exact {
             let anchors = anchors(&table, start, self.from, &self.system.jumps);
             Some((table, anchors))
         });
-        let Some((table, anchors)) = fine else { return };
+        let (table, anchors) = fine.as_ref()?;
         let mut flow = anchors[segment].clone();
         table.advance(&mut flow, self.since(segment, time));
         let mut better = Values::default();
         self.read(table, &flow, &mut better);
+        Some(better)
+    }
+
+    /// The same in quad-double, for values whose bound was not good enough.
+    fn refine(&self, segment: usize, time: Double, values: &mut Values) {
+        let Some(better) = self.in_quad(segment, time) else {
+            return;
+        };
         let pairs = better.value.into_iter().zip(better.bound).enumerate();
         for (index, (value, bound)) in pairs {
             if bound < values.bound[index] {

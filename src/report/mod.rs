@@ -6,6 +6,7 @@
 mod case_json;
 mod case_text;
 mod changes_text;
+mod check_text;
 mod claims_text;
 mod csv_errors;
 mod csv_values;
@@ -33,6 +34,7 @@ mod write;
 
 pub use case_json::case_json;
 pub use case_text::{case_list, case_text};
+pub use check_text::{ChannelCheck, check_text};
 pub use csv_errors::{CSV_HEADER, audit_csv};
 pub use csv_values::ValueWriter;
 pub use draft_text::draft_text;

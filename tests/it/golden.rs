@@ -70,6 +70,8 @@ fn cases_and_help() {
         "case.json",
         &screen(&[case[0], case[1], "--json"], "C", "100"),
     );
+    let check = ["exact", "thermal/cold-room-defrost", "--check"];
+    compare("exact-check-100.txt", &screen(&check, "C.UTF-8", "100"));
     let steps = ["steps", "thermal/cold-room-defrost"];
     compare("steps-100.txt", &screen(&steps, "C.UTF-8", "100"));
     for command in [
