@@ -44,6 +44,7 @@ mod folder;
 mod tables;
 
 /// Long files: threads, blocks, guesses and quick arithmetic do not show.
+mod killed;
 mod long_files;
 
 /// The same trajectory in every layout.
