@@ -35,7 +35,9 @@ fn reports_are_old_or_new_and_never_half() {
     let new = reports.map(read);
     let (mut old, mut fresh) = (0, 0);
     for kill in 0..KILLS {
-        reports.map(|report| folder.write(report, OLD));
+        for report in reports {
+            folder.write(report, OLD);
+        }
         let mut child = command().spawn().unwrap();
         // Spread over the whole of it, most of them near its end, where reports are written.
         let part = f64::from(kill) / f64::from(KILLS);
