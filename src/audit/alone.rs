@@ -151,6 +151,7 @@ fn survey_alone(run: &Run, submission: &Submission) -> Result<(RunOutcome, Optio
     } else {
         findings.fatal(Kind::EmptyFile, None, "the file has no rows of numbers");
     }
+    source.is_unchanged()?;
     outcome.findings = findings.into_list();
     let setting = rung_setting(&outcome);
     Ok((outcome, setting))
@@ -218,6 +219,7 @@ fn sample(
         survey
             .rows(&source, &mut unheeded, &|_| true, &mut pick)
             .map_err(placed)?;
+        source.is_unchanged().map_err(placed)?;
         runs.push(Sampled {
             setting,
             values,

@@ -13,7 +13,7 @@ use crate::outcome::{ChannelOutcome, ErrorOutcome, RowOutcome, RunOutcome};
 use crate::submission::{
     Column, LimitsStated, Matched, Role, Run, Setting, Submission, match_columns,
 };
-use crate::trajectory::{Crew, Findings, Grid, Kind};
+use crate::trajectory::{Crew, Findings, Grid, Kind, Source};
 
 /// One run with what the ladder needs of it.
 pub(super) struct RunCompared {
@@ -57,11 +57,25 @@ pub(super) fn compare(
     run: &Run,
     submission: &Submission,
     model: &Model,
+    how: (bool, &Crew),
+    notes: &mut Vec<String>,
+) -> Result<RunCompared, Fault> {
+    let source = run.open()?;
+    let compared = compare_with(&source, run, submission, model, how, notes);
+    // Before any complaint: a line that is cut may only not have been written to its end yet.
+    source.is_unchanged()?;
+    compared
+}
+
+fn compare_with(
+    source: &Source,
+    run: &Run,
+    submission: &Submission,
+    model: &Model,
     (traced, crew): (bool, &Crew),
     notes: &mut Vec<String>,
 ) -> Result<RunCompared, Fault> {
     let placed = |fault: Fault| fault.in_file(&run.path);
-    let source = run.open()?;
     let step = run.setting.step();
     let mut outcome = RunOutcome {
         file: run.file.clone(),
@@ -120,7 +134,7 @@ pub(super) fn compare(
         .collect();
     let comparison = Comparison {
         exact: &model.exact,
-        source: &source,
+        source,
         layout: &layout,
         selection: &matched.selection(),
         stated: &submission.layout,

@@ -1,9 +1,10 @@
 //! The only opener of trajectory files: text, packed or not, tables, or bytes in memory.
 
-use std::fs::File;
+use std::fs::{File, Metadata};
 use std::io::{ErrorKind, Read};
 use std::path::{Path, PathBuf};
 use std::sync::Arc;
+use std::time::SystemTime;
 
 use super::batch::{self, Batch, Known};
 use super::columns::{self, Columns, Data, FIRST_BYTES, Format, recognise};
@@ -18,6 +19,25 @@ use crate::fault::{Fault, Result};
 #[derive(Clone, Debug)]
 pub struct Source {
     pub(super) origin: Origin,
+    /// The file when it was opened.
+    state: Option<State>,
+}
+
+/// What tells whether a file is still the one that was opened.
+#[derive(Clone, Debug, PartialEq, Eq)]
+struct State {
+    bytes: u64,
+    /// Not known on every system.
+    modified: Option<SystemTime>,
+}
+
+impl State {
+    fn of(data: &Metadata) -> State {
+        State {
+            bytes: data.len(),
+            modified: data.modified().ok(),
+        }
+    }
 }
 
 #[derive(Clone, Debug)]
@@ -64,7 +84,10 @@ pub fn open(path: &Path) -> Result<Source> {
         Some(format) if format.is_packed() => Origin::Packed(path, format),
         Some(format) => Origin::Table(path, Table(columns::open(&file, format)?.into())),
     };
-    Ok(Source { origin })
+    Ok(Source {
+        origin,
+        state: Some(State::of(&data)),
+    })
 }
 
 impl Source {
@@ -78,6 +101,7 @@ impl Source {
     pub fn in_pieces(bytes: Vec<u8>, size: usize) -> Source {
         Source {
             origin: Origin::Memory(bytes, size.max(1)),
+            state: None,
         }
     }
 
@@ -89,6 +113,25 @@ impl Source {
                 std::fs::metadata(path).map_or(0, |data| data.len())
             }
         }
+    }
+
+    /// To be asked when everything has been read: a file is read more than once, and what is
+    /// said of it would be true of no state that it ever was in.
+    ///
+    /// # Errors
+    /// A file that another program has changed, replaced or removed since it was opened.
+    pub fn is_unchanged(&self) -> Result<()> {
+        let (Origin::File(path) | Origin::Packed(path, _) | Origin::Table(path, _)) = &self.origin
+        else {
+            return Ok(());
+        };
+        let now = std::fs::metadata(path).ok();
+        if now.as_ref().map(State::of) == self.state {
+            return Ok(());
+        }
+        let fault = Fault::new("this file changed while it was read");
+        let help = "audit it again when the program that writes it is done";
+        Err(fault.help(help).in_file(path))
     }
 
     /// The columns, where the file is no text.

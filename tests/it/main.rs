@@ -46,6 +46,7 @@ mod tables;
 /// Long files: threads, blocks, guesses and quick arithmetic do not show.
 mod killed;
 mod long_files;
+mod machine;
 
 /// The same trajectory in every layout.
 mod layouts;
