@@ -3,7 +3,7 @@
 
 use super::batch::Exactly;
 use super::number::Printed;
-use super::resolution::{Resolution, decade, power_of_ten};
+use super::resolution::{Resolution, decade, is_single, power_of_ten};
 use crate::number::Decimal;
 
 /// What the stamps of a file have in common.
@@ -51,9 +51,17 @@ const PHASE: u64 = 3;
 /// of all steps: a few rows across a long stretch do not stand for the rows that are missing.
 pub(crate) const LONG_PHASE: f64 = 20.0;
 pub(crate) const LEAST_SHARE: f64 = 0.02;
+/// Steps of so many units or fewer are told apart where they differ by one.
+const MOST_UNITS: f64 = 8.0;
 /// Where stamps are rounded to units of about the step, steps are of one of two sizes, but for so
 /// many: those are holes.
 const ROUNDED_SHARE: f64 = 0.95;
+
+/// So many stamps of seven digits and more show by themselves what they were stored in.
+const LONG_STAMPS: u64 = 8;
+/// Steps of so many sizes or fewer, so many of them in a row, were chosen.
+const MOST_CHOSEN: usize = 4;
+const LONG_RUN: u64 = 10;
 
 /// Gathers the steps between stamps.
 #[derive(Clone, Debug, Default)]
@@ -61,6 +69,10 @@ pub(super) struct GridFinder {
     last: Option<(f64, Exactly, f64)>,
     most_significant: u8,
     most_decimals: u8,
+    /// Stamps with more digits than single precision needs to tell them apart, and whether one of
+    /// all stamps is no number in single precision.
+    long: u64,
+    not_single: bool,
     steps: u64,
     /// Stamps that equal the one before.
     repeats: u64,
@@ -71,6 +83,21 @@ pub(super) struct GridFinder {
 }
 
 impl GridFinder {
+    /// True for stamps that were numbers in single precision, however they were printed.
+    pub(super) fn is_single(&self) -> bool {
+        self.long >= LONG_STAMPS && !self.not_single
+    }
+
+    /// True for stamps in a few phases of steps that are all the same decimal: these were chosen.
+    /// Rounding would put other steps among them.
+    pub(super) fn is_chosen(&self) -> bool {
+        let chosen = |cluster: &Cluster| {
+            cluster.identical && cluster.exact.is_some() && cluster.count >= LONG_RUN * cluster.runs
+        };
+        let few = self.clusters.len() <= MOST_CHOSEN && !self.overflowed;
+        few && self.repeats == 0 && !self.clusters.is_empty() && self.clusters.iter().all(chosen)
+    }
+
     /// The average step.
     pub(super) fn mean_step(&self) -> f64 {
         self.sum / self.steps.max(1) as f64
@@ -99,7 +126,7 @@ impl GridFinder {
         self.last = Some((time, exact, unit));
     }
 
-    /// One unit in the last place that the stamp was printed to, as far as it shows.
+    /// One unit in the last place that the stamp was printed or stored to, as far as it shows.
     fn unit(&mut self, time: f64, printed: Printed) -> f64 {
         let own = |decimals: i32| power_of_ten(-decimals);
         let exponent = if printed.scientific { decade(time) } else { 0 };
@@ -107,7 +134,13 @@ impl GridFinder {
         if !printed.scientific {
             self.most_decimals = self.most_decimals.max(printed.decimals);
         }
-        if time == 0.0 && printed.decimals == 0 {
+        self.long += u64::from(printed.significant > 6);
+        self.not_single = self.not_single || !is_single(time, printed.significant);
+        let stored = match self.is_single() {
+            true => 2.0 * Resolution::Single.at(time),
+            false => 0.0,
+        };
+        let written = if time == 0.0 && printed.decimals == 0 {
             0.0
         } else if printed.scientific || printed.significant == self.most_significant && time != 0.0
         {
@@ -115,7 +148,8 @@ impl GridFinder {
         } else {
             // Short text of a number that was printed to more digits elsewhere.
             own(i32::from(self.most_decimals))
-        }
+        };
+        written.max(stored)
     }
 
     fn count(&mut self, step: f64, exact: impl Fn() -> Option<Decimal>, tolerance: f64) {
@@ -171,37 +205,49 @@ impl GridFinder {
         self.latest = place;
     }
 
-    /// The step of stamps that were rounded to whole units about as long as it: steps of one unit,
-    /// with others of none or of two units among them as evenly as rounding puts them there. Steps
-    /// that were chosen come in longer runs, or in more sizes.
-    fn rounded_to(&self, unit: f64) -> Option<f64> {
+    /// The step of stamps that were rounded to units not much shorter than it: steps of one number
+    /// of units, with others of a unit more or less among them as evenly as rounding puts them
+    /// there. Steps that were chosen come in longer runs, or in more sizes.
+    fn rounded_to(&self, unit: f64, most: &Cluster) -> Option<f64> {
+        let usual = (most.spacing / unit).round();
         let of_size = |units: f64| {
             let near = move |cluster: &&Cluster| (cluster.spacing / unit - units).abs() < 0.1;
             self.clusters.iter().find(near)
         };
-        let (ones, twos) = (of_size(1.0)?, of_size(2.0));
-        let doubles = twos.map_or(0, |twos| twos.count);
-        let steps = ones.count + doubles + self.repeats;
-        let others = doubles + self.repeats;
-        let all = self.steps + self.repeats;
+        let (less, more) = (of_size(usual - 1.0), of_size(usual + 1.0));
+        // Steps of no unit are stamps that repeat.
+        let repeats = if usual == 1.0 { self.repeats } else { 0 };
+        let beside = [less, more].into_iter().flatten();
+        let others = repeats + beside.clone().map(|cluster| cluster.count).sum::<u64>();
+        let steps = most.count + others;
+        let all = self.steps + repeats;
         if 20 * others <= self.steps || (steps as f64) < ROUNDED_SHARE * all as f64 {
             return None;
         }
-        let sum = ones.sum + twos.map_or(0.0, |twos| twos.sum);
+        let sum = most.sum + beside.map(|cluster| cluster.sum).sum::<f64>();
         let step = sum / steps as f64;
-        // Of `k` steps in a row, rounding makes a unit more or less at the latest after the
-        // reciprocal of what one of them is beyond a whole unit; and no sooner than that.
-        let units = step / unit;
-        let longest = |share: f64| 2.0 * (1.0 / share + 2.0);
-        let (of_ones, of_twos) = match units > 1.0 {
-            true => (units - 1.0, 2.0 - units),
-            // Steps of none do not end a run.
-            false => (0.0, 1.0),
+        // Of steps in a row, rounding makes one a unit longer or shorter at the latest after the
+        // reciprocal of what they are beyond a whole unit; and no sooner than that.
+        let share = step / unit - usual;
+        let is_even = |cluster: Option<&Cluster>, of_others: f64| {
+            let longest = 2.0 * (1.0 / of_others.max(1e-9) + 2.0);
+            cluster.is_none_or(|cluster| cluster.longest_run as f64 <= longest)
         };
-        let even = |run: u64, share: f64| run as f64 <= longest(share.max(1e-9));
-        let even = even(ones.longest_run, of_ones)
-            && twos.is_none_or(|twos| even(twos.longest_run, of_twos));
-        even.then_some(step)
+        // Steps of none do not end a run.
+        let counts = usual > 1.0 || share > 0.0;
+        let even = !counts || is_even(Some(most), share.abs());
+        let beside_even =
+            is_even(more, (1.0 - share).min(1.0)) && is_even(less, (1.0 + share).min(1.0));
+        (even && beside_even).then_some(step)
+    }
+
+    /// True where the last stamps are no multiples of a step of so many units.
+    fn has_moved(&self, unit: f64, units: f64) -> bool {
+        let off = |cluster: &Cluster| {
+            let size = cluster.spacing / unit;
+            cluster.count as f64 * (size - (size / units).round() * units)
+        };
+        self.clusters.iter().map(off).sum::<f64>().abs() > 0.5
     }
 
     /// The grid, with how finely the stamps turned out to be printed.
@@ -209,16 +255,19 @@ impl GridFinder {
         let Some(most) = self.clusters.iter().max_by_key(|cluster| cluster.count) else {
             return Grid::Varied;
         };
-        // A step of one unit of the last decimal, with steps of none or two among them:
+        // A step of a few units of the last decimal, with steps of one more or less among them:
         // the true step lies between, and its stamps were rounded.
         let last = self.last.map_or(0.0, |(time, ..)| time);
         let unit = 2.0 * printed.at(last);
-        let one_unit = printed != Resolution::Full && (most.spacing / unit - 1.0).abs() < 1e-6;
+        let units = most.spacing / unit;
+        let few_units = printed != Resolution::Full
+            && (0.5..=MOST_UNITS).contains(&units)
+            && (units - units.round()).abs() < 1e-6 * units;
         let mean = self.sum / (self.steps + self.repeats) as f64;
         // So many rows share a stamp that the step is less than a unit of the last digits: whatever
         // steps the stamps show are those of their rounding.
         let shared = printed != Resolution::Full && mean <= unit && 20 * self.repeats > self.steps;
-        let rounded = self.rounded_to(unit).filter(|_| one_unit);
+        let rounded = few_units.then(|| self.rounded_to(unit, most)).flatten();
         if let Some(spacing) = rounded.or(shared.then_some(mean)) {
             return Grid::Uniform {
                 spacing,
@@ -256,6 +305,9 @@ impl GridFinder {
             };
         }
         let exact = most.exact.filter(|_| most.identical);
+        // A single step of a unit more moves all stamps after it off the multiples: the true step
+        // is a little longer, and they were rounded.
+        let exact = exact.filter(|_| !few_units || !self.has_moved(unit, units));
         let spacing = exact.map_or(most.sum / most.count as f64, |e| e.to_double().to_f64());
         let mut phases = [0.0; 2];
         let coarser = self

@@ -175,6 +175,10 @@ const DIGITS_IN_FULL: u8 = 17;
 /// that the producer printed. Nine in ten do where trailing zeros are dropped.
 const MOST_ROWS: f64 = 0.5;
 
+/// Whole numbers that are followed by at least so many rows of the same may have been printed to
+/// any digits.
+const MOST_AT_REST: u64 = 50;
+
 /// Chance below which it is none that values in single precision show no more decimals.
 const CHANCE_OF_NO_MORE: f64 = 1e-3;
 
@@ -250,10 +254,15 @@ impl Pattern {
     fn tell(&mut self, value: f64, printed: Printed) {
         self.telling += 1;
         self.by_digits[usize::from(printed.significant).min(64)] += 1;
-        if !printed.scientific {
-            self.by_decimals[usize::from(printed.decimals).min(64)] += 1;
+        // Programs go over to an exponent for small numbers, however they were rounded.
+        let decimals = match printed.scientific {
+            true => i32::from(printed.significant) - 1 - decade(value),
+            false => i32::from(printed.decimals),
+        };
+        if decimals >= 0 {
+            self.by_decimals[(decimals as usize).min(64)] += 1;
         }
-        let single = printed.significant <= 9 && is_shortest_single(value, printed.significant);
+        let single = is_shortest_single(value, printed.significant);
         self.not_single += u64::from(!single);
         self.largest = self.largest.max(value.abs());
     }
@@ -335,9 +344,11 @@ impl Pattern {
         self.telling as f64 * chance.ln() < CHANCE_OF_NO_MORE.ln()
     }
 
-    /// True where all values are equal, so that the column tells nothing by itself.
-    pub(super) fn is_constant(&self) -> bool {
-        self.constant
+    /// True where all values are equal, or next to all of them zero, so that the column tells
+    /// nothing by itself.
+    pub(super) fn tells_nothing(&self) -> bool {
+        let whole = self.even && self.decimals == Some(0);
+        self.constant || whole && MOST_AT_REST * self.telling <= self.rows
     }
 
     /// Digits that all but a few values have: the last line may be cut off where it has
@@ -376,7 +387,7 @@ impl Pattern {
             .iter()
             .rposition(|&count| count > 0)
             .unwrap_or(0) as u8;
-        if self.constant || self.telling == 0 {
+        if self.tells_nothing() || self.telling == 0 {
             return Resolution::Full;
         }
         if let Some((decimals, false)) = self.even() {
@@ -422,10 +433,19 @@ fn common_divisor(a: u64, b: u64) -> u64 {
     a
 }
 
+/// True for a number in single precision, in its shortest text or printed to so many digits.
+pub(super) fn is_single(value: f64, digits: u8) -> bool {
+    let apart = (value - f64::from(value as f32)).abs();
+    let unit = power_of_ten(decade(value) + 1 - i32::from(digits));
+    apart <= 0.501 * unit && digits > 9 || apart == 0.0 || is_shortest_single(value, digits)
+}
+
+/// True for the shortest text of a number in single precision.
 fn is_shortest_single(value: f64, digits: u8) -> bool {
     // Numbers of six digits are all told apart by single precision, so that there is no
     // shorter text for any of them.
-    digits <= 6 && (1e-30..1e30).contains(&value.abs()) || prints_as_single(value)
+    let short = digits <= 6 && (1e-30..1e30).contains(&value.abs());
+    short || digits <= 9 && prints_as_single(value)
 }
 
 #[cold]
@@ -546,6 +566,16 @@ mod tests {
             stamps(&["0", "61", "600", "1500", "3600"]),
             Resolution::Decimals(0)
         );
+    }
+
+    // A mode that is gone after the first row; whole numbers that go on moving are rounded.
+    #[test]
+    fn one_and_zeros_are_in_full() {
+        let gone = || std::iter::once("1").chain(std::iter::repeat_n("0", 200));
+        assert_eq!(conclude(gone()), Resolution::Full);
+        let moving = ["7", "5", "4", "3", "2", "2", "1"];
+        assert_eq!(conclude(moving), Resolution::Decimals(0));
+        assert_eq!(conclude(gone().chain(moving)), Resolution::Decimals(0));
     }
 
     #[test]

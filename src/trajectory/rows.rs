@@ -51,6 +51,11 @@ pub(crate) struct Order<'a> {
     last: Option<f64>,
     last_values: Vec<f64>,
     latest: f64,
+    /// The step to the row before.
+    step: f64,
+    /// Rows, and those that repeat the time of the row before with other values.
+    rows: u64,
+    repeated: u64,
     /// A finding whose kind shows only with the next row: a row that equals the one
     /// before it, or one that leaves a hole which it may have been swapped into.
     pending: Option<Pending>,
@@ -62,7 +67,26 @@ struct Pending {
     kind: Kind,
     line: u64,
     text: String,
+    /// It counts only where the steps around it are those of the grid.
+    lone: bool,
 }
+
+/// Steps between rows of a uniform grid, with what seems to be missing.
+struct Hole {
+    text: String,
+    lone: bool,
+}
+
+/// A step of so many others that is no whole number of them is a hole where it stands alone: the
+/// last step of a code may be longer than the others, but not by more than one of them.
+const LONE: f64 = 2.1;
+/// Steps up to this many of the grid's are its own.
+const OWN: f64 = 1.1;
+/// So many rows that stand beside another one of the same time, one in so many, are those of
+/// another run.
+const REPEATED: u64 = 10;
+/// Stamps that are rounded to this part of the steps do not repeat by that.
+const FINE: f64 = 0.01;
 
 impl<'a> Order<'a> {
     pub(crate) fn new(survey: &'a Survey, is_event: &'a IsEvent<'a>) -> Order<'a> {
@@ -73,6 +97,9 @@ impl<'a> Order<'a> {
             last: None,
             last_values: vec![f64::NAN; survey.selection.channels.len()],
             latest: f64::NEG_INFINITY,
+            step: 0.0,
+            rows: 0,
+            repeated: 0,
             pending: None,
             largest_gap: 0.0,
             digits: survey.time.of_neighbours(),
@@ -112,7 +139,9 @@ impl<'a> Order<'a> {
                 continue;
             }
             let printed = self.digits.at(row.time);
-            let resolution = match self.survey.is_on_grid(batch.exact(row)) {
+            // Of rows that share a stamp at most one is on the grid.
+            let shared = self.last == Some(row.time) && !(self.is_event)(row.time);
+            let resolution = match !shared && self.survey.is_on_grid(batch.exact(row)) {
                 true => 0.0,
                 false => printed,
             };
@@ -134,9 +163,18 @@ impl<'a> Order<'a> {
             kind: Kind::MissingRows,
             line,
             text,
+            ..
         }) = self.pending.take()
         {
             findings.fatal(Kind::MissingRows, line, text);
+        }
+        if self.repeated >= 3 && REPEATED * self.repeated > self.rows {
+            let text = format!(
+                "{} of {} rows repeat the time of the row before with other values: is this more \
+                 than one run?",
+                self.repeated, self.rows
+            );
+            findings.fatal(Kind::RepeatedStamp, None, text);
         }
     }
 
@@ -192,11 +230,19 @@ impl<'a> Order<'a> {
         findings: &mut Findings,
     ) {
         let survey = self.survey;
-        if let Some(Pending { kind, line, text }) = self.pending.take() {
+        self.rows += 1;
+        if let Some(Pending {
+            kind,
+            line,
+            text,
+            lone,
+        }) = self.pending.take()
+        {
             // A row that comes out of order fills the hole that seemed to be there; one
             // step between two phases of output need not fit either.
             let step = self.last.map_or(0.0, |last| time - last);
-            let between = kind == Kind::MissingRows && survey.is_phase(step, resolution);
+            let between = kind == Kind::MissingRows
+                && (survey.is_phase(step, resolution) || lone && !survey.is_own(step));
             if kind == Kind::RepeatedStamp || time >= self.latest && !between {
                 findings.fatal(kind, line, text);
             }
@@ -209,6 +255,7 @@ impl<'a> Order<'a> {
             let step = time - from;
             let gap = (step - slack(time, resolution)).min(step / 1.5);
             self.largest_gap = self.largest_gap.max(gap);
+            let before = std::mem::replace(&mut self.step, step);
             if time == last {
                 // Stamps that are too coarse for the step repeat by themselves.
                 let uniform = matches!(survey.grid, Grid::Uniform { spacing, exact, .. }
@@ -223,17 +270,24 @@ impl<'a> Order<'a> {
                         kind: Kind::RepeatedStamp,
                         line,
                         text,
+                        lone: false,
                     });
                 } else {
+                    let fine = self.digits.at(time) <= FINE * survey.mean_step;
+                    self.repeated += u64::from(fine && !(self.is_event)(time));
                     let text = || format!("t = {time} stands here a second time");
                     findings.note(Kind::RepeatedStamp, line, text);
                 }
             } else {
-                let hole = survey.hole(from, time, resolution);
-                self.pending = hole.map(|text| Pending {
+                let hole = survey.hole(from, time, before, resolution);
+                // A phase of coarser output ends with a shorter step where it has to.
+                let ends = step < before && survey.is_phase(before, resolution);
+                let hole = hole.filter(|_| !ends);
+                self.pending = hole.map(|Hole { text, lone }| Pending {
                     kind: Kind::MissingRows,
                     line,
                     text,
+                    lone,
                 });
             }
         }
@@ -279,8 +333,8 @@ impl Survey {
         even || usize::from(printed.significant) + 2 < self.usual_digits[place]
     }
 
-    /// What is missing between two stamps of a uniform grid.
-    fn hole(&self, from: f64, to: f64, resolution: f64) -> Option<String> {
+    /// What is missing between two stamps of a uniform grid, after a step of size `before`.
+    fn hole(&self, from: f64, to: f64, before: f64, resolution: f64) -> Option<Hole> {
         let Grid::Uniform { spacing, .. } = self.grid else {
             return None;
         };
@@ -293,14 +347,22 @@ impl Survey {
         let missing = (step / spacing).round() - 1.0;
         let off_grid = (step - (missing + 1.0) * spacing).abs();
         let whole = off_grid <= slack * (missing + 2.0) + 1e-6 * step;
+        let lone = step > LONE * spacing && self.is_own(before);
         let rows = if missing == 1.0 { "row is" } else { "rows are" };
         let in_phase = self.is_phase(step, resolution);
-        (missing >= 1.0 && step - spacing > slack && whole && !in_phase).then(|| {
-            format!(
+        let is_hole = missing >= 1.0 && step - spacing > slack && (whole || lone) && !in_phase;
+        is_hole.then(|| Hole {
+            text: format!(
                 "{missing} {rows} missing before this one: t goes from {from} to {to} in a file \
                  of step {spacing}"
-            )
+            ),
+            lone: !whole,
         })
+    }
+
+    /// True for a step that is not longer than those of a uniform grid.
+    fn is_own(&self, step: f64) -> bool {
+        matches!(self.grid, Grid::Uniform { spacing, .. } if step <= OWN * spacing)
     }
 
     /// True for a step of a phase of coarser output.

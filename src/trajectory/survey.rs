@@ -171,7 +171,12 @@ impl Surveyor {
     pub(crate) fn conclude(&self, layout: &Layout, of: &Selection, stated: &Stated) -> Survey {
         // Stamps show their own pattern: what is stated is how values were printed.
         let digits = stated.digits.filter(|_| !self.time.is_clear());
-        let time = self.time.conclude_stamps(digits);
+        let time = match self.time.conclude_stamps(digits) {
+            Resolution::Full if self.grid.is_single() => Resolution::Single,
+            Resolution::Single => Resolution::Single,
+            _ if digits.is_none() && self.grid.is_chosen() => Resolution::Full,
+            printed => printed,
+        };
         let patterns = &self.channels;
         Survey {
             grid: self.grid.conclude(time),
@@ -186,7 +191,7 @@ impl Surveyor {
             rows: self.rows,
             first: self.first,
             known: Known {
-                time: self.time.is_settled(),
+                time: self.time.is_settled() && time == Resolution::Full,
                 channels: patterns.iter().map(Pattern::is_settled).collect(),
             },
         }
@@ -275,7 +280,7 @@ impl Source {
     }
 }
 
-/// The resolution of every column; a constant one is printed like those beside it.
+/// The resolution of every column; one that tells nothing is printed like those beside it.
 fn resolutions(patterns: &[Pattern], stated: Option<u8>) -> Vec<Resolution> {
     let concluded = patterns.iter().map(|pattern| pattern.conclude(stated));
     let concluded: Vec<Resolution> = concluded.collect();
@@ -288,7 +293,9 @@ fn resolutions(patterns: &[Pattern], stated: Option<u8>) -> Vec<Resolution> {
         .iter()
         .zip(&concluded)
         .map(|(pattern, &own)| match pattern.even() {
-            Some((decimals, false)) if pattern.is_constant() => of_others(decimals).unwrap_or(own),
+            Some((decimals, false)) if pattern.tells_nothing() => {
+                of_others(decimals).unwrap_or(own)
+            }
             _ => own,
         });
     each.collect()

@@ -243,3 +243,181 @@ fn whole_numbers_in_columns_are_as_coarse_as_their_text() {
     let twin = audit("run.csv", text, &limits);
     assert_eq!(twin.report["submissions"][0]["verdict"], "undecided");
 }
+
+/// Exact values at times, whose stamps are printed in some other way.
+fn stamped(times: impl IntoIterator<Item = f64>, stamp: impl Fn(f64) -> String) -> String {
+    let mut text = "t,v_c\n".to_owned();
+    for (time, value) in exact(times) {
+        let _ = writeln!(text, "{},{value:e}", stamp(time));
+    }
+    text
+}
+
+// Steps of 0.04 and 0.03, of 0.03 with a single one of 0.04, and of no unit at all for the first
+// rows: none of these stamps is a multiple of a step, and the limit is finer than they are.
+#[test]
+fn stamps_that_were_rounded_to_few_units_are_not_exact() {
+    let doubling = (0..9).map(|k| 1e-4 * 3f64.powi(k));
+    let capped = (1..=23).map(|k| 0.656_1 + 0.4 * f64::from(k));
+    let growing = [0.0].into_iter().chain(doubling.chain(capped));
+    let growing: Vec<f64> = growing.chain([END]).collect();
+    for (name, times) in [
+        ("of four and three", even(278).collect()),
+        ("of three and one of four", even(333).collect()),
+        ("of none", growing),
+    ] {
+        let ran = audit("run.csv", stamped(times, |time| format!("{time:.2}")), &[]);
+        assert_eq!(ran.verdict(), "undecided", "{name}: {}", ran.seen());
+    }
+    // Chosen steps of so few units stay exact.
+    for rows in [250, 500] {
+        let text = stamped(even(rows), |time| format!("{time:.2}"));
+        assert_eq!(audit("run.csv", text, &[]).verdict(), "pass", "{rows}");
+    }
+}
+
+// As programs write numbers that they have rounded: small ones with an exponent.
+#[test]
+fn decimals_are_counted_through_exponents() {
+    let print = |value: f64| {
+        let rounded = (value * 1e3).round() / 1e6;
+        match rounded.abs() < 1e-4 && rounded != 0.0 {
+            true => format!("{rounded:e}"),
+            false => format!("{rounded}"),
+        }
+    };
+    // 0.1 ms after the start there are 4e-4 kV and less.
+    for end in [1.0, 0.1] {
+        let times = even(400).map(|time| time * end / END).chain([END]);
+        let mut text = "t,v_c [kV]\n".to_owned();
+        for (time, value) in exact(times) {
+            let _ = writeln!(text, "{time},{}", print(value));
+        }
+        let ran = audit("run.csv", text, &[]);
+        let digits = ran.first_run()["channels"][0]["digits"].as_str().unwrap();
+        assert!(digits.starts_with("6 decimals"), "{end}: {}", ran.seen());
+    }
+}
+
+#[test]
+fn a_phase_may_end_with_a_shorter_step() {
+    let dense = (0..99).map(|k| f64::from(k) / 50.0);
+    let coarse = (0..=133).map(|k| f64::from(198 + 6 * k) / 100.0);
+    let times: Vec<f64> = dense.chain(coarse).chain([END]).collect();
+    let whole = stamped(times.clone(), |time| format!("{time}"));
+    let ran = audit("run.csv", whole, &[]);
+    assert_eq!(kinds(&ran), [""; 0], "{}", ran.seen());
+    // Before the phase it would be a hole.
+    let holed = times.into_iter().enumerate();
+    let holed = holed.filter(|&(row, _)| row != 40).map(|(_, time)| time);
+    let ran = audit("run.csv", stamped(holed, |time| format!("{time}")), &[]);
+    assert_eq!(kinds(&ran), ["missing-rows"], "{}", ran.seen());
+}
+
+#[test]
+fn phases_are_seen_through_stamps_of_single_precision() {
+    let step = END / 540.0;
+    let number = (0..500).chain((500..=540).step_by(10));
+    let times = number.map(|k| f64::from((f64::from(k) * step) as f32));
+    let ran = audit(
+        "run.csv",
+        stamped(times, |time| format!("{}", time as f32)),
+        &[],
+    );
+    assert_eq!(kinds(&ran), [""; 0], "{}", ran.seen());
+}
+
+#[test]
+fn phases_of_chosen_steps_keep_their_stamps() {
+    let dense = (0..100).map(|k| f64::from(k) / 50.0);
+    let times = dense.chain((0..=160).map(|k| f64::from(200 + 5 * k) / 100.0));
+    let text = stamped(times, |time| format!("{time}"));
+    let ran = audit("run.csv", text, &[]);
+    assert_eq!(ran.verdict(), "pass", "{}", ran.seen());
+}
+
+// As programs write that keep their time in single precision, and print every number in full.
+#[test]
+fn rows_lost_between_stamps_of_single_precision_are_seen() {
+    let step = (END / 300.0) as f32;
+    let summed = || {
+        let next = move |time: &f32| Some(time + step);
+        std::iter::successors(Some(0.0f32), next).take(301)
+    };
+    let product = || (0..=300u16).map(|k| f32::from(k) * step);
+    let times: [Vec<f64>; 2] = [
+        summed().map(f64::from).collect(),
+        product().map(f64::from).collect(),
+    ];
+    for times in times {
+        for digits in [17, 12, 9] {
+            let print = |time: f64| format!("{time:.*e}", digits - 1);
+            let read = |times: Vec<f64>| audit("run.csv", stamped(times, print), &[]);
+            let ran = read(times.clone());
+            assert_eq!(
+                (kinds(&ran), ran.verdict()),
+                (vec![], "pass"),
+                "{}",
+                ran.seen()
+            );
+            let mut one = times.clone();
+            one.remove(200);
+            let ran = read(one);
+            assert_eq!(kinds(&ran), ["missing-rows"], "{digits}: {}", ran.seen());
+            let mut twice = times.clone();
+            twice.insert(200, twice[200]);
+            let ran = read(twice);
+            assert_eq!(
+                (kinds(&ran), ran.status),
+                (vec!["repeated-stamp".into()], 1)
+            );
+        }
+    }
+}
+
+#[test]
+fn a_stretch_lost_before_a_shortened_step_is_seen() {
+    let step = END / 38.4;
+    let times: Vec<f64> = (0..=38).map(|k| f64::from(k) * step).chain([END]).collect();
+    let read = |times: Vec<f64>| audit("run.csv", stamped(times, |time| format!("{time}")), &[]);
+    let ran = read(times.clone());
+    assert_eq!(
+        (kinds(&ran), ran.verdict()),
+        (vec![], "pass"),
+        "{}",
+        ran.seen()
+    );
+    for lost in [3, 11, 20] {
+        let mut times = times.clone();
+        times.drain(39 - lost..39);
+        let ran = read(times);
+        assert_eq!(kinds(&ran), ["missing-rows"], "{lost}: {}", ran.seen());
+    }
+    // The last step of a code may reach a little farther than the others.
+    let mut reaching = times;
+    reaching.truncate(38);
+    reaching.push(END);
+    let ran = read(reaching);
+    assert_eq!(
+        (kinds(&ran), ran.verdict()),
+        (vec![], "pass"),
+        "{}",
+        ran.seen()
+    );
+}
+
+#[test]
+fn two_runs_in_one_file_are_seen() {
+    let rows = exact(even(200));
+    let mut text = "t,v_c\n".to_owned();
+    for (time, value) in &rows {
+        let _ = write!(text, "{time},{value:e}\n{time},{:e}\n", value + 2e-5);
+    }
+    let ran = audit("run.csv", text, &[]);
+    assert_eq!(ran.status, 1, "{}", ran.seen());
+    assert!(
+        ran.seen().contains("is this more than one run?"),
+        "{}",
+        ran.seen()
+    );
+}
