@@ -50,6 +50,17 @@ impl Resolution {
         }
     }
 
+    /// True for digits that show more of a number than single precision keeps.
+    pub(super) fn is_finer_than_single(self) -> bool {
+        match self {
+            Resolution::Full => true,
+            Resolution::Decimals(digits)
+            | Resolution::Significant(digits)
+            | Resolution::Coarser(digits, _) => digits >= 9,
+            Resolution::Half | Resolution::Single => false,
+        }
+    }
+
     /// True where it says the same as another one of every value between two magnitudes.
     pub(crate) fn agrees_with(self, other: Resolution, [smallest, largest]: [f64; 2]) -> bool {
         if self == other {
@@ -437,7 +448,7 @@ fn common_divisor(a: u64, b: u64) -> u64 {
 pub(super) fn is_single(value: f64, digits: u8) -> bool {
     let apart = (value - f64::from(value as f32)).abs();
     let unit = power_of_ten(decade(value) + 1 - i32::from(digits));
-    apart <= 0.501 * unit && digits > 9 || apart == 0.0 || is_shortest_single(value, digits)
+    apart <= 0.501 * unit && digits >= 9 || apart == 0.0 || is_shortest_single(value, digits)
 }
 
 /// True for the shortest text of a number in single precision.

@@ -85,7 +85,7 @@ const OWN: f64 = 1.1;
 /// So many rows that stand beside another one of the same time, one in so many, are those of
 /// another run.
 const REPEATED: u64 = 10;
-/// Stamps that are rounded to this part of the steps do not repeat by that.
+/// Stamps that are rounded to this part of the step before them do not repeat by that.
 const FINE: f64 = 0.01;
 
 impl<'a> Order<'a> {
@@ -273,7 +273,7 @@ impl<'a> Order<'a> {
                         lone: false,
                     });
                 } else {
-                    let fine = self.digits.at(time) <= FINE * survey.mean_step;
+                    let fine = self.digits.at(time) <= FINE * before;
                     self.repeated += u64::from(fine && !(self.is_event)(time));
                     let text = || format!("t = {time} stands here a second time");
                     findings.note(Kind::RepeatedStamp, line, text);

@@ -172,8 +172,10 @@ impl Surveyor {
         // Stamps show their own pattern: what is stated is how values were printed.
         let digits = stated.digits.filter(|_| !self.time.is_clear());
         let time = match self.time.conclude_stamps(digits) {
-            Resolution::Full if self.grid.is_single() => Resolution::Single,
             Resolution::Single => Resolution::Single,
+            printed if printed.is_finer_than_single() && self.grid.is_single() => {
+                Resolution::Single
+            }
             _ if digits.is_none() && self.grid.is_chosen() => Resolution::Full,
             printed => printed,
         };
