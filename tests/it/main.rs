@@ -113,3 +113,9 @@ mod drive;
 
 /// Binary tables and packed text of other programs beside their twin as text.
 mod formats;
+
+/// Limits at their edges, and inputs made to keep the program busy.
+mod hostile;
+
+/// Any bytes, and seeds with changes, into every reader.
+mod hostile_bytes;

@@ -1,0 +1,60 @@
+//! How much may come out of a compressed file. A file of a megabyte can be made to unpack to
+//! gigabytes, which would keep an audit busy for as long as the submitter likes; what
+//! simulators write does not, since its times go on.
+
+use std::io::{Error, Read, Result};
+use std::sync::Arc;
+use std::sync::atomic::{AtomicU64, Ordering};
+
+/// So much may come out of any file.
+const FREE_BYTES: u64 = 64 << 20;
+/// So many times its size may come out of a larger one; deflate reaches 1032.
+const MOST_TIMES: u64 = 100;
+
+/// What may come out of one file, shared by all that is packed in it.
+#[derive(Clone, Debug)]
+pub(super) struct Budget {
+    most: u64,
+    spent: Arc<AtomicU64>,
+}
+
+impl Budget {
+    /// For a file of so many bytes.
+    pub fn of(packed: u64) -> Budget {
+        Budget {
+            most: FREE_BYTES.saturating_add(packed.saturating_mul(MOST_TIMES)),
+            spent: Arc::default(),
+        }
+    }
+
+    /// Counts bytes that have come out, or that the file says will.
+    ///
+    /// # Errors
+    /// More than may come out; the text says how to mend it.
+    pub fn spend(&self, bytes: u64) -> std::result::Result<(), String> {
+        let before = self.spent.fetch_add(bytes, Ordering::Relaxed);
+        // The sum of sizes that a file makes up may go beyond all numbers.
+        if before
+            .checked_add(bytes)
+            .is_some_and(|all| all <= self.most)
+        {
+            return Ok(());
+        }
+        self.spent.store(self.most, Ordering::Relaxed);
+        Err(format!(
+            "unpacks to more than {} bytes, far beyond its size: hand it in unpacked",
+            self.most
+        ))
+    }
+}
+
+/// A stream that ends in an error once the budget is spent.
+pub(super) struct Within<R>(pub R, pub Budget);
+
+impl<R: Read> Read for Within<R> {
+    fn read(&mut self, buffer: &mut [u8]) -> Result<usize> {
+        let count = self.0.read(buffer)?;
+        self.1.spend(count as u64).map_err(Error::other)?;
+        Ok(count)
+    }
+}
