@@ -21,8 +21,8 @@ pub(super) struct System {
 }
 
 /// Products that the states at all jumps may cost, so that neither time nor memory is without
-/// end: 64 states with one input still have all the jumps that are allowed.
-const MOST_PRODUCTS: usize = 500_000_000;
+/// end: eleven thousand jumps of 64 states, all that are allowed of 20.
+const MOST_PRODUCTS: usize = 50_000_000;
 /// Whole numbers of an `f64` follow each other up to here.
 const LAST_NUMBER: f64 = 9_007_199_254_740_992.0;
 
@@ -253,7 +253,7 @@ fn generator(shape: &Shape, from: Double, to: Double) -> Option<Generator> {
                 .floor()
                 .to_f64()
                 .max(0.0);
-            let count = count.unwrap_or(u64::MAX) as f64;
+            let count = count.map_or(f64::INFINITY, |count| count as f64);
             // From here on a pulse and the next one would have the same number.
             if done >= LAST_NUMBER && done < count {
                 return None;

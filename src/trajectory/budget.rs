@@ -7,8 +7,8 @@ use std::sync::Arc;
 use std::sync::atomic::{AtomicU64, Ordering};
 
 /// So much may come out of any file.
-const FREE_BYTES: u64 = 64 << 20;
-/// So many times its size may come out of a larger one; deflate reaches 1032.
+const FREE_BYTES: u64 = 16 << 20;
+/// And so many times its size; deflate reaches 1032.
 const MOST_TIMES: u64 = 100;
 
 /// What may come out of one file, shared by all that is packed in it.
