@@ -12,6 +12,8 @@ use crate::number::Double;
 
 /// Fewest rows of a run where a case does not say (common practice, no source).
 const LEAST_ROWS: u64 = 5;
+/// Complaints about one file; whoever mends these will see the next ones.
+const MOST_FAULTS: usize = 100;
 
 /// Collects complaints while the file is gone through.
 struct Checker<'a> {
@@ -120,7 +122,16 @@ impl Checker<'_> {
         }
     }
 
+    /// Every place is looked up from the beginning of the text: a list of mistakes as long as
+    /// the file would take for ever.
+    fn is_full(&self) -> bool {
+        self.faults.len() >= MOST_FAULTS
+    }
+
     fn complain(&mut self, text: impl Into<String>, span: &Range<usize>) {
+        if self.is_full() {
+            return;
+        }
         self.faults
             .push(Fault::new(text).at_offset(self.text, span.start));
     }
@@ -207,6 +218,9 @@ impl Checker<'_> {
 
     /// Names and values that a formula of numbers may use.
     fn parse(&mut self, text: &str, span: &Range<usize>, extra: &[&str]) -> Option<Formula> {
+        if self.is_full() {
+            return None;
+        }
         let known = self.parameters.iter().map(|p| p.name.as_str());
         let names: Vec<&str> = known.chain(extra.iter().copied()).collect();
         let find = |name: &str| names.iter().position(|known| *known == name);

@@ -3,6 +3,7 @@
 use nalgebra::DMatrix;
 
 use crate::case::{Case, Shape};
+use crate::number::approx_eigenvalues;
 
 /// Shortest time constant and shortest period of a case.
 #[derive(Clone, Copy, Debug, PartialEq)]
@@ -34,7 +35,7 @@ pub fn approx_time_scales(case: &Case) -> TimeScales {
             .get(j)
             .map_or(0.0, |c| c.to_f64())
     });
-    let eigenvalues = matrix.complex_eigenvalues();
+    let eigenvalues = approx_eigenvalues(&matrix).unwrap_or_default();
     let counts = |part: f64, size: f64| part.abs() > PART_OF_AN_EIGENVALUE * size;
     let mut fastest_rate = 0.0f64;
     let mut fastest_turn = 0.0f64;

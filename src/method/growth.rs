@@ -187,7 +187,7 @@ fn modes(linear: &Linear, scales: &[f64]) -> Option<Modes> {
     if !norm.is_finite() {
         return None;
     }
-    let (turn, upper) = Schur::try_new(matrix, f64::EPSILON, 10_000)?.unpack();
+    let (turn, upper) = Schur::try_new(matrix, f64::EPSILON, 30 * n.max(4))?.unpack();
     let value = |k: usize| upper[(k, k)];
     let mut nearest = vec![f64::INFINITY; n];
     for (i, nearest) in nearest.iter_mut().enumerate() {

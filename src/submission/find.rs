@@ -10,6 +10,8 @@ use crate::fault::{Fault, Result, quoted};
 
 /// Deepest folder that is looked into.
 pub const MOST_DEPTH: usize = 32;
+/// Most submissions below one path.
+pub const MOST_SUBMISSIONS: usize = 100_000;
 
 /// Where a submission lies.
 #[derive(Clone, Debug, PartialEq, Eq, PartialOrd, Ord)]
@@ -31,10 +33,20 @@ pub struct Place {
 /// A path that is not there, folders that cannot be read, a folder without any
 /// submission.
 pub fn discover(path: &Path, prefix: bool) -> std::result::Result<Vec<Place>, Vec<Fault>> {
+    walk(path, prefix, MOST_SUBMISSIONS)
+}
+
+fn walk(path: &Path, prefix: bool, most: usize) -> std::result::Result<Vec<Place>, Vec<Fault>> {
     let mut places = Vec::new();
     let mut faults = Vec::new();
     for entry in WalkDir::new(path).max_depth(MOST_DEPTH).sort_by_file_name() {
         match entry {
+            // What nobody looks at must not pass in silence.
+            Ok(entry) if entry.depth() == MOST_DEPTH && entry.file_type().is_dir() => {
+                let text = format!("folders lie more than {MOST_DEPTH} deep from here on");
+                let fault = Fault::new(text).help("name a folder further down on the command line");
+                faults.push(fault.in_file(entry.path()));
+            }
             Ok(entry) => {
                 let named = entry.depth() == 0 || entry.file_name() == "submission.toml";
                 // What has the name and is no file is not passed over in silence.
@@ -43,6 +55,11 @@ pub fn discover(path: &Path, prefix: bool) -> std::result::Result<Vec<Place>, Ve
                 if named && (is_plain || entry.depth() > 0 && !kind.is_dir()) {
                     let place = place(path, entry.path(), prefix);
                     places.push(Place { is_plain, ..place });
+                    if places.len() > most {
+                        let text = format!("more than {most} submissions lie here and below");
+                        let fault = Fault::new(text).help("name the folders below it in turn");
+                        return Err(vec![fault.in_file(path)]);
+                    }
                 }
             }
             Err(error) => {
@@ -137,4 +154,22 @@ pub fn confined(folder: &Path, file: &str) -> Result<PathBuf> {
         )));
     }
     Ok(path)
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    #[test]
+    fn submissions_are_counted() {
+        let folder = tempfile::tempdir().unwrap();
+        for name in ["a", "b", "c"] {
+            std::fs::create_dir(folder.path().join(name)).unwrap();
+            std::fs::write(folder.path().join(name).join("submission.toml"), "").unwrap();
+        }
+        assert_eq!(walk(folder.path(), false, 3).unwrap().len(), 3);
+        let faults = walk(folder.path(), false, 2).unwrap_err();
+        assert!(faults[0].text.contains("more than 2 submissions lie here"));
+        assert_eq!(discover(folder.path(), false).unwrap().len(), 3);
+    }
 }

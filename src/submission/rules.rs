@@ -14,6 +14,8 @@ use crate::fault::{Fault, misread};
 
 /// Largest file of rules that is read.
 pub const MOST_RULES_BYTES: u64 = 1 << 20;
+/// Most limits, requirements and names of methods of one file.
+pub const MOST_ENTRIES: usize = 2000;
 
 /// What a reviewer lays down for every submission of an audit.
 #[derive(Clone, Debug, Default)]
@@ -85,6 +87,18 @@ struct RequireEntry {
     method_shown: bool,
 }
 
+impl RulesFile {
+    /// How many places have to be looked up.
+    fn entries(&self) -> usize {
+        let methods =
+            |entry: &RequireEntry| entry.methods.as_ref().map_or(0, |m| m.get_ref().len());
+        let required = self.require.iter().map(|one| 1 + methods(one.get_ref()));
+        let tables = self.limits.iter().chain(self.case_limits.values());
+        let limits = tables.map(|table| 1 + table.len());
+        required.chain(limits).sum()
+    }
+}
+
 impl Rules {
     /// Reads the text of a file.
     ///
@@ -109,6 +123,15 @@ impl Rules {
 
 impl Reader<'_> {
     fn rules(&mut self, file: RulesFile, purpose: Purpose) -> Rules {
+        let entries = file.entries();
+        if entries > MOST_ENTRIES {
+            let text = format!(
+                "the file has {entries} limits, requirements and methods, \
+                 at most {MOST_ENTRIES} are read"
+            );
+            self.complain(text, 0);
+            return Rules::default();
+        }
         let says_nothing = self.is_empty(&file, purpose);
         let mut rules = Rules::default();
         let words = [

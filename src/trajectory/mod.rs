@@ -10,6 +10,7 @@
 //! their rows side by side before; files of numbers in columns ([`columns`]) come as batches from the start (`tables`).
 
 mod batch;
+mod budget;
 pub mod columns;
 mod finding;
 mod grid;

@@ -2,7 +2,8 @@
 //! file and without memory that grows with it.
 //!
 //! All members and frames of a file are read. A file that is cut off, has something
-//! behind its last member, or does not agree with its checksums ends in an error.
+//! behind its last member, does not agree with its checksums or unpacks to far more than its
+//! size ends in an error.
 
 use std::io::{BufRead, BufReader, Cursor, Error, ErrorKind, Read, Result as IoResult};
 
@@ -10,6 +11,7 @@ use flate2::bufread::MultiGzDecoder;
 use ruzstd::decoding::errors::{FrameDecoderError, ReadFrameHeaderError};
 use ruzstd::decoding::{BlockDecodingStrategy, FrameDecoder};
 
+use super::budget::{Budget, Within};
 use super::columns::{Data, Format};
 use crate::fault::Result;
 
@@ -20,9 +22,13 @@ use crate::fault::Result;
 pub fn open(data: &Data, format: Format) -> Result<Box<dyn Read + Send>> {
     let bytes = BufReader::new(data.handle()?);
     let name = format.name();
+    let budget = Budget::of(data.length()?);
     match format {
-        Format::Gzip => Ok(Box::new(Named(MultiGzDecoder::new(bytes), name))),
-        Format::Zstd => Ok(Box::new(Named(Frames::new(bytes), name))),
+        Format::Gzip => {
+            let text = Named(MultiGzDecoder::new(bytes), name);
+            Ok(Box::new(Within(text, budget)))
+        }
+        Format::Zstd => Ok(Box::new(Within(Named(Frames::new(bytes), name), budget))),
         other => Err(data.named(other.refusal())),
     }
 }

@@ -114,3 +114,12 @@ mod drive;
 
 /// Binary tables and packed text of other programs beside their twin as text.
 mod formats;
+
+/// Limits of files, lines, columns, knots and folders, just within and just beyond.
+mod edges;
+
+/// Limits of models and of what is packed, and inputs made to keep the program busy.
+mod hostile;
+
+/// Any bytes, and seeds with changes, into every reader.
+mod hostile_bytes;

@@ -260,6 +260,30 @@ impl Stepping {
     }
 }
 
+/// Multiplications that models with something changed may cost one run. It matters from some
+/// 16 states or inputs on; 64 states took minutes without it.
+const MOST_WORK: f64 = 4e9;
+/// Products of matrices for one exponential.
+const PRODUCTS: f64 = 15.0;
+
+/// How many times a model may be solved over some rows: every gap between rows that is not
+/// that of the grid, and every jump among them, costs an exponential of its own.
+pub(super) fn affordable(linear: &Linear, rows: &Rows) -> usize {
+    let size = Flow::new(linear).matrix.nrows() as f64;
+    let of_rows = if rows.spacing.is_some() {
+        2
+    } else {
+        rows.len()
+    };
+    let of_jumps = if linear.jumps_within(linear.window.0, linear.window.1) {
+        rows.len()
+    } else {
+        0
+    };
+    let one = (of_rows + of_jumps) as f64 * PRODUCTS * size.powi(3);
+    (MOST_WORK / one.max(1.0)) as usize
+}
+
 /// What the model would have written in the rows; not a number where it has no value.
 pub(super) fn trajectory(linear: &Linear, rows: &Rows, way: &Way) -> Option<Vec<f64>> {
     match way {

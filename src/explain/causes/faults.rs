@@ -3,7 +3,7 @@
 
 use rayon::prelude::*;
 
-use super::bench::{Gap, Rows, Stepping, Way, trajectory};
+use super::bench::{Gap, Rows, Stepping, Way, affordable, trajectory};
 use super::{
     Candidate, Kind, Names, Ranked, Trouble, method, model, ranked, rates, shape, written,
 };
@@ -80,9 +80,11 @@ pub(super) fn of_faults(trouble: &Trouble, rows: &Rows, names: &Names, before: G
             }
         }
     }
-    let model_step = step.unwrap_or(0.0);
+    let most = affordable(linear, &rows.few()) / (rates::SOLUTIONS * ways.len());
+    // A model too large to be solved so often is not asked what is wrong in it.
+    let model_step = step.filter(|_| most > 0).unwrap_or(0.0);
     let healthy = healthy_share(trouble, rows, step);
-    let rough = rates::Rough::new(linear, rows);
+    let rough = rates::Rough::new(linear, rows, most);
     let beside = |(way, method): &(Way, Option<&'static Method>)| {
         let mut one = Beside::default();
         let base = match way {
@@ -148,7 +150,7 @@ pub(super) fn of_faults(trouble: &Trouble, rows: &Rows, names: &Names, before: G
         }
     }
     if found.is_empty() {
-        found = of_parameters(trouble, rows, &ways, model_step, before);
+        found = of_parameters(trouble, rows, &ways, (model_step, most), before);
     }
     if found.is_empty() {
         found = loose;
@@ -173,7 +175,7 @@ fn of_parameters(
     trouble: &Trouble,
     rows: &Rows,
     ways: &[(Way, Option<&'static Method>)],
-    step: f64,
+    (step, most): (f64, usize),
     before: Gap,
 ) -> Vec<Ranked> {
     let wanted = ways.iter().filter(|(_, method)| {
@@ -181,8 +183,8 @@ fn of_parameters(
     });
     let wanted: Vec<_> = wanted.collect();
     let each = wanted.par_iter().flat_map_iter(|(way, method)| {
-        let found = rates::parameters(trouble.linear, trouble.parameters, rows, way).into_iter();
-        found.filter_map(|candidate| {
+        let found = rates::parameters(trouble.linear, trouble.parameters, rows, way, most);
+        found.into_iter().filter_map(|candidate| {
             let after = rows.gap(&candidate.values);
             let left_over = after.share / before.share.max(f64::MIN_POSITIVE);
             let exact = matches!(way, Way::Exact);

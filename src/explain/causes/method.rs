@@ -4,7 +4,7 @@
 use super::bench::{Gap, Rows, Stepping, Way, exactly, trajectory};
 use super::{Candidate, Kind, Names, Trouble};
 use crate::method::{Coefficients, Linear, Method, amplification, approx_stable_length, roots};
-use crate::number::short;
+use crate::number::{approx_eigenvalues, short};
 
 use nalgebra::{Complex, DMatrix};
 
@@ -217,7 +217,7 @@ pub(super) fn single_precision_time(
 fn eigenvalues(linear: &Linear) -> Vec<Complex<f64>> {
     let size = linear.size();
     let matrix = DMatrix::from_fn(size, size, |i, j| linear.matrix[(i, j)]);
-    matrix.complex_eigenvalues().iter().copied().collect()
+    approx_eigenvalues(&matrix).unwrap_or_default()
 }
 
 /// The errors grow by orders of magnitude towards the end.

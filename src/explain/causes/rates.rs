@@ -77,8 +77,12 @@ pub(super) struct Rough(Vec<(Scaled, usize)>);
 /// Places to either side that a method may prefer.
 const ASIDE: usize = 3;
 
+/// Solutions over a few rows that one thing scaled costs for each way to make the rows.
+pub(super) const SOLUTIONS: usize = 80;
+
 impl Rough {
-    pub(super) fn new(linear: &Linear, rows: &Rows) -> Rough {
+    /// Of at most so many things that may be scaled.
+    pub(super) fn new(linear: &Linear, rows: &Rows, most: usize) -> Rough {
         let mut kinds = vec![Scaled::All];
         if !linear.is_steady()
             || linear.constant.iter().any(|c| *c != 0.0)
@@ -89,6 +93,7 @@ impl Rough {
         if linear.size() > 1 {
             kinds.extend((0..linear.size()).map(Scaled::One));
         }
+        kinds.truncate(most);
         let few = rows.few();
         let best = |scaled: Scaled| {
             let of = |factor: f64| Some(scaled.apply(linear, factor));
@@ -193,12 +198,14 @@ impl std::fmt::Debug for Parameters<'_> {
     }
 }
 
-/// One parameter that was given to the model by a factor too large or too small.
+/// One of the first so many parameters that was given to the model by a factor too large or
+/// too small.
 pub(super) fn parameters(
     linear: &Linear,
     parameters: &Parameters,
     rows: &Rows,
     way: &Way,
+    most: usize,
 ) -> Vec<Candidate> {
     let few = rows.few();
     let one = |place: usize| {
@@ -223,7 +230,9 @@ pub(super) fn parameters(
             with_slip(text, factor, "check its value"),
         ))
     };
-    (0..parameters.names.len()).filter_map(one).collect()
+    (0..parameters.names.len().min(most))
+        .filter_map(one)
+        .collect()
 }
 
 /// Where a smooth function of one number is least, by golden sections and a parabola.

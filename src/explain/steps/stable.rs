@@ -4,7 +4,7 @@ use nalgebra::{Complex, DMatrix};
 
 use super::run::Stepper;
 use crate::method::{Coefficients, Linear, Recurrence, amplification, approx_stable_length};
-use crate::number::Matrix;
+use crate::number::{Matrix, approx_eigenvalues};
 
 /// Real or imaginary parts below this fraction of an eigenvalue are its rounding.
 const PART: f64 = 1e-9;
@@ -36,7 +36,10 @@ const ROUNDING: f64 = 1e-9;
 /// None: eigenvalues are those of `f64`, and those of nearly defective matrices keep few
 /// digits. An eigenvalue within 1e-9 of an axis, relative to its magnitude, is taken to lie on it.
 pub fn approx_stable_step(linear: &Linear, stepper: &Stepper) -> Option<f64> {
-    let modes = modes(&linear.matrix);
+    // Where no eigenvalue is known, no step is called stable.
+    let Some(modes) = modes(&linear.matrix) else {
+        return Some(0.0);
+    };
     if stepper.coefficients == Coefficients::SemiImplicit {
         return semi_implicit(linear, stepper, &modes);
     }
@@ -98,19 +101,19 @@ fn length(coefficients: &Coefficients, direction: Complex<f64>) -> Option<f64> {
 }
 
 /// Eigenvalues without rounded zeros, parts that are rounding set to zero.
-fn modes(matrix: &Matrix<f64>) -> Vec<Complex<f64>> {
+fn modes(matrix: &Matrix<f64>) -> Option<Vec<Complex<f64>>> {
     let size = matrix.row_sum_norm();
     let part = |part: f64, size: f64| if part.abs() <= PART * size { 0.0 } else { part };
-    let values = eigenvalues(matrix).into_iter();
+    let values = eigenvalues(matrix)?.into_iter();
     let values = values.filter(|value| value.norm() > ZERO * size);
-    values
-        .map(|value| Complex::new(part(value.re, value.norm()), part(value.im, value.norm())))
-        .collect()
+    let cleaned = values.map(|v| Complex::new(part(v.re, v.norm()), part(v.im, v.norm())));
+    Some(cleaned.collect())
 }
 
-fn eigenvalues(matrix: &Matrix<f64>) -> Vec<Complex<f64>> {
-    let dense = DMatrix::from_fn(matrix.size(), matrix.size(), |i, j| matrix[(i, j)]);
-    dense.complex_eigenvalues().iter().copied().collect()
+fn eigenvalues(matrix: &Matrix<f64>) -> Option<Vec<Complex<f64>>> {
+    approx_eigenvalues(&DMatrix::from_fn(matrix.size(), matrix.size(), |i, j| {
+        matrix[(i, j)]
+    }))
 }
 
 fn semi_implicit(linear: &Linear, stepper: &Stepper, modes: &[Complex<f64>]) -> Option<f64> {
@@ -120,8 +123,10 @@ fn semi_implicit(linear: &Linear, stepper: &Stepper, modes: &[Complex<f64>]) -> 
         let Some(recurrence) = recurrence else {
             return false;
         };
-        let factors = recurrence.past.iter().flat_map(eigenvalues);
-        factors.filter(|f| f.norm() > 1.0 + ROUNDING).count() <= growing
+        // A step whose factors are not known is not called stable.
+        let factors: Option<Vec<_>> = recurrence.past.iter().map(eigenvalues).collect();
+        let large = |f: &&Complex<f64>| f.norm() > 1.0 + ROUNDING;
+        factors.is_some_and(|all| all.iter().flatten().filter(large).count() <= growing)
     };
     let norm = linear.matrix.row_sum_norm();
     let span = linear.window.1 - linear.window.0;

@@ -15,6 +15,7 @@ use super::strip::{Lie, pour, skip};
 use super::table::{Entry, Table, by_array, lay};
 use super::{Columns, Data, EachBlock, Head, checked, data};
 use crate::fault::{Fault, Result};
+use crate::trajectory::budget::{Budget, Within};
 
 const HEADER_BYTES: u64 = 128;
 /// Types of elements at the top of the file.
@@ -55,6 +56,7 @@ impl Mat {
         let length = data.length()?;
         let header = data.exactly(0, HEADER_BYTES as usize)?;
         let big = header[126..128] == *b"MI";
+        let budget = Budget::of(length);
         let mut arrays = Vec::new();
         let mut left_out = Vec::new();
         let mut at = HEADER_BYTES;
@@ -79,7 +81,7 @@ impl Mat {
                     "cut off: an array should reach to byte {at}, the file holds {length}"
                 )));
             }
-            let (found, sentences) = stream.scan(data, big, kind)?;
+            let (found, sentences) = stream.scan(data, big, kind, &budget)?;
             arrays.extend(found.into_iter().map(|found| (stream, found)));
             left_out.extend(sentences);
         }
@@ -93,7 +95,13 @@ impl Mat {
 }
 
 impl Stream {
-    fn scan(self, data: &Data, big: bool, kind: u32) -> Result<(Vec<Found>, Vec<String>)> {
+    fn scan(
+        self,
+        data: &Data,
+        big: bool,
+        kind: u32,
+        budget: &Budget,
+    ) -> Result<(Vec<Found>, Vec<String>)> {
         let bytes = self.open(data, 0)?;
         match kind {
             MATRIX => {
@@ -103,6 +111,7 @@ impl Stream {
                 Ok((scan.found, scan.left_out))
             }
             PACKED => {
+                let bytes = Box::new(Within(bytes, budget.clone()));
                 let mut scan = Scan::new(bytes, big, u64::MAX);
                 let (kind, size) = scan.tag()?;
                 if kind != MATRIX {

@@ -28,6 +28,7 @@ pub use cell::{Cell, Kind, Precision};
 pub use data::{Data, Handle, Piece};
 pub use recognise::{FIRST_BYTES, Format, recognise};
 
+use super::budget::Budget;
 use crate::fault::{Fault, Result};
 
 /// Most rows of a block.
@@ -83,7 +84,17 @@ pub fn open(data: &Data, format: Format) -> Result<Box<dyn Columns>> {
         Format::Hdf5 => hdf5::Tree::open(data).map(|file| Box::new(file) as _),
         other => Err(other.refusal()),
     };
-    opened.map_err(|fault| data.named(fault))
+    opened
+        .and_then(|table| within(&*table, data).map(|()| table))
+        .map_err(|fault| data.named(fault))
+}
+
+/// Rows may be claimed that are not there, or that one number stands for: what a table holds
+/// counts as what it unpacks to.
+fn within(table: &dyn Columns, data: &Data) -> Result<()> {
+    let numbers = table.rows().saturating_mul(table.heads().len() as u64);
+    let budget = Budget::of(data.length()?);
+    budget.spend(numbers.saturating_mul(8)).map_err(Fault::new)
 }
 
 /// The wanted columns, or a complaint about one that is not there.

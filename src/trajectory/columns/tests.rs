@@ -1,4 +1,5 @@
 use super::*;
+use crate::trajectory::MOST_COLUMNS;
 
 fn npy(header: &str, data: usize) -> Vec<u8> {
     let mut bytes = b"\x93NUMPY\x01\x00".to_vec();
@@ -174,6 +175,38 @@ fn archive(members: &[(&str, &[u8])], flags: u8, method: u8) -> Vec<u8> {
     bytes.extend([size, start].concat());
     bytes.extend([0, 0]);
     bytes
+}
+
+/// A name is a word in a report and never a path: nothing is written or opened by it.
+#[test]
+fn names_of_members_are_names_of_columns() {
+    let array = plain("(1,)", 8);
+    let names = ["../../t", "/etc/x", "a\\b", ""];
+    let members = names.map(|name| format!("{name}.npy"));
+    let members: Vec<(&str, &[u8])> = members.iter().map(|n| (&n[..], &array[..])).collect();
+    let table = open(&Data::memory(archive(&members, 0, 0)), Format::Npz).unwrap();
+    let found: Vec<_> = (table.heads().iter())
+        .map(|head| head.name.as_deref().unwrap_or_default())
+        .collect();
+    assert_eq!(found, names);
+}
+
+#[test]
+fn an_archive_may_have_as_many_members_as_a_table_columns() {
+    let array = plain("(1,)", 8);
+    let told = |count: usize| {
+        let names: Vec<String> = (0..count).map(|k| format!("{k}.npy")).collect();
+        let members: Vec<(&str, &[u8])> = names.iter().map(|n| (&n[..], &array[..])).collect();
+        let opened = open(&Data::memory(archive(&members, 0, 0)), Format::Npz);
+        opened.err().map(|fault| fault.text).unwrap_or_default()
+    };
+    assert_eq!(told(MOST_COLUMNS), "");
+    let wanted = "there are more than 4096 columns";
+    assert!(
+        told(MOST_COLUMNS + 1).contains(wanted),
+        "{}",
+        told(MOST_COLUMNS + 1)
+    );
 }
 
 #[test]

@@ -9,6 +9,7 @@ use flate2::bufread::DeflateDecoder;
 
 use super::Data;
 use crate::fault::{Fault, Result, quoted};
+use crate::trajectory::budget::Budget;
 
 /// More members than any table has columns.
 const MOST_MEMBERS: u64 = 65_536;
@@ -54,6 +55,11 @@ pub(super) fn members(data: &Data) -> Result<Vec<Member>> {
     if !rest.is_empty() {
         return Err(broken("its directory is longer than its members"));
     }
+    let budget = Budget::of(data.length()?);
+    for member in &members {
+        budget.spend(member.length).map_err(Fault::new)?;
+    }
+    refuse_overlaps(&members)?;
     let mut names: Vec<&str> = members.iter().map(|m| m.name.as_str()).collect();
     names.sort_unstable();
     if let Some(pair) = names.windows(2).find(|pair| pair[0] == pair[1]) {
@@ -61,6 +67,19 @@ pub(super) fn members(data: &Data) -> Result<Vec<Member>> {
         return Err(Fault::new(text));
     }
     Ok(members)
+}
+
+/// Members that share their bytes would let a small file hold any amount of data.
+fn refuse_overlaps(members: &[Member]) -> Result<()> {
+    let mut parts: Vec<(u64, u64)> = (members.iter())
+        .map(|member| (member.start, member.packed))
+        .collect();
+    parts.sort_unstable();
+    let overlap = |pair: &[(u64, u64)]| pair[0].0.saturating_add(pair[0].1) > pair[1].0;
+    if parts.windows(2).any(overlap) {
+        return Err(broken("its members lie over each other"));
+    }
+    Ok(())
 }
 
 fn broken(why: &str) -> Fault {
