@@ -135,4 +135,47 @@ mod tests {
             None
         );
     }
+
+    #[test]
+    fn steps_have_to_rise_and_to_be_above_zero() {
+        let values = [1.0, 1.1, 1.5];
+        assert!(grid_convergence([1.0, 2.0, 4.0], values).is_some());
+        for steps in [
+            [1.0, 2.0, 2.0],
+            [1.0, 2.0, 1.5],
+            [2.0, 1.0, 4.0],
+            [0.0, 1.0, 2.0],
+            [-1.0, -2.0, -4.0],
+        ] {
+            assert_eq!(grid_convergence(steps, values), None, "{steps:?}");
+        }
+        assert_eq!(grid_convergence([1.0, 2.0, 4.0], [1.0, 1.0, 2.0]), None);
+        assert_eq!(grid_convergence([1.0, 2.0, 4.0], [1.0, 2.0, 2.0]), None);
+    }
+
+    // With halved steps the order is log2 of the differences: the definition, [roache-1998].
+    #[test]
+    fn doubt_of_the_differences_bounds_the_order() {
+        let pair = |fine: f64, coarse: f64, doubt: f64, peak: f64| {
+            order_of_three([0.1, 0.2, 0.4], [fine, coarse], doubt, peak)
+        };
+        for peak in [1.0, 1e-2, 1e6] {
+            let found = pair(1e-3, 7e-3, 2e-4, peak).unwrap();
+            assert_eq!(found.settings, (0.4, 0.1));
+            for (found, expected) in [
+                (found.order, 7f64.log2()),
+                (found.low, (6.8e-3f64 / 1.2e-3).log2()),
+                (found.high, (7.2e-3f64 / 0.8e-3).log2()),
+            ] {
+                assert!((found - expected).abs() < 1e-6, "{found} {expected} {peak}");
+            }
+        }
+        // Differences two and a half times their doubt, below half the peak, that shrink.
+        assert!(pair(1e-3, 7e-3, 0.39e-3, 1.0).is_some());
+        assert_eq!(pair(1e-3, 7e-3, 0.41e-3, 1.0), None);
+        assert!(pair(1e-3, 7e-3, 0.0, 2.1e-3).is_some());
+        assert_eq!(pair(1e-3, 7e-3, 0.0, 1.9e-3), None);
+        assert_eq!(pair(7e-3, 1e-3, 0.0, 1.0), None);
+        assert_eq!(pair(1e-3, 1e-3, 0.0, 1.0), None);
+    }
 }

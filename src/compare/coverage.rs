@@ -244,4 +244,119 @@ mod tests {
             []
         );
     }
+
+    fn texts(from: f64, to: f64, least: u64, stamps: &[(f64, f64)]) -> (u64, u64, Vec<String>) {
+        let mut findings = Findings::default();
+        let mut coverage = Coverage::new(from, to, "s");
+        for (line, &(stamp, blur)) in stamps.iter().enumerate() {
+            coverage.add(line as u64, stamp, blur, &mut findings);
+        }
+        let (rows, outside) = coverage.conclude(least, &mut findings);
+        let list = findings.into_list();
+        (rows, outside, list.iter().map(|f| f.text.clone()).collect())
+    }
+
+    #[test]
+    fn edges_are_reached_within_the_slack_and_what_stamps_may_be_off() {
+        // A window of 8 from -3: 2e-7 of it are 1.6e-6.
+        let reached = |start: f64, end: f64, blur: f64| {
+            let stamps = [(-3.0 + start, blur), (0.0, blur), (5.0 + end, blur)];
+            texts(-3.0, 5.0, 2, &stamps).2.is_empty()
+        };
+        assert!(reached(1.5e-6, -1.5e-6, 0.0) && reached(-1.5e-6, 1.5e-6, 0.0));
+        for (start, end) in [(1.7e-6, 0.0), (-1.7e-6, 0.0), (0.0, -1.7e-6)] {
+            assert!(!reached(start, end, 0.0), "{start} {end}");
+        }
+        assert!(reached(9e-3, -9e-3, 9e-3) && !reached(9.1e-3, 0.0, 9e-3));
+        // Stamps add two thousandths of the window at most, 0.016.
+        assert!(reached(0.0159, -0.0159, 1.0) && !reached(0.0161, 0.0, 1.0));
+        assert!(!reached(0.0, -0.0161, 1.0));
+    }
+
+    #[test]
+    fn rows_outside_the_window_are_counted_and_spoken_of() {
+        let stamps =
+            |times: &[f64]| -> Vec<(f64, f64)> { times.iter().map(|&time| (time, 0.0)).collect() };
+        let found = texts(2.0, 4.0, 2, &stamps(&[1.0, 2.0, 3.0, 4.0, 5.0, 6.0]));
+        assert_eq!(found, (3, 3, vec![]));
+        let found = texts(2.0, 4.0, 2, &stamps(&[2.5, 3.0, 3.5]));
+        let start = "the first row is at t = 2.5 s, the window starts at 2 s";
+        let end = "the last row is at t = 3.5 s, the window ends at 4 s";
+        assert_eq!(found, (3, 0, vec![start.to_owned(), end.to_owned()]));
+        let found = texts(2.0, 4.0, 1, &stamps(&[0.0, 3.0, 60.0]));
+        let beyond = ", where no row lies; 2 rows lie outside it: is the unit of time right?";
+        let start = format!("the first row is at t = 0 s, the window starts at 2 s{beyond}");
+        let end = format!("the last row is at t = 60 s, the window ends at 4 s{beyond}");
+        assert_eq!(found, (1, 2, vec![start, end]));
+        let found = texts(2.0, 4.0, 4, &stamps(&[2.0, 3.0, 4.0]));
+        assert_eq!(found.2, ["3 rows within the window, at least 4 are needed"]);
+        assert_eq!(texts(2.0, 4.0, 3, &stamps(&[2.0, 3.0, 4.0])).2.len(), 0);
+        // Nine rows in ten may lie outside, no more.
+        let long = |outside: u32| -> Vec<f64> {
+            let later = (1..=outside).map(|k| 4.0 + f64::from(k));
+            [2.0, 4.0].into_iter().chain(later).collect()
+        };
+        assert_eq!(texts(2.0, 4.0, 2, &stamps(&long(18))).2.len(), 0);
+        let found = texts(2.0, 4.0, 2, &stamps(&long(19))).2;
+        let text = "only 2 of 21 rows lie within the window; 19 rows lie outside it: is the unit of \
+                    time right?";
+        assert_eq!(found, [text]);
+    }
+
+    #[test]
+    fn the_end_may_be_stepped_across_by_a_twentieth_of_the_window() {
+        // And by twice the largest step before.
+        let across = |step: f64, last: f64, end: f64| {
+            let count = (last / step).round() as u32;
+            let mut stamps: Vec<f64> = (0..=count).map(|k| step * f64::from(k)).collect();
+            stamps.push(end);
+            kinds(&stamps).is_empty()
+        };
+        assert!(across(0.3, 9.9, 10.39));
+        assert!(!across(0.3, 9.9, 10.41));
+        assert!(across(0.125, 9.875, 10.12));
+        assert!(!across(0.125, 9.875, 10.13));
+    }
+
+    #[test]
+    fn a_hole_is_twenty_times_as_long_as_four_steps_on_either_side() {
+        let holed = |times: f64, lone: usize| {
+            // Steps of 0.01 with one gap; one step near it is ten times as long.
+            let mut stamps = vec![0.0];
+            for step in 0..60 {
+                let size = match step {
+                    30 => 0.01 * times,
+                    step if step == lone => 0.1,
+                    _ => 0.01,
+                };
+                stamps.push(stamps[step] + size);
+            }
+            let last = stamps[60];
+            stamps
+                .iter()
+                .map(|stamp| stamp * 10.0 / last)
+                .collect::<Vec<f64>>()
+        };
+        assert_eq!(kinds(&holed(19.9, 99)), []);
+        assert_eq!(kinds(&holed(20.1, 99)), [(Kind::MissingRows, Some(31))]);
+        for beside in [26, 29, 31, 34] {
+            assert_eq!(kinds(&holed(20.1, beside)), [], "{beside}");
+        }
+        for apart in [25, 35] {
+            assert_eq!(kinds(&holed(20.1, apart)), [(Kind::MissingRows, Some(31))]);
+        }
+        let stamps = holed(40.0, 99);
+        let found = texts(
+            0.0,
+            10.0,
+            2,
+            &stamps.iter().map(|&t| (t, 0.0)).collect::<Vec<_>>(),
+        );
+        let (start, end) = (stamps[30], stamps[30] + (stamps[31] - stamps[30]));
+        let text = format!(
+            "no rows between t = {start} and t = {end} s: this gap is 40 times as long as the \
+             steps around it"
+        );
+        assert_eq!(found.2, [text]);
+    }
 }

@@ -154,4 +154,38 @@ mod tests {
         let other = (0..100).map(|k| 3.0 + 0.137 * f64::from(k));
         assert_eq!(lines(other, 0.1), []);
     }
+
+    #[test]
+    fn what_is_missing_is_told_in_rows_and_steps() {
+        let mut strides = Strides::new(3.0, 0.1);
+        // Output at every second step, two holes of three rows, one of one.
+        let stamps = (0..200)
+            .filter(|k| !(50..53).contains(k) && !(120..123).contains(k) && *k != 160)
+            .map(|k| 3.0 + 0.2 * f64::from(k));
+        for (line, stamp) in stamps.enumerate() {
+            strides.add(line as u64, stamp);
+        }
+        let mut findings = Findings::default();
+        strides.conclude("s", &mut findings);
+        let found: Vec<String> = findings
+            .into_list()
+            .iter()
+            .map(|f| f.text.clone())
+            .collect();
+        let first = 3.0 + 0.2 * 53.0;
+        let second = 3.0 + 0.2 * 161.0;
+        assert_eq!(
+            found,
+            [
+                format!(
+                    "3 rows missing before t = {first} s, 2 times in the file: rows lie 2 steps \
+                     of 0.1 apart elsewhere"
+                ),
+                format!(
+                    "1 row missing before t = {second} s, 1 time in the file: rows lie 2 steps \
+                     of 0.1 apart elsewhere"
+                ),
+            ]
+        );
+    }
 }

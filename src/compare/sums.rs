@@ -466,3 +466,6 @@ impl Against {
         }
     }
 }
+
+#[cfg(test)]
+mod tests;

@@ -116,3 +116,118 @@ fn closer(family: &Family, own: &Tried, by_chance: f64) -> bool {
         && (family.fit.residual <= by_chance * own.fit.residual
             || family.fit.astray <= by_chance * own.fit.astray)
 }
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use crate::judge::planted::{beside, claimed, family, fit, method, tried};
+
+    #[test]
+    fn iteration_and_arithmetic_leave_more_over_more_than_five_steps() {
+        for (steps, iteration, arithmetic) in [
+            (1, 3e-5, 3e-6),
+            (5, 3e-5, 3e-6),
+            (10, 6e-5, 6e-6),
+            (50, 3e-4, 3e-5),
+        ] {
+            assert!((of_iteration(steps) / iteration - 1.0).abs() < 1e-15);
+            assert!((of_arithmetic(steps) / arithmetic - 1.0).abs() < 1e-15);
+        }
+    }
+
+    #[test]
+    fn the_claimed_method_at_another_step_speaks_against_the_stated_one() {
+        let own = |ratio: f64| tried("backward Euler", 1, ratio, 1e-6);
+        let other = |steps: u64| tried("backward Euler", steps, 0.5, 1e-15);
+        let methods = [method("backward Euler")];
+        let is_elsewhere = |own: &Tried, other: Tried| {
+            let evidence = beside(vec![other]);
+            elsewhere(&evidence, &claimed("backward Euler", &methods), own).is_some()
+        };
+        assert!(is_elsewhere(&own(8.1), other(2)));
+        assert!(!is_elsewhere(&own(8.0), other(2)));
+        assert!(!is_elsewhere(&own(8.1), other(1)));
+        assert!(is_elsewhere(&own(8.1), other(64)));
+        assert!(!is_elsewhere(&own(8.1), other(65)));
+        assert!(!is_elsewhere(&own(8.1), tried("Heun", 2, 0.5, 1e-15)));
+        let mut near = other(2);
+        near.apart = 1.0;
+        assert!(!is_elsewhere(&own(8.1), near));
+        let mut held = other(2);
+        held.reading = Reading::Held;
+        assert!(!is_elsewhere(&own(8.1), held));
+        let evidence = beside(vec![other(2)]);
+        let mut stepless = claimed("backward Euler", &methods);
+        stepless.step = None;
+        assert!(elsewhere(&evidence, &stepless, &own(8.1)).is_none());
+    }
+
+    #[test]
+    fn an_iteration_does_not_undo_the_errors_of_its_method() {
+        let own = tried("backward Euler", 1, 1e3, 1e-6);
+        let mut evidence = beside(vec![]);
+        assert!(!is_undone(&evidence, &own));
+        // A twentieth of the residual.
+        evidence.exact = fit(9.0, 0.049e-6);
+        assert!(is_undone(&evidence, &own));
+        evidence.exact = fit(9.0, 0.051e-6);
+        assert!(!is_undone(&evidence, &own));
+        // A method nothing tells from it, a hundred times closer and as close as digits allow.
+        let with = |change: &dyn Fn(&mut Tried)| {
+            let mut other = tried("Heun", 1, 0.5, 0.99e-8);
+            change(&mut other);
+            let mut evidence = beside(vec![other]);
+            evidence.exact = fit(9.0, 1.0);
+            is_undone(&evidence, &own)
+        };
+        assert!(with(&|_| ()));
+        assert!(!with(&|other| other.fit.residual = 1.01e-8));
+        assert!(!with(&|other| other.free = true));
+        assert!(!with(&|other| other.fit.compared = 15));
+        assert!(!with(&|other| other.reading = Reading::Held));
+        assert!(!with(&|other| other.steps = 65));
+        let mut free = own.clone();
+        free.free = true;
+        let evidence = beside(vec![tried("Heun", 1, 0.5, 0.99e-8)]);
+        assert!(!is_undone(&evidence, &free));
+        // Its digits would let the claimed method come to 1e-10, ten times that is as close.
+        let sharp = tried("backward Euler", 1, 1e4, 1e-6);
+        let (close, far) = (tried("Heun", 1, 0.5, 0.99e-9), tried("Heun", 1, 0.5, 2e-9));
+        assert!(is_sharp(&family(&close), &sharp) && !is_sharp(&family(&far), &sharp));
+        assert!(is_undone(&beside(vec![close]), &sharp));
+        let mut other = beside(vec![far]);
+        other.exact = fit(9.0, 1.0);
+        assert!(!is_undone(&other, &sharp));
+    }
+
+    #[test]
+    fn what_binds_is_closer_than_by_chance() {
+        let own = tried("backward Euler", 1, 1e6, 1e-3);
+        let one = |residual: f64, astray: f64, change: &dyn Fn(&mut Family)| {
+            let mut found = family(&tried("Heun", 1, 0.5, residual));
+            found.fit.astray = astray;
+            change(&mut found);
+            (binds(&found, &own), far_closer(&found, &own))
+        };
+        let plain = |_: &mut Family| ();
+        assert_eq!(one(0.049e-3, 1.0, &plain), (true, false));
+        assert_eq!(one(0.051e-3, 1.0, &plain), (false, false));
+        assert_eq!(one(1.0, 0.049e-3, &plain), (true, false));
+        assert_eq!(one(1.0, 0.051e-3, &plain), (false, false));
+        assert_eq!(one(0.99e-6, 1.0, &plain), (true, true));
+        assert_eq!(one(1.0, 0.99e-6, &plain), (true, true));
+        assert_eq!(one(1.01e-6, 1.0, &plain), (true, false));
+        assert_eq!(
+            one(1e-9, 1.0, &|f| f.reading = Reading::Mean),
+            (false, false)
+        );
+        assert_eq!(one(1e-9, 1.0, &|f| f.steps = 65), (false, false));
+        // A start that is free to choose has to be told from the exact solution, over many rows.
+        let free = |f: &mut Family| (f.free, f.apart) = (true, 1.01);
+        assert_eq!(one(0.99e-6, 1.0, &free), (true, true));
+        assert_eq!(one(1.01e-6, 1.0, &free), (false, false));
+        assert!(!one(0.99e-6, 1.0, &|f| (f.free, f.apart) = (true, 1.0)).0);
+        let few = |f: &mut Family| (f.free, f.fit.compared) = (true, 15);
+        assert!(!one(0.99e-6, 1.0, &few).0);
+    }
+}

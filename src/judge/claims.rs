@@ -460,3 +460,6 @@ pub(super) fn early(own: &Tried, label: &str) -> String {
         short(own.fit.residual)
     )
 }
+
+#[cfg(test)]
+mod tests;

@@ -6,6 +6,8 @@
 mod ask;
 mod chance;
 mod claims;
+#[cfg(test)]
+mod planted;
 mod stated;
 mod words;
 
@@ -276,6 +278,164 @@ mod tests {
         assert_eq!(order(&[1.7], 2.0), Verdict::Undecided);
         assert_eq!(order(&[1.9], 2.0), Verdict::Pass);
         assert_eq!(order(&[5.0, 5.1], 4.0), Verdict::Pass);
+    }
+
+    #[test]
+    fn orders_that_nothing_decides_say_why() {
+        let pair = |order: f64, half: f64| Pair {
+            settings: (2.0, 1.0),
+            order,
+            low: order - half,
+            high: order + half,
+        };
+        let judge = |pairs: Vec<Pair>, agreeing: usize, large: bool, why: Option<&str>| {
+            let usable = pairs.len() + 1;
+            let sight = Sight::Pairs {
+                pairs,
+                agreeing,
+                usable,
+                large,
+            };
+            let found = of_order(&sight, Some(2.0), ORDER_SLACK, why);
+            (found.verdict.unwrap(), found.rungs_used, found.note)
+        };
+        let settled = || vec![pair(1.0, 0.01), pair(1.0, 0.01), pair(1.0, 0.01)];
+        assert_eq!(judge(settled(), 3, false, None), (Verdict::Fail, 4, None));
+        let text = |why: &str| {
+            Some(format!(
+                "the order has not settled (1.00, 1.00, 1.00): {why}; add finer runs"
+            ))
+        };
+        let large = text("the errors are too large for it");
+        assert_eq!(
+            judge(settled(), 3, true, None),
+            (Verdict::Undecided, 4, large)
+        );
+        let found = judge(settled(), 3, true, Some("the steps are too long"));
+        assert_eq!(
+            found,
+            (Verdict::Undecided, 4, text("the steps are too long"))
+        );
+        // Doubt is no merit: as wide as 0.3 it may reach the claim, wider it decides nothing.
+        let single = |order: f64, half: f64| judge(vec![pair(order, half)], 1, false, None);
+        assert_eq!(single(1.8, 0.149).0, Verdict::Pass);
+        let open = Some("the digits leave the order open".to_owned());
+        assert_eq!(single(1.8, 0.151), (Verdict::Undecided, 2, open));
+        assert_eq!(single(1.9, 2.0).0, Verdict::Pass);
+        // One pair fails half an order below the claim.
+        assert_eq!(single(1.48, 0.01).0, Verdict::Fail);
+        let alone = Some("one pair of runs cannot show that the order has settled".to_owned());
+        assert_eq!(single(1.51, 0.01), (Verdict::Undecided, 2, alone));
+        // A finest pair alone is believed where the one before came near.
+        let two = |coarse: f64| judge(vec![pair(coarse, 0.0), pair(2.0, 0.0)], 1, false, None);
+        assert_eq!(two(1.41).0, Verdict::Pass);
+        let list = Some("neighbouring pairs do not agree: 1.39, 2.00".to_owned());
+        assert_eq!(two(1.39), (Verdict::Undecided, 2, list));
+    }
+
+    #[test]
+    fn words_of_verdicts() {
+        let words = [Verdict::Pass, Verdict::Undecided, Verdict::Fail].map(Verdict::word);
+        assert_eq!(words, ["pass", "undecided", "fail"]);
+        let words = [Support::Agrees, Support::CannotTell, Support::Contradicts].map(Support::word);
+        assert_eq!(words, ["agrees", "cannot tell", "contradicts"]);
+    }
+
+    #[test]
+    fn pairs_that_fall_away_from_the_claim_fail_it() {
+        // Never near it, and falling from pair to pair: unsettled, not on their way.
+        assert_eq!(order(&[1.7, 1.5, 1.3], 2.0), Verdict::Fail);
+        assert_eq!(order(&[1.7, 1.3], 2.0), Verdict::Undecided);
+        assert_eq!(order(&[1.5, 1.7, 1.3], 2.0), Verdict::Undecided);
+        assert_eq!(order(&[1.7, 1.3, 1.3], 2.0), Verdict::Fail);
+        assert_eq!(order(&[1.9, 1.5, 1.3], 2.0), Verdict::Undecided);
+        // All pairs lie more than one below the claim.
+        assert_eq!(order(&[0.5, 0.9, 0.6], 2.0), Verdict::Fail);
+        assert_eq!(order(&[0.5, 1.1, 0.6], 2.0), Verdict::Undecided);
+        let unsettled = |orders: &[f64]| {
+            let pair = |&order: &f64| Pair {
+                settings: (2.0, 1.0),
+                order,
+                low: order,
+                high: order,
+            };
+            let pairs: Vec<Pair> = orders.iter().map(pair).collect();
+            let sight = Sight::Pairs {
+                agreeing: 1,
+                usable: 4,
+                large: false,
+                pairs,
+            };
+            of_order(&sight, Some(2.0), ORDER_SLACK, Some("too long"))
+                .verdict
+                .unwrap()
+        };
+        assert_eq!(unsettled(&[1.7, 1.5, 1.3]), Verdict::Undecided);
+        assert_eq!(unsettled(&[0.5, 0.9, 0.6]), Verdict::Undecided);
+        assert_eq!(unsettled(&[0.5]), Verdict::Undecided);
+    }
+
+    #[test]
+    fn rungs_that_show_no_order_are_told_in_words() {
+        let few = Sight::TooFew("so few".to_owned());
+        let found = of_order(&few, Some(2.0), ORDER_SLACK, None);
+        assert_eq!(
+            (found.verdict, found.note),
+            (Some(Verdict::Undecided), Some("so few".to_owned()))
+        );
+        assert_eq!(of_order(&few, None, ORDER_SLACK, None).verdict, None);
+        let exact = of_order(&Sight::ExactForThisCase, Some(2.0), ORDER_SLACK, None);
+        assert_eq!((exact.verdict, exact.rungs_used), (Some(Verdict::Pass), 0));
+        // Without a claim what does not agree is still told.
+        let pair = |order: f64| Pair {
+            settings: (2.0, 1.0),
+            order,
+            low: order,
+            high: order,
+        };
+        let sight = |agreeing: usize| Sight::Pairs {
+            pairs: vec![pair(1.0), pair(2.0)],
+            agreeing,
+            usable: 3,
+            large: false,
+        };
+        let found = of_order(&sight(1), None, ORDER_SLACK, None);
+        assert_eq!(
+            found.note.unwrap(),
+            "neighbouring pairs do not agree: 1.00, 2.00"
+        );
+        assert_eq!(of_order(&sight(2), None, ORDER_SLACK, None).note, None);
+    }
+
+    #[test]
+    fn a_channel_without_a_value_in_some_row_fails() {
+        let spot = crate::compare::Spot {
+            at: 0.0,
+            error: 0.0,
+            resolution: 0.0,
+            limit: 1.0,
+        };
+        let deviation = |rows: u64, margin: Margin| Deviation {
+            rows,
+            worst: 0.0,
+            worst_at: 0.0,
+            worst_resolution: 0.0,
+            worst_limit: 1.0,
+            rms: 0.0,
+            end: 0.0,
+            peak: 1.0,
+            steepest: 0.0,
+            resolution: crate::trajectory::Resolution::Full,
+            margin,
+            decisive: spot,
+            doubtful: spot,
+        };
+        let kept = margin(-1.0, -1.0);
+        assert_eq!(of_deviation(&deviation(5, kept), 5), Verdict::Pass);
+        assert_eq!(of_deviation(&deviation(4, kept), 5), Verdict::Fail);
+        assert_eq!(of_deviation(&deviation(0, kept), 0), Verdict::Fail);
+        let open = of_deviation(&deviation(5, margin(1.0, -1.0)), 5);
+        assert_eq!(open, Verdict::Undecided);
     }
 
     #[test]

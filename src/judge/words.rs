@@ -56,3 +56,18 @@ pub(super) fn of_peak(residual: f64) -> String {
         format!("{} of the peak", short(residual))
     }
 }
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    #[test]
+    fn residuals_and_shares_in_words() {
+        assert_eq!(of_peak(0.25), "0.250 of the peak");
+        assert_eq!(of_peak(1.0), "1.00 of the peak");
+        assert_eq!(of_peak(2.5), "2.50 times the peak");
+        assert_eq!(share(0.25), "25 %");
+        assert_eq!(share(0.0051), "1 %");
+        assert_eq!(share(0.0049), "less than 1 %");
+    }
+}

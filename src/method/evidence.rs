@@ -517,3 +517,27 @@ fn alike(a: &[f64], b: &[f64], near: f64) -> bool {
     let same = |x: &f64, y: &f64| (x - y).abs() <= SAME * x.abs().max(y.abs()) + near * largest;
     a.len() == b.len() && a.iter().zip(b).all(|(x, y)| same(x, y))
 }
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    impl Tried {
+        /// A pair with a fit of its own choosing, for tests of what is concluded from it.
+        pub(crate) fn planted(method: &'static Method, steps: u64, fit: Fit, apart: f64) -> Tried {
+            Tried {
+                method,
+                reading: Reading::AtNodes,
+                steps,
+                range: (steps, steps),
+                step: None,
+                fit,
+                apart,
+                at_jumps: Fit { compared: 0, ..fit },
+                free: false,
+                print: vec![method.name.len() as f64, steps as f64],
+                coarse: 0.0,
+            }
+        }
+    }
+}
