@@ -321,13 +321,13 @@ fn usual_digits_are_those_of_all_but_one_row_in_fifty() {
 
 #[test]
 fn columns_at_rest_are_constant() {
-    assert!(column(5, |_| "1.5".to_owned()).is_constant());
-    assert!(!column(5, |k| format!("1.{k}")).is_constant());
+    assert!(column(5, |_| "1.5".to_owned()).constant);
+    assert!(!column(5, |k| format!("1.{k}")).constant);
     let mut joined = column(3, |_| "1.5".to_owned());
     joined.join(&piece(["1.5"; 3]));
-    assert!(joined.is_constant());
+    assert!(joined.constant);
     joined.join(&piece(["2.5"; 3]));
-    assert!(!joined.is_constant());
+    assert!(!joined.constant);
 }
 
 #[test]
@@ -398,7 +398,7 @@ fn parts_joined_conclude_what_the_whole_column_does() {
     let said = |pattern: &Pattern| {
         let concluded = (pattern.conclude(None), pattern.conclude_stamps(None));
         let counts = (pattern.longest(), pattern.usual_digits(), pattern.rows);
-        let known = (pattern.is_constant(), pattern.is_settled(), pattern.even());
+        let known = (pattern.constant, pattern.is_settled(), pattern.even());
         (concluded, counts, known, pattern.largest)
     };
     for (place, print) in columns.iter().enumerate() {
