@@ -12,6 +12,11 @@ use crate::submission::{Role, Submission};
 
 /// Runs of one submission that are looked into.
 const MOST_RUNS: usize = 2;
+/// Text of a case that may be read again to ask which of its parameters is off by a factor:
+/// every case of the library, but not hundreds of parameters of a long file.
+const MOST_PARSED_BYTES: usize = 60_000_000;
+/// How often one parameter is changed: some 70 factors, and some ten ways to make the rows.
+const TIMES_CHANGED: usize = 700;
 
 /// Looks for causes where limits are broken or claims contradicted, and takes a
 /// contradiction back where the claimed method explains all that a fault leaves.
@@ -45,9 +50,12 @@ pub(super) fn look(
         let case = library.load(submission.case.as_deref()?, &replaced).ok()?;
         Some(Linear::new(&case))
     };
+    let name = submission.case.as_deref().unwrap_or_default();
+    let cost = TIMES_CHANGED * library.text_bytes(name).max(1);
     let parameters = Parameters {
         names: given
             .iter()
+            .take(MOST_PARSED_BYTES / cost)
             .map(|parameter| parameter.name.clone())
             .collect(),
         scaled: &scaled,

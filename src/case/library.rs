@@ -210,6 +210,11 @@ impl Library {
         self.entries.keys().map(String::as_str)
     }
 
+    /// How long the text of a case is: that is what it costs to load it.
+    pub fn text_bytes(&self, name: &str) -> usize {
+        self.entries.get(name).map_or(0, |entry| entry.text.len())
+    }
+
     /// Loads a case, with some of its parameters replaced.
     ///
     /// # Errors

@@ -417,3 +417,26 @@ fn a_dense_model_of_64_states_is_audited_to_its_end() {
     let ran = folder.audit(&["run.csv", "--case", "trial/o", "--cases", "cases"]);
     assert_eq!(ran.verdict(), "fail", "{}", ran.seen());
 }
+
+/// Which of the parameters is off by a factor was asked by reading the whole file again for each
+/// of some hundred factors: that took hours.
+#[test]
+fn five_hundred_parameters_are_not_each_asked_for_a_factor() {
+    let folder = Folder::new();
+    let remark = format!("# {}\n", "x".repeat(600));
+    let parameters = (0..500).map(|k| format!("p{k} = {{ value = 1, unit = '' }}\n{remark}"));
+    let more = format!("[parameters]\n{}", parameters.collect::<String>());
+    folder.write("cases/o.toml", case("0", "10", &more));
+    let rows = (0..=50).map(|k| format!("{},{}\n", 0.2 * f64::from(k), f64::from(k % 7)));
+    folder.write("run.csv", format!("t,x\n{}", rows.collect::<String>()));
+    let ran = folder.audit(&[
+        "run.csv",
+        "--case",
+        "trial/o",
+        "--cases",
+        "cases",
+        "--absolute",
+        "1e-3",
+    ]);
+    assert_eq!(ran.verdict(), "fail", "{}", ran.seen());
+}
