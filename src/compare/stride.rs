@@ -192,7 +192,7 @@ mod tests {
     #[test]
     fn six_larger_strides_in_a_row_are_a_phase_unless_they_are_few_and_long() {
         let with_phase = |factor: u32, count: u32, usual: u32| {
-            let before = (0..usual).map(|k| k);
+            let before = 0..usual;
             let phase = (1..=count).map(|k| usual - 1 + factor * k);
             let end = usual - 1 + factor * count;
             let after = (1..50).map(|k| end + k);
