@@ -87,14 +87,9 @@ pub fn order_of_three(
     peak: f64,
 ) -> Option<Pair> {
     let order = |fine: f64, coarse: f64| {
-        let values = [peak, peak + fine, peak + fine + coarse];
-        // Differences far below the peak would drown in it.
-        let shifted = if fine < 1e-6 * peak {
-            [0.0, fine, fine + coarse]
-        } else {
-            values
-        };
-        grid_convergence(steps, shifted).map(|found| found.order)
+        // Only the differences count, which would drown in a peak.
+        let values = [0.0, fine, fine + coarse];
+        grid_convergence(steps, values).map(|found| found.order)
     };
     let [fine, coarse] = differences;
     // Differences that do not shrink with the step show no convergence.
@@ -167,7 +162,7 @@ mod tests {
                 (found.low, (6.8e-3f64 / 1.2e-3).log2()),
                 (found.high, (7.2e-3f64 / 0.8e-3).log2()),
             ] {
-                assert!((found - expected).abs() < 1e-6, "{found} {expected} {peak}");
+                assert!((found - expected).abs() < 1e-11, "{found} {expected}");
             }
         }
         // Differences two and a half times their doubt, below half the peak, that shrink.

@@ -314,4 +314,100 @@ mod tests {
         );
         assert!(matches!(observe(&rungs[..1]), Sight::TooFew(_)));
     }
+
+    #[test]
+    fn what_rounding_may_have_done_grows_with_rows_and_clock() {
+        let rounding = |rows: u64, peak: f64, clock: f64| {
+            let rung = Rung {
+                setting: 0.1,
+                error: 0.0,
+                resolution: 0.0,
+                peak,
+                rows,
+                clock,
+            };
+            rung.rounding() / f64::EPSILON
+        };
+        // Sixteen and four for each row, for a thousand of them at most.
+        assert_eq!(rounding(0, 2.0, 0.0), 32.0);
+        assert_eq!(rounding(10, 2.0, 0.0), 112.0);
+        assert_eq!(rounding(1000, 1.0, 0.0), 4016.0);
+        assert_eq!(rounding(5000, 1.0, 0.0), 4016.0);
+        // The clock four times and a quarter for each row, likewise.
+        let eps = f64::EPSILON;
+        assert_eq!(rounding(8, 0.0, eps), 6.0);
+        assert_eq!(rounding(1000, 0.0, eps), 254.0);
+        assert_eq!(rounding(5000, 0.0, eps), 254.0);
+    }
+
+    #[test]
+    fn pairs_agree_where_they_overlap_or_are_near() {
+        let pair = |order: f64, half: f64| Pair {
+            settings: (2.0, 1.0),
+            order,
+            low: order - half,
+            high: order + half,
+        };
+        assert_eq!(agreeing(&[pair(1.0, 0.0)]), 1);
+        assert_eq!(agreeing(&[pair(1.0, 0.0), pair(1.14, 0.0)]), 2);
+        assert_eq!(agreeing(&[pair(1.0, 0.0), pair(1.16, 0.0)]), 1);
+        assert_eq!(agreeing(&[pair(1.16, 0.0), pair(1.0, 0.0)]), 1);
+        for [coarser, finer] in [[1.0, 2.0], [2.0, 1.0]] {
+            assert_eq!(agreeing(&[pair(coarser, 0.6), pair(finer, 0.6)]), 2);
+            assert_eq!(agreeing(&[pair(coarser, 0.4), pair(finer, 0.4)]), 1);
+            assert_eq!(agreeing(&[pair(coarser, 0.9), pair(finer, 0.2)]), 2);
+        }
+        // From the finest on, up to the first that does not.
+        let orders = [1.0, 1.5, 1.9, 2.0, 2.0].map(|order| pair(order, 0.0));
+        assert_eq!(agreeing(&orders), 3);
+    }
+
+    #[test]
+    fn rungs_count_between_their_doubt_and_half_the_peak() {
+        let few = |errors: &[f64]| match observe(&ladder(errors)) {
+            Sight::TooFew(why) => why,
+            other => panic!("{other:?}"),
+        };
+        assert_eq!(
+            few(&[0.51, 0.1]),
+            "1 of 2 errors above half the peak of the channel"
+        );
+        assert_eq!(
+            few(&[0.5, 0.1]),
+            "1 of 2 errors above half the peak of the channel"
+        );
+        assert_eq!(finest(observe(&ladder(&[0.49, 0.1]))).1, 1);
+        assert_eq!(
+            few(&[f64::INFINITY, 0.1]),
+            "1 of 2 errors above half the peak of the channel"
+        );
+        // Larger than a tenth of the peak the finest error is not yet that of a small step.
+        let large = |fine: f64| match observe(&ladder(&[0.4, fine])) {
+            Sight::Pairs { large, .. } => large,
+            other => panic!("{other:?}"),
+        };
+        assert!(large(0.11) && !large(0.09) && !large(0.1));
+        // Ten times their doubt, or two and a half where that leaves fewer than two.
+        let rungs = |doubt: f64| {
+            let mut rungs = ladder(&[4e-2, 2e-2, 1e-2]);
+            rungs.iter_mut().for_each(|rung| rung.resolution = doubt);
+            match observe(&rungs) {
+                Sight::Pairs { usable, .. } => usable,
+                _ => 0,
+            }
+        };
+        assert_eq!(
+            [0.9e-3, 1.1e-3, 2.1e-3, 7.9e-3, 8.1e-3].map(rungs),
+            [3, 2, 3, 2, 0]
+        );
+        // Steps nine in a hundred apart.
+        let close = |ratio: f64| {
+            let mut rungs = ladder(&[2e-2, 1e-2]);
+            rungs[0].setting = ratio * rungs[1].setting;
+            observe(&rungs)
+        };
+        assert!(matches!(close(1.095), Sight::Pairs { .. }));
+        let text = "the steps 0.05425 and 0.05 are too close to each other".to_owned();
+        assert_eq!(close(1.085), Sight::TooFew(text));
+    }
 }

@@ -188,4 +188,48 @@ mod tests {
             ]
         );
     }
+
+    #[test]
+    fn six_larger_strides_in_a_row_are_a_phase_unless_they_are_few_and_long() {
+        let with_phase = |factor: u32, count: u32, usual: u32| {
+            let before = 0..usual;
+            let phase = (1..=count).map(|k| usual - 1 + factor * k);
+            let end = usual - 1 + factor * count;
+            let after = (1..50).map(|k| end + k);
+            let all = before.chain(phase).chain(after);
+            lines(all.map(|k| 3.0 + 0.1 * f64::from(k)), 0.1)
+        };
+        assert_eq!(with_phase(3, 6, 100), []);
+        assert_eq!(with_phase(3, 5, 100), [Some(100)]);
+        assert_eq!(with_phase(20, 6, 500), []);
+        // Longer than twenty usual ones they have to be one in fifty.
+        assert_eq!(with_phase(21, 6, 300), [Some(300)]);
+        assert_eq!(with_phase(21, 6, 200), []);
+        // Of strides that are no multiple of the usual one nothing is missing.
+        let odd = (0..100).map(|k| 2 * k).chain((0..50).map(|k| 201 + 2 * k));
+        assert_eq!(lines(odd.map(|k| 3.0 + 0.1 * f64::from(k)), 0.1), []);
+    }
+
+    #[test]
+    fn strides_that_follow_no_rule_are_not_suspected() {
+        // More than half of the strides have to be equal, nine in ten rows on multiples.
+        let share = |wide: usize| {
+            let strides = (0..100).map(|k| if k % 20 < wide { 2 } else { 1 });
+            let mut at = 0;
+            let stamps = strides.map(move |stride| {
+                at += stride;
+                3.0 + 0.1 * f64::from(at)
+            });
+            !lines(stamps, 0.1).is_empty()
+        };
+        assert!(share(5));
+        let off = |beside: u32| {
+            let stamps = (0..200).filter(|k| *k != 100).map(|k| {
+                let off = if k % 20 < beside { 0.02 } else { 0.0 };
+                3.0 + 0.1 * f64::from(k) + off
+            });
+            !lines(stamps, 0.1).is_empty()
+        };
+        assert!(off(1) && !off(3));
+    }
 }

@@ -160,4 +160,43 @@ mod tests {
         assert_eq!(points[0].time, 0.0);
         assert_eq!(points[points.len() - 1].time, 0.99999);
     }
+
+    fn row(time: f64, written: f64, error: f64) -> Traced {
+        Traced {
+            time,
+            written,
+            error,
+            doubts: [0.0; 2],
+        }
+    }
+
+    #[test]
+    fn rows_of_one_stretch_are_its_first_last_and_extremes() {
+        // The window from 2 to 14 has stretches of a tenth; each score has its own row.
+        let rows = [
+            (row(2.01, 5.0, 0.1), 1.0),
+            (row(2.02, 9.0, 0.1), 1.0),
+            (row(2.03, 5.0, 0.1), 1.0),
+            (row(2.04, 1.0, 0.1), 1.0),
+            (row(2.05, 5.0, -3.0), 1.0),
+            (row(2.06, 5.0, 0.1), 4.0),
+            (row(2.07, 5.0, 0.1), 1.0),
+            (row(2.08, 5.0, 0.1), 1.0),
+            (row(2.11, 5.0, 0.1), 1.0),
+            (row(14.0, 5.0, 0.1), 1.0),
+            (row(14.5, 5.0, 0.1), 1.0),
+        ];
+        let expected = [2.01, 2.02, 2.04, 2.05, 2.06, 2.08, 2.11, 14.0, 14.5];
+        let times =
+            |trace: Trace| -> Vec<f64> { trace.conclude().iter().map(|p| p.time).collect() };
+        for cut in 0..rows.len() {
+            let mut parts = [(); 2].map(|()| Trace::new(Double::from(2.0), Double::from(14.0)));
+            for (place, (row, used)) in rows.iter().enumerate() {
+                parts[usize::from(place >= cut)].add(*row, *used);
+            }
+            let [mut whole, next] = parts;
+            whole.join(&next);
+            assert_eq!(times(whole), expected, "{cut}");
+        }
+    }
 }

@@ -154,6 +154,8 @@ mod tests {
             // The nearest number is half a unit away at some time.
             assert!((0.4..0.51).contains(&gap.units), "{name}: {gap:?}");
             assert_eq!(gap.closed_form.is_some(), has_closed_form, "{name}");
+            // The bound is mostly the rounding to the nearest number, and no looser than twice it.
+            assert!((0.5..=1.0).contains(&gap.of_bound), "{name}: {gap:?}");
         }
     }
 
@@ -178,5 +180,37 @@ mod tests {
         }
         route.channels[0].units = f64::NAN;
         assert!(!route.agrees());
+    }
+
+    #[test]
+    fn both_sides_of_jumps_are_looked_at() {
+        let case = Library::new().load("thermal/cold-room-defrost", &Replacements::new());
+        let exact = case.unwrap().exact().unwrap();
+        let times: Vec<f64> = exact
+            .times_to_check()
+            .iter()
+            .map(|time| time.to_f64())
+            .collect();
+        assert!(times.windows(2).all(|two| two[0] < two[1]));
+        let (from, to) = (exact.from().to_f64(), exact.to().to_f64());
+        assert_eq!((times[0], times[times.len() - 1]), (from, to));
+        let close = 1e-9 * (to - from);
+        let is_there = |wanted: f64| {
+            times
+                .iter()
+                .any(|time| (time - wanted).abs() < 0.01 * close)
+        };
+        let jump = exact
+            .jumps()
+            .find(|&jump| jump > from && jump < to)
+            .unwrap();
+        assert!(
+            is_there(jump - close) && is_there(jump) && is_there(jump + close),
+            "{jump}"
+        );
+        assert!(exact.jumps_near(Double::from(jump - 0.9 * close), close));
+        assert!(exact.jumps_near(Double::from(jump + 0.9 * close), close));
+        assert!(!exact.jumps_near(Double::from(jump - 1.1 * close), close));
+        assert!(!exact.jumps_near(Double::from(jump + 1.1 * close), close));
     }
 }

@@ -62,3 +62,40 @@ pub(super) fn by_state(matrix: &DMatrix<f64>, step: f64) -> Option<Recurrence> {
         ROUNDINGS,
     ))
 }
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    // [hochbruck-ostermann-2010] 2.1: x1 = exp(h a) x0 + (exp(h a) - 1)/a g, a the own rate of
+    // the state, g what the other states and the inputs add to its rate of change.
+    #[test]
+    fn each_state_decays_by_itself_under_what_the_others_add() {
+        let matrix =
+            DMatrix::from_row_slice(3, 3, &[-2.0, 0.5, 0.0, 3.0, -8.0, -0.25, 1.5, 0.0, 0.0]);
+        let step = 0.3;
+        let found = by_state(&matrix, step).unwrap();
+        let [stay] = &found.past[..] else { panic!() };
+        let [node] = &found.nodes[..] else { panic!() };
+        for i in 0..3 {
+            let own: f64 = matrix[(i, i)];
+            let held = match own {
+                0.0 => step,
+                own => ((own * step).exp() - 1.0) / own,
+            };
+            for j in 0..3 {
+                let expected = match i == j {
+                    true => [(own * step).exp(), held],
+                    false => [held * matrix[(i, j)], 0.0],
+                };
+                for (found, expected) in [stay[(i, j)], node.weight[(i, j)]].iter().zip(expected) {
+                    assert!(
+                        (found - expected).abs() < 1e-15,
+                        "{i} {j}: {found} {expected}"
+                    );
+                }
+            }
+        }
+        assert_eq!((node.at, node.slope), (0.0, false));
+    }
+}

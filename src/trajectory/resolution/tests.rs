@@ -216,6 +216,7 @@ fn neighbours_resolve_what_each_value_resolves_by_itself() {
         1e-310,
         1e300,
         -1.0,
+        2f64.next_down(),
         16_777_216.0,
         16_777_215.0,
     ];
@@ -411,4 +412,56 @@ fn parts_joined_conclude_what_the_whole_column_does() {
             assert_eq!(said(&joined), said(&whole), "{place} {cut}");
         }
     }
+}
+
+#[test]
+fn stamps_in_units_of_five_or_more_were_chosen() {
+    let stamps = |column: &[&str]| gather(column.iter().copied()).conclude_stamps(None);
+    let full = stamps(&["0.00", "0.05", "0.10", "0.25", "0.30"]);
+    assert_eq!(full, Resolution::Full);
+    let rounded = stamps(&["0.00", "0.05", "0.11", "0.25", "0.30"]);
+    assert_eq!(rounded, Resolution::Decimals(2));
+    let by_four = stamps(&["0.00", "0.04", "0.08", "0.24", "0.32"]);
+    assert_eq!(by_four, Resolution::Decimals(2));
+    // Four stamps that tell, the first of them nought.
+    let few = stamps(&["0.00", "0.05", "0.10", "0.25"]);
+    assert_eq!(few, Resolution::Decimals(2));
+}
+
+#[test]
+fn zeros_between_values_do_not_hide_their_pattern() {
+    let values = ["1.23457", "1.34567", "1.45678", "1.5", "1.67891"];
+    let with_zeros: Vec<&str> = values.iter().flat_map(|value| ["0", value]).collect();
+    let whole = gather(with_zeros.iter().copied());
+    assert_eq!(whole.conclude(None), Resolution::Significant(6));
+    // Nor where a piece begins with one.
+    let mut joined = Pattern::new();
+    for two in with_zeros.chunks(2) {
+        joined.join(&piece(two.iter().copied()));
+    }
+    assert_eq!(joined.conclude(None), Resolution::Significant(6));
+}
+
+#[test]
+fn pieces_of_other_decimals_are_not_even() {
+    let joined = |next: [&'static str; 3]| {
+        let mut joined = gather(["1.5", "1.6", "1.7"]);
+        joined.join(&piece(next));
+        joined.even()
+    };
+    assert_eq!(joined(["1.8", "1.9", "2.0"]), Some((1, false)));
+    assert_eq!(joined(["1.85", "1.95", "2.05"]), None);
+    assert_eq!(joined(["1.8e0", "1.9e0", "2.0e0"]), None);
+    assert_eq!(joined(["1.8", "1.95", "2.0"]), None);
+}
+
+#[test]
+fn digits_of_one_number_over_two_decades_are_significant() {
+    let nine = |k: u32| match k {
+        0 => "12.3457".to_owned(),
+        k => format!("1.{:05}", 12_341 + 7 * k),
+    };
+    assert_eq!(column(12, nine).conclude(None), Resolution::Significant(6));
+    assert!(column(12, nine).is_clear());
+    assert!(!column(12, |k| format!("{}", 100.0 / (3.1 + f64::from(k)))).is_clear());
 }
