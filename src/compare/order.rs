@@ -209,6 +209,18 @@ fn between(coarse: &Rung, fine: &Rung) -> Pair {
 mod tests {
     use super::*;
 
+    impl Pair {
+        /// Of a halved setting, with so much doubt to either side.
+        pub(crate) fn around(order: f64, half: f64) -> Pair {
+            Pair {
+                settings: (2.0, 1.0),
+                order,
+                low: order - half,
+                high: order + half,
+            }
+        }
+    }
+
     fn ladder(errors: &[f64]) -> Vec<Rung> {
         let rung = |(k, &error): (usize, &f64)| Rung {
             setting: 0.1 / 2f64.powi(k as i32),
@@ -342,12 +354,7 @@ mod tests {
 
     #[test]
     fn pairs_agree_where_they_overlap_or_are_near() {
-        let pair = |order: f64, half: f64| Pair {
-            settings: (2.0, 1.0),
-            order,
-            low: order - half,
-            high: order + half,
-        };
+        let pair = Pair::around;
         assert_eq!(agreeing(&[pair(1.0, 0.0)]), 1);
         assert_eq!(agreeing(&[pair(1.0, 0.0), pair(1.14, 0.0)]), 2);
         assert_eq!(agreeing(&[pair(1.0, 0.0), pair(1.16, 0.0)]), 1);

@@ -1,9 +1,7 @@
 //! The fastest things that a simulator of a case has to follow.
 
-use nalgebra::DMatrix;
-
 use crate::case::{Case, Shape};
-use crate::number::approx_eigenvalues;
+use crate::number::{Matrix, approx_eigenvalues};
 
 /// Shortest time constant and shortest period of a case.
 #[derive(Clone, Copy, Debug, PartialEq)]
@@ -28,13 +26,12 @@ const PART_OF_AN_EIGENVALUE: f64 = 1e-3;
 /// None: eigenvalues of nearly defective matrices keep few digits.
 pub fn approx_time_scales(case: &Case) -> TimeScales {
     let size = case.states.len();
-    let matrix = DMatrix::from_fn(size, size, |i, j| {
-        case.states[i]
-            .rate
-            .coefficients
-            .get(j)
-            .map_or(0.0, |c| c.to_f64())
-    });
+    let mut matrix = Matrix::zero(size);
+    for (i, state) in case.states.iter().enumerate() {
+        for (j, coefficient) in state.rate.coefficients.iter().take(size).enumerate() {
+            matrix[(i, j)] = coefficient.to_f64();
+        }
+    }
     let eigenvalues = approx_eigenvalues(&matrix).unwrap_or_default();
     let counts = |part: f64, size: f64| part.abs() > PART_OF_AN_EIGENVALUE * size;
     let mut fastest_rate = 0.0f64;

@@ -282,12 +282,7 @@ mod tests {
 
     #[test]
     fn orders_that_nothing_decides_say_why() {
-        let pair = |order: f64, half: f64| Pair {
-            settings: (2.0, 1.0),
-            order,
-            low: order - half,
-            high: order + half,
-        };
+        let pair = Pair::around;
         let judge = |pairs: Vec<Pair>, agreeing: usize, large: bool, why: Option<&str>| {
             let usable = pairs.len() + 1;
             let sight = Sight::Pairs {
@@ -387,12 +382,7 @@ mod tests {
         let exact = of_order(&Sight::ExactForThisCase, Some(2.0), ORDER_SLACK, None);
         assert_eq!((exact.verdict, exact.rungs_used), (Some(Verdict::Pass), 0));
         // Without a claim what does not agree is still told.
-        let pair = |order: f64| Pair {
-            settings: (2.0, 1.0),
-            order,
-            low: order,
-            high: order,
-        };
+        let pair = |order: f64| Pair::around(order, 0.0);
         let sight = |agreeing: usize| Sight::Pairs {
             pairs: vec![pair(1.0), pair(2.0)],
             agreeing,

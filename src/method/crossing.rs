@@ -8,7 +8,6 @@ use super::exponential::exponential;
 use super::linear::{Linear, Side};
 use super::march::{NEAR, Sides};
 use super::record::{Piece, Record, Window};
-use super::recurrence::dense;
 use super::scale::Rows;
 use super::sheet::Sheet;
 use super::trial::{Fit, Room, Trial};
@@ -22,7 +21,7 @@ const MOST_STEPS: u64 = 2000;
 pub(super) fn kicked(linear: &Linear, record: &Record) -> f64 {
     let onward = record.spacing.zip(record.states(linear.size()));
     let onward = onward.and_then(|((spacing, _), places)| {
-        let onward = exponential(&dense(&linear.matrix), spacing)?;
+        let onward = exponential(&linear.matrix.dense(), spacing)?;
         Some((onward.past.into_iter().next()?, places))
     });
     let Some((onward, places)) = onward else {

@@ -7,7 +7,6 @@ use super::linear::{Linear, Side};
 use super::march::{March, Sides};
 use super::powers::identity;
 use super::record::{Piece, Record};
-use super::recurrence::dense;
 use super::search::Search;
 use super::trial::{GLANCE, Room, Trial};
 use super::variant::Variant;
@@ -56,7 +55,7 @@ impl Targets {
         let size = linear.size();
         let onward = record
             .states(size)
-            .zip(exponential(&dense(&linear.matrix), spacing));
+            .zip(exponential(&linear.matrix.dense(), spacing));
         let Some((places, onward)) = onward else {
             let start = Targets {
                 start: linear.start.clone(),

@@ -5,6 +5,8 @@
 //! how many internal steps lie between two rows, if that method wrote them. What is left is
 //! the set of consistent pairs, methods that these rows cannot tell apart under one name.
 
+mod families;
+
 use rayon::prelude::*;
 
 use super::catalogue::{METHODS, Method};
@@ -19,6 +21,7 @@ use super::recurrence::Reading;
 use super::search::{Found, Search};
 use super::sheet::Sheet;
 use super::trial::Fit;
+use families::{alike, families};
 
 /// One method at one step, compared with the rows.
 #[derive(Clone, Debug)]
@@ -112,10 +115,8 @@ const SHARP: f64 = 1e6;
 const LEAST_RATIO: f64 = 1e-3;
 /// Pieces that are compared at most, the first one among them.
 const MOST_PIECES: usize = 16;
-/// Entries of the matrices of two methods that differ by less than this part of them are
-/// the same: they are computed along different ways.
-const SAME: f64 = 1e-11;
-/// The same in terms of the largest entry, where a stiff step cancels.
+/// Entries of the matrices of two methods that differ by less than this part of the largest one are
+/// the same: a stiff step cancels.
 const SAME_COMPUTED: f64 = 1e-12;
 
 /// Residuals so many times those of another pair are no roundings of the pair's own: the
@@ -446,241 +447,5 @@ fn thin(pieces: &mut Vec<Piece>) {
     *pieces = kept;
 }
 
-/// Consistent pairs, those of one effect together. `kicked` is how far the file leaves the
-/// exact solution at jumps.
-fn families(tried: &[Tried], unit: f64, kicked: f64) -> Vec<Family> {
-    let mut families: Vec<(Family, &Vec<f64>)> = Vec::new();
-    let holding = || tried.iter().filter(|tried| tried.fit.holds());
-    // Jumps tell as soon as anything explains them, and alone where the exact solution does
-    // not.
-    let met = holding().any(|other| other.at_jumps.holds());
-    let met_only = met && kicked > OUTDONE;
-    // Nor does a start that is free to choose, and would make the exact solution fit as well,
-    // explain what something without such freedom does.
-    let beside_jumps =
-        |one: &Tried| (met && one.at_jumps.ratio > 1.0) || (met_only && one.at_jumps.compared == 0);
-    let outdone = |one: &Tried| {
-        let by = |other: &Tried| {
-            other.outdoes(one, unit) > OUTDONE
-                || (one.free
-                    && !other.free
-                    && other.apart > if one.apart > 1.0 { OUTDONE } else { TOLD })
-        };
-        let mut others = holding().filter(|other| !beside_jumps(other));
-        beside_jumps(one) || others.any(by)
-    };
-    for one in holding().filter(|one| !outdone(one)) {
-        let same = |(family, print): &&mut (Family, &Vec<f64>)| {
-            family.steps == one.steps && alike(print, &one.print, f64::EPSILON)
-        };
-        match families.iter_mut().find(same) {
-            Some((family, _)) => {
-                if family.methods.iter().all(|m| m.name != one.method.name) {
-                    family.methods.push(one.method);
-                }
-                if one.fit.ratio < family.fit.ratio {
-                    family.fit = one.fit;
-                }
-            }
-            None => {
-                let family = Family {
-                    methods: vec![one.method],
-                    reading: one.reading,
-                    steps: one.steps,
-                    range: one.range,
-                    step: one.step,
-                    fit: one.fit,
-                    apart: if one.at_jumps.holds() {
-                        one.apart.max(kicked)
-                    } else {
-                        one.apart
-                    },
-                    at_jumps: one.at_jumps,
-                    free: one.free,
-                };
-                families.push((family, &one.print));
-            }
-        }
-    }
-    let mut families: Vec<Family> = families.into_iter().map(|(family, _)| family).collect();
-    // The plainest explanation first; the order of the catalogue stays among equals.
-    families.sort_by_key(|family| family.steps);
-    families
-}
-
-/// `near` is what entries may differ by in terms of the largest.
-fn alike(a: &[f64], b: &[f64], near: f64) -> bool {
-    let largest = a
-        .iter()
-        .chain(b)
-        .fold(0.0f64, |largest, x| largest.max(x.abs()));
-    let same = |x: &f64, y: &f64| (x - y).abs() <= SAME * x.abs().max(y.abs()) + near * largest;
-    a.len() == b.len() && a.iter().zip(b).all(|(x, y)| same(x, y))
-}
-
 #[cfg(test)]
-mod tests {
-    use super::*;
-
-    impl Tried {
-        /// A pair with a fit of its own choosing, for tests of what is concluded from it.
-        pub(crate) fn planted(method: &'static Method, steps: u64, fit: Fit, apart: f64) -> Tried {
-            Tried {
-                method,
-                reading: Reading::AtNodes,
-                steps,
-                range: (steps, steps),
-                step: None,
-                fit,
-                apart,
-                at_jumps: Fit { compared: 0, ..fit },
-                free: false,
-                print: vec![method.name.len() as f64, steps as f64],
-                coarse: 0.0,
-            }
-        }
-    }
-
-    fn one(name: &str, steps: u64, ratio: f64, residual: f64) -> Tried {
-        let method = METHODS.iter().find(|method| method.name == name).unwrap();
-        let fit = Fit {
-            ratio,
-            residual,
-            astray: 10.0 * residual,
-            blur: 0.0,
-            compared: 40,
-        };
-        Tried::planted(method, steps, fit, 1e9)
-    }
-
-    #[test]
-    fn a_pair_outdoes_another_one_by_its_residual_or_by_what_steps_round() {
-        const UNIT: f64 = f64::EPSILON / 2.0;
-        let near = |found: f64, expected: f64| (found / expected - 1.0).abs() < 1e-12;
-        let other = one("Heun", 4, 0.5, 1e-6);
-        let best = one("forward Euler", 1, 0.5, 1e-9);
-        assert!(near(best.outdoes(&other, UNIT), 1e3));
-        // Roundings of the larger number of steps: four each, scattered or one after the other.
-        let exact = one("forward Euler", 1, 0.5, 0.0);
-        assert!(near(exact.outdoes(&other, UNIT), 1e-6 / (8.0 * UNIT)));
-        let free = Tried {
-            free: true,
-            ..exact.clone()
-        };
-        assert!(near(free.outdoes(&other, UNIT), 1e-5 / (16.0 * UNIT)));
-        // What has gone astray counts where either one runs on from its start.
-        let fallen = Tried {
-            free: true,
-            ..other.clone()
-        };
-        assert!(near(best.outdoes(&fallen, UNIT), 1e3));
-        assert!(near(exact.outdoes(&fallen, UNIT), 1e-5 / (8.0 * UNIT)));
-        // What the comparison itself may have made is no merit.
-        let mut blurred = other.clone();
-        blurred.fit.blur = 0.4e-6;
-        assert!(near(best.outdoes(&blurred, UNIT), 600.0));
-        // It has to be told from the exact solution, or to come a hundred times closer.
-        let apart = |apart: f64, ratio: f64, free: bool| {
-            let mut best = Tried {
-                apart,
-                free,
-                ..best.clone()
-            };
-            best.fit.ratio = ratio;
-            best.outdoes(&other, UNIT) > 0.0
-        };
-        assert!(apart(1.01, 0.5, false) && !apart(1.0, 0.5, false));
-        assert!(apart(0.9, 0.0089, false) && !apart(0.9, 0.0091, false));
-        assert!(!apart(0.9, 0.0089, true) && apart(1.01, 0.5, true));
-        // Methods of one effect at one step differ by how they are computed here.
-        let mut same = one("Heun", 1, 0.5, 1e-6);
-        same.print = best.print.clone();
-        assert_eq!(best.outdoes(&same, UNIT), 0.0);
-        same.steps = 2;
-        assert!(best.outdoes(&same, UNIT) > 0.0);
-    }
-
-    #[test]
-    fn told_and_beyond_chance() {
-        let told = |apart: f64, free: bool| {
-            let tried = Tried {
-                apart,
-                free,
-                ..one("Heun", 1, 0.5, 1e-9)
-            };
-            tried.is_told()
-        };
-        assert!(told(3.01, false) && !told(3.0, false));
-        assert!(told(12.01, true) && !told(12.0, true));
-        let family = |change: &dyn Fn(&mut Tried)| {
-            let mut tried = one("Heun", 1, 0.5, 1e-9);
-            change(&mut tried);
-            Family {
-                methods: vec![tried.method],
-                reading: tried.reading,
-                steps: tried.steps,
-                range: tried.range,
-                step: tried.step,
-                fit: tried.fit,
-                apart: tried.apart,
-                at_jumps: tried.at_jumps,
-                free: tried.free,
-            }
-        };
-        let beyond = |change: &dyn Fn(&mut Tried)| family(change).is_beyond_chance();
-        assert!(beyond(&|_| ()));
-        assert!(beyond(&|t| t.apart = 0.51e6) && !beyond(&|t| t.apart = 0.49e6));
-        // A ratio below a thousandth says no more than one at it.
-        let small = |apart: f64| beyond(&|t| (t.fit.ratio, t.apart) = (1e-9, apart));
-        assert!(small(1.01e3) && !small(0.99e3));
-        assert!(!beyond(&|t| t.reading = Reading::Held));
-        assert!(beyond(&|t| t.steps = 64) && !beyond(&|t| t.steps = 65));
-        assert!(beyond(&|t| t.fit.compared = 16) && !beyond(&|t| t.fit.compared = 15));
-        assert!(family(&|t| t.apart = 3.1).is_told() && !family(&|t| t.apart = 2.9).is_told());
-    }
-
-    #[test]
-    fn the_best_fit_meets_the_jumps_as_well() {
-        let evidence = |tried: Vec<Tried>| Evidence {
-            tried,
-            consistent: Vec::new(),
-            exact: Fit::NOTHING,
-            exact_between_jumps: false,
-            jumps: true,
-            skipped: Vec::new(),
-        };
-        let heun = one("Heun", 1, 0.5, 1e-9).method;
-        let mut misses = one("Heun", 1, 0.2, 1e-9);
-        misses.at_jumps.ratio = 1.1;
-        let mut meets = one("Heun", 1, 0.9, 1e-9);
-        (meets.at_jumps.ratio, meets.at_jumps.compared) = (1.0, 3);
-        let off = one("Heun", 1, 1.1, 1e-9);
-        let found = evidence(vec![off.clone(), misses.clone(), meets.clone()]);
-        assert_eq!(found.best(&[heun], Some(1)).unwrap().fit.ratio, 0.9);
-        assert_eq!(found.best_of("Heun").unwrap().fit.ratio, 0.2);
-        assert!(found.best(&[heun], Some(2)).is_none());
-        assert!(found.any_at_jumps(&misses, &[heun]));
-        assert!(!evidence(vec![misses.clone()]).any_at_jumps(&misses, &[heun]));
-        let elsewhere = Tried {
-            steps: 2,
-            ..meets.clone()
-        };
-        assert!(!evidence(vec![elsewhere]).any_at_jumps(&misses, &[heun]));
-        // Other numbers of steps that agree stand for it, where it holds.
-        let ranged = |ratio: f64| {
-            let wide = Tried {
-                range: (2, 5),
-                ..one("Heun", 3, ratio, 1e-9)
-            };
-            evidence(vec![wide])
-        };
-        assert!(ranged(0.5).best(&[heun], Some(5)).is_some());
-        assert!(ranged(0.5).best(&[heun], Some(6)).is_none());
-        assert!(ranged(1.5).best(&[heun], Some(5)).is_none());
-        let mut none = off;
-        none.fit.compared = 0;
-        let none = evidence(vec![none]);
-        assert!(none.best(&[heun], Some(1)).is_none() && !none.is_any());
-        assert!(found.is_any());
-    }
-}
+mod tests;

@@ -11,6 +11,7 @@ use nalgebra::{Complex, DMatrix, Schur};
 
 use super::linear::{Linear, Side};
 use super::record::{Piece, Record};
+use crate::number::schur_turns;
 
 /// The factor of one mode from row to row.
 #[derive(Clone, Copy, Debug, PartialEq)]
@@ -187,7 +188,7 @@ fn modes(linear: &Linear, scales: &[f64]) -> Option<Modes> {
     if !norm.is_finite() {
         return None;
     }
-    let (turn, upper) = Schur::try_new(matrix, f64::EPSILON, 30 * n.max(4))?.unpack();
+    let (turn, upper) = Schur::try_new(matrix, f64::EPSILON, schur_turns(n))?.unpack();
     let value = |k: usize| upper[(k, k)];
     let mut nearest = vec![f64::INFINITY; n];
     for (i, nearest) in nearest.iter_mut().enumerate() {

@@ -74,7 +74,7 @@ impl Recurrence {
         step: f64,
         ranks: &Ranks,
     ) -> Option<Recurrence> {
-        let matrix = dense(&linear.matrix);
+        let matrix = linear.matrix.dense();
         match coefficients {
             Coefficients::Stages(stages) if stages.is_lower_triangular() => {
                 one_by_one(stages, &matrix, step)
@@ -183,10 +183,6 @@ impl Recurrence {
             && finite(&self.spread)
             && self.nodes.iter().all(|node| finite(&node.weight))
     }
-}
-
-pub(super) fn dense(matrix: &Matrix<f64>) -> DMatrix<f64> {
-    DMatrix::from_fn(matrix.size(), matrix.size(), |i, j| matrix[(i, j)])
 }
 
 pub(super) fn sparse(matrix: &DMatrix<f64>) -> Matrix<f64> {

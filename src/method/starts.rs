@@ -184,7 +184,7 @@ impl System {
         // How the unknown states act on the stack.
         let unit = |i: usize, u: usize| if i == u + offset { 1.0 } else { 0.0 };
         let mut effect = DMatrix::from_fn(stacked, unknowns, unit);
-        let across = to_dense(trial.across());
+        let across = trial.across().dense();
         let mut allowance = Allowance::new(trial, either);
         let mut step = memory;
         let mut room = Room::default();
@@ -205,7 +205,7 @@ impl System {
                 effect = if count == trial.leg.steps {
                     &across * &effect
                 } else {
-                    to_dense(&corner(&trial.leg.over(count), stacked)) * &effect
+                    corner(&trial.leg.over(count), stacked).dense() * &effect
                 };
                 step = wanted;
             }
@@ -368,10 +368,6 @@ fn reach(known: &[Vec<f64>], linear: &Linear, step: f64) -> Vec<f64> {
         }
     }
     reach
-}
-
-fn to_dense(matrix: &Matrix<f64>) -> DMatrix<f64> {
-    DMatrix::from_fn(matrix.size(), matrix.size(), |i, j| matrix[(i, j)])
 }
 
 /// Roundings from the start up to a row.

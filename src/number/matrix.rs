@@ -2,6 +2,8 @@
 
 use std::ops::{Add, Index, IndexMut, Mul};
 
+use nalgebra::DMatrix;
+
 /// A square matrix.
 #[derive(Clone, Debug, PartialEq)]
 pub struct Matrix<T> {
@@ -133,6 +135,11 @@ impl<T: super::Real> PartialZero for T {
 }
 
 impl Matrix<f64> {
+    /// The same for linear algebra.
+    pub fn dense(&self) -> DMatrix<f64> {
+        DMatrix::from_row_slice(self.size, self.size, &self.entries)
+    }
+
     /// Largest row sum of magnitudes: the norm that belongs to the largest entry of
     /// a vector.
     pub fn row_sum_norm(&self) -> f64 {

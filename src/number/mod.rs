@@ -26,6 +26,7 @@ pub use double::Double;
 pub use expm::{Expansion, Flow, Nearby, Propagator, Step};
 pub use matrix::{Matrix, dot};
 pub use modes::approx_eigenvalues;
+pub(crate) use modes::schur_turns;
 pub use quad::Quad;
 pub use real::Real;
 pub use short::{beside, counted, measured, plain, short};

@@ -105,13 +105,11 @@ impl Source {
         }
     }
 
-    /// How many bytes there are, as far as that can be known without reading them.
+    /// How many bytes there are: of a file, when it was opened.
     pub fn size(&self) -> u64 {
-        match &self.origin {
-            Origin::Memory(bytes, _) => bytes.len() as u64,
-            Origin::File(path) | Origin::Packed(path, _) | Origin::Table(path, _) => {
-                std::fs::metadata(path).map_or(0, |data| data.len())
-            }
+        match (&self.origin, &self.state) {
+            (Origin::Memory(bytes, _), _) => bytes.len() as u64,
+            (_, state) => state.as_ref().map_or(0, |state| state.bytes),
         }
     }
 

@@ -448,8 +448,8 @@ fn common_divisor(a: u64, b: u64) -> u64 {
 /// True for a number in single precision, in its shortest text or printed to so many digits.
 pub(super) fn is_single(value: f64, digits: u8) -> bool {
     let apart = (value - f64::from(value as f32)).abs();
-    let unit = power_of_ten(decade(value) + 1 - i32::from(digits));
-    apart <= 0.501 * unit && digits >= 9 || apart == 0.0 || is_shortest_single(value, digits)
+    let unit = || power_of_ten(decade(value) + 1 - i32::from(digits));
+    apart == 0.0 || digits >= 9 && apart <= 0.501 * unit() || is_shortest_single(value, digits)
 }
 
 /// True for the shortest text of a number in single precision.

@@ -71,12 +71,6 @@ struct Pending {
     lone: bool,
 }
 
-/// Steps between rows of a uniform grid, with what seems to be missing.
-struct Hole {
-    text: String,
-    lone: bool,
-}
-
 /// A step of so many others that is no whole number of them is a hole where it stands alone: the
 /// last step of a code may be longer than the others, but not by more than one of them.
 const LONE: f64 = 2.1;
@@ -279,16 +273,7 @@ impl<'a> Order<'a> {
                     findings.note(Kind::RepeatedStamp, line, text);
                 }
             } else {
-                let hole = survey.hole(from, time, before, resolution);
-                // A phase of coarser output ends with a shorter step where it has to.
-                let ends = step < before && survey.is_phase(before, resolution);
-                let hole = hole.filter(|_| !ends);
-                self.pending = hole.map(|Hole { text, lone }| Pending {
-                    kind: Kind::MissingRows,
-                    line,
-                    text,
-                    lone,
-                });
+                self.pending = survey.hole(line, (from, time), before, resolution);
             }
         }
         self.latest = self.latest.max(time);
@@ -334,7 +319,13 @@ impl Survey {
     }
 
     /// What is missing between two stamps of a uniform grid, after a step of size `before`.
-    fn hole(&self, from: f64, to: f64, before: f64, resolution: f64) -> Option<Hole> {
+    fn hole(
+        &self,
+        line: u64,
+        (from, to): (f64, f64),
+        before: f64,
+        resolution: f64,
+    ) -> Option<Pending> {
         let Grid::Uniform { spacing, .. } = self.grid else {
             return None;
         };
@@ -349,9 +340,13 @@ impl Survey {
         let whole = off_grid <= slack * (missing + 2.0) + 1e-6 * step;
         let lone = step > LONE * spacing && self.is_own(before);
         let rows = if missing == 1.0 { "row is" } else { "rows are" };
-        let in_phase = self.is_phase(step, resolution);
+        // A phase of coarser output ends with a shorter step where it has to.
+        let ends = step < before && self.is_phase(before, resolution);
+        let in_phase = ends || self.is_phase(step, resolution);
         let is_hole = missing >= 1.0 && step - spacing > slack && (whole || lone) && !in_phase;
-        is_hole.then(|| Hole {
+        is_hole.then(|| Pending {
+            kind: Kind::MissingRows,
+            line,
             text: format!(
                 "{missing} {rows} missing before this one: t goes from {from} to {to} in a file \
                  of step {spacing}"

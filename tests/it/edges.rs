@@ -58,43 +58,36 @@ fn files_of_toml_may_have_a_mebibyte() {
     }
 }
 
-#[test]
-fn lines_may_have_a_mebibyte() {
+/// Tables of as many bytes or columns as there may be, and of one more.
+fn at_the_edge(most: usize, table: impl Fn(usize) -> String, told: &str) {
     let folder = Folder::new();
-    let audit = |bytes: usize| {
-        // The end of the line is none of its bytes.
-        folder.write(
-            "run.csv",
-            format!("t,v_c,{}\n0,0,0\n", "x".repeat(bytes - 6)),
-        );
+    let audit = |size: usize| {
+        folder.write("run.csv", table(size));
         folder.audit(&["run.csv", "--case", CASE])
     };
-    says(&audit(MOST_LINE_BYTES), 1, "");
-    let ran = audit(MOST_LINE_BYTES + 1);
-    says(
-        &ran,
-        2,
-        "run.csv:1:1: this line is longer than 1048576 bytes",
-    );
+    says(&audit(most), 1, "");
+    says(&audit(most + 1), 2, told);
+}
+
+#[test]
+fn lines_may_have_a_mebibyte() {
+    // The end of the line is none of its bytes.
+    let table = |bytes: usize| format!("t,v_c,{}\n0,0,0\n", "x".repeat(bytes - 6));
+    let told = "run.csv:1:1: this line is longer than 1048576 bytes";
+    at_the_edge(MOST_LINE_BYTES, table, told);
 }
 
 #[test]
 fn columns_are_counted() {
-    let folder = Folder::new();
-    let audit = |count: usize| {
+    let table = |count: usize| {
         let names: String = (2..count).fold(String::new(), |mut names, k| {
             let _ = write!(names, ",c{k}");
             names
         });
-        folder.write(
-            "run.csv",
-            format!("t,v_c{names}\n0{}\n", ",0".repeat(count - 1)),
-        );
-        folder.audit(&["run.csv", "--case", CASE])
+        format!("t,v_c{names}\n0{}\n", ",0".repeat(count - 1))
     };
-    says(&audit(MOST_COLUMNS), 1, "");
-    let ran = audit(MOST_COLUMNS + 1);
-    says(&ran, 2, "4097 columns, at most 4096 are read");
+    let told = "4097 columns, at most 4096 are read";
+    at_the_edge(MOST_COLUMNS, table, told);
 }
 
 #[test]

@@ -54,6 +54,16 @@ fn kinds(ran: &Ran) -> Vec<String> {
     findings.unwrap().iter().map(kind).collect()
 }
 
+/// A pass without any finding.
+fn assert_sound(ran: &Ran) {
+    assert_eq!(
+        (kinds(ran), ran.verdict()),
+        (vec![], "pass"),
+        "{}",
+        ran.seen()
+    );
+}
+
 #[test]
 fn a_row_that_ends_in_a_blank_is_still_too_short() {
     let rows = exact(even(500));
@@ -354,12 +364,7 @@ fn rows_lost_between_stamps_of_single_precision_are_seen() {
             let print = |time: f64| format!("{time:.*e}", digits - 1);
             let read = |times: Vec<f64>| audit("run.csv", stamped(times, print), &[]);
             let ran = read(times.clone());
-            assert_eq!(
-                (kinds(&ran), ran.verdict()),
-                (vec![], "pass"),
-                "{}",
-                ran.seen()
-            );
+            assert_sound(&ran);
             let mut one = times.clone();
             one.remove(200);
             let ran = read(one);
@@ -381,12 +386,7 @@ fn a_stretch_lost_before_a_shortened_step_is_seen() {
     let times: Vec<f64> = (0..=38).map(|k| f64::from(k) * step).chain([END]).collect();
     let read = |times: Vec<f64>| audit("run.csv", stamped(times, |time| format!("{time}")), &[]);
     let ran = read(times.clone());
-    assert_eq!(
-        (kinds(&ran), ran.verdict()),
-        (vec![], "pass"),
-        "{}",
-        ran.seen()
-    );
+    assert_sound(&ran);
     for lost in [3, 11, 20] {
         let mut times = times.clone();
         times.drain(39 - lost..39);
@@ -398,12 +398,7 @@ fn a_stretch_lost_before_a_shortened_step_is_seen() {
     reaching.truncate(38);
     reaching.push(END);
     let ran = read(reaching);
-    assert_eq!(
-        (kinds(&ran), ran.verdict()),
-        (vec![], "pass"),
-        "{}",
-        ran.seen()
-    );
+    assert_sound(&ran);
 }
 
 #[test]

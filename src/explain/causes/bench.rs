@@ -269,7 +269,7 @@ const PRODUCTS: f64 = 15.0;
 /// How many times a model may be solved over some rows: every gap between rows that is not
 /// that of the grid, and every jump among them, costs an exponential of its own.
 pub(super) fn affordable(linear: &Linear, rows: &Rows) -> usize {
-    let size = Flow::new(linear).matrix.nrows() as f64;
+    let size = (linear.size() + Drive::new(linear).size) as f64;
     let of_rows = if rows.spacing.is_some() {
         2
     } else {

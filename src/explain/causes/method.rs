@@ -6,7 +6,7 @@ use super::{Candidate, Kind, Names, Trouble};
 use crate::method::{Coefficients, Linear, Method, amplification, approx_stable_length, roots};
 use crate::number::{approx_eigenvalues, short};
 
-use nalgebra::{Complex, DMatrix};
+use nalgebra::Complex;
 
 /// Causes that lie in a method at a step which explains the rows.
 pub(super) fn candidates(
@@ -215,9 +215,7 @@ pub(super) fn single_precision_time(
 }
 
 fn eigenvalues(linear: &Linear) -> Vec<Complex<f64>> {
-    let size = linear.size();
-    let matrix = DMatrix::from_fn(size, size, |i, j| linear.matrix[(i, j)]);
-    approx_eigenvalues(&matrix).unwrap_or_default()
+    approx_eigenvalues(&linear.matrix).unwrap_or_default()
 }
 
 /// The errors grow by orders of magnitude towards the end.

@@ -1,6 +1,6 @@
 //! The largest stable step of a method on a case, from the eigenvalues of the case.
 
-use nalgebra::{Complex, DMatrix};
+use nalgebra::Complex;
 
 use super::run::Stepper;
 use crate::method::{Coefficients, Linear, Recurrence, amplification, approx_stable_length};
@@ -104,16 +104,10 @@ fn length(coefficients: &Coefficients, direction: Complex<f64>) -> Option<f64> {
 fn modes(matrix: &Matrix<f64>) -> Option<Vec<Complex<f64>>> {
     let size = matrix.row_sum_norm();
     let part = |part: f64, size: f64| if part.abs() <= PART * size { 0.0 } else { part };
-    let values = eigenvalues(matrix)?.into_iter();
+    let values = approx_eigenvalues(matrix)?.into_iter();
     let values = values.filter(|value| value.norm() > ZERO * size);
     let cleaned = values.map(|v| Complex::new(part(v.re, v.norm()), part(v.im, v.norm())));
     Some(cleaned.collect())
-}
-
-fn eigenvalues(matrix: &Matrix<f64>) -> Option<Vec<Complex<f64>>> {
-    approx_eigenvalues(&DMatrix::from_fn(matrix.size(), matrix.size(), |i, j| {
-        matrix[(i, j)]
-    }))
 }
 
 fn semi_implicit(linear: &Linear, stepper: &Stepper, modes: &[Complex<f64>]) -> Option<f64> {
@@ -124,7 +118,7 @@ fn semi_implicit(linear: &Linear, stepper: &Stepper, modes: &[Complex<f64>]) -> 
             return false;
         };
         // A step whose factors are not known is not called stable.
-        let factors: Option<Vec<_>> = recurrence.past.iter().map(eigenvalues).collect();
+        let factors: Option<Vec<_>> = recurrence.past.iter().map(approx_eigenvalues).collect();
         let large = |f: &&Complex<f64>| f.norm() > 1.0 + ROUNDING;
         factors.is_some_and(|all| all.iter().flatten().filter(large).count() <= growing)
     };
