@@ -5,8 +5,10 @@
 //! Squared up in that form a slow mode keeps its own relative precision beside a
 //! fast one; in the plain form each squaring doubles its error.
 
-use super::matrix::{Matrix, dot};
+use super::matrix::Matrix;
+use super::sparse::Sparse;
 use super::{Double, Real};
+use table::{Level, Table};
 
 /// `exp(Mt)` for one matrix `M` and any `0 <= t <= 2 span`, applied to vectors.
 ///
@@ -38,17 +40,17 @@ use super::{Double, Real};
 /// `[higham-2005]`; `[moler-van-loan-2003]`, method 3; the bound is ours.
 #[derive(Debug)]
 pub struct Propagator<T> {
-    generator: Matrix<T>,
-    magnitude: Matrix<f64>,
+    generator: Sparse<T>,
+    magnitude: Sparse<f64>,
     /// The matrix in `f64`.
-    plain: Matrix<f64>,
+    plain: Sparse<f64>,
     norm: f64,
     base: f64,
     levels: Vec<Step<T>>,
     growth_rate: f64,
     /// `exp(|M| base)`, rounded up.
-    nearby: Matrix<f64>,
-    reach: Matrix<f64>,
+    nearby: Sparse<f64>,
+    reach: Sparse<f64>,
 }
 
 /// `exp(Mh) - I` for one step `h`.
@@ -56,11 +58,11 @@ pub struct Propagator<T> {
 pub struct Step<T> {
     /// The step `h`.
     time: f64,
-    growth: Matrix<T>,
+    growth: Sparse<T>,
     /// `|growth|`, rounded up.
-    size: Matrix<f64>,
+    size: Sparse<f64>,
     /// What `growth` may be off by, entry by entry.
-    error: Matrix<f64>,
+    error: Sparse<f64>,
 }
 
 /// A vector on its way through time, with what rounding may have done so far.
@@ -101,174 +103,38 @@ impl<T: Real> Flow<T> {
     }
 }
 
+/// Number of terms after which the series of `exp(M time)` is cut, where `angle` is `|M| time`: the
+/// rest is below 2^-(bits + 40) of the vector's largest entry. What it is entry by entry
+/// follows from the last term: the rest is at most `exp(|M| time)` times the next.
+fn terms<T: Real>(angle: f64) -> u32 {
+    let target = 2f64.powi(-(T::BITS as i32) - 40);
+    let mut term = 1.0;
+    let mut count = 0;
+    loop {
+        count += 1;
+        term *= angle / f64::from(count);
+        // The tail is at most twice its first term while angle <= 1/2.
+        if 2.0 * term < target || count > 80 {
+            return count;
+        }
+    }
+}
+
 impl<T: Real> Propagator<T> {
     /// Builds the table for times up to twice `span`.
     pub fn new(generator: &Matrix<Double>, span: f64) -> Option<Propagator<T>> {
-        let magnitude = generator.map(|x| x.to_f64().abs() * (1.0 + f64::EPSILON));
-        let norm = magnitude.row_sum_norm() * UPWARD;
-        if !(norm.is_finite() && span.is_finite() && span >= 0.0) {
-            return None;
-        }
-        let longest = (2.0 * span).max(f64::MIN_POSITIVE);
-        let finest = if norm > 0.0 {
-            (0.5 / norm).log2().floor()
-        } else {
-            1000.0
-        };
-        let finest = finest.min(longest.log2().ceil()) as i32;
-        let top = (longest.log2().ceil() as i32 - finest).max(0);
-        if finest < SMALLEST_BASE || top > MOST_LEVELS {
-            return None;
-        }
-        let base = 2f64.powi(finest);
-        let exact = generator.map(T::from_double);
-        let mut table = Propagator {
-            nearby: Matrix::zero(generator.size()),
-            reach: Matrix::zero(generator.size()),
-            plain: generator.map(Double::to_f64),
-            generator: exact,
-            magnitude,
-            norm,
-            base,
-            levels: Vec::new(),
-            growth_rate: 0.0,
-        };
-        table.build(top as usize);
-        let finite = table
-            .levels
-            .iter()
-            .all(|step| step.size.row_sum_norm().is_finite());
-        (finite && table.reach.row_sum_norm().is_finite()).then_some(table)
-    }
-
-    /// Fills levels and reach: first the factors, each with the error that repeated
-    /// squaring gives it, then the reach, then the errors once more through the
-    /// reach where that is tighter.
-    fn build(&mut self, top: usize) {
-        self.nearby = self.series_size(self.base);
-        let (growth, error) = self.series_matrix();
-        let mut fresh = vec![error.clone()];
-        self.levels.push(Step::new(self.base, growth, error));
-        for level in 0..top {
-            let (next, rounding) = self.levels[level].doubled();
-            fresh.push(rounding);
-            self.levels.push(next);
-        }
-        let last = &self.levels[top];
-        self.growth_rate = last.whole().row_sum_norm().ln().max(0.0) / last.time;
-        self.reach = self.longest_reach();
-        let mut sum: Matrix<f64> = Matrix::zero(self.size());
-        for (step, fresh) in self.levels.iter_mut().zip(&fresh) {
-            // What was lost at one level is repeated in every factor of the next.
-            // First order in the errors; the second order is covered by the factor
-            // as long as the errors are small, which is checked.
-            let (before, after) = (
-                (-self.growth_rate * step.time).exp(),
-                self.growth_rate * step.time,
-            );
-            sum = sum.zip(fresh, |a, b| (2.0 * a + b * before) * UPWARD);
-            let through = self.reach.product(&sum.product(&self.reach));
-            if through.row_sum_norm() < 1e-3 {
-                let factor = 1.01 * after.exp();
-                step.error = step.error.zip(&through, |a, b| a.min(factor * b));
-            }
-        }
-    }
-
-    /// Entry by entry a bound of `exp(-growth t) |exp(Mt)|` over `0 <= t <= 2 span`: the binary
-    /// digits of `t` are taken in groups, each group's factor is one of the powers
-    /// of its lowest step, and the largest of these counts, entry by entry. Large
-    /// groups keep the bound tight for oscillators, where every further factor costs
-    /// up to the square root of the size; they are as large as their cost allows.
-    fn longest_reach(&self) -> Matrix<f64> {
-        let group = match self.generator.size() {
-            0..=6 => 8,
-            7..=16 => 6,
-            17..=32 => 4,
-            _ => 3,
-        };
-        let mut reach = self.nearby.clone();
-        for steps in self.levels.chunks(group) {
-            let mut powers = vec![Matrix::zero(self.size())];
-            for i in 0..self.size() {
-                powers[0][(i, i)] = T::from_f64(1.0);
-            }
-            let mut slack: Matrix<f64> = Matrix::zero(self.size());
-            for step in steps {
-                let damping = T::from_f64((-self.growth_rate * step.time).exp());
-                for known in 0..powers.len() {
-                    let further = step.growth.product(&powers[known]);
-                    powers.push(powers[known].zip(&further, |a, b| (a + b) * damping));
-                }
-                slack = slack.zip(&step.error, |a, b| a.max(2.0 * b * damping.to_f64()));
-            }
-            let largest = powers.iter().fold(slack, |largest, power| {
-                largest.zip(power, |a, b: T| a.max(b.to_f64().abs() * UPWARD))
-            });
-            reach = largest.product(&reach).map(|x| x * UPWARD);
-        }
-        reach
-    }
-
-    /// Number of terms after which the series of `exp(M time)` is cut: the rest is
-    /// below 2^-(bits + 40) of the vector's largest entry. What it is entry by entry
-    /// follows from the last term: the rest is at most `exp(|M| time)` times the next.
-    fn terms(&self, time: f64) -> u32 {
-        let angle = self.norm * time.abs();
-        let target = 2f64.powf(-T::BITS - 40.0);
-        let mut term = 1.0;
-        let mut count = 0;
-        loop {
-            count += 1;
-            term *= angle / f64::from(count);
-            // The tail is at most twice its first term while angle <= 1/2.
-            if 2.0 * term < target || count > 80 {
-                return count;
-            }
-        }
-    }
-
-    /// `exp(|M| time)` in `f64`, rounded up.
-    fn series_size(&self, time: f64) -> Matrix<f64> {
-        let size = self.magnitude.size();
-        let mut sum = Matrix::zero(size);
-        for i in 0..size {
-            sum[(i, i)] = 1.0;
-        }
-        let mut term = sum.clone();
-        for k in 1..40 {
-            let factor = time / f64::from(k);
-            term = self.magnitude.product(&term).map(|x| x * factor);
-            sum = sum.zip(&term, |a, b| a + b);
-        }
-        sum.map(|x| x * UPWARD)
-    }
-
-    /// `exp(M base) - I` with its error.
-    fn series_matrix(&self) -> (Matrix<T>, Matrix<f64>) {
-        let size = self.generator.size();
-        let count = self.terms(self.base);
-        let scaled = self.generator.map(|x| x.scale(self.base));
-        let mut term = scaled.clone();
-        let mut sum = scaled.clone();
-        for k in 2..=count {
-            term = scaled.product(&term).map(|x| x.divide(k));
-            sum = sum.zip(&term, |a, b| a + b);
-        }
-        let unit = (size as f64 + 4.0) * f64::from(count) * T::UNIT;
-        let whole = self.nearby.clone();
-        let mut next = self.magnitude.map(|x| x * self.base);
-        for k in 2..=count + 1 {
-            let factor = self.base / f64::from(k) * UPWARD;
-            next = self.magnitude.product(&next).map(|x| x * factor);
-        }
-        let tail = whole.product(&next);
-        let mut error = whole;
-        for i in 0..size {
-            // exp(|M|b) - I, with what its own rounding may hide.
-            error[(i, i)] = (error[(i, i)] - 1.0).max(0.0) + 1e-9;
-        }
-        (sum, error.zip(&tail, |x, tail| x * unit + tail))
+        let table = Table::new(generator, span)?;
+        Some(Propagator {
+            generator: Sparse::of(&table.generator),
+            magnitude: Sparse::of(&table.magnitude),
+            plain: Sparse::of(&table.plain),
+            norm: table.norm,
+            base: table.base,
+            levels: table.levels.iter().map(Step::of).collect(),
+            growth_rate: table.growth_rate,
+            nearby: Sparse::of(&table.nearby),
+            reach: Sparse::of(&table.reach),
+        })
     }
 
     /// Number of entries of a vector.
@@ -314,7 +180,7 @@ impl<T: Real> Propagator<T> {
         if self.norm * time.to_f64().abs() <= A_LITTLE * T::UNIT {
             return self.nudge_a_little(flow, time.to_f64());
         }
-        let count = self.terms(time.to_f64());
+        let count = terms::<T>(self.norm * time.to_f64().abs());
         let time_exact = T::from_double(time);
         let time_size = time.to_f64().abs() * (1.0 + f64::EPSILON);
         let mut term = flow.value.clone();
@@ -322,17 +188,17 @@ impl<T: Real> Propagator<T> {
         let mut lost = size.clone();
         let (mut next_term, mut next_size) = (term.clone(), size.clone());
         for k in 1..=count {
-            self.generator.apply_to(&term, &mut next_term);
-            self.magnitude.apply_to(&size, &mut next_size);
+            // One division for all entries.
+            let part = if k > 1 {
+                time_exact.divide(k)
+            } else {
+                time_exact
+            };
+            let part_size = time_size / f64::from(k) * UPWARD;
+            self.generator.sums_into(&term, part, &mut next_term);
+            self.magnitude.sums_into(&size, part_size, &mut next_size);
             std::mem::swap(&mut term, &mut next_term);
             std::mem::swap(&mut size, &mut next_size);
-            for (x, s) in term.iter_mut().zip(&mut size) {
-                *x = *x * time_exact;
-                if k > 1 {
-                    *x = x.divide(k);
-                }
-                *s *= time_size / f64::from(k) * UPWARD;
-            }
             for (i, &x) in term.iter().enumerate() {
                 flow.value[i] = flow.value[i] + x;
                 lost[i] += f64::from(k) * size[i];
@@ -341,13 +207,10 @@ impl<T: Real> Propagator<T> {
         let unit = (self.size() as f64 + 4.0) * T::UNIT * UPWARD;
         flow.elapsed += time.to_f64();
         let damping = (-self.growth_rate * flow.elapsed).exp() * UPWARD;
-        let next = self.magnitude.apply(&size);
-        let next: Vec<f64> = next
-            .iter()
-            .map(|x| x * time_size / f64::from(count + 1))
-            .collect();
-        for (i, (local, lost)) in flow.local.iter_mut().zip(&lost).enumerate() {
-            let tail = dot(self.nearby.row(i), &next);
+        let part_size = time_size / f64::from(count + 1);
+        self.magnitude.sums_into(&size, part_size, &mut next_size);
+        let tails = self.nearby.sums(&next_size);
+        for ((local, lost), tail) in flow.local.iter_mut().zip(&lost).zip(tails) {
             *local += (unit * lost + tail) * damping;
         }
     }
@@ -361,19 +224,20 @@ impl<T: Real> Propagator<T> {
         let near: Vec<f64> = flow.value.iter().map(|x| x.to_f64()).collect();
         let size: Vec<f64> = near.iter().map(|x| x.abs()).collect();
         let (time_size, rows) = (time.abs() * UPWARD, self.size());
-        let moved = |row: usize| dot(self.magnitude.row(row), &size) * time_size * UPWARD;
-        let moved: Vec<f64> = (0..rows).map(moved).collect();
-        let next = |row: usize| dot(self.magnitude.row(row), &moved) * 0.5 * time_size * UPWARD;
-        let next: Vec<f64> = (0..rows).map(next).collect();
+        let (mut moved, mut next) = (vec![0.0; rows], vec![0.0; rows]);
+        self.magnitude
+            .sums_into(&size, time_size * UPWARD, &mut moved);
+        self.magnitude
+            .sums_into(&moved, 0.5 * time_size * UPWARD, &mut next);
         let in_f64 = (rows as f64 + 8.0) * 0.5 * f64::EPSILON * UPWARD;
         let unit = (rows as f64 + 4.0) * T::UNIT * UPWARD;
         flow.elapsed += time;
         let damping = (-self.growth_rate * flow.elapsed).exp() * UPWARD;
-        for i in 0..rows {
-            let term = dot(self.plain.row(i), &near) * time;
-            flow.value[i] = flow.value[i] + T::from_f64(term);
+        let rates = self.plain.sums(&near).zip(self.nearby.sums(&next));
+        for (i, (rate, tail)) in rates.enumerate() {
+            flow.value[i] = flow.value[i] + T::from_f64(rate * time);
             let lost = unit * (size[i] + moved[i]) + in_f64 * moved[i];
-            flow.local[i] += (lost + dot(self.nearby.row(i), &next)) * damping;
+            flow.local[i] += (lost + tail) * damping;
         }
     }
 
@@ -381,13 +245,14 @@ impl<T: Real> Propagator<T> {
     pub fn step(&self, flow: &mut Flow<T>, step: &Step<T>) {
         let unit = (self.size() as f64 + 4.0) * T::UNIT * UPWARD;
         let size: Vec<f64> = flow.value.iter().map(|x| x.to_f64().abs()).collect();
-        let moved = step.growth.apply(&flow.value);
+        let moved: Vec<T> = step.growth.sums(&flow.value).collect();
         flow.elapsed += step.time;
         let damping = (-self.growth_rate * flow.elapsed).exp() * UPWARD;
-        for (i, change) in moved.into_iter().enumerate() {
-            let rounding = dot(step.size.row(i), &size) + size[i];
-            flow.local[i] += (unit * rounding + dot(step.error.row(i), &size)) * damping;
-            flow.value[i] = flow.value[i] + change;
+        let bounds = step.size.sums(&size).zip(step.error.sums(&size));
+        for (i, (moved_size, error)) in bounds.enumerate() {
+            let rounding = moved_size + size[i];
+            flow.local[i] += (unit * rounding + error) * damping;
+            flow.value[i] = flow.value[i] + moved[i];
         }
     }
 
@@ -407,69 +272,38 @@ impl<T: Real> Propagator<T> {
                 error[(row, column)] = bound;
             }
         }
-        Step::new(time.to_f64(), growth, error)
+        Step::of(&Level::new(time.to_f64(), growth, error))
     }
 
     /// Bound of the error of every entry of a vector.
     pub fn bound(&self, flow: &Flow<T>) -> Vec<f64> {
         let growth = (self.growth_rate * flow.elapsed).exp() * UPWARD;
         self.reach
-            .rows()
-            .map(|row| dot(row, &flow.local) * growth)
+            .sums(&flow.local)
+            .map(|sum| sum * growth)
             .collect()
     }
 
     /// `M x` in `f64`: the rate of change.
     pub fn approx_rate(&self, flow: &Flow<T>) -> Vec<f64> {
-        self.generator
-            .apply(&flow.value)
-            .into_iter()
-            .map(Real::to_f64)
-            .collect()
+        let rates = self.generator.sums(&flow.value);
+        rates.map(Real::to_f64).collect()
     }
 }
 
 impl<T: Real> Step<T> {
-    fn new(time: f64, growth: Matrix<T>, error: Matrix<f64>) -> Step<T> {
-        let size = growth.map(|x| x.to_f64().abs() * (1.0 + f64::EPSILON));
+    fn of(level: &Level<T>) -> Step<T> {
         Step {
-            time,
-            growth,
-            size,
-            error,
+            time: level.time,
+            growth: Sparse::of(&level.growth),
+            size: Sparse::of(&level.size),
+            error: Sparse::of(&level.error),
         }
-    }
-
-    /// The step of twice the length, and what rounding adds on the way there.
-    fn doubled(&self) -> (Step<T>, Matrix<f64>) {
-        let unit = (self.size.size() as f64 + 4.0) * T::UNIT;
-        let square = self.growth.product(&self.growth);
-        let growth = self.growth.zip(&square, |f, f2| f.scale(2.0) + f2);
-        let rounding = self.size.product(&self.size);
-        let rounding = self
-            .size
-            .zip(&rounding, |f, f2| unit * (2.0 * f + f2) * UPWARD);
-        let whole = self.whole();
-        let carried = whole.product(&self.error);
-        let carried = carried.zip(&self.error.product(&whole), |a, b| a + b);
-        let second_order = self.error.product(&self.error);
-        let error = carried.zip(&second_order, |a, b| a + b);
-        let error = error.zip(&rounding, |a, b| (a + b) * UPWARD);
-        (Step::new(2.0 * self.time, growth, error), rounding)
-    }
-
-    /// `|exp(Mh)|`, rounded up.
-    fn whole(&self) -> Matrix<f64> {
-        let mut whole = self.size.clone();
-        for i in 0..whole.size() {
-            let entry = (1.0 + self.growth[(i, i)].to_f64()).abs();
-            whole[(i, i)] = entry * (1.0 + f64::EPSILON) + f64::EPSILON;
-        }
-        whole
     }
 }
 
 mod expand;
+mod table;
 
 pub use expand::{Expansion, Nearby};
 

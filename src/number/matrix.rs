@@ -87,25 +87,9 @@ impl<T: Copy + Default + Add<Output = T> + Mul<Output = T> + PartialZero> Matrix
         }
     }
 
-    /// Matrix times vector into another one.
-    pub fn apply_to(&self, vector: &[T], result: &mut [T]) {
-        for (entry, row) in result.iter_mut().zip(self.rows()) {
-            *entry = dot(row, vector);
-        }
-    }
-
     /// Matrix times vector.
     pub fn apply(&self, vector: &[T]) -> Vec<T> {
         self.rows().map(|row| dot(row, vector)).collect()
-    }
-}
-
-impl Matrix<f64> {
-    /// `factor` times matrix times vector.
-    pub fn apply_into(&self, vector: &[f64], factor: f64, result: &mut [f64]) {
-        for (entry, row) in result.iter_mut().zip(self.rows()) {
-            *entry = dot(row, vector) * factor;
-        }
     }
 }
 

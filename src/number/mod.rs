@@ -17,6 +17,7 @@ mod modes;
 mod quad;
 mod real;
 mod short;
+mod sparse;
 
 pub use closed::{closed_form, fraction};
 pub use conversion::Conversion;

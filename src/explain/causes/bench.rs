@@ -155,8 +155,11 @@ impl Rows {
     /// How far the written values are from others.
     pub(super) fn gap(&self, values: &[f64]) -> Gap {
         let mut gap = Gap::NOTHING;
-        for (at, &value) in values.iter().enumerate().take(self.written.len()) {
-            gap.add(self, at, value);
+        let lines = values.chunks(self.width().max(1)).take(self.len());
+        for (row, line) in lines.enumerate() {
+            for (channel, &value) in line.iter().enumerate() {
+                gap.add(self, row, channel, value);
+            }
         }
         gap
     }
@@ -164,8 +167,8 @@ impl Rows {
     /// The same for one channel.
     pub(super) fn gap_of(&self, values: &[f64], channel: usize) -> Gap {
         let mut gap = Gap::NOTHING;
-        for at in (channel..values.len()).step_by(self.width().max(1)) {
-            gap.add(self, at, values[at]);
+        for (row, value) in self.column(values, channel).enumerate() {
+            gap.add(self, row, channel, value);
         }
         gap
     }
@@ -190,13 +193,14 @@ impl Gap {
         share: 0.0,
     };
 
-    pub(super) fn add(&mut self, rows: &Rows, at: usize, value: f64) {
+    pub(super) fn add(&mut self, rows: &Rows, row: usize, channel: usize, value: f64) {
         if value.is_nan() {
             // Nothing is assumed of this row.
             return;
         }
+        let at = row * rows.width() + channel;
         let gap = (rows.written[at] - value).abs();
-        let peak = rows.peaks[at % rows.width()].max(f64::MIN_POSITIVE);
+        let peak = rows.peaks[channel].max(f64::MIN_POSITIVE);
         let larger = |a: f64, b: f64| if b <= a { a } else { b };
         self.ratio = larger(self.ratio, gap / rows.allowed[at].max(f64::MIN_POSITIVE));
         self.share = larger(self.share, gap / peak);

@@ -98,7 +98,7 @@ pub(super) fn of_faults(trouble: &Trouble, rows: &Rows, names: &Names, before: G
             one.explained = true;
             return one;
         }
-        let mut candidates = written::candidates(rows, names, &base, 0.0);
+        let mut candidates = written::candidates(rows, names, &base, 0.0, before);
         let exact = matches!(way, Way::Exact);
         if exact {
             candidates.extend(written::half_shifted(linear, rows, names));
@@ -107,6 +107,7 @@ pub(super) fn of_faults(trouble: &Trouble, rows: &Rows, names: &Names, before: G
                 names,
                 &base,
                 STANDS_OUT * healthy,
+                before,
             ));
         }
         if model_step > 0.0 {

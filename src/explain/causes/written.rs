@@ -2,7 +2,8 @@
 //! units, swapped channels, shifted rows, clipped or frozen values, single precision, rows
 //! interpolated between steps, few digits, noise.
 
-use super::bench::{Rows, exactly};
+use super::bench::{Gap, Rows, exactly};
+use super::faults::TAKES_AWAY;
 use super::{Candidate, Kind, Names, shape};
 use crate::method::Linear;
 use crate::number::{beside, plain, short};
@@ -49,6 +50,7 @@ pub(super) fn candidates(
     names: &Names,
     base: &[f64],
     threshold: f64,
+    before: Gap,
 ) -> Vec<Candidate> {
     let bad: Vec<usize> = (0..rows.width())
         .filter(|&channel| {
@@ -62,7 +64,7 @@ pub(super) fn candidates(
     let mut found = Vec::new();
     found.extend(gains(rows, names, base, &bad));
     found.extend(offsets(rows, names, base, &bad));
-    found.extend(swapped(rows, names, base, &bad));
+    found.extend(swapped(rows, names, base, &bad, before));
     found.extend(shifted(rows, names, base));
     found.extend(shape::clipped(rows, names, base, &bad));
     found.extend(shape::frozen(rows, names, base, &bad));
@@ -216,11 +218,28 @@ fn offsets(rows: &Rows, names: &Names, base: &[f64], bad: &[usize]) -> Vec<Candi
     vec![Candidate::new(Kind::Offset, 1, Some(offset), values, text)]
 }
 
-fn swapped(rows: &Rows, names: &Names, base: &[f64], bad: &[usize]) -> Vec<Candidate> {
+fn swapped(rows: &Rows, names: &Names, base: &[f64], bad: &[usize], before: Gap) -> Vec<Candidate> {
     let width = rows.width();
     let mut found = Vec::new();
+    // Channels that would stay too far off if they were not exchanged themselves: with many of
+    // them no pair is left, and there are hundreds of thousands of pairs in a wide file.
+    let too_far = |gap: &Gap| !gap.is_closed() && gap.share > TAKES_AWAY * before.share;
+    let stays = |channel: &usize| too_far(&rows.gap_of(base, *channel));
+    let wrong: Vec<usize> = bad.iter().copied().filter(stays).collect();
+    let covers = |one: usize, other: usize| wrong.iter().all(|&c| c == one || c == other);
+    let fits = |one: usize, other: usize| {
+        let mut gap = Gap::NOTHING;
+        base.chunks_exact(width).enumerate().all(|(row, base)| {
+            gap.add(rows, row, one, base[other]);
+            gap.add(rows, row, other, base[one]);
+            !too_far(&gap)
+        })
+    };
     for (place, &one) in bad.iter().enumerate() {
         for &other in &bad[place + 1..] {
+            if !(covers(one, other) && fits(one, other)) {
+                continue;
+            }
             let mut values = base.to_vec();
             for row in values.chunks_exact_mut(width) {
                 row.swap(one, other);

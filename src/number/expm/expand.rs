@@ -88,13 +88,13 @@ impl Propagator<Double> {
         let [first, ..] = &mut into.terms[..] else {
             return;
         };
-        for (i, rate) in first.iter_mut().enumerate() {
-            *rate = dot(self.generator.row(i), &flow.value).to_f64();
+        for (rate, exact) in first.iter_mut().zip(self.generator.sums(&flow.value)) {
+            *rate = exact.to_f64();
         }
         for k in 1..count {
             let (before, after) = into.terms.split_at_mut(k);
             self.plain
-                .apply_into(&before[k - 1], 1.0 / (k + 1) as f64, &mut after[0]);
+                .sums_into(&before[k - 1], 1.0 / (k + 1) as f64, &mut after[0]);
         }
         for (entry, value) in into.sizes[0].iter_mut().zip(&flow.value) {
             *entry = value.to_f64().abs();
@@ -102,15 +102,15 @@ impl Propagator<Double> {
         for k in 1..=count {
             let (before, after) = into.sizes.split_at_mut(k);
             self.magnitude
-                .apply_into(&before[k - 1], UPWARD / k as f64, &mut after[0]);
+                .sums_into(&before[k - 1], UPWARD / k as f64, &mut after[0]);
         }
         // One term more, and what `exp(|M| s)` makes of it.
         let power = reach.powi(count as i32 + 1) / (count + 1) as f64 * UPWARD;
         into.next.resize(size, 0.0);
         self.magnitude
-            .apply_into(&into.sizes[count], power, &mut into.next);
+            .sums_into(&into.sizes[count], power, &mut into.next);
         into.tail.resize(size, 0.0);
-        self.nearby.apply_into(&into.next, 1.0, &mut into.tail);
+        self.nearby.sums_into(&into.next, 1.0, &mut into.tail);
     }
 }
 
