@@ -2,7 +2,7 @@
 //! along a uniform grid with a fresh start every so often.
 
 use super::{Exact, Jump};
-use crate::number::{Double, Flow, Propagator, Quad, Real, Step, dot};
+use crate::number::{Double, Flow, Propagator, Quad, Real, Step};
 
 /// Steps along a grid before the vector is computed directly again, so that nothing
 /// drifts.
@@ -94,12 +94,13 @@ impl Exact {
                 values.bound.push(bound[index] + rounding * size[index]);
                 continue;
             }
-            let weights: Vec<f64> = row.iter().map(|w| w.to_f64().abs()).collect();
-            let row: Vec<T> = row.iter().map(|&w| T::from_double(w)).collect();
-            values.value.push(dot(&row, &flow.value).to_double());
-            values
-                .bound
-                .push(dot(&weights, &bound) + rounding * dot(&weights, &size));
+            let (mut sum, mut doubt) = (T::default(), 0.0);
+            for (at, weight) in row.iter().enumerate().filter(|(_, w)| !w.is_zero()) {
+                sum = sum + T::from_double(*weight) * flow.value[at];
+                doubt += weight.to_f64().abs() * (bound[at] + rounding * size[at]);
+            }
+            values.value.push(sum.to_double());
+            values.bound.push(doubt);
         }
     }
 

@@ -139,6 +139,11 @@ impl Formula {
         Ok(Formula { code: parser.code })
     }
 
+    /// Numbers, variables, operators and functions, counted.
+    pub fn operations(&self) -> usize {
+        self.code.len()
+    }
+
     /// Numbers of the variables that occur.
     pub fn variables(&self) -> impl Iterator<Item = usize> {
         self.code
