@@ -297,7 +297,9 @@ impl Exact {
         let times = self.probe_times();
         let operations: usize = formulas.iter().map(Formula::operations).sum();
         let stride = (operations * times.len()).div_ceil(MOST_OPERATIONS);
-        for time in times.into_iter().step_by(stride.max(1)) {
+        // Three times at least: at the start alone many a wrong form is right.
+        let stride = stride.clamp(1, times.len() / 3);
+        for time in times.into_iter().step_by(stride) {
             if let Some(last) = variables.last_mut() {
                 *last = time;
             }

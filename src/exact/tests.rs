@@ -251,6 +251,33 @@ fn a_contradicting_closed_form_is_refused() {
     assert!(exact.closed_form_gap().unwrap() < 1e-28);
 }
 
+/// Such a form is tried at few times, and not at the start alone.
+#[test]
+fn a_contradiction_is_seen_at_the_end_of_a_very_long_form() {
+    let form = |more: &str| format!("exp(-t){}{more}", "+t-t".repeat(16_000));
+    let text = |more: &str| {
+        let state = |name: &str, form: &str| {
+            format!(
+                "[[states]]\nname = '{name}'\nunit = 'V'\nstart = 1\nrate = '-{name}'\nexact = '{form}'\n"
+            )
+        };
+        let states = ["a", "b", "c"].map(|name| state(name, &form("")));
+        format!(
+            "title = 'lag'\nfield = 'trial'\nabout = ''\nsource = 'ours'\nhard_for = []\n\
+             [time]\nunit = 's'\nfrom = 0\nto = 5\n{}{}[limits]\nabsolute = 1\nrelative = 0\n",
+            states.concat(),
+            state("d", &form(more))
+        )
+    };
+    let exact = |more: &str| {
+        let case = Case::parse("lag", &text(more), &Replacements::new()).unwrap();
+        case.exact().map(|_| ()).map_err(|fault| fault.text)
+    };
+    assert_eq!(exact(""), Ok(()));
+    let refused = exact("+1e-9*t^3").unwrap_err();
+    assert!(refused.contains("the closed form of `d`"), "{refused}");
+}
+
 #[test]
 fn what_is_too_much_is_refused_with_a_reason() {
     let run = |input: &str, rate: &str| {

@@ -440,3 +440,27 @@ fn five_hundred_parameters_are_not_each_asked_for_a_factor() {
     ]);
     assert_eq!(ran.verdict(), "fail", "{}", ran.seen());
 }
+
+/// Every pair of 513 columns was exchanged, each with the rows it would have made: more than
+/// twenty gigabytes.
+#[test]
+fn hundreds_of_columns_are_not_all_exchanged_by_pairs() {
+    let folder = Folder::new();
+    let output = |k: u32| format!("[[outputs]]\nname = 'y{k}'\nunit = 'm'\nvalue = '{k}*x'\n");
+    let outputs = (1..=512).map(output);
+    folder.write(
+        "cases/o.toml",
+        case("0", "10", &outputs.collect::<String>()),
+    );
+    let names: String = (1..=512).map(|k| format!(",y{k}")).collect();
+    let rows = (0..=60u32).map(|row| {
+        let values = (0..=512).map(|k| format!(",{}", (row * k) % 17));
+        format!("{}{}\n", f64::from(row) / 6.0, values.collect::<String>())
+    });
+    folder.write(
+        "run.csv",
+        format!("t,x{names}\n{}", rows.collect::<String>()),
+    );
+    let ran = folder.audit(&["run.csv", "--case", "trial/o", "--cases", "cases"]);
+    assert_eq!(ran.verdict(), "fail", "{}", ran.seen());
+}
