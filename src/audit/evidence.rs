@@ -3,7 +3,7 @@
 use super::Model;
 use super::run::RunCompared;
 use crate::judge::{self, Answer, Claimed, Support, Verdict};
-use crate::method::{Evidence, Method, find_all};
+use crate::method::{Evidence, Method, Reading, find_all};
 use crate::number::plain;
 use crate::outcome::{Audited, ClaimOutcome, Consistent, EvidenceOutcome, RunEvidence};
 use crate::submission::{Setting, Submission};
@@ -288,20 +288,7 @@ fn of_order(order: f64, found: &[RunFound], audited: &Audited) -> ClaimOutcome {
         }
         _ => {}
     }
-    let telling = found
-        .iter()
-        .filter(|found| !found.evidence.is_exact() && found.evidence.told().next().is_some());
-    let mut orders: Vec<f64> = Vec::new();
-    let mut beyond_chance = false;
-    for found in telling {
-        for family in found.evidence.told() {
-            if family.reading != crate::method::Reading::AtNodes {
-                continue;
-            }
-            beyond_chance |= family.is_beyond_chance();
-            orders.extend(family.methods.iter().map(|method| f64::from(method.order)));
-        }
-    }
+    let (orders, beyond_chance) = orders_of_methods(found);
     let more = if found.len() < 3 {
         "runs at three or more steps would show it"
     } else {
@@ -324,6 +311,21 @@ fn of_order(order: f64, found: &[RunFound], audited: &Audited) -> ClaimOutcome {
     } else {
         claim(Support::CannotTell, format!("{fitting}; {more}"))
     }
+}
+
+/// The orders of all methods that the rows of some run name, and whether one of them fits beyond
+/// chance.
+pub(super) fn orders_of_methods(found: &[RunFound]) -> (Vec<f64>, bool) {
+    let telling = found.iter().filter(|found| !found.evidence.is_exact());
+    let families = telling
+        .flat_map(|found| found.evidence.told())
+        .filter(|family| family.reading == Reading::AtNodes);
+    let (mut orders, mut beyond_chance) = (Vec::new(), false);
+    for family in families {
+        beyond_chance |= family.is_beyond_chance();
+        orders.extend(family.methods.iter().map(|method| f64::from(method.order)));
+    }
+    (orders, beyond_chance)
 }
 
 /// Methods that fit every run which rules anything out.

@@ -1,12 +1,12 @@
 //! The runs of a submission together: which are results, what order they show, what
 //! the whole comes to.
 
-use super::evidence::{RunFound, claimed_methods};
+use super::evidence::{RunFound, claimed_methods, orders_of_methods};
 use super::run::RunCompared;
 use crate::case::Case;
 use crate::compare::{Rung, Sight, observe};
 use crate::explain::{self, Place};
-use crate::judge::{self, Support, Verdict};
+use crate::judge::{self, OrderVerdict, Support, Verdict};
 use crate::method;
 use crate::number::{plain, short};
 use crate::outcome::{Audited, ChannelOutcome, OrderOutcome, RunOutcome};
@@ -166,6 +166,9 @@ pub(super) fn judge_orders(
             None => Sight::TooFew("not every run has a step and values".to_owned()),
         };
         let mut order = judge::of_order(&sight, claimed, slack, unsettled);
+        if let Some(claimed) = claimed {
+            doubt_single_pair(claimed, found, &mut order);
+        }
         if let Some(claimed) = claimed
             && let Some(reason) = explain::order_reason(channel.name, claimed, &order)
         {
@@ -187,6 +190,22 @@ pub(super) fn judge_orders(
     if audited.order_verdict == Some(Verdict::Pass) {
         // Channels that show nothing do not speak against one that shows the order.
         audited.reasons.clear();
+    }
+}
+
+/// A single pair of runs at long steps can show more than the order of its method: where all
+/// methods that the rows name are of a lower one, it passes nothing.
+fn doubt_single_pair(claimed: f64, found: &[RunFound], order: &mut OrderVerdict) {
+    if order.verdict != Some(Verdict::Pass) || order.rungs_used != 2 {
+        return;
+    }
+    let highest = orders_of_methods(found).0.into_iter().reduce(f64::max);
+    if let Some(highest) = highest.filter(|&highest| highest < claimed - judge::LOWER) {
+        order.verdict = Some(Verdict::Undecided);
+        order.note = Some(format!(
+            "one pair of runs shows it, yet the methods that fit the rows are of order {} at most",
+            plain(highest)
+        ));
     }
 }
 

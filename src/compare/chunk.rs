@@ -6,7 +6,7 @@ use super::deviation::{Comparison, Kept, KeptValue};
 use super::group::Rows;
 use super::sums::{Mark, Sums};
 use super::trace::Trace;
-use crate::exact::{Near, Nodes, Walk};
+use crate::exact::{Near, Nodes, Values, Walk};
 use crate::number::{Conversion, Double, Nearby};
 use crate::trajectory::{Neighbours, Resolution, Survey, half_ulp};
 
@@ -189,20 +189,19 @@ impl<'a> Pass<'a> {
     /// One row by way of double-double.
     fn add(&mut self, chunk: &Chunk, row: usize, kept: bool) {
         let (time, blur) = (chunk.times[row], chunk.blurs[row]);
-        let (time, moved) = self.go(time, blur);
+        let there = self.go(time, blur);
         let channels = self.comparison.channels;
         let mut keep = kept.then(|| Kept {
             number: chunk.first + row as u64,
             time: (time.to_f64(), blur),
             channels: vec![None; channels.len()],
         });
-        for (place, (channel, _, limit)) in channels.iter().enumerate() {
+        for (place, (_, _, limit)) in channels.iter().enumerate() {
             let written = chunk.values[row * channels.len() + place];
             if written.is_nan() {
                 continue;
             }
-            let (mark, value, digits) = self.mark(place, (time, blur), written, &moved);
-            let truth = self.walk.values().value[*channel].to_f64();
+            let (mark, [value, truth], digits) = self.mark(place, (time, blur), written, &there);
             if let Some(keep) = &mut keep {
                 keep.channels[place] = Some(KeptValue {
                     value,
@@ -219,33 +218,73 @@ impl<'a> Pass<'a> {
         self.part.kept.extend(keep);
     }
 
-    /// Moves to a time, or to the jump that it fell short of by its rounding alone; how far the
-    /// exact values move within the blur, if they do.
-    fn go(&mut self, time: Double, blur: f64) -> (Double, Option<Vec<f64>>) {
-        let exact = self.comparison.exact;
-        let ulps = 4.0 * f64::EPSILON * time.to_f64().abs();
-        let time = match exact.has_feed_through() {
-            true => exact.jump_after(time, ulps).unwrap_or(time),
-            false => time,
-        };
+    /// Moves to a time, or to the jump that it fell short of by its rounding alone.
+    fn go(&mut self, time: Double, blur: f64) -> There {
+        if let Some(jump) = self.jump_within_rounding(time, blur) {
+            return self.go_to_jump(time, blur, jump);
+        }
         self.walk.go(time);
-        (time, self.moved_by(time, blur))
+        There {
+            moved: self.moved_by(time, blur),
+            before: None,
+        }
     }
 
-    /// One value beside the exact one where the walk is, as converted, and what its digits
-    /// resolve.
+    /// The jump that a stamp may lie on either side of by nothing but its rounding, where outputs
+    /// jump with it. Stamps that are known exactly are on their side of it, but for those that a
+    /// program has summed up to a few units below.
+    fn jump_within_rounding(&self, time: Double, blur: f64) -> Option<Double> {
+        let exact = self.comparison.exact;
+        if !exact.has_feed_through() || exact.fastest_rate() * blur > HARDLY {
+            return None;
+        }
+        let ulps = 4.0 * f64::EPSILON * time.to_f64().abs();
+        let back = Double::from(blur);
+        let jump = exact.jump_after(time - back, blur + blur.max(ulps))?;
+        (jump.to_f64() > exact.from().to_f64()).then_some(jump)
+    }
+
+    /// Both sides of a jump at once.
+    fn go_to_jump(&mut self, time: Double, blur: f64, jump: Double) -> There {
+        let exact = self.comparison.exact;
+        let sides = self
+            .sides
+            .get_or_insert_with(|| [exact.walk(), exact.walk()]);
+        let walk = &mut sides[0];
+        // Short of the jump by next to nothing.
+        let least = Double::from(1e-24 * jump.to_f64().abs());
+        let before = if time < jump { time } else { jump - least };
+        let values = walk.go(before).clone();
+        let rates = walk.approx_rates();
+        self.walk.go(if time < jump { jump } else { time });
+        let rates = rates.iter().zip(self.walk.approx_rates());
+        let moved = rates.map(|(before, after)| MORE * before.abs().max(after.abs()) * blur);
+        There {
+            moved: (blur > 0.0).then(|| moved.collect()),
+            before: Some(values),
+        }
+    }
+
+    /// One value beside the exact one there, both as converted, and what its digits resolve.
     fn mark(
         &self,
         place: usize,
         (time, blur): (Double, f64),
         written: f64,
-        moved: &Option<Vec<f64>>,
-    ) -> (Mark, f64, [f64; 2]) {
+        there: &There,
+    ) -> (Mark, [f64; 2], [f64; 2]) {
         let (channel, conversion, _) = self.comparison.channels[place];
-        let values = self.walk.values();
-        let truth = values.value[channel];
         let value = conversion.apply(Double::from(written));
-        let rest = moved.as_ref().map_or(0.0, |moved| moved[channel]) + values.bound[channel];
+        let mut values = self.walk.values();
+        let gap = |values: &Values| (value - values.value[channel]).abs().to_f64();
+        if let Some(before) = &there.before
+            && gap(before) < gap(values)
+        {
+            values = before;
+        }
+        let truth = values.value[channel];
+        let moved = there.moved.as_ref().map_or(0.0, |moved| moved[channel]);
+        let rest = moved + values.bound[channel];
         let as_printed = self.survey.channels[place];
         let digits = [as_printed, Resolution::Full]
             .map(|resolution| conversion.stretch(resolution.at(written)));
@@ -257,13 +296,14 @@ impl<'a> Pass<'a> {
             size: truth.to_f64().abs(),
             doubts: digits.map(|digits| digits + rest),
         };
-        (mark, value.to_f64(), digits)
+        (mark, [value, truth].map(Double::to_f64), digits)
     }
 
     /// A value that was computed the quick way, once more by way of double-double.
     pub(super) fn again(&mut self, place: usize, mark: &Mark) -> Mark {
-        let (time, moved) = self.go(mark.time, mark.blur);
-        self.mark(place, (time, mark.blur), mark.written, &moved).0
+        let there = self.go(mark.time, mark.blur);
+        self.mark(place, (mark.time, mark.blur), mark.written, &there)
+            .0
     }
 
     /// How far the exact values move within the rounding of the stamp.
@@ -304,6 +344,17 @@ impl<'a> Pass<'a> {
     }
 }
 
+/// What is known of the exact values at the time of a row, beside those where the walk is.
+struct There {
+    /// How far they move within the rounding of the stamp, if they do.
+    moved: Option<Vec<f64>>,
+    /// Those before a jump, where the stamp may lie on either side of it: the nearer ones count.
+    before: Option<Values>,
+}
+
+/// In units of the fastest rate: the rounding of stamps of double precision or nearly so, within
+/// which nothing can happen but a jump.
+const HARDLY: f64 = 1e-6;
 /// What a rate may change by within a blur that hardly moves the fastest mode.
 const MORE: f64 = 1.1;
 

@@ -33,6 +33,11 @@ pub fn ask(linear: &Linear, record: &Record, claimed: &Claimed) -> (Evidence, Op
         if answer.support != Support::Contradicts {
             return answer;
         }
+        if claimed.methods.is_empty() && linear.stands_still() {
+            let text = "no mode of the case grows or decays, so that methods meet each other's rows at \
+                        other steps; name the method, or run a case that has a time constant";
+            return answer.left_open(text.to_owned());
+        }
         if starts_otherwise(linear, record, claimed, &steps) {
             return answer.left_open(format!(
                 "the rows fit {} but for the first of them: another method has made the first \

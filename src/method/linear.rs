@@ -103,6 +103,17 @@ impl Linear {
         self
     }
 
+    /// True where no mode moves by itself: some power of the matrix is zero, as with chains of
+    /// integrators.
+    pub fn stands_still(&self) -> bool {
+        let (mut power, mut exponent) = (self.matrix.clone(), 1);
+        while exponent < self.size() {
+            power = power.product(&power);
+            exponent *= 2;
+        }
+        power.rows().flatten().all(|&entry| entry == 0.0)
+    }
+
     /// Number of states.
     pub fn size(&self) -> usize {
         self.start.len()

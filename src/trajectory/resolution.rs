@@ -57,7 +57,7 @@ impl Resolution {
             Resolution::Full => true,
             Resolution::Decimals(digits)
             | Resolution::Significant(digits)
-            | Resolution::Coarser(digits, _) => digits >= 9,
+            | Resolution::Coarser(digits, _) => digits >= 8,
             Resolution::Half | Resolution::Single => false,
         }
     }

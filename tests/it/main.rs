@@ -76,6 +76,9 @@ mod disguises;
 mod methods;
 mod misread;
 
+/// Right files that once failed, claims that were believed on too little.
+mod healthy;
+
 /// Factors of single modes: measured against published ones.
 mod growth;
 
