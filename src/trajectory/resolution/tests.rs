@@ -465,3 +465,15 @@ fn digits_of_one_number_over_two_decades_are_significant() {
     assert!(column(12, nine).is_clear());
     assert!(!column(12, |k| format!("{}", 100.0 / (3.1 + f64::from(k)))).is_clear());
 }
+
+// 2114583.25 is a number of single precision: 2114583.2 and 2114583.3 are its shortest texts.
+#[test]
+fn either_of_two_shortest_texts_is_of_single_precision() {
+    for text in ["2114583.2", "2114583.3", "2114583.5", "2114583.25"] {
+        let digits = text.len() as u8 - 1;
+        assert!(is_single(text.parse().unwrap(), digits), "{text}");
+    }
+    for text in ["2114583.1", "2114583.4"] {
+        assert!(!is_single(text.parse().unwrap(), 8), "{text}");
+    }
+}
