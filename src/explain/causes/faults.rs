@@ -100,6 +100,7 @@ pub(super) fn of_faults(trouble: &Trouble, rows: &Rows, names: &Names, before: G
         }
         let mut candidates = written::candidates(rows, names, &base, 0.0, before);
         let exact = matches!(way, Way::Exact);
+        let unnamed = method.is_none_or(|method| !trouble.is_claimed(method));
         if exact {
             candidates.extend(written::half_shifted(linear, rows, names));
             candidates.extend(written::candidates(
@@ -115,10 +116,13 @@ pub(super) fn of_faults(trouble: &Trouble, rows: &Rows, names: &Names, before: G
                 linear, rows, names, way, model_step, before, &rough,
             ));
         }
+        // A number that could not be found explains nothing.
+        candidates.retain(|one| one.number.is_none_or(f64::is_finite));
         for candidate in candidates {
             let after = rows.gap(&candidate.values);
             let left_over = after.share / before.share.max(f64::MIN_POSITIVE);
-            if after.closes(before) && !(exact && may_be_a_method(linear, &candidate, model_step)) {
+            if after.closes(before) && !(unnamed && may_be_a_method(linear, &candidate, model_step))
+            {
                 let one_more = ranked(candidate, left_over, *method, after.ratio);
                 one.found.push(one_more);
             } else if exact
@@ -163,7 +167,8 @@ pub(super) fn of_faults(trouble: &Trouble, rows: &Rows, names: &Names, before: G
 }
 
 /// Any method moves the rates of a model a little, by up to half of what the fastest mode
-/// does in a step: a scale within that, on top of the exact solution, is no fault.
+/// does in a step: a scale within that, on top of the exact solution or of a method that nobody
+/// named, is no fault.
 fn may_be_a_method(linear: &Linear, candidate: &Candidate, step: f64) -> bool {
     let least = 0.6 * linear.matrix.row_sum_norm() * step;
     let moves_more = |factor: f64| factor.ln().abs() > least;
