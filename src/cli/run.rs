@@ -102,7 +102,7 @@ fn run_audit(arguments: &AuditArguments) -> Result<u8, Stop> {
     let (mut plan, reviewer) = plan::plan(arguments)?;
     // Files of other parts are inputs too.
     let asked = reports::check(&arguments.write, &Inputs::of(arguments, &plan))?;
-    parts::take(arguments, &mut plan)?;
+    parts::take(arguments, &reviewer, &mut plan)?;
     let earlier = Earlier::read(&arguments.before)?;
     let mut outcome = watched::audit(plan, arguments.quiet);
     reviewer.conclude(&mut outcome);
