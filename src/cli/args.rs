@@ -154,7 +154,7 @@ pub struct ReviewArguments {
     #[arg(long, value_name = "FILE.toml")]
     pub limits: Option<PathBuf>,
     /// What has to be there, a TOML file with `[[require]]`, and limits as for --limits; what
-    /// is missing fails the audit
+    /// is missing fails the audit (with --part `stepgauge merge --require` looks for it)
     #[arg(long, value_name = "FILE.toml")]
     pub require: Option<PathBuf>,
     /// Whether a submission may replace parameters of its case [default: allow]

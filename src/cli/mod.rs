@@ -10,6 +10,7 @@ mod methods;
 mod parts;
 mod plan;
 mod reports;
+mod required;
 mod reviewer;
 mod run;
 mod steps;

@@ -4,9 +4,12 @@ use std::path::{Path, PathBuf};
 
 use clap::Args;
 
-use super::args::{AuditArguments, Before, RelativeTo, Whether};
+use super::args::{AuditArguments, Before, RelativeTo, Sources, Whether};
 use super::earlier::{self, Earlier};
+use super::plan::library;
 use super::reports::{Inputs, check_merged};
+use super::required::require;
+use super::reviewer::Reviewer;
 use crate::audit::Plan;
 use crate::fault::Fault;
 use crate::outcome::Changes;
@@ -40,6 +43,14 @@ pub struct MergeArguments {
     /// An earlier report to compare with
     #[command(flatten)]
     pub before: Before,
+    /// Holds the whole against what has to be there, as `audit --require` does; the parts must
+    /// have been audited by its limits and refusals: with the same --require, or with --limits
+    /// where it has none
+    #[arg(long, value_name = "FILE.toml")]
+    pub require: Option<PathBuf>,
+    /// The --cases of the parts, where --require is given (repeatable)
+    #[arg(long, value_name = "DIR", requires = "require")]
+    pub cases: Vec<PathBuf>,
 }
 
 /// What `--part` says: which part, of how many.
@@ -58,9 +69,12 @@ pub(super) fn share_of(text: &str) -> Result<(u32, u32), String> {
 /// Leaves the part of a plan that was asked for.
 ///
 /// # Errors
-/// `--against` and `--require` beside it: what other parts audit would seem to be gone, or
-/// missing.
-pub(super) fn take(arguments: &AuditArguments, plan: &mut Plan) -> Result<(), Fault> {
+/// `--against` beside it: what other parts audit would seem to be gone.
+pub(super) fn take(
+    arguments: &AuditArguments,
+    reviewer: &Reviewer,
+    plan: &mut Plan,
+) -> Result<(), Fault> {
     let Some((part, of)) = arguments.part else {
         return Ok(());
     };
@@ -68,16 +82,11 @@ pub(super) fn take(arguments: &AuditArguments, plan: &mut Plan) -> Result<(), Fa
         let fault = Fault::new("--against goes with a whole audit, --part audits a share of it");
         return Err(fault.help("give `--against` to `stepgauge merge`"));
     }
-    if arguments.review.require.is_some() {
-        let text = "--require goes with a whole audit, --part audits a share of it";
-        let help = "audit the whole tree with `--require`; `--limits` and `--own-parameters` \
-                    go with `--part`";
-        return Err(Fault::new(text).help(help));
-    }
     let shown = |path: &PathBuf| path.to_string_lossy().into_owned();
     let asked = Asked {
         paths: arguments.paths.iter().map(shown).collect(),
         options: options(arguments),
+        terms: reviewer.terms().map(str::to_owned),
     };
     divide(plan, part, of, &asked);
     Ok(())
@@ -136,12 +145,15 @@ pub(super) struct Merged {
     pub changes: Option<Changes>,
 }
 
-/// Reads all parts, joins them and writes the report.
+/// Reads all parts, joins them, holds them against what is required and writes the report.
 ///
 /// # Errors
 /// All that is wrong with the reports; then nothing is written.
 pub(super) fn merge(arguments: &MergeArguments) -> Result<Merged, Vec<Fault>> {
-    let inputs = Inputs::merged(&arguments.parts, arguments.before.against.as_deref());
+    let library = library(&Sources {
+        cases: arguments.cases.clone(),
+    })?;
+    let inputs = Inputs::merged(arguments, &library);
     if let Some(path) = &arguments.write {
         check_merged(path, &inputs).map_err(|fault| vec![fault])?;
     }
@@ -155,8 +167,8 @@ pub(super) fn merge(arguments: &MergeArguments) -> Result<Merged, Vec<Fault>> {
         }
     }
     let joined = join(given);
-    let mut report = match joined {
-        Ok(report) if faults.is_empty() => report,
+    let mut joined = match joined {
+        Ok(joined) if faults.is_empty() => joined,
         Ok(_) => return Err(faults),
         Err(more) => {
             // A part that cannot be read is not missing too.
@@ -166,6 +178,8 @@ pub(super) fn merge(arguments: &MergeArguments) -> Result<Merged, Vec<Fault>> {
             return Err(faults);
         }
     };
+    require(arguments, &library, &mut joined)?;
+    let mut report = joined.report;
     let changes = earlier.map(|earlier| earlier.changes(&report));
     report.changes = changes.as_ref().map(changes_report);
     if let Some(path) = &arguments.write {

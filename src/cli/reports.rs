@@ -6,7 +6,9 @@ use std::io::{BufRead, BufReader, Read};
 use std::path::{Path, PathBuf};
 
 use super::args::AuditArguments;
+use super::parts::MergeArguments;
 use crate::audit::Plan;
+use crate::case::Library;
 use crate::fault::{Fault, quoted};
 use crate::outcome::Outcome;
 use crate::report::{
@@ -111,7 +113,7 @@ pub(super) fn check_merged(path: &Path, inputs: &Inputs) -> Result<(), Fault> {
             let place = place(path)?;
             let there = path.canonicalize();
             if there.is_ok_and(|there| inputs.files.contains(&there)) {
-                let fault = Fault::new("this report would overwrite the one of a part");
+                let fault = Fault::new("this report would overwrite a file that it is made from");
                 return Err(fault.help("give the report another name"));
             }
             inputs.spare(path, &place, kind)
@@ -181,11 +183,15 @@ impl Inputs {
         }
     }
 
-    /// Reports of parts that are merged, and the one that they are compared with.
-    pub(super) fn merged(parts: &[PathBuf], earlier: Option<&Path>) -> Inputs {
+    /// Reports of parts that are merged, the one that they are compared with, and the rules that
+    /// they are held against.
+    pub(super) fn merged(arguments: &MergeArguments, library: &Library) -> Inputs {
+        let earlier = arguments.before.against.as_deref();
+        let rules = arguments.require.iter().map(PathBuf::as_path);
+        let beside = rules.chain(library.files()).map(Path::to_owned);
         Inputs {
             earlier: earlier.and_then(|path| path.canonicalize().ok()),
-            ..Inputs::files(parts.iter().cloned())
+            ..Inputs::files(arguments.parts.iter().cloned().chain(beside))
         }
     }
 

@@ -10,7 +10,8 @@ use crate::case::{Case, Library, Replacements};
 use crate::fault::{Fault, nearest, quoted};
 use crate::method::{METHODS, find_all};
 use crate::number::plain;
-use crate::outcome::{LimitsFrom, Outcome, Review};
+use crate::outcome::{LimitsFrom, Outcome, Required, Review};
+use crate::parts::terms;
 use crate::submission::{Expect, LimitsStated, MOST_RULES_BYTES, Purpose, Rules};
 
 /// Somebody who accepts or refuses what others hand in.
@@ -23,6 +24,8 @@ pub(super) struct Reviewer {
     handed_in: Vec<PathBuf>,
     /// What reports tell; `None` where nothing is laid down.
     review: Option<Review>,
+    /// Digest of what the file of `--require` lays down for each submission, if it is named.
+    terms: Option<String>,
 }
 
 impl Reviewer {
@@ -57,6 +60,7 @@ impl Reviewer {
         if !faults.is_empty() {
             return Err(faults);
         }
+        reviewer.terms = rules.as_ref().map(terms);
         reviewer.rules = rules.unwrap_or_default();
         if let (Some(limits), Some(file)) = (limits, &asked.limits) {
             if reviewer.rules.limits.is_some() || !reviewer.rules.case_limits.is_empty() {
@@ -82,6 +86,26 @@ impl Reviewer {
             required: Vec::new(),
         });
         Ok(reviewer)
+    }
+
+    /// The one whose rules joined parts are held against.
+    ///
+    /// # Errors
+    /// A file that cannot be read, all that is wrong with it.
+    pub(super) fn of_parts(path: &Path, library: &Library) -> Result<Reviewer, Vec<Fault>> {
+        let placed = |fault: Fault| fault.in_file(path);
+        let rules = rules(path, Purpose::Everything, library)
+            .map_err(|found| found.into_iter().map(placed).collect::<Vec<_>>())?;
+        Ok(Reviewer {
+            terms: Some(terms(&rules)),
+            rules,
+            ..Reviewer::default()
+        })
+    }
+
+    /// Digest of what the file of `--require` lays down for each submission, if it is named.
+    pub(super) fn terms(&self) -> Option<&str> {
+        self.terms.as_deref()
     }
 
     /// Lays the rules down for one submission.
@@ -142,13 +166,21 @@ impl Reviewer {
         file.is_ok_and(|file| self.handed_in.iter().any(|folder| file.starts_with(folder)))
     }
 
-    /// Holds what was found against what has to be there.
+    /// Holds what was found against what has to be there; a part of it is told the rules alone.
     pub(super) fn conclude(&self, outcome: &mut Outcome) {
-        let required = required(&self.rules.requirements, outcome);
+        let required = match outcome.part {
+            Some(_) => Vec::new(),
+            None => self.required(outcome),
+        };
         outcome.review = self
             .review
             .clone()
             .map(|review| Review { required, ..review });
+    }
+
+    /// What came of each requirement.
+    pub(super) fn required(&self, outcome: &Outcome) -> Vec<Required> {
+        required(&self.rules.requirements, outcome)
     }
 }
 

@@ -40,6 +40,9 @@ pub struct Whole {
     pub texts: String,
     /// Digest of the cases beside the built-in ones.
     pub cases: String,
+    /// Digest of the terms that the file of `--require` lays down, if there is one; what it
+    /// requires is no matter of a part.
+    pub terms: Option<String>,
 }
 
 impl Part {

@@ -5,7 +5,7 @@ use std::collections::BTreeMap;
 use std::path::PathBuf;
 
 use crate::fault::{Fault, quoted};
-use crate::report::{AuditReport, PartReport, Summary};
+use crate::report::{AuditReport, PartReport, Summary, WholeReport};
 
 /// Numbers of missing parts that are listed.
 const MOST_LISTED: usize = 10;
@@ -19,12 +19,21 @@ pub struct Given {
     pub report: AuditReport,
 }
 
+/// All parts together.
+#[derive(Clone, Debug)]
+pub struct Joined {
+    /// The report of the undivided audit, but for what `--require` looks for.
+    pub report: AuditReport,
+    /// What was divided.
+    pub whole: WholeReport,
+}
+
 /// Joins the reports of all parts, in whatever order.
 ///
 /// # Errors
 /// Reports that are no parts, of other audits or versions, interrupted, damaged, given twice;
 /// parts that are missing.
-pub fn join(given: Vec<Given>) -> Result<AuditReport, Vec<Fault>> {
+pub fn join(given: Vec<Given>) -> Result<Joined, Vec<Fault>> {
     let mut faults = Vec::new();
     let mut parts: BTreeMap<u32, (Given, PartReport)> = BTreeMap::new();
     let mut first: Option<(PathBuf, PartReport)> = None;
@@ -67,7 +76,11 @@ pub fn join(given: Vec<Given>) -> Result<AuditReport, Vec<Fault>> {
     if let Some(fault) = missing(&parts, known.of) {
         return Err(vec![fault]);
     }
-    whole(parts.into_values(), known.whole.submissions).map_err(|fault| vec![fault])
+    let report = whole(parts.into_values(), known.whole.submissions);
+    Ok(Joined {
+        report: report.map_err(|fault| vec![fault])?,
+        whole: known.whole,
+    })
 }
 
 fn name(part: &PartReport) -> String {
@@ -133,6 +146,8 @@ fn difference(known: &PartReport, part: &PartReport) -> Option<String> {
         "other paths were audited"
     } else if whole.options != known.options {
         "other options were given"
+    } else if whole.terms != known.terms {
+        "`--require` laid down other terms"
     } else if whole.cases != known.cases {
         "the cases of `--cases` have changed"
     } else if whole.names != known.names || whole.submissions != known.submissions {

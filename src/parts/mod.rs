@@ -14,8 +14,8 @@ use std::collections::BinaryHeap;
 use crate::audit::Plan;
 use crate::outcome::Part;
 
-pub use join::{Given, join};
-pub use whole::{Asked, digest, whole};
+pub use join::{Given, Joined, join};
+pub use whole::{Asked, cases, digest, terms, whole};
 
 /// Most parts that an audit is divided into.
 pub const MOST_PARTS: u32 = 10_000;

@@ -9,7 +9,7 @@ use std::path::Path;
 
 use crate::audit::Plan;
 use crate::outcome::Whole;
-use crate::submission::MOST_SUBMISSION_BYTES;
+use crate::submission::{MOST_SUBMISSION_BYTES, Rules};
 
 /// What the user asked for.
 #[derive(Clone, Debug, Default)]
@@ -18,11 +18,13 @@ pub struct Asked {
     pub paths: Vec<String>,
     /// Options that change what an audit finds.
     pub options: Vec<String>,
+    /// Digest of the terms of `--require`, if it was given.
+    pub terms: Option<String>,
 }
 
 /// What a plan is of, and the bytes of each of its submissions that can be read.
 pub fn whole(plan: &Plan, asked: &Asked) -> (Whole, Vec<u64>) {
-    let [mut names, mut sizes, mut texts, mut cases] = [Digest::new(); 4];
+    let [mut names, mut sizes, mut texts] = [Digest::new(); 3];
     for missing in &plan.unreadable {
         names.add(missing.name.as_bytes());
         for fault in &missing.faults {
@@ -45,9 +47,6 @@ pub fn whole(plan: &Plan, asked: &Asked) -> (Whole, Vec<u64>) {
             texts.add(&start(file));
         }
     }
-    for file in plan.library.files() {
-        cases.add(&start(file));
-    }
     let unreadable = plan.unreadable.len();
     let whole = Whole {
         paths: asked.paths.clone(),
@@ -58,9 +57,26 @@ pub fn whole(plan: &Plan, asked: &Asked) -> (Whole, Vec<u64>) {
         names: names.text(),
         sizes: sizes.text(),
         texts: texts.text(),
-        cases: cases.text(),
+        cases: cases(plan.library.files()),
+        terms: asked.terms.clone(),
     };
     (whole, bytes)
+}
+
+/// Digest of the cases beside the built-in ones.
+pub fn cases<'a>(files: impl Iterator<Item = &'a Path>) -> String {
+    let mut digest = Digest::new();
+    for file in files {
+        digest.add(&start(file));
+    }
+    digest.text()
+}
+
+/// Digest of what the file of `--require` lays down for each submission.
+pub fn terms(rules: &Rules) -> String {
+    let mut digest = Digest::new();
+    digest.add(rules.terms().as_bytes());
+    digest.text()
 }
 
 /// Of a file that a user names beside the submissions, such as that of `--limits`.

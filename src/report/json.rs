@@ -50,11 +50,12 @@ pub fn audit_report(outcome: &Outcome) -> AuditReport {
         scope: SCOPE.to_owned(),
         changes: outcome.changes.as_ref().map(changes_report),
         part: outcome.part.as_ref().map(part),
-        review: outcome.review.as_ref().map(review),
+        review: outcome.review.as_ref().map(review_report),
     }
 }
 
-fn review(review: &Review) -> ReviewReport {
+/// The rules of a reviewer, as a report holds them.
+pub fn review_report(review: &Review) -> ReviewReport {
     let word = |refuses: bool| if refuses { "refuse" } else { "allow" }.to_owned();
     let required = |one: &Required| RequiredReport {
         case: one.case.clone(),
@@ -90,6 +91,7 @@ fn part(part: &Part) -> PartReport {
             sizes: whole.sizes.clone(),
             texts: whole.texts.clone(),
             cases: whole.cases.clone(),
+            terms: whole.terms.clone(),
         },
         places: part.places.clone(),
         places_not_audited: part.places_not_audited.clone(),

@@ -18,11 +18,12 @@ pub fn merged_text(
     changes: Option<&Changes>,
     screen: Screen,
 ) -> Result<String, Fault> {
-    let Some(mut outcome) = restored(report) else {
-        let fault = Fault::new("a verdict, an expectation or a role is none that reports have");
-        return Err(fault.help("a part is damaged: audit it again"));
-    };
+    let mut outcome = restored(report)?;
     outcome.changes = changes.cloned();
+    for submission in &mut outcome.submissions {
+        // The sections on methods need more than a JSON report holds.
+        submission.evidence = None;
+    }
     let mut text = String::new();
     if !outcome.submissions.is_empty() {
         let headings = ["verdict", "submission", "case", "channel", ">worst error"];

@@ -1,18 +1,32 @@
 //! A report that was read, back to an outcome: as much of it as the lines below the table of
-//! the terminal need. What the JSON report does not hold stays empty, so this is for
-//! `merged_text` alone.
+//! the terminal need, and whoever holds it against requirements. What the JSON report does not
+//! hold stays empty, so this is for joined parts alone.
 
-use super::wire::{AuditReport, ChannelReport, ReviewReport, RunReport, SubmissionReport};
+use super::wire::{
+    AuditReport, ChannelReport, ClaimReport, EvidenceReport, RequiredReport, ReviewReport,
+    RunReport, SubmissionReport,
+};
 use crate::fault::Fault;
-use crate::judge::Verdict;
+use crate::judge::{Support, Verdict};
 use crate::outcome::{
-    AdviceOutcome, Audited, CauseOutcome, ChannelOutcome, ErrorOutcome, LimitsFrom, NotAudited,
-    Outcome, Review, RowOutcome, RunOutcome, SettingsOutcome,
+    AdviceOutcome, Audited, CauseOutcome, ChannelOutcome, ClaimOutcome, ErrorOutcome,
+    EvidenceOutcome, LimitsFrom, NotAudited, Outcome, Required, Review, RowOutcome, RunOutcome,
+    SettingsOutcome,
 };
 use crate::submission::{Expect, Role, Setting, Submission};
 
-/// As far as it goes; `None` where a word is none that reports use.
-pub(super) fn restored(report: &AuditReport) -> Option<Outcome> {
+/// As far as it goes.
+///
+/// # Errors
+/// A report with words that no report has.
+pub fn restored(report: &AuditReport) -> Result<Outcome, Fault> {
+    outcome(report).ok_or_else(|| {
+        let fault = Fault::new("a verdict, an expectation or a role is none that reports have");
+        fault.help("a part is damaged: audit it again")
+    })
+}
+
+fn outcome(report: &AuditReport) -> Option<Outcome> {
     let submissions = report.submissions.iter().map(submission);
     let not_audited = report.not_audited.iter().map(|missing| NotAudited {
         name: missing.name.clone(),
@@ -26,7 +40,6 @@ pub(super) fn restored(report: &AuditReport) -> Option<Outcome> {
     })
 }
 
-/// Parts have no requirements.
 fn review(report: &ReviewReport) -> Review {
     Review {
         limits: report.limits.clone(),
@@ -34,7 +47,19 @@ fn review(report: &ReviewReport) -> Review {
         refuses_own_parameters: report.own_parameters == "refuse",
         refuses_own_cases: report.own_cases == "refuse",
         refuses_controls: report.controls == "refuse",
-        required: Vec::new(),
+        required: report.required.iter().map(required).collect(),
+    }
+}
+
+fn required(report: &RequiredReport) -> Required {
+    Required {
+        case: report.case.clone(),
+        runs: report.runs,
+        rows: report.rows,
+        methods: report.methods.clone(),
+        method_shown: report.method_shown,
+        met_by: report.met_by.clone(),
+        text: report.text.clone(),
     }
 }
 
@@ -62,6 +87,13 @@ fn submission(report: &SubmissionReport) -> Option<Audited> {
         reasons: report.reasons.clone(),
         notes: report.notes.clone(),
         runs: report.runs.iter().map(run).collect::<Option<_>>()?,
+        // Every run holds what the submission claims.
+        claimed_method: (report.evidence.iter())
+            .find_map(|evidence| evidence.runs.first()?.claim.method.clone()),
+        evidence: match &report.evidence {
+            Some(report) => Some(evidence(report)?),
+            None => None,
+        },
         causes: report
             .causes
             .iter()
@@ -92,6 +124,28 @@ fn submission(report: &SubmissionReport) -> Option<Audited> {
             text: advice.text.clone(),
         }),
         ..Audited::new(name, case, String::new(), &stated, limits_from)
+    })
+}
+
+/// The claims and what the rows say of them.
+fn evidence(report: &EvidenceReport) -> Option<EvidenceOutcome> {
+    Some(EvidenceOutcome {
+        support: None,
+        claims: report.claims.iter().map(claim).collect::<Option<_>>()?,
+        families: Vec::new(),
+        runs: Vec::new(),
+        growth: None,
+    })
+}
+
+fn claim(report: &ClaimReport) -> Option<ClaimOutcome> {
+    let supports = [Support::Agrees, Support::Contradicts, Support::CannotTell];
+    let mut supports = supports.into_iter();
+    Some(ClaimOutcome {
+        what: (["method", "order", "step"].into_iter()).find(|what| *what == report.what)?,
+        stated: report.stated.clone(),
+        support: supports.find(|support| support.word() == report.verdict)?,
+        text: report.text.clone(),
     })
 }
 

@@ -107,6 +107,9 @@ pub struct WholeReport {
     pub sizes: String,
     pub texts: String,
     pub cases: String,
+    /// Of what `--require` lays down for each submission; absent without it.
+    #[serde(default, skip_serializing_if = "Option::is_none")]
+    pub terms: Option<String>,
 }
 
 /// An audit beside an earlier one.

@@ -114,6 +114,19 @@ impl Rules {
         reader.conclude(rules)
     }
 
+    /// What is laid down for every submission before it is audited, as text: two files with
+    /// the same text differ in what they require at most.
+    pub fn terms(&self) -> String {
+        // `allow` is what holds where nothing is said.
+        let own_parameters = self.refuses_own_parameters == Some(true);
+        let refused = (
+            own_parameters,
+            self.refuses_own_cases,
+            self.refuses_controls,
+        );
+        format!("{:?} {:?} {refused:?}", self.limits, self.case_limits)
+    }
+
     /// The limits for a submission of this case, as far as a reviewer states any.
     pub fn limits_of(&self, case: Option<&str>) -> Option<&LimitsStated> {
         let own = case.and_then(|case| self.case_limits.get(case));

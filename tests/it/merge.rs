@@ -3,6 +3,7 @@ use std::path::Path;
 use serde_json::Value;
 
 use crate::folder::{CASE, Folder, Ran, cell, edited, printed, sound};
+use crate::reviewers;
 
 fn submission(folder: &Folder, name: &str, head: &str, bytes: Vec<u8>) {
     let text = format!("case = \"{CASE}\"\n{head}\n[[runs]]\nfile = \"run.csv\"\nstep = 60\n");
@@ -76,19 +77,27 @@ fn below(screen: &str) -> &str {
 
 /// Divides in every way and finds the undivided report again.
 fn divides(folder: &Folder, paths: &[&str], ways: &[usize]) {
+    divides_with(folder, paths, ways, &[]);
+}
+
+/// The same, where `merge` is given more.
+fn divides_with(folder: &Folder, paths: &[&str], ways: &[usize], more: &[&str]) -> Ran {
     let whole = folder.run(&[&["audit"], paths, &["--write", "whole.json"]].concat());
     let report = read(folder, "whole.json");
     for &of in ways {
         let statuses = parts(folder, paths, of);
-        assert_eq!(
-            statuses.iter().max(),
-            Some(&whole.status),
-            "{of}: {statuses:?}"
-        );
+        // What is missing shows in the whole alone.
+        if more.is_empty() {
+            assert_eq!(
+                statuses.iter().max(),
+                Some(&whole.status),
+                "{of}: {statuses:?}"
+            );
+        }
         let mut names = names(of);
         names.rotate_left(of / 2);
         names.reverse();
-        let merged = merge(folder, &names, &["--write", "m.json"]);
+        let merged = merge(folder, &names, &[&["--write", "m.json"], more].concat());
         assert_eq!(merged.status, whole.status, "{of}: {}", merged.seen());
         assert!(
             read(folder, "m.json") == report,
@@ -101,6 +110,7 @@ fn divides(folder: &Folder, paths: &[&str], ways: &[usize]) {
         }
         assert_eq!(merged.stderr, "", "{of}");
     }
+    whole
 }
 
 #[test]
@@ -413,7 +423,7 @@ fn arguments_that_do_not_go_together() {
         ),
         (
             &["merge", "p-1.json", "--write", "./p-1.json"],
-            "would overwrite the one of a part",
+            "would overwrite a file that it is made from",
         ),
         (
             &[
@@ -466,4 +476,90 @@ fn merged_parts_are_compared_with_an_earlier_report() {
         "{}",
         merged.stdout
     );
+}
+
+/// Ladders and single runs of which each falls short of something else.
+fn handed_in() -> Folder {
+    let folder = Folder::new();
+    let submit = |name: &str, head: &str, runs: &[f64]| {
+        let file = |&step: &f64| (Some(step), reviewers::rk4(step));
+        let files: Vec<_> = runs.iter().map(file).collect();
+        reviewers::submit(&folder, name, head, &files);
+    };
+    let claimed = |method: &str| format!("[claims]\nmethod = \"{method}\"");
+    submit("s/alder", &claimed("RK4"), &[0.2, 0.1, 0.05]);
+    submit("s/birch", "[limits]\nabsolute = 1e-12", &[0.1, 0.05]);
+    submit("s/cedar", &claimed("my own"), &[0.2, 0.1, 0.1]);
+    submit(
+        "s/control",
+        "expect = \"fail\"\n[limits]\nabsolute = 1e-300",
+        &[0.1],
+    );
+    submit("s/own", "[parameters]\nR = 1.5", &[0.1, 0.05]);
+    folder
+}
+
+const RULES: [(&str, i32); 10] = [
+    (
+        "runs = 3\nrows = 201\nmethods = [\"RK4\"]\nmethod_shown = true",
+        0,
+    ),
+    ("runs = 4", 1),
+    ("rows = 202", 1),
+    ("methods = [\"Heun\", \"RK4\"]", 0),
+    ("methods = [\"Heun\"]", 1),
+    ("method_shown = true", 0),
+    ("[[require]]\ncase = \"thermal/cooling-body\"", 1),
+    ("[limits]\nabsolute = 1e-300", 1),
+    (
+        "[case_limits.\"electrical/rc-constant\"]\nabsolute = 1e-3\nrelative = 1e-3",
+        0,
+    ),
+    (
+        "[[require]]\ncase = \"electrical/rc-constant\"\nrows = 51",
+        0,
+    ),
+];
+
+/// What is required shows in the whole alone: `merge --require` is `audit --require`.
+#[test]
+fn requirements_are_held_against_the_whole() {
+    let folder = handed_in();
+    let head = format!("[[require]]\ncase = \"{}\"\n", reviewers::CASE);
+    let rules = "rules.toml";
+    let demanded = ["--require", rules];
+    let mut missing = 0;
+    for (text, status) in RULES {
+        folder.write(rules, format!("{head}{text}\n"));
+        let whole = divides_with(&folder, &["s", demanded[0], rules], &[1, 3], &demanded);
+        let report = read(&folder, "m.json");
+        assert!(
+            report.contains("\"required\": [\n      {"),
+            "{text}: {report}"
+        );
+        assert!(
+            whole.stdout.contains("\nRequired by rules.toml:\n"),
+            "{text}"
+        );
+        // The control passes here, and so is not in order.
+        assert_eq!(whole.status, 1, "{text}: {}", whole.stdout);
+        let met = !whole.stdout.contains("not met.");
+        assert_eq!(met, status == 0, "{text}: {}", whole.stdout);
+        missing += i32::from(!met);
+    }
+    assert_eq!(missing, 5);
+    // With nothing else amiss the requirement alone makes the status.
+    for name in ["s/control", "s/own", "s/birch"] {
+        std::fs::remove_dir_all(folder.path(name)).unwrap();
+    }
+    for (text, status) in [("runs = 3", 0), ("runs = 4", 1)] {
+        folder.write(rules, format!("{head}{text}\n"));
+        let whole = divides_with(&folder, &["s", demanded[0], rules], &[1, 2], &demanded);
+        assert_eq!(whole.status, status, "{text}: {}", whole.stdout);
+        assert_eq!(
+            parts(&folder, &["s", demanded[0], rules], 2),
+            [0, 0],
+            "{text}"
+        );
+    }
 }

@@ -11,7 +11,7 @@ const TAU: f64 = 1.5 * 0.68;
 const REPORTS: [&str; 5] = ["r.json", "r.xml", "r.md", "r.csv", "r.html"];
 
 /// Classical RK4 on the case, printed in full.
-fn rk4(step: f64) -> String {
+pub fn rk4(step: f64) -> String {
     let rate = |v: f64| (5.0 - v) / TAU;
     let (mut v, mut text) = (0.0, "t,v_c\n".to_owned());
     for k in 0..=(10.0 / step).round() as u32 {
