@@ -114,7 +114,7 @@ fn rows_are_missed_by_the_stated_step_where_stamps_are_coarse() {
 
 /// An error of first order in the step, as Euler's method has.
 fn ladder(steps: &[(f64, f64)], decimals: usize) -> Vec<(&'static str, Option<f64>, String)> {
-    let names = ["a.csv", "b.csv", "c.csv"];
+    let names = ["a.csv", "b.csv", "c.csv", "d.csv"];
     let files = steps.iter().zip(names).map(|(&(true_step, stated), name)| {
         let content = file(&grid(true_step), decimals, |t| {
             0.02 * true_step * (1.0 + t.sin())
