@@ -316,6 +316,13 @@ mod tests {
         assert!(!across(0.3, 9.9, 10.41));
         assert!(across(0.125, 9.875, 10.12));
         assert!(!across(0.125, 9.875, 10.13));
+        // From -4 to 6 it is half a unit likewise: steps of 0.3 end at 5.9.
+        let shifted = |end: f64| {
+            let even = (0..=33).map(|k| -4.0 + 0.3 * f64::from(k));
+            let stamps: Vec<(f64, f64)> = even.chain([end]).map(|stamp| (stamp, 0.0)).collect();
+            texts(-4.0, 6.0, 2, &stamps).2.is_empty()
+        };
+        assert!(shifted(6.39) && !shifted(6.41));
     }
 
     #[test]

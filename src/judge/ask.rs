@@ -184,3 +184,73 @@ fn misses_jumps(linear: &Linear, record: &Record, claimed: &Claimed) -> bool {
         (count - count.round()).abs() > ON_GRID
     })
 }
+
+#[cfg(test)]
+mod tests {
+    use super::super::planted::{claimed, family, method, tried};
+    use super::*;
+    use crate::case::Library;
+    use crate::method::Window;
+
+    /// A pulse from 600 s to 1500 s, in rows from `from` to `to`.
+    fn misses(step: f64, from: f64, to: f64) -> bool {
+        let case = Library::new().load("thermal/cold-room-defrost", &Default::default());
+        let linear = Linear::new(&case.unwrap());
+        let window = Window {
+            times: vec![from, to],
+            ..Window::default()
+        };
+        let record = Record {
+            windows: vec![window],
+            ..Record::default()
+        };
+        let claimed = Claimed {
+            step: Some(step),
+            ..claimed("Heun", &[])
+        };
+        misses_jumps(&linear, &record, &claimed)
+    }
+
+    #[test]
+    fn steps_miss_jumps_that_are_no_multiple_from_the_first_row() {
+        assert!(!misses(100.0, 0.0, 14400.0) && !misses(300.0, 0.0, 14400.0));
+        assert!(misses(70.0, 0.0, 14400.0) && misses(400.0, 0.0, 14400.0));
+        // From 100 s the jumps are 500 s and 1400 s away.
+        assert!(!misses(100.0, 100.0, 14400.0) && misses(300.0, 100.0, 14400.0));
+        // The first alone is met by 250 s, and only what jumps before the last row counts.
+        assert!(misses(250.0, 100.0, 1501.0));
+        assert!(!misses(250.0, 100.0, 1500.0) && !misses(70.0, 0.0, 600.0));
+        // What has jumped before the first row does not.
+        assert!(misses(70.0, 601.0, 14400.0) && !misses(70.0, 1500.0, 14400.0));
+        // Stamps round: a millionth of a step is none beside it.
+        assert!(!misses(100.0 * (1.0 + 5e-8), 0.0, 14400.0));
+        assert!(misses(100.0 * (1.0 + 1e-6), 0.0, 14400.0));
+        let none = Claimed {
+            step: None,
+            ..claimed("Heun", &[])
+        };
+        let case = Library::new().load("thermal/cold-room-defrost", &Default::default());
+        let linear = Linear::new(&case.unwrap());
+        assert!(!misses_jumps(&linear, &Record::default(), &none));
+    }
+    #[test]
+    fn a_name_is_ten_thousand_times_nearer_than_the_exact_solution() {
+        let named = |change: &dyn Fn(&mut Family)| {
+            let mut found = family(&tried("Heun", 1, 0.5, 1e-9));
+            change(&mut found);
+            has_a_name(&found)
+        };
+        // Half of what digits allow, so 5000 of it.
+        assert!(named(&|f| f.apart = 5001.0) && !named(&|f| f.apart = 4999.0));
+        assert!(!named(&|f| f.free = true) && !named(&|f| f.steps = 65));
+        assert!(!named(&|f| f.reading = Reading::Held));
+    }
+
+    #[test]
+    fn pairs_are_predicted_and_corrected() {
+        assert!(is_pair(method("Adams-Bashforth-Moulton 3")));
+        for name in ["Heun", "backward Euler", "Adams-Moulton 3", "BDF 2"] {
+            assert!(!is_pair(method(name)), "{name}");
+        }
+    }
+}

@@ -186,6 +186,13 @@ mod tests {
         assert!(!with(&|other| other.fit.compared = 15));
         assert!(!with(&|other| other.reading = Reading::Held));
         assert!(!with(&|other| other.steps = 65));
+        // Digits that let the claimed method come no closer than 1e-7 leave the hundredth alone.
+        let coarse = tried("backward Euler", 1, 10.0, 1e-6);
+        for (residual, undone) in [(0.99e-8, true), (1.01e-8, false)] {
+            let mut evidence = beside(vec![tried("Heun", 1, 0.5, residual)]);
+            evidence.exact = fit(9.0, 1.0);
+            assert_eq!(is_undone(&evidence, &coarse), undone, "{residual}");
+        }
         let mut free = own.clone();
         free.free = true;
         let evidence = beside(vec![tried("Heun", 1, 0.5, 0.99e-8)]);

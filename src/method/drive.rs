@@ -233,3 +233,98 @@ impl Drive {
         generator
     }
 }
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use crate::case::{Case, Replacements};
+    use crate::method::catalogue::find;
+
+    /// `x' = -2 x + y + a + b`, `y' = -y + c + d + 3`, with a sine, an exponential, a ramp and
+    /// a polynomial.
+    fn linear() -> Linear {
+        let input =
+            |name: &str, shape: &str| format!("[[inputs]]\nname = '{name}'\nunit = 'V'\n{shape}\n");
+        let inputs = [
+            input(
+                "a",
+                "shape = 'sine'\namplitude = 3\nangular_frequency = 4\nphase = 0.5",
+            ),
+            input("b", "shape = 'exponential'\nscale = 2\nrate = -0.5"),
+            input("c", "shape = 'ramp'\nslope = 0.25\nfrom = -1"),
+            input("d", "shape = 'polynomial'\ncoefficients = [1, -2, 0, 0.5]"),
+        ];
+        let state = |name: &str, rate: &str| {
+            format!("[[states]]\nname = '{name}'\nunit = 'V'\nstart = 0\nrate = '{rate}'\n")
+        };
+        let text = format!(
+            "title = 'trial'\nfield = 'trial'\nabout = ''\nsource = 'ours'\nhard_for = []\n\
+             [time]\nunit = 's'\nfrom = 0\nto = 10\n{}{}{}\
+             [limits]\nabsolute = 1\nrelative = 0\n",
+            state("x", "-2*x + y + a + b"),
+            state("y", "-y + c + d + 3"),
+            inputs.concat(),
+        );
+        Linear::new(&Case::parse("trial", &text, &Replacements::new()).unwrap())
+    }
+
+    /// The forcing of both states by its formulas.
+    fn forcing(t: f64) -> [f64; 2] {
+        let x = 3.0 * (4.0 * t + 0.5).sin() + 2.0 * (-0.5 * t).exp();
+        let y = 0.25 * (t + 1.0) + 1.0 - 2.0 * t + 0.5 * t.powi(3) + 3.0;
+        [x, y]
+    }
+
+    fn close(found: f64, wanted: f64) {
+        assert!(
+            (found - wanted).abs() < 1e-12 * wanted.abs().max(1.0),
+            "{found}, not {wanted}"
+        );
+    }
+
+    #[test]
+    fn inputs_go_on_as_their_formulas_do() {
+        let linear = linear();
+        let drive = Drive::new(&linear);
+        // One, then 2, 1, 2 and 4 numbers.
+        assert_eq!((drive.size, Drive::width(&linear)), (10, 10));
+        for (time, shift) in [(0.0, 0.1), (1.5, 0.7), (2.0, 3.0)] {
+            let state = drive.state(&linear, time, Side::After, 0.0);
+            let later = drive.flow(&linear, shift).apply(&state);
+            for (onto, wanted) in drive.onto.iter().zip(forcing(time + shift)) {
+                let found = onto.iter().zip(&later).map(|(p, w)| p * w).sum();
+                close(found, wanted);
+            }
+        }
+    }
+
+    #[test]
+    fn a_step_of_states_and_inputs_is_that_of_the_formula() {
+        let linear = linear();
+        let drive = Drive::new(&linear);
+        let (step, newest) = (0.05, 1.0);
+        let coefficients = find("AB3").unwrap().schemes[0].coefficients();
+        let recurrence = Recurrence::new(&coefficients, &linear, step, &Vec::new()).unwrap();
+        // Oldest first.
+        let states = [[0.3, -0.2], [0.5, 0.4], [0.8, -0.9]];
+        let mut stack: Vec<f64> = states.concat();
+        stack.extend(drive.state(&linear, newest, Side::After, 0.0));
+        let found = drive.joined(&linear, &recurrence).apply(&stack);
+        // x + h/12 (23 f_n - 16 f_(n-1) + 5 f_(n-2)).
+        let mut wanted = states[2];
+        for (back, weight) in [(0, 23.0), (1, -16.0), (2, 5.0)] {
+            let [x, y] = states[2 - back];
+            let [u, v] = forcing(newest - step * back as f64);
+            wanted[0] += step / 12.0 * weight * (-2.0 * x + y + u);
+            wanted[1] += step / 12.0 * weight * (-y + v);
+        }
+        for (found, wanted) in found.iter().zip([states[1], states[2], wanted].concat()) {
+            close(*found, wanted);
+        }
+        let later = drive.state(&linear, newest + step, Side::After, 0.0);
+        found[6..]
+            .iter()
+            .zip(&later)
+            .for_each(|(found, wanted)| close(*found, *wanted));
+    }
+}

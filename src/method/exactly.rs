@@ -44,3 +44,47 @@ fn steepest(record: &Record, window: &Window) -> Vec<f64> {
     }
     rates
 }
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    /// One channel, with one error at the last row.
+    fn ratio(first: u64, values: &[f64], doubt: f64, time_doubt: f64, from: f64) -> f64 {
+        let rows = values.len();
+        let mut errors = vec![0.0; rows];
+        errors[rows - 1] = 1e-3;
+        let record = Record {
+            channels: vec![0],
+            spacing: None,
+            unit: 1e-6,
+            windows: vec![Window {
+                first,
+                times: (0..rows).map(|k| from + 0.5 * k as f64).collect(),
+                time_doubts: vec![time_doubt; rows],
+                values: values.to_vec(),
+                errors,
+                doubts: vec![doubt; rows],
+            }],
+        };
+        exact_fit(&record).ratio
+    }
+
+    #[test]
+    fn digits_steps_and_stamps_allow_for_errors() {
+        let near = |found: f64, allowed: f64| {
+            let wanted = 1e-3 / allowed;
+            assert!((found / wanted - 1.0).abs() < 1e-9, "{found}, not {wanted}");
+        };
+        // Four roundings of a millionth of the peak, 2, for each step: row 1 is the 18th, with
+        // sixteen before the first; with 83 rows before the window it is the hundredth.
+        near(ratio(0, &[2.0, 2.0], 0.0, 0.0, 0.0), 8e-6 * 17.0);
+        near(ratio(83, &[2.0, 2.0], 0.0, 0.0, 0.0), 8e-6 * 100.0);
+        near(ratio(0, &[2.0, 2.0], 0.25, 0.0, 0.0), 0.25 + 8e-6 * 17.0);
+        // Two in half a unit of time is a rate of 4; stamps round twice in units of an ulp.
+        near(ratio(0, &[0.0, 2.0], 0.0, 0.01, 0.0), 0.04 + 8e-6 * 17.0);
+        let far = 2f64.powi(40);
+        let rounding = 4.0 * 2.0 * f64::EPSILON * (far + 0.5);
+        near(ratio(0, &[0.0, 2.0], 0.0, 0.0, far), rounding + 8e-6 * 17.0);
+    }
+}

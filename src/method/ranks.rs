@@ -51,3 +51,53 @@ fn permutations(size: usize) -> Vec<Ranks> {
     };
     shorter.into_iter().flat_map(with_last).collect()
 }
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use crate::case::{Case, Replacements};
+
+    fn orders(rates: &[&str]) -> Vec<Ranks> {
+        let state = |(i, rate): (usize, &&str)| {
+            format!("[[states]]\nname = 's{i}'\nunit = 'm'\nstart = 0\nrate = '{rate}'\n")
+        };
+        let states: String = rates.iter().enumerate().map(state).collect();
+        let text = format!(
+            "title = 'trial'\nfield = 'trial'\nabout = ''\nsource = 'ours'\nhard_for = []\n\
+             [time]\nunit = 's'\nfrom = 0\nto = 10\n{states}\
+             [[inputs]]\nname = 'u'\nunit = 'm'\nshape = 'constant'\nvalue = 1\n\
+             [limits]\nabsolute = 1\nrelative = 0\n"
+        );
+        rank_orders(&Linear::new(
+            &Case::parse("trial", &text, &Replacements::new()).unwrap(),
+        ))
+    }
+
+    #[test]
+    fn positions_are_moved_after_the_rates_or_before_them() {
+        let one_by_one = [vec![0, 1, 2, 3, 4, 5], vec![5, 4, 3, 2, 1, 0]];
+        // Three positions, each the integral of one rate.
+        let chain = ["s1", "-s0 - s1", "2*s3", "-s2 + s4 + u", "s5", "-s4 - s5"];
+        let mut wanted = vec![vec![1, 0, 1, 0, 1, 0], vec![0, 1, 0, 1, 0, 1]];
+        wanted.extend(one_by_one.clone());
+        assert_eq!(orders(&chain), wanted);
+        // None that is driven, moved by a constant, by itself or by two.
+        let others = ["s1 + u", "-s0 - s1", "s3 + 1", "-s2 - s3", "-s4", "s4 + s3"];
+        assert_eq!(orders(&others), one_by_one);
+    }
+
+    #[test]
+    fn few_states_are_tried_in_every_order() {
+        let mut found = orders(&["-s0 + s1 + u", "-s1 + s2", "-s2 + u"]);
+        found.sort();
+        let wanted = [
+            [0, 1, 2],
+            [0, 2, 1],
+            [1, 0, 2],
+            [1, 2, 0],
+            [2, 0, 1],
+            [2, 1, 0],
+        ];
+        assert_eq!(found, wanted);
+    }
+}

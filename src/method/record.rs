@@ -387,3 +387,75 @@ impl Signal {
         }
     }
 }
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use crate::case::Library;
+
+    /// One channel of ones at these times.
+    fn record(times: &[f64], time_doubt: f64, spacing: Option<(f64, f64)>) -> Record {
+        Record {
+            channels: vec![0],
+            spacing,
+            unit: f64::EPSILON / 2.0,
+            windows: vec![Window {
+                first: 0,
+                times: times.to_vec(),
+                time_doubts: vec![time_doubt; times.len()],
+                values: vec![1.0; times.len()],
+                errors: vec![0.0; times.len()],
+                doubts: vec![0.0; times.len()],
+            }],
+        }
+    }
+
+    #[test]
+    fn rows_of_every_later_window_are_wanted() {
+        for rows in [1500, 1569, 1570, 2000, 5000, 20_000, 70_000] {
+            let windows = windows(rows);
+            let later = windows.len() - 1;
+            for &(first, count) in windows[..later.max(1)].iter() {
+                assert!(
+                    (first..first + count).all(|row| next_wanted(row) == row),
+                    "{rows}"
+                );
+            }
+        }
+        // 3121 rows after the first 800 are 196 for each of sixteen windows: 256 apart. The
+        // twelfth begins at 800 + 12 * 256 = 3872 with 48 rows.
+        assert_eq!([3871, 3872, 3919].map(next_wanted), [3872, 3872, 3919]);
+        assert_eq!([3920, 4127].map(next_wanted), [4128, 4128]);
+    }
+
+    #[test]
+    fn rows_follow_each_other_within_what_stamps_spacing_and_sums_may_be_off() {
+        let follows = |from: f64, gap: f64, time_doubt: f64, doubt: f64| {
+            let record = record(&[from, from + gap], time_doubt, Some((1.0, doubt)));
+            record.follows(&record.windows[0], 1)
+        };
+        // Two stamps of 0.005 each, and a hundredth of them.
+        assert!(follows(0.0, 1.01, 0.005, 0.0) && !follows(0.0, 1.0102, 0.005, 0.0));
+        assert!(follows(0.0, 1.009, 0.0, 0.01) && !follows(0.0, 0.989, 0.0, 0.01));
+        assert!(follows(0.0, 1.019, 0.005, 0.01) && !follows(0.0, 1.021, 0.005, 0.01));
+        // Eight roundings of 1e9, which is 1.8e-6; a part in 1e9 of the spacing.
+        assert!(follows(1e9, 1.0 + 1.5e-6, 0.0, 0.0) && !follows(1e9, 1.0 + 2.1e-6, 0.0, 0.0));
+        assert!(follows(0.0, 1.0 + 0.9e-9, 0.0, 0.0) && !follows(0.0, 1.0 + 1.1e-9, 0.0, 0.0));
+    }
+
+    #[test]
+    fn pieces_end_before_rows_at_a_jump() {
+        // A pulse from 600 s to 1500 s.
+        let case = Library::new().load("thermal/cold-room-defrost", &Default::default());
+        let linear = Linear::new(&case.unwrap());
+        let pieces = |spacing: f64, rows: u32| -> Vec<(usize, usize)> {
+            let times: Vec<f64> = (0..rows).map(|k| spacing * f64::from(k)).collect();
+            let record = record(&times, 0.0, Some((spacing, 0.0)));
+            let pieces = record.pieces(&linear);
+            let long = pieces.iter().filter(|piece| piece.rows > 1);
+            long.map(|piece| (piece.start, piece.rows)).collect()
+        };
+        assert_eq!(pieces(300.0, 9), [(0, 2), (3, 2), (6, 3)]);
+        assert_eq!(pieces(400.0, 9), [(0, 2), (2, 2), (4, 5)]);
+    }
+}

@@ -163,3 +163,20 @@ fn the_best_fit_meets_the_jumps_as_well() {
     assert!(none.best(&[heun], Some(1)).is_none() && !none.is_any());
     assert!(found.is_any());
 }
+
+#[test]
+fn pieces_that_are_kept_are_spread_over_the_file() {
+    let piece = |start: usize| Piece {
+        window: 0,
+        start,
+        rows: 4,
+    };
+    let kept = |count: usize| -> Vec<usize> {
+        let mut pieces: Vec<Piece> = (0..count).map(piece).collect();
+        thin(&mut pieces);
+        pieces.iter().map(|piece| piece.start).collect()
+    };
+    assert_eq!(kept(16), (0..16).collect::<Vec<_>>());
+    // Fifteen gaps of ten.
+    assert_eq!(kept(151), (0..16).map(|k| 10 * k).collect::<Vec<_>>());
+}

@@ -477,3 +477,45 @@ fn either_of_two_shortest_texts_is_of_single_precision() {
         assert!(!is_single(text.parse().unwrap(), 8), "{text}");
     }
 }
+
+#[test]
+fn what_shows_more_than_single_precision_has_eight_digits_or_decimals() {
+    use Resolution::{Coarser, Decimals, Full, Half, Significant, Single};
+    for finer in [Full, Decimals(8), Significant(8), Coarser(8, 7)] {
+        assert!(finer.is_finer_than_single(), "{finer:?}");
+    }
+    for coarser in [Decimals(7), Significant(7), Coarser(7, 8), Half, Single] {
+        assert!(!coarser.is_finer_than_single(), "{coarser:?}");
+    }
+}
+
+#[test]
+fn numbers_of_single_precision_are_known_in_their_text_and_in_nine_digits() {
+    // 0.1 in single precision is 0.100000001490116...: nine digits end in 1, and 2 is 5.1e-10 off.
+    assert!(is_single(0.1, 1) && is_single(0.100000001, 9) && !is_single(0.100000002, 9));
+    assert!(is_single(f64::from(0.1f32), 17) && !is_single(0.10000000149, 8));
+    // From 2^26 on they are 8 apart; the shortest text of 67108872 is 67108870, yet it is one.
+    assert!(is_single(67_108_872.0, 8) && is_single(67_108_870.0, 7));
+    assert!(!is_single(67_108_871.0, 8));
+}
+
+#[test]
+fn seven_digits_without_a_pattern_are_single_and_six_are_not() {
+    // Neither the digits nor the decimals of the longest are those of most.
+    let few = [
+        "1.5", "12.25", "3.125", "2.75", "0.5", "7.25", "9.5", "4.125", "6.375",
+    ];
+    let with = |longest: &'static str| conclude(few.into_iter().chain([longest]));
+    assert_eq!(with("0.1234567"), Resolution::Single);
+    assert_eq!(with("0.123456"), Resolution::Full);
+}
+
+#[test]
+fn whole_numbers_are_at_rest_up_to_one_row_in_fifty() {
+    // The first value and the second one differ from the row before: two in a hundred.
+    let of = |rows: usize| conclude(["3", "4"].into_iter().chain(vec!["4"; rows - 2]));
+    assert_eq!(of(100), Resolution::Full);
+    assert_eq!(of(99), Resolution::Decimals(0));
+    let tenths = ["0.3", "0.4"].into_iter().chain(vec!["0.4"; 98]);
+    assert_eq!(conclude(tenths), Resolution::Decimals(1));
+}
