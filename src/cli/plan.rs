@@ -13,8 +13,8 @@ use crate::fault::{Fault, quoted};
 use crate::number::plain;
 use crate::outcome::{LimitsFrom, NotAudited};
 use crate::submission::{
-    Claims, ColumnName, ColumnStated, Expect, LimitStated, LimitsStated, MOST_SUBMISSION_BYTES,
-    Place, Run, Setting, Submission, discover,
+    Claims, ColumnName, ColumnStated, Expect, Found, LimitStated, LimitsStated,
+    MOST_SUBMISSION_BYTES, Place, Run, Setting, Submission, discover,
 };
 use crate::trajectory::Stated;
 
@@ -32,12 +32,13 @@ pub(super) fn processors() -> usize {
     std::thread::available_parallelism().map_or(1, usize::from)
 }
 
-/// The plan of an audit, and the reviewer who judges what came of it.
+/// The plan of an audit, the reviewer who judges what came of it, and what to know of the
+/// search.
 ///
 /// # Errors
 /// What keeps the whole audit from being done; a single submission that cannot be read
 /// is part of the plan.
-pub(super) fn plan(arguments: &AuditArguments) -> Result<(Plan, Reviewer), Vec<Fault>> {
+pub(super) fn plan(arguments: &AuditArguments) -> Result<(Plan, Reviewer, Vec<Fault>), Vec<Fault>> {
     let library = library(&arguments.sources)?;
     let reviewer = Reviewer::read(arguments, &library)?;
     let threads = match arguments.threads {
@@ -52,15 +53,16 @@ pub(super) fn plan(arguments: &AuditArguments) -> Result<(Plan, Reviewer), Vec<F
         traced: reports::any_plots(&arguments.write),
         part: None,
     };
+    let mut notes = Vec::new();
     match &arguments.case {
         Some(case) => single_files(case, arguments, &mut plan)?,
-        None => submissions(arguments, &mut plan)?,
+        None => notes = submissions(arguments, &mut plan)?,
     }
     for planned in &mut plan.submissions {
         reviewer.review(planned, &plan.library);
         limits_of_command_line(planned, arguments);
     }
-    Ok((plan, reviewer))
+    Ok((plan, reviewer, notes))
 }
 
 fn single_files(case: &str, arguments: &AuditArguments, plan: &mut Plan) -> Result<(), Vec<Fault>> {
@@ -139,14 +141,20 @@ fn single_files(case: &str, arguments: &AuditArguments, plan: &mut Plan) -> Resu
     }
 }
 
-fn submissions(arguments: &AuditArguments, plan: &mut Plan) -> Result<(), Vec<Fault>> {
+/// Puts the submissions below the paths into the plan; what to know of the search.
+fn submissions(arguments: &AuditArguments, plan: &mut Plan) -> Result<Vec<Fault>, Vec<Fault>> {
     let prefix = arguments.paths.len() > 1;
     let mut places: Vec<Place> = Vec::new();
-    let mut faults = Vec::new();
+    let (mut faults, mut notes) = (Vec::new(), Vec::new());
+    let paths = arguments.paths.iter();
+    let audited: Vec<PathBuf> = paths.filter_map(|path| path.canonicalize().ok()).collect();
     for path in &arguments.paths {
-        match discover(path, prefix) {
-            Ok(found) => places.extend(found),
-            Err(mut found) => faults.append(&mut found),
+        match discover(path, prefix, &audited) {
+            Ok(found) => {
+                places.extend(found.places);
+                notes.extend(found.notes);
+            }
+            Err(fault) => faults.push(fault),
         }
     }
     if !faults.is_empty() {
@@ -154,7 +162,7 @@ fn submissions(arguments: &AuditArguments, plan: &mut Plan) -> Result<(), Vec<Fa
     }
     places.sort();
     places.dedup();
-    for place in &places {
+    for place in places.iter().filter(|place| place.is == Found::Submission) {
         if place.file.extension().is_none_or(|ending| ending != "toml") {
             let fault = Fault::new("this is no submission").in_file(&place.file);
             let help = "name the case with `--case`, or write a submission.toml beside it";
@@ -179,15 +187,12 @@ fn submissions(arguments: &AuditArguments, plan: &mut Plan) -> Result<(), Vec<Fa
             }
         }
     }
-    Ok(())
+    Ok(notes)
 }
 
 fn read(place: &Place) -> Result<Submission, Vec<Fault>> {
     let path = &place.file;
-    if !place.is_plain {
-        let fault = Fault::new("this is a link or no plain file, so it was not opened");
-        return Err(vec![fault.help("put the file itself into the folder")]);
-    }
+    place.is.plain().map_err(|fault| vec![fault])?;
     let io = |error: std::io::Error| vec![Fault::io(path, &error)];
     let size = std::fs::metadata(path).map_err(io)?.len();
     if size > MOST_SUBMISSION_BYTES {

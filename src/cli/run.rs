@@ -19,7 +19,7 @@ use super::{plan, reports, steps, watched};
 use crate::case::{Case, Library, Replacements};
 use crate::exact::Exact;
 use crate::fault::{Fault, escaped, quoted};
-use crate::number::{Decimal, Double};
+use crate::number::{Decimal, Double, counted};
 use crate::outcome::Outcome;
 use crate::report::{
     ChannelCheck, Screen, ValueWriter, WIDEST, audit_report, audit_text, case_json, case_list,
@@ -33,6 +33,9 @@ const IN_ORDER: u8 = 0;
 const NOT_IN_ORDER: u8 = 1;
 /// The audit could not be done.
 const NOT_DONE: u8 = 2;
+
+/// Notes that are shown one by one.
+const MOST_NOTES: usize = 10;
 
 /// What can end a command early.
 enum Stop {
@@ -99,11 +102,14 @@ pub fn run(arguments: &Arguments) -> ExitCode {
 }
 
 fn run_audit(arguments: &AuditArguments) -> Result<u8, Stop> {
-    let (mut plan, reviewer) = plan::plan(arguments)?;
+    let (mut plan, reviewer, notes) = plan::plan(arguments)?;
     // Files of other parts are inputs too.
     let asked = reports::check(&arguments.write, &Inputs::of(arguments, &plan))?;
     parts::take(arguments, &reviewer, &mut plan)?;
     let earlier = Earlier::read(&arguments.before)?;
+    if !arguments.quiet {
+        note(&notes);
+    }
     let mut outcome = watched::audit(plan, arguments.quiet);
     reviewer.conclude(&mut outcome);
     outcome.changes = earlier.map(|earlier| earlier.changes(&audit_report(&outcome)));
@@ -122,6 +128,19 @@ fn run_drive(arguments: &DriveArguments) -> Result<u8, Stop> {
         let _ = writeln!(anstream::stderr(), "the runs are kept in {folder}");
     }
     status
+}
+
+/// Says what changes no result and is worth knowing all the same.
+fn note(notes: &[Fault]) {
+    let mut stream = anstream::stderr();
+    for fault in notes.iter().take(MOST_NOTES) {
+        // Nothing is left to do where even this cannot be written.
+        let _ = writeln!(stream, "{fault}");
+    }
+    if notes.len() > MOST_NOTES {
+        let more = counted((notes.len() - MOST_NOTES) as u64, "further link");
+        let _ = writeln!(stream, "and {more} like these");
+    }
 }
 
 /// Reports, screen and exit status of an audit.

@@ -7,6 +7,7 @@
 mod akin;
 mod columns;
 mod find;
+mod links;
 mod rules;
 mod schema;
 mod terms;
@@ -23,7 +24,7 @@ use crate::trajectory::{Source, Stated, open};
 pub use crate::trajectory::ColumnName;
 pub use akin::akin;
 pub use columns::{Column, Matched, match_columns, name_and_unit};
-pub use find::{MOST_DEPTH, Place, confined, discover};
+pub use find::{Discovered, Found, MOST_DEPTH, Place, confined, discover};
 pub use rules::{MOST_RULES_BYTES, Purpose, Requirement, Rules};
 pub use schema::{MOST_RUNS, MOST_SUBMISSION_BYTES};
 pub use terms::Terms;

@@ -69,7 +69,7 @@ fn submissions(bencher: Bencher, setting: &Setting) {
 /// All submissions below a folder, as the command line plans them.
 fn plan(folder: &Path, runs: &Path) -> Plan {
     let mut submissions = Vec::new();
-    for place in discover(runs, false).unwrap() {
+    for place in discover(runs, false, &[]).unwrap().places {
         let text = std::fs::read_to_string(&place.file).unwrap();
         submissions.push(Planned {
             name: place.name,

@@ -1,7 +1,7 @@
 //! Files and submissions that look better than they are, and what an audit makes of them.
 
 use crate::folder::Folder;
-use crate::reviewers::{CASE, by_rules, first, is, near, none, submit};
+use crate::reviewers::{CASE, by_rules, first, is, near, none, read, submit};
 
 #[test]
 fn exact_values_contradict_every_method_that_has_errors() {
@@ -175,4 +175,111 @@ fn a_submission_that_is_no_file_is_not_passed_over() {
         let ran = folder.audit(&["s", option, "pipe"]);
         assert!(ran.status == 2 && ran.seen().contains("pipe: this is not a plain file"));
     }
+}
+
+/// What a link below the tree leads to is not audited: where that is a submission, nobody may
+/// take the rest for all there is; where it is none, the audit stands.
+#[cfg(unix)]
+#[test]
+fn links_to_folders_hide_no_submission() {
+    use std::os::unix::fs::symlink;
+    let sound = || [(Some(0.05), near(&[], 0.05, none))];
+    let scene = |link: &str, target: &str| {
+        let folder = Folder::new();
+        submit(&folder, "s/good", "", &sound());
+        submit(
+            &folder,
+            "outside/deep/bad",
+            "",
+            &[(Some(0.05), near(&[], 0.05, |t| t))],
+        );
+        folder.write("data/a/run.csv", "t,v_c\n");
+        symlink(target, folder.path(link)).unwrap();
+        folder
+    };
+    // The link, where it leads, and what a note says of it.
+    for (link, target, told) in [
+        ("s/latest", "good", "own place"),
+        ("s/good/again", "../good", "own place"),
+        ("s/round", ".", "own place"),
+        ("s/up", "../s", "own place"),
+        ("s/above", "..", "a folder above"),
+        ("s/self", "self", "leads nowhere"),
+        ("s/gone", "../gone", "leads nowhere"),
+        ("s/data", "../data", "no submission lies there"),
+    ] {
+        let folder = scene(link, target);
+        let plain = folder.audit(&["s/good"]);
+        let ran = folder.audit(&["s"]);
+        is(&ran, 0, "pass", "");
+        assert_eq!(ran.stderr.matches("a link").count(), 1, "{}", ran.stderr);
+        let start = format!("{link}: a link ");
+        assert!(
+            ran.stderr.starts_with(&start) && ran.stderr.contains(told),
+            "{}",
+            ran.stderr
+        );
+        assert_eq!(ran.report["submissions"], plain.report["submissions"]);
+        assert_eq!(ran.report["not_audited"].as_array().unwrap().len(), 0);
+        assert_eq!(folder.audit(&["s", "--quiet"]).seen().trim(), "");
+    }
+    // A file behind a link is none of the search.
+    let folder = scene("s/good/copy.csv", "0.csv");
+    assert_eq!(folder.audit(&["s"]).stderr, "");
+    for (link, target, name) in [
+        ("s/bad", "../outside/deep/bad", "bad"),
+        ("s/bad", "../outside", "bad"),
+        ("s/good/bad", "../../outside/deep", "good/bad"),
+    ] {
+        let folder = scene(link, target);
+        let ran = folder.audit(&["s"]);
+        let told = format!("{link}: this is a link to a folder with a submission, which was not");
+        is(&ran, 2, "pass", &told);
+        assert!(
+            ran.seen()
+                .contains("help: put the folder itself there, or name")
+        );
+        assert_eq!(ran.report["not_audited"][0]["name"], name);
+        assert_eq!(ran.stderr, "");
+        // Whoever names the other folder as well has it audited in its own place.
+        let ran = folder.audit(&["s", "outside"]);
+        assert_eq!(ran.status, 1, "{}", ran.seen());
+        assert!(ran.stderr.contains("own place"), "{}", ran.stderr);
+        // Parts tell of it once.
+        for part in ["1/2", "2/2"] {
+            let name = format!("{}.json", &part[..1]);
+            folder.run(&["audit", "s", "--part", part, "--write", &name]);
+        }
+        folder.audit(&["s"]);
+        let ran = folder.run(&["merge", "1.json", "2.json", "--write", "whole.json"]);
+        assert_eq!(ran.status, 2, "{}", ran.seen());
+        assert_eq!(read(&folder, "whole.json"), read(&folder, "report.json"));
+    }
+    // Nothing but a link: that no submission is found would be half of the truth.
+    let folder = scene("only", "outside");
+    std::fs::create_dir(folder.path("e")).unwrap();
+    symlink("../outside", folder.path("e/link")).unwrap();
+    let ran = folder.audit(&["e"]);
+    let told = "e/link: this is a link to a folder with a submission";
+    assert!(
+        ran.status == 2 && ran.seen().contains(told),
+        "{}",
+        ran.seen()
+    );
+    // A link that is named is entered, as it always was.
+    let ran = folder.audit(&["only"]);
+    assert_eq!((ran.status, ran.stderr.as_str()), (1, ""), "{}", ran.seen());
+    // Many are counted.
+    let folder = scene("s/a", "good");
+    for number in 0..11 {
+        symlink("good", folder.path(&format!("s/l{number}"))).unwrap();
+    }
+    let ran = folder.audit(&["s"]);
+    assert_eq!(
+        ran.stderr.matches("own place").count(),
+        10,
+        "{}",
+        ran.stderr
+    );
+    assert!(ran.stderr.ends_with("and 2 further links like these\n"));
 }

@@ -127,4 +127,35 @@ fn folders_have_a_depth() {
     deep(33);
     let ran = folder.audit(&["d"]);
     says(&ran, 2, "folders lie more than 32 deep from here on");
+    // It is one complaint, whatever lies beside it.
+    deep(34);
+    let other = format!("case = '{CASE}'\nruns = []\n");
+    folder.write("d/d/other/submission.toml", other);
+    let names = |ran: &Ran, list: &str| -> Vec<String> {
+        let list = ran.report[list].as_array().unwrap().iter();
+        list.map(|one| one["name"].as_str().unwrap().to_owned())
+            .collect()
+    };
+    let at = |levels: usize| vec!["d"; levels].join("/");
+    let ran = folder.audit(&["d"]);
+    says(&ran, 2, "3 submissions: 1 fail, 2 not audited");
+    says(
+        &ran,
+        2,
+        "help: name this folder on the command line as well",
+    );
+    assert_eq!(ran.seen().matches("more than 32 deep").count(), 1);
+    assert_eq!(names(&ran, "not_audited"), [at(32), "d/other".to_owned()]);
+    assert_eq!(names(&ran, "submissions"), [at(31)]);
+    // With that done nothing is left to complain of, whichever folder on the way is named.
+    for (named, found) in [
+        (at(20), [at(32), at(33), at(34)]),
+        // A folder that is named itself goes by its own name.
+        (at(33), ["d".to_owned(), at(32), at(34)]),
+    ] {
+        let ran = folder.audit(&["d", &named]);
+        says(&ran, 2, "4 submissions: 3 fail, 1 not audited");
+        assert_eq!(names(&ran, "not_audited"), ["d/d/other"]);
+        assert_eq!(names(&ran, "submissions"), found);
+    }
 }
