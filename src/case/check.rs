@@ -19,6 +19,8 @@ const MOST_FAULTS: usize = 100;
 struct Checker<'a> {
     text: &'a str,
     faults: Vec<Fault>,
+    /// True where something was not looked at, since there are complaints enough.
+    cut: bool,
     names: Vec<String>,
     parameters: Vec<Parameter>,
 }
@@ -32,6 +34,7 @@ pub(super) fn check(slug: &str, text: &str, replace: &Replacements) -> Result<Ca
     let mut checker = Checker {
         text,
         faults: Vec::new(),
+        cut: false,
         names: Vec::new(),
         parameters: Vec::new(),
     };
@@ -41,6 +44,10 @@ pub(super) fn check(slug: &str, text: &str, replace: &Replacements) -> Result<Ca
         return Ok(case);
     }
     faults.sort_by_key(|fault| (fault.line, fault.column));
+    if checker.cut {
+        let text = format!("after {MOST_FAULTS} complaints the rest was not looked at");
+        faults.push(Fault::new(text).help("mend these first, the next ones will show then"));
+    }
     Err(faults)
 }
 
@@ -124,8 +131,10 @@ impl Checker<'_> {
 
     /// Every place is looked up from the beginning of the text: a list of mistakes as long as
     /// the file would take for ever.
-    fn is_full(&self) -> bool {
-        self.faults.len() >= MOST_FAULTS
+    fn is_full(&mut self) -> bool {
+        let full = self.faults.len() >= MOST_FAULTS;
+        self.cut |= full;
+        full
     }
 
     fn complain(&mut self, text: impl Into<String>, span: &Range<usize>) {

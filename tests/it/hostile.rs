@@ -104,6 +104,32 @@ fn states_are_counted() {
 }
 
 #[test]
+fn inputs_are_counted() {
+    let inputs = |count: usize| {
+        let one =
+            |k| format!("[[inputs]]\nname = 'u{k}'\nunit = ''\nshape = 'constant'\nvalue = 1\n");
+        solved(&case("0", "1", &(0..count).map(one).collect::<String>()))
+    };
+    assert_eq!(inputs(32), Ok(()));
+    let told = inputs(33).unwrap_err();
+    assert!(told.contains("33 inputs, at most 32 are allowed"), "{told}");
+}
+
+#[test]
+fn outputs_are_counted() {
+    let outputs = |count: usize| {
+        let one = |k| format!("[[outputs]]\nname = 'y{k}'\nunit = 'm'\nvalue = '2*x'\n");
+        solved(&case("0", "1", &(0..count).map(one).collect::<String>()))
+    };
+    assert_eq!(outputs(512), Ok(()));
+    let told = outputs(513).unwrap_err();
+    assert!(
+        told.contains("513 outputs, at most 512 are allowed"),
+        "{told}"
+    );
+}
+
+#[test]
 fn parameters_are_counted() {
     let parameters = |count: usize| {
         let lines = (0..count).map(|k| format!("p{k} = {{ value = 1, unit = '' }}\n"));

@@ -177,3 +177,36 @@ fn all_complaints_are_shown_in_order() {
     let lines: Vec<_> = faults.iter().map(|fault| fault.line).collect();
     assert!(faults.len() >= 2 && lines.is_sorted(), "{faults:?}");
 }
+
+/// Whoever sees a list that ends has to know that it is not the end.
+#[test]
+fn a_list_of_complaints_says_where_it_ends() {
+    let complaints = |count: usize| {
+        let parameters = (0..count).map(|k| format!("p{k} = {{ value = nan, unit = \"\" }}\n"));
+        let all = format!("[parameters]\n{}", parameters.collect::<String>());
+        let text = faults("[parameters]\n", &all);
+        let ended = text.ends_with(
+            "after 100 complaints the rest was not looked at\n  help: mend these first, the next \
+             ones will show then",
+        );
+        (text.matches("this is not a finite number").count(), ended)
+    };
+    assert_eq!(complaints(99), (99, false));
+    // The formulas after the parameters were not looked at.
+    assert_eq!(complaints(100), (100, true));
+    assert_eq!(complaints(101), (100, true));
+    // With nothing left to look at a list of a hundred is whole.
+    let last = "value = \"2*x - u + 1\"";
+    let wrong = |k: usize| format!("[[outputs]]\nname = \"y{k}\"\nunit = \"V\"\nvalue = \"x*u\"\n");
+    let open = GOOD.replace("exact = \"exp(-t)\"\n", "");
+    let outputs = |count: usize| {
+        let more: String = (1..count).map(wrong).collect();
+        let text = open.replace(last, &format!("value = \"x*u\"\n{more}"));
+        let faults = check("lag", &text, &Replacements::new()).unwrap_err();
+        let told = |what: &str| faults.iter().filter(|one| one.text.contains(what)).count();
+        (told("not linear"), told("after 100"))
+    };
+    assert_eq!(outputs(99), (99, 0));
+    assert_eq!(outputs(100), (100, 0));
+    assert_eq!(outputs(101), (100, 1));
+}

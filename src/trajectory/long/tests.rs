@@ -192,3 +192,42 @@ fn cells_keep_what_stands_in_them() {
         ]
     );
 }
+
+/// What is kept of rows in no order: stamp and value as printed, and an entry of 32 bytes.
+#[test]
+fn scattered_rows_are_kept_up_to_a_bound() {
+    let joined = |rows: usize, most_bytes: usize| {
+        let row = |channel: char| move |time| format!("{time:05},{channel},1\n");
+        let own = |channel| (0..rows / 2).map(row(channel)).collect::<String>();
+        let text = format!("t,variable,value\n{}{}", own('a'), own('b'));
+        let source = Source::memory(text.into_bytes());
+        let layout = source.layout(&stated(None)).unwrap().unwrap();
+        let long = layout.long.as_deref().unwrap();
+        assert_eq!(long.order, Order::Scattered);
+        let channels = vec![1, 2];
+        let of = Selection { time: 0, channels };
+        let mut seen = 0;
+        let mut each = |batch: Batch, _| {
+            seen += batch.rows.len();
+            Ok(true)
+        };
+        let mut lines = Lines::new(source.pieces(&long.rows).unwrap(), &long.rows);
+        let mut wide = Wide::new(long, &of, &mut each);
+        order::scattered(long, &mut lines, &mut wide, most_bytes)
+            .map(|_| seen)
+            .map_err(|fault| (fault.line, fault.text))
+    };
+    let needed = 4 * (5 + 1 + 32);
+    assert_eq!(joined(4, needed), Ok(2));
+    let (line, _) = joined(4, needed - 1).unwrap_err();
+    assert_eq!(line, Some(5));
+    // The first row of a file is not kept either where there is no room for it.
+    assert_eq!(joined(4, 0).unwrap_err().0, Some(2));
+    let (_, text) = joined(60_000, 2 << 20).unwrap_err();
+    assert!(
+        text.contains("more than 2 MiB would have to be kept"),
+        "{text}"
+    );
+    // Of a real file that is some seven million rows.
+    assert_eq!(MOST_KEPT_BYTES / (5 + 1 + 32), 7_064_090);
+}
