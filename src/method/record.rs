@@ -426,6 +426,10 @@ mod tests {
         // twelfth begins at 800 + 12 * 256 = 3872 with 48 rows.
         assert_eq!([3871, 3872, 3919].map(next_wanted), [3872, 3872, 3919]);
         assert_eq!([3920, 4127].map(next_wanted), [4128, 4128]);
+        // The eleventh is the last that ends before the last 48 of 3921 rows begin.
+        let later = (1..12).map(|number| (800 + 256 * number, 48));
+        let wanted = [(0, 800)].into_iter().chain(later).chain([(3873, 48)]);
+        assert_eq!(windows(3921), wanted.collect::<Vec<_>>());
     }
 
     #[test]
