@@ -304,7 +304,7 @@ fn of_order(order: f64, found: &[RunFound], audited: &Audited) -> ClaimOutcome {
         "the methods that fit the rows are of order {}",
         texts.join(", ")
     );
-    if beyond_chance && orders.iter().all(|&of| of < order - 0.5) {
+    if beyond_chance && orders.iter().all(|&of| of < order - judge::LOWER) {
         claim(Support::Contradicts, fitting)
     } else if orders.iter().all(|&of| of >= order) {
         claim(Support::Agrees, fitting)

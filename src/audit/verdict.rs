@@ -149,6 +149,8 @@ pub(super) fn judge_orders(
     } else {
         None
     };
+    let (orders, _) = orders_of_methods(found);
+    let highest = orders.into_iter().reduce(f64::max);
     for (index, channel) in case.channels().iter().enumerate() {
         let rungs: Option<Vec<Rung>> = runs.iter().map(|run| rung(run, index)).collect();
         let sight = match rungs {
@@ -167,12 +169,9 @@ pub(super) fn judge_orders(
         };
         let mut order = judge::of_order(&sight, claimed, slack, unsettled);
         if let Some(claimed) = claimed {
-            doubt_single_pair(claimed, found, &mut order);
-        }
-        if let Some(claimed) = claimed
-            && let Some(reason) = explain::order_reason(channel.name, claimed, &order)
-        {
-            audited.reasons.push(reason);
+            doubt_single_pair(claimed, highest, &mut order);
+            let reason = explain::order_reason(channel.name, claimed, &order);
+            audited.reasons.extend(reason);
         }
         if tolerances && !mixed && order.finest.is_some() {
             order.note = Some("slope of the error over the error setting".to_owned());
@@ -195,12 +194,11 @@ pub(super) fn judge_orders(
 
 /// A single pair of runs at long steps can show more than the order of its method: where all
 /// methods that the rows name are of a lower one, it passes nothing.
-fn doubt_single_pair(claimed: f64, found: &[RunFound], order: &mut OrderVerdict) {
-    if order.verdict != Some(Verdict::Pass) || order.rungs_used != 2 {
-        return;
-    }
-    let highest = orders_of_methods(found).0.into_iter().reduce(f64::max);
-    if let Some(highest) = highest.filter(|&highest| highest < claimed - judge::LOWER) {
+fn doubt_single_pair(claimed: f64, highest: Option<f64>, order: &mut OrderVerdict) {
+    if order.verdict == Some(Verdict::Pass)
+        && order.rungs_used == 2
+        && let Some(highest) = highest.filter(|&highest| highest < claimed - judge::LOWER)
+    {
         order.verdict = Some(Verdict::Undecided);
         order.note = Some(format!(
             "one pair of runs shows it, yet the methods that fit the rows are of order {} at most",

@@ -48,12 +48,8 @@ impl Reviewer {
         };
         let mut faults = Vec::new();
         let mut read = |path: &Option<PathBuf>, purpose| {
-            let path = path.as_deref()?;
-            let rules = rules(path, purpose, library);
-            let placed = |fault: Fault| fault.in_file(path);
-            rules
-                .map_err(|found| faults.extend(found.into_iter().map(placed)))
-                .ok()
+            let rules = rules(path.as_deref()?, purpose, library);
+            rules.map_err(|found| faults.extend(found)).ok()
         };
         let limits = read(&asked.limits, Purpose::Limits);
         let rules = read(&asked.require, Purpose::Everything);
@@ -93,9 +89,7 @@ impl Reviewer {
     /// # Errors
     /// A file that cannot be read, all that is wrong with it.
     pub(super) fn of_parts(path: &Path, library: &Library) -> Result<Reviewer, Vec<Fault>> {
-        let placed = |fault: Fault| fault.in_file(path);
-        let rules = rules(path, Purpose::Everything, library)
-            .map_err(|found| found.into_iter().map(placed).collect::<Vec<_>>())?;
+        let rules = rules(path, Purpose::Everything, library)?;
         Ok(Reviewer {
             terms: Some(terms(&rules)),
             rules,
@@ -202,13 +196,17 @@ fn changed(case: &Case, own: &Replacements) -> Vec<String> {
 }
 
 fn rules(path: &Path, purpose: Purpose, library: &Library) -> Result<Rules, Vec<Fault>> {
-    let text = text(path).map_err(|fault| vec![fault])?;
-    let rules = Rules::parse(&text, purpose)?;
+    let placed = |faults: Vec<Fault>| -> Vec<Fault> {
+        let faults = faults.into_iter();
+        faults.map(|fault| fault.in_file(path)).collect()
+    };
+    let text = text(path).map_err(|fault| placed(vec![fault]))?;
+    let rules = Rules::parse(&text, purpose).map_err(placed)?;
     let faults = unknown(&rules, library);
     if faults.is_empty() {
         Ok(rules)
     } else {
-        Err(faults)
+        Err(placed(faults))
     }
 }
 

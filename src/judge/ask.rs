@@ -233,6 +233,7 @@ mod tests {
         let linear = Linear::new(&case.unwrap());
         assert!(!misses_jumps(&linear, &Record::default(), &none));
     }
+
     #[test]
     fn a_name_is_ten_thousand_times_nearer_than_the_exact_solution() {
         let named = |change: &dyn Fn(&mut Family)| {

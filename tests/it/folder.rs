@@ -131,6 +131,20 @@ impl Ran {
     }
 }
 
+/// The text of a case `trial/...` over a window, with an absolute limit of one; the states and what
+/// else it has come as TOML.
+pub fn trial(from: &str, to: &str, more: &str) -> String {
+    format!(
+        "title = 'o'\nfield = 'trial'\nabout = ''\nsource = 'ours'\nhard_for = []\n\
+         [time]\nunit = 's'\nfrom = {from}\nto = {to}\n[limits]\nabsolute = 1\nrelative = 0\n{more}"
+    )
+}
+
+/// A state of a case; its unit is metres.
+pub fn state(name: &str, start: f64, rate: &str) -> String {
+    format!("[[states]]\nname = '{name}'\nunit = 'm'\nstart = {start}\nrate = '{rate}'\n")
+}
+
 /// Time, air and wall of the cold room: exact values and a small error.
 pub fn rows() -> &'static [[f64; 3]] {
     static ROWS: OnceLock<Vec<[f64; 3]>> = OnceLock::new();

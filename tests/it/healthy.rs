@@ -3,26 +3,32 @@
 
 use std::fmt::Write;
 
-use crate::folder::{Folder, Ran};
+use crate::folder::{Folder, Ran, state, trial};
 
-/// A lag behind a step of its input, with an output that jumps with it.
-const LAG: &str = "title = 'Lag'\nfield = 'trial'\nabout = ''\nsource = 'ours'\nhard_for = []\n\
-    [time]\nunit = 's'\nfrom = 0\nto = 2\n[limits]\nabsolute = 1e-6\nrelative = 0\n\
-    [[inputs]]\nname = 'u'\nunit = 'V'\nshape = 'step'\nheight = 1\nat = 0.5\n\
-    [[states]]\nname = 'x'\nunit = 'V'\nstart = 0\nrate = 'u - x'\n\
-    [[outputs]]\nname = 'gap'\nunit = 'V'\nvalue = 'u - x'\n";
-
-fn of_lag(rows: &str, more: &[&str]) -> Ran {
-    let folder = Folder::new();
-    folder.write("cases/lag.toml", LAG);
-    folder.write("run.csv", format!("t,x,gap\n{rows}"));
-    let case = ["run.csv", "--case", "trial/lag", "--cases", "cases"];
-    folder.audit(&[&case[..], more].concat())
+/// The jump of the input of [`of_lag`] is at this time, in steps of this length.
+#[derive(Clone, Copy)]
+struct Jump {
+    at: f64,
+    step: f64,
 }
 
-/// The closed form by hand, of the time as it is printed.
-fn lag(time: f64, late: f64) -> (f64, f64) {
-    let since = time - 0.5 - late;
+/// An audit of a lag behind a step of its input, with an output that jumps with it.
+fn of_lag(jump: Jump, rows: &str, more: &[&str]) -> Ran {
+    let folder = Folder::new();
+    let input = format!(
+        "[[inputs]]\nname = 'u'\nunit = 'm'\nshape = 'step'\nheight = 1\nat = {}\n",
+        jump.at
+    );
+    let output = "[[outputs]]\nname = 'gap'\nunit = 'm'\nvalue = 'u - x'\n";
+    let lag = trial("0", "2", &(input + &state("x", 0.0, "u - x") + output));
+    folder.write("cases/lag.toml", lag);
+    folder.write("run.csv", format!("t,x,gap\n{rows}"));
+    let case = ["run.csv", "--case", "trial/lag", "--cases", "cases"];
+    folder.audit(&[&case[..], &["--absolute", "1e-6"], more].concat())
+}
+
+/// The closed form by hand, so long after the jump.
+fn lag(since: f64) -> (f64, f64) {
     if since < 0.0 {
         return (0.0, 0.0);
     }
@@ -30,55 +36,64 @@ fn lag(time: f64, late: f64) -> (f64, f64) {
     (1.0 - gap, gap)
 }
 
+/// Rows of times that are summed up; the input may act late, or show itself at the jump though
+/// the sum fell short of it.
+fn summed(jump: Jump, late: f64, shown_after: bool) -> String {
+    let (mut rows, mut time) = (String::new(), 0.0f64);
+    while time < 2.0 + 0.5 * jump.step {
+        let at_jump = shown_after && (time - jump.at).abs() < 1e-9;
+        let (x, gap) = lag(if at_jump { 0.0 } else { time - jump.at - late });
+        let _ = writeln!(rows, "{time},{x},{gap}");
+        time += jump.step;
+    }
+    rows
+}
+
 #[test]
 fn a_stamp_summed_up_short_of_a_jump_may_be_on_either_side_of_it() {
-    let summed = |late: f64, shown_after: bool| {
-        let (mut rows, mut time) = (String::new(), 0.0f64);
-        for _ in 0..=40 {
-            let at = if shown_after && (time - 0.5).abs() < 1e-9 {
-                0.5
-            } else {
-                time
-            };
-            let (x, gap) = lag(at, late);
-            let _ = writeln!(rows, "{time},{x},{gap}");
-            time += 0.05;
+    // The sums fall short of the jumps in their last place.
+    for (at, step, short) in [
+        (0.5, 0.05, "0.49999999999999994"),
+        (0.8, 0.1, "0.7999999999999999"),
+        (1.1, 0.1, "1.0999999999999999"),
+    ] {
+        let jump = Jump { at, step };
+        let stated = step.to_string();
+        let steps = [&["--step", &stated][..], &[]];
+        assert!(summed(jump, 0.0, false).contains(&format!("\n{short},0,0\n")));
+        for shown_after in [false, true] {
+            for more in steps {
+                let ran = of_lag(jump, &summed(jump, 0.0, shown_after), more);
+                assert_eq!(ran.verdict(), "pass", "{at} {more:?}: {}", ran.seen());
+            }
         }
-        rows
-    };
-    // The sum falls short of the jump in its last place.
-    assert!(summed(0.0, false).contains("\n0.49999999999999994,0,0\n"));
-    for shown_after in [false, true] {
-        for step in [&["--step", "0.05"][..], &[]] {
-            let ran = of_lag(&summed(0.0, shown_after), step);
-            assert_eq!(ran.verdict(), "pass", "{step:?}: {}", ran.seen());
+        // An input that acts a step late is seen all the same.
+        for more in steps {
+            let ran = of_lag(jump, &summed(jump, step, false), more);
+            assert_eq!(ran.verdict(), "fail", "{at} {more:?}: {}", ran.seen());
         }
-    }
-    // An input that acts a step late is seen all the same.
-    for step in [&["--step", "0.05"][..], &[]] {
-        assert_eq!(of_lag(&summed(0.05, false), step).verdict(), "fail");
     }
     // What stands at the jump exactly is after it.
+    let jump = Jump {
+        at: 0.5,
+        step: 0.05,
+    };
     let exact = |late: f64| {
         let row = |k: u32| {
             let time = f64::from(k) / 20.0;
-            let (x, gap) = lag(time, late);
+            let (x, gap) = lag(time - jump.at - late);
             format!("{time},{x},{gap}\n")
         };
-        (0..=40).map(row).collect::<String>()
+        of_lag(jump, &(0..=40).map(row).collect::<String>(), &[])
     };
-    assert_eq!(of_lag(&exact(0.0), &[]).verdict(), "pass");
-    assert_eq!(of_lag(&exact(1e-9), &[]).verdict(), "fail");
+    assert_eq!(exact(0.0).verdict(), "pass");
+    assert_eq!(exact(1e-9).verdict(), "fail");
 }
 
 /// Runs of `x' = -x` from one up to some time, each with the factor of a step.
 fn decay(claim: &str, end: f64, runs: &[(u32, &dyn Fn(f64) -> f64)], digits: usize) -> Ran {
     let folder = Folder::new();
-    let case = format!(
-        "title = 'Decay'\nfield = 'trial'\nabout = ''\nsource = 'ours'\nhard_for = []\n\
-         [time]\nunit = 's'\nfrom = 0\nto = {end}\n[limits]\nabsolute = 1\nrelative = 0\n\
-         [[states]]\nname = 'x'\nunit = 'V'\nstart = 1\nrate = '-x'\n"
-    );
+    let case = trial("0", &end.to_string(), &state("x", 1.0, "-x"));
     folder.write("cases/decay.toml", case);
     let mut submission = format!("case = 'trial/decay'\n[claims]\n{claim}\n");
     for (number, (steps, factor)) in runs.iter().enumerate() {
@@ -141,11 +156,8 @@ fn a_pair_above_the_order_of_the_method_in_the_rows_passes_no_claim() {
 #[test]
 fn a_true_step_is_not_contradicted_where_no_mode_moves() {
     let folder = Folder::new();
-    let case = "title = 'Push'\nfield = 'trial'\nabout = ''\nsource = 'ours'\nhard_for = []\n\
-                [time]\nunit = 's'\nfrom = 0\nto = 2\n[limits]\nabsolute = 1\nrelative = 0\n\
-                [[states]]\nname = 'p'\nunit = 'm'\nstart = 0\nrate = 'v'\n\
-                [[states]]\nname = 'v'\nunit = 'm/s'\nstart = 0\nrate = '1'\n";
-    folder.write("cases/push.toml", case);
+    let states = state("p", 0.0, "v") + &state("v", 0.0, "1");
+    folder.write("cases/push.toml", trial("0", "2", &states));
     let (h, theta) = (0.02, 2.0 / 3.0);
     let (mut rows, mut p, mut v) = ("t,p,v\n".to_owned(), 0.0, 0.0);
     for row in 0..=100u32 {
@@ -168,9 +180,7 @@ fn stamps_of_single_precision_are_no_finer_than_that_in_small_units() {
     let mut submission = "case = 'trial/single'\n[claims]\norder = 4\n[limits]\nabsolute = 1\n\
                           [columns]\ntime = { column = 1, unit = 'us' }\n"
         .to_owned();
-    let case = "title = 'Decay'\nfield = 'trial'\nabout = ''\nsource = 'ours'\nhard_for = []\n\
-                [time]\nunit = 's'\nfrom = 0\nto = 8\n[limits]\nabsolute = 1\nrelative = 0\n\
-                [[states]]\nname = 'x'\nunit = 'V'\nstart = 1\nrate = '-0.1*x'\n";
+    let case = trial("0", "8", &state("x", 1.0, "-0.1*x"));
     folder.write("cases/single.toml", case);
     for (number, steps) in [600u32, 300, 150].into_iter().enumerate() {
         let step = 8.0 / f64::from(steps);

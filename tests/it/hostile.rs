@@ -13,7 +13,7 @@ use stepgauge::submission::{Purpose, Rules, Submission};
 use stepgauge::trajectory::columns::{self, Data, Format};
 use stepgauge::trajectory::packed;
 
-use crate::folder::Folder;
+use crate::folder::{Folder, state, trial};
 
 fn texts(faults: &[Fault]) -> String {
     faults.iter().map(|fault| format!("{fault}\n")).collect()
@@ -21,11 +21,7 @@ fn texts(faults: &[Fault]) -> String {
 
 /// A case of one state, with something more at its end.
 fn case(from: &str, to: &str, more: &str) -> String {
-    format!(
-        "title = 'o'\nfield = 'trial'\nabout = ''\nsource = 'ours'\nhard_for = []\n\
-         [time]\nunit = 's'\nfrom = {from}\nto = {to}\n[limits]\nabsolute = 1\nrelative = 0\n\
-         [[states]]\nname = 'x'\nunit = 'm'\nstart = 1\nrate = '-x'\n{more}"
-    )
+    trial(from, to, &(state("x", 1.0, "-x") + more))
 }
 
 fn train(first: &str, period: &str, width: &str, count: &str) -> String {

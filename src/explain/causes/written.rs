@@ -52,19 +52,18 @@ pub(super) fn candidates(
     threshold: f64,
     before: Gap,
 ) -> Vec<Candidate> {
-    let bad: Vec<usize> = (0..rows.width())
-        .filter(|&channel| {
-            let gap = rows.gap_of(base, channel);
-            gap.ratio > 1.0 && gap.share > threshold
-        })
+    let gaps: Vec<Gap> = (0..rows.width())
+        .map(|channel| rows.gap_of(base, channel))
         .collect();
+    let is_off = |&channel: &usize| gaps[channel].ratio > 1.0 && gaps[channel].share > threshold;
+    let bad: Vec<usize> = (0..rows.width()).filter(is_off).collect();
     if bad.is_empty() {
         return Vec::new();
     }
     let mut found = Vec::new();
     found.extend(gains(rows, names, base, &bad));
     found.extend(offsets(rows, names, base, &bad));
-    found.extend(swapped(rows, names, base, &bad, before));
+    found.extend(swapped(rows, names, base, (&bad, &gaps), before));
     found.extend(shifted(rows, names, base));
     found.extend(shape::clipped(rows, names, base, &bad));
     found.extend(shape::frozen(rows, names, base, &bad));
@@ -218,14 +217,20 @@ fn offsets(rows: &Rows, names: &Names, base: &[f64], bad: &[usize]) -> Vec<Candi
     vec![Candidate::new(Kind::Offset, 1, Some(offset), values, text)]
 }
 
-fn swapped(rows: &Rows, names: &Names, base: &[f64], bad: &[usize], before: Gap) -> Vec<Candidate> {
+fn swapped(
+    rows: &Rows,
+    names: &Names,
+    base: &[f64],
+    (bad, gaps): (&[usize], &[Gap]),
+    before: Gap,
+) -> Vec<Candidate> {
     let width = rows.width();
     let mut found = Vec::new();
     // Channels that would stay too far off if they were not exchanged themselves: with many of
     // them no pair is left, and there are hundreds of thousands of pairs in a wide file.
     let too_far = |gap: &Gap| !gap.is_closed() && gap.share > TAKES_AWAY * before.share;
-    let stays = |channel: &usize| too_far(&rows.gap_of(base, *channel));
-    let wrong: Vec<usize> = bad.iter().copied().filter(stays).collect();
+    let stays = |channel: &&usize| too_far(&gaps[**channel]);
+    let wrong: Vec<usize> = bad.iter().filter(stays).copied().collect();
     let covers = |one: usize, other: usize| wrong.iter().all(|&c| c == one || c == other);
     let fits = |one: usize, other: usize| {
         let mut gap = Gap::NOTHING;
